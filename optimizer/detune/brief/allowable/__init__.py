@@ -1,0 +1,63 @@
+"""Allowable kinds, one a file. A new kind is one file and one line in `KINDS`."""
+
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.added_mass import AddedMass
+from detune.brief.allowable.base import (
+    Allowable,
+    DesignAllowable,
+    HarmonicAllowable,
+    ModeAllowable,
+    StaticAllowable,
+)
+from detune.brief.allowable.cost import CostLimit
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.load_range import LoadRange
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.part_numbers import PartNumbers
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.transmissibility import Transmissibility
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.uplift import Uplift
+from detune.brief.allowable.velocity import Velocity
+
+KINDS: dict[str, type[Allowable]] = {
+    "displacement": Displacement,
+    "velocity": Velocity,
+    "acceleration": Acceleration,
+    "transmitted-force": TransmittedForce,
+    "transmissibility": Transmissibility,
+    "mount-deflection": MountDeflection,
+    "load-range": LoadRange,
+    "uplift": Uplift,
+    "sag": Sag,
+    "tilt": Tilt,
+    "separation": Separation,
+    "cost": CostLimit,
+    "added-mass": AddedMass,
+    "part-numbers": PartNumbers,
+}
+
+__all__ = [
+    "KINDS",
+    "Acceleration",
+    "AddedMass",
+    "Allowable",
+    "CostLimit",
+    "DesignAllowable",
+    "Displacement",
+    "HarmonicAllowable",
+    "LoadRange",
+    "ModeAllowable",
+    "MountDeflection",
+    "PartNumbers",
+    "Sag",
+    "Separation",
+    "StaticAllowable",
+    "Tilt",
+    "Transmissibility",
+    "TransmittedForce",
+    "Uplift",
+    "Velocity",
+]

@@ -1,0 +1,19 @@
+"""Limit on the acceleration of a point."""
+
+from typing import ClassVar, Literal
+
+from detune.brief.allowable.at_point import PointAllowable
+from detune.brief.allowable.views import Complexes, ToneView
+from detune.brief.statement import Acceleration as AccelerationQuantity
+
+
+class Acceleration(PointAllowable):
+    """Amplitude of the acceleration of a point, upper limit."""
+
+    title: ClassVar[str] = "acceleration"
+    unit: ClassVar[str] = "acceleration"
+    kind: Literal["acceleration"] = "acceleration"
+    limit: AccelerationQuantity
+
+    def phasor(self, view: ToneView, place: str) -> Complexes:
+        return view.motion(place) * -(view.omega**2)[..., None]

@@ -1,0 +1,51 @@
+"""The form shared by limits on the motion of a named point."""
+
+from typing import Literal
+
+import numpy as np
+from pydantic import field_validator
+
+from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, read_direction
+from detune.brief.allowable.views import Floats, Places, StaticView
+from detune.brief.statement import AxisName, Direction, Name
+
+
+class PointAllowable(HarmonicAllowable):
+    """A limit at a named point `at`, along a `direction` or on the resultant, as a stated `measure`."""
+
+    at: Name
+    direction: AxisName | Literal["resultant"] | Direction
+    measure: Statistic
+    limit: float
+
+    @field_validator("limit")
+    @classmethod
+    def _limit_above_zero(cls, value: float) -> float:
+        return above_zero(value, "a limit")
+
+    @field_validator("direction")
+    @classmethod
+    def _direction_readable(
+        cls, value: AxisName | Literal["resultant"] | Direction
+    ) -> AxisName | Literal["resultant"] | Direction:
+        read_direction(value)
+        return value
+
+    def places(self, places: Places) -> tuple[str, ...]:
+        return (self.at,)
+
+    def points_named(self) -> tuple[str, ...]:
+        return (self.at,)
+
+    def statistic(self) -> Statistic:
+        return self.measure
+
+    def along(self) -> Direction | None:
+        return read_direction(self.direction)
+
+    def bound(self, view: StaticView, place: str) -> Floats:
+        return np.full(view.count, self.limit)
+
+    def quantity(self) -> str:
+        where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
+        return f"{self.title} {where}, {self.measure}"

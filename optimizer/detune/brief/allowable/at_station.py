@@ -1,0 +1,27 @@
+"""The form shared by limits at stations: which stations, and which part of a local vector."""
+
+from typing import Literal
+
+import numpy as np
+
+from detune.brief.allowable.views import Complexes, Places
+from detune.brief.statement import Direction, Name
+
+LocalDirection = Literal["axial", "lateral", "resultant"]
+
+
+def chosen_stations(stations: tuple[Name, ...] | None, places: Places) -> tuple[str, ...]:
+    """Return the named stations, or all of them."""
+    return places.stations if stations is None else stations
+
+
+def local_part(phasor: Complexes, direction: LocalDirection) -> Complexes:
+    """Return a local phasor vector (D, F, 3) with the axial part removed where only lateral counts."""
+    if direction != "lateral":
+        return phasor
+    return phasor * np.array([1.0, 1.0, 0.0])
+
+
+def local_along(direction: LocalDirection) -> Direction | None:
+    """Return the axial unit vector, or None for a resultant."""
+    return (0.0, 0.0, 1.0) if direction == "axial" else None

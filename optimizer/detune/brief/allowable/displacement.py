@@ -1,0 +1,19 @@
+"""Limit on the displacement of a point."""
+
+from typing import ClassVar, Literal
+
+from detune.brief.allowable.at_point import PointAllowable
+from detune.brief.allowable.views import Complexes, ToneView
+from detune.brief.statement import Length
+
+
+class Displacement(PointAllowable):
+    """Amplitude of the displacement of a point, upper limit."""
+
+    title: ClassVar[str] = "displacement"
+    unit: ClassVar[str] = "length"
+    kind: Literal["displacement"] = "displacement"
+    limit: Length
+
+    def phasor(self, view: ToneView, place: str) -> Complexes:
+        return view.motion(place)

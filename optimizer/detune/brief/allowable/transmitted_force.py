@@ -1,0 +1,73 @@
+"""Limit on the force transmitted through each part, into the floor, or into the ground."""
+
+from typing import ClassVar, Literal
+
+import numpy as np
+from pydantic import model_validator
+
+from detune.brief.allowable.at_station import LocalDirection, chosen_stations, local_along, local_part
+from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, read_direction
+from detune.brief.allowable.views import Complexes, Floats, Places, StaticView, ToneView
+from detune.brief.statement import AxisName, Direction, Force, Name, refuse
+
+LOCAL = ("axial", "lateral", "resultant")
+
+
+class TransmittedForce(HarmonicAllowable):
+    """Amplitude of a transmitted dynamic force, upper limit.
+
+    `through = "each-station"`: the force through one part at each station (or the `stations`
+    named), `direction` "axial", "lateral" or "resultant". `through = "floor"`: the phasor sum of
+    all forces the machine's parts and connections put on the floor; `through = "ground"`: what
+    the floor passes on. Then `direction` is a global axis, a vector or "resultant".
+    """
+
+    title: ClassVar[str] = "transmitted force"
+    unit: ClassVar[str] = "force"
+    kind: Literal["transmitted-force"] = "transmitted-force"
+    through: Literal["each-station", "floor", "ground"]
+    stations: tuple[Name, ...] | None = None
+    direction: AxisName | LocalDirection | Direction
+    measure: Statistic
+    limit: Force
+
+    @model_validator(mode="after")
+    def _values(self) -> "TransmittedForce":
+        above_zero(self.limit, "a limit")
+        if self.through == "each-station":
+            if self.direction not in LOCAL:
+                raise refuse(self.direction, 'a part\'s own direction: "axial", "lateral" or "resultant"')
+        else:
+            if self.stations is not None:
+                raise refuse("stations", f'no stations for the force through the {self.through}')
+            if self.direction in ("axial", "lateral"):
+                raise refuse(self.direction, 'a global direction: "x", "y", "z", "resultant" or a vector')
+        return self
+
+    def places(self, places: Places) -> tuple[str, ...]:
+        if self.through == "each-station":
+            return chosen_stations(self.stations, places)
+        return (self.through,)
+
+    def stations_named(self) -> tuple[str, ...]:
+        return self.stations or ()
+
+    def statistic(self) -> Statistic:
+        return self.measure
+
+    def along(self) -> Direction | None:
+        if self.direction in ("axial", "lateral", "resultant"):
+            return local_along("axial") if self.direction == "axial" else None
+        return read_direction(self.direction)  # type: ignore[arg-type]
+
+    def phasor(self, view: ToneView, place: str) -> Complexes:
+        if self.through == "each-station":
+            return local_part(view.station_force(place), "lateral" if self.direction == "lateral" else "resultant")
+        return view.total_force(self.through)
+
+    def bound(self, view: StaticView, place: str) -> Floats:
+        return np.full(view.count, self.limit)
+
+    def quantity(self) -> str:
+        where = {"each-station": "through one part", "floor": "total into the floor", "ground": "total into the ground"}
+        return f"transmitted force {where[self.through]}, {self.direction}, {self.measure}"

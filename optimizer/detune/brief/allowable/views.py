@@ -1,0 +1,89 @@
+"""What an allowable may look at. The response floor supplies objects of these shapes.
+
+D designs are seen at once, F frequencies of each design's own. Local axes of a station: z along its
+axis, pointing from the floor to the body; x along its radial direction.
+"""
+
+from dataclasses import dataclass
+from typing import Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+
+
+@dataclass(frozen=True)
+class Places:
+    """The names an allowable may refer to."""
+
+    points: tuple[str, ...]
+    stations: tuple[str, ...]
+    bodies: tuple[str, ...]
+
+
+class StaticView(Protocol):
+    """Static equilibrium under gravity and the steady loads, at the static stiffness."""
+
+    @property
+    def count(self) -> int:
+        """Number of designs D."""
+
+    def motion(self, point: str) -> Floats:
+        """Displacement (D, 3) in m of a point from the unloaded position, global axes."""
+
+    def rotation(self, body: str) -> Floats:
+        """Rotation (D, 3) in rad of a body."""
+
+    def station_deflection(self, station: str) -> Floats:
+        """Deflection (D, 3) in m of the part, local axes; compression is negative z."""
+
+    def station_load(self, station: str) -> Floats:
+        """Force (D, 3) in N one part exerts on the floor; a compressed part has negative z."""
+
+    def part_value(self, station: str, column: str) -> Floats:
+        """A number (D,) of the part at the station, for example `load_max`; nan where none is stated."""
+
+
+class ToneView(Protocol):
+    """The response to one tone."""
+
+    @property
+    def omega(self) -> Floats:
+        """Angular frequency (D, F) in rad/s of the tone itself."""
+
+    def motion(self, point: str) -> Complexes:
+        """Displacement phasor (D, F, 3) in m of a point, global axes."""
+
+    def station_deflection(self, station: str) -> Complexes:
+        """Deflection phasor (D, F, 3) in m of the part, local axes."""
+
+    def station_force(self, station: str) -> Complexes:
+        """Force phasor (D, F, 3) in N through one part, local axes."""
+
+    def total_force(self, surface: str) -> Complexes:
+        """Force phasor (D, F, 3) in N, global axes, summed with phase: into the "floor" or the "ground"."""
+
+
+@dataclass(frozen=True)
+class ModeView:
+    """Undamped modes at the dynamic stiffness: frequency (D, n) Hz, amplification (D, n) = 1/loss factor.
+
+    `intervals` (k, 2) Hz are the excitation intervals of the steady conditions.
+    """
+
+    frequency: Floats
+    amplification: Floats
+    intervals: Floats
+
+
+@dataclass(frozen=True)
+class DesignView:
+    """Totals of a design: cost, added mass (kg) and number of different part numbers, each (D,)."""
+
+    cost: Floats
+    added_mass: Floats
+    part_numbers: Floats
+
+

@@ -1,0 +1,103 @@
+"""What may be chosen: catalogs, the parts each group may take, and ballast in steps."""
+
+from typing import Literal
+
+from pydantic import field_validator, model_validator
+
+from detune.brief.statement import Cost, Length, Mass, Name, Position, Statement, Text, positive, refuse
+
+Objective = Literal["cost", "separation", "least-margin", "added-mass", "part-numbers"]
+LARGER_IS_BETTER: dict[str, bool] = {
+    "cost": False,
+    "separation": True,
+    "least-margin": True,
+    "added-mass": False,
+    "part-numbers": False,
+}
+
+
+class CatalogSource(Statement):
+    """A parts list. `file` is taken relative to the study file.
+
+    `headers` maps our column names to the supplier's, `units` gives the unit of a mapped column,
+    `constants` gives one value (with its unit) for a column the list does not have.
+    """
+
+    name: Name
+    file: Text
+    kind: Name = "mount"
+    headers: dict[Name, Text] = {}
+    units: dict[Name, Text] = {}
+    constants: dict[Name, Text] = {}
+
+
+class Window(Statement):
+    """Lowest and highest admitted value of a catalog column, each with its unit."""
+
+    min: Text | None = None
+    max: Text | None = None
+
+    @model_validator(mode="after")
+    def _one_end(self) -> "Window":
+        if self.min is None and self.max is None:
+            raise refuse("{}", 'a window with "min", "max" or both')
+        return self
+
+
+class Choice(Statement):
+    """The parts one group may take: from which catalogs, filtered by columns, or named one by one."""
+
+    group: Name
+    catalogs: tuple[Name, ...]
+    where: dict[Name, tuple[Text, ...] | Window] = {}
+    parts: tuple[Name, ...] | None = None
+
+    @field_validator("catalogs")
+    @classmethod
+    def _some(cls, value: tuple[str, ...]) -> tuple[str, ...]:
+        if not value:
+            raise refuse("[]", "at least one catalog")
+        return value
+
+
+class Ballast(Statement):
+    """Mass that may be added in steps: a uniform box centred at `position`, grown at constant size.
+
+    Each step is a total mass; put "0 kg" in the list to allow none.
+    """
+
+    on: Name | None = None
+    position: Position
+    size: tuple[Length, Length, Length]
+    steps: tuple[Mass, ...]
+    cost_per_kg: Cost
+
+    @model_validator(mode="after")
+    def _values(self) -> "Ballast":
+        if not self.steps:
+            raise refuse("[]", 'at least one step, for example ["0 kg", "40 kg"]')
+        if min(self.steps) < 0.0:
+            raise refuse(f"{min(self.steps):g} kg", "steps of zero or more")
+        if len(set(self.steps)) != len(self.steps):
+            raise refuse(list(self.steps), "each step once")
+        for side in self.size:
+            positive(side, "a box side")
+        if self.cost_per_kg < 0.0:
+            raise refuse(f"{self.cost_per_kg:g}", "a cost of zero or more")
+        return self
+
+
+class Objectives(Statement):
+    """What is traded, two or three of: cost, separation, least-margin, added-mass, part-numbers.
+
+    The first one decides the answer; the front is drawn over all of them.
+    """
+
+    trade: tuple[Objective, ...] = ("cost", "separation")
+
+    @field_validator("trade")
+    @classmethod
+    def _two_or_three(cls, value: tuple[Objective, ...]) -> tuple[Objective, ...]:
+        if not 2 <= len(value) <= 3 or len(set(value)) != len(value):
+            raise refuse(list(value), "two or three different objectives")
+        return value

@@ -1,0 +1,185 @@
+"""Checks across statements: names that refer to each other, and what would leave the brief without sense."""
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+from detune.brief.allowable import HarmonicAllowable, Separation
+from detune.brief.brief import Brief, applies
+from detune.brief.forcing import Forcing
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.ground.errors import nearest_name
+
+Path = tuple[str | int, ...]
+
+
+@dataclass(frozen=True)
+class Finding:
+    """One fault of a brief: where (keys and indices as in the study file), what was found, what was expected."""
+
+    path: Path
+    found: str
+    expected: str
+    nearest: str | None = None
+
+
+def cross_check(brief: Brief) -> tuple[Finding, ...]:
+    """Return every fault between the statements of a brief."""
+    return tuple(
+        finding
+        for check in (_unique_names, _bodies, _stations, _forcing, _allowables, _choices, _ballast)
+        for finding in check(brief)
+    )
+
+
+def _unknown(path: Path, name: str, known: Iterable[str], what: str) -> Finding:
+    names = list(known)
+    listed = ", ".join(f'"{n}"' for n in names[:12]) or "none is stated"
+    return Finding(path, name, f"the name of {what} ({listed})", nearest_name(name, names))
+
+
+def _unique_names(brief: Brief) -> list[Finding]:
+    findings = []
+    tables = {
+        "body": [b.name for b in brief.bodies],
+        "point": [p.name for p in brief.points],
+        "station": [s.name for s in brief.stations],
+        "connection": [c.name for c in brief.connections],
+        "condition": [c.name for c in brief.conditions],
+        "forcing": [f.name for f in brief.forcing],
+        "catalog": [c.name for c in brief.catalogs],
+    }
+    for table, names in tables.items():
+        for index, name in enumerate(names):
+            if name in names[:index]:
+                findings.append(Finding((table, index, "name"), name, f"a name no other {table} has"))
+    for index, body in enumerate(brief.bodies):
+        if body.name in ("floor", "ground"):
+            findings.append(Finding(("body", index, "name"), body.name, 'a name other than "floor" and "ground"'))
+    return findings
+
+
+def _bodies(brief: Brief) -> list[Finding]:
+    names = [body.name for body in brief.bodies]
+    findings = []
+    placed: list[tuple[Path, str | None]] = []
+    placed += [(("point", i, "on"), p.on) for i, p in enumerate(brief.points)]
+    placed += [(("station", i, "on"), s.on) for i, s in enumerate(brief.stations)]
+    placed += [(("connection", i, "on"), c.on) for i, c in enumerate(brief.connections)]
+    placed += [(("steady_load", i, "on"), s.on) for i, s in enumerate(brief.steady_loads)]
+    placed += [(("forcing", i, "on"), getattr(f, "on", None)) for i, f in enumerate(brief.forcing)]
+    if brief.ballast is not None:
+        placed.append((("ballast", "on"), brief.ballast.on))
+    for path, on in placed:
+        if on is not None and on not in names:
+            findings.append(_unknown(path, on, names, "a body"))
+        # A base motion acts on the floor and stands on no body.
+        is_base = path[0] == "forcing" and isinstance(brief.forcing[int(path[1])], BaseMotion)
+        if on is None and len(names) > 1 and not is_base:
+            findings.append(Finding(path, "left out", 'the body it stands on, since there are several, as "on"'))
+    return findings
+
+
+def _stations(brief: Brief) -> list[Finding]:
+    findings = []
+    bodies = [body.name for body in brief.bodies]
+    for table, places in (("station", brief.stations), ("connection", brief.connections)):
+        for index, place in enumerate(places):
+            known = ["floor", *bodies]
+            if place.to not in known:
+                findings.append(_unknown((table, index, "to"), place.to, known, "what it stands on"))
+            elif place.to == (place.on or (bodies[0] if bodies else None)):
+                findings.append(Finding((table, index, "to"), place.to, "another body, or the floor"))
+    return findings
+
+
+def _conditions_named(path: Path, named: tuple[str, ...] | None, brief: Brief) -> list[Finding]:
+    known = [condition.name for condition in brief.conditions]
+    return [
+        _unknown((*path, "conditions", i), name, known, "a condition")
+        for i, name in enumerate(named or ())
+        if name not in known
+    ]
+
+
+def _forcing(brief: Brief) -> list[Finding]:
+    findings = []
+    for index, forcing in enumerate(brief.forcing):
+        findings += _conditions_named(("forcing", index), forcing.conditions, brief)
+        findings += _shaft(("forcing", index), forcing, brief)
+    for index, condition in enumerate(brief.conditions):
+        acting = [f for f in brief.forcing if applies(f.conditions, condition.name)]
+        used = {f.shaft_needed() for f in acting}
+        for shaft in condition.shafts:
+            if shaft not in used:
+                findings.append(
+                    Finding(("condition", index, "shafts"), shaft, "a shaft that some forcing follows in this condition")
+                )
+        if not acting:
+            findings.append(Finding(("condition", index), condition.name, "at least one forcing that acts in it"))
+    return findings
+
+
+def _shaft(path: Path, forcing: Forcing, brief: Brief) -> list[Finding]:
+    shaft = forcing.shaft_needed()
+    if shaft is None:
+        return []
+    findings = []
+    for condition in brief.conditions:
+        if applies(forcing.conditions, condition.name) and shaft not in condition.shafts:
+            findings.append(
+                Finding(
+                    (*path, "shaft"),
+                    shaft,
+                    f'a shaft whose speed condition "{condition.name}" states under "shafts"'
+                    " (or list the conditions in which this forcing acts)",
+                    nearest_name(shaft, condition.shafts),
+                )
+            )
+    return findings
+
+
+def _allowables(brief: Brief) -> list[Finding]:
+    findings = []
+    points = [point.name for point in brief.points]
+    stations = [station.name for station in brief.stations]
+    for index, allowable in enumerate(brief.allowables):
+        path: Path = ("allowable", index)
+        findings += _conditions_named(path, allowable.conditions, brief)
+        for name in allowable.points_named():
+            if name not in points:
+                findings.append(_unknown((*path, "at"), name, points, "a point"))
+        for i, name in enumerate(allowable.stations_named()):
+            if name not in stations:
+                findings.append(_unknown((*path, "stations", i), name, stations, "a station"))
+        if isinstance(allowable, Separation) and not any(c.steady for c in brief.conditions):
+            findings.append(Finding(path, "separation", "a steady condition, since separation counts only those"))
+    if not any(isinstance(a, HarmonicAllowable) for a in brief.allowables):
+        findings.append(
+            Finding(("allowable",), "no limit on any response", "at least one allowable on a response to the forcing")
+        )
+    return findings
+
+
+def _choices(brief: Brief) -> list[Finding]:
+    findings = []
+    groups = brief.groups
+    catalogs = [catalog.name for catalog in brief.catalogs]
+    chosen = [choice.group for choice in brief.choices]
+    for index, choice in enumerate(brief.choices):
+        if choice.group not in groups:
+            findings.append(_unknown(("choice", index, "group"), choice.group, groups, "a group of stations"))
+        if choice.group in chosen[:index]:
+            findings.append(Finding(("choice", index, "group"), choice.group, "one choice for each group"))
+        for i, name in enumerate(choice.catalogs):
+            if name not in catalogs:
+                findings.append(_unknown(("choice", index, "catalogs", i), name, catalogs, "a catalog"))
+    for index, station in enumerate(brief.stations):
+        if station.group not in chosen:
+            findings.append(_unknown(("station", index, "group"), station.group, chosen, "a group with a [[choice]]"))
+    return findings
+
+
+def _ballast(brief: Brief) -> list[Finding]:
+    if brief.ballast is None and "added-mass" in brief.objectives.trade:
+        return [Finding(("objectives", "trade"), "added-mass", "a [ballast] table, without which no mass is added")]
+    return []

@@ -1,0 +1,86 @@
+"""What every forcing kind hands on: tones, each a phasor of known growth over a range of frequency."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import ClassVar
+
+from pydantic import field_validator, model_validator
+
+from detune.brief.condition import SpeedRange, check_range
+from detune.brief.statement import Frequency, Name, Statement, refuse
+
+Complex3 = tuple[complex, complex, complex]
+ZERO3: Complex3 = (0j, 0j, 0j)
+
+
+@dataclass(frozen=True)
+class Tone:
+    """One sinusoid of a forcing, its frequency `order` times a speed between `low` and `high` (Hz).
+
+    `force` N and `moment` N m act at `position` on body `on`, times omega**power with omega the
+    tone's own angular frequency in rad/s. A tone with `base` moves the floor instead: displacement
+    phasor in m, times omega**power. Tones of one `speed` name share one speed. Tones with
+    `phase_known` of the same speed and order add as phasors, all others by their amplitudes.
+    """
+
+    source: str
+    speed: str
+    order: float
+    low: float
+    high: float
+    on: str | None
+    position: tuple[float, float, float]
+    force: Complex3 = ZERO3
+    moment: Complex3 = ZERO3
+    base: Complex3 | None = None
+    power: int = 0
+    phase_known: bool = False
+
+
+class Forcing(Statement):
+    """Base of every forcing kind. `conditions` left out means every condition."""
+
+    kind: str
+    name: Name
+    conditions: tuple[Name, ...] | None = None
+
+    title: ClassVar[str]
+
+    def tones(self, speeds: Mapping[str, SpeedRange]) -> tuple[Tone, ...]:
+        """Return the tones of this forcing in a condition whose shafts turn at `speeds` (Hz)."""
+        raise NotImplementedError(type(self).__name__)
+
+    def shaft_needed(self) -> str | None:
+        """Return the shaft this forcing follows, or None."""
+        return None
+
+
+class ShaftForcing(Forcing):
+    """A forcing that follows a shaft."""
+
+    shaft: Name
+
+    def shaft_needed(self) -> str | None:
+        return self.shaft
+
+
+class SteadyToneForcing(Forcing):
+    """A forcing with a frequency of its own: one value, or a range it may lie anywhere in."""
+
+    frequency: Frequency | SpeedRange
+
+    @field_validator("frequency", mode="before")
+    @classmethod
+    def _one_or_two(cls, value: object) -> object:
+        if isinstance(value, (list, tuple)) and len(value) != 2:
+            raise refuse(list(value), 'a frequency such as "25 Hz" or a range such as ["10 Hz", "60 Hz"]')
+        return value
+
+    @model_validator(mode="after")
+    def _range(self) -> "SteadyToneForcing":
+        check_range(*self.band(), "frequency")
+        return self
+
+    def band(self) -> SpeedRange:
+        """Return the lowest and highest frequency in Hz."""
+        return self.frequency if isinstance(self.frequency, tuple) else (self.frequency, self.frequency)

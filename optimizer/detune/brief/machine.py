@@ -1,0 +1,242 @@
+"""The machine: rigid bodies, named points, stations, given connections and steady loads."""
+
+from typing import Literal
+
+from pydantic import field_validator, model_validator
+
+from detune.brief.statement import (
+    FREEDOMS,
+    AxisName,
+    Damping,
+    Direction,
+    ForceVector,
+    FreedomName,
+    Inertia,
+    Length,
+    Mass,
+    MomentVector,
+    Name,
+    Position,
+    Ratio,
+    Statement,
+    Stiffness,
+    positive,
+    refuse,
+    unit_direction,
+)
+from detune.brief.statement import Force as ForceQuantity
+
+
+class InertiaTensor(Statement):
+    """Moments and products of inertia about the body's centre, kg m^2.
+
+    The products are the entries of the tensor itself: xy = -(integral of x y dm).
+    """
+
+    xx: Inertia
+    yy: Inertia
+    zz: Inertia
+    xy: Inertia = 0.0
+    xz: Inertia = 0.0
+    yz: Inertia = 0.0
+
+
+class Shape(Statement):
+    """A uniform box or cylinder that is part of a body."""
+
+    kind: Literal["box", "cylinder"]
+    name: Name = "shape"
+    mass: Mass
+    centre: Position
+    size: tuple[Length, Length, Length] | None = None
+    radius: Length | None = None
+    length: Length | None = None
+    axis: AxisName | None = None
+
+    @field_validator("mass")
+    @classmethod
+    def _mass_above_zero(cls, value: float) -> float:
+        return positive(value, "a mass")
+
+    @model_validator(mode="after")
+    def _dimensions(self) -> "Shape":
+        if self.kind == "box":
+            if self.size is None or self.radius is not None or self.length is not None or self.axis is not None:
+                raise refuse("box", 'a box with "size" alone (three lengths, along x, y and z)')
+            for side in self.size:
+                positive(side, "a box side")
+            return self
+        if self.radius is None or self.length is None or self.axis is None or self.size is not None:
+            raise refuse("cylinder", 'a cylinder with "radius", "length" and "axis" ("x", "y" or "z")')
+        positive(self.radius, "a radius")
+        positive(self.length, "a length")
+        return self
+
+
+class Weighing(Statement):
+    """Mass and centre from corner weighings: where the supports stood and what each one read."""
+
+    positions: tuple[Position, ...]
+    readings: tuple[ForceQuantity, ...]
+    centre_height: Length
+
+    @model_validator(mode="after")
+    def _three_or_more(self) -> "Weighing":
+        if len(self.positions) != len(self.readings):
+            raise refuse(
+                f"{len(self.positions)} positions and {len(self.readings)} readings", "one reading for each position"
+            )
+        if len(self.positions) < 3:
+            raise refuse(f"{len(self.positions)} positions", "three or more weighing positions")
+        if min(self.readings) < 0.0 or sum(self.readings) <= 0.0:
+            raise refuse("readings", "readings that are not negative and not all zero")
+        return self
+
+
+class Body(Statement):
+    """A rigid body that moves. Its mass is stated in exactly one of three ways.
+
+    `mass`, `centre` and `inertia` (or `inertia_box`); a list of `shapes`; or a `weighing` with
+    `inertia` or `inertia_box`. `inertia_box` is the size of a uniform box of the same mass, an
+    assumption that is printed as such.
+    """
+
+    name: Name
+    free: tuple[FreedomName, ...] = FREEDOMS
+    mass: Mass | None = None
+    centre: Position | None = None
+    inertia: InertiaTensor | None = None
+    inertia_box: tuple[Length, Length, Length] | None = None
+    shapes: tuple[Shape, ...] = ()
+    weighing: Weighing | None = None
+
+    @field_validator("mass")
+    @classmethod
+    def _mass_above_zero(cls, value: float | None) -> float | None:
+        return value if value is None else positive(value, "a mass")
+
+    @field_validator("free")
+    @classmethod
+    def _free_once(cls, value: tuple[FreedomName, ...]) -> tuple[FreedomName, ...]:
+        if not value:
+            raise refuse("[]", 'at least one free direction, for example ["z"]')
+        if len(set(value)) != len(value):
+            raise refuse(list(value), "each free direction once")
+        return tuple(name for name in FREEDOMS if name in value)
+
+    @model_validator(mode="after")
+    def _one_way(self) -> "Body":
+        ways = [self.mass is not None, bool(self.shapes), self.weighing is not None]
+        if sum(ways) != 1:
+            stated = [w for w, used in zip(("mass", "shapes", "weighing"), ways, strict=True) if used]
+            raise refuse(
+                " and ".join(stated) or "no mass",
+                'the mass stated in exactly one way: "mass" with "centre", or "shapes", or "weighing"',
+            )
+        if self.mass is not None and self.centre is None:
+            raise refuse("mass without centre", 'the centre of mass as "centre"')
+        if self.mass is None and self.centre is not None:
+            raise refuse("centre", 'no "centre" beside shapes or a weighing, which give it already')
+        if self.shapes and (self.inertia is not None or self.inertia_box is not None):
+            raise refuse("inertia beside shapes", "shapes alone, which give the inertia already")
+        if self.inertia is not None and self.inertia_box is not None:
+            raise refuse("inertia and inertia_box", "one of the two")
+        rotates = any(name.startswith("r") for name in self.free)
+        if rotates and not self.shapes and self.inertia is None and self.inertia_box is None:
+            raise refuse(
+                "no inertia",
+                'an inertia for a body that may rotate: "inertia", "inertia_box" (size of a uniform box), or "shapes"',
+            )
+        if self.inertia_box is not None:
+            for side in self.inertia_box:
+                positive(side, "a box side")
+        return self
+
+
+class Point(Statement):
+    """A named point fixed to a body, where responses are limited."""
+
+    name: Name
+    on: Name | None = None
+    position: Position
+
+
+class Station(Statement):
+    """A place where a part stands between a body and the floor, or another body.
+
+    `axial` is the direction of the part's axis, `radial` that of its local x. `parallel` parts of
+    the same number stand side by side and share the load equally.
+    """
+
+    name: Name
+    group: Name
+    on: Name | None = None
+    to: Name = "floor"
+    position: Position
+    axial: AxisName | Direction = "z"
+    radial: AxisName | Direction | None = None
+    parallel: int = 1
+
+    @field_validator("parallel", mode="before")
+    @classmethod
+    def _count(cls, value: object) -> object:
+        if isinstance(value, bool) or not isinstance(value, int) or value < 1:
+            raise refuse(value, "a whole number of parts, 1 or more")
+        return value
+
+    @field_validator("axial", "radial")
+    @classmethod
+    def _not_zero(cls, value: AxisName | Direction | None) -> AxisName | Direction | None:
+        if value is not None:
+            unit_direction(value)
+        return value
+
+
+class Connection(Statement):
+    """A given connection (pipe, cable, belt) of known stiffness that belongs to no choice.
+
+    `stiffness` along global x, y and z is the dynamic one; `stiffness_static` is taken equal to it
+    when left out, and that is printed as assumed.
+    """
+
+    name: Name
+    on: Name | None = None
+    to: Name = "floor"
+    position: Position
+    stiffness: tuple[Stiffness, Stiffness, Stiffness]
+    stiffness_static: tuple[Stiffness, Stiffness, Stiffness] | None = None
+    loss_factor: Ratio | None = None
+    viscous: tuple[Damping, Damping, Damping] | None = None
+
+    @model_validator(mode="after")
+    def _values(self) -> "Connection":
+        if min(self.stiffness) < 0.0 or min(self.stiffness_static or (0.0,)) < 0.0:
+            raise refuse(list(self.stiffness), "stiffnesses of zero or more")
+        if self.loss_factor is None and self.viscous is None:
+            raise refuse("no damping", 'the damping as "loss_factor" or "viscous" (zero is an answer)')
+        if self.loss_factor is not None and not 0.0 <= self.loss_factor <= 1.5:
+            raise refuse(f"{self.loss_factor:g}", "a loss factor from 0 to 1.5")
+        return self
+
+
+class SteadyLoad(Statement):
+    """A steady force or moment besides gravity: thrust, belt pull, pressure."""
+
+    name: Name
+    on: Name | None = None
+    position: Position
+    force: ForceVector = (0.0, 0.0, 0.0)
+    moment: MomentVector = (0.0, 0.0, 0.0)
+
+
+__all__ = [
+
+    "Body",
+    "Connection",
+    "InertiaTensor",
+    "Point",
+    "Shape",
+    "Station",
+    "SteadyLoad",
+    "Weighing",
+]

@@ -1,0 +1,1 @@
+"""Floor 0: units and errors."""

@@ -1,0 +1,1 @@
+"""Floor 2: catalogs of parts, read and checked."""

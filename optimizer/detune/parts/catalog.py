@@ -1,0 +1,162 @@
+"""Read a parts list into a catalog, with every fault at once, and choose parts from it by its columns."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TypeAlias
+
+from detune.ground.errors import BriefError, Fault, nearest_name
+from detune.ground.units import show
+from detune.parts.assumed import Assumed
+from detune.parts.columns import Column, column_named
+from detune.parts.headers import match_headers
+from detune.parts.kinds import KINDS, Part
+from detune.parts.sheet import read_sheet
+from detune.parts.table import Table
+
+Criterion: TypeAlias = Sequence[str] | Mapping[str, float]
+"""The texts allowed in a column, or a window {"min": ..., "max": ...} in SI with one or both ends."""
+
+
+@dataclass(frozen=True, slots=True)
+class Catalog:
+    """A parts list.
+
+    kind: a name in `detune.parts.kinds.KINDS`. parts: in the order of the file. assumed: what the list leaves
+    out and was filled in. file: path as given. unread: headers of a mapped sheet that no column reads.
+    """
+
+    name: str
+    kind: str
+    parts: tuple[Part, ...]
+    assumed: tuple[Assumed, ...]
+    file: str
+    unread: tuple[str, ...] = ()
+
+
+def read_catalog(
+    path: str | Path,
+    name: str,
+    kind: str = "mount",
+    header_map: Mapping[str, str] | None = None,
+    units: Mapping[str, str] | None = None,
+    constants: Mapping[str, str] | None = None,
+) -> Catalog:
+    """Read a CSV parts list (UTF-8; comma, semicolon or tab; decimal point).
+
+    Our own headers are a column's name with its unit, "stiffness_z_static [N/mm]". A supplier's sheet is
+    read as it stands: header_map: our column -> its header. units: our column -> its unit, where the header
+    does not carry one. constants: our column -> one value with its unit for the whole list. Figures become
+    SI, degC for temperatures. Raises BriefError with every fault found, each with file, line and column.
+    """
+    file = str(path)
+    if kind not in KINDS:
+        expected = f"a kind of part: {', '.join(KINDS)}"
+        raise BriefError([Fault(file, None, "kind", kind, expected, nearest_name(kind, KINDS))])
+    rules = KINDS[kind]
+    sheet = read_sheet(path)
+    matching = match_headers(sheet, rules.COLUMNS, header_map, units, constants)
+    table = Table(sheet, rules.COLUMNS, matching.sources)
+    faults = [*sheet.faults, *matching.faults, *table.faults, *_duplicates(table), *rules.check(table)]
+    if faults:
+        raise BriefError(_in_sheet_order(faults, sheet.headers))
+    parts, assumed = rules.build(table, name)
+    return Catalog(name, kind, parts, assumed, file, matching.unread)
+
+
+def _duplicates(table: Table) -> list[Fault]:
+    first: dict[str, int] = {}
+    faults = []
+    for row, part in enumerate(table.texts("part")):
+        if not part:
+            continue
+        line = first.setdefault(part, table.lines[row])
+        if line != table.lines[row]:
+            expected = f"each part number once; it stands already in line {line}"
+            faults.append(table.fault(row, "part", expected))
+    return faults
+
+
+def _in_sheet_order(faults: list[Fault], headers: tuple[str, ...]) -> list[Fault]:
+    place = {header: index for index, header in enumerate(headers)}
+    return sorted(faults, key=lambda fault: (fault.line or 0, place.get(fault.where, len(headers))))
+
+
+def filter_parts(
+    catalog: Catalog, criteria: Mapping[str, Criterion]
+) -> tuple[tuple[int, ...], dict[int, str]]:
+    """Choose the parts that meet every criterion.
+
+    criteria: column -> the texts allowed ("yes" and "no" for a yes-no column), or a window in SI, both ends
+    included. A part that states nothing in the column is dropped. Returns the indices kept, in catalog order,
+    and for each index dropped the first reason. Raises BriefError with every criterion that cannot be judged.
+    """
+    kind = KINDS[catalog.kind]
+    wanted: list[tuple[Column, Criterion]] = []
+    faults: list[Fault] = []
+    for name, criterion in criteria.items():
+        column = column_named(kind.COLUMNS, name)
+        if column is None:
+            nearest = nearest_name(name, [known.name for known in kind.COLUMNS])
+            expected = f"a column of a {catalog.kind} list"
+            faults.append(Fault(catalog.file, None, f"filter.{name}", name, expected, nearest))
+            continue
+        faults.extend(_criterion_faults(catalog.file, column, criterion))
+        wanted.append((column, criterion))
+    if faults:
+        raise BriefError(faults)
+    kept: list[int] = []
+    dropped: dict[int, str] = {}
+    for index, part in enumerate(catalog.parts):
+        reasons = (_reason(column, criterion, kind.value(part, column.name)) for column, criterion in wanted)
+        reason = next((reason for reason in reasons if reason), None)
+        if reason is None:
+            kept.append(index)
+        else:
+            dropped[index] = reason
+    return tuple(kept), dropped
+
+
+def _criterion_faults(file: str, column: Column, criterion: Criterion) -> list[Fault]:
+    where = f"filter.{column.name}"
+    if not column.numeric:
+        words = [] if isinstance(criterion, Mapping | str) else list(criterion)
+        if not words:
+            return [Fault(file, None, where, str(criterion), "a list of the texts allowed")]
+        if column.kind == "yes-no":
+            wrong = [word for word in words if word not in ("yes", "no")]
+            return [Fault(file, None, where, str(word), "yes or no") for word in wrong]
+        return []
+    if not isinstance(criterion, Mapping) or not criterion:
+        return [Fault(file, None, where, str(criterion), "a window with min, max or both")]
+    faults = []
+    for key, end in criterion.items():
+        if key not in ("min", "max"):
+            faults.append(
+                Fault(file, None, f"{where}.{key}", key, "min or max", nearest_name(key, ("min", "max")))
+            )
+        elif not isinstance(end, int | float) or isinstance(end, bool) or math.isnan(end):
+            faults.append(Fault(file, None, f"{where}.{key}", str(end), "a number in SI"))
+    if not faults and criterion.get("min", -math.inf) > criterion.get("max", math.inf):
+        expected = f"at most max, which is {show(criterion['max'], column.kind)}"
+        faults.append(Fault(file, None, f"{where}.min", show(criterion["min"], column.kind), expected))
+    return faults
+
+
+def _reason(column: Column, criterion: Criterion, stated: float | str | bool | None) -> str:
+    """Say why a part is dropped; empty when it is kept."""
+    if stated is None:
+        return f"the list states no {column.name}"
+    if isinstance(criterion, Mapping):
+        number = float(stated)
+        text = f"{column.name} {show(number, column.kind)}"
+        if number < criterion.get("min", -math.inf):
+            return f"{text} is below {show(criterion['min'], column.kind)}"
+        if number > criterion.get("max", math.inf):
+            return f"{text} is above {show(criterion['max'], column.kind)}"
+        return ""
+    word = stated if isinstance(stated, str) else ("yes" if stated else "no")
+    return "" if word in criterion else f"{column.name} {word} is not among {', '.join(criterion)}"

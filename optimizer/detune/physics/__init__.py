@@ -1,0 +1,1 @@
+"""Floor 1: the equations, on floats and arrays only."""

@@ -1,0 +1,1 @@
+"""Floor 4: the brief as requirements over batches of designs."""

@@ -1,0 +1,170 @@
+"""The constraint builder: a brief and its catalogs become requirements over batches of designs."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from detune.brief.allowable import (
+    Allowable,
+    DesignAllowable,
+    HarmonicAllowable,
+    ModeAllowable,
+    Separation,
+    StaticAllowable,
+)
+from detune.brief.allowable.views import Places
+from detune.brief.brief import Brief, applies, demanded
+from detune.brief.condition import Condition
+from detune.brief.cross_check import Finding, cross_check
+from detune.ground.errors import BriefError, Fault
+from detune.parts.assumed import group_assumed
+from detune.parts.catalog import Catalog
+from detune.parts.kinds.mount import Mount
+from detune.physics.static import is_supported
+from detune.problem.candidates import Dropped, find_candidates
+from detune.problem.requirement import Requirement
+from detune.response.assemble import static_stiffness
+from detune.response.design import Design
+from detune.response.designs import Designs, all_designs, design_count
+from detune.response.evaluate import Rows
+from detune.response.loads import condition_families, steady_intervals, unit_families
+from detune.response.model import Model, build_model
+
+
+@dataclass(frozen=True)
+class HarmonicRequirements:
+    """Harmonic requirements of one condition that are evaluated together: rows and their requirements, in order."""
+
+    rows: Rows
+    requirements: tuple[Requirement, ...]
+
+
+@dataclass(frozen=True)
+class Problem:
+    """All a solver sees: the model, the requirements by the work they take, and what is traded."""
+
+    brief: Brief
+    model: Model
+    totals: tuple[Requirement, ...]
+    statics: tuple[Requirement, ...]
+    modes: tuple[Requirement, ...]
+    harmonics: tuple[HarmonicRequirements, ...]
+    intervals: tuple[tuple[float, float], ...]
+    exempt_amplification: float | None
+    dropped: tuple[Dropped, ...]
+    assumed: tuple[str, ...]
+
+    @property
+    def count(self) -> int:
+        """Number of designs."""
+        return design_count(self.model)
+
+    @property
+    def requirements(self) -> tuple[Requirement, ...]:
+        """Every requirement, in the order of the stages that judge them."""
+        harmonic = tuple(r for group in self.harmonics for r in group.requirements)
+        return (*self.totals, *self.statics, *self.modes, *harmonic)
+
+    @property
+    def candidates(self) -> tuple[tuple[Mount, ...], ...]:
+        """The parts each group may take."""
+        return tuple(group.mounts for group in self.model.groups)
+
+    def design(self, designs: Designs, index: int) -> Design:
+        """Return design number `index` of a batch by name."""
+        return Design(
+            groups=self.brief.groups,
+            mounts=tuple(
+                group.mounts[part] for group, part in zip(self.model.groups, designs.part[index], strict=True)
+            ),
+            ballast=float(self.model.ballast_mass[designs.step[index]]),
+        )
+
+
+def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
+    """Return the problem of a brief. Raises BriefError with every fault the brief and catalogs show together."""
+    candidates = find_candidates(brief, catalogs)
+    findings = (*cross_check(brief), *candidates.findings)
+    if findings:
+        raise BriefError(faults_without_lines(brief, findings))
+    model = build_model(brief, candidates.mounts)
+    _check_support(brief, model)
+    allowables, demanded_notes = demanded(brief)
+    places = Places(tuple(model.points), model.station_names, tuple(body.name for body in brief.bodies))
+    catalog_notes = tuple(
+        str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed)
+    )
+    return Problem(
+        brief=brief,
+        model=model,
+        totals=_expand(allowables, DesignAllowable, "design", places),
+        statics=_expand(allowables, StaticAllowable, "at rest", places),
+        modes=_expand(allowables, ModeAllowable, "steady conditions", places),
+        harmonics=tuple(
+            group for condition in brief.conditions for group in _harmonic(brief, model, condition, allowables, places)
+        ),
+        intervals=steady_intervals(brief),
+        exempt_amplification=next((a.exempt_amplification for a in allowables if isinstance(a, Separation)), None),
+        dropped=candidates.dropped,
+        assumed=(*model.assumed, *demanded_notes, *catalog_notes),
+    )
+
+
+def faults_without_lines(brief: Brief, findings: tuple[Finding, ...]) -> list[Fault]:
+    """Return findings as faults of a brief whose file is not at hand."""
+    return [
+        Fault(brief.file, None, ".".join(str(key) for key in f.path), f.found, f.expected, f.nearest) for f in findings
+    ]
+
+
+def _expand(
+    allowables: tuple[Allowable, ...], form: type[Allowable], condition: str, places: Places
+) -> tuple[Requirement, ...]:
+    return tuple(
+        Requirement(allowable, condition, place)
+        for allowable in allowables
+        if isinstance(allowable, form)
+        for place in allowable.places(places)
+    )
+
+
+def _harmonic(
+    brief: Brief, model: Model, condition: Condition, allowables: tuple[Allowable, ...], places: Places
+) -> list[HarmonicRequirements]:
+    """Return the groups of a condition: one under its forcing, and one for each unit load."""
+    forced: list[tuple[HarmonicAllowable, str]] = []
+    groups: list[HarmonicRequirements] = []
+    for allowable in allowables:
+        if not isinstance(allowable, HarmonicAllowable) or not applies(allowable.conditions, condition.name):
+            continue
+        pairs = [(allowable, place) for place in allowable.places(places)]
+        if allowable.unit_load() is None:
+            forced += pairs
+            continue
+        families = unit_families(brief, model, condition, allowable)
+        if families:
+            groups.append(_group(Rows(tuple(pairs), families, largest=True), condition))
+    if forced:
+        families = condition_families(brief, model, condition)
+        groups.insert(0, _group(Rows(tuple(forced), families, largest=False), condition))
+    return groups
+
+
+def _group(rows: Rows, condition: Condition) -> HarmonicRequirements:
+    return HarmonicRequirements(
+        rows, tuple(Requirement(allowable, condition.name, place) for allowable, place in rows.pairs)
+    )
+
+
+def _check_support(brief: Brief, model: Model) -> None:
+    """Refuse a machine that its stations leave free to move: every design would share that fault."""
+    if bool(np.all(is_supported(static_stiffness(model, all_designs(model, 0, 1))))):
+        return
+    free = ", ".join(dict.fromkeys(name for _, name in model.frame.names))
+    finding = Finding(
+        ("station",),
+        f"{len(brief.stations)} stations that leave a motion of the machine without stiffness",
+        f"stations that hold every free direction ({free}); or fewer free directions",
+    )
+    raise BriefError(faults_without_lines(brief, (finding,)))

@@ -1,0 +1,139 @@
+"""Which parts each group may take, and why the others are left out before any design is looked at."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+from detune.brief.brief import Brief
+from detune.brief.choice import Choice, Window
+from detune.brief.cross_check import Finding, Path
+from detune.ground import units
+from detune.ground.errors import nearest_name
+from detune.parts.catalog import Catalog, filter_parts
+from detune.parts.kinds import KINDS
+from detune.parts.kinds.mount import Mount
+
+
+@dataclass(frozen=True)
+class Dropped:
+    """A part that a group may not take, and the reason."""
+
+    group: str
+    mount: Mount
+    reason: str
+
+
+@dataclass(frozen=True)
+class Candidates:
+    """The parts each group may take, in the brief's order of groups, and those left out."""
+
+    mounts: tuple[tuple[Mount, ...], ...]
+    dropped: tuple[Dropped, ...]
+    findings: tuple[Finding, ...]
+
+
+def find_candidates(brief: Brief, catalogs: Mapping[str, Catalog]) -> Candidates:
+    """Return the candidates of every group, and every fault in the choices that only the catalogs show."""
+    findings: list[Finding] = []
+    dropped: list[Dropped] = []
+    mounts: list[tuple[Mount, ...]] = []
+    for group in brief.groups:
+        index, choice = next((i, c) for i, c in enumerate(brief.choices) if c.group == group)
+        path: Path = ("choice", index)
+        kept: list[Mount] = []
+        for name in choice.catalogs:
+            if name in catalogs:
+                kept += _from_catalog(path, choice, catalogs[name], dropped, findings)
+        kept = _named(path, choice, kept, catalogs, dropped, findings)
+        if not kept and not findings:
+            findings.append(Finding(path, f"no part left for group {group}", "a filter that some part passes"))
+        mounts.append(tuple(kept))
+    findings += _lateral_missing(brief, mounts)
+    return Candidates(tuple(mounts), tuple(dropped), tuple(findings))
+
+
+def _from_catalog(
+    path: Path, choice: Choice, catalog: Catalog, dropped: list[Dropped], findings: list[Finding]
+) -> list[Mount]:
+    columns = {column.name: column for column in KINDS[catalog.kind].COLUMNS}
+    criteria: dict[str, list[str] | dict[str, float]] = {}
+    sound = True
+    for name, wanted in choice.where.items():
+        place = (*path, "where", name)
+        column = columns.get(name)
+        if column is None:
+            findings.append(Finding(place, name, "a column of the catalog", nearest_name(name, columns)))
+            sound = False
+        elif isinstance(wanted, Window):
+            window = _window(place, wanted, column.kind, findings)
+            sound = sound and window is not None
+            criteria[name] = window or {}
+        elif column.kind not in ("text", "yes-no"):
+            findings.append(Finding(place, str(list(wanted)), f'a window such as {{ min = "...", max = "..." }} for {name}'))
+            sound = False
+        else:
+            criteria[name] = list(wanted)
+    if not sound:
+        return []
+    kept, reasons = filter_parts(catalog, criteria)
+    dropped += [Dropped(choice.group, catalog.parts[i], reason) for i, reason in reasons.items()]
+    return [catalog.parts[i] for i in kept]
+
+
+def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> dict[str, float] | None:
+    if kind in ("text", "yes-no"):
+        findings.append(Finding(place, "a window", "a list of admitted texts"))
+        return None
+    bounds: dict[str, float] = {}
+    for end in ("min", "max"):
+        text = getattr(window, end)
+        if text is None:
+            continue
+        try:
+            bounds[end] = units.parse(text, "ratio" if kind == "count" else kind)
+        except units.UnitError as error:
+            findings.append(Finding((*place, end), error.found, error.expected))
+            return None
+    if "min" in bounds and "max" in bounds and bounds["min"] > bounds["max"]:
+        findings.append(Finding(place, f"{window.min} to {window.max}", "the lower end first, the upper end second"))
+        return None
+    return bounds
+
+
+def _named(
+    path: Path,
+    choice: Choice,
+    kept: list[Mount],
+    catalogs: Mapping[str, Catalog],
+    dropped: list[Dropped],
+    findings: list[Finding],
+) -> list[Mount]:
+    if choice.parts is None:
+        return kept
+    known = [m.part for name in choice.catalogs if name in catalogs for m in catalogs[name].parts]
+    for i, part in enumerate(choice.parts):
+        if part not in known:
+            findings.append(
+                Finding((*path, "parts", i), part, "a part of the chosen catalogs", nearest_name(part, known))
+            )
+    dropped += [Dropped(choice.group, m, "not among the parts named") for m in kept if m.part not in choice.parts]
+    return [m for m in kept if m.part in choice.parts]
+
+
+def _lateral_missing(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Finding]:
+    """A part without lateral stiffness can only stand where nothing but its axis matters."""
+    if all(freedom == "z" for body in brief.bodies for freedom in body.free):
+        return []
+    findings = []
+    for group, candidates in zip(brief.groups, mounts, strict=True):
+        index = next(i for i, c in enumerate(brief.choices) if c.group == group)
+        bare = [m.part for m in candidates if m.stiffness_dynamic[0] is None]
+        if bare:
+            listed = ", ".join(bare[:5]) + (f" and {len(bare) - 5} more" if len(bare) > 5 else "")
+            findings.append(
+                Finding(
+                    ("choice", index),
+                    f"no lateral stiffness for {listed}",
+                    "lateral stiffness for every part that may be chosen, or a study with vertical motion alone",
+                )
+            )
+    return findings

@@ -1,0 +1,25 @@
+"""One requirement: an allowable in one condition at one place."""
+
+from dataclasses import dataclass
+
+from detune.brief.allowable import Allowable
+
+
+@dataclass(frozen=True)
+class Requirement:
+    """What a margin is computed of; it carries the same labels as the assessor's rows."""
+
+    allowable: Allowable
+    condition: str
+    place: str
+
+    @property
+    def label(self) -> str:
+        """The requirement in words: quantity, place, condition."""
+        place = f" at {self.place}" if self.place != "whole machine" else ""
+        return f"{self.allowable.quantity()}{place} ({self.condition})"
+
+    @property
+    def is_total(self) -> bool:
+        """Whether it limits a total of the design (cost, mass, part numbers) rather than a physical quantity."""
+        return self.condition == "design"

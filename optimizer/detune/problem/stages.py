@@ -1,0 +1,136 @@
+"""The stages a batch of designs goes through, cheap ones first, and the margins each stage gives."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.allowable import DesignAllowable, HarmonicAllowable, ModeAllowable, StaticAllowable
+from detune.brief.allowable.separation import least_separation
+from detune.brief.allowable.views import DesignView
+from detune.problem.build import HarmonicRequirements, Problem
+from detune.problem.requirement import Requirement
+from detune.response.assemble import dynamic_matrices
+from detune.response.designs import Designs, part_numbers, total_cost
+from detune.response.evaluate import TWO_PI, family_amplitude, mode_batch, suprema
+from detune.response.margin import lower_margin, upper_margin, window_margin
+from detune.response.views import static_batch
+
+Floats = NDArray[np.float64]
+SCREEN_SPEEDS = 7
+
+
+@dataclass(frozen=True)
+class Stage:
+    """One stage: requirements and their margins (R, D). A `bound` stage gives upper bounds of the margins.
+
+    A bound stage samples a few speeds: a design it excludes is rightly excluded, one it keeps is not
+    yet decided. `size` is how many designs are best handled at once.
+    """
+
+    name: str
+    requirements: tuple[Requirement, ...]
+    margins: Callable[[Designs], Floats]
+    bound: bool
+    size: int
+
+
+def stages(problem: Problem) -> tuple[Stage, ...]:
+    """Return the stages of a problem in the order of the work they take."""
+    result = []
+    if problem.totals:
+        result.append(Stage("totals", problem.totals, lambda d: _totals(problem, d), False, 100_000))
+    if problem.statics:
+        result.append(Stage("statics", problem.statics, lambda d: _statics(problem, d), False, 20_000))
+    if problem.modes:
+        result.append(Stage("separation", problem.modes, lambda d: _modes(problem, d), False, 20_000))
+    for group in problem.harmonics:
+        result.append(_screen(problem, group))
+    for group in problem.harmonics:
+        result.append(_response(problem, group))
+    return tuple(result)
+
+
+def objective_values(problem: Problem, designs: Designs, least_margin: Floats) -> dict[str, Floats]:
+    """Return every objective (D,) of a batch whose least margins are known."""
+    dynamic = dynamic_matrices(problem.model, designs)
+    view = mode_batch(dynamic).view(problem.intervals)
+    return {
+        "cost": total_cost(problem.model, designs),
+        "separation": least_separation(view, problem.exempt_amplification),
+        "least-margin": least_margin,
+        "added-mass": problem.model.ballast_mass[designs.step],
+        "part-numbers": part_numbers(problem.model, designs),
+    }
+
+
+def _totals(problem: Problem, designs: Designs) -> Floats:
+    view = DesignView(
+        total_cost(problem.model, designs),
+        problem.model.ballast_mass[designs.step],
+        part_numbers(problem.model, designs),
+    )
+    rows = []
+    for requirement in problem.totals:
+        assert isinstance(requirement.allowable, DesignAllowable)
+        limit = np.array(requirement.allowable.upper_limit())
+        rows.append(upper_margin(requirement.allowable.value(view), limit))
+    return np.stack(rows)
+
+
+def _statics(problem: Problem, designs: Designs) -> Floats:
+    view = static_batch(problem.model, designs)
+    rows = []
+    for requirement in problem.statics:
+        assert isinstance(requirement.allowable, StaticAllowable)
+        lower, upper = requirement.allowable.bounds(view, requirement.place)
+        rows.append(window_margin(requirement.allowable.value(view, requirement.place), lower, upper))
+    return np.stack(rows)
+
+
+def _modes(problem: Problem, designs: Designs) -> Floats:
+    view = mode_batch(dynamic_matrices(problem.model, designs)).view(problem.intervals)
+    rows = []
+    for requirement in problem.modes:
+        assert isinstance(requirement.allowable, ModeAllowable)
+        limit = np.array(requirement.allowable.lower_limit())
+        rows.append(lower_margin(requirement.allowable.value(view), limit))
+    return np.stack(rows)
+
+
+def _screen(problem: Problem, group: HarmonicRequirements) -> Stage:
+    """Sample a few speeds of each family: no supremum lies below a sample."""
+
+    def margins(designs: Designs) -> Floats:
+        dynamic = dynamic_matrices(problem.model, designs)
+        sampled = np.zeros((len(group.rows.pairs), designs.count))
+        for family in group.rows.families:
+            speed = TWO_PI * np.linspace(family.low, family.high, SCREEN_SPEEDS if family.high > family.low else 1)
+            speeds = np.broadcast_to(speed, (designs.count, len(speed)))
+            value = family_amplitude(problem.model, designs, dynamic, group.rows, family, speeds)
+            sampled = np.maximum(sampled, value.max(axis=-1))
+        return _harmonic_margins(problem, group, designs, sampled)
+
+    return Stage("response at sampled speeds", group.requirements, margins, True, 2_000)
+
+
+def _response(problem: Problem, group: HarmonicRequirements) -> Stage:
+    def margins(designs: Designs) -> Floats:
+        dynamic = dynamic_matrices(problem.model, designs)
+        found = suprema(problem.model, designs, dynamic, mode_batch(dynamic), group.rows)
+        return _harmonic_margins(problem, group, designs, found.value)
+
+    return Stage("response over the whole range", group.requirements, margins, False, 500)
+
+
+def _harmonic_margins(
+    problem: Problem, group: HarmonicRequirements, designs: Designs, amplitude: Floats
+) -> Floats:
+    static = static_batch(problem.model, designs)
+    rows = []
+    for (allowable, place), value in zip(group.rows.pairs, amplitude, strict=True):
+        assert isinstance(allowable, HarmonicAllowable)
+        total = value + allowable.offset(static, place)
+        rows.append(upper_margin(total, allowable.bound(static, place)))
+    return np.stack(rows)

@@ -1,0 +1,1 @@
+"""Floor 4: bounds over boxes and intervals, and their record."""

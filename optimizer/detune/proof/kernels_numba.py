@@ -1,0 +1,200 @@
+"""Compiled kernels: generated text is written to a user cache folder, compiled once by numba, and kept there.
+
+numba and the compiled code are loaded only inside `load_kernels` and what calls it. The plain wrappers at the end
+have the signatures of `kernels_numpy.py` and take its routines wherever a factorisation is doubtful.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import importlib.util
+import os
+import sys
+import tempfile
+from collections.abc import Callable
+from pathlib import Path
+from types import ModuleType
+from typing import Any
+
+import numpy as np
+
+from detune.proof import kernels_numpy
+from detune.proof.kernel_source import BLOCK, kernel_source
+from detune.proof.loewner import Flags
+from detune.proof.selection_data import Complexes, Floats, Integers
+
+LARGEST_FREEDOMS = 9
+WORTH_WHEN_CACHED = 1_000_000
+WORTH_WHEN_NEW = 20_000_000
+MARK = "# --- compiled below ---"
+HEADER = '''"""Generated kernels for {n} freedoms; safe to delete."""
+from __future__ import annotations
+
+import numpy as np
+from numba import njit
+'''
+
+
+def cache_folder() -> Path:
+    """Folder of the compiled kernels: DETUNE_CACHE, else XDG_CACHE_HOME/detune, else ~/.cache/detune.
+
+    Where none of them can be written, a folder of this user in the temporary directory.
+    """
+    stated = os.environ.get("DETUNE_CACHE")
+    base = Path(os.environ.get("XDG_CACHE_HOME") or Path.home() / ".cache") / "detune"
+    folder = Path(stated) if stated else base
+    try:
+        folder.mkdir(mode=0o700, parents=True, exist_ok=True)
+        if os.access(folder, os.W_OK):
+            return folder
+    except OSError:
+        pass
+    return Path(tempfile.mkdtemp(prefix="detune-kernels-"))
+
+
+def module_text(n: int) -> str:
+    """Text of the compiled module for n freedoms: block kernels, search nodes, response nodes."""
+    here = Path(__file__).parent
+    texts = [kernel_source(n)]
+    for name in ("search_nodes.py", "response_nodes.py"):
+        texts.append((here / name).read_text(encoding="utf-8").split(MARK, 1)[1])
+    body = "\n".join(texts)
+    decorated = "\n".join(
+        ('@njit(cache=True, nogil=True, fastmath={"contract"}, error_model="numpy")\n' + line)
+        if line.startswith("def ")
+        else line
+        for line in body.splitlines()
+    )
+    return HEADER.format(n=n) + decorated + "\n"
+
+
+def kernel_file(n: int) -> tuple[Path, str]:
+    """Path and text of the generated module; the name carries a hash of the text."""
+    text = module_text(n)
+    digest = hashlib.sha256(text.encode()).hexdigest()[:16]
+    return cache_folder() / f"detune_kernels_{n}_{digest}.py", text
+
+
+def is_cached(n: int) -> bool:
+    """Whether kernels for n freedoms were compiled before, by this version of the program."""
+    path, _ = kernel_file(n)
+    return path.with_suffix(".ready").exists()
+
+
+def worth_compiling(predicted_designs: float, n: int) -> bool:
+    """Whether compiled kernels pay for this many designs: sooner when they are compiled already."""
+    if n > LARGEST_FREEDOMS or predicted_designs < WORTH_WHEN_CACHED:
+        return False
+    return predicted_designs >= WORTH_WHEN_NEW or is_cached(n)
+
+
+_loaded: dict[str, ModuleType] = {}
+
+
+def load_kernels(n: int, announce: Callable[[str], None] | None = None) -> Any:
+    """The compiled module for n freedoms; tells `announce` when it has to be compiled first.
+
+    Raises ValueError for n outside 1 to 9.
+    """
+    path, text = kernel_file(n)
+    if path.name in _loaded:
+        return _loaded[path.name]
+    if not path.exists():
+        # Another process may write the same file: an atomic rename leaves either text whole.
+        part = path.with_suffix(f".{os.getpid()}.part")
+        part.write_text(text, encoding="utf-8")
+        part.replace(path)
+    ready = path.with_suffix(".ready")
+    if not ready.exists() and announce is not None:
+        announce("Compiling the search kernels; this is done once and takes about half a minute.")
+    spec = importlib.util.spec_from_file_location(path.stem, path)
+    assert spec is not None and spec.loader is not None
+    module = importlib.util.module_from_spec(spec)
+    sys.modules[path.stem] = module
+    spec.loader.exec_module(module)
+    _loaded[path.name] = module
+    return module
+
+
+def mark_ready(n: int) -> None:
+    """Note that the kernels for n freedoms have been compiled, so that nobody is told again."""
+    kernel_file(n)[0].with_suffix(".ready").touch()
+
+
+def _blocks(matrices: Floats) -> tuple[Floats, int]:
+    """Packed blocks (K, m*64) of matrices (N, n, n), the last block filled up with its last matrix."""
+    packed = kernels_numpy.pack(matrices)
+    count = -(-packed.shape[0] // BLOCK)
+    index = np.minimum(np.arange(count * BLOCK), packed.shape[0] - 1)
+    blocks = packed[index].reshape(count, BLOCK, -1).transpose(0, 2, 1)
+    return np.ascontiguousarray(blocks).reshape(count, -1), count
+
+
+def _vectors(values: Floats) -> Floats:
+    count = -(-values.shape[0] // BLOCK)
+    index = np.minimum(np.arange(count * BLOCK), values.shape[0] - 1)
+    return np.ascontiguousarray(values[index].reshape(count, BLOCK, -1).transpose(0, 2, 1)).reshape(count, -1)
+
+
+def static_projection(stiffness: Floats, load: Floats, rows: Floats) -> tuple[Floats, Flags]:
+    """rows K^-1 load (N, R) for K (N, n, n), load (n,), rows (R, n), and whether each K is positive definite."""
+    kernels = load_kernels(stiffness.shape[-1])
+    blocks, count = _blocks(stiffness)
+    n = load.shape[0]
+    out = np.empty((count * BLOCK, rows.shape[0]))
+    flags = np.empty(count * BLOCK)
+    y, size, value = np.empty(n * BLOCK), np.empty(BLOCK), np.empty(BLOCK)
+    for k in range(count):
+        lanes = slice(k * BLOCK, (k + 1) * BLOCK)
+        kernels.factor_block(blocks[k], load, y, size, flags[lanes])
+        for r in range(rows.shape[0]):
+            kernels.row_block(blocks[k], y, np.ascontiguousarray(rows[r]), value, size)
+            out[lanes, r] = value
+    total = stiffness.shape[0]
+    supported = flags[:total] == 1.0
+    doubtful = ~supported
+    result = out[:total]
+    if doubtful.any():
+        q, positive = kernels_numpy.static_solve(stiffness[doubtful], load)
+        result[doubtful] = q @ rows.T
+        supported[doubtful] = positive
+    return result, supported
+
+
+def inertia_count(stiffness: Floats, shift: Floats) -> tuple[Integers, Flags]:
+    """As `kernels_numpy.inertia_count`: eigenvalues of K (N, n, n) below shift (N,), and the doubtful ones."""
+    kernels = load_kernels(stiffness.shape[-1])
+    blocks, count = _blocks(stiffness)
+    shifts = _vectors(shift[:, None])
+    counts, good = np.empty(count * BLOCK), np.empty(count * BLOCK)
+    for k in range(count):
+        lanes = slice(k * BLOCK, (k + 1) * BLOCK)
+        kernels.inertia_block(blocks[k], shifts[k], counts[lanes], good[lanes])
+    total = stiffness.shape[0]
+    doubtful = good[:total] != 1.0
+    result = counts[:total].astype(np.int64)
+    if doubtful.any():
+        values = np.linalg.eigvalsh(stiffness[doubtful])
+        result[doubtful] = (values < shift[doubtful, None]).sum(axis=1)
+    return result, doubtful
+
+
+def complex_solve(matrices: Complexes, right: Complexes) -> tuple[Complexes, Flags]:
+    """As `kernels_numpy.complex_solve`: complex symmetric systems (N, n, n) with right sides (N, n)."""
+    kernels = load_kernels(matrices.shape[-1])
+    n, total = matrices.shape[-1], matrices.shape[0]
+    real, count = _blocks(np.ascontiguousarray(matrices.real))
+    imag, _ = _blocks(np.ascontiguousarray(matrices.imag))
+    f_real, f_imag = _vectors(np.ascontiguousarray(right.real)), _vectors(np.ascontiguousarray(right.imag))
+    q_real, q_imag, good = np.empty_like(f_real), np.empty_like(f_imag), np.empty((count, BLOCK))
+    for k in range(count):
+        kernels.complex_block(real[k], imag[k], f_real[k], f_imag[k], q_real[k], q_imag[k], good[k])
+
+    def lanes(values: Floats) -> Floats:
+        return values.reshape(count, n, BLOCK).transpose(0, 2, 1).reshape(-1, n)[:total]
+
+    q: Complexes = lanes(q_real) + 1j * lanes(q_imag)
+    doubtful = good.reshape(-1)[:total] != 1.0
+    if doubtful.any():
+        q[doubtful] = np.linalg.solve(matrices[doubtful], right[doubtful][:, :, None])[:, :, 0]
+    return q, doubtful

@@ -1,0 +1,1 @@
+"""Floor 7: tables, plots and the page."""

@@ -1,0 +1,215 @@
+"""The assessor: every requirement of a brief for one design, by the exact equations, on its own.
+
+Nothing here comes from the solvers' batch evaluation. Suprema are found by another route as well:
+complex poles from the quadratic eigenproblem place the samples, and every local maximum is refined
+by a bounded one-dimensional search.
+"""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.allowable import (
+    Allowable,
+    DesignAllowable,
+    HarmonicAllowable,
+    ModeAllowable,
+    Separation,
+    StaticAllowable,
+)
+from detune.brief.allowable.views import DesignView, Places
+from detune.brief.brief import Brief, applies, demanded
+from detune.brief.condition import Condition
+from detune.physics import modes, separation
+from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
+from detune.response.design import Design
+from detune.response.direct import DirectMachine
+from detune.response.direct_modes import DirectModes, direct_modes
+from detune.response.direct_supremum import harmonic_value, steady_intervals, tones_of
+from detune.response.direct_views import DirectStatic, DirectTone
+from detune.response.margin import window_margin
+
+Floats = NDArray[np.float64]
+TWO_PI = 2.0 * np.pi
+
+
+def assess(brief: Brief, design: Design) -> Assessment:
+    """Return the assessment of one design. Raises UnsupportedMachine where statics have no solution."""
+    machine = DirectMachine(brief, design)
+    static = DirectStatic(machine)
+    found_modes = direct_modes(machine, steady_intervals(brief))
+    allowables, _ = demanded(brief)
+    names = Places(
+        tuple(p.name for p in brief.points),
+        tuple(s.name for s in brief.stations),
+        tuple(b.name for b in brief.bodies),
+    )
+    totals = design_totals(brief, design)
+    rows: list[MarginRow] = []
+    for allowable in allowables:
+        if isinstance(allowable, HarmonicAllowable):
+            for condition in brief.conditions:
+                if applies(allowable.conditions, condition.name):
+                    rows += [
+                        _harmonic_row(machine, static, found_modes, condition, allowable, place)
+                        for place in allowable.places(names)
+                    ]
+        elif isinstance(allowable, StaticAllowable):
+            rows += [_static_row(static, allowable, place) for place in allowable.places(names)]
+        elif isinstance(allowable, ModeAllowable):
+            value = float(allowable.value(found_modes.view)[0])
+            rows.append(_row(allowable, "steady conditions", "whole machine", value, allowable.lower_limit(), None))
+        elif isinstance(allowable, DesignAllowable):
+            value = float(allowable.value(totals)[0])
+            rows.append(_row(allowable, "design", "whole machine", value, None, allowable.upper_limit()))
+    kept = tuple(row for row in rows if row.upper is None or np.isfinite(row.upper))
+    exempt = exempt_amplification(brief)
+    counted = [row.margin for row in kept if row.kind not in ("cost", "added-mass", "part-numbers")]
+    return Assessment(
+        design=design,
+        meets=all(row.margin >= 0.0 for row in kept),
+        cost=float(totals.cost[0]),
+        added_mass=float(totals.added_mass[0]),
+        part_numbers=int(totals.part_numbers[0]),
+        separation=found_modes.least_separation(exempt),
+        least_margin=min(counted),
+        margins=kept,
+        stations=_station_rows(brief, static, design),
+        modes=_mode_rows(machine, found_modes, exempt),
+        power=_power_rows(machine),
+        total_load=float(-machine.dead_load.reshape(-1, 6)[:-1, 2].sum()),
+    )
+
+
+def design_totals(brief: Brief, design: Design) -> DesignView:
+    """Return cost, added mass and number of part numbers of one design."""
+    cost = sum(s.parallel * design.mounts[design.groups.index(s.group)].cost for s in brief.stations)
+    if brief.ballast is not None:
+        cost += design.ballast * brief.ballast.cost_per_kg
+    numbers = len({(mount.catalog, mount.part) for mount in design.mounts})
+    return DesignView(np.array([cost]), np.array([design.ballast]), np.array([float(numbers)]))
+
+
+def exempt_amplification(brief: Brief) -> float | None:
+    """Return the amplification below which the brief exempts modes from separation, or None."""
+    return next((a.exempt_amplification for a in brief.allowables if isinstance(a, Separation)), None)
+
+
+def _row(
+    allowable: Allowable,
+    condition: str,
+    place: str,
+    value: float,
+    lower: float | None,
+    upper: float | None,
+    frequency: float | None = None,
+) -> MarginRow:
+    margin = window_margin(
+        np.array(value),
+        None if lower is None or np.isnan(lower) else np.array(lower),
+        None if upper is None or np.isnan(upper) else np.array(upper),
+    )
+    return MarginRow(
+        kind=allowable.kind,
+        condition=condition,
+        place=place,
+        quantity=allowable.quantity(),
+        unit=allowable.unit,
+        value=value,
+        lower=lower,
+        upper=upper,
+        margin=float(margin),
+        frequency=frequency,
+    )
+
+
+def _static_row(static: DirectStatic, allowable: StaticAllowable, place: str) -> MarginRow:
+    lower, upper = allowable.bounds(static, place)
+    return _row(
+        allowable,
+        "at rest",
+        place,
+        float(allowable.value(static, place)[0]),
+        None if lower is None else float(lower[0]),
+        None if upper is None else float(upper[0]),
+    )
+
+
+def _harmonic_row(
+    machine: DirectMachine,
+    static: DirectStatic,
+    found_modes: DirectModes,
+    condition: Condition,
+    allowable: HarmonicAllowable,
+    place: str,
+) -> MarginRow:
+    dynamic, frequency = harmonic_value(machine, found_modes, condition, allowable, place)
+    value = dynamic + float(allowable.offset(static, place)[0])
+    bound = float(allowable.bound(static, place)[0])
+    return _row(allowable, condition.name, place, value, None, bound, frequency)
+
+
+def _station_rows(brief: Brief, static: DirectStatic, design: Design) -> tuple[StationRow, ...]:
+    rows = []
+    for station in brief.stations:
+        mount = design.mounts[design.groups.index(station.group)]
+        load = static.station_load(station.name)[0]
+        compression = float(-static.station_deflection(station.name)[0, 2])
+        rows.append(
+            StationRow(
+                station=station.name,
+                group=station.group,
+                part=mount.part,
+                parallel=station.parallel,
+                position=station.position,
+                axial_load=float(-load[2]),
+                lateral_load=float(np.hypot(load[0], load[1])),
+                compression=compression,
+                free_height=mount.free_height,
+                installed_height=None if mount.free_height is None else mount.free_height - compression,
+                load_min=mount.load_min,
+                load_max=mount.load_max,
+            )
+        )
+    return tuple(rows)
+
+
+def _mode_rows(machine: DirectMachine, found: DirectModes, exempt: float | None) -> tuple[ModeRow, ...]:
+    rows = []
+    share = modes.participation(found.mass, found.shapes, found.directions)
+    for index, frequency in enumerate(found.frequency):
+        each = [
+            (float(separation.separation(frequency, low, high)), (float(low), float(high)))
+            for low, high in found.intervals
+        ]
+        nearest = min(each) if each else None
+        amplification = float(found.view.amplification[0, index])
+        rows.append(
+            ModeRow(
+                frequency=float(frequency),
+                name=modes.mode_name(found.shapes[:, index], found.names, found.mass),
+                amplification=amplification,
+                separation=None if nearest is None else nearest[0],
+                interval=None if nearest is None else nearest[1],
+                participation=tuple(float(value) for value in share[..., index, :].ravel()),
+                exempt=exempt is not None and amplification < exempt,
+            )
+        )
+    return tuple(rows)
+
+
+def _power_rows(machine: DirectMachine) -> tuple[PowerRow, ...]:
+    """Energy balance of each condition, tone by tone, at the middle of its speed range."""
+    rows = []
+    for condition in machine.brief.conditions:
+        put_in = dissipated = 0.0
+        error = 0.0
+        speed = 0.0
+        for tone in tones_of(machine.brief, condition):
+            speed = 0.5 * (tone.low + tone.high)
+            view = DirectTone(machine, (tone,), np.array([[TWO_PI * speed * tone.order]]))
+            into, lost = view.power()
+            put_in, dissipated = put_in + float(into[0]), dissipated + float(lost[0])
+            scale = max(abs(float(into[0])), abs(float(lost[0])), np.finfo(float).tiny)
+            error = max(error, abs(float(into[0]) - float(lost[0])) / scale)
+        rows.append(PowerRow(condition.name, speed, put_in, dissipated, error))
+    return tuple(rows)

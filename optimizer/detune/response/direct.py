@@ -1,0 +1,177 @@
+"""One design in full matrices, built from the brief alone, for the assessor.
+
+It shares no assembly with `model.py`: every body and the floor are nodes of six freedoms, the
+stiffness of each part is turned into global axes, and freedoms that cannot move are prescribed and
+partitioned off, so forces into the floor come out as reactions. Two ways to the same numbers guard
+each other.
+"""
+
+from dataclasses import dataclass, field
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.brief import Brief, body_of
+from detune.brief.floor import FloorFreedom, floor_freedom
+from detune.brief.forcing import Tone
+from detune.brief.machine import Connection, Station
+from detune.brief.mass_properties import mass_properties
+from detune.brief.statement import FREEDOMS, unit_direction
+from detune.ground.units import STANDARD_GRAVITY
+from detune.parts.kinds.mount import Mount
+from detune.physics.orientation import axes_from_direction
+from detune.physics.rigid_body import box_inertia, skew
+from detune.response.design import Design
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+FLOOR = "floor"
+
+
+@dataclass(frozen=True)
+class DirectMachine:
+    """A brief with one design put in. N = 6 (bodies + 1) freedoms, the floor's last."""
+
+    brief: Brief
+    design: Design
+    floor: FloorFreedom | None = field(init=False)
+    centres: dict[str, Floats] = field(init=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "floor", floor_freedom(self.brief.floor))
+        centres = {body.name: mass_properties(body).centre for body in self.brief.bodies}
+        object.__setattr__(self, "centres", centres)
+
+    @property
+    def nodes(self) -> tuple[str, ...]:
+        return (*(body.name for body in self.brief.bodies), FLOOR)
+
+    @cached_property
+    def free(self) -> NDArray[np.bool_]:
+        """Mask (N,) of the freedoms that can move."""
+        mask = [freedom in body.free for body in self.brief.bodies for freedom in FREEDOMS]
+        mask += [self.floor is not None and freedom == "z" for freedom in FREEDOMS]
+        return np.array(mask)
+
+    @cached_property
+    def names(self) -> tuple[tuple[str, str], ...]:
+        """Node and freedom of each freedom that can move."""
+        every = [(node, freedom) for node in self.nodes for freedom in FREEDOMS]
+        return tuple(name for name, moves in zip(every, self.free, strict=True) if moves)
+
+    def place(self, node: str, position: Floats) -> Floats:
+        """Rows (3, N): global displacement of a place on a node."""
+        rows = np.zeros((3, 6 * len(self.nodes)))
+        first = 6 * self.nodes.index(node)
+        rows[:, first : first + 3] = np.eye(3)
+        if node != FLOOR:
+            rows[:, first + 3 : first + 6] = -skew(position - self.centres[node])
+        return rows
+
+    def turn(self, node: str) -> Floats:
+        """Rows (3, N): rotation of a node."""
+        rows = np.zeros((3, 6 * len(self.nodes)))
+        first = 6 * self.nodes.index(node)
+        rows[:, first + 3 : first + 6] = np.eye(3)
+        return rows
+
+    def mount(self, station: Station) -> Mount:
+        """Return the part that stands at a station."""
+        return self.design.mounts[self.design.groups.index(station.group)]
+
+    def axes(self, station: Station) -> Floats:
+        """Local axes (3, 3) of a station as columns."""
+        radial = None if station.radial is None else np.array(unit_direction(station.radial))
+        return axes_from_direction(np.array(unit_direction(station.axial)), radial)
+
+    def across(self, place: Station) -> Floats:
+        """Rows (3, N): global displacement of the body at a station relative to what it stands on."""
+        position = np.array(place.position)
+        return self.place(body_of(self.brief, place.on), position) - self.place(place.to, position)
+
+    @cached_property
+    def mass(self) -> Floats:
+        """Mass matrix (N, N), the ballast included."""
+        total = np.zeros((len(self.free), len(self.free)))
+        pieces = [(b.name, p.mass, p.centre, p.inertia) for b in self.brief.bodies for p in (mass_properties(b),)]
+        ballast = self.brief.ballast
+        if ballast is not None and self.design.ballast > 0.0:
+            inertia = box_inertia(self.design.ballast, np.array(ballast.size))
+            pieces.append(
+                (body_of(self.brief, ballast.on), self.design.ballast, np.array(ballast.position), inertia)
+            )
+        for node, mass, centre, inertia in pieces:
+            move, turn = self.place(node, centre), self.turn(node)
+            total += mass * move.T @ move + turn.T @ inertia @ turn
+        if self.floor is not None:
+            total[-4, -4] += self.floor.mass
+        return total
+
+    def stiffness(self, omega: Floats | None) -> Complexes:
+        """Static stiffness (N, N) where omega is None, else complex dynamic stiffness (F, N, N)."""
+        shape = (len(self.free), len(self.free))
+        total = np.zeros(shape if omega is None else (len(omega), *shape), dtype=complex)
+        for station in self.brief.stations:
+            rows, axes = self.across(station), self.axes(station)
+            local = station.parallel * part_stiffness(self.mount(station), omega)
+            turned = np.einsum("ia,...a,ja->...ij", axes, local, axes)
+            total += rows.T @ turned @ rows
+        for connection in self.brief.connections:
+            position = np.array(connection.position)
+            on = body_of(self.brief, connection.on)
+            rows = self.place(on, position) - self.place(connection.to, position)
+            total += rows.T @ (connection_stiffness(connection, omega)[..., :, None] * rows)
+        if self.floor is not None:
+            own = self.floor.stiffness if omega is None else self.floor.stiffness + 1j * omega * self.floor.damping
+            total[..., -4, -4] += own
+        return total
+
+    @cached_property
+    def dead_load(self) -> Floats:
+        """Static load (N,): gravity on bodies and ballast, and the steady loads. The floor's own weight is not in it."""
+        load = np.zeros(len(self.free))
+        down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
+        for body in self.brief.bodies:
+            properties = mass_properties(body)
+            load += self.place(body.name, properties.centre).T @ (properties.mass * down)
+        if self.brief.ballast is not None:
+            on = body_of(self.brief, self.brief.ballast.on)
+            load += self.place(on, np.array(self.brief.ballast.position)).T @ (self.design.ballast * down)
+        for steady in self.brief.steady_loads:
+            node = body_of(self.brief, steady.on)
+            load += self.place(node, np.array(steady.position)).T @ np.array(steady.force)
+            load += self.turn(node).T @ np.array(steady.moment)
+        return load
+
+    def tone_load(self, tone: Tone, omega: Floats) -> tuple[Complexes, Complexes]:
+        """Load (F, N) of a tone and the floor motion (F, N) it prescribes or would make freely."""
+        growth = omega[:, None] ** float(tone.power)
+        size = len(self.free)
+        if tone.base is not None:
+            motion = np.zeros((len(omega), size), dtype=complex)
+            motion[:, -6:-3] = growth * np.array(tone.base)
+            return np.zeros((len(omega), size), dtype=complex), motion
+        node = body_of(self.brief, tone.on)
+        vector = self.place(node, np.array(tone.position)).T @ np.array(tone.force)
+        vector = vector + self.turn(node).T @ np.array(tone.moment)
+        return growth * vector, np.zeros((len(omega), size), dtype=complex)
+
+
+def part_stiffness(mount: Mount, omega: Floats | None) -> Complexes:
+    """One part's stiffness along its own axes: static (3,), or complex dynamic (F, 3)."""
+    if omega is None:
+        return np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex)
+    dynamic = np.nan_to_num(np.array(mount.stiffness_dynamic, dtype=float))
+    hysteretic = dynamic * np.array(mount.loss_factor)
+    return dynamic + 1j * hysteretic + 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
+
+
+def connection_stiffness(connection: Connection, omega: Floats | None) -> Complexes:
+    """A given connection's stiffness along global axes: static (3,), or complex dynamic (F, 3)."""
+    dynamic = np.array(connection.stiffness)
+    if omega is None:
+        static = connection.stiffness_static
+        return (dynamic if static is None else np.array(static)).astype(complex)
+    lossy = dynamic * (1.0 + 1j * (connection.loss_factor or 0.0))
+    return lossy + 1j * omega[:, None] * np.array(connection.viscous or (0.0, 0.0, 0.0))

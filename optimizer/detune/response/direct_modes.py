@@ -1,0 +1,78 @@
+"""Modes and poles of one design, from the direct matrices."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.allowable.separation import least_separation
+from detune.brief.allowable.views import ModeView
+from detune.brief.statement import FREEDOMS
+from detune.physics import modes
+from detune.response.direct import FLOOR, DirectMachine
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+
+
+@dataclass(frozen=True)
+class DirectModes:
+    """n free freedoms: matrices (n, n), frequency (n,) Hz, mass-normalised shapes (n, n) as columns.
+
+    `poles` are the complex roots of the quadratic eigenproblem (rad/s); `intervals` (k, 2) Hz the
+    excitation intervals of the steady conditions; `directions` (n, 6) unit motions of the whole machine.
+    """
+
+    mass: Floats
+    stiffness: Floats
+    hysteretic: Floats
+    viscous: Floats
+    frequency: Floats
+    shapes: Floats
+    loss_factor: Floats
+    poles: Complexes
+    intervals: Floats
+    names: tuple[str, ...]
+    directions: Floats
+
+    @property
+    def view(self) -> ModeView:
+        """What a mode allowable looks at."""
+        with np.errstate(divide="ignore"):
+            amplification = 1.0 / self.loss_factor
+        return ModeView(self.frequency[None], amplification[None], self.intervals)
+
+    def least_separation(self, exempt: float | None) -> float:
+        """Return the least separation over all modes that are not exempt."""
+        return float(least_separation(self.view, exempt)[0])
+
+
+def direct_modes(machine: DirectMachine, intervals: list[tuple[float, float]]) -> DirectModes:
+    """Return the modes of one design, and the excitation intervals they are held against."""
+    mesh = np.ix_(machine.free, machine.free)
+    mass = machine.mass[mesh]
+    # Every element is k (1 + j eta) + j w c, so two frequencies tell hysteretic from viscous.
+    one, two = (machine.stiffness(np.array([w]))[0][mesh] for w in (1.0, 2.0))
+    viscous = two.imag - one.imag
+    hysteretic = one.imag - viscous
+    frequency, shapes = modes.undamped_modes(mass, one.real)
+    directions = np.array([[float(freedom == name) for name in FREEDOMS] for _, freedom in machine.names])
+    return DirectModes(
+        mass=mass,
+        stiffness=one.real,
+        hysteretic=hysteretic,
+        viscous=viscous,
+        frequency=frequency,
+        shapes=shapes,
+        loss_factor=modes.modal_loss_factors(shapes, hysteretic, viscous, frequency),
+        poles=modes.damped_poles(mass, viscous, hysteretic, one.real),
+        intervals=np.array(intervals, dtype=float).reshape(-1, 2),
+        names=tuple(_spoken(machine, node, freedom) for node, freedom in machine.names),
+        directions=directions,
+    )
+
+
+def _spoken(machine: DirectMachine, node: str, freedom: str) -> str:
+    if node == FLOOR:
+        return FLOOR
+    return f"{node} {freedom}" if len(machine.brief.bodies) > 1 else freedom

@@ -1,0 +1,151 @@
+"""The views of one design that allowables look at, from the direct matrices."""
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.brief import body_of
+from detune.brief.forcing import Tone
+from detune.brief.machine import Station
+from detune.response.direct import FLOOR, DirectMachine, connection_stiffness, part_stiffness
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+
+
+def station_named(machine: DirectMachine, name: str) -> Station:
+    """Return the station of this name."""
+    return next(station for station in machine.brief.stations if station.name == name)
+
+
+@dataclass(frozen=True)
+class DirectStatic:
+    """Static equilibrium of one design (D = 1)."""
+
+    machine: DirectMachine
+    count: int = 1
+
+    @cached_property
+    def q(self) -> Floats:
+        """Displacements (N,), zero where a freedom cannot move."""
+        free = self.machine.free
+        q = np.zeros(len(free))
+        stiffness = self.machine.stiffness(None).real
+        q[free] = np.linalg.solve(stiffness[np.ix_(free, free)], self.machine.dead_load[free])
+        return q
+
+    def motion(self, point: str) -> Floats:
+        stated = next(p for p in self.machine.brief.points if p.name == point)
+        rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
+        return (rows @ self.q)[None]
+
+    def rotation(self, body: str) -> Floats:
+        return (self.machine.turn(body) @ self.q)[None]
+
+    def station_deflection(self, station: str) -> Floats:
+        stated = station_named(self.machine, station)
+        return (self.machine.axes(stated).T @ self.machine.across(stated) @ self.q)[None]
+
+    def station_load(self, station: str) -> Floats:
+        mount = self.machine.mount(station_named(self.machine, station))
+        return part_stiffness(mount, None).real * self.station_deflection(station)
+
+    def part_value(self, station: str, column: str) -> Floats:
+        value = getattr(self.machine.mount(station_named(self.machine, station)), column)
+        return np.array([np.nan if value is None else float(value)])
+
+
+@dataclass(frozen=True)
+class DirectTone:
+    """The response of one design to a coherent set of tones at omega (1, F) rad/s of the tone."""
+
+    machine: DirectMachine
+    tones: tuple[Tone, ...]
+    omega: Floats
+
+    @cached_property
+    def _solved(self) -> tuple[Complexes, Complexes, Complexes]:
+        """Displacements (F, N), stiffness (F, N, N) without inertia, and load (F, N)."""
+        machine, omega, free = self.machine, self.omega[0], self.machine.free
+        stiffness = machine.stiffness(omega)
+        dynamic = stiffness - omega[:, None, None] ** 2 * machine.mass
+        load = np.zeros((len(omega), len(free)), dtype=complex)
+        q = np.zeros_like(load)
+        for tone in self.tones:
+            part, motion = machine.tone_load(tone, omega)
+            load += part
+            if machine.floor is not None:
+                # What the bare floor does freely needs this load on it: D_floor u_free.
+                f = machine.floor
+                own = f.stiffness + 1j * omega * f.damping - omega**2 * f.mass
+                load[:, -4] += own * motion[:, -4]
+                motion[:, -4] = 0.0
+            q += motion
+        right = (load - np.einsum("fij,fj->fi", dynamic[:, :, ~free], q[:, ~free]))[:, free]
+        q[:, free] = np.linalg.solve(dynamic[:, free][:, :, free], right[..., None])[..., 0]
+        return q, stiffness, load
+
+    @property
+    def q(self) -> Complexes:
+        return self._solved[0]
+
+    @property
+    def load(self) -> Complexes:
+        return self._solved[2]
+
+    def motion(self, point: str) -> Complexes:
+        stated = next(p for p in self.machine.brief.points if p.name == point)
+        rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
+        return (self.q @ rows.T)[None]
+
+    def station_deflection(self, station: str) -> Complexes:
+        stated = station_named(self.machine, station)
+        return (self.q @ self.machine.across(stated).T @ self.machine.axes(stated))[None]
+
+    def station_force(self, station: str) -> Complexes:
+        mount = self.machine.mount(station_named(self.machine, station))
+        return part_stiffness(mount, self.omega[0]) * self.station_deflection(station)
+
+    def total_force(self, surface: str) -> Complexes:
+        """The reaction of the floor node, turned round: what it receives."""
+        q, stiffness, _ = self._solved
+        received = -np.einsum("fij,fj->fi", stiffness[:, -6:-3, :], q)
+        floor = self.machine.floor
+        if floor is not None:
+            # The node's own spring to the ground is part of the matrix; without it, what the machine puts on
+            # the floor; with it alone, what the floor passes on.
+            own = (floor.stiffness + 1j * self.omega[0] * floor.damping) * q[:, -4]
+            received[:, 2] = own if surface == "ground" else received[:, 2] + own
+        return received[None]
+
+    def power(self) -> tuple[Floats, Floats]:
+        """Mean power (F,) put in by the loads and by moved supports, and dissipated in the parts.
+
+        Put in: Re(load . conj(velocity)) / 2 over all freedoms, prescribed ones with their reaction.
+        Dissipated: the same sum over each part, connection and the floor from its own deflection.
+        """
+        q, stiffness, load = self._solved
+        omega = self.omega[0]
+        velocity = 1j * omega[:, None] * q
+        dynamic = stiffness - omega[:, None, None] ** 2 * self.machine.mass
+        acting = np.where(self.machine.free, load, np.einsum("fij,fj->fi", dynamic, q))
+        put_in = 0.5 * np.sum(acting * velocity.conj(), axis=1).real
+        lost = np.zeros(len(omega))
+        for station in self.machine.brief.stations:
+            deflection = self.station_deflection(station.name)[0]
+            loss = part_stiffness(self.machine.mount(station), omega).imag
+            lost += station.parallel * 0.5 * omega * np.sum(loss * np.abs(deflection) ** 2, axis=1)
+        for connection in self.machine.brief.connections:
+            position = np.array(connection.position)
+            on = body_of(self.machine.brief, connection.on)
+            rows = self.machine.place(on, position) - self.machine.place(connection.to, position)
+            loss = connection_stiffness(connection, omega).imag
+            lost += 0.5 * omega * np.sum(loss * np.abs(q @ rows.T) ** 2, axis=1)
+        if self.machine.floor is not None:
+            lost += 0.5 * omega**2 * self.machine.floor.damping * np.abs(q[:, -4]) ** 2
+        return put_in, lost
+
+
+__all__ = ["FLOOR", "DirectStatic", "DirectTone", "station_named"]

@@ -1,0 +1,33 @@
+"""Margins: one convention everywhere, dimensionless, positive = met."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+Floats = NDArray[np.float64]
+
+
+def upper_margin(value: Floats, limit: Floats) -> Floats:
+    """Return limit / value - 1. A value of zero or less has an infinite margin; a limit of zero has -1 if exceeded."""
+    value, limit = np.broadcast_arrays(np.asarray(value, float), np.asarray(limit, float))
+    margin = np.full(value.shape, np.inf)
+    np.divide(limit, value, out=margin, where=value > 0.0)
+    return margin - 1.0
+
+
+def lower_margin(value: Floats, limit: Floats) -> Floats:
+    """Return value / limit - 1. A limit of zero is met by any value of zero or more, infinitely so above zero."""
+    value, limit = np.broadcast_arrays(np.asarray(value, float), np.asarray(limit, float))
+    at_zero = np.where(value > 0.0, np.inf, np.where(value < 0.0, -np.inf, 1.0))
+    ratio = at_zero.copy()
+    np.divide(value, limit, out=ratio, where=limit > 0.0)
+    return ratio - 1.0
+
+
+def window_margin(value: Floats, lower: Floats | None, upper: Floats | None) -> Floats:
+    """Return the lesser of the lower and the upper margin; None is no limit."""
+    margin = np.full(np.shape(value), np.inf)
+    if lower is not None:
+        margin = np.minimum(margin, lower_margin(value, lower))
+    if upper is not None:
+        margin = np.minimum(margin, upper_margin(value, upper))
+    return margin

@@ -1,0 +1,156 @@
+"""The views that allowables look at, for a batch of designs."""
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.physics.response import solve_response
+from detune.response.assemble import Dynamic, part_dynamic_stiffness, static_stiffness
+from detune.response.designs import Designs
+from detune.response.loads import Load
+from detune.response.model import Model, StationRows
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+
+
+@dataclass(frozen=True)
+class StaticBatch:
+    """Static equilibrium of D designs: `q` (D, n)."""
+
+    model: Model
+    designs: Designs
+    q: Floats
+
+    @property
+    def count(self) -> int:
+        return self.designs.count
+
+    def motion(self, point: str) -> Floats:
+        return self.q @ self.model.points[point].T
+
+    def rotation(self, body: str) -> Floats:
+        return self.q @ self.model.frame.rotation_rows(body).T
+
+    def station_deflection(self, station: str) -> Floats:
+        return self.q @ find_station(self.model, station).rows.T
+
+    def station_load(self, station: str) -> Floats:
+        found = find_station(self.model, station)
+        stiffness = self.model.groups[found.group].arrays.stiffness_static[self.designs.part[:, found.group]]
+        return np.nan_to_num(stiffness) * self.station_deflection(station)
+
+    def part_value(self, station: str, column: str) -> Floats:
+        group = find_station(self.model, station).group
+        values = getattr(self.model.groups[group].arrays, column)
+        return np.asarray(values, dtype=float)[self.designs.part[:, group]]
+
+
+def static_batch(model: Model, designs: Designs) -> StaticBatch:
+    """Return the static equilibrium of a batch under gravity and the steady loads."""
+    stiffness = static_stiffness(model, designs)
+    q = np.linalg.solve(stiffness, model.weight[designs.step][..., None])[..., 0]
+    return StaticBatch(model, designs, q)
+
+
+@dataclass(frozen=True)
+class ToneBatch:
+    """Response of D designs to one coherent set of loads at `omega` (D, F) rad/s of the tone."""
+
+    model: Model
+    designs: Designs
+    dynamic: Dynamic
+    loads: tuple[Load, ...]
+    omega: Floats
+
+    @cached_property
+    def base(self) -> Complexes | None:
+        """Free floor motion (D, F, 3), or None where the floor is not moved."""
+        moving = [load for load in self.loads if load.base is not None]
+        if not moving:
+            return None
+        total = np.zeros((*self.omega.shape, 3), dtype=complex)
+        for load in moving:
+            total = total + self.omega[..., None] ** load.power * load.base
+        return total
+
+    @cached_property
+    def q(self) -> Complexes:
+        """Response of the freedoms (D, F, n)."""
+        return solve_response(self.dynamic.at(self.omega), self._load_vector())
+
+    def _load_vector(self) -> Complexes:
+        total = np.zeros((*self.omega.shape, self.model.frame.count), dtype=complex)
+        for load in self.loads:
+            if load.base is None:
+                total += self.omega[..., None] ** float(load.power) * load.vector
+        prescribed = self._prescribed
+        if self.base is None or prescribed is None:
+            return total
+        # K(w) u at every station and connection that stands on the floor, moved to the right-hand side.
+        for station in self.model.stations:
+            if station.on_floor:
+                force = station.parallel * self._stiffness(station.name) * (prescribed @ station.axes)
+                total += force @ station.rows
+        for c in self.model.connections:
+            if c.on_floor:
+                stiffness = c.stiffness + 1j * c.hysteretic + 1j * self.omega[..., None] * c.viscous
+                total += (stiffness * prescribed) @ c.rows
+        if self.model.frame.flexible_floor:
+            m, k, c_floor = self.model.floor_mass, self.model.floor_stiffness, self.model.floor_damping
+            own = k - self.omega**2 * m + 1j * self.omega * c_floor
+            total[..., -1] += own * self.base[..., 2]
+        return total
+
+    @cached_property
+    def _prescribed(self) -> Complexes | None:
+        """Floor motion that is prescribed (D, F, 3): all of it, or only the level part over a flexible floor."""
+        if self.base is None or not self.model.frame.flexible_floor:
+            return self.base
+        return self.base * np.array([1.0, 1.0, 0.0])
+
+    def _stiffness(self, station: str) -> Complexes:
+        group = find_station(self.model, station).group
+        return part_dynamic_stiffness(self.model.groups[group], self.designs.part[:, group], self.omega)
+
+    def motion(self, point: str) -> Complexes:
+        return self.q @ self.model.points[point].T
+
+    def station_deflection(self, station: str) -> Complexes:
+        found = find_station(self.model, station)
+        deflection: Complexes = self.q @ found.rows.T
+        if found.on_floor and self._prescribed is not None:
+            deflection = deflection - self._prescribed @ found.axes
+        return deflection
+
+    def station_force(self, station: str) -> Complexes:
+        return self._stiffness(station) * self.station_deflection(station)
+
+    def total_force(self, surface: str) -> Complexes:
+        if surface == "ground" and self.model.frame.flexible_floor:
+            return self._ground_force()
+        total = np.zeros((*self.omega.shape, 3), dtype=complex)
+        for station in self.model.stations:
+            if station.on_floor:
+                total += station.parallel * self.station_force(station.name) @ station.axes.T
+        for c in self.model.connections:
+            if c.on_floor:
+                stiffness = c.stiffness + 1j * c.hysteretic + 1j * self.omega[..., None] * c.viscous
+                deflection = self.q @ c.rows.T
+                if self._prescribed is not None:
+                    deflection = deflection - self._prescribed
+                total += stiffness * deflection
+        return total
+
+    def _ground_force(self) -> Complexes:
+        level = self.total_force("floor") * np.array([1.0, 1.0, 0.0])
+        own = self.model.floor_stiffness + 1j * self.omega * self.model.floor_damping
+        vertical = own * self.q[..., -1]
+        return level + vertical[..., None] * np.array([0.0, 0.0, 1.0])
+
+
+def find_station(model: Model, name: str) -> StationRows:
+    """Return the station of this name."""
+    return next(station for station in model.stations if station.name == name)

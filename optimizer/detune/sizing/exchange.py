@@ -1,0 +1,212 @@
+"""From lines to whole frequency ranges: exchange of worst frequencies on one slice of fixed mass.
+
+A range limit is the intersection of infinitely many line limits. Start from a few of its lines (a superset of
+what is feasible), solve the slice exactly, find the exact worst frequency (closed form, `worst_frequency`) at
+the best point and both ends of every segment, add those lines, and solve again until nothing is violated.
+
+* Every step is a superset, so no branch is ever lost and an empty slice is proved empty.
+* At the end the returned points satisfy the limit over the continuum, and because the value of a superset
+  is never above the true optimum, they are the global optimum up to the stated violation.
+* A hole inside a segment: a limit of receptance form, and a transmission form of constant or (loss factor)
+  any ratio, is gamma >= sup_u p_u(k) with p_u affine in one and the same convex coordinate (k^2 after taking
+  2 k m away for viscous damping; k after taking -k^2 away for a loss factor), so the sup is convex there and
+  lies between two points below the chord of its values at them. Testing the cell ends of a segment therefore
+  bounds it on the whole cell: a line is added wherever the tested sup comes near the opposite envelope. For
+  viscous transmission forms whose ratio varies with frequency the same test is made, at cell ends and
+  middles, but without that proof.
+* A transmissibility T < 1 of constant ratio over a range binds at the lower end of the range alone:
+  (T^2 (k - m u)^2 - k^2) / (u (1 - T^2)) rises with u (its derivative is ((1 - T^2) k^2/u^2 + T^2 m^2) / (1 - T^2)).
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.sizing.envelope import Segment, gamma_interval, rows, segments
+from detune.sizing.slice_objective import Scales, SliceObjective
+from detune.sizing.statement import STANDARD_GRAVITY, OneAxisProblem, PowerForm, power_form
+from detune.sizing.worst_frequency import worst
+
+Floats = NDArray[np.float64]
+
+VIOLATION = 1e-11
+ROUNDS = 80
+SEEDS = 7
+
+
+def scales_of(problem: OneAxisProblem) -> Scales:
+    """Reference values near the middle of the problem's own stiffness bounds."""
+    low, high = problem.stiffness_bounds
+    stiffness = math.sqrt(low * high)
+    return Scales(stiffness, stiffness / problem.mass)
+
+
+def scaled_form(form: PowerForm, scales: Scales) -> PowerForm:
+    """The power form in scaled u, k and m (`Scales`)."""
+    factor = scales.squared_frequency**form.power
+    if not form.transmission:
+        factor /= scales.squared_frequency**2 if form.mass_proportional else scales.stiffness**2
+    return PowerForm(form.transmission, form.scale * factor, form.power, form.mass_proportional)
+
+
+@dataclass
+class LinePool:
+    """The lines in use: all line limits and, for every range, the frequencies exchanged so far.
+
+    Grows only by valid lines, so it may be shared between slices of different mass.
+    """
+
+    problem: OneAxisProblem
+    scales: Scales
+    forms: list[PowerForm]
+    ranges: list[tuple[float, float]]
+    index: list[int] = field(default_factory=list)
+    at_u: list[float] = field(default_factory=list)
+
+    @classmethod
+    def of(cls, problem: OneAxisProblem) -> LinePool:
+        """The starting pool: line limits, and a few frequencies of each range."""
+        scales = scales_of(problem)
+        forms = [scaled_form(power_form(limit), scales) for limit in problem.limits]
+        to_u = (2 * math.pi) ** 2 / scales.squared_frequency
+        ranges = [(x.lower_frequency**2 * to_u, x.upper_frequency**2 * to_u) for x in problem.limits]
+        pool = cls(problem, scales, forms, ranges)
+        for i, (low, high) in enumerate(ranges):
+            form = forms[i]
+            if low == high or (form.transmission and form.power == 0 and form.scale >= 1.0):
+                seeds = np.array([low])
+            else:
+                seeds = np.geomspace(low, high, SEEDS)
+                seeds[0], seeds[-1] = low, high
+            for u in seeds:
+                pool.index.append(i)
+                pool.at_u.append(float(u))
+        return pool
+
+    def is_range(self, i: int) -> bool:
+        """Whether limit i covers more than its own line."""
+        return self.ranges[i][1] > self.ranges[i][0]
+
+    def add(self, i: int, u: float) -> bool:
+        """Add a line; False when it stands in the pool already."""
+        for j, v in zip(self.index, self.at_u, strict=True):
+            if j == i and abs(v - u) <= 1e-14 * u:
+                return False
+        self.index.append(i)
+        self.at_u.append(u)
+        return True
+
+    def slice(
+        self, masses: tuple[float, ...], window: tuple[float, float]
+    ) -> tuple[list[Segment], SliceObjective]:
+        """Solve the slice of the present lines at one scaled mass, or relaxed over two (`envelope`)."""
+        problem = self.problem
+        table = rows(
+            [self.forms[i] for i in self.index],
+            np.array(self.at_u),
+            problem.damping_kind,
+            masses,
+            _damping_bounds(problem, self.scales),
+        )
+        objective = SliceObjective(problem, self.scales, masses[0], masses[-1])
+        inner, forbidden = stiffness_window(problem, self.scales, masses)
+        both = (max(window[0], inner[0]), min(window[1], inner[1]))
+        return segments(table, both, forbidden, objective), objective
+
+
+def _damping_bounds(problem: OneAxisProblem, scales: Scales) -> tuple[float, float]:
+    low, high = problem.damping_bounds
+    if problem.damping_kind == "loss factor":
+        return low, high
+    unit = math.sqrt(scales.gamma(True))
+    return low / unit, high / unit
+
+
+def stiffness_window(
+    problem: OneAxisProblem, scales: Scales, masses: tuple[float, ...]
+) -> tuple[tuple[float, float], tuple[tuple[float, float], ...]]:
+    """Scaled stiffness bounds with sag, and the open intervals separation forbids, at (or relaxed over) masses."""
+    low, high = (x / scales.stiffness for x in problem.stiffness_bounds)
+    lightest, heaviest = masses[0], masses[-1]
+    if problem.sag is not None:
+        # k/m = g r / sag, and scaled k over scaled m is (k/m) / squared_frequency.
+        unit = STANDARD_GRAVITY * problem.sag.dynamic_to_static / scales.squared_frequency
+        if problem.sag.most > 0:
+            low = max(low, lightest * unit / problem.sag.most)
+        else:
+            low = math.inf
+        if problem.sag.least > 0:
+            high = min(high, heaviest * unit / problem.sag.least)
+    forbidden = []
+    if problem.separation is not None:
+        to_u = (2 * math.pi) ** 2 / scales.squared_frequency
+        for a, b in problem.excitation_intervals:
+            left = heaviest * to_u * (a * (1 - problem.separation)) ** 2
+            right = lightest * to_u * (b * (1 + problem.separation)) ** 2
+            if left < right:
+                forbidden.append((left, right))
+    return (low, high), tuple(forbidden)
+
+
+def _near_closing(pool: LinePool, segment: Segment, mass: float) -> bool:
+    """Add the lines that would close (or nearly close) a segment somewhere inside; True when any was new."""
+    problem = pool.problem
+    k = segment.inner
+    table = rows(
+        [pool.forms[i] for i in pool.index],
+        np.array(pool.at_u),
+        problem.damping_kind,
+        (mass,),
+        _damping_bounds(problem, pool.scales),
+    )
+    low, high = gamma_interval(table, k)
+    high = np.maximum(low, high)
+    added = False
+    for i in (i for i in range(len(pool.forms)) if pool.is_range(i)):
+        for gamma in (low, high):
+            ratio, u = worst(pool.forms[i], problem.damping_kind, k, gamma, mass, *pool.ranges[i])
+            s = u if problem.damping_kind == "viscous" else np.ones_like(u)
+            form = pool.forms[i]
+            level = form.scale * u ** float(form.power)
+            free = 1.0 - level if form.transmission else np.ones_like(u)
+            with np.errstate(divide="ignore", invalid="ignore"):
+                top = level * (k**2 if form.transmission else mass**2 if form.mass_proportional else 1.0)
+                needed = (top - (k - mass * u) ** 2) / (s * free)
+            jump = np.where(free > 0, needed - low, high - needed)
+            closing = (ratio > 1 + VIOLATION) & (jump >= 0.5 * (high - low)) & (high > low)
+            if closing.any():
+                share = np.where(closing, jump / np.where(high > low, high - low, 1.0), -np.inf)
+                added |= pool.add(i, float(u[int(np.argmax(share))]))
+    return added
+
+
+def solve_slice(pool: LinePool, mass: float, window: tuple[float, float]) -> tuple[list[Segment], float]:
+    """Exact slice at one scaled mass over lines and ranges: its segments and the largest relative violation.
+
+    The violation is of (response/limit)^2 and at most `VIOLATION` unless `ROUNDS` were used up.
+    """
+    kind = pool.problem.damping_kind
+    wide = [i for i in range(len(pool.forms)) if pool.is_range(i)]
+    found: list[Segment] = []
+    excess = 0.0
+    for _ in range(ROUNDS):
+        found, _objective = pool.slice((mass,), window)
+        if not wide or not found:
+            return found, 0.0
+        k = np.array([x for s in found for x in (s.stiffness, s.left, s.right)])
+        gamma = np.array([x for s in found for x in (s.gamma, s.left_gamma, s.right_gamma)])
+        added, excess = False, 0.0
+        for i in wide:
+            ratio, u = worst(pool.forms[i], kind, k, gamma, mass, *pool.ranges[i])
+            excess = max(excess, float(ratio.max()) - 1.0)
+            for j in np.flatnonzero(ratio > 1 + VIOLATION):
+                added |= pool.add(i, float(u[j]))
+        for segment in found:
+            added |= _near_closing(pool, segment, mass)
+        if not added:
+            break
+    return found, excess

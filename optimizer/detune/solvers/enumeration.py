@@ -1,0 +1,149 @@
+"""Exact selection by going through every design, cheap stages first.
+
+Exact for as many designs as the time allows: each one is either excluded by a stated requirement or
+kept, so the cheapest kept one is the optimum and the nondominated kept ones are the whole front.
+"""
+
+import time
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.problem.build import Problem
+from detune.problem.stages import Stage, objective_values, stages
+from detune.response.designs import Designs, all_designs
+from detune.solvers.outcome import Outcome, ProofRecord, RuleCount, Settings, Stopped
+
+Floats = NDArray[np.float64]
+Integers = NDArray[np.int64]
+BLOCK = 20_000
+NAME = "enumeration"
+
+
+def accepts(problem: Problem) -> bool:
+    """Return whether this solver can treat the problem: any, though large ones take long."""
+    return problem.count > 0
+
+
+def solve(problem: Problem, settings: Settings) -> Outcome:
+    """Return all designs that meet the requirements, with the count of what each requirement excluded."""
+    started = time.perf_counter()
+    tally = _Tally(problem, stages(problem))
+    stopped: Stopped = "finished"
+    looked_at = 0
+    try:
+        for first in range(0, problem.count, BLOCK):
+            if settings.time_limit is not None and time.perf_counter() - started > settings.time_limit:
+                stopped = "time limit"
+                break
+            last = min(first + BLOCK, problem.count)
+            tally.go_through(all_designs(problem.model, first, last))
+            looked_at = last
+            if settings.progress is not None:
+                settings.progress(looked_at, problem.count)
+    except KeyboardInterrupt:
+        stopped = "interrupted"
+    return tally.outcome(problem, stopped, looked_at, time.perf_counter() - started)
+
+
+@dataclass
+class _Tally:
+    """What has been excluded and kept so far."""
+
+    problem: Problem
+    steps: tuple[Stage, ...]
+    kept: list[Designs] = field(default_factory=list)
+    margins: list[Floats] = field(default_factory=list)
+    counts: list[list[Integers]] = field(default_factory=list)
+    reach: list[Floats] = field(default_factory=list)
+    furthest: list[Integers] = field(default_factory=list)
+
+    def __post_init__(self) -> None:
+        sizes = [len(group.mounts) for group in self.problem.model.groups]
+        rules = sum(len(step.requirements) for step in self.steps)
+        self.counts = [[np.zeros(size, dtype=np.int64) for size in sizes] for _ in range(rules)]
+        self.reach = [np.full(size, -np.inf) for size in sizes]
+        self.furthest = [np.zeros((size, len(sizes) + 1), dtype=np.int64) for size in sizes]
+
+    def go_through(self, designs: Designs) -> None:
+        least = np.full(designs.count, np.inf)
+        rule = 0
+        for number, step in enumerate(self.steps):
+            alive = []
+            for first in range(0, designs.count, step.size):
+                index = np.arange(first, min(first + step.size, designs.count))
+                margins = step.margins(designs.take(index))
+                # A value that is not a number must never pass.
+                margins = np.where(np.isnan(margins), -np.inf, margins)
+                if not step.bound:
+                    counted = [i for i, r in enumerate(step.requirements) if not r.is_total]
+                    if counted:
+                        least[index] = np.minimum(least[index], margins[counted].min(axis=0))
+                failed = margins < 0.0
+                fails = failed.any(axis=0)
+                self._exclude(designs.take(index[fails]), margins[:, fails], failed[:, fails], rule, number)
+                alive.append(index[~fails])
+            rule += len(step.requirements)
+            keep = np.concatenate(alive) if alive else np.zeros(0, dtype=np.intp)
+            designs, least = designs.take(keep), least[keep]
+            if designs.count == 0:
+                return
+        self.kept.append(designs)
+        self.margins.append(least)
+
+    def _exclude(
+        self, designs: Designs, margins: Floats, failed: NDArray[np.bool_], rule: int, stage: int
+    ) -> None:
+        if designs.count == 0:
+            return
+        first = failed.argmax(axis=0)
+        # Later stages outrank; within one, the design that misses by least got furthest.
+        reach = stage + 1.0 / (1.0 - margins.min(axis=0))
+        numbers = np.column_stack([designs.part, designs.step])
+        for group, part in enumerate(designs.part.T):
+            for row in np.unique(first):
+                chosen = part[first == row]
+                self.counts[rule + row][group] += np.bincount(chosen, minlength=len(self.counts[rule + row][group]))
+            order = np.argsort(reach, kind="stable")
+            best = np.full(len(self.reach[group]), -1, dtype=np.int64)
+            best[part[order]] = order
+            present = np.flatnonzero(best >= 0)
+            better = present[reach[best[present]] > self.reach[group][present]]
+            self.reach[group][better] = reach[best[better]]
+            self.furthest[group][better] = numbers[best[better]]
+
+    def outcome(self, problem: Problem, stopped: Stopped, looked_at: int, seconds: float) -> Outcome:
+        groups = len(problem.model.groups)
+        empty = Designs(np.zeros((0, groups), dtype=np.intp), np.zeros(0, dtype=np.intp))
+        kept = empty
+        least = np.zeros(0)
+        if self.kept:
+            kept = Designs(
+                np.concatenate([d.part for d in self.kept]), np.concatenate([d.step for d in self.kept])
+            )
+            least = np.concatenate(self.margins)
+        labels = [(step.name, requirement.label) for step in self.steps for requirement in step.requirements]
+        rules = tuple(
+            RuleCount(stage, label, int(by_part[0].sum()), tuple(by_part))
+            for (stage, label), by_part in zip(labels, self.counts, strict=True)
+        )
+        closest_of = []
+        closest = []
+        for group in range(groups):
+            alive = np.unique(kept.part[:, group])
+            for part in range(len(self.reach[group])):
+                if part not in alive and np.isfinite(self.reach[group][part]):
+                    closest_of.append((group, part))
+                    closest.append(self.furthest[group][part])
+        numbers = np.array(closest, dtype=np.intp).reshape(-1, groups + 1)
+        return Outcome(
+            method=NAME,
+            stopped=stopped,
+            designs=kept,
+            objectives=objective_values(problem, kept, least) if kept.count else {},
+            least_margin=least,
+            record=ProofRecord(NAME, problem.count, looked_at, rules, kept.count, seconds),
+            closest=Designs(numbers[:, :-1], numbers[:, -1]),
+            closest_of=tuple(closest_of),
+        )

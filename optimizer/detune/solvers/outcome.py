@@ -1,0 +1,80 @@
+"""What a solver hands back: why it stopped, what the designs are worth, what is proven."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.response.designs import Designs
+
+Floats = NDArray[np.float64]
+Integers = NDArray[np.int64]
+Stopped = Literal["finished", "time limit", "interrupted"]
+Progress = Callable[[int, int], None]
+
+
+@dataclass(frozen=True)
+class Settings:
+    """How long a solver may work (seconds, None is unlimited) and whom it tells how far it is."""
+
+    time_limit: float | None = None
+    progress: Progress | None = None
+
+
+@dataclass(frozen=True)
+class RuleCount:
+    """How many designs one requirement excluded, as the first that they failed in the order of stages.
+
+    `by_part` holds for each group the number of excluded designs with each of its parts.
+    """
+
+    stage: str
+    rule: str
+    excluded: int
+    by_part: tuple[Integers, ...]
+
+
+@dataclass(frozen=True)
+class ProofRecord:
+    """Why nothing better exists: how many designs there were and how many each rule excluded.
+
+    The counts and the designs that meet every rule add up to `designs` if the solver finished.
+    """
+
+    method: str
+    designs: int
+    looked_at: int
+    rules: tuple[RuleCount, ...]
+    met: int
+    seconds: float
+
+    @property
+    def accounted(self) -> bool:
+        """Whether every design is either excluded by a stated rule or among those that meet all."""
+        return self.met + sum(rule.excluded for rule in self.rules) == self.designs
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """A solver's claim. Only an assessment may say "meets the brief".
+
+    `designs` are all that met every requirement in the solver's evaluation, with `objectives` (each
+    (D,)) and `least_margin` (D,). `closest` holds for every group and part the excluded design that got
+    furthest, as (group, part, design), where no design with that part is left.
+    """
+
+    method: str
+    stopped: Stopped
+    designs: Designs
+    objectives: dict[str, Floats]
+    least_margin: Floats
+    record: ProofRecord
+    closest: Designs
+    closest_of: tuple[tuple[int, int], ...]
+
+    @property
+    def none_exists(self) -> bool:
+        """Whether it is proven that no design meets the requirements; "none found" alone is not that."""
+        return self.stopped == "finished" and self.designs.count == 0

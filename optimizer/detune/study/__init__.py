@@ -1,0 +1,1 @@
+"""Floor 6: studies, fronts, reasons and results."""

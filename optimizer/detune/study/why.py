@@ -1,0 +1,83 @@
+"""Why each part fell out: the first rule that excluded it and the hardest one."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from detune.parts.kinds.mount import Mount
+from detune.problem.build import Problem
+from detune.problem.stages import stages
+from detune.solvers.outcome import Outcome
+
+
+@dataclass(frozen=True)
+class PartReason:
+    """What became of one part in one group.
+
+    `meets` is how many designs with it met the brief, of `designs`; `cheapest` the least cost among
+    them. A part that fell out has the first rule that excluded designs with it (and how many), and
+    the hardest: the rule its closest design misses by most, with that margin.
+    """
+
+    group: str
+    mount: Mount
+    designs: int
+    meets: int
+    cheapest: float | None
+    filtered: str | None
+    first_rule: str | None
+    first_excluded: int
+    hardest_rule: str | None
+    hardest_margin: float | None
+    closest: str | None
+
+
+def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
+    """Return what became of every part of every group, the filtered ones included."""
+    hardest = _hardest(problem, outcome)
+    reasons = []
+    for group, data in enumerate(problem.model.groups):
+        each = problem.count // len(data.mounts)
+        for part, mount in enumerate(data.mounts):
+            with_part = np.flatnonzero(outcome.designs.part[:, group] == part)
+            counts = [(rule.rule, int(rule.by_part[group][part])) for rule in outcome.record.rules]
+            first = next(((rule, count) for rule, count in counts if count), (None, 0))
+            rule, margin, closest = hardest.get((group, part), (None, None, None))
+            reasons.append(
+                PartReason(
+                    group=data.name,
+                    mount=mount,
+                    designs=each,
+                    meets=len(with_part),
+                    cheapest=float(outcome.objectives["cost"][with_part].min()) if len(with_part) else None,
+                    filtered=None,
+                    first_rule=first[0],
+                    first_excluded=first[1],
+                    hardest_rule=rule,
+                    hardest_margin=margin,
+                    closest=closest,
+                )
+            )
+    for dropped in problem.dropped:
+        reasons.append(
+            PartReason(dropped.group, dropped.mount, 0, 0, None, dropped.reason, None, 0, None, None, None)
+        )
+    return tuple(reasons)
+
+
+def _hardest(problem: Problem, outcome: Outcome) -> dict[tuple[int, int], tuple[str, float, str]]:
+    """Judge the closest design of every part that fell out by all requirements."""
+    if outcome.closest.count == 0:
+        return {}
+    labels: list[str] = []
+    margins = []
+    for stage in stages(problem):
+        if not stage.bound:
+            labels += [requirement.label for requirement in stage.requirements]
+            margins.append(stage.margins(outcome.closest))
+    table = np.nan_to_num(np.concatenate(margins), nan=-np.inf)
+    worst = table.argmin(axis=0)
+    return {
+        key: (labels[row], float(table[row, index]), str(problem.design(outcome.closest, index)))
+        for index, (key, row) in enumerate(zip(outcome.closest_of, worst, strict=True))
+    }
