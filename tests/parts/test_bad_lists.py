@@ -1,4 +1,4 @@
-"""Bad parts lists: each fault names file, line, column, what stands there, what to write, the nearest name."""
+"""Bad parts lists: each fault names file, line, column, what stands there, what to write, nearest name."""
 
 from __future__ import annotations
 
@@ -8,7 +8,6 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-
 from detune.ground.errors import BriefError, Fault
 from detune.parts.catalog import read_catalog
 
@@ -64,14 +63,26 @@ CELLS = [
     cell("dynamic below static", ZD, "16", "at least 144 N/mm, 0.9 of stiffness_z_static"),
     cell("lateral dynamic below static", XD, "35.9", "at least 36 N/mm, 0.9 of stiffness_x_static"),
     cell("dynamic in another unit", ZD, "200000", "10 times stiffness_z_static"),
-    cell("load window reversed", "load_min [N]", "1300", "at most load_max, which is 1.2 kN"),
+    cell("load window reversed", "load_min [N]", "1300", "at most load_max, which is 1200 N"),
     cell("tension without pulls", "load_min [N]", "-50", "at least 0 N, or pulls = yes"),
-    cell("rated above the greatest load", "load_rated [N]", "1500", "a load between load_min 200 N and load_max"),
+    cell(
+        "rated above the greatest load",
+        "load_rated [N]",
+        "1500",
+        "a load between load_min 200 N and load_max",
+    ),
     cell("rated below the least load", "load_rated [N]", "20", "a load between load_min 200 N and load_max"),
     # 1200 N / 160 N/mm = 7.5 mm.
-    cell("cannot carry its load", "deflection_max [mm]", "7.4", "at least 7.5 mm, load_max / stiffness_z_static"),
+    cell(
+        "cannot carry its load",
+        "deflection_max [mm]",
+        "7.4",
+        "at least 7.5 mm, load_max / stiffness_z_static",
+    ),
     cell("travel beyond its height", "free_height [mm]", "11", "at least deflection_max, which is 12 mm"),
-    cell("temperatures reversed", "temperature_min [degC]", "90", "less than temperature_max, which is 80 degC"),
+    cell(
+        "temperatures reversed", "temperature_min [degC]", "90", "less than temperature_max, which is 80 degC"
+    ),
     cell("no damping in a row", "loss_factor", "", "exactly one of loss_factor, damping_ratio, viscous"),
     cell("lateral static without dynamic", XD, "", "because stiffness_x_static is stated"),
     cell("lateral dynamic without static", XS, "", "because stiffness_x_dynamic is stated"),
@@ -84,11 +95,14 @@ LISTS = [
          {"rename": {"mass [kg]": "mas [kg]"}}),
     Case("unknown header, unlike any", 1, "Colour", "Colour", "other headers are mapped in the study", None,
          {"add": {"Colour": "black"}}),
-    Case("capital letters", 1, "Cost", "", "a column cost", None, {"drop": ["cost"], "add": {"Cost": "2"}},
+    Case("empty map is no map", 1, "Colour", "Colour", "other headers are mapped in the study", None,
+         {"add": {"Colour": "black"}}, {"header_map": {}, "units": {}, "constants": {}}),
+    Case("capital letters", 1, "cost", "", "a column cost", "Cost", {"drop": ["cost"], "add": {"Cost": "2"}},
          {"header_map": {"mass": "mass [kg]"}}),
     Case("empty header", 1, "header", "", "a name in every cell of the header row", None, {"add": {"": "2"}}),
     Case("missing column", 1, ZD, "", "a column stiffness_z_dynamic [N/mm]", None, {"drop": [ZD]}),
-    Case("no damping column", 1, "loss_factor", "", "the list states no damping", None, {"drop": ["loss_factor"]}),
+    Case("no damping column", 1, "loss_factor", "", "the list states no damping", None,
+         {"drop": ["loss_factor"]}),
     Case("same header twice", 1, "cost [1]", "cost [1]", "each column once; column 15", None,
          {"add": {"cost [1]": "24.5"}}),
     Case("no unit", 1, "mass", "", "a unit of mass, for example \"kg\"; write it as mass [kg]", None,
@@ -105,24 +119,31 @@ LISTS = [
          {"rename": {"cost": "cost [kg]"}}),
     Case("two damping columns", 4, "viscous [N s/m]", "30", "this row fills loss_factor and viscous", None,
          {"add": {"viscous [N s/m]": ""}, "cells": {(4, "viscous [N s/m]"): "30"}}),
-    Case("lateral damping alone", 2, "viscous_lateral [N s/m]", "30", "the axial coefficient in viscous", None,
+    Case("lateral damping alone", 2, "viscous_lateral [N s/m]", "30", "the axial coefficient in viscous",
+         None,
          {"add": {"viscous_lateral [N s/m]": ""}, "cells": {(2, "viscous_lateral [N s/m]"): "30"}}),
-    Case("lateral damping without stiffness", 1 + 1, "viscous_lateral [N s/m]", "30", "the lateral stiffness", None,
+    Case("lateral damping without stiffness", 1 + 1, "viscous_lateral [N s/m]", "30",
+         "the lateral stiffness", None,
          {"rows": 1, "drop": [XS, XD], "rename": {"loss_factor": "viscous [N s/m]"},
           "add": {"viscous_lateral [N s/m]": "30"}}),
-    Case("damping ratio without its load", 3, "load_rated [N]", "", "because damping_ratio holds at the rated load",
+    Case("damping ratio without its load", 3, "load_rated [N]", "",
+         "because damping_ratio holds at the rated load",
          None, {"rename": {"loss_factor": "damping_ratio"}, "cells": {(3, "load_rated [N]"): ""}}),
-    Case("damping ratio without any load", 1, "load_rated [N]", "", "because damping_ratio holds at the rated load",
+    Case("damping ratio without any load", 1, "load_rated [N]", "",
+         "because damping_ratio holds at the rated load",
          None, {"rename": {"loss_factor": "damping_ratio"}, "drop": ["load_rated [N]"]}),
-    Case("damping ratio in per cent without a sign", 2, "damping_ratio", "5", "at least 0 and at most 1", None,
+    Case("damping ratio in per cent without a sign", 2, "damping_ratio", "5", "at least 0 and at most 1",
+         None,
          {"rename": {"loss_factor": "damping_ratio"}, "cells": {(2, "loss_factor"): "5"}}),
     Case("amplification of nothing", 2, "amplification", "1", "a ratio above 1 and at most 1000", None,
          {"rename": {"loss_factor": "amplification"}, "rows": 1, "cells": {(2, "loss_factor"): "1"}}),
     Case("lateral static column without dynamic", 1, XD, "", "because stiffness_x_static is stated", None,
          {"drop": [XD]}),
-    Case("second lateral direction alone", 1, "stiffness_x_static [N/mm]", "", "because the list states y", None,
+    Case("second lateral direction alone", 1, "stiffness_x_static [N/mm]", "", "because the list states y",
+         None,
          {"drop": [XS, XD], "add": {YS: "40", YD: "50"}}),
-    Case("second lateral direction alone in a row", 3, XS, "", "because this row states the y direction", None,
+    Case("second lateral direction alone in a row", 3, XS, "", "because this row states the y direction",
+         None,
          {"add": {YS: "40", YD: "50"}, "cells": {(3, XS): "", (3, XD): ""}}),
     Case("family without a tolerance", 3, "family", "ruber", "or a stated tolerance", "rubber",
          {"cells": {(3, "family"): "ruber", (3, "tolerance [%]"): ""}}),
@@ -130,16 +151,20 @@ LISTS = [
 ]  # fmt: skip
 
 MAPPED = [
-    Case("map to a header not there", 1, "headers.mass", "mass (kg)", "a header of this sheet", "mass [kg]", {},
+    Case("map to a header not there", 1, "headers.mass", "mass (kg)", "a header of this sheet",
+         "mass [kg]", {},
          {"header_map": {"mass": "mass (kg)"}}),
     Case("map of no column", 1, "headers.mas", "mas", "the name of a column", "mass", {},
          {"header_map": {"mas": "mass [kg]"}}),
     Case("misspelt header beside a map", 1, "temperature_mim [degC]", "temperature_mim [degC]",
          "the name of a column", "temperature_min [degC]",
-         {"rename": {"temperature_min [degC]": "temperature_mim [degC]"}}, {"header_map": {}}),
-    Case("mapped without a unit", 1, "Weight", "", "a unit of mass", None, {"rename": {"mass [kg]": "Weight"}},
+         {"rename": {"temperature_min [degC]": "temperature_mim [degC]"}},
+         {"header_map": {"mass": "mass [kg]"}}),
+    Case("mapped without a unit", 1, "Weight", "", "a unit of mass", None,
+         {"rename": {"mass [kg]": "Weight"}},
          {"header_map": {"mass": "Weight"}}),
-    Case("mapped with a wrong unit", 1, "Weight", "kN", "a unit of mass", None, {"rename": {"mass [kg]": "Weight"}},
+    Case("mapped with a wrong unit", 1, "Weight", "kN", "a unit of mass", None,
+         {"rename": {"mass [kg]": "Weight"}},
          {"header_map": {"mass": "Weight"}, "units": {"mass": "kN"}}),
     Case("mapped to a header that stands twice", 1, "headers.mass", "W [kg]", "it stands 2 times", None,
          {"rename": {"mass [kg]": "W [kg]", "stock": "W [kg]"}}, {"header_map": {"mass": "W [kg]"}}),
@@ -147,15 +172,19 @@ MAPPED = [
          {"units": {"maas": "kg"}}),
     Case("unit against the header", 1, "mass [kg]", "lb", "the unit of the header, kg", None, {},
          {"units": {"mass": "lb"}}),
-    Case("unit of a column not read", 1, "units.amplification", "1", "amplification is not in the sheet", None, {},
+    Case("unit of a column not read", 1, "units.amplification", "1", "amplification is not in the sheet",
+         None, {},
          {"units": {"amplification": "1"}}),
-    Case("unit of a constant", 1, "units.mass", "kg", "a constant carries its own", None, {"drop": ["mass [kg]"]},
+    Case("unit of a constant", 1, "units.mass", "kg", "a constant carries its own", None,
+         {"drop": ["mass [kg]"]},
          {"units": {"mass": "kg"}, "constants": {"mass": "2 kg"}}),
     Case("constant of no column", 1, "constants.famly", "famly", "the name of a column", "family", {},
          {"constants": {"famly": "rubber"}}),
-    Case("constant and column", 1, "constants.family", "rubber", "a column that the sheet does not have", None, {},
+    Case("constant and column", 1, "constants.family", "rubber", "a column that the sheet does not have",
+         None, {},
          {"constants": {"family": "rubber"}}),
-    Case("constant without a unit", 1, "constants.mass", "2", "a mass with its unit", None, {"drop": ["mass [kg]"]},
+    Case("constant without a unit", 1, "constants.mass", "2", "a mass with its unit", None,
+         {"drop": ["mass [kg]"]},
          {"constants": {"mass": "2"}}),
     Case("constant out of range", 1, "constants.loss_factor", "3", "a ratio at least 0 and at most 1.5", None,
          {"drop": ["loss_factor"]}, {"constants": {"loss_factor": "3"}}),
@@ -163,7 +192,8 @@ MAPPED = [
          {"constants": {"stock": "1.5"}}),
     Case("constant neither yes nor no", 1, "constants.pulls", "often", "yes or no", None, {"drop": ["pulls"]},
          {"constants": {"pulls": "often"}}),
-    Case("empty constant", 1, "constants.family", "", "a value for the whole list", None, {"drop": ["family"]},
+    Case("empty constant", 1, "constants.family", "", "a value for the whole list", None,
+         {"drop": ["family"]},
          {"constants": {"family": " "}}),
     Case("damping constant and column", 2, "viscous [N s/m]", "30", "fills loss_factor and viscous", None,
          {"rows": 1, "rename": {"loss_factor": "viscous [N s/m]"}, "cells": {(2, "loss_factor"): "30"}},
@@ -184,7 +214,12 @@ def test_one_mistake_gives_its_one_fault(
 ) -> None:
     (fault,) = faults_of(write(make_list(**case.spoil)), **case.study)
     wanted = case.found.strip('"')
-    assert (fault.line, fault.where, fault.found, fault.nearest) == (case.line, case.where, wanted, case.nearest)
+    assert (fault.line, fault.where, fault.found, fault.nearest) == (
+        case.line,
+        case.where,
+        wanted,
+        case.nearest,
+    )
     assert case.expected in fault.expected
 
 
@@ -200,7 +235,9 @@ FILES = [
 ]
 
 
-@pytest.mark.parametrize(("content", "line", "expected"), [case[1:] for case in FILES], ids=[c[0] for c in FILES])
+@pytest.mark.parametrize(
+    ("content", "line", "expected"), [case[1:] for case in FILES], ids=[c[0] for c in FILES]
+)
 def test_file_that_is_no_list(
     content: bytes, line: int | None, expected: str, write: Callable[..., Path]
 ) -> None:
@@ -233,14 +270,18 @@ def test_unknown_kind(write: Callable[..., Path], make_list: Callable[..., str])
     assert (fault.where, fault.found, fault.nearest) == ("kind", "mounts", "mount")
 
 
-def test_decimal_comma_is_refused_in_a_sentence(make_list: Callable[..., str], write: Callable[..., Path]) -> None:
+def test_decimal_comma_is_refused_in_a_sentence(
+    make_list: Callable[..., str], write: Callable[..., Path]
+) -> None:
     text = make_list(delimiter=";", cells={(3, "cost"): "24,5"})
     (fault,) = faults_of(write(text))
     assert (fault.line, fault.where, fault.found) == (3, "cost", "24,5")
     assert fault.expected == 'a cost as a number; a decimal comma is not read, write "24.5"'
 
 
-def test_comma_between_thousands_is_refused(make_list: Callable[..., str], write: Callable[..., Path]) -> None:
+def test_comma_between_thousands_is_refused(
+    make_list: Callable[..., str], write: Callable[..., Path]
+) -> None:
     (fault,) = faults_of(write(make_list(cells={(2, "load_max [N]"): '"1,200"'})))
     assert 'a comma can be read in two ways, write "1200" or a decimal point' in fault.expected
 
@@ -293,15 +334,24 @@ def test_everything_at_once_in_the_order_of_the_sheet(
     ]
 
 
-def test_cells_below_a_wrong_unit_are_still_read(make_list: Callable[..., str], write: Callable[..., Path]) -> None:
+def test_cells_below_a_wrong_unit_are_still_read(
+    make_list: Callable[..., str], write: Callable[..., Path]
+) -> None:
     text = make_list(rename={"mass [kg]": "mass [N]"}, cells={(4, "mass [kg]"): "heavy"})
     assert [fault.line for fault in faults_of(write(text))] == [1, 4]
+
+
+def test_absurd_figures_are_compared_without_overflow(
+    make_list: Callable[..., str], write: Callable[..., Path]
+) -> None:
+    faults = faults_of(write(make_list(1, {(2, ZS): "1e-320", (2, "load_max [N]"): "1e300"})))
+    assert [fault.where for fault in faults] == [ZD, "deflection_max [mm]"]
 
 
 def test_fault_reads_as_one_line(make_list: Callable[..., str], write: Callable[..., Path]) -> None:
     path = write(make_list(rename={"mass [kg]": "mas [kg]"}))
     (fault,) = faults_of(path)
     assert str(fault) == (
-        f'{path}:1: mas [kg]: found "mas [kg]", expected the name of a column, with its unit as in mass [kg]; '
-        'other headers are mapped in the study; did you mean "mass [kg]"?'
+        f'{path}:1: mas [kg]: found "mas [kg]", expected the name of a column, with its unit as in mass [kg]'
+        '; other headers are mapped in the study; did you mean "mass [kg]"?'
     )

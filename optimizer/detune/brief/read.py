@@ -79,8 +79,13 @@ def read_brief(path: str | Path) -> Brief:
 
 def scan_brief(path: str | Path) -> Reading:
     """Read a study file as far as it goes. Raises BriefError only where nothing can be read (TOML syntax)."""
+    data, positions = load(path)
+    return scan_data(data, positions, path)
+
+
+def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -> Reading:
+    """Read the tables of a study file that has been loaded, or varied since."""
     study = Path(path)
-    data, positions = load(study)
     findings: list[Finding] = list(_unknown_tables(data))
     read: dict[str, Any] = {}
     for name in TEXTS:

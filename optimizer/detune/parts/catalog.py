@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import TypeAlias
 
 from detune.ground.errors import BriefError, Fault, nearest_name
-from detune.ground.units import show
+from detune.ground.units import UnitError, parse, show
 from detune.parts.assumed import Assumed
 from detune.parts.columns import Column, column_named
 from detune.parts.headers import match_headers
@@ -100,9 +100,7 @@ def filter_parts(
     for name, criterion in criteria.items():
         column = column_named(kind.COLUMNS, name)
         if column is None:
-            nearest = nearest_name(name, [known.name for known in kind.COLUMNS])
-            expected = f"a column of a {catalog.kind} list"
-            faults.append(Fault(catalog.file, None, f"filter.{name}", name, expected, nearest))
+            faults.append(_unknown_column(catalog.file, catalog.kind, name))
             continue
         faults.extend(_criterion_faults(catalog.file, column, criterion))
         wanted.append((column, criterion))
@@ -118,6 +116,45 @@ def filter_parts(
         else:
             dropped[index] = reason
     return tuple(kept), dropped
+
+
+def criteria_in_si(
+    texts: Mapping[str, Sequence[str] | Mapping[str, str | None]], kind: str = "mount", file: str = "study"
+) -> dict[str, Criterion]:
+    """Turn criteria as a study writes them, {"load_max": {"min": "1.2 kN"}}, into those of `filter_parts`.
+
+    An end that is None is left open. kind: kind of part. file: the study, for the faults. Raises BriefError
+    with every window end that cannot be read and every unknown column.
+    """
+    criteria: dict[str, Criterion] = {}
+    faults: list[Fault] = []
+    for name, text in texts.items():
+        column = column_named(KINDS[kind].COLUMNS, name)
+        if column is None:
+            faults.append(_unknown_column(file, kind, name))
+        elif not isinstance(text, Mapping):
+            criteria[name] = text
+        elif not column.numeric:
+            faults.append(Fault(file, None, f"filter.{name}", str(dict(text)), "a list of the texts allowed"))
+        else:
+            window: dict[str, float] = {}
+            for end, number in text.items():
+                if number is None:
+                    continue
+                try:
+                    window[end] = parse(number, column.kind)
+                except UnitError as error:
+                    place = f"filter.{name}.{end}"
+                    faults.append(Fault(file, None, place, error.found, error.expected, error.nearest))
+            criteria[name] = window
+    if faults:
+        raise BriefError(faults)
+    return criteria
+
+
+def _unknown_column(file: str, kind: str, name: str) -> Fault:
+    nearest = nearest_name(name, [column.name for column in KINDS[kind].COLUMNS])
+    return Fault(file, None, f"filter.{name}", name, f"a column of a {kind} list", nearest)
 
 
 def _criterion_faults(file: str, column: Column, criterion: Criterion) -> list[Fault]:

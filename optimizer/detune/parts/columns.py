@@ -8,8 +8,9 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from detune.ground.units import show
 from numpy.typing import NDArray
+
+from detune.ground.units import show
 
 _HEADER = re.compile(r"(?P<name>[^\[\]]*?)\s*(?:\[(?P<unit>[^\[\]]*)\])?\s*", re.DOTALL)
 

@@ -47,7 +47,7 @@ class Matching:
 class Stated:
     """What a study says of a supplier's sheet, by the name of our column."""
 
-    headers: Mapping[str, str] | None
+    headers: Mapping[str, str]
     units: Mapping[str, str]
     constants: Mapping[str, str]
 
@@ -84,7 +84,7 @@ class _Matcher:
 
     def mapped_headers(self) -> None:
         headers = self.sheet.headers
-        for column, place, header in self.known_keys(self.stated.headers or {}, "headers"):
+        for column, place, header in self.known_keys(self.stated.headers, "headers"):
             places = [index for index, text in enumerate(headers) if text == header.strip()]
             if not places:
                 self.fault(place, header, "a header of this sheet", nearest_name(header, headers))
@@ -127,7 +127,7 @@ class _Matcher:
             self.fault("header", "", "a name in every cell of the header row")
             return
         near = difflib.get_close_matches(name, self.names, 1, _MISSPELT)
-        if self.stated.headers is not None and not near:
+        if self.stated.headers and not near:
             return
         nearest = column_named(self.columns, nearest_name(name, self.names) or "")
         expected = (
@@ -191,7 +191,8 @@ def match_headers(
     """Find each column in the sheet.
 
     headers: our column -> the sheet's header. units: our column -> unit, for a header that does not carry its
-    own. constants: our column -> one value for the whole list, with its unit. Without `headers` every header
-    must be one of ours; with it, the others are left unread, save one that looks like a misspelt one of ours.
+    own. constants: our column -> one value for the whole list, with its unit. Where `headers` is empty every
+    header of the sheet must be one of ours; otherwise the others are left unread, save one that looks like a
+    misspelt one of ours.
     """
-    return _Matcher(sheet, columns, Stated(headers, units or {}, constants or {})).match()
+    return _Matcher(sheet, columns, Stated(headers or {}, units or {}, constants or {})).match()

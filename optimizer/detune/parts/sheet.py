@@ -117,7 +117,7 @@ def _records(text: str, delimiter: str, file: str) -> tuple[list[tuple[int, list
     try:
         for cells in reader:
             # A row of delimiters only is what a spreadsheet writes for a row once touched.
-            if cells and (cells[0] or any(map(str.strip, cells))):
+            if cells and (cells[0].strip() or any(map(str.strip, cells))):
                 records.append((start, cells))
             start = reader.line_num + 1
     except csv.Error as error:

@@ -7,12 +7,13 @@ import re
 from collections.abc import Mapping, Sequence
 
 import numpy as np
+from numpy.typing import NDArray
+
 from detune.ground.errors import Fault
 from detune.ground.units import KINDS, UnitError, parse, parse_column
 from detune.parts.columns import Column
 from detune.parts.headers import Source
 from detune.parts.sheet import Sheet
-from numpy.typing import NDArray
 
 _NUMBER = re.compile(r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
 _PLAIN = re.compile(r"[0-9eE+.\n-]*")

@@ -75,10 +75,11 @@ def supremum(
     evaluated = omega.size
     value, where, error = (np.zeros(values.shape[:2]) for _ in range(3))
     active = np.arange(omega.shape[0])
+    poles = centres + 1j * widths
     omega, values = _unique(omega, values)
     for turn in range(MOST_ROUNDS + 1):
         best = values.max(axis=-1)
-        peaks = local_peaks(omega, values, best, tolerance)
+        peaks = local_peaks(omega, values, best, poles[active], tolerance)
         value[:, active] = best
         where[:, active] = omega[np.arange(active.size), values.argmax(axis=-1)]
         error[:, active] = _shortfall(peaks, best)

@@ -1,7 +1,8 @@
 """Local peaks of sampled response curves: where the true peak lies and how high it can be.
 
 Near a resonance 1/amplitude^2 is very nearly a parabola in omega (exactly one for a single mode of small
-damping), so three samples give the peak. A fourth sample tells how far the parabola can be trusted.
+damping), so three samples give the peak. A fourth sample tells how far the parabola can be trusted, and so does
+the distance to the nearest pole: a response has no detail much finer than that.
 """
 
 from __future__ import annotations
@@ -9,12 +10,18 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from detune.physics.array_types import FloatArray, IntArray
+from detune.physics.array_types import ComplexArray, FloatArray, IntArray
 
 # A neighbour below 0.4 of the peak (2.3 half widths away) is too far for a parabola.
 COARSE = 1.0 / 0.4**2
-# Most that a sampled peak is taken to fall short of the true one while its neighbours are that far.
+# So is one farther than this many distances to the nearest pole: another hump may fit between. A sample at an end
+# of the interval has a neighbour on one side only and needs a closer one.
+COARSE_GAP = 1.3
+COARSE_GAP_AT_EDGE = 0.5
+# Most that a sampled peak is taken to fall short of the true one while a neighbour is that far down.
 COARSE_RISE = 5.0
+# The same while its neighbours are only far away, per gap in distances to the nearest pole.
+HIDDEN_RISE = 0.3
 SMALLEST = 1.0 / COARSE_RISE**2
 
 
@@ -22,8 +29,8 @@ SMALLEST = 1.0 / COARSE_RISE**2
 class Peaks:
     """Sampled local peaks, flat: row, design, and what to do about each.
 
-    rise is the true peak over the sample, at most; place is where to sample next; reach is how far from place
-    a sample serves as well. Two entries with the same peak are two places to sample.
+    rise is the true peak over the sample, at most; place is where to sample next (NaN: nowhere); reach is how far
+    from place a sample serves as well. Two entries with the same peak are two places to sample.
     """
 
     row: IntArray
@@ -34,128 +41,147 @@ class Peaks:
     reach: FloatArray
 
 
-def local_peaks(omega: FloatArray, values: FloatArray, best: FloatArray, tolerance: float) -> Peaks:
+@dataclass(frozen=True)
+class _Bracket:
+    """A peak sample (value 1, at 0) among its neighbours, flat over peaks.
+
+    nodes (N, 5) distance in omega of two samples on either side, infinite where there is none; ordinates (N, 5)
+    (peak/value)^2; pole (N,) distance to the nearest pole.
+    """
+
+    nodes: FloatArray
+    ordinates: FloatArray
+    pole: FloatArray
+
+
+def local_peaks(
+    omega: FloatArray, values: FloatArray, best: FloatArray, poles: ComplexArray, tolerance: float
+) -> Peaks:
     """Every sampled local peak that could exceed the best sample of its row.
 
-    Shapes: omega (D, F) ascending, unused entries infinite and last; values (R, D, F), unused -inf; best (R,
-    D).
+    Shapes: omega (D, F) ascending, unused entries infinite and last; values (R, D, F), unused -inf; best (R, D);
+    poles (D, m) as natural frequency + j half width in rad/s.
     """
     peak = values > 0.0
     peak[..., 1:] &= values[..., 1:] > values[..., :-1]
     peak[..., :-1] &= values[..., :-1] >= values[..., 1:]
     peak &= values * COARSE_RISE >= best[..., None]
     row, design, i = np.nonzero(peak)
-    nodes, ordinates = _neighbourhood(omega, values, row, design, i)
-    sample = values[row, design, i]
-    inner = np.isfinite(nodes[:, 1]) & np.isfinite(nodes[:, 3])
-    alone = ~(np.isfinite(nodes[:, 1]) | np.isfinite(nodes[:, 3]))
+    sample, centre = values[row, design, i], omega[design, i]
+    bracket = _neighbourhood(omega, values, poles, row, design, i)
+    before, after = np.isfinite(bracket.nodes[:, 1]), np.isfinite(bracket.nodes[:, 3])
     found = []
-    for chosen, judge in ((inner, _inside), (~inner & ~alone, _edge)):
-        rise, place, reach = judge(nodes[chosen], ordinates[chosen], tolerance)
-        for side in range(place.shape[1]):
-            found.append((row[chosen], design[chosen], sample[chosen], rise, place[:, side], reach))
-    return Peaks(*(np.concatenate(part) for part in zip(*found, strict=True)))
+    for chosen, judge in ((before & after, _inside), (before ^ after, _edge)):
+        part = _Bracket(bracket.nodes[chosen], bracket.ordinates[chosen], bracket.pole[chosen])
+        rise, places, reach = judge(part, tolerance)
+        for place in places:
+            found.append((row[chosen], design[chosen], sample[chosen], rise, centre[chosen] + place, reach))
+    return Peaks(*(np.concatenate(column) for column in zip(*found, strict=True)))
 
 
 def _neighbourhood(
-    omega: FloatArray, values: FloatArray, row: IntArray, design: IntArray, i: IntArray
-) -> tuple[FloatArray, FloatArray]:
-    """Five samples round each peak: distance in omega (infinite where there is none), and (peak/value)^2."""
-    last = omega.shape[1] - 1
+    omega: FloatArray,
+    values: FloatArray,
+    poles: ComplexArray,
+    row: IntArray,
+    design: IntArray,
+    i: IntArray,
+) -> _Bracket:
     steps = np.arange(-2, 3)
     index = i[:, None] + steps
-    exists = (index >= 0) & (index <= last)
-    index = np.clip(index, 0, last)
+    exists = (index >= 0) & (index < omega.shape[1])
+    index = np.clip(index, 0, omega.shape[1] - 1)
     place = omega[design[:, None], index]
     exists &= np.isfinite(place)
-    sample = values[row, design, i][:, None]
+    sample, centre = values[row, design, i][:, None], omega[design, i][:, None]
     value = np.where(exists, values[row[:, None], design[:, None], index], sample)
     # A zero of the response (an anti-resonance) is only far down, not infinitely far.
     ordinates = (sample / np.maximum(value, 1e-8 * sample)) ** 2
-    centre = omega[design, i][:, None]
-    nodes = np.where(exists, np.where(exists, place, 0.0) - centre, [-np.inf, -np.inf, 0.0, np.inf, np.inf])
-    return np.column_stack([nodes, centre]), ordinates
+    distance = np.where(exists, place, 0.0) - centre
+    nodes = np.where(exists, distance, [-np.inf, -np.inf, 0.0, np.inf, np.inf])
+    return _Bracket(nodes, ordinates, np.abs(centre - poles[design]).min(axis=1, initial=np.inf))
 
 
-def _inside(
-    nodes: FloatArray, ordinates: FloatArray, tolerance: float
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Peaks with a neighbour on both sides: (rise, up to two places, reach)."""
-    left, right, centre = -nodes[:, 1], nodes[:, 3], nodes[:, 5]
-    y_left, y_right = ordinates[:, 1], ordinates[:, 3]
-    slope_left, slope_right = (1.0 - y_left) / left, (y_right - 1.0) / right
+def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatArray], FloatArray]:
+    """Peaks with a neighbour on both sides: (rise, places from the peak sample, reach)."""
+    left, right = -bracket.nodes[:, 1], bracket.nodes[:, 3]
+    y_left, y_right = bracket.ordinates[:, 1], bracket.ordinates[:, 3]
+    vertex, lowest, trust, bend = _parabola(bracket)
+    rise = 1.0 / np.sqrt(lowest)
+    place = _step(vertex, left, right)
+    reach = np.maximum(np.sqrt(0.5 * tolerance * lowest / bend), 0.3 * trust)
+    reach = np.minimum(reach, 0.3 * np.abs(place))
+    coarse_left = (y_left > COARSE) | (left > COARSE_GAP * bracket.pole)
+    coarse_right = (y_right > COARSE) | (right > COARSE_GAP * bracket.pole)
+    coarse = coarse_left | coarse_right
+    # Too far for a parabola: 1/amplitude is a V with its foot about one half width from the peak sample.
+    foot = np.minimum(np.minimum(_foot(left, y_left), _foot(right, y_right)), bracket.pole)
+    to_left = np.minimum(np.maximum(foot, np.where(coarse_right, 0.0, 0.5 * right)), 0.4 * left)
+    to_right = np.minimum(np.maximum(foot, np.where(coarse_left, 0.0, 0.5 * left)), 0.4 * right)
+    hidden = _hidden(rise, np.maximum(y_left, y_right), np.maximum(left, right) / bracket.pole)
+    places = [
+        np.where(coarse, np.where(coarse_left, -to_left, np.nan), place),
+        np.where(coarse_right, to_right, np.nan),
+    ]
+    return (
+        np.where(coarse, hidden, rise),
+        places,
+        np.where(coarse, 0.3 * np.minimum(to_left, to_right), reach),
+    )
+
+
+def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatArray], FloatArray]:
+    """Peaks at an end of the interval: the true one may lie a little inside."""
+    nodes, ordinates = bracket.nodes, bracket.ordinates
+    rightward = np.isfinite(nodes[:, 3])
+    near, far = (np.where(rightward, nodes[:, 2 + n], -nodes[:, 2 - n]) for n in (1, 2))
+    y_near, y_far = (np.where(rightward, ordinates[:, 2 + n], ordinates[:, 2 - n]) for n in (1, 2))
+    alone = ~np.isfinite(far)
+    far = np.where(alone, 2.0 * near, far)
+    first = (y_near - 1.0) / near
+    bend = ((y_far - y_near) / (far - near) - first) / far
+    slope = first - bend * near
+    curved = (slope < 0.0) & (bend > 0.0)
+    bend = np.where(curved, bend, 1.0)
+    vertex = np.where(curved, -slope / (2.0 * bend), 0.5 * near)
+    lowest = np.clip(1.0 - slope**2 / (4.0 * bend), SMALLEST, 1.0)
+    # A curve that rises from the edge without a parabola's bend is sampled half way before it is believed.
+    rise = np.where(curved, 1.0 / np.sqrt(lowest), np.where((slope < 0.0) | alone, 1.5, 1.0))
+    reach = np.where(curved, np.sqrt(0.5 * tolerance * lowest / bend), 0.1 * near)
+    coarse = (y_near > COARSE) | (near > COARSE_GAP_AT_EDGE * bracket.pole)
+    step = np.minimum(np.minimum(_foot(near, y_near), 0.8 * COARSE_GAP_AT_EDGE * bracket.pole), 0.4 * near)
+    place = np.where(coarse, step, np.clip(vertex, 0.05 * near, 0.7 * near))
+    rise = np.where(coarse, _hidden(rise, y_near, near / bracket.pole), rise)
+    reach = np.where(coarse, 0.3 * step, np.minimum(reach, 0.3 * place))
+    return rise, [np.where(rightward, place, -place)], reach
+
+
+def _parabola(bracket: _Bracket) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
+    """Vertex and lowest ordinate by three samples, corrected by a fourth; the correction of the vertex; the bend."""
+    left, right = -bracket.nodes[:, 1], bracket.nodes[:, 3]
+    slope_left = (1.0 - bracket.ordinates[:, 1]) / left
+    slope_right = (bracket.ordinates[:, 3] - 1.0) / right
     bend = (slope_right - slope_left) / (left + right)
     slope = slope_left + bend * left
     flat = bend <= 0.0
     bend = np.where(flat, 1.0, bend)
     vertex = -slope / (2.0 * bend)
-    third = _third_difference(nodes, ordinates, bend)
+    third = _third_difference(bracket, bend)
     product = (vertex + left) * vertex * (vertex - right)
     gradient = 3.0 * vertex**2 + 2.0 * vertex * (left - right) - left * right
-    lowest = 1.0 - slope**2 / (4.0 * bend)
-    corrected = lowest + third * product - (third * gradient) ** 2 / (4.0 * bend)
+    plain = 1.0 - slope**2 / (4.0 * bend)
+    corrected = plain + third * product - (third * gradient) ** 2 / (4.0 * bend)
+    lowest = np.where(flat, 1.0, np.clip(np.minimum(plain, corrected), SMALLEST, 1.0))
     shift = third * gradient / (2.0 * bend)
-    lowest = np.clip(np.minimum(lowest, corrected), SMALLEST, 1.0)
-    rise = np.where(flat, 1.0, 1.0 / np.sqrt(lowest))
-    place = _step(vertex - shift, left, right)
-    reach = np.maximum(np.sqrt(0.5 * tolerance * lowest / bend), 0.3 * np.abs(shift))
-    reach = np.minimum(reach, 0.3 * np.abs(place))
-    # Too far for a parabola: 1/amplitude is a V with its foot about one half width from the peak sample.
-    coarse = np.maximum(y_left, y_right) > COARSE
-    foot = np.minimum(_foot_distance(left, y_left), _foot_distance(right, y_right))
-    to_left = np.minimum(np.maximum(foot, 0.5 * np.where(y_right > COARSE, 0.0, right)), 0.4 * left)
-    to_right = np.minimum(np.maximum(foot, 0.5 * np.where(y_left > COARSE, 0.0, left)), 0.4 * right)
-    places = np.stack(
-        [
-            np.where(coarse, np.where(y_left > COARSE, -to_left, np.nan), place),
-            np.where(coarse & (y_right > COARSE), to_right, np.nan),
-        ],
-        axis=1,
-    )
-    rise = np.where(coarse, COARSE_RISE, rise)
-    reach = np.where(coarse, 0.3 * np.minimum(to_left, to_right), reach)
-    return rise, places + centre[:, None], reach
+    return vertex - shift, lowest, np.abs(shift), bend
 
 
-def _edge(
-    nodes: FloatArray, ordinates: FloatArray, tolerance: float
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Peaks at the end of the interval: the true one may lie a little inside."""
-    sign = np.where(np.isfinite(nodes[:, 3]), 1.0, -1.0)
-    rightward = sign > 0.0
-    near = np.where(rightward, nodes[:, 3], -nodes[:, 1])
-    far = np.where(rightward, nodes[:, 4], -nodes[:, 0])
-    y_near = np.where(rightward, ordinates[:, 3], ordinates[:, 1])
-    y_far = np.where(rightward, ordinates[:, 4], ordinates[:, 0])
-    two_only = ~np.isfinite(far)
-    far = np.where(two_only, 2.0 * near, far)
-    first = (y_near - 1.0) / near
-    bend = ((y_far - y_near) / (far - near) - first) / far
-    slope = first - bend * near
-    inside = (slope < 0.0) & (bend > 0.0)
-    safe = np.where(inside, bend, 1.0)
-    vertex = np.where(inside, -slope / (2.0 * safe), 0.5 * near)
-    lowest = np.clip(1.0 - slope**2 / (4.0 * safe), SMALLEST, 1.0)
-    # A curve that rises from the edge without a parabola's bend is sampled half way before it is believed.
-    rise = np.where(inside, 1.0 / np.sqrt(lowest), np.where(slope < 0.0, 1.5, 1.0))
-    rise = np.where(two_only, 1.5, rise)
-    reach = np.where(inside, np.sqrt(0.5 * tolerance * lowest / safe), 0.1 * near)
-    coarse = y_near > COARSE
-    step = np.minimum(_foot_distance(near, y_near), 0.4 * near)
-    place = np.where(coarse, step, np.clip(vertex, 0.05 * near, 0.7 * near))
-    rise = np.where(coarse, COARSE_RISE, rise)
-    reach = np.where(coarse, 0.3 * step, np.minimum(reach, 0.3 * place))
-    return rise, (nodes[:, 5] + sign * place)[:, None], reach
-
-
-def _third_difference(nodes: FloatArray, ordinates: FloatArray, bend: FloatArray) -> FloatArray:
+def _third_difference(bracket: _Bracket, bend: FloatArray) -> FloatArray:
     """Third divided difference with the nearer of the two outer samples; 0 where there is none."""
-    left_span, right_span = nodes[:, 3] - nodes[:, 0], nodes[:, 4] - nodes[:, 1]
-    use_left = left_span <= right_span
-    outer = np.where(use_left, nodes[:, 0], nodes[:, 4])
-    y_outer = np.where(use_left, ordinates[:, 0], ordinates[:, 4])
-    inner = np.where(use_left, nodes[:, 1], nodes[:, 3])
-    y_inner = np.where(use_left, ordinates[:, 1], ordinates[:, 3])
+    nodes, ordinates = bracket.nodes, bracket.ordinates
+    use_left = nodes[:, 3] - nodes[:, 0] <= nodes[:, 4] - nodes[:, 1]
+    outer, y_outer = (np.where(use_left, a[:, 0], a[:, 4]) for a in (nodes, ordinates))
+    inner, y_inner = (np.where(use_left, a[:, 1], a[:, 3]) for a in (nodes, ordinates))
     opposite = np.where(use_left, nodes[:, 3], nodes[:, 1])
     exists = np.isfinite(outer)
     outer = np.where(exists, outer, 2.0 * inner)
@@ -163,9 +189,15 @@ def _third_difference(nodes: FloatArray, ordinates: FloatArray, bend: FloatArray
     return np.where(exists, (outer_bend - bend) / (outer - opposite), 0.0)
 
 
-def _foot_distance(gap: FloatArray, ordinate: FloatArray) -> FloatArray:
+def _foot(gap: FloatArray, ordinate: FloatArray) -> FloatArray:
     """Distance of the foot of the V from the peak sample, by the sample ``gap`` away."""
     return np.asarray(gap / np.maximum(np.sqrt(ordinate) - 1.0, 1e-3))
+
+
+def _hidden(rise: FloatArray, ordinate: FloatArray, gap: FloatArray) -> FloatArray:
+    """Rise of a peak that a coarse neighbourhood may hide."""
+    shallow = np.minimum(np.maximum(rise, 1.0 + HIDDEN_RISE * gap), COARSE_RISE)
+    return np.where(ordinate > COARSE, COARSE_RISE, shallow)
 
 
 def _step(vertex: FloatArray, left: FloatArray, right: FloatArray) -> FloatArray:

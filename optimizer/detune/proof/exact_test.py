@@ -45,8 +45,13 @@ def _real_matrices(selection: Selection, designs: Integers, name: str, fixed: Fl
     )
     axes = axes * station_counts(selection)[None, :, None]
     b = selection.stations
-    products = np.einsum("sai,saj->saij", b, b).reshape(-1, b.shape[2] ** 2)
-    return fixed + (axes.reshape(len(designs), -1) @ products).reshape(len(designs), *fixed.shape)
+    total = np.broadcast_to(fixed, (len(designs), *fixed.shape)).copy()
+    # Summed term by term: a matrix product would round differently for different batch sizes.
+    for station in range(b.shape[0]):
+        for axis in range(3):
+            outer = np.outer(b[station, axis], b[station, axis])
+            total += axes[:, station, axis, None, None] * outer
+    return total
 
 
 def natural_frequencies(selection: Selection, designs: Integers) -> Floats:

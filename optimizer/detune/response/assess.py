@@ -24,7 +24,14 @@ from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow,
 from detune.response.design import Design
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes, direct_modes
-from detune.response.direct_supremum import harmonic_value, steady_intervals, tones_of
+from detune.response.direct_supremum import (
+    Pairs,
+    Supremum,
+    forced_suprema,
+    steady_intervals,
+    tones_of,
+    unit_load_suprema,
+)
 from detune.response.direct_views import DirectStatic, DirectTone
 from detune.response.margin import window_margin
 
@@ -46,14 +53,7 @@ def assess(brief: Brief, design: Design) -> Assessment:
     totals = design_totals(brief, design)
     rows: list[MarginRow] = []
     for allowable in allowables:
-        if isinstance(allowable, HarmonicAllowable):
-            for condition in brief.conditions:
-                if applies(allowable.conditions, condition.name):
-                    rows += [
-                        _harmonic_row(machine, static, found_modes, condition, allowable, place)
-                        for place in allowable.places(names)
-                    ]
-        elif isinstance(allowable, StaticAllowable):
+        if isinstance(allowable, StaticAllowable):
             rows += [_static_row(static, allowable, place) for place in allowable.places(names)]
         elif isinstance(allowable, ModeAllowable):
             value = float(allowable.value(found_modes.view)[0])
@@ -61,6 +61,8 @@ def assess(brief: Brief, design: Design) -> Assessment:
         elif isinstance(allowable, DesignAllowable):
             value = float(allowable.value(totals)[0])
             rows.append(_row(allowable, "design", "whole machine", value, None, allowable.upper_limit()))
+    for condition in brief.conditions:
+        rows += _harmonic_rows(machine, static, found_modes, condition, allowables, names)
     kept = tuple(row for row in rows if row.upper is None or np.isfinite(row.upper))
     exempt = exempt_amplification(brief)
     counted = [row.margin for row in kept if row.kind not in ("cost", "added-mass", "part-numbers")]
@@ -134,18 +136,40 @@ def _static_row(static: DirectStatic, allowable: StaticAllowable, place: str) ->
     )
 
 
-def _harmonic_row(
+def _harmonic_rows(
     machine: DirectMachine,
     static: DirectStatic,
     found_modes: DirectModes,
     condition: Condition,
-    allowable: HarmonicAllowable,
-    place: str,
-) -> MarginRow:
-    dynamic, frequency = harmonic_value(machine, found_modes, condition, allowable, place)
-    value = dynamic + float(allowable.offset(static, place)[0])
-    bound = float(allowable.bound(static, place)[0])
-    return _row(allowable, condition.name, place, value, None, bound, frequency)
+    allowables: tuple[Allowable, ...],
+    names: Places,
+) -> list[MarginRow]:
+    harmonic = [a for a in allowables if isinstance(a, HarmonicAllowable) and applies(a.conditions, condition.name)]
+    forced = tuple((a, place) for a in harmonic if a.unit_load() is None for place in a.places(names))
+    rows = []
+    if forced:
+        rows += _judged(static, condition, forced, forced_suprema(machine, found_modes, condition, forced))
+    for allowable in harmonic:
+        if allowable.unit_load() is not None:
+            pairs = tuple((allowable, place) for place in allowable.places(names))
+            found = unit_load_suprema(machine, found_modes, condition, allowable, pairs)
+            rows += [] if found is None else _judged(static, condition, pairs, found)
+    return rows
+
+
+def _judged(static: DirectStatic, condition: Condition, pairs: Pairs, found: Supremum) -> list[MarginRow]:
+    return [
+        _row(
+            allowable,
+            condition.name,
+            place,
+            float(found.value[index] + allowable.offset(static, place)[0]),
+            None,
+            float(allowable.bound(static, place)[0]),
+            float(found.speed[index]),
+        )
+        for index, (allowable, place) in enumerate(pairs)
+    ]
 
 
 def _station_rows(brief: Brief, static: DirectStatic, design: Design) -> tuple[StationRow, ...]:

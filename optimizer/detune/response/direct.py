@@ -80,15 +80,24 @@ class DirectMachine:
         """Return the part that stands at a station."""
         return self.design.mounts[self.design.groups.index(station.group)]
 
+    @cached_property
+    def _geometry(self) -> dict[str, tuple[Floats, Floats]]:
+        found = {}
+        for station in self.brief.stations:
+            radial = None if station.radial is None else np.array(unit_direction(station.radial))
+            axes = axes_from_direction(np.array(unit_direction(station.axial)), radial)
+            position = np.array(station.position)
+            across = self.place(body_of(self.brief, station.on), position) - self.place(station.to, position)
+            found[station.name] = (axes, across)
+        return found
+
     def axes(self, station: Station) -> Floats:
         """Local axes (3, 3) of a station as columns."""
-        radial = None if station.radial is None else np.array(unit_direction(station.radial))
-        return axes_from_direction(np.array(unit_direction(station.axial)), radial)
+        return self._geometry[station.name][0]
 
-    def across(self, place: Station) -> Floats:
+    def across(self, station: Station) -> Floats:
         """Rows (3, N): global displacement of the body at a station relative to what it stands on."""
-        position = np.array(place.position)
-        return self.place(body_of(self.brief, place.on), position) - self.place(place.to, position)
+        return self._geometry[station.name][1]
 
     @cached_property
     def mass(self) -> Floats:

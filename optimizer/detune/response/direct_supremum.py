@@ -1,6 +1,7 @@
 """The assessor's supremum of a response over continuous speed ranges."""
 
 from collections.abc import Callable, Iterable
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,10 +16,14 @@ from detune.response.direct_modes import DirectModes
 from detune.response.direct_views import DirectTone
 
 Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
 TWO_PI = 2.0 * np.pi
 # Samples round a pole in half-widths: close enough that every local maximum is bracketed.
 AROUND_POLE = np.concatenate([-np.geomspace(64.0, 0.05, 24), [0.0], np.geomspace(0.05, 64.0, 24)])
 BACKGROUND = 160
+FINER = 9
+ROUNDS = 6
+Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 
 
 def tones_of(brief: Brief, condition: Condition) -> list[Tone]:
@@ -43,24 +48,32 @@ def steady_intervals(brief: Brief) -> list[tuple[float, float]]:
     )
 
 
-def harmonic_value(
-    machine: DirectMachine, found: DirectModes, condition: Condition, allowable: HarmonicAllowable, place: str
-) -> tuple[float, float | None]:
-    """Return the amplitude of a limited response in a condition, and the speed (Hz) of its largest part."""
-    if allowable.unit_load() is not None:
-        return _largest_under_unit_load(machine, found, condition, allowable, place)
+@dataclass(frozen=True)
+class Supremum:
+    """Amplitude of each row over the whole range, and the speed (Hz) of its largest part; both (R,)."""
+
+    value: Floats
+    speed: Floats
+
+
+def forced_suprema(machine: DirectMachine, found: DirectModes, condition: Condition, pairs: Pairs) -> Supremum:
+    """Return the suprema of all rows under the forcing of a condition.
+
+    Speeds are independent of each other: peaks add linearly, rms values as squares.
+    """
     by_speed: dict[str, list[Tone]] = {}
     for tone in tones_of(machine.brief, condition):
         by_speed.setdefault(tone.speed, []).append(tone)
-    total = np.zeros(1)
-    at: float | None = None
-    largest = -1.0
+    total = np.zeros(len(pairs))
+    largest = np.full(len(pairs), -np.inf)
+    at = np.full(len(pairs), np.nan)
     for tones in by_speed.values():
-        value, speed = _supremum(machine, found, allowable, place, coherent_sets(tones), (tones[0].low, tones[0].high))
-        total = combine(total, np.array([value]), allowable.statistic())
-        if value > largest:
-            largest, at = value, speed
-    return float(total[0]), at
+        part = _supremum(machine, found, pairs, coherent_sets(tones), (tones[0].low, tones[0].high))
+        for index, (allowable, _) in enumerate(pairs):
+            total[index] = combine(total[index], part.value[index], allowable.statistic())
+        at = np.where(part.value > largest, part.speed, at)
+        largest = np.maximum(largest, part.value)
+    return Supremum(total, at)
 
 
 def coherent_sets(tones: Iterable[Tone]) -> list[tuple[Tone, ...]]:
@@ -77,15 +90,16 @@ def coherent_sets(tones: Iterable[Tone]) -> list[tuple[Tone, ...]]:
     return sets
 
 
-def _largest_under_unit_load(
-    machine: DirectMachine, found: DirectModes, condition: Condition, allowable: HarmonicAllowable, place: str
-) -> tuple[float, float | None]:
+def unit_load_suprema(
+    machine: DirectMachine, found: DirectModes, condition: Condition, allowable: HarmonicAllowable, pairs: Pairs
+) -> Supremum | None:
+    """Return the suprema under the allowable's unit load over the excitation intervals, None if none remains."""
     unit = allowable.unit_load()
     assert unit is not None
     body = machine.brief.bodies[0].name
     centre = machine.centres[body]
     along = (complex(unit[1][0]), complex(unit[1][1]), complex(unit[1][2]))
-    best: tuple[float, float | None] = (0.0, None)
+    best: Supremum | None = None
     bands = {(tone.order * tone.low, tone.order * tone.high) for tone in tones_of(machine.brief, condition)}
     for low, high in sorted(bands):
         low = max(low, allowable.lowest_frequency())
@@ -102,78 +116,80 @@ def _largest_under_unit_load(
             force=along if unit[0] == "force" else (0j, 0j, 0j),
             base=along if unit[0] == "base" else None,
         )
-        value, speed = _supremum(machine, found, allowable, place, [(tone,)], (low, high))
-        if value > best[0]:
-            best = (value, speed)
+        part = _supremum(machine, found, pairs, [(tone,)], (low, high))
+        if best is None:
+            best = part
+            continue
+        larger = part.value > best.value
+        best = Supremum(np.where(larger, part.value, best.value), np.where(larger, part.speed, best.speed))
     return best
 
 
-def amplitude_at(
-    machine: DirectMachine, allowable: HarmonicAllowable, place: str, sets: list[tuple[Tone, ...]], speed: Floats
-) -> Floats:
-    """Return the amplitude (F,) of a limited response at speeds (F,) in Hz, all sets together."""
-    total: Floats | None = None
+def amplitudes_at(machine: DirectMachine, pairs: Pairs, sets: list[tuple[Tone, ...]], speed: Floats) -> Floats:
+    """Return the amplitude (R, F) of every row at speeds (F,) in Hz, all coherent sets together."""
+    total: list[Floats | None] = [None] * len(pairs)
     for tones in sets:
         view = DirectTone(machine, tones, (TWO_PI * tones[0].order * speed)[None])
-        tone = tone_amplitude(allowable.phasor(view, place), allowable.along(), allowable.statistic())[0]
-        total = tone if total is None else combine(total, tone, allowable.statistic())
-    assert total is not None
-    return total
+        for index, (allowable, place) in enumerate(pairs):
+            statistic = allowable.statistic()
+            tone = tone_amplitude(allowable.phasor(view, place), allowable.along(), statistic)[0]
+            earlier = total[index]
+            total[index] = tone if earlier is None else combine(earlier, tone, statistic)
+    return np.stack([part for part in total if part is not None])
 
 
 def _supremum(
     machine: DirectMachine,
     found: DirectModes,
-    allowable: HarmonicAllowable,
-    place: str,
+    pairs: Pairs,
     sets: list[tuple[Tone, ...]],
     interval: tuple[float, float],
-) -> tuple[float, float]:
-    def amplitude(speed: Floats) -> Floats:
-        return amplitude_at(machine, allowable, place, sets, speed)
-
+) -> Supremum:
     orders = sorted({tones[0].order for tones in sets})
-    return supremum(amplitude, interval, found.poles, orders)
+    return supremum(lambda speed: amplitudes_at(machine, pairs, sets, speed), interval, found.poles, orders)
 
 
 def supremum(
-    amplitude: Callable[[Floats], Floats], interval: tuple[float, float], poles: NDArray[np.complex128], orders: list[float]
-) -> tuple[float, float]:
-    """Return the largest amplitude over the interval (Hz) and where it is.
+    amplitudes: Callable[[Floats], Floats], interval: tuple[float, float], poles: Complexes, orders: list[float]
+) -> Supremum:
+    """Return the largest amplitude of each row over the interval (Hz) and where it is.
 
-    Samples are laid on a background and round every pole; each sampled local maximum within 20 % of the
-    largest is then refined by a bounded search between its neighbours, and only evaluated values count.
+    Samples are laid on a background and round every pole; then each row's sampled local maxima within
+    20 % of its largest are closed in on by ever finer samples between their neighbours. Only evaluated
+    values count.
     """
     low, high = interval
     if high <= low:
-        return float(amplitude(np.array([low]))[0]), low
+        value = amplitudes(np.array([low]))[:, 0]
+        return Supremum(value, np.full(len(value), low))
     samples = [np.linspace(low, high, BACKGROUND)]
     for pole in poles:
         centre, width = pole.imag, max(-pole.real, 1e-6 * abs(pole))
-        for order in orders:
-            samples.append((centre + AROUND_POLE * width) / (TWO_PI * order))
+        samples += [(centre + AROUND_POLE * width) / (TWO_PI * order) for order in orders]
     speed = np.unique(np.concatenate(samples))
     speed = speed[(speed >= low) & (speed <= high)]
-    value = amplitude(speed)
-    best = int(np.argmax(value))
-    largest, at = float(value[best]), float(speed[best])
-    padded = np.concatenate([[-np.inf], value, [-np.inf]])
-    peaks = np.flatnonzero((value >= padded[:-2]) & (value >= padded[2:]) & (value >= 0.8 * largest))
-    for peak in peaks:
-        ends = float(speed[max(peak - 1, 0)]), float(speed[min(peak + 1, len(speed) - 1)])
-        refined, where = _refine(amplitude, *ends)
-        if refined > largest:
-            largest, at = refined, where
-    return largest, at
+    value = amplitudes(speed)
+    best = value.max(axis=1)
+    at = speed[value.argmax(axis=1)]
+    row, left, right = _brackets(speed, value, best)
+    for _ in range(ROUNDS):
+        inside = left[:, None] + (right - left)[:, None] * np.linspace(0.0, 1.0, FINER)
+        values = amplitudes(inside.ravel()).reshape(len(value), *inside.shape)[row, np.arange(len(row))]
+        peak = values.argmax(axis=1)
+        top = values[np.arange(len(row)), peak]
+        where = inside[np.arange(len(row)), peak]
+        for index in np.flatnonzero(top > best[row]):
+            if top[index] > best[row[index]]:
+                best[row[index]], at[row[index]] = top[index], where[index]
+        step = (right - left) / (FINER - 1)
+        left, right = np.maximum(where - step, left), np.minimum(where + step, right)
+    return Supremum(best, at)
 
 
-def _refine(amplitude: Callable[[Floats], Floats], low: float, high: float) -> tuple[float, float]:
-    from scipy.optimize import minimize_scalar
-
-    found = minimize_scalar(
-        lambda speed: -float(amplitude(np.array([speed]))[0]),
-        bounds=(low, high),
-        method="bounded",
-        options={"xatol": 1e-7 * high},
-    )
-    return -float(found.fun), float(found.x)
+def _brackets(speed: Floats, value: Floats, best: Floats) -> tuple[NDArray[np.intp], Floats, Floats]:
+    """Return row, left and right neighbour of every sampled local maximum near its row's largest."""
+    edge = np.full((len(value), 1), -np.inf)
+    padded = np.concatenate([edge, value, edge], axis=1)
+    peak = (value >= padded[:, :-2]) & (value >= padded[:, 2:]) & (value >= 0.8 * best[:, None]) & (value > 0.0)
+    row, column = np.nonzero(peak)
+    return row, speed[np.maximum(column - 1, 0)], speed[np.minimum(column + 1, len(speed) - 1)]

@@ -26,7 +26,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.sizing.envelope import Segment, gamma_interval, rows, segments
+from detune.sizing.envelope import Rows, Segment, gamma_interval, rows, segments
 from detune.sizing.slice_objective import Scales, SliceObjective
 from detune.sizing.statement import STANDARD_GRAVITY, OneAxisProblem, PowerForm, power_form
 from detune.sizing.worst_frequency import worst
@@ -102,7 +102,7 @@ class LinePool:
 
     def slice(
         self, masses: tuple[float, ...], window: tuple[float, float]
-    ) -> tuple[list[Segment], SliceObjective]:
+    ) -> tuple[list[Segment], Rows]:
         """Solve the slice of the present lines at one scaled mass, or relaxed over two (`envelope`)."""
         problem = self.problem
         table = rows(
@@ -115,7 +115,7 @@ class LinePool:
         objective = SliceObjective(problem, self.scales, masses[0], masses[-1])
         inner, forbidden = stiffness_window(problem, self.scales, masses)
         both = (max(window[0], inner[0]), min(window[1], inner[1]))
-        return segments(table, both, forbidden, objective), objective
+        return segments(table, both, forbidden, objective), table
 
 
 def _damping_bounds(problem: OneAxisProblem, scales: Scales) -> tuple[float, float]:
@@ -152,17 +152,13 @@ def stiffness_window(
     return (low, high), tuple(forbidden)
 
 
-def _near_closing(pool: LinePool, segment: Segment, mass: float) -> bool:
-    """Add the lines that would close (or nearly close) a segment somewhere inside; True when any was new."""
+def _near_closing(pool: LinePool, table: Rows, segment: Segment, mass: float) -> bool:
+    """Add the lines that would close (or nearly close) a segment somewhere inside; True when any was new.
+
+    `table` holds the lines the segment was solved with.
+    """
     problem = pool.problem
     k = segment.inner
-    table = rows(
-        [pool.forms[i] for i in pool.index],
-        np.array(pool.at_u),
-        problem.damping_kind,
-        (mass,),
-        _damping_bounds(problem, pool.scales),
-    )
     low, high = gamma_interval(table, k)
     high = np.maximum(low, high)
     added = False
@@ -194,7 +190,7 @@ def solve_slice(pool: LinePool, mass: float, window: tuple[float, float]) -> tup
     found: list[Segment] = []
     excess = 0.0
     for _ in range(ROUNDS):
-        found, _objective = pool.slice((mass,), window)
+        found, table = pool.slice((mass,), window)
         if not wide or not found:
             return found, 0.0
         k = np.array([x for s in found for x in (s.stiffness, s.left, s.right)])
@@ -206,7 +202,7 @@ def solve_slice(pool: LinePool, mass: float, window: tuple[float, float]) -> tup
             for j in np.flatnonzero(ratio > 1 + VIOLATION):
                 added |= pool.add(i, float(u[j]))
         for segment in found:
-            added |= _near_closing(pool, segment, mass)
+            added |= _near_closing(pool, table, segment, mass)
         if not added:
             break
     return found, excess

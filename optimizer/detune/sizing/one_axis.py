@@ -129,8 +129,16 @@ def margin_of(
     """Exact margin limit/response - 1 of one limit at one design, worst over its whole range."""
     gamma = damping**2 if problem.damping_kind == "viscous" else (damping * stiffness) ** 2
     u = [(2 * math.pi * f) ** 2 for f in (limit.lower_frequency, limit.upper_frequency)]
+    form = power_form(limit)
+    if u[0] == u[1]:
+        loss = gamma * u[0] if problem.damping_kind == "viscous" else gamma
+        top = form.scale * u[0] ** form.power * (mass**2 if form.mass_proportional else 1.0)
+        top *= stiffness**2 + loss if form.transmission else 1.0
+        dynamic = (stiffness - mass * u[0]) ** 2 + loss
+        margin = math.sqrt(dynamic / top) - 1.0
+        return LimitState(limit.name, margin, limit.lower_frequency)
     ratio, at = worst(
-        power_form(limit),
+        form,
         problem.damping_kind,
         np.array([stiffness]),
         np.array([gamma]),

@@ -311,6 +311,10 @@ def _run(problem: OneAxisProblem, count: MountCount | None, limit: float, gap: f
 
 
 def _serve(connection: Any) -> None:
+    import pyomo.environ  # noqa: F401
+    import pyscipopt  # noqa: F401
+
+    connection.send("ready")
     while True:
         try:
             task = connection.recv()
@@ -330,8 +334,8 @@ def solve_with_scip(
 ) -> list[SecondOpinion]:
     """Solve each problem globally by SCIP; `time_limit` (s) is hard and per problem.
 
-    One child process serves the list; one that does not answer within the limit and half a minute of grace for
-    imports is ended and replaced. Raises SizingError for a problem that cannot be stated (before any run).
+    One child process serves the list; one that does not answer within the limit and two seconds is ended and
+    replaced (its imports, before the clock starts, are given a minute). Raises SizingError for a problem that cannot be stated (before any run).
     """
     many = counts if counts is not None else [None] * len(problems)
     for problem, count in zip(problems, many, strict=True):
@@ -346,9 +350,13 @@ def solve_with_scip(
             process = context.Process(target=_serve, args=(theirs,), daemon=True)
             process.start()
             theirs.close()
+            if not ours.poll(60.0):
+                process.kill()
+                raise SizingError("the solver's process did not start within a minute")
+            ours.recv()
         ours.send((problem, count, time_limit, gap))
         answer: SecondOpinion | None = None
-        if ours.poll(time_limit + 30.0):
+        if ours.poll(time_limit + 2.0):
             try:
                 answer = ours.recv()
             except EOFError:

@@ -1,13 +1,19 @@
 """A study: the brief and its catalogs, read together so that all faults are told at once."""
 
 import hashlib
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 from detune.brief.brief import Brief
-from detune.brief.read import scan_brief, to_fault
+from detune.brief.choice import CatalogSource
+from detune.brief.cross_check import cross_check
+from detune.brief.read import scan_data, to_fault
 from detune.ground.errors import BriefError, Fault
+from detune.ground.toml_lines import Positions, load
 from detune.parts.catalog import Catalog, read_catalog
+from detune.problem.build import faults_without_lines
 from detune.problem.candidates import find_candidates
 
 
@@ -23,28 +29,51 @@ class Study:
 
 def load_study(path: str | Path) -> Study:
     """Return the study of a file. Raises BriefError with every fault of the study file and its catalogs."""
-    reading = scan_brief(path)
+    data, positions = load(path)
+    return study_of_tables(data, positions, path)
+
+
+def study_of_tables(data: Mapping[str, Any], positions: Positions, path: str | Path) -> Study:
+    """Return the study of tables loaded from `path`. Raises BriefError with every fault."""
+    reading = scan_data(data, positions, path)
     faults = list(reading.faults)
-    catalogs: dict[str, Catalog] = {}
-    folder = Path(path).parent
-    for source in reading.catalogs:
+    catalogs = _catalogs(reading.catalogs, Path(path).parent, faults)
+    # With a faulty catalog its parts are unknown, and nothing said about choices would be worth reading.
+    if reading.brief is not None and len(catalogs) == len(reading.catalogs):
+        found = find_candidates(reading.brief, catalogs).findings
+        faults += [to_fault(str(path), finding, reading.positions) for finding in found]
+    if faults or reading.brief is None:
+        raise BriefError(dict.fromkeys(faults))
+    source = Path(path).read_text(encoding="utf-8")
+    return Study(reading.brief, catalogs, _hashes(reading.brief, Path(path)), source)
+
+
+def study_of(brief: Brief) -> Study:
+    """Return the study of a brief made in Python; catalog files are taken relative to `brief.folder`."""
+    faults: list[Fault] = []
+    catalogs = _catalogs(brief.catalogs, brief.folder, faults)
+    findings = cross_check(brief)
+    if len(catalogs) == len(brief.catalogs):
+        findings = (*findings, *find_candidates(brief, catalogs).findings)
+    faults += faults_without_lines(brief, findings)
+    if faults:
+        raise BriefError(dict.fromkeys(faults))
+    return Study(brief, catalogs, _hashes(brief, None), brief.model_dump_json(indent=2))
+
+
+def _catalogs(sources: Iterable[CatalogSource], folder: Path, faults: list[Fault]) -> dict[str, Catalog]:
+    catalogs = {}
+    for source in sources:
         try:
             catalogs[source.name] = read_catalog(
                 folder / source.file, source.name, source.kind, source.headers, source.units, source.constants
             )
         except BriefError as error:
             faults += error.faults
-    if reading.brief is not None:
-        # With a faulty catalog its parts are unknown, and nothing said about choices would be worth reading.
-        if len(catalogs) == len(reading.catalogs):
-            found = find_candidates(reading.brief, catalogs).findings
-            faults += [to_fault(str(path), finding, reading.positions) for finding in found]
-    if faults or reading.brief is None:
-        raise BriefError(_once(faults))
-    files = [Path(path), *(folder / source.file for source in reading.catalogs)]
-    hashes = tuple((file.name, hashlib.sha256(file.read_bytes()).hexdigest()) for file in files)
-    return Study(reading.brief, catalogs, hashes, Path(path).read_text(encoding="utf-8"))
+    return catalogs
 
 
-def _once(faults: list[Fault]) -> list[Fault]:
-    return list(dict.fromkeys(faults))
+def _hashes(brief: Brief, study: Path | None) -> tuple[tuple[str, str], ...]:
+    files = [] if study is None else [study]
+    files += [brief.folder / source.file for source in brief.catalogs]
+    return tuple((file.name, hashlib.sha256(file.read_bytes()).hexdigest()) for file in files)

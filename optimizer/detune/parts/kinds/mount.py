@@ -11,12 +11,13 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
+
 from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.assumed import Assumed
 from detune.parts.columns import Column, Limits
 from detune.parts.kinds.mount_rules import DAMPING, FAMILY_TOLERANCE, check
 from detune.parts.table import Table
-from numpy.typing import NDArray
 
 __all__ = ["COLUMNS", "Axes", "Mount", "MountArrays", "build", "check", "mount_arrays", "value"]
 
@@ -175,7 +176,7 @@ def _damping(
     eta = np.where(np.isnan(loss_factor), 1.0 / amplification, loss_factor)
     eta = np.where(np.isnan(eta), 0.0, eta)
     rated_mass = table.numbers("load_rated") / STANDARD_GRAVITY
-    viscous = 2.0 * ratio[:, None] * np.sqrt(dynamic * rated_mass[:, None])
+    viscous = 2.0 * ratio[:, None] * np.sqrt(dynamic) * np.sqrt(rated_mass[:, None])
     across = np.where(table.given("viscous_lateral"), table.numbers("viscous_lateral"), 0.0)
     given = np.column_stack([across, across, coefficient])
     viscous = np.where(np.isnan(coefficient)[:, None], viscous, given)

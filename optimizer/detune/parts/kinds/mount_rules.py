@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 import numpy as np
+from numpy.typing import NDArray
+
 from detune.ground.errors import Fault, nearest_name
 from detune.ground.units import show
 from detune.parts.table import Table
-from numpy.typing import NDArray
 
 DAMPING = ("loss_factor", "damping_ratio", "viscous", "amplification")
 """The columns of which each row fills exactly one."""
@@ -24,7 +25,9 @@ _ROUNDING = 0.01
 def check(table: Table) -> list[Fault]:
     """Return what is wrong between the cells of each row, every rule of every row."""
     rules = (_lateral, _dynamic, _damping, _load_rated, _loads, _travel, _temperature, _tolerance)
-    return [fault for rule in rules for fault in rule(table)]
+    # An absurd figure may overflow in a comparison; the comparison is still right with an infinity.
+    with np.errstate(over="ignore"):
+        return [fault for rule in rules for fault in rule(table)]
 
 
 def _rows(mask: NDArray[np.bool_]) -> list[int]:

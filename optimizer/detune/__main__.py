@@ -1,0 +1,5 @@
+"""`python -m detune`."""
+
+from detune.cli import main
+
+raise SystemExit(main())

@@ -1,0 +1,176 @@
+"""The command line: check, run, assess, compare, vary, schema.
+
+Exit codes: 0 a design meets the brief; 1 none does; 2 the brief or a file is wrong; 3 stopped early.
+"""
+
+import argparse
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from detune.solvers.outcome import Progress, Settings
+
+MEETS, NONE_MEETS, FAULTY, STOPPED = 0, 1, 2, 3
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run one verb and return its exit code."""
+    options = _parser().parse_args(arguments)
+    from detune.ground.errors import BriefError, DetuneError, SolveError
+
+    try:
+        return int(options.verb(options))
+    except BriefError as error:
+        print(error, file=sys.stderr)
+        return FAULTY
+    except SolveError as error:
+        print(f"No answer: {error}", file=sys.stderr)
+        return STOPPED
+    except DetuneError as error:
+        print(error, file=sys.stderr)
+        return FAULTY
+    except OSError as error:
+        print(f"{error.filename or 'file'}: {error.strerror or error}", file=sys.stderr)
+        return FAULTY
+    except KeyboardInterrupt:
+        print("Interrupted; nothing was written.", file=sys.stderr)
+        return STOPPED
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(
+        prog="detune",
+        description="Choose vibration mounts from a parts list so that every forced response stays within its limit.",
+        epilog="Exit codes: 0 a design meets the brief, 1 none does, 2 the brief or a file is wrong, 3 stopped early.",
+    )
+    verbs = parser.add_subparsers(title="verbs", required=True, metavar="VERB")
+
+    check = verbs.add_parser("check", help="read a study and its catalogs, and tell every fault")
+    check.set_defaults(verb=_check)
+    run = verbs.add_parser("run", help="find the cheapest design that meets the brief, the front, and the reasons")
+    run.set_defaults(verb=_run)
+    assess = verbs.add_parser("assess", help="judge one design you name")
+    assess.set_defaults(verb=_assess)
+    compare = verbs.add_parser("compare", help="set designs you name side by side")
+    compare.set_defaults(verb=_compare)
+    vary = verbs.add_parser("vary", help="run the study again for several values of one number")
+    vary.set_defaults(verb=_vary)
+    schema = verbs.add_parser("schema", help="print the JSON Schema of a study file, for editors")
+    schema.set_defaults(verb=_schema)
+
+    for verb in (check, run, assess, compare, vary):
+        verb.add_argument("study", metavar="STUDY", help="the study file (TOML)")
+    wording = 'a design, as "group=part, group=part, ballast=40 kg"'
+    run.add_argument("--design", action="append", default=[], help=f"{wording}, set beside the answer; may be repeated")
+    assess.add_argument("--design", required=True, help=wording)
+    compare.add_argument("--design", action="append", required=True, help=f"{wording}; repeat for each design")
+    run.add_argument("--out", metavar="FOLDER", help="where the results go (default: results/ and the study's name)")
+    run.add_argument("--overwrite", action="store_true", help="replace an existing result folder")
+    vary.add_argument("--set", required=True, metavar="KEY", help="the key to replace, such as allowable[2].limit")
+    vary.add_argument("--to", required=True, nargs="+", metavar="VALUE", help="its values, each as in the study file")
+    for verb in (run, vary):
+        verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
+    return parser
+
+
+def _check(options: argparse.Namespace) -> int:
+    from detune.study.load import load_study
+
+    study = load_study(options.study)
+    brief = study.brief
+    parts = ", ".join(f"{len(catalog.parts)} in {name}" for name, catalog in study.catalogs.items())
+    steps = len(brief.ballast.steps) if brief.ballast else 1
+    print(f"{options.study}: no fault found")
+    print(f"  {brief.title}")
+    print(f"  {len(brief.stations)} stations in {len(brief.groups)} groups, {len(brief.conditions)} conditions,")
+    print(f"  {len(brief.forcing)} forcings, {len(brief.allowables)} allowables, {steps} ballast steps; parts: {parts}")
+    return MEETS
+
+
+def _run(options: argparse.Namespace) -> int:
+    from detune.report.folder import check_folder, write_folder
+    from detune.report.summary import summary
+    from detune.study.load import load_study
+    from detune.study.named import named_design
+    from detune.study.run import run_study
+
+    study = load_study(options.study)
+    folder = Path(options.out) if options.out else Path("results") / Path(options.study).stem
+    check_folder(folder, options.overwrite)
+    designs = tuple(named_design(study.brief, study.catalogs, text) for text in options.design)
+    result = run_study(study, _settings(options), designs)
+    write_folder(result, folder, options.overwrite)
+    print(summary(result))
+    print(f"\nResult folder: {folder} (open report.html in a browser)")
+    return result.exit_code
+
+
+def _assess(options: argparse.Namespace) -> int:
+    options.design = [options.design]
+    return _compare(options)
+
+
+def _compare(options: argparse.Namespace) -> int:
+    from detune.problem.build import build
+    from detune.report.summary import compare_text
+    from detune.response.assess import assess
+    from detune.study.load import load_study
+    from detune.study.named import named_design
+
+    study = load_study(options.study)
+    build(study.brief, study.catalogs)
+    designs = [named_design(study.brief, study.catalogs, text) for text in options.design]
+    assessments = [assess(study.brief, design) for design in designs]
+    print(compare_text(assessments))
+    return MEETS if any(assessment.meets for assessment in assessments) else NONE_MEETS
+
+
+def _vary(options: argparse.Namespace) -> int:
+    from detune.study.vary import vary_study
+
+    code = MEETS
+    print(f"{options.set:>24}  {'cost':>10}  {'separation':>10}  {'least margin':>12}  design")
+    for variation in vary_study(options.study, options.set, options.to, _settings(options)):
+        answer = variation.result.answer
+        code = max(code, variation.result.exit_code)
+        if answer is None:
+            print(f"{variation.value:>24}  {'none meets the brief':>36}")
+            continue
+        print(
+            f"{variation.value:>24}  {answer.cost:>10.2f}  {answer.separation:>10.1%}  {answer.least_margin:>12.1%}"
+            f"  {answer.design}"
+        )
+    return code
+
+
+def _schema(options: argparse.Namespace) -> int:
+    import json
+
+    from detune.brief.schema import study_schema
+
+    print(json.dumps(study_schema(), indent=2))
+    return MEETS
+
+
+def _settings(options: argparse.Namespace) -> "Settings":
+    from detune.ground.errors import BriefError, Fault
+    from detune.ground.units import UnitError, parse
+    from detune.solvers.outcome import Settings
+
+    limit = None
+    if options.time_limit is not None:
+        try:
+            limit = parse(options.time_limit, "time")
+        except UnitError as error:
+            raise BriefError([Fault("--time-limit", None, "--time-limit", error.found, error.expected)]) from None
+    return Settings(time_limit=limit, progress=_progress() if sys.stderr.isatty() else None)
+
+
+def _progress() -> "Progress":
+    def tell(done: int, total: int) -> None:
+        end = "\n" if done >= total else ""
+        print(f"\r{done:,} of {total:,} designs ({done / total:.0%})", end=end, file=sys.stderr, flush=True)
+
+    return tell

@@ -1,0 +1,250 @@
+"""Progressive mounts: load-deflection curves, stops, and the resting place of a machine that stands on them.
+
+A curve is the monotone cubic of `tables` through the supplier's points; the stiffness that vibration sees is
+its tangent at the working load, never load over deflection. Compression is positive.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from detune.physics.array_types import ArrayLike, BoolArray, FloatArray
+from detune.physics.tables import hermite, monotone_slopes, require_inside, require_rising
+from detune.physics.unsupported import UnsupportedMachine
+
+MOST_STEPS = 100
+MOST_HALVINGS = 40
+
+
+class CurveTurnsBack(ValueError):
+    """A load-deflection curve falls or stands still: one load would belong to several deflections."""
+
+
+class NotAtRest(ArithmeticError):
+    """The static iteration did not settle."""
+
+
+@dataclass(frozen=True, eq=False)
+class LoadCurve:
+    """Points deflection (P,) in m and load (P,) in N, both rising, and the slopes (P,) in N/m of the curve
+    there.
+    """
+
+    deflection: FloatArray
+    load: FloatArray
+    slope: FloatArray
+
+
+@dataclass(frozen=True, eq=False)
+class ElementLaw:
+    """Static force of one mount axis over its deflection: a spring, a curve, or both added; and stops.
+
+    stiffness in N/m. pulls: whether the mount holds in tension; if not, force is zero below deflection zero.
+    Beyond stop_gap (compression) or rebound_gap (tension), both in m, a stop of stop_stiffness in N/m is
+    added.
+    """
+
+    stiffness: float = 0.0
+    curve: LoadCurve | None = None
+    pulls: bool = True
+    stop_gap: float = float("inf")
+    rebound_gap: float = float("inf")
+    stop_stiffness: float = 0.0
+
+
+@dataclass(frozen=True, eq=False)
+class Rest:
+    """Resting place: displacement (..., n), and for E elements deflection, force, tangent (..., E); stiffness
+    matrix.
+
+    stiffness (..., n, n) is the tangent about the resting place; stopped (..., E) tells which elements stand
+    on a stop.
+    """
+
+    displacement: FloatArray
+    deflection: FloatArray
+    force: FloatArray
+    tangent: FloatArray
+    stiffness: FloatArray
+    stopped: BoolArray
+
+
+def load_curve(deflection: ArrayLike, load: ArrayLike) -> LoadCurve:
+    """The curve through deflection (P,) in m and load (P,) in N. Raises CurveTurnsBack, ValueError, by row.
+
+    An end slope that the three-point rule would bring to zero is set to half the last secant: a mount is
+    nowhere without stiffness.
+    """
+    d, n = np.asarray(deflection, dtype=float), np.asarray(load, dtype=float)
+    require_rising("deflection of the load curve", d)
+    if n.shape != d.shape or not np.all(np.isfinite(n)):
+        raise ValueError("load curve: one finite load is needed for each deflection")
+    back = np.flatnonzero(np.diff(n) <= 0.0)
+    if back.size:
+        row = int(back[0]) + 2
+        raise CurveTurnsBack(
+            f"load curve: the load in row {row} ({n[row - 1]:g} N at {d[row - 1]:g} m) does not rise above the row "
+            "before it"
+        )
+    slope = monotone_slopes(d, n)
+    secant = np.diff(n) / np.diff(d)
+    for end, near in ((0, 0), (-1, -1)):
+        if slope[end] <= 0.0:
+            slope[end] = 0.5 * secant[near]
+    return LoadCurve(d, n, slope)
+
+
+def load_at(curve: LoadCurve, deflection: ArrayLike) -> FloatArray:
+    """Load in N at deflection in m (any shape). Raises OutsideTable."""
+    _require_on_curve(curve, deflection)
+    return hermite(curve.deflection, curve.load, curve.slope, deflection)[0]
+
+
+def tangent_at(curve: LoadCurve, deflection: ArrayLike) -> FloatArray:
+    """Tangent stiffness in N/m at deflection in m (any shape). Raises OutsideTable."""
+    _require_on_curve(curve, deflection)
+    return hermite(curve.deflection, curve.load, curve.slope, deflection)[1]
+
+
+def deflection_at(curve: LoadCurve, load: ArrayLike) -> FloatArray:
+    """Deflection in m under load in N (any shape): Newton kept inside its bracket. Raises OutsideTable."""
+    asked = np.asarray(load, dtype=float)
+    require_inside("load", "N", asked, float(curve.load[0]), float(curve.load[-1]))
+    piece = np.clip(np.searchsorted(curve.load, asked, side="right") - 1, 0, curve.load.size - 2)
+    low, high = curve.deflection[piece], curve.deflection[piece + 1]
+    place = 0.5 * (low + high)
+    for _ in range(60):
+        value, slope = hermite(curve.deflection, curve.load, curve.slope, place)
+        above = value > asked
+        low, high = np.where(above, low, place), np.where(above, place, high)
+        step = place - (value - asked) / slope
+        place = np.where((step > low) & (step < high), step, 0.5 * (low + high))
+    return np.asarray(place)
+
+
+def tangent_at_load(curve: LoadCurve, load: ArrayLike) -> FloatArray:
+    """Tangent stiffness in N/m under load in N (any shape). Raises OutsideTable."""
+    return hermite(curve.deflection, curve.load, curve.slope, deflection_at(curve, load))[1]
+
+
+def law_force(law: ElementLaw, deflection: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """Force in N and tangent stiffness in N/m at deflection in m (any shape).
+
+    Beyond its points the curve goes on straight, for iterations on the way; `require_law` refuses such an
+    outcome.
+    """
+    d = np.asarray(deflection, dtype=float)
+    force, tangent = law.stiffness * d, np.full_like(d, law.stiffness)
+    if law.curve is not None:
+        value, slope = hermite(law.curve.deflection, law.curve.load, law.curve.slope, d)
+        force, tangent = force + value, tangent + slope
+    if not law.pulls:
+        force, tangent = np.where(d < 0.0, 0.0, force), np.where(d < 0.0, 0.0, tangent)
+    over, under = d > law.stop_gap, d < -law.rebound_gap
+    force = force + np.where(over, law.stop_stiffness * (d - np.where(over, law.stop_gap, 0.0)), 0.0)
+    force = force + np.where(under, law.stop_stiffness * (d + np.where(under, law.rebound_gap, 0.0)), 0.0)
+    return force, tangent + np.where(over | under, law.stop_stiffness, 0.0)
+
+
+def require_law(law: ElementLaw, deflection: ArrayLike) -> None:
+    """Raise OutsideTable where a curve is used beyond its points (an idle mount in the air is not in use)."""
+    if law.curve is not None:
+        d = np.asarray(deflection, dtype=float)
+        _require_on_curve(law.curve, d if law.pulls else np.maximum(d, 0.0))
+
+
+def at_rest(
+    rows: ArrayLike,
+    laws: Sequence[ElementLaw],
+    load: ArrayLike,
+    offset: ArrayLike = 0.0,
+    tolerance: float = 1e-10,
+) -> Rest:
+    """Where sum rows[e].T force_e(rows[e] q + offset_e) = load, for leading design axes of load and offset.
+
+    rows (E, n): deflection of element e is rows[e] @ q + offset[e]; n general freedoms; laws: E of them; load
+    (..., n) in N and N m; offset (..., E) in m (uneven floor, free height). Newton's method; the step is
+    halved until the residual falls, which it must since every force rises with its deflection. Raises
+    UnsupportedMachine when a direction has no stiffness, OutsideTable when an element rests beyond its curve,
+    NotAtRest.
+    """
+    b = np.atleast_2d(np.asarray(rows, dtype=float))
+    w, gap = np.asarray(load, dtype=float), np.asarray(offset, dtype=float)
+    lead = np.broadcast_shapes(w.shape[:-1], gap.shape[:-1])
+    w = np.broadcast_to(w, (*lead, b.shape[1]))
+    gap = np.broadcast_to(gap, (*lead, b.shape[0]))
+    q = np.zeros((*lead, b.shape[1]))
+    force, tangent = _forces(b, laws, q, gap)
+    # Residuals are compared through the first tangent stiffness, which gives N and N m one measure.
+    first = np.einsum("...e,ei->...i", np.maximum(tangent, _mean_stiffness(laws)), b**2)
+    weight = np.where(first > 0.0, 1.0 / np.where(first > 0.0, first, 1.0), 0.0)
+    for _ in range(MOST_STEPS):
+        residual = w - force @ b
+        merit = np.sum(weight * residual**2, axis=-1)
+        size = np.sum(weight * (w**2 + (np.abs(force) @ np.abs(b)) ** 2), axis=-1)
+        if np.all(merit <= tolerance**2 * size):
+            return _rest(b, laws, q, gap, force, tangent)
+        step = _newton_step(np.einsum("...e,ei,ej->...ij", tangent, b, b), residual)
+        share = np.ones((*lead, 1))
+        for _ in range(MOST_HALVINGS):
+            force, tangent = _forces(b, laws, q + share * step, gap)
+            worse = np.sum(weight * (w - force @ b) ** 2, axis=-1) > merit * (1.0 - 1e-4 * share[..., 0])
+            if not np.any(worse & (merit > tolerance**2 * size)):
+                break
+            share = np.where(worse[..., None], 0.5 * share, share)
+        q = q + share * step
+    raise NotAtRest(f"the static load did not find its balance in {MOST_STEPS} steps")
+
+
+def _require_on_curve(curve: LoadCurve, deflection: ArrayLike) -> None:
+    require_inside("deflection", "m", deflection, float(curve.deflection[0]), float(curve.deflection[-1]))
+
+
+def _mean_stiffness(laws: Sequence[ElementLaw]) -> FloatArray:
+    mean = []
+    for law in laws:
+        curve = law.curve
+        slope = 0.0 if curve is None else np.ptp(curve.load) / np.ptp(curve.deflection)
+        mean.append(law.stiffness + float(slope))
+    return np.array(mean)
+
+
+def _forces(
+    rows: FloatArray, laws: Sequence[ElementLaw], q: FloatArray, offset: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    deflection = q @ rows.T + offset
+    pairs = [law_force(law, deflection[..., e]) for e, law in enumerate(laws)]
+    return np.stack([p[0] for p in pairs], axis=-1), np.stack([p[1] for p in pairs], axis=-1)
+
+
+def _newton_step(stiffness: FloatArray, residual: FloatArray) -> FloatArray:
+    scale = np.sqrt(np.einsum("...ii->...i", stiffness))
+    if np.any(scale <= 0.0):
+        raise UnsupportedMachine("a direction carries no stiffness on the way to rest")
+    scaled = stiffness / (scale[..., :, None] * scale[..., None, :])
+    if np.any(np.linalg.eigvalsh(scaled)[..., 0] < 1e-13):
+        raise UnsupportedMachine("a direction carries no stiffness on the way to rest")
+    return np.asarray(np.linalg.solve(scaled, (residual / scale)[..., None])[..., 0] / scale)
+
+
+def _rest(
+    rows: FloatArray,
+    laws: Sequence[ElementLaw],
+    q: FloatArray,
+    offset: FloatArray,
+    force: FloatArray,
+    tangent: FloatArray,
+) -> Rest:
+    deflection = q @ rows.T + offset
+    for e, law in enumerate(laws):
+        require_law(law, deflection[..., e])
+    stops = [(law.stop_gap, -law.rebound_gap) for law in laws]
+    stopped = np.stack(
+        [(deflection[..., e] > high) | (deflection[..., e] < low) for e, (high, low) in enumerate(stops)],
+        axis=-1,
+    )
+    stiffness = np.einsum("...e,ei,ej->...ij", tangent, rows, rows)
+    return Rest(q, deflection, force, tangent, stiffness, stopped)
