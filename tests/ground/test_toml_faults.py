@@ -29,7 +29,7 @@ BROKEN = [
     ("[m]\na.b = 1\na = 3\n", 3, "m.a", "it stands on line 2 already"),
     ("[m]\nx = 1\n[m]\ny = 2\n", 3, "m", "it stands on line 1 already"),
     ("[[a]]\nb = 1\n[a]\nc = 1\n", 3, "a", "it stands on line 1 already"),
-    ("[[a]]\nb = [1, 2\nc = 3\n", 3, "a[0].c", "the list that begins on line 2, and a closing bracket ]"),
+    ("[[a]]\nb = [1, 2\nc = 3\n", 3, "a[1].c", "the list that begins on line 2, and a closing bracket ]"),
     ("x = 1\na = [1,\n2,\n", 2, "a", "the list that begins on line 2, and a closing bracket ]"),
     ("a = [1 2]\n", 1, "a", "a comma between the entries"),
     ("a = {b = 1,\n c = 2}\n", 1, "a", "closed on the same line"),

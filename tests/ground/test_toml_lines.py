@@ -161,8 +161,8 @@ def test_an_empty_file(tmp_path: Path) -> None:
 
 
 def test_paths_as_people_read_them() -> None:
-    assert dotted(("allowable", 2, "limit")) == "allowable[2].limit"
-    assert dotted(("a", "odd key", 0, 1)) == 'a."odd key"[0][1]'
+    assert dotted(("allowable", 2, "limit")) == "allowable[3].limit"
+    assert dotted(("a", "odd key", 0, 1)) == 'a."odd key"[1][2]'
     assert dotted(()) == ""
 
 

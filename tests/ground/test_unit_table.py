@@ -70,7 +70,8 @@ def test_no_automatic_prefixes(word: str) -> None:
 def test_reading_units_loads_no_heavy_library() -> None:
     """`detune --help` and the check of a study file rest on this."""
     program = (
-        "import sys; from detune.ground import errors, toml_lines, units; units.parse('4.2 N/mm', 'stiffness'); "
+        "import sys; from detune.ground import errors, toml_lines, units; "
+        "units.parse('4.2 N/mm', 'stiffness'); "
         "print(sorted({'numpy', 'pint', 'pydantic', 'scipy'} & set(sys.modules)))"
     )
     environment = {**os.environ, "PYTHONPATH": str(LIST.parents[2])}

@@ -43,21 +43,40 @@ class Brief(Statement):
 def demanded(brief: Brief) -> tuple[tuple[Allowable, ...], tuple[str, ...]]:
     """Return all allowables that are judged, and a note for each one the brief did not state.
 
-    A part's own load range, its own greatest deflection and no uplift are always demanded: a design
-    that overloads a part cannot meet any brief.
+    A part's own load range, its own greatest deflection and no uplift are always demanded, at every
+    station and in every condition: a design that overloads a part cannot meet any brief. A brief that
+    states one of them for some stations or conditions does not free the others of it.
     """
-    stated = list(brief.allowables)
+    demands: tuple[tuple[LoadRange | MountDeflection | Uplift, str], ...] = (
+        (LoadRange(), "each part carries a static load within its own range (load_min to load_max)"),
+        (
+            MountDeflection(part="combined", limit="part"),
+            "static plus dynamic deflection of each part stays below its own deflection_max, where stated",
+        ),
+        (Uplift(), "a part that cannot pull stays compressed through the whole cycle"),
+    )
+    added: list[Allowable] = []
     notes = []
-    if not any(isinstance(allowable, LoadRange) for allowable in stated):
-        stated.append(LoadRange())
-        notes.append("each part carries a static load within its own range (load_min to load_max)")
-    if not any(isinstance(a, MountDeflection) and a.limit == "part" for a in stated):
-        stated.append(MountDeflection(part="combined", limit="part"))
-        notes.append("static plus dynamic deflection of each part stays below its own deflection_max, where stated")
-    if not any(isinstance(allowable, Uplift) for allowable in stated):
-        stated.append(Uplift())
-        notes.append("a part that cannot pull stays compressed through the whole cycle")
-    return tuple(stated), tuple(notes)
+    for demand, note in demands:
+        free = _stations_free_of(brief, demand)
+        if not free:
+            continue
+        everywhere = len(free) == len(brief.stations)
+        added.append(demand if everywhere else demand.model_copy(update={"stations": free}))
+        notes.append(note if everywhere else f"{note} (also at {', '.join(free)})")
+    return (*brief.allowables, *added), tuple(notes)
+
+
+def _stations_free_of(brief: Brief, demand: LoadRange | MountDeflection | Uplift) -> tuple[str, ...]:
+    """Return the stations where no allowable of the brief states a demand for every condition."""
+    covered: set[str] = set()
+    for stated in brief.allowables:
+        if type(stated) is not type(demand) or stated.conditions is not None:
+            continue
+        named = stated.stations_named()
+        if stated == demand.model_copy(update={"stations": named or None}):
+            covered.update(named or (station.name for station in brief.stations))
+    return tuple(station.name for station in brief.stations if station.name not in covered)
 
 
 def body_of(brief: Brief, on: str | None) -> str:

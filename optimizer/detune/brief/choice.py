@@ -4,7 +4,7 @@ from typing import Literal
 
 from pydantic import field_validator, model_validator
 
-from detune.brief.statement import Cost, Length, Mass, Name, Position, Statement, Text, positive, refuse
+from detune.brief.statement import Cost, Length, Mass, Name, Position, Statement, Text, listed_once, positive, refuse
 
 Objective = Literal["cost", "separation", "least-margin", "added-mass", "part-numbers"]
 LARGER_IS_BETTER: dict[str, bool] = {
@@ -52,12 +52,10 @@ class Choice(Statement):
     where: dict[Name, tuple[Text, ...] | Window] = {}
     parts: tuple[Name, ...] | None = None
 
-    @field_validator("catalogs")
+    @field_validator("catalogs", "parts")
     @classmethod
-    def _some(cls, value: tuple[str, ...]) -> tuple[str, ...]:
-        if not value:
-            raise refuse("[]", "at least one catalog")
-        return value
+    def _some(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        return listed_once(value)
 
 
 class Ballast(Statement):
@@ -75,15 +73,15 @@ class Ballast(Statement):
     @model_validator(mode="after")
     def _values(self) -> "Ballast":
         if not self.steps:
-            raise refuse("[]", 'at least one step, for example ["0 kg", "40 kg"]')
+            raise refuse("[]", 'at least one step, for example ["0 kg", "40 kg"]', at="steps")
         if min(self.steps) < 0.0:
-            raise refuse(f"{min(self.steps):g} kg", "steps of zero or more")
+            raise refuse(f"{min(self.steps):g} kg", "steps of zero or more", at="steps")
         if len(set(self.steps)) != len(self.steps):
-            raise refuse(list(self.steps), "each step once")
+            raise refuse(", ".join(f"{step:g} kg" for step in self.steps), "each step once", at="steps")
         for side in self.size:
-            positive(side, "a box side")
+            positive(side, "a box side", at="size")
         if self.cost_per_kg < 0.0:
-            raise refuse(f"{self.cost_per_kg:g}", "a cost of zero or more")
+            raise refuse(f"{self.cost_per_kg:g}", "a cost of zero or more", at="cost_per_kg")
         return self
 
 

@@ -14,16 +14,23 @@ Path = tuple[str | int, ...]
 
 @dataclass(frozen=True)
 class Finding:
-    """One fault of a brief: where (keys and indices as in the study file), what was found, what was expected."""
+    """One fault of a brief: where (keys and indices as in the study file), what was found, what was expected.
+
+    `depends` names the tables that must have been read in full for the fault to be one.
+    """
 
     path: Path
     found: str
     expected: str
     nearest: str | None = None
+    depends: tuple[str, ...] = ()
 
 
 def cross_check(brief: Brief) -> tuple[Finding, ...]:
     """Return every fault between the statements of a brief."""
+    empty = _empty_tables(brief)
+    if empty:
+        return tuple(empty)
     return tuple(
         finding
         for check in (_unique_names, _bodies, _stations, _forcing, _allowables, _choices, _ballast)
@@ -31,10 +38,32 @@ def cross_check(brief: Brief) -> tuple[Finding, ...]:
     )
 
 
-def _unknown(path: Path, name: str, known: Iterable[str], what: str) -> Finding:
+def where(path: Path) -> str:
+    """Return a path as people read it, counting from one: `allowable[3].limit`."""
+    text = ""
+    for key in path:
+        text += f"[{key + 1}]" if isinstance(key, int) else (f".{key}" if text else str(key))
+    return text
+
+
+def _empty_tables(brief: Brief) -> list[Finding]:
+    """Tables of which at least one is needed; the other checks stand on them."""
+    needed = {
+        "body": brief.bodies,
+        "station": brief.stations,
+        "condition": brief.conditions,
+        "forcing": brief.forcing,
+        "allowable": brief.allowables,
+        "catalog": brief.catalogs,
+        "choice": brief.choices,
+    }
+    return [Finding((name,), "[]", f"at least one [[{name}]]", depends=(name,)) for name, items in needed.items() if not items]
+
+
+def _unknown(path: Path, name: str, known: Iterable[str], what: str, table: str) -> Finding:
     names = list(known)
     listed = ", ".join(f'"{n}"' for n in names[:12]) or "none is stated"
-    return Finding(path, name, f"the name of {what} ({listed})", nearest_name(name, names))
+    return Finding(path, name, f"the name of {what} ({listed})", nearest_name(name, names), (table,))
 
 
 def _unique_names(brief: Brief) -> list[Finding]:
@@ -44,6 +73,7 @@ def _unique_names(brief: Brief) -> list[Finding]:
         "point": [p.name for p in brief.points],
         "station": [s.name for s in brief.stations],
         "connection": [c.name for c in brief.connections],
+        "steady_load": [s.name for s in brief.steady_loads],
         "condition": [c.name for c in brief.conditions],
         "forcing": [f.name for f in brief.forcing],
         "catalog": [c.name for c in brief.catalogs],
@@ -71,11 +101,13 @@ def _bodies(brief: Brief) -> list[Finding]:
         placed.append((("ballast", "on"), brief.ballast.on))
     for path, on in placed:
         if on is not None and on not in names:
-            findings.append(_unknown(path, on, names, "a body"))
+            findings.append(_unknown(path, on, names, "a body", "body"))
         # A base motion acts on the floor and stands on no body.
         is_base = path[0] == "forcing" and isinstance(brief.forcing[int(path[1])], BaseMotion)
         if on is None and len(names) > 1 and not is_base:
-            findings.append(Finding(path, "left out", 'the body it stands on, since there are several, as "on"'))
+            listed = ", ".join(f'"{name}"' for name in names)
+            expected = f'the body it stands on, since there are several ({listed}), as "on"'
+            findings.append(Finding(path, "", expected))
     return findings
 
 
@@ -86,7 +118,7 @@ def _stations(brief: Brief) -> list[Finding]:
         for index, place in enumerate(places):
             known = ["floor", *bodies]
             if place.to not in known:
-                findings.append(_unknown((table, index, "to"), place.to, known, "what it stands on"))
+                findings.append(_unknown((table, index, "to"), place.to, known, "what it stands on", "body"))
             elif place.to == (place.on or (bodies[0] if bodies else None)):
                 findings.append(Finding((table, index, "to"), place.to, "another body, or the floor"))
     return findings
@@ -95,7 +127,7 @@ def _stations(brief: Brief) -> list[Finding]:
 def _conditions_named(path: Path, named: tuple[str, ...] | None, brief: Brief) -> list[Finding]:
     known = [condition.name for condition in brief.conditions]
     return [
-        _unknown((*path, "conditions", i), name, known, "a condition")
+        _unknown((*path, "conditions", i), name, known, "a condition", "condition")
         for i, name in enumerate(named or ())
         if name not in known
     ]
@@ -112,10 +144,21 @@ def _forcing(brief: Brief) -> list[Finding]:
         for shaft in condition.shafts:
             if shaft not in used:
                 findings.append(
-                    Finding(("condition", index, "shafts"), shaft, "a shaft that some forcing follows in this condition")
+                    Finding(
+                        ("condition", index, "shafts", shaft),
+                        shaft,
+                        "a shaft that some forcing follows in this condition",
+                        nearest_name(shaft, [name for name in used if name is not None]),
+                        ("forcing",),
+                    )
                 )
         if not acting:
-            findings.append(Finding(("condition", index), condition.name, "at least one forcing that acts in it"))
+            findings.append(Finding(
+                    ("condition", index),
+                    condition.name,
+                    "a condition in which at least one forcing acts",
+                    depends=("forcing",),
+                ))
     return findings
 
 
@@ -133,6 +176,7 @@ def _shaft(path: Path, forcing: Forcing, brief: Brief) -> list[Finding]:
                     f'a shaft whose speed condition "{condition.name}" states under "shafts"'
                     " (or list the conditions in which this forcing acts)",
                     nearest_name(shaft, condition.shafts),
+                    ("condition",),
                 )
             )
     return findings
@@ -147,15 +191,22 @@ def _allowables(brief: Brief) -> list[Finding]:
         findings += _conditions_named(path, allowable.conditions, brief)
         for name in allowable.points_named():
             if name not in points:
-                findings.append(_unknown((*path, "at"), name, points, "a point"))
+                findings.append(_unknown((*path, "at"), name, points, "a point", "point"))
         for i, name in enumerate(allowable.stations_named()):
             if name not in stations:
-                findings.append(_unknown((*path, "stations", i), name, stations, "a station"))
+                findings.append(_unknown((*path, "stations", i), name, stations, "a station", "station"))
         if isinstance(allowable, Separation) and not any(c.steady for c in brief.conditions):
-            findings.append(Finding(path, "separation", "a steady condition, since separation counts only those"))
+            expected = "at least one steady condition, since separation counts only those"
+            findings.append(Finding(path, "separation", expected, depends=("condition",)))
     if not any(isinstance(a, HarmonicAllowable) for a in brief.allowables):
         findings.append(
-            Finding(("allowable",), "no limit on any response", "at least one allowable on a response to the forcing")
+            Finding(
+                ("allowable",),
+                "no limit on any response",
+                "at least one allowable on a response to the forcing (displacement, velocity, acceleration,"
+                " transmitted-force, transmissibility or mount-deflection)",
+                depends=("allowable",),
+            )
         )
     return findings
 
@@ -167,15 +218,15 @@ def _choices(brief: Brief) -> list[Finding]:
     chosen = [choice.group for choice in brief.choices]
     for index, choice in enumerate(brief.choices):
         if choice.group not in groups:
-            findings.append(_unknown(("choice", index, "group"), choice.group, groups, "a group of stations"))
+            findings.append(_unknown(("choice", index, "group"), choice.group, groups, "a group of stations", "station"))
         if choice.group in chosen[:index]:
             findings.append(Finding(("choice", index, "group"), choice.group, "one choice for each group"))
         for i, name in enumerate(choice.catalogs):
             if name not in catalogs:
-                findings.append(_unknown(("choice", index, "catalogs", i), name, catalogs, "a catalog"))
+                findings.append(_unknown(("choice", index, "catalogs", i), name, catalogs, "a catalog", "catalog"))
     for index, station in enumerate(brief.stations):
         if station.group not in chosen:
-            findings.append(_unknown(("station", index, "group"), station.group, chosen, "a group with a [[choice]]"))
+            findings.append(_unknown(("station", index, "group"), station.group, chosen, "a group with a [[choice]]", "choice"))
     return findings
 
 

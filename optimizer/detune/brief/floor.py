@@ -49,13 +49,13 @@ class Floor(Statement):
         extra = [name for name in stated if name not in needed]
         if extra:
             allowed = ", ".join(f'"{name}"' for name in needed) or "no further value"
-            raise refuse(", ".join(extra), f"for a floor of kind {self.kind}: {allowed}")
+            raise refuse(", ".join(extra), f"for a floor of kind {self.kind}: {allowed}", at=extra[0])
         for name in stated:
             value = getattr(self, name)
             if value < 0.0 or (value == 0.0 and name not in ("damping", "damping_ratio")):
-                raise refuse(f"{name} = {value:g}", "a value above zero")
+                raise refuse(f"{name} = {value:g}", "a value above zero", at=name)
         if self.damping_ratio is not None and self.damping_ratio >= 1.0:
-            raise refuse(f"{self.damping_ratio:g}", "a damping ratio below 1")
+            raise refuse(f"{self.damping_ratio:g}", "a damping ratio below 1", at="damping_ratio")
         return self
 
 

@@ -2,6 +2,8 @@
 
 from typing import Literal
 
+import numpy as np
+from numpy.typing import NDArray
 from pydantic import field_validator, model_validator
 
 from detune.brief.statement import (
@@ -20,11 +22,16 @@ from detune.brief.statement import (
     Ratio,
     Statement,
     Stiffness,
+    describe,
     positive,
     refuse,
     unit_direction,
 )
 from detune.brief.statement import Force as ForceQuantity
+from detune.physics import rigid_body
+
+# Below this sine of the angle between them, the digits people write leave the radial direction undetermined.
+LEAST_ANGLE = 1e-6
 
 
 class InertiaTensor(Statement):
@@ -39,6 +46,11 @@ class InertiaTensor(Statement):
     xy: Inertia = 0.0
     xz: Inertia = 0.0
     yz: Inertia = 0.0
+
+    def matrix(self) -> NDArray[np.float64]:
+        """Return the tensor (3, 3) in kg m^2."""
+        rows = [[self.xx, self.xy, self.xz], [self.xy, self.yy, self.yz], [self.xz, self.yz, self.zz]]
+        return np.array(rows)
 
 
 class Shape(Statement):
@@ -64,12 +76,12 @@ class Shape(Statement):
             if self.size is None or self.radius is not None or self.length is not None or self.axis is not None:
                 raise refuse("box", 'a box with "size" alone (three lengths, along x, y and z)')
             for side in self.size:
-                positive(side, "a box side")
+                positive(side, "a box side", at="size")
             return self
         if self.radius is None or self.length is None or self.axis is None or self.size is not None:
             raise refuse("cylinder", 'a cylinder with "radius", "length" and "axis" ("x", "y" or "z")')
-        positive(self.radius, "a radius")
-        positive(self.length, "a length")
+        positive(self.radius, "a radius", at="radius")
+        positive(self.length, "a length", at="length")
         return self
 
 
@@ -87,9 +99,13 @@ class Weighing(Statement):
                 f"{len(self.positions)} positions and {len(self.readings)} readings", "one reading for each position"
             )
         if len(self.positions) < 3:
-            raise refuse(f"{len(self.positions)} positions", "three or more weighing positions")
+            raise refuse(f"{len(self.positions)} positions", "three or more weighing positions", at="positions")
         if min(self.readings) < 0.0 or sum(self.readings) <= 0.0:
-            raise refuse("readings", "readings that are not negative and not all zero")
+            raise refuse(
+                ", ".join(f"{reading:g} N" for reading in self.readings),
+                "readings that are not negative and not all zero",
+                at="readings",
+            )
         return self
 
 
@@ -136,7 +152,9 @@ class Body(Statement):
         if self.mass is not None and self.centre is None:
             raise refuse("mass without centre", 'the centre of mass as "centre"')
         if self.mass is None and self.centre is not None:
-            raise refuse("centre", 'no "centre" beside shapes or a weighing, which give it already')
+            raise refuse(
+                "centre", 'no "centre" beside shapes or a weighing, which give it already', at="centre"
+            )
         if self.shapes and (self.inertia is not None or self.inertia_box is not None):
             raise refuse("inertia beside shapes", "shapes alone, which give the inertia already")
         if self.inertia is not None and self.inertia_box is not None:
@@ -149,8 +167,24 @@ class Body(Statement):
             )
         if self.inertia_box is not None:
             for side in self.inertia_box:
-                positive(side, "a box side")
+                positive(side, "a box side", at="inertia_box")
+        if rotates and self.inertia is not None:
+            _check_inertia(self.inertia)
         return self
+
+
+def _check_inertia(stated: InertiaTensor) -> None:
+    """Refuse a tensor that no real body has: each principal moment above zero and at most the other two together."""
+    tensor = stated.matrix()
+    least, middle, greatest = rigid_body.principal_moments(tensor)
+    moments = ", ".join(f"{value:.4g}" for value in (least, middle, greatest))
+    if least <= 0.0:
+        expected = "an inertia whose three principal moments are all above zero"
+    elif not rigid_body.inertia_is_possible(tensor):
+        expected = "an inertia that a real body can have: no principal moment above the sum of the other two"
+    else:
+        return
+    raise refuse(f"principal moments {moments} kg m^2", expected, at="inertia")
 
 
 class Point(Statement):
@@ -191,6 +225,16 @@ class Station(Statement):
             unit_direction(value)
         return value
 
+    @model_validator(mode="after")
+    def _two_directions(self) -> "Station":
+        if self.radial is not None:
+            along = np.cross(unit_direction(self.axial), unit_direction(self.radial))
+            if float(np.linalg.norm(along)) < LEAST_ANGLE:
+                raise refuse(
+                    describe(self.radial), "a radial direction that is not parallel to the axial one", at="radial"
+                )
+        return self
+
 
 class Connection(Statement):
     """A given connection (pipe, cable, belt) of known stiffness that belongs to no choice.
@@ -210,12 +254,14 @@ class Connection(Statement):
 
     @model_validator(mode="after")
     def _values(self) -> "Connection":
-        if min(self.stiffness) < 0.0 or min(self.stiffness_static or (0.0,)) < 0.0:
-            raise refuse(list(self.stiffness), "stiffnesses of zero or more")
+        for key in ("stiffness", "stiffness_static", "viscous"):
+            values = getattr(self, key)
+            if values is not None and min(values) < 0.0:
+                raise refuse(f"{min(values):g}", "values of zero or more", at=key)
         if self.loss_factor is None and self.viscous is None:
             raise refuse("no damping", 'the damping as "loss_factor" or "viscous" (zero is an answer)')
         if self.loss_factor is not None and not 0.0 <= self.loss_factor <= 1.5:
-            raise refuse(f"{self.loss_factor:g}", "a loss factor from 0 to 1.5")
+            raise refuse(f"{self.loss_factor:g}", "a loss factor from 0 to 1.5", at="loss_factor")
         return self
 
 
@@ -228,9 +274,14 @@ class SteadyLoad(Statement):
     force: ForceVector = (0.0, 0.0, 0.0)
     moment: MomentVector = (0.0, 0.0, 0.0)
 
+    @model_validator(mode="after")
+    def _something_acts(self) -> "SteadyLoad":
+        if not any(self.force) and not any(self.moment):
+            raise refuse("no force and no moment", 'a "force" or a "moment" that is not zero')
+        return self
+
 
 __all__ = [
-
     "Body",
     "Connection",
     "InertiaTensor",

@@ -47,8 +47,7 @@ def mass_properties(body: Body) -> MassProperties:
         mass_value, centre_value = body.mass, np.array(body.centre, dtype=float)
     inertia_value = np.zeros((3, 3))
     if body.inertia is not None:
-        t = body.inertia
-        inertia_value = np.array([[t.xx, t.xy, t.xz], [t.xy, t.yy, t.yz], [t.xz, t.yz, t.zz]])
+        inertia_value = body.inertia.matrix()
     elif body.inertia_box is not None:
         inertia_value = rigid_body.box_inertia(mass_value, np.array(body.inertia_box))
         assumed.append(f"{body.name}: inertia of a uniform box of the stated size, centred on the mass centre")

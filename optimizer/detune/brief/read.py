@@ -16,7 +16,7 @@ from detune.brief.floor import Floor
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
 from detune.brief.statement import Statement, describe
 from detune.ground.errors import BriefError, Fault, nearest_name
-from detune.ground.toml_lines import Positions, load
+from detune.ground.toml_lines import Positions, dotted, load
 
 SINGLE: dict[str, type[Statement]] = {"floor": Floor, "ballast": Ballast, "objectives": Objectives}
 REPEATED: dict[str, type[Statement]] = {
@@ -259,7 +259,4 @@ def _cross_check_what_was_read(read: dict[str, Any], data: Mapping[str, Any]) ->
 
 def to_fault(file: str, finding: Finding, positions: Positions) -> Fault:
     """Return a finding as a fault with its line in the study file."""
-    where = ""
-    for key in finding.path:
-        where += f"[{key + 1}]" if isinstance(key, int) else (f".{key}" if where else str(key))
-    return Fault(file, positions.line(finding.path), where, finding.found, finding.expected, finding.nearest)
+    return Fault(file, positions.line(finding.path), dotted(finding.path), finding.found, finding.expected, finding.nearest)

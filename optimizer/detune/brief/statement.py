@@ -5,11 +5,12 @@ A field typed `Length` holds metres as a float. From a study file it must be wri
 """
 
 import math
+import sys
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Annotated, Any, Literal
 
-from pydantic import BaseModel, ConfigDict, StringConstraints
+from pydantic import BaseModel, BeforeValidator, ConfigDict, StringConstraints
 from pydantic_core import CoreSchema, PydanticCustomError, core_schema
 
 from detune.ground import units
@@ -21,9 +22,16 @@ class Statement(BaseModel):
     model_config = ConfigDict(frozen=True, extra="forbid", hide_input_in_errors=False)
 
 
-def refuse(found: object, expected: str) -> PydanticCustomError:
-    """Return the error that the readers turn into a fault with file and line."""
-    return PydanticCustomError("statement", "{expected}", {"found": str(found), "expected": expected})
+def refuse(
+    found: object, expected: str, at: str | None = None, nearest: str | None = None
+) -> PydanticCustomError:
+    """Return the error that the readers turn into a fault with file and line.
+
+    `at` names the key of the statement that is at fault where the check looks at several of them.
+    """
+    text = found if isinstance(found, str) else describe(found)
+    context = {"found": text, "expected": expected, "at": at, "nearest": nearest}
+    return PydanticCustomError("statement", "{expected}", context)
 
 
 @dataclass(frozen=True)
@@ -46,27 +54,51 @@ class Quantity:
             try:
                 return units.parse(value, self.kind)
             except units.UnitError as error:
-                raise refuse(error.found, error.expected) from None
-        example = kind.examples[0]
-        if isinstance(value, bool) or not isinstance(value, (int, float)):
-            raise refuse(describe(value), f'{_article(kind.name)} written as text, for example "{example}"')
+                raise refuse(error.found, error.expected, nearest=error.nearest) from None
         context: Mapping[str, Any] = info.context or {}
+        if isinstance(value, bool) or not isinstance(value, (int, float)):
+            raise refuse(value, self._wanted(kind))
         if context.get("from_file") and not kind.bare_number:
-            raise refuse(value, f'{_article(kind.name)} with its unit, for example "{example}"')
-        if not math.isfinite(value):
-            raise refuse(value, "a finite number")
-        return float(value)
+            raise refuse(value, self._wanted(kind))
+        return finite(value)
+
+    def _wanted(self, kind: units.Kind) -> str:
+        article = "an" if kind.meaning[0] in "aeiou" else "a"
+        how = "as a bare number" if kind.bare_number else "with its unit, in quotes"
+        return f"{article} {kind.meaning} {how}, for example {_example(kind)}"
 
 
-def _article(name: str) -> str:
-    plain = name.replace("_", " ")
-    return f"{'an' if plain[0] in 'aeiou' else 'a'} {plain}"
+def _example(kind: units.Kind) -> str:
+    return kind.examples[0] if kind.bare_number else f'"{kind.examples[0]}"'
+
+
+def finite(value: object) -> float:
+    """Return a bare number as a float; anything else, infinities and whole numbers too large are refused."""
+    if isinstance(value, bool) or not isinstance(value, (int, float)):
+        raise refuse(value, "a bare number")
+    if abs(value) > sys.float_info.max or value != value:
+        raise refuse(value, "a finite number")
+    return float(value)
 
 
 def describe(value: object) -> str:
-    """Return a found value as a user would recognise it, cut to a readable length."""
-    text = repr(value) if not isinstance(value, str) else value
+    """Return a found value as it stands in a study file, cut to a readable length."""
+    text = value if isinstance(value, str) else _as_toml(value)
     return text if len(text) <= 60 else text[:57] + "..."
+
+
+def _as_toml(value: object) -> str:
+    if isinstance(value, str):
+        return f'"{value}"'
+    if isinstance(value, bool):
+        return "true" if value else "false"
+    if isinstance(value, (list, tuple)):
+        return "[" + ", ".join(_as_toml(item) for item in value) + "]"
+    if isinstance(value, dict):
+        return "{ " + ", ".join(f"{key} = {_as_toml(item)}" for key, item in value.items()) + " }"
+    if isinstance(value, int) and abs(value) > sys.float_info.max:
+        return "a whole number of more than 300 digits"
+    return str(value)
 
 
 Name = Annotated[str, StringConstraints(strict=True, min_length=1, strip_whitespace=True)]
@@ -93,7 +125,8 @@ Cost = Annotated[float, Quantity("cost")]
 Position = tuple[Length, Length, Length]
 ForceVector = tuple[Force, Force, Force]
 MomentVector = tuple[Moment, Moment, Moment]
-Direction = tuple[float, float, float]
+Component = Annotated[float, BeforeValidator(finite)]
+Direction = tuple[Component, Component, Component]
 AxisName = Literal["x", "y", "z"]
 FreedomName = Literal["x", "y", "z", "rx", "ry", "rz"]
 
@@ -101,18 +134,28 @@ AXES: dict[str, Direction] = {"x": (1.0, 0.0, 0.0), "y": (0.0, 1.0, 0.0), "z": (
 FREEDOMS: tuple[FreedomName, ...] = ("x", "y", "z", "rx", "ry", "rz")
 
 
-def positive(value: float, what: str) -> float:
-    """Return the value if it is above zero, else refuse it (for field validators)."""
-    if value <= 0.0:
-        raise refuse(f"{value:g}", f"{what} above zero")
+def listed_once(value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+    """Return a list of names that is left out, or has at least one name and each one once; else refuse it."""
+    if value is not None and not value:
+        raise refuse("[]", "at least one name, or this key left out")
+    if value is not None and len(set(value)) != len(value):
+        raise refuse(list(value), "each name once")
     return value
 
 
-def unit_direction(direction: AxisName | Direction) -> Direction:
+def positive(value: float, what: str, at: str | None = None) -> float:
+    """Return the value if it is above zero, else refuse it (for field validators)."""
+    if value <= 0.0:
+        raise refuse(f"{value:g}", f"{what} above zero", at=at)
+    return value
+
+
+def unit_direction(direction: AxisName | Direction, at: str | None = None) -> Direction:
     """Return the unit vector of an axis name or of a vector; a zero vector is refused."""
     if isinstance(direction, str):
         return AXES[direction]
-    length = math.sqrt(sum(part * part for part in direction))
-    if length == 0.0:
-        raise refuse(list(direction), "a direction that is not the zero vector")
+    # hypot neither over- nor underflows where squares would.
+    length = math.hypot(*direction)
+    if length == 0.0 or not math.isfinite(length):
+        raise refuse(list(direction), "a direction that is not the zero vector", at=at)
     return (direction[0] / length, direction[1] / length, direction[2] / length)

@@ -64,23 +64,32 @@ class SolveError(DetuneError):
     """A solver could not do its work; the message says why in one sentence."""
 
 
+_CLOSE = 0.6
+"""Likeness, from 0 to 1, below which a name is no help to somebody who mistyped another."""
+
+
 def _bare(name: str) -> str:
     return name.casefold().replace("_", "").replace("-", "").replace(" ", "")
 
 
-def nearest_name(name: str, known: Iterable[str]) -> str | None:
-    """Return the known name closest to `name`, or None when none is close.
+def near_names(name: str, known: Iterable[str]) -> list[str]:
+    """Return the known names close to `name`, the closest first.
 
-    Case is ignored, and ``_``, ``-`` and space count as the same. Among equally close names the one
-    whose letters also agree in case wins, then the first in alphabetical order.
+    Case is ignored, and ``_``, ``-`` and space count as the same. Among equally close names the one whose
+    letters also agree in case comes first, then alphabetical order decides.
     """
     wanted = _bare(name)
-    best: tuple[float, float, str] | None = None
-    for candidate in sorted(set(known)):
-        likeness = difflib.SequenceMatcher(None, wanted, _bare(candidate)).ratio()
-        if likeness < 0.6:
-            continue
-        score = (likeness, difflib.SequenceMatcher(None, name, candidate).ratio(), candidate)
-        if best is None or score[:2] > best[:2]:
-            best = score
-    return best[2] if best is not None else None
+    matcher = difflib.SequenceMatcher(None, "", wanted)
+    close: list[tuple[float, float, str]] = []
+    for candidate in set(known):
+        matcher.set_seq1(_bare(candidate))
+        if matcher.real_quick_ratio() >= _CLOSE and matcher.ratio() >= _CLOSE:
+            exact = difflib.SequenceMatcher(None, candidate, name).ratio()
+            close.append((-matcher.ratio(), -exact, candidate))
+    return [candidate for _, _, candidate in sorted(close)]
+
+
+def nearest_name(name: str, known: Iterable[str]) -> str | None:
+    """Return the known name closest to `name` as `near_names` ranks them, or None when none is close."""
+    near = near_names(name, known)
+    return near[0] if near else None

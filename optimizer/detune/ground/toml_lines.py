@@ -15,14 +15,14 @@ __all__ = ["KeyPath", "Positions", "dotted", "load"]
 
 
 def dotted(path: KeyPath) -> str:
-    """Write a path as people read it: ``("allowable", 2, "limit")`` becomes ``allowable[2].limit``.
+    """Write a path as people read it: ``("allowable", 2, "limit")`` becomes ``allowable[3].limit``.
 
-    Indices count from 0. Keys that are no bare TOML keys are quoted.
+    The path counts from 0, the text from 1, as a person counts tables. Keys that are no bare TOML keys are quoted.
     """
     text = ""
     for step in path:
         if isinstance(step, int):
-            text += f"[{step}]"
+            text += f"[{step + 1}]"
         else:
             name = step if re.fullmatch(r"[A-Za-z0-9_-]+", step) else f'"{step}"'
             text += f".{name}" if text else name

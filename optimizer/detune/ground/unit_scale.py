@@ -6,7 +6,7 @@ import re
 from fractions import Fraction
 from functools import cache, lru_cache
 
-from detune.ground.errors import nearest_name
+from detune.ground.errors import near_names, nearest_name
 from detune.ground.kinds import KINDS, Kind, letter_g
 from detune.ground.unit_table import Dimension, LetterG, UnitTextError, measure_of, words_understood
 
@@ -130,13 +130,11 @@ def refused_g(unit: str, kind: str) -> str | None:
 @lru_cache(maxsize=256)
 def nearest_unit(unit: str, unknown: str, kind: str) -> str | None:
     """Return the unit with its unknown word replaced by the closest known one that makes it fit the kind."""
-    words = list(words_understood(letter_g(kind)))
-    while (candidate := nearest_name(unknown, words)) is not None:
+    for candidate in near_names(unknown, words_understood(letter_g(kind))):
         replaced = re.sub(rf"(?<![A-Za-zμ°%_]){re.escape(unknown)}(?![A-Za-zμ°%_])", candidate, unit, count=1)
         try:
             si_scale(replaced, kind)
         except UnitTextError:
-            words.remove(candidate)
-        else:
-            return replaced
+            continue
+        return replaced
     return None

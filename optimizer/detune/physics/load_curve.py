@@ -16,7 +16,8 @@ from detune.physics.tables import hermite, monotone_slopes, require_inside, requ
 from detune.physics.unsupported import UnsupportedMachine
 
 MOST_STEPS = 100
-MOST_HALVINGS = 40
+MOST_HALVINGS = 60
+IDLE_SHARE = 1e-6
 
 
 class CurveTurnsBack(ValueError):
@@ -86,8 +87,8 @@ def load_curve(deflection: ArrayLike, load: ArrayLike) -> LoadCurve:
     if back.size:
         row = int(back[0]) + 2
         raise CurveTurnsBack(
-            f"load curve: the load in row {row} ({n[row - 1]:g} N at {d[row - 1]:g} m) does not rise above the row "
-            "before it"
+            f"load curve: the load in row {row} ({n[row - 1]:g} N at {d[row - 1]:g} m) does not rise above "
+            "the row before it"
         )
     slope = monotone_slopes(d, n)
     secant = np.diff(n) / np.diff(d)
@@ -166,10 +167,10 @@ def at_rest(
     """Where sum rows[e].T force_e(rows[e] q + offset_e) = load, for leading design axes of load and offset.
 
     rows (E, n): deflection of element e is rows[e] @ q + offset[e]; n general freedoms; laws: E of them; load
-    (..., n) in N and N m; offset (..., E) in m (uneven floor, free height). Newton's method; the step is
-    halved until the residual falls, which it must since every force rises with its deflection. Raises
-    UnsupportedMachine when a direction has no stiffness, OutsideTable when an element rests beyond its curve,
-    NotAtRest.
+    (..., n) in N and N m; offset (..., E) in m (uneven floor, free height). Every force rises with its
+    deflection, so the energy is convex: Newton's method, each step halved while it overshoots the valley,
+    finds its one floor. Raises UnsupportedMachine when a direction has no stiffness, OutsideTable when an
+    element rests beyond its curve, NotAtRest.
     """
     b = np.atleast_2d(np.asarray(rows, dtype=float))
     w, gap = np.asarray(load, dtype=float), np.asarray(offset, dtype=float)
@@ -179,7 +180,8 @@ def at_rest(
     q = np.zeros((*lead, b.shape[1]))
     force, tangent = _forces(b, laws, q, gap)
     # Residuals are compared through the first tangent stiffness, which gives N and N m one measure.
-    first = np.einsum("...e,ei->...i", np.maximum(tangent, _mean_stiffness(laws)), b**2)
+    mean = _mean_stiffness(laws)
+    first = np.einsum("...e,ei->...i", np.maximum(tangent, mean), b**2)
     weight = np.where(first > 0.0, 1.0 / np.where(first > 0.0, first, 1.0), 0.0)
     for _ in range(MOST_STEPS):
         residual = w - force @ b
@@ -187,16 +189,17 @@ def at_rest(
         size = np.sum(weight * (w**2 + (np.abs(force) @ np.abs(b)) ** 2), axis=-1)
         if np.all(merit <= tolerance**2 * size):
             return _rest(b, laws, q, gap, force, tangent)
-        step = _newton_step(np.einsum("...e,ei,ej->...ij", tangent, b, b), residual)
+        step = _newton_step(b, tangent, np.maximum(tangent, IDLE_SHARE * mean), residual)
+        downhill = np.sum(residual * step, axis=-1)
         share = np.ones((*lead, 1))
         for _ in range(MOST_HALVINGS):
             force, tangent = _forces(b, laws, q + share * step, gap)
-            worse = np.sum(weight * (w - force @ b) ** 2, axis=-1) > merit * (1.0 - 1e-4 * share[..., 0])
-            if not np.any(worse & (merit > tolerance**2 * size)):
+            beyond = np.sum((w - force @ b) * step, axis=-1) < -0.5 * downhill
+            if not np.any(beyond & (merit > tolerance**2 * size)):
                 break
-            share = np.where(worse[..., None], 0.5 * share, share)
+            share = np.where(beyond[..., None], 0.5 * share, share)
         q = q + share * step
-    raise NotAtRest(f"the static load did not find its balance in {MOST_STEPS} steps")
+    raise NotAtRest(f"the static load found no balance in {MOST_STEPS} steps; does it tip?")
 
 
 def _require_on_curve(curve: LoadCurve, deflection: ArrayLike) -> None:
@@ -220,14 +223,25 @@ def _forces(
     return np.stack([p[0] for p in pairs], axis=-1), np.stack([p[1] for p in pairs], axis=-1)
 
 
-def _newton_step(stiffness: FloatArray, residual: FloatArray) -> FloatArray:
-    scale = np.sqrt(np.einsum("...ii->...i", stiffness))
-    if np.any(scale <= 0.0):
-        raise UnsupportedMachine("a direction carries no stiffness on the way to rest")
+def _newton_step(
+    rows: FloatArray, tangent: FloatArray, floored: FloatArray, residual: FloatArray
+) -> FloatArray:
+    """Newton's step; where idle mounts leave a direction free, floored tangents carry it back to contact."""
+    stiffness = np.einsum("...e,ei,ej->...ij", tangent, rows, rows)
+    free = ~_is_stiff(stiffness)
+    if np.any(free):
+        held = np.einsum("...e,ei,ej->...ij", floored, rows, rows)
+        if not np.all(_is_stiff(held)):
+            raise UnsupportedMachine("a direction of the machine carries no stiffness")
+        stiffness = np.where(free[..., None, None], held, stiffness)
+    return np.asarray(np.linalg.solve(stiffness, residual[..., None])[..., 0])
+
+
+def _is_stiff(stiffness: FloatArray) -> BoolArray:
+    diagonal = np.einsum("...ii->...i", stiffness)
+    scale = np.sqrt(np.where(diagonal > 0.0, diagonal, 1.0))
     scaled = stiffness / (scale[..., :, None] * scale[..., None, :])
-    if np.any(np.linalg.eigvalsh(scaled)[..., 0] < 1e-13):
-        raise UnsupportedMachine("a direction carries no stiffness on the way to rest")
-    return np.asarray(np.linalg.solve(scaled, (residual / scale)[..., None])[..., 0] / scale)
+    return np.asarray(np.linalg.eigvalsh(scaled)[..., 0] > 1e-12)
 
 
 def _rest(
@@ -241,10 +255,10 @@ def _rest(
     deflection = q @ rows.T + offset
     for e, law in enumerate(laws):
         require_law(law, deflection[..., e])
-    stops = [(law.stop_gap, -law.rebound_gap) for law in laws]
-    stopped = np.stack(
-        [(deflection[..., e] > high) | (deflection[..., e] < low) for e, (high, low) in enumerate(stops)],
-        axis=-1,
-    )
+    high = np.array([law.stop_gap for law in laws])
+    low = np.array([-law.rebound_gap for law in laws])
+    stopped = (deflection > high) | (deflection < low)
     stiffness = np.einsum("...e,ei,ej->...ij", tangent, rows, rows)
+    if not np.all(_is_stiff(stiffness)):
+        raise UnsupportedMachine("the machine rests with a direction that carries no stiffness")
     return Rest(q, deflection, force, tangent, stiffness, stopped)

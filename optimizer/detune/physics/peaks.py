@@ -16,7 +16,7 @@ from detune.physics.array_types import ComplexArray, FloatArray, IntArray
 COARSE = 1.0 / 0.4**2
 # So is one farther than this many distances to the nearest pole: another hump may fit between. A sample at an end
 # of the interval has a neighbour on one side only and needs a closer one.
-COARSE_GAP = 1.3
+COARSE_GAP = 0.8
 COARSE_GAP_AT_EDGE = 0.5
 # Most that a sampled peak is taken to fall short of the true one while a neighbour is that far down.
 COARSE_RISE = 5.0
@@ -115,7 +115,7 @@ def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[Float
     coarse_right = (y_right > COARSE) | (right > COARSE_GAP * bracket.pole)
     coarse = coarse_left | coarse_right
     # Too far for a parabola: 1/amplitude is a V with its foot about one half width from the peak sample.
-    foot = np.minimum(np.minimum(_foot(left, y_left), _foot(right, y_right)), bracket.pole)
+    foot = np.minimum(np.minimum(_foot(left, y_left), _foot(right, y_right)), 0.9 * COARSE_GAP * bracket.pole)
     to_left = np.minimum(np.maximum(foot, np.where(coarse_right, 0.0, 0.5 * right)), 0.4 * left)
     to_right = np.minimum(np.maximum(foot, np.where(coarse_left, 0.0, 0.5 * left)), 0.4 * right)
     hidden = _hidden(rise, np.maximum(y_left, y_right), np.maximum(left, right) / bracket.pole)
@@ -149,7 +149,7 @@ def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatAr
     rise = np.where(curved, 1.0 / np.sqrt(lowest), np.where((slope < 0.0) | alone, 1.5, 1.0))
     reach = np.where(curved, np.sqrt(0.5 * tolerance * lowest / bend), 0.1 * near)
     coarse = (y_near > COARSE) | (near > COARSE_GAP_AT_EDGE * bracket.pole)
-    step = np.minimum(np.minimum(_foot(near, y_near), 0.8 * COARSE_GAP_AT_EDGE * bracket.pole), 0.4 * near)
+    step = np.minimum(np.minimum(_foot(near, y_near), 0.9 * COARSE_GAP_AT_EDGE * bracket.pole), 0.4 * near)
     place = np.where(coarse, step, np.clip(vertex, 0.05 * near, 0.7 * near))
     rise = np.where(coarse, _hidden(rise, y_near, near / bracket.pole), rise)
     reach = np.where(coarse, 0.3 * step, np.minimum(reach, 0.3 * place))

@@ -18,6 +18,7 @@ from detune.brief.brief import Brief, applies, demanded
 from detune.brief.condition import Condition
 from detune.brief.cross_check import Finding, cross_check
 from detune.ground.errors import BriefError, Fault
+from detune.ground.toml_lines import dotted
 from detune.parts.assumed import group_assumed
 from detune.parts.catalog import Catalog
 from detune.parts.kinds.mount import Mount
@@ -114,7 +115,7 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
 def faults_without_lines(brief: Brief, findings: tuple[Finding, ...]) -> list[Fault]:
     """Return findings as faults of a brief whose file is not at hand."""
     return [
-        Fault(brief.file, None, ".".join(str(key) for key in f.path), f.found, f.expected, f.nearest) for f in findings
+        Fault(brief.file, None, dotted(f.path), f.found, f.expected, f.nearest) for f in findings
     ]
 
 

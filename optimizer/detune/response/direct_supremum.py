@@ -132,7 +132,7 @@ def amplitudes_at(machine: DirectMachine, pairs: Pairs, sets: list[tuple[Tone, .
         view = DirectTone(machine, tones, (TWO_PI * tones[0].order * speed)[None])
         for index, (allowable, place) in enumerate(pairs):
             statistic = allowable.statistic()
-            tone = tone_amplitude(allowable.phasor(view, place), allowable.along(), statistic)[0]
+            tone = tone_amplitude(allowable.observed(view, place), allowable.along(), statistic)[0]
             earlier = total[index]
             total[index] = tone if earlier is None else combine(earlier, tone, statistic)
     return np.stack([part for part in total if part is not None])

@@ -95,14 +95,18 @@ class DirectTone:
     def load(self) -> Complexes:
         return self._solved[2]
 
-    def motion(self, point: str) -> Complexes:
+    def _rate(self, rate: int) -> Complexes:
+        return (1j * self.omega[..., None]) ** rate
+
+    def motion(self, point: str, rate: int = 0) -> Complexes:
         stated = next(p for p in self.machine.brief.points if p.name == point)
         rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
-        return (self.q @ rows.T)[None]
+        return self._rate(rate) * (self.q @ rows.T)[None]
 
-    def station_deflection(self, station: str) -> Complexes:
+    def station_deflection(self, station: str, rate: int = 0) -> Complexes:
         stated = station_named(self.machine, station)
-        return (self.q @ self.machine.across(stated).T @ self.machine.axes(stated))[None]
+        local = self.q @ self.machine.across(stated).T @ self.machine.axes(stated)
+        return self._rate(rate) * local[None]
 
     def station_force(self, station: str) -> Complexes:
         mount = self.machine.mount(station_named(self.machine, station))

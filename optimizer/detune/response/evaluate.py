@@ -69,7 +69,7 @@ def family_amplitude(
         view = ToneBatch(model, designs, dynamic, loads, speed * loads[0].order)
         for index, (allowable, place) in enumerate(rows.pairs):
             statistic = allowable.statistic()
-            tone = tone_amplitude(allowable.phasor(view, place), allowable.along(), statistic)
+            tone = tone_amplitude(allowable.observed(view, place), allowable.along(), statistic)
             earlier = total[index]
             total[index] = tone if earlier is None else combine(earlier, tone, statistic)
     return np.stack([part for part in total if part is not None])

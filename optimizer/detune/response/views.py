@@ -115,15 +115,18 @@ class ToneBatch:
         group = find_station(self.model, station).group
         return part_dynamic_stiffness(self.model.groups[group], self.designs.part[:, group], self.omega)
 
-    def motion(self, point: str) -> Complexes:
-        return self.q @ self.model.points[point].T
+    def _rate(self, rate: int) -> Complexes:
+        return (1j * self.omega[..., None]) ** rate
 
-    def station_deflection(self, station: str) -> Complexes:
+    def motion(self, point: str, rate: int = 0) -> Complexes:
+        return self._rate(rate) * (self.q @ self.model.points[point].T)
+
+    def station_deflection(self, station: str, rate: int = 0) -> Complexes:
         found = find_station(self.model, station)
         deflection: Complexes = self.q @ found.rows.T
         if found.on_floor and self._prescribed is not None:
             deflection = deflection - self._prescribed @ found.axes
-        return deflection
+        return self._rate(rate) * deflection
 
     def station_force(self, station: str) -> Complexes:
         return self._stiffness(station) * self.station_deflection(station)

@@ -4,7 +4,7 @@ from typing import Literal
 
 import numpy as np
 
-from detune.brief.allowable.views import Complexes, Places
+from detune.brief.allowable.views import Responses, Places
 from detune.brief.statement import Direction, Name
 
 LocalDirection = Literal["axial", "lateral", "resultant"]
@@ -15,7 +15,7 @@ def chosen_stations(stations: tuple[Name, ...] | None, places: Places) -> tuple[
     return places.stations if stations is None else stations
 
 
-def local_part(phasor: Complexes, direction: LocalDirection) -> Complexes:
+def local_part(phasor: Responses, direction: LocalDirection) -> Responses:
     """Return a local phasor vector (D, F, 3) with the axial part removed where only lateral counts."""
     if direction != "lateral":
         return phasor

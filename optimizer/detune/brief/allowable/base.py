@@ -3,9 +3,19 @@
 from typing import ClassVar, Literal
 
 import numpy as np
+from pydantic import field_validator
 
-from detune.brief.allowable.views import Complexes, DesignView, Floats, ModeView, Places, StaticView, ToneView
-from detune.brief.statement import AxisName, Direction, Name, Statement, refuse, unit_direction
+from detune.brief.allowable.views import (
+    Complexes,
+    DesignView,
+    Floats,
+    ModeView,
+    Places,
+    Responses,
+    ResponseView,
+    StaticView,
+)
+from detune.brief.statement import AxisName, Direction, Name, Statement, listed_once, refuse, unit_direction
 from detune.physics.response import ellipse_major
 
 Statistic = Literal["peak", "rms", "peak-to-peak"]
@@ -23,6 +33,12 @@ class Allowable(Statement):
 
     title: ClassVar[str]
     unit: ClassVar[str]
+
+    @field_validator("conditions", "stations", check_fields=False)
+    @classmethod
+    def _some_names(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        # An empty list would leave the limit without any place to judge, and so always met.
+        return listed_once(value)
 
     def places(self, places: Places) -> tuple[str, ...]:
         """Return the places this allowable is judged at; each becomes one requirement."""
@@ -44,12 +60,12 @@ class Allowable(Statement):
 class HarmonicAllowable(Allowable):
     """An upper limit on the amplitude of a response to the condition's tones.
 
-    A new kind writes `phasor` (and `places`); the supremum over speed, the sum over orders and the
+    A new kind writes `observed` (and `places`); the supremum over speed, the sum over orders and the
     margins are the same for all.
     """
 
-    def phasor(self, view: ToneView, place: str) -> Complexes:
-        """Return the limited quantity as a phasor vector (D, F, 3) of one tone."""
+    def observed(self, view: ResponseView, place: str) -> Responses:
+        """Return the limited quantity as a vector (D, F, 3): phasors of one tone, or values over time."""
         raise NotImplementedError(type(self).__name__)
 
     def statistic(self) -> Statistic:
@@ -80,6 +96,11 @@ class HarmonicAllowable(Allowable):
 class StaticAllowable(Allowable):
     """A limit on a static quantity; it does not depend on the condition."""
 
+    @field_validator("conditions")
+    @classmethod
+    def _every_condition(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        return no_conditions(value, "a static limit holds at rest, whatever runs")
+
     def value(self, view: StaticView, place: str) -> Floats:
         """Return the limited quantity (D,)."""
         raise NotImplementedError(type(self).__name__)
@@ -103,6 +124,11 @@ class ModeAllowable(Allowable):
 
 class DesignAllowable(Allowable):
     """An upper limit on a total of the design."""
+
+    @field_validator("conditions")
+    @classmethod
+    def _every_condition(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        return no_conditions(value, "a total of the design does not depend on them")
 
     def value(self, view: DesignView) -> Floats:
         """Return the limited quantity (D,)."""
@@ -139,8 +165,15 @@ def read_direction(direction: AxisName | Literal["resultant"] | Direction) -> Di
     return None if direction == "resultant" else unit_direction(direction)
 
 
-def above_zero(value: float, what: str) -> float:
+def above_zero(value: float, what: str, at: str | None = None) -> float:
     """Return a limit that is above zero, else refuse it."""
     if value <= 0.0:
-        raise refuse(f"{value:g}", f"{what} above zero")
+        raise refuse(f"{value:g}", f"{what} above zero", at=at)
+    return value
+
+
+def no_conditions(value: tuple[str, ...] | None, why: str) -> tuple[str, ...] | None:
+    """Refuse a list of conditions where it says nothing."""
+    if value is not None:
+        raise refuse(list(value), f'no "conditions": {why}')
     return value

@@ -3,7 +3,7 @@
 from typing import ClassVar, Literal
 
 from detune.brief.allowable.at_point import PointAllowable
-from detune.brief.allowable.views import Complexes, ToneView
+from detune.brief.allowable.views import Responses, ResponseView
 from detune.brief.statement import Length
 
 
@@ -15,5 +15,5 @@ class Displacement(PointAllowable):
     kind: Literal["displacement"] = "displacement"
     limit: Length
 
-    def phasor(self, view: ToneView, place: str) -> Complexes:
+    def observed(self, view: ResponseView, place: str) -> Responses:
         return view.motion(place)

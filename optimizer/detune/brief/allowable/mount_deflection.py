@@ -7,7 +7,7 @@ from pydantic import model_validator
 
 from detune.brief.allowable.at_station import LocalDirection, chosen_stations, local_along, local_part
 from detune.brief.allowable.base import HarmonicAllowable, above_zero
-from detune.brief.allowable.views import Complexes, Floats, Places, StaticView, ToneView
+from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
 from detune.brief.statement import Direction, Length, Name, refuse
 
 
@@ -30,9 +30,9 @@ class MountDeflection(HarmonicAllowable):
     @model_validator(mode="after")
     def _values(self) -> "MountDeflection":
         if not isinstance(self.limit, str):
-            above_zero(self.limit, "a limit")
+            above_zero(self.limit, "a limit", at="limit")
         if self.part == "combined" and self.direction != "axial":
-            raise refuse(self.direction, 'the axial direction for "combined", which adds the static deflection')
+            raise refuse(self.direction, 'the axial direction for "combined", which adds the static deflection', at="direction")
         return self
 
     def places(self, places: Places) -> tuple[str, ...]:
@@ -44,7 +44,7 @@ class MountDeflection(HarmonicAllowable):
     def along(self) -> Direction | None:
         return local_along(self.direction)
 
-    def phasor(self, view: ToneView, place: str) -> Complexes:
+    def observed(self, view: ResponseView, place: str) -> Responses:
         return local_part(view.station_deflection(place), self.direction)
 
     def offset(self, view: StaticView, place: str) -> Floats:

@@ -5,9 +5,9 @@ from typing import ClassVar, Literal
 import numpy as np
 from pydantic import model_validator
 
-from detune.brief.allowable.base import ModeAllowable, above_zero
+from detune.brief.allowable.base import ModeAllowable, above_zero, no_conditions
 from detune.brief.allowable.views import Floats, ModeView
-from detune.brief.statement import Ratio, refuse
+from detune.brief.statement import Ratio
 from detune.physics import separation
 
 
@@ -26,11 +26,11 @@ class Separation(ModeAllowable):
 
     @model_validator(mode="after")
     def _values(self) -> "Separation":
-        above_zero(self.limit, "a limit")
+        above_zero(self.limit, "a limit", at="limit")
         if self.conditions is not None:
-            raise refuse("conditions", "no conditions: separation counts every steady condition")
+            no_conditions(self.conditions, "separation counts every steady condition")
         if self.exempt_amplification is not None:
-            above_zero(self.exempt_amplification, "an amplification")
+            above_zero(self.exempt_amplification, "an amplification", at="exempt_amplification")
         return self
 
     def value(self, view: ModeView) -> Floats:

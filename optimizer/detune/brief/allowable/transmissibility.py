@@ -6,7 +6,7 @@ import numpy as np
 from pydantic import model_validator
 
 from detune.brief.allowable.base import HarmonicAllowable, UnitLoad, above_zero
-from detune.brief.allowable.views import Complexes, Floats, Places, StaticView, ToneView
+from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
 from detune.brief.statement import AxisName, Direction, Frequency, Name, Ratio, refuse, unit_direction
 
 
@@ -29,12 +29,12 @@ class Transmissibility(HarmonicAllowable):
 
     @model_validator(mode="after")
     def _values(self) -> "Transmissibility":
-        above_zero(self.limit, "a limit")
-        unit_direction(self.direction)
+        above_zero(self.limit, "a limit", at="limit")
+        unit_direction(self.direction, at="direction")
         if self.of == "motion" and self.at is None:
             raise refuse("no point", 'the point whose motion is compared, as "at"')
         if self.of == "force" and self.at is not None:
-            raise refuse("at", 'no "at": a force ratio is of the total force into the floor')
+            raise refuse("at", 'no "at": a force ratio is of the total force into the floor', at="at")
         return self
 
     def places(self, places: Places) -> tuple[str, ...]:
@@ -52,7 +52,7 @@ class Transmissibility(HarmonicAllowable):
     def lowest_frequency(self) -> float:
         return self.from_frequency or 0.0
 
-    def phasor(self, view: ToneView, place: str) -> Complexes:
+    def observed(self, view: ResponseView, place: str) -> Responses:
         return view.total_force("floor") if self.of == "force" else view.motion(place)
 
     def bound(self, view: StaticView, place: str) -> Floats:

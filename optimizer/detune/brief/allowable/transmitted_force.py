@@ -7,8 +7,8 @@ from pydantic import model_validator
 
 from detune.brief.allowable.at_station import LocalDirection, chosen_stations, local_along, local_part
 from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, read_direction
-from detune.brief.allowable.views import Complexes, Floats, Places, StaticView, ToneView
-from detune.brief.statement import AxisName, Direction, Force, Name, refuse
+from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
+from detune.brief.statement import AxisName, Direction, Force, Name, describe, refuse
 
 LOCAL = ("axial", "lateral", "resultant")
 
@@ -33,15 +33,25 @@ class TransmittedForce(HarmonicAllowable):
 
     @model_validator(mode="after")
     def _values(self) -> "TransmittedForce":
-        above_zero(self.limit, "a limit")
+        above_zero(self.limit, "a limit", at="limit")
         if self.through == "each-station":
             if self.direction not in LOCAL:
-                raise refuse(self.direction, 'a part\'s own direction: "axial", "lateral" or "resultant"')
+                raise refuse(
+                    describe(self.direction),
+                    'a part\'s own direction, through each station: "axial", "lateral" or "resultant"',
+                    at="direction",
+                )
         else:
             if self.stations is not None:
-                raise refuse("stations", f'no stations for the force through the {self.through}')
+                raise refuse("stations", f'no "stations" for the force through the {self.through}', at="stations")
             if self.direction in ("axial", "lateral"):
-                raise refuse(self.direction, 'a global direction: "x", "y", "z", "resultant" or a vector')
+                raise refuse(
+                    self.direction,
+                    f'a global direction for the force through the {self.through}: "x", "y", "z", "resultant"'
+                    " or a vector of three numbers",
+                    at="direction",
+                )
+            read_direction(self.direction)  # type: ignore[arg-type]
         return self
 
     def places(self, places: Places) -> tuple[str, ...]:
@@ -60,7 +70,7 @@ class TransmittedForce(HarmonicAllowable):
             return local_along("axial") if self.direction == "axial" else None
         return read_direction(self.direction)  # type: ignore[arg-type]
 
-    def phasor(self, view: ToneView, place: str) -> Complexes:
+    def observed(self, view: ResponseView, place: str) -> Responses:
         if self.through == "each-station":
             return local_part(view.station_force(place), "lateral" if self.direction == "lateral" else "resultant")
         return view.total_force(self.through)

@@ -6,7 +6,7 @@ import numpy as np
 
 from detune.brief.allowable.at_station import chosen_stations
 from detune.brief.allowable.base import HarmonicAllowable
-from detune.brief.allowable.views import Complexes, Floats, Places, StaticView, ToneView
+from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
 from detune.brief.statement import Direction, Name
 
 
@@ -30,7 +30,7 @@ class Uplift(HarmonicAllowable):
     def along(self) -> Direction | None:
         return (0.0, 0.0, 1.0)
 
-    def phasor(self, view: ToneView, place: str) -> Complexes:
+    def observed(self, view: ResponseView, place: str) -> Responses:
         return view.station_force(place)
 
     def bound(self, view: StaticView, place: str) -> Floats:

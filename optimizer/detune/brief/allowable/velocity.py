@@ -3,7 +3,7 @@
 from typing import ClassVar, Literal
 
 from detune.brief.allowable.at_point import PointAllowable
-from detune.brief.allowable.views import Complexes, ToneView
+from detune.brief.allowable.views import Responses, ResponseView
 from detune.brief.statement import Velocity as VelocityQuantity
 
 
@@ -15,5 +15,5 @@ class Velocity(PointAllowable):
     kind: Literal["velocity"] = "velocity"
     limit: VelocityQuantity
 
-    def phasor(self, view: ToneView, place: str) -> Complexes:
-        return view.motion(place) * (1j * view.omega)[..., None]
+    def observed(self, view: ResponseView, place: str) -> Responses:
+        return view.motion(place, rate=1)

@@ -5,13 +5,14 @@ axis, pointing from the floor to the body; x along its radial direction.
 """
 
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
+Responses = NDArray[Any]
 
 
 @dataclass(frozen=True)
@@ -46,24 +47,24 @@ class StaticView(Protocol):
         """A number (D,) of the part at the station, for example `load_max`; nan where none is stated."""
 
 
-class ToneView(Protocol):
-    """The response to one tone."""
+class ResponseView(Protocol):
+    """The response to a load, linear in it.
 
-    @property
-    def omega(self) -> Floats:
-        """Angular frequency (D, F) in rad/s of the tone itself."""
+    The axis F runs over frequencies (values are then phasors) or over times (values are then real);
+    an allowable does not need to know which. `rate` 1 and 2 ask for the first and second derivative in time.
+    """
 
-    def motion(self, point: str) -> Complexes:
-        """Displacement phasor (D, F, 3) in m of a point, global axes."""
+    def motion(self, point: str, rate: int = 0) -> Responses:
+        """Displacement (D, F, 3) in m of a point, global axes, or its derivative."""
 
-    def station_deflection(self, station: str) -> Complexes:
-        """Deflection phasor (D, F, 3) in m of the part, local axes."""
+    def station_deflection(self, station: str, rate: int = 0) -> Responses:
+        """Deflection (D, F, 3) in m of the part, local axes, or its derivative."""
 
-    def station_force(self, station: str) -> Complexes:
-        """Force phasor (D, F, 3) in N through one part, local axes."""
+    def station_force(self, station: str) -> Responses:
+        """Force (D, F, 3) in N through one part, local axes."""
 
-    def total_force(self, surface: str) -> Complexes:
-        """Force phasor (D, F, 3) in N, global axes, summed with phase: into the "floor" or the "ground"."""
+    def total_force(self, surface: str) -> Responses:
+        """Force (D, F, 3) in N, global axes, summed with phase: into the "floor" or the "ground"."""
 
 
 @dataclass(frozen=True)

@@ -7,7 +7,7 @@ from typing import ClassVar
 from pydantic import field_validator, model_validator
 
 from detune.brief.condition import SpeedRange, check_range
-from detune.brief.statement import Frequency, Name, Statement, refuse
+from detune.brief.statement import Frequency, Name, Statement, listed_once, refuse
 
 Complex3 = tuple[complex, complex, complex]
 ZERO3: Complex3 = (0j, 0j, 0j)
@@ -45,6 +45,11 @@ class Forcing(Statement):
     conditions: tuple[Name, ...] | None = None
 
     title: ClassVar[str]
+
+    @field_validator("conditions")
+    @classmethod
+    def _some_conditions(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        return listed_once(value)
 
     def tones(self, speeds: Mapping[str, SpeedRange]) -> tuple[Tone, ...]:
         """Return the tones of this forcing in a condition whose shafts turn at `speeds` (Hz)."""

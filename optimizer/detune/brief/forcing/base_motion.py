@@ -37,14 +37,14 @@ class BaseMotion(SteadyToneForcing):
 
     @model_validator(mode="after")
     def _one_of_three(self) -> "BaseMotion":
-        unit_direction(self.direction)
-        stated = [value for value in (self.displacement, self.velocity, self.acceleration) if value is not None]
+        unit_direction(self.direction, at="direction")
+        stated = [key for key in ("displacement", "velocity", "acceleration") if getattr(self, key) is not None]
         if len(stated) != 1:
             raise refuse(
-                f"{len(stated)} of displacement, velocity and acceleration",
+                " and ".join(stated) or "no amplitude",
                 'exactly one of "displacement", "velocity" and "acceleration"',
             )
-        positive(stated[0], "an amplitude")
+        positive(getattr(self, stated[0]), "an amplitude", at=stated[0])
         return self
 
     def tones(self, speeds: Mapping[str, SpeedRange]) -> tuple[Tone, ...]:

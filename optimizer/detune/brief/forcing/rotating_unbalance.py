@@ -48,21 +48,20 @@ class RotatingUnbalance(ShaftForcing):
 
     @model_validator(mode="after")
     def _one_way(self) -> "RotatingUnbalance":
-        unit_direction(self.axis)
+        unit_direction(self.axis, at="axis")
         by_grade = [self.grade, self.rotor_mass, self.grade_speed]
         if self.unbalance is not None:
             if any(value is not None for value in by_grade):
                 raise refuse("unbalance and grade", 'either "unbalance", or "grade" with "rotor_mass" and "grade_speed"')
-            positive(self.unbalance, "an unbalance")
+            positive(self.unbalance, "an unbalance", at="unbalance")
             return self
         if any(value is None for value in by_grade):
             raise refuse(
                 "no complete unbalance",
                 '"unbalance", or all of "grade", "rotor_mass" and "grade_speed" (the highest service speed)',
             )
-        for value, what in zip(by_grade, ("a grade", "a rotor mass", "a speed"), strict=True):
-            assert value is not None
-            positive(value, what)
+        for key, what in (("grade", "a grade"), ("rotor_mass", "a rotor mass"), ("grade_speed", "a speed")):
+            positive(getattr(self, key), what, at=key)
         return self
 
     def unbalance_kg_m(self) -> float:

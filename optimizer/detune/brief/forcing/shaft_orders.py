@@ -21,7 +21,7 @@ class Order(Statement):
 
     @model_validator(mode="after")
     def _something_acts(self) -> "Order":
-        positive(self.order, "an order")
+        positive(self.order, "an order", at="order")
         if not any(self.force) and not any(self.moment):
             raise refuse("no force and no moment", 'a "force" or a "moment" that is not zero')
         return self

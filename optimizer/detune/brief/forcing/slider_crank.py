@@ -53,15 +53,15 @@ class SliderCrank(ShaftForcing):
 
     @model_validator(mode="after")
     def _values(self) -> "SliderCrank":
-        unit_direction(self.axis)
-        positive(self.reciprocating_mass, "a reciprocating mass")
-        positive(self.crank_radius, "a crank radius")
+        unit_direction(self.axis, at="axis")
+        positive(self.reciprocating_mass, "a reciprocating mass", at="reciprocating_mass")
+        positive(self.crank_radius, "a crank radius", at="crank_radius")
         if self.rod_length <= self.crank_radius:
-            raise refuse(f"rod_length {self.rod_length:g} m", "a rod longer than the crank radius")
+            raise refuse(f"rod_length {self.rod_length:g} m", "a rod longer than the crank radius", at="rod_length")
         if not self.cylinders:
-            raise refuse("[]", "at least one cylinder")
+            raise refuse("[]", "at least one cylinder", at="cylinders")
         for cylinder in self.cylinders:
-            unit_direction(cylinder.direction)
+            unit_direction(cylinder.direction, at="cylinders")
         return self
 
     def tones(self, speeds: Mapping[str, SpeedRange]) -> tuple[Tone, ...]:

@@ -1,0 +1,154 @@
+"""The result folder: everything a study came to, in files that stand on their own."""
+
+import os
+import shutil
+from pathlib import Path
+
+from detune.ground.errors import DetuneError
+from detune.report.csv_files import (
+    designs_csv,
+    front_csv,
+    margins_csv,
+    modes_csv,
+    responses_csv,
+    stations_csv,
+    why_csv,
+)
+from detune.report.page import page_text
+from detune.report.plots import draw_all
+from detune.report.response_data import response_curves
+from detune.report.strict_json import json_text
+from detune.study.run import Result
+
+MARK = "proof.json"
+
+
+class FolderExists(DetuneError):
+    """The result folder is there already and nobody asked for it to be replaced."""
+
+
+def write_folder(result: Result, folder: str | Path, overwrite: bool = False) -> Path:
+    """Write the result folder and return its path.
+
+    Everything is written into a folder beside it and renamed at the end, so that a half-written folder
+    never looks finished. Raises FolderExists where something is there already, unless `overwrite`; even
+    then only an empty folder or a result folder is replaced.
+    """
+    target = Path(folder)
+    _check(target, overwrite)
+    target.parent.mkdir(parents=True, exist_ok=True)
+    building = _sibling(target, "writing")
+    building.mkdir()
+    try:
+        _fill(result, building)
+        _put_in_place(building, target)
+    finally:
+        shutil.rmtree(building, ignore_errors=True)
+    return target
+
+
+def check_folder(folder: str | Path, overwrite: bool = False) -> None:
+    """Raise FolderExists if `write_folder` would refuse: to be asked before the work, not after it."""
+    _check(Path(folder), overwrite)
+
+
+def _check(target: Path, overwrite: bool) -> None:
+    if not target.exists() and not target.is_symlink():
+        return
+    if not target.is_dir() or target.is_symlink():
+        raise FolderExists(f"{target} is there already and is no folder; name another result folder.")
+    if not any(target.iterdir()):
+        return
+    if not overwrite:
+        raise FolderExists(f"{target} is there already and is not empty; name another folder, or say --overwrite.")
+    if not (target / MARK).is_file():
+        raise FolderExists(
+            f"{target} is not a result folder ({MARK} is missing), so it is not replaced even with --overwrite; "
+            "name another folder."
+        )
+
+
+def _sibling(target: Path, purpose: str) -> Path:
+    resolved = target.resolve()
+    return resolved.with_name(f".{resolved.name}.{purpose}-{os.getpid()}")
+
+
+def _put_in_place(building: Path, target: Path) -> None:
+    if not target.exists():
+        building.rename(target)
+        return
+    earlier = _sibling(target, "earlier")
+    target.rename(earlier)
+    try:
+        building.rename(target)
+    except OSError:
+        earlier.rename(target)
+        raise
+    shutil.rmtree(earlier)
+
+
+def _fill(result: Result, folder: Path) -> None:
+    subject = result.answer if result.answer is not None else result.closest
+    curves = response_curves(result.study.brief, subject) if subject is not None else ()
+    texts = {
+        "study.toml": result.study.source,
+        "inputs.json": json_text({"sha256": dict(result.study.hashes)}),
+        "answer.json": json_text(_answer(result)),
+        MARK: json_text(_proof(result)),
+        "front.csv": front_csv(result),
+        "designs.csv": designs_csv(result),
+        "why.csv": why_csv(result),
+    }
+    if subject is not None:
+        texts["responses.csv"] = responses_csv(curves)
+        texts["margins.csv"] = margins_csv(subject)
+        texts["stations.csv"] = stations_csv(subject)
+        texts["modes.csv"] = modes_csv(subject)
+    (folder / "plots").mkdir()
+    drawn = draw_all(result, curves)
+    for plot in drawn:
+        texts[f"plots/{plot.name}.svg"] = plot.svg
+        (folder / "plots" / f"{plot.name}.png").write_bytes(plot.png)
+    texts["report.html"] = page_text(result, drawn)
+    for name, text in texts.items():
+        (folder / name).write_text(text, encoding="utf-8", newline="\n")
+
+
+def _answer(result: Result) -> dict[str, object]:
+    return {
+        "title": result.study.brief.title,
+        "stopped": result.outcome.stopped,
+        "none_exists": result.outcome.none_exists,
+        "exit_code": result.exit_code,
+        "traded": result.front.trade,
+        "answer": result.answer,
+        "closest": result.closest,
+        "compared": result.compared,
+        "units": "SI: m, kg, s, N, rad, Hz; cost in the currency of the lists; margins and separation are ratios",
+    }
+
+
+def _proof(result: Result) -> dict[str, object]:
+    record = result.outcome.record
+    return {
+        "method": record.method,
+        "stopped": result.outcome.stopped,
+        "designs": record.designs,
+        "looked_at": record.looked_at,
+        "met": record.met,
+        "accounted": record.accounted,
+        "withdrawn_by_the_assessor": result.front.withdrawn,
+        "rules": [
+            {
+                "stage": rule.stage,
+                "rule": rule.rule,
+                "excluded": rule.excluded,
+                "by_part": {
+                    group.name: dict(zip((m.part for m in group.mounts), counts.tolist(), strict=True))
+                    for group, counts in zip(result.problem.model.groups, rule.by_part, strict=True)
+                },
+            }
+            for rule in record.rules
+        ],
+        "seconds": record.seconds,
+    }
