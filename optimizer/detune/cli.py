@@ -49,7 +49,9 @@ def _parser() -> argparse.ArgumentParser:
 
     check = verbs.add_parser("check", help="read a study and its catalogs, and tell every fault")
     check.set_defaults(verb=_check)
-    run = verbs.add_parser("run", help="find the cheapest design that meets the brief, the front, and the reasons")
+    run = verbs.add_parser(
+        "run", help="find the cheapest design that meets the brief, the front, and the reasons"
+    )
     run.set_defaults(verb=_run)
     assess = verbs.add_parser("assess", help="judge one design you name")
     assess.set_defaults(verb=_assess)
@@ -63,13 +65,23 @@ def _parser() -> argparse.ArgumentParser:
     for verb in (check, run, assess, compare, vary):
         verb.add_argument("study", metavar="STUDY", help="the study file (TOML)")
     wording = 'a design, as "group=part, group=part, ballast=40 kg"'
-    run.add_argument("--design", action="append", default=[], help=f"{wording}, set beside the answer; may be repeated")
+    run.add_argument(
+        "--design", action="append", default=[], help=f"{wording}, set beside the answer; may be repeated"
+    )
     assess.add_argument("--design", required=True, help=wording)
-    compare.add_argument("--design", action="append", required=True, help=f"{wording}; repeat for each design")
-    run.add_argument("--out", metavar="FOLDER", help="where the results go (default: results/ and the study's name)")
+    compare.add_argument(
+        "--design", action="append", required=True, help=f"{wording}; repeat for each design"
+    )
+    run.add_argument(
+        "--out", metavar="FOLDER", help="where the results go (default: results/ and the study's name)"
+    )
     run.add_argument("--overwrite", action="store_true", help="replace an existing result folder")
-    vary.add_argument("--set", required=True, metavar="KEY", help="the key to replace, such as allowable[2].limit")
-    vary.add_argument("--to", required=True, nargs="+", metavar="VALUE", help="its values, each as in the study file")
+    vary.add_argument(
+        "--set", required=True, metavar="KEY", help="the key to replace, such as allowable[2].limit"
+    )
+    vary.add_argument(
+        "--to", required=True, nargs="+", metavar="VALUE", help="its values, each as in the study file"
+    )
     for verb in (run, vary):
         verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
     return parser
@@ -84,8 +96,12 @@ def _check(options: argparse.Namespace) -> int:
     steps = len(brief.ballast.steps) if brief.ballast else 1
     print(f"{options.study}: no fault found")
     print(f"  {brief.title}")
-    print(f"  {len(brief.stations)} stations in {len(brief.groups)} groups, {len(brief.conditions)} conditions,")
-    print(f"  {len(brief.forcing)} forcings, {len(brief.allowables)} allowables, {steps} ballast steps; parts: {parts}")
+    print(
+        f"  {len(brief.stations)} stations in {len(brief.groups)} groups, {len(brief.conditions)} conditions,"
+    )
+    print(
+        f"  {len(brief.forcing)} forcings, {len(brief.allowables)} allowables, {steps} ballast steps; parts: {parts}"
+    )
     return MEETS
 
 
@@ -164,7 +180,9 @@ def _settings(options: argparse.Namespace) -> "Settings":
         try:
             limit = parse(options.time_limit, "time")
         except UnitError as error:
-            raise BriefError([Fault("--time-limit", None, "--time-limit", error.found, error.expected)]) from None
+            raise BriefError(
+                [Fault("--time-limit", None, "--time-limit", error.found, error.expected)]
+            ) from None
     return Settings(time_limit=limit, progress=_progress() if sys.stderr.isatty() else None)
 
 

@@ -31,6 +31,8 @@ def assess(selection, design):
             one = max(f / high - 1, 1 - f / low)
             separation = min(separation, one)
             met = met and one >= required
+    if not met:
+        return False, separation, np.nan
     if np.linalg.eigvalsh(static)[0] <= 1e-13 * np.abs(static).max():
         return False, separation, -np.inf
     q = np.linalg.solve(static, load)
@@ -45,9 +47,13 @@ def assess(selection, design):
         def pick(limits, index=index, p=p):
             return limits[p] if limits.ndim == 1 else limits[index, p]
 
-        met = met and pick(group.load_min) <= force <= pick(group.load_max) and z <= pick(group.deflection_max)
+        met = (
+            met and pick(group.load_min) <= force <= pick(group.load_max) and z <= pick(group.deflection_max)
+        )
     rows = selection.static_rows
     met = met and all(lo <= r @ q <= hi for r, lo, hi in zip(rows.rows, rows.lower, rows.upper, strict=True))
+    if not met:
+        return False, separation, np.nan
     margin = response_margin(selection, parts, mass, dynamic, n)
     return bool(met and margin >= 0), separation, margin
 

@@ -22,10 +22,16 @@ NUMPY = SearchSettings(kernels="numpy")
 SHAPES = [
     InstanceSettings(parts=7, groups=1, seed=1, tight=False, response_share=0.5, separation=0.02),
     InstanceSettings(parts=6, groups=2, seed=2, tight=False, response_share=0.4, separation=0.03),
-    InstanceSettings(parts=4, groups=3, seed=3, ballast_steps=2, tight=False, response_share=0.5, separation=0.02),
+    InstanceSettings(
+        parts=4, groups=3, seed=3, ballast_steps=2, tight=False, response_share=0.5, separation=0.02
+    ),
     InstanceSettings(parts=4, groups=3, seed=4, empty=True, tight=False, response_share=0.5, separation=0.02),
-    InstanceSettings(parts=3, groups=4, seed=5, ballast_steps=2, tight=False, response_share=0.6, separation=0.02),
-    InstanceSettings(parts=3, groups=4, seed=6, tight=False, response_share=0.6, separation=0.0, base_motion=True),
+    InstanceSettings(
+        parts=3, groups=4, seed=5, ballast_steps=2, tight=False, response_share=0.6, separation=0.02
+    ),
+    InstanceSettings(
+        parts=3, groups=4, seed=6, tight=False, response_share=0.6, separation=0.0, base_motion=True
+    ),
 ]
 
 

@@ -79,31 +79,53 @@ def random_problem(seed: int, ranges: bool = True, ballast: str = "none") -> One
         wide = ranges and rng.random() < 0.5
         high = low * float(rng.uniform(1.02, 1.5)) if wide else low
         quantity = str(
-            rng.choice(["displacement", "velocity", "acceleration", "transmitted force", "transmissibility", "deflection"])
+            rng.choice(
+                [
+                    "displacement",
+                    "velocity",
+                    "acceleration",
+                    "transmitted force",
+                    "transmissibility",
+                    "deflection",
+                ]
+            )
         )
         if quantity == "transmissibility":
             source, amplitude = "unit", 1.0
         elif quantity == "transmitted force":
             source, amplitude = str(rng.choice(["force", "unbalance"])), 1.0
         else:
-            source = str(rng.choice(["force", "unbalance", "base displacement", "base velocity", "base acceleration"]))
+            source = str(
+                rng.choice(["force", "unbalance", "base displacement", "base velocity", "base acceleration"])
+            )
             amplitude = 1.0
         raw = ResponseLimit(f"limit {i}", quantity, 1.0, low, high, source, amplitude)
-        level = max(
-            float(response(raw, kind, reference, d_ref, mass, f)) for f in np.linspace(low, high, 15)
-        )
+        level = max(float(response(raw, kind, reference, d_ref, mass, f)) for f in np.linspace(low, high, 15))
         limits.append(replace(raw, limit=level * float(rng.uniform(0.9, 2.5))))
     goals = [
-        Objective("weighted sum", stiffness_weight=1.0 / centre, damping_weight=float(rng.uniform(0.1, 3)) / bounds[1]),
-        Objective("weighted sum", stiffness_weight=-1.0 / centre, damping_squared_weight=1.0 / bounds[1] ** 2),
+        Objective(
+            "weighted sum",
+            stiffness_weight=1.0 / centre,
+            damping_weight=float(rng.uniform(0.1, 3)) / bounds[1],
+        ),
+        Objective(
+            "weighted sum", stiffness_weight=-1.0 / centre, damping_squared_weight=1.0 / bounds[1] ** 2
+        ),
         Objective("softest"),
         Objective("stiffest"),
         Objective("least damping"),
         Objective("least transmissibility", frequency=float(rng.uniform(5, 60))),
     ]
     problem = OneAxisProblem(
-        mass, kind, stiffness, bounds, goals[int(rng.integers(len(goals)))], tuple(limits),
-        sag=SagLimit(0.0, float(rng.uniform(2, 30)) * mass * 9.80665 / reference, 1.2) if rng.random() < 0.3 else None,
+        mass,
+        kind,
+        stiffness,
+        bounds,
+        goals[int(rng.integers(len(goals)))],
+        tuple(limits),
+        sag=SagLimit(0.0, float(rng.uniform(2, 30)) * mass * 9.80665 / reference, 1.2)
+        if rng.random() < 0.3
+        else None,
     )
     if ballast == "continuous":
         problem = replace(problem, ballast=Ballast(0.0, 0.6 * mass))

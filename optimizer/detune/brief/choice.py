@@ -1,10 +1,22 @@
 """What may be chosen: catalogs, the parts each group may take, and ballast in steps."""
 
-from typing import Literal
+from typing import Annotated, Literal
 
-from pydantic import field_validator, model_validator
+from pydantic import BeforeValidator, field_validator, model_validator
 
-from detune.brief.statement import Cost, Length, Mass, Name, Position, Statement, Text, listed_once, positive, refuse
+from detune.brief.statement import (
+    Cost,
+    Length,
+    Mass,
+    Name,
+    Position,
+    Statement,
+    Text,
+    describe,
+    listed_once,
+    positive,
+    refuse,
+)
 
 Objective = Literal["cost", "separation", "least-margin", "added-mass", "part-numbers"]
 LARGER_IS_BETTER: dict[str, bool] = {
@@ -30,12 +42,29 @@ class CatalogSource(Statement):
     units: dict[Name, Text] = {}
     constants: dict[Name, Text] = {}
 
+    @field_validator("file")
+    @classmethod
+    def _a_path(cls, value: str) -> str:
+        if not value.strip() or "\0" in value:
+            raise refuse(value.replace("\0", ""), 'the path of a parts list, for example "parts.csv"')
+        return value
+
+
+def _as_text(value: object) -> object:
+    """Return a bare number as text: whether its column may go without a unit is known where the column is."""
+    if isinstance(value, bool) or not isinstance(value, (str, int, float)):
+        raise refuse(value, 'a value with its unit, in quotes, for example "400 N/mm"')
+    return value if isinstance(value, str) else describe(value)
+
+
+WindowEnd = Annotated[Text, BeforeValidator(_as_text)]
+
 
 class Window(Statement):
     """Lowest and highest admitted value of a catalog column, each with its unit."""
 
-    min: Text | None = None
-    max: Text | None = None
+    min: WindowEnd | None = None
+    max: WindowEnd | None = None
 
     @model_validator(mode="after")
     def _one_end(self) -> "Window":

@@ -1,8 +1,8 @@
 """Conditions: operating states, each with its own shaft speeds."""
 
-from pydantic import field_validator
+from pydantic import field_validator, model_validator
 
-from detune.brief.statement import Frequency, Name, Statement, refuse
+from detune.brief.statement import Frequency, Name, Statement, Time, refuse
 
 SpeedRange = tuple[Frequency, Frequency]
 
@@ -13,11 +13,16 @@ class Condition(Statement):
     `shafts` gives the speed range of every shaft that turns in it, in revolutions: a moving speed
     excites every frequency of its range. `steady` is false where the machine only passes through
     (run-up, coast-down): such a condition is judged by response and takes no part in separation.
+
+    `run_up` and `coast_down` give, for a shaft, the time in which it passes its whole range at a constant
+    rate; both may be given, and the worse counts. Left out, the steady state at every speed is taken.
     """
 
     name: Name
     steady: bool = True
     shafts: dict[Name, SpeedRange] = {}
+    run_up: dict[Name, Time] = {}
+    coast_down: dict[Name, Time] = {}
 
     @field_validator("steady", mode="before")
     @classmethod
@@ -30,13 +35,31 @@ class Condition(Statement):
     @classmethod
     def _ranges(cls, value: dict[str, SpeedRange]) -> dict[str, SpeedRange]:
         for name, (low, high) in value.items():
-            check_range(low, high, f"shaft {name}")
+            check_range(low, high, name)
         return value
 
+    @model_validator(mode="after")
+    def _passages(self) -> "Condition":
+        for name, time in (*self.run_up.items(), *self.coast_down.items()):
+            if name not in self.shafts:
+                raise refuse(
+                    name, "a shaft of this condition: " + (", ".join(self.shafts) or "none is stated")
+                )
+            if time <= 0.0:
+                raise refuse(f"{time:g} s", "a time above zero")
+            if self.steady:
+                raise refuse(
+                    "run_up in a steady condition", "steady = false beside a run-up or coast-down time"
+                )
+            low, high = self.shafts[name]
+            if high <= low:
+                raise refuse(f"{low:g} Hz to {high:g} Hz", "a range of speed to pass through")
+        return self
 
-def check_range(low: float, high: float, what: str) -> None:
+
+def check_range(low: float, high: float, at: str) -> None:
     """Refuse a range that is not above zero or has its ends crossed."""
     if low <= 0.0:
-        raise refuse(f"{what}: {low:g} Hz", "a lowest frequency above zero")
+        raise refuse(f"{low:g} Hz", "a lowest frequency above zero", at=at)
     if high < low:
-        raise refuse(f"{what}: {low:g} Hz to {high:g} Hz", "the lower end first, the upper end second")
+        raise refuse(f"{low:g} Hz to {high:g} Hz", "the lower end first, the upper end second", at=at)

@@ -1,49 +1,42 @@
 """Checks across statements: names that refer to each other, and what would leave the brief without sense."""
 
 from collections.abc import Iterable
-from dataclasses import dataclass
 
 from detune.brief.allowable import HarmonicAllowable, Separation
 from detune.brief.brief import Brief, applies
+from detune.brief.finding import Finding, Path
 from detune.brief.forcing import Forcing
 from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.sense import without_sense
 from detune.ground.errors import nearest_name
 
-Path = tuple[str | int, ...]
+__all__ = ["Finding", "Path", "cross_check"]
 
 
-@dataclass(frozen=True)
-class Finding:
-    """One fault of a brief: where (keys and indices as in the study file), what was found, what was expected.
+def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ...]:
+    """Return every fault between the statements of a brief.
 
-    `depends` names the tables that must have been read in full for the fault to be one.
+    `not_read` names tables of which a part is missing because it has faults of its own: what would
+    look wrong only for that reason is left out.
     """
-
-    path: Path
-    found: str
-    expected: str
-    nearest: str | None = None
-    depends: tuple[str, ...] = ()
-
-
-def cross_check(brief: Brief) -> tuple[Finding, ...]:
-    """Return every fault between the statements of a brief."""
-    empty = _empty_tables(brief)
-    if empty:
-        return tuple(empty)
-    return tuple(
+    unsure = set(not_read)
+    empty = [finding for finding in _empty_tables(brief) if finding.path[0] not in unsure]
+    unsure |= {str(finding.path[0]) for finding in empty}
+    found = [
         finding
-        for check in (_unique_names, _bodies, _stations, _forcing, _allowables, _choices, _ballast)
+        for check in (
+            _unique_names,
+            _bodies,
+            _stations,
+            _forcing,
+            _allowables,
+            _choices,
+            _ballast,
+            without_sense,
+        )
         for finding in check(brief)
-    )
-
-
-def where(path: Path) -> str:
-    """Return a path as people read it, counting from one: `allowable[3].limit`."""
-    text = ""
-    for key in path:
-        text += f"[{key + 1}]" if isinstance(key, int) else (f".{key}" if text else str(key))
-    return text
+    ]
+    return (*empty, *(finding for finding in found if unsure.isdisjoint(finding.depends)))
 
 
 def _empty_tables(brief: Brief) -> list[Finding]:
@@ -57,11 +50,11 @@ def _empty_tables(brief: Brief) -> list[Finding]:
         "catalog": brief.catalogs,
         "choice": brief.choices,
     }
-    return [Finding((name,), "[]", f"at least one [[{name}]]", depends=(name,)) for name, items in needed.items() if not items]
+    return [Finding((name,), "[]", f"at least one [[{name}]]") for name, items in needed.items() if not items]
 
 
 def _unknown(path: Path, name: str, known: Iterable[str], what: str, table: str) -> Finding:
-    names = list(known)
+    names = list(dict.fromkeys(known))
     listed = ", ".join(f'"{n}"' for n in names[:12]) or "none is stated"
     return Finding(path, name, f"the name of {what} ({listed})", nearest_name(name, names), (table,))
 
@@ -84,7 +77,9 @@ def _unique_names(brief: Brief) -> list[Finding]:
                 findings.append(Finding((table, index, "name"), name, f"a name no other {table} has"))
     for index, body in enumerate(brief.bodies):
         if body.name in ("floor", "ground"):
-            findings.append(Finding(("body", index, "name"), body.name, 'a name other than "floor" and "ground"'))
+            findings.append(
+                Finding(("body", index, "name"), body.name, 'a name other than "floor" and "ground"')
+            )
     return findings
 
 
@@ -119,7 +114,7 @@ def _stations(brief: Brief) -> list[Finding]:
             known = ["floor", *bodies]
             if place.to not in known:
                 findings.append(_unknown((table, index, "to"), place.to, known, "what it stands on", "body"))
-            elif place.to == (place.on or (bodies[0] if bodies else None)):
+            elif place.to != "floor" and place.to == (place.on or (bodies[0] if bodies else None)):
                 findings.append(Finding((table, index, "to"), place.to, "another body, or the floor"))
     return findings
 
@@ -153,12 +148,14 @@ def _forcing(brief: Brief) -> list[Finding]:
                     )
                 )
         if not acting:
-            findings.append(Finding(
+            findings.append(
+                Finding(
                     ("condition", index),
                     condition.name,
                     "a condition in which at least one forcing acts",
                     depends=("forcing",),
-                ))
+                )
+            )
     return findings
 
 
@@ -166,20 +163,17 @@ def _shaft(path: Path, forcing: Forcing, brief: Brief) -> list[Finding]:
     shaft = forcing.shaft_needed()
     if shaft is None:
         return []
-    findings = []
-    for condition in brief.conditions:
-        if applies(forcing.conditions, condition.name) and shaft not in condition.shafts:
-            findings.append(
-                Finding(
-                    (*path, "shaft"),
-                    shaft,
-                    f'a shaft whose speed condition "{condition.name}" states under "shafts"'
-                    " (or list the conditions in which this forcing acts)",
-                    nearest_name(shaft, condition.shafts),
-                    ("condition",),
-                )
-            )
-    return findings
+    without = [c for c in brief.conditions if applies(forcing.conditions, c.name) and shaft not in c.shafts]
+    if not without:
+        return []
+    listed = ", ".join(f'"{condition.name}"' for condition in without)
+    expected = (
+        f'a shaft whose speed is stated under "shafts" in every condition in which this forcing acts; {listed} '
+        + ("states" if len(without) == 1 else "state")
+        + ' none of this name (or list the conditions in which it acts, as "conditions")'
+    )
+    known = [name for condition in without for name in condition.shafts]
+    return [Finding((*path, "shaft"), shaft, expected, nearest_name(shaft, known), ("condition",))]
 
 
 def _allowables(brief: Brief) -> list[Finding]:
@@ -218,19 +212,31 @@ def _choices(brief: Brief) -> list[Finding]:
     chosen = [choice.group for choice in brief.choices]
     for index, choice in enumerate(brief.choices):
         if choice.group not in groups:
-            findings.append(_unknown(("choice", index, "group"), choice.group, groups, "a group of stations", "station"))
+            findings.append(
+                _unknown(("choice", index, "group"), choice.group, groups, "a group of stations", "station")
+            )
         if choice.group in chosen[:index]:
             findings.append(Finding(("choice", index, "group"), choice.group, "one choice for each group"))
         for i, name in enumerate(choice.catalogs):
             if name not in catalogs:
-                findings.append(_unknown(("choice", index, "catalogs", i), name, catalogs, "a catalog", "catalog"))
+                findings.append(
+                    _unknown(("choice", index, "catalogs", i), name, catalogs, "a catalog", "catalog")
+                )
     for index, station in enumerate(brief.stations):
         if station.group not in chosen:
-            findings.append(_unknown(("station", index, "group"), station.group, chosen, "a group with a [[choice]]", "choice"))
+            findings.append(
+                _unknown(
+                    ("station", index, "group"), station.group, chosen, "a group with a [[choice]]", "choice"
+                )
+            )
     return findings
 
 
 def _ballast(brief: Brief) -> list[Finding]:
     if brief.ballast is None and "added-mass" in brief.objectives.trade:
-        return [Finding(("objectives", "trade"), "added-mass", "a [ballast] table, without which no mass is added")]
+        return [
+            Finding(
+                ("objectives", "trade"), "added-mass", "a [ballast] table, without which no mass is added"
+            )
+        ]
     return []

@@ -5,7 +5,17 @@ from typing import Literal
 
 from pydantic import model_validator
 
-from detune.brief.statement import AreaDensity, Damping, Frequency, Length, Mass, Ratio, Statement, Stiffness, refuse
+from detune.brief.statement import (
+    AreaDensity,
+    Damping,
+    Frequency,
+    Length,
+    Mass,
+    Ratio,
+    Statement,
+    Stiffness,
+    refuse,
+)
 from detune.ground.units import show
 from detune.physics import floor as floor_physics
 
@@ -42,14 +52,16 @@ class Floor(Statement):
     @model_validator(mode="after")
     def _values(self) -> "Floor":
         needed = NEEDED[self.kind]
-        stated = [name for name in type(self).model_fields if name != "kind" and getattr(self, name) is not None]
+        stated = [
+            name for name in type(self).model_fields if name != "kind" and getattr(self, name) is not None
+        ]
         missing = [name for name in needed if name not in stated and name != "damping_ratio"]
         if missing:
             raise refuse(f"floor of kind {self.kind}", "also " + ", ".join(f'"{name}"' for name in missing))
         extra = [name for name in stated if name not in needed]
         if extra:
             allowed = ", ".join(f'"{name}"' for name in needed) or "no further value"
-            raise refuse(", ".join(extra), f"for a floor of kind {self.kind}: {allowed}", at=extra[0])
+            raise refuse(", ".join(extra), f"only the keys of a floor of kind {self.kind}: {allowed}", at=extra[0])
         for name in stated:
             value = getattr(self, name)
             if value < 0.0 or (value == 0.0 and name not in ("damping", "damping_ratio")):

@@ -73,7 +73,12 @@ class Shape(Statement):
     @model_validator(mode="after")
     def _dimensions(self) -> "Shape":
         if self.kind == "box":
-            if self.size is None or self.radius is not None or self.length is not None or self.axis is not None:
+            if (
+                self.size is None
+                or self.radius is not None
+                or self.length is not None
+                or self.axis is not None
+            ):
                 raise refuse("box", 'a box with "size" alone (three lengths, along x, y and z)')
             for side in self.size:
                 positive(side, "a box side", at="size")
@@ -96,10 +101,13 @@ class Weighing(Statement):
     def _three_or_more(self) -> "Weighing":
         if len(self.positions) != len(self.readings):
             raise refuse(
-                f"{len(self.positions)} positions and {len(self.readings)} readings", "one reading for each position"
+                f"{len(self.positions)} positions and {len(self.readings)} readings",
+                "one reading for each position",
             )
         if len(self.positions) < 3:
-            raise refuse(f"{len(self.positions)} positions", "three or more weighing positions", at="positions")
+            raise refuse(
+                f"{len(self.positions)} positions", "three or more weighing positions", at="positions"
+            )
         if min(self.readings) < 0.0 or sum(self.readings) <= 0.0:
             raise refuse(
                 ", ".join(f"{reading:g} N" for reading in self.readings),
@@ -231,7 +239,9 @@ class Station(Statement):
             along = np.cross(unit_direction(self.axial), unit_direction(self.radial))
             if float(np.linalg.norm(along)) < LEAST_ANGLE:
                 raise refuse(
-                    describe(self.radial), "a radial direction that is not parallel to the axial one", at="radial"
+                    describe(self.radial),
+                    "a radial direction that is not parallel to the axial one",
+                    at="radial",
                 )
         return self
 

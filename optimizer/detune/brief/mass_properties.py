@@ -50,7 +50,9 @@ def mass_properties(body: Body) -> MassProperties:
         inertia_value = body.inertia.matrix()
     elif body.inertia_box is not None:
         inertia_value = rigid_body.box_inertia(mass_value, np.array(body.inertia_box))
-        assumed.append(f"{body.name}: inertia of a uniform box of the stated size, centred on the mass centre")
+        assumed.append(
+            f"{body.name}: inertia of a uniform box of the stated size, centred on the mass centre"
+        )
     return MassProperties(mass_value, centre_value, inertia_value, tuple(assumed))
 
 

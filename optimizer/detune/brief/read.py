@@ -1,7 +1,8 @@
 """Reading a study file: all faults at once, each with its line, key, found value and nearest name."""
 
+import re
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -11,7 +12,8 @@ from detune.brief import allowable, forcing
 from detune.brief.brief import Brief
 from detune.brief.choice import Ballast, CatalogSource, Choice, Objectives
 from detune.brief.condition import Condition
-from detune.brief.cross_check import Finding, cross_check
+from detune.brief.cross_check import cross_check
+from detune.brief.finding import Finding
 from detune.brief.floor import Floor
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
 from detune.brief.statement import Statement, describe
@@ -42,10 +44,11 @@ FIELD = {
     "forcing": "forcing",
     "allowable": "allowables",
 }
+RIGID = Floor(kind="rigid")
 REQUIRED = ("title", "body", "station", "floor", "condition", "forcing", "allowable", "catalog", "choice")
 TEXTS = ("title", "notes")
 TABLES = (*TEXTS, *SINGLE, *REPEATED, *BY_KIND)
-PYDANTIC_EXPECTED = {
+EXPECTED = {
     "string_type": "text in quotes",
     "string_too_short": "text that is not empty",
     "bool_type": "true or false",
@@ -88,6 +91,7 @@ def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -
     study = Path(path)
     findings: list[Finding] = list(_unknown_tables(data))
     read: dict[str, Any] = {}
+    not_read = {name for name in REQUIRED if name not in data}
     for name in TEXTS:
         if name in data:
             if isinstance(data[name], str) and data[name].strip():
@@ -97,32 +101,55 @@ def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -
     for name, single in SINGLE.items():
         if name in data:
             statement = _read_one(single, data[name], (name,), findings)
-            if statement is not None:
+            if statement is None:
+                not_read.add(name)
+            else:
                 read[name] = statement
+    rows: dict[str, list[int]] = {}
     for name in (*REPEATED, *BY_KIND):
         if name in data:
-            read[FIELD[name]] = tuple(_read_many(name, data[name], findings))
-    brief = None
-    if not findings:
-        brief = Brief(**read, folder=study.parent, file=str(path))
-        findings += cross_check(brief)
-    else:
-        findings += _cross_check_what_was_read(read, data)
+            before = len(findings)
+            found = dict(_read_many(name, data[name], findings))
+            read[FIELD[name]], rows[name] = tuple(found.values()), list(found)
+            if len(findings) > before:
+                not_read.add(name)
+    whole = Brief(
+        **{"title": "untitled", "floor": RIGID, **_nothing(), **read}, folder=study.parent, file=str(path)
+    )
+    findings += [_in_file(finding, rows) for finding in cross_check(whole, not_read)]
     faults = tuple(to_fault(str(path), finding, positions) for finding in findings)
-    return Reading(None if faults else brief, read.get("catalogs", ()), faults, positions)
+    return Reading(None if faults else whole, read.get("catalogs", ()), faults, positions)
+
+
+def _nothing() -> dict[str, tuple[Statement, ...]]:
+    """Return empty tables, so that the rest of a faulty study can be cross-checked."""
+    return {FIELD[name]: () for name in (*REPEATED, *BY_KIND)}
+
+
+def _in_file(finding: Finding, rows: Mapping[str, list[int]]) -> Finding:
+    """Return a finding with the index its table has in the file, where faulty ones stand between."""
+    table, *rest = finding.path
+    if rest and isinstance(rest[0], int) and str(table) in rows:
+        return replace(finding, path=(table, rows[str(table)][rest[0]], *rest[1:]))
+    return finding
 
 
 def _unknown_tables(data: Mapping[str, Any]) -> Iterator[Finding]:
     for name in data:
         if name not in TABLES:
-            yield Finding((name,), name, "one of the tables of a study: " + ", ".join(TABLES), nearest_name(name, TABLES))
+            yield Finding(
+                (name,),
+                name,
+                "one of the tables of a study: " + ", ".join(TABLES),
+                nearest_name(name, TABLES),
+            )
     for name in REQUIRED:
         if name not in data:
-            table = f"[[{name}]]" if name in REPEATED or name in BY_KIND else name
-            yield Finding((name,), "nothing", f"{table}, which every study states")
+            table = f"[[{name}]]" if name in REPEATED or name in BY_KIND else f"[{name}]" if name in SINGLE else name
+            yield Finding((name,), "", f"{table}, which every study states")
 
 
-def _read_many(name: str, raw: Any, findings: list[Finding]) -> Iterator[Statement]:
+def _read_many(name: str, raw: Any, findings: list[Finding]) -> Iterator[tuple[int, Statement]]:
     if not isinstance(raw, list):
         findings.append(Finding((name,), describe(raw), f"a list of tables, each opened by [[{name}]]"))
         return
@@ -134,21 +161,23 @@ def _read_many(name: str, raw: Any, findings: list[Finding]) -> Iterator[Stateme
         if cls is not None:
             statement = _read_one(cls, item, path, findings)
             if statement is not None:
-                yield statement
+                yield index, statement
 
 
 def _kind_of(
     name: str, item: Any, path: tuple[str | int, ...], findings: list[Finding]
 ) -> type[Statement] | None:
+    if not isinstance(item, dict):
+        findings.append(Finding(path, describe(item), f"a table opened by [[{name}]]"))
+        return None
     kinds = BY_KIND[name]
-    kind = item.get("kind") if isinstance(item, dict) else None
+    kind = item.get("kind")
     if isinstance(kind, str) and kind in kinds:
         return kinds[kind]
     listed = ", ".join(f'"{known}"' for known in kinds)
-    found = "no kind" if kind is None else describe(kind)
-    findings.append(
-        Finding((*path, "kind"), found, f"one of {listed}", nearest_name(str(kind), kinds) if kind else None)
-    )
+    found = "" if kind is None else describe(kind)
+    nearest = nearest_name(kind, kinds) if isinstance(kind, str) else None
+    findings.append(Finding((*path, "kind"), found, f"one of {listed}", nearest))
     return None
 
 
@@ -170,36 +199,60 @@ def _findings_of(
 ) -> list[Finding]:
     """Return one finding a place; the branches of a union that all failed are told together."""
     by_place: dict[tuple[str | int, ...], list[Finding]] = {}
-    for item in error.errors(include_url=False):
+    misspelt: set[tuple[str | int, ...]] = set()
+    errors = error.errors(include_url=False)
+    for item in sorted(errors, key=lambda item: item["type"] == "missing"):
         place, value = _resolve(item["loc"], raw)
-        missing = item["type"] == "missing"
-        if missing:
-            place = (*place, item["loc"][-1]) if not place or place[-1] != item["loc"][-1] else place
-        context = item.get("ctx", {})
-        nearest = None
-        if item["type"] == "statement":
-            found, expected = context["found"], context["expected"]
-        elif missing:
-            found, expected = "nothing", f'"{item["loc"][-1]}", which has no default'
-        elif item["type"] == "extra_forbidden":
-            known = _fields_at(cls, item["loc"][:-1])
-            found = str(item["loc"][-1])
-            expected = "one of the keys " + ", ".join(known)
-            nearest = nearest_name(found, known)
-        elif item["type"] == "literal_error":
-            found, expected = describe(item["input"]), "one of " + str(context["expected"]).replace("'", '"')
-            choices = [part.strip("' ") for part in str(context["expected"]).replace(" or ", ",").split(",")]
-            nearest = nearest_name(str(item["input"]), choices)
-        elif item["type"] in ("too_short", "too_long", "missing_argument"):
-            found, expected = describe(value), f"a list of {context.get('min_length', context.get('max_length'))} values"
+        key = item["loc"][-1] if item["loc"] else ""
+        if item["type"] == "missing" and isinstance(key, int):
+            # An entry of a list: the last one missing tells the length.
+            by_place[(*path, *place)] = [
+                Finding((*path, *place), describe(value), f"a list of {key + 1} values")
+            ]
+            continue
+        if item["type"] == "missing":
+            place = (*place, key)
+            if place in misspelt:
+                continue
+            finding = Finding((*path, *place), "", f'"{key}", which has no default')
         else:
-            found, expected = describe(value), PYDANTIC_EXPECTED.get(item["type"], item["msg"])
-        by_place.setdefault(place, []).append(Finding((*path, *place), found, expected, nearest))
-    return [_joined(findings) for findings in by_place.values()]
+            finding = _finding_of(item, cls, value, (*path, *place))
+        if item["type"] == "extra_forbidden" and finding.nearest is not None:
+            misspelt.add((*place[:-1], finding.nearest))
+        by_place.setdefault(finding.path, []).append(finding)
+    # Of a union, the branch that was entered deeper is the one that was meant.
+    deeper = {place[:length] for place in by_place for length in range(len(place))}
+    return [_joined(findings) for place, findings in by_place.items() if place not in deeper]
+
+
+def _finding_of(item: Any, cls: type[Statement], value: Any, place: tuple[str | int, ...]) -> Finding:
+    """Return the finding of one of pydantic's errors, in our words."""
+    context = item.get("ctx", {})
+    if item["type"] == "statement":
+        found, at = context["found"], context["at"]
+        if at is not None and isinstance(value, dict) and at in value:
+            place, value = (*place, at), value[at]
+        # What the user wrote reads better than its value in SI.
+        if isinstance(value, (str, int, float, list)):
+            found = describe(value)
+        return Finding(place, found, context["expected"], context["nearest"])
+    if item["type"] == "extra_forbidden":
+        known = _fields_at(cls, item["loc"][:-1])
+        found = str(item["loc"][-1])
+        return Finding(place, found, "one of the keys " + ", ".join(known), nearest_name(found, known))
+    if item["type"] == "literal_error":
+        choices = re.findall(r"'([^']*)'", context["expected"])
+        listed = ", ".join(f'"{choice}"' for choice in choices)
+        nearest = nearest_name(item["input"], choices) if isinstance(item["input"], str) else None
+        return Finding(place, describe(value), f"one of {listed}" if len(choices) > 1 else listed, nearest)
+    if item["type"] in ("too_short", "too_long"):
+        length = context.get("min_length", context.get("max_length"))
+        return Finding(place, describe(value), f"a list of {length} values")
+    return Finding(place, describe(value), EXPECTED.get(item["type"], "a value of another kind"))
 
 
 def _joined(findings: list[Finding]) -> Finding:
-    expected = " or ".join(dict.fromkeys(finding.expected for finding in findings))
+    expected = ", or ".join(dict.fromkeys(finding.expected for finding in findings))
     nearest = next((finding.nearest for finding in findings if finding.nearest), None)
     return Finding(findings[0].path, findings[0].found, expected, nearest)
 
@@ -212,7 +265,7 @@ def _resolve(location: tuple[str | int, ...], raw: Any) -> tuple[tuple[str | int
     place: list[str | int] = []
     value = raw
     for key in location:
-        if isinstance(value, dict) and key in value or isinstance(value, list) and _index(key, value):
+        if (isinstance(value, dict) and key in value) or (isinstance(value, list) and _index(key, value)):
             value = value[key]
             place.append(key)
     return tuple(place), value
@@ -245,18 +298,13 @@ def _statement_in(annotation: Any) -> type[Statement] | None:
     return None
 
 
-def _cross_check_what_was_read(read: dict[str, Any], data: Mapping[str, Any]) -> list[Finding]:
-    """Cross-check a faulty study as far as its tables were read in full.
-
-    A table with a fault of its own would make every name that refers to it look wrong, so
-    only a brief whose repeated tables all came through is looked at.
-    """
-    whole = all(len(read.get(FIELD[name], ())) == len(data.get(name, ())) for name in (*REPEATED, *BY_KIND))
-    if not whole or any(FIELD.get(name, name) not in read for name in REQUIRED):
-        return []
-    return list(cross_check(Brief(**read)))
-
-
 def to_fault(file: str, finding: Finding, positions: Positions) -> Fault:
     """Return a finding as a fault with its line in the study file."""
-    return Fault(file, positions.line(finding.path), dotted(finding.path), finding.found, finding.expected, finding.nearest)
+    return Fault(
+        file,
+        positions.line(finding.path),
+        dotted(finding.path),
+        finding.found,
+        finding.expected,
+        finding.nearest,
+    )

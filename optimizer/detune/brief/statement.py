@@ -46,7 +46,11 @@ class Quantity:
     def __get_pydantic_json_schema__(self, schema: Any, handler: Any) -> dict[str, Any]:
         kind = units.KINDS[self.kind]
         types: Any = ["string", "number"] if kind.bare_number else "string"
-        return {"type": types, "description": f"{kind.meaning} with its unit", "examples": list(kind.examples)}
+        return {
+            "type": types,
+            "description": f"{kind.meaning} with its unit",
+            "examples": list(kind.examples),
+        }
 
     def _validate(self, value: Any, info: core_schema.ValidationInfo) -> float:
         kind = units.KINDS[self.kind]
@@ -94,7 +98,7 @@ def _as_toml(value: object) -> str:
         return "true" if value else "false"
     if isinstance(value, (list, tuple)):
         return "[" + ", ".join(_as_toml(item) for item in value) + "]"
-    if isinstance(value, dict):
+    if isinstance(value, dict) and value:
         return "{ " + ", ".join(f"{key} = {_as_toml(item)}" for key, item in value.items()) + " }"
     if isinstance(value, int) and abs(value) > sys.float_info.max:
         return "a whole number of more than 300 digits"
@@ -114,6 +118,7 @@ Damping = Annotated[float, Quantity("damping")]
 Velocity = Annotated[float, Quantity("velocity")]
 Acceleration = Annotated[float, Quantity("acceleration")]
 Frequency = Annotated[float, Quantity("frequency")]
+Time = Annotated[float, Quantity("time")]
 Angle = Annotated[float, Quantity("angle")]
 Inertia = Annotated[float, Quantity("inertia")]
 Unbalance = Annotated[float, Quantity("unbalance")]

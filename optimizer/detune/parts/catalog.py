@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -14,7 +15,8 @@ from detune.parts.assumed import Assumed
 from detune.parts.columns import Column, column_named
 from detune.parts.headers import match_headers
 from detune.parts.kinds import KINDS, Part
-from detune.parts.sheet import read_sheet
+from detune.parts.sheet import Sheet
+from detune.parts.source_file import read_rows
 from detune.parts.table import Table
 
 Criterion: TypeAlias = Sequence[str] | Mapping[str, float]
@@ -44,10 +46,11 @@ def read_catalog(
     header_map: Mapping[str, str] | None = None,
     units: Mapping[str, str] | None = None,
     constants: Mapping[str, str] | None = None,
+    sheet: str | None = None,
 ) -> Catalog:
-    """Read a CSV parts list (UTF-8; comma, semicolon or tab; decimal point).
+    """Read a parts list: CSV (UTF-8; comma, semicolon or tab; decimal point), XLSX, or Parquet (an extra).
 
-    Our own headers are a column's name with its unit, "stiffness_z_static [N/mm]". A supplier's sheet is
+    The ending of the file's name tells which. sheet: of a workbook, None for the first. Our own headers are a column's name with its unit, "stiffness_z_static [N/mm]". A supplier's sheet is
     read as it stands: header_map: our column -> its header. units: our column -> its unit, where the header
     does not carry one. constants: our column -> one value with its unit for the whole list. Figures become
     SI, degC for temperatures. Raises BriefError with every fault found, each with file, line and column.
@@ -57,12 +60,12 @@ def read_catalog(
         expected = f"a kind of part: {', '.join(KINDS)}"
         raise BriefError([Fault(file, None, "kind", kind, expected, nearest_name(kind, KINDS))])
     rules = KINDS[kind]
-    sheet = read_sheet(path)
-    matching = match_headers(sheet, rules.COLUMNS, header_map, units, constants)
-    table = Table(sheet, rules.COLUMNS, matching.sources)
-    faults = [*sheet.faults, *matching.faults, *table.faults, *_duplicates(table), *rules.check(table)]
+    rows = read_rows(path, sheet)
+    matching = match_headers(rows, rules.COLUMNS, header_map, units, constants)
+    table = Table(rows, matching.columns, matching.sources)
+    faults = [*rows.faults, *matching.faults, *table.faults, *_duplicates(table), *rules.check(table)]
     if faults:
-        raise BriefError(_in_sheet_order(faults, sheet.headers))
+        raise BriefError(_in_sheet_order(faults, rows))
     parts, assumed = rules.build(table, name)
     return Catalog(name, kind, parts, assumed, file, matching.unread)
 
@@ -75,14 +78,22 @@ def _duplicates(table: Table) -> list[Fault]:
             continue
         line = first.setdefault(part, table.lines[row])
         if line != table.lines[row]:
-            expected = f"each part number once; it stands already in line {line}"
+            expected = f"each part number once; it stands already in {table.line_word} {line}"
             faults.append(table.fault(row, "part", expected))
     return faults
 
 
-def _in_sheet_order(faults: list[Fault], headers: tuple[str, ...]) -> list[Fault]:
-    place = {header: index for index, header in enumerate(headers)}
-    return sorted(faults, key=lambda fault: (fault.line or 0, place.get(fault.where, len(headers))))
+def _in_sheet_order(faults: list[Fault], rows: Sheet) -> list[Fault]:
+    place = {rows.header(header): index for index, header in enumerate(rows.headers)}
+    cells = {letter: index for index, letter in enumerate(rows.letters)}
+
+    def column(fault: Fault) -> int:
+        address = re.fullmatch(r".*!([A-Z]+)[0-9]+", fault.where)
+        if address is None:
+            return place.get(fault.where, len(rows.headers))
+        return cells.get(address.group(1), len(rows.headers))
+
+    return sorted(faults, key=lambda fault: (fault.line or 0, column(fault)))
 
 
 def filter_parts(

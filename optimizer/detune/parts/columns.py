@@ -1,16 +1,22 @@
-"""The columns a catalog may have: name, unit, meaning, and what happens when one is left out."""
+"""The columns a catalog may have: name, unit, meaning, and what happens when one is left out.
+
+A column whose name ends in <n> stands for as many columns as a list has use for, one for each whole number:
+"cost_<n>" is cost_10, cost_100 and so on.
+"""
 
 from __future__ import annotations
 
 import math
 import re
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detune.ground.units import show
+
+NUMBERED = "<n>"
 
 _HEADER = re.compile(r"(?P<name>[^\[\]]*?)\s*(?:\[(?P<unit>[^\[\]]*)\])?\s*", re.DOTALL)
 
@@ -69,6 +75,13 @@ class Column:
     def numeric(self) -> bool:
         return self.kind not in ("text", "yes-no")
 
+    def number_in(self, name: str) -> int | None:
+        """Return the n of a name that this numbered column stands for, None for any other name. n is 2 up."""
+        if not self.name.endswith(NUMBERED):
+            return None
+        match = re.fullmatch(re.escape(self.name.removesuffix(NUMBERED)) + "([1-9][0-9]{0,8})", name)
+        return int(match.group(1)) if match and match.group(1) != "1" else None
+
 
 def split_header(header: str) -> tuple[str, str | None]:
     """Return the name and the unit of a header such as "mass [kg]"; the unit is None when there is none."""
@@ -80,8 +93,29 @@ def split_header(header: str) -> tuple[str, str | None]:
 
 
 def column_named(columns: Iterable[Column], name: str) -> Column | None:
-    """Return the column of that name, or None."""
-    return next((column for column in columns if column.name == name), None)
+    """Return the column of that name, or None. "cost_10" is made from the numbered column "cost_<n>"."""
+    for column in columns:
+        number = column.number_in(name)
+        if number is not None:
+            meaning = column.meaning.replace(NUMBERED, str(number))
+            return replace(column, name=name, meaning=meaning, required=False)
+        if column.name == name and not name.endswith(NUMBERED):
+            return column
+    return None
+
+
+def columns_for(columns: Sequence[Column], names: Iterable[str]) -> tuple[Column, ...]:
+    """Return the columns, each numbered one replaced by those among `names` that it stands for, n rising."""
+    found: list[Column] = []
+    wanted = tuple(dict.fromkeys(names))
+    for column in columns:
+        if not column.name.endswith(NUMBERED):
+            found.append(column)
+            continue
+        numbers = {number: name for name in wanted if (number := column.number_in(name)) is not None}
+        made = (column_named([column], numbers[number]) for number in sorted(numbers))
+        found.extend(one for one in made if one is not None)
+    return tuple(found)
 
 
 def markdown_table(columns: Sequence[Column]) -> str:

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 from detune.ground.errors import Fault, nearest_name
 from detune.ground.units import UnitError, parse_column
-from detune.parts.columns import Column, column_named, split_header
+from detune.parts.columns import Column, column_named, columns_for, split_header
 from detune.parts.sheet import Sheet
 
 _MISSPELT = 0.9
@@ -36,8 +36,9 @@ class Source:
 
 @dataclass(frozen=True)
 class Matching:
-    """Sources by column name, the headers left unread, and what is wrong."""
+    """The columns with the numbered ones put in, sources by column name, headers left unread, faults."""
 
+    columns: tuple[Column, ...]
     sources: Mapping[str, Source]
     unread: tuple[str, ...]
     faults: tuple[Fault, ...]
@@ -55,15 +56,19 @@ class Stated:
 class _Matcher:
     def __init__(self, sheet: Sheet, columns: Sequence[Column], stated: Stated) -> None:
         self.sheet = sheet
-        self.columns = columns
+        own = (split_header(header)[0] for header in sheet.headers)
+        self.columns = columns_for(columns, (*own, *stated.headers, *stated.units, *stated.constants))
         self.stated = stated
-        self.names = [column.name for column in columns]
+        self.names = [column.name for column in self.columns]
         self.sources: dict[str, Source] = {}
         self.read: set[int] = set()
         self.faults: list[Fault] = []
 
     def fault(self, where: str, found: str, expected: str, nearest: str | None = None) -> None:
         self.faults.append(Fault(self.sheet.file, self.sheet.header_line, where, found, expected, nearest))
+
+    def header_fault(self, header: str, found: str, expected: str, nearest: str | None = None) -> None:
+        self.fault(self.sheet.header(header), found, expected, nearest)
 
     def known_keys(self, table: Mapping[str, str], place: str) -> Iterator[tuple[Column, str, str]]:
         for key, value in table.items():
@@ -80,7 +85,7 @@ class _Matcher:
         self.units_without_column()
         self.missing()
         unread = [h for i, h in enumerate(self.sheet.headers) if i not in self.read]
-        return Matching(self.sources, tuple(unread), tuple(self.faults))
+        return Matching(self.columns, self.sources, tuple(unread), tuple(self.faults))
 
     def mapped_headers(self) -> None:
         headers = self.sheet.headers
@@ -115,16 +120,16 @@ class _Matcher:
             if column.name in self.sources:
                 first = self.sources[column.name].index
                 place = "" if first is None else f"; column {first + 1} of the sheet gives it already"
-                self.fault(header, header, f"each column once{place}")
+                self.header_fault(header, header, f"each column once{place}")
                 continue
             stated = self.stated.units.get(name)
             if stated is not None and bracket is not None and stated.strip() != bracket:
-                self.fault(header, stated, f"the unit of the header, {bracket}, or no unit in the study")
+                self.header_fault(header, stated, f"the unit of the header, {bracket}, or no unit in the study")
             self.add(column, header, index, bracket if bracket is not None else stated)
 
     def unknown_header(self, header: str, name: str) -> None:
         if not header:
-            self.fault("header", "", "a name in every cell of the header row")
+            self.header_fault("header", "", "a name in every cell of the header row")
             return
         near = difflib.get_close_matches(name, self.names, 1, _MISSPELT)
         if self.stated.headers and not near:
@@ -133,7 +138,7 @@ class _Matcher:
         expected = (
             "the name of a column, with its unit as in mass [kg]; other headers are mapped in the study"
         )
-        self.fault(header, header, expected, nearest.header if nearest else None)
+        self.header_fault(header, header, expected, nearest.header if nearest else None)
 
     def add(self, column: Column, header: str, index: int, unit: str | None) -> None:
         scale, offset, broken = 1.0, 0.0, False
@@ -143,9 +148,9 @@ class _Matcher:
             except UnitError as error:
                 broken = True
                 expected = error.expected if unit else f"{error.expected}; write it as {column.header}"
-                self.fault(header, unit or "", expected, error.nearest)
+                self.header_fault(header, unit or "", expected, error.nearest)
         elif unit:
-            self.fault(header, unit, f"no unit, for this column is {column.kind}")
+            self.header_fault(header, unit, f"no unit, for this column is {column.kind}")
         self.sources[column.name] = Source(
             column, header, index, scale=scale, offset=offset, unit=unit or "", broken=broken
         )
@@ -178,7 +183,7 @@ class _Matcher:
             if column.required and column.name not in self.sources:
                 expected = f"a column {column.header}: {column.meaning}"
                 nearest = nearest_name(column.name, unread)
-                self.fault(column.header, "", expected, nearest)
+                self.header_fault(column.header, "", expected, nearest)
 
 
 def match_headers(

@@ -5,7 +5,8 @@ from __future__ import annotations
 import csv
 import io
 import re
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
 from pathlib import Path
 
 from detune.ground.errors import BriefError, Fault, nearest_name
@@ -14,9 +15,9 @@ _DELIMITERS = {",": "comma", ";": "semicolon", "\t": "tab"}
 _QUOTED = re.compile(r'"(?:[^"]|"")*"')
 _FIRST_LINE = re.compile(r"[^\r\n]*[^\s][^\r\n]*")
 _FOREIGN = {
-    b"PK\x03\x04": "an XLSX workbook; save the sheet as CSV in UTF-8",
+    b"PK\x03\x04": "an XLSX workbook; let its name end in .xlsx",
     b"\xd0\xcf\x11\xe0": "an XLS workbook; save the sheet as CSV in UTF-8",
-    b"PAR1": "a Parquet file; write it as CSV in UTF-8",
+    b"PAR1": "a Parquet file; let its name end in .parquet",
     b"\xff\xfe": "text in UTF-16; save it in UTF-8",
     b"\xfe\xff": "text in UTF-16; save it in UTF-8",
 }
@@ -26,16 +27,42 @@ _FOREIGN = {
 class Sheet:
     """Cells as text, without surrounding blanks.
 
-    headers: one per column. header_line and lines: 1-based, of each row's first line in the file.
-    columns: cells by column, each as long as `lines`. faults: rows that had to be left out.
+    headers: one per column. header_line and lines: 1-based, of each row's first line in the file; a file
+    without lines counts its rows and has no header_line. columns: cells by column, each as long as `lines`.
+    faults: rows that had to be left out. name: of the sheet in its workbook, empty elsewhere. letters: of
+    each column in the workbook. refused: (row, column), both from 0, of a cell that no column of ours may
+    read -> what it holds, in words.
     """
 
     file: str
     headers: tuple[str, ...]
-    header_line: int
+    header_line: int | None
     lines: tuple[int, ...]
     columns: tuple[tuple[str, ...], ...]
     faults: tuple[Fault, ...]
+    name: str = ""
+    letters: tuple[str, ...] = ()
+    refused: Mapping[tuple[int, int], str] = field(default_factory=dict)
+
+    def cell(self, row: int, column: int) -> str:
+        """Where a cell stands: Sheet1!D7 in a workbook, the header elsewhere. row, column: from 0."""
+        if not self.name:
+            return self.headers[column]
+        return address(self.name, self.letters[column], self.lines[row])
+
+    def header(self, text: str) -> str:
+        """Where a header stands: with the name of the sheet in a workbook."""
+        return f"{quoted_sheet(self.name)}!{text}" if self.name else text
+
+
+def quoted_sheet(name: str) -> str:
+    """The name of a sheet as a formula writes it: in quotation marks unless it is a plain word."""
+    return name if re.fullmatch(r"\w+", name) else f"'{name}'"
+
+
+def address(name: str, letter: str, line: int) -> str:
+    """The address of a cell as a formula writes it, for example Sheet1!D7."""
+    return f"{quoted_sheet(name)}!{letter}{line}"
 
 
 def read_sheet(path: str | Path) -> Sheet:
@@ -45,7 +72,7 @@ def read_sheet(path: str | Path) -> Sheet:
     out and stand in `faults`.
     """
     file = str(path)
-    text = _decoded(_content(Path(path), file), file)
+    text = _decoded(content_of(Path(path), file), file)
     delimiter = _delimiter(text)
     records, faults = _records(text, delimiter, file)
     if not records:
@@ -72,18 +99,19 @@ def read_sheet(path: str | Path) -> Sheet:
     return Sheet(file, headers, header_line, tuple(lines), columns or ((),) * len(headers), tuple(faults))
 
 
-def _content(path: Path, file: str) -> bytes:
+def content_of(path: Path, file: str) -> bytes:
+    """Return the bytes of a file. Raises BriefError when there is none, with the nearest name beside it."""
     try:
         return path.read_bytes()
     except FileNotFoundError:
         neighbours = [entry.name for entry in path.parent.iterdir()] if path.parent.is_dir() else []
-        fault = Fault(file, None, "file", "", "a parts list in CSV; there is no such file",
+        fault = Fault(file, None, "file", "", "a list of figures; there is no such file",
                       nearest_name(path.name, neighbours))  # fmt: skip
     except IsADirectoryError:
-        fault = Fault(file, None, "file", "", "a parts list in CSV; this is a folder")
+        fault = Fault(file, None, "file", "", "a list of figures; this is a folder")
     except OSError as error:
         fault = Fault(
-            file, None, "file", "", f"a parts list that can be read; the system says: {error.strerror}"
+            file, None, "file", "", f"a file that can be read; the system says: {error.strerror}"
         )
     raise BriefError([fault])
 

@@ -5,17 +5,19 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Mapping, Sequence
+from decimal import Decimal
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detune.ground.errors import Fault
 from detune.ground.units import KINDS, UnitError, parse, parse_column
-from detune.parts.columns import Column
+from detune.parts.columns import NUMBERED, Column
 from detune.parts.headers import Source
 from detune.parts.sheet import Sheet
 
 _NUMBER = re.compile(r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
+_PER_CENT = re.compile(rf"{_NUMBER.pattern}\s*%")
 _PLAIN = re.compile(r"[0-9eE+.\n-]*")
 _COMMA = re.compile(r"[+-]?[0-9][0-9,.]*")
 _YES_NO = {"yes": True, "y": True, "true": True, "no": False, "n": False, "false": False}
@@ -31,13 +33,16 @@ class Table:
     def __init__(self, sheet: Sheet, columns: Sequence[Column], sources: Mapping[str, Source]) -> None:
         self.file = sheet.file
         self.header_line = sheet.header_line
+        self._sheet = sheet
         self.lines = sheet.lines
+        self.line_word = "row" if sheet.name or sheet.header_line is None else "line"
         self.faults: list[Fault] = []
         self._columns = {column.name: column for column in columns}
         self._sources = sources
         self._cells: dict[str, Sequence[str]] = {}
         self._given: dict[str, NDArray[np.bool_]] = {}
         self._numbers: dict[str, NDArray[np.float64]] = {}
+        self._refused: dict[str, set[int]] = {}
         for column in columns:
             self._fill(column, sheet)
 
@@ -65,9 +70,18 @@ class Table:
         words = [_YES_NO.get(cell.casefold(), False) for cell in self._cells[name]]
         return np.array(words, dtype=np.bool_)
 
+    def numbered(self, name: str) -> dict[int, str]:
+        """Return the columns that a numbered column such as "cost_<n>" stands for, by n rising."""
+        stem = name.removesuffix(NUMBERED)
+        ends = [column.removeprefix(stem) for column in self._columns if column.startswith(stem)]
+        return {number: f"{stem}{number}" for number in sorted(int(end) for end in ends if end.isdigit())}
+
     def where(self, name: str) -> str:
-        """Return the header as the sheet writes it, or ours when the sheet has no such column."""
-        return self._sources[name].where if name in self._sources else self._columns[name].header
+        """Return where the header stands: as the sheet writes it, or ours when it has no such column."""
+        source = self._sources.get(name)
+        if source is not None and source.index is None:
+            return source.where
+        return self._sheet.header(self._columns[name].header if source is None else source.where)
 
     def header_fault(self, name: str, expected: str) -> Fault:
         """A fault of a whole column, at the header row."""
@@ -76,7 +90,15 @@ class Table:
     def fault(self, row: int, name: str, expected: str, nearest: str | None = None) -> Fault:
         """A fault of one cell, showing what stands in it."""
         found = self._cells[name][row]
-        return Fault(self.file, self.lines[row], self.where(name), found, expected, nearest)
+        source = self._sources.get(name)
+        index = None if source is None else source.index
+        where = self.where(name) if index is None else self._sheet.cell(row, index)
+        return Fault(self.file, self.lines[row], where, found, expected, nearest)
+
+    def stated_in_sheet(self, name: str) -> bool:
+        """Say whether the sheet has the column, and not the study as one constant for the whole list."""
+        source = self._sources.get(name)
+        return source is not None and source.index is not None
 
     def _fill(self, column: Column, sheet: Sheet) -> None:
         name, count = column.name, len(sheet.lines)
@@ -94,6 +116,7 @@ class Table:
         elif source is not None:
             self._check_missing(column)
             self._check_words(column)
+            self._check_refused(column, source)
         if column.numeric:
             self._numbers[name] = self._converted(column, source, cells)
             if source is not None and source.index is not None:
@@ -115,7 +138,7 @@ class Table:
         return values
 
     def _floats(self, column: Column, source: Source, cells: Sequence[str]) -> list[float]:
-        if _PLAIN.fullmatch("\n".join(cells)):
+        if not self._refused[column.name] and _PLAIN.fullmatch("\n".join(cells)):
             try:
                 values = [float(cell or "nan") for cell in cells]
             except ValueError:
@@ -127,8 +150,13 @@ class Table:
 
     def _float(self, column: Column, source: Source, row: int, cell: str) -> float:
         cell = cell.replace("\u2212", "-")
-        if not cell:
+        if not cell or row in self._refused[column.name]:
             return math.nan
+        per_cent = column.kind == "ratio" and _PER_CENT.fullmatch(cell)
+        if per_cent and math.isfinite(float(cell[:-1])):
+            # Decimal, because 7 % shall be the same number as 0.07.
+            fraction = float(Decimal(cell[:-1].rstrip()).scaleb(-2))
+            return (fraction - source.offset) / source.scale
         if _NUMBER.fullmatch(cell) and math.isfinite(float(cell)):
             return float(cell)
         self.faults.append(self.fault(row, column.name, _number_wanted(column, source.unit, cell)))
@@ -157,6 +185,13 @@ class Table:
             for row in np.flatnonzero(~self._given[column.name]):
                 expected = f"a value in every row: {column.meaning}"
                 self.faults.append(self.fault(int(row), column.name, expected))
+
+    def _check_refused(self, column: Column, source: Source) -> None:
+        self._refused[column.name] = set()
+        for (row, index), why in sorted(self._sheet.refused.items()):
+            if index == source.index:
+                self._refused[column.name].add(row)
+                self.faults.append(self.fault(row, column.name, why))
 
     def _check_words(self, column: Column) -> None:
         cells = self._cells[column.name]

@@ -24,7 +24,7 @@ RESPONSES: dict[Response, str] = {
     "displacement": "x1 k1/F: primary displacement under a force on it, over the static one",
     "acceleration": "x1'' m1/F: primary acceleration under a force; also its displacement under an unbalance",
     "transmitted force": "force of spring and damper into the ground over the force on the primary",
-    "base motion": "x1/y: primary displacement over base displacement (the same function as transmitted force)",
+    "base motion": "x1/y: primary over base displacement (the same function as transmitted force)",
     "base deflection": "(x1 - y) w1^2/y'': deflection of the primary's mount under base acceleration",
     "stroke": "(x2 - x1) k1/F: deflection of the absorber's own spring under a force on the primary",
 }
@@ -176,15 +176,13 @@ def largest_response(
     """
     top, bottom = _fraction(mass_ratio, frequency_ratio, damping_ratio, response, primary_damping)
     above, below = _squared_magnitude(top), _squared_magnitude(bottom)
-    slope = polynomial.polysub(
-        polynomial.polymul(polynomial.polyder(above), below),
-        polynomial.polymul(above, polynomial.polyder(below)),
-    )
-    roots = polynomial.polyroots(np.trim_zeros(slope, "b"))
+    rising = polynomial.polymul(polynomial.polyder(above), below)
+    slope = polynomial.polysub(rising, polynomial.polymul(above, polynomial.polyder(below)))
+    roots = np.asarray(polynomial.polyroots(np.trim_zeros(slope, "b")), dtype=complex)
     places = roots.real[(roots.real > 0.0) & (np.abs(roots.imag) < 1e-6 * np.abs(roots.real))]
     # A far frequency stands for the limit at infinity, which the acceleration approaches.
     places = np.r_[0.0, places, 1e8]
-    values = polynomial.polyval(places, above) / polynomial.polyval(places, below)
+    values = np.asarray(polynomial.polyval(places, above) / polynomial.polyval(places, below))
     best = int(np.argmax(values))
     return float(np.sqrt(values[best])), float(np.sqrt(places[best]))
 
@@ -199,15 +197,17 @@ def response_variance(
     """Variance under white noise of unit intensity, for the responses that have one, in closed form.
 
     White force for "displacement", "transmitted force", "stroke"; white base acceleration for "base
-    deflection". Integral of |B/A|^2/(2 pi) over all w, from the Hurwitz system (H. M. James, N. B. Nichols,
-    R. S. Phillips, Theory of Servomechanisms, 1947, appendix). Raises ValueError where it is infinite.
+    deflection". Integral of |B/A|^2/(2 pi) over all w by splitting it into partial fractions (H. M. James, N.
+    B. Nichols, R. S. Phillips, Theory of Servomechanisms, 1947, appendix). Raises ValueError where it is
+    infinite.
     """
     top, bottom = _fraction(mass_ratio, frequency_ratio, damping_ratio, response, primary_damping)
     top = np.trim_zeros(top, "b")
     order = bottom.size - 1
     if top.size > order:
         raise ValueError(f"the {response} under white noise has no variance")
-    # |B(jw)|^2 as even coefficients in s: sum over w of the product is the coefficient wanted.
+    # B(s) B(-s) = X(s) A(-s) + X(-s) A(s): X/A is the part of the response after time 0, where its value is
+    # the leading coefficient of X over that of A.
     mirrored = polynomial.polymul(top, top * (-1.0) ** np.arange(top.size))
     even = np.zeros(order)
     even[: mirrored[::2].size] = mirrored[::2]
@@ -217,7 +217,7 @@ def response_variance(
             power = 2 * row - column
             if 0 <= power <= order:
                 hurwitz[row, column] = bottom[power] * (-1.0) ** column
-    return float(np.linalg.solve(hurwitz, 0.5 * even)[order - 1] * (-1.0) ** (order - 1) / bottom[order])
+    return float(np.linalg.solve(hurwitz, 0.5 * even)[order - 1] / bottom[order])
 
 
 def minimax_tuning(
@@ -288,10 +288,11 @@ def _squared_magnitude(coefficients: FloatArray) -> FloatArray:
     signs = (-1.0) ** np.arange((coefficients.size + 1) // 2)
     even = coefficients[::2] * signs
     odd = coefficients[1::2] * signs[: coefficients[1::2].size]
-    square = polynomial.polymul(even, even)
+    square: FloatArray = np.asarray(polynomial.polymul(even, even))
     if odd.size:
-        square = polynomial.polyadd(square, polynomial.polymul([0.0, 1.0], polynomial.polymul(odd, odd)))
-    return np.asarray(square)
+        turned = polynomial.polymul([0.0, 1.0], polynomial.polymul(odd, odd))
+        square = np.asarray(polynomial.polyadd(square, turned))
+    return square
 
 
 def _least(cost: Callable[[float, float], float], mass_ratio: float) -> AbsorberTuning:

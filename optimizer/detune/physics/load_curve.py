@@ -57,6 +57,19 @@ class ElementLaw:
 
 
 @dataclass(frozen=True, eq=False)
+class LawPieces:
+    """Laws of E elements as cubics in (deflection - anchor) between corners (E, C); made by `law_pieces`.
+
+    anchor (E, C + 1), coefficient (E, C + 1, 4) lowest power first; laws with fewer corners are filled with
+    infinity.
+    """
+
+    corner: FloatArray
+    anchor: FloatArray
+    coefficient: FloatArray
+
+
+@dataclass(frozen=True, eq=False)
 class Rest:
     """Resting place: displacement (..., n), and for E elements deflection, force, tangent (..., E); stiffness
     matrix.
@@ -157,6 +170,51 @@ def require_law(law: ElementLaw, deflection: ArrayLike) -> None:
         _require_on_curve(law.curve, d if law.pulls else np.maximum(d, 0.0))
 
 
+def law_pieces(laws: Sequence[ElementLaw]) -> LawPieces:
+    """The laws of E elements as one set of piecewise cubics, which give the forces of all elements at
+    once.
+    """
+    corners = [_corners(law) for law in laws]
+    count = max(corner.size for corner in corners)
+    corner = np.full((len(laws), count), np.inf)
+    anchor = np.zeros((len(laws), count + 1))
+    coefficient = np.zeros((len(laws), count + 1, 4))
+    for e, (law, own) in enumerate(zip(laws, corners, strict=True)):
+        corner[e, : own.size] = own
+        # A cubic is known from value and slope at two points inside the piece, clear of the kinks at its end.
+        width = np.r_[1.0, np.diff(own), 1.0]
+        start = np.r_[own[:1] - 1.0, own] if own.size else np.zeros(1)
+        width = width[: start.size]
+        left, right = start + 0.25 * width, start + 0.75 * width
+        (f0, k0), (f1, k1) = law_force(law, left), law_force(law, right)
+        gap = right - left
+        mean = (f1 - f0) / gap
+        anchor[e, : start.size] = left
+        coefficient[e, : start.size] = np.stack(
+            [f0, k0, (3.0 * mean - 2.0 * k0 - k1) / gap, (k0 + k1 - 2.0 * mean) / gap**2], axis=-1
+        )
+    return LawPieces(corner, anchor, coefficient)
+
+
+def _corners(law: ElementLaw) -> FloatArray:
+    places = [] if law.curve is None else list(law.curve.deflection)
+    places += [] if law.pulls else [0.0]
+    places += [gap for gap in (law.stop_gap, -law.rebound_gap) if np.isfinite(gap)]
+    return np.unique(np.array(places, dtype=float))
+
+
+def pieces_force(pieces: LawPieces, deflection: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """Forces in N and tangents in N/m (..., E) at deflections (..., E) in m."""
+    d = np.asarray(deflection, dtype=float)
+    index = (d[..., None] >= pieces.corner).sum(axis=-1)
+    element = np.arange(pieces.anchor.shape[0])
+    x = d - pieces.anchor[element, index]
+    c = pieces.coefficient[element, index]
+    c1, c2, c3 = c[..., 1], c[..., 2], c[..., 3]
+    force = c[..., 0] + x * (c1 + x * (c2 + x * c3))
+    return force, c1 + x * (2.0 * c2 + 3.0 * x * c3)
+
+
 def at_rest(
     rows: ArrayLike,
     laws: Sequence[ElementLaw],
@@ -178,7 +236,8 @@ def at_rest(
     w = np.broadcast_to(w, (*lead, b.shape[1]))
     gap = np.broadcast_to(gap, (*lead, b.shape[0]))
     q = np.zeros((*lead, b.shape[1]))
-    force, tangent = _forces(b, laws, q, gap)
+    pieces = law_pieces(laws)
+    force, tangent = pieces_force(pieces, q @ b.T + gap)
     # Residuals are compared through the first tangent stiffness, which gives N and N m one measure.
     mean = _mean_stiffness(laws)
     first = np.einsum("...e,ei->...i", np.maximum(tangent, mean), b**2)
@@ -193,7 +252,7 @@ def at_rest(
         downhill = np.sum(residual * step, axis=-1)
         share = np.ones((*lead, 1))
         for _ in range(MOST_HALVINGS):
-            force, tangent = _forces(b, laws, q + share * step, gap)
+            force, tangent = pieces_force(pieces, (q + share * step) @ b.T + gap)
             beyond = np.sum((w - force @ b) * step, axis=-1) < -0.5 * downhill
             if not np.any(beyond & (merit > tolerance**2 * size)):
                 break
@@ -213,14 +272,6 @@ def _mean_stiffness(laws: Sequence[ElementLaw]) -> FloatArray:
         slope = 0.0 if curve is None else np.ptp(curve.load) / np.ptp(curve.deflection)
         mean.append(law.stiffness + float(slope))
     return np.array(mean)
-
-
-def _forces(
-    rows: FloatArray, laws: Sequence[ElementLaw], q: FloatArray, offset: FloatArray
-) -> tuple[FloatArray, FloatArray]:
-    deflection = q @ rows.T + offset
-    pairs = [law_force(law, deflection[..., e]) for e, law in enumerate(laws)]
-    return np.stack([p[0] for p in pairs], axis=-1), np.stack([p[1] for p in pairs], axis=-1)
 
 
 def _newton_step(

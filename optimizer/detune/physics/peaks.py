@@ -22,6 +22,8 @@ COARSE_GAP_AT_EDGE = 0.5
 COARSE_RISE = 5.0
 # The same while its neighbours are only far away, per gap in distances to the nearest pole.
 HIDDEN_RISE = 0.3
+# A parabola through neighbours that are d1 and d2 down in 1/amplitude^2 misses at most about this times d1 d2.
+DOUBT = 0.1
 SMALLEST = 1.0 / COARSE_RISE**2
 
 
@@ -70,7 +72,7 @@ def local_peaks(
     sample, centre = values[row, design, i], omega[design, i]
     bracket = _neighbourhood(omega, values, poles, row, design, i)
     before, after = np.isfinite(bracket.nodes[:, 1]), np.isfinite(bracket.nodes[:, 3])
-    found = []
+    found = [_wide_gaps(omega, values, best, poles)]
     for chosen, judge in ((before & after, _inside), (before ^ after, _edge)):
         part = _Bracket(bracket.nodes[chosen], bracket.ordinates[chosen], bracket.pole[chosen])
         rise, places, reach = judge(part, tolerance)
@@ -102,12 +104,28 @@ def _neighbourhood(
     return _Bracket(nodes, ordinates, np.abs(centre - poles[design]).min(axis=1, initial=np.inf))
 
 
+def _wide_gaps(
+    omega: FloatArray, values: FloatArray, best: FloatArray, poles: ComplexArray
+) -> tuple[FloatArray, ...]:
+    """Gaps between two high samples that are too wide to show a hump between them, as peaks to sample half way."""
+    used = np.isfinite(omega[:, 1:])
+    low, high = omega[:, :-1], np.where(used, omega[:, 1:], 0.0)
+    middle, gap = np.where(used, 0.5 * (low + high), 0.0), np.where(used, high - low, 0.0)
+    pole = np.abs(middle[..., None] - poles[:, None, :]).min(axis=2, initial=np.inf)
+    width = gap / pole
+    rise = np.where(width > COARSE_GAP, 1.0 + HIDDEN_RISE * width, 0.0)
+    product = np.where(used, values[..., 1:] * np.maximum(values[..., :-1], 0.0), 0.0)
+    row, design, i = np.nonzero(product * (2.0 * rise - 1.0) ** 2 * (rise > 0.0) > best[..., None] ** 2)
+    sample = np.sqrt(product[row, design, i])
+    return row, design, sample, rise[design, i], middle[design, i], 0.1 * gap[design, i]
+
+
 def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatArray], FloatArray]:
     """Peaks with a neighbour on both sides: (rise, places from the peak sample, reach)."""
     left, right = -bracket.nodes[:, 1], bracket.nodes[:, 3]
     y_left, y_right = bracket.ordinates[:, 1], bracket.ordinates[:, 3]
     vertex, lowest, trust, bend = _parabola(bracket)
-    rise = 1.0 / np.sqrt(lowest)
+    rise = 1.0 / np.sqrt(lowest) + DOUBT * (y_left - 1.0) * (y_right - 1.0)
     place = _step(vertex, left, right)
     reach = np.maximum(np.sqrt(0.5 * tolerance * lowest / bend), 0.3 * trust)
     reach = np.minimum(reach, 0.3 * np.abs(place))
@@ -147,6 +165,7 @@ def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatAr
     lowest = np.clip(1.0 - slope**2 / (4.0 * bend), SMALLEST, 1.0)
     # A curve that rises from the edge without a parabola's bend is sampled half way before it is believed.
     rise = np.where(curved, 1.0 / np.sqrt(lowest), np.where((slope < 0.0) | alone, 1.5, 1.0))
+    rise += DOUBT * (y_near - 1.0) ** 2
     reach = np.where(curved, np.sqrt(0.5 * tolerance * lowest / bend), 0.1 * near)
     coarse = (y_near > COARSE) | (near > COARSE_GAP_AT_EDGE * bracket.pole)
     step = np.minimum(np.minimum(_foot(near, y_near), 0.9 * COARSE_GAP_AT_EDGE * bracket.pole), 0.4 * near)

@@ -16,7 +16,8 @@ from detune.brief.allowable import (
 from detune.brief.allowable.views import Places
 from detune.brief.brief import Brief, applies, demanded
 from detune.brief.condition import Condition
-from detune.brief.cross_check import Finding, cross_check
+from detune.brief.cross_check import cross_check
+from detune.brief.finding import Finding
 from detune.ground.errors import BriefError, Fault
 from detune.ground.toml_lines import dotted
 from detune.parts.assumed import group_assumed
@@ -26,10 +27,11 @@ from detune.physics.static import is_supported
 from detune.problem.candidates import Dropped, find_candidates
 from detune.problem.requirement import Requirement
 from detune.response.assemble import static_stiffness
+from detune.response.condition_rows import condition_rows
 from detune.response.design import Design
 from detune.response.designs import Designs, all_designs, design_count
 from detune.response.evaluate import Rows
-from detune.response.loads import condition_families, steady_intervals, unit_families
+from detune.response.loads import steady_intervals, unit_families
 from detune.response.model import Model, build_model
 
 
@@ -85,10 +87,13 @@ class Problem:
 
 def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     """Return the problem of a brief. Raises BriefError with every fault the brief and catalogs show together."""
-    candidates = find_candidates(brief, catalogs)
-    findings = (*cross_check(brief), *candidates.findings)
+    findings = cross_check(brief)
     if findings:
+        # Candidates are found by the names that have just been checked.
         raise BriefError(faults_without_lines(brief, findings))
+    candidates = find_candidates(brief, catalogs)
+    if candidates.findings:
+        raise BriefError(faults_without_lines(brief, candidates.findings))
     model = build_model(brief, candidates.mounts)
     _check_support(brief, model)
     allowables, demanded_notes = demanded(brief)
@@ -103,10 +108,14 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
         statics=_expand(allowables, StaticAllowable, "at rest", places),
         modes=_expand(allowables, ModeAllowable, "steady conditions", places),
         harmonics=tuple(
-            group for condition in brief.conditions for group in _harmonic(brief, model, condition, allowables, places)
+            group
+            for condition in brief.conditions
+            for group in _harmonic(brief, model, condition, allowables, places)
         ),
         intervals=steady_intervals(brief),
-        exempt_amplification=next((a.exempt_amplification for a in allowables if isinstance(a, Separation)), None),
+        exempt_amplification=next(
+            (a.exempt_amplification for a in allowables if isinstance(a, Separation)), None
+        ),
         dropped=candidates.dropped,
         assumed=(*model.assumed, *demanded_notes, *catalog_notes),
     )
@@ -114,9 +123,7 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
 
 def faults_without_lines(brief: Brief, findings: tuple[Finding, ...]) -> list[Fault]:
     """Return findings as faults of a brief whose file is not at hand."""
-    return [
-        Fault(brief.file, None, dotted(f.path), f.found, f.expected, f.nearest) for f in findings
-    ]
+    return [Fault(brief.file, None, dotted(f.path), f.found, f.expected, f.nearest) for f in findings]
 
 
 def _expand(
@@ -147,8 +154,7 @@ def _harmonic(
         if families:
             groups.append(_group(Rows(tuple(pairs), families, largest=True), condition))
     if forced:
-        families = condition_families(brief, model, condition)
-        groups.insert(0, _group(Rows(tuple(forced), families, largest=False), condition))
+        groups.insert(0, _group(condition_rows(brief, model, condition, tuple(forced)), condition))
     return groups
 
 

@@ -5,7 +5,8 @@ from dataclasses import dataclass
 
 from detune.brief.brief import Brief
 from detune.brief.choice import Choice, Window
-from detune.brief.cross_check import Finding, Path
+from detune.brief.finding import Finding, Path
+from detune.brief.statement import describe, unit_direction
 from detune.ground import units
 from detune.ground.errors import nearest_name
 from detune.parts.catalog import Catalog, filter_parts
@@ -40,12 +41,15 @@ def find_candidates(brief: Brief, catalogs: Mapping[str, Catalog]) -> Candidates
         index, choice = next((i, c) for i, c in enumerate(brief.choices) if c.group == group)
         path: Path = ("choice", index)
         kept: list[Mount] = []
+        earlier, before = len(findings), len(dropped)
         for name in choice.catalogs:
             if name in catalogs:
                 kept += _from_catalog(path, choice, catalogs[name], dropped, findings)
         kept = _named(path, choice, kept, catalogs, dropped, findings)
-        if not kept and not findings:
-            findings.append(Finding(path, f"no part left for group {group}", "a filter that some part passes"))
+        if not kept and len(findings) == earlier:
+            first = dropped[before]
+            expected = f"a filter that some part passes; the first one left out, {first.mount.part}: {first.reason}"
+            findings.append(Finding((*path, "where"), f"no part left for group {group}", expected))
         mounts.append(tuple(kept))
     findings += _lateral_missing(brief, mounts)
     return Candidates(tuple(mounts), tuple(dropped), tuple(findings))
@@ -68,7 +72,17 @@ def _from_catalog(
             sound = sound and window is not None
             criteria[name] = window or {}
         elif column.kind not in ("text", "yes-no"):
-            findings.append(Finding(place, str(list(wanted)), f'a window such as {{ min = "...", max = "..." }} for {name}'))
+            findings.append(
+                Finding(
+                    place, describe(wanted), f'a window such as {{ min = "...", max = "..." }} for {name}'
+                )
+            )
+            sound = False
+        elif not wanted:
+            findings.append(Finding(place, "[]", f"at least one text, or {name} left out"))
+            sound = False
+        elif column.kind == "yes-no" and not set(wanted) <= {"yes", "no"}:
+            findings.append(Finding(place, describe(wanted), '"yes", "no" or both'))
             sound = False
         else:
             criteria[name] = list(wanted)
@@ -81,7 +95,7 @@ def _from_catalog(
 
 def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> dict[str, float] | None:
     if kind in ("text", "yes-no"):
-        findings.append(Finding(place, "a window", "a list of admitted texts"))
+        findings.append(Finding(place, f"a window for {place[-1]}", "a list of admitted texts, for example [\"rubber\"]"))
         return None
     bounds: dict[str, float] = {}
     for end in ("min", "max"):
@@ -91,10 +105,12 @@ def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> 
         try:
             bounds[end] = units.parse(text, "ratio" if kind == "count" else kind)
         except units.UnitError as error:
-            findings.append(Finding((*place, end), error.found, error.expected))
+            findings.append(Finding((*place, end), error.found, error.expected, error.nearest))
             return None
     if "min" in bounds and "max" in bounds and bounds["min"] > bounds["max"]:
-        findings.append(Finding(place, f"{window.min} to {window.max}", "the lower end first, the upper end second"))
+        findings.append(
+            Finding(place, f"{window.min} to {window.max}", "the lower end first, the upper end second")
+        )
         return None
     return bounds
 
@@ -115,16 +131,24 @@ def _named(
             findings.append(
                 Finding((*path, "parts", i), part, "a part of the chosen catalogs", nearest_name(part, known))
             )
-    dropped += [Dropped(choice.group, m, "not among the parts named") for m in kept if m.part not in choice.parts]
+    dropped += [
+        Dropped(choice.group, m, "not among the parts named") for m in kept if m.part not in choice.parts
+    ]
     return [m for m in kept if m.part in choice.parts]
 
 
 def _lateral_missing(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Finding]:
     """A part without lateral stiffness can only stand where nothing but its axis matters."""
-    if all(freedom == "z" for body in brief.bodies for freedom in body.free):
-        return []
+    vertical_only = all(freedom == "z" for body in brief.bodies for freedom in body.free)
     findings = []
     for group, candidates in zip(brief.groups, mounts, strict=True):
+        upright = all(
+            abs(unit_direction(station.axial)[2]) == 1.0
+            for station in brief.stations
+            if station.group == group
+        )
+        if vertical_only and upright:
+            continue
         index = next(i for i, c in enumerate(brief.choices) if c.group == group)
         bare = [m.part for m in candidates if m.stiffness_dynamic[0] is None]
         if bare:
@@ -133,7 +157,7 @@ def _lateral_missing(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Find
                 Finding(
                     ("choice", index),
                     f"no lateral stiffness for {listed}",
-                    "lateral stiffness for every part that may be chosen, or a study with vertical motion alone",
+                    "lateral stiffness for every part that may be chosen, or upright stations and vertical motion alone",
                 )
             )
     return findings

@@ -13,8 +13,9 @@ from detune.problem.build import HarmonicRequirements, Problem
 from detune.problem.requirement import Requirement
 from detune.response.assemble import dynamic_matrices
 from detune.response.designs import Designs, part_numbers, total_cost
-from detune.response.evaluate import TWO_PI, family_amplitude, mode_batch, suprema
+from detune.response.evaluate import TWO_PI, family_amplitude, response_values
 from detune.response.margin import lower_margin, upper_margin, window_margin
+from detune.response.modes import mode_batch
 from detune.response.views import static_batch
 
 Floats = NDArray[np.float64]
@@ -38,7 +39,7 @@ class Stage:
 
 def stages(problem: Problem) -> tuple[Stage, ...]:
     """Return the stages of a problem in the order of the work they take."""
-    result = []
+    result: list[Stage] = []
     if problem.totals:
         result.append(Stage("totals", problem.totals, lambda d: _totals(problem, d), False, 100_000))
     if problem.statics:
@@ -48,7 +49,10 @@ def stages(problem: Problem) -> tuple[Stage, ...]:
     for group in problem.harmonics:
         result.append(_screen(problem, group))
     for group in problem.harmonics:
-        result.append(_response(problem, group))
+        if group.rows.has_slow_parts:
+            result.append(_response(problem, group, slow_parts=False))
+    for group in problem.harmonics:
+        result.append(_response(problem, group, slow_parts=True))
     return tuple(result)
 
 
@@ -106,7 +110,9 @@ def _screen(problem: Problem, group: HarmonicRequirements) -> Stage:
         dynamic = dynamic_matrices(problem.model, designs)
         sampled = np.zeros((len(group.rows.pairs), designs.count))
         for family in group.rows.families:
-            speed = TWO_PI * np.linspace(family.low, family.high, SCREEN_SPEEDS if family.high > family.low else 1)
+            speed = TWO_PI * np.linspace(
+                family.low, family.high, SCREEN_SPEEDS if family.high > family.low else 1
+            )
             speeds = np.broadcast_to(speed, (designs.count, len(speed)))
             value = family_amplitude(problem.model, designs, dynamic, group.rows, family, speeds)
             sampled = np.maximum(sampled, value.max(axis=-1))
@@ -115,13 +121,14 @@ def _screen(problem: Problem, group: HarmonicRequirements) -> Stage:
     return Stage("response at sampled speeds", group.requirements, margins, True, 2_000)
 
 
-def _response(problem: Problem, group: HarmonicRequirements) -> Stage:
+def _response(problem: Problem, group: HarmonicRequirements, slow_parts: bool) -> Stage:
     def margins(designs: Designs) -> Floats:
         dynamic = dynamic_matrices(problem.model, designs)
-        found = suprema(problem.model, designs, dynamic, mode_batch(dynamic), group.rows)
+        found = response_values(problem.model, designs, dynamic, mode_batch(dynamic), group.rows, slow_parts)
         return _harmonic_margins(problem, group, designs, found.value)
 
-    return Stage("response over the whole range", group.requirements, margins, False, 500)
+    name = "response over the whole range" if slow_parts else "response without records and passages"
+    return Stage(name, group.requirements, margins, not slow_parts, 500)
 
 
 def _harmonic_margins(

@@ -16,11 +16,11 @@ from __future__ import annotations
 
 import numpy as np
 
-from detune.proof.robust_data import OutputLimit, RobustSystem, axis_stiffness, system_matrices
+from detune.proof.robust_data import OutputLimit, RobustSystem
 from detune.proof.selection_data import Complexes, Floats
 
 SHIFTS = (0.0, 0.3, 1.0, 3.0, 10.0)
-WIDENING = 1.0e-9
+WIDENING = 1.0e-8
 """Relative widening of every bound for rounding."""
 
 
@@ -41,8 +41,8 @@ def _corner_points(low: Floats, high: Floats, columns: list[int]) -> list[Floats
 def disc_cover(system: RobustSystem, low: Floats, high: Floats) -> tuple[Complexes, Complexes]:
     """Centre (N, T) of every varying scalar and its corner deviations (N, T, 8).
 
-    The T scalars are kappa of each axis, -omega^2 times the variable of each mass term, -omega^2 itself, and omega (for a
-    fixed viscous matrix). Each is multi-affine in at most three variables, hence inside the convex hull of its values
+    The T scalars are kappa of each axis, -omega^2 times the variable of each mass term, -omega^2 itself, and
+    omega (for a fixed viscous matrix). Each is multi-affine in at most three variables, hence inside the convex hull of its values
     at their corners; kappa is affine in omega, not in omega^2, so its corners are taken in omega.
     """
     count, last = low.shape[0], low.shape[1] - 1
@@ -74,8 +74,8 @@ def _mixed_stiffness(system: RobustSystem, s_edge: Floats, t_edge: Floats, w_edg
     return kappa
 
 
-def absolute_terms(system: RobustSystem) -> tuple[Floats, Floats]:
-    """Matrices (T, n, n) of the varying scalars of `disc_cover`, and their absolute values |P| (T, n, n).
+def absolute_terms(system: RobustSystem) -> Floats:
+    """Absolute values |P| (T, n, n) of the matrices that the scalars of `disc_cover` multiply.
 
     |P| has the absolute eigenvalues of P: then |u^H P v| <= sqrt(u^H |P| u) sqrt(v^H |P| v). The fixed viscous
     matrix enters as j P, which has the same absolute value.
@@ -84,7 +84,7 @@ def absolute_terms(system: RobustSystem) -> tuple[Floats, Floats]:
     terms = np.concatenate([outer, system.mass_terms, system.mass[None], system.fixed_viscous[None]])
     values, vectors = np.linalg.eigh(terms)
     absolute = np.einsum("tik,tk,tjk->tij", vectors, np.abs(values), vectors)
-    return terms, absolute
+    return absolute
 
 
 def _centre_matrices(system: RobustSystem, centre: Complexes) -> Complexes:
@@ -128,12 +128,12 @@ def output_bound(
     The weight estimates how much a variable's width contributes; the widest weight is the one to bisect.
     """
     centre, deviation = disc_cover(system, low, high)
-    terms, absolute = absolute_terms(system)
+    absolute = absolute_terms(system)
     rho = np.abs(deviation).max(axis=2) * (1.0 + 1e-12)
     cover = np.einsum("bt,tij->bij", rho, absolute)
     # A little of the mass matrix keeps R invertible; a larger R is still a cover.
     trace = np.einsum("bii->b", cover) / np.trace(system.mass)
-    floor = 1e-9 * np.maximum(trace, 1e-6 * high[:, -1])
+    floor = 1e-6 * np.maximum(trace, 1e-6 * high[:, -1])
     cover = cover + floor[:, None, None] * system.mass
     factor = np.linalg.cholesky(cover)
     inverse = np.linalg.inv(factor)
@@ -154,11 +154,14 @@ def output_bound(
         turned = deviation * np.exp(-1j * phi)[:, None, None]
         turned[:, -1] *= 1j
         spread = (np.abs(turned.imag).max(axis=2) / np.maximum(rho, 1e-300)).max(axis=1)
-        # The floor of mass stands for a term that may have any phase only if it varies; it does not, so it adds none.
         spread = np.minimum(spread * (1.0 + 1e-12), 1.0)
         for shift in SHIFTS:
             middle, radius = _balls(
-                scaled * np.exp(-1j * phi)[:, None, None], left * np.exp(-1j * phi)[:, None, None], right, shift, spread
+                scaled * np.exp(-1j * phi)[:, None, None],
+                left * np.exp(-1j * phi)[:, None, None],
+                right,
+                shift,
+                spread,
             )
             total = _combine(system, output, middle, radius, rho, start, moving, forced, low, high)
             best = np.minimum(best, total)
@@ -239,9 +242,3 @@ def _weights(
             weight[:, v] += share[:, t] * relative[:, v] / np.maximum(total, 1e-300)
     weight += 1e-12 * relative
     return np.where(width > 0.0, weight, -1.0)
-
-
-def center_values(system: RobustSystem, output: OutputLimit, low: Floats, high: Floats) -> Complexes:
-    """D at the middle of boxes; used by tests to compare with the direct assembly."""
-    points = 0.5 * (low + high)
-    return system_matrices(system, points, axis_stiffness(system, points))

@@ -6,6 +6,8 @@ arguments, as the compiled ones do; they are used by tests and when `search_node
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 
 from detune.proof.kernels_numpy import GROWTH_LIMIT, complex_solve, ldl_factor, unpack
@@ -52,7 +54,7 @@ def row_block(A: Floats, Y: Floats, row: Floats, value: Floats, size: Floats) ->
 
 def inertia_block(A: Floats, shift: Floats, count: Floats, good: Floats) -> None:
     """count = negative pivots of A - shift I; good is 1 where growth and pivots let the count be trusted."""
-    n = int(round((np.sqrt(8 * (A.shape[0] // BLOCK) + 1) - 1) / 2))
+    n = round((math.sqrt(8 * (A.shape[0] // BLOCK) + 1) - 1) / 2)
     shifted = _matrices(A, n) - shift[:, None, None] * np.eye(n)
     _, pivots, growth = ldl_factor(shifted)
     scale = np.maximum(np.abs(shift), np.abs(np.einsum("bii->bi", shifted)).max(axis=1))

@@ -28,14 +28,15 @@ def separation(frequency: Floats, bands: ForbiddenBands) -> Floats:
     """
     f = frequency[:, :, None]
     each = np.maximum(f / bands.high - 1.0, 1.0 - f / bands.low)
-    return np.min(each.reshape(f.shape[0], -1), axis=1, initial=np.inf)
+    least: Floats = np.min(each, axis=(1, 2), initial=np.inf)
+    return least
 
 
 def separation_met(frequency: Floats, bands: ForbiddenBands) -> Flags:
     """Whether every mode (N, n) keeps the separation required of every interval."""
     f = frequency[:, :, None]
     each = np.maximum(f / bands.high - 1.0, 1.0 - f / bands.low)
-    flags: Flags = (each >= bands.separation).reshape(f.shape[0], -1).all(axis=1)
+    flags: Flags = np.asarray((each >= bands.separation).all(axis=(1, 2)))
     return flags
 
 
@@ -59,7 +60,8 @@ def natural_frequencies(selection: Selection, designs: Integers) -> Floats:
     stiffness = _real_matrices(selection, designs, "kappa_dynamic", selection.fixed.dynamic)
     factors = np.linalg.inv(np.linalg.cholesky(selection.ballast.mass))[designs[:, -1]]
     values = np.linalg.eigvalsh(factors @ stiffness @ np.swapaxes(factors, 1, 2))
-    return np.sqrt(np.maximum(values, 0.0)) / (2.0 * np.pi)
+    frequency: Floats = np.sqrt(np.maximum(values, 0.0)) / (2.0 * np.pi)
+    return frequency
 
 
 def static_margin(selection: Selection, designs: Integers) -> Floats:

@@ -119,7 +119,11 @@ def _stations(groups: int, size: Floats) -> tuple[Floats, Integers]:
 
 
 def _mass_matrix(mass: float, size: Floats) -> Floats:
-    inertia = mass / 12.0 * np.array([size[1] ** 2 + size[2] ** 2, size[0] ** 2 + size[2] ** 2, size[0] ** 2 + size[1] ** 2])
+    inertia = (
+        mass
+        / 12.0
+        * np.array([size[1] ** 2 + size[2] ** 2, size[0] ** 2 + size[2] ** 2, size[0] ** 2 + size[1] ** 2])
+    )
     return np.diag(np.concatenate([np.full(3, mass), inertia]))
 
 
@@ -145,7 +149,9 @@ def _parts(
     deflection = np.exp(rng.uniform(np.log(2.0e-3), np.log(16.0e-3), count))
     lateral = np.exp(rng.uniform(np.log(0.08), np.log(1.4), count))
     stiffness = rating / deflection
-    static = stiffness[:, None] * np.stack([lateral, lateral * rng.uniform(0.8, 1.25, count), np.ones(count)], axis=1)
+    static = stiffness[:, None] * np.stack(
+        [lateral, lateral * rng.uniform(0.8, 1.25, count), np.ones(count)], axis=1
+    )
     dynamic = static * rng.uniform(1.1, 1.4, count)[:, None]
     loss = dynamic * rng.uniform(0.05, 0.25, count)[:, None]
     price = (8.0 + 0.9 * rating**0.5 + 400.0 * deflection) * np.exp(rng.normal(0.0, 0.25, count))

@@ -15,9 +15,7 @@ def _entry(row: int, column: int) -> int:
 
 
 def _load_lower(n: int, name: str, source: str) -> list[str]:
-    return [
-        f"{name}{i}{j} = {source}[{_entry(i, j) * BLOCK} + b]" for i in range(n) for j in range(i + 1)
-    ]
+    return [f"{name}{i}{j} = {source}[{_entry(i, j) * BLOCK} + b]" for i in range(n) for j in range(i + 1)]
 
 
 def _real_factor(n: int, growth: bool) -> list[str]:

@@ -81,7 +81,9 @@ def ldl_solve(lower: Floats, pivots: Floats, right: Floats) -> Floats:
     return x
 
 
-def static_solve(stiffness: Floats, load: Floats) -> tuple[Floats, np.ndarray[tuple[int], np.dtype[np.bool_]]]:
+def static_solve(
+    stiffness: Floats, load: Floats
+) -> tuple[Floats, np.ndarray[tuple[int], np.dtype[np.bool_]]]:
     """Solve K q = load for K (N, n, n) symmetric, load (n,) or (N, n).
 
     Returns q (N, n) and a flag (N,) that K is positive definite; where it is not, q is NaN.

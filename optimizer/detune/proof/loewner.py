@@ -34,7 +34,7 @@ def eigenvalue_prune(low: Floats, high: Floats, band_low: Floats, band_high: Flo
     slack_low = lower + ROUNDING * np.abs(lower)
     slack_high = upper - ROUNDING * np.abs(upper)
     inside = (low[:, None, :] > slack_low[:, :, None]) & (high[:, None, :] < slack_high[:, :, None])
-    flags: Flags = inside.any(axis=(1, 2))
+    flags: Flags = np.asarray(inside.any(axis=(1, 2)))
     return flags
 
 
@@ -50,13 +50,17 @@ def _interval(a_low: Floats, a_high: Floats, rows: Floats, load: Floats) -> tupl
     load_part = np.einsum("n,bn->b", load, spread[:, :, -1])[:, None]
     # Differences of nearly equal inverses lose digits: each factor is widened by what may have been lost.
     row_size = np.einsum("rn,bnr->br", np.abs(rows), np.abs(x_high[:, :, :-1]) + np.abs(x_low[:, :, :-1]))
-    load_size = np.einsum("n,bn->b", np.abs(load), np.abs(x_high[:, :, -1]) + np.abs(x_low[:, :, -1]))[:, None]
+    load_size = np.einsum("n,bn->b", np.abs(load), np.abs(x_high[:, :, -1]) + np.abs(x_low[:, :, -1]))[
+        :, None
+    ]
     product = (np.maximum(row_part, 0.0) + LOST * row_size) * (np.maximum(load_part, 0.0) + LOST * load_size)
     half = 0.5 * np.sqrt(product) + ROUNDING * np.sqrt(row_size * load_size)
     return middle - half, middle + half
 
 
-def static_interval(k_low: Floats, k_high: Floats, rows: Floats, load: Floats) -> tuple[Floats, Floats, Flags]:
+def static_interval(
+    k_low: Floats, k_high: Floats, rows: Floats, load: Floats
+) -> tuple[Floats, Floats, Flags]:
     """Interval of row^T K^-1 load over all K between k_low and k_high.
 
     k_low, k_high (N, n, n) with k_low <= k_high; rows (R, n); load (n,). Returns low, high (N, R) and valid
@@ -85,7 +89,9 @@ def undamped_response_interval(
     a_low, a_high = k_low - shift * mass, k_high - shift * mass
     below, above = np.linalg.eigvalsh(a_low), np.linalg.eigvalsh(a_high)
     same = (below < 0.0).sum(axis=1) == (above < 0.0).sum(axis=1)
-    clear = np.minimum(np.abs(below).min(axis=1), np.abs(above).min(axis=1)) > 1e-9 * np.abs(above).max(axis=1)
+    clear = np.minimum(np.abs(below).min(axis=1), np.abs(above).min(axis=1)) > 1e-9 * np.abs(above).max(
+        axis=1
+    )
     valid: Flags = same & clear
     low = np.full((k_low.shape[0], rows.shape[0]), -np.inf)
     high = np.full_like(low, np.inf)

@@ -93,9 +93,7 @@ def case_block(
                     total_re[t * 64 + b] += factor * re_sum[b]
                     total_im[t * 64 + b] += factor * im_sum[b]
     for t in range(total.shape[0]):
-        worst_ratio(
-            total_re[t * 64 : t * 64 + 64], total_im[t * 64 : t * 64 + 64], total_limit[t], ratio
-        )
+        worst_ratio(total_re[t * 64 : t * 64 + 64], total_im[t * 64 : t * 64 + 64], total_limit[t], ratio)
     for b in range(64):
         margin[b] = 1.0 / np.sqrt(ratio[b]) - 1.0 if ratio[b] > 0.0 else np.inf
 

@@ -62,7 +62,8 @@ def case_margin(selection: Selection, designs: Integers, case: int) -> Floats:
         _ratio(cases.force_limit[case], force),
         _ratio(cases.total_limit[case], total),
     ]
-    return np.min(np.concatenate(ratios, axis=1), axis=1, initial=np.inf) - 1.0
+    margin: Floats = np.min(np.concatenate(ratios, axis=1), axis=1, initial=np.inf) - 1.0
+    return margin
 
 
 def _ratio(limit: Floats, response: Complexes) -> Floats:

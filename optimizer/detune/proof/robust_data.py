@@ -157,4 +157,5 @@ def output_at(system: RobustSystem, output: OutputLimit, points: Floats) -> Floa
     deflection = q @ system.axes.T - output.base
     y = q @ output.row + (output.force * kappa * deflection).sum(axis=1)
     power = np.sqrt(points[:, -1]) ** (output.load_power + output.output_power)
-    return np.abs(y * power - output.offset)
+    size: Floats = np.abs(y * power - output.offset)
+    return size

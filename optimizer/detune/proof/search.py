@@ -219,7 +219,9 @@ def explore(
             judge(run, table, positions, cost, counts)
         return
     group = table.groups[len(prefix.chosen)]
-    rest = sum(float(g.cost[d].min()) for g, d in zip(table.groups[-len(filtered) + 1 :], filtered[1:], strict=True))
+    rest = sum(
+        float(g.cost[d].min()) for g, d in zip(table.groups[-len(filtered) + 1 :], filtered[1:], strict=True)
+    )
     others = prod(len(d) for d in filtered[1:])
     for index, position in enumerate(filtered[0].tolist()):
         child = bounds.extend(prefix, group, position)

@@ -22,7 +22,17 @@ from detune.proof.selection_data import Floats, ForbiddenBands, Integers
 WINDOW_SLACK = 1.0e-9
 """Relative slack given to every limit inside the search; the exact test of the survivors has none."""
 
-RULES = ("cost", "static_box", "eigenvalue_box", "static_pair", "static", "eigenvalue", "response", "exact", "met")
+RULES = (
+    "cost",
+    "static_box",
+    "eigenvalue_box",
+    "static_pair",
+    "static",
+    "eigenvalue",
+    "response",
+    "exact",
+    "met",
+)
 """Rules in the order in which they are applied; `met` counts the designs that passed all."""
 
 
@@ -143,8 +153,8 @@ def _box_tests(
     eigen_fails = np.zeros(len(bound), dtype=bool)
     if demand.bands.low.size:
         n = table.freedoms
-        low = np.linalg.eigvalsh(unpack(part_dynamic + dynamic_low, n))
-        high = np.linalg.eigvalsh(unpack(part_dynamic + dynamic_high, n))
+        low: Floats = np.linalg.eigvalsh(unpack(part_dynamic + dynamic_low, n))
+        high: Floats = np.linalg.eigvalsh(unpack(part_dynamic + dynamic_high, n))
         eigen_fails = eigenvalue_prune(low, high, *demand.edges(bound))
     return static_fails, eigen_fails
 
@@ -264,7 +274,7 @@ def _check_points(
     add_counts(counts, "static", int(fails.sum()))
     good = np.flatnonzero(~fails)
     if demand.bands.low.size and good.size:
-        values = np.linalg.eigvalsh(unpack(dynamic[good], table.freedoms))
+        values: Floats = np.linalg.eigvalsh(unpack(dynamic[good], table.freedoms))
         inside = eigenvalue_prune(values, values, *demand.edges(cost[good]))
         add_counts(counts, "eigenvalue", int(inside.sum()))
         good = good[~inside]

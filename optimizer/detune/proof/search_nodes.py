@@ -541,9 +541,7 @@ def times(matrix_map: Floats, axis: Floats) -> Floats:
     return out
 
 
-def union_windows(
-    row_low: Floats, row_high: Floats, lower: Floats, upper: Floats, first_row: int
-) -> None:
+def union_windows(row_low: Floats, row_high: Floats, lower: Floats, upper: Floats, first_row: int) -> None:
     """Set the windows of one group's stations to the union over its parts."""
     for s in range(lower.shape[0]):
         row_low[first_row + s] = lower[s].min()

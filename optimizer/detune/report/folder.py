@@ -15,7 +15,7 @@ from detune.report.csv_files import (
     why_csv,
 )
 from detune.report.page import page_text
-from detune.report.plots import draw_all
+from detune.report.figures import draw_all
 from detune.report.response_data import response_curves
 from detune.report.strict_json import json_text
 from detune.study.run import Result
@@ -105,7 +105,7 @@ def _fill(result: Result, folder: Path) -> None:
         texts["stations.csv"] = stations_csv(subject)
         texts["modes.csv"] = modes_csv(subject)
     (folder / "plots").mkdir()
-    drawn = draw_all(result, curves)
+    drawn = draw_all(result)
     for plot in drawn:
         texts[f"plots/{plot.name}.svg"] = plot.svg
         (folder / "plots" / f"{plot.name}.png").write_bytes(plot.png)
@@ -144,7 +144,9 @@ def _proof(result: Result) -> dict[str, object]:
                 "rule": rule.rule,
                 "excluded": rule.excluded,
                 "by_part": {
-                    group.name: dict(zip((m.part for m in group.mounts), counts.tolist(), strict=True))
+                    group.name: dict(
+                        zip((f"{m.catalog}: {m.part}" for m in group.mounts), counts.tolist(), strict=True)
+                    )
                     for group, counts in zip(result.problem.model.groups, rule.by_part, strict=True)
                 },
             }

@@ -59,7 +59,9 @@ def part_dynamic_stiffness(group: Group, part: NDArray[np.intp], omega: Floats) 
     """Return one part's complex dynamic stiffness (D, F, 3) along its axes: k (1 + j eta) + j w c."""
     arrays = group.arrays
     constant = arrays.stiffness_dynamic * (1.0 + 1j * arrays.loss_factor)
-    stiffness: Complexes = constant[part][:, None, :] + 1j * omega[:, :, None] * arrays.viscous[part][:, None, :]
+    stiffness: Complexes = (
+        constant[part][:, None, :] + 1j * omega[:, :, None] * arrays.viscous[part][:, None, :]
+    )
     return stiffness
 
 
@@ -69,4 +71,3 @@ def _sum(model: Model, designs: Designs, values: Callable[[Group], Floats]) -> F
     for index, group in enumerate(model.groups):
         total += values(group)[designs.part[:, index]] @ group.spread.reshape(3, n * n)
     return total.reshape(designs.count, n, n)
-

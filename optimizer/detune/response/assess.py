@@ -57,7 +57,9 @@ def assess(brief: Brief, design: Design) -> Assessment:
             rows += [_static_row(static, allowable, place) for place in allowable.places(names)]
         elif isinstance(allowable, ModeAllowable):
             value = float(allowable.value(found_modes.view)[0])
-            rows.append(_row(allowable, "steady conditions", "whole machine", value, allowable.lower_limit(), None))
+            rows.append(
+                _row(allowable, "steady conditions", "whole machine", value, allowable.lower_limit(), None)
+            )
         elif isinstance(allowable, DesignAllowable):
             value = float(allowable.value(totals)[0])
             rows.append(_row(allowable, "design", "whole machine", value, None, allowable.upper_limit()))
@@ -144,7 +146,9 @@ def _harmonic_rows(
     allowables: tuple[Allowable, ...],
     names: Places,
 ) -> list[MarginRow]:
-    harmonic = [a for a in allowables if isinstance(a, HarmonicAllowable) and applies(a.conditions, condition.name)]
+    harmonic = [
+        a for a in allowables if isinstance(a, HarmonicAllowable) and applies(a.conditions, condition.name)
+    ]
     forced = tuple((a, place) for a in harmonic if a.unit_load() is None for place in a.places(names))
     rows = []
     if forced:
@@ -166,7 +170,7 @@ def _judged(static: DirectStatic, condition: Condition, pairs: Pairs, found: Sup
             float(found.value[index] + allowable.offset(static, place)[0]),
             None,
             float(allowable.bound(static, place)[0]),
-            float(found.speed[index]),
+            None if np.isnan(found.speed[index]) else float(found.speed[index]),
         )
         for index, (allowable, place) in enumerate(pairs)
     ]

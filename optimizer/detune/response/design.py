@@ -14,7 +14,9 @@ class Design:
     ballast: float
 
     def __str__(self) -> str:
-        parts = ", ".join(f"{group}: {mount.part}" for group, mount in zip(self.groups, self.mounts, strict=True))
+        parts = ", ".join(
+            f"{group}: {mount.part}" for group, mount in zip(self.groups, self.mounts, strict=True)
+        )
         return f"{parts}; ballast {self.ballast:g} kg" if self.ballast else parts
 
     @property

@@ -103,7 +103,9 @@ class DirectMachine:
     def mass(self) -> Floats:
         """Mass matrix (N, N), the ballast included."""
         total = np.zeros((len(self.free), len(self.free)))
-        pieces = [(b.name, p.mass, p.centre, p.inertia) for b in self.brief.bodies for p in (mass_properties(b),)]
+        pieces = [
+            (b.name, p.mass, p.centre, p.inertia) for b in self.brief.bodies for p in (mass_properties(b),)
+        ]
         ballast = self.brief.ballast
         if ballast is not None and self.design.ballast > 0.0:
             inertia = box_inertia(self.design.ballast, np.array(ballast.size))
@@ -132,7 +134,11 @@ class DirectMachine:
             rows = self.place(on, position) - self.place(connection.to, position)
             total += rows.T @ (connection_stiffness(connection, omega)[..., :, None] * rows)
         if self.floor is not None:
-            own = self.floor.stiffness if omega is None else self.floor.stiffness + 1j * omega * self.floor.damping
+            own = (
+                self.floor.stiffness
+                if omega is None
+                else self.floor.stiffness + 1j * omega * self.floor.damping
+            )
             total[..., -4, -4] += own
         return total
 
@@ -173,7 +179,9 @@ def part_stiffness(mount: Mount, omega: Floats | None) -> Complexes:
         return np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex)
     dynamic = np.nan_to_num(np.array(mount.stiffness_dynamic, dtype=float))
     hysteretic = dynamic * np.array(mount.loss_factor)
-    return dynamic + 1j * hysteretic + 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
+    return (
+        dynamic + 1j * hysteretic + 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
+    )
 
 
 def connection_stiffness(connection: Connection, omega: Floats | None) -> Complexes:

@@ -13,6 +13,8 @@ from detune.brief.condition import Condition
 from detune.brief.forcing import Tone
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes
+from detune.response.direct_motion import direct_passage_values, direct_transient_values
+from detune.response.direct_random import direct_noise_values
 from detune.response.direct_views import DirectTone
 
 Floats = NDArray[np.float64]
@@ -57,22 +59,39 @@ class Supremum:
 
 
 def forced_suprema(machine: DirectMachine, found: DirectModes, condition: Condition, pairs: Pairs) -> Supremum:
-    """Return the suprema of all rows under the forcing of a condition.
+    """Return the values of all rows under the forcing of a condition: tones, noise, records and passages.
 
     Speeds are independent of each other: peaks add linearly, rms values as squares.
     """
     by_speed: dict[str, list[Tone]] = {}
     for tone in tones_of(machine.brief, condition):
         by_speed.setdefault(tone.speed, []).append(tone)
-    total = np.zeros(len(pairs))
+    acting = [f for f in machine.brief.forcing if applies(f.conditions, condition.name)]
+    parts = []
     largest = np.full(len(pairs), -np.inf)
     at = np.full(len(pairs), np.nan)
-    for tones in by_speed.values():
-        part = _supremum(machine, found, pairs, coherent_sets(tones), (tones[0].low, tones[0].high))
-        for index, (allowable, _) in enumerate(pairs):
-            total[index] = combine(total[index], part.value[index], allowable.statistic())
+    for speed, tones in by_speed.items():
+        low, high = tones[0].low, tones[0].high
+        ways = [(low, high, condition.run_up[speed])] if speed in condition.run_up else []
+        ways += [(high, low, condition.coast_down[speed])] if speed in condition.coast_down else []
+        if ways:
+            each = [direct_passage_values(machine, found, coherent_sets(tones), way, pairs) for way in ways]
+            parts.append(np.max(each, axis=0))
+            continue
+        part = _supremum(machine, found, pairs, coherent_sets(tones), (low, high))
+        parts.append(part.value)
         at = np.where(part.value > largest, part.speed, at)
         largest = np.maximum(largest, part.value)
+    noises = tuple(noise for forcing in acting for noise in forcing.noises())
+    transients = tuple(transient for forcing in acting for transient in forcing.transients())
+    if noises:
+        parts.append(direct_noise_values(machine, found, noises, pairs))
+    if transients:
+        parts.append(direct_transient_values(machine, found, transients, pairs))
+    total = np.zeros(len(pairs))
+    for part_values in parts:
+        for index, (allowable, _) in enumerate(pairs):
+            total[index] = combine(total[[index]], part_values[[index]], allowable.statistic())[0]
     return Supremum(total, at)
 
 
@@ -91,7 +110,11 @@ def coherent_sets(tones: Iterable[Tone]) -> list[tuple[Tone, ...]]:
 
 
 def unit_load_suprema(
-    machine: DirectMachine, found: DirectModes, condition: Condition, allowable: HarmonicAllowable, pairs: Pairs
+    machine: DirectMachine,
+    found: DirectModes,
+    condition: Condition,
+    allowable: HarmonicAllowable,
+    pairs: Pairs,
 ) -> Supremum | None:
     """Return the suprema under the allowable's unit load over the excitation intervals, None if none remains."""
     unit = allowable.unit_load()
@@ -125,14 +148,17 @@ def unit_load_suprema(
     return best
 
 
-def amplitudes_at(machine: DirectMachine, pairs: Pairs, sets: list[tuple[Tone, ...]], speed: Floats) -> Floats:
+def amplitudes_at(
+    machine: DirectMachine, pairs: Pairs, sets: list[tuple[Tone, ...]], speed: Floats
+) -> Floats:
     """Return the amplitude (R, F) of every row at speeds (F,) in Hz, all coherent sets together."""
     total: list[Floats | None] = [None] * len(pairs)
     for tones in sets:
         view = DirectTone(machine, tones, (TWO_PI * tones[0].order * speed)[None])
         for index, (allowable, place) in enumerate(pairs):
             statistic = allowable.statistic()
-            tone = tone_amplitude(allowable.observed(view, place), allowable.along(), statistic)[0]
+            observed = allowable.weighted(allowable.observed(view, place), view.omega / TWO_PI)
+            tone = tone_amplitude(observed, allowable.along(), statistic)[0]
             earlier = total[index]
             total[index] = tone if earlier is None else combine(earlier, tone, statistic)
     return np.stack([part for part in total if part is not None])
@@ -150,7 +176,10 @@ def _supremum(
 
 
 def supremum(
-    amplitudes: Callable[[Floats], Floats], interval: tuple[float, float], poles: Complexes, orders: list[float]
+    amplitudes: Callable[[Floats], Floats],
+    interval: tuple[float, float],
+    poles: Complexes,
+    orders: list[float],
 ) -> Supremum:
     """Return the largest amplitude of each row over the interval (Hz) and where it is.
 
@@ -190,6 +219,8 @@ def _brackets(speed: Floats, value: Floats, best: Floats) -> tuple[NDArray[np.in
     """Return row, left and right neighbour of every sampled local maximum near its row's largest."""
     edge = np.full((len(value), 1), -np.inf)
     padded = np.concatenate([edge, value, edge], axis=1)
-    peak = (value >= padded[:, :-2]) & (value >= padded[:, 2:]) & (value >= 0.8 * best[:, None]) & (value > 0.0)
+    peak = (
+        (value >= padded[:, :-2]) & (value >= padded[:, 2:]) & (value >= 0.8 * best[:, None]) & (value > 0.0)
+    )
     row, column = np.nonzero(peak)
     return row, speed[np.maximum(column - 1, 0)], speed[np.minimum(column + 1, len(speed) - 1)]

@@ -1,6 +1,5 @@
-"""Values of many requirements for many designs: statics, modes and suprema over speed."""
+"""Values of many response requirements for many designs: tones, noise, records and passages together."""
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -8,12 +7,15 @@ from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
 from detune.brief.allowable.base import combine, tone_amplitude
-from detune.brief.allowable.views import ModeView
-from detune.physics import envelope, modes
+from detune.physics import envelope
 from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
 from detune.response.loads import Family
 from detune.response.model import Model
+from detune.response.modes import ModeBatch
+from detune.response.random import NoiseLoad, noise_values
+from detune.response.swept import Passage, swept_values
+from detune.response.transient import TransientLoad, transient_values
 from detune.response.views import ToneBatch
 
 Floats = NDArray[np.float64]
@@ -22,39 +24,29 @@ TWO_PI = 2.0 * np.pi
 
 
 @dataclass(frozen=True)
-class ModeBatch:
-    """Undamped natural frequencies (D, n) Hz, mass-normalised shapes (D, n, n), loss factors (D, n)."""
-
-    frequency: Floats
-    shapes: Floats
-    loss_factor: Floats
-
-    def view(self, intervals: Sequence[tuple[float, float]]) -> ModeView:
-        """Return what a mode allowable looks at."""
-        with np.errstate(divide="ignore"):
-            amplification = 1.0 / self.loss_factor
-        return ModeView(self.frequency, amplification, np.array(intervals, dtype=float).reshape(-1, 2))
-
-
-def mode_batch(dynamic: Dynamic) -> ModeBatch:
-    """Return the undamped modes at the dynamic stiffness, with each mode's equivalent loss factor."""
-    frequency, shapes = modes.undamped_modes(dynamic.mass, dynamic.stiffness)
-    loss = modes.modal_loss_factors(shapes, dynamic.hysteretic, dynamic.viscous, frequency)
-    return ModeBatch(frequency, shapes, loss)
-
-
-@dataclass(frozen=True)
 class Rows:
-    """Harmonic requirements judged under one set of families: (allowable, place) pairs."""
+    """Response requirements judged under one set of loads: (allowable, place) pairs.
+
+    Families have independent speeds. Where `largest`, families are alternatives and the largest
+    counts. A family that is passed through stands in `passages` instead, once for each way.
+    """
 
     pairs: tuple[tuple[HarmonicAllowable, str], ...]
     families: tuple[Family, ...]
-    largest: bool
+    largest: bool = False
+    noises: tuple[NoiseLoad, ...] = ()
+    transients: tuple[TransientLoad, ...] = ()
+    passages: tuple[tuple[Passage, ...], ...] = ()
+
+    @property
+    def has_slow_parts(self) -> bool:
+        """Whether something is to be simulated in time, design by design."""
+        return bool(self.transients or self.passages)
 
 
 @dataclass(frozen=True)
 class Amplitudes:
-    """Amplitude (R, D) of each row, and the speed (R, D) in Hz at which its largest part occurs."""
+    """Amplitude (R, D) of each row, and the speed (R, D) in Hz at which its largest tone part occurs."""
 
     value: Floats
     frequency: Floats
@@ -69,10 +61,34 @@ def family_amplitude(
         view = ToneBatch(model, designs, dynamic, loads, speed * loads[0].order)
         for index, (allowable, place) in enumerate(rows.pairs):
             statistic = allowable.statistic()
-            tone = tone_amplitude(allowable.observed(view, place), allowable.along(), statistic)
+            observed = allowable.weighted(allowable.observed(view, place), view.omega / TWO_PI)
+            tone = tone_amplitude(observed, allowable.along(), statistic)
             earlier = total[index]
             total[index] = tone if earlier is None else combine(earlier, tone, statistic)
     return np.stack([part for part in total if part is not None])
+
+
+def response_values(
+    model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, rows: Rows, slow_parts: bool = True
+) -> Amplitudes:
+    """Return each row's value under all its loads together.
+
+    Without `slow_parts`, records and passages are left out, which gives a lower bound.
+    """
+    tones = suprema(model, designs, dynamic, modal, rows)
+    value = tones.value
+    parts = []
+    if rows.noises:
+        parts.append(noise_values(model, designs, dynamic, modal, rows.pairs, rows.noises))
+    if slow_parts and rows.transients:
+        parts.append(transient_values(model, designs, dynamic, modal, rows.pairs, rows.transients))
+    if slow_parts:
+        parts += [swept_values(model, designs, dynamic, modal, rows.pairs, each) for each in rows.passages]
+    for part in parts:
+        value = np.stack(
+            [combine(value[i], part[i], allowable.statistic()) for i, (allowable, _) in enumerate(rows.pairs)]
+        )
+    return Amplitudes(value, tones.frequency)
 
 
 def suprema(model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, rows: Rows) -> Amplitudes:

@@ -15,11 +15,17 @@ def upper_margin(value: Floats, limit: Floats) -> Floats:
 
 
 def lower_margin(value: Floats, limit: Floats) -> Floats:
-    """Return value / limit - 1. A limit of zero is met by any value of zero or more, infinitely so above zero."""
+    """Return value / limit - 1. A limit of zero is met by any value of zero or more, infinitely so above zero.
+
+    A limit below zero bounds the size of a value below zero (tension of a part that may pull): it is
+    judged as an upper limit on that size, limit / value - 1.
+    """
     value, limit = np.broadcast_arrays(np.asarray(value, float), np.asarray(limit, float))
     at_zero = np.where(value > 0.0, np.inf, np.where(value < 0.0, -np.inf, 1.0))
     ratio = at_zero.copy()
     np.divide(value, limit, out=ratio, where=limit > 0.0)
+    ratio = np.where((limit < 0.0) & (value >= 0.0), np.inf, ratio)
+    np.divide(limit, value, out=ratio, where=(limit < 0.0) & (value < 0.0))
     return ratio - 1.0
 
 

@@ -157,7 +157,9 @@ def build_model(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> Mode
     notes = [note for p in properties.values() for note in p.assumed]
     notes += list(floor.assumed) if floor is not None else []
     notes += [
-        f"{c.name}: static stiffness taken equal to the dynamic one" for c in brief.connections if c.stiffness_static is None
+        f"{c.name}: static stiffness taken equal to the dynamic one"
+        for c in brief.connections
+        if c.stiffness_static is None
     ]
     return Model(
         frame=frame,
@@ -184,7 +186,9 @@ def _station(brief: Brief, frame: Frame, station: Station) -> StationRows:
     radial = None if station.radial is None else np.array(unit_direction(station.radial))
     axes = axes_from_direction(np.array(unit_direction(station.axial)), radial)
     position = np.array(station.position)
-    rows = frame.motion_rows(body_of(brief, station.on), position, axes) - frame.motion_rows(station.to, position, axes)
+    rows = frame.motion_rows(body_of(brief, station.on), position, axes) - frame.motion_rows(
+        station.to, position, axes
+    )
     return StationRows(
         name=station.name,
         group=brief.groups.index(station.group),
@@ -198,7 +202,9 @@ def _station(brief: Brief, frame: Frame, station: Station) -> StationRows:
 
 def _connection(brief: Brief, frame: Frame, connection: Connection) -> ConnectionRows:
     position = np.array(connection.position)
-    rows = frame.motion_rows(body_of(brief, connection.on), position) - frame.motion_rows(connection.to, position)
+    rows = frame.motion_rows(body_of(brief, connection.on), position) - frame.motion_rows(
+        connection.to, position
+    )
     stiffness = np.array(connection.stiffness)
     static = stiffness if connection.stiffness_static is None else np.array(connection.stiffness_static)
     return ConnectionRows(

@@ -84,9 +84,7 @@ def rows(
     else:
         bounds = np.array([[0.0, 0.0, -(low**2)], [0.0, 0.0, high**2]])
     for mass in masses:
-        constant = (mass * at_u) ** 2 - np.where(
-            transmission, 0.0, level * np.where(carries, mass**2, 1.0)
-        )
+        constant = (mass * at_u) ** 2 - np.where(transmission, 0.0, level * np.where(carries, mass**2, 1.0))
         block = np.stack([constant, -2.0 * mass * at_u, free], axis=1) if forms else np.zeros((0, 3))
         blocks.append(np.concatenate([block, bounds]))
     beta = np.concatenate([s * free, [1.0, -1.0]])

@@ -100,9 +100,7 @@ class LinePool:
         self.at_u.append(u)
         return True
 
-    def slice(
-        self, masses: tuple[float, ...], window: tuple[float, float]
-    ) -> tuple[list[Segment], Rows]:
+    def slice(self, masses: tuple[float, ...], window: tuple[float, float]) -> tuple[list[Segment], Rows]:
         """Solve the slice of the present lines at one scaled mass, or relaxed over two (`envelope`)."""
         problem = self.problem
         table = rows(

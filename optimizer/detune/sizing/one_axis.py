@@ -104,9 +104,7 @@ def branch_name(low: float, high: float, intervals: tuple[tuple[float, float], .
     if not intervals:
         return "no excitation stated"
     slack = 1e-9
-    crossed = [
-        i for i, (a, b) in enumerate(intervals, 1) if low < b * (1 - slack) and high > a * (1 + slack)
-    ]
+    crossed = [i for i, (a, b) in enumerate(intervals, 1) if low < b * (1 - slack) and high > a * (1 + slack)]
     crossed += [i for i, (a, b) in enumerate(intervals, 1) if a == b and low < a < high and i not in crossed]
     if crossed:
         first, last = min(crossed), max(crossed)
@@ -151,13 +149,13 @@ def margin_of(
 
 
 def describe(
-    problem: OneAxisProblem, stiffness: float, damping: float, mass: float, objective: float
+    problem: OneAxisProblem, stiffness: float, damping: float, added: float, objective: float
 ) -> SizedDesign:
-    """Judge one design (SI) by the exact equations and name what is tight."""
+    """Judge one design (SI, `added` the ballast in kg) by the exact equations and name what is tight."""
+    mass = problem.mass + added
     states = tuple(margin_of(x, problem, stiffness, damping, mass) for x in problem.limits)
     tight = [s.name for s in states if abs(s.margin) <= TIGHT]
     frequency = math.sqrt(stiffness / mass) / (2 * math.pi)
-    added = mass - problem.mass
 
     def at(value: float, bound: float) -> bool:
         return abs(value - bound) <= TIGHT * max(abs(bound), 1e-12)
@@ -179,7 +177,9 @@ def describe(
         value = float(separation(np.array([frequency]), problem.excitation_intervals)[0])
         tight += ["separation"] if abs(value - problem.separation) <= TIGHT else []
     edges = [edge for pair in excitations(problem) for edge in pair]
-    tight += ["natural frequency at the edge of an excitation"] if any(at(frequency, x) for x in edges) else []
+    tight += (
+        ["natural frequency at the edge of an excitation"] if any(at(frequency, x) for x in edges) else []
+    )
     return SizedDesign(stiffness, damping, added, mass, frequency, objective, tuple(tight), states)
 
 
@@ -187,17 +187,19 @@ def _sign(problem: OneAxisProblem) -> float:
     return -1.0 if problem.objective.goal in ("stiffest", "greatest separation") else 1.0
 
 
-def _branch(problem: OneAxisProblem, pool: LinePool, mass: float, segment: Segment) -> Branch:
+def _branch(problem: OneAxisProblem, pool: LinePool, added: float, segment: Segment) -> Branch:
     scales = pool.scales
     viscous = problem.damping_kind == "viscous"
-    stiffness = segment.stiffness * scales.stiffness
+    # Scaling and back may leave a bound by one unit in the last place.
+    softest, stiffest = problem.stiffness_bounds
+    stiffness = min(max(segment.stiffness * scales.stiffness, softest), stiffest)
     root = math.sqrt(max(segment.gamma, 0.0) * scales.gamma(viscous))
     damping = root if viscous else root / stiffness
     low, high = problem.damping_bounds
-    kilograms = mass * scales.mass()
+    kilograms = problem.mass + added
     value = _sign(problem) * segment.value
-    best = describe(problem, stiffness, min(max(damping, low), high), kilograms, value)
-    ends = (segment.left * scales.stiffness, segment.right * scales.stiffness)
+    best = describe(problem, stiffness, min(max(damping, low), high), added, value)
+    ends = (max(segment.left * scales.stiffness, softest), min(segment.right * scales.stiffness, stiffest))
     hertz = [math.sqrt(k / kilograms) / (2 * math.pi) for k in ends]
     return Branch(branch_name(hertz[0], hertz[1], excitations(problem)), ends, best)
 
@@ -228,23 +230,25 @@ def solve_one_axis(problem: OneAxisProblem) -> OneAxisOutcome:
     violation = 0.0
     ballast = problem.ballast
     if ballast is None or ballast.step is not None or ballast.least == ballast.most:
-        added = (0.0,) if ballast is None else ballast.values() if ballast.step is not None else (ballast.least,)
-        for kilograms in added:
+        if ballast is None:
+            steps: tuple[float, ...] = (0.0,)
+        else:
+            steps = ballast.values() if ballast.step is not None else (ballast.least,)
+        for kilograms in steps:
             mass = (problem.mass + kilograms) / pool.scales.mass()
             found, excess = solve_slice(pool, mass, everything)
             violation = max(violation, excess)
-            branches += [_branch(problem, pool, mass, s) for s in found]
+            branches += [_branch(problem, pool, kilograms, s) for s in found]
         gap, decided = 0.0, violation <= 1e-9
     else:
         results, gap, decided = search_masses(pool, excitations(problem))
         for mass, segment, excess in results:
             violation = max(violation, excess)
-            branches.append(_branch(problem, pool, mass, segment))
+            added = min(max(mass * pool.scales.mass() - problem.mass, ballast.least), ballast.most)
+            branches.append(_branch(problem, pool, added, segment))
     sign = _sign(problem)
     branches = _number_islands(branches)
     branches.sort(key=lambda x: (sign * x.best.objective, x.best.mass))
     if not branches:
         return OneAxisOutcome((), sign * math.inf, 0.0, violation, decided)
-    return OneAxisOutcome(
-        tuple(branches), branches[0].best.objective - sign * gap, gap, violation, decided
-    )
+    return OneAxisOutcome(tuple(branches), branches[0].best.objective - sign * gap, gap, violation, decided)

@@ -240,7 +240,10 @@ def _objective(
         zero, one = v["modulus"]
         top = zero + one * u
         model.t = pyo.Var(bounds=(0, None))
-        model.rows.add(model.t**2 * (top - 2 * model.k * model.m * u + (model.m * u) ** 2) >= top)
+        # Times 1/k_min^2: the solver's absolute tolerance must not decide a small transmissibility.
+        size = float(model.k.lb) ** 2
+        dynamic = top - 2 * model.k * model.m * u + (model.m * u) ** 2
+        model.rows.add((model.t**2 * dynamic - top) / size >= 0)
         expression = model.t
     else:
         expression = (
@@ -259,8 +262,12 @@ def _objective(
     model.goal = pyo.Objective(expr=expression)
 
 
+def _value(variable: Any) -> float:
+    """The variable's value; one that no row mentions is not sent to the solver and rests on its lower bound."""
+    return float(variable.lb if variable.value is None else variable.value)
+
+
 def _run(problem: OneAxisProblem, count: MountCount | None, limit: float, gap: float) -> SecondOpinion:
-    import pyomo.environ as pyo
     from pyomo.contrib.solver.common.factory import SolverFactory
     from pyomo.contrib.solver.common.results import SolutionStatus, TerminationCondition
 
@@ -287,7 +294,9 @@ def _run(problem: OneAxisProblem, count: MountCount | None, limit: float, gap: f
         return _nothing("infeasible", detail, seconds)
     done = why == TerminationCondition.convergenceCriteriaSatisfied
     if result.solution_status not in (SolutionStatus.optimal, SolutionStatus.feasible):
-        return _nothing("time limit" if why == TerminationCondition.maxTimeLimit else "failed", detail, seconds)
+        return _nothing(
+            "time limit" if why == TerminationCondition.maxTimeLimit else "failed", detail, seconds
+        )
     if not done and why != TerminationCondition.maxTimeLimit:
         return _nothing("failed", detail, seconds)
     result.solution_loader.load_vars()
@@ -301,10 +310,10 @@ def _run(problem: OneAxisProblem, count: MountCount | None, limit: float, gap: f
         "optimal" if done else "time limit",
         factor * float(result.incumbent_objective),
         factor * float(result.objective_bound),
-        float(pyo.value(model.k)) * scaled.stiffness,
-        float(pyo.value(model.d)) * (scaled.damping if problem.damping_kind == "viscous" else 1.0),
-        (float(pyo.value(model.m)) - 1.0) * scaled.mass,
-        round(float(pyo.value(model.n))) if count else 1,
+        _value(model.k) * scaled.stiffness,
+        _value(model.d) * (scaled.damping if problem.damping_kind == "viscous" else 1.0),
+        (_value(model.m) - 1.0) * scaled.mass,
+        round(_value(model.n)) if count else 1,
         seconds,
         detail,
     )

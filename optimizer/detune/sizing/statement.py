@@ -68,7 +68,9 @@ class ResponseLimit:
                 "crossed, zero or not finite"
             )
         if (self.quantity == "transmissibility") != (self.source == "unit"):
-            raise SizingError(f"limit '{self.name}': a transmissibility has no source, every other limit has one")
+            raise SizingError(
+                f"limit '{self.name}': a transmissibility has no source, every other limit has one"
+            )
         if self.quantity == "transmitted force" and self.source in _BASE:
             raise SizingError(
                 f"limit '{self.name}': under base motion state the force as an acceleration of the mass"
@@ -121,7 +123,9 @@ class SagLimit:
 
     def __post_init__(self) -> None:
         if not 0 <= self.least <= self.most or not self.dynamic_to_static > 0:
-            raise SizingError("sag: the least sag exceeds the most, or the dynamic-to-static ratio is not positive")
+            raise SizingError(
+                "sag: the least sag exceeds the most, or the dynamic-to-static ratio is not positive"
+            )
 
 
 @dataclass(frozen=True)
@@ -134,7 +138,9 @@ class Ballast:
 
     def __post_init__(self) -> None:
         if not 0 <= self.least <= self.most < math.inf:
-            raise SizingError(f"ballast: bounds {self.least} to {self.most} kg are crossed, negative or not finite")
+            raise SizingError(
+                f"ballast: bounds {self.least} to {self.most} kg are crossed, negative or not finite"
+            )
         if self.step is not None and not self.step > 0:
             raise SizingError("ballast: the step must be positive")
 
@@ -199,7 +205,9 @@ class OneAxisProblem:
             if not (0 <= low <= high and math.isfinite(high)):
                 raise SizingError(f"{label}: bounds {low} to {high} are crossed, negative or not finite")
         if not self.stiffness_bounds[0] > 0:
-            raise SizingError("stiffness: the lower bound must be above zero; a mass without a mount has no answer")
+            raise SizingError(
+                "stiffness: the lower bound must be above zero; a mass without a mount has no answer"
+            )
         if any(not 0 < a <= b for a, b in self.excitation_intervals):
             raise SizingError("excitation intervals must be positive and not crossed")
         needs = self.separation is not None or self.objective.goal == "greatest separation"

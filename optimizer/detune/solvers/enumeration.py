@@ -104,7 +104,9 @@ class _Tally:
         for group, part in enumerate(designs.part.T):
             for row in np.unique(first):
                 chosen = part[first == row]
-                self.counts[rule + row][group] += np.bincount(chosen, minlength=len(self.counts[rule + row][group]))
+                self.counts[rule + row][group] += np.bincount(
+                    chosen, minlength=len(self.counts[rule + row][group])
+                )
             order = np.argsort(reach, kind="stable")
             best = np.full(len(self.reach[group]), -1, dtype=np.int64)
             best[part[order]] = order

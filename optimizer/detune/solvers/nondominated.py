@@ -10,7 +10,9 @@ Floats = NDArray[np.float64]
 
 def as_minimised(objectives: dict[str, Floats], trade: tuple[str, ...]) -> Floats:
     """Return the traded objectives (D, k) with every one to be made small."""
-    return np.stack([-objectives[name] if LARGER_IS_BETTER[name] else objectives[name] for name in trade], axis=1)
+    return np.stack(
+        [-objectives[name] if LARGER_IS_BETTER[name] else objectives[name] for name in trade], axis=1
+    )
 
 
 def nondominated(values: Floats) -> NDArray[np.intp]:

@@ -1,7 +1,7 @@
 """A study: the brief and its catalogs, read together so that all faults are told at once."""
 
 import hashlib
-from collections.abc import Iterable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -11,7 +11,7 @@ from detune.brief.choice import CatalogSource
 from detune.brief.cross_check import cross_check
 from detune.brief.read import scan_data, to_fault
 from detune.ground.errors import BriefError, Fault
-from detune.ground.toml_lines import Positions, load
+from detune.ground.toml_lines import Positions, dotted, load
 from detune.parts.catalog import Catalog, read_catalog
 from detune.problem.build import faults_without_lines
 from detune.problem.candidates import find_candidates
@@ -37,7 +37,7 @@ def study_of_tables(data: Mapping[str, Any], positions: Positions, path: str | P
     """Return the study of tables loaded from `path`. Raises BriefError with every fault."""
     reading = scan_data(data, positions, path)
     faults = list(reading.faults)
-    catalogs = _catalogs(reading.catalogs, Path(path).parent, faults)
+    catalogs = _catalogs(reading.catalogs, Path(path).parent, faults, str(path), positions)
     # With a faulty catalog its parts are unknown, and nothing said about choices would be worth reading.
     if reading.brief is not None and len(catalogs) == len(reading.catalogs):
         found = find_candidates(reading.brief, catalogs).findings
@@ -51,7 +51,7 @@ def study_of_tables(data: Mapping[str, Any], positions: Positions, path: str | P
 def study_of(brief: Brief) -> Study:
     """Return the study of a brief made in Python; catalog files are taken relative to `brief.folder`."""
     faults: list[Fault] = []
-    catalogs = _catalogs(brief.catalogs, brief.folder, faults)
+    catalogs = _catalogs(brief.catalogs, brief.folder, faults, brief.file, None)
     findings = cross_check(brief)
     if len(catalogs) == len(brief.catalogs):
         findings = (*findings, *find_candidates(brief, catalogs).findings)
@@ -61,16 +61,35 @@ def study_of(brief: Brief) -> Study:
     return Study(brief, catalogs, _hashes(brief, None), brief.model_dump_json(indent=2))
 
 
-def _catalogs(sources: Iterable[CatalogSource], folder: Path, faults: list[Fault]) -> dict[str, Catalog]:
+def _catalogs(
+    sources: tuple[CatalogSource, ...],
+    folder: Path,
+    faults: list[Fault],
+    study: str,
+    positions: Positions | None,
+) -> dict[str, Catalog]:
     catalogs = {}
-    for source in sources:
+    for index, source in enumerate(sources):
         try:
             catalogs[source.name] = read_catalog(
                 folder / source.file, source.name, source.kind, source.headers, source.units, source.constants
             )
         except BriefError as error:
-            faults += error.faults
+            faults += [_told_at_its_name(fault, index, source, study, positions) for fault in error.faults]
     return catalogs
+
+
+def _told_at_its_name(
+    fault: Fault, index: int, source: CatalogSource, study: str, positions: Positions | None
+) -> Fault:
+    """Return a fault of a whole catalog (no such file, no such kind) at the place where the study names it."""
+    if fault.line is not None or fault.where not in ("file", "kind"):
+        return fault
+    path = ("catalog", index, fault.where)
+    found = source.file if fault.where == "file" else source.kind
+    expected = f"{fault.expected} ({fault.found})" if fault.where == "file" and fault.found else fault.expected
+    line = None if positions is None else positions.line(path)
+    return Fault(study, line, dotted(path), found, expected, fault.nearest)
 
 
 def _hashes(brief: Brief, study: Path | None) -> tuple[tuple[str, str], ...]:

@@ -27,12 +27,16 @@ def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Desig
         elif key in brief.groups and value in known:
             chosen[key] = known[value]
         elif key in brief.groups:
-            faults.append(Fault(SOURCE, None, key, value, "a part of the study's catalogs", nearest_name(value, known)))
+            faults.append(
+                Fault(SOURCE, None, key, value, "a part of the study's catalogs", nearest_name(value, known))
+            )
         elif key == "ballast":
             ballast = _ballast(brief, value, faults)
         else:
             names = (*brief.groups, "ballast")
-            faults.append(Fault(SOURCE, None, key, key, "one of " + ", ".join(names), nearest_name(key, names)))
+            faults.append(
+                Fault(SOURCE, None, key, key, "one of " + ", ".join(names), nearest_name(key, names))
+            )
     for group in brief.groups:
         if group not in chosen and not faults:
             faults.append(Fault(SOURCE, None, group, "", f'a part for group "{group}", as "{group}=part"'))
@@ -51,6 +55,8 @@ def _ballast(brief: Brief, value: str, faults: list[Fault]) -> float | None:
         faults.append(Fault(SOURCE, None, "ballast", error.found, error.expected))
         return None
     if mass < 0.0 or (brief.ballast is None and mass > 0.0):
-        faults.append(Fault(SOURCE, None, "ballast", value, "zero, or more where the study has a [ballast] table"))
+        faults.append(
+            Fault(SOURCE, None, "ballast", value, "zero, or more where the study has a [ballast] table")
+        )
         return None
     return mass

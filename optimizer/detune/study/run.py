@@ -42,7 +42,10 @@ class Result:
 
 
 def run_study(
-    study: Study, settings: Settings | None = None, compared: tuple[Design, ...] = (), solver: str = "enumeration"
+    study: Study,
+    settings: Settings | None = None,
+    compared: tuple[Design, ...] = (),
+    solver: str = "enumeration",
 ) -> Result:
     """Return the result of a study. Raises BriefError on a faulty brief and SolveError on a solver's fault."""
     started = time.perf_counter()

@@ -60,17 +60,27 @@ def read_key(data: Any, key: str) -> tuple[Key, ...]:
         step: Key = piece
         if piece.startswith("[") and piece.endswith("]") and piece[1:-1].isdigit():
             step = int(piece[1:-1]) - 1
-        there = (
-            isinstance(value, dict)
-            and step in value
-            or isinstance(value, list)
-            and isinstance(step, int)
-            and 0 <= step < len(value)
+        there = (isinstance(value, dict) and step in value) or (
+            isinstance(value, list) and isinstance(step, int) and 0 <= step < len(value)
         )
         if not there:
-            known = list(value) if isinstance(value, dict) else [f"[1] to [{len(value)}]"] if isinstance(value, list) else []
+            known = (
+                list(value)
+                if isinstance(value, dict)
+                else [f"[1] to [{len(value)}]"]
+                if isinstance(value, list)
+                else []
+            )
             raise BriefError(
-                [Fault("--set", None, key, piece, "a key of the study: " + (", ".join(map(str, known)) or "none below"))]
+                [
+                    Fault(
+                        "--set",
+                        None,
+                        key,
+                        piece,
+                        "a key of the study: " + (", ".join(map(str, known)) or "none below"),
+                    )
+                ]
             )
         value = value[step]
         place.append(step)

@@ -4,7 +4,7 @@ from typing import Literal
 
 import numpy as np
 
-from detune.brief.allowable.views import Responses, Places
+from detune.brief.allowable.views import Places, Responses
 from detune.brief.statement import Direction, Name
 
 LocalDirection = Literal["axial", "lateral", "resultant"]

@@ -16,9 +16,11 @@ from detune.brief.allowable.views import (
     StaticView,
 )
 from detune.brief.statement import AxisName, Direction, Name, Statement, listed_once, refuse, unit_direction
+from detune.physics.extremes import expected_extreme
 from detune.physics.response import ellipse_major
 
-Statistic = Literal["peak", "rms", "peak-to-peak"]
+Statistic = Literal["peak", "rms", "peak-to-peak", "3-sigma"]
+TONE_FACTOR: dict[Statistic, float] = {"peak": 1.0, "rms": 0.5**0.5, "peak-to-peak": 2.0, "3-sigma": 1.0}
 UnitLoad = tuple[Literal["force", "base"], Direction]
 
 
@@ -88,6 +90,14 @@ class HarmonicAllowable(Allowable):
         """Return a unit load to be used instead of the condition's forcing, or None."""
         return None
 
+    def weighted(self, observed: Complexes, frequency: Floats) -> Complexes:
+        """Return observed phasors (D, F, 3) times a frequency weighting at frequency (D, F) in Hz."""
+        return observed
+
+    def has_weighting(self) -> bool:
+        """Return whether `weighted` changes anything; such a limit is for tones and noise alone."""
+        return False
+
     def lowest_frequency(self) -> float:
         """Return the frequency (Hz) below which this allowable does not apply."""
         return 0.0
@@ -143,7 +153,8 @@ def tone_amplitude(phasor: Complexes, along: Direction | None, statistic: Statis
     """Return the amplitude (D, F) of one tone of a phasor vector (D, F, 3).
 
     Resultants: the peak is the major semi-axis of the ellipse the vector traces; the rms is the
-    root of the summed squares over two. Source: physics.response.ellipse_major.
+    root of the summed squares over two. A tone counts in a 3-sigma value with its peak.
+    Source: physics.response.ellipse_major.
     """
     if along is not None:
         peak: Floats = np.abs(phasor @ np.asarray(along))
@@ -151,12 +162,56 @@ def tone_amplitude(phasor: Complexes, along: Direction | None, statistic: Statis
         peak = np.sqrt(np.sum(phasor.real**2 + phasor.imag**2, axis=-1))
     else:
         peak = ellipse_major(phasor)
-    factor = {"peak": 1.0, "rms": 1.0 / np.sqrt(2.0), "peak-to-peak": 2.0}[statistic]
-    return factor * peak
+    return TONE_FACTOR[statistic] * peak
+
+
+def noise_amplitude(variance: Floats, rate_variance: Floats, duration: float, statistic: Statistic) -> Floats:
+    """Return what a Gaussian response of this variance (of the resultant, if of several axes) counts as.
+
+    rms; three times that; or the mean largest magnitude in the duration (both ways for peak-to-peak).
+    Source: physics.extremes (Davenport 1964).
+    """
+    rms = np.sqrt(variance)
+    if statistic == "rms":
+        return rms
+    if statistic == "3-sigma":
+        return 3.0 * rms
+    extreme = expected_extreme(variance, rate_variance, duration)
+    return extreme if statistic == "peak" else 2.0 * extreme
+
+
+def record_amplitude(values: Floats, along: Direction | None, statistic: Statistic) -> Floats:
+    """Return what a response over time (D, T, 3) counts as: its largest magnitude, or its rms over the record.
+
+    Between samples the largest magnitude is that of the parabola through the three highest neighbours.
+    """
+    signal = values @ np.asarray(along) if along is not None else np.sqrt(np.sum(values**2, axis=-1))
+    if statistic == "rms":
+        return np.sqrt(np.mean(signal**2, axis=-1))
+    if statistic == "peak-to-peak" and along is not None:
+        return parabolic_maximum(signal) + parabolic_maximum(-signal)
+    largest = np.maximum(parabolic_maximum(signal), parabolic_maximum(-signal))
+    return 2.0 * largest if statistic == "peak-to-peak" else largest
+
+
+def parabolic_maximum(signal: Floats) -> Floats:
+    """Return the largest value (D,) of signals (D, T), refined by the parabola through its neighbours."""
+    best = np.argmax(signal, axis=-1)
+    rows = np.arange(len(signal))
+    top = signal[rows, best]
+    inner = (best > 0) & (best < signal.shape[1] - 1)
+    left, right = (
+        signal[rows, np.maximum(best - 1, 0)],
+        signal[rows, np.minimum(best + 1, signal.shape[1] - 1)],
+    )
+    bend = left - 2.0 * top + right
+    curved = inner & (bend < 0.0)
+    rise = (right - left) ** 2 / (-8.0 * np.where(curved, bend, -1.0))
+    return np.where(curved, top + rise, top)
 
 
 def combine(first: Floats, second: Floats, statistic: Statistic) -> Floats:
-    """Return the amplitude of two tones together: linear sum of peaks, root of summed squares of rms."""
+    """Return two independent parts together: linear sum of peaks, root of summed squares of rms."""
     return np.hypot(first, second) if statistic == "rms" else first + second
 
 

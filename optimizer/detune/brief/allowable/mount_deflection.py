@@ -7,7 +7,7 @@ from pydantic import model_validator
 
 from detune.brief.allowable.at_station import LocalDirection, chosen_stations, local_along, local_part
 from detune.brief.allowable.base import HarmonicAllowable, above_zero
-from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
+from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import Direction, Length, Name, refuse
 
 
@@ -32,7 +32,11 @@ class MountDeflection(HarmonicAllowable):
         if not isinstance(self.limit, str):
             above_zero(self.limit, "a limit", at="limit")
         if self.part == "combined" and self.direction != "axial":
-            raise refuse(self.direction, 'the axial direction for "combined", which adds the static deflection', at="direction")
+            raise refuse(
+                self.direction,
+                'the axial direction for "combined", which adds the static deflection',
+                at="direction",
+            )
         return self
 
     def places(self, places: Places) -> tuple[str, ...]:

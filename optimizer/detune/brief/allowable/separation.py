@@ -3,7 +3,7 @@
 from typing import ClassVar, Literal
 
 import numpy as np
-from pydantic import model_validator
+from pydantic import field_validator, model_validator
 
 from detune.brief.allowable.base import ModeAllowable, above_zero, no_conditions
 from detune.brief.allowable.views import Floats, ModeView
@@ -24,11 +24,14 @@ class Separation(ModeAllowable):
     limit: Ratio
     exempt_amplification: Ratio | None = None
 
+    @field_validator("conditions")
+    @classmethod
+    def _every_steady_condition(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        return no_conditions(value, "separation counts every steady condition")
+
     @model_validator(mode="after")
     def _values(self) -> "Separation":
         above_zero(self.limit, "a limit", at="limit")
-        if self.conditions is not None:
-            no_conditions(self.conditions, "separation counts every steady condition")
         if self.exempt_amplification is not None:
             above_zero(self.exempt_amplification, "an amplification", at="exempt_amplification")
         return self

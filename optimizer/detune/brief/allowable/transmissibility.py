@@ -6,7 +6,7 @@ import numpy as np
 from pydantic import model_validator
 
 from detune.brief.allowable.base import HarmonicAllowable, UnitLoad, above_zero
-from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
+from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import AxisName, Direction, Frequency, Name, Ratio, refuse, unit_direction
 
 

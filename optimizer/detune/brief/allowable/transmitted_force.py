@@ -7,7 +7,7 @@ from pydantic import model_validator
 
 from detune.brief.allowable.at_station import LocalDirection, chosen_stations, local_along, local_part
 from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, read_direction
-from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
+from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import AxisName, Direction, Force, Name, describe, refuse
 
 LOCAL = ("axial", "lateral", "resultant")
@@ -43,7 +43,9 @@ class TransmittedForce(HarmonicAllowable):
                 )
         else:
             if self.stations is not None:
-                raise refuse("stations", f'no "stations" for the force through the {self.through}', at="stations")
+                raise refuse(
+                    "stations", f'no "stations" for the force through the {self.through}', at="stations"
+                )
             if self.direction in ("axial", "lateral"):
                 raise refuse(
                     self.direction,
@@ -72,12 +74,18 @@ class TransmittedForce(HarmonicAllowable):
 
     def observed(self, view: ResponseView, place: str) -> Responses:
         if self.through == "each-station":
-            return local_part(view.station_force(place), "lateral" if self.direction == "lateral" else "resultant")
+            return local_part(
+                view.station_force(place), "lateral" if self.direction == "lateral" else "resultant"
+            )
         return view.total_force(self.through)
 
     def bound(self, view: StaticView, place: str) -> Floats:
         return np.full(view.count, self.limit)
 
     def quantity(self) -> str:
-        where = {"each-station": "through one part", "floor": "total into the floor", "ground": "total into the ground"}
+        where = {
+            "each-station": "through one part",
+            "floor": "total into the floor",
+            "ground": "total into the ground",
+        }
         return f"transmitted force {where[self.through]}, {self.direction}, {self.measure}"

@@ -6,7 +6,7 @@ import numpy as np
 
 from detune.brief.allowable.at_station import chosen_stations
 from detune.brief.allowable.base import HarmonicAllowable
-from detune.brief.allowable.views import Responses, Floats, Places, StaticView, ResponseView
+from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import Direction, Name
 
 

@@ -86,5 +86,3 @@ class DesignView:
     cost: Floats
     added_mass: Floats
     part_numbers: Floats
-
-

@@ -1,6 +1,6 @@
 """Forcing kinds, one a file. A new kind is one file and one line in `KINDS`."""
 
-from detune.brief.forcing.base import Forcing, Tone
+from detune.brief.forcing.base import Forcing, Noise, Tone, Transient
 from detune.brief.forcing.base_motion import BaseMotion
 from detune.brief.forcing.harmonic_force import HarmonicForce
 from detune.brief.forcing.rotating_unbalance import RotatingUnbalance
@@ -15,4 +15,15 @@ KINDS: dict[str, type[Forcing]] = {
     "base-motion": BaseMotion,
 }
 
-__all__ = ["KINDS", "BaseMotion", "Forcing", "HarmonicForce", "RotatingUnbalance", "ShaftOrders", "SliderCrank", "Tone"]
+__all__ = [
+    "KINDS",
+    "BaseMotion",
+    "Forcing",
+    "HarmonicForce",
+    "Noise",
+    "RotatingUnbalance",
+    "ShaftOrders",
+    "SliderCrank",
+    "Tone",
+    "Transient",
+]

@@ -8,6 +8,9 @@ from pydantic import field_validator, model_validator
 
 from detune.brief.condition import SpeedRange, check_range
 from detune.brief.statement import Frequency, Name, Statement, listed_once, refuse
+from detune.physics.array_types import FloatArray
+from detune.physics.pulses import Pulse
+from detune.physics.spectra import PowerSpectralDensity
 
 Complex3 = tuple[complex, complex, complex]
 ZERO3: Complex3 = (0j, 0j, 0j)
@@ -37,8 +40,52 @@ class Tone:
     phase_known: bool = False
 
 
+@dataclass(frozen=True, eq=False)
+class Noise:
+    """Gaussian random forcing: a one-sided density over frequency, of a floor acceleration or of a force.
+
+    `spectrum` is in (m/s^2)^2/Hz along the unit direction `base`, or in N^2/Hz (N m for moments) of a load
+    whose pattern on body `on` at `position` is `force` and `moment` per unit. `duration` (s) is how long it
+    lasts, for the expected extreme. Noises are independent of each other: they add in power.
+    """
+
+    source: str
+    spectrum: PowerSpectralDensity
+    duration: float
+    on: str | None = None
+    position: tuple[float, float, float] = (0.0, 0.0, 0.0)
+    force: tuple[float, float, float] = (0.0, 0.0, 0.0)
+    moment: tuple[float, float, float] = (0.0, 0.0, 0.0)
+    base: tuple[float, float, float] | None = None
+
+
+@dataclass(frozen=True, eq=False)
+class Transient:
+    """A pulse or a record in time: floor acceleration (m/s^2) along the unit direction `base`, or a load.
+
+    Exactly one of `pulse` and `record` (T,), the latter `step` s apart and straight between, or neither
+    with a `velocity` (m/s): a jump of the floor's velocity along `base` at the start (drop, velocity step).
+    `weight_acts`: the machine comes from free fall, so its weight comes on at once.
+    """
+
+    source: str
+    pulse: Pulse | None = None
+    record: FloatArray | None = None
+    step: float = 0.0
+    velocity: float = 0.0
+    weight_acts: bool = False
+    on: str | None = None
+    position: tuple[float, float, float] = (0.0, 0.0, 0.0)
+    force: tuple[float, float, float] = (0.0, 0.0, 0.0)
+    moment: tuple[float, float, float] = (0.0, 0.0, 0.0)
+    base: tuple[float, float, float] | None = None
+
+
 class Forcing(Statement):
-    """Base of every forcing kind. `conditions` left out means every condition."""
+    """Base of every forcing kind. `conditions` left out means every condition.
+
+    A kind gives tones, noises or transients, whichever it is made of.
+    """
 
     kind: str
     name: Name
@@ -53,7 +100,15 @@ class Forcing(Statement):
 
     def tones(self, speeds: Mapping[str, SpeedRange]) -> tuple[Tone, ...]:
         """Return the tones of this forcing in a condition whose shafts turn at `speeds` (Hz)."""
-        raise NotImplementedError(type(self).__name__)
+        return ()
+
+    def noises(self) -> tuple[Noise, ...]:
+        """Return the random parts of this forcing."""
+        return ()
+
+    def transients(self) -> tuple[Transient, ...]:
+        """Return the records in time of this forcing."""
+        return ()
 
     def shaft_needed(self) -> str | None:
         """Return the shaft this forcing follows, or None."""

@@ -38,7 +38,9 @@ class BaseMotion(SteadyToneForcing):
     @model_validator(mode="after")
     def _one_of_three(self) -> "BaseMotion":
         unit_direction(self.direction, at="direction")
-        stated = [key for key in ("displacement", "velocity", "acceleration") if getattr(self, key) is not None]
+        stated = [
+            key for key in ("displacement", "velocity", "acceleration") if getattr(self, key) is not None
+        ]
         if len(stated) != 1:
             raise refuse(
                 " and ".join(stated) or "no amplitude",

@@ -52,7 +52,10 @@ class RotatingUnbalance(ShaftForcing):
         by_grade = [self.grade, self.rotor_mass, self.grade_speed]
         if self.unbalance is not None:
             if any(value is not None for value in by_grade):
-                raise refuse("unbalance and grade", 'either "unbalance", or "grade" with "rotor_mass" and "grade_speed"')
+                raise refuse(
+                    "unbalance and grade",
+                    'either "unbalance", or "grade" with "rotor_mass" and "grade_speed"',
+                )
             positive(self.unbalance, "an unbalance", at="unbalance")
             return self
         if any(value is None for value in by_grade):

@@ -8,7 +8,17 @@ from pydantic import field_validator, model_validator
 from detune.brief.condition import SpeedRange
 from detune.brief.forcing.base import ShaftForcing, Tone
 from detune.brief.forcing.harmonic_force import phasor
-from detune.brief.statement import Angle, ForceVector, MomentVector, Name, Position, Ratio, Statement, positive, refuse
+from detune.brief.statement import (
+    Angle,
+    ForceVector,
+    MomentVector,
+    Name,
+    Position,
+    Ratio,
+    Statement,
+    positive,
+    refuse,
+)
 
 
 class Order(Statement):

@@ -57,7 +57,9 @@ class SliderCrank(ShaftForcing):
         positive(self.reciprocating_mass, "a reciprocating mass", at="reciprocating_mass")
         positive(self.crank_radius, "a crank radius", at="crank_radius")
         if self.rod_length <= self.crank_radius:
-            raise refuse(f"rod_length {self.rod_length:g} m", "a rod longer than the crank radius", at="rod_length")
+            raise refuse(
+                f"rod_length {self.rod_length:g} m", "a rod longer than the crank radius", at="rod_length"
+            )
         if not self.cylinders:
             raise refuse("[]", "at least one cylinder", at="cylinders")
         for cylinder in self.cylinders:

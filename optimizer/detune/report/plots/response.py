@@ -1,0 +1,176 @@
+"""Response against its limit over speed: one small plot for each quantity, at its least margin."""
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from detune.ground.units import convert
+from detune.report.plots.style import BLACK, BLUE, LIGHT, VERMILION, Floats, Titles, revolutions_above, shorten
+from detune.report.response_data import ResponseCurve, response_curves
+from detune.report.words import margin_text, unit_of
+from detune.study.run import Result
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
+
+TITLE = "Responses against limits"
+SHOWN = 12
+COLUMNS = 2
+PANEL_HEIGHT = 2.35
+
+
+@dataclass(frozen=True)
+class Panel:
+    """One quantity in one condition at the place with the least margin.
+
+    `speed` (F,) in Hz; `value` (F,), `limit` and `peak` in `unit`; judged from `low` to `high` Hz;
+    `at` Hz is where the largest value inside is, `places` how many places were judged.
+    """
+
+    title: str
+    source: str
+    is_shaft: bool
+    unit: str
+    speed: Floats
+    value: Floats
+    limit: float
+    low: float
+    high: float
+    at: float
+    peak: float
+    margin: float
+    places: int
+
+
+@dataclass(frozen=True)
+class ResponseData:
+    """Panels by ascending margin; `left_out` is how many with larger margins are not shown."""
+
+    subject: str
+    panels: tuple[Panel, ...]
+    left_out: int
+
+
+def data(result: Result) -> ResponseData | None:
+    """Return the numbers of the plot, None where nothing vibrates or no design was assessed."""
+    subject = result.answer if result.answer is not None else result.closest
+    if subject is None:
+        return None
+    groups: dict[tuple[str, ...], list[ResponseCurve]] = {}
+    for curve in response_curves(result.study.brief, subject):
+        key = (curve.row.kind, curve.row.quantity, curve.row.condition, curve.source, f"{curve.low} {curve.high}")
+        groups.setdefault(key, []).append(curve)
+    tightest = [
+        (min(curves, key=lambda c: c.row.margin), len({c.row.place for c in curves})) for curves in groups.values()
+    ]
+    ranked = sorted(tightest, key=lambda item: item[0].row.margin)
+    if not ranked:
+        return None
+    return ResponseData(
+        subject="the answer" if result.answer is not None else "the closest design, which does not meet the brief",
+        panels=tuple(_panel(curve, places) for curve, places in ranked[:SHOWN]),
+        left_out=max(0, len(ranked) - SHOWN),
+    )
+
+
+def _panel(curve: ResponseCurve, places: int) -> Panel:
+    row = curve.row
+    unit = unit_of(curve.limit, row.unit)
+
+    def shown(value: float) -> float:
+        return convert(value, row.unit, unit) if unit else value
+
+    scale = shown(1.0)
+    inside = np.flatnonzero(curve.inside)
+    top = inside[curve.value[inside].argmax()]
+    # The assessor's own place of the worst, where it belongs to this source.
+    at = row.frequency if row.frequency is not None and curve.low <= row.frequency <= curve.high else None
+    is_own = at is not None and row.value >= curve.value[top] * (1.0 - 1e-9)
+    return Panel(
+        title=f"{row.quantity}\nat {row.place}, {row.condition}",
+        source=curve.source,
+        is_shaft=curve.is_shaft,
+        unit=unit,
+        speed=curve.speed,
+        value=curve.value * scale,
+        limit=shown(curve.limit),
+        low=curve.low,
+        high=curve.high,
+        at=float(at if is_own and at is not None else curve.speed[top]),
+        peak=shown(row.value if is_own else float(curve.value[top])),
+        margin=row.margin,
+        places=places,
+    )
+
+
+def caption(data: ResponseData) -> str:
+    """Return what the plot shows, in words."""
+    text = (
+        f"Responses of {data.subject}, each at the place with the least margin. The dashed line is the limit; the "
+        "shaded band is the range of speed or frequency over which it is judged, the dot the largest value there "
+        "(found over the continuous range, not on a grid). The thin line outside the band continues the same forcing "
+        "to show where the resonances lie; it is not judged."
+    )
+    return f"{text} {data.left_out} quantities with larger margins are in responses.csv." if data.left_out else text
+
+
+def size(data: ResponseData) -> tuple[float, float]:
+    """Return width and height in inches."""
+    return 8.6, PANEL_HEIGHT * -(-len(data.panels) // COLUMNS) + 0.25
+
+
+def draw(data: ResponseData, figure: "Figure") -> Titles:
+    """Draw the panels."""
+    width, height = size(data)
+    rows = -(-len(data.panels) // COLUMNS)
+    for index, panel in enumerate(data.panels):
+        row, column = divmod(index, COLUMNS)
+        left = (0.62 + column * (width / COLUMNS)) / width
+        bottom = (height - (row + 1) * PANEL_HEIGHT + 0.33) / height
+        ax = figure.add_axes((left, bottom, (width / COLUMNS - 0.85) / width, (PANEL_HEIGHT - 1.08) / height))
+        _draw_panel(ax, panel)
+    assert rows > 0
+    return {}
+
+
+def _draw_panel(ax: "Axes", panel: Panel) -> None:
+    if panel.high > panel.low:
+        ax.axvspan(panel.low, panel.high, color=LIGHT, linewidth=0, zorder=0)
+    else:
+        ax.axvline(panel.low, color="#BBBBBB", linewidth=3.0, zorder=0)
+    ax.plot(panel.speed, panel.value, color=BLUE, linewidth=0.6, alpha=0.8, zorder=2)
+    inside = (panel.speed >= panel.low) & (panel.speed <= panel.high)
+    ax.plot(panel.speed[inside], panel.value[inside], color=BLUE, linewidth=1.8, zorder=3)
+    ax.axhline(panel.limit, color=BLACK, linewidth=1.1, linestyle=(0, (5, 2)), zorder=4)
+    ax.plot([panel.at], [panel.peak], marker="o", color=VERMILION, markersize=5.5, zorder=5)
+    ax.set_yscale("log")
+    ax.set_xscale("linear")
+    ax.set_xlim(panel.speed[0], panel.speed[-1])
+    positive = panel.value[panel.value > 0.0]
+    floor = 0.3 * min(panel.limit, panel.peak)
+    if len(positive):
+        floor = max(min(floor, float(positive.min())), 1e-3 * panel.limit, 0.02 * panel.peak)
+    ax.set_ylim(0.7 * floor, 2.2 * max(panel.limit, panel.peak, min(float(panel.value.max()), 30.0 * panel.limit)))
+    _plain_ticks(ax)
+    ax.set_ylabel(f"[{panel.unit or '-'}]", labelpad=2)
+    if panel.is_shaft:
+        revolutions_above(ax, label=False)
+    axis = f"{panel.source}: speed [Hz], on top [rev/min]" if panel.is_shaft else f"{panel.source} [Hz]"
+    ax.set_xlabel(shorten(axis, 62), fontsize=7.5, labelpad=1)
+    first, second = panel.title.split("\n")
+    where = f", least of {panel.places}" if panel.places > 1 else ""
+    title = f"{shorten(first, 58)}\n{shorten(second + where, 44)}; margin {margin_text(panel.margin)}"
+    ax.set_title(title, loc="left", fontsize=8.0, pad=5, linespacing=1.25)
+
+
+def _plain_ticks(ax: "Axes") -> None:
+    """Numbers as people write them instead of powers of ten."""
+    from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
+
+    low, high = ax.get_ylim()
+    steps = (1.0, 2.0, 5.0) if high / low < 60.0 else (1.0,)
+    ax.yaxis.set_major_locator(LogLocator(base=10.0, subs=steps, numticks=12))
+    ax.yaxis.set_minor_formatter(NullFormatter())
+    ax.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))

@@ -1,0 +1,324 @@
+"""The map of stiffness against damping: what the limits leave, with every part that may be chosen as a dot."""
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from detune.brief.allowable import LoadRange
+from detune.brief.brief import Brief
+from detune.parts.kinds.mount import Mount, mount_arrays
+from detune.problem.build import Problem
+from detune.problem.requirement import Requirement
+from detune.problem.stages import stages
+from detune.report.plots.style import BLACK, GREY, LINES, VERMILION, Floats, Titles, shorten
+from detune.response.assessment import Assessment
+from detune.response.design import Design
+from detune.response.designs import Designs
+from detune.study.run import Result
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
+
+TITLE = "Map of stiffness against damping"
+STIFFNESSES = 34
+DAMPINGS = 15
+LINES_SHOWN = 7
+LEAST_LOSS = 1e-3
+TWO_PI = 2.0 * np.pi
+
+
+@dataclass(frozen=True)
+class LimitField:
+    """One requirement (the least over its places) over the map: `margin` (DAMPINGS, STIFFNESSES)."""
+
+    label: str
+    margin: Floats
+
+
+@dataclass(frozen=True)
+class PartDot:
+    """A part as if it stood at every station: total axial stiffness N/m, loss factor, and the groups that may take it."""
+
+    part: str
+    stiffness: float
+    loss_factor: float
+    groups: tuple[str, ...]
+    in_answer: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class MapData:
+    """The map round one design.
+
+    `stiffness` (S,) N/m and `loss_factor` (L,) span it; `fields` are the requirements whose limits cross
+    it, the one that leaves least first; `always_failed` are those missed all over it. `here` is the
+    design itself: the sum of its parts' axial stiffness and their loss factor weighted by it.
+    """
+
+    subject: str
+    stiffness: Floats
+    loss_factor: Floats
+    fields: tuple[LimitField, ...]
+    always_failed: tuple[str, ...]
+    parts: tuple[PartDot, ...]
+    here: tuple[float, float]
+    ballast: float
+    left_out: int
+
+    @property
+    def least(self) -> Floats:
+        """Least margin (L, S) of all requirements that cross the map or are missed all over it."""
+        if self.always_failed:
+            return np.full((len(self.loss_factor), len(self.stiffness)), -1.0)
+        if not self.fields:
+            return np.full((len(self.loss_factor), len(self.stiffness)), np.inf)
+        return np.asarray(np.min([field.margin for field in self.fields], axis=0))
+
+
+def data(result: Result) -> MapData | None:
+    """Return the numbers of the plot, None where no design was assessed."""
+    subject = result.answer if result.answer is not None else result.closest
+    if subject is None:
+        return None
+    brief, problem = result.study.brief, result.problem
+    omega = _vertical_omega(brief, subject)
+    parts = _parts(brief, problem, subject, omega)
+    here = _design_point(brief, subject.design, omega)
+    stiffness, loss = _axes_of(parts, here)
+    fields, failed, left_out = _fields(brief, problem, subject.design, stiffness, loss)
+    return MapData(
+        subject="the answer" if result.answer is not None else "the closest design",
+        stiffness=stiffness,
+        loss_factor=loss,
+        fields=fields,
+        always_failed=failed,
+        parts=parts,
+        here=here,
+        ballast=subject.design.ballast,
+        left_out=left_out,
+    )
+
+
+def pieces_in_group(brief: Brief, group: str) -> int:
+    """Return how many parts a group takes, those in parallel counted each."""
+    return sum(station.parallel for station in brief.stations if station.group == group)
+
+
+def equivalent_loss_factor(mount: Mount, omega: float) -> float:
+    """Return the axial loss factor of a part at omega (rad/s): eta + c omega / k."""
+    return mount.loss_factor[2] + mount.viscous[2] * omega / mount.stiffness_dynamic[2]
+
+
+def _vertical_omega(brief: Brief, subject: Assessment) -> float:
+    """Angular frequency of the mode that moves the most mass vertically, at which viscous damping is compared."""
+    share = [mode.participation[2] for mode in subject.modes]
+    return TWO_PI * subject.modes[int(np.argmax(share))].frequency
+
+
+def _design_point(brief: Brief, design: Design, omega: float) -> tuple[float, float]:
+    total = lost = 0.0
+    for group, mount in zip(design.groups, design.mounts, strict=True):
+        stiffness = pieces_in_group(brief, group) * mount.stiffness_dynamic[2]
+        total += stiffness
+        lost += stiffness * equivalent_loss_factor(mount, omega)
+    return total, lost / total
+
+
+def _parts(brief: Brief, problem: Problem, subject: Assessment, omega: float) -> tuple[PartDot, ...]:
+    pieces = sum(station.parallel for station in brief.stations)
+    groups: dict[Mount, list[str]] = {}
+    for group in problem.model.groups:
+        for mount in group.mounts:
+            groups.setdefault(mount, []).append(group.name)
+    chosen: dict[Mount, list[str]] = {}
+    for name, mount in zip(subject.design.groups, subject.design.mounts, strict=True):
+        chosen.setdefault(mount, []).append(name)
+        groups.setdefault(mount, [])
+    return tuple(
+        PartDot(
+            part=mount.part,
+            stiffness=pieces * mount.stiffness_dynamic[2],
+            loss_factor=equivalent_loss_factor(mount, omega),
+            groups=tuple(names),
+            in_answer=tuple(chosen.get(mount, ())),
+        )
+        for mount, names in groups.items()
+    )
+
+
+def _axes_of(parts: tuple[PartDot, ...], here: tuple[float, float]) -> tuple[Floats, Floats]:
+    stiffness = np.array([part.stiffness for part in parts] + [here[0]])
+    loss = np.maximum(np.array([part.loss_factor for part in parts] + [here[1]]), LEAST_LOSS)
+    lows = (min(stiffness.min(), 0.5 * here[0]) / 1.15, max(loss.min() / 1.4, 0.7 * LEAST_LOSS))
+    highs = (max(stiffness.max(), 2.0 * here[0]) * 1.15, loss.max() * 1.4)
+    return np.geomspace(lows[0], highs[0], STIFFNESSES), np.geomspace(lows[1], highs[1], DAMPINGS)
+
+
+def scaled_mount(mount: Mount, axial: float, loss: float) -> Mount:
+    """Return a part scaled to an axial dynamic stiffness (N/m) and a loss factor on all axes.
+
+    Its lateral and static stiffness keep their ratios to the axial dynamic one; its load range is lifted.
+    """
+    factor = axial / mount.stiffness_dynamic[2]
+
+    def scale(axes: tuple[float | None, float | None, float]) -> tuple[float, float, float]:
+        return (factor * (axes[0] or 0.0), factor * (axes[1] or 0.0), factor * axes[2])
+
+    return replace(
+        mount,
+        stiffness_static=scale(mount.stiffness_static),
+        stiffness_dynamic=scale(mount.stiffness_dynamic),
+        loss_factor=(loss, loss, loss),
+        viscous=(0.0, 0.0, 0.0),
+        load_min=0.0,
+        load_max=np.inf,
+    )
+
+
+def _fields(
+    brief: Brief, problem: Problem, design: Design, stiffness: Floats, loss: Floats
+) -> tuple[tuple[LimitField, ...], tuple[str, ...], int]:
+    """Evaluate every requirement on the scaled machine at all nodes of the map, as a batch of designs."""
+    total = sum(station.parallel for station in brief.stations)
+    nodes = [(k / total, eta) for eta in loss.tolist() for k in stiffness.tolist()]
+    scaled = [tuple(scaled_mount(mount, k, eta) for k, eta in nodes) for mount in design.mounts]
+    groups = tuple(
+        replace(group, mounts=mounts, arrays=mount_arrays(mounts))
+        for group, mounts in zip(problem.model.groups, scaled, strict=True)
+    )
+    ballast = np.array([design.ballast])
+    step = int(np.abs(problem.model.ballast_mass - ballast).argmin())
+    numbers = np.arange(len(nodes), dtype=np.intp)
+    designs = Designs(np.repeat(numbers[:, None], len(groups), axis=1), np.full(len(nodes), step, dtype=np.intp))
+    changed = replace(problem, model=replace(problem.model, groups=groups), totals=())
+    found: dict[str, Floats] = {}
+    for stage in stages(changed):
+        if stage.bound:
+            continue
+        margins = np.concatenate(
+            [stage.margins(designs.take(numbers[i : i + stage.size])) for i in range(0, len(nodes), stage.size)], axis=1
+        )
+        for requirement, margin in zip(stage.requirements, margins, strict=True):
+            if isinstance(requirement.allowable, LoadRange):
+                continue
+            label = _label(requirement)
+            worst = np.where(np.isnan(margin), -1.0, margin)
+            found[label] = np.minimum(found[label], worst) if label in found else worst
+    shape = (len(loss), len(stiffness))
+    failed = tuple(label for label, margin in found.items() if bool((margin < 0.0).all()))
+    crossing = [
+        LimitField(label, margin.reshape(shape))
+        for label, margin in found.items()
+        if bool((margin < 0.0).any()) and bool((margin >= 0.0).any())
+    ]
+    crossing.sort(key=lambda field: int((field.margin >= 0.0).sum()))
+    return tuple(crossing), failed, 0
+
+
+def _label(requirement: Requirement) -> str:
+    return f"{requirement.allowable.quantity()} ({requirement.condition})"
+
+
+def caption(data: MapData) -> str:
+    """Return what the plot shows, in words: above all what is scaled."""
+    text = (
+        "What is scaled: every station carries one part of the same axial dynamic stiffness (the axis is the sum over "
+        "all parts) and the same loss factor on all axes; the ratios of lateral and of static to axial dynamic "
+        f"stiffness stay as in the parts of {data.subject} of the same group, the ballast at {data.ballast:g} kg, part "
+        "deflection limits as listed; load ranges are lifted. Lines: where a requirement, at its worst place, equals "
+        "its limit. White: all of them met; shaded: at least one missed. Dots: each part that may be "
+        "chosen, as if used at every station, viscous damping read as a loss factor at the vertical natural frequency. "
+        f"A real design with different parts in its groups lies between its dots, and a dot has its own ratios; the "
+        f"diamond is {data.subject} as it is. The map shows which way to go; only the margins table judges."
+    )
+    if data.always_failed:
+        text += " Missed everywhere on this map: " + "; ".join(data.always_failed) + "."
+    if len(data.fields) > LINES_SHOWN:
+        text += f" {len(data.fields) - LINES_SHOWN} further limit lines, which leave more, are not named; all are in the shading."
+    return text
+
+
+def size(data: MapData) -> tuple[float, float]:
+    """Return width and height in inches."""
+    named = min(len(data.fields), LINES_SHOWN)
+    return 8.6, 5.0 + 0.19 * (named + 2)
+
+
+def draw(data: MapData, figure: "Figure") -> Titles:
+    """Draw the map and return the hover texts of its dots."""
+    width, height = size(data)
+    ax = figure.add_axes((0.7 / width, (height - 4.85) / height, (width - 0.95) / width, 4.7 / height))
+    x, y = data.stiffness / 1e3, data.loss_factor
+    least = np.clip(data.least, -1.0, 1.0)
+    ax.contourf(x, y, least, levels=[-2.0, 0.0], colors=["#EDEDED"], zorder=0)
+    handles = _limit_lines(ax, data)
+    titles = _dots(ax, data)
+    ax.set_xscale("log")
+    ax.set_yscale("log")
+    ax.set_xlim(x[0], x[-1])
+    ax.set_ylim(y[0], y[-1])
+    _plain(ax)
+    ax.set_xlabel("total axial dynamic stiffness of all parts [N/mm]")
+    ax.set_ylabel("loss factor [-]")
+    figure.legend(
+        handles=handles, loc="lower left", bbox_to_anchor=(0.5 / width, 0.0), ncols=1, fontsize=7.5, frameon=False,
+        handlelength=4.0, labelspacing=0.25,
+    )  # fmt: skip
+    return titles
+
+
+def _limit_lines(ax: "Axes", data: MapData) -> list[object]:
+    from matplotlib.lines import Line2D
+
+    handles: list[object] = []
+    x, y = data.stiffness / 1e3, data.loss_factor
+    for index, field in enumerate(data.fields[:LINES_SHOWN]):
+        colour, style = LINES[index % len(LINES)]
+        ax.contour(
+            x, y, np.clip(field.margin, -1.0, 1.0), levels=[0.0], colors=[colour], linewidths=1.6,
+            linestyles=[style], zorder=3,
+        )  # fmt: skip
+        handles.append(Line2D([], [], color=colour, linestyle=style, linewidth=1.6, label=shorten(field.label, 110)))
+    handles.append(
+        Line2D([], [], color=VERMILION, marker="D", markersize=6, linestyle="none", label=f"{data.subject}")
+    )
+    handles.append(Line2D([], [], color=GREY, marker="o", markersize=4, linestyle="none", label="a part, as if at every station"))
+    return handles
+
+
+def _dots(ax: "Axes", data: MapData) -> Titles:
+    titles: Titles = {}
+    for gid, chosen in (("parts", False), ("chosen", True)):
+        dots = [part for part in data.parts if bool(part.in_answer) is chosen]
+        if not dots:
+            continue
+        x = [part.stiffness / 1e3 for part in dots]
+        y = [max(part.loss_factor, LEAST_LOSS) for part in dots]
+        if chosen:
+            drawn = ax.scatter(x, y, s=70, facecolors="none", edgecolors=BLACK, linewidths=1.4, zorder=6)
+            for part, a, b in zip(dots, x, y, strict=True):
+                ax.annotate(
+                    f"{part.part} ({', '.join(part.in_answer)})", (a, b), xytext=(8, 7), textcoords="offset points",
+                    fontsize=8, zorder=7, bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.8},
+                )  # fmt: skip
+        else:
+            drawn = ax.scatter(x, y, s=13, color=GREY, linewidths=0, zorder=4)
+        drawn.set_gid(gid)
+        titles[gid] = tuple(
+            f"{p.part}: {p.stiffness / 1e3:.4g} N/mm in total, loss factor {p.loss_factor:.3g}; "
+            f"may be chosen for {', '.join(p.groups) or 'no group'}"
+            for p in dots
+        )
+    ax.plot([data.here[0] / 1e3], [data.here[1]], marker="D", color=VERMILION, markersize=6, zorder=5)
+    return titles
+
+
+def _plain(ax: "Axes") -> None:
+    from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
+
+    for axis in (ax.xaxis, ax.yaxis):
+        axis.set_major_locator(LogLocator(base=10.0, subs=(1.0, 2.0, 5.0), numticks=24))
+        axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+        axis.set_minor_formatter(NullFormatter())

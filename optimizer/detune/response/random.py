@@ -1,0 +1,89 @@
+"""Random part of the responses of a batch of designs."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.allowable import HarmonicAllowable
+from detune.brief.allowable.base import combine, noise_amplitude
+from detune.brief.brief import Brief, body_of
+from detune.brief.forcing import Noise
+from detune.physics.random_response import variance
+from detune.response.assemble import Dynamic
+from detune.response.designs import Designs
+from detune.response.loads import Load
+from detune.response.model import Model
+from detune.response.modes import ModeBatch
+from detune.response.views import ToneBatch
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+Pairs = tuple[tuple[HarmonicAllowable, str], ...]
+TWO_PI = 2.0 * np.pi
+
+
+@dataclass(frozen=True, eq=False)
+class NoiseLoad:
+    """A noise as a load of unit density: `load` per unit of acceleration or force at every frequency."""
+
+    noise: Noise
+    load: Load
+
+
+def noise_load(brief: Brief, model: Model, noise: Noise) -> NoiseLoad:
+    """Return the unit load of a noise. A floor acceleration a is the displacement -a / omega^2."""
+    if noise.base is not None:
+        unit = np.zeros(model.frame.count, dtype=complex)
+        return NoiseLoad(noise, Load(noise.source, 1.0, unit, -np.array(noise.base, dtype=complex), -2))
+    body = body_of(brief, noise.on)
+    vector = model.frame.motion_rows(body, np.array(noise.position)).T @ np.array(noise.force)
+    vector = vector + model.frame.rotation_rows(body).T @ np.array(noise.moment)
+    return NoiseLoad(noise, Load(noise.source, 1.0, vector.astype(complex), None, 0))
+
+
+def noise_values(
+    model: Model,
+    designs: Designs,
+    dynamic: Dynamic,
+    modal: ModeBatch,
+    pairs: Pairs,
+    noises: tuple[NoiseLoad, ...],
+) -> Floats:
+    """Return what the noises together count as in each row (R, D): variances of independent noises add."""
+    total = np.zeros((len(pairs), designs.count))
+    by_duration: dict[float, Floats] = {}
+    for each in noises:
+        found = noise_variances(model, designs, dynamic, modal, pairs, each)
+        earlier = by_duration.get(each.noise.duration)
+        by_duration[each.noise.duration] = found if earlier is None else earlier + found
+    for duration, (moved, rates) in ((d, (v[0], v[1])) for d, v in by_duration.items()):
+        for index, (allowable, _) in enumerate(pairs):
+            part = noise_amplitude(moved[index], rates[index], duration, allowable.statistic())
+            total[index] = combine(total[index], part, allowable.statistic())
+    return total
+
+
+def noise_variances(
+    model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, pairs: Pairs, each: NoiseLoad
+) -> Floats:
+    """Return the variance of each row and of its rate (2, R, D); of a resultant, the sum over its axes."""
+
+    def transfer(omega: Floats) -> Complexes:
+        view = ToneBatch(model, designs, dynamic, (each.load,), omega)
+        rows = []
+        for allowable, place in pairs:
+            observed = allowable.weighted(allowable.observed(view, place), omega / TWO_PI)
+            along = allowable.along()
+            axes = observed @ np.asarray(along)[:, None] if along is not None else observed
+            rows += [axes[..., axis] for axis in range(axes.shape[-1])]
+        moved = np.stack(rows)
+        return np.concatenate([moved, 1j * omega * moved])
+
+    centre = TWO_PI * modal.frequency
+    width = np.maximum(0.5 * modal.loss_factor, 1e-9) * centre
+    parts = variance(transfer, each.noise.spectrum, centre, width)
+    count = len(parts) // 2
+    sizes = [1 if allowable.along() is not None else 3 for allowable, _ in pairs]
+    starts = np.cumsum([0, *sizes[:-1]])
+    return np.stack([np.add.reduceat(half, starts, axis=0) for half in (parts[:count], parts[count:])])

@@ -1,0 +1,193 @@
+"""The convex forms against exact equations on random systems: never unsafe, global where they say so."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import pytest
+
+from detune.sizing.convex_selection import selection_bound, soft_side_one_axis
+from detune.sizing.lmi import (
+    DampingFreeLimit,
+    StiffnessModel,
+    cheapest,
+    damping_free_bound,
+    greatest_separation,
+)
+from detune.sizing.one_axis import solve_one_axis
+from detune.sizing.statement import Objective, OneAxisProblem, ResponseLimit, SizingError
+
+
+def random_model(seed: int, n: int = 4, p: int = 3, ballast: int = 0) -> StiffnessModel:
+    rng = np.random.default_rng(seed)
+    root = rng.normal(size=(n, n))
+    mass = 100 * (root @ root.T / n + np.eye(n))
+    patterns = []
+    for _ in range(p):
+        b = rng.normal(size=(n, n))
+        patterns.append(b.T @ b / n)
+    extra = np.zeros((ballast, n, n))
+    for j in range(ballast):
+        v = rng.normal(size=n)
+        extra[j] = np.outer(v, v)
+    lower = 1e4 * rng.uniform(1, 3, p)
+    return StiffnessModel(
+        mass, np.array(patterns), np.zeros((n, n)), lower, lower * 30, extra, np.full(ballast, 40.0)
+    )
+
+
+@pytest.mark.parametrize("seed", range(4))
+def test_greatest_separation_on_either_side_is_global(seed):
+    model = random_model(seed)
+    rng = np.random.default_rng(seed)
+    sample = rng.uniform(model.lower, model.upper, size=(3000, 3))
+    none = np.zeros(0)
+    above = greatest_separation(model, 5.0, "above")
+    below = greatest_separation(model, 60.0, "below")
+    assert above.worth == below.worth == "global"
+    assert above.value == pytest.approx(above.bound, abs=1e-6)
+    assert below.value == pytest.approx(below.bound, abs=1e-6)
+    exact = np.array([model.frequencies(k, none) for k in sample])
+    assert above.value >= (exact[:, 0] / 5.0 - 1).max() - 1e-7
+    assert below.value >= (1 - exact[:, -1] / 60.0).max() - 1e-7
+    # Stiffness only raises frequencies (Rayleigh), so the two optima are the two corners.
+    assert above.value == pytest.approx(model.frequencies(model.upper, none)[0] / 5.0 - 1, abs=1e-6)
+    assert below.value == pytest.approx(1 - model.frequencies(model.lower, none)[-1] / 60.0, abs=1e-6)
+
+
+def test_two_freedom_budget_by_hand():
+    # Two masses of 10 kg each on a spring of its own: all modes above 3 Hz costs k = 10 (2 pi 3)^2 at each.
+    unit = np.eye(2)
+    model = StiffnessModel(
+        10 * unit,
+        np.array([np.diag([1.0, 0.0]), np.diag([0.0, 1.0])]),
+        np.zeros((2, 2)),
+        np.full(2, 1.0),
+        np.full(2, 1e5),
+        np.zeros((0, 2, 2)),
+        np.zeros(0),
+    )
+    answer = cheapest(model, np.array([1.0, 2.0]), np.zeros(0), modes_above=3.0)
+    need = 10 * (2 * math.pi * 3) ** 2
+    assert answer.worth == "global"
+    assert answer.stiffness == pytest.approx([need, need], rel=1e-5)
+    assert answer.value == pytest.approx(3 * need, rel=1e-5)
+
+
+def test_ballast_widens_the_soft_side_by_bisection():
+    model = random_model(7, ballast=1)
+    answer = greatest_separation(model, 60.0, "below")
+    rng = np.random.default_rng(0)
+    best = max(
+        1 - model.frequencies(rng.uniform(model.lower, model.upper), rng.uniform(0, 40, 1))[-1] / 60.0
+        for _ in range(2000)
+    )
+    assert answer.value >= best - 1e-6
+    assert answer.value == pytest.approx(answer.bound, abs=1e-5)
+
+
+def soft_limit(model: StiffnessModel, seed: int, slack: float) -> DampingFreeLimit:
+    rng = np.random.default_rng(seed + 100)
+    n = model.mass.shape[0]
+    top = model.frequencies(model.lower, np.zeros(model.ballast_most.size))[-1]
+    row, load = rng.normal(size=n), rng.normal(size=n) * 50 + 0j
+    limit = DampingFreeLimit("x", 1.6 * top, row, load, 1.0)
+    bound = damping_free_bound(model, limit, model.lower, np.zeros(model.ballast_most.size))
+    return DampingFreeLimit("x", 1.6 * top, row, load, bound * slack)
+
+
+def test_limits_that_hold_whatever_the_damping_are_never_unsafe():
+    conservative = []
+    for seed in range(8):
+        model = random_model(seed)
+        limit = soft_limit(model, seed, 1.3)
+        # The stiffest (most expensive to leave soft) design the restriction allows.
+        answer = cheapest(model, np.array([-1.0, -1.0, -1.0]), np.zeros(0), limits=(limit,))
+        assert answer.worth == "safe restriction"
+        assert answer.status == "solved"
+        assert damping_free_bound(model, limit, answer.stiffness, answer.ballast) <= limit.limit * (1 + 1e-6)
+        rng = np.random.default_rng(seed)
+        worst = 0.0
+        for _ in range(400):
+            root = rng.normal(size=(4, 4)) * 10 ** rng.uniform(-2, 3)
+            for stretch in (1.0, 1.3, 3.0):
+                w = 2 * math.pi * limit.frequency * stretch
+                d = model.stiffness_at(answer.stiffness) - w**2 * model.mass + 1j * w * root @ root.T
+                worst = max(worst, abs(limit.row @ np.linalg.solve(d, limit.load)))
+        undamped = model.stiffness_at(answer.stiffness) - (2 * math.pi * limit.frequency) ** 2 * model.mass
+        worst = max(worst, abs(limit.row @ np.linalg.solve(undamped, limit.load)))
+        assert worst <= limit.limit * (1 + 1e-6)
+        conservative.append(worst / limit.limit)
+    # How conservative: row and load are unrelated directions here, so the bound may be well above.
+    assert max(conservative) > 0.2
+
+
+def test_collocated_limit_is_exact_without_damping():
+    # Drive point (row = load direction): sqrt(c A^-1 c f A^-1 f) is the undamped response itself.
+    model = random_model(3)
+    limit = soft_limit(model, 3, 1.0)
+    row = limit.row
+    drive = DampingFreeLimit("drive", limit.frequency, row, 20.0 * row + 0j, 1.0)
+    bound = damping_free_bound(model, drive, model.lower, np.zeros(0))
+    d = model.stiffness_at(model.lower) - (2 * math.pi * drive.frequency) ** 2 * model.mass
+    assert bound == pytest.approx(abs(row @ np.linalg.solve(d, 20.0 * row)), rel=1e-10)
+
+
+def test_transmissibility_cone_agrees_with_the_exact_axis():
+    for seed in range(6):
+        rng = np.random.default_rng(seed)
+        mass, frequency, limit = float(rng.uniform(50, 500)), float(rng.uniform(10, 40)), float(rng.uniform(0.05, 0.5))
+        top = mass * (2 * math.pi * frequency) ** 2
+        weights = (-1.0, -0.3 * math.sqrt(top / mass) / 10, 0.0)
+        damping = (1e-3 * math.sqrt(top * mass), 1.0 * math.sqrt(top * mass))
+        cone = soft_side_one_axis(
+            weights, (1e-4 * top, top), damping, (mass, mass), ((frequency, limit),)
+        )
+        assert (cone.status, cone.worth) == ("solved", "global")
+        w = 2 * math.pi * frequency
+        mount = cone.stiffness + 1j * w * cone.damping
+        assert abs(mount / (mount - mass * w**2)) <= limit * (1 + 1e-6)
+        exact = solve_one_axis(
+            OneAxisProblem(
+                mass,
+                "viscous",
+                (1e-4 * top, top),
+                (cone.damping, cone.damping),
+                Objective("stiffest"),
+                (ResponseLimit("T", "transmissibility", limit, frequency, frequency),),
+            )
+        )
+        assert exact.best.stiffness == pytest.approx(cone.stiffness, rel=1e-4)
+
+
+def test_selection_bound_is_below_every_real_choice():
+    rng = np.random.default_rng(5)
+    mass = np.diag([20.0, 30.0])
+    patterns = (np.array([[1.0, 0.2], [0.2, 0.5]]), np.array([[0.3, -0.1], [-0.1, 1.0]]))
+    stiff = [np.sort(rng.uniform(1e3, 4e5, 12)) for _ in patterns]
+    costs = tuple(5 + s / 1e4 + rng.uniform(0, 5, 12) for s in stiff)
+    stacks = tuple(s[:, None, None] * t[None] for s, t in zip(stiff, patterns, strict=True))
+    bound = selection_bound(mass, np.zeros((2, 2)), stacks, costs, None, 8.0)
+    assert bound.status == "solved"
+    real = [
+        costs[0][i] + costs[1][j]
+        for i in range(12)
+        for j in range(12)
+        if np.linalg.eigvalsh(np.linalg.solve(mass, stacks[0][i] + stacks[1][j]) @ np.eye(2))[0] >= 0
+        and min(np.linalg.eigvals(np.linalg.solve(mass, stacks[0][i] + stacks[1][j])).real)
+        >= (2 * math.pi * 8.0) ** 2
+    ]
+    assert real and bound.cost <= min(real)
+    assert bound.cost >= 0.5 * min(real)
+    assert selection_bound(mass, np.zeros((2, 2)), stacks, costs, None, 500.0).status == "infeasible"
+
+
+def test_bad_models_are_refused():
+    model = random_model(0)
+    with pytest.raises(SizingError, match="not positive semidefinite"):
+        StiffnessModel(
+            model.mass, -model.patterns, model.constant, model.lower, model.upper, np.zeros((0, 4, 4)), np.zeros(0)
+        )
+    with pytest.raises(SizingError, match="nothing binds"):
+        cheapest(model, np.ones(3), np.zeros(0))
