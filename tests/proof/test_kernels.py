@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from detune.proof import kernels_numpy, response_nodes, search_compiled, search_nodes
+from detune.proof import block_response, block_rules, block_search, kernels_numpy, search_compiled
 from detune.proof.instances import InstanceSettings, make_instance, random_designs
 from detune.proof.kernels_numba import module_text, worth_compiling
 from detune.proof.kernels_numpy import complex_solve, inertia_count, pack, static_solve, unpack
@@ -120,7 +120,7 @@ def test_generated_text_compiles_as_python():
 
 def interpreted():
     """The search and response nodes uncompiled, on the numpy block kernels: slow, but the same text."""
-    names = {**vars(search_nodes), **vars(response_nodes)}
+    names = {**vars(block_rules), **vars(block_search), **vars(block_response)}
     return types.SimpleNamespace(**{k: v for k, v in names.items() if not k.startswith("__")})
 
 

@@ -10,7 +10,9 @@ from detune.brief.condition import Condition
 from detune.brief.floor import Floor
 from detune.brief.forcing import Forcing
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
+from detune.brief.state import State
 from detune.brief.statement import Name, Statement, Text
+from detune.brief.structure import Structure
 
 
 class Brief(Statement):
@@ -24,6 +26,8 @@ class Brief(Statement):
     connections: tuple[Connection, ...] = ()
     steady_loads: tuple[SteadyLoad, ...] = ()
     floor: Floor
+    structure: Structure | None = None
+    states: tuple[State, ...] = ()
     conditions: tuple[Condition, ...]
     forcing: tuple[SerializeAsAny[Forcing], ...]
     allowables: tuple[SerializeAsAny[Allowable], ...]
@@ -77,6 +81,11 @@ def _stations_free_of(brief: Brief, demand: LoadRange | MountDeflection | Uplift
         if stated == demand.model_copy(update={"stations": named or None}):
             covered.update(named or (station.name for station in brief.stations))
     return tuple(station.name for station in brief.stations if station.name not in covered)
+
+
+def state_of(brief: Brief, name: str | None) -> State | None:
+    """Return the state of this name; None is the machine as installed."""
+    return next((state for state in brief.states if state.name == name), None)
 
 
 def body_of(brief: Brief, on: str | None) -> str:

@@ -81,6 +81,13 @@ class Choice(Statement):
     where: dict[Name, tuple[Text, ...] | Window] = {}
     parts: tuple[Name, ...] | None = None
 
+    @field_validator("catalogs")
+    @classmethod
+    def _some_catalog(cls, value: tuple[str, ...]) -> tuple[str, ...]:
+        if not value:
+            raise refuse("[]", "at least one catalog")
+        return value
+
     @field_validator("catalogs", "parts")
     @classmethod
     def _some(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:

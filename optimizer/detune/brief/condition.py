@@ -14,12 +14,13 @@ class Condition(Statement):
     excites every frequency of its range. `steady` is false where the machine only passes through
     (run-up, coast-down): such a condition is judged by response and takes no part in separation.
 
-    `run_up` and `coast_down` give, for a shaft, the time in which it passes its whole range at a constant
+    `state` names the state of the machine it is judged in; left out, as installed. `run_up` and `coast_down` give, for a shaft, the time in which it passes its whole range at a constant
     rate; both may be given, and the worse counts. Left out, the steady state at every speed is taken.
     """
 
     name: Name
     steady: bool = True
+    state: Name | None = None
     shafts: dict[Name, SpeedRange] = {}
     run_up: dict[Name, Time] = {}
     coast_down: dict[Name, Time] = {}

@@ -28,6 +28,7 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
             _unique_names,
             _bodies,
             _stations,
+            _states,
             _forcing,
             _allowables,
             _choices,
@@ -111,11 +112,37 @@ def _stations(brief: Brief) -> list[Finding]:
     bodies = [body.name for body in brief.bodies]
     for table, places in (("station", brief.stations), ("connection", brief.connections)):
         for index, place in enumerate(places):
-            known = ["floor", *bodies]
+            nodes = [node.name for node in brief.structure.nodes] if brief.structure else []
+            known = ["floor", *bodies, *nodes]
             if place.to not in known:
                 findings.append(_unknown((table, index, "to"), place.to, known, "what it stands on", "body"))
             elif place.to != "floor" and place.to == (place.on or (bodies[0] if bodies else None)):
                 findings.append(Finding((table, index, "to"), place.to, "another body, or the floor"))
+    return findings
+
+
+def _states(brief: Brief) -> list[Finding]:
+    findings = []
+    names = [state.name for state in brief.states]
+    stations = [station.name for station in brief.stations]
+    for index, condition in enumerate(brief.conditions):
+        if condition.state is not None and condition.state not in names:
+            findings.append(
+                _unknown(("condition", index, "state"), condition.state, names, "a state", "state")
+            )
+    for index, state in enumerate(brief.states):
+        named = [("lost", name) for name in state.lost] + [("packing", name) for name in state.packing]
+        for key, name in named:
+            if name not in stations:
+                findings.append(_unknown(("state", index, key), name, stations, "a station", "station"))
+        for name in state.groups or ():
+            if name not in brief.groups:
+                findings.append(
+                    _unknown(("state", index, "groups"), name, brief.groups, "a group", "station")
+                )
+        if not any(condition.state == state.name for condition in brief.conditions):
+            expected = f'a condition judged in it, with state = "{state.name}"'
+            findings.append(Finding(("state", index, "name"), state.name, expected, depends=("condition",)))
     return findings
 
 

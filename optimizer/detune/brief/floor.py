@@ -61,7 +61,9 @@ class Floor(Statement):
         extra = [name for name in stated if name not in needed]
         if extra:
             allowed = ", ".join(f'"{name}"' for name in needed) or "no further value"
-            raise refuse(", ".join(extra), f"only the keys of a floor of kind {self.kind}: {allowed}", at=extra[0])
+            raise refuse(
+                ", ".join(extra), f"only the keys of a floor of kind {self.kind}: {allowed}", at=extra[0]
+            )
         for name in stated:
             value = getattr(self, name)
             if value < 0.0 or (value == 0.0 and name not in ("damping", "damping_ratio")):

@@ -16,17 +16,25 @@ from detune.brief.cross_check import cross_check
 from detune.brief.finding import Finding
 from detune.brief.floor import Floor
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
+from detune.brief.state import State
 from detune.brief.statement import Statement, describe
+from detune.brief.structure import Structure
 from detune.ground.errors import BriefError, Fault, nearest_name
 from detune.ground.toml_lines import Positions, dotted, load
 
-SINGLE: dict[str, type[Statement]] = {"floor": Floor, "ballast": Ballast, "objectives": Objectives}
+SINGLE: dict[str, type[Statement]] = {
+    "floor": Floor,
+    "ballast": Ballast,
+    "objectives": Objectives,
+    "structure": Structure,
+}
 REPEATED: dict[str, type[Statement]] = {
     "body": Body,
     "point": Point,
     "station": Station,
     "connection": Connection,
     "steady_load": SteadyLoad,
+    "state": State,
     "condition": Condition,
     "catalog": CatalogSource,
     "choice": Choice,
@@ -38,6 +46,7 @@ FIELD = {
     "station": "stations",
     "connection": "connections",
     "steady_load": "steady_loads",
+    "state": "states",
     "condition": "conditions",
     "catalog": "catalogs",
     "choice": "choices",
@@ -145,7 +154,13 @@ def _unknown_tables(data: Mapping[str, Any]) -> Iterator[Finding]:
             )
     for name in REQUIRED:
         if name not in data:
-            table = f"[[{name}]]" if name in REPEATED or name in BY_KIND else f"[{name}]" if name in SINGLE else name
+            table = (
+                f"[[{name}]]"
+                if name in REPEATED or name in BY_KIND
+                else f"[{name}]"
+                if name in SINGLE
+                else name
+            )
             yield Finding((name,), "", f"{table}, which every study states")
 
 

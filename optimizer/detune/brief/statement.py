@@ -88,6 +88,10 @@ def finite(value: object) -> float:
 def describe(value: object) -> str:
     """Return a found value as it stands in a study file, cut to a readable length."""
     text = value if isinstance(value, str) else _as_toml(value)
+    # Control characters would act on the terminal that prints the fault.
+    text = "".join(
+        letter if letter.isprintable() or letter == "\n" else repr(letter)[1:-1] for letter in text
+    )
     return text if len(text) <= 60 else text[:57] + "..."
 
 

@@ -49,6 +49,10 @@ class Table:
     def __len__(self) -> int:
         return len(self.lines)
 
+    def column(self, name: str) -> Column:
+        """Return the column of that name. Raises KeyError for any other."""
+        return self._columns[name]
+
     def has(self, name: str) -> bool:
         """Say whether the column is stated at all, in the sheet or as a constant."""
         return name in self._sources

@@ -36,29 +36,32 @@ class Pulse:
 
 def half_sine(amplitude: float, duration: float) -> Pulse:
     """A sin(pi t/T)."""
-    return _pulse([0.0, duration], sine=[amplitude], omega=[np.pi / duration])
+    return _pulse([0.0, duration], sine=[amplitude], omega=[np.pi / _lasting(duration)])
 
 
 def versed_sine(amplitude: float, duration: float) -> Pulse:
     """A/2 (1 - cos(2 pi t/T)), also called haversine."""
     return _pulse(
-        [0.0, duration], constant=[0.5 * amplitude], cosine=[-0.5 * amplitude], omega=[2.0 * np.pi / duration]
+        [0.0, duration],
+        constant=[0.5 * amplitude],
+        cosine=[-0.5 * amplitude],
+        omega=[2.0 * np.pi / _lasting(duration)],
     )
 
 
 def rectangle(amplitude: float, duration: float) -> Pulse:
     """A for 0 < t < T, with vertical sides."""
-    return _pulse([0.0, duration], constant=[amplitude])
+    return _pulse([0.0, _lasting(duration)], constant=[amplitude])
 
 
 def terminal_peak_sawtooth(amplitude: float, duration: float) -> Pulse:
     """A t/T with a vertical fall at T."""
-    return _pulse([0.0, duration], slope=[amplitude / duration])
+    return _pulse([0.0, duration], slope=[amplitude / _lasting(duration)])
 
 
 def symmetric_triangle(amplitude: float, duration: float) -> Pulse:
     """Rises straight to A at T/2 and falls straight to zero at T."""
-    steep = 2.0 * amplitude / duration
+    steep = 2.0 * amplitude / _lasting(duration)
     return _pulse([0.0, 0.5 * duration, duration], constant=[0.0, amplitude], slope=[steep, -steep])
 
 
@@ -69,7 +72,7 @@ def trapezoid(amplitude: float, duration: float, rise: float = 0.1, fall: float 
     """
     if not (rise > 0.0 and fall > 0.0 and rise + fall <= 1.0):
         raise ValueError("rise and fall of a trapezoid are shares above zero, together at most 1")
-    up, down = rise * duration, fall * duration
+    up, down = rise * _lasting(duration), fall * duration
     edge = [0.0, up, duration - down, duration]
     return _pulse(edge, constant=[0.0, amplitude, amplitude], slope=[amplitude / up, 0.0, -amplitude / down])
 
@@ -84,6 +87,12 @@ PULSES: dict[str, Callable[[float, float], Pulse]] = {
 }
 
 
+def _lasting(duration: float) -> float:
+    if not duration > 0.0:
+        raise ValueError("the duration of a pulse lies above zero")
+    return duration
+
+
 def _pulse(
     edge: list[float],
     constant: list[float] | None = None,
@@ -92,8 +101,6 @@ def _pulse(
     sine: list[float] | None = None,
     omega: list[float] | None = None,
 ) -> Pulse:
-    if not edge[-1] > 0.0:
-        raise ValueError("the duration of a pulse lies above zero")
     count = len(edge) - 1
     columns = [
         np.array(column if column else [0.0] * count) for column in (constant, slope, cosine, sine, omega)

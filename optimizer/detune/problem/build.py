@@ -14,7 +14,7 @@ from detune.brief.allowable import (
     StaticAllowable,
 )
 from detune.brief.allowable.views import Places
-from detune.brief.brief import Brief, applies, demanded
+from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
 from detune.brief.cross_check import cross_check
 from detune.brief.finding import Finding
@@ -41,22 +41,45 @@ class HarmonicRequirements:
 
     rows: Rows
     requirements: tuple[Requirement, ...]
+    model: Model
+
+
+@dataclass(frozen=True)
+class StateModel:
+    """The machine in one state: its name (None as installed), model, and what steadily excites it there."""
+
+    state: str | None
+    model: Model
+    places: Places
+    intervals: tuple[tuple[float, float], ...]
 
 
 @dataclass(frozen=True)
 class Problem:
-    """All a solver sees: the model, the requirements by the work they take, and what is traded."""
+    """All a solver sees: the models, the requirements by the work they take, and what is traded.
+
+    `states` holds the machine in every state that some condition is judged in, as installed first.
+    """
 
     brief: Brief
-    model: Model
+    states: tuple[StateModel, ...]
     totals: tuple[Requirement, ...]
     statics: tuple[Requirement, ...]
     modes: tuple[Requirement, ...]
     harmonics: tuple[HarmonicRequirements, ...]
-    intervals: tuple[tuple[float, float], ...]
     exempt_amplification: float | None
     dropped: tuple[Dropped, ...]
     assumed: tuple[str, ...]
+
+    @property
+    def model(self) -> Model:
+        """The machine as installed."""
+        return self.states[0].model
+
+    @property
+    def intervals(self) -> tuple[tuple[float, float], ...]:
+        """The excitation intervals of all steady conditions, Hz."""
+        return steady_intervals(self.brief)
 
     @property
     def count(self) -> int:
@@ -94,25 +117,33 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     candidates = find_candidates(brief, catalogs)
     if candidates.findings:
         raise BriefError(faults_without_lines(brief, candidates.findings))
-    model = build_model(brief, candidates.mounts)
-    _check_support(brief, model)
+    states = _state_models(brief, candidates.mounts)
     allowables, demanded_notes = demanded(brief)
-    places = Places(tuple(model.points), model.station_names, tuple(body.name for body in brief.bodies))
+    model, places = states[0].model, states[0].places
     catalog_notes = tuple(
         str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed)
     )
     return Problem(
         brief=brief,
-        model=model,
-        totals=_expand(allowables, DesignAllowable, "design", places),
-        statics=_expand(allowables, StaticAllowable, "at rest", places),
-        modes=_expand(allowables, ModeAllowable, "steady conditions", places),
+        states=states,
+        totals=_expand(allowables, DesignAllowable, "design", places, None),
+        statics=tuple(
+            requirement
+            for each in states
+            for requirement in _expand(allowables, StaticAllowable, "at rest", each.places, each.state)
+        ),
+        modes=tuple(
+            requirement
+            for each in states
+            for requirement in _expand(allowables, ModeAllowable, "steady conditions", each.places, each.state)
+        ),
         harmonics=tuple(
             group
             for condition in brief.conditions
-            for group in _harmonic(brief, model, condition, allowables, places)
+            for each in states
+            if each.state == condition.state
+            for group in _harmonic(brief, each, condition, allowables)
         ),
-        intervals=steady_intervals(brief),
         exempt_amplification=next(
             (a.exempt_amplification for a in allowables if isinstance(a, Separation)), None
         ),
@@ -126,11 +157,25 @@ def faults_without_lines(brief: Brief, findings: tuple[Finding, ...]) -> list[Fa
     return [Fault(brief.file, None, dotted(f.path), f.found, f.expected, f.nearest) for f in findings]
 
 
+def _state_models(brief: Brief, mounts: tuple[tuple[Mount, ...], ...]) -> tuple[StateModel, ...]:
+    """Return the machine as installed and in every other state that a condition names."""
+    named = dict.fromkeys([None, *(condition.state for condition in brief.conditions)])
+    models = []
+    for name in named:
+        model = build_model(brief, mounts, state_of(brief, name))
+        _check_support(brief, model, name)
+        carrying = tuple(station.name for station in model.stations if station.parallel > 0)
+        places = Places(tuple(model.points), carrying, tuple(body.name for body in brief.bodies))
+        models.append(StateModel(name, model, places, steady_intervals(brief, name)))
+    return tuple(models)
+
+
 def _expand(
-    allowables: tuple[Allowable, ...], form: type[Allowable], condition: str, places: Places
+    allowables: tuple[Allowable, ...], form: type[Allowable], condition: str, places: Places, state: str | None
 ) -> tuple[Requirement, ...]:
+    told = condition if state is None else f"{condition}, {state}"
     return tuple(
-        Requirement(allowable, condition, place)
+        Requirement(allowable, told, place, state)
         for allowable in allowables
         if isinstance(allowable, form)
         for place in allowable.places(places)
@@ -138,7 +183,7 @@ def _expand(
 
 
 def _harmonic(
-    brief: Brief, model: Model, condition: Condition, allowables: tuple[Allowable, ...], places: Places
+    brief: Brief, each: StateModel, condition: Condition, allowables: tuple[Allowable, ...]
 ) -> list[HarmonicRequirements]:
     """Return the groups of a condition: one under its forcing, and one for each unit load."""
     forced: list[tuple[HarmonicAllowable, str]] = []
@@ -146,32 +191,33 @@ def _harmonic(
     for allowable in allowables:
         if not isinstance(allowable, HarmonicAllowable) or not applies(allowable.conditions, condition.name):
             continue
-        pairs = [(allowable, place) for place in allowable.places(places)]
+        pairs = [(allowable, place) for place in allowable.places(each.places)]
         if allowable.unit_load() is None:
             forced += pairs
             continue
-        families = unit_families(brief, model, condition, allowable)
-        if families:
-            groups.append(_group(Rows(tuple(pairs), families, largest=True), condition))
+        families = unit_families(brief, each.model, condition, allowable)
+        if families and pairs:
+            groups.append(_group(Rows(tuple(pairs), families, largest=True), condition, each))
     if forced:
-        groups.insert(0, _group(condition_rows(brief, model, condition, tuple(forced)), condition))
+        groups.insert(0, _group(condition_rows(brief, each.model, condition, tuple(forced)), condition, each))
     return groups
 
 
-def _group(rows: Rows, condition: Condition) -> HarmonicRequirements:
-    return HarmonicRequirements(
-        rows, tuple(Requirement(allowable, condition.name, place) for allowable, place in rows.pairs)
+def _group(rows: Rows, condition: Condition, each: StateModel) -> HarmonicRequirements:
+    requirements = tuple(
+        Requirement(allowable, condition.name, place, each.state) for allowable, place in rows.pairs
     )
+    return HarmonicRequirements(rows, requirements, each.model)
 
 
-def _check_support(brief: Brief, model: Model) -> None:
+def _check_support(brief: Brief, model: Model, state: str | None) -> None:
     """Refuse a machine that its stations leave free to move: every design would share that fault."""
     if bool(np.all(is_supported(static_stiffness(model, all_designs(model, 0, 1))))):
         return
     free = ", ".join(dict.fromkeys(name for _, name in model.frame.names))
     finding = Finding(
-        ("station",),
-        f"{len(brief.stations)} stations that leave a motion of the machine without stiffness",
+        ("station",) if state is None else ("state",),
+        f"{sum(station.parallel > 0 for station in model.stations)} stations that leave a motion of the machine without stiffness",
         f"stations that hold every free direction ({free}); or fewer free directions",
     )
     raise BriefError(faults_without_lines(brief, (finding,)))

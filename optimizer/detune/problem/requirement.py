@@ -7,11 +7,15 @@ from detune.brief.allowable import Allowable
 
 @dataclass(frozen=True)
 class Requirement:
-    """What a margin is computed of; it carries the same labels as the assessor's rows."""
+    """What a margin is computed of; it carries the same labels as the assessor's rows.
+
+    `state` names the state of the machine it is judged in, None as installed.
+    """
 
     allowable: Allowable
     condition: str
     place: str
+    state: str | None = None
 
     @property
     def label(self) -> str:

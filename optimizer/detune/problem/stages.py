@@ -47,22 +47,24 @@ def stages(problem: Problem) -> tuple[Stage, ...]:
     if problem.modes:
         result.append(Stage("separation", problem.modes, lambda d: _modes(problem, d), False, 20_000))
     for group in problem.harmonics:
-        result.append(_screen(problem, group))
+        result.append(_screen(group))
     for group in problem.harmonics:
         if group.rows.has_slow_parts:
-            result.append(_response(problem, group, slow_parts=False))
+            result.append(_response(group, slow_parts=False))
     for group in problem.harmonics:
-        result.append(_response(problem, group, slow_parts=True))
+        result.append(_response(group, slow_parts=True))
     return tuple(result)
 
 
 def objective_values(problem: Problem, designs: Designs, least_margin: Floats) -> dict[str, Floats]:
     """Return every objective (D,) of a batch whose least margins are known."""
-    dynamic = dynamic_matrices(problem.model, designs)
-    view = mode_batch(dynamic).view(problem.intervals)
+    separation = np.full(designs.count, np.inf)
+    for each in problem.states:
+        view = mode_batch(dynamic_matrices(each.model, designs)).view(each.intervals)
+        separation = np.minimum(separation, least_separation(view, problem.exempt_amplification))
     return {
         "cost": total_cost(problem.model, designs),
-        "separation": least_separation(view, problem.exempt_amplification),
+        "separation": separation,
         "least-margin": least_margin,
         "added-mass": problem.model.ballast_mass[designs.step],
         "part-numbers": part_numbers(problem.model, designs),
@@ -84,57 +86,60 @@ def _totals(problem: Problem, designs: Designs) -> Floats:
 
 
 def _statics(problem: Problem, designs: Designs) -> Floats:
-    view = static_batch(problem.model, designs)
+    views = {each.state: static_batch(each.model, designs) for each in problem.states}
     rows = []
     for requirement in problem.statics:
         assert isinstance(requirement.allowable, StaticAllowable)
+        view = views[requirement.state]
         lower, upper = requirement.allowable.bounds(view, requirement.place)
         rows.append(window_margin(requirement.allowable.value(view, requirement.place), lower, upper))
     return np.stack(rows)
 
 
 def _modes(problem: Problem, designs: Designs) -> Floats:
-    view = mode_batch(dynamic_matrices(problem.model, designs)).view(problem.intervals)
+    views = {
+        each.state: mode_batch(dynamic_matrices(each.model, designs)).view(each.intervals)
+        for each in problem.states
+    }
     rows = []
     for requirement in problem.modes:
         assert isinstance(requirement.allowable, ModeAllowable)
+        view = views[requirement.state]
         limit = np.array(requirement.allowable.lower_limit())
         rows.append(lower_margin(requirement.allowable.value(view), limit))
     return np.stack(rows)
 
 
-def _screen(problem: Problem, group: HarmonicRequirements) -> Stage:
+def _screen(group: HarmonicRequirements) -> Stage:
     """Sample a few speeds of each family: no supremum lies below a sample."""
 
     def margins(designs: Designs) -> Floats:
-        dynamic = dynamic_matrices(problem.model, designs)
+        dynamic = dynamic_matrices(group.model, designs)
         sampled = np.zeros((len(group.rows.pairs), designs.count))
         for family in group.rows.families:
             speed = TWO_PI * np.linspace(
                 family.low, family.high, SCREEN_SPEEDS if family.high > family.low else 1
             )
             speeds = np.broadcast_to(speed, (designs.count, len(speed)))
-            value = family_amplitude(problem.model, designs, dynamic, group.rows, family, speeds)
+            value = family_amplitude(group.model, designs, dynamic, group.rows, family, speeds)
             sampled = np.maximum(sampled, value.max(axis=-1))
-        return _harmonic_margins(problem, group, designs, sampled)
+        return _harmonic_margins(group, designs, sampled)
 
     return Stage("response at sampled speeds", group.requirements, margins, True, 2_000)
 
 
-def _response(problem: Problem, group: HarmonicRequirements, slow_parts: bool) -> Stage:
+def _response(group: HarmonicRequirements, slow_parts: bool) -> Stage:
     def margins(designs: Designs) -> Floats:
-        dynamic = dynamic_matrices(problem.model, designs)
-        found = response_values(problem.model, designs, dynamic, mode_batch(dynamic), group.rows, slow_parts)
-        return _harmonic_margins(problem, group, designs, found.value)
+        dynamic = dynamic_matrices(group.model, designs)
+        found = response_values(group.model, designs, dynamic, mode_batch(dynamic), group.rows, slow_parts)
+        return _harmonic_margins(group, designs, found.value)
 
     name = "response over the whole range" if slow_parts else "response without records and passages"
     return Stage(name, group.requirements, margins, not slow_parts, 500)
 
 
-def _harmonic_margins(
-    problem: Problem, group: HarmonicRequirements, designs: Designs, amplitude: Floats
-) -> Floats:
-    static = static_batch(problem.model, designs)
+def _harmonic_margins(group: HarmonicRequirements, designs: Designs, amplitude: Floats) -> Floats:
+    static = static_batch(group.model, designs)
     rows = []
     for (allowable, place), value in zip(group.rows.pairs, amplitude, strict=True):
         assert isinstance(allowable, HarmonicAllowable)

@@ -1,7 +1,7 @@
 """The block kernels in numpy: what `kernel_source.py` generates must compute the same.
 
 A block is a flat buffer of 64 systems, entry k of system b at [k * 64 + b]. The functions write into their
-arguments, as the compiled ones do; they are used by tests and when `search_nodes` runs uncompiled.
+arguments, as the compiled ones do; they are used by tests and when `block_search` runs uncompiled.
 """
 
 from __future__ import annotations

@@ -32,6 +32,8 @@ from __future__ import annotations
 
 import numpy as np
 from numba import njit
+
+from detune.proof.block_data import Ask, Bench, Domain, Frame, Node
 '''
 
 
@@ -56,7 +58,7 @@ def module_text(n: int) -> str:
     """Text of the compiled module for n freedoms: block kernels, search nodes, response nodes."""
     here = Path(__file__).parent
     texts = [kernel_source(n)]
-    for name in ("search_nodes.py", "response_nodes.py"):
+    for name in ("block_rules.py", "block_search.py", "block_response.py"):
         texts.append((here / name).read_text(encoding="utf-8").split(MARK, 1)[1])
     body = "\n".join(texts)
     decorated = "\n".join(

@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 
 from detune.proof import search_bounds as bounds
+from detune.proof.block_data import Ask, Domain, Frame, Node
 from detune.proof.kernels_numba import load_kernels, mark_ready
 from detune.proof.kernels_numpy import pack
 from detune.proof.response_rows import case_margin, station_counts
@@ -89,7 +90,6 @@ class _Nodes:
         """As `search_bounds.filter_domains`."""
         first = len(prefix.chosen)
         domains = list(domains)
-        bands, steps, values, flags = _demand_arrays(demand)
         for index, domain in enumerate(domains):
             group = table.groups[first + index]
             others, rest = 1, prefix.cost
@@ -112,15 +112,16 @@ class _Nodes:
             if not len(domain):
                 return None
             verdict = np.zeros(len(domain), dtype=np.int64)
-            lower, upper = self.windows[id(group)]
+            windows = self.row_windows(table, prefix, domains)
             self.kernels.filter_group(
-                soft_s, stiff_s, soft_d, stiff_d, group.matrix_map,
-                np.ascontiguousarray(group.static[domain].T), np.ascontiguousarray(group.dynamic[domain].T),
-                np.ascontiguousarray(cost[keep]),
-                np.ascontiguousarray(lower[:, domain]), np.ascontiguousarray(upper[:, domain]), group.rows[0],
-                *self.row_windows(table, prefix, domains), table.rows, table.load,
-                bands, steps, values, flags, verdict,
-            )  # fmt: skip
+                Frame(table.rows, table.load),
+                Node(soft_s, soft_d, rest, *windows),
+                Node(stiff_s, stiff_d, rest, *windows),
+                self.domain(group, domain),
+                rest,
+                ask_of(demand),
+                verdict,
+            )
             bounds.add_counts(counts, "static_box", int((verdict == 1).sum()) * others)
             bounds.add_counts(counts, "eigenvalue_box", int((verdict == 2).sum()) * others)
             domains[index] = domain[verdict == 0]
@@ -128,15 +129,16 @@ class _Nodes:
                 return None
         return domains
 
-    def _arrays(self, group: GroupTable, domain: Integers) -> tuple[Any, ...]:
+    def domain(self, group: GroupTable, lanes: Integers) -> Domain:
+        """Some parts of a group as the compiled code takes them."""
         lower, upper = self.windows[id(group)]
-        return (
+        return Domain(
             group.matrix_map,
-            np.ascontiguousarray(group.static[domain].T),
-            np.ascontiguousarray(group.dynamic[domain].T),
-            np.ascontiguousarray(group.cost[domain]),
-            np.ascontiguousarray(lower[:, domain]),
-            np.ascontiguousarray(upper[:, domain]),
+            np.ascontiguousarray(group.static[lanes].T),
+            np.ascontiguousarray(group.dynamic[lanes].T),
+            np.ascontiguousarray(group.cost[lanes]),
+            np.ascontiguousarray(lower[:, lanes]),
+            np.ascontiguousarray(upper[:, lanes]),
             group.rows[0],
         )
 
@@ -158,25 +160,20 @@ class _Nodes:
         domains = list(domains)
         for i in (-2, -1):
             domains[i] = domains[i][np.argsort(groups[i].static[domains[i], 2], kind="stable")]
-        arrays = [self._arrays(group, domain) for group, domain in zip(groups, domains, strict=True)]
-        low, high = self.row_windows(table, prefix, domains)
-        common = (prefix.static, prefix.dynamic, prefix.cost, table.rows, table.load, low, high)
+        lanes_of = [self.domain(group, domain) for group, domain in zip(groups, domains, strict=True)]
+        frame = Frame(table.rows, table.load)
+        node = Node(prefix.static, prefix.dynamic, prefix.cost, *self.row_windows(table, prefix, domains))
         size, start = len(domains[0]) if len(groups) == 3 else 1, 0
         while start < size:
             self.check()
-            now = demand()
-            bands, steps, values, flags = _demand_arrays(now)
             removed = np.zeros(len(RULE_ORDER), dtype=np.int64)
+            ask = ask_of(demand())
             if len(groups) == 3:
                 lanes, start = self.kernels.last_three(
-                    *common, *arrays[0], *arrays[1], *arrays[2],
-                    bands, now.cap, steps, values, flags, removed, start, ENOUGH, MOST_NODES,
-                )  # fmt: skip
-            else:
-                lanes = self.kernels.last_two(
-                    *common, *arrays[0], *arrays[1], bands, now.cap, steps, values, flags, removed
+                    frame, node, *lanes_of, ask, removed, start, ENOUGH, MOST_NODES
                 )
-                start = 1
+            else:
+                lanes, start = self.kernels.last_two(frame, node, *lanes_of, ask, removed), 1
             for rule, number in zip(RULE_ORDER, removed.tolist(), strict=True):
                 bounds.add_counts(counts, rule, number)
             if len(lanes):
@@ -186,10 +183,11 @@ class _Nodes:
                 yield np.stack([*head, *picks], axis=1), cost
 
 
-def _demand_arrays(demand: bounds.Demand) -> tuple[Floats, Floats, Floats, Integers]:
+def ask_of(demand: bounds.Demand) -> Ask:
+    """A demand as the compiled code takes it."""
     bands = np.stack([demand.bands.low, demand.bands.high, demand.bands.separation]).astype(np.float64)
     flags = np.array([demand.separation_counts, demand.static_counts], dtype=np.int64)
-    return np.ascontiguousarray(bands), demand.staircase[0], demand.staircase[1], flags
+    return Ask(np.ascontiguousarray(bands), float(demand.cap), *demand.staircase, flags)
 
 
 def response_screen(selection: Selection, kernels: Any) -> Callable[..., Floats]:

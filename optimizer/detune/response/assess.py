@@ -5,6 +5,8 @@ complex poles from the quadratic eigenproblem place the samples, and every local
 by a bounded one-dimensional search.
 """
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -17,7 +19,7 @@ from detune.brief.allowable import (
     StaticAllowable,
 )
 from detune.brief.allowable.views import DesignView, Places
-from detune.brief.brief import Brief, applies, demanded
+from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
 from detune.physics import modes, separation
 from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
@@ -41,47 +43,82 @@ TWO_PI = 2.0 * np.pi
 
 def assess(brief: Brief, design: Design) -> Assessment:
     """Return the assessment of one design. Raises UnsupportedMachine where statics have no solution."""
-    machine = DirectMachine(brief, design)
-    static = DirectStatic(machine)
-    found_modes = direct_modes(machine, steady_intervals(brief))
     allowables, _ = demanded(brief)
-    names = Places(
-        tuple(p.name for p in brief.points),
-        tuple(s.name for s in brief.stations),
-        tuple(b.name for b in brief.bodies),
-    )
     totals = design_totals(brief, design)
     rows: list[MarginRow] = []
     for allowable in allowables:
-        if isinstance(allowable, StaticAllowable):
-            rows += [_static_row(static, allowable, place) for place in allowable.places(names)]
-        elif isinstance(allowable, ModeAllowable):
-            value = float(allowable.value(found_modes.view)[0])
-            rows.append(
-                _row(allowable, "steady conditions", "whole machine", value, allowable.lower_limit(), None)
-            )
-        elif isinstance(allowable, DesignAllowable):
+        if isinstance(allowable, DesignAllowable):
             value = float(allowable.value(totals)[0])
             rows.append(_row(allowable, "design", "whole machine", value, None, allowable.upper_limit()))
-    for condition in brief.conditions:
-        rows += _harmonic_rows(machine, static, found_modes, condition, allowables, names)
-    kept = tuple(row for row in rows if row.upper is None or np.isfinite(row.upper))
     exempt = exempt_amplification(brief)
+    found = [_in_state(brief, design, name) for name in states_of(brief)]
+    for each in found:
+        rows += _rows_in_state(each, allowables)
+    kept = tuple(row for row in rows if row.upper is None or np.isfinite(row.upper))
     counted = [row.margin for row in kept if row.kind not in ("cost", "added-mass", "part-numbers")]
+    installed = found[0]
     return Assessment(
         design=design,
         meets=all(row.margin >= 0.0 for row in kept),
         cost=float(totals.cost[0]),
         added_mass=float(totals.added_mass[0]),
         part_numbers=int(totals.part_numbers[0]),
-        separation=found_modes.least_separation(exempt),
+        separation=min(each.modes.least_separation(exempt) for each in found),
         least_margin=min(counted),
         margins=kept,
-        stations=_station_rows(brief, static, design),
-        modes=_mode_rows(machine, found_modes, exempt),
-        power=_power_rows(machine),
-        total_load=float(-machine.dead_load.reshape(-1, 6)[:-1, 2].sum()),
+        stations=_station_rows(brief, installed.static, design),
+        modes=_mode_rows(installed.modes, exempt),
+        power=tuple(power for each in found for power in _power_rows(each)),
+        total_load=float(-installed.machine.dead_load[2 : 6 * len(brief.bodies) : 6].sum()),
     )
+
+
+@dataclass(frozen=True)
+class _InState:
+    """The machine in one state, with its statics, modes, conditions and places."""
+
+    state: str | None
+    machine: DirectMachine
+    static: DirectStatic
+    modes: DirectModes
+    conditions: tuple[Condition, ...]
+    places: Places
+
+
+def states_of(brief: Brief) -> tuple[str | None, ...]:
+    """Return the states conditions are judged in, as installed (None) first."""
+    return tuple(dict.fromkeys([None, *(condition.state for condition in brief.conditions)]))
+
+
+def _in_state(brief: Brief, design: Design, name: str | None) -> _InState:
+    machine = DirectMachine(brief, design, state_of(brief, name))
+    carrying = tuple(s.name for s in brief.stations if machine.share(s) > 0.0)
+    return _InState(
+        state=name,
+        machine=machine,
+        static=DirectStatic(machine),
+        modes=direct_modes(machine, steady_intervals(brief, name)),
+        conditions=tuple(c for c in brief.conditions if c.state == name),
+        places=Places(tuple(p.name for p in brief.points), carrying, tuple(b.name for b in brief.bodies)),
+    )
+
+
+def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[MarginRow]:
+    told = "" if each.state is None else f", {each.state}"
+    rows: list[MarginRow] = []
+    for allowable in allowables:
+        if isinstance(allowable, StaticAllowable):
+            rows += [
+                _static_row(each.static, allowable, place, f"at rest{told}")
+                for place in allowable.places(each.places)
+            ]
+        elif isinstance(allowable, ModeAllowable):
+            value = float(allowable.value(each.modes.view)[0])
+            limit = allowable.lower_limit()
+            rows.append(_row(allowable, f"steady conditions{told}", "whole machine", value, limit, None))
+    for condition in each.conditions:
+        rows += _harmonic_rows(each.machine, each.static, each.modes, condition, allowables, each.places)
+    return rows
 
 
 def design_totals(brief: Brief, design: Design) -> DesignView:
@@ -126,11 +163,11 @@ def _row(
     )
 
 
-def _static_row(static: DirectStatic, allowable: StaticAllowable, place: str) -> MarginRow:
+def _static_row(static: DirectStatic, allowable: StaticAllowable, place: str, condition: str) -> MarginRow:
     lower, upper = allowable.bounds(static, place)
     return _row(
         allowable,
-        "at rest",
+        condition,
         place,
         float(allowable.value(static, place)[0]),
         None if lower is None else float(lower[0]),
@@ -201,7 +238,7 @@ def _station_rows(brief: Brief, static: DirectStatic, design: Design) -> tuple[S
     return tuple(rows)
 
 
-def _mode_rows(machine: DirectMachine, found: DirectModes, exempt: float | None) -> tuple[ModeRow, ...]:
+def _mode_rows(found: DirectModes, exempt: float | None) -> tuple[ModeRow, ...]:
     rows = []
     share = modes.participation(found.mass, found.shapes, found.directions)
     for index, frequency in enumerate(found.frequency):
@@ -225,16 +262,16 @@ def _mode_rows(machine: DirectMachine, found: DirectModes, exempt: float | None)
     return tuple(rows)
 
 
-def _power_rows(machine: DirectMachine) -> tuple[PowerRow, ...]:
+def _power_rows(each: _InState) -> tuple[PowerRow, ...]:
     """Energy balance of each condition, tone by tone, at the middle of its speed range."""
     rows = []
-    for condition in machine.brief.conditions:
+    for condition in each.conditions:
         put_in = dissipated = 0.0
         error = 0.0
         speed = 0.0
-        for tone in tones_of(machine.brief, condition):
+        for tone in tones_of(each.machine.brief, condition):
             speed = 0.5 * (tone.low + tone.high)
-            view = DirectTone(machine, (tone,), np.array([[TWO_PI * speed * tone.order]]))
+            view = DirectTone(each.machine, (tone,), np.array([[TWO_PI * speed * tone.order]]))
             into, lost = view.power()
             put_in, dissipated = put_in + float(into[0]), dissipated + float(lost[0])
             scale = max(abs(float(into[0])), abs(float(lost[0])), np.finfo(float).tiny)

@@ -47,7 +47,7 @@ def total_cost(model: Model, designs: Designs) -> Floats:
     """Return the cost (D,) of all parts and the ballast."""
     cost: Floats = model.ballast_cost[designs.step].copy()
     for index, group in enumerate(model.groups):
-        pieces = sum(station.parallel for station in model.stations if station.group == index)
+        pieces = sum(station.bought for station in model.stations if station.group == index)
         cost += pieces * group.arrays.cost[designs.part[:, index]]
     return cost
 

@@ -17,6 +17,7 @@ from detune.brief.floor import FloorFreedom, floor_freedom
 from detune.brief.forcing import Tone
 from detune.brief.machine import Connection, Station
 from detune.brief.mass_properties import mass_properties
+from detune.brief.state import State
 from detune.brief.statement import FREEDOMS, unit_direction
 from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount
@@ -31,10 +32,14 @@ FLOOR = "floor"
 
 @dataclass(frozen=True)
 class DirectMachine:
-    """A brief with one design put in. N = 6 (bodies + 1) freedoms, the floor's last."""
+    """A brief with one design put in, in a state.
+
+    N = 6 (bodies + 1) + m freedoms: the bodies', the floor's six, and the m modes of a structure.
+    """
 
     brief: Brief
     design: Design
+    state: State | None = None
     floor: FloorFreedom | None = field(init=False)
     centres: dict[str, Floats] = field(init=False)
 
@@ -47,22 +52,44 @@ class DirectMachine:
     def nodes(self) -> tuple[str, ...]:
         return (*(body.name for body in self.brief.bodies), FLOOR)
 
+    @property
+    def floor_axes(self) -> slice:
+        """The floor's three translations among the N freedoms."""
+        first = 6 * len(self.brief.bodies)
+        return slice(first, first + 3)
+
+    @property
+    def floor_vertical(self) -> int:
+        """The floor's vertical freedom."""
+        return 6 * len(self.brief.bodies) + 2
+
+    @property
+    def size(self) -> int:
+        """Number of freedoms N."""
+        modes = 0 if self.brief.structure is None else len(self.brief.structure.modes.frequency)
+        return 6 * len(self.nodes) + modes
+
     @cached_property
     def free(self) -> NDArray[np.bool_]:
         """Mask (N,) of the freedoms that can move."""
         mask = [freedom in body.free for body in self.brief.bodies for freedom in FREEDOMS]
         mask += [self.floor is not None and freedom == "z" for freedom in FREEDOMS]
-        return np.array(mask)
+        return np.array(mask + [True] * (self.size - len(mask)))
 
     @cached_property
     def names(self) -> tuple[tuple[str, str], ...]:
         """Node and freedom of each freedom that can move."""
-        every = [(node, freedom) for node in self.nodes for freedom in FREEDOMS]
+        every: list[tuple[str, str]] = [(node, freedom) for node in self.nodes for freedom in FREEDOMS]
+        every += [("structure", f"mode {i + 1}") for i in range(self.size - len(every))]
         return tuple(name for name, moves in zip(every, self.free, strict=True) if moves)
 
     def place(self, node: str, position: Floats) -> Floats:
         """Rows (3, N): global displacement of a place on a node."""
-        rows = np.zeros((3, 6 * len(self.nodes)))
+        rows = np.zeros((3, self.size))
+        if node not in self.nodes:
+            assert self.brief.structure is not None  # the cross-check admits no other place
+            rows[:, 6 * len(self.nodes) :] = self.brief.structure.shape_rows(node)
+            return rows
         first = 6 * self.nodes.index(node)
         rows[:, first : first + 3] = np.eye(3)
         if node != FLOOR:
@@ -71,7 +98,7 @@ class DirectMachine:
 
     def turn(self, node: str) -> Floats:
         """Rows (3, N): rotation of a node."""
-        rows = np.zeros((3, 6 * len(self.nodes)))
+        rows = np.zeros((3, self.size))
         first = 6 * self.nodes.index(node)
         rows[:, first + 3 : first + 6] = np.eye(3)
         return rows
@@ -95,6 +122,28 @@ class DirectMachine:
         """Local axes (3, 3) of a station as columns."""
         return self._geometry[station.name][0]
 
+    def factor(self, station: Station) -> float:
+        """What the state makes of the stiffness of the part at a station."""
+        state = self.state
+        if state is None or (state.groups is not None and station.group not in state.groups):
+            return 1.0
+        return state.stiffness_factor
+
+    def share(self, station: Station) -> float:
+        """How many times one part's listed stiffness stands at a station in this state."""
+        if self.state is not None and station.name in self.state.lost:
+            return 0.0
+        return station.parallel * self.factor(station)
+
+    def packing(self, station: Station) -> float:
+        """How far the foot of a station is lifted, m."""
+        return 0.0 if self.state is None else self.state.packing.get(station.name, 0.0)
+
+    @property
+    def creep(self) -> float:
+        """Share of the static deflection that is added by creep."""
+        return 0.0 if self.state is None else self.state.creep
+
     def across(self, station: Station) -> Floats:
         """Rows (3, N): global displacement of the body at a station relative to what it stands on."""
         return self._geometry[station.name][1]
@@ -116,7 +165,9 @@ class DirectMachine:
             move, turn = self.place(node, centre), self.turn(node)
             total += mass * move.T @ move + turn.T @ inertia @ turn
         if self.floor is not None:
-            total[-4, -4] += self.floor.mass
+            total[self.floor_vertical, self.floor_vertical] += self.floor.mass
+        modal = range(6 * len(self.nodes), self.size)
+        total[modal, modal] += 1.0
         return total
 
     def stiffness(self, omega: Floats | None) -> Complexes:
@@ -125,7 +176,7 @@ class DirectMachine:
         total = np.zeros(shape if omega is None else (len(omega), *shape), dtype=complex)
         for station in self.brief.stations:
             rows, axes = self.across(station), self.axes(station)
-            local = station.parallel * part_stiffness(self.mount(station), omega)
+            local = self.share(station) * part_stiffness(self.mount(station), omega)
             turned = np.einsum("ia,...a,ja->...ij", axes, local, axes)
             total += rows.T @ turned @ rows
         for connection in self.brief.connections:
@@ -139,7 +190,14 @@ class DirectMachine:
                 if omega is None
                 else self.floor.stiffness + 1j * omega * self.floor.damping
             )
-            total[..., -4, -4] += own
+            total[..., self.floor_vertical, self.floor_vertical] += own
+        if self.brief.structure is not None:
+            modal = range(6 * len(self.nodes), self.size)
+            circular = 2.0 * np.pi * self.brief.structure.modes.frequency
+            total[..., modal, modal] += circular**2
+            if omega is not None:
+                ratio = self.brief.structure.modes.damping_ratio
+                total[..., modal, modal] += 2j * ratio * circular * omega[:, None]
         return total
 
     @cached_property
@@ -157,6 +215,9 @@ class DirectMachine:
             node = body_of(self.brief, steady.on)
             load += self.place(node, np.array(steady.position)).T @ np.array(steady.force)
             load += self.turn(node).T @ np.array(steady.moment)
+        for station in self.brief.stations:
+            lift = self.share(station) * self.packing(station) * part_stiffness(self.mount(station), None)[2].real
+            load += lift * (self.axes(station).T @ self.across(station))[2]
         return load
 
     def tone_load(self, tone: Tone, omega: Floats) -> tuple[Complexes, Complexes]:
@@ -165,7 +226,7 @@ class DirectMachine:
         size = len(self.free)
         if tone.base is not None:
             motion = np.zeros((len(omega), size), dtype=complex)
-            motion[:, -6:-3] = growth * np.array(tone.base)
+            motion[:, self.floor_axes] = growth * np.array(tone.base)
             return np.zeros((len(omega), size), dtype=complex), motion
         node = body_of(self.brief, tone.on)
         vector = self.place(node, np.array(tone.position)).T @ np.array(tone.force)

@@ -73,6 +73,6 @@ def direct_modes(machine: DirectMachine, intervals: list[tuple[float, float]]) -
 
 
 def _spoken(machine: DirectMachine, node: str, freedom: str) -> str:
-    if node == FLOOR:
-        return FLOOR
+    if node in (FLOOR, "structure"):
+        return node
     return f"{node} {freedom}" if len(machine.brief.bodies) > 1 else freedom

@@ -55,6 +55,9 @@ class DirectMotion:
     def station_force(self, station: str) -> NDArray[np.generic]:
         return self._force(station_named(self.machine, station))[None]
 
+    def _count(self, station: Station) -> float:
+        return self.machine.share(station) / self.machine.factor(station)
+
     def _force(self, station: Station) -> NDArray[np.generic]:
         mount = self.machine.mount(station)
         dynamic, eta, viscous = (
@@ -63,14 +66,14 @@ class DirectMotion:
         )
         rows = self.machine.axes(station).T @ self._rows(self.machine.across(station))
         moved, fast, lagged = (x @ rows.T for x in (self.rates[0], self.rates[1], self.lagged))
-        return dynamic * moved + viscous * fast + dynamic * eta * lagged
+        return self.machine.factor(station) * (dynamic * moved + viscous * fast + dynamic * eta * lagged)
 
     def total_force(self, surface: str) -> NDArray[np.generic]:
         brief, floor = self.machine.brief, self.machine.floor
         total = np.zeros((len(self.lagged), 3), dtype=self.rates.dtype)
         for station in brief.stations:
             if station.to == FLOOR:
-                total = total + station.parallel * self._force(station) @ self.machine.axes(station).T
+                total = total + self._count(station) * self._force(station) @ self.machine.axes(station).T
         for c in brief.connections:
             if c.to == FLOOR:
                 position = np.array(c.position)
@@ -80,7 +83,8 @@ class DirectMotion:
                 total = total + stiffness * moved + stiffness * (c.loss_factor or 0.0) * lagged
                 total = total + np.array(c.viscous or (0.0, 0.0, 0.0)) * fast
         if surface == "ground" and floor is not None:
-            total[:, 2] = floor.stiffness * self.rates[0][:, -1] + floor.damping * self.rates[1][:, -1]
+            column = int(np.flatnonzero(np.flatnonzero(self.machine.free) == self.machine.floor_vertical)[0])
+            total[:, 2] = floor.stiffness * self.rates[0][:, column] + floor.damping * self.rates[1][:, column]
         return total[None]
 
 

@@ -38,13 +38,13 @@ def tones_of(brief: Brief, condition: Condition) -> list[Tone]:
     ]
 
 
-def steady_intervals(brief: Brief) -> list[tuple[float, float]]:
-    """Return the excitation intervals (Hz) of the steady conditions, each order its own."""
+def steady_intervals(brief: Brief, state: str | None = None) -> list[tuple[float, float]]:
+    """Return the excitation intervals (Hz) of the steady conditions in a state, each order its own."""
     return sorted(
         {
             (tone.order * tone.low, tone.order * tone.high)
             for condition in brief.conditions
-            if condition.steady
+            if condition.steady and condition.state == state
             for tone in tones_of(brief, condition)
         }
     )

@@ -39,18 +39,24 @@ class DirectStatic:
     def motion(self, point: str) -> Floats:
         stated = next(p for p in self.machine.brief.points if p.name == point)
         rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
-        return (rows @ self.q)[None]
+        return (1.0 + self.machine.creep) * (rows @ self.q)[None]
 
     def rotation(self, body: str) -> Floats:
-        return (self.machine.turn(body) @ self.q)[None]
+        return (1.0 + self.machine.creep) * (self.machine.turn(body) @ self.q)[None]
 
     def station_deflection(self, station: str) -> Floats:
-        stated = station_named(self.machine, station)
-        return (self.machine.axes(stated).T @ self.machine.across(stated) @ self.q)[None]
+        return (1.0 + self.machine.creep) * self._elastic(station_named(self.machine, station))
+
+    def _elastic(self, station: Station) -> Floats:
+        """Deflection (1, 3) without creep: the body's motion less what its foot is lifted by."""
+        lifted = self.machine.axes(station).T @ self.machine.across(station) @ self.q
+        lifted[2] -= self.machine.packing(station)
+        return lifted[None]
 
     def station_load(self, station: str) -> Floats:
-        mount = self.machine.mount(station_named(self.machine, station))
-        return part_stiffness(mount, None).real * self.station_deflection(station)
+        stated = station_named(self.machine, station)
+        own = self.machine.factor(stated) * part_stiffness(self.machine.mount(stated), None).real
+        return own * self._elastic(stated)
 
     def part_value(self, station: str, column: str) -> Floats:
         value = getattr(self.machine.mount(station_named(self.machine, station)), column)
@@ -80,8 +86,8 @@ class DirectTone:
                 # What the bare floor does freely needs this load on it: D_floor u_free.
                 f = machine.floor
                 own = f.stiffness + 1j * omega * f.damping - omega**2 * f.mass
-                load[:, -4] += own * motion[:, -4]
-                motion[:, -4] = 0.0
+                load[:, machine.floor_vertical] += own * motion[:, machine.floor_vertical]
+                motion[:, machine.floor_vertical] = 0.0
             q += motion
         right = (load - np.einsum("fij,fj->fi", dynamic[:, :, ~free], q[:, ~free]))[:, free]
         q[:, free] = np.linalg.solve(dynamic[:, free][:, :, free], right[..., None])[..., 0]
@@ -109,18 +115,19 @@ class DirectTone:
         return self._rate(rate) * local[None]
 
     def station_force(self, station: str) -> Complexes:
-        mount = self.machine.mount(station_named(self.machine, station))
-        return part_stiffness(mount, self.omega[0]) * self.station_deflection(station)
+        stated = station_named(self.machine, station)
+        own = self.machine.factor(stated) * part_stiffness(self.machine.mount(stated), self.omega[0])
+        return own * self.station_deflection(station)
 
     def total_force(self, surface: str) -> Complexes:
         """The reaction of the floor node, turned round: what it receives."""
         q, stiffness, _ = self._solved
-        received = -np.einsum("fij,fj->fi", stiffness[:, -6:-3, :], q)
+        received = -np.einsum("fij,fj->fi", stiffness[:, self.machine.floor_axes, :], q)
         floor = self.machine.floor
         if floor is not None:
             # The node's own spring to the ground is part of the matrix; without it, what the machine puts on
             # the floor; with it alone, what the floor passes on.
-            own = (floor.stiffness + 1j * self.omega[0] * floor.damping) * q[:, -4]
+            own = (floor.stiffness + 1j * self.omega[0] * floor.damping) * q[:, self.machine.floor_vertical]
             received[:, 2] = own if surface == "ground" else received[:, 2] + own
         return received[None]
 
@@ -140,7 +147,7 @@ class DirectTone:
         for station in self.machine.brief.stations:
             deflection = self.station_deflection(station.name)[0]
             loss = part_stiffness(self.machine.mount(station), omega).imag
-            lost += station.parallel * 0.5 * omega * np.sum(loss * np.abs(deflection) ** 2, axis=1)
+            lost += self.machine.share(station) * 0.5 * omega * np.sum(loss * np.abs(deflection) ** 2, axis=1)
         for connection in self.machine.brief.connections:
             position = np.array(connection.position)
             on = body_of(self.machine.brief, connection.on)
@@ -148,7 +155,11 @@ class DirectTone:
             loss = connection_stiffness(connection, omega).imag
             lost += 0.5 * omega * np.sum(loss * np.abs(q @ rows.T) ** 2, axis=1)
         if self.machine.floor is not None:
-            lost += 0.5 * omega**2 * self.machine.floor.damping * np.abs(q[:, -4]) ** 2
+            lost += 0.5 * omega**2 * self.machine.floor.damping * np.abs(q[:, self.machine.floor_vertical]) ** 2
+        if self.machine.brief.structure is not None:
+            own_modes = self.machine.brief.structure.modes
+            rate = 2.0 * own_modes.damping_ratio * 2.0 * np.pi * own_modes.frequency
+            lost += 0.5 * omega**2 * np.sum(rate * np.abs(q[:, -len(rate) :]) ** 2, axis=1)
         return put_in, lost
 
 

@@ -98,9 +98,11 @@ def excitation_intervals(brief: Brief, conditions: tuple[Condition, ...]) -> tup
     return tuple(sorted(found))
 
 
-def steady_intervals(brief: Brief) -> tuple[tuple[float, float], ...]:
-    """Return the excitation intervals of the steady conditions, which separation is judged against."""
-    return excitation_intervals(brief, tuple(c for c in brief.conditions if c.steady))
+def steady_intervals(brief: Brief, *states: str | None) -> tuple[tuple[float, float], ...]:
+    """Return the excitation intervals of the steady conditions (in these states; none named: in any)."""
+    return excitation_intervals(
+        brief, tuple(c for c in brief.conditions if c.steady and (not states or c.state in states))
+    )
 
 
 def _coherent_sets(brief: Brief, model: Model, tones: list[Tone]) -> tuple[tuple[Load, ...], ...]:

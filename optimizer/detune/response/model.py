@@ -12,7 +12,9 @@ from detune.brief.brief import Brief, body_of
 from detune.brief.floor import floor_freedom
 from detune.brief.machine import Connection, Station
 from detune.brief.mass_properties import MassProperties, mass_properties
+from detune.brief.state import State
 from detune.brief.statement import FREEDOMS, unit_direction
+from detune.brief.structure import Structure
 from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.physics import rigid_body
@@ -20,6 +22,7 @@ from detune.physics.orientation import axes_from_direction
 
 Floats = NDArray[np.float64]
 FLOOR = "floor"
+STRUCTURE = "structure"
 
 
 @dataclass(frozen=True)
@@ -29,6 +32,7 @@ class Frame:
     names: tuple[tuple[str, str], ...]
     references: dict[str, Floats]
     flexible_floor: bool
+    nodes: dict[str, Floats]
 
     @property
     def count(self) -> int:
@@ -43,12 +47,21 @@ class Frame:
             if self.flexible_floor:
                 rows[:, self.count - 1] = turned[2]
             return rows
+        if body in self.nodes:
+            return self._on_structure(body, turned)
         full = rigid_body.attachment(position - self.references[body], turned)
         return self._spread(body, full)
 
     def rotation_rows(self, body: str) -> Floats:
         """Rows (3, n) giving the rotation of a body about the global axes."""
         return self._spread(body, np.hstack([np.zeros((3, 3)), np.eye(3)]))
+
+    def _on_structure(self, node: str, turned: Floats) -> Floats:
+        """Rows (3, n) of a node of the structure: its shapes on the modal freedoms."""
+        rows = np.zeros((3, self.count))
+        columns = [column for column, (name, _) in enumerate(self.names) if name == STRUCTURE]
+        rows[:, columns] = turned.T @ self.nodes[node]
+        return rows
 
     def _spread(self, body: str, full: Floats) -> Floats:
         rows = np.zeros((3, self.count))
@@ -60,11 +73,18 @@ class Frame:
 
 @dataclass(frozen=True)
 class StationRows:
-    """One station: deflection rows (3, n) in local axes, its axes (3, 3) and how many parts share it."""
+    """One station: deflection rows (3, n) in local axes, its axes (3, 3) and how many parts share it.
+
+    In a state, `factor` multiplies the part's stiffness and `packing` (m) lifts its foot; a lost
+    station has no parts.
+    """
 
     name: str
     group: int
     parallel: int
+    bought: int
+    factor: float
+    packing: float
     rows: Floats
     axes: Floats
     on_floor: bool
@@ -117,6 +137,7 @@ class Model:
     floor_damping: float
     ballast_mass: Floats
     ballast_cost: Floats
+    creep: float
     assumed: tuple[str, ...]
 
     @property
@@ -124,15 +145,22 @@ class Model:
         return tuple(station.name for station in self.stations)
 
 
-def build_model(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> Model:
-    """Return the model of a brief whose group g may take the mounts `candidates[g]`."""
+def build_model(
+    brief: Brief, candidates: tuple[tuple[Mount, ...], ...], state: State | None = None
+) -> Model:
+    """Return the model of a brief, in a state, whose group g may take the mounts `candidates[g]`."""
     properties = {body.name: mass_properties(body) for body in brief.bodies}
     floor = floor_freedom(brief.floor)
     names = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
+    structure = brief.structure
+    nodes = {} if structure is None else {node.name: structure.shape_rows(node.name) for node in structure.nodes}
+    if structure is not None:
+        names += [(STRUCTURE, f"mode {i + 1}") for i in range(len(structure.modes.frequency))]
     if floor is not None:
         names.append((FLOOR, "z"))
-    frame = Frame(tuple(names), {name: p.centre for name, p in properties.items()}, floor is not None)
-    stations = tuple(_station(brief, frame, station) for station in brief.stations)
+    references = {name: p.centre for name, p in properties.items()}
+    frame = Frame(tuple(names), references, floor is not None, nodes)
+    stations = tuple(_station(brief, frame, station, state) for station in brief.stations)
     connections = tuple(_connection(brief, frame, connection) for connection in brief.connections)
     n = frame.count
     fixed = {name: np.zeros((n, n)) for name in ("static", "dynamic", "hysteretic", "viscous")}
@@ -149,6 +177,8 @@ def build_model(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> Mode
         fixed["static"][-1, -1] += floor.stiffness
         fixed["dynamic"][-1, -1] += floor.stiffness
         fixed["viscous"][-1, -1] += floor.damping
+    if structure is not None:
+        _add_structure(frame, structure, base_mass, fixed)
     mass, weight, ballast_mass, ballast_cost = _with_ballast(brief, frame, base_mass, properties)
     groups = tuple(
         Group(name, mounts, _without_gaps(mount_arrays(mounts)), _spread(stations, index, n))
@@ -178,11 +208,22 @@ def build_model(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> Mode
         floor_damping=floor.damping if floor else 0.0,
         ballast_mass=ballast_mass,
         ballast_cost=ballast_cost,
+        creep=0.0 if state is None else state.creep,
         assumed=tuple(notes),
     )
 
 
-def _station(brief: Brief, frame: Frame, station: Station) -> StationRows:
+def _add_structure(frame: Frame, structure: Structure, mass: Floats, fixed: dict[str, Floats]) -> None:
+    """Put the structure's modes on the diagonals: unit mass, omega^2, and 2 z omega of viscous damping."""
+    columns = [column for column, (name, _) in enumerate(frame.names) if name == STRUCTURE]
+    omega = 2.0 * np.pi * structure.modes.frequency
+    mass[columns, columns] += 1.0
+    fixed["static"][columns, columns] += omega**2
+    fixed["dynamic"][columns, columns] += omega**2
+    fixed["viscous"][columns, columns] += 2.0 * structure.modes.damping_ratio * omega
+
+
+def _station(brief: Brief, frame: Frame, station: Station, state: State | None) -> StationRows:
     radial = None if station.radial is None else np.array(unit_direction(station.radial))
     axes = axes_from_direction(np.array(unit_direction(station.axial)), radial)
     position = np.array(station.position)
@@ -192,12 +233,22 @@ def _station(brief: Brief, frame: Frame, station: Station) -> StationRows:
     return StationRows(
         name=station.name,
         group=brief.groups.index(station.group),
-        parallel=station.parallel,
+        parallel=0 if state is not None and station.name in state.lost else station.parallel,
+        bought=station.parallel,
+        factor=stiffness_factor(state, station),
+        packing=0.0 if state is None else state.packing.get(station.name, 0.0),
         rows=rows,
         axes=axes,
         on_floor=station.to == FLOOR,
         position=position,
     )
+
+
+def stiffness_factor(state: State | None, station: Station) -> float:
+    """Return what a state makes of the stiffness of the part at a station."""
+    if state is None or (state.groups is not None and station.group not in state.groups):
+        return 1.0
+    return state.stiffness_factor
 
 
 def _connection(brief: Brief, frame: Frame, connection: Connection) -> ConnectionRows:
@@ -262,5 +313,5 @@ def _spread(stations: tuple[StationRows, ...], group: int, n: int) -> Floats:
     spread = np.zeros((3, n, n))
     for station in stations:
         if station.group == group:
-            spread += station.parallel * station.rows[:, :, None] * station.rows[:, None, :]
+            spread += station.parallel * station.factor * station.rows[:, :, None] * station.rows[:, None, :]
     return spread

@@ -63,7 +63,7 @@ class SweptView:
         stiffness = part_dynamic_stiffness(
             self.model.groups[group], self.designs.part[:, group], self.speed[None]
         )
-        return stiffness * self.station_deflection(station)
+        return find_station(self.model, station).factor * stiffness * self.station_deflection(station)
 
     def total_force(self, surface: str) -> Complexes:
         total = np.zeros((1, len(self.speed), 3), dtype=complex)

@@ -118,7 +118,7 @@ class MotionView:
         part = self.designs.part[0, station.group]
         k, eta, c = arrays.stiffness_dynamic[part], arrays.loss_factor[part], arrays.viscous[part]
         moved, fast, lagged = (x @ station.rows.T for x in (self._rates(0), self._rates(1), self.lagged))
-        force: Floats = k * moved + c * fast + k * eta * lagged
+        force: Floats = station.factor * (k * moved + c * fast + k * eta * lagged)
         return force
 
     def total_force(self, surface: str) -> Floats:

@@ -14,6 +14,7 @@ from detune.response.model import Model, StationRows
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
+AXIAL = np.array([0.0, 0.0, 1.0])
 
 
 @dataclass(frozen=True)
@@ -29,18 +30,22 @@ class StaticBatch:
         return self.designs.count
 
     def motion(self, point: str) -> Floats:
-        return self.q @ self.model.points[point].T
+        return (1.0 + self.model.creep) * (self.q @ self.model.points[point].T)
 
     def rotation(self, body: str) -> Floats:
-        return self.q @ self.model.frame.rotation_rows(body).T
+        return (1.0 + self.model.creep) * (self.q @ self.model.frame.rotation_rows(body).T)
 
     def station_deflection(self, station: str) -> Floats:
-        return self.q @ find_station(self.model, station).rows.T
+        return (1.0 + self.model.creep) * self._elastic(find_station(self.model, station))
+
+    def _elastic(self, station: StationRows) -> Floats:
+        lifted: Floats = self.q @ station.rows.T - station.packing * AXIAL
+        return lifted
 
     def station_load(self, station: str) -> Floats:
         found = find_station(self.model, station)
         stiffness = self.model.groups[found.group].arrays.stiffness_static[self.designs.part[:, found.group]]
-        return np.nan_to_num(stiffness) * self.station_deflection(station)
+        return found.factor * stiffness * self._elastic(found)
 
     def part_value(self, station: str, column: str) -> Floats:
         group = find_station(self.model, station).group
@@ -51,7 +56,13 @@ class StaticBatch:
 def static_batch(model: Model, designs: Designs) -> StaticBatch:
     """Return the static equilibrium of a batch under gravity and the steady loads."""
     stiffness = static_stiffness(model, designs)
-    q = np.linalg.solve(stiffness, model.weight[designs.step][..., None])[..., 0]
+    load = model.weight[designs.step]
+    for station in model.stations:
+        if station.packing != 0.0 and station.parallel > 0:
+            part = model.groups[station.group].arrays.stiffness_static[designs.part[:, station.group], 2]
+            lift = station.parallel * station.factor * station.packing * part
+            load = load + lift[:, None] * station.rows[2]
+    q = np.linalg.solve(stiffness, load[..., None])[..., 0]
     return StaticBatch(model, designs, q)
 
 
@@ -113,7 +124,8 @@ class ToneBatch:
 
     def _stiffness(self, station: str) -> Complexes:
         group = find_station(self.model, station).group
-        return part_dynamic_stiffness(self.model.groups[group], self.designs.part[:, group], self.omega)
+        part = part_dynamic_stiffness(self.model.groups[group], self.designs.part[:, group], self.omega)
+        return find_station(self.model, station).factor * part
 
     def _rate(self, rate: int) -> Complexes:
         return (1j * self.omega[..., None]) ** rate

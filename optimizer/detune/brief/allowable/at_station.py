@@ -11,8 +11,8 @@ LocalDirection = Literal["axial", "lateral", "resultant"]
 
 
 def chosen_stations(stations: tuple[Name, ...] | None, places: Places) -> tuple[str, ...]:
-    """Return the named stations, or all of them."""
-    return places.stations if stations is None else stations
+    """Return the named stations, or all of them; a station that has lost its part is left out."""
+    return tuple(name for name in places.stations if stations is None or name in stations)
 
 
 def local_part(phasor: Responses, direction: LocalDirection) -> Responses:

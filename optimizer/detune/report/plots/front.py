@@ -209,7 +209,7 @@ def _marks(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> 
         titles[gid] = (f"{mark.label}: {mark.text}",)
         label = mark.label if mark.meets else f"{mark.label} (not met)"
         ax.annotate(
-            label, (x, y), xytext=(9, -10 - 12 * (index % 2)), textcoords="offset points", fontsize=8.5,
+            label, (x, y), xytext=(9, -12), textcoords="offset points", fontsize=8.5,
             fontweight="bold" if mark.label == "answer" else "normal", zorder=7,
         )  # fmt: skip
     return titles

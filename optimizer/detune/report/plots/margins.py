@@ -80,7 +80,8 @@ def draw(data: MarginsData, figure: "Figure") -> Titles:
     ax.set_xlim(100.0 * low, 106.0 * LARGE)
     ax.set_xlabel("margin [%]; 0 is the limit")
     ax.tick_params(axis="y", length=0)
+    ax.spines["left"].set_visible(False)
     ax.grid(axis="x", color="#DDDDDD", linewidth=0.5)
     ax.set_axisbelow(True)
-    ax.text(1.03, -0.9, "value; limit; margin", transform=ax.get_yaxis_transform(), va="bottom", fontsize=7.5, color=GREY)
+    ax.text(1.03, -0.65, "value; limit; margin", transform=ax.get_yaxis_transform(), va="bottom", fontsize=7.5, color=GREY)
     return {}

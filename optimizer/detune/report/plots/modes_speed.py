@@ -15,7 +15,7 @@ if TYPE_CHECKING:
 
 TITLE = "Modes against excitation"
 SHOWN = 4
-PANEL_HEIGHT = 4.3
+PANEL_HEIGHT = 4.4
 
 
 @dataclass(frozen=True)
@@ -121,14 +121,14 @@ def caption(data: ModesData) -> str:
 
 def size(data: ModesData) -> tuple[float, float]:
     """Return width and height in inches."""
-    return 8.6, PANEL_HEIGHT * max(1, len(data.sources)) + 0.3
+    return 8.6, PANEL_HEIGHT * max(1, len(data.sources))
 
 
 def draw(data: ModesData, figure: "Figure") -> Titles:
     """Draw one panel a source."""
     width, height = size(data)
     for index, source in enumerate(data.sources):
-        bottom = (height - (index + 1) * PANEL_HEIGHT + 0.35) / height
+        bottom = (height - (index + 1) * PANEL_HEIGHT + 0.42) / height
         ax = figure.add_axes((0.65 / width, bottom, (width - 3.25) / width, (PANEL_HEIGHT - 1.0) / height))
         _panel(data, source, ax)
     return {}
@@ -149,8 +149,9 @@ def _panel(data: ModesData, source: Source, ax: "Axes") -> None:
         ax.plot([start, right], [start * order, right * order], color=colour, linestyle=style, linewidth=1.1)
         end = min(right, top / order)
         ax.annotate(
-            f"order {order:g}", (end, end * order), xytext=(-3, 3), textcoords="offset points",
-            ha="right", va="bottom", fontsize=7.5, color=colour, annotation_clip=False,
+            f"order {order:g}", (end, end * order), xytext=(-10, -9), textcoords="offset points",
+            ha="left" if end < 0.9 * right else "right", va="top", fontsize=7.5, color=colour,
+            bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.6, "alpha": 0.85},
         )  # fmt: skip
     for frequency in data.frequencies:
         ax.axhline(frequency, color=BLUE, linewidth=0.9, zorder=3)
@@ -202,6 +203,6 @@ def _mode_labels(ax: "Axes", data: ModesData, is_log: bool) -> None:
         ax.annotate(
             text, (1.0, want), xytext=(1.05, place), xycoords="axes fraction", textcoords="axes fraction",
             va="center", fontsize=7.5, annotation_clip=False,
-            arrowprops={"arrowstyle": "-", "linewidth": 0.5, "color": GREY, "shrinkA": 0.0, "shrinkB": 0.0},
+            arrowprops={"arrowstyle": "-", "linewidth": 0.5, "color": GREY, "shrinkA": 1.0, "shrinkB": 0.0, "relpos": (0.0, 0.5)},
         )  # fmt: skip
     ax.text(1.05, 1.045, "natural frequency, mode, separation", transform=ax.transAxes, fontsize=7.5, color=GREY)

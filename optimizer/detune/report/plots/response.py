@@ -89,7 +89,7 @@ def _panel(curve: ResponseCurve, places: int) -> Panel:
     at = row.frequency if row.frequency is not None and curve.low <= row.frequency <= curve.high else None
     is_own = at is not None and row.value >= curve.value[top] * (1.0 - 1e-9)
     return Panel(
-        title=f"{row.quantity}\nat {row.place}, {row.condition}",
+        title=f"{row.quantity}\n{row.condition}, {row.place}",
         source=curve.source,
         is_shaft=curve.is_shaft,
         unit=unit,
@@ -124,14 +124,12 @@ def size(data: ResponseData) -> tuple[float, float]:
 def draw(data: ResponseData, figure: "Figure") -> Titles:
     """Draw the panels."""
     width, height = size(data)
-    rows = -(-len(data.panels) // COLUMNS)
     for index, panel in enumerate(data.panels):
         row, column = divmod(index, COLUMNS)
         left = (0.62 + column * (width / COLUMNS)) / width
         bottom = (height - (row + 1) * PANEL_HEIGHT + 0.33) / height
         ax = figure.add_axes((left, bottom, (width / COLUMNS - 0.85) / width, (PANEL_HEIGHT - 1.08) / height))
         _draw_panel(ax, panel)
-    assert rows > 0
     return {}
 
 
@@ -160,7 +158,7 @@ def _draw_panel(ax: "Axes", panel: Panel) -> None:
     axis = f"{panel.source}: speed [Hz], on top [rev/min]" if panel.is_shaft else f"{panel.source} [Hz]"
     ax.set_xlabel(shorten(axis, 62), fontsize=7.5, labelpad=1)
     first, second = panel.title.split("\n")
-    where = f", least of {panel.places}" if panel.places > 1 else ""
+    where = f" (worst of {panel.places} places)" if panel.places > 1 else ""
     title = f"{shorten(first, 58)}\n{shorten(second + where, 44)}; margin {margin_text(panel.margin)}"
     ax.set_title(title, loc="left", fontsize=8.0, pad=5, linespacing=1.25)
 

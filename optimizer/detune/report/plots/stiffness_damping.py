@@ -22,10 +22,12 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 TITLE = "Map of stiffness against damping"
-STIFFNESSES = 34
-DAMPINGS = 15
+STIFFNESSES = 40
+DAMPINGS = 16
 LINES_SHOWN = 7
 LEAST_LOSS = 1e-3
+SHADE = "#EBEBEB"
+LARGEST = 3.0
 TWO_PI = 2.0 * np.pi
 
 
@@ -39,13 +41,17 @@ class LimitField:
 
 @dataclass(frozen=True)
 class PartDot:
-    """A part as if it stood at every station: total axial stiffness N/m, loss factor, and the groups that may take it."""
+    """A part as if it stood at every station: total axial stiffness N/m, loss factor, and the groups that may take it.
+
+    `carries` tells whether the load, shared equally, lies in the part's load range.
+    """
 
     part: str
     stiffness: float
     loss_factor: float
     groups: tuple[str, ...]
     in_answer: tuple[str, ...]
+    carries: bool
 
 
 @dataclass(frozen=True)
@@ -65,7 +71,6 @@ class MapData:
     parts: tuple[PartDot, ...]
     here: tuple[float, float]
     ballast: float
-    left_out: int
 
     @property
     def least(self) -> Floats:
@@ -87,7 +92,7 @@ def data(result: Result) -> MapData | None:
     parts = _parts(brief, problem, subject, omega)
     here = _design_point(brief, subject.design, omega)
     stiffness, loss = _axes_of(parts, here)
-    fields, failed, left_out = _fields(brief, problem, subject.design, stiffness, loss)
+    fields, failed = _fields(brief, problem, subject.design, stiffness, loss)
     return MapData(
         subject="the answer" if result.answer is not None else "the closest design",
         stiffness=stiffness,
@@ -97,7 +102,6 @@ def data(result: Result) -> MapData | None:
         parts=parts,
         here=here,
         ballast=subject.design.ballast,
-        left_out=left_out,
     )
 
 
@@ -128,6 +132,7 @@ def _design_point(brief: Brief, design: Design, omega: float) -> tuple[float, fl
 
 def _parts(brief: Brief, problem: Problem, subject: Assessment, omega: float) -> tuple[PartDot, ...]:
     pieces = sum(station.parallel for station in brief.stations)
+    share = subject.total_load / pieces
     groups: dict[Mount, list[str]] = {}
     for group in problem.model.groups:
         for mount in group.mounts:
@@ -143,6 +148,7 @@ def _parts(brief: Brief, problem: Problem, subject: Assessment, omega: float) ->
             loss_factor=equivalent_loss_factor(mount, omega),
             groups=tuple(names),
             in_answer=tuple(chosen.get(mount, ())),
+            carries=mount.load_min <= share <= mount.load_max,
         )
         for mount, names in groups.items()
     )
@@ -179,7 +185,7 @@ def scaled_mount(mount: Mount, axial: float, loss: float) -> Mount:
 
 def _fields(
     brief: Brief, problem: Problem, design: Design, stiffness: Floats, loss: Floats
-) -> tuple[tuple[LimitField, ...], tuple[str, ...], int]:
+) -> tuple[tuple[LimitField, ...], tuple[str, ...]]:
     """Evaluate every requirement on the scaled machine at all nodes of the map, as a batch of designs."""
     total = sum(station.parallel for station in brief.stations)
     nodes = [(k / total, eta) for eta in loss.tolist() for k in stiffness.tolist()]
@@ -214,7 +220,7 @@ def _fields(
         if bool((margin < 0.0).any()) and bool((margin >= 0.0).any())
     ]
     crossing.sort(key=lambda field: int((field.margin >= 0.0).sum()))
-    return tuple(crossing), failed, 0
+    return tuple(crossing), failed
 
 
 def _label(requirement: Requirement) -> str:
@@ -229,7 +235,8 @@ def caption(data: MapData) -> str:
         f"stiffness stay as in the parts of {data.subject} of the same group, the ballast at {data.ballast:g} kg, part "
         "deflection limits as listed; load ranges are lifted. Lines: where a requirement, at its worst place, equals "
         "its limit. White: all of them met; shaded: at least one missed. Dots: each part that may be "
-        "chosen, as if used at every station, viscous damping read as a loss factor at the vertical natural frequency. "
+        "chosen, as if used at every station, open where the load shared equally is outside its load range; viscous damping "
+        "is read as a loss factor at the vertical natural frequency. "
         f"A real design with different parts in its groups lies between its dots, and a dot has its own ratios; the "
         f"diamond is {data.subject} as it is. The map shows which way to go; only the margins table judges."
     )
@@ -243,16 +250,18 @@ def caption(data: MapData) -> str:
 def size(data: MapData) -> tuple[float, float]:
     """Return width and height in inches."""
     named = min(len(data.fields), LINES_SHOWN)
-    return 8.6, 5.0 + 0.19 * (named + 2)
+    return 8.6, 5.35 + 0.165 * (named + 3)
 
 
 def draw(data: MapData, figure: "Figure") -> Titles:
     """Draw the map and return the hover texts of its dots."""
     width, height = size(data)
-    ax = figure.add_axes((0.7 / width, (height - 4.85) / height, (width - 0.95) / width, 4.7 / height))
+    ax = figure.add_axes((0.7 / width, (height - 4.8) / height, (width - 0.95) / width, 4.7 / height))
     x, y = data.stiffness / 1e3, data.loss_factor
-    least = np.clip(data.least, -1.0, 1.0)
-    ax.contourf(x, y, least, levels=[-2.0, 0.0], colors=["#EDEDED"], zorder=0)
+    if data.always_failed:
+        ax.set_facecolor(SHADE)
+    for field in data.fields:
+        ax.contourf(x, y, _drawable(field.margin), levels=[-LARGEST, 0.0], colors=[SHADE], zorder=0)
     handles = _limit_lines(ax, data)
     titles = _dots(ax, data)
     ax.set_xscale("log")
@@ -269,6 +278,11 @@ def draw(data: MapData, figure: "Figure") -> Titles:
     return titles
 
 
+def _drawable(margin: Floats) -> Floats:
+    """Return log(1 + margin), which runs nearly straight on log axes, so that a line drawn between nodes fits."""
+    return np.asarray(np.clip(np.log1p(np.maximum(margin, -0.95)), -LARGEST, LARGEST))
+
+
 def _limit_lines(ax: "Axes", data: MapData) -> list[object]:
     from matplotlib.lines import Line2D
 
@@ -277,38 +291,45 @@ def _limit_lines(ax: "Axes", data: MapData) -> list[object]:
     for index, field in enumerate(data.fields[:LINES_SHOWN]):
         colour, style = LINES[index % len(LINES)]
         ax.contour(
-            x, y, np.clip(field.margin, -1.0, 1.0), levels=[0.0], colors=[colour], linewidths=1.6,
+            x, y, _drawable(field.margin), levels=[0.0], colors=[colour], linewidths=1.6,
             linestyles=[style], zorder=3,
         )  # fmt: skip
         handles.append(Line2D([], [], color=colour, linestyle=style, linewidth=1.6, label=shorten(field.label, 110)))
     handles.append(
         Line2D([], [], color=VERMILION, marker="D", markersize=6, linestyle="none", label=f"{data.subject}")
     )
-    handles.append(Line2D([], [], color=GREY, marker="o", markersize=4, linestyle="none", label="a part, as if at every station"))
+    dot = {"marker": "o", "markersize": 4.0, "linestyle": "none"}
+    handles.append(Line2D([], [], color=BLACK, label="a part, as if at every station", **dot))
+    hollow = "a part whose load range does not hold the load shared equally"
+    handles.append(Line2D([], [], color=GREY, markerfacecolor="none", label=hollow, **dot))
     return handles
 
 
 def _dots(ax: "Axes", data: MapData) -> Titles:
     titles: Titles = {}
-    for gid, chosen in (("parts", False), ("chosen", True)):
-        dots = [part for part in data.parts if bool(part.in_answer) is chosen]
+    kinds = (("parts", False, True), ("overloaded", False, False), ("chosen", True, True))
+    for gid, chosen, carries in kinds:
+        dots = [p for p in data.parts if bool(p.in_answer) is chosen and (chosen or p.carries is carries)]
         if not dots:
             continue
         x = [part.stiffness / 1e3 for part in dots]
         y = [max(part.loss_factor, LEAST_LOSS) for part in dots]
         if chosen:
-            drawn = ax.scatter(x, y, s=70, facecolors="none", edgecolors=BLACK, linewidths=1.4, zorder=6)
+            drawn = ax.scatter(x, y, s=80, facecolors="none", edgecolors=BLACK, linewidths=1.4, zorder=6)
             for part, a, b in zip(dots, x, y, strict=True):
                 ax.annotate(
                     f"{part.part} ({', '.join(part.in_answer)})", (a, b), xytext=(8, 7), textcoords="offset points",
                     fontsize=8, zorder=7, bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.8},
                 )  # fmt: skip
+        elif carries:
+            drawn = ax.scatter(x, y, s=16, color=BLACK, linewidths=0, zorder=4)
         else:
-            drawn = ax.scatter(x, y, s=13, color=GREY, linewidths=0, zorder=4)
+            drawn = ax.scatter(x, y, s=13, facecolors="none", edgecolors=GREY, linewidths=0.7, zorder=4)
         drawn.set_gid(gid)
         titles[gid] = tuple(
             f"{p.part}: {p.stiffness / 1e3:.4g} N/mm in total, loss factor {p.loss_factor:.3g}; "
-            f"may be chosen for {', '.join(p.groups) or 'no group'}"
+            f"may be chosen for {', '.join(p.groups) or 'no group'}; "
+            + ("the load shared equally is in its range" if p.carries else "the load shared equally is outside its range")
             for p in dots
         )
     ax.plot([data.here[0] / 1e3], [data.here[1]], marker="D", color=VERMILION, markersize=6, zorder=5)

@@ -1,4 +1,4 @@
-"""Harmonic response of designs in blocks of 64 at one frequency: text that is compiled like `search_nodes.py`.
+"""Harmonic response of designs in blocks of 64 at one frequency: text that is compiled like `block_rules.py`.
 
 Both parts of a complex number are kept in separate real arrays. The computation is that of `response_rows.py`.
 """

@@ -1,0 +1,239 @@
+"""The report: one self-contained page for a design review, opening without a network."""
+
+from dataclasses import dataclass
+from importlib.resources import files
+from pathlib import Path
+
+from detune.ground.units import show
+from detune.report import tables, tables_study
+from detune.report.alternatives import alternatives, cheaper_count
+from detune.report.figures import Drawn, draw_all
+from detune.report.points_to_check import points_to_check, study_points
+from detune.report.service_loads import service_loads
+from detune.report.summary import none_lines, partial_words, proof_lines
+from detune.report.tables import Table
+from detune.report.words import (
+    design_text,
+    limit_text,
+    margin_text,
+    number,
+    objective_text,
+    row_text,
+    separation_text,
+    value_text,
+)
+from detune.response.assessment import Assessment
+from detune.study.cautions import CAUTIONS
+from detune.study.run import Result
+
+TEMPLATE = "report.html.jinja"
+
+COMPUTED: tuple[tuple[str, str], ...] = (
+    (
+        "Static loads, sag, tilt",
+        "Equilibrium of gravity and steady loads at the static stiffness of parts, given connections and floor "
+        "(static equilibrium). Static and dynamic stiffness never stand in for each other.",
+    ),
+    (
+        "Modes",
+        "Undamped eigenproblem K u = (2 pi f)^2 M u at the dynamic stiffness, all bodies in their free directions and "
+        "the floor's vertical freedom (undamped modes); the mode's loss factor from the energy it loses in the parts.",
+    ),
+    (
+        "Separation",
+        "f / f_high - 1 above an excitation interval, 1 - f / f_low below it, negative inside; intervals of steady "
+        "conditions, each order its own (separation).",
+    ),
+    (
+        "Responses",
+        "D(w) q = f(w) with D = -w^2 M + sum of B^T K_s(w) B, K_s = k (1 + j eta) + j w c for each part (complex "
+        "response). Orders of one shaft share one speed and are added by their amplitudes, as phasors where their "
+        "phase is known; rms values as squares. Resultants are the major axis of the ellipse.",
+    ),
+    (
+        "Worst over speed",
+        "The supremum over the continuous range: samples on a background and round every complex pole, then every "
+        "local maximum closed in on (supremum over a range). It is no maximum over a grid.",
+    ),
+    (
+        "Power",
+        "Power put in by the forces against power dissipated in parts, connections and floor (energy balance).",
+    ),
+    (
+        "Who says so",
+        "The solver goes through the designs with batch equations; each point of the front, the answer and every named "
+        "design is then assessed from the brief on its own, with other matrices and another search for the worst "
+        "speed. Only the assessment says that a design meets the brief.",
+    ),
+)
+
+
+@dataclass(frozen=True)
+class Section:
+    """One section of the page: heading, text before, plots, tables, and tables that are folded away."""
+
+    name: str
+    heading: str
+    texts: tuple[str, ...] = ()
+    points: tuple[str, ...] = ()
+    plots: tuple[Drawn, ...] = ()
+    tables: tuple[Table, ...] = ()
+    folded: tuple[Table, ...] = ()
+    source: str = ""
+
+
+def write_page(result: Result, path: str | Path) -> None:
+    """Write the report of a study as one HTML file."""
+    Path(path).write_text(page_text(result, draw_all(result)), encoding="utf-8", newline="\n")
+
+
+def page_text(result: Result, drawn: tuple[Drawn, ...]) -> str:
+    """Return the report as HTML, with plots that were drawn already."""
+    import jinja2
+
+    environment = jinja2.Environment(autoescape=True, trim_blocks=True, lstrip_blocks=True, undefined=jinja2.StrictUndefined)
+    text = files("detune.report").joinpath("templates", TEMPLATE).read_text(encoding="utf-8")
+    return environment.from_string(text).render(
+        title=result.study.brief.title,
+        notes=result.study.brief.notes,
+        partial=partial_words(result),
+        sections=sections(result, {plot.name: plot for plot in drawn}),
+    )
+
+
+def sections(result: Result, plots: dict[str, Drawn]) -> tuple[Section, ...]:
+    """Return the sections in the order of a design review; those with nothing to say are left out."""
+    subject = result.answer if result.answer is not None else result.closest
+    found: list[Section] = [_answer(result)]
+    found.append(Section("cautions", "Cautions", points=CAUTIONS))
+    if result.problem.assumed:
+        found.append(Section("assumed", "What was assumed", points=result.problem.assumed))
+    if "front" in plots:
+        table = (tables_study.front_table(result),) if result.front.points else ()
+        found.append(Section("front", f"Front: {tables_study.objective_words(result)}", plots=(plots["front"],), tables=table))
+    if subject is not None:
+        found += _of_design(result, subject, plots)
+    if result.compared:
+        found.append(Section("compared", "Named designs", tables=(tables_study.comparison_table(result),)))
+    found += _choices(result)
+    found += _why(result, plots)
+    found.append(Section("computed", "How each number was computed", points=tuple(f"{a}: {b}" for a, b in COMPUTED),
+                         texts=("The equations with their sources stand in docs/equations.md under the names in brackets.",)))  # fmt: skip
+    found.append(_inputs(result))
+    return tuple(found)
+
+
+def _answer(result: Result) -> Section:
+    brief = result.study.brief
+    if result.answer is None:
+        lines = none_lines(result)
+        head = lines[: lines.index("")] if "" in lines else lines
+        texts = [" ".join(line.strip() for line in head)]
+        points: tuple[str, ...] = study_points(result)
+        shown: tuple[Table, ...] = (_most_excluded(result),)
+        if result.closest is not None:
+            texts.append(f"Closest design found: {_described(result.closest)}.")
+            points = (*points_to_check(brief, result.closest), *points)
+            shown = (*shown, tables.answer_table(brief, result.closest))
+        return Section("answer", "No design meets the brief" if result.outcome.none_exists else "None found", tuple(texts), points, tables=shown)  # fmt: skip
+    answer = result.answer
+    texts = [f"{_described(answer)}.", f"Least margin: {row_text(brief, answer.tightest)}.", *proof_lines(result)]
+    points = (*points_to_check(brief, answer), *study_points(result))
+    return Section("answer", "The answer", tuple(texts), points, tables=(tables.answer_table(brief, answer),))
+
+
+def _described(assessment: Assessment) -> str:
+    meets = "meets the brief" if assessment.meets else "does not meet the brief"
+    return (
+        f"{design_text(assessment.design)} {meets}: cost {objective_text(assessment, 'cost')}, separation "
+        f"{separation_text(assessment.separation)}, least margin {margin_text(assessment.least_margin)}, "
+        f"part numbers {assessment.part_numbers}"
+    )
+
+
+def _most_excluded(result: Result) -> Table:
+    ranked = sorted((rule for rule in result.outcome.record.rules if rule.excluded), key=lambda rule: -rule.excluded)
+    rows = tuple((rule.rule, rule.stage, str(rule.excluded)) for rule in ranked[:6])
+    note = "Each design is counted at the first rule it failed; it may fail others as well."
+    return Table("Rules that excluded most", ("rule", "stage", "designs"), rows, frozenset({2}), note)
+
+
+def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> list[Section]:
+    brief = result.study.brief
+    of = "" if result.answer is not None else " of the closest design"
+    missed = tuple(
+        f"{row.label}: {value_text(row)} where the limit is {limit_text(row)}, margin {margin_text(row.margin)}"
+        for row in subject.failed
+    )
+    found = [
+        Section("margins", f"Margins{of}", points=missed, plots=_only(plots, "margins"),
+                tables=(tables.margins_table(brief, subject),)),
+        Section("stations", f"Stations{of}: installation sheet", texts=(_total_load(subject),),
+                tables=(tables.stations_table(subject), tables_study.service_table(service_loads(brief, subject)))),
+    ]  # fmt: skip
+    if "response" in plots:
+        found.append(Section("responses", f"Responses against limits{of}", plots=_only(plots, "response")))
+    speeds = tables_study.speeds_table(result, subject)
+    shown = [tables.modes_table(subject), tables.bump_table(subject)]
+    if speeds.rows:
+        shown.append(speeds)
+    shown.append(tables.power_table(subject))
+    found.append(Section("modes", f"Modes{of}", plots=_only(plots, "modes-speed"), tables=tuple(shown)))
+    if "stiffness-damping" in plots:
+        found.append(Section("map", "Map of stiffness against damping", plots=_only(plots, "stiffness-damping")))
+    return found
+
+
+def _only(plots: dict[str, Drawn], name: str) -> tuple[Drawn, ...]:
+    return (plots[name],) if name in plots else ()
+
+
+def _total_load(subject: Assessment) -> str:
+    return (
+        f"Static load of the machine with ballast and steady loads: {show(subject.total_load, 'force')} downward in all. "
+        "Given connections carry what the stations do not; the floor's own weight is not contained."
+    )
+
+
+def _choices(result: Result) -> list[Section]:
+    found = alternatives(result)
+    if not found:
+        return []
+    texts = []
+    count = cheaper_count(result)
+    if count is not None and result.answer is not None and result.outcome.stopped == "finished":
+        rest = f"{number(float(count))} designs cost less than the answer"
+        first = "cost" if result.front.trade[0] == "cost" else ""
+        texts.append(f"{rest}; none of them meets the brief." if first else f"{rest}.")
+    return [
+        Section("choices", "Next cheaper and next safer choices", tuple(texts), tables=(tables_study.alternatives_table(result, found),))
+    ]  # fmt: skip
+
+
+def _why(result: Result, plots: dict[str, Drawn]) -> list[Section]:
+    record = result.outcome.record
+    finished = result.outcome.stopped == "finished"
+    sums = (
+        f"Method: {record.method}. {record.looked_at} of {record.designs} designs were looked at in {record.seconds:.1f} s. "
+        + (
+            "Every design is either excluded by a stated rule or among those that meet all."
+            if record.accounted
+            else "The counts do not cover every design."
+        )
+        + ("" if finished else " The run was stopped early: this is no proof.")
+    )
+    return [
+        Section("why", "Why parts fell out", plots=_only(plots, "why"),
+                tables=(tables_study.reasons_summary_table(result),), folded=(tables_study.reasons_table(result),)),
+        Section("proof", "Proof record", texts=(sums,), tables=(tables_study.proof_table(result),)),
+    ]  # fmt: skip
+
+
+def _inputs(result: Result) -> Section:
+    return Section(
+        "inputs",
+        "Inputs in full",
+        texts=("The study as run; the parts lists are known by their hashes.",),
+        tables=(tables_study.inputs_table(result),),
+        source=result.study.source,
+    )
