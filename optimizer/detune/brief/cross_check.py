@@ -6,7 +6,7 @@ from detune.brief.allowable import HarmonicAllowable, Separation
 from detune.brief.brief import Brief, applies
 from detune.brief.finding import Finding, Path
 from detune.brief.forcing import Forcing
-from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.machine import Connection, Station
 from detune.brief.sense import without_sense
 from detune.ground.errors import nearest_name
 
@@ -99,7 +99,7 @@ def _bodies(brief: Brief) -> list[Finding]:
         if on is not None and on not in names:
             findings.append(_unknown(path, on, names, "a body", "body"))
         # A base motion acts on the floor and stands on no body.
-        is_base = path[0] == "forcing" and isinstance(brief.forcing[int(path[1])], BaseMotion)
+        is_base = path[0] == "forcing" and brief.forcing[int(path[1])].floor_direction() is not None
         if on is None and len(names) > 1 and not is_base:
             listed = ", ".join(f'"{name}"' for name in names)
             expected = f'the body it stands on, since there are several ({listed}), as "on"'
@@ -110,7 +110,11 @@ def _bodies(brief: Brief) -> list[Finding]:
 def _stations(brief: Brief) -> list[Finding]:
     findings = []
     bodies = [body.name for body in brief.bodies]
-    for table, places in (("station", brief.stations), ("connection", brief.connections)):
+    tables: dict[str, tuple[Station | Connection, ...]] = {
+        "station": brief.stations,
+        "connection": brief.connections,
+    }
+    for table, places in tables.items():
         for index, place in enumerate(places):
             nodes = [node.name for node in brief.structure.nodes] if brief.structure else []
             known = ["floor", *bodies, *nodes]

@@ -109,7 +109,7 @@ def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -
                 findings.append(Finding((name,), describe(data[name]), "text in quotes"))
     for name, single in SINGLE.items():
         if name in data:
-            statement = _read_one(single, data[name], (name,), findings)
+            statement = _read_one(single, data[name], (name,), findings, study.parent)
             if statement is None:
                 not_read.add(name)
             else:
@@ -118,7 +118,7 @@ def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -
     for name in (*REPEATED, *BY_KIND):
         if name in data:
             before = len(findings)
-            found = dict(_read_many(name, data[name], findings))
+            found = dict(_read_many(name, data[name], findings, study.parent))
             read[FIELD[name]], rows[name] = tuple(found.values()), list(found)
             if len(findings) > before:
                 not_read.add(name)
@@ -164,7 +164,9 @@ def _unknown_tables(data: Mapping[str, Any]) -> Iterator[Finding]:
             yield Finding((name,), "", f"{table}, which every study states")
 
 
-def _read_many(name: str, raw: Any, findings: list[Finding]) -> Iterator[tuple[int, Statement]]:
+def _read_many(
+    name: str, raw: Any, findings: list[Finding], folder: Path
+) -> Iterator[tuple[int, Statement]]:
     if not isinstance(raw, list):
         findings.append(Finding((name,), describe(raw), f"a list of tables, each opened by [[{name}]]"))
         return
@@ -174,7 +176,7 @@ def _read_many(name: str, raw: Any, findings: list[Finding]) -> Iterator[tuple[i
         if cls is None:
             cls = _kind_of(name, item, path, findings)
         if cls is not None:
-            statement = _read_one(cls, item, path, findings)
+            statement = _read_one(cls, item, path, findings, folder)
             if statement is not None:
                 yield index, statement
 
@@ -197,13 +199,13 @@ def _kind_of(
 
 
 def _read_one(
-    cls: type[Statement], raw: Any, path: tuple[str | int, ...], findings: list[Finding]
+    cls: type[Statement], raw: Any, path: tuple[str | int, ...], findings: list[Finding], folder: Path
 ) -> Statement | None:
     if not isinstance(raw, dict):
         findings.append(Finding(path, describe(raw), "a table of keys and values"))
         return None
     try:
-        return cls.model_validate(raw, context={"from_file": True})
+        return cls.model_validate(raw, context={"from_file": True, "folder": folder})
     except ValidationError as error:
         findings += _findings_of(error, cls, raw, path)
         return None
@@ -280,14 +282,16 @@ def _resolve(location: tuple[str | int, ...], raw: Any) -> tuple[tuple[str | int
     place: list[str | int] = []
     value = raw
     for key in location:
-        if (isinstance(value, dict) and key in value) or (isinstance(value, list) and _index(key, value)):
+        if _has(key, value):
             value = value[key]
             place.append(key)
     return tuple(place), value
 
 
-def _index(key: str | int, items: list[Any]) -> bool:
-    return isinstance(key, int) and 0 <= key < len(items)
+def _has(key: str | int, value: Any) -> bool:
+    if isinstance(value, dict):
+        return key in value
+    return isinstance(value, list) and isinstance(key, int) and 0 <= key < len(value)
 
 
 def _fields_at(cls: type[Statement], location: tuple[str | int, ...]) -> list[str]:

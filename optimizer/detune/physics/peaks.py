@@ -114,7 +114,7 @@ def _wide_gaps(
     pole = np.abs(middle[..., None] - poles[:, None, :]).min(axis=2, initial=np.inf)
     width = gap / pole
     rise = np.where(width > COARSE_GAP, 1.0 + HIDDEN_RISE * width, 0.0)
-    product = np.where(used, values[..., 1:] * np.maximum(values[..., :-1], 0.0), 0.0)
+    product = np.maximum(values[..., 1:], 0.0) * np.maximum(values[..., :-1], 0.0)
     row, design, i = np.nonzero(product * (2.0 * rise - 1.0) ** 2 * (rise > 0.0) > best[..., None] ** 2)
     sample = np.sqrt(product[row, design, i])
     return row, design, sample, rise[design, i], middle[design, i], 0.1 * gap[design, i]

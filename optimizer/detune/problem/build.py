@@ -117,12 +117,21 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     candidates = find_candidates(brief, catalogs)
     if candidates.findings:
         raise BriefError(faults_without_lines(brief, candidates.findings))
-    states = _state_models(brief, candidates.mounts)
+    notes = tuple(str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed))
+    return _problem(brief, candidates.mounts, candidates.dropped, notes)
+
+
+def with_mounts(problem: Problem, mounts: tuple[tuple[Mount, ...], ...]) -> Problem:
+    """Return the same requirements over other mounts, `mounts[g]` for group g."""
+    return _problem(problem.brief, mounts, (), ())
+
+
+def _problem(
+    brief: Brief, mounts: tuple[tuple[Mount, ...], ...], dropped: tuple[Dropped, ...], catalog_notes: tuple[str, ...]
+) -> Problem:
+    states = _state_models(brief, mounts)
     allowables, demanded_notes = demanded(brief)
     model, places = states[0].model, states[0].places
-    catalog_notes = tuple(
-        str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed)
-    )
     return Problem(
         brief=brief,
         states=states,
@@ -147,7 +156,7 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
         exempt_amplification=next(
             (a.exempt_amplification for a in allowables if isinstance(a, Separation)), None
         ),
-        dropped=candidates.dropped,
+        dropped=dropped,
         assumed=(*model.assumed, *demanded_notes, *catalog_notes),
     )
 

@@ -42,8 +42,8 @@ def disc_cover(system: RobustSystem, low: Floats, high: Floats) -> tuple[Complex
     """Centre (N, T) of every varying scalar and its corner deviations (N, T, 8).
 
     The T scalars are kappa of each axis, -omega^2 times the variable of each mass term, -omega^2 itself, and
-    omega (for a fixed viscous matrix). Each is multi-affine in at most three variables, hence inside the convex hull of its values
-    at their corners; kappa is affine in omega, not in omega^2, so its corners are taken in omega.
+    omega (for a fixed viscous matrix). Each is multi-affine in at most three variables, hence inside the convex
+    hull of its values at their corners; kappa is affine in omega, not in omega^2, so its corners are taken in omega.
     """
     count, last = low.shape[0], low.shape[1] - 1
     values = []
@@ -83,8 +83,7 @@ def absolute_terms(system: RobustSystem) -> Floats:
     outer = np.einsum("ai,aj->aij", system.axes, system.axes)
     terms = np.concatenate([outer, system.mass_terms, system.mass[None], system.fixed_viscous[None]])
     values, vectors = np.linalg.eigh(terms)
-    absolute = np.einsum("tik,tk,tjk->tij", vectors, np.abs(values), vectors)
-    return absolute
+    return np.asarray(np.einsum("tik,tk,tjk->tij", vectors, np.abs(values), vectors))
 
 
 def _centre_matrices(system: RobustSystem, centre: Complexes) -> Complexes:

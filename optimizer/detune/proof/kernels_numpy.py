@@ -38,6 +38,11 @@ def unpack(packed: Floats, n: int) -> Floats:
     return matrices
 
 
+def eigenvalues(packed: Floats, n: int) -> Floats:
+    """Ascending eigenvalues (N, n) of packed symmetric matrices (N, n(n+1)/2)."""
+    return np.asarray(np.linalg.eigvalsh(unpack(packed, n)), dtype=np.float64)
+
+
 def ldl_factor(matrices: Floats) -> tuple[Floats, Floats, Floats]:
     """LDL^T without pivoting of symmetric matrices (N, n, n), real or complex symmetric.
 

@@ -13,7 +13,7 @@ from math import prod
 
 import numpy as np
 
-from detune.proof.kernels_numpy import unpack
+from detune.proof.kernels_numpy import eigenvalues, unpack
 from detune.proof.loewner import Flags, eigenvalue_prune, static_interval
 from detune.proof.search_archive import required_value
 from detune.proof.search_tables import GroupTable, SearchTable
@@ -153,8 +153,8 @@ def _box_tests(
     eigen_fails = np.zeros(len(bound), dtype=bool)
     if demand.bands.low.size:
         n = table.freedoms
-        low: Floats = np.linalg.eigvalsh(unpack(part_dynamic + dynamic_low, n))
-        high: Floats = np.linalg.eigvalsh(unpack(part_dynamic + dynamic_high, n))
+        low = eigenvalues(part_dynamic + dynamic_low, n)
+        high = eigenvalues(part_dynamic + dynamic_high, n)
         eigen_fails = eigenvalue_prune(low, high, *demand.edges(bound))
     return static_fails, eigen_fails
 
@@ -208,7 +208,7 @@ def _static_fails(
     loose = ~valid
     if loose.any():
         # Not even the stiffest completion is positive definite: nothing carries the load.
-        values = np.linalg.eigvalsh(unpack(high[loose], n))
+        values = eigenvalues(high[loose], n)
         fails[loose] = values[:, 0] < -1e-12 * np.abs(values[:, -1])
     flags: Flags = fails
     return flags
@@ -274,7 +274,7 @@ def _check_points(
     add_counts(counts, "static", int(fails.sum()))
     good = np.flatnonzero(~fails)
     if demand.bands.low.size and good.size:
-        values: Floats = np.linalg.eigvalsh(unpack(dynamic[good], table.freedoms))
+        values = eigenvalues(dynamic[good], table.freedoms)
         inside = eigenvalue_prune(values, values, *demand.edges(cost[good]))
         add_counts(counts, "eigenvalue", int(inside.sum()))
         good = good[~inside]

@@ -143,10 +143,11 @@ def _proof(result: Result) -> dict[str, object]:
                 "stage": rule.stage,
                 "rule": rule.rule,
                 "excluded": rule.excluded,
+                # Parts without an excluded design are left out: their count is zero.
                 "by_part": {
-                    group.name: dict(
-                        zip((f"{m.catalog}: {m.part}" for m in group.mounts), counts.tolist(), strict=True)
-                    )
+                    group.name: {
+                        f"{m.catalog}: {m.part}": int(n) for m, n in zip(group.mounts, counts, strict=True) if n
+                    }
                     for group, counts in zip(result.problem.model.groups, rule.by_part, strict=True)
                 },
             }

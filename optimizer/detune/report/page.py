@@ -92,6 +92,8 @@ def page_text(result: Result, drawn: tuple[Drawn, ...]) -> str:
     import jinja2
 
     environment = jinja2.Environment(autoescape=True, trim_blocks=True, lstrip_blocks=True, undefined=jinja2.StrictUndefined)
+    # A number and its per cent sign stay on one line.
+    environment.filters["tied"] = lambda text: text.replace(" %", "\u00a0%")
     text = files("detune.report").joinpath("templates", TEMPLATE).read_text(encoding="utf-8")
     return environment.from_string(text).render(
         title=result.study.brief.title,
@@ -132,7 +134,7 @@ def _answer(result: Result) -> Section:
         points: tuple[str, ...] = study_points(result)
         shown: tuple[Table, ...] = (_most_excluded(result),)
         if result.closest is not None:
-            texts.append(f"Closest design found: {_described(result.closest)}.")
+            texts.append(f"Closest design found. {_described(result.closest)}.")
             points = (*points_to_check(brief, result.closest), *points)
             shown = (*shown, tables.answer_table(brief, result.closest))
         return Section("answer", "No design meets the brief" if result.outcome.none_exists else "None found", tuple(texts), points, tables=shown)  # fmt: skip
@@ -143,9 +145,9 @@ def _answer(result: Result) -> Section:
 
 
 def _described(assessment: Assessment) -> str:
-    meets = "meets the brief" if assessment.meets else "does not meet the brief"
+    meets = "Meets the brief" if assessment.meets else "Does not meet the brief"
     return (
-        f"{design_text(assessment.design)} {meets}: cost {objective_text(assessment, 'cost')}, separation "
+        f"{meets}: {design_text(assessment.design)}. Cost {objective_text(assessment, 'cost')}, separation "
         f"{separation_text(assessment.separation)}, least margin {margin_text(assessment.least_margin)}, "
         f"part numbers {assessment.part_numbers}"
     )

@@ -128,7 +128,8 @@ def modes_table(assessment: Assessment) -> Table:
     note = (
         "Undamped natural frequencies at the dynamic stiffness. Amplification: 1 / the mode's loss factor. Separation "
         "from the nearest excitation interval of the steady conditions, by the excitation frequency: f / f_high - 1 "
-        "above it, 1 - f / f_low below it. Participation: share of the moving mass in each direction."
+        "above it, 1 - f / f_low below it. Participation: share of the moving mass in each direction, a dash where it is "
+        "below 0.5 %."
     )
     columns = ("frequency", "mode", "amplification", "separation", "from excitation at", *DIRECTIONS)
     return Table("Modes", columns, rows, frozenset({0, 2, 3, 4, 5, 6, 7, 8, 9, 10}), note)

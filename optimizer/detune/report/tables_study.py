@@ -147,13 +147,19 @@ def speeds_table(result: Result, assessment: Assessment) -> Table:
 
 
 def service_table(loads: tuple[ServiceLoad, ...]) -> Table:
-    """Return the dynamic forces into the floor and the movement of the named points."""
-    rows = tuple(
-        (load.condition, load.what, load.place, load.direction, show(load.value, load.unit), frequency_text(load.frequency, load.is_shaft))
-        for load in loads
-    )  # fmt: skip
-    note = "Peak values over the whole range of the condition, sources with speeds of their own added linearly."
-    return Table("Forces into the floor and movement at the points", ("condition", "quantity", "place", "direction", "peak", "at"), rows, frozenset({4, 5}), note)  # fmt: skip
+    """Return the dynamic forces into the floor and the movement of the named points, the three axes side by side."""
+    rows: dict[tuple[str, str, str], dict[str, str]] = {}
+    for load in loads:
+        text = f"{show(load.value, load.unit)} at {frequency_text(load.frequency, load.is_shaft)}"
+        rows.setdefault((load.condition, load.what, load.place), {})[load.direction] = text
+    note = "Peak values over the whole range of the condition; sources with speeds of their own are added linearly."
+    return Table(
+        "Forces into the floor and movement at the points",
+        ("condition", "quantity", "place", "x", "y", "z"),
+        tuple((*key, cells["x"], cells["y"], cells["z"]) for key, cells in rows.items()),
+        frozenset({3, 4, 5}),
+        note,
+    )
 
 
 def inputs_table(result: Result) -> Table:

@@ -34,10 +34,10 @@ def _classes(pool: LinePool, intervals: tuple[tuple[float, float], ...]) -> list
 
 
 def _at(pool: LinePool, mass: float, place: tuple[float, float]) -> tuple[Segment | None, float]:
-    found, excess = solve_slice(pool, mass, (place[0] * mass, place[1] * mass))
-    if not found:
-        return None, excess
-    return min(found, key=lambda s: s.value), excess
+    answer = solve_slice(pool, mass, (place[0] * mass, place[1] * mass))
+    if not answer.segments:
+        return None, answer.excess
+    return min(answer.segments, key=lambda s: s.value), answer.excess
 
 
 def _bound(pool: LinePool, low: float, high: float, place: tuple[float, float]) -> float:

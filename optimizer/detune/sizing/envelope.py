@@ -36,10 +36,14 @@ SAME_ROOT = 1e-13
 
 @dataclass(frozen=True)
 class Rows:
-    """Limits as alpha(k) + beta gamma >= 0; alpha has shape (ends, n, 3), lowest power first, beta (n,)."""
+    """Limits as alpha(k) + beta gamma >= 0; alpha has shape (ends, n, 3), lowest power first, beta (n,).
+
+    The last `window.shape[0]` rows hold only for k within their window (w, 2); the others for every k.
+    """
 
     alpha: Floats
     beta: Floats
+    window: Floats
 
 
 @dataclass(frozen=True)
@@ -62,8 +66,11 @@ def rows(
     kind: DampingKind,
     masses: tuple[float, ...],
     damping_bounds: tuple[float, float],
+    envelopes: list[tuple[tuple[float, float, float], float, float]],
 ) -> Rows:
     """Rows of all limits `forms[i]` at `at_u[i]`, and of the damping bounds (scaled gamma or loss factor).
+
+    `envelopes` are those of `worst_frequency.closed_envelope` at the one mass of the slice (none for two masses).
 
     Receptance: alpha = (k - m u)^2 - A^2 u^q, beta = s. It is convex in m when A does not carry m; when it
     does, the coefficient of m^2 may be negative but then dalpha/dm < 0 for all m > 0: in both cases the
@@ -87,8 +94,11 @@ def rows(
         constant = (mass * at_u) ** 2 - np.where(transmission, 0.0, level * np.where(carries, mass**2, 1.0))
         block = np.stack([constant, -2.0 * mass * at_u, free], axis=1) if forms else np.zeros((0, 3))
         blocks.append(np.concatenate([block, bounds]))
-    beta = np.concatenate([s * free, [1.0, -1.0]])
-    return Rows(np.stack(blocks), beta)
+    count = len(envelopes)
+    closed = -np.array([e for e, _, _ in envelopes], dtype=float).reshape(count, 3)
+    window = np.array([(a, b) for _, a, b in envelopes], dtype=float).reshape(count, 2)
+    beta = np.concatenate([s * free, [1.0, -1.0], np.ones(count)])
+    return Rows(np.stack([np.concatenate([b, closed]) for b in blocks]), beta, window)
 
 
 def gamma_interval(table: Rows, k: Floats) -> tuple[Floats, Floats]:
@@ -96,6 +106,10 @@ def gamma_interval(table: Rows, k: Floats) -> tuple[Floats, Floats]:
     powers = np.stack([np.ones_like(k), k, k * k])
     alpha = (table.alpha @ powers).max(axis=0)
     lower, upper, pure = table.beta > 0, table.beta < 0, table.beta == 0
+    if table.window.size:
+        first = alpha.shape[0] - table.window.shape[0]
+        outside = (k < table.window[:, :1]) | (k > table.window[:, 1:])
+        alpha[first:] = np.where(outside, np.inf, alpha[first:])
     low = (-alpha[lower] / table.beta[lower, None]).max(axis=0)
     high = (alpha[upper] / -table.beta[upper, None]).min(axis=0)
     if pure.any():
@@ -147,7 +161,7 @@ def segments(
     parabolas = parabolas[np.isfinite(parabolas).all(axis=1)]
     extra = objective.breakpoints(parabolas)
     edges = np.array([edge for pair in forbidden for edge in pair], dtype=float)
-    inner = np.concatenate([extra[np.isfinite(extra)], edges])
+    inner = np.concatenate([extra[np.isfinite(extra)], edges, table.window.ravel()])
     inner = inner[(inner > left) & (inner < right)]
     points = _distinct(np.concatenate([[left, right], _crossings(table, window), inner]))
     if points.size == 1:

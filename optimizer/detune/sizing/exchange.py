@@ -3,6 +3,7 @@
 A range limit is the intersection of infinitely many line limits. Start from a few of its lines (a superset of
 what is feasible), solve the slice exactly, find the exact worst frequency (closed form, `worst_frequency`) at
 the best point and both ends of every segment, add those lines, and solve again until nothing is violated.
+Where the supremum over the range is itself a parabola in k (`closed_envelope`) it stands in the table too.
 
 * Every step is a superset, so no branch is ever lost and an empty slice is proved empty.
 * At the end the returned points satisfy the limit over the continuum, and because the value of a superset
@@ -21,7 +22,7 @@ the best point and both ends of every segment, add those lines, and solve again 
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,7 +30,7 @@ from numpy.typing import NDArray
 from detune.sizing.envelope import Rows, Segment, gamma_interval, rows, segments
 from detune.sizing.slice_objective import Scales, SliceObjective
 from detune.sizing.statement import STANDARD_GRAVITY, OneAxisProblem, PowerForm, power_form
-from detune.sizing.worst_frequency import worst
+from detune.sizing.worst_frequency import closed_envelope, worst
 
 Floats = NDArray[np.float64]
 
@@ -100,6 +101,13 @@ class LinePool:
         self.at_u.append(u)
         return True
 
+    def envelopes(self, mass: float) -> list[tuple[tuple[float, float, float], float, float]]:
+        """Range limits whose supremum over the range is a parabola in k, at one scaled mass."""
+        kind = self.problem.damping_kind
+        wide = (i for i in range(len(self.forms)) if self.is_range(i))
+        found = (closed_envelope(self.forms[i], kind, mass, *self.ranges[i]) for i in wide)
+        return [x for x in found if x is not None]
+
     def slice(self, masses: tuple[float, ...], window: tuple[float, float]) -> tuple[list[Segment], Rows]:
         """Solve the slice of the present lines at one scaled mass, or relaxed over two (`envelope`)."""
         problem = self.problem
@@ -109,6 +117,7 @@ class LinePool:
             problem.damping_kind,
             masses,
             _damping_bounds(problem, self.scales),
+            self.envelopes(masses[0]) if len(masses) == 1 else [],
         )
         objective = SliceObjective(problem, self.scales, masses[0], masses[-1])
         inner, forbidden = stiffness_window(problem, self.scales, masses)
@@ -178,29 +187,61 @@ def _near_closing(pool: LinePool, table: Rows, segment: Segment, mass: float) ->
     return added
 
 
-def solve_slice(pool: LinePool, mass: float, window: tuple[float, float]) -> tuple[list[Segment], float]:
-    """Exact slice at one scaled mass over lines and ranges: its segments and the largest relative violation.
+def _lift(pool: LinePool, segment: Segment, mass: float) -> Segment:
+    """Raise gamma at the best stiffness until every range limit that more damping helps is met there exactly."""
+    kind = pool.problem.damping_kind
+    k, gamma = np.array([segment.stiffness]), np.array([segment.gamma])
+    for _ in range(60):
+        before = gamma
+        for i in (i for i in range(len(pool.forms)) if pool.is_range(i)):
+            form = pool.forms[i]
+            ratio, u = worst(form, kind, k, gamma, mass, *pool.ranges[i])
+            level = form.scale * u ** float(form.power)
+            free = 1.0 - level if form.transmission else np.ones_like(u)
+            if ratio[0] > 1 and free[0] > 0:
+                top = level * (k**2 if form.transmission else mass**2 if form.mass_proportional else 1.0)
+                s = u if kind == "viscous" else np.ones_like(u)
+                gamma = np.maximum(gamma, (top - (k - mass * u) ** 2) / (s * free))
+        if gamma[0] <= before[0] * (1 + 1e-15):
+            break
+    value, gamma = SliceObjective(pool.problem, pool.scales, mass, mass).value(k, gamma, gamma)
+    return replace(segment, gamma=float(gamma[0]), value=float(value[0]))
 
-    The violation is of (response/limit)^2 and at most `VIOLATION` unless `ROUNDS` were used up.
+
+@dataclass(frozen=True)
+class SliceAnswer:
+    """Segments of one slice; the largest excess of (response/limit)^2 - 1 at a best point; and the gap.
+
+    `gap` is how far a best value lies above the proven bound of its segment (0 unless rounds ran out).
     """
+
+    segments: list[Segment]
+    excess: float
+    gap: float
+
+
+def solve_slice(pool: LinePool, mass: float, window: tuple[float, float]) -> SliceAnswer:
+    """Exact slice at one scaled mass over lines and ranges."""
     kind = pool.problem.damping_kind
     wide = [i for i in range(len(pool.forms)) if pool.is_range(i)]
     found: list[Segment] = []
-    excess = 0.0
     for _ in range(ROUNDS):
         found, table = pool.slice((mass,), window)
         if not wide or not found:
-            return found, 0.0
+            return SliceAnswer(found, 0.0, 0.0)
         k = np.array([x for s in found for x in (s.stiffness, s.left, s.right)])
         gamma = np.array([x for s in found for x in (s.gamma, s.left_gamma, s.right_gamma)])
-        added, excess = False, 0.0
+        added = False
         for i in wide:
             ratio, u = worst(pool.forms[i], kind, k, gamma, mass, *pool.ranges[i])
-            excess = max(excess, float(ratio.max()) - 1.0)
             for j in np.flatnonzero(ratio > 1 + VIOLATION):
                 added |= pool.add(i, float(u[j]))
         for segment in found:
             added |= _near_closing(pool, table, segment, mass)
         if not added:
             break
-    return found, excess
+    lifted = [_lift(pool, s, mass) for s in found]
+    gap = max(b.value - a.value for a, b in zip(found, lifted, strict=True))
+    k, gamma = np.array([s.stiffness for s in lifted]), np.array([s.gamma for s in lifted])
+    excess = max(float(worst(pool.forms[i], kind, k, gamma, mass, *pool.ranges[i])[0].max()) for i in wide)
+    return SliceAnswer(lifted, max(0.0, excess - 1.0), max(gap, 0.0))

@@ -227,7 +227,7 @@ def solve_one_axis(problem: OneAxisProblem) -> OneAxisOutcome:
     pool = LinePool.of(problem)
     everything = (0.0, math.inf)
     branches: list[Branch] = []
-    violation = 0.0
+    violation, gap = 0.0, 0.0
     ballast = problem.ballast
     if ballast is None or ballast.step is not None or ballast.least == ballast.most:
         if ballast is None:
@@ -236,10 +236,11 @@ def solve_one_axis(problem: OneAxisProblem) -> OneAxisOutcome:
             steps = ballast.values() if ballast.step is not None else (ballast.least,)
         for kilograms in steps:
             mass = (problem.mass + kilograms) / pool.scales.mass()
-            found, excess = solve_slice(pool, mass, everything)
-            violation = max(violation, excess)
-            branches += [_branch(problem, pool, kilograms, s) for s in found]
-        gap, decided = 0.0, violation <= 1e-9
+            answer = solve_slice(pool, mass, everything)
+            violation, gap = max(violation, answer.excess), max(gap, answer.gap)
+            branches += [_branch(problem, pool, kilograms, s) for s in answer.segments]
+        least = min((abs(b.best.objective) for b in branches), default=0.0)
+        decided = violation <= 1e-9 and gap <= 1e-7 * max(least, 1e-12)
     else:
         results, gap, decided = search_masses(pool, excitations(problem))
         for mass, segment, excess in results:

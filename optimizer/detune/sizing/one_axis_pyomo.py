@@ -195,8 +195,13 @@ def _placement(model: Any, problem: OneAxisProblem, scaled: _Scaled) -> None:
     k, m = model.k, model.m
     if problem.sag is not None:
         ratio = STANDARD_GRAVITY * problem.sag.dynamic_to_static / scaled.omega2
-        model.rows.add(k * problem.sag.most >= m * ratio)
-        model.rows.add(k * problem.sag.least <= m * ratio)
+        # In stiffness, not in metres: the solver's tolerance is absolute.
+        if problem.sag.most == 0:
+            model.rows.add(m <= 0)
+        else:
+            model.rows.add(k >= m * (ratio / problem.sag.most))
+        if problem.sag.least > 0:
+            model.rows.add(k <= m * (ratio / problem.sag.least))
     hertz = math.sqrt(scaled.omega2) / (2 * math.pi)
     count = len(problem.excitation_intervals)
     maximise = problem.objective.goal == "greatest separation"

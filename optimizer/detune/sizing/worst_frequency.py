@@ -115,3 +115,48 @@ def worst(
     best = np.argmax(ratio, axis=0)
     columns = np.arange(stiffness.size)
     return ratio[best, columns], u[best, columns]
+
+
+def closed_envelope(
+    form: PowerForm, kind: DampingKind, mass: float, u_low: float, u_high: float
+) -> tuple[tuple[float, float, float], float, float] | None:
+    """gamma >= e0 + e1 k + e2 k^2 for k in [k1, k2]: the supremum over u of a range limit where it is a parabola.
+
+    Returns ((e0, e1, e2), k1, k2) or None. With p_u(k) the bound at one u and A^2 the scale, maximising over u:
+
+        loss factor, A^2            u = k/m                    e = A^2
+        loss factor, A^2 u          u = k/m + A^2/(2 m^2)      e = A^2 k/m + A^4/(4 m^2)
+        loss factor, A^2 u^2        u = k m/(m^2 - A^2)        e = A^2 k^2/(m^2 - A^2)
+        loss factor, T > 1          u = k/m                    e = k^2/(T^2 - 1)
+        viscous, A^2 u              u = k/m                    e = A^2
+        viscous, A^2 u^2            u = k/sqrt(m^2 - A^2)      e = 2 k (m - sqrt(m^2 - A^2))
+        viscous, T > 1              u = k sqrt(1 - 1/T^2)/m    e = 2 k m (1 - sqrt(1 - 1/T^2)) T^2/(T^2 - 1)
+
+    Each p_u is concave in u around that point, so where u falls in [u_low, u_high] it is the supremum.
+    """
+    a2 = form.scale * (mass * mass if form.mass_proportional else 1.0)
+    m2 = mass * mass
+    offset = 0.0
+    if form.transmission:
+        if form.power != 0 or form.scale >= 1.0:
+            return None
+        t2 = 1.0 / form.scale
+        if kind == "loss factor":
+            slope, e = 1.0 / mass, (0.0, 0.0, 1.0 / (t2 - 1.0))
+        else:
+            root = float(np.sqrt(1.0 - form.scale))
+            slope, e = root / mass, (0.0, 2.0 * mass * (1.0 - root) * t2 / (t2 - 1.0), 0.0)
+    elif kind == "loss factor" and form.power == 0:
+        slope, e = 1.0 / mass, (a2, 0.0, 0.0)
+    elif kind == "loss factor" and form.power == 1:
+        slope, offset, e = 1.0 / mass, a2 / (2 * m2), (a2 * a2 / (4 * m2), a2 / mass, 0.0)
+    elif kind == "loss factor" and form.power == 2 and a2 < m2:
+        slope, e = mass / (m2 - a2), (0.0, 0.0, a2 / (m2 - a2))
+    elif kind == "viscous" and form.power == 1:
+        slope, e = 1.0 / mass, (a2, 0.0, 0.0)
+    elif kind == "viscous" and form.power == 2 and a2 < m2:
+        root = float(np.sqrt(m2 - a2))
+        slope, e = 1.0 / root, (0.0, 2.0 * (mass - root), 0.0)
+    else:
+        return None
+    return e, (u_low - offset) / slope, (u_high - offset) / slope

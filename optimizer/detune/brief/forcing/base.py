@@ -7,7 +7,7 @@ from typing import ClassVar
 from pydantic import field_validator, model_validator
 
 from detune.brief.condition import SpeedRange, check_range
-from detune.brief.statement import Frequency, Name, Statement, listed_once, refuse
+from detune.brief.statement import Direction, Frequency, Name, Statement, listed_once, refuse
 from detune.physics.array_types import FloatArray
 from detune.physics.pulses import Pulse
 from detune.physics.spectra import PowerSpectralDensity
@@ -114,6 +114,18 @@ class Forcing(Statement):
         """Return the shaft this forcing follows, or None."""
         return None
 
+    def floor_direction(self) -> Direction | None:
+        """Return the unit direction along which this forcing moves the floor, None for a load on a body."""
+        return None
+
+    def data_files(self) -> tuple[str, ...]:
+        """Return the files this forcing was read from, as the study names them."""
+        return ()
+
+    def assumed(self) -> tuple[str, ...]:
+        """Return what this forcing leaves open and the program fills in, in words."""
+        return ()
+
 
 class ShaftForcing(Forcing):
     """A forcing that follows a shaft."""
@@ -144,3 +156,13 @@ class SteadyToneForcing(Forcing):
     def band(self) -> SpeedRange:
         """Return the lowest and highest frequency in Hz."""
         return self.frequency if isinstance(self.frequency, tuple) else (self.frequency, self.frequency)
+
+    def speed_name(self) -> str:
+        """Return the name of the tone's speed: forcings of one and the same fixed frequency share it."""
+        low, high = self.band()
+        return fixed_speed(low) if low == high else f"frequency of {self.name}"
+
+
+def fixed_speed(frequency: float) -> str:
+    """Return the name of the speed of every tone that stays at one frequency (Hz)."""
+    return f"{frequency:.9g} Hz"

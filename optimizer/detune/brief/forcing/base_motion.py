@@ -49,6 +49,9 @@ class BaseMotion(SteadyToneForcing):
         positive(getattr(self, stated[0]), "an amplitude", at=stated[0])
         return self
 
+    def floor_direction(self) -> Direction | None:
+        return unit_direction(self.direction)
+
     def tones(self, speeds: Mapping[str, SpeedRange]) -> tuple[Tone, ...]:
         low, high = self.band()
         # Displacement is v / (j w) or a / (j w)^2; a common phase of a single source has no effect.
@@ -64,7 +67,7 @@ class BaseMotion(SteadyToneForcing):
         return (
             Tone(
                 source=self.name,
-                speed=f"frequency of {self.name}",
+                speed=self.speed_name(),
                 order=1.0,
                 low=low,
                 high=high,

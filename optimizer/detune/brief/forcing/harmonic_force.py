@@ -33,7 +33,7 @@ class HarmonicForce(SteadyToneForcing):
         return (
             Tone(
                 source=self.name,
-                speed=f"frequency of {self.name}",
+                speed=self.speed_name(),
                 order=1.0,
                 low=low,
                 high=high,

@@ -9,10 +9,11 @@ from numpy.typing import NDArray
 
 from detune.ground.errors import Fault, nearest_name
 from detune.ground.units import show
+from detune.parts.kinds.mount_damping import check_damping, wants_rated_load
+from detune.parts.kinds.mount_stiffness import RATIO, Stiffness, check_stiffness, resolve, sag
+from detune.parts.law_files import Laws, check_absolute_tables, read_laws
+from detune.parts.prices import check_prices
 from detune.parts.table import Table
-
-DAMPING = ("loss_factor", "damping_ratio", "viscous", "amplification")
-"""The columns of which each row fills exactly one."""
 
 FAMILY_TOLERANCE = {"rubber": 0.15, "spring": 0.10}
 """Stiffness tolerance by family where a list states none: common practice of the trade."""
@@ -24,10 +25,17 @@ _ROUNDING = 0.01
 
 def check(table: Table) -> list[Fault]:
     """Return what is wrong between the cells of each row, every rule of every row."""
-    rules = (_lateral, _dynamic, _damping, _load_rated, _loads, _travel, _temperature, _tolerance)
+    laws = read_laws(table)
+    rules = (_lateral, check_damping, _load_rated, _loads, _temperature, _tolerance, _amplitude, _air_spring)
     # An absurd figure may overflow in a comparison; the comparison is still right with an infinity.
     with np.errstate(over="ignore"):
-        return [fault for rule in rules for fault in rule(table)]
+        stiffness = resolve(table, laws.curves)
+        faults = [*laws.faults, *check_stiffness(table, stiffness, laws.curves), *_dynamic(table, stiffness)]
+        faults += [fault for rule in rules for fault in rule(table)]
+        faults += [*_travel(table, stiffness, laws), *_on_curve(table, laws)]
+        faults += check_absolute_tables(table, laws, stiffness.dynamic[:, 2].tolist())
+        faults += check_prices(table)
+    return faults
 
 
 def _rows(mask: NDArray[np.bool_]) -> list[int]:
@@ -35,7 +43,7 @@ def _rows(mask: NDArray[np.bool_]) -> list[int]:
 
 
 def _both_or_neither(table: Table, name: str, other: str) -> Iterator[Fault]:
-    absent = table.given(other) & ~table.given(name)
+    absent = table.given(other) & ~table.given(name) & ~table.given(RATIO)
     if not absent.any():
         return
     reason = f"because {other} is stated: static and dynamic stiffness are stated both or neither"
@@ -60,48 +68,51 @@ def _lateral(table: Table) -> Iterator[Fault]:
         yield table.fault(row, "stiffness_x_static", "a stiffness, because this row states the y direction")
 
 
-def _dynamic(table: Table) -> Iterator[Fault]:
+def _dynamic(table: Table, stiffness: Stiffness) -> Iterator[Fault]:
     for axis in ("z", "x", "y"):
-        name, base = f"stiffness_{axis}_dynamic", f"stiffness_{axis}_static"
-        dynamic, static = table.numbers(name), table.numbers(base)
-        for row in _rows(dynamic < _DYNAMIC_LOW * static):
+        base = f"stiffness_{axis}_static"
+        place = "xyz".index(axis)
+        dynamic, static = stiffness.dynamic[:, place], stiffness.static[:, place]
+        stated = table.given(f"stiffness_{axis}_dynamic") | table.given(base) if axis == "y" else True
+        for row in _rows((dynamic < _DYNAMIC_LOW * static) & stated):
             least = show(_DYNAMIC_LOW * static[row], "stiffness")
             why = "a mount is not softer in vibration, so the two are exchanged or differ in unit"
-            yield table.fault(row, name, f"at least {least}, 0.9 of {base}: {why}")
-        for row in _rows(dynamic > _DYNAMIC_HIGH * static):
+            yield table.fault(row, _stated(table, axis, row), f"at least {least}, 0.9 of {base}: {why}")
+        for row in _rows((dynamic > _DYNAMIC_HIGH * static) & stated):
             most = show(_DYNAMIC_HIGH * static[row], "stiffness")
-            yield table.fault(row, name, f"at most {most}, 10 times {base}: more is an error of unit")
+            expected = f"at most {most}, 10 times {base}: more is an error of unit"
+            yield table.fault(row, _stated(table, axis, row), expected)
 
 
-def _damping(table: Table) -> Iterator[Fault]:
-    choice = "exactly one of " + ", ".join(DAMPING)
-    if not any(table.has(name) for name in DAMPING):
-        yield table.header_fault("loss_factor", f"{choice}; the list states no damping")
-        return
-    stated = [name for name in DAMPING if table.has(name)]
-    filled = np.array([table.given(name) for name in stated])
-    for row in _rows(filled.sum(axis=0) == 0):
-        yield table.fault(row, stated[0], f"{choice}; this row fills none")
-    for row in _rows(filled.sum(axis=0) > 1):
-        names = [name for name in stated if table.given(name)[row]]
-        yield table.fault(row, names[1], f"{choice}; this row fills {' and '.join(names)}")
-    for row in _rows(table.given("viscous_lateral") & ~table.given("viscous")):
-        yield table.fault(
-            row, "viscous_lateral", "an empty cell, or the axial coefficient in viscous beside it"
-        )
-    lateral = table.given("stiffness_x_static") | table.given("stiffness_x_dynamic")
-    for row in _rows(table.given("viscous_lateral") & ~lateral):
-        yield table.fault(row, "viscous_lateral", "an empty cell, or the lateral stiffness beside it")
+def _stated(table: Table, axis: str, row: int) -> str:
+    """The column from which the row's dynamic stiffness comes."""
+    name = f"stiffness_{axis}_dynamic"
+    if axis == "z" and not table.given(name)[row] and table.given("natural_frequency_rated")[row]:
+        return "natural_frequency_rated"
+    return name
 
 
 def _load_rated(table: Table) -> Iterator[Fault]:
-    wanted = table.given("damping_ratio") & ~table.given("load_rated")
-    reason = "because damping_ratio holds at the rated load"
-    if wanted.any() and not table.has("load_rated"):
-        yield table.header_fault("load_rated", f"a column of this name, {reason}")
-    elif wanted.any():
-        for row in _rows(wanted):
-            yield table.fault(row, "load_rated", f"a load, {reason}")
+    reasons = {
+        "damping_ratio": "damping_ratio holds at the rated load",
+        "damping_kind": "a damping that may be viscous is read at the rated load",
+        "deflection_rated": "deflection_rated holds at the rated load",
+        "natural_frequency_rated": "natural_frequency_rated holds at the rated load",
+        "curve_file": "the stiffness of a curve is its tangent at the rated load",
+        "stiffness_follows_load": "an air spring's stiffness is stated at the rated load",
+    }
+    told = table.given("load_rated")
+    for name, reason in reasons.items():
+        wanted = {
+            "damping_kind": lambda: wants_rated_load(table) & ~table.given("damping_ratio"),
+            "stiffness_follows_load": lambda: table.flags("stiffness_follows_load"),
+        }.get(name, lambda name=name: table.given(name))()
+        if (wanted & ~told).any() and not table.has("load_rated"):
+            yield table.header_fault("load_rated", f"a column of this name, because {reason}")
+            return
+        for row in _rows(wanted & ~told):
+            yield table.fault(row, "load_rated", f"a load, because {reason}")
+        told = told | wanted
 
 
 def _loads(table: Table) -> Iterator[Fault]:
@@ -115,15 +126,40 @@ def _loads(table: Table) -> Iterator[Fault]:
         yield table.fault(row, "load_min", "at least 0 N, or pulls = yes: a negative load is tension")
 
 
-def _travel(table: Table) -> Iterator[Fault]:
+def _travel(table: Table, stiffness: Stiffness, laws: Laws) -> Iterator[Fault]:
     limit, load = table.numbers("deflection_max"), table.numbers("load_max")
-    sag = load / table.numbers("stiffness_z_static")
-    for row in _rows(limit < (1 - _ROUNDING) * sag):
-        why = "load_max / stiffness_z_static: with less the mount cannot carry its load"
-        yield table.fault(row, "deflection_max", f"at least {show(sag[row], 'length')}, {why}")
+    # An air spring is levelled: its load says nothing of its deflection.
+    deflection = np.where(table.flags("stiffness_follows_load"), np.nan, sag(stiffness, laws.curves, load))
+    for row in _rows(limit < (1 - _ROUNDING) * deflection):
+        curve = laws.curves[row] is not None
+        source = "the deflection of the curve" if curve else "load_max / stiffness_z_static"
+        why = f"{source}: with less the mount cannot carry its load"
+        yield table.fault(row, "deflection_max", f"at least {show(deflection[row], 'length')}, {why}")
     for row in _rows(table.numbers("free_height") < limit):
         most = show(limit[row], "length")
         yield table.fault(row, "free_height", f"at least deflection_max, which is {most}")
+
+
+def _on_curve(table: Table, laws: Laws) -> Iterator[Fault]:
+    least, most, limit, height = (
+        table.numbers(name) for name in ("load_min", "load_max", "deflection_max", "free_height")
+    )
+    pulls = table.flags("pulls")
+    for row, curve in enumerate(laws.curves):
+        if curve is None:
+            continue
+        end = f"the end of the curve, {show(curve.load[-1], 'force')} at {show(curve.deflection[-1], 'length')}"
+        if most[row] > curve.load[-1]:
+            yield table.fault(row, "load_max", f"at most {end}")
+        if least[row] < curve.load[0]:
+            start = f"the start of the curve, {show(curve.load[0], 'force')}"
+            yield table.fault(row, "load_min", f"at least {start}")
+        if curve.deflection[0] < 0.0 and not pulls[row]:
+            yield table.fault(row, "curve_file", "a curve from deflection 0 up, or pulls = yes")
+        if limit[row] > (1 + _ROUNDING) * curve.deflection[-1]:
+            yield table.fault(row, "deflection_max", f"at most {end}, which is its stop")
+        if height[row] < curve.deflection[-1]:
+            yield table.fault(row, "free_height", f"at least {end}")
 
 
 def _temperature(table: Table) -> Iterator[Fault]:
@@ -139,3 +175,24 @@ def _tolerance(table: Table) -> Iterator[Fault]:
         if families[row] not in FAMILY_TOLERANCE:
             expected = "rubber or spring, or a stated tolerance: another family has none by common practice"
             yield table.fault(row, "family", expected, nearest_name(families[row], FAMILY_TOLERANCE))
+
+
+def _amplitude(table: Table) -> Iterator[Fault]:
+    most = table.numbers("amplitude_max")
+    for row in _rows(table.numbers("amplitude_min") >= most):
+        yield table.fault(
+            row, "amplitude_min", f"less than amplitude_max, which is {show(most[row], 'length')}"
+        )
+    for name in ("amplitude_min", "amplitude_max"):
+        for row in _rows(table.given(name) & table.given("amplitude_file")):
+            yield table.fault(row, name, "an empty cell, for amplitude_file states the range of amplitudes")
+
+
+def _air_spring(table: Table) -> Iterator[Fault]:
+    follows = table.flags("stiffness_follows_load")
+    for row in _rows(follows & ~(table.numbers("load_min") > 0.0) & ~np.isnan(table.numbers("load_min"))):
+        yield table.fault(row, "load_min", "more than 0 N: an air spring without load has no stiffness")
+    for row in _rows(follows & table.given("curve_file")):
+        yield table.fault(row, "curve_file", "an empty cell beside stiffness_follows_load = yes")
+    for row in _rows(follows & table.flags("pulls")):
+        yield table.fault(row, "pulls", "no, for an air spring does not hold in tension")

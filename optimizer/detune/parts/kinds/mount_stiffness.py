@@ -6,7 +6,7 @@ list or the study states their ratio.
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -82,11 +82,9 @@ def _static(table: Table, curves: Sequence[LoadCurve | None]) -> Floats:
     )
 
 
-def _on_curve(figure: object, curve: LoadCurve, load: float) -> float:
+def _on_curve(figure: Callable[[LoadCurve, float], float], curve: LoadCurve, load: float) -> float:
     """Return a figure of the curve under a load, nan outside the curve."""
-    if not curve.load[0] <= load <= curve.load[-1]:
-        return math.nan
-    return deflection_under(curve, load) if figure is deflection_under else tangent_stiffness(curve, load)
+    return figure(curve, load) if curve.load[0] <= load <= curve.load[-1] else math.nan
 
 
 def _dynamic(table: Table) -> Floats:

@@ -1,5 +1,6 @@
 """Margins of every requirement of the answer, the least at the top."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -14,7 +15,15 @@ TITLE = "Margins"
 SHOWN = 40
 # Beyond this a margin says no more than that it is large.
 LARGE = 2.0
+LEAST = -1.2
 ROW = 0.215
+# Met, met by far, missed, missed by far: marker, its size and when.
+MARKS: tuple[tuple[str, float, Callable[[float], bool]], ...] = (
+    ("o", 20.0, lambda margin: 0.0 <= margin <= LARGE),
+    (">", 22.0, lambda margin: margin > LARGE),
+    ("X", 30.0, lambda margin: LEAST <= margin < 0.0),
+    ("<", 22.0, lambda margin: margin < LEAST),
+)
 
 
 @dataclass(frozen=True)
@@ -51,7 +60,7 @@ def caption(data: MarginsData) -> str:
     """Return what the plot shows, in words."""
     text = (
         f"Margins of {data.subject}: limit / value - 1 for an upper limit, value / limit - 1 for a lower one, the "
-        f"lesser of both for a window; zero is the limit. Margins above {LARGE:.0%} stand at the arrow."
+        f"lesser of both for a window; zero is the limit. Margins above {100.0 * LARGE:.0f} % stand at the arrow."
     )
     return f"{text} {data.left_out} larger ones are in the table." if data.left_out else text
 
@@ -66,19 +75,22 @@ def draw(data: MarginsData, figure: "Figure") -> Titles:
     width, height = size(data)
     ax = figure.add_axes((4.15 / width, 0.5 / height, 2.75 / width, 1.0 - 0.7 / height))
     places = range(len(data.labels))
-    low = min(-0.1, *(max(margin, -1.2) for margin in data.margins)) * 1.1
-    for place, margin in zip(places, data.margins, strict=True):
-        end = min(max(margin, -1.2), LARGE)
-        colour = BLUE if margin >= 0.0 else VERMILION
-        ax.plot([0.0, 100.0 * end], [place, place], color=colour, linewidth=1.2, solid_capstyle="butt")
-        marker = ">" if margin > LARGE else "<" if margin < -1.2 else "o" if margin >= 0.0 else "X"
-        ax.plot([100.0 * end], [place], marker=marker, color=colour, markersize=4.5, linestyle="none")
+    low = min(-0.1, *(max(margin, LEAST) for margin in data.margins)) * 1.1
+    ends = [100.0 * min(max(margin, LEAST), LARGE) for margin in data.margins]
+    for marker, size_, wanted in MARKS:
+        at = [place for place in places if wanted(data.margins[place])]
+        colour = BLUE if marker in "o>" else VERMILION
+        if at:
+            ax.hlines(at, 0.0, [ends[place] for place in at], color=colour, linewidth=1.2)
+            ax.scatter([ends[place] for place in at], at, s=size_, marker=marker, color=colour, linewidths=0, zorder=3)
+    for place in places:
         ax.text(1.03, place, data.texts[place], transform=ax.get_yaxis_transform(), va="center", fontsize=7.5)
     ax.axvline(0.0, color=BLACK, linewidth=1.0)
     ax.set_yticks(list(places), [shorten(label, 74) for label in data.labels], fontsize=7.5)
     ax.set_ylim(len(data.labels) - 0.4, -0.6)
     ax.set_xlim(100.0 * low, 106.0 * LARGE)
     ax.set_xlabel("margin [%]; 0 is the limit")
+    ax.xaxis.set_label_coords(0.5, -0.28 / (height - 0.7))
     ax.tick_params(axis="y", length=0)
     ax.spines["left"].set_visible(False)
     ax.grid(axis="x", color="#DDDDDD", linewidth=0.5)

@@ -1,5 +1,6 @@
 """Response against its limit over speed: one small plot for each quantity, at its least margin."""
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -152,23 +153,26 @@ def _draw_panel(ax: "Axes", panel: Panel) -> None:
         floor = max(min(floor, float(positive.min())), 1e-3 * panel.limit, 0.02 * panel.peak)
     ax.set_ylim(0.7 * floor, 2.2 * max(panel.limit, panel.peak, min(float(panel.value.max()), 30.0 * panel.limit)))
     _plain_ticks(ax)
-    ax.set_ylabel(f"[{panel.unit or '-'}]", labelpad=2)
+    ax.set_ylabel(f"[{panel.unit or '-'}]")
+    ax.yaxis.set_label_coords(-0.105, 0.5)
     if panel.is_shaft:
         revolutions_above(ax, label=False)
     axis = f"{panel.source}: speed [Hz], on top [rev/min]" if panel.is_shaft else f"{panel.source} [Hz]"
-    ax.set_xlabel(shorten(axis, 62), fontsize=7.5, labelpad=1)
+    ax.set_xlabel(shorten(axis, 62), fontsize=7.5)
+    ax.xaxis.set_label_coords(0.5, -0.18)
     first, second = panel.title.split("\n")
     where = f" (worst of {panel.places} places)" if panel.places > 1 else ""
     title = f"{shorten(first, 58)}\n{shorten(second + where, 44)}; margin {margin_text(panel.margin)}"
-    ax.set_title(title, loc="left", fontsize=8.0, pad=5, linespacing=1.25)
+    # Text of its own instead of an axes title, whose place is searched for anew at every drawing.
+    ax.text(0.0, 1.17, title, transform=ax.transAxes, fontsize=8.0, va="bottom", linespacing=1.25)
 
 
 def _plain_ticks(ax: "Axes") -> None:
-    """Numbers as people write them instead of powers of ten."""
-    from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
-
+    """A few numbers as people write them instead of powers of ten with many small ticks."""
     low, high = ax.get_ylim()
+    decades = range(math.floor(math.log10(low)), math.ceil(math.log10(high)) + 1)
     steps = (1.0, 2.0, 5.0) if high / low < 60.0 else (1.0,)
-    ax.yaxis.set_major_locator(LogLocator(base=10.0, subs=steps, numticks=12))
-    ax.yaxis.set_minor_formatter(NullFormatter())
-    ax.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+    values = [step * 10.0**decade for decade in decades for step in steps]
+    shown = [value for value in values if low <= value <= high]
+    ax.set_yticks(shown, [f"{value:g}" for value in shown])
+    ax.set_yticks([], minor=True)

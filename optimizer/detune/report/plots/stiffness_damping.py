@@ -7,8 +7,8 @@ import numpy as np
 
 from detune.brief.allowable import LoadRange
 from detune.brief.brief import Brief
-from detune.parts.kinds.mount import Mount, mount_arrays
-from detune.problem.build import Problem
+from detune.parts.kinds.mount import Mount
+from detune.problem.build import Problem, with_mounts
 from detune.problem.requirement import Requirement
 from detune.problem.stages import stages
 from detune.report.plots.style import BLACK, GREY, LINES, VERMILION, Floats, Titles, shorten
@@ -190,15 +190,11 @@ def _fields(
     total = sum(station.parallel for station in brief.stations)
     nodes = [(k / total, eta) for eta in loss.tolist() for k in stiffness.tolist()]
     scaled = [tuple(scaled_mount(mount, k, eta) for k, eta in nodes) for mount in design.mounts]
-    groups = tuple(
-        replace(group, mounts=mounts, arrays=mount_arrays(mounts))
-        for group, mounts in zip(problem.model.groups, scaled, strict=True)
-    )
     ballast = np.array([design.ballast])
     step = int(np.abs(problem.model.ballast_mass - ballast).argmin())
     numbers = np.arange(len(nodes), dtype=np.intp)
-    designs = Designs(np.repeat(numbers[:, None], len(groups), axis=1), np.full(len(nodes), step, dtype=np.intp))
-    changed = replace(problem, model=replace(problem.model, groups=groups), totals=())
+    designs = Designs(np.repeat(numbers[:, None], len(scaled), axis=1), np.full(len(nodes), step, dtype=np.intp))
+    changed = replace(with_mounts(problem, tuple(scaled)), totals=())
     found: dict[str, Floats] = {}
     for stage in stages(changed):
         if stage.bound:
@@ -250,7 +246,7 @@ def caption(data: MapData) -> str:
 def size(data: MapData) -> tuple[float, float]:
     """Return width and height in inches."""
     named = min(len(data.fields), LINES_SHOWN)
-    return 8.6, 5.35 + 0.165 * (named + 3)
+    return 8.6, 5.2 + 0.165 * (named + 3)
 
 
 def draw(data: MapData, figure: "Figure") -> Titles:
@@ -337,9 +333,10 @@ def _dots(ax: "Axes", data: MapData) -> Titles:
 
 
 def _plain(ax: "Axes") -> None:
-    from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
-
-    for axis in (ax.xaxis, ax.yaxis):
-        axis.set_major_locator(LogLocator(base=10.0, subs=(1.0, 2.0, 5.0), numticks=24))
-        axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
-        axis.set_minor_formatter(NullFormatter())
+    for low_high, setter in ((ax.get_xlim(), ax.set_xticks), (ax.get_ylim(), ax.set_yticks)):
+        low, high = low_high
+        decades = range(int(np.floor(np.log10(low))), int(np.ceil(np.log10(high))) + 1)
+        values = [step * 10.0**decade for decade in decades for step in (1.0, 2.0, 5.0)]
+        shown = [value for value in values if low <= value <= high]
+        setter(shown, [f"{value:g}" for value in shown])
+        setter([], minor=True)

@@ -83,11 +83,25 @@ def spread(wanted: Sequence[float], gap: float, low: float, high: float) -> list
 
 
 def revolutions_above(ax: "Axes", label: bool = True) -> None:
-    """Put a second scale of rev/min on top of an axis of speed in Hz."""
-    top = ax.secondary_xaxis("top", functions=(lambda hz: 60.0 * hz, lambda rpm: rpm / 60.0))
-    top.tick_params(labelsize=7.5)
+    """Put a scale of rev/min on top of an axis of speed in Hz, whose limits are final."""
+    low, high = ax.get_xlim()
+    step = _round_step(60.0 * (high - low) / 8.0)
+    transform = ax.get_xaxis_transform()
+    ax.plot([low, high], [1.0, 1.0], transform=transform, color=BLACK, linewidth=0.7, clip_on=False)
+    ticks = np.arange(np.ceil(60.0 * low / step), np.floor(60.0 * high / step) + 1.0) * step
+    ax.plot(ticks / 60.0, np.ones(len(ticks)), transform=transform, linestyle="none", marker=2, markersize=3.5,
+            color=BLACK, markeredgewidth=0.7, clip_on=False)  # fmt: skip
+    for tick in ticks:
+        ax.annotate(f"{tick:g}", (tick / 60.0, 1.0), xycoords=transform, xytext=(0, 5), textcoords="offset points",
+                    ha="center", va="bottom", fontsize=7.5, annotation_clip=False)  # fmt: skip
     if label:
-        top.set_xlabel("rev/min", fontsize=8.0)
+        ax.annotate("rev/min", (0.5, 1.0), xycoords="axes fraction", xytext=(0, 17), textcoords="offset points",
+                    ha="center", va="bottom", fontsize=8.0, annotation_clip=False)  # fmt: skip
+
+
+def _round_step(wanted: float) -> float:
+    decade = 10.0 ** np.floor(np.log10(wanted))
+    return float(next(step * decade for step in (1.0, 2.0, 5.0, 10.0) if step * decade >= wanted * 0.999))
 
 
 def shorten(text: str, length: int) -> str:

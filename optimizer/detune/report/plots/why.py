@@ -67,14 +67,18 @@ def draw(data: WhyData, figure: "Figure") -> Titles:
     labels = [*data.labels, "met every requirement"]
     counts = [*data.counts, data.met]
     for place, count in enumerate(counts):
-        is_met = place == len(data.labels)
-        if count:
-            ax.plot([0.7, count], [place, place], color=GREY if is_met else BLUE, linewidth=1.4)
-            ax.plot([count], [place], marker="D" if is_met else "o", color=GREY if is_met else BLUE, markersize=5)
         ax.annotate(
             str(count), (max(count, 0.7), place), xytext=(7, 0), textcoords="offset points", va="center", fontsize=8
         )
+    drawn = [place for place, count in enumerate(counts[:-1]) if count]
+    ax.hlines(drawn, 0.7, [counts[place] for place in drawn], color=BLUE, linewidth=1.4)
+    ax.scatter([counts[place] for place in drawn], drawn, s=24, color=BLUE, linewidths=0, zorder=3)
+    if data.met:
+        ax.hlines([len(data.labels)], 0.7, [data.met], color=GREY, linewidth=1.4)
+        ax.scatter([data.met], [len(data.labels)], s=26, marker="D", color=GREY, linewidths=0, zorder=3)
     ax.set_xscale("log")
+    ax.set_xticks([10.0**n for n in range(0, 13)], [f"{10**n}" if n < 7 else f"1e{n}" for n in range(0, 13)])
+    ax.set_xticks([], minor=True)
     ax.set_xlim(0.7, 4.0 * max(max(counts), 10))
     ax.set_ylim(len(labels) - 0.4, -0.6)
     ax.set_yticks(range(len(labels)), [shorten(label, 70) for label in labels], fontsize=7.5)
