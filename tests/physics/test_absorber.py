@@ -30,7 +30,6 @@ def state_matrix(mu: float, f: float, z2: float, z1: float = 0.0) -> np.ndarray:
     """Own state matrix of primary (1, 1) and absorber, freedoms x1, x2, x1', x2'."""
     k2, c2 = mu * f**2, 2.0 * z2 * mu * f
     stiffness = np.array([[1.0 + k2, -k2], [-k2 / mu, k2 / mu]])
-    stiffness[0] = [1.0 + k2, -k2]
     damping = np.array([[2.0 * z1 + c2, -c2], [-c2 / mu, c2 / mu]])
     return np.block([[np.zeros((2, 2)), np.eye(2)], [-stiffness, -damping]])
 

@@ -2,7 +2,7 @@
 
 from pydantic import model_validator
 
-from detune.brief.statement import Length, Name, Ratio, Statement, refuse
+from detune.brief.statement import Length, Name, Ratio, Statement, Temperature, refuse
 
 
 class State(Statement):
@@ -11,7 +11,8 @@ class State(Statement):
     `lost`: stations whose part carries nothing. `stiffness_factor`: every part's stiffness, static
     and dynamic, times this (cold rubber 1.3 to 2; common practice); `groups` restricts it. `creep`: added
     to every static deflection, as a share of it. `packing`: thickness put under a station, m, so that the
-    machine stands level or the floor's unevenness is counted.
+    machine stands level or the floor's unevenness is counted. `temperature` (degC, 20 if left out): where
+    parts state a table over temperature it is read there.
     """
 
     name: Name
@@ -19,6 +20,7 @@ class State(Statement):
     stiffness_factor: Ratio = 1.0
     groups: tuple[Name, ...] | None = None
     creep: Ratio = 0.0
+    temperature: Temperature = 20.0
     packing: dict[Name, Length] = {}
 
     @model_validator(mode="after")
@@ -30,9 +32,10 @@ class State(Statement):
         if self.groups is not None and self.stiffness_factor == 1.0:
             raise refuse("groups", 'a "stiffness_factor" for these groups')
         changed = self.lost or self.packing or self.creep > 0.0 or self.stiffness_factor != 1.0
+        changed = changed or self.temperature != 20.0
         if not changed:
             raise refuse(
-                self.name, "a state that changes something: lost, stiffness_factor, creep or packing"
+                self.name, "a state that changes something: lost, stiffness_factor, creep, temperature or packing"
             )
         return self
 

@@ -15,6 +15,7 @@ from detune.parts.assumed import Assumed
 from detune.parts.columns import Column, column_named
 from detune.parts.headers import match_headers
 from detune.parts.kinds import KINDS, Part
+from detune.parts.kinds.mount import Mount
 from detune.parts.sheet import Sheet
 from detune.parts.source_file import read_rows
 from detune.parts.table import Table
@@ -29,6 +30,7 @@ class Catalog:
 
     kind: a name in `detune.parts.kinds.KINDS`. parts: in the order of the file. assumed: what the list leaves
     out and was filled in. file: path as given. unread: headers of a mapped sheet that no column reads.
+    further_files: those that the rows name and that were read with it, each once.
     """
 
     name: str
@@ -37,6 +39,14 @@ class Catalog:
     assumed: tuple[Assumed, ...]
     file: str
     unread: tuple[str, ...] = ()
+    further_files: tuple[str, ...] = ()
+
+    @property
+    def mounts(self) -> tuple[Mount, ...]:
+        """The parts of a list of mounts. Raises BriefError for a list of another kind."""
+        if self.kind != "mount":
+            raise BriefError([Fault(self.file, None, "kind", self.kind, "a list of mounts")])
+        return tuple(part for part in self.parts if isinstance(part, Mount))
 
 
 def read_catalog(
@@ -50,10 +60,12 @@ def read_catalog(
 ) -> Catalog:
     """Read a parts list: CSV (UTF-8; comma, semicolon or tab; decimal point), XLSX, or Parquet (an extra).
 
-    The ending of the file's name tells which. sheet: of a workbook, None for the first. Our own headers are a column's name with its unit, "stiffness_z_static [N/mm]". A supplier's sheet is
-    read as it stands: header_map: our column -> its header. units: our column -> its unit, where the header
-    does not carry one. constants: our column -> one value with its unit for the whole list. Figures become
-    SI, degC for temperatures. Raises BriefError with every fault found, each with file, line and column.
+    The ending of the file's name tells which. sheet: of a workbook, None for the first. Our own headers are
+    a column's name with its unit, "stiffness_z_static [N/mm]". A supplier's sheet is read as it stands:
+    header_map: our column -> its header. units: our column -> its unit, where the header does not carry one.
+    constants: our column -> one value with its unit for the whole list. Figures become SI, degC for
+    temperatures. Raises BriefError with every fault found, each with file, line and column (in a workbook the
+    sheet and the cell, Sheet1!D7).
     """
     file = str(path)
     if kind not in KINDS:
@@ -67,7 +79,8 @@ def read_catalog(
     if faults:
         raise BriefError(_in_sheet_order(faults, rows))
     parts, assumed = rules.build(table, name)
-    return Catalog(name, kind, parts, assumed, file, matching.unread)
+    further = dict.fromkeys(further for part in parts for further in rules.files(part))
+    return Catalog(name, kind, parts, assumed, file, matching.unread, tuple(further))
 
 
 def _duplicates(table: Table) -> list[Fault]:

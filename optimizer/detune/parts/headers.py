@@ -124,7 +124,9 @@ class _Matcher:
                 continue
             stated = self.stated.units.get(name)
             if stated is not None and bracket is not None and stated.strip() != bracket:
-                self.header_fault(header, stated, f"the unit of the header, {bracket}, or no unit in the study")
+                self.header_fault(
+                    header, stated, f"the unit of the header, {bracket}, or no unit in the study"
+                )
             self.add(column, header, index, bracket if bracket is not None else stated)
 
     def unknown_header(self, header: str, name: str) -> None:

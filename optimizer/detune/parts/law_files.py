@@ -19,7 +19,7 @@ from detune.parts.columns import Column, Limits
 from detune.parts.headers import match_headers
 from detune.parts.laws import AmplitudeTable, LawTable, LoadCurve, Row
 from detune.parts.source_file import read_rows
-from detune.parts.table import Table
+from detune.parts.table import Table, rows_of
 
 _POSITIVE = Limits(low=0.0, low_open=True)
 _AGREES = 0.05
@@ -173,8 +173,8 @@ def _stiffness_table(file: str, faults: list[Fault]) -> LawTable | None:
         return None
     name = stated[0]
     blocks, found = _blocks(table)
-    for row in np.flatnonzero(~table.given(name)):
-        found.append(table.fault(int(row), name, "a value in every row: nothing is filled in between others"))
+    for row in rows_of(~table.given(name)):
+        found.append(table.fault(row, name, "a value in every row: nothing is filled in between others"))
     values = table.numbers(name)
     if not found and name == "stiffness_ratio":
         found += _without_unity(table, name, values.tolist())
@@ -210,10 +210,12 @@ def _blocks(table: Table) -> tuple[list[slice], list[Fault]]:
     faults: list[Fault] = []
     warmth, frequency = table.numbers("temperature"), table.numbers("frequency")
     if table.has("temperature"):
-        empty = np.flatnonzero(~table.given("temperature"))
-        faults += [table.fault(int(row), "temperature", "a temperature in every row") for row in empty]
+        empty = rows_of(~table.given("temperature"))
+        faults += [table.fault(row, "temperature", "a temperature in every row") for row in empty]
         starts = [0, *(np.flatnonzero(np.diff(warmth) != 0.0) + 1).tolist()]
-        faults += _not_rising(table, "temperature", starts[1:], "rows of one temperature stand together, rising")
+        faults += _not_rising(
+            table, "temperature", starts[1:], "rows of one temperature stand together, rising"
+        )
     else:
         starts = [0]
     if faults:
@@ -269,7 +271,7 @@ def check_absolute_tables(table: Table, laws: Laws, dynamic: Sequence[float]) ->
     """Return a fault for each row whose dynamic stiffness lies outside the stiffness table it names."""
     faults = []
     for row, (law, stiffness) in enumerate(zip(laws.tables, dynamic, strict=True)):
-        if law is None or not law.absolute or not stiffness == stiffness:
+        if law is None or not law.absolute or stiffness != stiffness:
             continue
         values = [value for figures in law.stiffness_ratio for value in figures]
         if min(values) / (1.0 + _AGREES) <= stiffness <= max(values) * (1.0 + _AGREES):

@@ -3,15 +3,14 @@
 from __future__ import annotations
 
 import datetime
+from collections.abc import Callable
 from decimal import Decimal
+from importlib import import_module
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from detune.ground.errors import BriefError, Fault
 from detune.parts.sheet import Sheet, content_of
-
-if TYPE_CHECKING:
-    from types import ModuleType
 
 _DATES = (datetime.date, datetime.time, datetime.timedelta)
 
@@ -25,9 +24,9 @@ def read_parquet(path: str | Path) -> Sheet:
     """
     file = str(path)
     content_of(Path(path), file)
-    parquet, error_type = _library(file)
+    read_table, error_type = _library(file)
     try:
-        table = parquet.read_table(path)
+        table = read_table(path)
     except (error_type, OSError) as error:
         reason = str(error).partition("\n")[0]
         expected = f"a Parquet file; this file cannot be read as one ({reason})"
@@ -49,17 +48,14 @@ def read_parquet(path: str | Path) -> Sheet:
     return Sheet(file, headers, None, lines, tuple(columns), (), refused=refused)
 
 
-def _library(file: str) -> tuple[ModuleType, type[Exception]]:
+def _library(file: str) -> tuple[Callable[[str | Path], Any], type[Exception]]:
+    """Return what reads a file, and the error it raises for one that it cannot read."""
     try:
-        import pyarrow
-        import pyarrow.parquet
+        error_type: type[Exception] = import_module("pyarrow").ArrowException
+        return import_module("pyarrow.parquet").read_table, error_type
     except ImportError:
-        expected = (
-            "a list in CSV or XLSX, or the extra that reads Parquet: pip install 'detune[parquet]'"
-        )
-        raise BriefError([Fault(file, None, "file", "", expected)]) from None
-    error_type: type[Exception] = pyarrow.ArrowException
-    return pyarrow.parquet, error_type
+        expected = "a list in CSV or XLSX, or the extra that reads Parquet: pip install 'detune[parquet]'"
+    raise BriefError([Fault(file, None, "file", "", expected)])
 
 
 def _cell(value: Any) -> tuple[str, str]:

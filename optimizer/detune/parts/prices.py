@@ -94,7 +94,9 @@ def check_prices(table: Table) -> list[Fault]:
         for name in names:
             price = float(table.numbers(name)[row])
             if price > lowest:
-                expected = f"at most {lowest:g}, the price in {below}: a price does not rise with the quantity"
+                expected = (
+                    f"at most {lowest:g}, the price in {below}: a price does not rise with the quantity"
+                )
                 faults.append(table.fault(row, name, expected))
             elif price == price:
                 lowest, below = price, name

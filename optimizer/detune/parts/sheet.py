@@ -110,9 +110,7 @@ def content_of(path: Path, file: str) -> bytes:
     except IsADirectoryError:
         fault = Fault(file, None, "file", "", "a list of figures; this is a folder")
     except OSError as error:
-        fault = Fault(
-            file, None, "file", "", f"a file that can be read; the system says: {error.strerror}"
-        )
+        fault = Fault(file, None, "file", "", f"a file that can be read; the system says: {error.strerror}")
     raise BriefError([fault])
 
 

@@ -23,6 +23,11 @@ _COMMA = re.compile(r"[+-]?[0-9][0-9,.]*")
 _YES_NO = {"yes": True, "y": True, "true": True, "no": False, "n": False, "false": False}
 
 
+def rows_of(mask: NDArray[np.bool_]) -> list[int]:
+    """Return the numbers of the rows, from 0, where a mask (n,) is true."""
+    return [int(row) for row in np.flatnonzero(mask)]
+
+
 class Table:
     """The rows of one sheet, by column; n rows. Filled when made, then only read.
 
@@ -186,9 +191,9 @@ class Table:
 
     def _check_missing(self, column: Column) -> None:
         if column.required:
-            for row in np.flatnonzero(~self._given[column.name]):
+            for row in rows_of(~self._given[column.name]):
                 expected = f"a value in every row: {column.meaning}"
-                self.faults.append(self.fault(int(row), column.name, expected))
+                self.faults.append(self.fault(row, column.name, expected))
 
     def _check_refused(self, column: Column, source: Source) -> None:
         self._refused[column.name] = set()
@@ -215,8 +220,8 @@ class Table:
     def _refuse(
         self, column: Column, wrong: NDArray[np.bool_], values: NDArray[np.float64], expected: str
     ) -> None:
-        for row in np.flatnonzero(wrong):
-            self.faults.append(self.fault(int(row), column.name, expected))
+        for row in rows_of(wrong):
+            self.faults.append(self.fault(row, column.name, expected))
         values[wrong] = math.nan
 
 

@@ -124,7 +124,9 @@ def _is_filled(row: int, cells: Iterable[Value], marks: Marks) -> bool:
 def _cell(value: Value, place: Place, marks: Marks) -> tuple[str, str]:
     """Return a cell as text, and why no column may read it; the reason is empty for a sound cell."""
     if place in marks.errors:
-        return marks.errors[place], "the cell holds the error of a formula: mend the formula or empty the cell"
+        return marks.errors[
+            place
+        ], "the cell holds the error of a formula: mend the formula or empty the cell"
     if place in marks.uncalculated:
         why = "the cell holds a formula that was never calculated: open the workbook, calculate and save it"
         return marks.uncalculated[place], why

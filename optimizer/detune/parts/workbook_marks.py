@@ -47,7 +47,12 @@ def read_marks(content: bytes, sheet: str) -> Marks:
                 value, formula = _child(cell, "v"), _child(cell, "f")
                 if cell.get("t") == "e":
                     marks.errors[place] = (value or "#ERROR").strip()
-                elif formula is not None and not value and _child(cell, "is") is None and cell.get("t") != "str":
+                elif (
+                    formula is not None
+                    and not value
+                    and _child(cell, "is") is None
+                    and cell.get("t") != "str"
+                ):
                     marks.uncalculated[place] = "=" + formula.strip()
                 elif cell.get("t", "n") == "n" and int(cell.get("s", "0")) in shown:
                     per_cent.add(place)

@@ -17,7 +17,7 @@ from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 from detune.physics.modes import undamped_modes
 from detune.physics.simulation import Motion, simulate_states
 
-TIMES_PER_DECADE = 3
+TIMES_PER_DECADE = 5
 MARGIN_IN_DECADES = 1.5
 
 
@@ -96,7 +96,7 @@ def chain_stiffness(chain: RelaxationChain, omega: ArrayLike) -> ComplexArray:
 def fit_relaxation_chain(omega: ArrayLike, stiffness: ArrayLike) -> RelaxationChain:
     """The chain nearest to a measured dynamic stiffness (F,) complex in N/m at omega (F,) in rad/s.
 
-    Nonnegative least squares on the relative error, real and imaginary part, over relaxation times three to a
+    Nonnegative least squares on the relative error, real and imaginary part, over relaxation times five to a
     decade from 1.5 decades below to 1.5 above the band. Raises ValueError for fewer than two frequencies or
     no stiffness.
     """

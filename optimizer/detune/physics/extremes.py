@@ -97,6 +97,25 @@ def resultant_level(covariance: ArrayLike, exceedance: float) -> FloatArray:
     return np.asarray(high * total)
 
 
+def polarised_rows(rows: ArrayLike) -> FloatArray:
+    """Six response rows (6, n) from three (3, n), whose variances give the covariance: x, y, z, x+y, y+z,
+    z+x.
+    """
+    x, y, z = np.asarray(rows, dtype=float)
+    return np.stack([x, y, z, x + y, y + z, z + x])
+
+
+def covariance_of_polarised(variances: ArrayLike) -> FloatArray:
+    """Covariance (..., 3, 3) of three responses from the variances (6, ...) of their `polarised_rows`.
+
+    2 cov(x, y) = var(x + y) - var(x) - var(y).
+    """
+    xx, yy, zz, sum_xy, sum_yz, sum_zx = np.asarray(variances, dtype=float)
+    xy, yz, zx = 0.5 * (sum_xy - xx - yy), 0.5 * (sum_yz - yy - zz), 0.5 * (sum_zx - zz - xx)
+    rows = [np.stack(row, axis=-1) for row in ((xx, xy, zx), (xy, yy, yz), (zx, yz, zz))]
+    return np.stack(rows, axis=-2)
+
+
 def _octant(count: int = 32) -> tuple[FloatArray, FloatArray]:
     """Directions (N, 3) in the first octant in the axes of the covariance, and weights (N,) that add to
     one.

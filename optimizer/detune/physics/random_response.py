@@ -87,9 +87,10 @@ def variance(
     transfer: omega (D, F) in rad/s -> complex H (R, D, F), response per unit of the input whose density is
     given; it is called a few times with different F. spectrum: one for all designs, in (unit)^2/Hz. centres,
     half_widths (D, m): imaginary part and decay rate in rad/s of the poles, -half_width + j centre; a pole
-    that does not oscillate has centre 0. Rough values cost points and not accuracy. tolerance: relative, on
-    the estimated error of each response. Raises ValueError for a half width that is not above zero (an
-    undamped resonance has no variance), and QuadratureNotConverged.
+    that does not oscillate has centre 0. Rough values cost points and not accuracy, but every lightly damped
+    pole in the band must be among them: a needle that nobody announces can stand between all points.
+    tolerance: relative, on the estimated error of each response. Raises ValueError for a half width that is
+    not above zero (an undamped resonance has no variance), and QuadratureNotConverged.
     """
     centre, width = _poles(spectrum, centres, half_widths)
     panels = _first_panels(spectrum, centre, width)

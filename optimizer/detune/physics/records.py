@@ -25,13 +25,24 @@ def sample_rate(time: ArrayLike) -> float:
     stamp = checked(time)
     step = np.diff(stamp)
     usual = float(np.median(step))
-    # Printed stamps are rounded; the judgement allows for the rounding of the largest of them.
-    allowed = CLOCK_TOLERANCE * usual + 4.0 * float(np.spacing(np.max(np.abs(stamp))))
+    # Printed stamps are rounded to their last decimal, and each step by up to one unit of it.
+    allowed = CLOCK_TOLERANCE * usual + _printed_unit(stamp)
+    if allowed >= 0.5 * usual:
+        raise RecordFault(f"time stamps are too coarse for steps of {usual:g} s; give the sample rate")
     off = np.abs(step - usual) > allowed
-    if usual <= 0.0 or np.any(off):
+    if np.any(off):
         row = int(np.argmax(off)) + 2
         raise RecordFault(f"time stamps are not evenly spaced: row {row} at {stamp[row - 1]:g} s")
     return float((stamp.size - 1) / (stamp[-1] - stamp[0]))
+
+
+def _printed_unit(stamp: FloatArray) -> float:
+    """The decimal unit to which time stamps were printed; rounding of the floats themselves beyond 1e-9."""
+    for decimals in range(10):
+        scaled = stamp * 10.0**decimals
+        if np.all(np.abs(scaled - np.rint(scaled)) < 1e-6):
+            return float(10.0**-decimals)
+    return 4.0 * float(np.spacing(np.max(np.abs(stamp))))
 
 
 def checked(values: ArrayLike) -> FloatArray:

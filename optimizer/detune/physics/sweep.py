@@ -18,7 +18,9 @@ from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 from detune.physics.simulation import StateModes, phi1, state_modes
 
 LARGEST_POWER = 4
-CANDIDATES = 3
+CANDIDATES = 5
+FEWEST_LOOKS = 1500
+MOST_LOOKS = 20_000
 UNDAMPED = 1e-12
 
 
@@ -202,7 +204,11 @@ def _moments_to_look_at(modes: StateModes, at: FloatArray, omega: FloatArray) ->
     """Times close enough together that no maximum of the envelope falls between: around each passage, and
     over all.
     """
-    looks = [np.linspace(at[0], at[-1], 1500), at]
+    speeds = np.r_[omega, modes.poles.imag[modes.poles.imag > 0.0]]
+    # Force and free motions beat at most at the difference of two of these; ten looks at each beat.
+    beats = (at[-1] - at[0]) * np.ptp(speeds) / (2.0 * np.pi)
+    count = int(np.clip(10.0 * beats, FEWEST_LOOKS, MOST_LOOKS))
+    looks = [np.linspace(at[0], at[-1], count), at]
     for i in range(at.size - 1):
         rate = (omega[i + 1] - omega[i]) / (at[i + 1] - at[i])
         if rate == 0.0:

@@ -51,6 +51,8 @@ def read_system(data: dict[str, Any]) -> dict[str, Matrix]:
     for name in ("mass", "fixed_dynamic", "fixed_hysteretic", "fixed_viscous"):
         if not (system[name] == system[name].T).all():
             raise ValueError(f"{name} is not symmetric")
+    if positive_pivots(fractions(system["mass"].tolist()))[2] != n:
+        raise ValueError("mass is not positive definite")
     outer = np.einsum("ai,aj->aij", system["axes"], system["axes"])
     plain_terms = [*system["mass_terms"], system["mass"], system["fixed_viscous"]]
     system["terms"] = np.concatenate([outer, np.stack(plain_terms)])
@@ -101,9 +103,12 @@ def upper_bounds(system: dict[str, Matrix], output: dict[str, Any], low: Matrix,
         # Outer products b b^T were rounded once.
         d0 = total(d0, scaled((term, 2.0 * UNIT * np.abs(term)), factor[:, t, None, None]))
         spread = total(spread, scaled((own, 2.0 * UNIT * np.abs(own)), rho[:, t, None, None]))
-    weight = inverse_factor(spread[0], system["mass"], high)
+    weight, pad = inverse_factor(spread[0], system["mass"], high)
+    spread = total(spread, scaled(exact(system["mass"]), pad[:, None, None]))
     w, wt = exact(weight), exact(np.swapaxes(weight, 1, 2))
-    reach = frobenius(total(product(product(w, spread), wt), exact(-np.broadcast_to(np.eye(fixed.shape[0]), weight.shape))))
+    reach = frobenius(
+        total(product(product(w, spread), wt), exact(-np.broadcast_to(np.eye(fixed.shape[0]), weight.shape)))
+    )
     gamma = (1.0 + reach) * OUTWARD
     matrix = product(product(w, d0), wt)
     base, force = array(output["base"]), array(output["force"])
@@ -130,21 +135,32 @@ def upper_bounds(system: dict[str, Matrix], output: dict[str, Any], low: Matrix,
         for shift in SHIFTS:
             radius = np.sqrt(gamma**2 + 2.0 * shift * sine * gamma + shift**2) * OUTWARD
             tilted = scaled(matrix, turn[:, None, None])
-            tilted = total(tilted, exact(np.broadcast_to(1j * shift * np.eye(fixed.shape[0]), tilted[0].shape)))
+            tilted = total(
+                tilted, exact(np.broadcast_to(1j * shift * np.eye(fixed.shape[0]), tilted[0].shape))
+            )
             middle, reach_out = entries(tilted, left, right, radius)
             found = combine(
-                output, middle * turn[:, None, None], reach_out, kappa_rho, start, start_error, moving, forced, low, high
+                output,
+                middle * turn[:, None, None],
+                reach_out,
+                kappa_rho,
+                start,
+                start_error,
+                moving,
+                forced,
+                low,
+                high,
             )
             best = np.minimum(best, found)
     return best
 
 
-def inverse_factor(spread: Matrix, mass: Matrix, high: Matrix) -> Matrix:
-    """Approximate W with W spread W^T = I, spread padded by a little of the mass; any W serves."""
+def inverse_factor(spread: Matrix, mass: Matrix, high: Matrix) -> tuple[Matrix, Matrix]:
+    """Approximate W with W (spread + pad mass) W^T = I, and the small pad (N,); any W and pad >= 0 serve."""
     trace = np.einsum("bii->b", spread) / np.trace(mass)
     pad = 1e-7 * np.maximum(trace, 1e-6 * high[:, -1])
     padded = spread + pad[:, None, None] * mass
-    return np.linalg.inv(np.linalg.cholesky(padded))
+    return np.linalg.inv(np.linalg.cholesky(padded)), pad
 
 
 def stack_columns(first: Ball, rows: Ball, index: Matrix) -> Ball:
@@ -176,13 +192,13 @@ def entries(matrix: Ball, left: Ball, right: Ball, radius: Matrix) -> tuple[Matr
     gap = np.where(bounded[:, None], (sigma - reach[:, None]) * (sigma + reach[:, None]), 1.0) / OUTWARD
     a, a_radius = product((np.swapaxes(left[0], 1, 2), np.swapaxes(left[1], 1, 2)), exact(v))
     f, f_radius = product(exact(np.swapaxes(u.conj(), 1, 2)), right)
-    a_radius = a_radius + (slack_v * np.sqrt((np.abs(left[0]) ** 2).sum(axis=(1, 2))))[:, None, None] * OUTWARD
-    f_radius = f_radius + (slack_u * np.sqrt((np.abs(right[0]) ** 2).sum(axis=(1, 2))))[:, None, None] * OUTWARD
+    a_radius = a_radius + (slack_v * frobenius(left))[:, None, None]
+    f_radius = f_radius + (slack_u * frobenius(right))[:, None, None]
     share = sigma / gap
     middle = (a * share[:, None, :]) @ f
     a_most, f_most = np.abs(a) + a_radius, np.abs(f) + f_radius
     error = (a_most * share[:, None, :]) @ f_most - (np.abs(a) * share[:, None, :]) @ np.abs(f)
-    error = np.maximum(error, 0.0) + 1e-12 * ((a_most * share[:, None, :]) @ f_most)
+    error = np.maximum(error, 0.0) + 1e-11 * ((a_most * share[:, None, :]) @ f_most)
     row = np.sqrt((a_most**2 / gap[:, None, :]).sum(axis=2))
     column = np.sqrt((f_most**2 / gap[:, :, None]).sum(axis=1))
     out = (reach[:, None, None] * row[:, :, None] * column[:, None, :] + error) * OUTWARD
@@ -208,7 +224,11 @@ def combine(
     extra = ((np.abs(middle[:, :, 1:]) + radius[:, :, 1:]) * sway[:, None, :]).sum(axis=2)
     main = np.abs(middle[:, 0, 0] - start - offset) + radius[:, 0, 0] + extra[:, 0] + start_error
     for position, axis in enumerate(forced):
-        own = np.abs(middle[:, 1 + position, 0] - base[axis]) + radius[:, 1 + position, 0] + extra[:, 1 + position]
+        own = (
+            np.abs(middle[:, 1 + position, 0] - base[axis])
+            + radius[:, 1 + position, 0]
+            + extra[:, 1 + position]
+        )
         main = main + np.abs(force[axis]) * rho[:, axis] * own
     power = output["load_power"] + output["output_power"]
     edge = high[:, -1] if power >= 0.0 else low[:, -1]

@@ -53,7 +53,7 @@ def plain(value: Any) -> Any:
     if isinstance(value, np.ndarray):
         if np.iscomplexobj(value):
             return {"re": plain(value.real), "im": plain(value.imag)}
-        return [plain(item) for item in value.tolist()]
+        return plain(value.tolist())
     if isinstance(value, complex):
         return {"re": plain(value.real), "im": plain(value.imag)}
     if isinstance(value, (np.floating, float)):
@@ -86,7 +86,9 @@ def append(record: ProofRecord, kind: str, data: dict[str, Any]) -> ProofRecord:
     """The record with one more entry."""
     clean = plain(data)
     previous = record.entries[-1].digest if record.entries else ""
-    return ProofRecord((*record.entries, ProofEntry(kind, clean, previous, entry_digest(kind, clean, previous))))
+    return ProofRecord(
+        (*record.entries, ProofEntry(kind, clean, previous, entry_digest(kind, clean, previous)))
+    )
 
 
 def new_record(title: str, inputs: dict[str, str] | None = None) -> ProofRecord:
@@ -99,8 +101,13 @@ def selection_digest(selection: Selection) -> str:
     return hashlib.sha256(json.dumps(plain(selection), sort_keys=True).encode("ascii")).hexdigest()
 
 
-def add_search(record: ProofRecord, selection: Selection, result: SearchResult) -> ProofRecord:
+def add_search(
+    record: ProofRecord, selection: Selection, result: SearchResult, final_test: str = "rows"
+) -> ProofRecord:
     """Append a search: what was found, how many designs each rule settled, and the data of the designs found.
+
+    final_test: "rows" when the rows of the selection decided (a checker may then enumerate), else a name for what
+    decided beyond them.
 
     The whole selection is kept while it has at most 200,000 designs, so that a checker can enumerate it; beyond that its
     digest, and the data of the chosen parts.
@@ -108,6 +115,7 @@ def add_search(record: ProofRecord, selection: Selection, result: SearchResult) 
     small = selection.design_count <= LARGEST_SELECTION
     data = {
         "aim": result.aim,
+        "final_test": final_test,
         "status": result.status,
         "kernels": result.kernels,
         "elapsed": result.elapsed,

@@ -30,7 +30,11 @@ def alternatives(result: Result) -> tuple[Alternative, ...]:
     """Return the cheaper choices nearest in cost, the next point of the front, and cheapest ones with more margin."""
     if result.answer is None:
         return ()
-    return (*_cheaper(result, result.answer), *_next_on_front(result, result.answer), *_safer(result, result.answer))
+    return (
+        *_cheaper(result, result.answer),
+        *_next_on_front(result, result.answer),
+        *_safer(result, result.answer),
+    )
 
 
 def cheaper_count(result: Result) -> int | None:
@@ -58,7 +62,11 @@ def _cheaper(result: Result, answer: Assessment) -> list[Alternative]:
         design = result.problem.design(all_designs(result.problem.model, int(index), int(index) + 1), 0)
         judged = assess(result.study.brief, design)
         gap = number(answer.cost - judged.cost, 3)
-        found.append(Alternative(f"next cheaper, by {gap}", judged, "meets the brief, but is worse in what comes first"))
+        found.append(
+            Alternative(
+                f"next cheaper, by {gap}", judged, "meets the brief, but is worse in what comes first"
+            )
+        )
     return found
 
 
@@ -69,10 +77,8 @@ def _next_on_front(result: Result, answer: Assessment) -> list[Alternative]:
     first, second = result.front.trade[:2]
     if (first, second) != ("cost", "separation"):
         return [Alternative("next on the front", point, "worse in what comes first")]
-    gain = percent(point.separation - answer.separation)
-    return [
-        Alternative("next on the front", point, f"costs {number(point.cost - answer.cost, 4)} more for {gain} more separation")
-    ]  # fmt: skip
+    gain, more = percent(point.separation - answer.separation), number(point.cost - answer.cost, 4)
+    return [Alternative("next on the front", point, f"costs {more} more for {gain} more separation")]
 
 
 def _safer(result: Result, answer: Assessment) -> list[Alternative]:
@@ -95,6 +101,7 @@ def _safer(result: Result, answer: Assessment) -> list[Alternative]:
         index = int(margins.argmax()) if len(margins) else -1
         if index >= 0 and margins[index] > answer.least_margin:
             judged = assess(result.study.brief, result.problem.design(front.designs, index))
-            why = f"costs {number(judged.cost - answer.cost, 4)} more; its least margin is {margin_text(judged.least_margin)}"
+            more = number(judged.cost - answer.cost, 4)
+            why = f"costs {more} more; its least margin is {margin_text(judged.least_margin)}"
             found.append(Alternative("most margin of all", judged, why))
     return found

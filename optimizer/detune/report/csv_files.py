@@ -63,14 +63,26 @@ def designs_csv(result: Result) -> str:
         values: list[Cell] = [float(front.objectives[name][i]) for name in OBJECTIVE_WORDS]
         rows.append([*design.parts, design.ballast, *values, "yes" if i in assessed else "no"])
     groups = result.study.brief.groups
-    return csv_text([*(f"part of {g}" for g in groups), "ballast [kg]", *_objective_headers(), "assessed"], rows)
+    return csv_text(
+        [*(f"part of {g}" for g in groups), "ballast [kg]", *_objective_headers(), "assessed"], rows
+    )
 
 
 def margins_csv(assessment: Assessment) -> str:
     """Return every requirement of an assessed design."""
     columns = ["condition", "place", "quantity", "unit", "value", "lower limit", "upper limit", "margin [-]"]
     rows: list[list[Cell]] = [
-        [r.condition, r.place, r.quantity, KINDS[r.unit].si_unit or "-", r.value, r.lower, r.upper, r.margin, r.frequency]
+        [
+            r.condition,
+            r.place,
+            r.quantity,
+            KINDS[r.unit].si_unit or "-",
+            r.value,
+            r.lower,
+            r.upper,
+            r.margin,
+            r.frequency,
+        ]
         for r in assessment.margins
     ]
     return csv_text([*columns, "at speed or frequency [Hz]"], rows)
@@ -93,7 +105,11 @@ def stations_csv(assessment: Assessment) -> str:
 def modes_csv(assessment: Assessment) -> str:
     """Return every mode with its separation and its participation in the six directions."""
     columns = ["frequency [Hz]", "name", "amplification [-]", "separation [-]", "interval from [Hz]"]
-    columns += ["interval to [Hz]", "exempt", *(f"participation {d} [-]" for d in ("x", "y", "z", "rx", "ry", "rz"))]
+    columns += [
+        "interval to [Hz]",
+        "exempt",
+        *(f"participation {d} [-]" for d in ("x", "y", "z", "rx", "ry", "rz")),
+    ]
     rows: list[list[Cell]] = []
     for m in assessment.modes:
         low, high = m.interval or (None, None)
@@ -105,10 +121,26 @@ def modes_csv(assessment: Assessment) -> str:
 def why_csv(result: Result) -> str:
     """Return what became of every part of every group."""
     columns = ["group", "part", "catalog", "file line", "designs with it", "of these meet", "least cost [-]"]
-    columns += ["filtered because", "first rule", "excluded by it", "hardest rule", "margin there [-]", "closest design"]
+    columns += [
+        "filtered because",
+        "first rule",
+        "excluded by it",
+        "hardest rule",
+        "margin there [-]",
+        "closest design",
+    ]
     rows: list[list[Cell]] = [
         [
-            *(r.group, r.mount.part, r.mount.catalog, r.mount.line, r.designs, r.meets, r.cheapest, r.filtered),
+            *(
+                r.group,
+                r.mount.part,
+                r.mount.catalog,
+                r.mount.line,
+                r.designs,
+                r.meets,
+                r.cheapest,
+                r.filtered,
+            ),
             *(r.first_rule, r.first_excluded, r.hardest_rule, r.hardest_margin, r.closest),
         ]
         for r in result.reasons

@@ -49,7 +49,8 @@ def draw_one(name: str, module: ModuleType, data: Any) -> Drawn:
     from matplotlib.backends.backend_svg import FigureCanvasSVG
     from matplotlib.figure import Figure
 
-    with matplotlib.rc_context({**settings(), "svg.hashsalt": f"detune {name}"}):
+    chosen: Any = {**settings(), "svg.hashsalt": f"detune {name}"}
+    with matplotlib.rc_context(chosen):
         figure = Figure(figsize=module.size(data), dpi=RESOLUTION)
         FigureCanvasAgg(figure)
         titles = module.draw(data, figure)
@@ -58,7 +59,9 @@ def draw_one(name: str, module: ModuleType, data: Any) -> Drawn:
         FigureCanvasSVG(figure)
         svg = io.StringIO()
         figure.savefig(svg, format="svg", metadata={"Date": None, "Creator": None})
-    return Drawn(name, module.TITLE, module.caption(data), _finished(svg.getvalue(), name, titles), png.getvalue())
+    return Drawn(
+        name, module.TITLE, module.caption(data), _finished(svg.getvalue(), name, titles), png.getvalue()
+    )
 
 
 def _finished(svg: str, name: str, titles: dict[str, tuple[str, ...]]) -> str:

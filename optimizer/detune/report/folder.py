@@ -14,8 +14,8 @@ from detune.report.csv_files import (
     stations_csv,
     why_csv,
 )
-from detune.report.page import page_text
 from detune.report.figures import draw_all
+from detune.report.page import page_text
 from detune.report.response_data import response_curves
 from detune.report.strict_json import json_text
 from detune.study.run import Result
@@ -60,7 +60,9 @@ def _check(target: Path, overwrite: bool) -> None:
     if not any(target.iterdir()):
         return
     if not overwrite:
-        raise FolderExists(f"{target} is there already and is not empty; name another folder, or say --overwrite.")
+        raise FolderExists(
+            f"{target} is there already and is not empty; name another folder, or say --overwrite."
+        )
     if not (target / MARK).is_file():
         raise FolderExists(
             f"{target} is not a result folder ({MARK} is missing), so it is not replaced even with --overwrite; "
@@ -146,7 +148,9 @@ def _proof(result: Result) -> dict[str, object]:
                 # Parts without an excluded design are left out: their count is zero.
                 "by_part": {
                     group.name: {
-                        f"{m.catalog}: {m.part}": int(n) for m, n in zip(group.mounts, counts, strict=True) if n
+                        f"{m.catalog}: {m.part}": int(n)
+                        for m, n in zip(group.mounts, counts, strict=True)
+                        if n
                     }
                     for group, counts in zip(result.problem.model.groups, rule.by_part, strict=True)
                 },

@@ -91,7 +91,9 @@ def page_text(result: Result, drawn: tuple[Drawn, ...]) -> str:
     """Return the report as HTML, with plots that were drawn already."""
     import jinja2
 
-    environment = jinja2.Environment(autoescape=True, trim_blocks=True, lstrip_blocks=True, undefined=jinja2.StrictUndefined)
+    environment = jinja2.Environment(
+        autoescape=True, trim_blocks=True, lstrip_blocks=True, undefined=jinja2.StrictUndefined
+    )
     # A number and its per cent sign stay on one line.
     environment.filters["tied"] = lambda text: text.replace(" %", "\u00a0%")
     text = files("detune.report").joinpath("templates", TEMPLATE).read_text(encoding="utf-8")
@@ -112,15 +114,23 @@ def sections(result: Result, plots: dict[str, Drawn]) -> tuple[Section, ...]:
         found.append(Section("assumed", "What was assumed", points=result.problem.assumed))
     if "front" in plots:
         table = (tables_study.front_table(result),) if result.front.points else ()
-        found.append(Section("front", f"Front: {tables_study.objective_words(result)}", plots=(plots["front"],), tables=table))
+        found.append(
+            Section(
+                "front",
+                f"Front: {tables_study.objective_words(result)}",
+                plots=(plots["front"],),
+                tables=table,
+            )
+        )
     if subject is not None:
         found += _of_design(result, subject, plots)
     if result.compared:
         found.append(Section("compared", "Named designs", tables=(tables_study.comparison_table(result),)))
     found += _choices(result)
     found += _why(result, plots)
-    found.append(Section("computed", "How each number was computed", points=tuple(f"{a}: {b}" for a, b in COMPUTED),
-                         texts=("The equations with their sources stand in docs/equations.md under the names in brackets.",)))  # fmt: skip
+    named = "The equations with their sources stand in docs/equations.md under the names in brackets."
+    computed = tuple(f"{what}: {how}" for what, how in COMPUTED)
+    found.append(Section("computed", "How each number was computed", texts=(named,), points=computed))
     found.append(_inputs(result))
     return tuple(found)
 
@@ -137,9 +147,14 @@ def _answer(result: Result) -> Section:
             texts.append(f"Closest design found. {_described(result.closest)}.")
             points = (*points_to_check(brief, result.closest), *points)
             shown = (*shown, tables.answer_table(brief, result.closest))
-        return Section("answer", "No design meets the brief" if result.outcome.none_exists else "None found", tuple(texts), points, tables=shown)  # fmt: skip
+        heading = "No design meets the brief" if result.outcome.none_exists else "None found"
+        return Section("answer", heading, tuple(texts), points, tables=shown)
     answer = result.answer
-    texts = [f"{_described(answer)}.", f"Least margin: {row_text(brief, answer.tightest)}.", *proof_lines(result)]
+    texts = [
+        f"{_described(answer)}.",
+        f"Least margin: {row_text(brief, answer.tightest)}.",
+        *proof_lines(result),
+    ]
     points = (*points_to_check(brief, answer), *study_points(result))
     return Section("answer", "The answer", tuple(texts), points, tables=(tables.answer_table(brief, answer),))
 
@@ -154,7 +169,9 @@ def _described(assessment: Assessment) -> str:
 
 
 def _most_excluded(result: Result) -> Table:
-    ranked = sorted((rule for rule in result.outcome.record.rules if rule.excluded), key=lambda rule: -rule.excluded)
+    ranked = sorted(
+        (rule for rule in result.outcome.record.rules if rule.excluded), key=lambda rule: -rule.excluded
+    )
     rows = tuple((rule.rule, rule.stage, str(rule.excluded)) for rule in ranked[:6])
     note = "Each design is counted at the first rule it failed; it may fail others as well."
     return Table("Rules that excluded most", ("rule", "stage", "designs"), rows, frozenset({2}), note)
@@ -182,7 +199,9 @@ def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> 
     shown.append(tables.power_table(subject))
     found.append(Section("modes", f"Modes{of}", plots=_only(plots, "modes-speed"), tables=tuple(shown)))
     if "stiffness-damping" in plots:
-        found.append(Section("map", "Map of stiffness against damping", plots=_only(plots, "stiffness-damping")))
+        found.append(
+            Section("map", "Map of stiffness against damping", plots=_only(plots, "stiffness-damping"))
+        )
     return found
 
 
@@ -192,7 +211,7 @@ def _only(plots: dict[str, Drawn], name: str) -> tuple[Drawn, ...]:
 
 def _total_load(subject: Assessment) -> str:
     return (
-        f"Static load of the machine with ballast and steady loads: {show(subject.total_load, 'force')} downward in all. "
+        f"Static load of machine, ballast and steady loads: {show(subject.total_load, 'force')} downward in all. "
         "Given connections carry what the stations do not; the floor's own weight is not contained."
     )
 
@@ -207,16 +226,16 @@ def _choices(result: Result) -> list[Section]:
         rest = f"{number(float(count))} designs cost less than the answer"
         first = "cost" if result.front.trade[0] == "cost" else ""
         texts.append(f"{rest}; none of them meets the brief." if first else f"{rest}.")
-    return [
-        Section("choices", "Next cheaper and next safer choices", tuple(texts), tables=(tables_study.alternatives_table(result, found),))
-    ]  # fmt: skip
+    table = tables_study.alternatives_table(result, found)
+    return [Section("choices", table.title, tuple(texts), tables=(table,))]
 
 
 def _why(result: Result, plots: dict[str, Drawn]) -> list[Section]:
     record = result.outcome.record
     finished = result.outcome.stopped == "finished"
     sums = (
-        f"Method: {record.method}. {record.looked_at} of {record.designs} designs were looked at in {record.seconds:.1f} s. "
+        f"Method: {record.method}. {record.looked_at} of {record.designs} designs were looked at in "
+        f"{record.seconds:.1f} s. "
         + (
             "Every design is either excluded by a stated rule or among those that meet all."
             if record.accounted

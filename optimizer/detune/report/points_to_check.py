@@ -36,7 +36,9 @@ def study_points(result: Result) -> tuple[str, ...]:
             f"of {margin_text(row.margin)}. It is left out."
         )
     if result.outcome.stopped == "finished" and not result.outcome.record.accounted:
-        notes.append("The counts of the proof record do not add up to the number of designs: treat it as a fault.")
+        notes.append(
+            "The counts of the proof record do not add up to the number of designs: treat it as a fault."
+        )
     return tuple(notes)
 
 
@@ -57,7 +59,9 @@ def _tight(brief: Brief, assessment: Assessment) -> list[str]:
 def _scatter(assessment: Assessment) -> list[str]:
     parts = {mount.part: mount.tolerance for mount in assessment.design.mounts}
     listed = ", ".join(
-        f"{part} plus or minus {100.0 * tolerance:g} %" for part, tolerance in parts.items() if tolerance == tolerance
+        f"{part} plus or minus {100.0 * tolerance:g} %"
+        for part, tolerance in parts.items()
+        if tolerance == tolerance
     )
     if not listed:
         return []

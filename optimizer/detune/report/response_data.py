@@ -8,20 +8,14 @@ from numpy.typing import NDArray
 from detune.brief.allowable import HarmonicAllowable
 from detune.brief.allowable.base import combine
 from detune.brief.allowable.views import Places
-from detune.brief.brief import Brief, applies, demanded
+from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
 from detune.brief.forcing import Tone
+from detune.response.assess import states_of
 from detune.response.assessment import Assessment, MarginRow
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes, direct_modes
-from detune.response.direct_supremum import (
-    Pairs,
-    amplitudes_at,
-    coherent_sets,
-    steady_intervals,
-    supremum,
-    tones_of,
-)
+from detune.response.direct_supremum import Pairs, amplitudes_at, coherent_sets, steady_intervals, tones_of
 from detune.response.direct_views import DirectStatic
 
 Floats = NDArray[np.float64]
@@ -30,16 +24,20 @@ BACKGROUND = 240
 AROUND = np.array([0.0, 0.3, 0.7, 1.2, 2.0, 3.5, 6.0, 12.0])
 AROUND_POLE = np.concatenate([-AROUND[:0:-1], AROUND])
 TWO_PI = 2.0 * np.pi
+# A source within this of the judged value is the only one; a drawn maximum falls short by no more.
+ALONE = 1e-3
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class ResponseCurve:
     """One harmonic requirement over the speed or frequency of one of its sources.
 
     `speed` (F,) is in Hz, `value` (F,) in SI; `low` to `high` is the excitation interval in which it is
-    judged, and outside it the same forcing is continued to show where the resonances lie. Where other
-    sources have speeds of their own, their largest amplitudes are added, so that the largest value
+    judged, and outside it the same forcing is continued to show where the resonances lie. What the other
+    sources of the condition add (other speeds, noise, records) is contained, so that the largest value
     inside is the one judged. `source` names the speed; `is_shaft` tells revolutions from frequency.
+    `passage`: the source runs through its speeds in a stated time and is judged so; the curve is then
+    its own steady state alone, for comparison.
     """
 
     row: MarginRow
@@ -50,6 +48,7 @@ class ResponseCurve:
     low: float
     high: float
     limit: float
+    passage: bool
 
     @property
     def inside(self) -> NDArray[np.bool_]:
@@ -57,7 +56,7 @@ class ResponseCurve:
         return (self.speed >= self.low) & (self.speed <= self.high)
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class _Sweep:
     """One moving speed: its coherent sets of tones, its interval (Hz) and what it is called."""
 
@@ -66,44 +65,87 @@ class _Sweep:
     sets: list[tuple[Tone, ...]]
     low: float
     high: float
+    passage: bool
+    added: bool
 
 
 def response_curves(brief: Brief, assessment: Assessment) -> tuple[ResponseCurve, ...]:
-    """Return the curves of every harmonic requirement of an assessed design, in the order of its margins."""
-    machine = DirectMachine(brief, assessment.design)
-    found = direct_modes(machine, steady_intervals(brief))
+    """Return the curves of every harmonic requirement of an assessed design, state by state.
+
+    A requirement under noise, pulses or records alone has no curve over speed.
+    """
+    rows = {(r.kind, r.quantity, r.place, r.condition): r for r in assessment.margins}
+    curves: list[ResponseCurve] = []
+    for state in states_of(brief):
+        machine = DirectMachine(brief, assessment.design, state_of(brief, state))
+        found = direct_modes(machine, steady_intervals(brief, state))
+        for condition in brief.conditions:
+            if condition.state == state:
+                curves += _condition_curves(machine, found, condition, rows)
+    return tuple(curves)
+
+
+def _condition_curves(
+    machine: DirectMachine,
+    found: DirectModes,
+    condition: Condition,
+    rows: dict[tuple[str, str, str, str], MarginRow],
+) -> list[ResponseCurve]:
+    brief = machine.brief
     static = DirectStatic(machine)
     names = Places(
         tuple(p.name for p in brief.points),
-        tuple(s.name for s in brief.stations),
+        tuple(s.name for s in brief.stations if machine.share(s) > 0.0),
         tuple(b.name for b in brief.bodies),
     )
-    allowables = [a for a in demanded(brief)[0] if isinstance(a, HarmonicAllowable)]
-    rows = {(r.kind, r.quantity, r.place, r.condition): r for r in assessment.margins}
-    curves: list[ResponseCurve] = []
-    for condition in brief.conditions:
-        judged = [
-            (a, place) for a in allowables if applies(a.conditions, condition.name) for place in a.places(names)
-        ]
-        known = [pair for pair in judged if _key(*pair, condition) in rows]
-        forced = tuple(pair for pair in known if pair[0].unit_load() is None)
-        groups = [(forced, _forced_sweeps(brief, condition))] if forced else []
-        for pair in known:
-            if pair[0].unit_load() is not None:
-                groups.append(((pair,), _unit_sweeps(machine, condition, pair[0])))
-        for pairs, sweeps in groups:
-            added = pairs[0][0].unit_load() is None
-            for sweep, speed, values in _values(machine, found, pairs, sweeps, added):
-                for (allowable, place), value in zip(pairs, values, strict=True):
-                    row = rows[_key(allowable, place, condition)]
-                    assert row.upper is not None
-                    total = value + allowable.offset(static, place)[0]
-                    curves.append(
-                        ResponseCurve(
-                            row, sweep.source, sweep.is_shaft, speed, total, sweep.low, sweep.high, row.upper
-                        )
+    known = [
+        (a, place)
+        for a in demanded(brief)[0]
+        if isinstance(a, HarmonicAllowable) and applies(a.conditions, condition.name)
+        for place in a.places(names)
+        if _key(a, place, condition) in rows
+    ]
+    forced = tuple(pair for pair in known if pair[0].unit_load() is None)
+    groups: list[tuple[Pairs, list[_Sweep]]] = [(forced, _forced_sweeps(brief, condition))] if forced else []
+    for pair in known:
+        if pair[0].unit_load() is not None:
+            groups.append(((pair,), _unit_sweeps(machine, condition, pair[0])))
+    curves = []
+    for pairs, sweeps in groups:
+        judged = [rows[_key(*pair, condition)] for pair in pairs]
+        for sweep in sweeps:
+            speed = _speeds(sweep, found, judged)
+            amplitude = amplitudes_at(machine, pairs, sweep.sets, speed)
+            inside = (speed >= sweep.low) & (speed <= sweep.high)
+            for (allowable, place), row, value in zip(pairs, judged, amplitude, strict=True):
+                offset = float(allowable.offset(static, place)[0])
+                if sweep.added:
+                    rest = _rest(
+                        row.value - offset, float(value[inside].max()), allowable.statistic() == "rms"
                     )
-    return tuple(curves)
+                    value = combine(value, np.full(len(speed), rest), allowable.statistic())
+                assert row.upper is not None
+                curves.append(
+                    ResponseCurve(
+                        row=row,
+                        source=sweep.source,
+                        is_shaft=sweep.is_shaft,
+                        speed=speed,
+                        value=value + offset,
+                        low=sweep.low,
+                        high=sweep.high,
+                        limit=row.upper,
+                        passage=sweep.passage,
+                    )
+                )
+    return curves
+
+
+def _rest(judged: float, own: float, is_rms: bool) -> float:
+    """Return what all other sources together add to one source, zero where it is the only one."""
+    if own >= judged * (1.0 - ALONE):
+        return 0.0
+    return float(np.sqrt(judged**2 - own**2)) if is_rms else judged - own
 
 
 def _key(allowable: HarmonicAllowable, place: str, condition: Condition) -> tuple[str, str, str, str]:
@@ -114,10 +156,14 @@ def _forced_sweeps(brief: Brief, condition: Condition) -> list[_Sweep]:
     by_speed: dict[str, list[Tone]] = {}
     for tone in tones_of(brief, condition):
         by_speed.setdefault(tone.speed, []).append(tone)
-    return [
-        _Sweep(name, name in condition.shafts, coherent_sets(tones), tones[0].low, tones[0].high)
-        for name, tones in by_speed.items()
-    ]
+    sweeps = []
+    for name, tones in by_speed.items():
+        passage = name in condition.run_up or name in condition.coast_down
+        low, high = tones[0].low, tones[0].high
+        sweeps.append(
+            _Sweep(name, name in condition.shafts, coherent_sets(tones), low, high, passage, not passage)
+        )
+    return sweeps
 
 
 def _unit_sweeps(machine: DirectMachine, condition: Condition, allowable: HarmonicAllowable) -> list[_Sweep]:
@@ -143,37 +189,12 @@ def _unit_sweeps(machine: DirectMachine, condition: Condition, allowable: Harmon
             force=along if unit[0] == "force" else (0j, 0j, 0j),
             base=along if unit[0] == "base" else None,
         )
-        sweeps.append(_Sweep("frequency", False, [(tone,)], low, high))
+        sweeps.append(_Sweep("frequency", False, [(tone,)], low, high, False, False))
     return sweeps
 
 
-def _values(
-    machine: DirectMachine, found: DirectModes, pairs: Pairs, sweeps: list[_Sweep], added: bool
-) -> list[tuple[_Sweep, Floats, Floats]]:
-    """Return for each sweep its speeds (F,) and the amplitudes (R, F); `added` sources act together."""
-    largest: list[Floats] = []
-    several = added and len(sweeps) > 1
-    for sweep in sweeps if several else []:
-        orders = sorted({tones[0].order for tones in sweep.sets})
-
-        def amplitudes(speed: Floats, sweep: _Sweep = sweep) -> Floats:
-            return amplitudes_at(machine, pairs, sweep.sets, speed)
-
-        largest.append(supremum(amplitudes, (sweep.low, sweep.high), found.poles, orders).value)
-    result = []
-    for index, sweep in enumerate(sweeps):
-        speed = _speeds(sweep, found)
-        value = amplitudes_at(machine, pairs, sweep.sets, speed)
-        for other, peak in enumerate(largest):
-            if other != index:
-                for row, (allowable, _) in enumerate(pairs):
-                    value[row] = combine(value[row], np.full(len(speed), peak[row]), allowable.statistic())
-        result.append((sweep, speed, value))
-    return result
-
-
-def _speeds(sweep: _Sweep, found: DirectModes) -> Floats:
-    """Return the speeds to draw: the interval, and beyond it as far as the nearest resonances reach."""
+def _speeds(sweep: _Sweep, found: DirectModes, judged: list[MarginRow]) -> Floats:
+    """Return the speeds to draw: the interval, where the judged values are, and the resonances round about."""
     orders = sorted({tones[0].order for tones in sweep.sets})
     poles = np.abs(found.poles.imag)
     resonances = np.concatenate([poles / (TWO_PI * order) for order in orders])
@@ -187,5 +208,7 @@ def _speeds(sweep: _Sweep, found: DirectModes) -> Floats:
     for pole in found.poles:
         width = max(-pole.real, 1e-6 * abs(pole))
         samples += [(pole.imag + AROUND_POLE * width) / (TWO_PI * order) for order in orders]
+    at = [row.frequency for row in judged if row.frequency is not None]
+    samples.append(np.array([f for f in at if sweep.low <= f <= sweep.high]))
     speed = np.unique(np.concatenate(samples))
     return speed[(speed >= first) & (speed <= last)]

@@ -1,9 +1,12 @@
-"""Forces into the floor and movement of the named points, whether limited or not, for those who build around the machine."""
+"""Forces into the floor and movement of the named points, limited or not, for who builds round the machine."""
 
 from dataclasses import dataclass
 
+import numpy as np
+
 from detune.brief.allowable import Displacement, HarmonicAllowable, TransmittedForce
-from detune.brief.brief import Brief
+from detune.brief.brief import Brief, state_of
+from detune.response.assess import states_of
 from detune.response.assessment import Assessment
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import direct_modes
@@ -14,7 +17,8 @@ AXES = ("x", "y", "z")
 
 @dataclass(frozen=True)
 class ServiceLoad:
-    """One peak value over a condition: `unit` is a kind of unit, `frequency` (Hz) where it occurs."""
+    """One peak value over a condition: `unit` is a kind of unit, `frequency` (Hz) where it occurs, None under
+    noise, records and passages."""
 
     condition: str
     what: str
@@ -22,7 +26,7 @@ class ServiceLoad:
     direction: str
     unit: str
     value: float
-    frequency: float
+    frequency: float | None
     is_shaft: bool
 
 
@@ -31,13 +35,17 @@ def service_loads(brief: Brief, assessment: Assessment) -> tuple[ServiceLoad, ..
 
     Phasor sums over all parts and connections; suprema over the continuous range as in the assessment.
     """
-    machine = DirectMachine(brief, assessment.design)
-    found = direct_modes(machine, steady_intervals(brief))
     wanted: list[tuple[HarmonicAllowable, str, str, str]] = []
     for axis in AXES:
         # The limit is needed to build the statement and plays no part here.
         force = TransmittedForce.model_validate(
-            {"kind": "transmitted-force", "through": "floor", "direction": axis, "measure": "peak", "limit": 1.0}
+            {
+                "kind": "transmitted-force",
+                "through": "floor",
+                "direction": axis,
+                "measure": "peak",
+                "limit": 1.0,
+            }
         )
         wanted.append((force, "floor", "dynamic force into the floor", axis))
     for point in brief.points:
@@ -48,12 +56,20 @@ def service_loads(brief: Brief, assessment: Assessment) -> tuple[ServiceLoad, ..
             wanted.append((moved, point.name, "displacement", axis))
     pairs = tuple((allowable, place) for allowable, place, _, _ in wanted)
     loads = []
-    for condition in brief.conditions:
-        tones = tones_of(brief, condition)
-        is_shaft = all(tone.speed in condition.shafts for tone in tones)
-        result = forced_suprema(machine, found, condition, pairs)
-        for (allowable, place, what, axis), value, speed in zip(wanted, result.value, result.speed, strict=True):
-            loads.append(
-                ServiceLoad(condition.name, what, place, axis, allowable.unit, float(value), float(speed), is_shaft)
-            )
+    for state in states_of(brief):
+        machine = DirectMachine(brief, assessment.design, state_of(brief, state))
+        found = direct_modes(machine, steady_intervals(brief, state))
+        for condition in brief.conditions:
+            if condition.state != state:
+                continue
+            tones = tones_of(brief, condition)
+            is_shaft = bool(tones) and all(tone.speed in condition.shafts for tone in tones)
+            result = forced_suprema(machine, found, condition, pairs)
+            for (allowable, place, what, axis), value, speed in zip(
+                wanted, result.value, result.speed, strict=True
+            ):
+                at = None if np.isnan(speed) else float(speed)
+                loads.append(
+                    ServiceLoad(condition.name, what, place, axis, allowable.unit, float(value), at, is_shaft)
+                )
     return tuple(loads)

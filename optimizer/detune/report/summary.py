@@ -66,7 +66,8 @@ def compare_text(assessments: Sequence[Assessment], names: Sequence[str] | None 
         table.append([name, *cells])
     widths = [max(len(row[column]) for row in table) for column in range(len(table[0]))]
     lines = [
-        "  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip() for row in table
+        "  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip()
+        for row in table
     ]
     return "\n".join(lines) + "\n"
 
@@ -158,7 +159,10 @@ def _partial(result: Result) -> list[str]:
 def _answer(result: Result) -> list[str]:
     assert result.answer is not None
     brief, trade = result.study.brief, result.front.trade
-    lines = [*_design(brief, result.answer), *(line for text in proof_lines(result) for line in _wrapped(text))]
+    lines = [
+        *_design(brief, result.answer),
+        *(line for text in proof_lines(result) for line in _wrapped(text)),
+    ]
     points = result.front.points
     if len(points) > 1:
         words = " against ".join(OBJECTIVE_WORDS[name] for name in trade)
@@ -194,4 +198,12 @@ def _wrapped(text: str, indent: str = "") -> list[str]:
     return textwrap.wrap(text, WIDTH, initial_indent=indent, subsequent_indent=indent + "  ") or [""]
 
 
-__all__ = ["assess_text", "compare_text", "comparison_rows", "limit_text", "none_lines", "partial_words", "summary"]
+__all__ = [
+    "assess_text",
+    "compare_text",
+    "comparison_rows",
+    "limit_text",
+    "none_lines",
+    "partial_words",
+    "summary",
+]

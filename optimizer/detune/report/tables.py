@@ -39,13 +39,19 @@ def answer_table(brief: Brief, assessment: Assessment) -> Table:
     by_key = {(mount.catalog, mount.part): mount for mount in assessment.design.mounts}
     rows = []
     for key, mount in by_key.items():
-        groups = [g for g, m in zip(assessment.design.groups, assessment.design.mounts, strict=True) if m == mount]
+        groups = [
+            g for g, m in zip(assessment.design.groups, assessment.design.mounts, strict=True) if m == mount
+        ]
         stock = "not stated" if mount.stock is None else str(mount.stock)
         cost = number(count[key] * mount.cost, 6)
-        rows.append((mount.part, key[0], ", ".join(groups), str(count[key]), number(mount.cost, 6), cost, stock))
+        rows.append(
+            (mount.part, key[0], ", ".join(groups), str(count[key]), number(mount.cost, 6), cost, stock)
+        )
     if assessment.design.ballast and brief.ballast is not None:
         mass, each = assessment.design.ballast, brief.ballast.cost_per_kg
-        rows.append(("ballast", "", "", f"{mass:g} kg", f"{number(each, 6)} per kg", number(mass * each, 6), ""))
+        rows.append(
+            ("ballast", "", "", f"{mass:g} kg", f"{number(each, 6)} per kg", number(mass * each, 6), "")
+        )
     rows.append(("total", "", "", "", "", number(assessment.cost, 6), ""))
     columns = ("part", "list", "groups", "number", "price", "cost", "in stock")
     return Table("Parts", columns, tuple(rows), frozenset({3, 4, 5, 6}))
@@ -95,7 +101,11 @@ def _station(row: StationRow, highest: float | None) -> tuple[str, ...]:
     def length(value: float | None) -> str:
         return "not stated" if value is None else f"{1e3 * value:.1f} mm"
 
-    shim = "" if highest is None or row.installed_height is None else f"{1e3 * (highest - row.installed_height):.1f} mm"
+    shim = (
+        ""
+        if highest is None or row.installed_height is None
+        else f"{1e3 * (highest - row.installed_height):.1f} mm"
+    )
     return (
         row.station,
         row.group,
@@ -119,17 +129,22 @@ def modes_table(assessment: Assessment) -> Table:
             show(mode.frequency, "frequency"),
             mode.name,
             f"{mode.amplification:.1f}" if math.isfinite(mode.amplification) else "undamped",
-            "" if mode.separation is None else separation_text(mode.separation) + (", exempt" if mode.exempt else ""),
+            ""
+            if mode.separation is None
+            else separation_text(mode.separation) + (", exempt" if mode.exempt else ""),
             _interval(mode.interval),
-            *(f"{share:.0%}".replace("%", " %") if share >= SMALL_SHARE else "-" for share in mode.participation),
+            *(
+                f"{share:.0%}".replace("%", " %") if share >= SMALL_SHARE else "-"
+                for share in mode.participation
+            ),
         )
         for mode in assessment.modes
     )
     note = (
         "Undamped natural frequencies at the dynamic stiffness. Amplification: 1 / the mode's loss factor. Separation "
         "from the nearest excitation interval of the steady conditions, by the excitation frequency: f / f_high - 1 "
-        "above it, 1 - f / f_low below it. Participation: share of the moving mass in each direction, a dash where it is "
-        "below 0.5 %."
+        "above it, 1 - f / f_low below it. Participation: share of the moving mass in each direction, a dash where it "
+        "is below 0.5 %."
     )
     columns = ("frequency", "mode", "amplification", "separation", "from excitation at", *DIRECTIONS)
     return Table("Modes", columns, rows, frozenset({0, 2, 3, 4, 5, 6, 7, 8, 9, 10}), note)
@@ -158,7 +173,9 @@ def bump_table(assessment: Assessment) -> Table:
 
 
 def _bump(mode: ModeRow, tolerance: float) -> tuple[str, ...]:
-    strongest = max(range(len(mode.participation)), key=lambda i: mode.participation[i])
+    # A direction in which nothing can move has no share.
+    shares = [share if share == share else 0.0 for share in mode.participation]
+    strongest = max(range(len(shares)), key=shares.__getitem__)
     direction = DIRECTIONS[strongest]
     words = f"{direction}, at a corner" if "about" in direction else direction
     return (
@@ -166,7 +183,9 @@ def _bump(mode: ModeRow, tolerance: float) -> tuple[str, ...]:
         show(mode.frequency, "frequency"),
         show(mode.frequency * math.sqrt(1.0 - tolerance), "frequency"),
         show(mode.frequency * math.sqrt(1.0 + tolerance), "frequency"),
-        show(mode.frequency / mode.amplification, "frequency", 2) if math.isfinite(mode.amplification) else "0 Hz",
+        show(mode.frequency / mode.amplification, "frequency", 2)
+        if math.isfinite(mode.amplification)
+        else "0 Hz",
         words,
     )
 
@@ -182,6 +201,7 @@ def power_table(assessment: Assessment) -> Table:
             f"{row.closing_error:.1e}",
         )
         for row in assessment.power
+        if row.speed > 0.0
     )
     note = (
         "Mean power of all tones at the middle of the range. What is put in must be dissipated; a closing error above "

@@ -84,7 +84,9 @@ def reasons_summary_table(result: Result) -> Table:
             counts[(reason.group, f"left out before: {reason.filtered}")] += 1
         else:
             counts[(reason.group, reason.hardest_rule or "not looked at")] += 1
-    rows = tuple((group, rule, str(n)) for (group, rule), n in sorted(counts.items(), key=lambda i: (i[0][0], -i[1])))
+    rows = tuple(
+        (group, rule, str(n)) for (group, rule), n in sorted(counts.items(), key=lambda i: (i[0][0], -i[1]))
+    )
     columns = ("group", "what became of the part: hardest requirement", "parts")
     return Table("Why parts fell out, in short", columns, rows, frozenset({2}))
 
@@ -100,10 +102,22 @@ def reasons_table(result: Result) -> Table:
             words = (f"left out before: {reason.filtered}", "", "", "")
         else:
             margin = "" if reason.hardest_margin is None else margin_text(reason.hardest_margin)
-            first = f"{reason.first_rule}: {reason.first_excluded} of {reason.designs}" if reason.first_rule else ""
+            first = (
+                f"{reason.first_rule}: {reason.first_excluded} of {reason.designs}"
+                if reason.first_rule
+                else ""
+            )
             words = (first, reason.hardest_rule or "", margin, reason.closest or "")
         rows.append((reason.group, reason.mount.part, reason.mount.catalog, *words))
-    columns = ("group", "part", "list", "first rule, designs excluded", "hardest rule", "margin there", "closest design")
+    columns = (
+        "group",
+        "part",
+        "list",
+        "first rule, designs excluded",
+        "hardest rule",
+        "margin there",
+        "closest design",
+    )
     note = (
         "First rule: the first in the order of the calculation that excluded designs with this part. Hardest rule: the "
         "requirement that the closest of its designs misses most."
@@ -124,22 +138,28 @@ def proof_table(result: Result) -> Table:
         ("", "sum", str(excluded + record.met)),
         ("", "designs", str(record.designs)),
     ]
-    return Table("Designs excluded by each rule, each counted once", ("stage", "rule", "designs"), tuple(rows), frozenset({2}))
+    return Table(
+        "Designs excluded by each rule, each counted once",
+        ("stage", "rule", "designs"),
+        tuple(rows),
+        frozenset({2}),
+    )
 
 
 def speeds_table(result: Result, assessment: Assessment) -> Table:
     """Return the speeds at which an order meets a mode, inside the range of some condition."""
-    rows = []
+    rows: list[tuple[float, tuple[str, ...]]] = []
     for source in excitation_sources(result.study.brief):
         for span in source.ranges:
+            state = "steady" if span.steady else "passed through"
             for order in span.orders:
                 for mode in assessment.modes:
                     speed = mode.frequency / order
+                    shown = frequency_text(speed, source.is_shaft)
                     if span.low <= speed <= span.high:
-                        state = "steady" if span.steady else "passed through"
                         rows.append(
-                            (speed, (source.name, frequency_text(speed, source.is_shaft), f"{order:g}", mode.name, span.condition, state))
-                        )  # fmt: skip
+                            (speed, (source.name, shown, f"{order:g}", mode.name, span.condition, state))
+                        )
     columns = ("source", "speed", "order", "mode", "condition", "state")
     note = "Pass these speeds without stopping; the amplitudes there are in the margins of the condition."
     ordered = tuple(cells for _, cells in sorted(rows, key=lambda row: row[0]))
@@ -150,7 +170,8 @@ def service_table(loads: tuple[ServiceLoad, ...]) -> Table:
     """Return the dynamic forces into the floor and the movement of the named points, the three axes side by side."""
     rows: dict[tuple[str, str, str], dict[str, str]] = {}
     for load in loads:
-        text = f"{show(load.value, load.unit)} at {frequency_text(load.frequency, load.is_shaft)}"
+        where = frequency_text(load.frequency, load.is_shaft)
+        text = show(load.value, load.unit) + (f" at {where}" if where else "")
         rows.setdefault((load.condition, load.what, load.place), {})[load.direction] = text
     note = "Peak values over the whole range of the condition; sources with speeds of their own are added linearly."
     return Table(
@@ -174,5 +195,3 @@ def objective_words(result: Result) -> str:
         return words
     values = {name: objective_text(result.answer, name) for name in result.front.trade}
     return f"{words} (answer: {', '.join(f'{OBJECTIVE_WORDS[n]} {v}' for n, v in values.items())})"
-
-

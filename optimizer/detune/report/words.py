@@ -68,7 +68,9 @@ def is_shaft_speed(brief: Brief, row: MarginRow) -> bool:
     if issubclass(kind, HarmonicAllowable) and kind.unit_load is not HarmonicAllowable.unit_load:
         return False
     condition = next((c for c in brief.conditions if c.name == row.condition), None)
-    return condition is not None and all(tone.speed in condition.shafts for tone in tones_of(brief, condition))
+    return condition is not None and all(
+        tone.speed in condition.shafts for tone in tones_of(brief, condition)
+    )
 
 
 def value_text(row: MarginRow) -> str:
@@ -104,7 +106,9 @@ def unit_of(value: float, kind: str) -> str:
 
 
 def _unit_of_limit(row: MarginRow) -> str:
-    limits = [limit for limit in (row.upper, row.lower) if limit is not None and limit and math.isfinite(limit)]
+    limits = [
+        limit for limit in (row.upper, row.lower) if limit is not None and limit and math.isfinite(limit)
+    ]
     return unit_of(limits[0] if limits else row.value, row.unit)
 
 

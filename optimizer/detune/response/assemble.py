@@ -1,33 +1,112 @@
-"""Matrices of a batch of designs."""
+"""Matrices of a batch of designs, and the stiffness of each part in them."""
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detune.response.designs import Designs
-from detune.response.model import Group, Model
+from detune.response.model import Group, Model, StationRows
+from detune.response.part_laws import amplitude_part, frequency_part
+from detune.response.working_point import WorkingPoint, working_point
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
+class PartBatch:
+    """The parts of D designs as they work: at their load, and at an amplitude (S, D) in m where that counts."""
+
+    model: Model
+    designs: Designs
+    working: WorkingPoint | None = None
+    amplitude: Floats | None = None
+
+    def take(self, index: NDArray[np.generic]) -> "PartBatch":
+        """Return the parts of the designs at these indices, or where this mask holds."""
+        return PartBatch(
+            self.model,
+            self.designs.take(index),
+            None if self.working is None else self.working.take(index),
+            None if self.amplitude is None else self.amplitude[:, index],
+        )
+
+    @property
+    def by_station(self) -> bool:
+        """Whether parts of one number may differ from station to station."""
+        return self.working is not None or self.amplitude is not None
+
+    @property
+    def with_frequency(self) -> bool:
+        """Whether some part's stiffness changes with frequency other than by a dashpot."""
+        return any(group.laws is not None and group.laws.with_frequency for group in self.model.groups)
+
+    def constants(self, number: int) -> tuple[Floats, Floats, Floats]:
+        """Dynamic stiffness, loss factor and viscous coefficient (D, 3) of one part at station `number`."""
+        station = self.model.stations[number]
+        group = self.model.groups[station.group]
+        part = self.designs.part[:, station.group]
+        stiffness, loss, viscous = (
+            np.asarray(values)[part]
+            for values in (group.arrays.stiffness_dynamic, group.arrays.loss_factor, group.arrays.viscous)
+        )
+        if self.working is not None and group.laws is not None and group.laws.with_load:
+            static = group.arrays.stiffness_static[part, 2]
+            curved = np.array([group.laws.curves[index] is not None for index in part])
+            tangent = self.working.tangent[number] / (station.factor if station.factor > 0.0 else 1.0)
+            ratio = np.where(curved, tangent / static, 1.0)
+            stiffness = stiffness * np.stack([np.ones_like(ratio), np.ones_like(ratio), ratio], axis=1)
+        if self.amplitude is not None and group.laws is not None and group.laws.with_amplitude:
+            ratio, eta = amplitude_part(group.laws, part, self.amplitude[number])
+            stiffness = stiffness * ratio[:, None]
+            loss = np.where(np.isnan(eta)[:, None], loss, eta[:, None])
+        return stiffness, loss, viscous
+
+    def stiffness(self, station: StationRows, omega: Floats) -> Complexes:
+        """One part's complex dynamic stiffness (D, F, 3) at a station, in its state: k (1 + j eta) + j w c and laws."""
+        number = self.model.stations.index(station)
+        constant, loss, viscous = self.constants(number)
+        total: Complexes = (constant * (1.0 + 1j * loss))[:, None, :] + 1j * omega[:, :, None] * viscous[:, None, :]
+        group = self.model.groups[station.group]
+        if group.laws is not None and group.laws.with_frequency:
+            part = self.designs.part[:, station.group]
+            total = total + frequency_part(group.laws, group.arrays, part, constant, omega)
+        return station.factor * total
+
+    def frequency_matrix(self, omega: Floats) -> Complexes:
+        """What the frequency laws add (D, F, n, n) to the dynamic stiffness matrix."""
+        n = self.model.frame.count
+        total = np.zeros((*omega.shape, n, n), dtype=complex)
+        for number, station in enumerate(self.model.stations):
+            group = self.model.groups[station.group]
+            if group.laws is None or not group.laws.with_frequency or station.parallel == 0:
+                continue
+            part = self.designs.part[:, station.group]
+            added = frequency_part(group.laws, group.arrays, part, self.constants(number)[0], omega)
+            added = station.parallel * station.factor * added
+            total += np.einsum("dfa,ai,aj->dfij", added, station.rows, station.rows, optimize=True)
+        return total
+
+
+@dataclass(frozen=True, eq=False)
 class Dynamic:
     """Matrices of D designs, each (D, n, n): mass, dynamic stiffness, hysteretic and viscous part.
 
-    The dynamic stiffness is D(w) = K + j H + j w C - w^2 M.
+    The dynamic stiffness is D(w) = K + j H + j w C - w^2 M, and what frequency laws of `parts` add.
     """
 
     mass: Floats
     stiffness: Floats
     hysteretic: Floats
     viscous: Floats
+    parts: PartBatch
 
     def take(self, index: NDArray[np.generic]) -> "Dynamic":
         """Return the matrices of the designs at these indices, or where this mask holds."""
-        return Dynamic(self.mass[index], self.stiffness[index], self.hysteretic[index], self.viscous[index])
+        matrices = (self.mass, self.stiffness, self.hysteretic, self.viscous)
+        return Dynamic(*(matrix[index] for matrix in matrices), parts=self.parts.take(index))
 
     def at(self, omega: Floats) -> Complexes:
         """Return D(w) (D, F, n, n) at omega (D, F) in rad/s."""
@@ -36,33 +115,49 @@ class Dynamic:
         matrix: Complexes = constant[:, None] - (w**2) * self.mass[:, None]
         if self.viscous.any():
             matrix = matrix + 1j * w * self.viscous[:, None]
+        if self.parts.with_frequency:
+            matrix = matrix + self.parts.frequency_matrix(omega)
         return matrix
 
 
-def dynamic_matrices(model: Model, designs: Designs) -> Dynamic:
-    """Return the dynamic matrices of a batch, at the parts' dynamic stiffness."""
+def dynamic_matrices(model: Model, designs: Designs, amplitude: Floats | None = None) -> Dynamic:
+    """Return the dynamic matrices of a batch, at the parts' dynamic stiffness at their load (and amplitude)."""
+    parts = PartBatch(model, designs, working_point(model, designs), amplitude)
+    if parts.by_station:
+        return _by_station(model, designs, parts)
     return Dynamic(
         mass=model.mass[designs.step],
         stiffness=model.fixed_dynamic + _sum(model, designs, lambda group: group.arrays.stiffness_dynamic),
         hysteretic=model.fixed_hysteretic
         + _sum(model, designs, lambda group: group.arrays.stiffness_dynamic * group.arrays.loss_factor),
         viscous=model.fixed_viscous + _sum(model, designs, lambda group: group.arrays.viscous),
+        parts=parts,
     )
+
+
+def at_amplitude(dynamic: Dynamic, amplitude: Floats) -> Dynamic:
+    """Return the same designs with their parts at other amplitudes (S, D) in m."""
+    parts = replace(dynamic.parts, amplitude=amplitude)
+    return _by_station(parts.model, parts.designs, parts)
 
 
 def static_stiffness(model: Model, designs: Designs) -> Floats:
-    """Return the static stiffness (D, n, n) of a batch."""
+    """Return the static stiffness (D, n, n) of a batch of straight springs."""
     return model.fixed_static + _sum(model, designs, lambda group: group.arrays.stiffness_static)
 
 
-def part_dynamic_stiffness(group: Group, part: NDArray[np.intp], omega: Floats) -> Complexes:
-    """Return one part's complex dynamic stiffness (D, F, 3) along its axes: k (1 + j eta) + j w c."""
-    arrays = group.arrays
-    constant = arrays.stiffness_dynamic * (1.0 + 1j * arrays.loss_factor)
-    stiffness: Complexes = (
-        constant[part][:, None, :] + 1j * omega[:, :, None] * arrays.viscous[part][:, None, :]
-    )
-    return stiffness
+def _by_station(model: Model, designs: Designs, parts: PartBatch) -> Dynamic:
+    stiffness = np.repeat(model.fixed_dynamic[None], designs.count, axis=0)
+    hysteretic = np.repeat(model.fixed_hysteretic[None], designs.count, axis=0)
+    viscous = np.repeat(model.fixed_viscous[None], designs.count, axis=0)
+    for number, station in enumerate(model.stations):
+        k, eta, c = parts.constants(number)
+        # A design that finds no rest has failed its static limits; its response is not looked at.
+        k = np.nan_to_num(k)
+        for matrix, values in ((stiffness, k), (hysteretic, k * eta), (viscous, c)):
+            scaled = station.parallel * station.factor * values
+            matrix += np.einsum("da,ai,aj->dij", scaled, station.rows, station.rows, optimize=True)
+    return Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts)
 
 
 def _sum(model: Model, designs: Designs, values: Callable[[Group], Floats]) -> Floats:

@@ -240,7 +240,10 @@ def _station_rows(brief: Brief, static: DirectStatic, design: Design) -> tuple[S
 
 def _mode_rows(found: DirectModes, exempt: float | None) -> tuple[ModeRow, ...]:
     rows = []
-    share = modes.participation(found.mass, found.shapes, found.directions)
+    # In a direction in which nothing can move there is no mass to take part: its share is zero.
+    moves = np.any(found.directions != 0.0, axis=0)
+    share = np.zeros((len(found.frequency), len(moves)))
+    share[:, moves] = modes.participation(found.mass, found.shapes, found.directions[:, moves])
     for index, frequency in enumerate(found.frequency):
         each = [
             (float(separation.separation(frequency, low, high)), (float(low), float(high)))
@@ -255,7 +258,7 @@ def _mode_rows(found: DirectModes, exempt: float | None) -> tuple[ModeRow, ...]:
                 amplification=amplification,
                 separation=None if nearest is None else nearest[0],
                 interval=None if nearest is None else nearest[1],
-                participation=tuple(float(value) for value in share[..., index, :].ravel()),
+                participation=tuple(float(value) for value in share[index]),
                 exempt=exempt is not None and amplification < exempt,
             )
         )

@@ -24,6 +24,8 @@ from detune.parts.kinds.mount import Mount
 from detune.physics.orientation import axes_from_direction
 from detune.physics.rigid_body import box_inertia, skew
 from detune.response.design import Design
+from detune.response.direct_laws import DirectRest, follows_curve, part_stiffness, rest_on_laws
+from detune.response.part_laws import ROOM_TEMPERATURE
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -51,6 +53,12 @@ class DirectMachine:
     @property
     def nodes(self) -> tuple[str, ...]:
         return (*(body.name for body in self.brief.bodies), FLOOR)
+
+    @property
+    def with_frequency_laws(self) -> bool:
+        """Whether some part's stiffness changes with frequency other than by a dashpot."""
+        mounts = self.design.mounts
+        return any(mount.relaxation is not None or mount.law_table is not None for mount in mounts)
 
     @property
     def floor_axes(self) -> slice:
@@ -176,7 +184,7 @@ class DirectMachine:
         total = np.zeros(shape if omega is None else (len(omega), *shape), dtype=complex)
         for station in self.brief.stations:
             rows, axes = self.across(station), self.axes(station)
-            local = self.share(station) * part_stiffness(self.mount(station), omega)
+            local = self.share(station) * self.part(station, omega)
             turned = np.einsum("ia,...a,ja->...ij", axes, local, axes)
             total += rows.T @ turned @ rows
         for connection in self.brief.connections:
@@ -200,8 +208,46 @@ class DirectMachine:
                 total[..., modal, modal] += 2j * ratio * circular * omega[:, None]
         return total
 
+    def part(self, station: Station, omega: Floats | None) -> Complexes:
+        """One part's listed stiffness at a station: static (3,), or complex dynamic (F, 3) at its working load."""
+        mount = self.mount(station)
+        ratio = 1.0
+        if omega is not None and follows_curve(mount) and self.rest is not None:
+            tangent = float(self.rest.tangent[self.brief.stations.index(station)])
+            ratio = tangent / mount.stiffness_static[2] if np.isfinite(tangent) else 1.0
+        temperature = ROOM_TEMPERATURE if self.state is None else self.state.temperature
+        return part_stiffness(mount, omega, ratio, temperature)
+
+    @cached_property
+    def rest(self) -> DirectRest | None:
+        """Where the machine rests if some part has no straight load-deflection line, else None."""
+        if not any(follows_curve(self.mount(station)) for station in self.brief.stations):
+            return None
+        stations, free = self.brief.stations, self.free
+        springs = sum(
+            self.across(s).T @ self.axes(s) @ np.diag(self.share(s) * self.part(s, None).real) @ self.axes(s).T @ self.across(s)
+            for s in stations
+        )
+        mesh = np.ix_(free, free)
+        other = (self.stiffness(None).real - springs)[mesh]
+        load = self._weight_alone[free]
+        rows = [(self.axes(s).T @ self.across(s))[:, free] for s in stations]
+        mounts = [self.mount(s) for s in stations]
+        return rest_on_laws(
+            rows, mounts, [self.share(s) for s in stations], [self.packing(s) for s in stations], other, load
+        )
+
     @cached_property
     def dead_load(self) -> Floats:
+        """Static load (N,) on straight springs: weight, steady loads, and what packing puts on the springs."""
+        load = self._weight_alone.copy()
+        for station in self.brief.stations:
+            lift = self.share(station) * self.packing(station) * self.part(station, None)[2].real
+            load += lift * (self.axes(station).T @ self.across(station))[2]
+        return load
+
+    @cached_property
+    def _weight_alone(self) -> Floats:
         """Static load (N,): gravity on bodies and ballast, and the steady loads. The floor's own weight is not in it."""
         load = np.zeros(len(self.free))
         down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
@@ -215,9 +261,6 @@ class DirectMachine:
             node = body_of(self.brief, steady.on)
             load += self.place(node, np.array(steady.position)).T @ np.array(steady.force)
             load += self.turn(node).T @ np.array(steady.moment)
-        for station in self.brief.stations:
-            lift = self.share(station) * self.packing(station) * part_stiffness(self.mount(station), None)[2].real
-            load += lift * (self.axes(station).T @ self.across(station))[2]
         return load
 
     def tone_load(self, tone: Tone, omega: Floats) -> tuple[Complexes, Complexes]:
@@ -232,17 +275,6 @@ class DirectMachine:
         vector = self.place(node, np.array(tone.position)).T @ np.array(tone.force)
         vector = vector + self.turn(node).T @ np.array(tone.moment)
         return growth * vector, np.zeros((len(omega), size), dtype=complex)
-
-
-def part_stiffness(mount: Mount, omega: Floats | None) -> Complexes:
-    """One part's stiffness along its own axes: static (3,), or complex dynamic (F, 3)."""
-    if omega is None:
-        return np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex)
-    dynamic = np.nan_to_num(np.array(mount.stiffness_dynamic, dtype=float))
-    hysteretic = dynamic * np.array(mount.loss_factor)
-    return (
-        dynamic + 1j * hysteretic + 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
-    )
 
 
 def connection_stiffness(connection: Connection, omega: Floats | None) -> Complexes:

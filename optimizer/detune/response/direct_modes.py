@@ -54,18 +54,26 @@ def direct_modes(machine: DirectMachine, intervals: list[tuple[float, float]]) -
     # Every element is k (1 + j eta) + j w c, so two frequencies tell hysteretic from viscous.
     one, two = (machine.stiffness(np.array([w]))[0][mesh] for w in (1.0, 2.0))
     viscous = two.imag - one.imag
-    hysteretic = one.imag - viscous
-    frequency, shapes = modes.undamped_modes(mass, one.real)
+    hysteretic, stiffness = one.imag - viscous, one.real
+    frequency, shapes = modes.undamped_modes(mass, stiffness)
+    loss_factor = modes.modal_loss_factors(shapes, hysteretic, viscous, frequency)
+    if machine.with_frequency_laws:
+        viscous = np.zeros_like(viscous)
+        frequency, shapes, loss_factor, stiffness, hysteretic = _at_own_frequency(machine, mass, frequency)
+        omega = 2.0 * np.pi * frequency
+        poles = omega * (1j - 0.5 * loss_factor)
+    else:
+        poles = modes.damped_poles(mass, viscous, hysteretic, stiffness)
     directions = np.array([[float(freedom == name) for name in FREEDOMS] for _, freedom in machine.names])
     return DirectModes(
         mass=mass,
-        stiffness=one.real,
+        stiffness=stiffness,
         hysteretic=hysteretic,
         viscous=viscous,
         frequency=frequency,
         shapes=shapes,
-        loss_factor=modes.modal_loss_factors(shapes, hysteretic, viscous, frequency),
-        poles=modes.damped_poles(mass, viscous, hysteretic, one.real),
+        loss_factor=loss_factor,
+        poles=poles,
         intervals=np.array(intervals, dtype=float).reshape(-1, 2),
         names=tuple(_spoken(machine, node, freedom) for node, freedom in machine.names),
         directions=directions,
@@ -76,3 +84,33 @@ def _spoken(machine: DirectMachine, node: str, freedom: str) -> str:
     if node in (FLOOR, "structure"):
         return node
     return f"{node} {freedom}" if len(machine.brief.bodies) > 1 else freedom
+
+
+def _at_own_frequency(
+    machine: DirectMachine, mass: Floats, frequency: Floats
+) -> tuple[Floats, Floats, Floats, Floats, Floats]:
+    """Return frequency, shapes and loss factor of each mode at its own frequency, and causal matrices of them.
+
+    The matrices keep each mode's own stiffness and loss: shapes found at different stiffnesses are made
+    orthogonal by the mass first.
+    """
+    mesh = np.ix_(machine.free, machine.free)
+    frequency = frequency.copy()
+    shapes = np.zeros((len(frequency), len(frequency)))
+    loss = np.zeros_like(frequency)
+    for mode in range(len(frequency)):
+        for _ in range(60):
+            full = machine.stiffness(np.array([2.0 * np.pi * frequency[mode]]))[0][mesh]
+            found, found_shapes = modes.undamped_modes(mass, full.real)
+            change = abs(found[mode] - frequency[mode])
+            frequency[mode] = found[mode]
+            if change <= 1e-11 * found[mode]:
+                break
+        shape = found_shapes[:, mode]
+        shapes[:, mode] = shape
+        loss[mode] = float(shape @ full.imag @ shape) / float(shape @ full.real @ shape)
+    values, vectors = np.linalg.eigh(shapes.T @ mass @ shapes)
+    carried = mass @ shapes @ (vectors / np.sqrt(values)) @ vectors.T
+    omega = 2.0 * np.pi * frequency
+    stiffness = (carried * omega**2) @ carried.T
+    return frequency, shapes, loss, stiffness, (carried * (loss * omega**2)) @ carried.T

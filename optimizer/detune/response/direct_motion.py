@@ -9,20 +9,22 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine, record_amplitude, tone_amplitude
+from detune.brief.allowable.base import SumOfOrders, combine, record_amplitude, tone_amplitude
 from detune.brief.brief import body_of
 from detune.brief.forcing import Tone, Transient
 from detune.brief.machine import Station
+from detune.physics.pulses import pulse_step, sampled_pulse
 from detune.physics.simulation import simulate
 from detune.response.direct import FLOOR, DirectMachine
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_views import station_named
-from detune.response.transient import floor_motion, record_samples
+from detune.response.transient import rest_time
 
 Floats = NDArray[np.float64]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
 SAMPLES_PER_CYCLE = 160.0
+STEPS_PER_PULSE = 600.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,6 +36,7 @@ class DirectMotion:
     """
 
     machine: DirectMachine
+    found: DirectModes
     rates: NDArray[np.generic]
     lagged: NDArray[np.generic]
     floor: Floats
@@ -59,14 +62,14 @@ class DirectMotion:
         return self.machine.share(station) / self.machine.factor(station)
 
     def _force(self, station: Station) -> NDArray[np.generic]:
-        mount = self.machine.mount(station)
-        dynamic, eta, viscous = (
-            np.array([value or 0.0 for value in column], dtype=float)
-            for column in (mount.stiffness_dynamic, mount.loss_factor, mount.viscous)
-        )
-        rows = self.machine.axes(station).T @ self._rows(self.machine.across(station))
-        moved, fast, lagged = (x @ rows.T for x in (self.rates[0], self.rates[1], self.lagged))
-        return self.machine.factor(station) * (dynamic * moved + viscous * fast + dynamic * eta * lagged)
+        # Each mode moves the part at the stiffness of the mode's own frequency; for constant stiffness and a
+        # dashpot the sum over modes is k times the deflection and c times its rate.
+        omega = TWO_PI * self.found.frequency
+        stiffness = self.machine.factor(station) * self.machine.part(station, omega)
+        across = (self.machine.axes(station).T @ self._rows(self.machine.across(station)) @ self.found.shapes).T
+        carried = self.found.mass @ self.found.shapes
+        moved, fast = self.rates[0] @ carried, self.rates[1] @ carried / omega
+        return moved @ (across * stiffness.real) + fast @ (across * stiffness.imag)
 
     def total_force(self, surface: str) -> NDArray[np.generic]:
         brief, floor = self.machine.brief, self.machine.floor
@@ -109,17 +112,22 @@ def direct_transient_values(
     """Return what the transients together count as in each row (R,); different ones add linearly."""
     total = np.zeros(len(pairs))
     for transient in transients:
-        view = _transient_motion(machine, found, transient)
+        views = _transient_motion(machine, found, transient)
+        duration = sum(step * (len(view.lagged) - 1) for view, step in views)
+        if transient.record is not None:
+            duration = transient.step * (len(transient.record) - 1)
         for index, (allowable, place) in enumerate(pairs):
             statistic = allowable.statistic()
-            observed = allowable.observed(view, place)
-            part = record_amplitude(observed, allowable.along(), statistic)
+            seen = [(np.asarray(allowable.observed(view, place)), step) for view, step in views]
+            part = record_amplitude(seen, allowable.along(), statistic, duration)
             total[index] = combine(total[[index]], part, statistic)[0]
     return total
 
 
-def _transient_motion(machine: DirectMachine, found: DirectModes, transient: Transient) -> DirectMotion:
-    step, before, after = record_samples(transient, float(found.frequency[0]), float(found.frequency[-1]))
+def _transient_motion(
+    machine: DirectMachine, found: DirectModes, transient: Transient
+) -> list[tuple[DirectMotion, float]]:
+    """Return the motion and its time step (s) on each stretch between jumps of the load."""
     lead = np.zeros(len(machine.free))
     pattern = np.zeros(len(machine.free))
     base = np.array(transient.base or (0.0, 0.0, 0.0))
@@ -132,49 +140,65 @@ def _transient_motion(machine: DirectMachine, found: DirectModes, transient: Tra
         pattern = place.T @ np.array(transient.force) + machine.turn(body).T @ np.array(transient.moment)
     follow = lead[machine.free]
     load = pattern[machine.free] - found.mass @ follow
-    start = np.zeros(len(load))
+    state = np.zeros(2 * len(load))
     if transient.weight_acts:
-        start = -np.linalg.solve(found.stiffness, machine.dead_load[machine.free])
-    rates = _simulated(found, load, before, after, step, start, -transient.velocity * follow)
-    return DirectMotion(
-        machine, rates, rates[1] @ lagging(found).T, floor_motion(transient, before, after, step), base
-    )
+        state[: len(load)] = -np.linalg.solve(found.stiffness, machine.dead_load[machine.free])
+    state[len(load) :] = -transient.velocity * follow
+    floor = np.array([0.0, 0.0 if transient.weight_acts else transient.velocity])
+    views = []
+    for step, values in _sampled(transient, found):
+        rates = _simulated(found, load, values, step, state)
+        state = np.concatenate([rates[0, -1], rates[1, -1]])
+        free = np.zeros((3, len(values)))
+        if transient.base is not None:
+            free = _integrated(values, step, floor)
+            floor = free[:2, -1]
+        views.append((DirectMotion(machine, found, rates, rates[1] @ lagging(found).T, free, base), step))
+    return views
 
 
-def _simulated(
-    found: DirectModes,
-    load: Floats,
-    before: Floats,
-    after: Floats,
-    step: float,
-    displacement: Floats,
-    velocity: Floats,
-) -> Floats:
-    """Return displacement, velocity and acceleration (3, T, n) by scipy.signal.lsim.
+def _sampled(transient: Transient, found: DirectModes) -> list[tuple[float, Floats]]:
+    """Return step (s) and samples (T,) of the load between its jumps, and of the rest after it."""
+    longest = 1.0 / (SAMPLES_PER_CYCLE * float(found.frequency[-1]))
+    pieces: list[tuple[float, Floats]] = []
+    if transient.pulse is not None:
+        edges = transient.pulse.edge
+        step = pulse_step(transient.pulse, min(longest, float(edges[-1]) / STEPS_PER_PULSE))
+        place = np.rint(edges / step).astype(int)
+        before, after = sampled_pulse(transient.pulse, step, int(place[-1]) + 1)
+        for start, end in zip(place[:-1], place[1:], strict=True):
+            pieces.append((step, np.append(after[start:end], before[end])))
+    elif transient.record is not None:
+        finer = max(1, int(np.ceil(transient.step / (2.0 * longest))))
+        time = np.arange((len(transient.record) - 1) * finer + 1) / finer
+        pieces.append((transient.step / finer, np.interp(time, np.arange(len(transient.record)), transient.record)))
+    rest = rest_time(found.frequency, found.loss_factor)
+    return [*pieces, (longest, np.zeros(int(np.ceil(rest / longest)) + 1))]
 
-    What jumps is a staircase, held between samples; the rest is straight between them. Both are exact.
-    """
+
+def _integrated(values: Floats, step: float, start: Floats) -> Floats:
+    """Return displacement, velocity and acceleration (3, T) of a motion whose acceleration is straight between samples."""
+    from scipy.integrate import cumulative_trapezoid
+
+    velocity = start[1] + cumulative_trapezoid(values, dx=step, initial=0.0)
+    # The trapezoidal rule misses the third of each step's bend.
+    bend = np.append(0.0, np.cumsum(np.diff(values))) * step**2 / 12.0
+    return np.stack([start[0] + cumulative_trapezoid(velocity, dx=step, initial=0.0) - bend, velocity, values])
+
+
+def _simulated(found: DirectModes, load: Floats, values: Floats, step: float, state: Floats) -> Floats:
+    """Return displacement, velocity and acceleration (3, T, n) by scipy.signal.lsim, from a state (2n,) on."""
     from scipy.signal import StateSpace, lsim
 
     n = len(load)
     damping = modal_damping(found)
     inverse = np.linalg.inv(found.mass)
-    state = np.block(
-        [[np.zeros((n, n)), np.eye(n)], [-inverse @ found.stiffness, -inverse @ damping]],
-    )
+    matrix = np.block([[np.zeros((n, n)), np.eye(n)], [-inverse @ found.stiffness, -inverse @ damping]])
     inputs = np.concatenate([np.zeros(n), inverse @ load])[:, None]
-    system = StateSpace(state, inputs, np.eye(2 * n), np.zeros((2 * n, 1)))
-    time = step * np.arange(len(before))
-    staircase = np.cumsum(after - before)
-    smooth = after - staircase
-    _, _, ramped = lsim(system, smooth, time, X0=np.concatenate([displacement, velocity]), interp=True)
-    total = np.asarray(ramped)
-    if np.any(staircase):
-        _, _, held = lsim(system, staircase, time, interp=False)
-        total = total + np.asarray(held)
-    moved, fast = total[:, :n], total[:, n:]
-    acting = before[:, None] * load
-    acceleration = (acting - moved @ found.stiffness.T - fast @ damping.T) @ inverse.T
+    system = StateSpace(matrix, inputs, np.eye(2 * n), np.zeros((2 * n, 1)))
+    _, _, states = lsim(system, values, step * np.arange(len(values)), X0=state, interp=True)
+    moved, fast = np.asarray(states)[:, :n], np.asarray(states)[:, n:]
+    acceleration = (values[:, None] * load - moved @ found.stiffness.T - fast @ damping.T) @ inverse.T
     return np.stack([moved, fast, acceleration])
 
 
@@ -189,7 +213,7 @@ def direct_passage_values(
 
     The quadrature pair of the load is sampled finely and simulated; the two responses make the envelope.
     """
-    total: list[Floats | None] = [None] * len(pairs)
+    sums = [SumOfOrders(allowable.statistic()) for allowable, _ in pairs]
     start, end, time = way
     fastest = max(tones[0].order for tones in sets) * max(start, end)
     count = int(np.ceil(time * SAMPLES_PER_CYCLE * max(fastest, float(found.frequency[-1])))) + 1
@@ -209,11 +233,9 @@ def direct_passage_values(
             [getattr(parts[0], name) + 1j * getattr(parts[1], name) for name in ("displacement", "velocity", "acceleration")]
         )
         lagged = rates[1] @ lagging(found).T
-        view = DirectMotion(machine, rates, lagged, np.zeros((3, count)), np.zeros(3))
+        view = DirectMotion(machine, found, rates, lagged, np.zeros((3, count)), np.zeros(3))
         for index, (allowable, place) in enumerate(pairs):
-            statistic = allowable.statistic()
             observed = allowable.weighted(allowable.observed(view, place), speed[None] / TWO_PI)
-            tone_part = tone_amplitude(observed, allowable.along(), statistic)[0]
-            earlier = total[index]
-            total[index] = tone_part if earlier is None else combine(earlier, tone_part, statistic)
-    return np.array([part.max() for part in total if part is not None])
+            tone_part = tone_amplitude(observed, allowable.along(), allowable.statistic())[0]
+            sums[index].add(order, tone_part)
+    return np.array([each.total().max() for each in sums])

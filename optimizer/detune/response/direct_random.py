@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine, noise_amplitude
+from detune.brief.allowable.base import noise_amplitude
 from detune.brief.forcing import Noise, Tone
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes
@@ -31,17 +31,17 @@ class Variances:
 def direct_noise_values(
     machine: DirectMachine, found: DirectModes, noises: tuple[Noise, ...], pairs: Pairs
 ) -> Floats:
-    """Return what independent noises together count as in each row (R,)."""
-    total = np.zeros(len(pairs))
-    for duration in dict.fromkeys(noise.duration for noise in noises):
-        parts = [direct_variances(machine, found, n, pairs) for n in noises if n.duration == duration]
-        moved = sum((part.moved for part in parts), np.zeros(len(pairs)))
-        rates = sum((part.rates for part in parts), np.zeros(len(pairs)))
-        for index, (allowable, _) in enumerate(pairs):
-            statistic = allowable.statistic()
-            part = noise_amplitude(moved[[index]], rates[[index]], duration, statistic)
-            total[index] = combine(total[[index]], part, statistic)[0]
-    return total
+    """Return what independent noises together count as in each row (R,), all lasting as long as the longest."""
+    parts = [direct_variances(machine, found, noise, pairs) for noise in noises]
+    moved = sum((part.moved for part in parts), np.zeros(len(pairs)))
+    rates = sum((part.rates for part in parts), np.zeros(len(pairs)))
+    duration = max(noise.duration for noise in noises)
+    return np.array(
+        [
+            noise_amplitude(moved[[index]], rates[[index]], duration, allowable.statistic())[0]
+            for index, (allowable, _) in enumerate(pairs)
+        ]
+    )
 
 
 def direct_variances(machine: DirectMachine, found: DirectModes, noise: Noise, pairs: Pairs) -> Variances:

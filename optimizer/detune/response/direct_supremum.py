@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine, tone_amplitude
+from detune.brief.allowable.base import SumOfOrders, combine, tone_amplitude
 from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
 from detune.brief.forcing import Tone
@@ -152,16 +152,14 @@ def amplitudes_at(
     machine: DirectMachine, pairs: Pairs, sets: list[tuple[Tone, ...]], speed: Floats
 ) -> Floats:
     """Return the amplitude (R, F) of every row at speeds (F,) in Hz, all coherent sets together."""
-    total: list[Floats | None] = [None] * len(pairs)
+    sums = [SumOfOrders(allowable.statistic()) for allowable, _ in pairs]
     for tones in sets:
         view = DirectTone(machine, tones, (TWO_PI * tones[0].order * speed)[None])
         for index, (allowable, place) in enumerate(pairs):
-            statistic = allowable.statistic()
             observed = allowable.weighted(allowable.observed(view, place), view.omega / TWO_PI)
-            tone = tone_amplitude(observed, allowable.along(), statistic)[0]
-            earlier = total[index]
-            total[index] = tone if earlier is None else combine(earlier, tone, statistic)
-    return np.stack([part for part in total if part is not None])
+            tone = tone_amplitude(observed, allowable.along(), allowable.statistic())[0]
+            sums[index].add(tones[0].order, tone)
+    return np.stack([each.total() for each in sums])
 
 
 def _supremum(

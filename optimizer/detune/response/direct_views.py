@@ -9,7 +9,9 @@ from numpy.typing import NDArray
 from detune.brief.brief import body_of
 from detune.brief.forcing import Tone
 from detune.brief.machine import Station
-from detune.response.direct import FLOOR, DirectMachine, connection_stiffness, part_stiffness
+from detune.physics.static import solve_static
+from detune.response.direct import FLOOR, DirectMachine, connection_stiffness
+from detune.response.solve import solve_or_resonate
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -32,8 +34,11 @@ class DirectStatic:
         """Displacements (N,), zero where a freedom cannot move."""
         free = self.machine.free
         q = np.zeros(len(free))
+        if self.machine.rest is not None:
+            q[free] = self.machine.rest.q
+            return q
         stiffness = self.machine.stiffness(None).real
-        q[free] = np.linalg.solve(stiffness[np.ix_(free, free)], self.machine.dead_load[free])
+        q[free] = solve_static(stiffness[np.ix_(free, free)], self.machine.dead_load[free])
         return q
 
     def motion(self, point: str) -> Floats:
@@ -55,8 +60,12 @@ class DirectStatic:
 
     def station_load(self, station: str) -> Floats:
         stated = station_named(self.machine, station)
-        own = self.machine.factor(stated) * part_stiffness(self.machine.mount(stated), None).real
-        return own * self._elastic(stated)
+        own = self.machine.factor(stated) * self.machine.part(stated, None).real
+        load: Floats = own * self._elastic(stated)
+        if self.machine.rest is not None and self.machine.share(stated) > 0.0:
+            number = self.machine.brief.stations.index(stated)
+            load[0, 2] = -self.machine.factor(stated) * self.machine.rest.force[number]
+        return load
 
     def part_value(self, station: str, column: str) -> Floats:
         value = getattr(self.machine.mount(station_named(self.machine, station)), column)
@@ -90,7 +99,8 @@ class DirectTone:
                 motion[:, machine.floor_vertical] = 0.0
             q += motion
         right = (load - np.einsum("fij,fj->fi", dynamic[:, :, ~free], q[:, ~free]))[:, free]
-        q[:, free] = np.linalg.solve(dynamic[:, free][:, :, free], right[..., None])[..., 0]
+        own = stiffness[:, free][:, :, free]
+        q[:, free] = solve_or_resonate(dynamic[:, free][:, :, free], own, right)
         return q, stiffness, load
 
     @property
@@ -116,7 +126,7 @@ class DirectTone:
 
     def station_force(self, station: str) -> Complexes:
         stated = station_named(self.machine, station)
-        own = self.machine.factor(stated) * part_stiffness(self.machine.mount(stated), self.omega[0])
+        own = self.machine.factor(stated) * self.machine.part(stated, self.omega[0])
         return own * self.station_deflection(station)
 
     def total_force(self, surface: str) -> Complexes:
@@ -146,7 +156,7 @@ class DirectTone:
         lost = np.zeros(len(omega))
         for station in self.machine.brief.stations:
             deflection = self.station_deflection(station.name)[0]
-            loss = part_stiffness(self.machine.mount(station), omega).imag
+            loss = self.machine.part(station, omega).imag
             lost += self.machine.share(station) * 0.5 * omega * np.sum(loss * np.abs(deflection) ** 2, axis=1)
         for connection in self.machine.brief.connections:
             position = np.array(connection.position)
@@ -155,7 +165,9 @@ class DirectTone:
             loss = connection_stiffness(connection, omega).imag
             lost += 0.5 * omega * np.sum(loss * np.abs(q @ rows.T) ** 2, axis=1)
         if self.machine.floor is not None:
-            lost += 0.5 * omega**2 * self.machine.floor.damping * np.abs(q[:, self.machine.floor_vertical]) ** 2
+            lost += (
+                0.5 * omega**2 * self.machine.floor.damping * np.abs(q[:, self.machine.floor_vertical]) ** 2
+            )
         if self.machine.brief.structure is not None:
             own_modes = self.machine.brief.structure.modes
             rate = 2.0 * own_modes.damping_ratio * 2.0 * np.pi * own_modes.frequency

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine, tone_amplitude
+from detune.brief.allowable.base import SumOfOrders, combine, tone_amplitude
 from detune.physics import envelope
 from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
@@ -21,6 +21,7 @@ from detune.response.views import ToneBatch
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 TWO_PI = 2.0 * np.pi
+UNDAMPED = 1e-9
 
 
 @dataclass(frozen=True)
@@ -56,16 +57,14 @@ def family_amplitude(
     model: Model, designs: Designs, dynamic: Dynamic, rows: Rows, family: Family, speed: Floats
 ) -> Floats:
     """Return the amplitude (R, D, F) of each row at speeds (D, F) in rad/s, all sets of the family together."""
-    total: list[Floats | None] = [None] * len(rows.pairs)
+    sums = [SumOfOrders(allowable.statistic()) for allowable, _ in rows.pairs]
     for loads in family.sets:
         view = ToneBatch(model, designs, dynamic, loads, speed * loads[0].order)
         for index, (allowable, place) in enumerate(rows.pairs):
-            statistic = allowable.statistic()
             observed = allowable.weighted(allowable.observed(view, place), view.omega / TWO_PI)
-            tone = tone_amplitude(observed, allowable.along(), statistic)
-            earlier = total[index]
-            total[index] = tone if earlier is None else combine(earlier, tone, statistic)
-    return np.stack([part for part in total if part is not None])
+            tone = tone_amplitude(observed, allowable.along(), allowable.statistic())
+            sums[index].add(loads[0].order, tone)
+    return np.stack([each.total() for each in sums])
 
 
 def response_values(
@@ -101,7 +100,9 @@ def suprema(model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, 
     frequency = np.full_like(value, np.nan)
     largest = np.full_like(value, -np.inf)
     for family in rows.families:
-        centres, widths = envelope.centres_of_orders(modal.frequency, modal.loss_factor, family.orders)
+        # An undamped mode has no width of its own; one of rounding size keeps the search going.
+        loss = np.maximum(modal.loss_factor, UNDAMPED)
+        centres, widths = envelope.centres_of_orders(modal.frequency, loss, family.orders)
 
         def amplitude(speed: Floats, family: Family = family) -> Floats:
             return family_amplitude(model, designs, dynamic, rows, family, speed)

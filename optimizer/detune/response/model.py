@@ -19,6 +19,7 @@ from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.physics import rigid_body
 from detune.physics.orientation import axes_from_direction
+from detune.response.part_laws import ROOM_TEMPERATURE, GroupLaws, group_laws
 
 Floats = NDArray[np.float64]
 FLOOR = "floor"
@@ -112,6 +113,7 @@ class Group:
     mounts: tuple[Mount, ...]
     arrays: MountArrays
     spread: Floats
+    laws: GroupLaws | None = None
 
 
 @dataclass(frozen=True)
@@ -181,7 +183,7 @@ def build_model(
         _add_structure(frame, structure, base_mass, fixed)
     mass, weight, ballast_mass, ballast_cost = _with_ballast(brief, frame, base_mass, properties)
     groups = tuple(
-        Group(name, mounts, _without_gaps(mount_arrays(mounts)), _spread(stations, index, n))
+        _group(name, mounts, _spread(stations, index, n), ROOM_TEMPERATURE if state is None else state.temperature)
         for index, (name, mounts) in enumerate(zip(brief.groups, candidates, strict=True))
     )
     notes = [note for p in properties.values() for note in p.assumed]
@@ -300,6 +302,11 @@ def _with_ballast(
         loads.append(load + move.T @ (step * gravity))
     steps = np.array(ballast.steps)
     return np.array(masses), np.array(loads), steps, steps * ballast.cost_per_kg
+
+
+def _group(name: str, mounts: tuple[Mount, ...], spread: Floats, temperature: float) -> Group:
+    laws, arrays = group_laws(mounts, _without_gaps(mount_arrays(mounts)), temperature)
+    return Group(name, mounts, arrays, spread, laws)
 
 
 def _without_gaps(arrays: MountArrays) -> MountArrays:

@@ -11,6 +11,7 @@ from detune.physics import modes
 from detune.response.assemble import Dynamic
 
 Floats = NDArray[np.float64]
+ITERATIONS = 30
 
 
 @dataclass(frozen=True)
@@ -31,5 +32,29 @@ class ModeBatch:
 def mode_batch(dynamic: Dynamic) -> ModeBatch:
     """Return the undamped modes at the dynamic stiffness, with each mode's equivalent loss factor."""
     frequency, shapes = modes.undamped_modes(dynamic.mass, dynamic.stiffness)
+    if dynamic.parts.with_frequency:
+        return _iterated(dynamic, frequency, shapes)
     loss = modes.modal_loss_factors(shapes, dynamic.hysteretic, dynamic.viscous, frequency)
+    return ModeBatch(frequency, shapes, loss)
+
+
+def _iterated(dynamic: Dynamic, frequency: Floats, shapes: Floats) -> ModeBatch:
+    """Modes where stiffness depends on frequency: each one at the stiffness of its own frequency.
+
+    A fixed-point iteration, mode by mode; stiffness changes slowly with frequency, so it closes fast.
+    """
+    loss = np.zeros_like(frequency)
+    for mode in range(frequency.shape[1]):
+        for _ in range(ITERATIONS):
+            omega = 2.0 * np.pi * frequency[:, [mode]]
+            added = dynamic.parts.frequency_matrix(omega)[:, 0]
+            found, found_shapes = modes.undamped_modes(dynamic.mass, dynamic.stiffness + added.real)
+            settled = np.allclose(found[:, mode], frequency[:, mode], rtol=1e-9)
+            frequency[:, mode], shapes[:, :, mode] = found[:, mode], found_shapes[:, :, mode]
+            if settled:
+                break
+        each = modes.modal_loss_factors(
+            found_shapes, dynamic.hysteretic + added.imag, dynamic.viscous, np.maximum(found, 1e-12)
+        )
+        loss[:, mode] = each[:, mode]
     return ModeBatch(frequency, shapes, loss)

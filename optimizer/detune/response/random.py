@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine, noise_amplitude
+from detune.brief.allowable.base import noise_amplitude
 from detune.brief.brief import Brief, body_of
 from detune.brief.forcing import Noise
 from detune.physics.random_response import variance
@@ -50,18 +50,21 @@ def noise_values(
     pairs: Pairs,
     noises: tuple[NoiseLoad, ...],
 ) -> Floats:
-    """Return what the noises together count as in each row (R, D): variances of independent noises add."""
-    total = np.zeros((len(pairs), designs.count))
-    by_duration: dict[float, Floats] = {}
-    for each in noises:
-        found = noise_variances(model, designs, dynamic, modal, pairs, each)
-        earlier = by_duration.get(each.noise.duration)
-        by_duration[each.noise.duration] = found if earlier is None else earlier + found
-    for duration, (moved, rates) in ((d, (v[0], v[1])) for d, v in by_duration.items()):
-        for index, (allowable, _) in enumerate(pairs):
-            part = noise_amplitude(moved[index], rates[index], duration, allowable.statistic())
-            total[index] = combine(total[index], part, allowable.statistic())
-    return total
+    """Return what the noises together count as in each row (R, D): variances of independent noises add.
+
+    Where they last differently long, all are taken to last as long as the longest.
+    """
+    moved, rates = sum(
+        (noise_variances(model, designs, dynamic, modal, pairs, each) for each in noises),
+        np.zeros((2, len(pairs), designs.count)),
+    )
+    duration = max(each.noise.duration for each in noises)
+    return np.stack(
+        [
+            noise_amplitude(moved[index], rates[index], duration, allowable.statistic())
+            for index, (allowable, _) in enumerate(pairs)
+        ]
+    )
 
 
 def noise_variances(

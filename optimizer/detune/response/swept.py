@@ -10,15 +10,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine, tone_amplitude
-from detune.physics.simulation import StateModes, state_modes
+from detune.brief.allowable.base import SumOfOrders, tone_amplitude
+from detune.physics.simulation import Motion, StateModes, state_modes
 from detune.physics.sweep import sweep_envelope
-from detune.response.assemble import Dynamic, part_dynamic_stiffness
+from detune.response.assemble import Dynamic
+from detune.response.causal_design import causal_matrices
 from detune.response.designs import Designs
 from detune.response.loads import Family, Load
 from detune.response.model import Model
 from detune.response.modes import ModeBatch
-from detune.response.views import find_station
+from detune.response.transient import MotionView, motion_view, one_mode_batch
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -41,43 +42,13 @@ class Passage:
 
 
 @dataclass(frozen=True, eq=False)
-class SweptView:
-    """The complex envelope of one design (D = 1) over the moments of a passage.
+class System:
+    """One design in time: stiffness and damping (n, n) of its causal stand-in, and its modes, complex and undamped."""
 
-    `rates` (3, T, n): displacement, velocity, acceleration. `speed` (T,) rad/s of the tone.
-    """
-
-    model: Model
-    designs: Designs
-    rates: Complexes
-    speed: Floats
-
-    def motion(self, point: str, rate: int = 0) -> Complexes:
-        return (self.rates[rate] @ self.model.points[point].T)[None]
-
-    def station_deflection(self, station: str, rate: int = 0) -> Complexes:
-        return (self.rates[rate] @ find_station(self.model, station).rows.T)[None]
-
-    def station_force(self, station: str) -> Complexes:
-        group = find_station(self.model, station).group
-        stiffness = part_dynamic_stiffness(
-            self.model.groups[group], self.designs.part[:, group], self.speed[None]
-        )
-        return find_station(self.model, station).factor * stiffness * self.station_deflection(station)
-
-    def total_force(self, surface: str) -> Complexes:
-        total = np.zeros((1, len(self.speed), 3), dtype=complex)
-        for station in self.model.stations:
-            if station.on_floor:
-                total += station.parallel * self.station_force(station.name) @ station.axes.T
-        for c in self.model.connections:
-            if c.on_floor:
-                stiffness = c.stiffness + 1j * c.hysteretic + 1j * self.speed[:, None] * c.viscous
-                total += stiffness * (self.rates[0] @ c.rows.T)
-        if surface == "ground" and self.model.frame.flexible_floor:
-            own = self.model.floor_stiffness + 1j * self.speed * self.model.floor_damping
-            total[0, :, 2] = own * self.rates[0][:, -1]
-        return total
+    stiffness: Floats
+    damping: Floats
+    modes: StateModes
+    undamped: ModeBatch
 
 
 def swept_values(
@@ -92,54 +63,42 @@ def swept_values(
     value = np.zeros((len(pairs), designs.count))
     for index in range(designs.count):
         one = np.array([index])
-        modes, damping = causal_modes(dynamic, modal, index)
+        stiffness, damping = causal_matrices(dynamic, modal, index)
+        undamped = one_mode_batch(modal, index)
+        system = System(stiffness, damping, state_modes(dynamic.mass[index], damping, stiffness), undamped)
         for passage in passages:
-            found = _passage(model, designs.take(one), dynamic.take(one), modes, damping, pairs, passage)
+            found = _passage(model, dynamic.take(one), system, pairs, passage)
             value[:, index] = np.maximum(value[:, index], found)
     return value
 
 
-def causal_modes(dynamic: Dynamic, modal: ModeBatch, index: int) -> tuple[StateModes, Floats]:
-    """Return the complex modes and the damping (n, n) of one design with viscous stand-ins for loss factors."""
-    shapes, omega = modal.shapes[index], TWO_PI * modal.frequency[index]
-    lost = np.sum(shapes * (dynamic.hysteretic[index] @ shapes), axis=0)
-    carried = dynamic.mass[index] @ shapes
-    damping = dynamic.viscous[index] + (carried * (lost / omega)) @ carried.T
-    return state_modes(dynamic.mass[index], damping, dynamic.stiffness[index]), damping
-
-
 def _passage(
     model: Model,
-    designs: Designs,
     dynamic: Dynamic,
-    modes: StateModes,
-    damping: Floats,
+    system: System,
     pairs: Pairs,
     passage: Passage,
 ) -> Floats:
-    times = moments(modes, passage)
-    total: list[Floats | None] = [None] * len(pairs)
+    times = moments(system.modes, passage)
+    sums = [SumOfOrders(allowable.statistic()) for allowable, _ in pairs]
     for loads in passage.family.sets:
-        view = _swept_view(model, designs, dynamic, modes, damping, passage, loads, times)
+        view, speed = _swept_view(model, dynamic, system, passage, loads, times)
         for row, (allowable, place) in enumerate(pairs):
-            statistic = allowable.statistic()
-            observed = allowable.weighted(allowable.observed(view, place), view.speed[None] / TWO_PI)
-            tone = tone_amplitude(observed, allowable.along(), statistic)[0]
-            earlier = total[row]
-            total[row] = tone if earlier is None else combine(earlier, tone, statistic)
-    return np.array([part.max() for part in total if part is not None])
+            observed = allowable.weighted(allowable.observed(view, place), speed[None] / TWO_PI)
+            tone = tone_amplitude(observed, allowable.along(), allowable.statistic())[0]
+            sums[row].add(loads[0].order, tone)
+    return np.array([each.total().max() for each in sums])
 
 
 def _swept_view(
     model: Model,
-    designs: Designs,
     dynamic: Dynamic,
-    modes: StateModes,
-    damping: Floats,
+    system: System,
     passage: Passage,
     loads: tuple[Load, ...],
     times: Floats,
-) -> SweptView:
+) -> tuple[MotionView, Floats]:
+    """Return the complex envelope of one design at times (T,), and the tone's speed (T,) in rad/s."""
     order = loads[0].order
     start, end = TWO_PI * order * passage.start, TWO_PI * order * passage.end
     at, speeds = np.array([0.0, passage.time]), np.array([start, end])
@@ -148,11 +107,12 @@ def _swept_view(
     speed = start + (end - start) * times / passage.time
     turned = np.exp(1j * (start * times + 0.5 * (end - start) / passage.time * times**2))
     for load in loads:
-        moved += np.stack(sweep_envelope(modes, load.vector, at, speeds, load.power, times))
+        moved += np.stack(sweep_envelope(system.modes, load.vector, at, speeds, load.power, times))
         acting += (turned * speed**load.power)[:, None] * load.vector
-    held = moved[0] @ dynamic.stiffness[0].T + moved[1] @ damping.T
+    held = moved[0] @ system.stiffness.T + moved[1] @ system.damping.T
     acceleration = np.linalg.solve(dynamic.mass[0], (acting - held).T).T
-    return SweptView(model, designs, np.stack([moved[0], moved[1], acceleration]), speed)
+    motion = Motion(0.0, moved[0], moved[1], acceleration, acceleration)  # type: ignore[arg-type]
+    return motion_view(model, dynamic, system.undamped, motion), speed
 
 
 def moments(modes: StateModes, passage: Passage) -> Floats:

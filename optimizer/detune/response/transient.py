@@ -5,6 +5,7 @@ Loss-factor damping is not causal; in time each mode gets the viscous damping of
 carry and what the machine does agree. Motion is relative to the floor's own free motion.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,21 +15,26 @@ from detune.brief.allowable import HarmonicAllowable
 from detune.brief.allowable.base import combine, record_amplitude
 from detune.brief.brief import Brief, body_of
 from detune.brief.forcing import Transient
-from detune.physics.pulses import pulse_step, sampled_pulse
+from detune.physics.pulses import Pulse
 from detune.physics.simulation import Motion, simulate
 from detune.response.assemble import Dynamic
+from detune.response.causal_design import causal_matrices
 from detune.response.designs import Designs
 from detune.response.model import Model, StationRows
 from detune.response.modes import ModeBatch
 from detune.response.views import find_station
 
 Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
-# Samples per cycle of the fastest mode, and cycles of the slowest one after the load has ended: the
-# parabola through three samples then errs by less than 1e-4, and beats between modes are seen.
+# Samples per cycle of the fastest mode: the parabola through three samples then errs by about 1e-5.
 PER_CYCLE = 40.0
+# Fewest steps on a curved piece of a pulse, whose samples are raised so that its mean is kept.
+FEWEST_STEPS = 24
+# Cycles of the slowest mode after the load has ended; longer where close modes beat against each other.
 CYCLES_AFTER = 10.0
+MOST_CYCLES_AFTER = 60.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -71,34 +77,45 @@ def transient_values(
     for index in range(designs.count):
         one = np.array([index])
         for load in loads:
-            view = motion_view(
-                model, designs.take(one), dynamic.take(one), _one_mode_batch(modal, index), load
+            views = motion_views(
+                model, designs.take(one), dynamic.take(one), one_mode_batch(modal, index), load
             )
             for row, (allowable, place) in enumerate(pairs):
                 statistic = allowable.statistic()
-                part = record_amplitude(allowable.observed(view, place), allowable.along(), statistic)
+                seen = [(allowable.observed(view, place), view.step) for view in views]
+                part = record_amplitude(seen, allowable.along(), statistic, rms_duration(views, load.transient))
                 total[row, index] = combine(total[row, index], part[0], statistic)
     return total
 
 
-def _one_mode_batch(modal: ModeBatch, index: int) -> ModeBatch:
+def rms_duration(views: Sequence["MotionView"], transient: Transient) -> float:
+    """Return the time (s) over which an rms is taken: the record's, or of a pulse all that is simulated."""
+    if transient.record is not None:
+        return (len(transient.record) - 1) * transient.step
+    return sum(view.step * (len(view.lagged) - 1) for view in views)
+
+
+def one_mode_batch(modal: ModeBatch, index: int) -> ModeBatch:
+    """Return the modes of one design, as a batch of one."""
     return ModeBatch(modal.frequency[[index]], modal.shapes[[index]], modal.loss_factor[[index]])
 
 
 @dataclass(frozen=True, eq=False)
 class MotionView:
-    """The response of one design over time (D = 1), as allowables look at it.
+    """The response of one design over one stretch of time (D = 1, samples `step` s apart), as allowables look at it.
 
-    `motion_of` relative to the floor's free motion; `lagged` (T, n) is the velocity of each mode over its
+    `relative` to the floor's free motion, complex where it is the envelope of a passage; `lagged` (T, n) is the velocity of each mode over its
     own frequency, on which loss-factor forces stand; `floor` (3 rates, T) is the free motion along `base`.
     """
 
     model: Model
-    designs: Designs
+    dynamic: Dynamic
+    modal: ModeBatch
     relative: Motion
     lagged: Floats
     floor: Floats
     base: Floats
+    step: float
 
     def _rates(self, rate: int) -> Floats:
         return (self.relative.displacement, self.relative.velocity, self.relative.acceleration)[rate]
@@ -114,15 +131,25 @@ class MotionView:
         return self._force(find_station(self.model, station))[None]
 
     def _force(self, station: StationRows) -> Floats:
-        arrays = self.model.groups[station.group].arrays
-        part = self.designs.part[0, station.group]
-        k, eta, c = arrays.stiffness_dynamic[part], arrays.loss_factor[part], arrays.viscous[part]
+        k, eta, c = (each[0] for each in self.dynamic.parts.constants(self.model.stations.index(station)))
         moved, fast, lagged = (x @ station.rows.T for x in (self._rates(0), self._rates(1), self.lagged))
         force: Floats = station.factor * (k * moved + c * fast + k * eta * lagged)
+        if self.dynamic.parts.with_frequency:
+            force = force + self._frequency_force(station, station.factor * (k * (1.0 + 1j * eta)), c)
         return force
 
+    def _frequency_force(self, station: StationRows, constant: Complexes, viscous: Floats) -> Floats:
+        """What a frequency law adds: each mode moves the part at the stiffness of the mode's own frequency."""
+        omega = TWO_PI * self.modal.frequency
+        own = self.dynamic.parts.stiffness(station, omega)[0]
+        added = own - constant - 1j * omega[0][:, None] * station.factor * viscous
+        carried = self.dynamic.mass[0] @ self.modal.shapes[0]
+        moved, fast = self._rates(0) @ carried, self._rates(1) @ carried / omega[0]
+        across = (station.rows @ self.modal.shapes[0]).T
+        return moved @ (across * added.real) + fast @ (across * added.imag)
+
     def total_force(self, surface: str) -> Floats:
-        total = np.zeros((len(self.lagged), 3))
+        total = np.zeros((len(self.lagged), 3), dtype=self.lagged.dtype)
         for station in self.model.stations:
             if station.on_floor:
                 total += station.parallel * self._force(station) @ station.axes.T
@@ -140,66 +167,100 @@ class MotionView:
 
 
 def motion_view(
-    model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, load: TransientLoad
+    model: Model,
+    dynamic: Dynamic,
+    modal: ModeBatch,
+    moved: Motion,
+    floor: Floats | None = None,
+    base: Floats | None = None,
 ) -> MotionView:
-    """Simulate one design (D = 1) under a transient; exact between samples (physics.simulation)."""
-    mass, stiffness = dynamic.mass[0], dynamic.stiffness[0]
-    frequency, shapes = modal.frequency[0], modal.shapes[0]
-    omega = TWO_PI * frequency
-    lost = np.sum(shapes * (dynamic.hysteretic[0] @ shapes), axis=0)
-    carried = mass @ shapes
-    damping = dynamic.viscous[0] + (carried * (lost / omega)) @ carried.T
-    step, before, after = record_samples(load.transient, float(frequency[0]), float(frequency[-1]))
-    pattern = load.vector - mass @ load.lead
-    start = np.zeros(model.frame.count)
-    if load.transient.weight_acts:
-        start = -np.linalg.solve(stiffness, model.weight[designs.step[0]])
-    moved = simulate(
-        mass,
-        damping,
-        stiffness,
-        before[:, None],
-        step,
-        shapes=pattern[:, None],
-        record_after=after[:, None],
-        displacement=start,
-        velocity=-load.transient.velocity * load.lead,
+    """Return a motion of one design as allowables look at it; left out, the floor's free motion is none."""
+    shapes, omega = modal.shapes[0], TWO_PI * modal.frequency[0]
+    lagged = moved.velocity @ dynamic.mass[0] @ shapes @ (shapes / omega).T
+    still = np.zeros((3, len(lagged))) if floor is None else floor
+    return MotionView(
+        model, dynamic, modal, moved, lagged, still, np.zeros(3) if base is None else base, moved.step
     )
-    lagged = moved.velocity @ carried @ (shapes / omega).T
-    base = np.array(load.transient.base or (0.0, 0.0, 0.0))
-    return MotionView(model, designs, moved, lagged, floor_motion(load.transient, before, after, step), base)
 
 
-def record_samples(transient: Transient, slowest: float, fastest: float) -> tuple[float, Floats, Floats]:
-    """Return step (s) and values just before and after each sample, long enough for the slowest mode (Hz)."""
-    rest = CYCLES_AFTER / slowest
-    longest = 1.0 / (PER_CYCLE * fastest)
+def motion_views(
+    model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, load: TransientLoad
+) -> tuple[MotionView, ...]:
+    """Simulate one design (D = 1) under a transient, a view for each stretch; exact between samples."""
+    mass = dynamic.mass[0]
+    stiffness, damping = causal_matrices(dynamic, modal, 0)
+    pattern = load.vector - mass @ load.lead
+    transient = load.transient
+    displacement = np.zeros(model.frame.count)
+    if transient.weight_acts:
+        displacement = -np.linalg.solve(stiffness, model.weight[designs.step[0]])
+    velocity = -transient.velocity * load.lead
+    base = np.array(transient.base or (0.0, 0.0, 0.0))
+    floor_state = (0.0, 0.0 if transient.weight_acts else transient.velocity)
+    views = []
+    for step, values in stretches(transient, modal.frequency[0], modal.loss_factor[0]):
+        moved = simulate(
+            mass, damping, stiffness, values[:, None], step, pattern[:, None], None, displacement, velocity
+        )
+        displacement, velocity = moved.displacement[-1], moved.velocity[-1]
+        floor = floor_motion(values, step, floor_state) if transient.base else np.zeros((3, len(values)))
+        floor_state = (float(floor[0, -1]), float(floor[1, -1]))
+        views.append(motion_view(model, dynamic, modal, moved, floor, base))
+    return tuple(views)
+
+
+def stretches(
+    transient: Transient, frequency: Floats, loss_factor: Floats
+) -> tuple[tuple[float, Floats], ...]:
+    """Return step (s) and samples (T,) of each stretch over which the load is smooth, straight between samples.
+
+    The last one is the rest after the load has ended. frequency (n,) Hz and loss_factor (n,) of the modes.
+    """
+    longest = 1.0 / (PER_CYCLE * float(frequency[-1]))
+    found: list[tuple[float, Floats]] = []
     if transient.pulse is not None:
-        step = pulse_step(transient.pulse, longest)
-        count = int(np.ceil((transient.pulse.edge[-1] + rest) / step)) + 1
-        before, after = sampled_pulse(transient.pulse, step, count)
-        return step, before, after
-    if transient.record is None:
-        zero = np.zeros(int(np.ceil(rest / longest)) + 1)
-        return longest, zero, zero
-    # A record that is straight between its samples may be sampled more finely without changing it.
-    finer = max(1, int(np.ceil(transient.step / longest)))
-    step = transient.step / finer
-    count = (len(transient.record) - 1) * finer + 1
-    values = np.interp(np.arange(count) / finer, np.arange(len(transient.record)), transient.record)
-    padded = np.concatenate([values, np.zeros(int(np.ceil(rest / step)))])
-    return step, padded, padded
+        found += [_piece(transient.pulse, index, longest) for index in range(transient.pulse.constant.size)]
+    elif transient.record is not None:
+        # A record that is straight between its samples may be sampled more finely without changing it.
+        finer = max(1, int(np.ceil(transient.step / longest)))
+        count = (len(transient.record) - 1) * finer + 1
+        values = np.interp(np.arange(count) / finer, np.arange(len(transient.record)), transient.record)
+        found.append((transient.step / finer, values))
+    rest = np.zeros(int(np.ceil(rest_time(frequency, loss_factor) / longest)) + 1)
+    return (*found, (longest, rest))
 
 
-def floor_motion(transient: Transient, before: Floats, after: Floats, step: float) -> Floats:
+def _piece(pulse: Pulse, index: int, longest: float) -> tuple[float, Floats]:
+    length = float(pulse.edge[index + 1] - pulse.edge[index])
+    omega = float(pulse.omega[index])
+    count = max(FEWEST_STEPS if omega else 4, int(np.ceil(length / longest)))
+    step = length / count
+    time = step * np.arange(count + 1)
+    # Straight lines between samples of a sine are that sine times (sin x/x)^2, x = omega step/2, and overtones
+    # far above every mode.
+    raised = 1.0 / np.sinc(0.5 * omega * step / np.pi) ** 2
+    curved = pulse.cosine[index] * np.cos(omega * time) + pulse.sine[index] * np.sin(omega * time)
+    return step, pulse.constant[index] + pulse.slope[index] * time + raised * curved
+
+
+def rest_time(frequency: Floats, loss_factor: Floats) -> float:
+    """Time (s) to look on after the load has ended: some cycles of the slowest mode, or until a beat is full."""
+    slowest = float(frequency[0])
+    apart = np.diff(frequency)
+    beating = apart[(apart > 1e-6 * frequency[1:]) & (apart < 0.2 * frequency[1:])]
+    beat = 0.5 / float(beating.min()) if beating.size else 0.0
+    with np.errstate(divide="ignore"):
+        decay = float(np.max(1.0 / (np.pi * loss_factor * frequency)))
+    return max(CYCLES_AFTER / slowest, min(beat, decay, MOST_CYCLES_AFTER / slowest))
+
+
+def floor_motion(values: Floats, step: float, start: tuple[float, float]) -> Floats:
     """Return displacement, velocity and acceleration (3, T) of the floor's free motion along its direction.
 
-    Acceleration is straight between samples, so velocity and displacement are its exact integrals.
+    start: displacement and velocity at the first sample. Acceleration is straight between samples, so velocity
+    and displacement are its exact integrals.
     """
-    if transient.base is None:
-        return np.zeros((3, len(before)))
-    first, last = after[:-1], before[1:]
-    gained = 0.5 * step * (first + last)
-    velocity = transient.velocity + np.concatenate([[0.0], np.cumsum(gained)])
+    first, last = values[:-1], values[1:]
+    velocity = start[1] + np.concatenate([[0.0], np.cumsum(0.5 * step * (first + last))])
     moved = step * velocity[:-1] + step**2 * (first / 3.0 + last / 6.0)
-    return np.stack([np.concatenate([[0.0], np.cumsum(moved)]), velocity, before])
+    return np.stack([start[0] + np.concatenate([[0.0], np.cumsum(moved)]), velocity, values])

@@ -6,11 +6,12 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.physics.response import solve_response
-from detune.response.assemble import Dynamic, part_dynamic_stiffness, static_stiffness
+from detune.response.assemble import Dynamic, static_stiffness
 from detune.response.designs import Designs
 from detune.response.loads import Load
 from detune.response.model import Model, StationRows
+from detune.response.solve import solve_or_resonate
+from detune.response.working_point import WorkingPoint, working_point
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -24,6 +25,7 @@ class StaticBatch:
     model: Model
     designs: Designs
     q: Floats
+    working: WorkingPoint | None = None
 
     @property
     def count(self) -> int:
@@ -45,7 +47,10 @@ class StaticBatch:
     def station_load(self, station: str) -> Floats:
         found = find_station(self.model, station)
         stiffness = self.model.groups[found.group].arrays.stiffness_static[self.designs.part[:, found.group]]
-        return found.factor * stiffness * self._elastic(found)
+        load: Floats = found.factor * stiffness * self._elastic(found)
+        if self.working is not None:
+            load[:, 2] = -self.working.force[self.model.stations.index(found)]
+        return load
 
     def part_value(self, station: str, column: str) -> Floats:
         group = find_station(self.model, station).group
@@ -55,6 +60,9 @@ class StaticBatch:
 
 def static_batch(model: Model, designs: Designs) -> StaticBatch:
     """Return the static equilibrium of a batch under gravity and the steady loads."""
+    working = working_point(model, designs)
+    if working is not None:
+        return StaticBatch(model, designs, working.q, working)
     stiffness = static_stiffness(model, designs)
     load = model.weight[designs.step]
     for station in model.stations:
@@ -90,7 +98,9 @@ class ToneBatch:
     @cached_property
     def q(self) -> Complexes:
         """Response of the freedoms (D, F, n)."""
-        return solve_response(self.dynamic.at(self.omega), self._load_vector())
+        return solve_or_resonate(
+            self.dynamic.at(self.omega), self.dynamic.stiffness[:, None], self._load_vector()
+        )
 
     def _load_vector(self) -> Complexes:
         total = np.zeros((*self.omega.shape, self.model.frame.count), dtype=complex)
@@ -123,9 +133,7 @@ class ToneBatch:
         return self.base * np.array([1.0, 1.0, 0.0])
 
     def _stiffness(self, station: str) -> Complexes:
-        group = find_station(self.model, station).group
-        part = part_dynamic_stiffness(self.model.groups[group], self.designs.part[:, group], self.omega)
-        return find_station(self.model, station).factor * part
+        return self.dynamic.parts.stiffness(find_station(self.model, station), self.omega)
 
     def _rate(self, rate: int) -> Complexes:
         return (1j * self.omega[..., None]) ** rate

@@ -3,7 +3,8 @@
 A range limit is the intersection of infinitely many line limits. Start from a few of its lines (a superset of
 what is feasible), solve the slice exactly, find the exact worst frequency (closed form, `worst_frequency`) at
 the best point and both ends of every segment, add those lines, and solve again until nothing is violated.
-Where the supremum over the range is itself a parabola in k (`closed_envelope`) it stands in the table too.
+Where the supremum over the range is itself a parabola in k (`closed_envelope`) it stands in the table, complete,
+and no exchange is needed (`is_closed`).
 
 * Every step is a superset, so no branch is ever lost and an empty slice is proved empty.
 * At the end the returned points satisfy the limit over the continuum, and because the value of a superset
@@ -15,8 +16,6 @@ Where the supremum over the range is itself a parabola in k (`closed_envelope`) 
   bounds it on the whole cell: a line is added wherever the tested sup comes near the opposite envelope. For
   viscous transmission forms whose ratio varies with frequency the same test is made, at cell ends and
   middles, but without that proof.
-* A transmissibility T < 1 of constant ratio over a range binds at the lower end of the range alone:
-  (T^2 (k - m u)^2 - k^2) / (u (1 - T^2)) rises with u (its derivative is ((1 - T^2) k^2/u^2 + T^2 m^2) / (1 - T^2)).
 """
 
 from __future__ import annotations
@@ -30,7 +29,7 @@ from numpy.typing import NDArray
 from detune.sizing.envelope import Rows, Segment, gamma_interval, rows, segments
 from detune.sizing.slice_objective import Scales, SliceObjective
 from detune.sizing.statement import STANDARD_GRAVITY, OneAxisProblem, PowerForm, power_form
-from detune.sizing.worst_frequency import closed_envelope, worst
+from detune.sizing.worst_frequency import closed_envelope, is_closed, worst
 
 Floats = NDArray[np.float64]
 
@@ -78,8 +77,10 @@ class LinePool:
         pool = cls(problem, scales, forms, ranges)
         for i, (low, high) in enumerate(ranges):
             form = forms[i]
-            if low == high or (form.transmission and form.power == 0 and form.scale >= 1.0):
+            if low == high:
                 seeds = np.array([low])
+            elif is_closed(form, problem.damping_kind):
+                seeds = np.array([low, high])
             else:
                 seeds = np.geomspace(low, high, SEEDS)
                 seeds[0], seeds[-1] = low, high
@@ -91,6 +92,11 @@ class LinePool:
     def is_range(self, i: int) -> bool:
         """Whether limit i covers more than its own line."""
         return self.ranges[i][1] > self.ranges[i][0]
+
+    def open_ranges(self) -> list[int]:
+        """Range limits that the table does not state in closed form and that need the exchange."""
+        kind = self.problem.damping_kind
+        return [i for i in range(len(self.forms)) if self.is_range(i) and not is_closed(self.forms[i], kind)]
 
     def add(self, i: int, u: float) -> bool:
         """Add a line; False when it stands in the pool already."""
@@ -169,7 +175,7 @@ def _near_closing(pool: LinePool, table: Rows, segment: Segment, mass: float) ->
     low, high = gamma_interval(table, k)
     high = np.maximum(low, high)
     added = False
-    for i in (i for i in range(len(pool.forms)) if pool.is_range(i)):
+    for i in pool.open_ranges():
         for gamma in (low, high):
             ratio, u = worst(pool.forms[i], problem.damping_kind, k, gamma, mass, *pool.ranges[i])
             s = u if problem.damping_kind == "viscous" else np.ones_like(u)
@@ -193,7 +199,7 @@ def _lift(pool: LinePool, segment: Segment, mass: float) -> Segment:
     k, gamma = np.array([segment.stiffness]), np.array([segment.gamma])
     for _ in range(60):
         before = gamma
-        for i in (i for i in range(len(pool.forms)) if pool.is_range(i)):
+        for i in pool.open_ranges():
             form = pool.forms[i]
             ratio, u = worst(form, kind, k, gamma, mass, *pool.ranges[i])
             level = form.scale * u ** float(form.power)
@@ -206,6 +212,21 @@ def _lift(pool: LinePool, segment: Segment, mass: float) -> Segment:
             break
     value, gamma = SliceObjective(pool.problem, pool.scales, mass, mass).value(k, gamma, gamma)
     return replace(segment, gamma=float(gamma[0]), value=float(value[0]))
+
+
+def _remember(pool: LinePool, found: list[Segment], mass: float) -> None:
+    """Add the lines that are tight at the best points, for slices over an interval of masses.
+
+    Those slices state no closed envelopes and would not see the inside of a closed range otherwise.
+    """
+    ballast = pool.problem.ballast
+    if ballast is None or ballast.step is not None or not found:
+        return
+    k, gamma = np.array([s.stiffness for s in found]), np.array([s.gamma for s in found])
+    for i in (i for i in range(len(pool.forms)) if pool.is_range(i)):
+        ratio, u = worst(pool.forms[i], pool.problem.damping_kind, k, gamma, mass, *pool.ranges[i])
+        for j in np.flatnonzero(ratio > 1 - 1e-6):
+            pool.add(i, float(u[j]))
 
 
 @dataclass(frozen=True)
@@ -223,11 +244,12 @@ class SliceAnswer:
 def solve_slice(pool: LinePool, mass: float, window: tuple[float, float]) -> SliceAnswer:
     """Exact slice at one scaled mass over lines and ranges."""
     kind = pool.problem.damping_kind
-    wide = [i for i in range(len(pool.forms)) if pool.is_range(i)]
+    wide = pool.open_ranges()
     found: list[Segment] = []
     for _ in range(ROUNDS):
         found, table = pool.slice((mass,), window)
         if not wide or not found:
+            _remember(pool, found, mass)
             return SliceAnswer(found, 0.0, 0.0)
         k = np.array([x for s in found for x in (s.stiffness, s.left, s.right)])
         gamma = np.array([x for s in found for x in (s.gamma, s.left_gamma, s.right_gamma)])
@@ -240,6 +262,7 @@ def solve_slice(pool: LinePool, mass: float, window: tuple[float, float]) -> Sli
             added |= _near_closing(pool, table, segment, mass)
         if not added:
             break
+    _remember(pool, found, mass)
     lifted = [_lift(pool, s, mass) for s in found]
     gap = max(b.value - a.value for a, b in zip(found, lifted, strict=True))
     k, gamma = np.array([s.stiffness for s in lifted]), np.array([s.gamma for s in lifted])

@@ -132,7 +132,8 @@ def closed_envelope(
         viscous, A^2 u^2            u = k/sqrt(m^2 - A^2)      e = 2 k (m - sqrt(m^2 - A^2))
         viscous, T > 1              u = k sqrt(1 - 1/T^2)/m    e = 2 k m (1 - sqrt(1 - 1/T^2)) T^2/(T^2 - 1)
 
-    Each p_u is concave in u around that point, so where u falls in [u_low, u_high] it is the supremum.
+    In each of these p_u rises up to that u and falls after it (its derivative in u has one sign change), so the
+    supremum over [u_low, u_high] is e(k) where u lies inside and the line at the nearer end where it does not.
     """
     a2 = form.scale * (mass * mass if form.mass_proportional else 1.0)
     m2 = mass * mass
@@ -160,3 +161,14 @@ def closed_envelope(
     else:
         return None
     return e, (u_low - offset) / slope, (u_high - offset) / slope
+
+
+def is_closed(form: PowerForm, kind: DampingKind) -> bool:
+    """Whether the lines at both ends of a range and `closed_envelope` together say all that the range says.
+
+    True for the forms listed there; for A^2 u^2 with A >= m, where p_u rises with u throughout; and for a
+    constant T <= 1, which binds at the lower end: (T^2 (k - m u)^2 - k^2)/(u (1 - T^2)) rises with u.
+    """
+    if form.transmission:
+        return form.power == 0
+    return form.power in ((0, 1, 2) if kind == "loss factor" else (1, 2))

@@ -1,5 +1,6 @@
 """What every allowable kind has in common, and the four forms an allowable can take."""
 
+from collections.abc import Sequence
 from typing import ClassVar, Literal
 
 import numpy as np
@@ -180,17 +181,27 @@ def noise_amplitude(variance: Floats, rate_variance: Floats, duration: float, st
     return extreme if statistic == "peak" else 2.0 * extreme
 
 
-def record_amplitude(values: Floats, along: Direction | None, statistic: Statistic) -> Floats:
-    """Return what a response over time (D, T, 3) counts as: its largest magnitude, or its rms over the record.
+def record_amplitude(
+    stretches: Sequence[tuple[Floats, float]], along: Direction | None, statistic: Statistic, duration: float
+) -> Floats:
+    """Return what a response over time counts as: its largest magnitude, or its rms over the `duration` (s).
 
-    Between samples the largest magnitude is that of the parabola through the three highest neighbours.
+    stretches: smooth parts of it, one after the other, each (D, T, 3) with its time step in s. Between samples
+    the largest magnitude is that of the parabola through the three highest neighbours. The rms takes the whole
+    motion, that after the record's end included, and divides by the duration of the record alone.
     """
-    signal = values @ np.asarray(along) if along is not None else np.sqrt(np.sum(values**2, axis=-1))
+    signals = [
+        (values @ np.asarray(along) if along is not None else np.sqrt(np.sum(values**2, axis=-1)), step)
+        for values, step in stretches
+    ]
     if statistic == "rms":
-        return np.sqrt(np.mean(signal**2, axis=-1))
+        energy = sum(np.trapezoid(signal**2, dx=step, axis=-1) for signal, step in signals)
+        return np.asarray(np.sqrt(np.asarray(energy) / duration))
+    highest = np.max([parabolic_maximum(signal) for signal, _ in signals], axis=0)
+    lowest = np.max([parabolic_maximum(-signal) for signal, _ in signals], axis=0)
     if statistic == "peak-to-peak" and along is not None:
-        return parabolic_maximum(signal) + parabolic_maximum(-signal)
-    largest = np.maximum(parabolic_maximum(signal), parabolic_maximum(-signal))
+        return np.asarray(np.maximum(highest, 0.0) + np.maximum(lowest, 0.0))
+    largest = np.asarray(np.maximum(highest, lowest))
     return 2.0 * largest if statistic == "peak-to-peak" else largest
 
 
@@ -213,6 +224,30 @@ def parabolic_maximum(signal: Floats) -> Floats:
 def combine(first: Floats, second: Floats, statistic: Statistic) -> Floats:
     """Return two independent parts together: linear sum of peaks, root of summed squares of rms."""
     return np.hypot(first, second) if statistic == "rms" else first + second
+
+
+class SumOfOrders:
+    """The amplitudes of several coherent sets of tones, put together.
+
+    Sets of one order have one frequency: where their phases are unknown the worst is the linear sum, of rms
+    values too. Different orders are put together by `combine`.
+    """
+
+    def __init__(self, statistic: Statistic) -> None:
+        self.statistic = statistic
+        self.by_order: dict[float, Floats] = {}
+
+    def add(self, order: float, amplitude: Floats) -> None:
+        """Add the amplitude of one set."""
+        earlier = self.by_order.get(order)
+        self.by_order[order] = amplitude if earlier is None else earlier + amplitude
+
+    def total(self) -> Floats:
+        """Return all sets together."""
+        first, *others = self.by_order.values()
+        for other in others:
+            first = combine(first, other, self.statistic)
+        return first
 
 
 def read_direction(direction: AxisName | Literal["resultant"] | Direction) -> Direction | None:

@@ -2,10 +2,16 @@
 
 from detune.brief.forcing.base import Forcing, Noise, Tone, Transient
 from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.base_pulse import BasePulse
+from detune.brief.forcing.drop import Drop
+from detune.brief.forcing.force_pulse import ForcePulse
 from detune.brief.forcing.harmonic_force import HarmonicForce
+from detune.brief.forcing.random_base_motion import RandomBaseMotion
+from detune.brief.forcing.random_force import RandomForce
 from detune.brief.forcing.rotating_unbalance import RotatingUnbalance
 from detune.brief.forcing.shaft_orders import ShaftOrders
 from detune.brief.forcing.slider_crank import SliderCrank
+from detune.brief.forcing.velocity_step import VelocityStep
 
 KINDS: dict[str, type[Forcing]] = {
     "harmonic-force": HarmonicForce,
@@ -13,17 +19,29 @@ KINDS: dict[str, type[Forcing]] = {
     "slider-crank": SliderCrank,
     "shaft-orders": ShaftOrders,
     "base-motion": BaseMotion,
+    "random-base-motion": RandomBaseMotion,
+    "random-force": RandomForce,
+    "base-pulse": BasePulse,
+    "force-pulse": ForcePulse,
+    "velocity-step": VelocityStep,
+    "drop": Drop,
 }
 
 __all__ = [
     "KINDS",
     "BaseMotion",
+    "BasePulse",
+    "Drop",
+    "ForcePulse",
     "Forcing",
     "HarmonicForce",
     "Noise",
+    "RandomBaseMotion",
+    "RandomForce",
     "RotatingUnbalance",
     "ShaftOrders",
     "SliderCrank",
     "Tone",
     "Transient",
+    "VelocityStep",
 ]

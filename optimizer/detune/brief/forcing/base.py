@@ -118,6 +118,10 @@ class Forcing(Statement):
         """Return the unit direction along which this forcing moves the floor, None for a load on a body."""
         return None
 
+    def ground_moves(self) -> bool:
+        """Return whether the ground under the floor moves too, in a way this forcing does not say."""
+        return self.floor_direction() is not None
+
     def data_files(self) -> tuple[str, ...]:
         """Return the files this forcing was read from, as the study names them."""
         return ()

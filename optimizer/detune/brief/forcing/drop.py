@@ -29,6 +29,9 @@ class Drop(Forcing):
     def floor_direction(self) -> Direction | None:
         return (0.0, 0.0, 1.0)
 
+    def ground_moves(self) -> bool:
+        return False
+
     def transients(self) -> tuple[Transient, ...]:
         landing = math.sqrt(2.0 * STANDARD_GRAVITY * self.height)
         return (Transient(self.name, velocity=landing, weight_acts=True, base=(0.0, 0.0, 1.0)),)

@@ -2,18 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from typing import Protocol, TypeAlias
+from collections.abc import Callable, Sequence
+from typing import Any, Protocol, TypeAlias
 
 from detune.ground.errors import Fault
 from detune.parts.assumed import Assumed
 from detune.parts.columns import Column
-from detune.parts.kinds import mount
+from detune.parts.kinds import absorber, ballast, damper, mount, pad
+from detune.parts.kinds.absorber import Absorber
+from detune.parts.kinds.ballast import Ballast
+from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Mount
+from detune.parts.kinds.pad import Pad
 from detune.parts.table import Table
 
-Part: TypeAlias = Mount
-"""What a catalog holds; a union once there is a second kind."""
+Part: TypeAlias = Mount | Damper | Ballast | Absorber | Pad
+"""What a catalog holds, all of one kind."""
 
 
 class Kind(Protocol):
@@ -28,10 +32,19 @@ class Kind(Protocol):
     def build(self, table: Table, catalog: str) -> tuple[tuple[Part, ...], tuple[Assumed, ...]]:
         """Make the parts of a table without faults, and list what was assumed."""
 
-    def value(self, part: Part, column: str) -> float | str | bool | None:
+    @property
+    def value(self) -> Callable[[Any, str], float | str | bool | None]:
         """Return a part's figure in a column, in SI, None where the list states nothing."""
+
+    @property
+    def files(self) -> Callable[[Any], tuple[str, ...]]:
+        """Return the further files that a part was read from."""
 
 
 KINDS: dict[str, Kind] = {
     "mount": mount,
+    "damper": damper,
+    "ballast": ballast,
+    "absorber": absorber,
+    "pad": pad,
 }

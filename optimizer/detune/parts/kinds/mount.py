@@ -7,7 +7,6 @@ vibration (dynamic) are two figures and never stand in for each other.
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable
 from dataclasses import dataclass
 
 import numpy as np
@@ -20,7 +19,7 @@ from detune.parts.kinds.mount_columns import COLUMNS
 from detune.parts.kinds.mount_damping import DAMPING, UNKNOWN, Damping, damping
 from detune.parts.kinds.mount_rules import FAMILY_TOLERANCE, check
 from detune.parts.kinds.mount_stiffness import assumed_by_ratio, resolve
-from detune.parts.kinds.rows import optional
+from detune.parts.kinds.rows import optional, stated
 from detune.parts.law_files import Laws, read_laws, related_tables
 from detune.parts.laws import (
     AmplitudeTable,
@@ -31,8 +30,8 @@ from detune.parts.laws import (
     UnknownDamping,
     deflection_under,
 )
-from detune.parts.prices import Breaks, breaks_of, stated_break
-from detune.parts.table import Table
+from detune.parts.prices import Breaks, breaks_of
+from detune.parts.table import Table, rows_of
 
 __all__ = [
     "COLUMNS",
@@ -185,7 +184,7 @@ def _assumed(table: Table, catalog: str) -> tuple[Assumed, ...]:
     found: list[Assumed] = []
 
     def note(mask: NDArray[np.bool_], what: str, value: str, why: str) -> None:
-        found.extend(Assumed(catalog, parts[int(row)], what, value, why) for row in np.flatnonzero(mask))
+        found.extend(Assumed(catalog, parts[row], what, value, why) for row in rows_of(mask))
 
     untold = ~table.given("tolerance")
     for family, ratio in FAMILY_TOLERANCE.items():
@@ -230,20 +229,16 @@ def value(mount: Mount, column: str) -> float | str | bool | None:
         return mount.damping_stated if mount.damping_from == column else None
     if column == "viscous_lateral":
         return mount.viscous[0] if mount.damping_from == "viscous" else None
-    if column.startswith("stiffness_") and column != "stiffness_follows_load":
+    if column in _STIFFNESS:
         _, axis, state = column.split("_")
         axes = mount.stiffness_static if state == "static" else mount.stiffness_dynamic
         return axes["xyz".index(axis)]
     if column in _DERIVED:
         return _derived(mount, column)
-    if column.startswith("cost_"):
-        return stated_break(mount, column)
-    if column not in _PLAIN_COLUMNS:
-        raise KeyError(column)
-    stated: float | str | bool | None = getattr(mount, column)
-    return stated
+    return stated(mount, column, COLUMNS)
 
 
+_STIFFNESS = tuple(f"stiffness_{axis}_{state}" for axis in "xyz" for state in ("static", "dynamic"))
 _DERIVED = (
     "deflection_rated",
     "natural_frequency_rated",
@@ -277,6 +272,3 @@ def _derived(mount: Mount, column: str) -> float | str | bool | None:
     }
     law = laws[column]
     return None if law is None else law.file
-
-
-_PLAIN_COLUMNS = {column.name for column in COLUMNS} & set(Mount.__slots__)

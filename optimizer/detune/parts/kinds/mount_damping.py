@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from detune.ground.errors import Fault, nearest_name
 from detune.ground.units import STANDARD_GRAVITY
-from detune.parts.table import Table
+from detune.parts.table import Table, rows_of
 
 Floats = NDArray[np.float64]
 
@@ -64,13 +64,9 @@ def damping(table: Table, dynamic: Floats, least_loss: Floats) -> Damping:
     stated = np.array([table.numbers(name) for name in DAMPING])
     place = np.argmax(~np.isnan(stated), axis=0)
     by_file = ~np.isnan(least_loss)
-    column = [
-        _file_column(table, row) if by_file[row] else DAMPING[index] for row, index in enumerate(place)
-    ]
+    column = [_file_column(table, row) if by_file[row] else DAMPING[index] for row, index in enumerate(place)]
     words = table.texts("damping_kind")
-    kind = [
-        LOSS_FACTOR if by_file[row] else words[row] or _MEANT[name][0] for row, name in enumerate(column)
-    ]
+    kind = [LOSS_FACTOR if by_file[row] else words[row] or _MEANT[name][0] for row, name in enumerate(column)]
     eta, ratio = _ratios(table, stated)
     eta = np.where(by_file, least_loss, eta)
     viscous = _coefficients(table, dynamic, ratio)
@@ -130,10 +126,6 @@ def _by_file(table: Table) -> NDArray[np.bool_]:
     return table.given("law_file") | table.given("amplitude_file")
 
 
-def _rows(mask: NDArray[np.bool_]) -> list[int]:
-    return [int(row) for row in np.flatnonzero(mask)]
-
-
 def _one_column(table: Table) -> Iterator[Fault]:
     choice = "exactly one of " + ", ".join(DAMPING)
     by_file = _by_file(table)
@@ -142,23 +134,23 @@ def _one_column(table: Table) -> Iterator[Fault]:
         return
     stated = [name for name in DAMPING if table.has(name)]
     filled = np.array([table.given(name) for name in stated]).reshape(len(stated), len(table))
-    for row in _rows((filled.sum(axis=0) == 0) & ~by_file):
+    for row in rows_of((filled.sum(axis=0) == 0) & ~by_file):
         yield table.fault(row, stated[0], f"{choice}; this row fills none")
-    for row in _rows((filled.sum(axis=0) > 1) & ~by_file):
+    for row in rows_of((filled.sum(axis=0) > 1) & ~by_file):
         names = [name for name in stated if table.given(name)[row]]
         yield table.fault(row, names[1], f"{choice}; this row fills {' and '.join(names)}")
-    for row in _rows((filled.sum(axis=0) > 0) & by_file):
+    for row in rows_of((filled.sum(axis=0) > 0) & by_file):
         name = next(name for name in stated if table.given(name)[row])
         yield table.fault(row, name, f"an empty cell, for {_file_column(table, row)} states the damping")
 
 
 def _lateral_alone(table: Table) -> Iterator[Fault]:
-    for row in _rows(table.given("viscous_lateral") & ~table.given("viscous")):
+    for row in rows_of(table.given("viscous_lateral") & ~table.given("viscous")):
         yield table.fault(
             row, "viscous_lateral", "an empty cell, or the axial coefficient in viscous beside it"
         )
     lateral = table.given("stiffness_x_static") | table.given("stiffness_x_dynamic")
-    for row in _rows(table.given("viscous_lateral") & ~lateral):
+    for row in rows_of(table.given("viscous_lateral") & ~lateral):
         yield table.fault(row, "viscous_lateral", "an empty cell, or the lateral stiffness beside it")
 
 
@@ -183,11 +175,11 @@ def _kind(table: Table) -> Iterator[Fault]:
 
 def _relaxation(table: Table) -> Iterator[Fault]:
     stated = table.given("relaxation_ratio")
-    for row in _rows(stated & ~table.given("viscous")):
+    for row in rows_of(stated & ~table.given("viscous")):
         yield table.fault(row, "relaxation_ratio", "an empty cell, or the dashpot's coefficient in viscous")
-    for row in _rows(stated & _by_file(table)):
+    for row in rows_of(stated & _by_file(table)):
         yield table.fault(row, "relaxation_ratio", f"an empty cell beside {_file_column(table, row)}")
-    for row in _rows(table.given("law_file") & table.given("amplitude_file")):
+    for row in rows_of(table.given("law_file") & table.given("amplitude_file")):
         expected = "an empty cell beside law_file: only one of the two can state the damping"
         yield table.fault(row, "amplitude_file", expected)
 
@@ -196,4 +188,6 @@ def wants_rated_load(table: Table) -> NDArray[np.bool_]:
     """Return which rows (n,) state damping that can only be read at a rated load."""
     words = table.texts("damping_kind")
     other = np.array([word in (VISCOUS, UNKNOWN) for word in words], dtype=np.bool_)
-    return table.given("damping_ratio") | (other & (table.given("amplification") | table.given("loss_factor")))
+    return table.given("damping_ratio") | (
+        other & (table.given("amplification") | table.given("loss_factor"))
+    )

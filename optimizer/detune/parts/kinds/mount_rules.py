@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 import numpy as np
-from numpy.typing import NDArray
 
 from detune.ground.errors import Fault, nearest_name
 from detune.ground.units import show
@@ -13,7 +12,7 @@ from detune.parts.kinds.mount_damping import check_damping, wants_rated_load
 from detune.parts.kinds.mount_stiffness import RATIO, Stiffness, check_stiffness, resolve, sag
 from detune.parts.law_files import Laws, check_absolute_tables, read_laws
 from detune.parts.prices import check_prices
-from detune.parts.table import Table
+from detune.parts.table import Table, rows_of
 
 FAMILY_TOLERANCE = {"rubber": 0.15, "spring": 0.10}
 """Stiffness tolerance by family where a list states none: common practice of the trade."""
@@ -38,10 +37,6 @@ def check(table: Table) -> list[Fault]:
     return faults
 
 
-def _rows(mask: NDArray[np.bool_]) -> list[int]:
-    return [int(row) for row in np.flatnonzero(mask)]
-
-
 def _both_or_neither(table: Table, name: str, other: str) -> Iterator[Fault]:
     absent = table.given(other) & ~table.given(name) & ~table.given(RATIO)
     if not absent.any():
@@ -50,7 +45,7 @@ def _both_or_neither(table: Table, name: str, other: str) -> Iterator[Fault]:
     if not table.has(name):
         yield table.header_fault(name, f"a column of this name, {reason}")
         return
-    for row in _rows(absent):
+    for row in rows_of(absent):
         yield table.fault(row, name, f"a stiffness, {reason}")
 
 
@@ -64,7 +59,7 @@ def _lateral(table: Table) -> Iterator[Fault]:
     if (y & ~x).any() and not table.has("stiffness_x_static"):
         yield table.header_fault("stiffness_x_static", "a column of this name, because the list states y")
         return
-    for row in _rows(y & ~x):
+    for row in rows_of(y & ~x):
         yield table.fault(row, "stiffness_x_static", "a stiffness, because this row states the y direction")
 
 
@@ -74,11 +69,11 @@ def _dynamic(table: Table, stiffness: Stiffness) -> Iterator[Fault]:
         place = "xyz".index(axis)
         dynamic, static = stiffness.dynamic[:, place], stiffness.static[:, place]
         stated = table.given(f"stiffness_{axis}_dynamic") | table.given(base) if axis == "y" else True
-        for row in _rows((dynamic < _DYNAMIC_LOW * static) & stated):
+        for row in rows_of((dynamic < _DYNAMIC_LOW * static) & stated):
             least = show(_DYNAMIC_LOW * static[row], "stiffness")
             why = "a mount is not softer in vibration, so the two are exchanged or differ in unit"
             yield table.fault(row, _stated(table, axis, row), f"at least {least}, 0.9 of {base}: {why}")
-        for row in _rows((dynamic > _DYNAMIC_HIGH * static) & stated):
+        for row in rows_of((dynamic > _DYNAMIC_HIGH * static) & stated):
             most = show(_DYNAMIC_HIGH * static[row], "stiffness")
             expected = f"at most {most}, 10 times {base}: more is an error of unit"
             yield table.fault(row, _stated(table, axis, row), expected)
@@ -110,19 +105,19 @@ def _load_rated(table: Table) -> Iterator[Fault]:
         if (wanted & ~told).any() and not table.has("load_rated"):
             yield table.header_fault("load_rated", f"a column of this name, because {reason}")
             return
-        for row in _rows(wanted & ~told):
+        for row in rows_of(wanted & ~told):
             yield table.fault(row, "load_rated", f"a load, because {reason}")
         told = told | wanted
 
 
 def _loads(table: Table) -> Iterator[Fault]:
     least, most, rated = (table.numbers(name) for name in ("load_min", "load_max", "load_rated"))
-    for row in _rows(least > most):
+    for row in rows_of(least > most):
         yield table.fault(row, "load_min", f"at most load_max, which is {show(most[row], 'force')}")
-    for row in _rows(((rated < least) | (rated > most)) & (least <= most)):
+    for row in rows_of(((rated < least) | (rated > most)) & (least <= most)):
         window = f"load_min {show(least[row], 'force')} and load_max {show(most[row], 'force')}"
         yield table.fault(row, "load_rated", f"a load between {window}")
-    for row in _rows((least < 0) & ~table.flags("pulls")):
+    for row in rows_of((least < 0) & ~table.flags("pulls")):
         yield table.fault(row, "load_min", "at least 0 N, or pulls = yes: a negative load is tension")
 
 
@@ -130,12 +125,12 @@ def _travel(table: Table, stiffness: Stiffness, laws: Laws) -> Iterator[Fault]:
     limit, load = table.numbers("deflection_max"), table.numbers("load_max")
     # An air spring is levelled: its load says nothing of its deflection.
     deflection = np.where(table.flags("stiffness_follows_load"), np.nan, sag(stiffness, laws.curves, load))
-    for row in _rows(limit < (1 - _ROUNDING) * deflection):
+    for row in rows_of(limit < (1 - _ROUNDING) * deflection):
         curve = laws.curves[row] is not None
         source = "the deflection of the curve" if curve else "load_max / stiffness_z_static"
         why = f"{source}: with less the mount cannot carry its load"
         yield table.fault(row, "deflection_max", f"at least {show(deflection[row], 'length')}, {why}")
-    for row in _rows(table.numbers("free_height") < limit):
+    for row in rows_of(table.numbers("free_height") < limit):
         most = show(limit[row], "length")
         yield table.fault(row, "free_height", f"at least deflection_max, which is {most}")
 
@@ -148,7 +143,9 @@ def _on_curve(table: Table, laws: Laws) -> Iterator[Fault]:
     for row, curve in enumerate(laws.curves):
         if curve is None:
             continue
-        end = f"the end of the curve, {show(curve.load[-1], 'force')} at {show(curve.deflection[-1], 'length')}"
+        end = (
+            f"the end of the curve, {show(curve.load[-1], 'force')} at {show(curve.deflection[-1], 'length')}"
+        )
         if most[row] > curve.load[-1]:
             yield table.fault(row, "load_max", f"at most {end}")
         if least[row] < curve.load[0]:
@@ -164,14 +161,14 @@ def _on_curve(table: Table, laws: Laws) -> Iterator[Fault]:
 
 def _temperature(table: Table) -> Iterator[Fault]:
     most = table.numbers("temperature_max")
-    for row in _rows(table.numbers("temperature_min") >= most):
+    for row in rows_of(table.numbers("temperature_min") >= most):
         text = show(most[row], "temperature")
         yield table.fault(row, "temperature_min", f"less than temperature_max, which is {text}")
 
 
 def _tolerance(table: Table) -> Iterator[Fault]:
     families = table.texts("family")
-    for row in _rows(table.given("family") & ~table.given("tolerance")):
+    for row in rows_of(table.given("family") & ~table.given("tolerance")):
         if families[row] not in FAMILY_TOLERANCE:
             expected = "rubber or spring, or a stated tolerance: another family has none by common practice"
             yield table.fault(row, "family", expected, nearest_name(families[row], FAMILY_TOLERANCE))
@@ -179,20 +176,20 @@ def _tolerance(table: Table) -> Iterator[Fault]:
 
 def _amplitude(table: Table) -> Iterator[Fault]:
     most = table.numbers("amplitude_max")
-    for row in _rows(table.numbers("amplitude_min") >= most):
+    for row in rows_of(table.numbers("amplitude_min") >= most):
         yield table.fault(
             row, "amplitude_min", f"less than amplitude_max, which is {show(most[row], 'length')}"
         )
     for name in ("amplitude_min", "amplitude_max"):
-        for row in _rows(table.given(name) & table.given("amplitude_file")):
+        for row in rows_of(table.given(name) & table.given("amplitude_file")):
             yield table.fault(row, name, "an empty cell, for amplitude_file states the range of amplitudes")
 
 
 def _air_spring(table: Table) -> Iterator[Fault]:
     follows = table.flags("stiffness_follows_load")
-    for row in _rows(follows & ~(table.numbers("load_min") > 0.0) & ~np.isnan(table.numbers("load_min"))):
+    for row in rows_of(follows & ~(table.numbers("load_min") > 0.0) & ~np.isnan(table.numbers("load_min"))):
         yield table.fault(row, "load_min", "more than 0 N: an air spring without load has no stiffness")
-    for row in _rows(follows & table.given("curve_file")):
+    for row in rows_of(follows & table.given("curve_file")):
         yield table.fault(row, "curve_file", "an empty cell beside stiffness_follows_load = yes")
-    for row in _rows(follows & table.flags("pulls")):
+    for row in rows_of(follows & table.flags("pulls")):
         yield table.fault(row, "pulls", "no, for an air spring does not hold in tension")

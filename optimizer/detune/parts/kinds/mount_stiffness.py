@@ -16,7 +16,7 @@ from detune.ground.errors import Fault
 from detune.ground.units import STANDARD_GRAVITY, show
 from detune.parts.assumed import Assumed
 from detune.parts.laws import LoadCurve, deflection_under, tangent_stiffness
-from detune.parts.table import Table
+from detune.parts.table import Table, rows_of
 
 Floats = NDArray[np.float64]
 
@@ -105,7 +105,9 @@ def sag(stiffness: Stiffness, curves: Sequence[LoadCurve | None], load: Floats) 
     )
 
 
-def check_stiffness(table: Table, stiffness: Stiffness, curves: Sequence[LoadCurve | None]) -> Iterator[Fault]:
+def check_stiffness(
+    table: Table, stiffness: Stiffness, curves: Sequence[LoadCurve | None]
+) -> Iterator[Fault]:
     """Yield what is wrong between the statements of stiffness of each row."""
     yield from _missing(table)
     yield from _ratio_family(table, stiffness)
@@ -133,21 +135,21 @@ def _missing(table: Table) -> Iterator[Fault]:
             yield table.header_fault(name, f"a column {column.header}: {column.meaning}; or {instead}")
             continue
         at = next(source for source in (name, *figures) if table.has(source))
-        for row in np.flatnonzero(~filled):
-            yield table.fault(int(row), at, f"a value in every row: {column.meaning}, or {instead}")
+        for row in rows_of(~filled):
+            yield table.fault(row, at, f"a value in every row: {column.meaning}, or {instead}")
 
 
 def _ratio_family(table: Table, stiffness: Stiffness) -> Iterator[Fault]:
     filled = np.any(list(stiffness.from_ratio.values()), axis=0)
     families = table.texts("family")
-    for row in np.flatnonzero(filled):
+    for row in rows_of(filled):
         if families[row] not in FAMILIES_OF_RATIO:
             known = ", ".join(FAMILIES_OF_RATIO)
             expected = (
                 f"both stiffnesses in the row: a ratio fills one of them only for the families {known}; "
                 f"this family is {families[row]}"
             )
-            yield table.fault(int(row), RATIO, expected)
+            yield table.fault(row, RATIO, expected)
 
 
 def _disagreeing(table: Table, curves: Sequence[LoadCurve | None]) -> Iterator[Fault]:
@@ -157,7 +159,9 @@ def _disagreeing(table: Table, curves: Sequence[LoadCurve | None]) -> Iterator[F
     tangent_or_secant = _static(table, curves)
     for row in _apart(np.where(on_curve, math.nan, tangent_or_secant), static):
         figure = show(tangent_or_secant[row], "stiffness")
-        expected = f"{_within('stiffness_z_static', static[row])}; load_rated over this deflection is {figure}"
+        expected = (
+            f"{_within('stiffness_z_static', static[row])}; load_rated over this deflection is {figure}"
+        )
         yield table.fault(row, "deflection_rated", expected)
     for row in _apart(np.where(on_curve, tangent_or_secant, math.nan), static):
         tangent = show(tangent_or_secant[row], "stiffness")
@@ -174,7 +178,9 @@ def _disagreeing(table: Table, curves: Sequence[LoadCurve | None]) -> Iterator[F
         ]
     )
     for row in _apart(table.numbers("deflection_rated"), rests):
-        expected = f"the deflection of the curve at load_rated within 5 %, which is {show(rests[row], 'length')}"
+        expected = (
+            f"the deflection of the curve at load_rated within 5 %, which is {show(rests[row], 'length')}"
+        )
         yield table.fault(row, "deflection_rated", expected)
 
 
@@ -184,7 +190,7 @@ def _within(name: str, stated: float) -> str:
 
 def _apart(figure: Floats, stated: Floats) -> list[int]:
     with np.errstate(over="ignore"):
-        return [int(row) for row in np.flatnonzero(np.abs(figure - stated) > _AGREES * np.abs(stated))]
+        return rows_of(np.abs(figure - stated) > _AGREES * np.abs(stated))
 
 
 def _ratio_against_both(table: Table, stiffness: Stiffness) -> Iterator[Fault]:
@@ -207,7 +213,7 @@ def assumed_by_ratio(table: Table, stiffness: Stiffness, catalog: str) -> Iterat
     for name, filled in stiffness.from_ratio.items():
         axis, state = name.split("_")[1:]
         other = "static" if state == "dynamic" else "dynamic"
-        for row in np.flatnonzero(filled):
+        for row in rows_of(filled):
             value = f"{ratio[row]:g} times stiffness_{axis}_{other}"
             if state == "static":
                 value = f"stiffness_{axis}_dynamic / {ratio[row]:g}"

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import NDArray
 
 from detune.report.plots.style import BLACK, BLUE, GREY, VERMILION, Floats, Titles
 from detune.report.words import OBJECTIVE_WORDS, design_text, objective_value_text
@@ -22,7 +23,13 @@ TITLE = "Front"
 TITLED = 4000
 NUMBERED = 24
 IN_PER_CENT = ("separation", "least-margin")
-UNITS = {"cost": "currency of the lists", "separation": "%", "least-margin": "%", "added-mass": "kg", "part-numbers": "-"}
+UNITS = {
+    "cost": "currency of the lists",
+    "separation": "%",
+    "least-margin": "%",
+    "added-mass": "kg",
+    "part-numbers": "-",
+}
 
 
 @dataclass(frozen=True)
@@ -71,7 +78,10 @@ def data(result: Result) -> FrontData | None:
     if front.designs.count == 0 and not marked:
         return None
     values = np.array(
-        [[shown(float(front.objectives[name][i]), name) for name in trade] for i in range(front.designs.count)]
+        [
+            [shown(float(front.objectives[name][i]), name) for name in trade]
+            for i in range(front.designs.count)
+        ]
     ).reshape(front.designs.count, len(trade))
     points = np.array([[shown(objective_of(p, name), name) for name in trade] for p in front.points])
     texts: tuple[str, ...] = ()
@@ -156,25 +166,29 @@ def draw(data: FrontData, figure: "Figure") -> Titles:
 def _panel(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> Titles:
     titles: Titles = {}
     columns = [first, second]
-    drawn = np.isfinite(data.values[:, columns]).all(axis=1)
-    if drawn.any():
-        dots = ax.scatter(*data.values[drawn][:, columns].T, s=9, color=GREY, linewidths=0, zorder=2)
+    drawn = np.flatnonzero(np.isfinite(data.values[:, columns]).all(axis=1))
+    if len(drawn):
+        dots = ax.scatter(
+            data.values[drawn, first], data.values[drawn, second], s=9, color=GREY, linewidths=0, zorder=2
+        )
         dots.set_gid(f"designs-{panel}")
         if data.texts:
-            titles[f"designs-{panel}"] = tuple(t for t, d in zip(data.texts, drawn, strict=True) if d)
+            titles[f"designs-{panel}"] = tuple(data.texts[i] for i in drawn)
         else:
             dots.set_rasterized(True)
-    kept = np.isfinite(data.front[:, columns]).all(axis=1) if len(data.front) else np.zeros(0, dtype=bool)
-    if kept.any():
+    kept = np.flatnonzero(np.isfinite(data.front[:, columns]).all(axis=1))
+    if len(kept):
         points = data.front[kept][:, columns]
         if len(data.panels) == 1:
-            ax.plot(*points.T, color=BLUE, linewidth=1.0, zorder=3)
-        large = ax.scatter(*points.T, s=42, color=BLUE, edgecolors="white", linewidths=0.6, zorder=4)
+            ax.plot(points[:, 0], points[:, 1], color=BLUE, linewidth=1.0, zorder=3)
+        large = ax.scatter(
+            points[:, 0], points[:, 1], s=42, color=BLUE, edgecolors="white", linewidths=0.6, zorder=4
+        )
         large.set_gid(f"front-{panel}")
-        titles[f"front-{panel}"] = tuple(t for t, k in zip(data.front_texts, kept, strict=True) if k)
+        titles[f"front-{panel}"] = tuple(data.front_texts[i] for i in kept)
         _numbers(ax, data, kept, points)
     titles |= _marks(data, ax, panel, first, second)
-    if not drawn.any() and not kept.any():
+    if len(drawn) == 0 and len(kept) == 0:
         ax.text(0.5, 0.92, "no design that meets the brief", transform=ax.transAxes, ha="center", va="top")
     for name, setter in ((data.trade[first], ax.set_xlabel), (data.trade[second], ax.set_ylabel)):
         setter(f"{OBJECTIVE_WORDS[name]} [{UNITS[name]}]")
@@ -184,12 +198,20 @@ def _panel(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> 
     return titles
 
 
-def _numbers(ax: "Axes", data: FrontData, kept: Floats, points: Floats) -> None:
-    numbers = np.flatnonzero(kept) + 1
+def _numbers(ax: "Axes", data: FrontData, kept: NDArray[np.intp], points: Floats) -> None:
+    numbers = kept + 1
     if len(numbers) > NUMBERED:
         return
     for number, (x, y) in zip(numbers, points, strict=True):
-        ax.annotate(str(number), (x, y), xytext=(-5, 5), textcoords="offset points", ha="right", fontsize=8, color=BLUE)
+        ax.annotate(
+            str(number),
+            (x, y),
+            xytext=(-5, 5),
+            textcoords="offset points",
+            ha="right",
+            fontsize=8,
+            color=BLUE,
+        )
 
 
 def _marks(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> Titles:
@@ -201,7 +223,9 @@ def _marks(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> 
         if mark.label == "answer":
             dot = ax.scatter([x], [y], s=150, facecolors="none", edgecolors=BLACK, linewidths=1.4, zorder=6)
         elif mark.meets:
-            dot = ax.scatter([x], [y], s=60, marker="s", facecolors="none", edgecolors=VERMILION, linewidths=1.5, zorder=6)
+            dot = ax.scatter(
+                [x], [y], s=60, marker="s", facecolors="none", edgecolors=VERMILION, linewidths=1.5, zorder=6
+            )
         else:
             dot = ax.scatter([x], [y], s=60, marker="X", color=VERMILION, linewidths=0, zorder=6)
         gid = f"marked-{panel}-{index}"

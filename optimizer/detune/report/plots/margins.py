@@ -48,7 +48,9 @@ def data(result: Result) -> MarginsData | None:
     rows = sorted(subject.margins, key=lambda row: row.margin)
     kept = rows[: max(SHOWN, sum(row.margin < 0.0 for row in rows))]
     return MarginsData(
-        subject="the answer" if result.answer is not None else "the closest design, which does not meet the brief",
+        subject="the answer"
+        if result.answer is not None
+        else "the closest design, which does not meet the brief",
         labels=tuple(row.label for row in kept),
         margins=tuple(row.margin for row in kept),
         texts=tuple(f"{value_text(row)}; {limit_text(row)}; {margin_text(row.margin)}" for row in kept),
@@ -82,7 +84,15 @@ def draw(data: MarginsData, figure: "Figure") -> Titles:
         colour = BLUE if marker in "o>" else VERMILION
         if at:
             ax.hlines(at, 0.0, [ends[place] for place in at], color=colour, linewidth=1.2)
-            ax.scatter([ends[place] for place in at], at, s=size_, marker=marker, color=colour, linewidths=0, zorder=3)
+            ax.scatter(
+                [ends[place] for place in at],
+                at,
+                s=size_,
+                marker=marker,
+                color=colour,
+                linewidths=0,
+                zorder=3,
+            )
     for place in places:
         ax.text(1.03, place, data.texts[place], transform=ax.get_yaxis_transform(), va="center", fontsize=7.5)
     ax.axvline(0.0, color=BLACK, linewidth=1.0)
@@ -95,5 +105,13 @@ def draw(data: MarginsData, figure: "Figure") -> Titles:
     ax.spines["left"].set_visible(False)
     ax.grid(axis="x", color="#DDDDDD", linewidth=0.5)
     ax.set_axisbelow(True)
-    ax.text(1.03, -0.65, "value; limit; margin", transform=ax.get_yaxis_transform(), va="bottom", fontsize=7.5, color=GREY)
+    ax.text(
+        1.03,
+        -0.65,
+        "value; limit; margin",
+        transform=ax.get_yaxis_transform(),
+        va="bottom",
+        fontsize=7.5,
+        color=GREY,
+    )
     return {}

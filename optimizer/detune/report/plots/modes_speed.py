@@ -4,7 +4,18 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from detune.brief.brief import Brief
-from detune.report.plots.style import BLACK, BLUE, GREY, LIGHT, LINES, VERMILION, Titles, revolutions_above, shorten, spread
+from detune.report.plots.style import (
+    BLACK,
+    BLUE,
+    GREY,
+    LIGHT,
+    LINES,
+    VERMILION,
+    Titles,
+    revolutions_above,
+    shorten,
+    spread,
+)
 from detune.report.words import separation_text
 from detune.response.direct_supremum import tones_of
 from detune.study.run import Result
@@ -79,7 +90,9 @@ def data(result: Result) -> ModesData | None:
         return None
     sources = excitation_sources(result.study.brief)
     return ModesData(
-        subject="the answer" if result.answer is not None else "the closest design, which does not meet the brief",
+        subject="the answer"
+        if result.answer is not None
+        else "the closest design, which does not meet the brief",
         frequencies=tuple(mode.frequency for mode in subject.modes),
         names=tuple(mode.name for mode in subject.modes),
         separations=tuple(mode.separation for mode in subject.modes),
@@ -157,7 +170,9 @@ def _panel(data: ModesData, source: Source, ax: "Axes") -> None:
         ax.axhline(frequency, color=BLUE, linewidth=0.9, zorder=3)
     for speed, frequency, steady in data.crossings(source):
         face = VERMILION if steady else "white"
-        ax.plot([speed], [frequency], marker="o", markersize=5, color=VERMILION, markerfacecolor=face, zorder=5)
+        ax.plot(
+            [speed], [frequency], marker="o", markersize=5, color=VERMILION, markerfacecolor=face, zorder=5
+        )
     ax.set_xlim(0.0, right)
     ax.set_ylim(bottom, top)
     if is_log:
@@ -175,7 +190,9 @@ def _span(ax: "Axes", span: Range) -> None:
         if span.steady:
             ax.axvspan(span.low, span.high, color=LIGHT, linewidth=0, zorder=0)
         else:
-            ax.axvspan(span.low, span.high, facecolor="none", edgecolor="#D2D2D2", hatch="//", linewidth=0, zorder=0)
+            ax.axvspan(
+                span.low, span.high, facecolor="none", edgecolor="#D2D2D2", hatch="//", linewidth=0, zorder=0
+            )
     else:
         ax.axvline(span.low, color="#BBBBBB", linewidth=3.0 if span.steady else 1.0, zorder=0)
     ax.text(
@@ -203,6 +220,9 @@ def _mode_labels(ax: "Axes", data: ModesData, is_log: bool) -> None:
         ax.annotate(
             text, (1.0, want), xytext=(1.05, place), xycoords="axes fraction", textcoords="axes fraction",
             va="center", fontsize=7.5, annotation_clip=False,
-            arrowprops={"arrowstyle": "-", "linewidth": 0.5, "color": GREY, "shrinkA": 1.0, "shrinkB": 0.0, "relpos": (0.0, 0.5)},
+            arrowprops={"arrowstyle": "-", "linewidth": 0.5, "color": GREY, "shrinkA": 1.0, "shrinkB": 0.0,
+                        "relpos": (0.0, 0.5)},
         )  # fmt: skip
-    ax.text(1.05, 1.045, "natural frequency, mode, separation", transform=ax.transAxes, fontsize=7.5, color=GREY)
+    ax.text(
+        1.05, 1.045, "natural frequency, mode, separation", transform=ax.transAxes, fontsize=7.5, color=GREY
+    )

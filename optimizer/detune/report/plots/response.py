@@ -7,7 +7,16 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from detune.ground.units import convert
-from detune.report.plots.style import BLACK, BLUE, LIGHT, VERMILION, Floats, Titles, revolutions_above, shorten
+from detune.report.plots.style import (
+    BLACK,
+    BLUE,
+    LIGHT,
+    VERMILION,
+    Floats,
+    Titles,
+    revolutions_above,
+    shorten,
+)
 from detune.report.response_data import ResponseCurve, response_curves
 from detune.report.words import margin_text, unit_of
 from detune.study.run import Result
@@ -43,6 +52,7 @@ class Panel:
     peak: float
     margin: float
     places: int
+    passage: bool
 
 
 @dataclass(frozen=True)
@@ -61,16 +71,25 @@ def data(result: Result) -> ResponseData | None:
         return None
     groups: dict[tuple[str, ...], list[ResponseCurve]] = {}
     for curve in response_curves(result.study.brief, subject):
-        key = (curve.row.kind, curve.row.quantity, curve.row.condition, curve.source, f"{curve.low} {curve.high}")
+        key = (
+            curve.row.kind,
+            curve.row.quantity,
+            curve.row.condition,
+            curve.source,
+            f"{curve.low} {curve.high}",
+        )
         groups.setdefault(key, []).append(curve)
     tightest = [
-        (min(curves, key=lambda c: c.row.margin), len({c.row.place for c in curves})) for curves in groups.values()
+        (min(curves, key=lambda c: c.row.margin), len({c.row.place for c in curves}))
+        for curves in groups.values()
     ]
     ranked = sorted(tightest, key=lambda item: item[0].row.margin)
     if not ranked:
         return None
     return ResponseData(
-        subject="the answer" if result.answer is not None else "the closest design, which does not meet the brief",
+        subject="the answer"
+        if result.answer is not None
+        else "the closest design, which does not meet the brief",
         panels=tuple(_panel(curve, places) for curve, places in ranked[:SHOWN]),
         left_out=max(0, len(ranked) - SHOWN),
     )
@@ -100,9 +119,10 @@ def _panel(curve: ResponseCurve, places: int) -> Panel:
         low=curve.low,
         high=curve.high,
         at=float(at if is_own and at is not None else curve.speed[top]),
-        peak=shown(row.value if is_own else float(curve.value[top])),
+        peak=shown(row.value if is_own or curve.passage else float(curve.value[top])),
         margin=row.margin,
         places=places,
+        passage=curve.passage,
     )
 
 
@@ -114,7 +134,11 @@ def caption(data: ResponseData) -> str:
         "(found over the continuous range, not on a grid). The thin line outside the band continues the same forcing "
         "to show where the resonances lie; it is not judged."
     )
-    return f"{text} {data.left_out} quantities with larger margins are in responses.csv." if data.left_out else text
+    return (
+        f"{text} {data.left_out} quantities with larger margins are in responses.csv."
+        if data.left_out
+        else text
+    )
 
 
 def size(data: ResponseData) -> tuple[float, float]:
@@ -143,7 +167,12 @@ def _draw_panel(ax: "Axes", panel: Panel) -> None:
     inside = (panel.speed >= panel.low) & (panel.speed <= panel.high)
     ax.plot(panel.speed[inside], panel.value[inside], color=BLUE, linewidth=1.8, zorder=3)
     ax.axhline(panel.limit, color=BLACK, linewidth=1.1, linestyle=(0, (5, 2)), zorder=4)
-    ax.plot([panel.at], [panel.peak], marker="o", color=VERMILION, markersize=5.5, zorder=5)
+    if panel.passage:
+        ax.hlines(
+            [panel.peak], panel.low, panel.high, color=VERMILION, linewidth=1.6, linestyle=":", zorder=5
+        )
+    else:
+        ax.plot([panel.at], [panel.peak], marker="o", color=VERMILION, markersize=5.5, zorder=5)
     ax.set_yscale("log")
     ax.set_xscale("linear")
     ax.set_xlim(panel.speed[0], panel.speed[-1])
@@ -151,7 +180,9 @@ def _draw_panel(ax: "Axes", panel: Panel) -> None:
     floor = 0.3 * min(panel.limit, panel.peak)
     if len(positive):
         floor = max(min(floor, float(positive.min())), 1e-3 * panel.limit, 0.02 * panel.peak)
-    ax.set_ylim(0.7 * floor, 2.2 * max(panel.limit, panel.peak, min(float(panel.value.max()), 30.0 * panel.limit)))
+    ax.set_ylim(
+        0.7 * floor, 2.2 * max(panel.limit, panel.peak, min(float(panel.value.max()), 30.0 * panel.limit))
+    )
     _plain_ticks(ax)
     ax.set_ylabel(f"[{panel.unit or '-'}]")
     ax.yaxis.set_label_coords(-0.105, 0.5)

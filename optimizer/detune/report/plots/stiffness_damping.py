@@ -10,7 +10,7 @@ from detune.brief.brief import Brief
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem, with_mounts
 from detune.problem.requirement import Requirement
-from detune.problem.stages import stages
+from detune.problem.stages import Stage, stages
 from detune.report.plots.style import BLACK, GREY, LINES, VERMILION, Floats, Titles, shorten
 from detune.response.assessment import Assessment
 from detune.response.design import Design
@@ -18,6 +18,7 @@ from detune.response.designs import Designs
 from detune.study.run import Result
 
 if TYPE_CHECKING:
+    from matplotlib.artist import Artist
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
@@ -71,6 +72,7 @@ class MapData:
     parts: tuple[PartDot, ...]
     here: tuple[float, float]
     ballast: float
+    without_slow: bool
 
     @property
     def least(self) -> Floats:
@@ -102,6 +104,7 @@ def data(result: Result) -> MapData | None:
         parts=parts,
         here=here,
         ballast=subject.design.ballast,
+        without_slow=any(group.rows.has_slow_parts for group in problem.harmonics),
     )
 
 
@@ -118,7 +121,7 @@ def equivalent_loss_factor(mount: Mount, omega: float) -> float:
 def _vertical_omega(brief: Brief, subject: Assessment) -> float:
     """Angular frequency of the mode that moves the most mass vertically, at which viscous damping is compared."""
     share = [mode.participation[2] for mode in subject.modes]
-    return TWO_PI * subject.modes[int(np.argmax(share))].frequency
+    return TWO_PI * subject.modes[int(np.argmax(np.nan_to_num(share)))].frequency
 
 
 def _design_point(brief: Brief, design: Design, omega: float) -> tuple[float, float]:
@@ -190,18 +193,16 @@ def _fields(
     total = sum(station.parallel for station in brief.stations)
     nodes = [(k / total, eta) for eta in loss.tolist() for k in stiffness.tolist()]
     scaled = [tuple(scaled_mount(mount, k, eta) for k, eta in nodes) for mount in design.mounts]
-    ballast = np.array([design.ballast])
-    step = int(np.abs(problem.model.ballast_mass - ballast).argmin())
+    changed = with_mounts(problem, tuple(scaled))
+    step = int(np.abs(changed.model.ballast_mass - design.ballast).argmin())
     numbers = np.arange(len(nodes), dtype=np.intp)
-    designs = Designs(np.repeat(numbers[:, None], len(scaled), axis=1), np.full(len(nodes), step, dtype=np.intp))
-    changed = replace(with_mounts(problem, tuple(scaled)), totals=())
+    designs = Designs(
+        np.repeat(numbers[:, None], len(scaled), axis=1), np.full(len(nodes), step, dtype=np.intp)
+    )
     found: dict[str, Floats] = {}
-    for stage in stages(changed):
-        if stage.bound:
-            continue
-        margins = np.concatenate(
-            [stage.margins(designs.take(numbers[i : i + stage.size])) for i in range(0, len(nodes), stage.size)], axis=1
-        )
+    for stage in _stages_drawn(changed):
+        blocks = [designs.take(numbers[i : i + stage.size]) for i in range(0, len(nodes), stage.size)]
+        margins = np.concatenate([stage.margins(block) for block in blocks], axis=1)
         for requirement, margin in zip(stage.requirements, margins, strict=True):
             if isinstance(requirement.allowable, LoadRange):
                 continue
@@ -219,6 +220,19 @@ def _fields(
     return tuple(crossing), failed
 
 
+def _stages_drawn(problem: Problem) -> tuple[Stage, ...]:
+    """Return the stages that judge the nodes; records and passages take too long for a map and are left out."""
+    slow = [group.requirements for group in problem.harmonics if group.rows.has_slow_parts]
+    chosen: dict[tuple[Requirement, ...], Stage] = {}
+    for stage in stages(problem):
+        if stage.requirements == problem.totals:
+            continue
+        # Of the bounds of a slow group the last is the closest one.
+        if stage.bound == (stage.requirements in slow):
+            chosen[stage.requirements] = stage
+    return tuple(chosen.values())
+
+
 def _label(requirement: Requirement) -> str:
     return f"{requirement.allowable.quantity()} ({requirement.condition})"
 
@@ -231,15 +245,18 @@ def caption(data: MapData) -> str:
         f"stiffness stay as in the parts of {data.subject} of the same group, the ballast at {data.ballast:g} kg, part "
         "deflection limits as listed; load ranges are lifted. Lines: where a requirement, at its worst place, equals "
         "its limit. White: all of them met; shaded: at least one missed. Dots: each part that may be "
-        "chosen, as if used at every station, open where the load shared equally is outside its load range; viscous damping "
-        "is read as a loss factor at the vertical natural frequency. "
+        "chosen, as if used at every station, open where the load shared equally is outside its load range; viscous "
+        "damping is read as a loss factor at the vertical natural frequency. "
         f"A real design with different parts in its groups lies between its dots, and a dot has its own ratios; the "
         f"diamond is {data.subject} as it is. The map shows which way to go; only the margins table judges."
     )
+    if data.without_slow:
+        text += " Pulses, records and passages through speeds are left out of the map; with them lines lie closer in."
     if data.always_failed:
         text += " Missed everywhere on this map: " + "; ".join(data.always_failed) + "."
     if len(data.fields) > LINES_SHOWN:
-        text += f" {len(data.fields) - LINES_SHOWN} further limit lines, which leave more, are not named; all are in the shading."
+        more = len(data.fields) - LINES_SHOWN
+        text += f" {more} further limit lines, which leave more, are not named; all are in the shading."
     return text
 
 
@@ -279,10 +296,10 @@ def _drawable(margin: Floats) -> Floats:
     return np.asarray(np.clip(np.log1p(np.maximum(margin, -0.95)), -LARGEST, LARGEST))
 
 
-def _limit_lines(ax: "Axes", data: MapData) -> list[object]:
+def _limit_lines(ax: "Axes", data: MapData) -> "list[Artist]":
     from matplotlib.lines import Line2D
 
-    handles: list[object] = []
+    handles: list[Artist] = []
     x, y = data.stiffness / 1e3, data.loss_factor
     for index, field in enumerate(data.fields[:LINES_SHOWN]):
         colour, style = LINES[index % len(LINES)]
@@ -290,14 +307,25 @@ def _limit_lines(ax: "Axes", data: MapData) -> list[object]:
             x, y, _drawable(field.margin), levels=[0.0], colors=[colour], linewidths=1.6,
             linestyles=[style], zorder=3,
         )  # fmt: skip
-        handles.append(Line2D([], [], color=colour, linestyle=style, linewidth=1.6, label=shorten(field.label, 110)))
+        handles.append(
+            Line2D([], [], color=colour, linestyle=style, linewidth=1.6, label=shorten(field.label, 110))
+        )
     handles.append(
         Line2D([], [], color=VERMILION, marker="D", markersize=6, linestyle="none", label=f"{data.subject}")
     )
-    dot = {"marker": "o", "markersize": 4.0, "linestyle": "none"}
-    handles.append(Line2D([], [], color=BLACK, label="a part, as if at every station", **dot))
     hollow = "a part whose load range does not hold the load shared equally"
-    handles.append(Line2D([], [], color=GREY, markerfacecolor="none", label=hollow, **dot))
+    for label, colour, face in (("a part, as if at every station", BLACK, BLACK), (hollow, GREY, "none")):
+        dot = Line2D(
+            [],
+            [],
+            color=colour,
+            markerfacecolor=face,
+            marker="o",
+            markersize=4,
+            linestyle="none",
+            label=label,
+        )
+        handles.append(dot)
     return handles
 
 
@@ -325,7 +353,11 @@ def _dots(ax: "Axes", data: MapData) -> Titles:
         titles[gid] = tuple(
             f"{p.part}: {p.stiffness / 1e3:.4g} N/mm in total, loss factor {p.loss_factor:.3g}; "
             f"may be chosen for {', '.join(p.groups) or 'no group'}; "
-            + ("the load shared equally is in its range" if p.carries else "the load shared equally is outside its range")
+            + (
+                "the load shared equally is in its range"
+                if p.carries
+                else "the load shared equally is outside its range"
+            )
             for p in dots
         )
     ax.plot([data.here[0] / 1e3], [data.here[1]], marker="D", color=VERMILION, markersize=6, zorder=5)

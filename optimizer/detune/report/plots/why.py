@@ -68,7 +68,12 @@ def draw(data: WhyData, figure: "Figure") -> Titles:
     counts = [*data.counts, data.met]
     for place, count in enumerate(counts):
         ax.annotate(
-            str(count), (max(count, 0.7), place), xytext=(7, 0), textcoords="offset points", va="center", fontsize=8
+            str(count),
+            (max(count, 0.7), place),
+            xytext=(7, 0),
+            textcoords="offset points",
+            va="center",
+            fontsize=8,
         )
     drawn = [place for place, count in enumerate(counts[:-1]) if count]
     ax.hlines(drawn, 0.7, [counts[place] for place in drawn], color=BLUE, linewidth=1.4)
@@ -77,7 +82,7 @@ def draw(data: WhyData, figure: "Figure") -> Titles:
         ax.hlines([len(data.labels)], 0.7, [data.met], color=GREY, linewidth=1.4)
         ax.scatter([data.met], [len(data.labels)], s=26, marker="D", color=GREY, linewidths=0, zorder=3)
     ax.set_xscale("log")
-    ax.set_xticks([10.0**n for n in range(0, 13)], [f"{10**n}" if n < 7 else f"1e{n}" for n in range(0, 13)])
+    ax.set_xticks([10.0**n for n in range(13)], [f"{10**n}" if n < 7 else f"1e{n}" for n in range(13)])
     ax.set_xticks([], minor=True)
     ax.set_xlim(0.7, 4.0 * max(max(counts), 10))
     ax.set_ylim(len(labels) - 0.4, -0.6)
