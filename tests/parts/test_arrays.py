@@ -7,6 +7,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+
 from detune.ground.units import KINDS as UNIT_KINDS
 from detune.ground.units import parse_column
 from detune.parts.catalog import read_catalog

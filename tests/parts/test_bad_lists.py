@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+
 from detune.ground.errors import BriefError, Fault
 from detune.parts.catalog import read_catalog
 

@@ -9,6 +9,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+
 from detune.parts.catalog import Catalog, read_catalog
 from detune.parts.kinds.mount import mount_arrays
 

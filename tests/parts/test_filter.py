@@ -8,11 +8,12 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
 from detune.ground.errors import BriefError
 from detune.parts.catalog import Catalog, Criterion, criteria_in_si, filter_parts, read_catalog
 from detune.parts.kinds.mount import COLUMNS, value
-from hypothesis import given, settings
-from hypothesis import strategies as st
 
 RUBBER = Path(__file__).parents[2] / "catalogs" / "rubber.csv"
 CATALOG = read_catalog(RUBBER, "rubber")

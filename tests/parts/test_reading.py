@@ -8,6 +8,7 @@ from collections.abc import Callable
 from pathlib import Path
 
 import pytest
+
 from detune.parts.assumed import Assumed, group_assumed
 from detune.parts.catalog import read_catalog
 
@@ -287,3 +288,15 @@ def test_rounded_deflection_limit_is_accepted(
     """1200 N / 160 N/mm = 7.5 mm; a list that prints 7.45 has rounded, one that prints 7.4 has not."""
     text = make_list(cells={(2, "deflection_max [mm]"): "7.45"})
     assert read_catalog(write(text), "trees").parts[0].deflection_max == pytest.approx(0.00745)
+
+
+@pytest.mark.parametrize("text", ["12%", "12 %", "12.0 %"])
+def test_per_cent_in_a_cell_of_ratios(
+    text: str, make_list: Callable[..., str], write: Callable[..., Path]
+) -> None:
+    """12 % is 0.12, whether the header says per cent or nothing."""
+    part = read_catalog(
+        write(make_list(1, {(2, "tolerance [%]"): text, (2, "loss_factor"): text})), "trees"
+    ).parts[0]
+    assert part.tolerance == pytest.approx(0.12, rel=1e-12)
+    assert part.loss_factor[2] == pytest.approx(0.12, rel=1e-12)

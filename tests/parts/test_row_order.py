@@ -10,10 +10,11 @@ from random import Random
 from tempfile import TemporaryDirectory
 
 import pytest
-from detune.ground.errors import BriefError
-from detune.parts.catalog import Catalog, read_catalog
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
+from detune.ground.errors import BriefError
+from detune.parts.catalog import Catalog, read_catalog
 
 RUBBER = Path(__file__).parents[2] / "catalogs" / "rubber.csv"
 HEADER, *ROWS = list(csv.reader(RUBBER.read_text(encoding="utf-8").splitlines()))

@@ -9,10 +9,12 @@ from scipy.optimize import minimize_scalar
 from scipy.stats import chi
 
 from detune.physics.extremes import (
+    covariance_of_polarised,
     expected_extreme,
     expected_extreme_factor,
     miles_absolute_acceleration,
     miles_pseudo_acceleration,
+    polarised_rows,
     resultant_exceedance,
     resultant_level,
     zero_crossing_rate,
@@ -99,3 +101,11 @@ def test_a_resultant_level_needs_sense() -> None:
         resultant_level(np.eye(3), 0.0)
     with pytest.raises(ValueError, match="above zero"):
         resultant_exceedance(np.eye(3), 0.0)
+
+
+def test_covariance_from_variances_of_sums() -> None:
+    # Numbers that a reader can check: samples of three correlated signals, numpy's covariance.
+    signal = np.random.default_rng(8).normal(size=(3, 5000)) + np.random.default_rng(9).normal(size=5000)
+    variances = np.var(polarised_rows(signal), axis=1)
+    assert covariance_of_polarised(variances) == pytest.approx(np.cov(signal, bias=True), rel=1e-12)
+    assert covariance_of_polarised(np.ones((6, 4))).shape == (4, 3, 3)

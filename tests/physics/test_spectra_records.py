@@ -22,6 +22,13 @@ def test_gaps_repeats_and_missing_values_are_refused_by_row() -> None:
         sample_rate(np.delete(time, 50))
     with pytest.raises(RecordFault, match="row 4"):
         sample_rate([0.0, 0.1, 0.2, 0.2, 0.3, 0.4])
+    # 256 Hz printed in whole milliseconds jitters by a quarter of a step and has no gap; in centiseconds it is lost.
+    fine = np.arange(300) / 256.0
+    assert sample_rate(np.round(fine, 3)) == pytest.approx(256.0, rel=1e-3)
+    with pytest.raises(RecordFault, match="row 101"):
+        sample_rate(np.round(np.delete(fine, 100), 3))
+    with pytest.raises(RecordFault, match="not evenly spaced"):
+        sample_rate(np.round(fine, 2))
     with pytest.raises(RecordFault, match="row 3 of the record is not a number"):
         checked([0.0, 1.0, np.nan, 2.0])
     with pytest.raises(RecordFault, match="two or more"):

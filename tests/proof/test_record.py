@@ -32,7 +32,7 @@ from detune.proof.search_front import search_front, search_least_cost
 NUMPY = SearchSettings(kernels="numpy")
 
 
-def two_mass_system(width=0.05):
+def two_mass_system(width=0.02):
     """Two bodies of 100 and 40 kg in line on springs of 4e5 and 2e5 N/m, loss factor 0.1; each spring by itself."""
     axes = np.array([[1.0, 0.0], [-1.0, 1.0]])
     k = np.array([4e5, 2e5])
@@ -62,9 +62,16 @@ def second_body(limit, force=False):
         load=np.array([0.0, 1.0], dtype=complex),
         base=np.array([1e-6 if force else 0.0, 0.0], dtype=complex),
         limit=limit,
-        frequency=(15.0, 20.0),
+        frequency=(15.0, 16.0),
         load_power=2.0,
     )
+
+
+def few_cases(selection):
+    """The selection with three of its fifteen load cases: exact fractions are slow."""
+    cases = selection.harmonic
+    names = ("frequency", "load", "base", "row_limit", "deflection_limit", "force_limit", "total_limit")
+    return replace(selection, harmonic=replace(cases, **{name: getattr(cases, name)[2::5] for name in names}))
 
 
 @pytest.fixture(scope="module")
@@ -86,7 +93,7 @@ def entries():
     force = replace(force, limit=1.1 * worst_case(system, force, gap=0.05).lower)
     record = add_decision(record, "spring force", system, force, decide(system, force))
     shape = InstanceSettings(parts=4, groups=3, seed=1, tight=False, response_share=0.5, separation=0.02)
-    selection = make_instance(shape)
+    selection = few_cases(make_instance(shape))
     record = add_search(record, selection, search_least_cost(selection, settings=NUMPY))
     record = add_search(record, selection, search_front(selection, settings=NUMPY))
     record = add_note(record, "remark", {"text": "nothing else was looked at"})
@@ -125,8 +132,8 @@ def test_any_altered_entry_breaks_the_chain(entries):
 
 
 def forged(entries, position, change):
-    altered = copy.deepcopy(entries)
-    change(altered[position]["data"])
+    altered = copy.deepcopy([entries[0], entries[position]])
+    change(altered[1]["data"])
     return check_entries(chained(altered))
 
 
@@ -151,7 +158,7 @@ def test_rechained_forgeries_of_a_proof_are_found(entries):
         data["decision"].update(status="proven", splits=[-1])
 
     def wider_frequency(data):
-        data["output"]["frequency"] = [8.0, 20.0]
+        data["output"]["frequency"] = [8.0, 16.0]
 
     def other_limit(data):
         data["decision"]["limit"] *= 2.0
@@ -163,7 +170,8 @@ def test_rechained_forgeries_of_a_proof_are_found(entries):
         data["system"]["loss"][0] *= -1.0
 
     for change in (
-        lower_limit, wider, cut_tree, foreign_variable, longer_tree, wider_frequency, other_limit, missing, negative_loss,
+        lower_limit, wider, cut_tree, foreign_variable, longer_tree, wider_frequency, other_limit, missing,
+        negative_loss,
     ):  # fmt: skip
         assert not forged(entries, 1, change).confirmed, change.__name__
     # The violated limit called proven.

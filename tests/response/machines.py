@@ -92,6 +92,8 @@ def brief_of(**changes: Any) -> Brief:
     groups = dict.fromkeys(station.group for station in changes["stations"])
     stated: dict[str, Any] = {
         "title": "test",
+        # Textbook machines and the reference libraries leave it out; tests/response/test_gravity.py has it.
+        "gravity_stiffness": False,
         "floor": RIGID,
         "conditions": (Condition(name="running"),),
         "catalogs": (CatalogSource(name="list", file="list.csv"),),

@@ -9,7 +9,6 @@ from __future__ import annotations
 import importlib.util
 import math
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 import pytest
@@ -23,7 +22,8 @@ from detune.brief.allowable import (
     Velocity,
 )
 from detune.brief.brief import Brief
-from detune.brief.forcing import BaseMotion
+from detune.brief.forcing import BaseMotion, ShaftOrders
+from detune.brief.forcing.shaft_orders import Order
 from detune.parts.kinds.mount import Mount
 
 _spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
@@ -340,15 +340,8 @@ def test_rigid_floor_takes_the_same_force_as_the_ground() -> None:
     assert both(brief, part, ground) == pytest.approx(both(brief, part, FORCE), rel=1e-12)
 
 
-def _orders(brief: Brief) -> Any:
-    return brief.forcing[0].tones(brief.conditions[0].shafts)
-
-
 def test_unknown_phases_add_linearly_and_known_ones_as_phasors() -> None:
     """Two equal forces of one shaft order: unknown 2 F, in phase 2 F, opposed 0, in quadrature sqrt 2 F."""
-    from detune.brief.forcing import ShaftOrders
-    from detune.brief.forcing.shaft_orders import Order
-
     part = machines.mount(k=K, loss=0.1)
     single = machines.one_axis(M, machines.force(20.0))
     one = both(single, part, X)
@@ -379,9 +372,6 @@ def test_supremum_of_the_sum_is_not_the_sum_of_suprema() -> None:
     adds little, so the supremum is close to one peak and far from two (values of |H| by hand: r = 2 gives
     1/3, r = 1/2 gives 4/3 of F/k).
     """
-    from detune.brief.forcing import ShaftOrders
-    from detune.brief.forcing.shaft_orders import Order
-
     orders = ShaftOrders(
         name="pump",
         shaft="rotor",

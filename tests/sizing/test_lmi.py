@@ -137,13 +137,15 @@ def test_collocated_limit_is_exact_without_damping():
 def test_transmissibility_cone_agrees_with_the_exact_axis():
     for seed in range(6):
         rng = np.random.default_rng(seed)
-        mass, frequency, limit = float(rng.uniform(50, 500)), float(rng.uniform(10, 40)), float(rng.uniform(0.05, 0.5))
+        mass, frequency, limit = (
+            float(rng.uniform(50, 500)),
+            float(rng.uniform(10, 40)),
+            float(rng.uniform(0.05, 0.5)),
+        )
         top = mass * (2 * math.pi * frequency) ** 2
         weights = (-1.0, -0.3 * math.sqrt(top / mass) / 10, 0.0)
         damping = (1e-3 * math.sqrt(top * mass), 1.0 * math.sqrt(top * mass))
-        cone = soft_side_one_axis(
-            weights, (1e-4 * top, top), damping, (mass, mass), ((frequency, limit),)
-        )
+        cone = soft_side_one_axis(weights, (1e-4 * top, top), damping, (mass, mass), ((frequency, limit),))
         assert (cone.status, cone.worth) == ("solved", "global")
         w = 2 * math.pi * frequency
         mount = cone.stiffness + 1j * w * cone.damping
@@ -187,7 +189,13 @@ def test_bad_models_are_refused():
     model = random_model(0)
     with pytest.raises(SizingError, match="not positive semidefinite"):
         StiffnessModel(
-            model.mass, -model.patterns, model.constant, model.lower, model.upper, np.zeros((0, 4, 4)), np.zeros(0)
+            model.mass,
+            -model.patterns,
+            model.constant,
+            model.lower,
+            model.upper,
+            np.zeros((0, 4, 4)),
+            np.zeros(0),
         )
     with pytest.raises(SizingError, match="nothing binds"):
         cheapest(model, np.ones(3), np.zeros(0))

@@ -64,7 +64,9 @@ def real_form_ratios(problem: SmoothProblem, x: np.ndarray, norm: float) -> np.n
     p, e = problem.patterns.shape[0], problem.groups
     k, eta, ballast = np.exp(x[:p]), np.exp(x[p : p + e]), x[p + e :]
     stiffness = problem.constant.real + sum(k[i] * problem.patterns[i] for i in range(p))
-    loss = problem.constant.imag + sum(k[i] * eta[problem.damping_group[i]] * problem.patterns[i] for i in range(p))
+    loss = problem.constant.imag + sum(
+        k[i] * eta[problem.damping_group[i]] * problem.patterns[i] for i in range(p)
+    )
     mass = problem.mass + sum(b * t for b, t in zip(ballast, problem.ballast_patterns, strict=True))
     result = []
     for i, f in enumerate(problem.frequencies):
@@ -102,7 +104,10 @@ def test_adjoint_gradient_against_complex_step(seed):
 
 def test_static_and_modal_gradients_against_central_differences():
     problem = skid(1)
-    x = problem.join(np.sqrt(np.maximum(problem.lower, 1.0) * problem.upper) * np.append(np.ones(12), 5.0)[: problem.lower.size])
+    x = problem.join(
+        np.sqrt(np.maximum(problem.lower, 1.0) * problem.upper)
+        * np.append(np.ones(12), 5.0)[: problem.lower.size]
+    )
     for function in (sag_ratios, natural_frequencies):
         _, slope = function(problem, x)
         for i in range(x.size):
@@ -141,7 +146,9 @@ def test_one_freedom_reaches_the_exact_global_answer():
             Objective("weighted sum", stiffness_weight=cost[0], damping_weight=cost[1]), tuple(limits),
         )
     )  # fmt: skip
-    found = size_from_many_starts(axis(limits, (2e4, 5e7), (0.02, 0.9), 250.0, cost), "least cost", starts=16, seed=1)
+    found = size_from_many_starts(
+        axis(limits, (2e4, 5e7), (0.02, 0.9), 250.0, cost), "least cost", starts=16, seed=1
+    )
     assert found.objective == pytest.approx(exact.best.objective, rel=1e-5)
     assert found.objective >= exact.best.objective * (1 - 1e-6)
     assert "not proven global" in found.worth
@@ -165,8 +172,8 @@ def test_least_worst_response_beats_random_search_and_repeats_with_its_seed():
 
 
 def test_greatest_separation_of_two_masses_by_hand():
-    # Two separate 10 kg masses, intervals 8-10 and 20 Hz: one mode at each best place is out of reach for both
-    # only through bounds; between them both sit at 2/(1/10 + 1/20) = 13.333 Hz with separation 1/3.
+    # Two separate 10 kg masses, intervals 8-10 and 20 Hz: bounds hold both modes between the
+    # intervals, where both sit at 2/(1/10 + 1/20) = 13.333 Hz with separation 1/3.
     n2 = np.array([np.diag([1.0, 0.0]), np.diag([0.0, 1.0])])
     k = 10 * (2 * math.pi * np.array([10.5, 19.0])) ** 2
     problem = SmoothProblem(

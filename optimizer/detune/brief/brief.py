@@ -4,7 +4,7 @@ from pathlib import Path
 
 from pydantic import SerializeAsAny
 
-from detune.brief.allowable import Allowable, LoadRange, MountDeflection, Uplift
+from detune.brief.allowable import Allowable, LoadRange, MountDeflection, Stability, Uplift
 from detune.brief.choice import Ballast, CatalogSource, Choice, Objectives
 from detune.brief.condition import Condition
 from detune.brief.floor import Floor
@@ -25,6 +25,7 @@ class Brief(Statement):
     stations: tuple[Station, ...]
     connections: tuple[Connection, ...] = ()
     steady_loads: tuple[SteadyLoad, ...] = ()
+    gravity_stiffness: bool = True
     floor: Floor
     structure: Structure | None = None
     states: tuple[State, ...] = ()
@@ -68,6 +69,9 @@ def demanded(brief: Brief) -> tuple[tuple[Allowable, ...], tuple[str, ...]]:
         everywhere = len(free) == len(brief.stations)
         added.append(demand if everywhere else demand.model_copy(update={"stations": free}))
         notes.append(note if everywhere else f"{note} (also at {', '.join(free)})")
+    if not any(isinstance(stated, Stability) for stated in brief.allowables):
+        added.append(Stability())
+        notes.append("the machine stands: it would not topple under its own weight")
     return (*brief.allowables, *added), tuple(notes)
 
 

@@ -58,7 +58,10 @@ def folder_of(info: ValidationInfo) -> Path:
 
 
 def read_named(
-    info: ValidationInfo, file: str, required: Mapping[str, str], one_of: Mapping[str, str] | None = None,
+    info: ValidationInfo,
+    file: str,
+    required: Mapping[str, str],
+    one_of: Mapping[str, str] | None = None,
     optional: Mapping[str, str] | None = None,
 ) -> DataTable:
     """Return the table of a file named under the key "file" of a statement; what is wrong is refused there.
@@ -94,7 +97,7 @@ def read_table(
             near = nearest_name(name, known)
             hint = f'; did you mean "{near}"?' if near else ""
             raise DataFileFault(
-                f"columns named {_listed(known)}, but line {head_line} of {file} has \"{header}\"{hint}"
+                f'columns named {_listed(known)}, but line {head_line} of {file} has "{header}"{hint}'
             )
         if name in place:
             raise DataFileFault(f'each column once, but line {head_line} of {file} has "{name}" twice')
@@ -102,8 +105,7 @@ def read_table(
             scales[name] = units.parse_column(unit, known[name])
         except units.UnitError as error:
             raise DataFileFault(
-                f"{error.expected} in brackets behind the name, but line {head_line} of {file} has "
-                f'"{header}"'
+                f'{error.expected} in brackets behind the name, but line {head_line} of {file} has "{header}"'
             ) from None
         place[name] = index
     missing = [name for name in required if name not in place]

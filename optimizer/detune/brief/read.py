@@ -56,7 +56,8 @@ FIELD = {
 RIGID = Floor(kind="rigid")
 REQUIRED = ("title", "body", "station", "floor", "condition", "forcing", "allowable", "catalog", "choice")
 TEXTS = ("title", "notes")
-TABLES = (*TEXTS, *SINGLE, *REPEATED, *BY_KIND)
+YES_NO = ("gravity_stiffness",)
+TABLES = (*TEXTS, *YES_NO, *SINGLE, *REPEATED, *BY_KIND)
 EXPECTED = {
     "string_type": "text in quotes",
     "string_too_short": "text that is not empty",
@@ -107,6 +108,12 @@ def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -
                 read[name] = data[name].strip()
             else:
                 findings.append(Finding((name,), describe(data[name]), "text in quotes"))
+    for name in YES_NO:
+        if name in data:
+            if isinstance(data[name], bool):
+                read[name] = data[name]
+            else:
+                findings.append(Finding((name,), describe(data[name]), "true or false"))
     for name, single in SINGLE.items():
         if name in data:
             statement = _read_one(single, data[name], (name,), findings, study.parent)

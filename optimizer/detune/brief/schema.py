@@ -2,13 +2,14 @@
 
 from typing import Any
 
-from detune.brief.read import BY_KIND, REPEATED, REQUIRED, SINGLE, TEXTS
+from detune.brief.read import BY_KIND, REPEATED, REQUIRED, SINGLE, TEXTS, YES_NO
 
 
 def study_schema() -> dict[str, Any]:
     """Return the JSON Schema (2020-12) of a study file."""
     definitions: dict[str, Any] = {}
     properties: dict[str, Any] = {name: {"type": "string"} for name in TEXTS}
+    properties |= {name: {"type": "boolean"} for name in YES_NO}
 
     def reference(cls: Any) -> dict[str, str]:
         schema = cls.model_json_schema(ref_template="#/$defs/{model}")

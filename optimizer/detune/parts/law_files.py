@@ -211,7 +211,9 @@ def _blocks(table: Table) -> tuple[list[slice], list[Fault]]:
     warmth, frequency = table.numbers("temperature"), table.numbers("frequency")
     if table.has("temperature"):
         empty = rows_of(~table.given("temperature"))
-        faults += [table.fault(row, "temperature", "a temperature in every row") for row in empty]
+        faults = [table.fault(row, "temperature", "a temperature in every row") for row in empty]
+        if faults:
+            return [], faults
         starts = [0, *(np.flatnonzero(np.diff(warmth) != 0.0) + 1).tolist()]
         faults += _not_rising(
             table, "temperature", starts[1:], "rows of one temperature stand together, rising"

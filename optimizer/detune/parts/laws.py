@@ -8,6 +8,7 @@ mount's own axis. Frequencies f in Hz, w = 2 pi f, time convention exp(+j w t).
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import TYPE_CHECKING, TypeAlias
 
 if TYPE_CHECKING:
@@ -121,6 +122,7 @@ def table_physics(table: LawTable, temperature: float) -> relaxation.StiffnessTa
     return relaxation.stiffness_table(table.frequency, table.stiffness_ratio, table.loss_factor, known)
 
 
+@lru_cache(maxsize=4096)
 def tangent_stiffness(curve: LoadCurve, load: float) -> float:
     """Tangent stiffness of the curve under a load, N/m. Raises OutsideTable (a ValueError) beyond its ends."""
     from detune.physics import load_curve
@@ -128,6 +130,7 @@ def tangent_stiffness(curve: LoadCurve, load: float) -> float:
     return float(load_curve.tangent_at_load(curve_physics(curve), load))
 
 
+@lru_cache(maxsize=4096)
 def deflection_under(curve: LoadCurve, load: float) -> float:
     """Deflection under a load, m. Raises OutsideTable (a ValueError) beyond the ends of the curve."""
     from detune.physics import load_curve

@@ -10,7 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from detune.physics.array_types import ComplexArray, FloatArray, IntArray
+from detune.physics.array_types import BoolArray, ComplexArray, FloatArray, IntArray
 
 # A neighbour below 0.4 of the peak (2.3 half widths away) is too far for a parabola.
 COARSE = 1.0 / 0.4**2
@@ -18,6 +18,9 @@ COARSE = 1.0 / 0.4**2
 # of the interval has a neighbour on one side only and needs a closer one.
 COARSE_GAP = 0.8
 COARSE_GAP_AT_EDGE = 0.5
+COARSE_GAP_BETWEEN = 0.3
+# Most that a response rises beside a pole on the slope of another, over the sample at that pole.
+SHOULDER_RISE = 3.0
 # Most that a sampled peak is taken to fall short of the true one while a neighbour is that far down.
 COARSE_RISE = 5.0
 # The same while its neighbours are only far away, per gap in distances to the nearest pole.
@@ -44,6 +47,21 @@ class Peaks:
 
 
 @dataclass(frozen=True)
+class _Samples:
+    """What has been evaluated: see ``local_peaks`` for the shapes."""
+
+    omega: FloatArray
+    values: FloatArray
+    best: FloatArray
+    poles: ComplexArray
+
+    def nearest_pole(self, place: FloatArray) -> FloatArray:
+        """Distance of places (D, P) to the nearest pole of their design, infinite without poles."""
+        distance = np.abs(place[..., None] - self.poles[:, None, :])
+        return np.asarray(distance.min(axis=2, initial=np.inf))
+
+
+@dataclass(frozen=True)
 class _Bracket:
     """A peak sample (value 1, at 0) among its neighbours, flat over peaks.
 
@@ -59,20 +77,21 @@ class _Bracket:
 def local_peaks(
     omega: FloatArray, values: FloatArray, best: FloatArray, poles: ComplexArray, tolerance: float
 ) -> Peaks:
-    """Every sampled local peak that could exceed the best sample of its row.
+    """Every sampled local peak, and every gap, that could exceed the best sample of its row.
 
     Shapes: omega (D, F) ascending, unused entries infinite and last; values (R, D, F), unused -inf; best (R, D);
     poles (D, m) as natural frequency + j half width in rad/s.
     """
+    samples = _Samples(omega, values, best, poles)
     peak = values > 0.0
     peak[..., 1:] &= values[..., 1:] > values[..., :-1]
     peak[..., :-1] &= values[..., :-1] >= values[..., 1:]
     peak &= values * COARSE_RISE >= best[..., None]
     row, design, i = np.nonzero(peak)
     sample, centre = values[row, design, i], omega[design, i]
-    bracket = _neighbourhood(omega, values, poles, row, design, i)
+    bracket = _neighbourhood(samples, row, design, i)
     before, after = np.isfinite(bracket.nodes[:, 1]), np.isfinite(bracket.nodes[:, 3])
-    found = [_wide_gaps(omega, values, best, poles)]
+    found = [_wide_gaps(samples, peak), _shoulders(samples, peak)]
     for chosen, judge in ((before & after, _inside), (before ^ after, _edge)):
         part = _Bracket(bracket.nodes[chosen], bracket.ordinates[chosen], bracket.pole[chosen])
         rise, places, reach = judge(part, tolerance)
@@ -81,14 +100,8 @@ def local_peaks(
     return Peaks(*(np.concatenate(column) for column in zip(*found, strict=True)))
 
 
-def _neighbourhood(
-    omega: FloatArray,
-    values: FloatArray,
-    poles: ComplexArray,
-    row: IntArray,
-    design: IntArray,
-    i: IntArray,
-) -> _Bracket:
+def _neighbourhood(samples: _Samples, row: IntArray, design: IntArray, i: IntArray) -> _Bracket:
+    omega, values = samples.omega, samples.values
     steps = np.arange(-2, 3)
     index = i[:, None] + steps
     exists = (index >= 0) & (index < omega.shape[1])
@@ -101,23 +114,43 @@ def _neighbourhood(
     ordinates = (sample / np.maximum(value, 1e-8 * sample)) ** 2
     distance = np.where(exists, place, 0.0) - centre
     nodes = np.where(exists, distance, [-np.inf, -np.inf, 0.0, np.inf, np.inf])
-    return _Bracket(nodes, ordinates, np.abs(centre - poles[design]).min(axis=1, initial=np.inf))
+    return _Bracket(nodes, ordinates, np.abs(centre - samples.poles[design]).min(axis=1, initial=np.inf))
 
 
-def _wide_gaps(
-    omega: FloatArray, values: FloatArray, best: FloatArray, poles: ComplexArray
-) -> tuple[FloatArray, ...]:
-    """Gaps between two high samples that are too wide to show a hump between them, as peaks to sample half way."""
+def _wide_gaps(samples: _Samples, peak: BoolArray) -> tuple[FloatArray, ...]:
+    """Gaps between two high samples, no peak among them, wide enough to hide a hump: sampled half way."""
+    omega, values, best = samples.omega, samples.values, samples.best
     used = np.isfinite(omega[:, 1:])
     low, high = omega[:, :-1], np.where(used, omega[:, 1:], 0.0)
     middle, gap = np.where(used, 0.5 * (low + high), 0.0), np.where(used, high - low, 0.0)
-    pole = np.abs(middle[..., None] - poles[:, None, :]).min(axis=2, initial=np.inf)
-    width = gap / pole
-    rise = np.where(width > COARSE_GAP, 1.0 + HIDDEN_RISE * width, 0.0)
+    width = gap / samples.nearest_pole(middle)
+    rise = np.where(width > COARSE_GAP_BETWEEN, 1.0 + HIDDEN_RISE * width * np.minimum(width, 1.0), 0.5)
     product = np.maximum(values[..., 1:], 0.0) * np.maximum(values[..., :-1], 0.0)
-    row, design, i = np.nonzero(product * (2.0 * rise - 1.0) ** 2 * (rise > 0.0) > best[..., None] ** 2)
+    wanted = product * (2.0 * rise - 1.0) ** 2 > best[..., None] ** 2
+    row, design, i = np.nonzero(wanted & ~peak[..., 1:] & ~peak[..., :-1])
     sample = np.sqrt(product[row, design, i])
     return row, design, sample, rise[design, i], middle[design, i], 0.1 * gap[design, i]
+
+
+def _shoulders(samples: _Samples, peak: BoolArray) -> tuple[FloatArray, ...]:
+    """Samples at a pole on the slope of another: two close poles can make a hump on the falling side."""
+    omega, values = samples.omega, samples.values
+    used = np.isfinite(omega)
+    place = np.where(used, omega, 0.0)
+    pole = samples.nearest_pole(place)
+    at_pole = used & (np.abs(place[..., None] - samples.poles.real[:, None, :]).min(axis=2, initial=np.inf) < 0.2 * pole)
+    gap = np.where(used[:, 1:], np.diff(place, axis=1), 0.0)
+    found = []
+    for side, falling in ((1, values[..., :-1] > values[..., 1:]), (-1, values[..., 1:] > values[..., :-1])):
+        here = slice(None, -1) if side > 0 else slice(1, None)
+        candidate = at_pole[:, here] & (gap > COARSE_GAP * pole[:, here])
+        high = SHOULDER_RISE * values[..., here] > samples.best[..., None]
+        row, design, i = np.nonzero(falling & candidate & high & ~peak[..., here])
+        i = i + (side < 0)
+        step = 0.9 * COARSE_GAP * pole[design, i]
+        rise = np.full(row.size, 0.5 * (1.0 + SHOULDER_RISE))
+        found.append((row, design, values[row, design, i], rise, omega[design, i] + side * step, 0.2 * step))
+    return tuple(np.concatenate(column) for column in zip(*found, strict=True))
 
 
 def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatArray], FloatArray]:
@@ -163,9 +196,13 @@ def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatAr
     bend = np.where(curved, bend, 1.0)
     vertex = np.where(curved, -slope / (2.0 * bend), 0.5 * near)
     lowest = np.clip(1.0 - slope**2 / (4.0 * bend), SMALLEST, 1.0)
+    # The far sample may say little of the bend at the edge; that of a pole at this distance is the sharpest.
+    sharp = near / bracket.pole
+    drop = np.maximum(sharp**2 - (y_near - 1.0), 0.0) / np.maximum(sharp, 1e-12)
+    doubt = DOUBT * (y_near - 1.0) ** 2 + drop**2 / 8.0
     # A curve that rises from the edge without a parabola's bend is sampled half way before it is believed.
     rise = np.where(curved, 1.0 / np.sqrt(lowest), np.where((slope < 0.0) | alone, 1.5, 1.0))
-    rise += DOUBT * (y_near - 1.0) ** 2
+    rise += doubt
     reach = np.where(curved, np.sqrt(0.5 * tolerance * lowest / bend), 0.1 * near)
     coarse = (y_near > COARSE) | (near > COARSE_GAP_AT_EDGE * bracket.pole)
     step = np.minimum(np.minimum(_foot(near, y_near), 0.9 * COARSE_GAP_AT_EDGE * bracket.pole), 0.4 * near)

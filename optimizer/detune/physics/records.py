@@ -25,12 +25,12 @@ def sample_rate(time: ArrayLike) -> float:
     stamp = checked(time)
     step = np.diff(stamp)
     usual = float(np.median(step))
-    # Printed stamps are rounded to their last decimal, and each step by up to one unit of it.
-    allowed = CLOCK_TOLERANCE * usual + _printed_unit(stamp)
-    if allowed >= 0.5 * usual:
-        raise RecordFault(f"time stamps are too coarse for steps of {usual:g} s; give the sample rate")
+    # Printed stamps are rounded to their last decimal, and each step by up to one unit of it. A unit as large as
+    # the step says nothing of rounding.
+    unit = _printed_unit(stamp)
+    allowed = CLOCK_TOLERANCE * usual + (unit if unit < 0.5 * usual else 0.0)
     off = np.abs(step - usual) > allowed
-    if np.any(off):
+    if usual <= 0.0 or np.any(off):
         row = int(np.argmax(off)) + 2
         raise RecordFault(f"time stamps are not evenly spaced: row {row} at {stamp[row - 1]:g} s")
     return float((stamp.size - 1) / (stamp[-1] - stamp[0]))

@@ -26,12 +26,12 @@ from detune.parts.kinds.mount import Mount
 from detune.physics.static import is_supported
 from detune.problem.candidates import Dropped, find_candidates
 from detune.problem.requirement import Requirement
-from detune.response.assemble import static_stiffness
 from detune.response.condition_rows import condition_rows
 from detune.response.design import Design
 from detune.response.designs import Designs, all_designs, design_count
 from detune.response.evaluate import Rows
 from detune.response.loads import steady_intervals, unit_families
+from detune.response.static_stiffness import static_stiffness
 from detune.response.model import Model, build_model
 
 

@@ -3,7 +3,7 @@
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from detune.brief.brief import Brief
+from detune.brief.brief import Brief, applies
 from detune.brief.choice import Choice, Window
 from detune.brief.finding import Finding, Path
 from detune.brief.statement import describe, unit_direction
@@ -48,10 +48,13 @@ def find_candidates(brief: Brief, catalogs: Mapping[str, Catalog]) -> Candidates
         kept = _named(path, choice, kept, catalogs, dropped, findings)
         if not kept and len(findings) == earlier:
             first = dropped[before]
-            expected = f"a filter that some part passes; the first one left out, {first.mount.part}: {first.reason}"
+            expected = (
+                f"a filter that some part passes; the first one left out, {first.mount.part}: {first.reason}"
+            )
             findings.append(Finding((*path, "where"), f"no part left for group {group}", expected))
         mounts.append(tuple(kept))
-    findings += _lateral_missing(brief, mounts)
+    findings += lateral_missing(brief, mounts)
+    findings += _outside_tables(brief, mounts)
     return Candidates(tuple(mounts), tuple(dropped), tuple(findings))
 
 
@@ -95,7 +98,9 @@ def _from_catalog(
 
 def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> dict[str, float] | None:
     if kind in ("text", "yes-no"):
-        findings.append(Finding(place, f"a window for {place[-1]}", "a list of admitted texts, for example [\"rubber\"]"))
+        findings.append(
+            Finding(place, f"a window for {place[-1]}", 'a list of admitted texts, for example ["rubber"]')
+        )
         return None
     bounds: dict[str, float] = {}
     for end in ("min", "max"):
@@ -137,7 +142,7 @@ def _named(
     return [m for m in kept if m.part in choice.parts]
 
 
-def _lateral_missing(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Finding]:
+def lateral_missing(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Finding]:
     """A part without lateral stiffness can only stand where nothing but its axis matters."""
     vertical_only = all(freedom == "z" for body in brief.bodies for freedom in body.free)
     findings = []
@@ -157,7 +162,46 @@ def _lateral_missing(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Find
                 Finding(
                     ("choice", index),
                     f"no lateral stiffness for {listed}",
-                    "lateral stiffness for every part that may be chosen, or upright stations and vertical motion alone",
+                    "lateral stiffness for every part chosen, or upright stations and vertical motion alone",
                 )
             )
     return findings
+
+
+def _outside_tables(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Finding]:
+    """A measured table says nothing outside its own frequencies and temperatures."""
+    asked = excited_range(brief)
+    findings = []
+    for group, candidates in zip(brief.groups, mounts, strict=True):
+        index = next(i for i, c in enumerate(brief.choices) if c.group == group)
+        for mount in candidates:
+            table = mount.law_table
+            if table is None:
+                continue
+            low, high = table.frequency[0], table.frequency[-1]
+            if asked is not None and (asked[0] < low or asked[1] > high):
+                found = f"{mount.part}: its table covers {low:g} to {high:g} Hz"
+                expected = f"a table over all that excites, {asked[0]:.4g} to {asked[1]:.4g} Hz"
+                findings.append(Finding(("choice", index), found, expected))
+            for number, state in enumerate(brief.states):
+                warm = table.temperature
+                if warm and not warm[0] <= state.temperature <= warm[-1]:
+                    found = f"{state.temperature:g} degC; the table of {mount.part} covers {warm[0]:g} to {warm[-1]:g} degC"
+                    findings.append(
+                        Finding(("state", number, "temperature"), found, "a temperature inside it")
+                    )
+    return findings
+
+
+def excited_range(brief: Brief) -> tuple[float, float] | None:
+    """Return the lowest and highest frequency (Hz) of tones and noise in any condition, None if there is none."""
+    ends: list[float] = []
+    for condition in brief.conditions:
+        for forcing in brief.forcing:
+            if not applies(forcing.conditions, condition.name):
+                continue
+            for tone in forcing.tones(condition.shafts):
+                ends += [tone.order * tone.low, tone.order * tone.high]
+            for noise in forcing.noises():
+                ends += [float(noise.spectrum.frequency[0]), float(noise.spectrum.frequency[-1])]
+    return (min(ends), max(ends)) if ends else None

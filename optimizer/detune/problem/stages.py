@@ -16,7 +16,7 @@ from detune.response.designs import Designs, part_numbers, total_cost
 from detune.response.evaluate import TWO_PI, family_amplitude, response_values
 from detune.response.margin import lower_margin, upper_margin, window_margin
 from detune.response.modes import mode_batch
-from detune.response.views import static_batch
+from detune.response.views_static import static_batch
 
 Floats = NDArray[np.float64]
 SCREEN_SPEEDS = 7

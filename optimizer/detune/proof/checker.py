@@ -21,7 +21,8 @@ from detune.proof.checker_designs import check_search, exact_output, number
 
 FORMAT = "detune proof record 1"
 BATCH = 256
-DEEPEST = 8
+DEEPEST = 4
+MOST_OPEN = 2048
 
 
 @dataclass(frozen=True)
@@ -138,6 +139,8 @@ def check_boxes(data: dict[str, Any], limit: float) -> tuple[list[str], int]:
             failed = ~(bound <= limit)
             if not failed.any():
                 break
+            if failed.sum() > MOST_OPEN:
+                return [f"{int(failed.sum())} boxes could not be confirmed within the limit"], count
             part_low, part_high = halve(part_low[failed], part_high[failed])
         else:
             return [f"{int(failed.sum())} boxes could not be confirmed within the limit"], count

@@ -124,7 +124,7 @@ def solve_exactly(
         rows[column] = [multiply(item, inverse) for item in rows[column]]
         for i in range(n):
             factor = rows[i][column]
-            if i != column and factor != (0, 0):
+            if i != column and any(factor):
                 rows[i] = [
                     (item[0] - part[0], item[1] - part[1])
                     for item, part in (

@@ -67,7 +67,8 @@ def static_faults(design: dict[str, Any]) -> list[str]:
     zero = [[Fraction(0)] * n for _ in range(n)]
     solved = solve_exactly(stiffness, zero, [(Fraction(v), Fraction(0)) for v in design["load"]])
     q = [value[0] for value in solved]
-    faults, seen = [], {}
+    faults: list[str] = []
+    seen: dict[int, int] = {}
     for station, g in enumerate(design["station_group"]):
         group = design["groups"][g]
         index = seen.get(g, 0)
@@ -227,7 +228,7 @@ def response(
             real[i][k] -= omega * omega * mass[i][k]
             imag[i][k] += omega * Fraction(fixed["viscous"][i][k])
     for b, own, u in zip(stations, kappa, base, strict=True):
-        if u == (0, 0):
+        if not any(u):
             continue
         x, y = multiply(own, u)
         for i in size:
@@ -271,7 +272,7 @@ def exact_output(
         y = (y[0] + part[0], y[1] + part[1])
     for a, (own, b) in enumerate(zip(kappa, system["axes"], strict=True)):
         coefficient = pair(output["force"], a)
-        if coefficient != (0, 0):
+        if any(coefficient):
             x, z = dot(b, q)
             force = multiply(own, (x - base[a][0], z - base[a][1]))
             part = multiply(coefficient, force)
@@ -279,7 +280,7 @@ def exact_output(
     scale = float(omega) ** (output["load_power"] + output["output_power"])
     offset = output["offset"]
     shift = complex(offset["re"], offset["im"]) if isinstance(offset, dict) else complex(offset)
-    return abs(complex(float(y[0]), float(y[1])) * scale - shift)
+    return float(abs(complex(float(y[0]), float(y[1])) * scale - shift))
 
 
 def design_faults(design: dict[str, Any]) -> list[str]:
@@ -310,7 +311,7 @@ def pick_design(selection: dict[str, Any], parts: list[int], ballast: int) -> di
 
 
 def check_search(data: dict[str, Any]) -> tuple[list[str], int]:
-    """Faults of a recorded search: its bookkeeping, its designs, and for small problems the enumeration of all cheaper ones."""
+    """Faults of a recorded search: bookkeeping, designs, and for small problems all cheaper designs."""
     faults = []
     settled = sum(data["counts"].values())
     if data["status"] == "complete" and settled != data["design_count"]:
@@ -325,7 +326,7 @@ def check_search(data: dict[str, Any]) -> tuple[list[str], int]:
     for found, chosen in zip(data["designs"], data["chosen"], strict=True):
         label = f"design {found['parts']} with ballast step {found['ballast']}"
         cost = sum((Fraction(group["cost"]) for group in chosen["groups"]), Fraction(chosen["ballast_cost"]))
-        if abs(cost - Fraction(found["cost"])) > Fraction(1, 10**9) * max(abs(cost), 1):
+        if abs(cost - Fraction(found["cost"])) > Fraction(1, 10**9) * max(abs(cost), Fraction(1)):
             faults.append(f"{label}: its parts cost {float(cost)}, not {found['cost']}")
         faults += [f"{label}: {text}" for text in design_faults(chosen)]
         checked += 1
@@ -333,7 +334,7 @@ def check_search(data: dict[str, Any]) -> tuple[list[str], int]:
             data["selection"], found["parts"], found["ballast"]
         ):
             faults.append(f"{label}: its data are not those of the selection")
-    front = [(found["cost"], number(found["value"])) for found in data["designs"]]
+    front = [(number(found["cost"]), number(found["value"])) for found in data["designs"]]
     if any(b[0] <= a[0] or b[1] <= a[1] for a, b in itertools.pairwise(front)):
         faults.append("the designs do not form a front")
     if data["selection"] is not None and data["status"] == "complete" and data["final_test"] == "rows":
@@ -360,10 +361,10 @@ def check_enumeration(data: dict[str, Any]) -> tuple[list[str], int]:
                 cheaper.append((list(parts), ballast))
                 if len(cheaper) > LARGEST_ENUMERATION:
                     return [], 0
-    for parts, ballast in cheaper:
-        design = pick_design(selection, parts, ballast)
+    for chosen, ballast in cheaper:
+        design = pick_design(selection, chosen, ballast)
         if not static_faults(design) and not band_faults(design) and not response_faults(design):
-            return [f"design {parts} with ballast step {ballast} is cheaper and meets every row"], len(
+            return [f"design {chosen} with ballast step {ballast} is cheaper and meets every row"], len(
                 cheaper
             )
     return [], len(cheaper)

@@ -109,8 +109,8 @@ def add_search(
     final_test: "rows" when the rows of the selection decided (a checker may then enumerate), else a name for what
     decided beyond them.
 
-    The whole selection is kept while it has at most 200,000 designs, so that a checker can enumerate it; beyond that its
-    digest, and the data of the chosen parts.
+    The whole selection is kept while it has at most 200,000 designs, so that a checker can enumerate it; beyond
+    that its digest, and the data of the chosen parts.
     """
     small = selection.design_count <= LARGEST_SELECTION
     data = {

@@ -40,8 +40,13 @@ class Archive:
     lock: threading.RLock = field(default_factory=threading.RLock)
 
     def offer(self, designs: Integers, cost: Floats, value: Floats) -> int:
-        """Take in accepted designs (D, G+1) with cost (D,) and value (D,); returns how many were kept."""
+        """Take in accepted designs (D, G+1) with cost (D,) and value (D,); returns how many were kept.
+
+        Raises ValueError for a value that is not a number.
+        """
         kept = 0
+        if bool(np.isnan(value).any()):
+            raise ValueError("the final test returned a value that is not a number")
         with self.lock:
             for row, price, worth in zip(designs.tolist(), cost.tolist(), value.tolist(), strict=True):
                 if price > self.cost_cap:
@@ -73,6 +78,9 @@ class Archive:
             cap = self.cost_cap
             if self.aim == "least_cost" and self.designs:
                 cap = min(cap, self.designs[0].cost)
+            elif self.designs and self.designs[-1].value == np.inf:
+                # Nothing can be better than a value without bound: only cheaper designs are of interest.
+                cap = min(cap, self.designs[-1].cost)
         return cap + COST_ROUNDING * abs(cap) if np.isfinite(cap) else cap
 
     def staircase(self) -> tuple[Floats, Floats]:

@@ -3,6 +3,7 @@
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from detune.report.words import margin_text, number, percent
 from detune.response.assess import assess
@@ -10,6 +11,7 @@ from detune.response.assessment import Assessment
 from detune.response.designs import all_designs, total_cost
 from detune.study.run import Result
 
+Floats = NDArray[np.float64]
 CHEAPER = 3
 # Listing the costs of more designs than this would take longer than the report is worth.
 COUNTABLE = 4_000_000
@@ -26,48 +28,43 @@ class Alternative:
     why: str
 
 
-def alternatives(result: Result) -> tuple[Alternative, ...]:
+@dataclass(frozen=True)
+class Alternatives:
+    """What stands beside the answer; `cheaper` is how many designs cost less, None where they are not counted."""
+
+    cheaper: int | None
+    items: tuple[Alternative, ...]
+
+
+def alternatives(result: Result) -> Alternatives:
     """Return the cheaper choices nearest in cost, the next point of the front, and cheapest ones with more margin."""
-    if result.answer is None:
-        return ()
-    return (
-        *_cheaper(result, result.answer),
-        *_next_on_front(result, result.answer),
-        *_safer(result, result.answer),
-    )
+    answer = result.answer
+    if answer is None:
+        return Alternatives(None, ())
+    others = (*_next_on_front(result, answer), *_safer(result, answer))
+    if result.problem.count > COUNTABLE or result.outcome.stopped != "finished":
+        return Alternatives(None, others)
+    costs = _costs(result)
+    below = np.flatnonzero(costs < answer.cost - 1e-9 * abs(answer.cost))
+    nearest = below[np.argsort(-costs[below], kind="stable")[:CHEAPER]]
+    return Alternatives(len(below), (*(_cheaper(result, answer, int(i)) for i in nearest), *others))
 
 
-def cheaper_count(result: Result) -> int | None:
-    """Return how many designs cost less than the answer, None where there are too many to count."""
-    if result.answer is None or result.problem.count > COUNTABLE:
-        return None
-    return int((_costs(result) < result.answer.cost - 1e-9 * abs(result.answer.cost)).sum())
-
-
-def _costs(result: Result) -> np.ndarray[tuple[int], np.dtype[np.float64]]:
+def _costs(result: Result) -> Floats:
     model = result.problem.model
     starts = range(0, result.problem.count, BLOCK)
     blocks = [total_cost(model, all_designs(model, i, min(i + BLOCK, result.problem.count))) for i in starts]
     return np.concatenate(blocks)
 
 
-def _cheaper(result: Result, answer: Assessment) -> list[Alternative]:
-    if result.problem.count > COUNTABLE or result.outcome.stopped != "finished":
-        return []
-    costs = _costs(result)
-    below = np.flatnonzero(costs < answer.cost - 1e-9 * abs(answer.cost))
-    nearest = below[np.argsort(-costs[below], kind="stable")[:CHEAPER]]
-    found = []
-    for index in nearest:
-        design = result.problem.design(all_designs(result.problem.model, int(index), int(index) + 1), 0)
-        judged = assess(result.study.brief, design)
-        gap = number(answer.cost - judged.cost, 3)
-        found.append(
-            Alternative(
-                f"next cheaper, by {gap}", judged, "meets the brief, but is worse in what comes first"
-            )
-        )
-    return found
+def _cheaper(result: Result, answer: Assessment, index: int) -> Alternative:
+    design = result.problem.design(all_designs(result.problem.model, index, index + 1), 0)
+    judged = assess(result.study.brief, design)
+    why = "meets the brief, but is worse in what comes first"
+    if result.front.trade[0] == "cost":
+        # Only reached where solver and assessor differ: the reader must know.
+        why = "the solver excluded it, the assessor finds that it meets the brief: report this with the study file"
+    return Alternative(f"next cheaper, by {number(answer.cost - judged.cost, 3)}", judged, why)
 
 
 def _next_on_front(result: Result, answer: Assessment) -> list[Alternative]:

@@ -6,7 +6,7 @@ from pathlib import Path
 
 from detune.ground.units import show
 from detune.report import tables, tables_study
-from detune.report.alternatives import alternatives, cheaper_count
+from detune.report.alternatives import alternatives
 from detune.report.figures import Drawn, draw_all
 from detune.report.points_to_check import points_to_check, study_points
 from detune.report.service_loads import service_loads
@@ -142,7 +142,8 @@ def _answer(result: Result) -> Section:
         head = lines[: lines.index("")] if "" in lines else lines
         texts = [" ".join(line.strip() for line in head)]
         points: tuple[str, ...] = study_points(result)
-        shown: tuple[Table, ...] = (_most_excluded(result),)
+        excluded = _most_excluded(result)
+        shown: tuple[Table, ...] = (excluded,) if excluded.rows else ()
         if result.closest is not None:
             texts.append(f"Closest design found. {_described(result.closest)}.")
             points = (*points_to_check(brief, result.closest), *points)
@@ -218,16 +219,15 @@ def _total_load(subject: Assessment) -> str:
 
 def _choices(result: Result) -> list[Section]:
     found = alternatives(result)
-    if not found:
+    if not found.items:
         return []
-    texts = []
-    count = cheaper_count(result)
-    if count is not None and result.answer is not None and result.outcome.stopped == "finished":
-        rest = f"{number(float(count))} designs cost less than the answer"
-        first = "cost" if result.front.trade[0] == "cost" else ""
-        texts.append(f"{rest}; none of them meets the brief." if first else f"{rest}.")
-    table = tables_study.alternatives_table(result, found)
-    return [Section("choices", table.title, tuple(texts), tables=(table,))]
+    texts: tuple[str, ...] = ()
+    if found.cheaper is not None:
+        # Where cost comes first, cheaper designs that met the brief would be the answer.
+        none = "; none of them meets the brief" if result.front.trade[0] == "cost" else ""
+        texts = (f"{found.cheaper} designs cost less than the answer{none}.",)
+    table = tables_study.alternatives_table(result, found.items)
+    return [Section("choices", table.title, texts, tables=(table,))]
 
 
 def _why(result: Result, plots: dict[str, Drawn]) -> list[Section]:

@@ -132,7 +132,8 @@ def none_lines(result: Result) -> list[str]:
         )
     lines = _wrapped(head)
     ranked = sorted((rule for rule in record.rules if rule.excluded), key=lambda rule: -rule.excluded)
-    lines += ["", "Excluded most, each design counted at the first rule it failed"]
+    if ranked:
+        lines += ["", "Excluded most, each design counted at the first rule it failed"]
     lines += [f"  {rule.excluded:>9}  {rule.rule}, {rule.stage}" for rule in ranked[:SHOWN_RULES]]
     if result.closest is not None:
         lines += ["", "Closest design found", *_design(result.study.brief, result.closest)]

@@ -171,7 +171,7 @@ def service_table(loads: tuple[ServiceLoad, ...]) -> Table:
     rows: dict[tuple[str, str, str], dict[str, str]] = {}
     for load in loads:
         where = frequency_text(load.frequency, load.is_shaft)
-        text = show(load.value, load.unit) + (f" at {where}" if where else "")
+        text = show(load.value, load.unit) + (f" at {where}" if where else "") if load.value else "none"
         rows.setdefault((load.condition, load.what, load.place), {})[load.direction] = text
     note = "Peak values over the whole range of the condition; sources with speeds of their own are added linearly."
     return Table(

@@ -1,15 +1,17 @@
 """Matrices of a batch of designs, and the stiffness of each part in them."""
 
-from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detune.response.designs import Designs
-from detune.response.model import Group, Model, StationRows
+from detune.response.gravity import gravity_stiffness
+from detune.response.model import Model, StationRows
 from detune.response.part_laws import amplitude_part, frequency_part
-from detune.response.working_point import WorkingPoint, working_point
+from detune.response.static_stiffness import group_sum
+from detune.response.views_static import static_batch
+from detune.response.working_point import WorkingPoint
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -94,7 +96,8 @@ class PartBatch:
 class Dynamic:
     """Matrices of D designs, each (D, n, n): mass, dynamic stiffness, hysteretic and viscous part.
 
-    The dynamic stiffness is D(w) = K + j H + j w C - w^2 M, and what frequency laws of `parts` add.
+    The dynamic stiffness is D(w) = K + j H + j w C - w^2 M, and what frequency laws of `parts` add. K contains
+    gravity's geometric stiffness, which `geometric` holds alone.
     """
 
     mass: Floats
@@ -102,11 +105,13 @@ class Dynamic:
     hysteretic: Floats
     viscous: Floats
     parts: PartBatch
+    geometric: Floats | float
 
     def take(self, index: NDArray[np.generic]) -> "Dynamic":
         """Return the matrices of the designs at these indices, or where this mask holds."""
         matrices = (self.mass, self.stiffness, self.hysteretic, self.viscous)
-        return Dynamic(*(matrix[index] for matrix in matrices), parts=self.parts.take(index))
+        geometric = self.geometric[index] if isinstance(self.geometric, np.ndarray) else self.geometric
+        return Dynamic(*(matrix[index] for matrix in matrices), parts=self.parts.take(index), geometric=geometric)
 
     def at(self, omega: Floats) -> Complexes:
         """Return D(w) (D, F, n, n) at omega (D, F) in rad/s."""
@@ -122,32 +127,32 @@ class Dynamic:
 
 def dynamic_matrices(model: Model, designs: Designs, amplitude: Floats | None = None) -> Dynamic:
     """Return the dynamic matrices of a batch, at the parts' dynamic stiffness at their load (and amplitude)."""
-    parts = PartBatch(model, designs, working_point(model, designs), amplitude)
+    static = static_batch(model, designs)
+    parts = PartBatch(model, designs, static.working, amplitude)
+    geometric = gravity_stiffness(model, designs, static) if model.with_gravity_stiffness else 0.0
     if parts.by_station:
-        return _by_station(model, designs, parts)
+        return _by_station(model, designs, parts, geometric)
     return Dynamic(
         mass=model.mass[designs.step],
-        stiffness=model.fixed_dynamic + _sum(model, designs, lambda group: group.arrays.stiffness_dynamic),
+        stiffness=model.fixed_dynamic
+        + geometric
+        + group_sum(model, designs, lambda group: group.arrays.stiffness_dynamic),
         hysteretic=model.fixed_hysteretic
-        + _sum(model, designs, lambda group: group.arrays.stiffness_dynamic * group.arrays.loss_factor),
-        viscous=model.fixed_viscous + _sum(model, designs, lambda group: group.arrays.viscous),
+        + group_sum(model, designs, lambda group: group.arrays.stiffness_dynamic * group.arrays.loss_factor),
+        viscous=model.fixed_viscous + group_sum(model, designs, lambda group: group.arrays.viscous),
         parts=parts,
+        geometric=geometric,
     )
 
 
 def at_amplitude(dynamic: Dynamic, amplitude: Floats) -> Dynamic:
     """Return the same designs with their parts at other amplitudes (S, D) in m."""
     parts = replace(dynamic.parts, amplitude=amplitude)
-    return _by_station(parts.model, parts.designs, parts)
+    return _by_station(parts.model, parts.designs, parts, dynamic.geometric)
 
 
-def static_stiffness(model: Model, designs: Designs) -> Floats:
-    """Return the static stiffness (D, n, n) of a batch of straight springs."""
-    return model.fixed_static + _sum(model, designs, lambda group: group.arrays.stiffness_static)
-
-
-def _by_station(model: Model, designs: Designs, parts: PartBatch) -> Dynamic:
-    stiffness = np.repeat(model.fixed_dynamic[None], designs.count, axis=0)
+def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Floats | float) -> Dynamic:
+    stiffness = np.repeat(model.fixed_dynamic[None], designs.count, axis=0) + np.nan_to_num(geometric)
     hysteretic = np.repeat(model.fixed_hysteretic[None], designs.count, axis=0)
     viscous = np.repeat(model.fixed_viscous[None], designs.count, axis=0)
     for number, station in enumerate(model.stations):
@@ -157,12 +162,4 @@ def _by_station(model: Model, designs: Designs, parts: PartBatch) -> Dynamic:
         for matrix, values in ((stiffness, k), (hysteretic, k * eta), (viscous, c)):
             scaled = station.parallel * station.factor * values
             matrix += np.einsum("da,ai,aj->dij", scaled, station.rows, station.rows, optimize=True)
-    return Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts)
-
-
-def _sum(model: Model, designs: Designs, values: Callable[[Group], Floats]) -> Floats:
-    n = model.frame.count
-    total = np.zeros((designs.count, n * n))
-    for index, group in enumerate(model.groups):
-        total += values(group)[designs.part[:, index]] @ group.spread.reshape(3, n * n)
-    return total.reshape(designs.count, n, n)
+    return Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric)

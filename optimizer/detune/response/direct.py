@@ -23,6 +23,7 @@ from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount
 from detune.physics.orientation import axes_from_direction
 from detune.physics.rigid_body import box_inertia, skew
+from detune.physics.static import solve_static
 from detune.response.design import Design
 from detune.response.direct_laws import DirectRest, follows_curve, part_stiffness, rest_on_laws
 from detune.response.part_laws import ROOM_TEMPERATURE
@@ -187,6 +188,8 @@ class DirectMachine:
             local = self.share(station) * self.part(station, omega)
             turned = np.einsum("ia,...a,ja->...ij", axes, local, axes)
             total += rows.T @ turned @ rows
+        if omega is not None:
+            total += self.dynamic_gravity
         for connection in self.brief.connections:
             position = np.array(connection.position)
             on = body_of(self.brief, connection.on)
@@ -262,6 +265,72 @@ class DirectMachine:
             load += self.place(node, np.array(steady.position)).T @ np.array(steady.force)
             load += self.turn(node).T @ np.array(steady.moment)
         return load
+
+    def gravity_stiffness(self) -> Floats:
+        """Geometric stiffness (N, N) of all static forces on each body: sum (F.r) I - (r F^T + F r^T)/2 on its turns.
+
+        Source: physics.gravity; written out here once more.
+        """
+        total = np.zeros((self.size, self.size))
+        for body in self.brief.bodies:
+            matrix = np.zeros((3, 3))
+            for arm, force in self._forces_on(body.name):
+                matrix += (arm @ force) * np.eye(3) - 0.5 * (np.outer(arm, force) + np.outer(force, arm))
+            total += self.turn(body.name).T @ matrix @ self.turn(body.name)
+        return total
+
+    def _forces_on(self, body: str) -> list[tuple[Floats, Floats]]:
+        """Arm from the body's centre and force of everything static that acts on a body, its weight included."""
+        down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
+        centre = self.centres[body]
+        own = next(b for b in self.brief.bodies if b.name == body)
+        found = [(np.zeros(3), mass_properties(own).mass * down)]
+        ballast = self.brief.ballast
+        if ballast is not None and body_of(self.brief, ballast.on) == body:
+            found.append((np.array(ballast.position) - centre, self.design.ballast * down))
+        for steady in self.brief.steady_loads:
+            if body_of(self.brief, steady.on) == body:
+                found.append((np.array(steady.position) - centre, np.array(steady.force)))
+        for station in self.brief.stations:
+            axes = self.axes(station)
+            local = axes.T @ self.across(station) @ self.static_q
+            local[2] -= self.packing(station)
+            pushed = -self.share(station) * self.part(station, None).real * local
+            if self.rest is not None:
+                pushed[2] = self.share(station) * self.rest.force[self.brief.stations.index(station)]
+            found += self._ends(body, station.on, station.to, np.array(station.position), axes @ pushed)
+        for c in self.brief.connections:
+            position = np.array(c.position)
+            rows = self.place(body_of(self.brief, c.on), position) - self.place(c.to, position)
+            pushed = -connection_stiffness(c, None).real * (rows @ self.static_q)
+            found += self._ends(body, c.on, c.to, position, pushed)
+        return found
+
+    def _ends(self, body: str, on: str | None, to: str, place: Floats, force: Floats) -> list[tuple[Floats, Floats]]:
+        ends = []
+        if body_of(self.brief, on) == body:
+            ends.append((place - self.centres[body], force))
+        if to == body:
+            ends.append((place - self.centres[body], -force))
+        return ends
+
+    @cached_property
+    def static_q(self) -> Floats:
+        """Static displacements (N,), zero where a freedom cannot move. nan where the machine finds no rest."""
+        q = np.zeros(self.size)
+        if self.rest is not None:
+            q[self.free] = self.rest.q
+            return q
+        stiffness = self.stiffness(None).real
+        q[self.free] = solve_static(stiffness[np.ix_(self.free, self.free)], self.dead_load[self.free])
+        return q
+
+    @cached_property
+    def dynamic_gravity(self) -> Floats:
+        """Gravity's geometric stiffness as it stands in the dynamic stiffness (N, N): zero where the brief says so."""
+        if not self.brief.gravity_stiffness:
+            return np.zeros((self.size, self.size))
+        return np.nan_to_num(self.gravity_stiffness())
 
     def tone_load(self, tone: Tone, omega: Floats) -> tuple[Complexes, Complexes]:
         """Load (F, N) of a tone and the floor motion (F, N) it prescribes or would make freely."""

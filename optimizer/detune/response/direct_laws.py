@@ -51,7 +51,11 @@ def part_stiffness(mount: Mount, omega: Floats | None, axial_ratio: float, tempe
     listed = np.nan_to_num(np.array(mount.stiffness_dynamic, dtype=float)) * np.array([1.0, 1.0, axial_ratio])
     viscous = 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
     if mount.law_table is not None:
-        ratio = table_stiffness(table_physics(mount.law_table, temperature), omega, temperature)
+        table = table_physics(mount.law_table, temperature)
+        # Excitation outside the table is refused at the door; a search for modes takes the end value there.
+        low, high = 2.0 * np.pi * table.frequency[0], 2.0 * np.pi * table.frequency[-1]
+        inside = np.minimum(np.maximum(omega, low * (1.0 + 1e-12)), high * (1.0 - 1e-12))
+        ratio = table_stiffness(table, inside, temperature)
         return listed * ratio[:, None] + viscous
     constant = listed * (1.0 + 1j * np.nan_to_num(np.array(mount.loss_factor, dtype=float)))
     if mount.relaxation is not None:

@@ -4,6 +4,7 @@ In time a loss factor stands as the viscous damping of each mode's own loss fact
 """
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,7 +14,7 @@ from detune.brief.allowable.base import SumOfOrders, combine, record_amplitude, 
 from detune.brief.brief import body_of
 from detune.brief.forcing import Tone, Transient
 from detune.brief.machine import Station
-from detune.physics.pulses import pulse_step, sampled_pulse
+from detune.physics.pulses import pulse_value
 from detune.physics.simulation import simulate
 from detune.response.direct import FLOOR, DirectMachine
 from detune.response.direct_modes import DirectModes
@@ -24,7 +25,8 @@ Floats = NDArray[np.float64]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
 SAMPLES_PER_CYCLE = 160.0
-STEPS_PER_PULSE = 600.0
+STEPS_PER_PIECE = 400
+SHORTEST = 1e-9
 
 
 @dataclass(frozen=True, eq=False)
@@ -162,12 +164,13 @@ def _sampled(transient: Transient, found: DirectModes) -> list[tuple[float, Floa
     longest = 1.0 / (SAMPLES_PER_CYCLE * float(found.frequency[-1]))
     pieces: list[tuple[float, Floats]] = []
     if transient.pulse is not None:
-        edges = transient.pulse.edge
-        step = pulse_step(transient.pulse, min(longest, float(edges[-1]) / STEPS_PER_PULSE))
-        place = np.rint(edges / step).astype(int)
-        before, after = sampled_pulse(transient.pulse, step, int(place[-1]) + 1)
-        for start, end in zip(place[:-1], place[1:], strict=True):
-            pieces.append((step, np.append(after[start:end], before[end])))
+        for start, end in pairwise(transient.pulse.edge.tolist()):
+            count = max(STEPS_PER_PIECE, int(np.ceil((end - start) / longest)))
+            if end - start > SHORTEST * transient.pulse.edge[-1]:
+                time = np.linspace(start, end, count + 1)
+                # A hair before its end the piece still has its own value.
+                time[-1] -= SHORTEST * (end - start)
+                pieces.append(((end - start) / count, pulse_value(transient.pulse, time)))
     elif transient.record is not None:
         finer = max(1, int(np.ceil(transient.step / (2.0 * longest))))
         time = np.arange((len(transient.record) - 1) * finer + 1) / finer
@@ -177,7 +180,7 @@ def _sampled(transient: Transient, found: DirectModes) -> list[tuple[float, Floa
 
 
 def _integrated(values: Floats, step: float, start: Floats) -> Floats:
-    """Return displacement, velocity and acceleration (3, T) of a motion whose acceleration is straight between samples."""
+    """Return displacement, velocity and acceleration (3, T); the acceleration is straight between samples."""
     from scipy.integrate import cumulative_trapezoid
 
     velocity = start[1] + cumulative_trapezoid(values, dx=step, initial=0.0)

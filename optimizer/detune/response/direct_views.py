@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from detune.brief.brief import body_of
 from detune.brief.forcing import Tone
 from detune.brief.machine import Station
-from detune.physics.static import solve_static
+from detune.response.gravity import NEVER
 from detune.response.direct import FLOOR, DirectMachine, connection_stiffness
 from detune.response.solve import solve_or_resonate
 
@@ -29,17 +29,29 @@ class DirectStatic:
     machine: DirectMachine
     count: int = 1
 
-    @cached_property
+    @property
     def q(self) -> Floats:
         """Displacements (N,), zero where a freedom cannot move."""
+        return self.machine.static_q
+
+    def weight_to_topple(self) -> Floats:
+        """The smallest positive x at which K + x K_g has no stiffness in some direction, by scipy's own solver."""
+        from scipy.linalg import eigh
+
         free = self.machine.free
-        q = np.zeros(len(free))
+        mesh = np.ix_(free, free)
+        stiffness = self.machine.stiffness(None).real[mesh]
         if self.machine.rest is not None:
-            q[free] = self.machine.rest.q
-            return q
-        stiffness = self.machine.stiffness(None).real
-        q[free] = solve_static(stiffness[np.ix_(free, free)], self.machine.dead_load[free])
-        return q
+            for number, station in enumerate(self.machine.brief.stations):
+                row = (self.machine.axes(station).T @ self.machine.across(station))[2, free]
+                listed = self.machine.part(station, None)[2].real
+                more = self.machine.share(station) * (self.machine.rest.tangent[number] - listed)
+                stiffness = stiffness + more * np.outer(row, row)
+        geometric = self.machine.gravity_stiffness()[mesh]
+        if not np.all(np.isfinite(stiffness)) or not np.all(np.isfinite(geometric)):
+            return np.array([np.nan])
+        largest = float(eigh(-geometric, stiffness, eigvals_only=True)[-1])
+        return np.array([1.0 / largest if largest > NEVER else np.inf])
 
     def motion(self, point: str) -> Floats:
         stated = next(p for p in self.machine.brief.points if p.name == point)

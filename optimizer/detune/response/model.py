@@ -81,6 +81,8 @@ class StationRows:
     """
 
     name: str
+    on: str
+    to: str
     group: int
     parallel: int
     bought: int
@@ -97,6 +99,9 @@ class ConnectionRows:
     """One given connection: rows (3, n) along global axes, its stiffness and damping, each (3,)."""
 
     name: str
+    on: str
+    to: str
+    position: Floats
     rows: Floats
     stiffness: Floats
     stiffness_static: Floats
@@ -114,6 +119,15 @@ class Group:
     arrays: MountArrays
     spread: Floats
     laws: GroupLaws | None = None
+
+
+@dataclass(frozen=True)
+class DeadLoad:
+    """A static force on a body: its arm (3,) from the body's reference point and force (B, 3) at each ballast step."""
+
+    body: str
+    arm: Floats
+    force: Floats
 
 
 @dataclass(frozen=True)
@@ -140,6 +154,8 @@ class Model:
     ballast_mass: Floats
     ballast_cost: Floats
     creep: float
+    dead_loads: tuple[DeadLoad, ...]
+    with_gravity_stiffness: bool
     assumed: tuple[str, ...]
 
     @property
@@ -211,6 +227,8 @@ def build_model(
         ballast_mass=ballast_mass,
         ballast_cost=ballast_cost,
         creep=0.0 if state is None else state.creep,
+        dead_loads=_dead_loads(brief, frame, properties),
+        with_gravity_stiffness=brief.gravity_stiffness,
         assumed=tuple(notes),
     )
 
@@ -234,6 +252,8 @@ def _station(brief: Brief, frame: Frame, station: Station, state: State | None) 
     )
     return StationRows(
         name=station.name,
+        on=body_of(brief, station.on),
+        to=station.to,
         group=brief.groups.index(station.group),
         parallel=0 if state is not None and station.name in state.lost else station.parallel,
         bought=station.parallel,
@@ -262,6 +282,9 @@ def _connection(brief: Brief, frame: Frame, connection: Connection) -> Connectio
     static = stiffness if connection.stiffness_static is None else np.array(connection.stiffness_static)
     return ConnectionRows(
         name=connection.name,
+        on=body_of(brief, connection.on),
+        to=connection.to,
+        position=position,
         rows=rows,
         stiffness=stiffness,
         stiffness_static=static,
@@ -315,6 +338,24 @@ def _without_gaps(arrays: MountArrays) -> MountArrays:
     return replace(arrays, **{name: np.nan_to_num(getattr(arrays, name)) for name in names})
 
 
+def _dead_loads(brief: Brief, frame: Frame, properties: dict[str, MassProperties]) -> tuple[DeadLoad, ...]:
+    steps = np.array([0.0] if brief.ballast is None else brief.ballast.steps)
+    down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
+    loads = [
+        DeadLoad(name, p.centre - frame.references[name], np.repeat(p.mass * down[None], len(steps), axis=0))
+        for name, p in properties.items()
+    ]
+    if brief.ballast is not None:
+        body = body_of(brief, brief.ballast.on)
+        arm = np.array(brief.ballast.position) - frame.references[body]
+        loads.append(DeadLoad(body, arm, steps[:, None] * down))
+    for steady in brief.steady_loads:
+        body = body_of(brief, steady.on)
+        arm = np.array(steady.position) - frame.references[body]
+        loads.append(DeadLoad(body, arm, np.repeat(np.array(steady.force)[None], len(steps), axis=0)))
+    return tuple(loads)
+
+
 def _spread(stations: tuple[StationRows, ...], group: int, n: int) -> Floats:
     """Return T (3, n, n): what one unit of stiffness along each local axis adds, over a group's stations."""
     spread = np.zeros((3, n, n))
@@ -322,3 +363,8 @@ def _spread(stations: tuple[StationRows, ...], group: int, n: int) -> Floats:
         if station.group == group:
             spread += station.parallel * station.factor * station.rows[:, :, None] * station.rows[:, None, :]
     return spread
+
+
+def find_station(model: Model, name: str) -> StationRows:
+    """Return the station of this name."""
+    return next(station for station in model.stations if station.name == name)

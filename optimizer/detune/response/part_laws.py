@@ -14,7 +14,8 @@ Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 Integers = NDArray[np.intp]
 ROOM_TEMPERATURE = 20.0
-AIR_SPRING_RANGE = np.geomspace(0.02, 5.0, 60)
+TWO_PI = 2.0 * np.pi
+AIR_SPRING_RANGE = np.geomspace(0.02, 5.0, 400)
 
 
 @dataclass(frozen=True, eq=False)
@@ -96,10 +97,19 @@ def frequency_part(laws: GroupLaws, arrays: MountArrays, part: Integers, stiffne
         if table is None:
             continue
         chosen = part == index
-        ratio_there = table_stiffness(table, omega[chosen], laws.temperature)
+        ratio_there = table_stiffness(table, within_table(table, omega[chosen]), laws.temperature)
         constant = 1.0 + 1j * arrays.loss_factor[index]
         added[chosen] = stiffness[chosen][:, None, :] * (ratio_there[:, :, None] - constant)
     return added
+
+
+def within_table(table: StiffnessTable, omega: Floats) -> Floats:
+    """Return omega held within the table's frequencies.
+
+    Excitation outside a table is refused when the problem is built; only a search for natural frequencies
+    goes beyond, and takes the end value there.
+    """
+    return np.clip(omega, TWO_PI * table.frequency[0] * (1.0 + 1e-12), TWO_PI * table.frequency[-1] * (1.0 - 1e-12))
 
 
 def amplitude_part(laws: GroupLaws, part: Integers, amplitude: Floats) -> tuple[Floats, Floats]:

@@ -29,9 +29,11 @@ Complexes = NDArray[np.complex128]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
 # Samples per cycle of the fastest mode: the parabola through three samples then errs by about 1e-5.
-PER_CYCLE = 40.0
+PER_CYCLE = 64.0
 # Fewest steps on a curved piece of a pulse, whose samples are raised so that its mean is kept.
 FEWEST_STEPS = 24
+# Share of a pulse below which a piece of it is none (a trapezoid whose sides meet).
+SHORTEST = 1e-9
 # Cycles of the slowest mode after the load has ended; longer where close modes beat against each other.
 CYCLES_AFTER = 10.0
 MOST_CYCLES_AFTER = 60.0
@@ -219,7 +221,9 @@ def stretches(
     longest = 1.0 / (PER_CYCLE * float(frequency[-1]))
     found: list[tuple[float, Floats]] = []
     if transient.pulse is not None:
-        found += [_piece(transient.pulse, index, longest) for index in range(transient.pulse.constant.size)]
+        length = np.diff(transient.pulse.edge)
+        lasting = np.flatnonzero(length > SHORTEST * transient.pulse.edge[-1])
+        found += [_piece(transient.pulse, int(index), longest) for index in lasting]
     elif transient.record is not None:
         # A record that is straight between its samples may be sampled more finely without changing it.
         finer = max(1, int(np.ceil(transient.step / longest)))

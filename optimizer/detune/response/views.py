@@ -6,72 +6,14 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.response.assemble import Dynamic, static_stiffness
+from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
 from detune.response.loads import Load
-from detune.response.model import Model, StationRows
+from detune.response.model import Model, find_station
 from detune.response.solve import solve_or_resonate
-from detune.response.working_point import WorkingPoint, working_point
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
-AXIAL = np.array([0.0, 0.0, 1.0])
-
-
-@dataclass(frozen=True)
-class StaticBatch:
-    """Static equilibrium of D designs: `q` (D, n)."""
-
-    model: Model
-    designs: Designs
-    q: Floats
-    working: WorkingPoint | None = None
-
-    @property
-    def count(self) -> int:
-        return self.designs.count
-
-    def motion(self, point: str) -> Floats:
-        return (1.0 + self.model.creep) * (self.q @ self.model.points[point].T)
-
-    def rotation(self, body: str) -> Floats:
-        return (1.0 + self.model.creep) * (self.q @ self.model.frame.rotation_rows(body).T)
-
-    def station_deflection(self, station: str) -> Floats:
-        return (1.0 + self.model.creep) * self._elastic(find_station(self.model, station))
-
-    def _elastic(self, station: StationRows) -> Floats:
-        lifted: Floats = self.q @ station.rows.T - station.packing * AXIAL
-        return lifted
-
-    def station_load(self, station: str) -> Floats:
-        found = find_station(self.model, station)
-        stiffness = self.model.groups[found.group].arrays.stiffness_static[self.designs.part[:, found.group]]
-        load: Floats = found.factor * stiffness * self._elastic(found)
-        if self.working is not None:
-            load[:, 2] = -self.working.force[self.model.stations.index(found)]
-        return load
-
-    def part_value(self, station: str, column: str) -> Floats:
-        group = find_station(self.model, station).group
-        values = getattr(self.model.groups[group].arrays, column)
-        return np.asarray(values, dtype=float)[self.designs.part[:, group]]
-
-
-def static_batch(model: Model, designs: Designs) -> StaticBatch:
-    """Return the static equilibrium of a batch under gravity and the steady loads."""
-    working = working_point(model, designs)
-    if working is not None:
-        return StaticBatch(model, designs, working.q, working)
-    stiffness = static_stiffness(model, designs)
-    load = model.weight[designs.step]
-    for station in model.stations:
-        if station.packing != 0.0 and station.parallel > 0:
-            part = model.groups[station.group].arrays.stiffness_static[designs.part[:, station.group], 2]
-            lift = station.parallel * station.factor * station.packing * part
-            load = load + lift[:, None] * station.rows[2]
-    q = np.linalg.solve(stiffness, load[..., None])[..., 0]
-    return StaticBatch(model, designs, q)
 
 
 @dataclass(frozen=True)
@@ -172,8 +114,3 @@ class ToneBatch:
         own = self.model.floor_stiffness + 1j * self.omega * self.model.floor_damping
         vertical = own * self.q[..., -1]
         return level + vertical[..., None] * np.array([0.0, 0.0, 1.0])
-
-
-def find_station(model: Model, name: str) -> StationRows:
-    """Return the station of this name."""
-    return next(station for station in model.stations if station.name == name)

@@ -48,21 +48,28 @@ def _bound(pool: LinePool, low: float, high: float, place: tuple[float, float]) 
 def _polish(pool: LinePool, best: Found, low: float, high: float, place: tuple[float, float]) -> Found:
     """Golden section on the exact slice value between two masses; infeasible masses count as infinite."""
     ratio = 0.5 * (math.sqrt(5.0) - 1.0)
+
+    def value(mass: float) -> float:
+        nonlocal best
+        segment, excess = _at(pool, mass, place)
+        if segment is None:
+            return math.inf
+        if segment.value < best[1].value:
+            best = (mass, segment, excess)
+        return segment.value
+
     a, b = low, high
-    for _ in range(44):
-        inner = (b - ratio * (b - a), a + ratio * (b - a))
-        values = []
-        for mass in inner:
-            segment, excess = _at(pool, mass, place)
-            values.append(math.inf if segment is None else segment.value)
-            if segment is not None and segment.value < best[1].value:
-                best = (mass, segment, excess)
-        if values[0] == values[1] == math.inf:
-            break
-        if values[0] <= values[1]:
-            b = inner[1]
+    left, right = b - ratio * (b - a), a + ratio * (b - a)
+    at_left, at_right = value(left), value(right)
+    while b - a > 1e-9 * b and not at_left == at_right == math.inf:
+        if at_left <= at_right:
+            b, right, at_right = right, left, at_left
+            left = b - ratio * (b - a)
+            at_left = value(left)
         else:
-            a = inner[0]
+            a, left, at_left = left, right, at_right
+            right = a + ratio * (b - a)
+            at_right = value(right)
     return best
 
 

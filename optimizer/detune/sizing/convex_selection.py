@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.sizing.lmi import convex_library
 from detune.sizing.statement import SizingError
 
 Floats = NDArray[np.float64]
@@ -39,7 +40,7 @@ def selection_bound(
     `group_matrices[g]` has shape (parts, n, n): what each part adds to K; `costs[g]` (parts,). Every real choice is
     a 0/1 point of this set, so its cost is never below the bound. Frequencies in Hz.
     """
-    import cvxpy as cp
+    cp = convex_library()
 
     reference = modes_below or modes_above
     if reference is None:
@@ -109,7 +110,7 @@ def soft_side_one_axis(
     `transmissibilities` are (frequency Hz, T < 1), each the cone ||(k, sqrt(1-T^2) w c)|| <= T (m w^2 - k);
     `displacements` are (frequency Hz, force N, limit m), each k <= m w^2 - F/X. Raises SizingError for T >= 1.
     """
-    import cvxpy as cp
+    cp = convex_library()
 
     if any(not 0 < limit < 1 for _, limit in transmissibilities):
         raise SizingError("the soft-side cone needs a transmissibility limit between 0 and 1")

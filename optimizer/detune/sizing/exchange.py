@@ -114,19 +114,28 @@ class LinePool:
         found = (closed_envelope(self.forms[i], kind, mass, *self.ranges[i]) for i in wide)
         return [x for x in found if x is not None]
 
-    def slice(self, masses: tuple[float, ...], window: tuple[float, float]) -> tuple[list[Segment], Rows]:
-        """Solve the slice of the present lines at one scaled mass, or relaxed over two (`envelope`)."""
-        problem = self.problem
-        table = rows(
+    def closed_ranges(self, mass: float) -> list[int]:
+        """The limits behind the closed envelopes at one scaled mass, in the order of their rows."""
+        kind = self.problem.damping_kind
+        wide = (i for i in range(len(self.forms)) if self.is_range(i))
+        return [i for i in wide if closed_envelope(self.forms[i], kind, mass, *self.ranges[i]) is not None]
+
+    def table(self, masses: tuple[float, ...]) -> Rows:
+        """All present lines, the damping bounds and (at one mass) the closed envelopes."""
+        return rows(
             [self.forms[i] for i in self.index],
             np.array(self.at_u),
-            problem.damping_kind,
+            self.problem.damping_kind,
             masses,
-            _damping_bounds(problem, self.scales),
+            _damping_bounds(self.problem, self.scales),
             self.envelopes(masses[0]) if len(masses) == 1 else [],
         )
-        objective = SliceObjective(problem, self.scales, masses[0], masses[-1])
-        inner, forbidden = stiffness_window(problem, self.scales, masses)
+
+    def slice(self, masses: tuple[float, ...], window: tuple[float, float]) -> tuple[list[Segment], Rows]:
+        """Solve the slice of the present lines at one scaled mass, or relaxed over two (`envelope`)."""
+        table = self.table(masses)
+        objective = SliceObjective(self.problem, self.scales, masses[0], masses[-1])
+        inner, forbidden = stiffness_window(self.problem, self.scales, masses)
         both = (max(window[0], inner[0]), min(window[1], inner[1]))
         return segments(table, both, forbidden, objective), table
 

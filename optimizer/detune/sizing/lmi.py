@@ -30,6 +30,13 @@ Worth = Literal["global", "safe restriction", "lower bound"]
 Status = Literal["solved", "infeasible", "inaccurate", "failed"]
 
 
+def convex_library() -> Any:
+    """CVXPY, imported on first use: it takes about a second to load."""
+    import cvxpy
+
+    return cvxpy
+
+
 @dataclass(frozen=True)
 class StiffnessModel:
     """Arrays of a linear sizing model: `mass` (n, n), `patterns` (p, n, n), `constant` (n, n), bounds (p,) N/m.
@@ -73,7 +80,7 @@ class StiffnessModel:
         from scipy.linalg import eigh
 
         values = eigh(self.stiffness_at(k), self.mass_at(ballast), eigvals_only=True)
-        return np.sqrt(np.maximum(values, 0.0)) / (2 * np.pi)
+        return np.asarray(np.sqrt(np.maximum(values, 0.0)) / (2 * np.pi))
 
 
 @dataclass(frozen=True)
@@ -115,7 +122,7 @@ class _Form:
     """The model in scaled unknowns x = k / upper in [lower/upper, 1] and y = b / most in [0, 1]."""
 
     def __init__(self, model: StiffnessModel, frequency: float) -> None:
-        import cvxpy as cp
+        cp = convex_library()
 
         self.model = model
         self.omega2 = (2 * math.pi * frequency) ** 2
@@ -141,7 +148,7 @@ class _Form:
             self.constraints += [self.y >= 0, self.y <= 1]
 
     def solve(self, goal: Any, extra: list[Any]) -> tuple[Status, str, float]:
-        import cvxpy as cp
+        cp = convex_library()
 
         problem = cp.Problem(goal, self.constraints + extra)
         try:
@@ -173,7 +180,7 @@ def greatest_separation(
     One semidefinite program when the mass is fixed; bisection of feasibility programs when ballast is free
     (below: K <= t M is linear in (k, b) for each t; above likewise). `bound` is proven to the solver's tolerance.
     """
-    import cvxpy as cp
+    cp = convex_library()
 
     form = _Form(model, frequency)
     if form.y is None:
@@ -217,7 +224,7 @@ def _separation_answer(
 
 def _bisect(form: _Form, side: str) -> tuple[Floats, Floats, float] | None:
     """Bisection on t in K <= t M (below) or K >= t M (above); the bound is the last t proved impossible."""
-    import cvxpy as cp
+    cp = convex_library()
 
     t = cp.Parameter(nonneg=True)
     slack = cp.Variable()
@@ -255,7 +262,7 @@ def _bisect(form: _Form, side: str) -> tuple[Floats, Floats, float] | None:
 
 def _schur(form: _Form, w_ratio: float, vector: NDArray[Any], cap: Any) -> list[Any]:
     """v^H A^-1 v <= cap with A = w_ratio M - K in scaled form; real and imaginary parts add."""
-    import cvxpy as cp
+    cp = convex_library()
 
     a = w_ratio * form.mass - form.stiffness
     parts = [np.real(vector), np.imag(vector)] if np.iscomplexobj(vector) else [vector]
@@ -287,7 +294,7 @@ def cheapest(
     rebalanced `rounds` times; each round is a valid restriction and the best is kept.
     Raises SizingError when neither a side nor a limit is given.
     """
-    import cvxpy as cp
+    cp = convex_library()
 
     reference = modes_below or modes_above or (limits[0].frequency if limits else None)
     if reference is None:
@@ -336,9 +343,7 @@ def _balanced(model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast
     return math.sqrt(abs(row) / abs(load))
 
 
-def damping_free_bound(
-    model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats
-) -> float:
+def damping_free_bound(model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats) -> float:
     """sqrt(c^T A^-1 c f^H A^-1 f) at one design: never below the response at any damping; inf off the soft side."""
     a = (2 * math.pi * limit.frequency) ** 2 * model.mass_at(ballast) - model.stiffness_at(k)
     if float(np.linalg.eigvalsh(a)[0]) <= 0:

@@ -180,7 +180,13 @@ def _one(functions: _Functions, x: Floats, iterations: int) -> tuple[Floats, boo
     try:
         with np.errstate(all="ignore"):
             found = minimize(
-                functions.objective, y, method="SLSQP", jac=slope, bounds=bounds, constraints=[row], options=options
+                functions.objective,
+                y,
+                method="SLSQP",
+                jac=slope,
+                bounds=bounds,
+                constraints=[row],
+                options=options,
             )
     except np.linalg.LinAlgError as error:
         return x, False, f"stopped at a singular response: {error}"
@@ -243,6 +249,4 @@ def size_from_many_starts(
     best = good[0]
     _, _, worst, apart = _judge(problem, goal, problem.join(best.physical))
     spread = Spread(len(good), float(values[0]), float(np.median(values)), float(values[-1]), near)
-    return ManyStartOutcome(
-        best.objective, best.physical, worst, apart, tuple(done), spread, functions.count
-    )
+    return ManyStartOutcome(best.objective, best.physical, worst, apart, tuple(done), spread, functions.count)

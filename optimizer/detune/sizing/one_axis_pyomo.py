@@ -349,7 +349,8 @@ def solve_with_scip(
     """Solve each problem globally by SCIP; `time_limit` (s) is hard and per problem.
 
     One child process serves the list; one that does not answer within the limit and two seconds is ended and
-    replaced (its imports, before the clock starts, are given a minute). Raises SizingError for a problem that cannot be stated (before any run).
+    replaced (its imports, before the clock starts, are given a minute).
+    Raises SizingError, before any run, for a problem that cannot be stated.
     """
     many = counts if counts is not None else [None] * len(problems)
     for problem, count in zip(problems, many, strict=True):

@@ -64,7 +64,9 @@ class SmoothProblem:
         if np.any(self.lower > self.upper):
             raise SizingError(f"bounds are crossed at unknown {int(np.argmax(self.lower > self.upper))}")
         if np.any(self.lower[: p + groups] <= 0) or not np.all(np.isfinite(self.upper)):
-            raise SizingError("stiffness and loss factor need bounds above zero, and every bound must be finite")
+            raise SizingError(
+                "stiffness and loss factor need bounds above zero, and every bound must be finite"
+            )
         if self.loads.shape != (self.frequencies.size, n) or self.limits.shape != (
             self.frequencies.size,
             self.rows.shape[0],
@@ -76,7 +78,7 @@ class SmoothProblem:
     @property
     def groups(self) -> int:
         """Number of damping groups."""
-        return self.lower.size - self.patterns.shape[0] - self.ballast_patterns.shape[0]
+        return int(self.lower.size - self.patterns.shape[0] - self.ballast_patterns.shape[0])
 
     def split(self, x: Floats) -> tuple[Floats, Floats, Floats]:
         """(k, eta, b) in N/m, -, kg from the unknowns x = (ln k, ln eta, b)."""
@@ -100,9 +102,10 @@ def responses(problem: SmoothProblem, x: Floats) -> tuple[Complexes, Complexes]:
     omega2 = (2 * np.pi * problem.frequencies) ** 2
     complex_k = k * (1 + 1j * eta[problem.damping_group])
     stiffness = problem.constant + np.tensordot(complex_k, problem.patterns, axes=1)
-    inverse = np.linalg.inv(stiffness[None] - omega2[:, None, None] * problem.mass_at(ballast)[None])
+    dynamic = stiffness[None] - omega2[:, None, None] * problem.mass_at(ballast)[None]
+    inverse = np.asarray(np.linalg.inv(dynamic), dtype=complex)
     loads = problem.loads + np.tensordot(ballast, problem.ballast_loads, axes=1)
-    return inverse, np.einsum("wij,wj->wi", inverse, loads)
+    return inverse, np.asarray(np.einsum("wij,wj->wi", inverse, loads), dtype=complex)
 
 
 def ratios(problem: SmoothProblem, x: Floats) -> Floats:
@@ -119,7 +122,8 @@ def joined_ratios(problem: SmoothProblem, x: Floats, norm: float) -> tuple[Float
     a = np.abs(z) / problem.limits
     top = np.maximum(a.max(axis=1), 1e-300)
     relative = a / top[:, None]
-    total = (relative**norm).sum(axis=1)
+    # A frequency without any load has no ratio and no gradient.
+    total = np.maximum((relative**norm).sum(axis=1), 1e-30)
     value = top * total ** (1 / norm)
     share = relative ** (norm - 1) * (total ** (1 / norm - 1))[:, None]
     size = np.abs(z)

@@ -69,6 +69,8 @@ class _Tally:
     def go_through(self, designs: Designs) -> None:
         least = np.full(designs.count, np.inf)
         rule = 0
+        # Booked at the end of the block, so that an interrupt leaves no half-counted designs behind.
+        excluded: list[tuple[Designs, Floats, NDArray[np.bool_], int, int]] = []
         for number, step in enumerate(self.steps):
             alive = []
             for first in range(0, designs.count, step.size):
@@ -82,15 +84,20 @@ class _Tally:
                         least[index] = np.minimum(least[index], margins[counted].min(axis=0))
                 failed = margins < 0.0
                 fails = failed.any(axis=0)
-                self._exclude(designs.take(index[fails]), margins[:, fails], failed[:, fails], rule, number)
+                excluded.append(
+                    (designs.take(index[fails]), margins[:, fails], failed[:, fails], rule, number)
+                )
                 alive.append(index[~fails])
             rule += len(step.requirements)
             keep = np.concatenate(alive) if alive else np.zeros(0, dtype=np.intp)
             designs, least = designs.take(keep), least[keep]
             if designs.count == 0:
-                return
-        self.kept.append(designs)
-        self.margins.append(least)
+                break
+        for block in excluded:
+            self._exclude(*block)
+        if designs.count > 0:
+            self.kept.append(designs)
+            self.margins.append(least)
 
     def _exclude(
         self, designs: Designs, margins: Floats, failed: NDArray[np.bool_], rule: int, stage: int

@@ -16,6 +16,7 @@ from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.brief.allowable.part_numbers import PartNumbers
 from detune.brief.allowable.sag import Sag
 from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.stability import Stability
 from detune.brief.allowable.tilt import Tilt
 from detune.brief.allowable.transmissibility import Transmissibility
 from detune.brief.allowable.transmitted_force import TransmittedForce
@@ -34,6 +35,7 @@ KINDS: dict[str, type[Allowable]] = {
     "sag": Sag,
     "tilt": Tilt,
     "separation": Separation,
+    "stability": Stability,
     "cost": CostLimit,
     "added-mass": AddedMass,
     "part-numbers": PartNumbers,
@@ -54,6 +56,7 @@ __all__ = [
     "PartNumbers",
     "Sag",
     "Separation",
+    "Stability",
     "StaticAllowable",
     "Tilt",
     "Transmissibility",

@@ -43,6 +43,9 @@ class StaticView(Protocol):
     def station_load(self, station: str) -> Floats:
         """Force (D, 3) in N one part exerts on the floor; a compressed part has negative z."""
 
+    def weight_to_topple(self) -> Floats:
+        """By how much all static forces could grow (D,) before the machine topples."""
+
     def part_value(self, station: str, column: str) -> Floats:
         """A number (D,) of the part at the station, for example `load_max`; nan where none is stated."""
 

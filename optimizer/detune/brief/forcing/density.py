@@ -1,6 +1,7 @@
 """How a power spectral density is stated: break points, slopes between corners, or a CSV file."""
 
 from collections.abc import Mapping, Sequence
+from itertools import pairwise
 
 from pydantic import ValidationInfo
 
@@ -23,7 +24,7 @@ def sloped_density(
     corners: Sequence[float], slopes: Sequence[float], level: tuple[float, float]
 ) -> PowerSpectralDensity:
     """Return the density from corners (Hz), slopes between them (dB/octave) and the level at one corner."""
-    for before, after in zip(corners[:-1], corners[1:], strict=True):
+    for before, after in pairwise(corners):
         if not 0.0 < before < after:
             raise refuse(list(corners), "corner frequencies above zero that rise", at="corners")
     if len(slopes) != len(corners) - 1:

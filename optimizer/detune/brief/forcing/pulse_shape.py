@@ -6,9 +6,7 @@ from detune.brief.statement import refuse
 from detune.physics import pulses
 from detune.physics.pulses import Pulse
 
-Shape = Literal[
-    "half-sine", "versed-sine", "rectangle", "trapezoid", "terminal-peak-sawtooth", "triangle"
-]
+Shape = Literal["half-sine", "versed-sine", "rectangle", "trapezoid", "terminal-peak-sawtooth", "triangle"]
 SHAPES = {
     "half-sine": pulses.half_sine,
     "versed-sine": pulses.versed_sine,

@@ -52,7 +52,9 @@ class RandomForce(Forcing):
         if self.direction is not None:
             unit_direction(self.direction, at="direction")
         elif self.couple_arm is None or not any(self.couple_arm):
-            raise refuse("no force and no couple", 'a "direction" of the force, or a "couple_arm" that is not zero')
+            raise refuse(
+                "no force and no couple", 'a "direction" of the force, or a "couple_arm" that is not zero'
+            )
         positive(self.duration, "a duration", at="duration")
         self._spectrum = self._drawn(info)
         return self

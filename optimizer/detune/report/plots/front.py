@@ -22,6 +22,8 @@ TITLE = "Front"
 # Beyond this many dots a page becomes slow; the dots are then drawn as a picture without hover text.
 TITLED = 4000
 NUMBERED = 24
+# Beyond this share of the width a label stands to the left of its mark.
+RIGHT = 0.8
 IN_PER_CENT = ("separation", "least-margin")
 UNITS = {
     "cost": "currency of the lists",
@@ -131,10 +133,13 @@ def _text(design: Design, values: list[str], trade: tuple[str, ...]) -> str:
 
 def caption(data: FrontData) -> str:
     """Return what the plot shows, in words."""
-    parts = [
-        f"Small dots: the {len(data.values)} designs that meet every requirement in the solver's evaluation. "
-        f"Joined dots, numbered as in the table: the {len(data.front)} on the front, each confirmed by the assessor."
-    ]
+    parts = []
+    if len(data.values):
+        kind = "Joined dots" if len(data.panels) == 1 else "Large dots"
+        parts.append(
+            f"Small dots: the {len(data.values)} designs that meet every requirement in the solver's evaluation. "
+            f"{kind}, numbered as in the table: the {len(data.front)} on the front, each confirmed by the assessor."
+        )
     if any(not mark.meets for mark in data.marked):
         parts.append("Crosses: designs that do not meet the brief.")
     if data.texts:
@@ -187,12 +192,12 @@ def _panel(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> 
         large.set_gid(f"front-{panel}")
         titles[f"front-{panel}"] = tuple(data.front_texts[i] for i in kept)
         _numbers(ax, data, kept, points)
+    ax.margins(x=0.09, y=0.14)
     titles |= _marks(data, ax, panel, first, second)
     if len(drawn) == 0 and len(kept) == 0:
         ax.text(0.5, 0.92, "no design that meets the brief", transform=ax.transAxes, ha="center", va="top")
     for name, setter in ((data.trade[first], ax.set_xlabel), (data.trade[second], ax.set_ylabel)):
         setter(f"{OBJECTIVE_WORDS[name]} [{UNITS[name]}]")
-    ax.margins(x=0.09, y=0.14)
     ax.grid(color="#DDDDDD", linewidth=0.5)
     ax.set_axisbelow(True)
     return titles
@@ -215,10 +220,15 @@ def _numbers(ax: "Axes", data: FrontData, kept: NDArray[np.intp], points: Floats
 
 
 def _marks(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> Titles:
+    # Labels need the final limits, so every mark is on the axes before the first label.
+    ax.update_datalim(
+        [m.values[first : second + 1 : second - first] for m in data.marked if _finite(m, first, second)]
+    )
+    ax.autoscale_view()
     titles: Titles = {}
     for index, mark in enumerate(data.marked):
         x, y = mark.values[first], mark.values[second]
-        if not (math.isfinite(x) and math.isfinite(y)):
+        if not _finite(mark, first, second):
             continue
         if mark.label == "answer":
             dot = ax.scatter([x], [y], s=150, facecolors="none", edgecolors=BLACK, linewidths=1.4, zorder=6)
@@ -232,8 +242,19 @@ def _marks(data: FrontData, ax: "Axes", panel: int, first: int, second: int) -> 
         dot.set_gid(gid)
         titles[gid] = (f"{mark.label}: {mark.text}",)
         label = mark.label if mark.meets else f"{mark.label} (not met)"
+        at_right = ax.transAxes.inverted().transform(ax.transData.transform((x, y)))[0] > RIGHT
         ax.annotate(
-            label, (x, y), xytext=(9, -12), textcoords="offset points", fontsize=8.5,
-            fontweight="bold" if mark.label == "answer" else "normal", zorder=7,
-        )  # fmt: skip
+            label,
+            (x, y),
+            xytext=(-9 if at_right else 9, -12),
+            textcoords="offset points",
+            ha="right" if at_right else "left",
+            fontsize=8.5,
+            fontweight="bold" if mark.label == "answer" else "normal",
+            zorder=7,
+        )
     return titles
+
+
+def _finite(mark: Marked, first: int, second: int) -> bool:
+    return math.isfinite(mark.values[first]) and math.isfinite(mark.values[second])

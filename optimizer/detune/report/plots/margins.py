@@ -48,9 +48,7 @@ def data(result: Result) -> MarginsData | None:
     rows = sorted(subject.margins, key=lambda row: row.margin)
     kept = rows[: max(SHOWN, sum(row.margin < 0.0 for row in rows))]
     return MarginsData(
-        subject="the answer"
-        if result.answer is not None
-        else "the closest design, which does not meet the brief",
+        subject="the answer" if result.answer is not None else "the closest design",
         labels=tuple(row.label for row in kept),
         margins=tuple(row.margin for row in kept),
         texts=tuple(f"{value_text(row)}; {limit_text(row)}; {margin_text(row.margin)}" for row in kept),

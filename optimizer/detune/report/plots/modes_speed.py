@@ -90,9 +90,7 @@ def data(result: Result) -> ModesData | None:
         return None
     sources = excitation_sources(result.study.brief)
     return ModesData(
-        subject="the answer"
-        if result.answer is not None
-        else "the closest design, which does not meet the brief",
+        subject="the answer" if result.answer is not None else "the closest design",
         frequencies=tuple(mode.frequency for mode in subject.modes),
         names=tuple(mode.name for mode in subject.modes),
         separations=tuple(mode.separation for mode in subject.modes),

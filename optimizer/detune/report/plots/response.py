@@ -87,9 +87,7 @@ def data(result: Result) -> ResponseData | None:
     if not ranked:
         return None
     return ResponseData(
-        subject="the answer"
-        if result.answer is not None
-        else "the closest design, which does not meet the brief",
+        subject="the answer" if result.answer is not None else "the closest design",
         panels=tuple(_panel(curve, places) for curve, places in ranked[:SHOWN]),
         left_out=max(0, len(ranked) - SHOWN),
     )

@@ -23,8 +23,8 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 TITLE = "Map of stiffness against damping"
-STIFFNESSES = 40
-DAMPINGS = 16
+STIFFNESSES = 36
+DAMPINGS = 14
 LINES_SHOWN = 7
 LEAST_LOSS = 1e-3
 SHADE = "#EBEBEB"
