@@ -62,14 +62,12 @@ def inertia_block(A: Floats, shift: Floats, count: Floats, good: Floats) -> None
     good[:] = (growth <= 0.1 * GROWTH_LIMIT) & (np.abs(pivots).min(axis=1) > 1e-12 * scale)
 
 
-def complex_block(
-    DR: Floats, DI: Floats, FR: Floats, FI: Floats, QR: Floats, QI: Floats, good: Floats
-) -> None:
-    """Solve the complex symmetric systems DR + j DI for FR + j FI; good is 1 where the residual is small."""
-    n = FR.shape[0] // BLOCK
-    matrices = _matrices(DR, n) + 1j * _matrices(DI, n)
-    right = FR.reshape(n, BLOCK).T + 1j * FI.reshape(n, BLOCK).T
-    q, doubtful = complex_solve(matrices, right)
-    QR.reshape(n, BLOCK)[:] = q.real.T
-    QI.reshape(n, BLOCK)[:] = q.imag.T
+def complex_block(D: Floats, F: Floats, Q: Floats, good: Floats) -> None:
+    """Solve complex symmetric systems D Q = F, real parts first, then imaginary; good is 1 where it can be trusted."""
+    n, half = F.shape[0] // (2 * BLOCK), D.shape[0] // 2
+    matrices = _matrices(D[:half], n) + 1j * _matrices(D[half:], n)
+    parts = F.reshape(2, n, BLOCK)
+    q, doubtful = complex_solve(matrices, parts[0].T + 1j * parts[1].T)
+    Q.reshape(2, n, BLOCK)[0] = q.real.T
+    Q.reshape(2, n, BLOCK)[1] = q.imag.T
     good[:] = ~doubtful

@@ -14,8 +14,7 @@ from detune.proof.selection_data import Floats, Integers
 
 
 def case_block(
-    base_re: Floats,
-    base_im: Floats,
+    dynamic: Floats,
     outer: Floats,
     stations: Floats,
     counts: Floats,
@@ -38,7 +37,7 @@ def case_block(
 ) -> None:
     """Least limit/response - 1 of 64 designs at one frequency into margin; good 0 where the solve is doubtful.
 
-    base_re, base_im (m*64): packed -omega^2 M + fixed stiffness per lane, overwritten by the whole matrix.
+    dynamic (2*m*64): packed -omega^2 M + fixed stiffness per lane, real then imaginary; the springs are added to it.
     outer (S*3, m): packed b b^T, parallel count included. stations (S*3, n). counts (S*3,).
     kappa_re, kappa_im (S*3, 64): stiffness of one part. drive (S*3,): base displacement. Limits flat.
     """
@@ -48,12 +47,13 @@ def case_block(
         for k in range(m):
             factor = outer[a, k]
             if factor != 0.0:
-                block_re = base_re[k * 64 : k * 64 + 64]
-                block_im = base_im[k * 64 : k * 64 + 64]
+                block_re = dynamic[k * 64 : k * 64 + 64]
+                block_im = dynamic[(m + k) * 64 : (m + k) * 64 + 64]
                 for b in range(64):
                     block_re[b] += factor * re[b]
                     block_im[b] += factor * im[b]
-    f_re, f_im, q_re, q_im = work[0, : n * 64], work[1, : n * 64], work[2, : n * 64], work[3, : n * 64]
+    f, q = work[0, : 2 * n * 64], work[1, : 2 * n * 64]
+    f_re, f_im, q_re, q_im = f[: n * 64], f[n * 64 :], q[: n * 64], q[n * 64 :]
     for i in range(n):
         for b in range(64):
             f_re[i * 64 + b] = load_re[i]
@@ -65,8 +65,8 @@ def case_block(
                 for b in range(64):
                     f_re[i * 64 + b] += factor * (kappa_re[a, b] * drive_re[a] - kappa_im[a, b] * drive_im[a])
                     f_im[i * 64 + b] += factor * (kappa_re[a, b] * drive_im[a] + kappa_im[a, b] * drive_re[a])
-    complex_block(base_re, base_im, f_re, f_im, q_re, q_im, good)
-    ratio, re_sum, im_sum = work[4, :64], work[4, 64:128], work[4, 128:192]
+    complex_block(dynamic, f, q, good)
+    ratio, re_sum, im_sum = work[2, :64], work[3, :64], work[4, :64]
     for b in range(64):
         ratio[b] = 0.0
     for r in range(rows.shape[0]):
@@ -153,10 +153,10 @@ def batch_margin(
     from group_start[g] on. axis_group (S*3,): group of each axis row.
     """
     m, n, axes = fixed_re.shape[0], stations.shape[1], stations.shape[0]
-    base_re, base_im = np.empty(m * 64), np.empty(m * 64)
+    dynamic = np.empty(2 * m * 64)
     kappa_re, kappa_im = np.empty((axes, 64)), np.empty((axes, 64))
     block_margin, block_good = np.empty(64), np.empty(64)
-    work = np.empty((7, max(n, max(3, total.shape[0])) * 64))
+    work = np.empty((7, max(2 * n, total.shape[0]) * 64))
     last = designs.shape[1] - 1
     for start in range(0, designs.shape[0], 64):
         width = min(64, designs.shape[0] - start)
@@ -164,14 +164,14 @@ def batch_margin(
             d = start + min(b, width - 1)
             step = designs[d, last]
             for k in range(m):
-                base_re[k * 64 + b] = fixed_re[k] - omega * omega * mass[step, k]
-                base_im[k * 64 + b] = fixed_im[k]
+                dynamic[k * 64 + b] = fixed_re[k] - omega * omega * mass[step, k]
+                dynamic[(m + k) * 64 + b] = fixed_im[k]
             for a in range(axes):
                 p = group_start[axis_group[a]] + designs[d, axis_group[a]]
                 kappa_re[a, b] = stiffness[p, a % 3]
                 kappa_im[a, b] = loss[p, a % 3] + omega * viscous[p, a % 3]
         case_block(
-            base_re, base_im, outer, stations, counts, kappa_re, kappa_im, load_re, load_im,
+            dynamic, outer, stations, counts, kappa_re, kappa_im, load_re, load_im,
             drive_re, drive_im, driven, rows, row_limit, deflection_limit, force_limit,
             total, total_limit, block_margin, block_good, work,
         )  # fmt: skip

@@ -14,8 +14,8 @@ def _entry(row: int, column: int) -> int:
     return row * (row + 1) // 2 + column
 
 
-def _load_lower(n: int, name: str, source: str) -> list[str]:
-    return [f"{name}{i}{j} = {source}[{_entry(i, j) * BLOCK} + b]" for i in range(n) for j in range(i + 1)]
+def _load_lower(n: int, name: str, source: str, first: int = 0) -> list[str]:
+    return [f"{name}{i}{j} = {source}[{(first + _entry(i, j)) * BLOCK} + b]" for i in range(n) for j in range(i + 1)]
 
 
 def _real_factor(n: int, growth: bool) -> list[str]:
@@ -33,9 +33,14 @@ def _real_factor(n: int, growth: bool) -> list[str]:
     return lines
 
 
-def _function(head: str, body: list[str], indent: int = 8) -> str:
-    lines = "\n".join(" " * indent + line for line in body)
-    return f"def {head}:\n    for b in range({BLOCK}):\n{lines}\n"
+def _function(head: str, body: list[str], before: list[str] | None = None) -> str:
+    """A function with one loop over the lanes; what is the same in all lanes is read before it.
+
+    Few arrays may appear inside the loop: beyond a handful of possible overlaps the compiler gives up on vectors.
+    """
+    first = "".join(f"    {line}\n" for line in before or [])
+    lines = "\n".join(" " * 8 + line for line in body)
+    return f"def {head}:\n{first}    for b in range({BLOCK}):\n{lines}\n"
 
 
 def factor_source(n: int) -> str:
@@ -48,7 +53,7 @@ def factor_source(n: int) -> str:
     body += [f"least = min(least, d{j})" for j in range(1, n)]
     for i in range(n):
         terms = "".join(f" - l{i}{k} * y{k}" for k in range(i))
-        body.append(f"y{i} = load[{i}]{terms}")
+        body.append(f"y{i} = w{i}{terms}")
     for i in range(n):
         for j in range(i):
             body.append(f"A[{_entry(i, j) * BLOCK} + b] = l{i}{j}")
@@ -56,7 +61,7 @@ def factor_source(n: int) -> str:
         body.append(f"Y[{i * BLOCK} + b] = y{i} * r{i}")
     body.append("size[b] = " + " + ".join(f"y{i} * y{i} * r{i}" for i in range(n)))
     body.append("good[b] = 1.0 if least > 1.0e-10 * scale else 0.0")
-    return _function("factor_block(A, load, Y, size, good)", body)
+    return _function("factor_block(A, load, Y, size, good)", body, [f"w{i} = load[{i}]" for i in range(n)])
 
 
 def row_source(n: int) -> str:
@@ -64,10 +69,10 @@ def row_source(n: int) -> str:
     body = []
     for i in range(n):
         terms = "".join(f" - A[{_entry(i, k) * BLOCK} + b] * y{k}" for k in range(i))
-        body.append(f"y{i} = row[{i}]{terms}")
+        body.append(f"y{i} = w{i}{terms}")
     body.append("value[b] = " + " + ".join(f"y{i} * Y[{i * BLOCK} + b]" for i in range(n)))
     body.append("size[b] = " + " + ".join(f"y{i} * y{i} * A[{_entry(i, i) * BLOCK} + b]" for i in range(n)))
-    return _function("row_block(A, Y, row, value, size)", body)
+    return _function("row_block(A, Y, row, value, size)", body, [f"w{i} = row[{i}]" for i in range(n)])
 
 
 def inertia_source(n: int) -> str:
@@ -88,8 +93,12 @@ def inertia_source(n: int) -> str:
 
 
 def complex_source(n: int) -> str:
-    """complex_block: D q = f for complex symmetric D by LDL^T, with the residual checked."""
-    body = _load_lower(n, "ar", "DR") + _load_lower(n, "ai", "DI")
+    """complex_block: D q = f for complex symmetric D by LDL^T, with the residual checked.
+
+    D, F and Q hold all real parts first, then all imaginary parts.
+    """
+    m = n * (n + 1) // 2
+    body = _load_lower(n, "ar", "D") + _load_lower(n, "ai", "D", m)
     for j in range(n):
         for i in range(j, n):
             re = "".join(f" - lr{i}{k} * tr{j}{k} + li{i}{k} * ti{j}{k}" for k in range(j))
@@ -108,18 +117,18 @@ def complex_source(n: int) -> str:
     for i in range(n):
         re = "".join(f" - lr{i}{k} * yr{k} + li{i}{k} * yi{k}" for k in range(i))
         im = "".join(f" - lr{i}{k} * yi{k} - li{i}{k} * yr{k}" for k in range(i))
-        body += [f"yr{i} = FR[{i * BLOCK} + b]{re}", f"yi{i} = FI[{i * BLOCK} + b]{im}"]
+        body += [f"yr{i} = F[{i * BLOCK} + b]{re}", f"yi{i} = F[{(n + i) * BLOCK} + b]{im}"]
     for i in reversed(range(n)):
         re = "".join(f" - lr{k}{i} * qr{k} + li{k}{i} * qi{k}" for k in range(i + 1, n))
         im = "".join(f" - lr{k}{i} * qi{k} - li{k}{i} * qr{k}" for k in range(i + 1, n))
         body += [
             f"qr{i} = yr{i} * pr{i} - yi{i} * pi{i}{re}",
             f"qi{i} = yr{i} * pi{i} + yi{i} * pr{i}{im}",
-            f"QR[{i * BLOCK} + b] = qr{i}",
-            f"QI[{i * BLOCK} + b] = qi{i}",
+            f"Q[{i * BLOCK} + b] = qr{i}",
+            f"Q[{(n + i) * BLOCK} + b] = qi{i}",
         ]
     body += _residual(n)
-    return _function("complex_block(DR, DI, FR, FI, QR, QI, good)", body)
+    return _function("complex_block(D, F, Q, good)", body)
 
 
 def _residual(n: int) -> list[str]:
@@ -131,7 +140,7 @@ def _residual(n: int) -> list[str]:
         names = [(f"{max(i, k)}{min(i, k)}", k) for k in range(n)]
         re = "".join(f" - ar{e} * qr{k} + ai{e} * qi{k}" for e, k in names)
         im = "".join(f" - ar{e} * qi{k} - ai{e} * qr{k}" for e, k in names)
-        body += [f"er = FR[{i * BLOCK} + b]{re}", f"ei = FI[{i * BLOCK} + b]{im}"]
+        body += [f"er = F[{i * BLOCK} + b]{re}", f"ei = F[{(n + i) * BLOCK} + b]{im}"]
         body.append("worst = worst + er * er + ei * ei")
         body.append("bound = bound + " + " + ".join(f"ar{e} * ar{e} + ai{e} * ai{e}" for e, _ in names))
     body.append("good[b] = 1.0 if worst <= 1.0e-22 * bound * qq else 0.0")

@@ -187,15 +187,14 @@ def complex_solve(matrices: Complexes, right: Complexes) -> tuple[Complexes, Fla
     n, total = matrices.shape[-1], matrices.shape[0]
     real, count = _blocks(np.ascontiguousarray(matrices.real))
     imag, _ = _blocks(np.ascontiguousarray(matrices.imag))
-    f_real, f_imag = _vectors(np.ascontiguousarray(right.real)), _vectors(np.ascontiguousarray(right.imag))
-    q_real, q_imag, good = np.empty_like(f_real), np.empty_like(f_imag), np.empty((count, BLOCK))
+    blocks = np.concatenate([real, imag], axis=1)
+    loads = np.concatenate([_vectors(right.real), _vectors(right.imag)], axis=1)
+    found, good = np.empty_like(loads), np.empty((count, BLOCK))
     for k in range(count):
-        kernels.complex_block(real[k], imag[k], f_real[k], f_imag[k], q_real[k], q_imag[k], good[k])
+        kernels.complex_block(blocks[k], loads[k], found[k], good[k])
 
-    def lanes(values: Floats) -> Floats:
-        return values.reshape(count, n, BLOCK).transpose(0, 2, 1).reshape(-1, n)[:total]
-
-    q: Complexes = lanes(q_real) + 1j * lanes(q_imag)
+    parts = found.reshape(count, 2, n, BLOCK).transpose(1, 0, 3, 2).reshape(2, -1, n)[:, :total]
+    q: Complexes = parts[0] + 1j * parts[1]
     doubtful = good.reshape(-1)[:total] != 1.0
     if doubtful.any():
         q[doubtful] = np.linalg.solve(matrices[doubtful], right[doubtful][:, :, None])[:, :, 0]

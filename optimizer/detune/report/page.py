@@ -16,7 +16,6 @@ from detune.report.words import (
     design_text,
     limit_text,
     margin_text,
-    number,
     objective_text,
     row_text,
     separation_text,

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from detune.brief.allowable import HarmonicAllowable
 from detune.brief.allowable.base import SumOfOrders, tone_amplitude
-from detune.physics.simulation import Motion, StateModes, state_modes
+from detune.physics.simulation import DefectiveModes, Motion, StateModes, state_modes
 from detune.physics.sweep import sweep_envelope
 from detune.response.assemble import Dynamic
 from detune.response.causal_design import causal_matrices
@@ -26,6 +26,8 @@ Complexes = NDArray[np.complex128]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
 EVENLY = 1200
+CLOSER_LOOKS = 2
+ROUND_LARGEST = np.linspace(-1.0, 1.0, 121)
 ROUND_PASSAGE = np.concatenate(
     [np.linspace(-8.0, -3.0, 60, endpoint=False), np.linspace(-3.0, 6.0, 240), np.linspace(6.0, 20.0, 100)]
 )
@@ -65,11 +67,19 @@ def swept_values(
         one = np.array([index])
         stiffness, damping = causal_matrices(dynamic, modal, index)
         undamped = one_mode_batch(modal, index)
-        system = System(stiffness, damping, state_modes(dynamic.mass[index], damping, stiffness), undamped)
+        system = System(stiffness, damping, _modes(dynamic.mass[index], damping, stiffness), undamped)
         for passage in passages:
             found = _passage(model, dynamic.take(one), system, pairs, passage)
             value[:, index] = np.maximum(value[:, index], found)
     return value
+
+
+def _modes(mass: Floats, damping: Floats, stiffness: Floats) -> StateModes:
+    """Return the complex modes; at critical damping those of a machine damped by a hundred-thousandth more."""
+    try:
+        return state_modes(mass, damping, stiffness)
+    except DefectiveModes:
+        return state_modes(mass, (1.0 + 1e-5) * damping, stiffness)
 
 
 def _passage(
@@ -79,15 +89,43 @@ def _passage(
     pairs: Pairs,
     passage: Passage,
 ) -> Floats:
+    """Return the largest envelope of each row (R,): over all moments, then closer and closer round the largest.
+
+    The free motion left by the start and by each passage ripples the envelope at twice its frequency; the closer
+    looks find the highest ripple.
+    """
+
+    def amplitudes(times: Floats) -> Floats:
+        sums = [SumOfOrders(allowable.statistic()) for allowable, _ in pairs]
+        for loads in passage.family.sets:
+            view, speed = _swept_view(model, dynamic, system, passage, loads, times)
+            for row, (allowable, place) in enumerate(pairs):
+                observed = allowable.weighted(allowable.observed(view, place), speed[None] / TWO_PI)
+                tone = tone_amplitude(observed, allowable.along(), allowable.statistic())[0]
+                sums[row].add(loads[0].order, tone)
+        return np.stack([each.total() for each in sums])
+
     times = moments(system.modes, passage)
-    sums = [SumOfOrders(allowable.statistic()) for allowable, _ in pairs]
-    for loads in passage.family.sets:
-        view, speed = _swept_view(model, dynamic, system, passage, loads, times)
-        for row, (allowable, place) in enumerate(pairs):
-            observed = allowable.weighted(allowable.observed(view, place), speed[None] / TWO_PI)
-            tone = tone_amplitude(observed, allowable.along(), allowable.statistic())[0]
-            sums[row].add(loads[0].order, tone)
-    return np.array([each.total().max() for each in sums])
+    values = amplitudes(times)
+    best, at = values.max(axis=1), times[values.argmax(axis=1)]
+    gap = np.maximum(np.diff(times, prepend=times[0]), np.diff(times, append=times[-1]))
+    half = np.maximum(2.0 * gap[values.argmax(axis=1)], 1.0 / _slowest(system.modes))
+    for _ in range(CLOSER_LOOKS):
+        close = np.clip(at[:, None] + half[:, None] * ROUND_LARGEST, 0.0, passage.time)
+        times = np.unique(close)
+        values = amplitudes(times)
+        better = values.max(axis=1) > best
+        at = np.where(better, times[values.argmax(axis=1)], at)
+        best = np.maximum(best, values.max(axis=1))
+        half = half * (4.0 / len(ROUND_LARGEST))
+    return best
+
+
+def _slowest(modes: StateModes) -> float:
+    """Frequency (Hz) of the slowest mode that oscillates, or of the slowest decay where none does."""
+    oscillating = np.abs(modes.poles.imag) > 1e-6 * np.abs(modes.poles)
+    chosen = modes.poles[oscillating] if oscillating.any() else modes.poles
+    return float(np.abs(chosen).min()) / TWO_PI
 
 
 def _swept_view(
