@@ -206,7 +206,7 @@ def test_batch_and_assessor_judge_every_requirement_alike(seed: int) -> None:
             "allowables": (
                 *brief.allowables,
                 Separation(limit=0.1),
-                MountDeflection(part="combined", limit=0.05),
+                MountDeflection(part="dynamic", limit=0.05),
             ),
         }
     )

@@ -107,10 +107,10 @@ TRADES = [("cost", "separation"), ("least-margin", "cost"), ("cost", "added-mass
 @pytest.mark.parametrize(("seed", "trade"), [(3, TRADES[0]), (4, TRADES[1]), (7, TRADES[2])])
 def test_front_is_that_of_all_designs_assessed_one_by_one(seed: int, trade: tuple[str, ...]) -> None:
     brief = study(seed, trade=trade)
-    parts = parts_list(seed, 5)
+    parts = parts_list(seed, 4)
     problem, outcome = solved(brief, parts)
     every = one_by_one(brief, parts)
-    assert problem.count == len(every) == 5 * 5 * 3
+    assert problem.count == len(every) == 4 * 4 * 3
     meeting = [a for a in every if a.meets]
     assert meeting, "the study is to have designs that meet it"
     assert len(meeting) < len(every), "and designs that do not"

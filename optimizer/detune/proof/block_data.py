@@ -54,7 +54,7 @@ class Node(NamedTuple):
 
 
 class Bench(NamedTuple):
-    """Work space for one block of 64: two packed blocks, windows, and lane arrays."""
+    """Work space for one block of 64: two blocks with room for their solutions, windows, lane arrays."""
 
     soft: Floats
     stiff: Floats
@@ -66,6 +66,5 @@ class Bench(NamedTuple):
     eigen_fails: Floats
     axis: Floats
     scratch: Floats
-    solved: Floats
     lane_u: Integers
     lane_v: Integers

@@ -20,36 +20,40 @@ def _matrices(block: Floats, n: int) -> Floats:
     return unpack(np.ascontiguousarray(block.reshape(-1, BLOCK).T), n)
 
 
-def factor_block(A: Floats, load: Floats, Y: Floats, size: Floats, good: Floats) -> None:
-    """Overwrite A by L (below) and 1/d (on the diagonal) of LDL^T; Y = D^-1 L^-1 load; size = load^T X load.
+def factor_block(S: Floats, load: Floats) -> None:
+    """LDL^T of the packed block at the start of S, and the solution of one right side as far as it can be shared.
 
-    good is 1 where all pivots exceed 1e-10 of the largest diagonal entry, else 0.
+    S holds m + n + 4 entries: the packed matrix, overwritten by L (below) and 1/d (on the diagonal); D^-1 L^-1 load;
+    load^T X load; and 1 where all pivots exceed 1e-10 of the largest diagonal entry, else 0; two for `row_block`.
     """
     n = load.shape[0]
-    matrices = _matrices(A, n)
+    m = n * (n + 1) // 2
+    matrices = _matrices(S[: m * BLOCK], n)
     scale = np.einsum("bii->bi", matrices).max(axis=1)
     lower, pivots, growth = ldl_factor(matrices)
-    good[:] = (pivots.min(axis=1) > 1e-10 * scale) & np.isfinite(growth)
     y = np.linalg.solve(lower, np.broadcast_to(load[:, None], (BLOCK, n, 1)))[:, :, 0]
-    view, out = A.reshape(-1, BLOCK), Y.reshape(n, BLOCK)
+    view = S.reshape(-1, BLOCK)
     position = 0
     for i in range(n):
         for j in range(i + 1):
             view[position] = 1.0 / pivots[:, i] if i == j else lower[:, i, j]
             position += 1
-        out[i] = y[:, i] / pivots[:, i]
-    size[:] = (y * y / pivots).sum(axis=1)
+        view[m + i] = y[:, i] / pivots[:, i]
+    view[m + n] = (y * y / pivots).sum(axis=1)
+    view[m + n + 1] = (pivots.min(axis=1) > 1e-10 * scale) & np.isfinite(growth)
 
 
-def row_block(A: Floats, Y: Floats, row: Floats, value: Floats, size: Floats) -> None:
-    """value = row^T X load and size = row^T X row from a block factored by `factor_block`."""
+def row_block(S: Floats, row: Floats) -> None:
+    """Entries m + n + 2 and m + n + 3 of S: row^T X load and row^T X row, from a block factored by `factor_block`."""
     n = row.shape[0]
-    factors = _matrices(A, n)
+    m = n * (n + 1) // 2
+    view = S.reshape(-1, BLOCK)
+    factors = _matrices(S[: m * BLOCK], n)
     lower = np.tril(factors, -1) + np.eye(n)
     inverse = np.einsum("bii->bi", factors)
     y = np.linalg.solve(lower, np.broadcast_to(row[:, None], (BLOCK, n, 1)))[:, :, 0]
-    value[:] = (y * Y.reshape(n, BLOCK).T).sum(axis=1)
-    size[:] = (y * y * inverse).sum(axis=1)
+    view[m + n + 2] = (y * view[m : m + n].T).sum(axis=1)
+    view[m + n + 3] = (y * y * inverse).sum(axis=1)
 
 
 def inertia_block(A: Floats, shift: Floats, count: Floats, good: Floats) -> None:
@@ -62,12 +66,18 @@ def inertia_block(A: Floats, shift: Floats, count: Floats, good: Floats) -> None
     good[:] = (growth <= 0.1 * GROWTH_LIMIT) & (np.abs(pivots).min(axis=1) > 1e-12 * scale)
 
 
-def complex_block(D: Floats, F: Floats, Q: Floats, good: Floats) -> None:
-    """Solve complex symmetric systems D Q = F, real parts first, then imaginary; good is 1 where it can be trusted."""
-    n, half = F.shape[0] // (2 * BLOCK), D.shape[0] // 2
-    matrices = _matrices(D[:half], n) + 1j * _matrices(D[half:], n)
-    parts = F.reshape(2, n, BLOCK)
-    q, doubtful = complex_solve(matrices, parts[0].T + 1j * parts[1].T)
-    Q.reshape(2, n, BLOCK)[0] = q.real.T
-    Q.reshape(2, n, BLOCK)[1] = q.imag.T
-    good[:] = ~doubtful
+def complex_block(S: Floats) -> None:
+    """Solve complex symmetric systems D q = f; S holds D (2m entries), f (2n), q (2n) and a flag, real parts first.
+
+    The flag is 1 where the solution can be trusted.
+    """
+    entries = S.shape[0] // BLOCK
+    # entries = n (n + 1) + 4 n + 1
+    n = round((-5.0 + math.sqrt(25.0 + 4.0 * (entries - 1))) / 2.0)
+    view, m = S.reshape(-1, BLOCK), n * (n + 1) // 2
+    matrices = _matrices(S[: m * BLOCK], n) + 1j * _matrices(S[m * BLOCK : 2 * m * BLOCK], n)
+    first = 2 * m
+    q, doubtful = complex_solve(matrices, view[first : first + n].T + 1j * view[first + n : first + 2 * n].T)
+    view[first + 2 * n : first + 3 * n] = q.real.T
+    view[first + 3 * n : first + 4 * n] = q.imag.T
+    view[first + 4 * n] = ~doubtful

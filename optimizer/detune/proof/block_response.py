@@ -37,7 +37,7 @@ def case_block(
 ) -> None:
     """Least limit/response - 1 of 64 designs at one frequency into margin; good 0 where the solve is doubtful.
 
-    dynamic (2*m*64): packed -omega^2 M + fixed stiffness per lane, real then imaginary; the springs are added to it.
+    dynamic ((2m+4n+1)*64): packed -omega^2 M + fixed stiffness per lane, real then imaginary; the springs are added to it.
     outer (S*3, m): packed b b^T, parallel count included. stations (S*3, n). counts (S*3,).
     kappa_re, kappa_im (S*3, 64): stiffness of one part. drive (S*3,): base displacement. Limits flat.
     """
@@ -52,7 +52,7 @@ def case_block(
                 for b in range(64):
                     block_re[b] += factor * re[b]
                     block_im[b] += factor * im[b]
-    f, q = work[0, : 2 * n * 64], work[1, : 2 * n * 64]
+    f, q = dynamic[2 * m * 64 : (2 * m + 2 * n) * 64], dynamic[(2 * m + 2 * n) * 64 : (2 * m + 4 * n) * 64]
     f_re, f_im, q_re, q_im = f[: n * 64], f[n * 64 :], q[: n * 64], q[n * 64 :]
     for i in range(n):
         for b in range(64):
@@ -65,7 +65,8 @@ def case_block(
                 for b in range(64):
                     f_re[i * 64 + b] += factor * (kappa_re[a, b] * drive_re[a] - kappa_im[a, b] * drive_im[a])
                     f_im[i * 64 + b] += factor * (kappa_re[a, b] * drive_im[a] + kappa_im[a, b] * drive_re[a])
-    complex_block(dynamic, f, q, good)
+    complex_block(dynamic)
+    good[:] = dynamic[(2 * m + 4 * n) * 64 :]
     ratio, re_sum, im_sum = work[2, :64], work[3, :64], work[4, :64]
     for b in range(64):
         ratio[b] = 0.0
@@ -153,10 +154,10 @@ def batch_margin(
     from group_start[g] on. axis_group (S*3,): group of each axis row.
     """
     m, n, axes = fixed_re.shape[0], stations.shape[1], stations.shape[0]
-    dynamic = np.empty(2 * m * 64)
+    dynamic = np.empty((2 * m + 4 * n + 1) * 64)
     kappa_re, kappa_im = np.empty((axes, 64)), np.empty((axes, 64))
     block_margin, block_good = np.empty(64), np.empty(64)
-    work = np.empty((7, max(2 * n, total.shape[0]) * 64))
+    work = np.empty((7, max(1, total.shape[0]) * 64))
     last = designs.shape[1] - 1
     for start in range(0, designs.shape[0], 64):
         width = min(64, designs.shape[0] - start)

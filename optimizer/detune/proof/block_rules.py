@@ -21,8 +21,8 @@ def new_bench(frame: Frame, node: Node) -> Bench:
     """Work space for the nodes of a frame; the windows are those of the node in every lane."""
     m, n, rows = node.static.shape[0], frame.load.shape[0], frame.rows.shape[0]
     bench = Bench(
-        np.empty(m * 64),
-        np.empty(m * 64),
+        np.empty((m + n + 4) * 64),
+        np.empty((m + n + 4) * 64),
         np.empty(rows * 64),
         np.empty(rows * 64),
         np.empty(64),
@@ -31,7 +31,6 @@ def new_bench(frame: Frame, node: Node) -> Bench:
         np.empty(64),
         np.empty((3, 64)),
         np.empty((8, 64)),
-        np.empty((2, n * 64)),
         np.empty(64, dtype=np.int64),
         np.empty(64, dtype=np.int64),
     )
@@ -81,17 +80,22 @@ def mark_bands(low: Floats, high: Floats, ask: Ask, bench: Bench, fails: Floats)
                 fails[b] = 1.0
 
 
+def results(block: Floats) -> tuple[Floats, Floats, Floats, Floats]:
+    """Views of the last four entries of a factored block: load^T X load, trust, row^T X load, row^T X row."""
+    end = block.shape[0]
+    return block[end - 256 : end - 192], block[end - 192 : end - 128], block[end - 128 : end - 64], block[end - 64 :]
+
+
 def mark_static_box(frame: Frame, ask: Ask, bench: Bench) -> None:
     """Mark in bench.fails the lanes in which every K between soft and stiff (overwritten) breaks a window."""
-    scratch, need, fails = bench.scratch, bench.need, bench.fails
-    load_soft, load_stiff, good_soft, good_stiff = scratch[0], scratch[1], scratch[2], scratch[3]
-    value_soft, value_stiff, row_soft, row_stiff = scratch[4], scratch[5], scratch[6], scratch[7]
-    solved_soft, solved_stiff = bench.solved[0], bench.solved[1]
-    factor_block(bench.soft, frame.load, solved_soft, load_soft, good_soft)
-    factor_block(bench.stiff, frame.load, solved_stiff, load_stiff, good_stiff)
+    need, fails = bench.need, bench.fails
+    load_soft, good_soft, value_soft, row_soft = results(bench.soft)
+    load_stiff, good_stiff, value_stiff, row_stiff = results(bench.stiff)
+    factor_block(bench.soft, frame.load)
+    factor_block(bench.stiff, frame.load)
     for r in range(frame.rows.shape[0]):
-        row_block(bench.soft, solved_soft, frame.rows[r], value_soft, row_soft)
-        row_block(bench.stiff, solved_stiff, frame.rows[r], value_stiff, row_stiff)
+        row_block(bench.soft, frame.rows[r])
+        row_block(bench.stiff, frame.rows[r])
         window_low = bench.window_low[r * 64 : r * 64 + 64]
         window_high = bench.window_high[r * 64 : r * 64 + 64]
         for b in range(64):
@@ -113,12 +117,11 @@ def mark_static_box(frame: Frame, ask: Ask, bench: Bench) -> None:
 
 def mark_static_point(frame: Frame, ask: Ask, bench: Bench) -> None:
     """Mark in bench.fails the lanes whose static compression breaks a window; bench.soft is overwritten."""
-    scratch, need, fails = bench.scratch, bench.need, bench.fails
-    load_size, good, value, row_size = scratch[0], scratch[1], scratch[2], scratch[3]
-    solved = bench.solved[0]
-    factor_block(bench.soft, frame.load, solved, load_size, good)
+    need, fails = bench.need, bench.fails
+    load_size, good, value, row_size = results(bench.soft)
+    factor_block(bench.soft, frame.load)
     for r in range(frame.rows.shape[0]):
-        row_block(bench.soft, solved, frame.rows[r], value, row_size)
+        row_block(bench.soft, frame.rows[r])
         window_low = bench.window_low[r * 64 : r * 64 + 64]
         window_high = bench.window_high[r * 64 : r * 64 + 64]
         for b in range(64):
@@ -167,10 +170,10 @@ def filter_group(
     low, high: least and greatest stiffness of the prefix and the other groups. rest: cost of the prefix and of the
     cheapest parts of the other groups.
     """
-    size = group.cost.shape[0]
+    count = group.cost.shape[0]
     bench = new_bench(frame, low)
-    for start in range(0, size, 64):
-        width = min(64, size - start)
+    for start in range(0, count, 64):
+        width = min(64, count - start)
         for b in range(64):
             p = start + min(b, width - 1)
             bench.lane_u[b] = p
@@ -191,6 +194,7 @@ def filter_group(
                 for a in range(3):
                     bench.axis[a, b] = group.dynamic[a, bench.lane_u[b]]
             fill_parts(group.matrix_map, bench.axis, low.dynamic, high.dynamic, bench)
-            mark_bands(bench.soft, bench.stiff, ask, bench, bench.eigen_fails)
+            size = low.dynamic.shape[0] * 64
+            mark_bands(bench.soft[:size], bench.stiff[:size], ask, bench, bench.eigen_fails)
         for b in range(width):
             verdict[start + b] = 1 if bench.fails[b] == 1.0 else (2 if bench.eigen_fails[b] == 1.0 else 0)

@@ -197,7 +197,8 @@ def band_survivors(
         fill_pairs(node.dynamic, mats_u, mats_v, bench, bench.soft)
         lane_demand(ask, bench)
         bench.fails[:] = 0.0
-        mark_bands(bench.soft, bench.soft, ask, bench, bench.fails)
+        block = bench.soft[: node.dynamic.shape[0] * 64]
+        mark_bands(block, block, ask, bench, bench.fails)
         found, number = keep_lanes(found, number, bench, width, counts, 5)
     return found[:number]
 

@@ -1,6 +1,6 @@
 """Source text of the compiled kernels: straight-line LDL^T over blocks of 64 systems, one text per size n.
 
-A block of packed symmetric matrices is a flat buffer A with entry k of system b at A[k * 64 + b]. All offsets are
+A block of packed symmetric matrices is a flat buffer S with entry k of system b at S[k * 64 + b]. All offsets are
 constants, every operation is on scalars inside one loop over b, so the compiler turns the loop into vector
 instructions. The functions are stated in `block_reference.py`, which computes the same in numpy.
 """
@@ -36,7 +36,8 @@ def _real_factor(n: int, growth: bool) -> list[str]:
 def _function(head: str, body: list[str], before: list[str] | None = None) -> str:
     """A function with one loop over the lanes; what is the same in all lanes is read before it.
 
-    Few arrays may appear inside the loop: beyond a handful of possible overlaps the compiler gives up on vectors.
+    All that is written many times lies in one buffer S: beyond a handful of arrays that might overlap the compiler
+    gives up on vectors.
     """
     first = "".join(f"    {line}\n" for line in before or [])
     lines = "\n".join(" " * 8 + line for line in body)
@@ -45,7 +46,8 @@ def _function(head: str, body: list[str], before: list[str] | None = None) -> st
 
 def factor_source(n: int) -> str:
     """factor_block: in-place LDL^T of positive definite systems and forward solution of one right side."""
-    body = _load_lower(n, "a", "A")
+    m = n * (n + 1) // 2
+    body = _load_lower(n, "a", "S")
     body.append("scale = a00")
     body += [f"scale = max(scale, a{i}{i})" for i in range(1, n)]
     body += _real_factor(n, growth=False)
@@ -56,23 +58,25 @@ def factor_source(n: int) -> str:
         body.append(f"y{i} = w{i}{terms}")
     for i in range(n):
         for j in range(i):
-            body.append(f"A[{_entry(i, j) * BLOCK} + b] = l{i}{j}")
-        body.append(f"A[{_entry(i, i) * BLOCK} + b] = r{i}")
-        body.append(f"Y[{i * BLOCK} + b] = y{i} * r{i}")
-    body.append("size[b] = " + " + ".join(f"y{i} * y{i} * r{i}" for i in range(n)))
-    body.append("good[b] = 1.0 if least > 1.0e-10 * scale else 0.0")
-    return _function("factor_block(A, load, Y, size, good)", body, [f"w{i} = load[{i}]" for i in range(n)])
+            body.append(f"S[{_entry(i, j) * BLOCK} + b] = l{i}{j}")
+        body.append(f"S[{_entry(i, i) * BLOCK} + b] = r{i}")
+        body.append(f"S[{(m + i) * BLOCK} + b] = y{i} * r{i}")
+    body.append(f"S[{(m + n) * BLOCK} + b] = " + " + ".join(f"y{i} * y{i} * r{i}" for i in range(n)))
+    body.append(f"S[{(m + n + 1) * BLOCK} + b] = 1.0 if least > 1.0e-10 * scale else 0.0")
+    return _function("factor_block(S, load)", body, [f"w{i} = load[{i}]" for i in range(n)])
 
 
 def row_source(n: int) -> str:
     """row_block: row^T X load and row^T X row from a factored block."""
+    m = n * (n + 1) // 2
     body = []
     for i in range(n):
-        terms = "".join(f" - A[{_entry(i, k) * BLOCK} + b] * y{k}" for k in range(i))
+        terms = "".join(f" - S[{_entry(i, k) * BLOCK} + b] * y{k}" for k in range(i))
         body.append(f"y{i} = w{i}{terms}")
-    body.append("value[b] = " + " + ".join(f"y{i} * Y[{i * BLOCK} + b]" for i in range(n)))
-    body.append("size[b] = " + " + ".join(f"y{i} * y{i} * A[{_entry(i, i) * BLOCK} + b]" for i in range(n)))
-    return _function("row_block(A, Y, row, value, size)", body, [f"w{i} = row[{i}]" for i in range(n)])
+    value = " + ".join(f"y{i} * S[{(m + i) * BLOCK} + b]" for i in range(n))
+    size = " + ".join(f"y{i} * y{i} * S[{_entry(i, i) * BLOCK} + b]" for i in range(n))
+    body += [f"S[{(m + n + 2) * BLOCK} + b] = {value}", f"S[{(m + n + 3) * BLOCK} + b] = {size}"]
+    return _function("row_block(S, row)", body, [f"w{i} = row[{i}]" for i in range(n)])
 
 
 def inertia_source(n: int) -> str:
@@ -95,10 +99,10 @@ def inertia_source(n: int) -> str:
 def complex_source(n: int) -> str:
     """complex_block: D q = f for complex symmetric D by LDL^T, with the residual checked.
 
-    D, F and Q hold all real parts first, then all imaginary parts.
+    S holds D (2m entries), f (2n), q (2n), real parts before imaginary ones, and whether q can be trusted.
     """
     m = n * (n + 1) // 2
-    body = _load_lower(n, "ar", "D") + _load_lower(n, "ai", "D", m)
+    body = _load_lower(n, "ar", "S") + _load_lower(n, "ai", "S", m)
     for j in range(n):
         for i in range(j, n):
             re = "".join(f" - lr{i}{k} * tr{j}{k} + li{i}{k} * ti{j}{k}" for k in range(j))
@@ -117,22 +121,23 @@ def complex_source(n: int) -> str:
     for i in range(n):
         re = "".join(f" - lr{i}{k} * yr{k} + li{i}{k} * yi{k}" for k in range(i))
         im = "".join(f" - lr{i}{k} * yi{k} - li{i}{k} * yr{k}" for k in range(i))
-        body += [f"yr{i} = F[{i * BLOCK} + b]{re}", f"yi{i} = F[{(n + i) * BLOCK} + b]{im}"]
+        body += [f"yr{i} = S[{(2 * m + i) * BLOCK} + b]{re}", f"yi{i} = S[{(2 * m + n + i) * BLOCK} + b]{im}"]
     for i in reversed(range(n)):
         re = "".join(f" - lr{k}{i} * qr{k} + li{k}{i} * qi{k}" for k in range(i + 1, n))
         im = "".join(f" - lr{k}{i} * qi{k} - li{k}{i} * qr{k}" for k in range(i + 1, n))
         body += [
             f"qr{i} = yr{i} * pr{i} - yi{i} * pi{i}{re}",
             f"qi{i} = yr{i} * pi{i} + yi{i} * pr{i}{im}",
-            f"Q[{i * BLOCK} + b] = qr{i}",
-            f"Q[{(n + i) * BLOCK} + b] = qi{i}",
+            f"S[{(2 * m + 2 * n + i) * BLOCK} + b] = qr{i}",
+            f"S[{(2 * m + 3 * n + i) * BLOCK} + b] = qi{i}",
         ]
     body += _residual(n)
-    return _function("complex_block(D, F, Q, good)", body)
+    return _function("complex_block(S)", body)
 
 
 def _residual(n: int) -> list[str]:
     """Largest squared residual against (1e-11)^2 times a squared bound of the terms that were added."""
+    m = n * (n + 1) // 2
     body = ["qq = " + " + ".join(f"qr{i} * qr{i} + qi{i} * qi{i}" for i in range(n))]
     body.append("worst = 0.0")
     body.append("bound = 0.0")
@@ -140,10 +145,10 @@ def _residual(n: int) -> list[str]:
         names = [(f"{max(i, k)}{min(i, k)}", k) for k in range(n)]
         re = "".join(f" - ar{e} * qr{k} + ai{e} * qi{k}" for e, k in names)
         im = "".join(f" - ar{e} * qi{k} - ai{e} * qr{k}" for e, k in names)
-        body += [f"er = F[{i * BLOCK} + b]{re}", f"ei = F[{(n + i) * BLOCK} + b]{im}"]
+        body += [f"er = S[{(2 * m + i) * BLOCK} + b]{re}", f"ei = S[{(2 * m + n + i) * BLOCK} + b]{im}"]
         body.append("worst = worst + er * er + ei * ei")
         body.append("bound = bound + " + " + ".join(f"ar{e} * ar{e} + ai{e} * ai{e}" for e, _ in names))
-    body.append("good[b] = 1.0 if worst <= 1.0e-22 * bound * qq else 0.0")
+    body.append(f"S[{(2 * m + 4 * n) * BLOCK} + b] = 1.0 if worst <= 1.0e-22 * bound * qq else 0.0")
     return body
 
 

@@ -145,13 +145,17 @@ def static_projection(stiffness: Floats, load: Floats, rows: Floats) -> tuple[Fl
     n = load.shape[0]
     out = np.empty((count * BLOCK, rows.shape[0]))
     flags = np.empty(count * BLOCK)
-    y, size, value = np.empty(n * BLOCK), np.empty(BLOCK), np.empty(BLOCK)
+    m = n * (n + 1) // 2
+    space = np.empty((m + n + 4) * BLOCK)
+    view = space.reshape(-1, BLOCK)
     for k in range(count):
         lanes = slice(k * BLOCK, (k + 1) * BLOCK)
-        kernels.factor_block(blocks[k], load, y, size, flags[lanes])
+        space[: m * BLOCK] = blocks[k]
+        kernels.factor_block(space, load)
+        flags[lanes] = view[m + n + 1]
         for r in range(rows.shape[0]):
-            kernels.row_block(blocks[k], y, np.ascontiguousarray(rows[r]), value, size)
-            out[lanes, r] = value
+            kernels.row_block(space, np.ascontiguousarray(rows[r]))
+            out[lanes, r] = view[m + n + 2]
     total = stiffness.shape[0]
     supported = flags[:total] == 1.0
     doubtful = ~supported
@@ -187,11 +191,11 @@ def complex_solve(matrices: Complexes, right: Complexes) -> tuple[Complexes, Fla
     n, total = matrices.shape[-1], matrices.shape[0]
     real, count = _blocks(np.ascontiguousarray(matrices.real))
     imag, _ = _blocks(np.ascontiguousarray(matrices.imag))
-    blocks = np.concatenate([real, imag], axis=1)
-    loads = np.concatenate([_vectors(right.real), _vectors(right.imag)], axis=1)
-    found, good = np.empty_like(loads), np.empty((count, BLOCK))
+    room = np.empty((count, (2 * n + 1) * BLOCK))
+    space = np.concatenate([real, imag, _vectors(right.real), _vectors(right.imag), room], axis=1)
     for k in range(count):
-        kernels.complex_block(blocks[k], loads[k], found[k], good[k])
+        kernels.complex_block(space[k])
+    found, good = space[:, -(2 * n + 1) * BLOCK : -BLOCK], space[:, -BLOCK:]
 
     parts = found.reshape(count, 2, n, BLOCK).transpose(1, 0, 3, 2).reshape(2, -1, n)[:, :total]
     q: Complexes = parts[0] + 1j * parts[1]

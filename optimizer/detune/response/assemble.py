@@ -6,12 +6,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.response.designs import Designs
-from detune.response.gravity import gravity_stiffness
 from detune.response.model import Model, StationRows
 from detune.response.part_laws import amplitude_part, frequency_part
 from detune.response.static_stiffness import group_sum
-from detune.response.views_static import static_batch
-from detune.response.working_point import WorkingPoint
+from detune.response.working_point import WorkingPoint, working_point
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -127,9 +125,8 @@ class Dynamic:
 
 def dynamic_matrices(model: Model, designs: Designs, amplitude: Floats | None = None) -> Dynamic:
     """Return the dynamic matrices of a batch, at the parts' dynamic stiffness at their load (and amplitude)."""
-    static = static_batch(model, designs)
-    parts = PartBatch(model, designs, static.working, amplitude)
-    geometric = gravity_stiffness(model, designs, static) if model.with_gravity_stiffness else 0.0
+    parts = PartBatch(model, designs, working_point(model, designs), amplitude)
+    geometric = model.geometric[designs.step] if model.with_gravity_stiffness else 0.0
     if parts.by_station:
         return _by_station(model, designs, parts, geometric)
     return Dynamic(
@@ -152,7 +149,7 @@ def at_amplitude(dynamic: Dynamic, amplitude: Floats) -> Dynamic:
 
 
 def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Floats | float) -> Dynamic:
-    stiffness = np.repeat(model.fixed_dynamic[None], designs.count, axis=0) + np.nan_to_num(geometric)
+    stiffness = np.repeat(model.fixed_dynamic[None], designs.count, axis=0) + geometric
     hysteretic = np.repeat(model.fixed_hysteretic[None], designs.count, axis=0)
     viscous = np.repeat(model.fixed_viscous[None], designs.count, axis=0)
     for number, station in enumerate(model.stations):

@@ -269,7 +269,7 @@ class DirectMachine:
     def gravity_stiffness(self) -> Floats:
         """Geometric stiffness (N, N) of all static forces on each body: sum (F.r) I - (r F^T + F r^T)/2 on its turns.
 
-        Source: physics.gravity; written out here once more.
+        The forces are those of equal springs at all stations. Source: physics.gravity; written out once more.
         """
         total = np.zeros((self.size, self.size))
         for body in self.brief.bodies:
@@ -292,19 +292,24 @@ class DirectMachine:
             if body_of(self.brief, steady.on) == body:
                 found.append((np.array(steady.position) - centre, np.array(steady.force)))
         for station in self.brief.stations:
-            axes = self.axes(station)
-            local = axes.T @ self.across(station) @ self.static_q
-            local[2] -= self.packing(station)
-            pushed = -self.share(station) * self.part(station, None).real * local
-            if self.rest is not None:
-                pushed[2] = self.share(station) * self.rest.force[self.brief.stations.index(station)]
-            found += self._ends(body, station.on, station.to, np.array(station.position), axes @ pushed)
-        for c in self.brief.connections:
-            position = np.array(c.position)
-            rows = self.place(body_of(self.brief, c.on), position) - self.place(c.to, position)
-            pushed = -connection_stiffness(c, None).real * (rows @ self.static_q)
-            found += self._ends(body, c.on, c.to, position, pushed)
+            times = 0 if self.share(station) == 0.0 else station.parallel
+            pushed = -times * self.across(station) @ self._rest_on_equal_springs
+            found += self._ends(body, station.on, station.to, np.array(station.position), pushed)
         return found
+
+    @cached_property
+    def _rest_on_equal_springs(self) -> Floats:
+        """Static displacements (N,) if every station had springs of 1 N/m in all directions, on rigid ground."""
+        equal = np.zeros((self.size, self.size))
+        for station in self.brief.stations:
+            times = 0 if self.share(station) == 0.0 else station.parallel
+            equal += times * self.across(station).T @ self.across(station)
+        bodies = self.free & (np.arange(self.size) < 6 * len(self.brief.bodies))
+        q = np.zeros(self.size)
+        mesh = np.ix_(bodies, bodies)
+        if np.linalg.matrix_rank(equal[mesh], hermitian=True) == int(bodies.sum()):
+            q[bodies] = np.linalg.solve(equal[mesh], self._weight_alone[bodies])
+        return q
 
     def _ends(self, body: str, on: str | None, to: str, place: Floats, force: Floats) -> list[tuple[Floats, Floats]]:
         ends = []
@@ -330,7 +335,7 @@ class DirectMachine:
         """Gravity's geometric stiffness as it stands in the dynamic stiffness (N, N): zero where the brief says so."""
         if not self.brief.gravity_stiffness:
             return np.zeros((self.size, self.size))
-        return np.nan_to_num(self.gravity_stiffness())
+        return self.gravity_stiffness()
 
     def tone_load(self, tone: Tone, omega: Floats) -> tuple[Complexes, Complexes]:
         """Load (F, N) of a tone and the floor motion (F, N) it prescribes or would make freely."""

@@ -48,7 +48,7 @@ class DirectStatic:
                 more = self.machine.share(station) * (self.machine.rest.tangent[number] - listed)
                 stiffness = stiffness + more * np.outer(row, row)
         geometric = self.machine.gravity_stiffness()[mesh]
-        if not np.all(np.isfinite(stiffness)) or not np.all(np.isfinite(geometric)):
+        if not np.all(np.isfinite(stiffness)):
             return np.array([np.nan])
         largest = float(eigh(-geometric, stiffness, eigvals_only=True)[-1])
         return np.array([1.0 / largest if largest > NEVER else np.inf])

@@ -19,6 +19,7 @@ from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.physics import rigid_body
 from detune.physics.orientation import axes_from_direction
+from detune.response.gravity import gravity_stiffness
 from detune.response.part_laws import ROOM_TEMPERATURE, GroupLaws, group_laws
 
 Floats = NDArray[np.float64]
@@ -122,19 +123,11 @@ class Group:
 
 
 @dataclass(frozen=True)
-class DeadLoad:
-    """A static force on a body: its arm (3,) from the body's reference point and force (B, 3) at each ballast step."""
-
-    body: str
-    arm: Floats
-    force: Floats
-
-
-@dataclass(frozen=True)
 class Model:
     """A machine ready for designs. n freedoms, B ballast steps, S stations, G groups.
 
-    `mass` (B, n, n); `weight` (B, n) static loads; `fixed_*` (n, n) of connections and floor.
+    `mass` (B, n, n); `weight` (B, n) static loads; `fixed_*` (n, n) of connections and floor; `geometric`
+    (B, n, n) gravity's geometric stiffness.
     """
 
     frame: Frame
@@ -154,7 +147,7 @@ class Model:
     ballast_mass: Floats
     ballast_cost: Floats
     creep: float
-    dead_loads: tuple[DeadLoad, ...]
+    geometric: Floats
     with_gravity_stiffness: bool
     assumed: tuple[str, ...]
 
@@ -227,7 +220,7 @@ def build_model(
         ballast_mass=ballast_mass,
         ballast_cost=ballast_cost,
         creep=0.0 if state is None else state.creep,
-        dead_loads=_dead_loads(brief, frame, properties),
+        geometric=_geometric(brief, frame, properties, stations, weight),
         with_gravity_stiffness=brief.gravity_stiffness,
         assumed=tuple(notes),
     )
@@ -338,22 +331,42 @@ def _without_gaps(arrays: MountArrays) -> MountArrays:
     return replace(arrays, **{name: np.nan_to_num(getattr(arrays, name)) for name in names})
 
 
-def _dead_loads(brief: Brief, frame: Frame, properties: dict[str, MassProperties]) -> tuple[DeadLoad, ...]:
+def _geometric(
+    brief: Brief,
+    frame: Frame,
+    properties: dict[str, MassProperties],
+    stations: tuple[StationRows, ...],
+    weight: Floats,
+) -> Floats:
+    """Return gravity's geometric stiffness (B, n, n), from the forces that equal springs would carry."""
+    total = np.zeros((len(weight), frame.count, frame.count))
+    own = [column for column, (name, _) in enumerate(frame.names) if name not in (FLOOR, STRUCTURE)]
+    rows = [station.rows[:, own] for station in stations]
+    equal = sum(s.parallel * row.T @ row for s, row in zip(stations, rows, strict=True))
+    if np.linalg.matrix_rank(equal, hermitian=True) < len(own):
+        return total
+    rest = np.linalg.solve(equal, weight[:, own].T).T
     steps = np.array([0.0] if brief.ballast is None else brief.ballast.steps)
     down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
-    loads = [
-        DeadLoad(name, p.centre - frame.references[name], np.repeat(p.mass * down[None], len(steps), axis=0))
-        for name, p in properties.items()
-    ]
-    if brief.ballast is not None:
-        body = body_of(brief, brief.ballast.on)
-        arm = np.array(brief.ballast.position) - frame.references[body]
-        loads.append(DeadLoad(body, arm, steps[:, None] * down))
-    for steady in brief.steady_loads:
-        body = body_of(brief, steady.on)
-        arm = np.array(steady.position) - frame.references[body]
-        loads.append(DeadLoad(body, arm, np.repeat(np.array(steady.force)[None], len(steps), axis=0)))
-    return tuple(loads)
+    for body in brief.bodies:
+        centre = frame.references[body.name]
+        arms = [np.zeros(3)]
+        forces = [np.repeat(properties[body.name].mass * down[None], len(steps), axis=0)]
+        if brief.ballast is not None and body_of(brief, brief.ballast.on) == body.name:
+            arms.append(np.array(brief.ballast.position) - centre)
+            forces.append(steps[:, None] * down)
+        for steady in brief.steady_loads:
+            if body_of(brief, steady.on) == body.name:
+                arms.append(np.array(steady.position) - centre)
+                forces.append(np.repeat(np.array(steady.force)[None], len(steps), axis=0))
+        for station, row in zip(stations, rows, strict=True):
+            pushed = -station.parallel * (rest @ row.T) @ station.axes.T
+            for end, sign in ((station.on, 1.0), (station.to, -1.0)):
+                if end == body.name:
+                    arms.append(station.position - centre)
+                    forces.append(sign * pushed)
+        total += gravity_stiffness(frame.rotation_rows(body.name), arms, forces)
+    return total
 
 
 def _spread(stations: tuple[StationRows, ...], group: int, n: int) -> Floats:

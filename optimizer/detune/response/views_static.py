@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.response.designs import Designs
-from detune.response.gravity import gravity_stiffness, weight_to_topple
+from detune.response.gravity import weight_to_topple
 from detune.response.model import Model, StationRows, find_station
 from detune.response.static_stiffness import static_stiffness
 from detune.response.working_point import WorkingPoint, working_point
@@ -50,8 +50,7 @@ class StaticBatch:
         return load
 
     def weight_to_topple(self) -> Floats:
-        geometric = gravity_stiffness(self.model, self.designs, self)
-        return weight_to_topple(self._tangent(), geometric)
+        return weight_to_topple(self._tangent(), self.model.geometric[self.designs.step])
 
     def _tangent(self) -> Floats:
         """Static stiffness (D, n, n) at the working load."""
