@@ -82,6 +82,9 @@ def _parser() -> argparse.ArgumentParser:
     vary.add_argument(
         "--to", required=True, nargs="+", metavar="VALUE", help="its values, each as in the study file"
     )
+    methods = ("auto", "enumeration", "bounded search")
+    run.add_argument("--method", choices=methods, default="auto", help="how to search (default: by the size)")
+    run.add_argument("--workers", type=int, default=1, metavar="N", help="worker threads of the bounded search")
     for verb in (run, vary):
         verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
     return parser
@@ -116,7 +119,7 @@ def _run(options: argparse.Namespace) -> int:
     folder = Path(options.out) if options.out else Path("results") / Path(options.study).stem
     check_folder(folder, options.overwrite)
     designs = tuple(named_design(study.brief, study.catalogs, text) for text in options.design)
-    result = run_study(study, _settings(options), designs)
+    result = run_study(study, _settings(options), designs, options.method)
     write_folder(result, folder, options.overwrite)
     print(summary(result))
     print(f"\nResult folder: {folder} (open report.html in a browser)")
@@ -183,12 +186,17 @@ def _settings(options: argparse.Namespace) -> "Settings":
             raise BriefError(
                 [Fault("--time-limit", None, "--time-limit", error.found, error.expected)]
             ) from None
-    return Settings(time_limit=limit, progress=_progress() if sys.stderr.isatty() else None)
+    return Settings(
+        time_limit=limit,
+        progress=_progress() if sys.stderr.isatty() else None,
+        announce=lambda text: print(text, file=sys.stderr, flush=True),
+        workers=max(1, getattr(options, "workers", 1)),
+    )
 
 
 def _progress() -> "Progress":
     def tell(done: int, total: int) -> None:
         end = "\n" if done >= total else ""
-        print(f"\r{done:,} of {total:,} designs ({done / total:.0%})", end=end, file=sys.stderr, flush=True)
+        print(f"\r{done / total:.0%} of the designs settled", end=end, file=sys.stderr, flush=True)
 
     return tell

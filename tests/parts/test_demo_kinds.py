@@ -5,14 +5,19 @@ Bands: ranges of the trade, from memory (CHECKS.md M5); they bound the data, the
 
 from __future__ import annotations
 
+import csv
 import math
 import re
 from collections import Counter
 from pathlib import Path
+from tempfile import TemporaryDirectory
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
+from detune.ground.errors import BriefError
 from detune.parts.catalog import Catalog, read_catalog
 from detune.parts.kinds.absorber import absorber_arrays
 from detune.parts.kinds.damper import damper_arrays
@@ -149,3 +154,27 @@ def test_file_is_a_plain_list(path: Path) -> None:
     assert all(line and "#" not in line for line in lines)
     cells = [cell for line in lines[1:] for cell in line.split(",") if re.fullmatch(r"-?[0-9.]+", cell)]
     assert all(len(cell.lstrip("-0.").replace(".", "").rstrip("0")) <= 3 for cell in cells)
+
+
+@settings(deadline=None, max_examples=40)
+@given(st.data())
+def test_whatever_stands_in_a_cell_is_read_or_named(data: st.DataObject) -> None:
+    """No other error than a BriefError that names a place, whatever a cell of any list is changed to."""
+    name = data.draw(st.sampled_from(sorted(KINDS)))
+    header, *rows = csv.reader((FOLDER / f"{name}.csv").read_text(encoding="ascii").splitlines())
+    rows = rows[:8]
+    odd = ["", "0", "-1", "1e300", "1e-300", "nan", "yes", "unknown", "12 %", "curves", "../rubber.csv"]
+    for _ in range(data.draw(st.integers(1, 5))):
+        row, place = data.draw(st.integers(0, 7)), data.draw(st.integers(0, len(header) - 1))
+        rows[row][place] = data.draw(st.sampled_from(odd) | st.floats(width=16).map(repr))
+    with TemporaryDirectory() as folder:
+        for further in TRUCK.further_files:
+            target = Path(folder) / "curves" / Path(further).name
+            target.parent.mkdir(exist_ok=True)
+            target.write_bytes(Path(further).read_bytes())
+        with (Path(folder) / "list.csv").open("w", newline="") as stream:
+            csv.writer(stream).writerows([header, *rows])
+        try:
+            read_catalog(Path(folder) / "list.csv", "list", KINDS[name])
+        except BriefError as error:
+            assert all(fault.where and fault.expected for fault in error.faults)

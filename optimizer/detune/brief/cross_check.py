@@ -7,6 +7,7 @@ from detune.brief.brief import Brief, applies
 from detune.brief.finding import Finding, Path
 from detune.brief.forcing import Forcing
 from detune.brief.machine import Connection, Station
+from detune.brief.matching import not_matching
 from detune.brief.sense import without_sense
 from detune.ground.errors import nearest_name
 
@@ -34,6 +35,7 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
             _choices,
             _ballast,
             without_sense,
+            not_matching,
         )
         for finding in check(brief)
     ]

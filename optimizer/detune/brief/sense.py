@@ -10,7 +10,7 @@ from detune.brief.allowable import HarmonicAllowable, Transmissibility, Transmit
 from detune.brief.allowable.at_point import PointAllowable
 from detune.brief.brief import Brief, applies
 from detune.brief.finding import Finding, Path
-from detune.brief.forcing import BaseMotion, Tone
+from detune.brief.forcing import Noise, Tone, Transient
 from detune.brief.machine import Body
 from detune.brief.mass_properties import mass_properties
 from detune.brief.statement import FREEDOMS, Direction
@@ -34,7 +34,7 @@ def without_sense(brief: Brief) -> list[Finding]:
             findings += _ground_under_base_motion(brief, path, allowable)
     if len(brief.bodies) == 1:
         for index, forcing in enumerate(brief.forcing):
-            if not isinstance(forcing, BaseMotion) and _moves_nothing(brief, index):
+            if forcing.floor_direction() is None and _moves_nothing(brief, index):
                 free = _list_free(brief.bodies[0])
                 expected = f"a forcing that can move the body, which is free in {free} only"
                 findings.append(
@@ -107,7 +107,7 @@ def _ground_under_base_motion(brief: Brief, path: Path, allowable: HarmonicAllow
     moved = [
         forcing.name
         for forcing in brief.forcing
-        if isinstance(forcing, BaseMotion)
+        if forcing.ground_moves()
         and any(
             applies(allowable.conditions, c.name) and applies(forcing.conditions, c.name)
             for c in brief.conditions
@@ -146,7 +146,8 @@ def _moves_nothing(brief: Brief, index: int) -> bool:
         tones = forcing.tones(speeds)
     body = brief.bodies[0]
     turning = [FREEDOMS.index(name) - 3 for name in body.free if name.startswith("r")]
-    for tone in tones:
+    acting: list[Tone | Noise | Transient] = [*tones, *forcing.noises(), *forcing.transients()]
+    for tone in acting:
         rows = _rows(body, tone.position)
         force, moment = np.array(tone.force), np.array(tone.moment)
         load = force @ rows
@@ -155,4 +156,4 @@ def _moves_nothing(brief: Brief, index: int) -> bool:
         scale = np.abs(force).max() * max(1.0, float(np.abs(rows).max())) + np.abs(moment).max()
         if np.any(np.abs(load + turned) > NOTHING * scale):
             return False
-    return bool(tones)
+    return bool(acting)

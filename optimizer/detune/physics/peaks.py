@@ -167,8 +167,8 @@ def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[Float
     coarse = coarse_left | coarse_right
     # Too far for a parabola: 1/amplitude is a V with its foot about one half width from the peak sample.
     foot = np.minimum(np.minimum(_foot(left, y_left), _foot(right, y_right)), 0.9 * COARSE_GAP * bracket.pole)
-    to_left = np.minimum(np.maximum(foot, np.where(coarse_right, 0.0, 0.5 * right)), 0.4 * left)
-    to_right = np.minimum(np.maximum(foot, np.where(coarse_left, 0.0, 0.5 * left)), 0.4 * right)
+    to_left = np.minimum(np.maximum(foot, np.where(coarse_right, 0.0, 2.0 * right)), 0.4 * left)
+    to_right = np.minimum(np.maximum(foot, np.where(coarse_left, 0.0, 2.0 * left)), 0.4 * right)
     hidden = _hidden(rise, np.maximum(y_left, y_right), np.maximum(left, right) / bracket.pole)
     places = [
         np.where(coarse, np.where(coarse_left, -to_left, np.nan), place),

@@ -118,6 +118,7 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     if candidates.findings:
         raise BriefError(faults_without_lines(brief, candidates.findings))
     notes = tuple(str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed))
+    notes = (*(note for forcing in brief.forcing for note in forcing.assumed()), *notes)
     return _problem(brief, candidates.mounts, candidates.dropped, notes)
 
 

@@ -14,7 +14,7 @@ from detune.problem.requirement import Requirement
 from detune.response.assemble import dynamic_matrices
 from detune.response.designs import Designs, part_numbers, total_cost
 from detune.response.evaluate import TWO_PI, family_amplitude, response_values
-from detune.response.margin import lower_margin, upper_margin, window_margin
+from detune.response.margin import upper_margin, window_margin
 from detune.response.modes import mode_batch
 from detune.response.views_static import static_batch
 
@@ -60,7 +60,8 @@ def objective_values(problem: Problem, designs: Designs, least_margin: Floats) -
     """Return every objective (D,) of a batch whose least margins are known."""
     separation = np.full(designs.count, np.inf)
     for each in problem.states:
-        view = mode_batch(dynamic_matrices(each.model, designs)).view(each.intervals)
+        dynamic = dynamic_matrices(each.model, designs)
+        view = mode_batch(dynamic).view(dynamic, each.intervals)
         separation = np.minimum(separation, least_separation(view, problem.exempt_amplification))
     return {
         "cost": total_cost(problem.model, designs),
@@ -97,16 +98,17 @@ def _statics(problem: Problem, designs: Designs) -> Floats:
 
 
 def _modes(problem: Problem, designs: Designs) -> Floats:
-    views = {
-        each.state: mode_batch(dynamic_matrices(each.model, designs)).view(each.intervals)
-        for each in problem.states
-    }
+    views = {}
+    for each in problem.states:
+        dynamic = dynamic_matrices(each.model, designs)
+        views[each.state] = mode_batch(dynamic).view(dynamic, each.intervals)
     rows = []
     for requirement in problem.modes:
         assert isinstance(requirement.allowable, ModeAllowable)
         view = views[requirement.state]
-        limit = np.array(requirement.allowable.lower_limit())
-        rows.append(lower_margin(requirement.allowable.value(view), limit))
+        limits = requirement.allowable.lower_limit(), requirement.allowable.upper_limit()
+        lower, upper = (None if limit is None else np.array(limit) for limit in limits)
+        rows.append(window_margin(requirement.allowable.value(view), lower, upper))
     return np.stack(rows)
 
 

@@ -37,7 +37,8 @@ def case_block(
 ) -> None:
     """Least limit/response - 1 of 64 designs at one frequency into margin; good 0 where the solve is doubtful.
 
-    dynamic ((2m+4n+1)*64): packed -omega^2 M + fixed stiffness per lane, real then imaginary; the springs are added to it.
+    dynamic ((2m+4n+1)*64): packed -omega^2 M + fixed stiffness per lane, real then imaginary; the springs are
+    added to it, and the solution is left behind it.
     outer (S*3, m): packed b b^T, parallel count included. stations (S*3, n). counts (S*3,).
     kappa_re, kappa_im (S*3, 64): stiffness of one part. drive (S*3,): base displacement. Limits flat.
     """

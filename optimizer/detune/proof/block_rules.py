@@ -83,7 +83,12 @@ def mark_bands(low: Floats, high: Floats, ask: Ask, bench: Bench, fails: Floats)
 def results(block: Floats) -> tuple[Floats, Floats, Floats, Floats]:
     """Views of the last four entries of a factored block: load^T X load, trust, row^T X load, row^T X row."""
     end = block.shape[0]
-    return block[end - 256 : end - 192], block[end - 192 : end - 128], block[end - 128 : end - 64], block[end - 64 :]
+    return (
+        block[end - 256 : end - 192],
+        block[end - 192 : end - 128],
+        block[end - 128 : end - 64],
+        block[end - 64 :],
+    )
 
 
 def mark_static_box(frame: Frame, ask: Ask, bench: Bench) -> None:

@@ -15,7 +15,11 @@ def _entry(row: int, column: int) -> int:
 
 
 def _load_lower(n: int, name: str, source: str, first: int = 0) -> list[str]:
-    return [f"{name}{i}{j} = {source}[{(first + _entry(i, j)) * BLOCK} + b]" for i in range(n) for j in range(i + 1)]
+    return [
+        f"{name}{i}{j} = {source}[{(first + _entry(i, j)) * BLOCK} + b]"
+        for i in range(n)
+        for j in range(i + 1)
+    ]
 
 
 def _real_factor(n: int, growth: bool) -> list[str]:

@@ -5,10 +5,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.report.quick_stages import quick_stages, stage_margins
 from detune.report.words import margin_text, number, percent
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
-from detune.response.designs import all_designs, total_cost
+from detune.response.designs import Designs, all_designs, total_cost
 from detune.study.run import Result
 
 Floats = NDArray[np.float64]
@@ -16,6 +17,8 @@ CHEAPER = 3
 # Listing the costs of more designs than this would take longer than the report is worth.
 COUNTABLE = 4_000_000
 BLOCK = 500_000
+LOOKED_AT = 400
+ROUNDING = 1e-9
 SAFER_MARGINS = (0.05, 0.10, 0.20)
 
 
@@ -37,7 +40,7 @@ class Alternatives:
 
 
 def alternatives(result: Result) -> Alternatives:
-    """Return the cheaper choices nearest in cost, the next point of the front, and cheapest ones with more margin."""
+    """Return the cheaper choices that miss least, the next point of the front, and cheapest ones with more margin."""
     answer = result.answer
     if answer is None:
         return Alternatives(None, ())
@@ -45,9 +48,8 @@ def alternatives(result: Result) -> Alternatives:
     if result.problem.count > COUNTABLE or result.outcome.stopped != "finished":
         return Alternatives(None, others)
     costs = _costs(result)
-    below = np.flatnonzero(costs < answer.cost - 1e-9 * abs(answer.cost))
-    nearest = below[np.argsort(-costs[below], kind="stable")[:CHEAPER]]
-    return Alternatives(len(below), (*(_cheaper(result, answer, int(i)) for i in nearest), *others))
+    below = int((costs < answer.cost * (1.0 - ROUNDING)).sum())
+    return Alternatives(below, (*_cheaper(result, answer), *others))
 
 
 def _costs(result: Result) -> Floats:
@@ -57,14 +59,53 @@ def _costs(result: Result) -> Floats:
     return np.concatenate(blocks)
 
 
-def _cheaper(result: Result, answer: Assessment, index: int) -> Alternative:
-    design = result.problem.design(all_designs(result.problem.model, index, index + 1), 0)
-    judged = assess(result.study.brief, design)
-    why = "meets the brief, but is worse in what comes first"
-    if result.front.trade[0] == "cost":
-        # Only reached where solver and assessor differ: the reader must know.
-        why = "the solver excluded it, the assessor finds that it meets the brief: report this with the study file"
-    return Alternative(f"next cheaper, by {number(answer.cost - judged.cost, 3)}", judged, why)
+def _cheaper(result: Result, answer: Assessment) -> list[Alternative]:
+    """Return the cheaper designs that come nearest to the brief, of those worth looking at."""
+    looked_at = _near_misses(result, answer)
+    found = []
+    for index in range(looked_at.count):
+        judged = assess(result.study.brief, result.problem.design(looked_at, index))
+        why = "worse in what comes first"
+        if result.front.trade[0] == "cost":
+            # A design that meets is reached here only where solver and assessor differ: the reader must know.
+            why = "the solver excluded it, but the assessor finds it met: report this with the study file"
+        found.append(Alternative(f"cheaper by {number(answer.cost - judged.cost, 3)}", judged, why))
+    return sorted(found, key=lambda item: -item.assessment.tightest.margin)
+
+
+def _near_misses(result: Result, answer: Assessment) -> Designs:
+    """Return the cheaper ones that miss least: of the answer with one choice changed, and of the closest ones kept."""
+    problem = result.problem
+    near = _with_one_choice_changed(result)
+    every = Designs(
+        np.concatenate([near.part, result.outcome.closest.part]),
+        np.concatenate([near.step, result.outcome.closest.step]),
+    )
+    cost = total_cost(problem.model, every)
+    order = np.argsort(-cost, kind="stable")
+    kept = every.take(order[cost[order] < answer.cost * (1.0 - ROUNDING)][:LOOKED_AT])
+    least = np.full(kept.count, np.inf)
+    for stage in quick_stages(problem) if kept.count else ():
+        least = np.minimum(least, stage_margins(stage, kept).min(axis=0))
+        # The stages go from cheap to dear: only the best are worth the next one.
+        best = np.argsort(-least, kind="stable")[: max(CHEAPER, kept.count // 3)]
+        kept, least = kept.take(best), least[best]
+    table = np.column_stack([kept.part, kept.step])
+    _, first = np.unique(table, axis=0, return_index=True)
+    return kept.take(np.sort(first)[:CHEAPER])
+
+
+def _with_one_choice_changed(result: Result) -> Designs:
+    model, answer = result.problem.model, result.front.designs.take(np.array([result.front.index[0]]))
+    parts, steps = [], []
+    for group, data in enumerate(model.groups):
+        changed = np.repeat(answer.part, len(data.mounts), axis=0)
+        changed[:, group] = np.arange(len(data.mounts))
+        parts.append(changed)
+        steps.append(np.repeat(answer.step, len(data.mounts)))
+    parts.append(np.repeat(answer.part, len(model.ballast_mass), axis=0))
+    steps.append(np.arange(len(model.ballast_mass), dtype=np.intp))
+    return Designs(np.concatenate(parts), np.concatenate(steps))
 
 
 def _next_on_front(result: Result, answer: Assessment) -> list[Alternative]:
@@ -93,7 +134,7 @@ def _safer(result: Result, answer: Assessment) -> list[Alternative]:
         if any(other.assessment.design == judged.design for other in found):
             continue
         why = f"costs {number(judged.cost - answer.cost, 4)} more than the answer"
-        found.append(Alternative(f"cheapest with every margin at least {percent(wanted)}", judged, why))
+        found.append(Alternative(f"cheapest with every margin at least {100.0 * wanted:g} %", judged, why))
     if not found:
         index = int(margins.argmax()) if len(margins) else -1
         if index >= 0 and margins[index] > answer.least_margin:

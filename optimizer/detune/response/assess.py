@@ -114,8 +114,8 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
             ]
         elif isinstance(allowable, ModeAllowable):
             value = float(allowable.value(each.modes.view)[0])
-            limit = allowable.lower_limit()
-            rows.append(_row(allowable, f"steady conditions{told}", "whole machine", value, limit, None))
+            limits = allowable.lower_limit(), allowable.upper_limit()
+            rows.append(_row(allowable, f"steady conditions{told}", "whole machine", value, *limits))
     for condition in each.conditions:
         rows += _harmonic_rows(each.machine, each.static, each.modes, condition, allowables, each.places)
     return rows

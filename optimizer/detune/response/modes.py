@@ -22,11 +22,19 @@ class ModeBatch:
     shapes: Floats
     loss_factor: Floats
 
-    def view(self, intervals: Sequence[tuple[float, float]]) -> ModeView:
-        """Return what a mode allowable looks at."""
+    def view(self, dynamic: Dynamic, intervals: Sequence[tuple[float, float]]) -> ModeView:
+        """Return what a mode allowable looks at. dynamic: the matrices of these designs."""
         with np.errstate(divide="ignore"):
             amplification = 1.0 / self.loss_factor
-        return ModeView(self.frequency, amplification, np.array(intervals, dtype=float).reshape(-1, 2))
+        between = np.array(intervals, dtype=float).reshape(-1, 2)
+        return ModeView(self.frequency, amplification, between, lambda: self._decay(dynamic))
+
+    def _decay(self, dynamic: Dynamic) -> Floats:
+        """Rates of decay (D, n) in 1/s: of the damped poles, or by the loss factors of frequency laws."""
+        if dynamic.parts.with_frequency:
+            return np.asarray(np.pi * self.loss_factor * self.frequency)
+        matrices = dynamic.mass, dynamic.viscous, dynamic.hysteretic, dynamic.stiffness
+        return np.asarray(-modes.damped_poles(*matrices).real)
 
 
 def mode_batch(dynamic: Dynamic) -> ModeBatch:

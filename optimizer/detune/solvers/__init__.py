@@ -2,10 +2,27 @@
 
 from types import ModuleType
 
-from detune.solvers import enumeration
+from detune.problem.build import Problem
+from detune.solvers import bounded, enumeration
+from detune.solvers.selection import why_not
 
 SOLVERS: dict[str, ModuleType] = {
     enumeration.NAME: enumeration,
+    bounded.NAME: bounded,
 }
 
-__all__ = ["SOLVERS"]
+# Going through designs one by one takes about a minute for this many.
+MOST_BY_ENUMERATION = 1_500_000
+
+
+def choose(problem: Problem) -> tuple[str, str]:
+    """Return the method for a problem and why: enumeration while it is short work, else the bounded search."""
+    if problem.count <= MOST_BY_ENUMERATION:
+        return enumeration.NAME, f"{problem.count:,} designs can be gone through one by one"
+    if bounded.accepts(problem):
+        return bounded.NAME, f"{problem.count:,} designs are too many to go through one by one"
+    reason = why_not(problem) or "it finds fronts of cost against separation or least margin alone"
+    return enumeration.NAME, f"the bounded search does not apply ({reason})"
+
+
+__all__ = ["SOLVERS", "choose"]

@@ -17,17 +17,26 @@ Progress = Callable[[int, int], None]
 
 @dataclass(frozen=True)
 class Settings:
-    """How long a solver may work (seconds, None is unlimited) and whom it tells how far it is."""
+    """How long a solver may work (seconds, None is unlimited), with how many workers, and whom it tells.
+
+    `progress` is told how much of the work is done, `announce` what takes long before it starts; `interrupted` is
+    asked for a stop. `front`: whether the whole front is wanted, or the cheapest design alone.
+    """
 
     time_limit: float | None = None
     progress: Progress | None = None
+    announce: Callable[[str], None] | None = None
+    interrupted: Callable[[], bool] | None = None
+    workers: int = 1
+    front: bool = True
 
 
 @dataclass(frozen=True)
 class RuleCount:
     """How many designs one requirement excluded, as the first that they failed in the order of stages.
 
-    `by_part` holds for each group the number of excluded designs with each of its parts.
+    `by_part` holds for each group the number of excluded designs with each of its parts; it is empty where
+    whole sets of designs were excluded at once.
     """
 
     stage: str
@@ -40,7 +49,9 @@ class RuleCount:
 class ProofRecord:
     """Why nothing better exists: how many designs there were and how many each rule excluded.
 
-    The counts and the designs that meet every rule add up to `designs` if the solver finished.
+    The counts and the designs that meet every rule add up to `designs` if the solver finished. `tested` tells
+    which requirements failed in the final test of a bounded search, whose rule "exact" counts them together;
+    `lower_bound` is the cost below which no design that was not looked at can lie.
     """
 
     method: str
@@ -49,6 +60,8 @@ class ProofRecord:
     rules: tuple[RuleCount, ...]
     met: int
     seconds: float
+    tested: tuple[RuleCount, ...] = ()
+    lower_bound: float | None = None
 
     @property
     def accounted(self) -> bool:

@@ -95,4 +95,6 @@ def _told_at_its_name(
 def _hashes(brief: Brief, study: Path | None) -> tuple[tuple[str, str], ...]:
     files = [] if study is None else [study]
     files += [brief.folder / source.file for source in brief.catalogs]
+    named = [name for statement in (*brief.forcing, *brief.allowables) for name in statement.data_files()]
+    files += [brief.folder / name for name in dict.fromkeys(named)]
     return tuple((file.name, hashlib.sha256(file.read_bytes()).hexdigest()) for file in files)

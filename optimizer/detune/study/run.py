@@ -7,7 +7,7 @@ from detune.problem.build import Problem, build
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.response.design import Design
-from detune.solvers import SOLVERS
+from detune.solvers import SOLVERS, choose
 from detune.solvers.outcome import Outcome, Settings
 from detune.study.front import Front, assessed_front
 from detune.study.load import Study
@@ -32,6 +32,7 @@ class Result:
     closest: Assessment | None
     reasons: tuple[PartReason, ...]
     seconds: float
+    why_method: str = ""
 
     @property
     def exit_code(self) -> int:
@@ -45,12 +46,13 @@ def run_study(
     study: Study,
     settings: Settings | None = None,
     compared: tuple[Design, ...] = (),
-    solver: str = "enumeration",
+    solver: str = "auto",
 ) -> Result:
     """Return the result of a study. Raises BriefError on a faulty brief and SolveError on a solver's fault."""
     started = time.perf_counter()
     problem = build(study.brief, study.catalogs)
-    outcome = SOLVERS[solver].solve(problem, settings or Settings())
+    method, why_method = choose(problem) if solver == "auto" else (solver, "asked for")
+    outcome = SOLVERS[method].solve(problem, settings or Settings())
     front = assessed_front(problem, outcome)
     reasons = part_reasons(problem, outcome)
     return Result(
@@ -62,6 +64,7 @@ def run_study(
         compared=tuple(assess(study.brief, design) for design in compared),
         closest=None if front.points else _closest(problem, outcome),
         reasons=reasons,
+        why_method=why_method,
         seconds=time.perf_counter() - started,
     )
 

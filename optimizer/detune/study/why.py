@@ -32,6 +32,16 @@ class PartReason:
     closest: str | None
 
 
+@dataclass(frozen=True)
+class _Judged:
+    """The closest design of a part: the first rule it fails, the one it misses by most, that margin, its name."""
+
+    first: str | None
+    hardest: str | None
+    margin: float | None
+    design: str | None
+
+
 def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
     """Return what became of every part of every group, the filtered ones included."""
     hardest = _hardest(problem, outcome)
@@ -40,9 +50,11 @@ def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
         each = problem.count // len(data.mounts)
         for part, mount in enumerate(data.mounts):
             with_part = np.flatnonzero(outcome.designs.part[:, group] == part)
-            counts = [(rule.rule, int(rule.by_part[group][part])) for rule in outcome.record.rules]
-            first = next(((rule, count) for rule, count in counts if count), (None, 0))
-            rule, margin, closest = hardest.get((group, part), (None, None, None))
+            counts = [
+                (rule.rule, int(rule.by_part[group][part])) for rule in outcome.record.rules if rule.by_part
+            ]
+            judged = hardest.get((group, part), _Judged(None, None, None, None))
+            first = next(((rule, count) for rule, count in counts if count), (judged.first, 0))
             reasons.append(
                 PartReason(
                     group=data.name,
@@ -53,9 +65,9 @@ def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
                     filtered=None,
                     first_rule=first[0],
                     first_excluded=first[1],
-                    hardest_rule=rule,
-                    hardest_margin=margin,
-                    closest=closest,
+                    hardest_rule=judged.hardest,
+                    hardest_margin=judged.margin,
+                    closest=judged.design,
                 )
             )
     for dropped in problem.dropped:
@@ -65,7 +77,7 @@ def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
     return tuple(reasons)
 
 
-def _hardest(problem: Problem, outcome: Outcome) -> dict[tuple[int, int], tuple[str, float, str]]:
+def _hardest(problem: Problem, outcome: Outcome) -> dict[tuple[int, int], _Judged]:
     """Judge the closest design of every part that fell out by all requirements."""
     if outcome.closest.count == 0:
         return {}
@@ -76,8 +88,11 @@ def _hardest(problem: Problem, outcome: Outcome) -> dict[tuple[int, int], tuple[
             labels += [requirement.label for requirement in stage.requirements]
             margins.append(stage.margins(outcome.closest))
     table = np.nan_to_num(np.concatenate(margins), nan=-np.inf)
-    worst = table.argmin(axis=0)
-    return {
-        key: (labels[row], float(table[row, index]), str(problem.design(outcome.closest, index)))
-        for index, (key, row) in enumerate(zip(outcome.closest_of, worst, strict=True))
-    }
+    worst, first = table.argmin(axis=0), (table < 0.0).argmax(axis=0)
+    judged = {}
+    for index, key in enumerate(outcome.closest_of):
+        margin = float(table[worst[index], index])
+        met = margin >= 0.0
+        design = str(problem.design(outcome.closest, index))
+        judged[key] = _Judged(None if met else labels[first[index]], labels[worst[index]], margin, design)
+    return judged

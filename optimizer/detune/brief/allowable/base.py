@@ -59,6 +59,14 @@ class Allowable(Statement):
         """Return the stations this allowable refers to."""
         return ()
 
+    def data_files(self) -> tuple[str, ...]:
+        """Return the files this allowable was read from, as the study names them."""
+        return ()
+
+    def assumed(self) -> tuple[str, ...]:
+        """Return what this allowable leaves open and the program fills in, in words."""
+        return ()
+
 
 class HarmonicAllowable(Allowable):
     """An upper limit on the amplitude of a response to the condition's tones.
@@ -122,15 +130,19 @@ class StaticAllowable(Allowable):
 
 
 class ModeAllowable(Allowable):
-    """A lower limit on a quantity of the undamped modes."""
+    """A limit on a quantity of the modes; a kind writes one of the two limits, or both."""
 
     def value(self, view: ModeView) -> Floats:
         """Return the limited quantity (D,)."""
         raise NotImplementedError(type(self).__name__)
 
-    def lower_limit(self) -> float:
-        """Return the lower limit."""
-        raise NotImplementedError(type(self).__name__)
+    def lower_limit(self) -> float | None:
+        """Return the lower limit, or None."""
+        return None
+
+    def upper_limit(self) -> float | None:
+        """Return the upper limit, or None."""
+        return None
 
 
 class DesignAllowable(Allowable):

@@ -4,6 +4,7 @@ D designs are seen at once, F frequencies of each design's own. Local axes of a 
 axis, pointing from the floor to the body; x along its radial direction.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any, Protocol
 
@@ -37,6 +38,9 @@ class StaticView(Protocol):
     def rotation(self, body: str) -> Floats:
         """Rotation (D, 3) in rad of a body."""
 
+    def floor_motion(self) -> Floats:
+        """Displacement (D, 3) in m of the floor under the machine's weight, global axes."""
+
     def station_deflection(self, station: str) -> Floats:
         """Deflection (D, 3) in m of the part, local axes; compression is negative z."""
 
@@ -60,6 +64,9 @@ class ResponseView(Protocol):
     def motion(self, point: str, rate: int = 0) -> Responses:
         """Displacement (D, F, 3) in m of a point, global axes, or its derivative."""
 
+    def floor_motion(self, rate: int = 0) -> Responses:
+        """Displacement (D, F, 3) in m of the floor, its free motion included, or its derivative."""
+
     def station_deflection(self, station: str, rate: int = 0) -> Responses:
         """Deflection (D, F, 3) in m of the part, local axes, or its derivative."""
 
@@ -74,12 +81,19 @@ class ResponseView(Protocol):
 class ModeView:
     """Undamped modes at the dynamic stiffness: frequency (D, n) Hz, amplification (D, n) = 1/loss factor.
 
-    `intervals` (k, 2) Hz are the excitation intervals of the steady conditions.
+    `intervals` (k, 2) Hz are the excitation intervals of the steady conditions. `find_decay` returns the rates
+    of decay, and is called only where they are asked for.
     """
 
     frequency: Floats
     amplification: Floats
     intervals: Floats
+    find_decay: Callable[[], Floats]
+
+    @property
+    def decay(self) -> Floats:
+        """Rates of decay (D, n) in 1/s of the damped modes."""
+        return self.find_decay()
 
 
 @dataclass(frozen=True)

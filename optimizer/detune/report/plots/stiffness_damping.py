@@ -10,8 +10,8 @@ from detune.brief.brief import Brief
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem, with_mounts
 from detune.problem.requirement import Requirement
-from detune.problem.stages import Stage, stages
 from detune.report.plots.style import BLACK, GREY, LINES, VERMILION, Floats, Titles, shorten
+from detune.report.quick_stages import has_slow_parts, quick_stages, stage_margins
 from detune.response.assessment import Assessment
 from detune.response.design import Design
 from detune.response.designs import Designs
@@ -104,7 +104,7 @@ def data(result: Result) -> MapData | None:
         parts=parts,
         here=here,
         ballast=subject.design.ballast,
-        without_slow=any(group.rows.has_slow_parts for group in problem.harmonics),
+        without_slow=has_slow_parts(problem),
     )
 
 
@@ -200,15 +200,12 @@ def _fields(
         np.repeat(numbers[:, None], len(scaled), axis=1), np.full(len(nodes), step, dtype=np.intp)
     )
     found: dict[str, Floats] = {}
-    for stage in _stages_drawn(changed):
-        blocks = [designs.take(numbers[i : i + stage.size]) for i in range(0, len(nodes), stage.size)]
-        margins = np.concatenate([stage.margins(block) for block in blocks], axis=1)
-        for requirement, margin in zip(stage.requirements, margins, strict=True):
+    for stage in quick_stages(changed):
+        for requirement, margin in zip(stage.requirements, stage_margins(stage, designs), strict=True):
             if isinstance(requirement.allowable, LoadRange):
                 continue
             label = _label(requirement)
-            worst = np.where(np.isnan(margin), -1.0, margin)
-            found[label] = np.minimum(found[label], worst) if label in found else worst
+            found[label] = np.minimum(found[label], margin) if label in found else margin
     shape = (len(loss), len(stiffness))
     failed = tuple(label for label, margin in found.items() if bool((margin < 0.0).all()))
     crossing = [
@@ -218,19 +215,6 @@ def _fields(
     ]
     crossing.sort(key=lambda field: int((field.margin >= 0.0).sum()))
     return tuple(crossing), failed
-
-
-def _stages_drawn(problem: Problem) -> tuple[Stage, ...]:
-    """Return the stages that judge the nodes; records and passages take too long for a map and are left out."""
-    slow = [group.requirements for group in problem.harmonics if group.rows.has_slow_parts]
-    chosen: dict[tuple[Requirement, ...], Stage] = {}
-    for stage in stages(problem):
-        if stage.requirements == problem.totals:
-            continue
-        # Of the bounds of a slow group the last is the closest one.
-        if stage.bound == (stage.requirements in slow):
-            chosen[stage.requirements] = stage
-    return tuple(chosen.values())
 
 
 def _label(requirement: Requirement) -> str:
