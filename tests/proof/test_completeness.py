@@ -65,7 +65,7 @@ def everything(selection):
 
 
 @pytest.mark.parametrize("groups, parts", [(1, 60), (2, 24), (3, 9), (4, 5)])
-@pytest.mark.parametrize("seed", [0, 1, 2])
+@pytest.mark.parametrize("seed", [0, 1])
 def test_numpy_rules_lose_nothing(groups, parts, seed):
     selection = static_instance(parts, groups, seed)
     expected = everything(selection)
@@ -74,11 +74,11 @@ def test_numpy_rules_lose_nothing(groups, parts, seed):
 
 def test_the_instances_are_telling():
     """Between them the instances hold hundreds of designs that a wrong rule could lose."""
-    assert sum(len(everything(static_instance(9, 3, seed))) for seed in range(3)) > 20
-    assert sum(len(everything(static_instance(24, 2, seed))) for seed in range(3)) > 20
+    assert sum(len(everything(static_instance(9, 3, seed))) for seed in range(2)) > 20
+    assert sum(len(everything(static_instance(24, 2, seed))) for seed in range(2)) > 20
 
 
-@pytest.mark.parametrize("groups, parts, seed", [(2, 14, 1), (3, 9, 1), (4, 5, 2)])
+@pytest.mark.parametrize("groups, parts, seed", [(2, 12, 1), (3, 6, 1), (4, 4, 1)])
 def test_block_rules_lose_nothing(monkeypatch, tmp_path, groups, parts, seed):
     """The text that is compiled, run as plain Python."""
     names = {**vars(block_rules), **vars(block_search), **vars(block_response)}

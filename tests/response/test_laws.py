@@ -34,12 +34,14 @@ def test_six_axes_batch_equals_assessor(law: str, kind: str) -> None:
     forcing = brief.forcing if kind == "tones" else law_machines.forcings(seed)[kind]
     conditions = brief.conditions if kind == "tones" else law_machines.conditions(kind)
     statics = law_machines.STATIC if kind == "tones" else law_machines.STATIC[:2]
+    # After a shock the floor moves on, and absolute displacement has no greatest value.
+    limits = law_machines.LIMITS[1:] if kind == "pulse" else law_machines.LIMITS
     brief = brief.model_copy(
         update={
             "gravity_stiffness": True,
             "forcing": forcing,
             "conditions": conditions,
-            "allowables": (*law_machines.LIMITS, *statics),
+            "allowables": (*limits, *statics),
         }
     )
     law_machines.agreed(brief, LAWS[law](one), other)

@@ -31,13 +31,14 @@ LARGER_IS_BETTER: dict[str, bool] = {
 class CatalogSource(Statement):
     """A parts list. `file` is taken relative to the study file.
 
-    `headers` maps our column names to the supplier's, `units` gives the unit of a mapped column,
+    `sheet` names the sheet of a workbook that has several. `headers` maps our column names to the supplier's, `units` gives the unit of a mapped column,
     `constants` gives one value (with its unit) for a column the list does not have.
     """
 
     name: Name
     file: Text
     kind: Name = "mount"
+    sheet: Name | None = None
     headers: dict[Name, Text] = {}
     units: dict[Name, Text] = {}
     constants: dict[Name, Text] = {}
@@ -74,12 +75,27 @@ class Window(Statement):
 
 
 class Choice(Statement):
-    """The parts one group may take: from which catalogs, filtered by columns, or named one by one."""
+    """The parts one group may take: from which catalogs, filtered by columns, or named one by one.
+
+    `parallel`: how many of the same part may stand side by side at each station, for example [1, 2].
+    `dampers`: damper catalogs of which one damper, or none, may stand beside each mount. `empty`: whether
+    the group may be left without parts.
+    """
 
     group: Name
     catalogs: tuple[Name, ...]
     where: dict[Name, tuple[Text, ...] | Window] = {}
     parts: tuple[Name, ...] | None = None
+    parallel: tuple[int, ...] = (1,)
+    dampers: tuple[Name, ...] = ()
+    empty: bool = False
+
+    @field_validator("parallel")
+    @classmethod
+    def _counts(cls, value: tuple[int, ...]) -> tuple[int, ...]:
+        if not value or min(value) < 1 or len(set(value)) != len(value):
+            raise refuse(list(value), "different whole numbers, each 1 or more, for example [1, 2]")
+        return value
 
     @field_validator("catalogs")
     @classmethod

@@ -11,6 +11,9 @@ from detune.ground import units
 from detune.ground.errors import nearest_name
 from detune.parts.catalog import Catalog, filter_parts
 from detune.parts.kinds import KINDS
+from detune.parts.columns import column_named
+from detune.parts.compose import damper_refused, empty_station, in_parallel, with_damper
+from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Mount
 
 
@@ -42,8 +45,8 @@ def find_candidates(brief: Brief, catalogs: Mapping[str, Catalog]) -> Candidates
         path: Path = ("choice", index)
         kept: list[Mount] = []
         earlier, before = len(findings), len(dropped)
-        for name in choice.catalogs:
-            if name in catalogs:
+        for i, name in enumerate(choice.catalogs):
+            if name in catalogs and _of_kind((*path, "catalogs", i), catalogs[name], "mount", findings):
                 kept += _from_catalog(path, choice, catalogs[name], dropped, findings)
         kept = _named(path, choice, kept, catalogs, dropped, findings)
         if not kept and len(findings) == earlier:
@@ -52,23 +55,60 @@ def find_candidates(brief: Brief, catalogs: Mapping[str, Catalog]) -> Candidates
                 f"a filter that some part passes; the first one left out, {first.mount.part}: {first.reason}"
             )
             findings.append(Finding((*path, "where"), f"no part left for group {group}", expected))
-        mounts.append(tuple(kept))
+        mounts.append(_composed(path, choice, kept, catalogs, dropped, findings))
     findings += lateral_missing(brief, mounts)
     findings += _outside_tables(brief, mounts)
     return Candidates(tuple(mounts), tuple(dropped), tuple(findings))
 
 
+def _of_kind(path: Path, catalog: Catalog, kind: str, findings: list[Finding]) -> bool:
+    if catalog.kind != kind:
+        findings.append(Finding(path, f"{catalog.name}, a {catalog.kind} list", f"a {kind} list"))
+    return catalog.kind == kind
+
+
+def _composed(
+    path: Path,
+    choice: Choice,
+    kept: list[Mount],
+    catalogs: Mapping[str, Catalog],
+    dropped: list[Dropped],
+    findings: list[Finding],
+) -> tuple[Mount, ...]:
+    """Return the parts with every admitted count in parallel and every damper beside them, and the empty station."""
+    dampers: list[Damper] = []
+    for i, name in enumerate(choice.dampers):
+        if name not in catalogs:
+            findings.append(Finding((*path, "dampers", i), name, "a catalog", nearest_name(name, catalogs)))
+        elif _of_kind((*path, "dampers", i), catalogs[name], "damper", findings):
+            dampers += [part for part in catalogs[name].parts if isinstance(part, Damper)]
+    found: list[Mount] = []
+    for count in choice.parallel:
+        for mount in kept:
+            several = in_parallel(mount, count)
+            found.append(several)
+            for damper in dampers:
+                reason = damper_refused(several, damper)
+                if reason is None:
+                    found.append(with_damper(several, damper))
+                else:
+                    dropped.append(Dropped(choice.group, several, reason))
+    if choice.empty:
+        found.append(empty_station(choice.catalogs[0]))
+    return tuple(found)
+
+
 def _from_catalog(
     path: Path, choice: Choice, catalog: Catalog, dropped: list[Dropped], findings: list[Finding]
 ) -> list[Mount]:
-    columns = {column.name: column for column in KINDS[catalog.kind].COLUMNS}
+    known = KINDS[catalog.kind].COLUMNS
     criteria: dict[str, list[str] | dict[str, float]] = {}
     sound = True
     for name, wanted in choice.where.items():
         place = (*path, "where", name)
-        column = columns.get(name)
+        column = column_named(known, name)
         if column is None:
-            findings.append(Finding(place, name, "a column of the catalog", nearest_name(name, columns)))
+            findings.append(Finding(place, name, "a column of the catalog", nearest_name(name, [each.name for each in known])))
             sound = False
         elif isinstance(wanted, Window):
             window = _window(place, wanted, column.kind, findings)
@@ -92,8 +132,8 @@ def _from_catalog(
     if not sound:
         return []
     kept, reasons = filter_parts(catalog, criteria)
-    dropped += [Dropped(choice.group, catalog.parts[i], reason) for i, reason in reasons.items()]
-    return [catalog.parts[i] for i in kept]
+    dropped += [Dropped(choice.group, catalog.mounts[i], reason) for i, reason in reasons.items()]
+    return [catalog.mounts[i] for i in kept]
 
 
 def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> dict[str, float] | None:
@@ -130,7 +170,7 @@ def _named(
 ) -> list[Mount]:
     if choice.parts is None:
         return kept
-    known = [m.part for name in choice.catalogs if name in catalogs for m in catalogs[name].parts]
+    known = [m.part for name in choice.catalogs if name in catalogs for m in catalogs[name].mounts]
     for i, part in enumerate(choice.parts):
         if part not in known:
             findings.append(

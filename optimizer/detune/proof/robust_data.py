@@ -143,7 +143,7 @@ def system_matrices(system: RobustSystem, points: Floats, kappa: Complexes) -> C
     for i, term in enumerate(system.mass_terms):
         amount = points[:, system.mass_variable[i]] if system.mass_variable[i] >= 0 else np.ones(len(points))
         matrices = matrices - (squares * amount)[:, None, None] * term
-    outer = np.einsum("ai,aj->aij", system.axes, system.axes).reshape(len(system.axes), -1)
+    outer = np.einsum("ai,aj->aij", system.axes, system.axes).reshape(-1, system.mass.size)
     result: Complexes = matrices + (kappa @ outer).reshape(matrices.shape)
     return result
 

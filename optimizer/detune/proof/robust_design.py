@@ -124,7 +124,7 @@ def case_outputs(selection: Selection, case: int) -> Iterator[tuple[str, OutputL
             f"case {case} station {s} axis {a} force",
             output(np.zeros(n), single, float(cases.force_limit[case, s, a])),
         )
-    for t, total in enumerate(cases.total.reshape(len(cases.total), -1)):
+    for t, total in enumerate(cases.total.reshape(-1, 3 * stations)):
         yield f"case {case} total {t}", output(np.zeros(n), total, float(cases.total_limit[case, t]))
 
 

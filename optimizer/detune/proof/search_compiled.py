@@ -203,7 +203,7 @@ def response_screen(selection: Selection, kernels: Any) -> Callable[..., Floats]
     loss = np.concatenate([g.loss for g in selection.groups])
     viscous = np.concatenate([g.viscous for g in selection.groups])
     mass, cases, fixed = pack(selection.ballast.mass), selection.harmonic, selection.fixed
-    total = np.ascontiguousarray(cases.total.reshape(len(cases.total), -1))
+    total = np.ascontiguousarray(cases.total.reshape(-1, 3 * count))
 
     def one_case(designs: Integers, case: int) -> Floats:
         omega = 2.0 * np.pi * float(cases.frequency[case])

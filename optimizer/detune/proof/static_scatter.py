@@ -61,7 +61,7 @@ def static_matrices(problem: StaticScatter, factors: Floats) -> Floats:
     """Static stiffness matrices (N, n, n) for factors (N, V)."""
     padded = np.concatenate([factors, np.ones((factors.shape[0], 1))], axis=1)
     weights = padded[:, problem.variable] * problem.stiffness
-    outer = np.einsum("ai,aj->aij", problem.axes, problem.axes).reshape(len(problem.axes), -1)
+    outer = np.einsum("ai,aj->aij", problem.axes, problem.axes).reshape(-1, problem.fixed.size)
     matrices: Floats = problem.fixed + (weights @ outer).reshape(len(factors), *problem.fixed.shape)
     return matrices
 

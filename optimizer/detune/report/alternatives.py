@@ -115,8 +115,9 @@ def _next_on_front(result: Result, answer: Assessment) -> list[Alternative]:
     first, second = result.front.trade[:2]
     if (first, second) != ("cost", "separation"):
         return [Alternative("next on the front", point, "worse in what comes first")]
-    gain, more = percent(point.separation - answer.separation), number(point.cost - answer.cost, 4)
-    return [Alternative("next on the front", point, f"costs {more} more for {gain} more separation")]
+    more = number(point.cost - answer.cost, 4)
+    change = f"separation {percent(point.separation)} instead of {percent(answer.separation)}"
+    return [Alternative("next on the front", point, f"costs {more} more; {change}")]
 
 
 def _safer(result: Result, answer: Assessment) -> list[Alternative]:

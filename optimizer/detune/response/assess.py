@@ -21,6 +21,7 @@ from detune.brief.allowable import (
 from detune.brief.allowable.views import DesignView, Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
+from detune.parts.kinds.mount import Mount
 from detune.physics import modes, separation
 from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
 from detune.response.design import Design
@@ -123,11 +124,27 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
 
 def design_totals(brief: Brief, design: Design) -> DesignView:
     """Return cost, added mass and number of part numbers of one design."""
-    cost = sum(s.parallel * design.mounts[design.groups.index(s.group)].cost for s in brief.stations)
+    quantity: dict[tuple[str, str], int] = {}
+    cost = 0.0
+    for station in brief.stations:
+        mount = design.mounts[design.groups.index(station.group)]
+        cost += station.parallel * mount.damper_cost
+        if mount.pieces:
+            key = (mount.catalog, mount.base or mount.part)
+            quantity[key] = quantity.get(key, 0) + station.parallel * mount.pieces
+    for mount in {(m.catalog, m.base or m.part): m for m in design.mounts if m.pieces}.values():
+        bought = quantity[mount.catalog, mount.base or mount.part]
+        single = (mount.cost - mount.damper_cost) / mount.pieces
+        reached = [price for least, price in mount.cost_breaks if bought >= least]
+        cost += bought * (reached[-1] if reached else single)
     if brief.ballast is not None:
         cost += design.ballast * brief.ballast.cost_per_kg
-    numbers = len({(mount.catalog, mount.part) for mount in design.mounts})
+    numbers = len({(place, name) for mount in design.mounts for place, name in _bought(mount)})
     return DesignView(np.array([cost]), np.array([design.ballast]), np.array([float(numbers)]))
+
+
+def _bought(mount: Mount) -> list[tuple[str, str]]:
+    return [("damper" if place else mount.catalog, name) for place, name in enumerate(mount.bought)]
 
 
 def exempt_amplification(brief: Brief) -> float | None:

@@ -14,15 +14,12 @@ def causal_matrices(dynamic: Dynamic, modal: ModeBatch, index: int) -> tuple[Flo
     """Return stiffness and damping (n, n) of one design with viscous stand-ins for what is not causal.
 
     Each mode gets the viscous damping of its own loss factor (physics.causal). Where stiffness depends on
-    frequency, each mode also keeps the stiffness of its own frequency; the modes, found at different stiffnesses,
-    are made orthogonal first.
+    frequency, each mode also keeps the stiffness of its own frequency.
     """
     mass, shapes, omega = dynamic.mass[index], modal.shapes[index], TWO_PI * modal.frequency[index]
+    carried = mass @ shapes
     if not dynamic.parts.with_frequency:
         lost = np.sum(shapes * (dynamic.hysteretic[index] @ shapes), axis=0)
-        carried = mass @ shapes
         return dynamic.stiffness[index], dynamic.viscous[index] + (carried * (lost / omega)) @ carried.T
-    values, vectors = np.linalg.eigh(shapes.T @ mass @ shapes)
-    carried = mass @ shapes @ (vectors / np.sqrt(values)) @ vectors.T
     damping = (carried * (modal.loss_factor[index] * omega)) @ carried.T
     return (carried * omega**2) @ carried.T, damping

@@ -92,14 +92,14 @@ def _at_own_frequency(
     """Return frequency, shapes and loss factor of each mode at its own frequency, and causal matrices of them.
 
     The matrices keep each mode's own stiffness and loss: shapes found at different stiffnesses are made
-    orthogonal by the mass first.
+    orthogonal by the mass (the polar factor of L^T shapes, M = L L^T).
     """
     mesh = np.ix_(machine.free, machine.free)
     frequency = frequency.copy()
     shapes = np.zeros((len(frequency), len(frequency)))
     loss = np.zeros_like(frequency)
     for mode in range(len(frequency)):
-        for _ in range(60):
+        for _ in range(400):
             full = machine.stiffness(np.array([2.0 * np.pi * frequency[mode]]))[0][mesh]
             found, found_shapes = modes.undamped_modes(mass, full.real)
             change = abs(found[mode] - frequency[mode])
@@ -109,8 +109,10 @@ def _at_own_frequency(
         shape = found_shapes[:, mode]
         shapes[:, mode] = shape
         loss[mode] = float(shape @ full.imag @ shape) / float(shape @ full.real @ shape)
-    values, vectors = np.linalg.eigh(shapes.T @ mass @ shapes)
-    carried = mass @ shapes @ (vectors / np.sqrt(values)) @ vectors.T
+    root = np.linalg.cholesky(mass)
+    left, _, right = np.linalg.svd(root.T @ shapes)
+    shapes = np.linalg.solve(root.T, left @ right)
+    carried = mass @ shapes
     omega = 2.0 * np.pi * frequency
     stiffness = (carried * omega**2) @ carried.T
     return frequency, shapes, loss, stiffness, (carried * (loss * omega**2)) @ carried.T

@@ -52,6 +52,11 @@ class DirectMotion:
         rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
         return (self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
 
+    def floor_motion(self, rate: int = 0) -> NDArray[np.generic]:
+        rows = np.zeros((3, self.machine.size))
+        rows[:, self.machine.floor_axes] = np.eye(3)
+        return (self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
+
     def station_deflection(self, station: str, rate: int = 0) -> NDArray[np.generic]:
         stated = station_named(self.machine, station)
         rows = self.machine.axes(stated).T @ self._rows(self.machine.across(stated))

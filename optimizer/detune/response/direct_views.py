@@ -58,6 +58,9 @@ class DirectStatic:
         rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
         return (1.0 + self.machine.creep) * (rows @ self.q)[None]
 
+    def floor_motion(self) -> Floats:
+        return (1.0 + self.machine.creep) * self.q[None, self.machine.floor_axes]
+
     def rotation(self, body: str) -> Floats:
         return (1.0 + self.machine.creep) * (self.machine.turn(body) @ self.q)[None]
 
@@ -130,6 +133,9 @@ class DirectTone:
         stated = next(p for p in self.machine.brief.points if p.name == point)
         rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
         return self._rate(rate) * (self.q @ rows.T)[None]
+
+    def floor_motion(self, rate: int = 0) -> Complexes:
+        return self._rate(rate) * self.q[:, self.machine.floor_axes][None]
 
     def station_deflection(self, station: str, rate: int = 0) -> Complexes:
         stated = station_named(self.machine, station)

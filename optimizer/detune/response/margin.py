@@ -22,6 +22,7 @@ def lower_margin(value: Floats, limit: Floats) -> Floats:
     """
     value, limit = np.broadcast_arrays(np.asarray(value, float), np.asarray(limit, float))
     at_zero = np.where(value > 0.0, np.inf, np.where(value < 0.0, -np.inf, 1.0))
+    at_zero = np.where(np.isneginf(limit) & ~np.isnan(value), np.inf, at_zero)
     ratio = at_zero.copy()
     np.divide(value, limit, out=ratio, where=limit > 0.0)
     ratio = np.where((limit < 0.0) & (value >= 0.0), np.inf, ratio)

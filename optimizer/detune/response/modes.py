@@ -11,7 +11,7 @@ from detune.physics import modes
 from detune.response.assemble import Dynamic
 
 Floats = NDArray[np.float64]
-ITERATIONS = 30
+ITERATIONS = 400
 
 
 @dataclass(frozen=True)
@@ -49,7 +49,9 @@ def mode_batch(dynamic: Dynamic) -> ModeBatch:
 def _iterated(dynamic: Dynamic, frequency: Floats, shapes: Floats) -> ModeBatch:
     """Modes where stiffness depends on frequency: each one at the stiffness of its own frequency.
 
-    A fixed-point iteration, mode by mode; stiffness changes slowly with frequency, so it closes fast.
+    A fixed-point iteration, mode by mode; it closes wherever stiffness rises by less than the square of the
+    frequency, which a relaxation always does. Shapes found at different stiffnesses are not quite orthogonal by
+    the mass; the nearest set that is takes their place.
     """
     loss = np.zeros_like(frequency)
     for mode in range(frequency.shape[1]):
@@ -65,4 +67,11 @@ def _iterated(dynamic: Dynamic, frequency: Floats, shapes: Floats) -> ModeBatch:
             found_shapes, dynamic.hysteretic + added.imag, dynamic.viscous, np.maximum(found, 1e-12)
         )
         loss[:, mode] = each[:, mode]
-    return ModeBatch(frequency, shapes, loss)
+    return ModeBatch(frequency, _orthogonal(dynamic.mass, shapes), loss)
+
+
+def _orthogonal(mass: Floats, shapes: Floats) -> Floats:
+    """Return the shapes (D, n, n) nearest to the given ones with shapes^T M shapes = 1."""
+    values, vectors = np.linalg.eigh(np.swapaxes(shapes, -1, -2) @ mass @ shapes)
+    nearest: Floats = shapes @ (vectors / np.sqrt(values)[:, None, :]) @ np.swapaxes(vectors, -1, -2)
+    return nearest

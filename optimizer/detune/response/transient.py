@@ -126,6 +126,12 @@ class MotionView:
         moved = self._rates(rate) @ self.model.points[point].T
         return (moved + self.floor[rate][:, None] * self.base)[None]
 
+    def floor_motion(self, rate: int = 0) -> Floats:
+        total = self.floor[rate][:, None] * self.base + np.zeros_like(self._rates(rate)[:, :1])
+        if self.model.frame.flexible_floor:
+            total = total + self._rates(rate)[:, -1:] * np.array([0.0, 0.0, 1.0])
+        return total[None]
+
     def station_deflection(self, station: str, rate: int = 0) -> Floats:
         return (self._rates(rate) @ find_station(self.model, station).rows.T)[None]
 

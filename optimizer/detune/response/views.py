@@ -83,6 +83,14 @@ class ToneBatch:
     def motion(self, point: str, rate: int = 0) -> Complexes:
         return self._rate(rate) * (self.q @ self.model.points[point].T)
 
+    def floor_motion(self, rate: int = 0) -> Complexes:
+        total = np.zeros((*self.omega.shape, 3), dtype=complex)
+        if self._prescribed is not None:
+            total = total + self._prescribed
+        if self.model.frame.flexible_floor:
+            total[..., 2] += self.q[..., -1]
+        return self._rate(rate) * total
+
     def station_deflection(self, station: str, rate: int = 0) -> Complexes:
         found = find_station(self.model, station)
         deflection: Complexes = self.q @ found.rows.T

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.physics.static import solve_static_where_supported
 from detune.response.designs import Designs
 from detune.response.gravity import weight_to_topple
 from detune.response.model import Model, StationRows, find_station
@@ -30,6 +31,12 @@ class StaticBatch:
 
     def motion(self, point: str) -> Floats:
         return (1.0 + self.model.creep) * (self.q @ self.model.points[point].T)
+
+    def floor_motion(self) -> Floats:
+        total = np.zeros((self.count, 3))
+        if self.model.frame.flexible_floor:
+            total[:, 2] = (1.0 + self.model.creep) * self.q[:, -1]
+        return total
 
     def rotation(self, body: str) -> Floats:
         return (1.0 + self.model.creep) * (self.q @ self.model.frame.rotation_rows(body).T)
@@ -82,5 +89,9 @@ def static_batch(model: Model, designs: Designs) -> StaticBatch:
             part = model.groups[station.group].arrays.stiffness_static[designs.part[:, station.group], 2]
             lift = station.parallel * station.factor * station.packing * part
             load = load + lift[:, None] * station.rows[2]
+    if any(mount.pieces == 0 for group in model.groups for mount in group.mounts):
+        # Empty stations can leave a design without support, which fails every static limit.
+        q, supported = solve_static_where_supported(stiffness, load)
+        return StaticBatch(model, designs, np.where(supported[:, None], q, np.nan))
     q = np.linalg.solve(stiffness, load[..., None])[..., 0]
     return StaticBatch(model, designs, q)

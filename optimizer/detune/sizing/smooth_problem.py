@@ -129,14 +129,15 @@ def joined_ratios(problem: SmoothProblem, x: Floats, norm: float) -> tuple[Float
     size = np.abs(z)
     phase = np.where(size > 0, np.conj(z) / np.where(size > 0, size, 1.0), 0.0)
     adjoint = np.einsum("wij,wj->wi", inverse, (share * phase / problem.limits) @ problem.rows)
-    through = np.einsum("wi,pij,wj->wp", adjoint, problem.patterns, q, optimize=True)
+    # One matrix product for all patterns: lambda^T T q is the inner product of T with the outer product.
+    outer = (adjoint[:, :, None] * q[:, None, :]).reshape(value.size, -1)
+    through = outer @ problem.patterns.reshape(problem.patterns.shape[0], -1).T
     loss = eta[problem.damping_group]
     by_k = -np.real(through * (k * (1 + 1j * loss)))
     each = -np.real(1j * through * (k * loss))
-    by_eta = np.zeros((value.size, problem.groups))
-    np.add.at(by_eta.T, problem.damping_group, each.T)
+    by_eta = each @ (problem.damping_group[:, None] == np.arange(problem.groups))
     omega2 = (2 * np.pi * problem.frequencies) ** 2
-    inertia = np.einsum("wi,qij,wj->wq", adjoint, problem.ballast_patterns, q, optimize=True)
+    inertia = outer @ problem.ballast_patterns.reshape(problem.ballast_patterns.shape[0], -1).T
     pushed = np.einsum("wi,qwi->wq", adjoint, problem.ballast_loads)
     by_ballast = np.real(omega2[:, None] * inertia + pushed)
     return value, np.concatenate([by_k, by_eta, by_ballast], axis=1)

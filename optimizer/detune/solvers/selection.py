@@ -33,6 +33,8 @@ def why_not(problem: Problem) -> str | None:
     """Return why a problem has no selection arrays, None if it has."""
     if any(group.laws is not None for group in problem.model.groups):
         return "some parts' stiffness follows load, frequency or amplitude, for which the bounds do not hold"
+    if any(mount.cost_breaks for group in problem.model.groups for mount in group.mounts):
+        return "prices fall with the quantity bought, so the cost of a group depends on the others"
     if problem.exempt_amplification is not None:
         return "modes are exempted by amplification, which the eigenvalue bound does not know"
     return None

@@ -45,7 +45,7 @@ def study_of_tables(data: Mapping[str, Any], positions: Positions, path: str | P
     if faults or reading.brief is None:
         raise BriefError(dict.fromkeys(faults))
     source = Path(path).read_text(encoding="utf-8")
-    return Study(reading.brief, catalogs, _hashes(reading.brief, Path(path)), source)
+    return Study(reading.brief, catalogs, _hashes(reading.brief, catalogs, Path(path)), source)
 
 
 def study_of(brief: Brief) -> Study:
@@ -58,7 +58,7 @@ def study_of(brief: Brief) -> Study:
     faults += faults_without_lines(brief, findings)
     if faults:
         raise BriefError(dict.fromkeys(faults))
-    return Study(brief, catalogs, _hashes(brief, None), brief.model_dump_json(indent=2))
+    return Study(brief, catalogs, _hashes(brief, catalogs, None), brief.model_dump_json(indent=2))
 
 
 def _catalogs(
@@ -72,7 +72,7 @@ def _catalogs(
     for index, source in enumerate(sources):
         try:
             catalogs[source.name] = read_catalog(
-                folder / source.file, source.name, source.kind, source.headers, source.units, source.constants
+                folder / source.file, source.name, source.kind, source.headers, source.units, source.constants, source.sheet
             )
         except BriefError as error:
             faults += [_told_at_its_name(fault, index, source, study, positions) for fault in error.faults]
@@ -92,9 +92,13 @@ def _told_at_its_name(
     return Fault(study, line, dotted(path), found, expected, fault.nearest)
 
 
-def _hashes(brief: Brief, study: Path | None) -> tuple[tuple[str, str], ...]:
+def _hashes(
+    brief: Brief, catalogs: Mapping[str, Catalog], study: Path | None
+) -> tuple[tuple[str, str], ...]:
     files = [] if study is None else [study]
-    files += [brief.folder / source.file for source in brief.catalogs]
+    for source in brief.catalogs:
+        files.append(brief.folder / source.file)
+        files += [Path(name) for name in catalogs[source.name].further_files]
     named = [name for statement in (*brief.forcing, *brief.allowables) for name in statement.data_files()]
     files += [brief.folder / name for name in dict.fromkeys(named)]
     return tuple((file.name, hashlib.sha256(file.read_bytes()).hexdigest()) for file in files)

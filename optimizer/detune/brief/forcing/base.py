@@ -1,5 +1,6 @@
 """What every forcing kind hands on: tones, each a phasor of known growth over a range of frequency."""
 
+import cmath
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import ClassVar
@@ -170,3 +171,9 @@ class SteadyToneForcing(Forcing):
 def fixed_speed(frequency: float) -> str:
     """Return the name of the speed of every tone that stays at one frequency (Hz)."""
     return f"{frequency:.9g} Hz"
+
+
+def phasor(amplitude: tuple[float, float, float], phase: float | None) -> Complex3:
+    """Return the complex amplitude of a peak vector with a common phase (rad; None counts as zero)."""
+    turn = cmath.exp(1j * (phase or 0.0))
+    return (amplitude[0] * turn, amplitude[1] * turn, amplitude[2] * turn)

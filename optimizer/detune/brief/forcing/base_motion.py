@@ -6,8 +6,7 @@ from typing import ClassVar, Literal
 from pydantic import model_validator
 
 from detune.brief.condition import SpeedRange
-from detune.brief.forcing.base import SteadyToneForcing, Tone
-from detune.brief.forcing.harmonic_force import phasor
+from detune.brief.forcing.base import SteadyToneForcing, Tone, phasor
 from detune.brief.statement import (
     Acceleration,
     Angle,

@@ -1,13 +1,12 @@
 """A harmonic force or moment of constant amplitude at a stated place."""
 
-import cmath
 from collections.abc import Mapping
 from typing import ClassVar, Literal
 
 from pydantic import model_validator
 
 from detune.brief.condition import SpeedRange
-from detune.brief.forcing.base import Complex3, SteadyToneForcing, Tone
+from detune.brief.forcing.base import SteadyToneForcing, Tone, phasor
 from detune.brief.statement import Angle, ForceVector, MomentVector, Name, Position, refuse
 
 
@@ -44,9 +43,3 @@ class HarmonicForce(SteadyToneForcing):
                 phase_known=self.phase is not None,
             ),
         )
-
-
-def phasor(amplitude: tuple[float, float, float], phase: float | None) -> Complex3:
-    """Return the complex amplitude of a peak vector with a common phase (rad; None counts as zero)."""
-    turn = cmath.exp(1j * (phase or 0.0))
-    return (amplitude[0] * turn, amplitude[1] * turn, amplitude[2] * turn)

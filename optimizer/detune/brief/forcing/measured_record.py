@@ -9,7 +9,7 @@ from pydantic import PrivateAttr, ValidationInfo, model_validator
 from detune.brief.condition import SpeedRange
 from detune.brief.data_file import DataTable, read_named
 from detune.brief.forcing.base import Forcing, Noise, Tone, Transient
-from detune.brief.forcing.line_spectrum import MOST_LINES, FixedLine, line_tones
+from detune.brief.forcing.fixed_lines import MOST_LINES, FixedLine, line_tones
 from detune.brief.statement import (
     AxisName,
     Direction,

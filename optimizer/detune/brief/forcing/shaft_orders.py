@@ -6,8 +6,7 @@ from typing import ClassVar, Literal
 from pydantic import field_validator, model_validator
 
 from detune.brief.condition import SpeedRange
-from detune.brief.forcing.base import ShaftForcing, Tone
-from detune.brief.forcing.harmonic_force import phasor
+from detune.brief.forcing.base import ShaftForcing, Tone, phasor
 from detune.brief.statement import (
     Angle,
     ForceVector,

@@ -7,8 +7,7 @@ import numpy as np
 from pydantic import field_validator, model_validator
 
 from detune.brief.condition import SpeedRange
-from detune.brief.forcing.base import ShaftForcing, Tone
-from detune.brief.forcing.harmonic_force import phasor
+from detune.brief.forcing.base import ShaftForcing, Tone, phasor
 from detune.brief.statement import (
     Angle,
     AxisName,

@@ -63,6 +63,9 @@ class Mount:
     stated figure. loss_factor of a mount with a table is the least of the table. amplitude_min and
     amplitude_max: of the peak dynamic axial deflection, m, for which the row holds. cost: of one piece.
     approximate: why the figures are an estimate, empty for a row of a list.
+
+    What parts.compose puts together: base, the part number of the mount itself; pieces of it; the part number
+    of a damper beside it, and damper_cost, its share of the cost.
     """
 
     catalog: str
@@ -99,6 +102,17 @@ class Mount:
     amplitude_min: float | None = None
     amplitude_max: float | None = None
     approximate: str = ""
+    base: str = ""
+    pieces: int = 1
+    damper: str = ""
+    damper_cost: float = 0.0
+
+    @property
+    def bought(self) -> tuple[str, ...]:
+        """The part numbers this stands for: of the mount and of a damper beside it; none for an empty station."""
+        if self.pieces == 0:
+            return ()
+        return (self.base or self.part, *((self.damper,) if self.damper else ()))
 
 
 def build(table: Table, catalog: str) -> tuple[tuple[Mount, ...], tuple[Assumed, ...]]:

@@ -1,0 +1,115 @@
+"""What may stand at a station besides one mount: several of it in parallel, a damper beside it, or nothing."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import replace
+
+from detune.parts.kinds.damper import Damper
+from detune.parts.kinds.mount import Axes, Mount
+from detune.parts.laws import UnknownDamping
+
+EMPTY = "(empty)"
+
+
+def in_parallel(mount: Mount, count: int) -> Mount:
+    """Return `count` equal mounts side by side as one: stiffness, damping, loads, mass and cost times the count.
+
+    Deflections stay those of one mount. Raises ValueError below one mount.
+    """
+    if count < 1:
+        raise ValueError(f"{count} mounts in parallel")
+    if count == 1:
+        return mount
+    curve = mount.load_curve
+    unknown = mount.damping_unknown
+    return replace(
+        mount,
+        part=f"{count} x {mount.part}",
+        base=mount.part,
+        pieces=count,
+        stiffness_static=_times(mount.stiffness_static, count),
+        stiffness_dynamic=_times(mount.stiffness_dynamic, count),
+        viscous=_times(mount.viscous, count),
+        load_min=count * mount.load_min,
+        load_max=count * mount.load_max,
+        load_rated=None if mount.load_rated is None else count * mount.load_rated,
+        mass=None if mount.mass is None else count * mount.mass,
+        cost=count * mount.cost,
+        load_curve=None if curve is None else replace(curve, load=tuple(count * load for load in curve.load)),
+        damping_unknown=None
+        if unknown is None
+        else UnknownDamping(unknown.loss_factor, _times(unknown.viscous, count)),
+    )
+
+
+def with_damper(mount: Mount, damper: Damper) -> Mount:
+    """Return a mount with a damper beside it: its coefficients added, and its travel as a limit of deflection.
+
+    The damper is fitted at its middle at the working height, so the mount may move half its stroke from there;
+    with the sag of the mount that is at least the deflection limit taken here. Raises ValueError where the two do
+    not simply add: a mount whose dashpot stands in series with a spring, or a damper with elastic rods.
+    """
+    reason = damper_refused(mount, damper)
+    if reason is not None:
+        raise ValueError(reason)
+    x, y, z = mount.viscous
+    lateral = damper.viscous_lateral
+    stroke = 0.5 * damper.stroke
+    limit = stroke if mount.deflection_max is None else min(mount.deflection_max, stroke)
+    return replace(
+        mount,
+        part=f"{mount.part} + {damper.part}",
+        base=mount.base or mount.part,
+        damper=damper.part,
+        viscous=(None if x is None else x + lateral, None if y is None else y + lateral, z + damper.viscous),
+        deflection_max=limit,
+        mass=None if mount.mass is None else mount.mass + (damper.mass or 0.0),
+        cost=mount.cost + damper.cost,
+        damper_cost=damper.cost,
+    )
+
+
+def damper_refused(mount: Mount, damper: Damper) -> str | None:
+    """Return why a damper cannot be added to a mount here, or None."""
+    if mount.relaxation is not None:
+        return f"{mount.part} has its dashpot in series with a spring; a damper beside it does not simply add"
+    if damper.stiffness_series is not None:
+        return f"{damper.part} has elastic rods; a damper beside a mount is taken as rigid in itself"
+    return None
+
+
+def empty_station(catalog: str) -> Mount:
+    """Return the part that stands for nothing: no stiffness, no limit, no cost."""
+    nothing: Axes = (0.0, 0.0, 0.0)
+    return Mount(
+        catalog=catalog,
+        file="",
+        line=0,
+        part=EMPTY,
+        family="",
+        stiffness_static=nothing,
+        stiffness_dynamic=nothing,
+        loss_factor=nothing,
+        viscous=nothing,
+        damping_from="",
+        damping_stated=0.0,
+        load_min=-math.inf,
+        load_max=math.inf,
+        load_rated=None,
+        deflection_max=None,
+        pulls=True,
+        free_height=None,
+        mass=0.0,
+        cost=0.0,
+        tolerance=0.0,
+        temperature_min=None,
+        temperature_max=None,
+        stock=None,
+        pieces=0,
+    )
+
+
+def _times(figures: Axes, count: int) -> Axes:
+    x, y, z = figures
+    return (None if x is None else count * x, None if y is None else count * y, count * z)
