@@ -2,7 +2,7 @@
 
 from collections.abc import Iterable
 
-from detune.brief.allowable import HarmonicAllowable, Separation
+from detune.brief.allowable import BandAllowable, HarmonicAllowable, Separation
 from detune.brief.brief import Brief, applies
 from detune.brief.finding import Finding, Path
 from detune.brief.forcing import Forcing
@@ -225,7 +225,7 @@ def _allowables(brief: Brief) -> list[Finding]:
         if isinstance(allowable, Separation) and not any(c.steady for c in brief.conditions):
             expected = "at least one steady condition, since separation counts only those"
             findings.append(Finding(path, "separation", expected, depends=("condition",)))
-    if not any(isinstance(a, HarmonicAllowable) for a in brief.allowables):
+    if not any(isinstance(a, (HarmonicAllowable, BandAllowable)) for a in brief.allowables):
         findings.append(
             Finding(
                 ("allowable",),

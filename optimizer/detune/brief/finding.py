@@ -1,6 +1,10 @@
 """One fault of a brief, before it has a file and a line."""
 
+from collections.abc import Iterable
 from dataclasses import dataclass
+
+from detune.ground.errors import Fault
+from detune.ground.toml_lines import dotted
 
 Path = tuple[str | int, ...]
 
@@ -17,3 +21,8 @@ class Finding:
     expected: str
     nearest: str | None = None
     depends: tuple[str, ...] = ()
+
+
+def faults_without_lines(file: str, findings: Iterable[Finding]) -> list[Fault]:
+    """Return findings as faults of a brief whose file is not at hand."""
+    return [Fault(file, None, dotted(f.path), f.found, f.expected, f.nearest) for f in findings]

@@ -1,11 +1,18 @@
 """Forcing and limits that are each sound and yet cannot be judged together, told before any design is looked at."""
 
-from detune.brief.allowable import HarmonicAllowable, Separation, Transmissibility
+from detune.brief.allowable import (
+    BandAllowable,
+    FloorVelocity,
+    HarmonicAllowable,
+    Separation,
+    Transmissibility,
+)
 from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
 from detune.brief.finding import Finding, Path
 from detune.brief.forcing import Forcing, Tone, Transient
 from detune.brief.statement import Direction
+from detune.physics.octaves import band_edges
 
 # Components below this share of the whole are rounding of the digits people write.
 NOTHING = 1e-9
@@ -20,7 +27,12 @@ def not_matching(brief: Brief) -> list[Finding]:
         path: Path = ("allowable", index)
         if isinstance(allowable, Separation):
             findings += _nothing_to_separate_from(brief, path)
+        elif isinstance(allowable, BandAllowable):
+            findings += _bands(brief, path, allowable)
         elif isinstance(allowable, HarmonicAllowable):
+            if isinstance(allowable, FloorVelocity) and brief.floor.kind == "rigid":
+                expected = "a floor that is not rigid, whose velocity the parts decide"
+                findings.append(Finding(path, "floor-velocity", expected, depends=("floor",)))
             if isinstance(allowable, Transmissibility):
                 findings += _no_excitation_frequency(brief, path, allowable)
             findings += _in_time(brief, path, allowable)
@@ -32,8 +44,7 @@ def acting(brief: Brief, condition: Condition) -> list[Forcing]:
     return [
         forcing
         for forcing in brief.forcing
-        if applies(forcing.conditions, condition.name)
-        and forcing.shaft_needed() in (None, *condition.shafts)
+        if applies(forcing.conditions, condition.name) and forcing.shaft_needed() in (None, *condition.shafts)
     ]
 
 
@@ -84,6 +95,35 @@ def _no_excitation_frequency(brief: Brief, path: Path, allowable: Transmissibili
         "forcing is limited by its response"
     )
     return [Finding(path, "transmissibility", expected, depends=("condition", "forcing"))]
+
+
+def _bands(brief: Brief, path: Path, allowable: BandAllowable) -> list[Finding]:
+    """Band limits under shocks, and those whose bands nothing excites."""
+    low, high = (
+        float(edge[which]) for edge, which in zip(band_edges(allowable.bands()[0]), (0, -1), strict=True)
+    )
+    excited = False
+    for condition in brief.conditions:
+        if not applies(allowable.conditions, condition.name):
+            continue
+        for forcing in acting(brief, condition):
+            if forcing.transients():
+                expected = (
+                    f'tones and noise alone under a band limit: a record with use = "spectrum" or "lines", or '
+                    f'conditions without "{forcing.name}", as "conditions"'
+                )
+                return [Finding(path, allowable.kind, expected, depends=("condition", "forcing"))]
+            reach = [
+                (tone.order * tone.low, tone.order * tone.high) for tone in forcing.tones(condition.shafts)
+            ]
+            reach += [
+                (float(n.spectrum.frequency[0]), float(n.spectrum.frequency[-1])) for n in forcing.noises()
+            ]
+            excited = excited or any(first <= high and last >= low for first, last in reach)
+    if excited or not brief.conditions:
+        return []
+    expected = f"an excitation within the bands of the curve, {low:.3g} to {high:.4g} Hz; outside them nothing is judged"
+    return [Finding(path, allowable.kind, expected, depends=("condition", "forcing"))]
 
 
 def _in_time(brief: Brief, path: Path, allowable: HarmonicAllowable) -> list[Finding]:

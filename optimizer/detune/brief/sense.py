@@ -6,7 +6,14 @@ Such a limit would be met by every design, which a reader would take for a proof
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable, Transmissibility, TransmittedForce
+from detune.brief.allowable import (
+    BandLimit,
+    HarmonicAllowable,
+    MachineVelocity,
+    Transmissibility,
+    TransmittedForce,
+    WeightedAcceleration,
+)
 from detune.brief.allowable.at_point import PointAllowable
 from detune.brief.brief import Brief, applies
 from detune.brief.finding import Finding, Path
@@ -26,7 +33,7 @@ def without_sense(brief: Brief) -> list[Finding]:
     findings = []
     for index, allowable in enumerate(brief.allowables):
         path: Path = ("allowable", index)
-        if isinstance(allowable, PointAllowable):
+        if isinstance(allowable, (PointAllowable, WeightedAcceleration, MachineVelocity, BandLimit)):
             findings += _point_cannot_move(brief, path, allowable)
         elif isinstance(allowable, Transmissibility):
             findings += _transmissibility(brief, path, allowable)
@@ -63,7 +70,11 @@ def _cannot_move(body: Body, position: tuple[float, float, float], along: Direct
     return bool(np.all(np.abs(np.array(along) @ _rows(body, position)) < NOTHING))
 
 
-def _point_cannot_move(brief: Brief, path: Path, allowable: PointAllowable) -> list[Finding]:
+def _point_cannot_move(
+    brief: Brief,
+    path: Path,
+    allowable: PointAllowable | WeightedAcceleration | MachineVelocity | BandLimit,
+) -> list[Finding]:
     along = allowable.along()
     point = next((point for point in brief.points if point.name == allowable.at), None)
     body = None if point is None else _body(brief, point.on)

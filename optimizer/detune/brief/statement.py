@@ -19,7 +19,7 @@ from detune.ground import units
 class Statement(BaseModel):
     """A frozen part of the brief; an unknown key is refused."""
 
-    model_config = ConfigDict(frozen=True, extra="forbid", hide_input_in_errors=False)
+    model_config = ConfigDict(frozen=True, extra="forbid", hide_input_in_errors=False, defer_build=True)
 
 
 def refuse(

@@ -172,6 +172,20 @@ def resampled(spectrum: PowerSpectralDensity, frequency: ArrayLike) -> PowerSpec
     return PowerSpectralDensity(points, density_at(spectrum, points))
 
 
+def between(spectrum: PowerSpectralDensity, low: float, high: float) -> PowerSpectralDensity | None:
+    """The part of the spectrum from low to high in Hz, exact; None where it has none."""
+    points, density = spectrum.frequency, spectrum.density
+    low, high = max(low, float(points[0])), min(high, float(points[-1]))
+    if high <= low:
+        return None
+    inside = (points > low) & (points < high)
+    # At a step the first end belongs to what follows it, the last to what comes before.
+    ends = density_at(spectrum, low), density_at(spectrum, low + (high - low) * (1.0 - 1e-12))
+    return PowerSpectralDensity(
+        np.r_[low, points[inside], high], np.r_[ends[0], density[inside], ends[1]]
+    )
+
+
 def band_averaged(spectrum: PowerSpectralDensity, edges: ArrayLike) -> PowerSpectralDensity:
     """The spectrum as a staircase over edges (N,) in Hz that keeps the mean square of every step exactly."""
     edge = np.asarray(edges, dtype=float)

@@ -7,6 +7,7 @@ import numpy as np
 
 from detune.brief.allowable import (
     Allowable,
+    BandAllowable,
     DesignAllowable,
     HarmonicAllowable,
     ModeAllowable,
@@ -18,14 +19,14 @@ from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
 from detune.brief.cross_check import cross_check
 from detune.brief.finding import Finding
-from detune.ground.errors import BriefError, Fault
-from detune.ground.toml_lines import dotted
+from detune.ground.errors import BriefError
 from detune.parts.assumed import group_assumed
 from detune.parts.catalog import Catalog
 from detune.parts.kinds.mount import Mount
 from detune.physics.static import is_supported
 from detune.problem.candidates import Dropped, find_candidates
 from detune.problem.requirement import Requirement
+from detune.response.bands import BandRows, band_rows
 from detune.response.condition_rows import condition_rows
 from detune.response.design import Design
 from detune.response.designs import Designs, all_designs, design_count
@@ -55,6 +56,15 @@ class StateModel:
 
 
 @dataclass(frozen=True)
+class BandRequirements:
+    """Band limits of one condition that are evaluated together: rows and their requirements, in order."""
+
+    rows: BandRows
+    requirements: tuple[Requirement, ...]
+    model: Model
+
+
+@dataclass(frozen=True)
 class Problem:
     """All a solver sees: the models, the requirements by the work they take, and what is traded.
 
@@ -67,6 +77,7 @@ class Problem:
     statics: tuple[Requirement, ...]
     modes: tuple[Requirement, ...]
     harmonics: tuple[HarmonicRequirements, ...]
+    bands: tuple[BandRequirements, ...]
     exempt_amplification: float | None
     dropped: tuple[Dropped, ...]
     assumed: tuple[str, ...]
@@ -90,7 +101,8 @@ class Problem:
     def requirements(self) -> tuple[Requirement, ...]:
         """Every requirement, in the order of the stages that judge them."""
         harmonic = tuple(r for group in self.harmonics for r in group.requirements)
-        return (*self.totals, *self.statics, *self.modes, *harmonic)
+        banded = tuple(r for group in self.bands for r in group.requirements)
+        return (*self.totals, *self.statics, *self.modes, *harmonic, *banded)
 
     @property
     def candidates(self) -> tuple[tuple[Mount, ...], ...]:
@@ -113,12 +125,13 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     findings = cross_check(brief)
     if findings:
         # Candidates are found by the names that have just been checked.
-        raise BriefError(faults_without_lines(brief, findings))
+        raise BriefError(faults_without_lines(brief.file, findings))
     candidates = find_candidates(brief, catalogs)
     if candidates.findings:
-        raise BriefError(faults_without_lines(brief, candidates.findings))
+        raise BriefError(faults_without_lines(brief.file, candidates.findings))
     notes = tuple(str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed))
-    notes = (*(note for forcing in brief.forcing for note in forcing.assumed()), *notes)
+    stated = (*brief.forcing, *brief.allowables)
+    notes = (*(note for statement in stated for note in statement.assumed()), *notes)
     return _problem(brief, candidates.mounts, candidates.dropped, notes)
 
 
@@ -154,17 +167,19 @@ def _problem(
             if each.state == condition.state
             for group in _harmonic(brief, each, condition, allowables)
         ),
+        bands=tuple(
+            group
+            for condition in brief.conditions
+            for each in states
+            if each.state == condition.state
+            for group in _banded(brief, each, condition, allowables)
+        ),
         exempt_amplification=next(
             (a.exempt_amplification for a in allowables if isinstance(a, Separation)), None
         ),
         dropped=dropped,
         assumed=(*model.assumed, *demanded_notes, *catalog_notes),
     )
-
-
-def faults_without_lines(brief: Brief, findings: tuple[Finding, ...]) -> list[Fault]:
-    """Return findings as faults of a brief whose file is not at hand."""
-    return [Fault(brief.file, None, dotted(f.path), f.found, f.expected, f.nearest) for f in findings]
 
 
 def _state_models(brief: Brief, mounts: tuple[tuple[Mount, ...], ...]) -> tuple[StateModel, ...]:
@@ -213,6 +228,21 @@ def _harmonic(
     return groups
 
 
+def _banded(
+    brief: Brief, each: StateModel, condition: Condition, allowables: tuple[Allowable, ...]
+) -> list[BandRequirements]:
+    pairs = tuple(
+        (allowable, place)
+        for allowable in allowables
+        if isinstance(allowable, BandAllowable) and applies(allowable.conditions, condition.name)
+        for place in allowable.places(each.places)
+    )
+    if not pairs:
+        return []
+    requirements = tuple(Requirement(allowable, condition.name, place, each.state) for allowable, place in pairs)
+    return [BandRequirements(band_rows(brief, each.model, condition, pairs), requirements, each.model)]
+
+
 def _group(rows: Rows, condition: Condition, each: StateModel) -> HarmonicRequirements:
     requirements = tuple(
         Requirement(allowable, condition.name, place, each.state) for allowable, place in rows.pairs
@@ -230,4 +260,4 @@ def _check_support(brief: Brief, model: Model, state: str | None) -> None:
         f"{sum(station.parallel > 0 for station in model.stations)} stations that leave a motion of the machine without stiffness",
         f"stations that hold every free direction ({free}); or fewer free directions",
     )
-    raise BriefError(faults_without_lines(brief, (finding,)))
+    raise BriefError(faults_without_lines(brief.file, (finding,)))

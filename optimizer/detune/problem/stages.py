@@ -9,9 +9,10 @@ from numpy.typing import NDArray
 from detune.brief.allowable import DesignAllowable, HarmonicAllowable, ModeAllowable, StaticAllowable
 from detune.brief.allowable.separation import least_separation
 from detune.brief.allowable.views import DesignView
-from detune.problem.build import HarmonicRequirements, Problem
+from detune.problem.build import BandRequirements, HarmonicRequirements, Problem
 from detune.problem.requirement import Requirement
 from detune.response.assemble import dynamic_matrices
+from detune.response.bands import band_ratios
 from detune.response.designs import Designs, part_numbers, total_cost
 from detune.response.evaluate import TWO_PI, family_amplitude, response_values
 from detune.response.margin import upper_margin, window_margin
@@ -53,6 +54,7 @@ def stages(problem: Problem) -> tuple[Stage, ...]:
             result.append(_response(group, slow_parts=False))
     for group in problem.harmonics:
         result.append(_response(group, slow_parts=True))
+    result += [_banded(group) for group in problem.bands]
     return tuple(result)
 
 
@@ -138,6 +140,15 @@ def _response(group: HarmonicRequirements, slow_parts: bool) -> Stage:
 
     name = "response over the whole range" if slow_parts else "response without records and passages"
     return Stage(name, group.requirements, margins, not slow_parts, 500)
+
+
+def _banded(group: BandRequirements) -> Stage:
+    def margins(designs: Designs) -> Floats:
+        dynamic = dynamic_matrices(group.model, designs)
+        found = band_ratios(group.model, designs, dynamic, mode_batch(dynamic), group.rows)
+        return upper_margin(found.value, np.array(1.0))
+
+    return Stage("response in one-third-octave bands", group.requirements, margins, False, 500)
 
 
 def _harmonic_margins(group: HarmonicRequirements, designs: Designs, amplitude: Floats) -> Floats:

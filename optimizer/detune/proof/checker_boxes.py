@@ -94,20 +94,13 @@ def upper_bounds(system: dict[str, Matrix], output: dict[str, Any], low: Matrix,
     # Corner values and centres are off by a few units of rounding: that goes into the radius.
     rho = (np.abs(deviation).max(axis=2) + 64.0 * UNIT * np.abs(centre) * 2.0) * OUTWARD
     kappa, kappa_rho = centre[:, :axes], rho[:, :axes]
-    factor = centre.astype(complex)
-    factor[:, -1] *= 1j
-    fixed = array(np.asarray(system["fixed_dynamic"])) + 1j * system["fixed_hysteretic"]
-    d0: Ball = (np.broadcast_to(fixed, (count, *fixed.shape)), np.zeros((count, *fixed.shape)))
-    spread: Ball = exact(np.zeros(d0[0].shape))
-    for t, (term, own) in enumerate(zip(system["terms"], system["covers"], strict=True)):
-        # Outer products b b^T were rounded once.
-        d0 = total(d0, scaled((term, 2.0 * UNIT * np.abs(term)), factor[:, t, None, None]))
-        spread = total(spread, scaled((own, 2.0 * UNIT * np.abs(own)), rho[:, t, None, None]))
+    d0, spread = assembled(system, centre, rho)
+    n = system["mass"].shape[0]
     weight, pad = inverse_factor(spread[0], system["mass"], high)
     spread = total(spread, scaled(exact(system["mass"]), pad[:, None, None]))
     w, wt = exact(weight), exact(np.swapaxes(weight, 1, 2))
     reach = frobenius(
-        total(product(product(w, spread), wt), exact(-np.broadcast_to(np.eye(fixed.shape[0]), weight.shape)))
+        total(product(product(w, spread), wt), exact(-np.broadcast_to(np.eye(n), weight.shape)))
     )
     gamma = (1.0 + reach) * OUTWARD
     matrix = product(product(w, d0), wt)
@@ -115,11 +108,11 @@ def upper_bounds(system: dict[str, Matrix], output: dict[str, Any], low: Matrix,
     moving, forced = np.flatnonzero(base != 0.0), np.flatnonzero(force != 0.0)
     axis_rows = exact(np.broadcast_to(system["axes"].astype(complex), (count, *system["axes"].shape)))
     load = total(
-        exact(np.broadcast_to(array(output["load"])[None, :], (count, fixed.shape[0]))[:, None, :]),
+        exact(np.broadcast_to(array(output["load"])[None, :], (count, n))[:, None, :]),
         product(scaled(exact((kappa * 1.0)[:, None, :]), base), axis_rows),
     )
     row = total(
-        exact(np.broadcast_to(array(output["row"])[None, :], (count, fixed.shape[0]))[:, None, :]),
+        exact(np.broadcast_to(array(output["row"])[None, :], (count, n))[:, None, :]),
         product(scaled(exact((kappa * 1.0)[:, None, :]), force), axis_rows),
     )
     right = product(w, stack_columns(load, axis_rows, moving))
@@ -135,9 +128,7 @@ def upper_bounds(system: dict[str, Matrix], output: dict[str, Any], low: Matrix,
         for shift in SHIFTS:
             radius = np.sqrt(gamma**2 + 2.0 * shift * sine * gamma + shift**2) * OUTWARD
             tilted = scaled(matrix, turn[:, None, None])
-            tilted = total(
-                tilted, exact(np.broadcast_to(1j * shift * np.eye(fixed.shape[0]), tilted[0].shape))
-            )
+            tilted = total(tilted, exact(np.broadcast_to(1j * shift * np.eye(n), tilted[0].shape)))
             middle, reach_out = entries(tilted, left, right, radius)
             found = combine(
                 output,
@@ -153,6 +144,21 @@ def upper_bounds(system: dict[str, Matrix], output: dict[str, Any], low: Matrix,
             )
             best = np.minimum(best, found)
     return best
+
+
+def assembled(system: dict[str, Matrix], centre: Matrix, rho: Matrix) -> tuple[Ball, Ball]:
+    """Enclosures of D at the centres (N, T) and of the cover sum rho |P|."""
+    factor = centre.astype(complex)
+    factor[:, -1] *= 1j
+    fixed = system["fixed_dynamic"] + 1j * system["fixed_hysteretic"]
+    shape = (centre.shape[0], *fixed.shape)
+    d0: Ball = (np.broadcast_to(fixed, shape), np.zeros(shape))
+    spread: Ball = exact(np.zeros(shape))
+    for t, (term, own) in enumerate(zip(system["terms"], system["covers"], strict=True)):
+        # Outer products b b^T were rounded once.
+        d0 = total(d0, scaled((term, 2.0 * UNIT * np.abs(term)), factor[:, t, None, None]))
+        spread = total(spread, scaled((own, 2.0 * UNIT * np.abs(own)), rho[:, t, None, None]))
+    return d0, spread
 
 
 def inverse_factor(spread: Matrix, mass: Matrix, high: Matrix) -> tuple[Matrix, Matrix]:

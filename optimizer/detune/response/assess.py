@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from detune.brief.allowable import (
     Allowable,
+    BandAllowable,
     DesignAllowable,
     HarmonicAllowable,
     ModeAllowable,
@@ -26,6 +27,7 @@ from detune.physics import modes, separation
 from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
 from detune.response.design import Design
 from detune.response.direct import DirectMachine
+from detune.response.direct_bands import direct_band_ratio
 from detune.response.direct_modes import DirectModes, direct_modes
 from detune.response.direct_supremum import (
     Pairs,
@@ -118,7 +120,21 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
             limits = allowable.lower_limit(), allowable.upper_limit()
             rows.append(_row(allowable, f"steady conditions{told}", "whole machine", value, *limits))
     for condition in each.conditions:
+        rows += _band_rows(each, condition, allowables)
         rows += _harmonic_rows(each.machine, each.static, each.modes, condition, allowables, each.places)
+    return rows
+
+
+def _band_rows(
+    each: _InState, condition: Condition, allowables: tuple[Allowable, ...]
+) -> list[MarginRow]:
+    rows = []
+    for allowable in allowables:
+        if isinstance(allowable, BandAllowable) and applies(allowable.conditions, condition.name):
+            for place in allowable.places(each.places):
+                ratio, at = direct_band_ratio(each.machine, each.modes, condition, allowable, place)
+                frequency = None if np.isnan(at) else at
+                rows.append(_row(allowable, condition.name, place, ratio, None, 1.0, frequency))
     return rows
 
 

@@ -52,7 +52,7 @@ def direct_variances(machine: DirectMachine, found: DirectModes, noise: Noise, p
     for low, high, first, last in zip(points[:-1], points[1:], density[:-1], density[1:], strict=True):
         if high <= low or first == 0.0:
             continue
-        frequency = _mesh(found, float(low), float(high))
+        frequency = mesh(found, float(low), float(high))
         slope = np.log(last / first) / np.log(high / low)
         weight = first * (frequency / low) ** slope
         view = DirectTone(machine, (tone,), TWO_PI * frequency[None])
@@ -75,7 +75,8 @@ def unit_tone(noise: Noise) -> Tone:
     return Tone(**plain, on=noise.on, position=noise.position, force=noise.force, moment=noise.moment)  # type: ignore[arg-type]
 
 
-def _mesh(found: DirectModes, low: float, high: float) -> Floats:
+def mesh(found: DirectModes, low: float, high: float) -> Floats:
+    """Frequencies (F,) in Hz from low to high, even on a log axis and close round every pole."""
     looks = [np.geomspace(low, high, EVENLY)]
     for pole in found.poles:
         looks.append((pole.imag + max(-pole.real, 1e-9 * abs(pole)) * ROUND_POLE) / TWO_PI)

@@ -157,9 +157,15 @@ class Model:
 
 
 def build_model(
-    brief: Brief, candidates: tuple[tuple[Mount, ...], ...], state: State | None = None
+    brief: Brief,
+    candidates: tuple[tuple[Mount, ...], ...],
+    state: State | None = None,
+    reading: str | None = None,
 ) -> Model:
-    """Return the model of a brief, in a state, whose group g may take the mounts `candidates[g]`."""
+    """Return the model of a brief, in a state, whose group g may take the mounts `candidates[g]`.
+
+    `reading` says how damping of unknown kind is read (damping_readings); None takes it as listed.
+    """
     properties = {body.name: mass_properties(body) for body in brief.bodies}
     floor = floor_freedom(brief.floor)
     names = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
@@ -191,8 +197,9 @@ def build_model(
     if structure is not None:
         _add_structure(frame, structure, base_mass, fixed)
     mass, weight, ballast_mass, ballast_cost = _with_ballast(brief, frame, base_mass, properties)
+    temperature = ROOM_TEMPERATURE if state is None else state.temperature
     groups = tuple(
-        _group(name, mounts, _spread(stations, index, n), ROOM_TEMPERATURE if state is None else state.temperature)
+        _group(name, mounts, reading, _spread(stations, index, n), temperature)
         for index, (name, mounts) in enumerate(zip(brief.groups, candidates, strict=True))
     )
     notes = [note for p in properties.values() for note in p.assumed]

@@ -9,11 +9,11 @@ from typing import Any
 from detune.brief.brief import Brief
 from detune.brief.choice import CatalogSource
 from detune.brief.cross_check import cross_check
+from detune.brief.finding import faults_without_lines
 from detune.brief.read import scan_data, to_fault
 from detune.ground.errors import BriefError, Fault
 from detune.ground.toml_lines import Positions, dotted, load
 from detune.parts.catalog import Catalog, read_catalog
-from detune.problem.build import faults_without_lines
 from detune.problem.candidates import find_candidates
 
 
@@ -55,7 +55,7 @@ def study_of(brief: Brief) -> Study:
     findings = cross_check(brief)
     if len(catalogs) == len(brief.catalogs):
         findings = (*findings, *find_candidates(brief, catalogs).findings)
-    faults += faults_without_lines(brief, findings)
+    faults += faults_without_lines(brief.file, findings)
     if faults:
         raise BriefError(dict.fromkeys(faults))
     return Study(brief, catalogs, _hashes(brief, catalogs, None), brief.model_dump_json(indent=2))

@@ -2,8 +2,10 @@
 
 from detune.brief.allowable.acceleration import Acceleration
 from detune.brief.allowable.added_mass import AddedMass
+from detune.brief.allowable.band_limit import BandLimit
 from detune.brief.allowable.base import (
     Allowable,
+    BandAllowable,
     DesignAllowable,
     HarmonicAllowable,
     ModeAllowable,
@@ -39,6 +41,7 @@ KINDS: dict[str, type[Allowable]] = {
     "relative-motion": RelativeMotion,
     "gap": Gap,
     "floor-velocity": FloorVelocity,
+    "band-limit": BandLimit,
     "transmitted-force": TransmittedForce,
     "transmissibility": Transmissibility,
     "mount-deflection": MountDeflection,
@@ -60,6 +63,8 @@ __all__ = [
     "Acceleration",
     "AddedMass",
     "Allowable",
+    "BandAllowable",
+    "BandLimit",
     "CostLimit",
     "DesignAllowable",
     "Displacement",

@@ -1,9 +1,10 @@
-"""What every allowable kind has in common, and the four forms an allowable can take."""
+"""What every allowable kind has in common, and the five forms an allowable can take."""
 
 from collections.abc import Sequence
 from typing import ClassVar, Literal
 
 import numpy as np
+from numpy.typing import NDArray
 from pydantic import field_validator
 
 from detune.brief.allowable.views import (
@@ -110,6 +111,28 @@ class HarmonicAllowable(Allowable):
     def lowest_frequency(self) -> float:
         """Return the frequency (Hz) below which this allowable does not apply."""
         return 0.0
+
+
+class BandAllowable(Allowable):
+    """Upper limits on the rms of a response in one-third-octave bands (IEC 61260-1).
+
+    Its value is the largest ratio of a band's rms to the band's limit, so that the limit is 1. In a band, tones at
+    different frequencies and noise add as mean squares; tones of one frequency and unknown phase add linearly. A
+    tone counts in the band that holds its frequency. Of a moving speed the steady state at its worst counts in each
+    band by itself; different sources have independent speeds. For tones and noise alone.
+    """
+
+    def observed(self, view: ResponseView, place: str) -> Responses:
+        """Return the limited quantity as phasors (D, F, 3) of one tone."""
+        raise NotImplementedError(type(self).__name__)
+
+    def along(self) -> Direction:
+        """Return the unit direction."""
+        raise NotImplementedError(type(self).__name__)
+
+    def bands(self) -> tuple[NDArray[np.int64], Floats]:
+        """Return the indices (B,) of the bands that are limited, rising, and their limits (B,) as rms values."""
+        raise NotImplementedError(type(self).__name__)
 
 
 class StaticAllowable(Allowable):
