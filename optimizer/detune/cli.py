@@ -10,6 +10,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from detune.solvers.outcome import Progress, Settings
 
 MEETS, NONE_MEETS, FAULTY, STOPPED = 0, 1, 2, 3
@@ -64,7 +66,7 @@ def _parser() -> argparse.ArgumentParser:
 
     for verb in (check, run, assess, compare, vary):
         verb.add_argument("study", metavar="STUDY", help="the study file (TOML)")
-    wording = 'a design, as "group=part, group=part, ballast=40 kg"'
+    wording = 'a design, as "group=part, group=2 x part + damper, group=(empty), ballast=40 kg"'
     run.add_argument(
         "--design", action="append", default=[], help=f"{wording}, set beside the answer; may be repeated"
     )
@@ -82,9 +84,16 @@ def _parser() -> argparse.ArgumentParser:
     vary.add_argument(
         "--to", required=True, nargs="+", metavar="VALUE", help="its values, each as in the study file"
     )
-    methods = ("auto", "enumeration", "bounded search")
-    run.add_argument("--method", choices=methods, default="auto", help="how to search (default: by the size)")
-    run.add_argument("--workers", type=int, default=1, metavar="N", help="worker threads of the bounded search")
+    methods = ("auto", "enumeration", "bounded search", "second opinion")
+    run.add_argument(
+        "--method",
+        choices=methods,
+        default="auto",
+        help="how to search (default: by the size); a second opinion finds the least cost of a small study by Pyomo",
+    )
+    run.add_argument(
+        "--workers", type=int, default=1, metavar="N", help="worker threads of the bounded search"
+    )
     for verb in (run, vary):
         verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
     return parser
@@ -194,9 +203,14 @@ def _settings(options: argparse.Namespace) -> "Settings":
     )
 
 
-def _progress() -> "Progress":
-    def tell(done: int, total: int) -> None:
-        end = "\n" if done >= total else ""
-        print(f"\r{done / total:.0%} of the designs settled", end=end, file=sys.stderr, flush=True)
+def _progress() -> "Callable[[Progress], None]":
+    def tell(far: "Progress") -> None:
+        bracket = ""
+        if far.lower_bound is not None and far.settled < far.designs:
+            bracket = f"; none left is cheaper than {far.lower_bound:.2f}"
+        found = "" if far.incumbent is None else f"; best so far {far.incumbent:.2f}"
+        end = "\n" if far.settled >= far.designs else ""
+        text = f"{far.share:.1%} of {far.designs:,} designs settled{found}{bracket}"
+        print(f"\r{text:<100}", end=end, file=sys.stderr, flush=True)
 
     return tell

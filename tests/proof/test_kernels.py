@@ -124,7 +124,7 @@ def interpreted():
     return types.SimpleNamespace(**{k: v for k, v in names.items() if not k.startswith("__")})
 
 
-@pytest.mark.parametrize("groups", [2, 3, 4])
+@pytest.mark.parametrize("groups", [2, *(pytest.param(g, marks=pytest.mark.nightly) for g in (3, 4))])
 def test_block_search_text_finds_what_the_reference_finds(monkeypatch, tmp_path, groups):
     """The text that is compiled, run as plain Python, against the numpy rules: optimum, front, counts."""
     monkeypatch.setenv("DETUNE_CACHE", str(tmp_path))

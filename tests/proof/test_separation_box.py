@@ -89,7 +89,7 @@ def test_mass_enclosure_holds(seed):
         assert np.linalg.eigvalsh(above[0] - mass)[0] >= -1e-9 * scale
 
 
-@settings(max_examples=10, deadline=None)
+@settings(max_examples=5, deadline=None)
 @given(SEEDS)
 def test_box_separation_is_never_above_a_sample(seed):
     rng = np.random.default_rng(seed)

@@ -189,14 +189,11 @@ def check_against_brute_force(seed: int, ballast: str = "none") -> int:
     for branch in outcome.branches:
         low, high = branch.stiffness_interval
         inside |= (k >= low * (1 - 1e-9)) & (k <= high * (1 + 1e-9))
-    best = outcome.best.objective if outcome.branches else math.inf
+    best = outcome.best.objective if outcome.branches else 0.0
     for i, j in np.argwhere(good):
         value = grid_value(problem, float(k[i, 0]), float(d[0, j]))
-        better = (
-            value < best - 1e-9 * abs(best)
-            if problem.objective.goal != "stiffest"
-            else value > best * (1 + 1e-9)
-        )
+        slack = outcome.gap + 1e-9 * abs(best)
+        better = value > best + slack if problem.objective.goal == "stiffest" else value < best - slack
         if not inside[i, j] or not outcome.branches or better:
             # Thirty points are a relaxation of the range; only a fine look may accuse the solver.
             fine = instances.meets(problem, k[i, 0], d[0, j], problem.mass, points=20000, slack=0)

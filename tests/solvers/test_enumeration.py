@@ -23,7 +23,7 @@ from detune.response.assessment import Assessment
 from detune.response.design import Design
 from detune.solvers import enumeration
 from detune.solvers.nondominated import as_minimised, nondominated
-from detune.solvers.outcome import Outcome, Settings
+from detune.solvers.outcome import Outcome, Progress, Settings
 from detune.study.front import assessed_front, objective_of
 
 _spec = importlib.util.spec_from_file_location(
@@ -223,8 +223,8 @@ def test_an_interrupt_leaves_whole_blocks_and_no_half_counted_designs(
     monkeypatch.setattr(enumeration, "BLOCK", 10)
     problem = build(study(3), {"list": machines.catalog(*parts_list(3, 4))})
 
-    def stop(done: int, total: int) -> None:
-        assert total == 48
+    def stop(far: Progress) -> None:
+        assert (far.settled, far.designs) == (10, 48)
         raise KeyboardInterrupt
 
     outcome = enumeration.solve(problem, Settings(progress=stop))

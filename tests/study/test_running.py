@@ -12,7 +12,7 @@ from detune.ground.errors import BriefError
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.solvers import enumeration
-from detune.solvers.outcome import Settings
+from detune.solvers.outcome import Progress, Settings
 from detune.study.front import objective_of
 from detune.study.load import Study, load_study
 from detune.study.named import named_design
@@ -213,9 +213,9 @@ def test_interrupt_leaves_a_partial_result(
     monkeypatch.setattr(enumeration, "BLOCK", 10)
     seen: list[tuple[int, int]] = []
 
-    def progress(done: int, total: int) -> None:
-        seen.append((done, total))
-        if done >= 20:
+    def progress(far: Progress) -> None:
+        seen.append((far.settled, far.designs))
+        if far.settled >= 20:
             raise KeyboardInterrupt
 
     result = run_study(study(), Settings(progress=progress))

@@ -6,6 +6,7 @@ A balance grade G is the velocity of the mass centre, e_per times omega: G6.3 is
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, FloatArray
 
 
@@ -36,8 +37,8 @@ def rotating_force_vector(shaft: ArrayLike, start: ArrayLike | None = None) -> t
     sense.
 
     Re((a - j b) exp(j w t)) = a cos w t + b sin w t turns about the shaft by the right-hand rule. ``start``
-    gives the direction at t = 0 (its part square to the shaft). Shapes: (3), (3) -> (3), (3). ValueError where
-    ``numpy`` cannot decide a direction: a zero shaft, or a start along the shaft.
+    gives the direction at t = 0 (its part square to the shaft). Shapes: (3), (3) -> (3), (3). ValueError
+    where ``numpy`` cannot decide a direction: a zero shaft, or a start along the shaft.
     """
     s = np.asarray(shaft, dtype=float)
     length = float(np.linalg.norm(s))

@@ -6,6 +6,7 @@ Time convention exp(+j w t): a positive imaginary part of a stiffness dissipates
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 
 

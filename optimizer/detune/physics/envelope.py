@@ -1,9 +1,9 @@
 """Largest response over a continuous range of speed, not over a grid.
 
-Samples are laid at the ends, at every natural frequency and over the gaps between; then every local peak that
-could be the largest is refined by the parabola of 1/amplitude^2 until nothing changes. The result is always a
-value that was evaluated, so it never exceeds the true supremum; how far it can fall short is estimated, not
-proven (the bounds over intervals of the proof floor prove it).
+Samples are laid at the ends, at every natural frequency and over the gaps between. Then every local peak that
+could be the largest is refined by the parabola of 1/amplitude^2 until nothing changes. The result is always a value
+that was evaluated, so it never exceeds the true supremum; how far it can fall short is estimated, not proven (the
+bounds over intervals of the proof floor prove it).
 """
 
 from __future__ import annotations
@@ -12,14 +12,17 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
-from detune.physics.array_types import ArrayLike, FloatArray, IntArray
-from detune.physics.peaks import Peaks, local_peaks
+
+from detune.physics.array_types import ArrayLike, BoolArray, FloatArray, IntArray
+from detune.physics.peaks import Peaks, Samples, local_peaks
 
 Amplitude = Callable[[FloatArray], FloatArray]
 PointAmplitude = Callable[[IntArray, FloatArray], FloatArray]
+_Ask = Callable[[IntArray, FloatArray], tuple[FloatArray, int]]
 
 # Samples are closest in log(omega + high / 20): even at low frequency, geometric at high.
 BLEND = 20.0
+BLOCK = 200_000
 MOST_ROUNDS = 12
 
 
@@ -51,15 +54,16 @@ def supremum(
 ) -> Envelope:
     """Largest amplitude of every row of every design over low <= omega <= high (rad/s).
 
-    amplitude: omega (D, F) -> (R, D, F), not negative, each design at its own frequencies. low, high: scalars
-    or (D,); equal for a single frequency. centres, half_widths: (D, m), in rad/s, the natural frequencies
-    that the rows can show (divided by the order for
-        an order of a shaft, see ``centres_of_orders``) and their half-power half widths eta w / 2.
-    tolerance: relative change below which a peak is settled. points: the same response for single points,
-    (design (N,), omega (N,)) -> (R, N); used after the first pass, so
-        that settled designs cost nothing more. Without it every design is evaluated until the last has
-        settled.
-    background: number of samples beside ends and centres (default 24, or the number of centres if larger).
+    - amplitude: omega (D, F) -> (R, D, F), not negative, each design at its own frequencies.
+    - low, high: scalars or (D,); equal for a single frequency.
+    - centres, half_widths: (D, m) in rad/s, the natural frequencies that the rows can show, divided by the order
+      for an order of a shaft (``centres_of_orders``), and their half-power half widths eta w / 2. With strong
+      dashpots use the damped poles (``modes.damped_poles``: imaginary part and minus the real part); a damper
+      that locks two masses together moves a sharp peak away from every undamped frequency.
+    - tolerance: relative change below which a peak is settled.
+    - points: the same response at single points, (design (N,), omega (N,)) -> (R, N), used after the first pass so
+      that settled designs cost nothing more. Without it every design is evaluated until the last has settled.
+    - background: number of samples beside ends and centres (default 24, or the number of centres if larger).
 
     FloatingPointError if a response is NaN or infinite; ValueError if the shapes or the interval are wrong.
     """
@@ -68,32 +72,25 @@ def supremum(
     low, high = (np.broadcast_to(np.asarray(a, dtype=float), centres.shape[:1]) for a in (low, high))
     _check(low, high, centres, widths, tolerance)
     extra = max(24, centres.shape[1]) if background is None else background
-    omega = first_samples(low, high, centres, widths, extra)
+    omega = first_samples(low, high, centres, extra)
     values = _checked(amplitude(omega))
     if values.ndim != 3 or values.shape[1:] != omega.shape:
         raise ValueError(f"the amplitude must have shape (rows, {omega.shape[0]}, {omega.shape[1]})")
-    evaluated = omega.size
-    value, where, error = (np.zeros(values.shape[:2]) for _ in range(3))
-    active = np.arange(omega.shape[0])
-    poles = centres + 1j * widths
-    omega, values = _unique(omega, values)
-    for turn in range(MOST_ROUNDS + 1):
-        best = values.max(axis=-1)
-        peaks = local_peaks(omega, values, best, poles[active], tolerance)
-        value[:, active] = best
-        where[:, active] = omega[np.arange(active.size), values.argmax(axis=-1)]
-        error[:, active] = _shortfall(peaks, best)
-        wanted = _wanted(peaks, best, tolerance)
-        if turn == MOST_ROUNDS or not np.any(wanted):
-            break
-        design, place = _stab(peaks, wanted)
-        keep, position = np.unique(design, return_inverse=True)
-        active, omega, values = active[keep], omega[keep], values[:, keep]
-        fresh = _lay_out(position, place, active.size)
-        fresh_values, spent = _evaluate(amplitude, points, active, fresh, low)
-        evaluated += spent
-        omega, values = _merge(omega, values, fresh, fresh_values)
-    return Envelope(value, where, error, evaluated)
+    designs = omega.shape[0]
+    if points is None:
+        ask, block = _through_all(amplitude, low), max(1, designs)
+    else:
+        # Blocks that stay in cache: every pass over the samples is otherwise one over main memory.
+        ask, block = _point_by_point(points), max(16, BLOCK // max(1, values.shape[0] * omega.shape[1]))
+    parts = []
+    for start in range(0, designs, block):
+        part = np.arange(start, min(start + block, designs))
+        parts.append(_refine(ask, part, omega[part], values[:, part], (centres, widths), tolerance))
+    if not parts:
+        empty = np.zeros(values.shape[:2])
+        return Envelope(empty, empty, empty, 0)
+    value, where, error = (np.concatenate(column, axis=1) for column in list(zip(*parts, strict=True))[:3])
+    return Envelope(value, where, error, omega.size + sum(part[3] for part in parts))
 
 
 def centres_of_orders(
@@ -113,13 +110,10 @@ def centres_of_orders(
     return centres.reshape(shape), (centres * half[..., :, None]).reshape(shape)
 
 
-def first_samples(
-    low: FloatArray, high: FloatArray, centres: FloatArray, half_widths: FloatArray, extra: int
-) -> FloatArray:
-    """First samples of every design, ascending: ends, centres inside, and ``extra`` that halve the widest
-    gaps.
+def first_samples(low: FloatArray, high: FloatArray, centres: FloatArray, extra: int) -> FloatArray:
+    """First samples, ascending: ends, centres inside the interval, and ``extra`` that halve the widest gaps.
 
-    Shapes: (D,), (D,), (D, m), (D, m) -> (D, m + 2 + extra).
+    Shapes: (D,), (D,), (D, m) in rad/s -> (D, m + 2 + extra). A centre outside repeats the lower end.
     """
     ends = np.stack([low, high], axis=1)
     inside = (centres > ends[:, :1]) & (centres < ends[:, 1:])
@@ -164,26 +158,68 @@ def _checked(values: FloatArray) -> FloatArray:
     return values
 
 
-def _wanted(peaks: Peaks, best: FloatArray, tolerance: float) -> np.ndarray:
-    """Peaks that are neither settled nor certain to stay below the best of their row."""
-    top = best[peaks.row, peaks.design]
-    hopeful = peaks.sample * (1.0 + 2.0 * (peaks.rise - 1.0)) > top * (1.0 + 0.5 * tolerance)
+def _refine(
+    ask: _Ask,
+    active: IntArray,
+    omega: FloatArray,
+    values: FloatArray,
+    poles: tuple[FloatArray, FloatArray],
+    tolerance: float,
+) -> tuple[FloatArray, FloatArray, FloatArray, int]:
+    """Value, place and estimated error (R, designs) from the first samples on, and the points it took."""
+    first, rows, spent = int(active[0]), values.shape[0], 0
+    value, where, error = (np.zeros((rows, active.size)) for _ in range(3))
+    open_rows = np.ones((rows, active.size), dtype=bool)
+    omega, values = _unique(omega, values)
+    for turn in range(MOST_ROUNDS + 1):
+        best = values.max(axis=-1)
+        value[:, active - first] = best
+        where[:, active - first] = omega[np.arange(active.size), values.argmax(axis=-1)]
+        row, design = np.nonzero(open_rows)
+        top = best[open_rows]
+        samples = Samples(omega, design, values[open_rows], top, poles[0][active], poles[1][active])
+        peaks = local_peaks(samples, tolerance)
+        error[row, (active - first)[design]] = _shortfall(peaks, top)
+        wanted = _wanted(peaks, top, tolerance)
+        if turn == MOST_ROUNDS or not np.any(wanted):
+            break
+        still = np.zeros(row.size, dtype=bool)
+        still[peaks.curve[wanted]] = True
+        open_rows = np.zeros_like(open_rows)
+        open_rows[row[still], design[still]] = True
+        at, place = _stab(design[peaks.curve[wanted]], peaks.place[wanted], peaks.reach[wanted])
+        keep, position = np.unique(at, return_inverse=True)
+        active, omega, values, best, open_rows = (
+            active[keep],
+            omega[keep],
+            values[:, keep],
+            best[:, keep],
+            open_rows[:, keep],
+        )
+        fresh = _lay_out(position, place, active.size)
+        fresh_values, points = ask(active, fresh)
+        spent += points
+        # A settled row opens again when a sample asked for by another one surprises it.
+        open_rows |= fresh_values.max(axis=-1) > best * (1.0 + tolerance)
+        omega, values = _merge(omega, values, fresh, fresh_values)
+    return value, where, error, spent
+
+
+def _wanted(peaks: Peaks, best: FloatArray, tolerance: float) -> BoolArray:
+    """Peaks that are neither settled nor certain to stay below the best of their curve."""
+    hopeful = peaks.sample * (2.0 * peaks.rise - 1.0) > best[peaks.curve] * (1.0 + 0.5 * tolerance)
     return np.asarray((peaks.rise > 1.0 + tolerance) & hopeful & np.isfinite(peaks.place))
 
 
 def _shortfall(peaks: Peaks, best: FloatArray) -> FloatArray:
-    """Largest estimated peak over the best sample, less 1."""
+    """Largest estimated peak over the best sample of each curve, less 1."""
     out = np.ones_like(best)
-    top = best[peaks.row, peaks.design]
-    np.maximum.at(out, (peaks.row, peaks.design), peaks.sample * peaks.rise / top)
+    np.maximum.at(out, peaks.curve, peaks.sample * peaks.rise / np.where(best > 0.0, best, 1.0)[peaks.curve])
     return np.asarray(out - 1.0)
 
 
-def _stab(peaks: Peaks, wanted: np.ndarray) -> tuple[IntArray, FloatArray]:
-    """Fewest samples that serve all wanted peaks: one sample for places whose reaches overlap, design by
-    design.
-    """
-    design, place, reach = peaks.design[wanted], peaks.place[wanted], peaks.reach[wanted]
+def _stab(design: IntArray, place: FloatArray, reach: FloatArray) -> tuple[IntArray, FloatArray]:
+    """Fewest samples that serve all places: one where their reaches overlap, design by design."""
     order = np.lexsort((place + reach, design))
     design, left, right = design[order], (place - reach)[order], (place + reach)[order]
     chosen_design, chosen_place = [], []
@@ -211,20 +247,30 @@ def _lay_out(position: IntArray, place: FloatArray, designs: int) -> FloatArray:
     return out
 
 
-def _evaluate(
-    amplitude: Amplitude, points: PointAmplitude | None, active: IntArray, fresh: FloatArray, low: FloatArray
-) -> tuple[FloatArray, int]:
-    """Values (R, designs, F) at the new samples, unused entries -inf, and how many points it took."""
-    used = np.isfinite(fresh)
-    if points is not None:
+def _point_by_point(points: PointAmplitude) -> _Ask:
+    """Values (R, designs, F) at new samples of some designs, unused entries -inf, and how many points it took."""
+
+    def ask(active: IntArray, fresh: FloatArray) -> tuple[FloatArray, int]:
+        used = np.isfinite(fresh)
         flat = _checked(points(np.repeat(active, used.sum(axis=1)), fresh[used]))
         out = np.full((flat.shape[0], *fresh.shape), -np.inf)
         out[:, used] = flat
         return out, int(used.sum())
-    asked = np.repeat(low[:, None], fresh.shape[1], axis=1)
-    asked[active] = np.where(used, fresh, fresh[:, :1])
-    out = _checked(amplitude(asked))[:, active]
-    return np.where(used, out, -np.inf), asked.size
+
+    return ask
+
+
+def _through_all(amplitude: Amplitude, low: FloatArray) -> _Ask:
+    """The same through a function that only knows all designs at once."""
+
+    def ask(active: IntArray, fresh: FloatArray) -> tuple[FloatArray, int]:
+        used = np.isfinite(fresh)
+        asked = np.repeat(low[:, None], fresh.shape[1], axis=1)
+        asked[active] = np.where(used, fresh, fresh[:, :1])
+        out = _checked(amplitude(asked))[:, active]
+        return np.where(used, out, -np.inf), asked.size
+
+    return ask
 
 
 def _merge(

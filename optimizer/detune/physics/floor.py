@@ -5,6 +5,7 @@ damper.
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, FloatArray
 from detune.physics.rigid_body import STANDARD_GRAVITY
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 from detune.physics.unsupported import UnsupportedMachine
 

@@ -7,6 +7,7 @@ times the centre. Index 0 is 1000 Hz, -20 is 10 Hz, -30 is 1 Hz.
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, FloatArray, IntArray
 
 REFERENCE_FREQUENCY = 1000.0

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, FloatArray
 
 

@@ -8,6 +8,7 @@ All arguments broadcast unless said otherwise.
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 from detune.physics.rigid_body import STANDARD_GRAVITY
 

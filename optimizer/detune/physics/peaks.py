@@ -1,21 +1,23 @@
 """Local peaks of sampled response curves: where the true peak lies and how high it can be.
 
 Near a resonance 1/amplitude^2 is very nearly a parabola in omega (exactly one for a single mode of small
-damping), so three samples give the peak. A fourth sample tells how far the parabola can be trusted, and so does
-the distance to the nearest pole: a response has no detail much finer than that.
+damping), so three samples give the peak. A fourth sample tells how far the parabola can be trusted, and so
+does the distance to the nearest pole: a response has no detail much finer than that.
 """
 
 from __future__ import annotations
 
+import dataclasses
 from dataclasses import dataclass
 
 import numpy as np
-from detune.physics.array_types import BoolArray, ComplexArray, FloatArray, IntArray
+
+from detune.physics.array_types import BoolArray, FloatArray, IntArray
 
 # A neighbour below 0.4 of the peak (2.3 half widths away) is too far for a parabola.
 COARSE = 1.0 / 0.4**2
-# So is one farther than this many distances to the nearest pole: another hump may fit between. A sample at an end
-# of the interval has a neighbour on one side only and needs a closer one.
+# So is one farther than this many distances to the nearest pole: another hump may fit between. A sample at an
+# end of the interval has a neighbour on one side only and needs a closer one.
 COARSE_GAP = 0.8
 COARSE_GAP_AT_EDGE = 0.5
 COARSE_GAP_BETWEEN = 0.3
@@ -25,40 +27,49 @@ SHOULDER_RISE = 3.0
 COARSE_RISE = 5.0
 # The same while its neighbours are only far away, per gap in distances to the nearest pole.
 HIDDEN_RISE = 0.3
-# A parabola through neighbours that are d1 and d2 down in 1/amplitude^2 misses at most about this times d1 d2.
+# A parabola through neighbours that are d1 and d2 down in 1/amplitude^2 misses at most about this times d1
+# d2.
 DOUBT = 0.1
 SMALLEST = 1.0 / COARSE_RISE**2
 
 
 @dataclass(frozen=True)
-class Peaks:
-    """Sampled local peaks, flat: row, design, and what to do about each.
+class Samples:
+    """What has been evaluated of P curves of D designs.
 
-    rise is the true peak over the sample, at most; place is where to sample next (NaN: nowhere); reach is how far
-    from place a sample serves as well. Two entries with the same peak are two places to sample.
+    omega (D, F) ascending in rad/s, unused entries infinite and last; design (P,) of each curve; values (P, F),
+    unused -inf; best (P,) the largest of each; poles (D, m) natural frequencies and half_widths (D, m) in rad/s.
     """
 
-    row: IntArray
+    omega: FloatArray
     design: IntArray
+    values: FloatArray
+    best: FloatArray
+    poles: FloatArray
+    half_widths: FloatArray
+
+    def nearest_pole(self, design: IntArray | slice, place: FloatArray) -> FloatArray:
+        """Distance of places (N, ...) of designs (N,) to the nearest pole of each, infinite without poles."""
+        shape = (-1, *(1,) * (place.ndim - 1), self.poles.shape[1])
+        away = place[..., None] - self.poles[design].reshape(shape)
+        away *= away
+        away += (self.half_widths[design] ** 2).reshape(shape)
+        return np.asarray(np.sqrt(away.min(axis=-1, initial=np.inf)))
+
+
+@dataclass(frozen=True)
+class Peaks:
+    """Places where a curve may exceed its best sample, flat: the curve, and what to do about each.
+
+    sample is the value there; rise is the true peak over the sample, at most; place is where to sample next (NaN:
+    nowhere); reach is how far from place a sample serves as well. A peak can ask for two samples.
+    """
+
+    curve: IntArray
     sample: FloatArray
     rise: FloatArray
     place: FloatArray
     reach: FloatArray
-
-
-@dataclass(frozen=True)
-class _Samples:
-    """What has been evaluated: see ``local_peaks`` for the shapes."""
-
-    omega: FloatArray
-    values: FloatArray
-    best: FloatArray
-    poles: ComplexArray
-
-    def nearest_pole(self, place: FloatArray) -> FloatArray:
-        """Distance of places (D, P) to the nearest pole of their design, infinite without poles."""
-        distance = np.abs(place[..., None] - self.poles[:, None, :])
-        return np.asarray(distance.min(axis=2, initial=np.inf))
 
 
 @dataclass(frozen=True)
@@ -74,83 +85,93 @@ class _Bracket:
     pole: FloatArray
 
 
-def local_peaks(
-    omega: FloatArray, values: FloatArray, best: FloatArray, poles: ComplexArray, tolerance: float
-) -> Peaks:
-    """Every sampled local peak, and every gap, that could exceed the best sample of its row.
-
-    Shapes: omega (D, F) ascending, unused entries infinite and last; values (R, D, F), unused -inf; best (R, D);
-    poles (D, m) as natural frequency + j half width in rad/s.
-    """
-    samples = _Samples(omega, values, best, poles)
-    peak = values > 0.0
-    peak[..., 1:] &= values[..., 1:] > values[..., :-1]
-    peak[..., :-1] &= values[..., :-1] >= values[..., 1:]
-    peak &= values * COARSE_RISE >= best[..., None]
-    row, design, i = np.nonzero(peak)
-    sample, centre = values[row, design, i], omega[design, i]
-    bracket = _neighbourhood(samples, row, design, i)
+def local_peaks(samples: Samples, tolerance: float) -> Peaks:
+    """Every sampled local peak, and every gap, that could exceed the best sample of its curve."""
+    values = samples.values
+    peak = values * COARSE_RISE >= samples.best[:, None]
+    peak &= values > 0.0
+    peak[:, 1:] &= values[:, 1:] > values[:, :-1]
+    peak[:, :-1] &= values[:, :-1] >= values[:, 1:]
+    curve, i = _where(peak)
+    sample, centre = values[curve, i], samples.omega[samples.design[curve], i]
+    bracket = _neighbourhood(samples, curve, i)
     before, after = np.isfinite(bracket.nodes[:, 1]), np.isfinite(bracket.nodes[:, 3])
     found = [_wide_gaps(samples, peak), _shoulders(samples, peak)]
     for chosen, judge in ((before & after, _inside), (before ^ after, _edge)):
         part = _Bracket(bracket.nodes[chosen], bracket.ordinates[chosen], bracket.pole[chosen])
         rise, places, reach = judge(part, tolerance)
         for place in places:
-            found.append((row[chosen], design[chosen], sample[chosen], rise, centre[chosen] + place, reach))
-    return Peaks(*(np.concatenate(column) for column in zip(*found, strict=True)))
+            found.append(Peaks(curve[chosen], sample[chosen], rise, centre[chosen] + place, reach))
+    return _joined(found)
 
 
-def _neighbourhood(samples: _Samples, row: IntArray, design: IntArray, i: IntArray) -> _Bracket:
-    omega, values = samples.omega, samples.values
-    steps = np.arange(-2, 3)
-    index = i[:, None] + steps
-    exists = (index >= 0) & (index < omega.shape[1])
-    index = np.clip(index, 0, omega.shape[1] - 1)
-    place = omega[design[:, None], index]
-    exists &= np.isfinite(place)
-    sample, centre = values[row, design, i][:, None], omega[design, i][:, None]
-    value = np.where(exists, values[row[:, None], design[:, None], index], sample)
-    # A zero of the response (an anti-resonance) is only far down, not infinitely far.
-    ordinates = (sample / np.maximum(value, 1e-8 * sample)) ** 2
-    distance = np.where(exists, place, 0.0) - centre
-    nodes = np.where(exists, distance, [-np.inf, -np.inf, 0.0, np.inf, np.inf])
-    return _Bracket(nodes, ordinates, np.abs(centre - samples.poles[design]).min(axis=1, initial=np.inf))
+def _joined(found: list[Peaks]) -> Peaks:
+    return Peaks(
+        *(
+            np.concatenate([getattr(part, field.name) for part in found])
+            for field in dataclasses.fields(Peaks)
+        )
+    )
 
 
-def _wide_gaps(samples: _Samples, peak: BoolArray) -> tuple[FloatArray, ...]:
+def _where(mask: BoolArray) -> tuple[IntArray, IntArray]:
+    curve, i = np.divmod(np.flatnonzero(mask), mask.shape[1])
+    return curve, i
+
+
+def _neighbourhood(samples: Samples, curve: IntArray, i: IntArray) -> _Bracket:
+    design, last = samples.design[curve], samples.omega.shape[1] - 1
+    sample, centre = samples.values[curve, i], samples.omega[design, i]
+    nodes = np.zeros((curve.size, 5))
+    ordinates = np.ones((curve.size, 5))
+    for column, step in enumerate((-2, -1, 0, 1, 2)):
+        index = np.clip(i + step, 0, last)
+        place = samples.omega[design, index]
+        exists = (index == i + step) & np.isfinite(place)
+        nodes[:, column] = np.where(exists, np.where(exists, place, 0.0) - centre, np.inf * (step or 1))
+        # A zero of the response (an anti-resonance) is only far down, not infinitely far.
+        value = np.maximum(np.where(exists, samples.values[curve, index], sample), 1e-8 * sample)
+        ordinates[:, column] = (sample / value) ** 2
+    return _Bracket(nodes, ordinates, samples.nearest_pole(design, centre))
+
+
+def _wide_gaps(samples: Samples, peak: BoolArray) -> Peaks:
     """Gaps between two high samples, no peak among them, wide enough to hide a hump: sampled half way."""
-    omega, values, best = samples.omega, samples.values, samples.best
-    used = np.isfinite(omega[:, 1:])
-    low, high = omega[:, :-1], np.where(used, omega[:, 1:], 0.0)
+    used = np.isfinite(samples.omega[:, 1:])
+    low, high = samples.omega[:, :-1], np.where(used, samples.omega[:, 1:], 0.0)
     middle, gap = np.where(used, 0.5 * (low + high), 0.0), np.where(used, high - low, 0.0)
-    width = gap / samples.nearest_pole(middle)
+    width = gap / samples.nearest_pole(slice(None), middle)
     rise = np.where(width > COARSE_GAP_BETWEEN, 1.0 + HIDDEN_RISE * width * np.minimum(width, 1.0), 0.5)
-    product = np.maximum(values[..., 1:], 0.0) * np.maximum(values[..., :-1], 0.0)
-    wanted = product * (2.0 * rise - 1.0) ** 2 > best[..., None] ** 2
-    row, design, i = np.nonzero(wanted & ~peak[..., 1:] & ~peak[..., :-1])
-    sample = np.sqrt(product[row, design, i])
-    return row, design, sample, rise[design, i], middle[design, i], 0.1 * gap[design, i]
+    positive = np.maximum(samples.values, 0.0)
+    product = positive[:, 1:] * positive[:, :-1]
+    wanted = product * ((2.0 * rise - 1.0) ** 2)[samples.design] > samples.best[:, None] ** 2
+    curve, i = _where(wanted & ~peak[:, 1:] & ~peak[:, :-1])
+    design = samples.design[curve]
+    sample = np.sqrt(product[curve, i])
+    return Peaks(curve, sample, rise[design, i], middle[design, i], 0.1 * gap[design, i])
 
 
-def _shoulders(samples: _Samples, peak: BoolArray) -> tuple[FloatArray, ...]:
+def _shoulders(samples: Samples, peak: BoolArray) -> Peaks:
     """Samples at a pole on the slope of another: two close poles can make a hump on the falling side."""
-    omega, values = samples.omega, samples.values
-    used = np.isfinite(omega)
-    place = np.where(used, omega, 0.0)
-    pole = samples.nearest_pole(place)
-    at_pole = used & (np.abs(place[..., None] - samples.poles.real[:, None, :]).min(axis=2, initial=np.inf) < 0.2 * pole)
+    used = np.isfinite(samples.omega)
+    place = np.where(used, samples.omega, 0.0)
+    pole = samples.nearest_pole(slice(None), place)
+    beside = np.abs(place[..., None] - samples.poles[:, None, :]).min(axis=2, initial=np.inf)
+    at_pole = used & (beside < 0.2 * pole)
     gap = np.where(used[:, 1:], np.diff(place, axis=1), 0.0)
+    values = samples.values
+    high = (SHOULDER_RISE * values > samples.best[:, None]) & ~peak
     found = []
-    for side, falling in ((1, values[..., :-1] > values[..., 1:]), (-1, values[..., 1:] > values[..., :-1])):
-        here = slice(None, -1) if side > 0 else slice(1, None)
-        candidate = at_pole[:, here] & (gap > COARSE_GAP * pole[:, here])
-        high = SHOULDER_RISE * values[..., here] > samples.best[..., None]
-        row, design, i = np.nonzero(falling & candidate & high & ~peak[..., here])
+    for side in (1, -1):
+        here, there = (slice(None, -1), slice(1, None))[::side]
+        candidate = (at_pole[:, here] & (gap > COARSE_GAP * pole[:, here]))[samples.design]
+        curve, i = _where(candidate & high[:, here] & (values[:, here] > values[:, there]))
         i = i + (side < 0)
+        design = samples.design[curve]
         step = 0.9 * COARSE_GAP * pole[design, i]
-        rise = np.full(row.size, 0.5 * (1.0 + SHOULDER_RISE))
-        found.append((row, design, values[row, design, i], rise, omega[design, i] + side * step, 0.2 * step))
-    return tuple(np.concatenate(column) for column in zip(*found, strict=True))
+        rise = np.full(curve.size, 0.5 * (1.0 + SHOULDER_RISE))
+        found.append(Peaks(curve, values[curve, i], rise, place[design, i] + side * step, 0.2 * step))
+    return _joined(found)
 
 
 def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatArray], FloatArray]:
@@ -213,7 +234,9 @@ def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatAr
 
 
 def _parabola(bracket: _Bracket) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
-    """Vertex and lowest ordinate by three samples, corrected by a fourth; the correction of the vertex; the bend."""
+    """Vertex and lowest ordinate by three samples, corrected by a fourth; the correction of the vertex; the
+    bend.
+    """
     left, right = -bracket.nodes[:, 1], bracket.nodes[:, 3]
     slope_left = (1.0 - bracket.ordinates[:, 1]) / left
     slope_right = (bracket.ordinates[:, 3] - 1.0) / right
@@ -259,8 +282,8 @@ def _hidden(rise: FloatArray, ordinate: FloatArray, gap: FloatArray) -> FloatArr
 def _step(vertex: FloatArray, left: FloatArray, right: FloatArray) -> FloatArray:
     """Where to sample next, from the peak sample: the vertex, kept off the samples there are.
 
-    In a bracket much wider on one side parabolas creep, and the far sample may belong to another peak; there the
-    step goes to the wide side, at least twice the narrow one.
+    In a bracket much wider on one side parabolas creep, and the far sample may belong to another peak; there
+    the step goes to the wide side, at least twice the narrow one.
     """
     lopsided = np.maximum(left, right) > 4.0 * np.minimum(left, right)
     side = np.where(np.where(lopsided, right > left, vertex > 0.0), 1.0, -1.0)

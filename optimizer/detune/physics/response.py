@@ -6,6 +6,7 @@ Time convention exp(+j w t), amplitudes peak: q(t) = Re(q exp(j w t)).
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 
 

@@ -8,6 +8,7 @@ tensor, parallel axes).
 from __future__ import annotations
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, FloatArray
 
 STANDARD_GRAVITY = 9.80665  # m/s2, ISO 80000-3

@@ -11,6 +11,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+
 from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 from detune.physics.rigid_body import skew
 

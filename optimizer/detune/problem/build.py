@@ -18,7 +18,7 @@ from detune.brief.allowable.views import Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
 from detune.brief.cross_check import cross_check
-from detune.brief.finding import Finding
+from detune.brief.finding import Finding, faults_without_lines
 from detune.ground.errors import BriefError
 from detune.parts.assumed import group_assumed
 from detune.parts.catalog import Catalog
@@ -26,8 +26,10 @@ from detune.parts.kinds.mount import Mount
 from detune.physics.static import is_supported
 from detune.problem.candidates import Dropped, find_candidates
 from detune.problem.requirement import Requirement
+from detune.response.amplitude import deflection_pairs, works_by_amplitude
 from detune.response.bands import BandRows, band_rows
 from detune.response.condition_rows import condition_rows
+from detune.response.damping_readings import readings_of
 from detune.response.design import Design
 from detune.response.designs import Designs, all_designs, design_count
 from detune.response.evaluate import Rows
@@ -38,37 +40,47 @@ from detune.response.model import Model, build_model
 
 @dataclass(frozen=True)
 class HarmonicRequirements:
-    """Harmonic requirements of one condition that are evaluated together: rows and their requirements, in order."""
+    """Harmonic requirements of one condition that are evaluated together: rows and their requirements, in order.
+
+    `driving`: the forcing of the condition, where it sets the amplitude at which parts work, else None.
+    """
 
     rows: Rows
     requirements: tuple[Requirement, ...]
     model: Model
+    driving: Rows | None = None
 
 
 @dataclass(frozen=True)
 class StateModel:
-    """The machine in one state: its name (None as installed), model, and what steadily excites it there."""
+    """The machine in one state: its name (None as installed), model, and what steadily excites it there.
+
+    `reading` says how damping of unknown kind is read in the model, None where every kind is known.
+    """
 
     state: str | None
     model: Model
     places: Places
     intervals: tuple[tuple[float, float], ...]
+    reading: str | None = None
 
 
 @dataclass(frozen=True)
 class BandRequirements:
-    """Band limits of one condition that are evaluated together: rows and their requirements, in order."""
+    """Band limits of one condition that are evaluated together, as `HarmonicRequirements`."""
 
     rows: BandRows
     requirements: tuple[Requirement, ...]
     model: Model
+    driving: Rows | None = None
 
 
 @dataclass(frozen=True)
 class Problem:
     """All a solver sees: the models, the requirements by the work they take, and what is traded.
 
-    `states` holds the machine in every state that some condition is judged in, as installed first.
+    `states` holds the machine in every state that some condition is judged in, as installed first, and in each
+    once for every reading of damping of unknown kind; what is at rest does not depend on the reading.
     """
 
     brief: Brief
@@ -153,12 +165,15 @@ def _problem(
         statics=tuple(
             requirement
             for each in states
+            if each.reading == states[0].reading
             for requirement in _expand(allowables, StaticAllowable, "at rest", each.places, each.state)
         ),
         modes=tuple(
             requirement
             for each in states
-            for requirement in _expand(allowables, ModeAllowable, "steady conditions", each.places, each.state)
+            for requirement in _expand(
+                allowables, ModeAllowable, "steady conditions", each.places, each.state, each.reading
+            )
         ),
         harmonics=tuple(
             group
@@ -183,24 +198,31 @@ def _problem(
 
 
 def _state_models(brief: Brief, mounts: tuple[tuple[Mount, ...], ...]) -> tuple[StateModel, ...]:
-    """Return the machine as installed and in every other state that a condition names."""
+    """Return the machine as installed and in every other state that a condition names, in every reading."""
     named = dict.fromkeys([None, *(condition.state for condition in brief.conditions)])
+    readings = readings_of(mount for group in mounts for mount in group)
     models = []
     for name in named:
-        model = build_model(brief, mounts, state_of(brief, name))
-        _check_support(brief, model, name)
-        carrying = tuple(station.name for station in model.stations if station.parallel > 0)
-        places = Places(tuple(model.points), carrying, tuple(body.name for body in brief.bodies))
-        models.append(StateModel(name, model, places, steady_intervals(brief, name)))
+        for reading in readings:
+            model = build_model(brief, mounts, state_of(brief, name), reading)
+            _check_support(brief, model, name)
+            carrying = tuple(station.name for station in model.stations if station.parallel > 0)
+            places = Places(tuple(model.points), carrying, tuple(body.name for body in brief.bodies))
+            models.append(StateModel(name, model, places, steady_intervals(brief, name), reading))
     return tuple(models)
 
 
 def _expand(
-    allowables: tuple[Allowable, ...], form: type[Allowable], condition: str, places: Places, state: str | None
+    allowables: tuple[Allowable, ...],
+    form: type[Allowable],
+    condition: str,
+    places: Places,
+    state: str | None,
+    reading: str | None = None,
 ) -> tuple[Requirement, ...]:
     told = condition if state is None else f"{condition}, {state}"
     return tuple(
-        Requirement(allowable, told, place, state)
+        Requirement(allowable, told, place, state, reading)
         for allowable in allowables
         if isinstance(allowable, form)
         for place in allowable.places(places)
@@ -222,9 +244,10 @@ def _harmonic(
             continue
         families = unit_families(brief, each.model, condition, allowable)
         if families and pairs:
-            groups.append(_group(Rows(tuple(pairs), families, largest=True), condition, each))
+            groups.append(_group(brief, Rows(tuple(pairs), families, largest=True), condition, each))
     if forced:
-        groups.insert(0, _group(condition_rows(brief, each.model, condition, tuple(forced)), condition, each))
+        rows = condition_rows(brief, each.model, condition, tuple(forced))
+        groups.insert(0, _group(brief, rows, condition, each))
     return groups
 
 
@@ -239,15 +262,24 @@ def _banded(
     )
     if not pairs:
         return []
-    requirements = tuple(Requirement(allowable, condition.name, place, each.state) for allowable, place in pairs)
-    return [BandRequirements(band_rows(brief, each.model, condition, pairs), requirements, each.model)]
-
-
-def _group(rows: Rows, condition: Condition, each: StateModel) -> HarmonicRequirements:
     requirements = tuple(
-        Requirement(allowable, condition.name, place, each.state) for allowable, place in rows.pairs
+        Requirement(allowable, condition.name, place, each.state, each.reading) for allowable, place in pairs
     )
-    return HarmonicRequirements(rows, requirements, each.model)
+    rows = band_rows(brief, each.model, condition, pairs)
+    return [BandRequirements(rows, requirements, each.model, _driving(brief, condition, each))]
+
+
+def _driving(brief: Brief, condition: Condition, each: StateModel) -> Rows | None:
+    if not works_by_amplitude(each.model):
+        return None
+    return condition_rows(brief, each.model, condition, deflection_pairs(each.model))
+
+
+def _group(brief: Brief, rows: Rows, condition: Condition, each: StateModel) -> HarmonicRequirements:
+    requirements = tuple(
+        Requirement(allowable, condition.name, place, each.state, each.reading) for allowable, place in rows.pairs
+    )
+    return HarmonicRequirements(rows, requirements, each.model, _driving(brief, condition, each))
 
 
 def _check_support(brief: Brief, model: Model, state: str | None) -> None:

@@ -9,19 +9,22 @@ from detune.brief.allowable import Allowable
 class Requirement:
     """What a margin is computed of; it carries the same labels as the assessor's rows.
 
-    `state` names the state of the machine it is judged in, None as installed.
+    `state` names the state of the machine it is judged in, None as installed. `reading` says how damping of
+    unknown kind is read, None where every kind is known.
     """
 
     allowable: Allowable
     condition: str
     place: str
     state: str | None = None
+    reading: str | None = None
 
     @property
     def label(self) -> str:
         """The requirement in words: quantity, place, condition."""
         place = f" at {self.place}" if self.place != "whole machine" else ""
-        return f"{self.allowable.quantity()}{place} ({self.condition})"
+        read = f", {self.reading}" if self.reading is not None else ""
+        return f"{self.allowable.quantity()}{place} ({self.condition}{read})"
 
     @property
     def is_total(self) -> bool:

@@ -11,7 +11,8 @@ from detune.brief.allowable.separation import least_separation
 from detune.brief.allowable.views import DesignView
 from detune.problem.build import BandRequirements, HarmonicRequirements, Problem
 from detune.problem.requirement import Requirement
-from detune.response.assemble import dynamic_matrices
+from detune.response.amplitude import values_at_own_amplitude, worse_of_two_amplitudes
+from detune.response.assemble import Dynamic, dynamic_matrices
 from detune.response.bands import band_ratios
 from detune.response.designs import Designs, part_numbers, total_cost
 from detune.response.evaluate import TWO_PI, family_amplitude, response_values
@@ -47,11 +48,10 @@ def stages(problem: Problem) -> tuple[Stage, ...]:
         result.append(Stage("statics", problem.statics, lambda d: _statics(problem, d), False, 20_000))
     if problem.modes:
         result.append(Stage("separation", problem.modes, lambda d: _modes(problem, d), False, 20_000))
-    for group in problem.harmonics:
-        result.append(_screen(group))
-    for group in problem.harmonics:
-        if group.rows.has_slow_parts:
-            result.append(_response(group, slow_parts=False))
+    # Where parts follow the amplitude, a few speeds or a part of the forcing bound nothing.
+    steady = [group for group in problem.harmonics if group.driving is None]
+    result += [_screen(group) for group in steady]
+    result += [_response(group, slow_parts=False) for group in steady if group.rows.has_slow_parts]
     for group in problem.harmonics:
         result.append(_response(group, slow_parts=True))
     result += [_banded(group) for group in problem.bands]
@@ -89,7 +89,10 @@ def _totals(problem: Problem, designs: Designs) -> Floats:
 
 
 def _statics(problem: Problem, designs: Designs) -> Floats:
-    views = {each.state: static_batch(each.model, designs) for each in problem.states}
+    first = problem.states[0].reading
+    views = {
+        each.state: static_batch(each.model, designs) for each in problem.states if each.reading == first
+    }
     rows = []
     for requirement in problem.statics:
         assert isinstance(requirement.allowable, StaticAllowable)
@@ -103,11 +106,11 @@ def _modes(problem: Problem, designs: Designs) -> Floats:
     views = {}
     for each in problem.states:
         dynamic = dynamic_matrices(each.model, designs)
-        views[each.state] = mode_batch(dynamic).view(dynamic, each.intervals)
+        views[each.state, each.reading] = mode_batch(dynamic).view(dynamic, each.intervals)
     rows = []
     for requirement in problem.modes:
         assert isinstance(requirement.allowable, ModeAllowable)
-        view = views[requirement.state]
+        view = views[requirement.state, requirement.reading]
         limits = requirement.allowable.lower_limit(), requirement.allowable.upper_limit()
         lower, upper = (None if limit is None else np.array(limit) for limit in limits)
         rows.append(window_margin(requirement.allowable.value(view), lower, upper))
@@ -135,18 +138,28 @@ def _screen(group: HarmonicRequirements) -> Stage:
 def _response(group: HarmonicRequirements, slow_parts: bool) -> Stage:
     def margins(designs: Designs) -> Floats:
         dynamic = dynamic_matrices(group.model, designs)
-        found = response_values(group.model, designs, dynamic, mode_batch(dynamic), group.rows, slow_parts)
+        if group.driving is not None:
+            found = values_at_own_amplitude(group.model, designs, dynamic, group.rows, group.driving)
+        else:
+            modal = mode_batch(dynamic)
+            found = response_values(group.model, designs, dynamic, modal, group.rows, slow_parts)
         return _harmonic_margins(group, designs, found.value)
 
     name = "response over the whole range" if slow_parts else "response without records and passages"
-    return Stage(name, group.requirements, margins, not slow_parts, 500)
+    return Stage(name, group.requirements, margins, not slow_parts, 500 if group.driving is None else 100)
 
 
 def _banded(group: BandRequirements) -> Stage:
     def margins(designs: Designs) -> Floats:
         dynamic = dynamic_matrices(group.model, designs)
-        found = band_ratios(group.model, designs, dynamic, mode_batch(dynamic), group.rows)
-        return upper_margin(found.value, np.array(1.0))
+
+        def ratios(at: Dynamic) -> Floats:
+            return band_ratios(group.model, designs, at, mode_batch(at), group.rows).value
+
+        if group.driving is None:
+            return upper_margin(ratios(dynamic), np.array(1.0))
+        worse = worse_of_two_amplitudes(group.model, designs, dynamic, group.driving, ratios)
+        return upper_margin(worse, np.array(1.0))
 
     return Stage("response in one-third-octave bands", group.requirements, margins, False, 500)
 

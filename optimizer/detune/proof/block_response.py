@@ -43,29 +43,12 @@ def case_block(
     kappa_re, kappa_im (S*3, 64): stiffness of one part. drive (S*3,): base displacement. Limits flat.
     """
     n, m, axes = stations.shape[1], outer.shape[1], stations.shape[0]
-    for a in range(axes):
-        re, im = kappa_re[a], kappa_im[a]
-        for k in range(m):
-            factor = outer[a, k]
-            if factor != 0.0:
-                block_re = dynamic[k * 64 : k * 64 + 64]
-                block_im = dynamic[(m + k) * 64 : (m + k) * 64 + 64]
-                for b in range(64):
-                    block_re[b] += factor * re[b]
-                    block_im[b] += factor * im[b]
+    add_springs(dynamic, outer, kappa_re, kappa_im)
     f, q = dynamic[2 * m * 64 : (2 * m + 2 * n) * 64], dynamic[(2 * m + 2 * n) * 64 : (2 * m + 4 * n) * 64]
     f_re, f_im, q_re, q_im = f[: n * 64], f[n * 64 :], q[: n * 64], q[n * 64 :]
-    for i in range(n):
-        for b in range(64):
-            f_re[i * 64 + b] = load_re[i]
-            f_im[i * 64 + b] = load_im[i]
+    fill_load(f_re, f_im, load_re, load_im)
     if driven:
-        for a in range(axes):
-            for i in range(n):
-                factor = stations[a, i] * counts[a]
-                for b in range(64):
-                    f_re[i * 64 + b] += factor * (kappa_re[a, b] * drive_re[a] - kappa_im[a, b] * drive_im[a])
-                    f_im[i * 64 + b] += factor * (kappa_re[a, b] * drive_im[a] + kappa_im[a, b] * drive_re[a])
+        add_drive(f_re, f_im, stations, counts, kappa_re, kappa_im, drive_re, drive_im)
     complex_block(dynamic)
     good[:] = dynamic[(2 * m + 4 * n) * 64 :]
     ratio, re_sum, im_sum = work[2, :64], work[3, :64], work[4, :64]
@@ -98,6 +81,50 @@ def case_block(
         worst_ratio(total_re[t * 64 : t * 64 + 64], total_im[t * 64 : t * 64 + 64], total_limit[t], ratio)
     for b in range(64):
         margin[b] = 1.0 / np.sqrt(ratio[b]) - 1.0 if ratio[b] > 0.0 else np.inf
+
+
+def add_springs(dynamic: Floats, outer: Floats, kappa_re: Floats, kappa_im: Floats) -> None:
+    """Add kappa b b^T of all axes to the packed blocks, real then imaginary."""
+    m = outer.shape[1]
+    for a in range(outer.shape[0]):
+        re, im = kappa_re[a], kappa_im[a]
+        for k in range(m):
+            factor = outer[a, k]
+            if factor != 0.0:
+                block_re = dynamic[k * 64 : k * 64 + 64]
+                block_im = dynamic[(m + k) * 64 : (m + k) * 64 + 64]
+                for b in range(64):
+                    block_re[b] += factor * re[b]
+                    block_im[b] += factor * im[b]
+
+
+def fill_load(f_re: Floats, f_im: Floats, load_re: Floats, load_im: Floats) -> None:
+    """The same load in all lanes."""
+    for i in range(load_re.shape[0]):
+        for b in range(64):
+            f_re[i * 64 + b] = load_re[i]
+            f_im[i * 64 + b] = load_im[i]
+
+
+def add_drive(
+    f_re: Floats,
+    f_im: Floats,
+    stations: Floats,
+    counts: Floats,
+    kappa_re: Floats,
+    kappa_im: Floats,
+    drive_re: Floats,
+    drive_im: Floats,
+) -> None:
+    """Add count b kappa u of all axes to the load."""
+    for a in range(stations.shape[0]):
+        for i in range(stations.shape[1]):
+            factor = stations[a, i] * counts[a]
+            if factor != 0.0:
+                for b in range(64):
+                    re, im = kappa_re[a, b], kappa_im[a, b]
+                    f_re[i * 64 + b] += factor * (re * drive_re[a] - im * drive_im[a])
+                    f_im[i * 64 + b] += factor * (re * drive_im[a] + im * drive_re[a])
 
 
 def project(row: Floats, q_re: Floats, q_im: Floats, re_sum: Floats, im_sum: Floats) -> None:

@@ -108,7 +108,7 @@ def load_kernels(n: int, announce: Callable[[str], None] | None = None) -> Any:
         part.replace(path)
     ready = path.with_suffix(".ready")
     if not ready.exists() and announce is not None:
-        announce("Compiling the search kernels; this is done once and takes about half a minute.")
+        announce("Compiling the search kernels; this is done once and takes about a minute.")
     spec = importlib.util.spec_from_file_location(path.stem, path)
     assert spec is not None and spec.loader is not None
     module = importlib.util.module_from_spec(spec)

@@ -1,5 +1,6 @@
 """The terminal summary: the answer first, then what to look at, the cautions, and where the files are."""
 
+import math
 import textwrap
 from collections.abc import Iterable, Sequence
 from pathlib import Path
@@ -147,9 +148,23 @@ def partial_words(result: Result) -> str | None:
         return None
     why = "the time limit" if stopped == "time limit" else "an interruption"
     return (
-        f"PARTIAL RESULT: stopped by {why} after {record.looked_at} of {record.designs} designs. "
-        "A better design may exist among those not looked at."
+        f"PARTIAL RESULT: stopped by {why} after {record.looked_at:,} of {record.designs:,} designs. "
+        f"A better design may exist among those not looked at. {_bracket(result)}".rstrip()
     )
+
+
+def _bracket(result: Result) -> str:
+    """Return what is proven about the cost of a partial result: the lower bound, and the gap to the best found."""
+    bound = result.outcome.record.lower_bound
+    if bound is None or bound == -math.inf:
+        return ""
+    if not result.outcome.designs.count:
+        return f"None of them costs less than {bound:.2f}." if math.isfinite(bound) else ""
+    best = float(result.outcome.objectives["cost"].min())
+    if bound >= best:
+        return f"None of them costs less than the cheapest one found ({best:.2f})."
+    gap = (best - bound) / best
+    return f"None of them costs less than {bound:.2f}; the cheapest one found costs {best:.2f}: a gap of {gap:.1%}."
 
 
 def _partial(result: Result) -> list[str]:

@@ -5,7 +5,7 @@ complex poles from the quadratic eigenproblem place the samples, and every local
 by a bounded one-dimensional search.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -25,8 +25,15 @@ from detune.brief.condition import Condition
 from detune.parts.kinds.mount import Mount
 from detune.physics import modes, separation
 from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
+from detune.response.damping_readings import readings_of
 from detune.response.design import Design
 from detune.response.direct import DirectMachine
+from detune.response.direct_amplitude import (
+    WorkingAmplitude,
+    follows_amplitude,
+    suprema_at_amplitude,
+    working_amplitude,
+)
 from detune.response.direct_bands import direct_band_ratio
 from detune.response.direct_modes import DirectModes, direct_modes
 from detune.response.direct_supremum import (
@@ -42,6 +49,8 @@ from detune.response.margin import window_margin
 
 Floats = NDArray[np.float64]
 TWO_PI = 2.0 * np.pi
+BY_ITERATION = "at the amplitude it produces itself, by iteration"
+NONE_FOUND = "no amplitude was found that reproduces itself"
 
 
 def assess(brief: Brief, design: Design) -> Assessment:
@@ -54,9 +63,10 @@ def assess(brief: Brief, design: Design) -> Assessment:
             value = float(allowable.value(totals)[0])
             rows.append(_row(allowable, "design", "whole machine", value, None, allowable.upper_limit()))
     exempt = exempt_amplification(brief)
-    found = [_in_state(brief, design, name) for name in states_of(brief)]
-    for each in found:
-        rows += _rows_in_state(each, allowables)
+    readings = readings_of(design.mounts)
+    found = [_in_state(brief, design, name, reading) for name in states_of(brief) for reading in readings]
+    for first in range(0, len(found), len(readings)):
+        rows += _worse([_rows_in_state(each, allowables) for each in found[first : first + len(readings)]])
     kept = tuple(row for row in rows if row.upper is None or np.isfinite(row.upper))
     counted = [row.margin for row in kept if row.kind not in ("cost", "added-mass", "part-numbers")]
     installed = found[0]
@@ -70,7 +80,7 @@ def assess(brief: Brief, design: Design) -> Assessment:
         least_margin=min(counted),
         margins=kept,
         stations=_station_rows(brief, installed.static, design),
-        modes=_mode_rows(installed.modes, exempt),
+        modes=_livelier([_mode_rows(each.modes, exempt) for each in found[: len(readings)]]),
         power=tuple(power for each in found for power in _power_rows(each)),
         total_load=float(-installed.machine.dead_load[2 : 6 * len(brief.bodies) : 6].sum()),
     )
@@ -78,9 +88,10 @@ def assess(brief: Brief, design: Design) -> Assessment:
 
 @dataclass(frozen=True)
 class _InState:
-    """The machine in one state, with its statics, modes, conditions and places."""
+    """The machine in one state and reading of unknown damping, with its statics, modes, conditions and places."""
 
     state: str | None
+    reading: str | None
     machine: DirectMachine
     static: DirectStatic
     modes: DirectModes
@@ -93,11 +104,12 @@ def states_of(brief: Brief) -> tuple[str | None, ...]:
     return tuple(dict.fromkeys([None, *(condition.state for condition in brief.conditions)]))
 
 
-def _in_state(brief: Brief, design: Design, name: str | None) -> _InState:
-    machine = DirectMachine(brief, design, state_of(brief, name))
+def _in_state(brief: Brief, design: Design, name: str | None, reading: str | None) -> _InState:
+    machine = DirectMachine(brief, design, state_of(brief, name), reading)
     carrying = tuple(s.name for s in brief.stations if machine.share(s) > 0.0)
     return _InState(
         state=name,
+        reading=reading,
         machine=machine,
         static=DirectStatic(machine),
         modes=direct_modes(machine, steady_intervals(brief, name)),
@@ -120,19 +132,55 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
             limits = allowable.lower_limit(), allowable.upper_limit()
             rows.append(_row(allowable, f"steady conditions{told}", "whole machine", value, *limits))
     for condition in each.conditions:
-        rows += _band_rows(each, condition, allowables)
-        rows += _harmonic_rows(each.machine, each.static, each.modes, condition, allowables, each.places)
-    return rows
+        working = working_amplitude(each.machine, condition) if follows_amplitude(each.machine) else None
+        judged = _band_rows(each, condition, allowables, working)
+        judged += _harmonic_rows(each, condition, allowables, working)
+        rows += judged if working is None else [_at_amplitude(row) for row in judged]
+    return [_noted(each, row) for row in rows]
+
+
+def _worse(readings: list[list[MarginRow]]) -> list[MarginRow]:
+    """Return of each requirement the row of the worse reading, which says so where the readings differ."""
+    kept = []
+    for rows in zip(*readings, strict=True):
+        worst = min(rows, key=lambda row: row.margin)
+        alike = all(row.value == worst.value for row in rows)
+        kept.append(replace(worst, note="") if alike and len(rows) > 1 else worst)
+    return kept
+
+
+def _noted(each: _InState, row: MarginRow) -> MarginRow:
+    notes = [note for note in (row.note, each.reading) if note]
+    return replace(row, note="; ".join(notes))
+
+
+def _at_amplitude(row: MarginRow) -> MarginRow:
+    return replace(row, note=BY_ITERATION if np.isfinite(row.value) else NONE_FOUND)
+
+
+def _ends(each: _InState, working: WorkingAmplitude | None) -> list[tuple[DirectMachine, DirectModes]]:
+    """Return the machine and its modes at every amplitude a ratio or a band is judged at: none, and the one it works at."""
+    if working is None:
+        return [(each.machine, each.modes)]
+    machines = [each.machine.at_amplitude(a) for a in (np.zeros_like(working.total), working.total)]
+    return [(machine, direct_modes(machine, [])) for machine in machines]
 
 
 def _band_rows(
-    each: _InState, condition: Condition, allowables: tuple[Allowable, ...]
+    each: _InState,
+    condition: Condition,
+    allowables: tuple[Allowable, ...],
+    working: WorkingAmplitude | None,
 ) -> list[MarginRow]:
     rows = []
     for allowable in allowables:
         if isinstance(allowable, BandAllowable) and applies(allowable.conditions, condition.name):
             for place in allowable.places(each.places):
-                ratio, at = direct_band_ratio(each.machine, each.modes, condition, allowable, place)
+                ratio, at = max(
+                    (direct_band_ratio(*end, condition, allowable, place) for end in _ends(each, working)),
+                    key=lambda found: found[0],
+                )
+                ratio = ratio if working is None or working.settled else np.inf
                 frequency = None if np.isnan(at) else at
                 rows.append(_row(allowable, condition.name, place, ratio, None, 1.0, frequency))
     return rows
@@ -176,11 +224,14 @@ def _row(
     lower: float | None,
     upper: float | None,
     frequency: float | None = None,
+    note: str = "",
 ) -> MarginRow:
-    margin = window_margin(
-        np.array(value),
-        None if lower is None or np.isnan(lower) else np.array(lower),
-        None if upper is None or np.isnan(upper) else np.array(upper),
+    margin = float(
+        window_margin(
+            np.array(value),
+            None if lower is None or np.isnan(lower) else np.array(lower),
+            None if upper is None or np.isnan(upper) else np.array(upper),
+        )
     )
     return MarginRow(
         kind=allowable.kind,
@@ -191,8 +242,10 @@ def _row(
         value=value,
         lower=lower,
         upper=upper,
-        margin=float(margin),
+        # A value that is not a number must never pass.
+        margin=-np.inf if np.isnan(value) else margin,
         frequency=frequency,
+        note=note,
     )
 
 
@@ -209,26 +262,38 @@ def _static_row(static: DirectStatic, allowable: StaticAllowable, place: str, co
 
 
 def _harmonic_rows(
-    machine: DirectMachine,
-    static: DirectStatic,
-    found_modes: DirectModes,
-    condition: Condition,
-    allowables: tuple[Allowable, ...],
-    names: Places,
+    each: _InState, condition: Condition, allowables: tuple[Allowable, ...], working: WorkingAmplitude | None
 ) -> list[MarginRow]:
+    machine, static, names = each.machine, each.static, each.places
     harmonic = [
         a for a in allowables if isinstance(a, HarmonicAllowable) and applies(a.conditions, condition.name)
     ]
     forced = tuple((a, place) for a in harmonic if a.unit_load() is None for place in a.places(names))
     rows = []
     if forced:
-        rows += _judged(static, condition, forced, forced_suprema(machine, found_modes, condition, forced))
+        if working is None:
+            under = forced_suprema(machine, each.modes, condition, forced)
+        else:
+            under = suprema_at_amplitude(machine, condition, forced, working)
+        rows += _judged(static, condition, forced, under)
     for allowable in harmonic:
         if allowable.unit_load() is not None:
             pairs = tuple((allowable, place) for place in allowable.places(names))
-            found = unit_load_suprema(machine, found_modes, condition, allowable, pairs)
+            ends = [unit_load_suprema(*end, condition, allowable, pairs) for end in _ends(each, working)]
+            found = _larger([end for end in ends if end is not None])
+            if found is not None and working is not None and not working.settled:
+                found = replace(found, value=np.full_like(found.value, np.inf))
             rows += [] if found is None else _judged(static, condition, pairs, found)
     return rows
+
+
+def _larger(ends: list[Supremum]) -> Supremum | None:
+    best = ends[0] if ends else None
+    for other in ends[1:]:
+        assert best is not None
+        more = other.value > best.value
+        best = Supremum(np.where(more, other.value, best.value), np.where(more, other.speed, best.speed))
+    return best
 
 
 def _judged(static: DirectStatic, condition: Condition, pairs: Pairs, found: Supremum) -> list[MarginRow]:
@@ -298,6 +363,11 @@ def _mode_rows(found: DirectModes, exempt: float | None) -> tuple[ModeRow, ...]:
     return tuple(rows)
 
 
+def _livelier(readings: list[tuple[ModeRow, ...]]) -> tuple[ModeRow, ...]:
+    """Return the modes, which every reading of unknown damping has alike, each with its greatest amplification."""
+    return tuple(max(rows, key=lambda row: row.amplification) for rows in zip(*readings, strict=True))
+
+
 def _power_rows(each: _InState) -> tuple[PowerRow, ...]:
     """Energy balance of each condition, tone by tone, at the middle of its speed range."""
     rows = []
@@ -312,5 +382,6 @@ def _power_rows(each: _InState) -> tuple[PowerRow, ...]:
             put_in, dissipated = put_in + float(into[0]), dissipated + float(lost[0])
             scale = max(abs(float(into[0])), abs(float(lost[0])), np.finfo(float).tiny)
             error = max(error, abs(float(into[0]) - float(lost[0])) / scale)
-        rows.append(PowerRow(condition.name, speed, put_in, dissipated, error))
+        told = condition.name if each.reading is None else f"{condition.name}, {each.reading}"
+        rows.append(PowerRow(told, speed, put_in, dissipated, error))
     return tuple(rows)

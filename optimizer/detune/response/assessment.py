@@ -10,7 +10,8 @@ class MarginRow:
     """One requirement judged: margin = limit/value - 1 (upper), value/limit - 1 (lower), positive = met.
 
     `unit` is a kind of unit. `frequency` (Hz) is the speed or frequency at which the worst occurs,
-    None where there is none.
+    None where there is none. `note` says how the value came about where that is not plain: which reading of an
+    unknown damping kind was the worse, that an amplitude was found by iteration.
     """
 
     kind: str
@@ -23,12 +24,18 @@ class MarginRow:
     upper: float | None
     margin: float
     frequency: float | None
+    note: str = ""
+
+    @property
+    def told(self) -> str:
+        """The quantity with its note."""
+        return f"{self.quantity} ({self.note})" if self.note else self.quantity
 
     @property
     def label(self) -> str:
-        """The requirement in words: quantity, place, condition."""
+        """The requirement in words: quantity, note, place, condition."""
         place = f" at {self.place}" if self.place != "whole machine" else ""
-        return f"{self.quantity}{place} ({self.condition})"
+        return f"{self.told}{place} ({self.condition})"
 
 
 @dataclass(frozen=True)

@@ -6,6 +6,7 @@ partitioned off, so forces into the floor come out as reactions. Two ways to the
 each other.
 """
 
+from copy import copy
 from dataclasses import dataclass, field
 from functools import cached_property
 
@@ -24,6 +25,7 @@ from detune.parts.kinds.mount import Mount
 from detune.physics.orientation import axes_from_direction
 from detune.physics.rigid_body import box_inertia, skew
 from detune.physics.static import solve_static
+from detune.response.damping_readings import read_as
 from detune.response.design import Design
 from detune.response.direct_laws import DirectRest, follows_curve, part_stiffness, rest_on_laws
 from detune.response.part_laws import ROOM_TEMPERATURE
@@ -35,14 +37,18 @@ FLOOR = "floor"
 
 @dataclass(frozen=True)
 class DirectMachine:
-    """A brief with one design put in, in a state.
+    """A brief with one design put in, in a state, damping of unknown kind read as `reading` (damping_readings).
 
+    `amplitude` (m), one for each station or also (S, F) over the frequencies asked for, is the peak axial deflection
+    at which parts work that follow it; None takes them as listed.
     N = 6 (bodies + 1) + m freedoms: the bodies', the floor's six, and the m modes of a structure.
     """
 
     brief: Brief
     design: Design
     state: State | None = None
+    reading: str | None = None
+    amplitude: Floats | None = None
     floor: FloorFreedom | None = field(init=False)
     centres: dict[str, Floats] = field(init=False)
 
@@ -112,9 +118,15 @@ class DirectMachine:
         rows[:, first + 3 : first + 6] = np.eye(3)
         return rows
 
+    def at_amplitude(self, amplitude: Floats) -> "DirectMachine":
+        """Return the same machine, at rest as it is, with its parts at another amplitude (S,) or (S, F) in m."""
+        moved = copy(self)
+        object.__setattr__(moved, "amplitude", amplitude)
+        return moved
+
     def mount(self, station: Station) -> Mount:
         """Return the part that stands at a station."""
-        return self.design.mounts[self.design.groups.index(station.group)]
+        return read_as(self.design.mounts[self.design.groups.index(station.group)], self.reading)
 
     @cached_property
     def _geometry(self) -> dict[str, tuple[Floats, Floats]]:
@@ -219,7 +231,9 @@ class DirectMachine:
             tangent = float(self.rest.tangent[self.brief.stations.index(station)])
             ratio = tangent / mount.stiffness_static[2] if np.isfinite(tangent) else 1.0
         temperature = ROOM_TEMPERATURE if self.state is None else self.state.temperature
-        return part_stiffness(mount, omega, ratio, temperature)
+        number = self.brief.stations.index(station)
+        amplitude = None if self.amplitude is None else self.amplitude[number]
+        return part_stiffness(mount, omega, ratio, temperature, amplitude)
 
     @cached_property
     def rest(self) -> DirectRest | None:

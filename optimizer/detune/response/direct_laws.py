@@ -41,10 +41,17 @@ def axial_law(mount: Mount) -> ElementLaw:
     return ElementLaw(stiffness=mount.stiffness_static[2])
 
 
-def part_stiffness(mount: Mount, omega: Floats | None, axial_ratio: float, temperature: float) -> Complexes:
+def part_stiffness(
+    mount: Mount,
+    omega: Floats | None,
+    axial_ratio: float,
+    temperature: float,
+    amplitude: Floats | None = None,
+) -> Complexes:
     """One part's stiffness along its own axes: static (3,), or complex dynamic (F, 3).
 
-    `axial_ratio` is its tangent at the working load over its listed static stiffness.
+    `axial_ratio` is its tangent at the working load over its listed static stiffness; `amplitude` (m), one or (F,),
+    the peak axial deflection at which it works. Beyond the ends of an amplitude table its end values hold.
     """
     if omega is None:
         return np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex)
@@ -58,6 +65,17 @@ def part_stiffness(mount: Mount, omega: Floats | None, axial_ratio: float, tempe
         ratio = table_stiffness(table, inside, temperature)
         return listed * ratio[:, None] + viscous
     constant = listed * (1.0 + 1j * np.nan_to_num(np.array(mount.loss_factor, dtype=float)))
+    if mount.amplitude_table is not None and amplitude is not None:
+        steps, ratios, losses = (
+            np.array(column, dtype=float)
+            for column in (
+                mount.amplitude_table.amplitude,
+                mount.amplitude_table.stiffness_ratio,
+                mount.amplitude_table.loss_factor,
+            )
+        )
+        at = np.clip(np.atleast_1d(amplitude), steps[0], steps[-1])
+        constant = listed * (np.interp(at, steps, ratios) * (1.0 + 1j * np.interp(at, steps, losses)))[:, None]
     if mount.relaxation is not None:
         series = mount.relaxation.stiffness_ratio * listed
         return constant + viscous * series / np.where(series > 0.0, series + viscous, 1.0)

@@ -20,6 +20,7 @@ from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.physics import rigid_body
 from detune.physics.orientation import axes_from_direction
 from detune.response.gravity import gravity_stiffness
+from detune.response.damping_readings import read_as
 from detune.response.part_laws import ROOM_TEMPERATURE, GroupLaws, group_laws
 
 Floats = NDArray[np.float64]
@@ -327,8 +328,11 @@ def _with_ballast(
     return np.array(masses), np.array(loads), steps, steps * ballast.cost_per_kg
 
 
-def _group(name: str, mounts: tuple[Mount, ...], spread: Floats, temperature: float) -> Group:
-    laws, arrays = group_laws(mounts, _without_gaps(mount_arrays(mounts)), temperature)
+def _group(
+    name: str, mounts: tuple[Mount, ...], reading: str | None, spread: Floats, temperature: float
+) -> Group:
+    read = tuple(read_as(mount, reading) for mount in mounts)
+    laws, arrays = group_laws(read, _without_gaps(mount_arrays(read)), temperature)
     return Group(name, mounts, arrays, spread, laws)
 
 

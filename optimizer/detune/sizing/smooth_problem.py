@@ -131,13 +131,13 @@ def joined_ratios(problem: SmoothProblem, x: Floats, norm: float) -> tuple[Float
     adjoint = np.einsum("wij,wj->wi", inverse, (share * phase / problem.limits) @ problem.rows)
     # One matrix product for all patterns: lambda^T T q is the inner product of T with the outer product.
     outer = (adjoint[:, :, None] * q[:, None, :]).reshape(value.size, -1)
-    through = outer @ problem.patterns.reshape(problem.patterns.shape[0], -1).T
+    through = outer @ problem.patterns.reshape(-1, outer.shape[1]).T
     loss = eta[problem.damping_group]
     by_k = -np.real(through * (k * (1 + 1j * loss)))
     each = -np.real(1j * through * (k * loss))
     by_eta = each @ (problem.damping_group[:, None] == np.arange(problem.groups))
     omega2 = (2 * np.pi * problem.frequencies) ** 2
-    inertia = outer @ problem.ballast_patterns.reshape(problem.ballast_patterns.shape[0], -1).T
+    inertia = outer @ problem.ballast_patterns.reshape(-1, outer.shape[1]).T
     pushed = np.einsum("wi,qwi->wq", adjoint, problem.ballast_loads)
     by_ballast = np.real(omega2[:, None] * inertia + pushed)
     return value, np.concatenate([by_k, by_eta, by_ballast], axis=1)

@@ -3,12 +3,12 @@
 from types import ModuleType
 
 from detune.problem.build import Problem
-from detune.solvers import bounded, enumeration
-from detune.solvers.selection import why_not
+from detune.solvers import bounded, enumeration, second_opinion
 
 SOLVERS: dict[str, ModuleType] = {
     enumeration.NAME: enumeration,
     bounded.NAME: bounded,
+    second_opinion.NAME: second_opinion,
 }
 
 # Going through designs one by one takes about a minute for this many.
@@ -16,12 +16,15 @@ MOST_BY_ENUMERATION = 1_500_000
 
 
 def choose(problem: Problem) -> tuple[str, str]:
-    """Return the method for a problem and why: enumeration while it is short work, else the bounded search."""
+    """Return the method for a problem and why: enumeration while it is short work, else the bounded search.
+
+    A second opinion is given on request alone.
+    """
     if problem.count <= MOST_BY_ENUMERATION:
         return enumeration.NAME, f"{problem.count:,} designs can be gone through one by one"
-    if bounded.accepts(problem):
+    reason = bounded.refusal(problem)
+    if reason is None:
         return bounded.NAME, f"{problem.count:,} designs are too many to go through one by one"
-    reason = why_not(problem) or "it finds fronts of cost against separation or least margin alone"
     return enumeration.NAME, f"the bounded search does not apply ({reason})"
 
 

@@ -6,174 +6,190 @@ design that is left is the problem's own stages, so what is accepted met every r
 
 import time
 from collections.abc import Callable
-from dataclasses import replace
+from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from detune.problem.build import Problem
-from detune.problem.stages import Stage, objective_values, stages
-from detune.proof.search import SearchResult, SearchSettings
+from detune.problem.stages import objective_values
+from detune.proof.search import SearchProgress, SearchResult, SearchSettings
 from detune.proof.search_front import search_front, search_least_cost
 from detune.response.designs import Designs
+from detune.solvers.final_test import FinalTest
+from detune.solvers.interrupt import Stop, stop_on_interrupt
 from detune.solvers.nondominated import as_minimised, nondominated
-from detune.solvers.outcome import Outcome, ProofRecord, RuleCount, Settings, Stopped
+from detune.solvers.outcome import Outcome, Progress, ProofRecord, RuleCount, Settings, Stopped
 from detune.solvers.selection import selection_of, why_not
 
-Floats = NDArray[np.float64]
-Integers = NDArray[np.int64]
 NAME = "bounded search"
 RULES = {
     "cost": "dearer than a design already found that is at least as good",
     "static_box": "static limits of a whole set of designs (bound on K^-1)",
     "eigenvalue_box": "a natural frequency inside a forbidden band for a whole set of designs (eigenvalue count)",
-    "pair": "static limits of a whole set of pairs of parts",
+    "static_pair": "static limits of a whole set of pairs of parts",
     "static": "static limits of the design",
     "eigenvalue": "a natural frequency inside a forbidden band",
     "response": "response at sampled speeds",
     "exact": "the requirements in full",
 }
-FRONTS = {("cost", "separation"): "separation", ("cost", "least-margin"): "margin"}
+FRONTS = (("cost", "separation"), ("cost", "least-margin"))
+
+
+def refusal(problem: Problem) -> str | None:
+    """Return why this solver cannot treat the problem, None if it can."""
+    reason = why_not(problem)
+    if reason is None and problem.brief.objectives.trade not in FRONTS:
+        return "it finds fronts of cost against separation or least margin alone"
+    return reason
 
 
 def accepts(problem: Problem) -> bool:
     """Return whether this solver can treat the problem."""
-    return why_not(problem) is None and problem.brief.objectives.trade in FRONTS
+    return refusal(problem) is None
 
 
 def solve(problem: Problem, settings: Settings) -> Outcome:
-    """Return the whole front of cost against separation (or least margin), its cheapest design first."""
-    started = time.perf_counter()
-    tests = _FinalTest(problem)
-    found: list[tuple[tuple[int, ...], int]] = []
-    counts: dict[str, int] = {}
-    stopped: Stopped = "finished"
-    bound = np.inf
-    steps = np.argsort(problem.model.ballast_cost, kind="stable")
-    for number, step in enumerate(steps):
-        result = _search(problem, int(step), tests, settings, started, number, len(steps))
-        found += [(design.parts, int(step)) for design in result.designs]
+    """Return the whole front of cost against separation (or least margin), its cheapest design first.
+
+    Without `settings.front` it is the cheapest design alone. One search for each ballast step, cheapest step first.
+    """
+    with stop_on_interrupt(settings.interrupted) as stop:
+        work = _Work(problem, settings, stop)
+        for step in np.argsort(problem.model.ballast_cost, kind="stable"):
+            # A search may be over before it first looks at the clock.
+            if stop():
+                work.stopped = "interrupted"
+            elif work.left() == 0.0:
+                work.stopped = "time limit"
+            if work.stopped != "finished":
+                break
+            work.search(int(step))
+        return work.outcome()
+
+
+class _Work:
+    """The searches of all ballast steps: what they found, what they excluded, and what is still open."""
+
+    def __init__(self, problem: Problem, settings: Settings, stop: Stop) -> None:
+        self.started = time.perf_counter()
+        self.problem, self.settings, self.stop = problem, settings, stop
+        self.tests = FinalTest(problem)
+        self.found: list[_Found] = []
+        self.counts: dict[str, int] = {}
+        self.stopped: Stopped = "finished"
+        self.open = {step: self._least(step) for step in range(len(problem.model.ballast_mass))}
+
+    def left(self) -> float | None:
+        """Seconds left, None for no limit."""
+        limit = self.settings.time_limit
+        return None if limit is None else max(0.0, limit - (time.perf_counter() - self.started))
+
+    def bound(self) -> float:
+        """A cost that no unsettled design falls below."""
+        return min(self.open.values())
+
+    def search(self, step: int) -> None:
+        """Search one ballast step."""
+        settings, trade = self.settings, self.problem.brief.objectives.trade
+        margin = trade[1] == "least-margin"
+        chosen = SearchSettings(
+            value="margin" if margin else "separation",
+            static_counts=margin,
+            response_counts=margin,
+            cost_cap=np.inf if settings.front else min((each.cost for each in self.found), default=np.inf),
+            time_limit=self.left(),
+            interrupted=self.stop,
+            announce=settings.announce,
+            progress=None if settings.progress is None else self._progress(step),
+            workers=settings.workers,
+        )
+        ask = search_front if settings.front else search_least_cost
+        result = ask(selection_of(self.problem, step), self.tests.at_step(step, trade[1]), chosen)
+        self._take(step, result)
+
+    def _take(self, step: int, result: SearchResult) -> None:
+        self.found += [_Found(design.parts, step, design.cost) for design in result.designs]
         for rule, count in result.counts.items():
-            counts[rule] = counts.get(rule, 0) + count
-        bound = min(bound, result.lower_bound)
+            self.counts[rule] = self.counts.get(rule, 0) + count
+        self.open[step] = result.lower_bound
         if result.status != "complete":
-            stopped = "time limit" if result.status == "time_limit" else "interrupted"
-            break
-    return _outcome(problem, tests, found, counts, stopped, bound, time.perf_counter() - started)
+            self.stopped = "time limit" if result.status == "time_limit" else "interrupted"
+
+    def _least(self, step: int) -> float:
+        """The cost of the cheapest parts at one ballast step."""
+        model = self.problem.model
+        cost = float(model.ballast_cost[step])
+        for index, group in enumerate(model.groups):
+            stations = sum(station.bought for station in model.stations if station.group == index)
+            cost += stations * float(group.arrays.cost.min())
+        return cost
+
+    def _progress(self, step: int) -> Callable[[SearchProgress], None]:
+        tell, before = self.settings.progress, sum(self.counts.values())
+        assert tell is not None
+        each = self.problem.count // len(self.open)
+
+        def report(state: SearchProgress) -> None:
+            costs = [found.cost for found in self.found]
+            others = [bound for number, bound in self.open.items() if number != step]
+            progress = Progress(
+                settled=before + round(state.share_excluded * each),
+                designs=self.problem.count,
+                incumbent=min(
+                    [*costs, *([] if state.incumbent is None else [state.incumbent])], default=None
+                ),
+                lower_bound=min([*others, state.lower_bound]),
+            )
+            self.stop.told(tell, progress)
+
+        return report
+
+    def outcome(self) -> Outcome:
+        """Return what all searches came to."""
+        problem, tests = self.problem, self.tests
+        part = np.array([found.parts for found in self.found], dtype=np.intp).reshape(
+            -1, len(problem.model.groups)
+        )
+        designs = Designs(part, np.array([found.step for found in self.found], dtype=np.intp))
+        least = tests.judge(designs)[1] if designs.count else np.zeros(0)
+        objectives = objective_values(problem, designs, least) if designs.count else {}
+        if designs.count:
+            front = nondominated(as_minimised(objectives, problem.brief.objectives.trade))
+            designs, least = designs.take(front), least[front]
+            objectives = {name: value[front] for name, value in objectives.items()}
+        settled = sum(self.counts.values())
+        met = self.counts.pop("met", 0)
+        rules = [RuleCount("bounded search", RULES.get(r, r), count, ()) for r, count in self.counts.items()]
+        tested = [RuleCount(stage, rule, count, ()) for (stage, rule), count in tests.failed.items()]
+        closest, closest_of = _replaced(problem, designs)
+        return Outcome(
+            method=NAME,
+            stopped=self.stopped,
+            designs=designs,
+            objectives=objectives,
+            least_margin=least,
+            record=ProofRecord(
+                method=NAME,
+                designs=problem.count,
+                looked_at=settled,
+                rules=tuple(rules),
+                met=met,
+                seconds=time.perf_counter() - self.started,
+                tested=tuple(tested),
+                lower_bound=self.bound(),
+            ),
+            closest=closest,
+            closest_of=closest_of,
+        )
 
 
-def _search(
-    problem: Problem, step: int, tests: "_FinalTest", settings: Settings, started: float, number: int, of: int
-) -> SearchResult:
-    left = None if settings.time_limit is None else settings.time_limit - (time.perf_counter() - started)
-    trade = problem.brief.objectives.trade
-    chosen = SearchSettings(
-        value=FRONTS[trade],  # type: ignore[arg-type]
-        static_counts=trade[1] == "least-margin",
-        response_counts=trade[1] == "least-margin",
-        time_limit=None if left is None else max(left, 0.0),
-        interrupted=settings.interrupted,
-        announce=settings.announce,
-        progress=_progress(settings, number, of),
-        workers=settings.workers,
-    )
-    ask = search_front if settings.front else search_least_cost
-    return ask(selection_of(problem, step), tests.at_step(step, trade[1]), chosen)
+@dataclass(frozen=True)
+class _Found:
+    """A design that met every requirement: part of each group, ballast step, cost."""
 
-
-def _progress(settings: Settings, number: int, of: int) -> Callable[..., None] | None:
-    if settings.progress is None:
-        return None
-    tell = settings.progress
-
-    def report(state: object) -> None:
-        share = float(getattr(state, "share_excluded", 0.0))
-        tell(int(1000 * (number + share) / of), 1000)
-
-    return report
-
-
-class _FinalTest:
-    """The problem's own stages as the last word on designs the bounds could not settle."""
-
-    def __init__(self, problem: Problem) -> None:
-        self.problem = problem
-        self.steps: tuple[Stage, ...] = stages(problem)
-        self.asked = 0
-        self.failed: dict[tuple[str, str], int] = {}
-
-    def at_step(self, step: int, value: str) -> Callable[[Integers], tuple[NDArray[np.bool_], Floats]]:
-        """Return the test of designs (D, G + 1) at one ballast step."""
-
-        def accept(numbers: Integers) -> tuple[NDArray[np.bool_], Floats]:
-            part = np.asarray(numbers[:, :-1], dtype=np.intp)
-            designs = Designs(part, np.full(len(part), step, dtype=np.intp))
-            feasible, least = self.judge(designs)
-            worth = np.full(designs.count, -np.inf)
-            if feasible.any():
-                chosen = designs.take(feasible)
-                worth[feasible] = objective_values(self.problem, chosen, least[feasible])[value]
-            return feasible, worth
-
-        return accept
-
-    def judge(self, designs: Designs) -> tuple[NDArray[np.bool_], Floats]:
-        """Return which designs meet every requirement (D,), and their least margin (D,)."""
-        self.asked += designs.count
-        least = np.full(designs.count, np.inf)
-        alive = np.arange(designs.count)
-        for step in self.steps:
-            for first in range(0, len(alive), step.size):
-                index = alive[first : first + step.size]
-                margins = np.nan_to_num(step.margins(designs.take(index)), nan=-np.inf)
-                counted = [i for i, r in enumerate(step.requirements) if not r.is_total]
-                if counted and not step.bound:
-                    least[index] = np.minimum(least[index], margins[counted].min(axis=0))
-                failed = margins < 0.0
-                least[index[failed.any(axis=0)]] = -np.inf
-                rows, numbers = np.unique(failed.argmax(axis=0)[failed.any(axis=0)], return_counts=True)
-                for row, number in zip(rows, numbers, strict=True):
-                    key = (step.name, step.requirements[row].label)
-                    self.failed[key] = self.failed.get(key, 0) + int(number)
-            alive = alive[np.isfinite(least[alive]) | (least[alive] == np.inf)]
-        kept = np.zeros(designs.count, dtype=bool)
-        kept[alive] = True
-        return kept, least
-
-
-def _outcome(
-    problem: Problem,
-    tests: _FinalTest,
-    found: list[tuple[tuple[int, ...], int]],
-    counts: dict[str, int],
-    stopped: Stopped,
-    bound: float,
-    seconds: float,
-) -> Outcome:
-    groups = len(problem.model.groups)
-    part = np.array([parts for parts, _ in found], dtype=np.intp).reshape(-1, groups)
-    designs = Designs(part, np.array([step for _, step in found], dtype=np.intp))
-    least = tests.judge(designs)[1] if designs.count else np.zeros(0)
-    objectives = objective_values(problem, designs, least) if designs.count else {}
-    if designs.count:
-        front = nondominated(as_minimised(objectives, problem.brief.objectives.trade))
-        designs, least = designs.take(front), least[front]
-        objectives = {name: value[front] for name, value in objectives.items()}
-    met = counts.pop("met", 0)
-    rules = [RuleCount("bounded search", RULES.get(rule, rule), count, ()) for rule, count in counts.items()]
-    tested = [RuleCount(stage, rule, count, ()) for (stage, rule), count in tests.failed.items()]
-    closest, closest_of = _replaced(problem, designs)
-    record = ProofRecord(NAME, problem.count, problem.count, tuple(rules), met, seconds)
-    return Outcome(
-        method=NAME,
-        stopped=stopped,
-        designs=designs,
-        objectives=objectives,
-        least_margin=least,
-        record=replace(record, tested=tuple(tested), lower_bound=float(bound)),
-        closest=closest,
-        closest_of=closest_of,
-    )
+    parts: tuple[int, ...]
+    step: int
+    cost: float
 
 
 def _replaced(problem: Problem, designs: Designs) -> tuple[Designs, tuple[tuple[int, int], ...]]:

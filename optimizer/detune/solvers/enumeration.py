@@ -10,10 +10,11 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem
 from detune.problem.stages import Stage, objective_values, stages
-from detune.response.designs import Designs, all_designs
-from detune.solvers.outcome import Outcome, ProofRecord, RuleCount, Settings, Stopped
+from detune.response.designs import Designs, all_designs, total_cost
+from detune.solvers.outcome import Outcome, Progress, ProofRecord, RuleCount, Settings, Stopped
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -21,9 +22,14 @@ BLOCK = 20_000
 NAME = "enumeration"
 
 
+def refusal(problem: Problem) -> str | None:
+    """Return why this solver cannot treat the problem: it can treat any, though large ones take long."""
+    return None
+
+
 def accepts(problem: Problem) -> bool:
-    """Return whether this solver can treat the problem: any, though large ones take long."""
-    return problem.count > 0
+    """Return whether this solver can treat the problem."""
+    return refusal(problem) is None
 
 
 def solve(problem: Problem, settings: Settings) -> Outcome:
@@ -37,11 +43,14 @@ def solve(problem: Problem, settings: Settings) -> Outcome:
             if settings.time_limit is not None and time.perf_counter() - started > settings.time_limit:
                 stopped = "time limit"
                 break
+            if settings.interrupted is not None and settings.interrupted():
+                stopped = "interrupted"
+                break
             last = min(first + BLOCK, problem.count)
             tally.go_through(all_designs(problem.model, first, last))
             looked_at = last
             if settings.progress is not None:
-                settings.progress(looked_at, problem.count)
+                settings.progress(tally.progress(looked_at))
     except KeyboardInterrupt:
         stopped = "interrupted"
     return tally.outcome(problem, stopped, looked_at, time.perf_counter() - started)
@@ -65,6 +74,13 @@ class _Tally:
         self.counts = [[np.zeros(size, dtype=np.int64) for size in sizes] for _ in range(rules)]
         self.reach = [np.full(size, -np.inf) for size in sizes]
         self.furthest = [np.zeros((size, len(sizes) + 1), dtype=np.int64) for size in sizes]
+
+    def progress(self, looked_at: int) -> Progress:
+        """How far the work is, with the least cost among the designs kept."""
+        least = [float(total_cost(self.problem.model, kept).min()) for kept in self.kept]
+        return Progress(
+            looked_at, self.problem.count, min(least, default=None), open_bound(self.problem, looked_at)
+        )
 
     def go_through(self, designs: Designs) -> None:
         least = np.full(designs.count, np.inf)
@@ -152,7 +168,36 @@ class _Tally:
             designs=kept,
             objectives=objective_values(problem, kept, least) if kept.count else {},
             least_margin=least,
-            record=ProofRecord(NAME, problem.count, looked_at, rules, kept.count, seconds),
+            record=ProofRecord(
+                NAME,
+                problem.count,
+                looked_at,
+                rules,
+                kept.count,
+                seconds,
+                lower_bound=open_bound(problem, looked_at),
+            ),
             closest=Designs(numbers[:, :-1], numbers[:, -1]),
             closest_of=tuple(closest_of),
         )
+
+
+def open_bound(problem: Problem, looked_at: int) -> float:
+    """Return a cost that no design from number `looked_at` on falls below; infinite where none is left."""
+    model = problem.model
+    if looked_at >= problem.count:
+        return float(np.inf)
+    bound = float(model.ballast_cost.min())
+    # The part of the first group changes slowest: those before the present one are done with.
+    sizes = [len(group.mounts) for group in model.groups]
+    done = looked_at * sizes[0] // problem.count
+    for index, group in enumerate(model.groups):
+        stations = sum(station.bought for station in model.stations if station.group == index)
+        bound += stations * min(_lowest_cost(mount) for mount in group.mounts[done if index == 0 else 0 :])
+    return bound
+
+
+def _lowest_cost(mount: Mount) -> float:
+    """Return what a mount costs at best, at any quantity."""
+    reduced = [mount.damper_cost + mount.pieces * price for _, price in mount.cost_breaks]
+    return min([mount.cost, *reduced])

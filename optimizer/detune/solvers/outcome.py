@@ -12,19 +12,36 @@ from detune.response.designs import Designs
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 Stopped = Literal["finished", "time limit", "interrupted"]
-Progress = Callable[[int, int], None]
+
+
+@dataclass(frozen=True)
+class Progress:
+    """How far a solver is: designs settled, of how many; the least cost found so far, and the bracket's lower end.
+
+    No design that is not settled yet costs less than `lower_bound`. Either is None where it is not known.
+    """
+
+    settled: int
+    designs: int
+    incumbent: float | None = None
+    lower_bound: float | None = None
+
+    @property
+    def share(self) -> float:
+        """Share of all designs that is settled, 0 to 1."""
+        return self.settled / self.designs
 
 
 @dataclass(frozen=True)
 class Settings:
     """How long a solver may work (seconds, None is unlimited), with how many workers, and whom it tells.
 
-    `progress` is told how much of the work is done, `announce` what takes long before it starts; `interrupted` is
+    `progress` is told how far the work is, `announce` what takes long before it starts; `interrupted` is
     asked for a stop. `front`: whether the whole front is wanted, or the cheapest design alone.
     """
 
     time_limit: float | None = None
-    progress: Progress | None = None
+    progress: Callable[[Progress], None] | None = None
     announce: Callable[[str], None] | None = None
     interrupted: Callable[[], bool] | None = None
     workers: int = 1

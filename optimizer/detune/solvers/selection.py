@@ -7,7 +7,7 @@ out there and decided by the final test, so a design the search discards is righ
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import LoadRange, Sag, Separation, Tilt, TransmittedForce
+from detune.brief.allowable import LoadRange, MountDeflection, Sag, Separation, Tilt, TransmittedForce
 from detune.brief.allowable.at_point import PointAllowable
 from detune.problem.build import HarmonicRequirements, Problem
 from detune.proof.selection_data import (
@@ -76,8 +76,9 @@ def _parts(problem: Problem, index: int) -> GroupParts:
         if isinstance(requirement.allowable, LoadRange) and requirement.state is None
         for place in (requirement.place,)
     }
-    own = [station.name in named for station in model.stations if station.group == index]
-    limited = all(own)
+    own = [station.name for station in model.stations if station.group == index]
+    limited = all(name in named for name in own)
+    travels = all(name in _travel_limited(problem) for name in own)
     count = len(arrays.cost)
     return GroupParts(
         kappa_static=arrays.stiffness_static,
@@ -87,15 +88,30 @@ def _parts(problem: Problem, index: int) -> GroupParts:
         cost=pieces * arrays.cost,
         load_min=arrays.load_min if limited else np.full(count, -np.inf),
         load_max=arrays.load_max if limited else np.full(count, np.inf),
-        deflection_max=np.where(np.isnan(arrays.deflection_max), np.inf, arrays.deflection_max),
+        deflection_max=arrays.deflection_max if travels else np.full(count, np.inf),
     )
 
 
+def _travel_limited(problem: Problem) -> set[str]:
+    """Return the stations whose static deflection alone, as installed, is held to the part's own limit."""
+    return {
+        place
+        for group in problem.harmonics
+        if group.model is problem.model
+        for allowable, place in group.rows.pairs
+        if isinstance(allowable, MountDeflection)
+        and allowable.part == "combined"
+        and allowable.limit == "part"
+    }
+
+
 def _bands(problem: Problem) -> ForbiddenBands:
-    """Excitation intervals as installed, and the separation the brief asks for (0 where it asks for none)."""
+    """Excitation intervals as installed, and the separation the brief asks for (-1, below any, where it asks none)."""
     intervals = np.array(problem.states[0].intervals, dtype=float).reshape(-1, 2)
-    asked = [r.allowable.limit for r in problem.modes if isinstance(r.allowable, Separation) and r.state is None]
-    required = np.full(len(intervals), max(asked, default=0.0))
+    asked = [
+        r.allowable.limit for r in problem.modes if isinstance(r.allowable, Separation) and r.state is None
+    ]
+    required = np.full(len(intervals), max(asked, default=-1.0))
     if not asked and "separation" not in problem.brief.objectives.trade:
         intervals, required = intervals[:0], required[:0]
     return ForbiddenBands(intervals[:, 0], intervals[:, 1], required)
@@ -120,7 +136,9 @@ def _static_rows(problem: Problem) -> StaticRows:
             lower += [-allowable.limit] * 2
             upper += [allowable.limit] * 2
     n = model.frame.count
-    return StaticRows(np.array(rows).reshape(-1, n), np.array(lower, dtype=float), np.array(upper, dtype=float))
+    return StaticRows(
+        np.array(rows).reshape(-1, n), np.array(lower, dtype=float), np.array(upper, dtype=float)
+    )
 
 
 def _harmonic(problem: Problem, stations: Floats) -> HarmonicCases:
@@ -141,7 +159,8 @@ def _harmonic(problem: Problem, stations: Floats) -> HarmonicCases:
                     continue
                 for omega in _sampled(family, loads_of_set):
                     frequency.append(float(omega / TWO_PI))
-                    loads.append(sum((load.vector * omega**load.power for load in loads_of_set), np.zeros(model.frame.count, complex)))
+                    acting = [load.vector * omega**load.power for load in loads_of_set]
+                    loads.append(np.sum(acting, axis=0, dtype=complex))
                     limits.append(np.array([_point_limit(group, key, omega) for key in keys]))
                     forces.append(_force_limits(group, model))
     count, s, n = len(frequency), len(stations), model.frame.count
@@ -177,7 +196,8 @@ def _point_limit(group: HarmonicRequirements, key: tuple[str, int], omega: float
         # A resultant is no smaller than any of its components.
         if along is not None and abs(along[key[1]]) < 1.0:
             continue
-        least = min(least, allowable.limit * _factor(allowable.statistic()) / omega ** RATES[allowable.kind])
+        peak = allowable.limit * _factor(allowable.statistic())
+        least = min(least, float(peak / omega ** RATES[allowable.kind]))
     return least
 
 

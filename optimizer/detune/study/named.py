@@ -1,22 +1,30 @@
 """A design the user names: `group=part` pairs and the ballast."""
 
+import re
+from collections.abc import Sequence
+from typing import TypeVar
+
 from detune.brief.brief import Brief
 from detune.ground.errors import BriefError, Fault, nearest_name
 from detune.ground.units import UnitError, parse
 from detune.parts.catalog import Catalog
+from detune.parts.compose import EMPTY, damper_refused, empty_station, in_parallel, with_damper
+from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Mount
 from detune.problem.candidates import lateral_missing
 from detune.response.design import Design
 
 SOURCE = "--design"
+SEVERAL = re.compile(r"(?P<count>\d+) *[x×] +(?P<part>.+)", re.ASCII)
+Part = TypeVar("Part", Mount, Damper)
 
 
 def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Design:
-    """Return the design written as "group=part, group=part, ballast=40 kg".
+    """Return the design written as "group=part, group=2 x part + damper, group=(empty), ballast=40 kg".
 
-    Every part of every catalog of the study may be named, filters or not: the design is one the user
-    has in mind, and is judged like any other. A number that several catalogs have is written
-    "catalog:part". Raises BriefError with every fault.
+    Every part of every catalog of the study may be named, filters or not, in any number and with any damper: the
+    design is one the user has in mind, and is judged like any other. A number that several catalogs have is
+    written "catalog:part". Raises BriefError with every fault.
     """
     faults: list[Fault] = []
     chosen: dict[str, Mount | None] = {}
@@ -54,24 +62,59 @@ def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Desig
 
 
 def _part(catalogs: dict[str, Catalog], group: str, value: str, faults: list[Fault]) -> Mount | None:
-    named, colon, part = value.partition(":")
+    """Return what stands at a station of the group: a part, or several of it, with a damper beside them, or nothing."""
     mounts = [m for catalog in catalogs.values() for m in catalog.parts if isinstance(m, Mount)]
-    if colon and named in catalogs:
-        found = [m for m in mounts if m.catalog == named and m.part == part.strip()]
-        known = [f"{m.catalog}:{m.part}" for m in mounts]
-    else:
-        found = [m for m in mounts if m.part == value]
-        known = [m.part for m in mounts]
+    whole = _of_name(mounts, value)
+    if len(whole) == 1:
+        return whole[0]
+    if value.casefold() == EMPTY:
+        return empty_station(mounts[0].catalog if mounts else "")
+    text, plus, beside = (side.strip() for side in value.partition(" + "))
+    several = SEVERAL.fullmatch(text)
+    count, name = (int(several["count"]), several["part"]) if several else (1, text)
+    if count < 1:
+        faults.append(Fault(SOURCE, None, group, text, f'one mount or more, for example "2 x {name}"'))
+    found = _one(mounts, group, name, ("a part of the study's catalogs", f'"{EMPTY}"'), faults)
+    dampers = [d for catalog in catalogs.values() for d in catalog.parts if isinstance(d, Damper)]
+    damper = _one(dampers, group, beside, ("a damper of the study's catalogs",), faults) if plus else None
+    if found is None or count < 1 or (plus and damper is None):
+        return None
+    mount = in_parallel(found, count)
+    if damper is None:
+        return mount
+    reason = damper_refused(mount, damper)
+    if reason is not None:
+        faults.append(
+            Fault(SOURCE, None, group, value, f"a damper that can stand beside this mount: {reason}")
+        )
+        return None
+    return with_damper(mount, damper)
+
+
+def _of_name(parts: Sequence[Part], value: str) -> list[Part]:
+    """Return the parts of this number, or of "catalog:part"."""
+    named, colon, number = value.partition(":")
+    if colon and any(part.catalog == named for part in parts):
+        return [part for part in parts if part.catalog == named and part.part == number.strip()]
+    return [part for part in parts if part.part == value]
+
+
+def _one(
+    parts: Sequence[Part], group: str, value: str, expected: tuple[str, ...], faults: list[Fault]
+) -> Part | None:
+    found = _of_name(parts, value)
     if len(found) == 1:
         return found[0]
     if found:
-        spelt = " or ".join(f'"{mount.catalog}:{mount.part}"' for mount in found)
+        spelt = " or ".join(f'"{part.catalog}:{part.part}"' for part in found)
         faults.append(
             Fault(SOURCE, None, group, value, f"which of the catalogs that have this part: {spelt}")
         )
-    else:
-        expected = "a part of the study's catalogs"
-        faults.append(Fault(SOURCE, None, group, value, expected, nearest_name(value, known)))
+        return None
+    colon = ":" in value and any(part.catalog == value.partition(":")[0] for part in parts)
+    known = [f"{part.catalog}:{part.part}" if colon else part.part for part in parts]
+    words = " or ".join(expected) if parts else f"{expected[0]}, which have none"
+    faults.append(Fault(SOURCE, None, group, value, words, nearest_name(value, known)))
     return None
 
 

@@ -3,6 +3,7 @@
 import time
 from dataclasses import dataclass
 
+from detune.ground.errors import BriefError, Fault
 from detune.problem.build import Problem, build
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
@@ -48,10 +49,17 @@ def run_study(
     compared: tuple[Design, ...] = (),
     solver: str = "auto",
 ) -> Result:
-    """Return the result of a study. Raises BriefError on a faulty brief and SolveError on a solver's fault."""
+    """Return the result of a study. Raises SolveError on a solver's fault.
+
+    Raises BriefError on a faulty brief, and for a solver that is asked for and cannot treat the problem.
+    """
     started = time.perf_counter()
     problem = build(study.brief, study.catalogs)
     method, why_method = choose(problem) if solver == "auto" else (solver, "asked for")
+    refusal = SOLVERS[method].refusal(problem)
+    if refusal is not None:
+        others = ", ".join(name for name, other in SOLVERS.items() if other.refusal(problem) is None)
+        raise BriefError([Fault("--method", None, "--method", f"{method} ({refusal})", f"one of {others}")])
     outcome = SOLVERS[method].solve(problem, settings or Settings())
     front = assessed_front(problem, outcome)
     reasons = part_reasons(problem, outcome)

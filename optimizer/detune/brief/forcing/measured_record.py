@@ -27,6 +27,7 @@ from detune.physics import records
 from detune.physics.array_types import FloatArray
 from detune.physics.spectra import PowerSpectralDensity
 
+FILLED = 8
 DEGREE = {"mean": 0, "line": 1}
 
 
@@ -38,7 +39,9 @@ class MeasuredRecord(Forcing):
     `"time"` simulates it as it stands, with the motion that follows it; `"spectrum"` takes its density by Welch's
     method (Hann window, half overlap) in segments of `segment` and lets it last `duration`; `"lines"` takes it as
     one period of a motion that repeats for ever, the strongest lines that together hold `share` of its mean square
-    (0.9999 where left out).
+    (0.9999 where left out). Used in time, a record is filled in between its samples as a band-limited signal
+    (eightfold); `between = "straight"` joins them by straight lines, which lowers what has few samples a cycle (by
+    3 % at ten).
     """
 
     title: ClassVar[str] = "measured record"
@@ -48,6 +51,7 @@ class MeasuredRecord(Forcing):
     use: Literal["time", "spectrum", "lines"]
     detrend: Literal["none", "mean", "line"]
     resample: Frequency | None = None
+    between: Literal["band-limited", "straight"] | None = None
     segment: Time | None = None
     duration: Time | None = None
     share: Ratio | None = None
@@ -88,6 +92,8 @@ class MeasuredRecord(Forcing):
                 raise refuse(key, f'no "{key}" where use = "{self.use}"', at=key)
             if value is not None:
                 positive(value, f"a {key}", at=key)
+        if self.between is not None and self.use != "time":
+            raise refuse("between", f'no "between" where use = "{self.use}"', at="between")
         if self.resample is not None:
             positive(self.resample, "a sample rate", at="resample")
 
@@ -112,6 +118,8 @@ class MeasuredRecord(Forcing):
         if self.resample is not None:
             record = records.resampled_record(record, rate, self.resample)
             rate = self.resample
+        if self.use == "time" and self.between != "straight":
+            record, rate = records.resampled_record(record, rate, FILLED * rate), FILLED * rate
         self._record, self._rate = record, rate
         if self.use == "spectrum":
             assert self.segment is not None
@@ -142,6 +150,8 @@ class MeasuredRecord(Forcing):
                 f"{1.0 / self.segment:.3g} Hz, random error of each bin about "
                 f"{100.0 / self._segments**0.5:.0f} %; the response is taken as Gaussian",
             )
+        if self.use == "time" and self.between is None:
+            return (f"{self.name}: the record is taken as band-limited between its samples",)
         if self.use == "lines":
             return (
                 f"{self.name}: {len(self._lines)} lines that hold {100.0 * self._held:.2f} % of the mean square; "

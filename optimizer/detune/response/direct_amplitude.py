@@ -1,0 +1,205 @@
+"""The assessor's own search for the amplitude at which parts that follow it work, and the responses there.
+
+Every station works at the peak of its own axial deflection under all that acts in the condition, at each speed of a
+tone at that speed's. It is approached from a small and from a large amplitude, by steps that are made shorter and
+shorter; where the two come to different ends, the larger response counts.
+"""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.allowable import HarmonicAllowable, MountDeflection
+from detune.brief.allowable.base import combine
+from detune.brief.brief import applies
+from detune.brief.condition import Condition
+from detune.brief.forcing import Noise, Tone, Transient
+from detune.response.direct import DirectMachine
+from detune.response.direct_modes import direct_modes
+from detune.response.direct_motion import direct_passage_values, direct_transient_values
+from detune.response.direct_random import direct_noise_values
+from detune.response.direct_supremum import Pairs, Supremum, amplitudes_at, coherent_sets, supremum, tones_of
+
+Floats = NDArray[np.float64]
+AXIAL = MountDeflection(part="dynamic", direction="axial", limit=1.0)
+# Share of the way taken in each step, and how many such steps: shorter ones settle steeper maps.
+SHARES = ((0.5, 200), (0.2, 400), (0.05, 1200), (0.015, 3000))
+CLOSED = 1e-8
+LEFT_OVER = 1e-6
+LOOKS = 9
+
+
+@dataclass(frozen=True, eq=False)
+class Source:
+    """One thing that acts independently of the others: tones of one speed, passed through or not, noises or records."""
+
+    tones: tuple[Tone, ...] = ()
+    ways: tuple[tuple[float, float, float], ...] = ()
+    noises: tuple[Noise, ...] = ()
+    transients: tuple[Transient, ...] = ()
+
+
+@dataclass(frozen=True, eq=False)
+class WorkingAmplitude:
+    """Axial deflection (J, S) in m that each of J sources gives the stations, and whether it reproduces itself."""
+
+    sources: tuple[Source, ...]
+    deflection: Floats
+    settled: bool
+
+    @property
+    def total(self) -> Floats:
+        """Amplitude (S,) at which the parts work."""
+        amplitude: Floats = self.deflection.sum(axis=0)
+        return amplitude
+
+
+def follows_amplitude(machine: DirectMachine) -> bool:
+    """Return whether some part of the design has a stiffness that depends on amplitude."""
+    return any(mount.amplitude_table is not None for mount in machine.design.mounts)
+
+
+def working_amplitude(machine: DirectMachine, condition: Condition) -> WorkingAmplitude:
+    """Return the amplitude at which the parts work under the forcing of a condition."""
+    sources = _sources(machine, condition)
+    pairs = _watched(machine)
+    held = [index for index, station in enumerate(machine.brief.stations) if machine.share(station) > 0.0]
+    shape = (len(sources), len(machine.brief.stations))
+    settled = True
+
+    def step(deflection: Floats) -> Floats:
+        nonlocal settled
+        settled = True
+        there = np.zeros(shape)
+        here = deflection.reshape(shape)
+        for number, source in enumerate(sources):
+            beside = here.sum(axis=0) - here[number]
+            part, found = _values(machine, condition, source, pairs, here.sum(axis=0), np.maximum(beside, 0.0))
+            there[number, held] = part.value
+            settled = settled and found
+        return there.reshape(-1, 1)
+
+    start = np.zeros((shape[0] * shape[1], 1))
+    if len(sources) == 1 and sources[0].tones and not sources[0].ways:
+        return WorkingAmplitude(sources, step(start).reshape(shape), settled)
+    deflection, closed = _approached(lambda a, _: step(a), start, 0.1)
+    return WorkingAmplitude(sources, deflection.reshape(shape), settled and bool(closed[0]))
+
+
+def suprema_at_amplitude(
+    machine: DirectMachine, condition: Condition, pairs: Pairs, working: WorkingAmplitude
+) -> Supremum:
+    """Return the values of rows under the forcing of a condition; infinite where no amplitude reproduces itself."""
+    total, at = np.zeros(len(pairs)), np.full(len(pairs), np.nan)
+    largest = np.full(len(pairs), -np.inf)
+    settled = working.settled
+    for number, source in enumerate(working.sources):
+        beside = np.maximum(working.total - working.deflection[number], 0.0)
+        part, found = _values(machine, condition, source, pairs, working.total, beside)
+        settled = settled and found
+        for index, (allowable, _) in enumerate(pairs):
+            total[index] = combine(total[[index]], part.value[[index]], allowable.statistic())[0]
+        bigger = np.isfinite(part.speed) & (part.value > largest)
+        at, largest = np.where(bigger, part.speed, at), np.where(bigger, part.value, largest)
+    return Supremum(total if settled else np.full(len(pairs), np.inf), at)
+
+
+def _sources(machine: DirectMachine, condition: Condition) -> tuple[Source, ...]:
+    by_speed: dict[str, list[Tone]] = {}
+    for tone in tones_of(machine.brief, condition):
+        by_speed.setdefault(tone.speed, []).append(tone)
+    found = []
+    for speed, tones in by_speed.items():
+        low, high = tones[0].low, tones[0].high
+        up = ((low, high, condition.run_up[speed]),) if speed in condition.run_up else ()
+        down = ((high, low, condition.coast_down[speed]),) if speed in condition.coast_down else ()
+        found.append(Source(tones=tuple(tones), ways=(*up, *down)))
+    acting = [forcing for forcing in machine.brief.forcing if applies(forcing.conditions, condition.name)]
+    noises = tuple(noise for forcing in acting for noise in forcing.noises())
+    transients = tuple(transient for forcing in acting for transient in forcing.transients())
+    found += [Source(noises=noises)] if noises else []
+    return (*found, *([Source(transients=transients)] if transients else []))
+
+
+def _watched(machine: DirectMachine) -> tuple[tuple[HarmonicAllowable, str], ...]:
+    return tuple((AXIAL, s.name) for s in machine.brief.stations if machine.share(s) > 0.0)
+
+
+def _values(
+    machine: DirectMachine,
+    condition: Condition,
+    source: Source,
+    pairs: Pairs,
+    total: Floats,
+    beside: Floats,
+) -> tuple[Supremum, bool]:
+    """Return the values of rows under one source, and whether an amplitude was found at every speed."""
+    if source.tones and not source.ways:
+        return _over_speed(machine, source, pairs, beside)
+    at = machine.at_amplitude(total)
+    found = direct_modes(at, [])
+    if source.tones:
+        sets = coherent_sets(source.tones)
+        value = np.max([direct_passage_values(at, found, sets, way, pairs) for way in source.ways], axis=0)
+    elif source.noises:
+        value = direct_noise_values(at, found, source.noises, pairs)
+    else:
+        value = direct_transient_values(at, found, source.transients, pairs)
+    return Supremum(value, np.full(len(pairs), np.nan)), True
+
+
+def _over_speed(
+    machine: DirectMachine, source: Source, pairs: Pairs, beside: Floats
+) -> tuple[Supremum, bool]:
+    sets = coherent_sets(source.tones)
+    orders = sorted({tones[0].order for tones in sets})
+    low, high = source.tones[0].low, source.tones[0].high
+    tables = [m.amplitude_table for m in machine.design.mounts if m.amplitude_table is not None]
+    least, greatest = min(t.amplitude[0] for t in tables), max(t.amplitude[-1] for t in tables)
+    shape = np.ones(len(beside))
+    poles = [direct_modes(machine.at_amplitude(a * shape), []).poles for a in np.geomspace(least, greatest, LOOKS)]
+    settled = True
+
+    def amplitudes(speed: Floats) -> Floats:
+        nonlocal settled
+        best = np.zeros((len(pairs), len(speed)))
+        for start in (beside, beside + greatest):
+            columns = np.repeat(start[:, None], len(speed), axis=1)
+            amplitude, closed = _approached(lambda a, index: _deflected(machine, sets, speed[index], beside, a), columns, 1.0)
+            settled = settled and bool(np.all(closed))
+            best = np.maximum(best, amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed))
+        return best
+
+    found = supremum(amplitudes, (low, high), np.concatenate(poles), orders)
+    return found, settled
+
+
+def _deflected(
+    machine: DirectMachine, sets: list[tuple[Tone, ...]], speed: Floats, beside: Floats, amplitude: Floats
+) -> Floats:
+    """Return the amplitude (S, F) that parts working at `amplitude` (S, F) give at speeds (F,) in Hz."""
+    pairs = _watched(machine)
+    found = np.repeat(beside[:, None], len(speed), axis=1)
+    held = [index for index, station in enumerate(machine.brief.stations) if machine.share(station) > 0.0]
+    found[held] += amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed)
+    return found
+
+
+def _approached(
+    step: Callable[[Floats, NDArray[np.intp]], Floats], start: Floats, rounds: float
+) -> tuple[Floats, NDArray[np.bool_]]:
+    """Return columns (S, K) with a = step(a), and which of them closed; `rounds` scales how long it is tried."""
+    value = start.copy()
+    missing = np.full(start.shape[1], np.inf)
+    for share, count in SHARES:
+        for _ in range(int(np.ceil(count * rounds))):
+            active = np.flatnonzero(missing > CLOSED)
+            if not len(active):
+                return value, missing <= LEFT_OVER
+            change = step(value[:, active], active) - value[:, active]
+            size = np.maximum(np.abs(value[:, active]).max(axis=0), np.abs(value[:, active] + change).max(axis=0))
+            missing[active] = np.abs(change).max(axis=0) / np.where(size > 0.0, size, 1.0)
+            value[:, active] += np.where(missing[active] > CLOSED, share, 0.0) * change
+    return value, missing <= LEFT_OVER

@@ -1,0 +1,108 @@
+"""A process of one's own for work that may ignore its time limit: it is ended from outside."""
+
+import multiprocessing
+import time
+from collections.abc import Callable
+from multiprocessing.connection import Connection
+from types import TracebackType
+from typing import Any
+
+from detune.ground.errors import SolveError
+
+# What a child may take to start and import its libraries, and to come to an end after its own limit; seconds.
+START, GRACE, LOOK = 60.0, 2.0, 0.1
+
+
+class OwnProcess:
+    """A child process that answers one question after another by a function; use it in a `with`.
+
+    It is spawned, so a script that leads here needs the usual `if __name__ == "__main__":`.
+    """
+
+    def __init__(self, function: Callable[[Any], Any]) -> None:
+        self.function = function
+        self.process: Any = None
+        self.pipe: Connection | None = None
+
+    def __enter__(self) -> "OwnProcess":
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        self.end()
+
+    def ask(self, question: object, limit: float, stop: Callable[[], bool] | None = None) -> Any | None:
+        """Return the answer, None where it took longer than the limit (s) or a stop was asked for.
+
+        The process is then ended, and another takes its place at the next question. Raises SolveError where it
+        dies, and where the function raises an error.
+        """
+        pipe = self._start(limit, stop)
+        if pipe is None:
+            return None
+        pipe.send(question)
+        if not self._waited(pipe, limit + GRACE, stop):
+            self.end()
+            return None
+        kind, answer = self._received(pipe)
+        if kind == "error":
+            raise SolveError(f"the solver failed: {answer}")
+        return answer
+
+    def _start(self, limit: float, stop: Callable[[], bool] | None) -> Connection | None:
+        if self.pipe is not None:
+            return self.pipe
+        context = multiprocessing.get_context("spawn")
+        self.pipe, theirs = context.Pipe()
+        self.process = context.Process(target=_serve, args=(theirs, self.function), daemon=True)
+        self.process.start()
+        theirs.close()
+        if not self._waited(self.pipe, min(START, limit + GRACE), stop):
+            self.end()
+            return None
+        self._received(self.pipe)
+        return self.pipe
+
+    def _received(self, pipe: Connection) -> Any:
+        try:
+            return pipe.recv()
+        except EOFError:
+            self.end()
+            raise SolveError("the solver's process died") from None
+
+    @staticmethod
+    def _waited(pipe: Connection, limit: float, stop: Callable[[], bool] | None) -> bool:
+        until = time.perf_counter() + limit
+        while not pipe.poll(min(LOOK, max(0.0, until - time.perf_counter()))):
+            if time.perf_counter() >= until or (stop is not None and stop()):
+                return False
+        return True
+
+    def end(self) -> None:
+        """End the process."""
+        if self.pipe is not None:
+            self.pipe.close()
+            self.process.kill()
+            self.process.join()
+            self.pipe = None
+
+
+def _serve(pipe: Connection, function: Callable[[Any], Any]) -> None:
+    """Answer questions until the other end closes."""
+    import signal
+
+    import pyomo.environ  # noqa: F401
+
+    # Ctrl-C reaches the whole terminal; the parent decides what becomes of this process.
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    pipe.send(("ready", None))
+    while True:
+        try:
+            question = pipe.recv()
+        except EOFError:
+            return
+        try:
+            pipe.send(("answer", function(question)))
+        except (ValueError, RuntimeError, ArithmeticError) as error:
+            pipe.send(("error", f"{type(error).__name__}: {error}"))
