@@ -19,7 +19,6 @@ DOCS = Path(__file__).parent
 sys.path.insert(0, str(DOCS.parent / "optimizer"))
 
 from detune.brief import allowable, forcing  # noqa: E402
-from detune.brief.choice import Window  # noqa: E402
 from detune.brief.read import REPEATED, SINGLE  # noqa: E402
 from detune.brief.statement import Quantity, Statement  # noqa: E402
 from detune.ground import units  # noqa: E402
@@ -140,6 +139,10 @@ MEANING: dict[str, str] = {
     "Choice.catalogs": "the catalogs its part may come from",
     "Choice.where": "column -> texts admitted, or a window",
     "Choice.parts": "part numbers admitted; left out: all",
+    "CatalogSource.sheet": "of a workbook; left out: the first that is not hidden",
+    "Choice.parallel": "how many of the same part may stand side by side at each station",
+    "Choice.dampers": "damper catalogs, of which one damper or none stands beside each mount",
+    "Choice.empty": "whether the group may be left without parts",
     "Window.min": "least value, with its unit",
     "Window.max": "greatest value, with its unit",
     "Ballast.position": "centre of the ballast",
@@ -147,6 +150,37 @@ MEANING: dict[str, str] = {
     "Ballast.steps": "the masses that may be added",
     "Ballast.cost_per_kg": "cost of each kilogram",
     "Objectives.trade": "the first decides the answer; the front is over all",
+    # Sizing
+    "Sizing.unknown": "the unknowns",
+    "Sizing.made": "the parts made to order, one for each group that has unknowns",
+    "Sizing.minimise": "what is to be small; this or `maximise`",
+    "Sizing.maximise": "what is to be large; this or `minimise`",
+    "Sizing.trade": "two or three of which a front is drawn",
+    "Sizing.map": "two unknowns by name, over which the feasible region is drawn",
+    "Sizing.starts": "number of local searches",
+    "Sizing.seed": "of their starting points: the same seed gives the same answer",
+    "Sizing.front_points": "number of points of the front",
+    "Sizing.specification": "whether the purchase specification is worked out",
+    "SizingUnknown.group": "the group, of stiffness, loss-factor, viscous and absorber unknowns",
+    "SizingUnknown.body": "the body of an absorber",
+    "SizingUnknown.stations": "the stations that move, of a `position`",
+    "SizingUnknown.axis": "which stiffness, or along which axis stations move",
+    "SizingUnknown.lower": "least value, with its unit",
+    "SizingUnknown.upper": "greatest value, with its unit",
+    "SizingUnknown.step": "of ballast that comes in steps",
+    "SizingUnknown.name": "name in the report and in `map`",
+    "MadePart.group": "the group it stands in",
+    "MadePart.dynamic_to_static": "dynamic over static stiffness",
+    "MadePart.lateral_ratio": "lateral over axial dynamic stiffness",
+    "MadePart.damping_lateral_ratio": "lateral over axial viscous damping",
+    "MadePart.stiffness": "axial dynamic stiffness, where it is no unknown",
+    "MadePart.loss_factor": "where it is no unknown",
+    "MadePart.viscous": "where it is no unknown",
+    "MadePart.pulls": "whether it may be in tension",
+    "MadePart.cost": "cost of one part before what follows is added",
+    "MadePart.cost_per_stiffness": "cost of each N/mm of axial stiffness",
+    "MadePart.cost_per_loss_factor": "cost of each unit of loss factor",
+    "MadePart.cost_per_damping": "cost of each N s/m of axial damping",
     # Forcing
     "HarmonicForce.position": "where the force acts",
     "RandomForce.direction": "of the force; left out: only the couple acts",
@@ -179,6 +213,7 @@ MEANING: dict[str, str] = {
     "MeasuredRecord.use": "directly in time, as a density, or as lines",
     "MeasuredRecord.detrend": "what is taken away from the record first",
     "MeasuredRecord.resample": "sample rate to bring it to",
+    "MeasuredRecord.between": "how the record runs between its samples",
     "MeasuredRecord.segment": "length of a segment, for `spectrum`",
     "MeasuredRecord.duration": "how long the motion lasts, for `spectrum`",
     "MeasuredRecord.share": "share of the mean square the lines hold, for `lines`; 0.9999 where left out",
@@ -188,6 +223,12 @@ MEANING: dict[str, str] = {
     "VelocityStep.velocity": "gained at once",
     "BasePulse.amplitude": "peak of the pulse",
     # Allowables
+    "BandLimit.at": "the named point, or the floor",
+    "BandLimit.criterion": "a named velocity line or the base curve; this, a mask or a file",
+    "BandLimit.edition": "of a velocity line; left out: inch, printed as assumed",
+    "BandLimit.multiplier": "of the base curve",
+    "BandLimit.centres": "band centres of a mask, beside `velocity_rms`",
+    "BandLimit.velocity_rms": "limit of each band of a mask",
     "Separation.exempt_amplification": "modes that amplify less are left out of the limit; left out: none is",
     "SettlingTime.to": "share of the amplitude that is left",
     "Transmissibility.of": "ratio of forces or of motions",
@@ -239,7 +280,11 @@ def words_of(annotation: Any, metadata: tuple[Any, ...] = ()) -> str:
 def _quantity(kind: str) -> str:
     unit = units.KINDS[kind]
     if unit.bare_number:
-        return f"{unit.meaning}, `{unit.examples[-1]}`" if kind == "cost" else f'{unit.meaning}, `0.1` or `"10 %"`'
+        return (
+            f"{unit.meaning}, `{unit.examples[-1]}`"
+            if kind == "cost"
+            else f'{unit.meaning}, `0.1` or `"10 %"`'
+        )
     return f'{unit.meaning}, `"{unit.examples[0]}"`'
 
 
@@ -321,7 +366,9 @@ def unit_table() -> str:
     lines = ["| kind of number | SI unit | examples | bare number |", "|---|---|---|---|"]
     for kind in units.KINDS.values():
         examples = ", ".join(f"`{example}`" for example in kind.examples)
-        lines.append(f"| {kind.meaning} | {kind.si_unit or '-'} | {examples} | {'yes' if kind.bare_number else 'no'} |")
+        lines.append(
+            f"| {kind.meaning} | {kind.si_unit or '-'} | {examples} | {'yes' if kind.bare_number else 'no'} |"
+        )
     return "\n".join(lines) + "\n"
 
 

@@ -63,9 +63,10 @@ file = "mounts.csv"
 group = "feet"
 catalogs = ["mounts"]
 """
-LIST = """part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],loss_factor,load_min [N],load_max [N],pulls,cost
-rowan-x,rubber,100,100,0.1,0,2000,yes,10
-"""
+HEADERS = (
+    "part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],loss_factor,load_min [N],load_max [N]"
+)
+LIST = f"{HEADERS},pulls,cost\nrowan-x,rubber,100,100,0.1,0,2000,yes,10\n"
 FORCE = """
 [[forcing]]
 kind = "harmonic-force"
@@ -85,7 +86,11 @@ limit = "1 mm"
 
 
 def block(language: str, caption: str) -> str:
-    found = [body for kind, name, body in BLOCK.findall(PAGE.read_text(encoding="utf-8")) if (kind, name) == (language, caption)]
+    found = [
+        body
+        for kind, name, body in BLOCK.findall(PAGE.read_text(encoding="utf-8"))
+        if (kind, name) == (language, caption)
+    ]
     assert len(found) == 1, caption
     return str(found[0])
 
@@ -172,7 +177,9 @@ def test_a_new_forcing(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
 
 def test_what_the_page_says_a_module_holds() -> None:
     """The names in the page's table are those that the modules of each folder have."""
-    rows = re.findall(r"^\| a ([\w ]+) \| `([\w/]+)` \|.*\| ([^|]*) \|$", PAGE.read_text(encoding="utf-8"), re.MULTILINE)
+    rows = re.findall(
+        r"^\| a ([\w ]+) \| `([\w/]+)` \|.*\| ([^|]*) \|$", PAGE.read_text(encoding="utf-8"), re.MULTILINE
+    )
     named = {what: re.findall(r"`(\w+)`", holds) for what, _, holds in rows}
     for what, modules in (("kind of part", kinds.KINDS), ("solver", SOLVERS), ("plot", PLOTS)):
         for module in modules.values():

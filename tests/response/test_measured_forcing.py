@@ -146,10 +146,10 @@ def test_a_recorded_force(tmp_path: Path) -> None:
 
 def test_detrend_and_resample(tmp_path: Path) -> None:
     # A steady tilt of the sensor and its drift fall away; a tone far below half the new rate stays.
-    time = np.arange(20000) / 1000.0
+    time = np.arange(10000) / 1000.0
     tone = np.sqrt(2.0) * np.sin(TWO_PI * 5.0 * time)
     written(tmp_path, "time [s],acceleration [m/s^2]", [time, 9.8 + 0.3 * time + tone])
-    stiff = machines.mount(k=MASS * (TWO_PI * 300.0) ** 2, loss=0.2)
+    stiff = machines.mount(k=MASS * (TWO_PI * 150.0) ** 2, loss=0.3)
     for changes in ({"detrend": "line"}, {"detrend": "line", "resample": "50 Hz"}):
         brief = machines.one_axis(MASS, record(tmp_path, "time", **changes))
         assert both(brief, stiff, RMS) == pytest.approx(1.0, rel=5e-3)
@@ -157,13 +157,13 @@ def test_detrend_and_resample(tmp_path: Path) -> None:
 
 def test_few_samples_a_cycle_are_filled_in(tmp_path: Path) -> None:
     # At five samples a cycle straight lines keep (sin x/x)^2 = 0.875 of a tone, x = pi/5; a band-limited signal all.
-    time = np.arange(10000) / 100.0
+    time = np.arange(1000) / 100.0
     written(tmp_path, "time [s],acceleration [m/s^2]", [time, np.sqrt(2.0) * np.sin(TWO_PI * 20.0 * time)])
-    stiff = machines.mount(k=MASS * (TWO_PI * 2000.0) ** 2, loss=0.2)
+    stiff = machines.mount(k=MASS * (TWO_PI * 400.0) ** 2, loss=0.3)
     # The mean square of the polygon itself: (2 + cos 2x)/3.
     polygon = machines.one_axis(MASS, record(tmp_path, "time", between="straight"))
     assert both(polygon, stiff, RMS, rel=1e-3) == pytest.approx(
-        math.sqrt((2.0 + math.cos(0.4 * math.pi)) / 3.0), rel=2e-3
+        math.sqrt((2.0 + math.cos(0.4 * math.pi)) / 3.0), rel=5e-3
     )
     filled = machines.one_axis(MASS, record(tmp_path, "time"))
     assert both(filled, stiff, RMS, rel=1e-3) == pytest.approx(1.0, rel=6e-3)

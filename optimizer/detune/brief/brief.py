@@ -10,6 +10,7 @@ from detune.brief.condition import Condition
 from detune.brief.floor import Floor
 from detune.brief.forcing import Forcing
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
+from detune.brief.sizing import Sizing
 from detune.brief.state import State
 from detune.brief.statement import Name, Statement, Text
 from detune.brief.structure import Structure
@@ -36,6 +37,7 @@ class Brief(Statement):
     choices: tuple[Choice, ...]
     ballast: Ballast | None = None
     objectives: Objectives = Objectives()
+    sizing: Sizing | None = None
     folder: Path = Path()
     file: Text = "brief from Python"
 

@@ -9,6 +9,7 @@ from detune.brief.forcing import Forcing
 from detune.brief.machine import Connection, Station
 from detune.brief.matching import not_matching
 from detune.brief.sense import without_sense
+from detune.brief.sizing_check import sizing_checked
 from detune.ground.errors import nearest_name
 
 __all__ = ["Finding", "Path", "cross_check"]
@@ -36,6 +37,7 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
             _ballast,
             without_sense,
             not_matching,
+            sizing_checked,
         )
         for finding in check(brief)
     ]
@@ -44,15 +46,15 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
 
 def _empty_tables(brief: Brief) -> list[Finding]:
     """Tables of which at least one is needed; the other checks stand on them."""
-    needed = {
+    needed: dict[str, tuple[object, ...]] = {
         "body": brief.bodies,
         "station": brief.stations,
         "condition": brief.conditions,
         "forcing": brief.forcing,
         "allowable": brief.allowables,
-        "catalog": brief.catalogs,
-        "choice": brief.choices,
     }
+    if brief.sizing is None:
+        needed |= {"catalog": brief.catalogs, "choice": brief.choices}
     return [Finding((name,), "[]", f"at least one [[{name}]]") for name, items in needed.items() if not items]
 
 
@@ -256,7 +258,7 @@ def _choices(brief: Brief) -> list[Finding]:
                     _unknown(("choice", index, "catalogs", i), name, catalogs, "a catalog", "catalog")
                 )
     for index, station in enumerate(brief.stations):
-        if station.group not in chosen:
+        if station.group not in chosen and (brief.choices or brief.sizing is None):
             findings.append(
                 _unknown(
                     ("station", index, "group"), station.group, chosen, "a group with a [[choice]]", "choice"

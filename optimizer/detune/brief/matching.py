@@ -2,6 +2,7 @@
 
 from detune.brief.allowable import (
     BandAllowable,
+    Displacement,
     FloorVelocity,
     HarmonicAllowable,
     Separation,
@@ -147,6 +148,11 @@ def _why_not(
     where = f'conditions without "{forcing.name}", as "conditions" ("{condition.name}" has it)'
     if allowable.has_weighting():
         return f"tones and noise alone under a frequency-weighted limit: {where}"
+    if transient.base is not None and not transient.weight_acts and isinstance(allowable, Displacement):
+        return (
+            'kind = "relative-motion" with to = "floor" under a shock or record of the floor\'s acceleration, which '
+            f"does not say where the floor ends up; or {where}"
+        )
     if transient.record is None and allowable.statistic() == "rms":
         return f'measure = "peak" under a shock, whose rms depends on how long one looks; or {where}'
     return ""

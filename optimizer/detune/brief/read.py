@@ -16,6 +16,7 @@ from detune.brief.cross_check import cross_check
 from detune.brief.finding import Finding
 from detune.brief.floor import Floor
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
+from detune.brief.sizing import Sizing
 from detune.brief.state import State
 from detune.brief.statement import Statement, describe
 from detune.brief.structure import Structure
@@ -27,6 +28,7 @@ SINGLE: dict[str, type[Statement]] = {
     "ballast": Ballast,
     "objectives": Objectives,
     "structure": Structure,
+    "sizing": Sizing,
 }
 REPEATED: dict[str, type[Statement]] = {
     "body": Body,
@@ -55,6 +57,8 @@ FIELD = {
 }
 RIGID = Floor(kind="rigid")
 REQUIRED = ("title", "body", "station", "floor", "condition", "forcing", "allowable", "catalog", "choice")
+# A study that sizes its parts may stand before there is a parts list.
+LISTS = ("catalog", "choice")
 TEXTS = ("title", "notes")
 YES_NO = ("gravity_stiffness",)
 TABLES = (*TEXTS, *YES_NO, *SINGLE, *REPEATED, *BY_KIND)
@@ -101,7 +105,7 @@ def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -
     study = Path(path)
     findings: list[Finding] = list(_unknown_tables(data))
     read: dict[str, Any] = {}
-    not_read = {name for name in REQUIRED if name not in data}
+    not_read = {name for name in _required(data) if name not in data}
     for name in TEXTS:
         if name in data:
             if isinstance(data[name], str) and data[name].strip():
@@ -150,6 +154,10 @@ def _in_file(finding: Finding, rows: Mapping[str, list[int]]) -> Finding:
     return finding
 
 
+def _required(data: Mapping[str, Any]) -> tuple[str, ...]:
+    return tuple(name for name in REQUIRED if name not in LISTS or "sizing" not in data)
+
+
 def _unknown_tables(data: Mapping[str, Any]) -> Iterator[Finding]:
     for name in data:
         if name not in TABLES:
@@ -159,7 +167,7 @@ def _unknown_tables(data: Mapping[str, Any]) -> Iterator[Finding]:
                 "one of the tables of a study: " + ", ".join(TABLES),
                 nearest_name(name, TABLES),
             )
-    for name in REQUIRED:
+    for name in _required(data):
         if name not in data:
             table = (
                 f"[[{name}]]"

@@ -11,10 +11,9 @@ from detune.physics.array_types import ArrayLike, FloatArray
 
 
 def permissible_eccentricity(grade: ArrayLike, frequency: ArrayLike) -> FloatArray:
-    """Permissible eccentricity in m, grade / (2 pi f). grade in m/s, frequency of rotation in Hz; both
-    broadcast.
+    """Permissible eccentricity in m, grade / (2 pi f).
 
-    ValueError unless both are positive.
+    grade in m/s, frequency of rotation in Hz; both broadcast. ValueError unless both are positive.
     """
     g, f = np.asarray(grade, dtype=float), np.asarray(frequency, dtype=float)
     if not (np.all(g > 0.0) and np.all(f > 0.0)):
@@ -33,12 +32,11 @@ def unbalance_force(unbalance: ArrayLike, omega: ArrayLike) -> FloatArray:
 
 
 def rotating_force_vector(shaft: ArrayLike, start: ArrayLike | None = None) -> tuple[FloatArray, FloatArray]:
-    """Two unit vectors (a, b) square to the shaft: the force of a unit unbalance is a - j b, in rotation
-    sense.
+    """Two unit vectors (a, b) square to the shaft: the force of a unit unbalance is a - j b.
 
     Re((a - j b) exp(j w t)) = a cos w t + b sin w t turns about the shaft by the right-hand rule. ``start``
-    gives the direction at t = 0 (its part square to the shaft). Shapes: (3), (3) -> (3), (3). ValueError
-    where ``numpy`` cannot decide a direction: a zero shaft, or a start along the shaft.
+    gives the direction at t = 0 (its part square to the shaft). Shapes: (3), (3) -> (3), (3). ValueError if
+    the shaft has no direction or the start lies along it.
     """
     s = np.asarray(shaft, dtype=float)
     length = float(np.linalg.norm(s))

@@ -70,13 +70,12 @@ def loss_factor_from_transmissibility_peak(peak: ArrayLike) -> FloatArray:
 
 
 def viscous_ratio_from_amplification(amplification: ArrayLike) -> FloatArray:
-    """Viscous damping ratio of a mount whose transmissibility peaks at ``amplification``; exact for any Q >
-    1.
+    """Viscous damping ratio of a mount whose transmissibility peaks at ``amplification`` Q > 1; exact.
 
-    At the peak T^2 = 1/(1 - r^4), and the peak condition is 2 z^2 r^4 + r^2 - 1 = 0, so with u = r^2 = sqrt(1
-    - 1/Q^2) the ratio is z = sqrt((1 - u)/2) / u. This inverts the peak height of Inman, Engineering
-    Vibration, sec. 2.4. Its limit 1/(2 Q) for large Q is too small by 30 per cent at Q = 1.5, by 2.5 at Q =
-    5. ValueError unless Q > 1.
+    At the peak T^2 = 1/(1 - r^4), and the peak condition is 2 z^2 r^4 + r^2 - 1 = 0, so with
+    u = r^2 = sqrt(1 - 1/Q^2) the ratio is z = sqrt((1 - u)/2) / u. This inverts the peak height of Inman, Engineering
+    Vibration, sec. 2.4. Its limit 1/(2 Q) for large Q is too small by 30 per cent at Q = 1.5 and by
+    2.5 per cent at Q = 5. ValueError unless Q > 1.
     """
     q = np.asarray(amplification, dtype=float)
     if np.any(~(q > 1.0)):

@@ -10,10 +10,10 @@ import numpy as np
 from detune.physics.array_types import BoolArray, FloatArray, IntArray
 
 MOST_ROUNDS = 1200
-# Relative change of the largest value of a column below which it has settled.
-TOLERANCE = 1e-9
-# What a column that ran out of rounds may still lack: near a fold, where two answers meet, it closes slowly.
-LEFT_OVER = 1e-6
+TOLERANCE = 1e-8
+# What a column that ran out of rounds may still lack, in tolerances: near a fold, where two answers meet, it closes
+# slowly.
+LEFT_OVER = 100.0
 LEAST_SHARE = 1.0 / 64.0
 GROWTH = 1.25
 
@@ -27,13 +27,17 @@ class FixedPoints:
 
 
 def fixed_points(
-    step: Callable[[FloatArray, IntArray], FloatArray], start: FloatArray, most_rounds: int = MOST_ROUNDS
+    step: Callable[[FloatArray, IntArray], FloatArray],
+    start: FloatArray,
+    most_rounds: int = MOST_ROUNDS,
+    tolerance: float = TOLERANCE,
 ) -> FixedPoints:
     """Columns a (S, K) with a = step(a), each from its own start (S, K) on; values are not negative.
 
     step: values (S, A) and the numbers (A,) of their columns -> (S, A). Each column takes a share of the way to
     step(a): all of it at first, half as much whenever the difference has grown or turned its sign, more again while
-    it shrinks. So a map that falls with a slope of size L settles with a share of about 1/(1 + L).
+    it shrinks. So a map that falls with a slope of size L settles with a share of about 1/(1 + L). A column has
+    settled when its difference is below `tolerance` of its largest value.
     """
     value = np.array(start, dtype=float)
     count = value.shape[1]
@@ -47,7 +51,7 @@ def fixed_points(
         difference = step(here, active) - here
         size = np.maximum(np.abs(here).max(axis=0), np.abs(here + difference).max(axis=0))
         missing[active] = np.abs(difference).max(axis=0) / np.where(size > 0.0, size, 1.0)
-        done = missing[active] <= TOLERANCE
+        done = missing[active] <= tolerance
         settled[active[done]] = True
         if np.all(done):
             break
@@ -59,4 +63,4 @@ def fixed_points(
         )
         before[:, active] = difference
         value[:, active] = np.maximum(value[:, active] + share[active] * difference, 0.0)
-    return FixedPoints(value, settled | (missing <= LEFT_OVER))
+    return FixedPoints(value, settled | (missing <= LEFT_OVER * tolerance))

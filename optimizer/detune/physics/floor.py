@@ -1,6 +1,4 @@
-"""A floor as the practitioner knows it: sag, or frequency and effective mass, as one mass on a spring and
-damper.
-"""
+"""A floor as the practitioner knows it (sag, or frequency and effective mass) as a mass on spring and damper."""
 
 from __future__ import annotations
 
@@ -26,8 +24,7 @@ def floor_frequency_from_sag(sag: ArrayLike, gravity: float = STANDARD_GRAVITY) 
 
 
 def floor_modal_mass(total_mass: ArrayLike) -> FloatArray:
-    """Effective mass at midspan of the first mode of a uniform simply supported span: half of its mass, in
-    kg.
+    """Effective mass in kg at midspan of the first mode of a uniform simply supported span: half of its mass.
 
     The mode is a half sine, and the mean of its square is 1/2.
     """

@@ -19,8 +19,8 @@ def undamped_modes(mass: ArrayLike, stiffness: ArrayLike) -> tuple[FloatArray, F
     """Natural frequencies and mass-normalised shapes of K phi = w^2 M phi.
 
     Shapes: mass (..., n, n) symmetric positive definite, stiffness (..., n, n) symmetric, leading axes
-    broadcast -> (frequency (..., n) in Hz, ascending; shapes (..., n, n), one mode a column, phi.T M phi =
-    1). UnsupportedMachine if an eigenvalue is negative beyond rounding; a free direction has frequency 0.
+    broadcast -> (frequency (..., n) in Hz, ascending; shapes (..., n, n), one mode a column,
+    phi.T M phi = 1). UnsupportedMachine if an eigenvalue is negative beyond rounding; a free direction has frequency 0.
     numpy.linalg.LinAlgError if a mass matrix is not positive definite.
     """
     inverse, standard = _standard_form(mass, stiffness)

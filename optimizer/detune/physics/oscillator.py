@@ -20,9 +20,7 @@ def relative_stiffness(r: ArrayLike, ratio: ArrayLike = 0.0, loss_factor: ArrayL
 
 
 def dynamic_displacement(r: ArrayLike, ratio: ArrayLike = 0.0, loss_factor: ArrayLike = 0.0) -> ComplexArray:
-    """Displacement under a constant force over the static one, X k / F, complex: 1 / (relative_stiffness -
-    r^2).
-    """
+    """Displacement under a constant force over the static one, X k / F, complex."""
     r = np.asarray(r, dtype=float)
     return np.asarray(1.0 / (relative_stiffness(r, ratio, loss_factor) - r**2))
 

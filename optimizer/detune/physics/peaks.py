@@ -234,9 +234,7 @@ def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatAr
 
 
 def _parabola(bracket: _Bracket) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
-    """Vertex and lowest ordinate by three samples, corrected by a fourth; the correction of the vertex; the
-    bend.
-    """
+    """Vertex and lowest ordinate by three samples, corrected by a fourth; size of the correction; the bend."""
     left, right = -bracket.nodes[:, 1], bracket.nodes[:, 3]
     slope_left = (1.0 - bracket.ordinates[:, 1]) / left
     slope_right = (bracket.ordinates[:, 3] - 1.0) / right

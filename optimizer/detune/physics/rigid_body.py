@@ -48,8 +48,9 @@ def mass_matrix(mass: ArrayLike, offset: ArrayLike, inertia_about_centre: ArrayL
     """Mass matrix of a rigid body about its reference point.
 
     Shapes: mass (...) in kg, offset (..., 3) in m from the reference point to the mass centre,
-    inertia_about_centre (..., 3, 3) in kg m2 in the global axes -> (..., 6, 6). M = [[m I, -m S], [m S, J + m
-    S.T S]] with S = skew(offset): kinetic energy of a body whose centre moves with v + omega x offset.
+    inertia_about_centre (..., 3, 3) in kg m2 in the global axes -> (..., 6, 6).
+    M = [[m I, -m S], [m S, J + m S.T S]] with S = skew(offset): kinetic energy of a body whose centre moves
+    with v + omega x offset.
     """
     mass = np.asarray(mass, dtype=float)[..., None, None]
     s = skew(offset)
@@ -75,10 +76,9 @@ def box_inertia(mass: ArrayLike, size: ArrayLike) -> FloatArray:
 
 
 def cylinder_inertia(mass: ArrayLike, radius: ArrayLike, length: ArrayLike, axis: int) -> FloatArray:
-    """Inertia about the centre of a uniform solid cylinder: m R^2/2 about its axis, m (3 R^2 + L^2)/12
-    across.
+    """Inertia about the centre of a uniform solid cylinder.
 
-    Shapes: mass, radius, length (...) in kg, m, m; axis 0, 1 or 2 for a cylinder along x, y or z
+    m R^2/2 about its axis, m (3 R^2 + L^2)/12 across. Shapes: mass, radius, length (...) in kg, m, m; axis 0, 1 or 2 for a cylinder along x, y or z
     -> (..., 3, 3) in kg m2. ValueError for another axis.
     """
     if axis not in (0, 1, 2):
@@ -93,8 +93,7 @@ def cylinder_inertia(mass: ArrayLike, radius: ArrayLike, length: ArrayLike, axis
 def rotate_inertia(inertia: ArrayLike, axes: ArrayLike) -> FloatArray:
     """Inertia given in local axes, seen in global axes: axes @ J @ axes.T.
 
-    Shapes: inertia (..., 3, 3) in kg m2, axes (..., 3, 3) with the local unit vectors as columns -> (..., 3,
-    3).
+    Shapes: inertia (..., 3, 3) in kg m2, axes (..., 3, 3) with the local unit vectors as columns -> (..., 3, 3).
     """
     axes = np.asarray(axes, dtype=float)
     turned: FloatArray = axes @ np.asarray(inertia, dtype=float) @ np.swapaxes(axes, -1, -2)

@@ -8,8 +8,7 @@ from detune.physics.array_types import ArrayLike, FloatArray
 
 
 def separation(frequency: ArrayLike, low: ArrayLike, high: ArrayLike) -> FloatArray:
-    """Separation of a natural frequency f from an excitation interval [low, high]: max(1 - f/low, f/high -
-    1).
+    """Separation of a natural frequency f from an excitation interval: max(1 - f/low, f/high - 1).
 
     Above the interval that is f/high - 1, below it 1 - f/low. Inside, both straight lines simply go on: 0 at
     the two edges, negative between, least at 2 low high / (low + high). For a single excitation frequency it

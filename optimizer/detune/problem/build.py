@@ -138,6 +138,9 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     if findings:
         # Candidates are found by the names that have just been checked.
         raise BriefError(faults_without_lines(brief.file, findings))
+    if not brief.choices:
+        expected = "a [[choice]] of parts for each group; a study that has none can be sized, not run"
+        raise BriefError(faults_without_lines(brief.file, (Finding(("choice",), "", expected),)))
     candidates = find_candidates(brief, catalogs)
     if candidates.findings:
         raise BriefError(faults_without_lines(brief.file, candidates.findings))
@@ -149,7 +152,12 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
 
 def with_mounts(problem: Problem, mounts: tuple[tuple[Mount, ...], ...]) -> Problem:
     """Return the same requirements over other mounts, `mounts[g]` for group g."""
-    return _problem(problem.brief, mounts, (), ())
+    return with_parts(problem.brief, mounts)
+
+
+def with_parts(brief: Brief, mounts: tuple[tuple[Mount, ...], ...]) -> Problem:
+    """Return the requirements of a brief over any mounts, of a list or made to order, `mounts[g]` for group g."""
+    return _problem(brief, mounts, (), ())
 
 
 def _problem(

@@ -29,7 +29,9 @@ Booleans = NDArray[np.bool_]
 # Amplitudes at which modes are looked for, so that the search over speed knows where peaks may be.
 LOOKS = 7
 BACKGROUND = 64
-MOST_ROUNDS = 200
+# What several sources together are iterated to: a supremum over speed is known to about as much.
+MOST_ROUNDS = 60
+CLOSE = 2e-5
 AXIAL = MountDeflection(part="dynamic", direction="axial", limit=1.0)
 
 
@@ -116,7 +118,7 @@ def working_amplitudes(model: Model, designs: Designs, dynamic: Dynamic, driving
     if len(sources) == 1 and sources[0].families:
         # One speed alone finds its own amplitude within.
         return Working(sources, step(start, np.arange(designs.count)).reshape(shape), settled)
-    found = fixed_points(step, start, MOST_ROUNDS)
+    found = fixed_points(step, start, MOST_ROUNDS, CLOSE)
     return Working(sources, found.value.reshape(shape), settled & found.settled)
 
 

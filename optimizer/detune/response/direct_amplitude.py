@@ -7,6 +7,7 @@ shorter; where the two come to different ends, the larger response counts.
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -25,10 +26,12 @@ from detune.response.direct_supremum import Pairs, Supremum, amplitudes_at, cohe
 Floats = NDArray[np.float64]
 AXIAL = MountDeflection(part="dynamic", direction="axial", limit=1.0)
 # Share of the way taken in each step, and how many such steps: shorter ones settle steeper maps.
-SHARES = ((0.5, 200), (0.2, 400), (0.05, 1200), (0.015, 3000))
+SHARES = ((1.0, 30), (0.5, 200), (0.2, 400), (0.05, 1200), (0.015, 3000))
 CLOSED = 1e-8
-LEFT_OVER = 1e-6
-LOOKS = 9
+# Of several sources together, whose suprema over speed are known to about as much.
+CLOSE = 2e-5
+LEFT_OVER = 100.0
+LOOKS = 5
 
 
 @dataclass(frozen=True, eq=False)
@@ -43,17 +46,32 @@ class Source:
 
 @dataclass(frozen=True, eq=False)
 class WorkingAmplitude:
-    """Axial deflection (J, S) in m that each of J sources gives the stations, and whether it reproduces itself."""
+    """What J sources that act in a condition deflect the stations by. Found when it is first asked for."""
 
+    machine: DirectMachine
+    condition: Condition
     sources: tuple[Source, ...]
-    deflection: Floats
-    settled: bool
+
+    @cached_property
+    def _found(self) -> tuple[Floats, bool]:
+        return _deflections(self.machine, self.condition, self.sources)
 
     @property
     def total(self) -> Floats:
-        """Amplitude (S,) at which the parts work."""
-        amplitude: Floats = self.deflection.sum(axis=0)
+        """Amplitude (S,) in m at which the parts work."""
+        amplitude: Floats = self._found[0].sum(axis=0)
         return amplitude
+
+    @property
+    def settled(self) -> bool:
+        """Whether the amplitude reproduces itself."""
+        return self._found[1]
+
+    def beside(self, number: int) -> Floats:
+        """Amplitude (S,) in m of everything but one source."""
+        if len(self.sources) == 1:
+            return np.zeros(len(self.machine.brief.stations))
+        return np.maximum(self.total - self._found[0][number], 0.0)
 
 
 def follows_amplitude(machine: DirectMachine) -> bool:
@@ -63,7 +81,13 @@ def follows_amplitude(machine: DirectMachine) -> bool:
 
 def working_amplitude(machine: DirectMachine, condition: Condition) -> WorkingAmplitude:
     """Return the amplitude at which the parts work under the forcing of a condition."""
-    sources = _sources(machine, condition)
+    return WorkingAmplitude(machine, condition, _sources(machine, condition))
+
+
+def _deflections(
+    machine: DirectMachine, condition: Condition, sources: tuple[Source, ...]
+) -> tuple[Floats, bool]:
+    """Return the axial deflection (J, S) in m that each source gives the stations, and whether it reproduces itself."""
     pairs = _watched(machine)
     held = [index for index, station in enumerate(machine.brief.stations) if machine.share(station) > 0.0]
     shape = (len(sources), len(machine.brief.stations))
@@ -82,10 +106,10 @@ def working_amplitude(machine: DirectMachine, condition: Condition) -> WorkingAm
         return there.reshape(-1, 1)
 
     start = np.zeros((shape[0] * shape[1], 1))
-    if len(sources) == 1 and sources[0].tones and not sources[0].ways:
-        return WorkingAmplitude(sources, step(start).reshape(shape), settled)
-    deflection, closed = _approached(lambda a, _: step(a), start, 0.1)
-    return WorkingAmplitude(sources, deflection.reshape(shape), settled and bool(closed[0]))
+    if len(sources) == 1 and not _works_at_total(sources[0]):
+        return step(start).reshape(shape), settled
+    deflection, closed = _approached(lambda a, _: step(a), start, 0.1, CLOSE)
+    return deflection.reshape(shape), settled and bool(closed[0])
 
 
 def suprema_at_amplitude(
@@ -94,10 +118,11 @@ def suprema_at_amplitude(
     """Return the values of rows under the forcing of a condition; infinite where no amplitude reproduces itself."""
     total, at = np.zeros(len(pairs)), np.full(len(pairs), np.nan)
     largest = np.full(len(pairs), -np.inf)
-    settled = working.settled
+    alone = len(working.sources) == 1 and not _works_at_total(working.sources[0])
+    settled = alone or working.settled
     for number, source in enumerate(working.sources):
-        beside = np.maximum(working.total - working.deflection[number], 0.0)
-        part, found = _values(machine, condition, source, pairs, working.total, beside)
+        amplitude = working.beside(number) if alone else working.total
+        part, found = _values(machine, condition, source, pairs, amplitude, working.beside(number))
         settled = settled and found
         for index, (allowable, _) in enumerate(pairs):
             total[index] = combine(total[[index]], part.value[[index]], allowable.statistic())[0]
@@ -123,6 +148,11 @@ def _sources(machine: DirectMachine, condition: Condition) -> tuple[Source, ...]
     return (*found, *([Source(transients=transients)] if transients else []))
 
 
+def _works_at_total(source: Source) -> bool:
+    """Return whether parts work at one amplitude under a source; under tones of a steady speed at each speed's own."""
+    return not source.tones or bool(source.ways)
+
+
 def _watched(machine: DirectMachine) -> tuple[tuple[HarmonicAllowable, str], ...]:
     return tuple((AXIAL, s.name) for s in machine.brief.stations if machine.share(s) > 0.0)
 
@@ -136,7 +166,7 @@ def _values(
     beside: Floats,
 ) -> tuple[Supremum, bool]:
     """Return the values of rows under one source, and whether an amplitude was found at every speed."""
-    if source.tones and not source.ways:
+    if not _works_at_total(source):
         return _over_speed(machine, source, pairs, beside)
     at = machine.at_amplitude(total)
     found = direct_modes(at, [])
@@ -167,7 +197,7 @@ def _over_speed(
         best = np.zeros((len(pairs), len(speed)))
         for start in (beside, beside + greatest):
             columns = np.repeat(start[:, None], len(speed), axis=1)
-            amplitude, closed = _approached(lambda a, index: _deflected(machine, sets, speed[index], beside, a), columns, 1.0)
+            amplitude, closed = _approached(lambda a, index: _deflected(machine, sets, speed[index], beside, a), columns)
             settled = settled and bool(np.all(closed))
             best = np.maximum(best, amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed))
         return best
@@ -188,18 +218,18 @@ def _deflected(
 
 
 def _approached(
-    step: Callable[[Floats, NDArray[np.intp]], Floats], start: Floats, rounds: float
+    step: Callable[[Floats, NDArray[np.intp]], Floats], start: Floats, rounds: float = 1.0, close: float = CLOSED
 ) -> tuple[Floats, NDArray[np.bool_]]:
-    """Return columns (S, K) with a = step(a), and which of them closed; `rounds` scales how long it is tried."""
+    """Return columns (S, K) with a = step(a) to `close`, and which closed; `rounds` scales how long it is tried."""
     value = start.copy()
     missing = np.full(start.shape[1], np.inf)
     for share, count in SHARES:
         for _ in range(int(np.ceil(count * rounds))):
-            active = np.flatnonzero(missing > CLOSED)
+            active = np.flatnonzero(missing > close)
             if not len(active):
-                return value, missing <= LEFT_OVER
+                return value, missing <= LEFT_OVER * close
             change = step(value[:, active], active) - value[:, active]
             size = np.maximum(np.abs(value[:, active]).max(axis=0), np.abs(value[:, active] + change).max(axis=0))
             missing[active] = np.abs(change).max(axis=0) / np.where(size > 0.0, size, 1.0)
-            value[:, active] += np.where(missing[active] > CLOSED, share, 0.0) * change
-    return value, missing <= LEFT_OVER
+            value[:, active] += np.where(missing[active] > close, share, 0.0) * change
+    return value, missing <= LEFT_OVER * close

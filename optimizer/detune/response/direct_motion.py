@@ -152,6 +152,9 @@ def _transient_motion(
         state[: len(load)] = -np.linalg.solve(found.stiffness, machine.dead_load[machine.free])
     state[len(load) :] = -transient.velocity * follow
     floor = np.array([0.0, 0.0 if transient.weight_acts else transient.velocity])
+    if transient.record is not None:
+        # The floor's velocity at the start is unknown; over the record its mean is taken as zero.
+        floor[1] = -float(np.mean(_integrated(transient.record, transient.step, np.zeros(2))[1]))
     views = []
     for step, values in _sampled(transient, found):
         rates = _simulated(found, load, values, step, state)

@@ -6,7 +6,7 @@ carry and what the machine does agree. Motion is relative to the floor's own fre
 """
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,6 +22,7 @@ from detune.response.causal_design import causal_matrices
 from detune.response.designs import Designs
 from detune.response.model import Model, StationRows
 from detune.response.modes import ModeBatch
+from detune.response.progressive import finer, has_curves, progressive_system
 from detune.response.views import find_station
 
 Floats = NDArray[np.float64]
@@ -82,6 +83,10 @@ def transient_values(
             views = motion_views(
                 model, designs.take(one), dynamic.take(one), one_mode_batch(modal, index), load
             )
+            if any(view.beyond for view in views):
+                # A part off its curve has met its stop: nothing is known of what it does there.
+                total[:, index] = np.inf
+                continue
             for row, (allowable, place) in enumerate(pairs):
                 statistic = allowable.statistic()
                 seen = [(allowable.observed(view, place), view.step) for view in views]
@@ -107,7 +112,9 @@ class MotionView:
     """The response of one design over one stretch of time (D = 1, samples `step` s apart), as allowables look at it.
 
     `relative` to the floor's free motion, complex where it is the envelope of a passage; `lagged` (T, n) is the velocity of each mode over its
-    own frequency, on which loss-factor forces stand; `floor` (3 rates, T) is the free motion along `base`.
+    own frequency, on which loss-factor forces stand; `floor` (3 rates, T) is the free motion along `base`. On
+    load-deflection curves, `more` (S, T) is one part's axial force beyond its tangent, and `beyond` tells that a part
+    has left its curve.
     """
 
     model: Model
@@ -118,6 +125,8 @@ class MotionView:
     floor: Floats
     base: Floats
     step: float
+    more: Floats | None = None
+    beyond: bool = False
 
     def _rates(self, rate: int) -> Floats:
         return (self.relative.displacement, self.relative.velocity, self.relative.acceleration)[rate]
@@ -144,6 +153,8 @@ class MotionView:
         force: Floats = station.factor * (k * moved + c * fast + k * eta * lagged)
         if self.dynamic.parts.with_frequency:
             force = force + self._frequency_force(station, station.factor * (k * (1.0 + 1j * eta)), c)
+        if self.more is not None:
+            force[:, 2] += self.more[self.model.stations.index(station)]
         return force
 
     def _frequency_force(self, station: StationRows, constant: Complexes, viscous: Floats) -> Floats:
@@ -199,22 +210,45 @@ def motion_views(
     stiffness, damping = causal_matrices(dynamic, modal, 0)
     pattern = load.vector - mass @ load.lead
     transient = load.transient
-    displacement = np.zeros(model.frame.count)
+    displacement: Floats | None = np.zeros(model.frame.count)
+    curved = has_curves(model, dynamic)
+    system = progressive_system(model, dynamic, stiffness, damping) if curved else None
     if transient.weight_acts:
-        displacement = -np.linalg.solve(stiffness, model.weight[designs.step[0]])
+        weight = model.weight[designs.step[0]]
+        displacement = -np.linalg.solve(stiffness, weight) if system is None else system.unloaded(weight)
     velocity = -transient.velocity * load.lead
     base = np.array(transient.base or (0.0, 0.0, 0.0))
-    floor_state = (0.0, 0.0 if transient.weight_acts else transient.velocity)
+    floor_state = (0.0, _first_velocity(transient))
     views = []
-    for step, values in stretches(transient, modal.frequency[0], modal.loss_factor[0]):
-        moved = simulate(
-            mass, damping, stiffness, values[:, None], step, pattern[:, None], None, displacement, velocity
-        )
+    more, beyond = None, curved and (system is None or displacement is None)
+    if displacement is None:
+        displacement = np.zeros(model.frame.count)
+    for step, values in stretches(transient, finer(modal.frequency[0], system), modal.loss_factor[0]):
+        if system is None or beyond:
+            moved = simulate(
+                mass, damping, stiffness, values[:, None], step, pattern[:, None], None, displacement, velocity
+            )
+        else:
+            moved, more, beyond = system.simulated(values, pattern, step, displacement, velocity)
         displacement, velocity = moved.displacement[-1], moved.velocity[-1]
         floor = floor_motion(values, step, floor_state) if transient.base else np.zeros((3, len(values)))
         floor_state = (float(floor[0, -1]), float(floor[1, -1]))
-        views.append(motion_view(model, dynamic, modal, moved, floor, base))
+        view = motion_view(model, dynamic, modal, moved, floor, base)
+        views.append(replace(view, more=None if beyond else more, beyond=beyond))
     return tuple(views)
+
+
+def _first_velocity(transient: Transient) -> float:
+    """Velocity (m/s) of the floor's free motion at the start.
+
+    A record says nothing of it: the one is taken that makes the record's mean velocity zero. The machine moves
+    along. After a fall the floor is at rest.
+    """
+    if transient.weight_acts:
+        return 0.0
+    if transient.record is None or transient.base is None:
+        return transient.velocity
+    return -float(np.mean(floor_motion(transient.record, transient.step, (0.0, 0.0))[1]))
 
 
 def stretches(

@@ -96,6 +96,22 @@ def _links(g: Requirement, x: Floats, y: Floats) -> dict[_Key, list[_Key]]:
     return links
 
 
+def chains_of_cells(inside: NDArray[np.bool_]) -> list[tuple[list[_Key], bool]]:
+    """Chains of grid edges (direction, i, j) that the boundary of `inside` (x, y) crosses, and whether each closes.
+
+    At a saddle the inner corners are kept apart: only nodes are known here.
+    """
+    count = inside[:-1, :-1].astype(int) + inside[1:, :-1] + inside[1:, 1:] + inside[:-1, 1:]
+    links: dict[_Key, list[_Key]] = {}
+    for i, j in np.argwhere((count > 0) & (count < 4)):
+        corners = np.array([inside[i + a, j + b] for (a, b), _ in _EDGES])
+        for one, two in _cell_pairs(corners, False):
+            a, b = _edge_key(int(i), int(j), one), _edge_key(int(i), int(j), two)
+            links.setdefault(a, []).append(b)
+            links.setdefault(b, []).append(a)
+    return _chains(links)
+
+
 def _chains(links: dict[_Key, list[_Key]]) -> list[tuple[list[_Key], bool]]:
     left = {k: list(v) for k, v in links.items()}
     chains: list[tuple[list[_Key], bool]] = []

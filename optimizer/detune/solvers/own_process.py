@@ -43,7 +43,7 @@ class OwnProcess:
             return None
         pipe.send(question)
         if not self._waited(pipe, limit + GRACE, stop):
-            self.end()
+            self.end(at_work=True)
             return None
         kind, answer = self._received(pipe)
         if kind == "error":
@@ -59,7 +59,7 @@ class OwnProcess:
         self.process.start()
         theirs.close()
         if not self._waited(self.pipe, min(START, limit + GRACE), stop):
-            self.end()
+            self.end(at_work=True)
             return None
         self._received(self.pipe)
         return self.pipe
@@ -79,13 +79,16 @@ class OwnProcess:
                 return False
         return True
 
-    def end(self) -> None:
-        """End the process."""
-        if self.pipe is not None:
-            self.pipe.close()
-            self.process.kill()
-            self.process.join()
-            self.pipe = None
+    def end(self, at_work: bool = False) -> None:
+        """End the process: by closing the pipe where it waits for a question, by force where it is at work."""
+        if self.pipe is None:
+            return
+        self.pipe.close()
+        self.pipe = None
+        if not at_work:
+            self.process.join(GRACE)
+        self.process.kill()
+        self.process.join()
 
 
 def _serve(pipe: Connection, function: Callable[[Any], Any]) -> None:

@@ -166,7 +166,7 @@ def _outcome(problem: Problem, tests: FinalTest, opinion: Opinion, seconds: floa
     designs = none if opinion.parts is None else _designs(opinion.parts, opinion.step)
     least = tests.judge(designs)[1] if designs.count else np.zeros(0)
     finished = opinion.stopped == "finished"
-    rule = f"not cheaper, or excluded by a static limit, a tone or one of {opinion.cuts} cuts, as the MILP solver proves"
+    rule = f"not cheaper, or excluded by a static limit, a tone or one of {opinion.cuts} cuts: proven by the MILP solver"
     excluded = problem.count - designs.count if finished else 0
     return Outcome(
         method=NAME,

@@ -39,7 +39,7 @@ def study_of_tables(data: Mapping[str, Any], positions: Positions, path: str | P
     faults = list(reading.faults)
     catalogs = _catalogs(reading.catalogs, Path(path).parent, faults, str(path), positions)
     # With a faulty catalog its parts are unknown, and nothing said about choices would be worth reading.
-    if reading.brief is not None and len(catalogs) == len(reading.catalogs):
+    if reading.brief is not None and reading.brief.choices and len(catalogs) == len(reading.catalogs):
         found = find_candidates(reading.brief, catalogs).findings
         faults += [to_fault(str(path), finding, reading.positions) for finding in found]
     if faults or reading.brief is None:
@@ -53,7 +53,7 @@ def study_of(brief: Brief) -> Study:
     faults: list[Fault] = []
     catalogs = _catalogs(brief.catalogs, brief.folder, faults, brief.file, None)
     findings = cross_check(brief)
-    if len(catalogs) == len(brief.catalogs):
+    if brief.choices and len(catalogs) == len(brief.catalogs):
         findings = (*findings, *find_candidates(brief, catalogs).findings)
     faults += faults_without_lines(brief.file, findings)
     if faults:

@@ -113,6 +113,7 @@ def _one(
         return None
     colon = ":" in value and any(part.catalog == value.partition(":")[0] for part in parts)
     known = [f"{part.catalog}:{part.part}" if colon else part.part for part in parts]
+    known += [word.strip('"') for word in expected[1:]]
     words = " or ".join(expected) if parts else f"{expected[0]}, which have none"
     faults.append(Fault(SOURCE, None, group, value, words, nearest_name(value, known)))
     return None

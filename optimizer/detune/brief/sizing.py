@@ -1,0 +1,247 @@
+"""What a study leaves open before there is a parts list: stiffness, damping, ballast, absorber, positions.
+
+The table `[sizing]` names the unknowns with their bounds, what is minimised or maximised, and of what kind the parts
+made to order are. Everything else of the brief (machine, conditions, forcing, allowables) stays as it is.
+"""
+
+from typing import Literal
+
+from pydantic import PrivateAttr, field_validator, model_validator
+
+from detune.brief.statement import (
+    AxisName,
+    Cost,
+    Damping,
+    Name,
+    Ratio,
+    Statement,
+    Stiffness,
+    Text,
+    describe,
+    refuse,
+)
+from detune.ground import units
+
+Kind = Literal[
+    "stiffness",
+    "loss-factor",
+    "viscous",
+    "ballast",
+    "absorber-mass",
+    "absorber-tuning",
+    "absorber-damping",
+    "position",
+]
+UNITS: dict[str, str] = {
+    "stiffness": "stiffness",
+    "loss-factor": "ratio",
+    "viscous": "damping",
+    "ballast": "mass",
+    "absorber-mass": "mass",
+    "absorber-tuning": "frequency",
+    "absorber-damping": "ratio",
+    "position": "length",
+}
+OF_GROUP = ("stiffness", "loss-factor", "viscous", "absorber-tuning", "absorber-damping")
+OF_BODY = ("absorber-mass", "absorber-tuning", "absorber-damping")
+FROM_ZERO = ("ballast", "viscous", "position")
+LESS = ("cost", "added-mass", "worst-response", "stiffness", "damping")
+MORE = ("separation", "stiffness")
+Minimised = Literal["cost", "added-mass", "worst-response", "stiffness", "damping"]
+Maximised = Literal["separation", "stiffness"]
+Bound = Text | float
+
+
+class SizingUnknown(Statement):
+    """One unknown between `lower` and `upper`, each with its unit.
+
+    `stiffness` is the dynamic one of one part along its `axis`: "axial" keeps the part's lateral ratio, "lateral" is
+    both lateral directions, "x" and "y" one of them. `loss-factor` and `viscous` are those of one part of the
+    group. `ballast` is the added mass, in steps of `step` where one is stated. `absorber-mass` is the mass of the
+    body; `absorber-tuning` its frequency on its own group's parts with the machine held, `absorber-damping` the
+    damping ratio there. `position`: the distance of the stations from the origin along `axis`, each on its own side.
+    """
+
+    kind: Kind
+    group: Name | None = None
+    body: Name | None = None
+    stations: tuple[Name, ...] = ()
+    axis: Literal["axial", "lateral"] | AxisName | None = None
+    lower: Bound
+    upper: Bound
+    step: Bound | None = None
+    name: Name | None = None
+
+    _low: float = PrivateAttr()
+    _high: float = PrivateAttr()
+    _step: float | None = PrivateAttr(default=None)
+
+    @model_validator(mode="after")
+    def _values(self) -> "SizingUnknown":
+        self._low, self._high = self._read(self.lower, "lower"), self._read(self.upper, "upper")
+        if self._high < self._low:
+            found = f"{describe(self.lower)} to {describe(self.upper)}"
+            raise refuse(found, "the lower bound first, the upper bound second: these are crossed", at="lower")
+        least = 0.0 if self.kind in FROM_ZERO else None
+        if (least is None and self._low <= 0.0) or self._low < 0.0:
+            wanted = "a lower bound of zero or more" if least == 0.0 else "a lower bound above zero"
+            raise refuse(describe(self.lower), wanted, at="lower")
+        if self.step is not None:
+            if self.kind != "ballast":
+                raise refuse("step", 'no "step": only ballast comes in steps', at="step")
+            self._step = self._read(self.step, "step")
+            if self._step <= 0.0:
+                raise refuse(describe(self.step), "a step above zero", at="step")
+        self._belonging()
+        return self
+
+    def _read(self, value: Bound, at: str) -> float:
+        kind = UNITS[self.kind]
+        if isinstance(value, str):
+            try:
+                return float(units.parse(value, kind))
+            except units.UnitError as error:
+                raise refuse(error.found, error.expected, at=at, nearest=error.nearest) from None
+        if abs(value) == float("inf") or value != value:
+            raise refuse(describe(value), "a finite bound; without one the search has no end", at=at)
+        return float(value)
+
+    def _belonging(self) -> None:
+        if (self.kind in OF_GROUP) != (self.group is not None):
+            wanted = 'the group of parts, as "group"' if self.kind in OF_GROUP else 'no "group"'
+            raise refuse(self.kind, wanted, at="kind")
+        if (self.kind in OF_BODY) != (self.body is not None):
+            wanted = 'the absorber\'s body, as "body"' if self.kind in OF_BODY else 'no "body"'
+            raise refuse(self.kind, wanted, at="kind")
+        if (self.kind == "position") != bool(self.stations):
+            wanted = 'the stations that move, as "stations"' if self.kind == "position" else 'no "stations"'
+            raise refuse(self.kind, wanted, at="kind")
+        allowed = {"stiffness": ("axial", "lateral", "x", "y"), "position": ("x", "y", "z")}.get(self.kind)
+        if allowed is None and self.axis is not None:
+            raise refuse(self.axis, f'no "axis" for {self.kind}', at="axis")
+        if allowed is not None and self.axis not in allowed:
+            raise refuse(describe(self.axis), f'"axis" as one of {", ".join(allowed)}', at="axis")
+
+    @property
+    def bounds(self) -> tuple[float, float]:
+        """Lower and upper bound in SI."""
+        return self._low, self._high
+
+    @property
+    def unit(self) -> str:
+        """Kind of unit of the unknown."""
+        return UNITS[self.kind]
+
+    @property
+    def steps(self) -> float | None:
+        """Step of the ballast in kg, None where it is continuous."""
+        return self._step
+
+    @property
+    def title(self) -> str:
+        """The unknown in words."""
+        if self.name is not None:
+            return self.name
+        if self.kind == "stiffness":
+            return f"{self.axis} stiffness of {self.group}"
+        if self.kind == "loss-factor":
+            return f"loss factor of {self.group}"
+        if self.kind == "viscous":
+            return f"damping of {self.group}"
+        if self.kind == "position":
+            return f"{self.axis} distance of {', '.join(self.stations)}"
+        return "ballast" if self.kind == "ballast" else f"{self.kind.replace('-', ' ')} of {self.body}"
+
+
+class MadePart(Statement):
+    """What is known of a part made to order for one group, whatever its stiffness and damping come out as.
+
+    `lateral_ratio`: lateral over axial dynamic stiffness. `damping_lateral_ratio`: of viscous damping.
+    `stiffness`, `loss_factor`, `viscous`: where they are no unknowns. The cost of one part is `cost` and what its
+    axial stiffness in N/mm, its loss factor and its axial damping in N s/m add to it.
+    """
+
+    group: Name
+    dynamic_to_static: Ratio
+    lateral_ratio: Ratio | None = None
+    damping_lateral_ratio: Ratio = 0.0
+    stiffness: Stiffness | None = None
+    loss_factor: Ratio | None = None
+    viscous: Damping | None = None
+    pulls: bool = False
+    cost: Cost = 0.0
+    cost_per_stiffness: Cost = 0.0
+    cost_per_loss_factor: Cost = 0.0
+    cost_per_damping: Cost = 0.0
+
+    @model_validator(mode="after")
+    def _values(self) -> "MadePart":
+        for key in ("dynamic_to_static", "lateral_ratio", "stiffness"):
+            value = getattr(self, key)
+            if value is not None and value <= 0.0:
+                raise refuse(f"{value:g}", "a value above zero", at=key)
+        for key in ("damping_lateral_ratio", "loss_factor", "viscous", "cost", "cost_per_loss_factor",
+                    "cost_per_damping"):  # fmt: skip
+            value = getattr(self, key)
+            if value is not None and value < 0.0:
+                raise refuse(f"{value:g}", "a value of zero or more", at=key)
+        return self
+
+
+class Sizing(Statement):
+    """Unknowns, what is sought, and how it is searched for.
+
+    Exactly one of `minimise` and `maximise`. `trade`: two or three of cost, added-mass, worst-response, stiffness,
+    damping and separation, of which the front is drawn. `map`: the names of two unknowns spanning the map of what
+    is feasible. `starts` local searches from points drawn with `seed` where no exact method applies.
+    `specification`: whether the purchase specification is worked out.
+    """
+
+    unknown: tuple[SizingUnknown, ...]
+    made: tuple[MadePart, ...] = ()
+    minimise: Minimised | None = None
+    maximise: Maximised | None = None
+    trade: tuple[Literal["cost", "added-mass", "worst-response", "stiffness", "damping", "separation"], ...] = ()
+    map: tuple[Name, ...] = ()
+    starts: int = 12
+    seed: int = 1
+    front_points: int = 12
+    specification: bool = True
+
+    @field_validator("unknown")
+    @classmethod
+    def _some(cls, value: tuple[SizingUnknown, ...]) -> tuple[SizingUnknown, ...]:
+        if not value:
+            raise refuse("[]", "at least one [[sizing.unknown]]")
+        return value
+
+    @model_validator(mode="after")
+    def _one_goal(self) -> "Sizing":
+        if (self.minimise is None) == (self.maximise is None):
+            found = "both" if self.minimise is not None else "neither"
+            raise refuse(found, 'exactly one of "minimise" and "maximise"')
+        titles = [unknown.title for unknown in self.unknown]
+        for title in titles:
+            if titles.count(title) > 1:
+                raise refuse(title, "each unknown once", at="unknown")
+        if self.map and len(self.map) != 2:
+            raise refuse(list(self.map), "the names of two unknowns", at="map")
+        for name in self.map:
+            if name not in titles:
+                raise refuse(name, "an unknown: " + ", ".join(titles), at="map")
+        if self.trade and (not 2 <= len(self.trade) <= 3 or len(set(self.trade)) != len(self.trade)):
+            raise refuse(list(self.trade), "two or three different objectives", at="trade")
+        for key in ("starts", "front_points"):
+            if getattr(self, key) < 1:
+                raise refuse(str(getattr(self, key)), "a whole number of 1 or more", at=key)
+        return self
+
+    @property
+    def goal(self) -> str:
+        """The objective by name; `maximise` and `minimise` may share one."""
+        return str(self.minimise or self.maximise)
+
+    @property
+    def sense(self) -> float:
+        """1 where less is better, -1 where more is."""
+        return 1.0 if self.minimise is not None else -1.0

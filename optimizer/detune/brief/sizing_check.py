@@ -1,0 +1,100 @@
+"""Checks between `[sizing]` and the rest of the brief."""
+
+from collections.abc import Iterable
+
+from detune.brief.brief import Brief
+from detune.brief.finding import Finding, Path
+from detune.brief.sizing import MadePart, Sizing, SizingUnknown
+from detune.brief.statement import unit_direction
+from detune.ground.errors import nearest_name
+
+
+def sizing_checked(brief: Brief) -> list[Finding]:
+    """Return every fault of the sizing table against machine, stations and ballast."""
+    sizing = brief.sizing
+    if sizing is None:
+        return []
+    findings: list[Finding] = []
+    for index, unknown in enumerate(sizing.unknown):
+        findings += _names(brief, ("sizing", "unknown", index), unknown)
+    for index, made in enumerate(sizing.made):
+        if made.group not in brief.groups:
+            path: Path = ("sizing", "made", index, "group")
+            findings.append(_unknown_name(path, made.group, brief.groups, "a group of stations"))
+    for group in brief.groups:
+        findings += _group(brief, sizing, group)
+    if brief.ballast is None:
+        wants = [f'"{name}"' for name in (sizing.goal, *sizing.trade) if name == "added-mass"]
+        if wants:
+            expected = "a [ballast] table and a ballast unknown, without which no mass is added"
+            findings.append(Finding(("sizing",), "added-mass", expected))
+    return findings
+
+
+def _unknown_name(path: Path, name: str, known: Iterable[str], what: str) -> Finding:
+    names = list(known)
+    listed = ", ".join(f'"{each}"' for each in names) or "none is stated"
+    return Finding(path, name, f"the name of {what} ({listed})", nearest_name(name, names))
+
+
+def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
+    findings = []
+    if unknown.group is not None and unknown.group not in brief.groups:
+        findings.append(_unknown_name((*path, "group"), unknown.group, brief.groups, "a group of stations"))
+    bodies = [body.name for body in brief.bodies]
+    if unknown.body is not None and unknown.body not in bodies:
+        findings.append(_unknown_name((*path, "body"), unknown.body, bodies, "a body"))
+    stations = [station.name for station in brief.stations]
+    for index, name in enumerate(unknown.stations):
+        if name not in stations:
+            findings.append(_unknown_name((*path, "stations", index), name, stations, "a station"))
+    if unknown.kind == "ballast" and brief.ballast is None:
+        expected = "a [ballast] table with its position, size and cost_per_kg"
+        findings.append(Finding((*path, "kind"), "ballast", expected))
+    if unknown.kind == "absorber-mass" and unknown.body in bodies:
+        body = next(body for body in brief.bodies if body.name == unknown.body)
+        if body.mass is None:
+            expected = 'an absorber body that states its "mass", which is then varied'
+            findings.append(Finding((*path, "body"), body.name, expected))
+    return findings
+
+
+def _group(brief: Brief, sizing: Sizing, group: str) -> list[Finding]:
+    """A group of parts needs its stiffness, its damping, and a lateral ratio where it can move sideways."""
+    own = {unknown.kind for unknown in sizing.unknown if unknown.group == group}
+    axes = {unknown.axis for unknown in sizing.unknown if unknown.group == group and unknown.kind == "stiffness"}
+    index, made = next(
+        ((i, m) for i, m in enumerate(sizing.made) if m.group == group), (len(sizing.made), None)
+    )
+    if made is None:
+        expected = f'a [[sizing.made]] table for group "{group}", which says what its parts are like'
+        return [Finding(("sizing",), "", expected)]
+    path: Path = ("sizing", "made", index)
+    findings = _stated_once(path, made, own, axes)
+    vertical = all(freedom == "z" for body in brief.bodies for freedom in body.free)
+    upright = all(abs(unit_direction(s.axial)[2]) == 1.0 for s in brief.stations if s.group == group)
+    sideways = "lateral" in axes or {"x", "y"} <= axes
+    if not (vertical and upright) and made.lateral_ratio is None and not sideways:
+        expected = '"lateral_ratio", or lateral stiffness as an unknown: this machine moves sideways as well'
+        findings.append(Finding(path, group, expected))
+    return findings
+
+
+def _stated_once(path: Path, made: MadePart, own: set[str], axes: set[str | None]) -> list[Finding]:
+    findings = []
+    sought = "axial" in axes or "absorber-tuning" in own
+    if sought == (made.stiffness is not None):
+        expected = (
+            f'the axial stiffness of group "{made.group}" once: as an unknown, or as "stiffness" here'
+        )
+        findings.append(Finding((*path, "stiffness"), "both" if sought else "neither", expected))
+    viscous = bool(own & {"viscous", "absorber-damping"})
+    damped = "loss-factor" in own or viscous
+    stated = made.loss_factor is not None or made.viscous is not None
+    if not damped and not stated:
+        expected = f'the damping of group "{made.group}": an unknown, "loss_factor" or "viscous" (zero is an answer)'
+        findings.append(Finding(path, "no damping", expected))
+    for key, sought in (("loss_factor", "loss-factor" in own), ("viscous", viscous)):
+        if sought and getattr(made, key) is not None:
+            findings.append(Finding((*path, key), key, f'no "{key}" here: it is an unknown'))
+    return findings

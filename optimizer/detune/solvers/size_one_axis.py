@@ -1,0 +1,158 @@
+"""Sizing one axis exactly: every feasible branch with its best design, the global best first."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.brief import Brief
+from detune.problem.build import Problem
+from detune.sizing.made_parts import sizing_of
+from detune.sizing.one_axis import OneAxisOutcome, SizedDesign, solve_one_axis
+from detune.sizing.statement import OneAxisProblem, ResponseLimit
+from detune.solvers.one_axis_statement import OneAxis, one_axis, why_not_one_axis
+
+Floats = NDArray[np.float64]
+# The design returned stands this far (relative) inside its limits, so that rounding does not decide.
+ROOM = 2e-6
+# Levels of the least worst response are bisected to this relative width.
+LEVEL = 1e-9
+
+
+@dataclass(frozen=True)
+class SizedBranch:
+    """One disjoint feasible region: its name, stiffness interval (N/m, one part), best values (u,) and objective.
+
+    `values` stand ROOM inside the limits; `objective` is the exact optimum on them.
+    """
+
+    name: str
+    stiffness: tuple[float, float]
+    values: Floats
+    objective: float
+    natural_frequency: float
+    tight: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class OneAxisSizing:
+    """All branches, global best first, and what the one-axis problem leaves to the assessor (`relaxed`).
+
+    `bound` is proven: no design within the bounds does better. `gap` is its distance to the best branch.
+    """
+
+    statement: OneAxis
+    branches: tuple[SizedBranch, ...]
+    bound: float
+    gap: float
+
+
+def solve(brief: Brief, problem: Problem) -> OneAxisSizing | str:
+    """The exact answer, or why the brief is no one-axis problem."""
+    why = why_not_one_axis(brief)
+    if why is not None:
+        return why
+    statement = one_axis(brief, problem)
+    if sizing_of(brief).goal == "worst-response":
+        level, outcome = least_level(statement.problem)
+        inside = solve_one_axis(with_room(at_level(statement.problem, level * (1.0 + 2.0 * ROOM))))
+        return _told(brief, statement, outcome, inside, level)
+    outcome = solve_one_axis(statement.problem)
+    return _told(brief, statement, outcome, solve_one_axis(with_room(statement.problem)), None)
+
+
+def with_room(problem: OneAxisProblem) -> OneAxisProblem:
+    """The problem with every limit tightened by ROOM."""
+    sag = problem.sag
+    if sag is not None:
+        sag = replace(sag, most=sag.most * (1.0 - ROOM), least=sag.least * (1.0 + ROOM))
+    separation = problem.separation
+    if separation is not None:
+        separation += 2.0 * ROOM
+    return replace(at_level(problem, 1.0 - ROOM), sag=sag, separation=separation)
+
+
+def at_level(problem: OneAxisProblem, level: float) -> OneAxisProblem:
+    """The problem with every response limit multiplied by `level`."""
+    return replace(problem, limits=tuple(_relaxed(limit, level) for limit in problem.limits))
+
+
+def _relaxed(limit: ResponseLimit, level: float) -> ResponseLimit:
+    return replace(limit, limit=limit.limit * level)
+
+
+def least_level(problem: OneAxisProblem) -> tuple[float, OneAxisOutcome]:
+    """Least factor on all response limits that leaves a design, and the outcome just above it (bisection, exact).
+
+    A feasible level stays feasible when it is raised, so the bracket holds the global least worst ratio.
+    """
+    high, low = 1.0, 0.0
+    outcome = solve_one_axis(at_level(problem, high))
+    while not outcome.branches and high < 1e9:
+        low, high = high, 4.0 * high
+        outcome = solve_one_axis(at_level(problem, high))
+    while high - low > LEVEL * high and outcome.branches:
+        middle = 0.5 * (low + high) if low > 0.0 else 0.25 * high
+        tried = solve_one_axis(at_level(problem, middle))
+        if tried.branches:
+            high, outcome = middle, tried
+        else:
+            low = middle
+        if high < 1e-9:
+            break
+    return high, outcome
+
+
+def values_of(brief: Brief, pieces: int, design: SizedDesign) -> Floats:
+    """The unknowns (u,) of the brief at a one-axis design."""
+    given = {
+        "stiffness": design.stiffness / pieces,
+        "viscous": design.damping / pieces,
+        "loss-factor": design.damping,
+        "ballast": design.ballast,
+    }
+    unknowns = sizing_of(brief).unknown
+    return np.array([np.clip(given[unknown.kind], *unknown.bounds) for unknown in unknowns])
+
+
+def _told(
+    brief: Brief, statement: OneAxis, outcome: OneAxisOutcome, inside: OneAxisOutcome, level: float | None
+) -> OneAxisSizing:
+    nearby = {branch.name: branch.best for branch in inside.branches}
+    branches = []
+    constant = constant_cost(brief) if sizing_of(brief).goal == "cost" else 0.0
+    for branch in outcome.branches:
+        best = branch.best
+        value = best.objective + constant if level is None else level
+        low, high = branch.stiffness_interval
+        branches.append(
+            SizedBranch(
+                name=branch.name,
+                stiffness=(low / statement.pieces, high / statement.pieces),
+                values=values_of(brief, statement.pieces, nearby.get(branch.name, best)),
+                objective=value,
+                natural_frequency=best.natural_frequency,
+                tight=best.tight,
+            )
+        )
+    bound = outcome.bound + constant if level is None else level
+    gap = outcome.gap if level is None else LEVEL * level
+    return OneAxisSizing(statement, tuple(branches), bound, gap)
+
+
+def constant_cost(brief: Brief) -> float:
+    """What the parts cost whatever their stiffness and damping, in the cost of a one-axis problem."""
+    from detune.sizing.made_parts import made_table
+
+    made = made_table(brief, brief.groups[0])
+    pieces = sum(station.parallel for station in brief.stations)
+    known = {unknown.kind for unknown in sizing_of(brief).unknown}
+    fixed = made.cost
+    # A fixed damping of the other kind is no unknown of the one-axis problem.
+    if "viscous" in known or made.viscous is not None:
+        fixed += made.cost_per_loss_factor * (made.loss_factor or 0.0)
+    elif made.viscous:
+        fixed += made.cost_per_damping * made.viscous
+    return pieces * fixed
