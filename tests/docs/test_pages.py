@@ -156,3 +156,21 @@ def test_the_lists_of_the_catalog_page(tmp_path: Path) -> None:
     assert plum.loss_factor[2] == 1 / 8
     assert plum.pulls
     assert Choice.model_validate(choice["choice"][0], context={"from_file": True}).group == "feet"
+
+
+# What a brief, the summary, the report and the result folder say.
+WORDS = """brief, machine, body, station, group, part, catalog, condition, forcing, allowable, scatter, design, claim,
+assessment, margin, separation, front, proof record, excitation interval, lower bound, answer, closest design,
+least margin, tightest, assumed, participation, amplification, exempt, resultant, sag, tilt, uplift, stability, ballast,
+objective, transient, noise, tone, passage, withdrawn, second opinion, bounded search, enumeration, shim,
+installed height, caution, state, supremum, transmissibility, travel, settling time"""
+
+
+def test_words_have_their_line() -> None:
+    heads = [
+        head for head in re.findall(r"^\| ([^|]+) \| ", text_of("words.md"), re.MULTILINE) if head != "word"
+    ]
+    assert len(heads) == len(set(heads)), "one word for one thing"
+    told = {word.strip() for head in heads for word in head.split(",")}
+    missing = {word.strip() for word in WORDS.replace("\n", " ").split(",")} - told
+    assert not missing

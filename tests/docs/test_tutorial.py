@@ -92,6 +92,11 @@ def test_the_study_of_the_page_its_files_and_heights(desk: Path, capsys: pytest.
     text = PAGE.read_text(encoding="utf-8")
     for name in re.findall(r"`([\w-]+\.(?:csv|json|html))`", text):
         assert (folder / name).is_file() or (desk / name).is_file(), name
+    report = (folder / "report.html").read_text(encoding="utf-8")
+    sections = re.findall(r"^\d\. \*([^*]+)\*:", text, re.MULTILINE)
+    assert len(sections) == 5
+    for section in sections:
+        assert f"<h2>{section}" in report
     heads, *rows = (folder / "stations.csv").read_text(encoding="utf-8").splitlines()
     place = heads.split(",").index("installed height [m]")
     heights = {round(1e3 * float(row.split(",")[place]), 1) for row in rows}

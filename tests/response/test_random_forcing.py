@@ -17,6 +17,8 @@ from detune.brief.allowable import Acceleration, Allowable, Displacement, MountD
 from detune.brief.brief import Brief
 from detune.brief.forcing import RandomBaseMotion, RandomForce
 from detune.parts.kinds.mount import Mount
+from detune.problem.build import build
+from detune.response.designs import Designs
 
 _spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
 assert _spec is not None and _spec.loader is not None
@@ -188,6 +190,23 @@ def test_independent_noises_add_in_power_and_tones_to_the_extreme() -> None:
         assert mixed == pytest.approx(float(combine(alone, noise)), rel=1e-4)
 
 
+def test_an_undamped_mode_under_noise_meets_no_limit() -> None:
+    # Among damped designs one without damping has no variance; the others keep theirs.
+    limit = acceleration()
+    brief = machines.one_axis(10.0, flat_motion(0.04, 1.0, 400.0)).model_copy(update={"allowables": (limit,)})
+    parts = [
+        machines.mount(f"p{i}", k=10.0 * (TWO_PI * 20.0) ** 2, loss=loss) for i, loss in enumerate([0.1, 0.0, 0.2])
+    ]
+    problem = build(brief, {"list": machines.catalog(*parts)})
+    designs = Designs(np.arange(3)[:, None].astype(np.intp), np.zeros(3, dtype=np.intp))
+    margins = machines.batch_margins(problem, designs)[(limit.quantity(), "P", "running")]
+    assert margins[1] == pytest.approx(-1.0)
+    for index in (0, 2):
+        value = machines.value(machines.assessed(brief, parts[index]), "acceleration")
+        assert limit.limit / (1.0 + margins[index]) == pytest.approx(value, rel=1e-4)
+    assert machines.value(machines.assessed(brief, parts[1]), "acceleration") > limit.limit
+
+
 @pytest.mark.parametrize("seed", range(4))
 @pytest.mark.parametrize("viscous", [False, True])
 def test_six_axes_batch_equals_assessor(seed: int, viscous: bool) -> None:
@@ -215,9 +234,6 @@ def test_six_axes_batch_equals_assessor(seed: int, viscous: bool) -> None:
 
 def assert_batch_equals_assessor(brief: Brief, mounts: tuple[Mount, ...], rel: float = 1e-3) -> None:
     """Every margin of the assessment is that of the batch evaluation."""
-    from detune.problem.build import build
-    from detune.response.designs import Designs
-
     problem = build(brief, {"list": machines.catalog(*mounts)})
     parts = np.array(
         [

@@ -10,6 +10,7 @@ from detune.brief.condition import Condition
 from detune.brief.floor import Floor
 from detune.brief.forcing import Forcing
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
+from detune.brief.scatter import Scatter
 from detune.brief.sizing import Sizing
 from detune.brief.state import State
 from detune.brief.statement import Name, Statement, Text
@@ -38,6 +39,7 @@ class Brief(Statement):
     ballast: Ballast | None = None
     objectives: Objectives = Objectives()
     sizing: Sizing | None = None
+    scatter: Scatter | None = None
     folder: Path = Path()
     file: Text = "brief from Python"
 

@@ -29,19 +29,19 @@ class DataFileFault(ValueError):
 
 @dataclass(frozen=True, eq=False)
 class DataTable:
-    """Columns (N,) in SI by name, and the line (N,) of the file each row stands in."""
+    """Columns (N,) in SI by name, as they are written, and the line (N,) of the file each row stands in."""
 
     file: str
     columns: Mapping[str, Floats]
+    written: Mapping[str, tuple[str, ...]]
     line: NDArray[np.int64]
 
     def refuse_rows(self, wrong: NDArray[np.bool_], column: str, expected: str) -> None:
         """Raise DataFileFault at the first row where `wrong` (N,) holds."""
         if np.any(wrong):
             row = int(np.argmax(wrong))
-            value = float(self.columns[column][row])
             raise DataFileFault(
-                f"{expected}, but line {self.line[row]} of {self.file} has {column} {value:g} (SI)"
+                f'{expected}, but line {self.line[row]} of {self.file} has {column} "{self.written[column][row]}"'
             )
 
     def refuse_falling(self, column: str) -> None:
@@ -124,7 +124,8 @@ def read_table(
         + scales[name][1]
         for name, index in place.items()
     }
-    return DataTable(file, columns, np.array([line for line, _ in rows]))
+    written = {name: tuple(cells[index] for _, cells in rows) for name, index in place.items()}
+    return DataTable(file, columns, written, np.array([line for line, _ in rows]))
 
 
 def _cells(path: Path, file: str) -> tuple[tuple[int, list[str]], list[tuple[int, list[str]]]]:

@@ -123,7 +123,8 @@ def _bands(brief: Brief, path: Path, allowable: BandAllowable) -> list[Finding]:
             excited = excited or any(first <= high and last >= low for first, last in reach)
     if excited or not brief.conditions:
         return []
-    expected = f"an excitation within the bands of the curve, {low:.3g} to {high:.4g} Hz; outside them nothing is judged"
+    reach_of = f"{low:.3g} to {high:.4g} Hz"
+    expected = f"an excitation within the bands of the curve, {reach_of}; outside them nothing is judged"
     return [Finding(path, allowable.kind, expected, depends=("condition", "forcing"))]
 
 

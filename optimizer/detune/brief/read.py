@@ -16,6 +16,7 @@ from detune.brief.cross_check import cross_check
 from detune.brief.finding import Finding
 from detune.brief.floor import Floor
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
+from detune.brief.scatter import Scatter
 from detune.brief.sizing import Sizing
 from detune.brief.state import State
 from detune.brief.statement import Statement, describe
@@ -29,6 +30,7 @@ SINGLE: dict[str, type[Statement]] = {
     "objectives": Objectives,
     "structure": Structure,
     "sizing": Sizing,
+    "scatter": Scatter,
 }
 REPEATED: dict[str, type[Statement]] = {
     "body": Body,

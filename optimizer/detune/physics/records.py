@@ -13,7 +13,14 @@ CLOCK_TOLERANCE = 0.01
 
 
 class RecordFault(ValueError):
-    """A record has a gap, a value that is no number, or is too short for what is asked of it."""
+    """A record has a gap, a value that is no number, or is too short for what is asked of it.
+
+    row: of the fault, counted from 1, where one row is at fault.
+    """
+
+    def __init__(self, told: str, row: int | None = None) -> None:
+        super().__init__(told)
+        self.row = row
 
 
 def sample_rate(time: ArrayLike) -> float:
@@ -32,7 +39,7 @@ def sample_rate(time: ArrayLike) -> float:
     off = np.abs(step - usual) > allowed
     if usual <= 0.0 or np.any(off):
         row = int(np.argmax(off)) + 2
-        raise RecordFault(f"time stamps are not evenly spaced: row {row} at {stamp[row - 1]:g} s")
+        raise RecordFault(f"time stamps are not evenly spaced: row {row} at {stamp[row - 1]:g} s", row)
     return float((stamp.size - 1) / (stamp[-1] - stamp[0]))
 
 

@@ -78,8 +78,8 @@ def box_inertia(mass: ArrayLike, size: ArrayLike) -> FloatArray:
 def cylinder_inertia(mass: ArrayLike, radius: ArrayLike, length: ArrayLike, axis: int) -> FloatArray:
     """Inertia about the centre of a uniform solid cylinder.
 
-    m R^2/2 about its axis, m (3 R^2 + L^2)/12 across. Shapes: mass, radius, length (...) in kg, m, m; axis 0, 1 or 2 for a cylinder along x, y or z
-    -> (..., 3, 3) in kg m2. ValueError for another axis.
+    m R^2/2 about its axis, m (3 R^2 + L^2)/12 across. Shapes: mass, radius, length (...) in kg, m, m;
+    axis 0, 1 or 2 for a cylinder along x, y or z -> (..., 3, 3) in kg m2. ValueError for another axis.
     """
     if axis not in (0, 1, 2):
         raise ValueError(f"a cylinder lies along axis 0, 1 or 2, not {axis}")

@@ -25,6 +25,7 @@ from detune.parts.catalog import Catalog
 from detune.parts.kinds.mount import Mount
 from detune.physics.static import is_supported
 from detune.problem.candidates import Dropped, find_candidates
+from detune.problem.notes import problem_notes
 from detune.problem.requirement import Requirement
 from detune.response.amplitude import deflection_pairs, works_by_amplitude
 from detune.response.bands import BandRows, band_rows
@@ -201,7 +202,7 @@ def _problem(
             (a.exempt_amplification for a in allowables if isinstance(a, Separation)), None
         ),
         dropped=dropped,
-        assumed=(*model.assumed, *demanded_notes, *catalog_notes),
+        assumed=(*model.assumed, *demanded_notes, *problem_notes(brief, mounts), *catalog_notes),
     )
 
 

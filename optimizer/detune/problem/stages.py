@@ -130,7 +130,7 @@ def _screen(group: HarmonicRequirements) -> Stage:
             speeds = np.broadcast_to(speed, (designs.count, len(speed)))
             value = family_amplitude(group.model, designs, dynamic, group.rows, family, speeds)
             sampled = np.maximum(sampled, value.max(axis=-1))
-        return _harmonic_margins(group, designs, sampled)
+        return _harmonic_margins(group, designs, np.where(dynamic.topples, np.inf, sampled))
 
     return Stage("response at sampled speeds", group.requirements, margins, True, 2_000)
 
@@ -143,7 +143,7 @@ def _response(group: HarmonicRequirements, slow_parts: bool) -> Stage:
         else:
             modal = mode_batch(dynamic)
             found = response_values(group.model, designs, dynamic, modal, group.rows, slow_parts)
-        return _harmonic_margins(group, designs, found.value)
+        return _harmonic_margins(group, designs, np.where(dynamic.topples, np.inf, found.value))
 
     name = "response over the whole range" if slow_parts else "response without records and passages"
     return Stage(name, group.requirements, margins, not slow_parts, 500 if group.driving is None else 100)
@@ -157,9 +157,10 @@ def _banded(group: BandRequirements) -> Stage:
             return band_ratios(group.model, designs, at, mode_batch(at), group.rows).value
 
         if group.driving is None:
-            return upper_margin(ratios(dynamic), np.array(1.0))
-        worse = worse_of_two_amplitudes(group.model, designs, dynamic, group.driving, ratios)
-        return upper_margin(worse, np.array(1.0))
+            found = ratios(dynamic)
+        else:
+            found = worse_of_two_amplitudes(group.model, designs, dynamic, group.driving, ratios)
+        return upper_margin(np.where(dynamic.topples, np.inf, found), np.array(1.0))
 
     return Stage("response in one-third-octave bands", group.requirements, margins, False, 500)
 

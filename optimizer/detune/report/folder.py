@@ -153,9 +153,16 @@ def _proof(result: Result) -> dict[str, object]:
                         if n
                     }
                     for group, counts in zip(result.problem.model.groups, rule.by_part, strict=True)
-                },
+                }
+                # Whole sets of designs at once are not told apart by part.
+                if rule.by_part
+                else None,
             }
             for rule in record.rules
         ],
+        "failed_in_the_final_test": [
+            {"stage": rule.stage, "rule": rule.rule, "excluded": rule.excluded} for rule in record.tested
+        ],
+        "lower_bound": record.lower_bound,
         "seconds": record.seconds,
     }

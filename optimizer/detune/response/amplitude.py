@@ -80,6 +80,7 @@ def values_at_own_amplitude(
         for amplitude in (np.zeros_like(working.total), working.total):
             at = at_amplitude(dynamic, amplitude)
             part = response_values(model, designs, at, mode_batch(at), rows)
+            settled &= ~at.topples
             frequency = np.where(part.value > value, part.frequency, frequency)
             value = np.maximum(value, part.value)
     else:
@@ -138,7 +139,7 @@ def _source_values(
     if source.families:
         return _over_speed(model, designs, dynamic, source, working.beside(number))
     at = at_amplitude(dynamic, working.total)
-    return response_values(model, designs, at, mode_batch(at), source), np.ones(designs.count, dtype=bool)
+    return response_values(model, designs, at, mode_batch(at), source), ~at.topples
 
 
 def _over_speed(
@@ -185,7 +186,7 @@ def _at_speeds(
         ends = fixed_points(step, start)
         at = at_amplitude(dynamic, ends.value)
         values = np.maximum(values, family_amplitude(model, designs, at, rows, family, speed)[..., 0])
-        found &= ends.settled
+        found &= ends.settled & ~at.topples
     return values, found
 
 

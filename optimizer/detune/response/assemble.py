@@ -13,6 +13,8 @@ from detune.response.working_point import WorkingPoint, working_point
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
+# rad/s: the low end of what a frequency law says.
+STANDING_STILL = 1e-3
 
 
 @dataclass(frozen=True, eq=False)
@@ -95,7 +97,8 @@ class Dynamic:
     """Matrices of D designs, each (D, n, n): mass, dynamic stiffness, hysteretic and viscous part.
 
     The dynamic stiffness is D(w) = K + j H + j w C - w^2 M, and what frequency laws of `parts` add. K contains
-    gravity's geometric stiffness, which `geometric` holds alone.
+    gravity's geometric stiffness, which `geometric` holds alone. A design that would not stand on its dynamic
+    stiffness `topples` (D,): K is then without gravity, and no response of it counts.
     """
 
     mass: Floats
@@ -104,12 +107,18 @@ class Dynamic:
     viscous: Floats
     parts: PartBatch
     geometric: Floats | float
+    topples: NDArray[np.bool_]
 
     def take(self, index: NDArray[np.generic]) -> "Dynamic":
         """Return the matrices of the designs at these indices, or where this mask holds."""
         matrices = (self.mass, self.stiffness, self.hysteretic, self.viscous)
         geometric = self.geometric[index] if isinstance(self.geometric, np.ndarray) else self.geometric
-        return Dynamic(*(matrix[index] for matrix in matrices), parts=self.parts.take(index), geometric=geometric)
+        return Dynamic(
+            *(matrix[index] for matrix in matrices),
+            parts=self.parts.take(index),
+            geometric=geometric,
+            topples=self.topples[index],
+        )
 
     def at(self, omega: Floats) -> Complexes:
         """Return D(w) (D, F, n, n) at omega (D, F) in rad/s."""
@@ -129,7 +138,7 @@ def dynamic_matrices(model: Model, designs: Designs, amplitude: Floats | None = 
     geometric = model.geometric[designs.step] if model.with_gravity_stiffness else 0.0
     if parts.by_station:
         return _by_station(model, designs, parts, geometric)
-    return Dynamic(
+    dynamic = Dynamic(
         mass=model.mass[designs.step],
         stiffness=model.fixed_dynamic
         + geometric
@@ -139,7 +148,23 @@ def dynamic_matrices(model: Model, designs: Designs, amplitude: Floats | None = 
         viscous=model.fixed_viscous + group_sum(model, designs, lambda group: group.arrays.viscous),
         parts=parts,
         geometric=geometric,
+        topples=np.zeros(designs.count, dtype=bool),
     )
+    return _standing(dynamic)
+
+
+def _standing(dynamic: Dynamic) -> Dynamic:
+    """Return the designs with gravity left out of those that would not stand, which are marked."""
+    lowest = dynamic.stiffness
+    if dynamic.parts.with_frequency:
+        lowest = lowest + dynamic.parts.frequency_matrix(np.full((len(lowest), 1), STANDING_STILL))[:, 0].real
+    try:
+        np.linalg.cholesky(lowest)
+    except np.linalg.LinAlgError:
+        topples = np.linalg.eigvalsh(lowest)[:, 0] <= 0.0
+        kept = dynamic.stiffness - np.where(topples[:, None, None], dynamic.geometric, 0.0)
+        return replace(dynamic, stiffness=kept, topples=topples)
+    return dynamic
 
 
 def at_amplitude(dynamic: Dynamic, amplitude: Floats) -> Dynamic:
@@ -159,4 +184,5 @@ def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Flo
         for matrix, values in ((stiffness, k), (hysteretic, k * eta), (viscous, c)):
             scaled = station.parallel * station.factor * values
             matrix += np.einsum("da,ai,aj->dij", scaled, station.rows, station.rows, optimize=True)
-    return Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric)
+    still = np.zeros(designs.count, dtype=bool)
+    return _standing(Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric, still))

@@ -46,10 +46,12 @@ from detune.response.direct_supremum import (
 )
 from detune.response.direct_views import DirectStatic, DirectTone
 from detune.response.margin import window_margin
+from detune.response.standing import toppling
 
 Floats = NDArray[np.float64]
 TWO_PI = 2.0 * np.pi
 BY_ITERATION = "at the amplitude it produces itself, by iteration"
+DOES_NOT_STAND = "the machine does not stand"
 NONE_FOUND = "no amplitude was found that reproduces itself"
 
 
@@ -83,6 +85,7 @@ def assess(brief: Brief, design: Design) -> Assessment:
         modes=_livelier([_mode_rows(each.modes, exempt) for each in found[: len(readings)]]),
         power=tuple(power for each in found for power in _power_rows(each)),
         total_load=float(-installed.machine.dead_load[2 : 6 * len(brief.bodies) : 6].sum()),
+        notes=tuple(note for each in found[:: len(readings)] if (note := toppling(each.static)) is not None),
     )
 
 
@@ -135,7 +138,8 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
         working = working_amplitude(each.machine, condition) if follows_amplitude(each.machine) else None
         judged = _band_rows(each, condition, allowables, working)
         judged += _harmonic_rows(each, condition, allowables, working)
-        rows += judged if working is None else [_at_amplitude(row) for row in judged]
+        judged = judged if working is None else [_at_amplitude(row) for row in judged]
+        rows += [_without_rest(row) for row in judged] if each.machine.topples else judged
     return [_noted(each, row) for row in rows]
 
 
@@ -152,6 +156,12 @@ def _worse(readings: list[list[MarginRow]]) -> list[MarginRow]:
 def _noted(each: _InState, row: MarginRow) -> MarginRow:
     notes = [note for note in (row.note, each.reading) if note]
     return replace(row, note="; ".join(notes))
+
+
+def _without_rest(row: MarginRow) -> MarginRow:
+    # Every response is without bound where the machine falls; a limit of infinity holds all the same.
+    free = row.upper is not None and np.isinf(row.upper)
+    return row if free else replace(row, value=np.inf, margin=-1.0, note=DOES_NOT_STAND)
 
 
 def _at_amplitude(row: MarginRow) -> MarginRow:

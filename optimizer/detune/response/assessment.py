@@ -89,7 +89,10 @@ class PowerRow:
 
 @dataclass(frozen=True)
 class Assessment:
-    """What the exact equations say of one design. Only this may say "meets the brief"."""
+    """What the exact equations say of one design. Only this may say "meets the brief".
+
+    `notes`: sentences that no row says, such as why the machine does not stand.
+    """
 
     design: Design
     meets: bool
@@ -103,6 +106,7 @@ class Assessment:
     modes: tuple[ModeRow, ...]
     power: tuple[PowerRow, ...]
     total_load: float
+    notes: tuple[str, ...] = ()
 
     @property
     def tightest(self) -> MarginRow:

@@ -11,14 +11,14 @@ from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
 from detune.physics import envelope
 from detune.physics.octaves import band_edges, band_index, nominal_centre
-from detune.physics.random_response import variance
+from detune.physics.random_response import QuadratureNotConverged, variance
 from detune.physics.spectra import PowerSpectralDensity, between
 from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
 from detune.response.loads import Family, condition_families
 from detune.response.model import Model
 from detune.response.modes import ModeBatch
-from detune.response.random import NoiseLoad, noise_load
+from detune.response.random import WITHOUT_BOUND, NoiseLoad, noise_load
 from detune.response.views import ToneBatch
 
 Floats = NDArray[np.float64]
@@ -190,5 +190,21 @@ def _noise_bands(
                 rows.append(allowable.observed(view, place) @ np.asarray(allowable.along()))
             return np.stack(rows)
 
-        found.update(zip(entries, variance(transfer, part, centre, width), strict=True))
+        try:
+            squares = variance(transfer, part, centre, width)
+        except QuadratureNotConverged:
+            if designs.count > 1:
+                return _in_halves(model, designs, dynamic, modal, pairs, noise)
+            squares = np.full((len(entries), 1), WITHOUT_BOUND)
+        found.update(zip(entries, squares, strict=True))
     return found
+
+
+def _in_halves(
+    model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, pairs: Pairs, noise: NoiseLoad
+) -> dict[Entry, Floats]:
+    """Halve the batch until a design whose undamped mode the noise excites stands alone."""
+    halves = np.array_split(np.arange(designs.count), 2)
+    taken = ((designs.take(half), dynamic.take(half), modal.take(half)) for half in halves)
+    first, second = (_noise_bands(model, *some, pairs, noise) for some in taken)
+    return {entry: np.concatenate([first[entry], second[entry]]) for entry in first}

@@ -122,6 +122,9 @@ class DirectMachine:
         """Return the same machine, at rest as it is, with its parts at another amplitude (S,) or (S, F) in m."""
         moved = copy(self)
         object.__setattr__(moved, "amplitude", amplitude)
+        if amplitude.ndim == 1:
+            for asked in ("topples", "dynamic_gravity"):
+                moved.__dict__.pop(asked, None)
         return moved
 
     def mount(self, station: Station) -> Mount:
@@ -191,7 +194,7 @@ class DirectMachine:
         total[modal, modal] += 1.0
         return total
 
-    def stiffness(self, omega: Floats | None) -> Complexes:
+    def stiffness(self, omega: Floats | None, with_gravity: bool = True) -> Complexes:
         """Static stiffness (N, N) where omega is None, else complex dynamic stiffness (F, N, N)."""
         shape = (len(self.free), len(self.free))
         total = np.zeros(shape if omega is None else (len(omega), *shape), dtype=complex)
@@ -200,7 +203,7 @@ class DirectMachine:
             local = self.share(station) * self.part(station, omega)
             turned = np.einsum("ia,...a,ja->...ij", axes, local, axes)
             total += rows.T @ turned @ rows
-        if omega is not None:
+        if omega is not None and with_gravity:
             total += self.dynamic_gravity
         for connection in self.brief.connections:
             position = np.array(connection.position)
@@ -346,10 +349,22 @@ class DirectMachine:
 
     @cached_property
     def dynamic_gravity(self) -> Floats:
-        """Gravity's geometric stiffness as it stands in the dynamic stiffness (N, N): zero where the brief says so."""
-        if not self.brief.gravity_stiffness:
+        """Gravity's geometric stiffness as it stands in the dynamic stiffness (N, N).
+
+        Zero where the brief says so, and for a machine that topples, whose responses count for nothing.
+        """
+        if not self.brief.gravity_stiffness or self.topples:
             return np.zeros((self.size, self.size))
         return self.gravity_stiffness()
+
+    @cached_property
+    def topples(self) -> bool:
+        """Whether the machine would not stand on its dynamic stiffness."""
+        mesh = np.ix_(self.free, self.free)
+        own = self.stiffness(np.array([1e-3]), with_gravity=False)[0].real[mesh]
+        if self.brief.gravity_stiffness:
+            own = own + self.gravity_stiffness()[mesh]
+        return bool(np.linalg.eigvalsh(own)[0] <= 0.0)
 
     def tone_load(self, tone: Tone, omega: Floats) -> tuple[Complexes, Complexes]:
         """Load (F, N) of a tone and the floor motion (F, N) it prescribes or would make freely."""

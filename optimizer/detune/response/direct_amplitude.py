@@ -177,7 +177,7 @@ def _values(
         value = direct_noise_values(at, found, source.noises, pairs)
     else:
         value = direct_transient_values(at, found, source.transients, pairs)
-    return Supremum(value, np.full(len(pairs), np.nan)), True
+    return Supremum(value, np.full(len(pairs), np.nan)), not at.topples
 
 
 def _over_speed(

@@ -1,5 +1,8 @@
 """The assessor's one-third-octave band values of one design."""
 
+from functools import partial
+from itertools import pairwise
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -60,18 +63,21 @@ def _tone_rms(
         {low, high, *(edge / order for edge in edges for order in orders if low < edge / order < high)}
     )
     largest = 0.0
-    for start, end in zip(cuts[:-1], cuts[1:], strict=True):
+    for start, end in pairwise(cuts):
         middle = 0.5 * (start + end)
         inside = [each for each in sets if edges[0] <= each[0].order * middle <= edges[1]]
         if inside:
-            part = supremum(
-                lambda speed, inside=inside: _rms(machine, inside, allowable, place, speed)[None],
-                (start, end),
-                found.poles,
-                sorted({each[0].order for each in inside}),
-            )
+            found_orders = sorted({each[0].order for each in inside})
+            amplitude = partial(_rows, machine, inside, allowable, place)
+            part = supremum(amplitude, (start, end), found.poles, found_orders)
             largest = max(largest, float(part.value[0]))
     return largest
+
+
+def _rows(
+    machine: DirectMachine, sets: list[tuple[Tone, ...]], allowable: BandAllowable, place: str, speed: Floats
+) -> Floats:
+    return _rms(machine, sets, allowable, place, speed)[None]
 
 
 def _rms(
@@ -95,13 +101,13 @@ def _noise_square(
     place: str,
     band: int,
 ) -> float:
-    """Return the mean square of a noise's response in a band, by the trapezoidal rule on each segment of its density."""
+    """Return the mean square of a noise's response in a band, by the trapezoidal rule on each segment."""
     edges = [float(edge) for edge in band_edges(band)]
     points = noise.spectrum.frequency
     tone = unit_tone(noise)
     total = 0.0
-    for start, end in zip(points[:-1], points[1:], strict=True):
-        low, high = max(float(start), edges[0]), min(float(end), edges[1])
+    for start, end in pairwise(points.tolist()):
+        low, high = max(start, edges[0]), min(end, edges[1])
         if high <= low:
             continue
         frequency = np.union1d(mesh(found, low, high), [low, high])

@@ -5,6 +5,7 @@ In time a loss factor stands as the viscous damping of each mode's own loss fact
 
 from dataclasses import dataclass
 from itertools import pairwise
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,15 +19,18 @@ from detune.physics.pulses import pulse_value
 from detune.physics.simulation import simulate
 from detune.response.direct import FLOOR, DirectMachine
 from detune.response.direct_modes import DirectModes
+from detune.response.direct_progressive import curved_parts, simulated_on_curves, unloaded
 from detune.response.direct_views import station_named
 from detune.response.transient import rest_time
 
 Floats = NDArray[np.float64]
+Responses = NDArray[Any]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
 SAMPLES_PER_CYCLE = 160.0
 STEPS_PER_PIECE = 400
 SHORTEST = 1e-9
+RATES = ("displacement", "velocity", "acceleration")
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,51 +38,59 @@ class DirectMotion:
     """One design over time (D = 1): rates (3, T, n) of the free freedoms relative to the floor's free motion.
 
     `lagged` (T, n): velocity of each mode over its own frequency. `floor` (3, T) along `base`. Complex
-    for the envelope of a passage.
+    for the envelope of a passage. On load-deflection curves, `more` (S, T) is one part's axial force beyond its
+    tangent, and `beyond` tells that a part has left its curve.
     """
 
     machine: DirectMachine
     found: DirectModes
-    rates: NDArray[np.generic]
-    lagged: NDArray[np.generic]
+    rates: Responses
+    lagged: Responses
     floor: Floats
     base: Floats
+    more: Floats | None = None
+    beyond: bool = False
 
     def _rows(self, rows: Floats) -> Floats:
         return rows[:, self.machine.free]
 
-    def motion(self, point: str, rate: int = 0) -> NDArray[np.generic]:
+    def motion(self, point: str, rate: int = 0) -> Responses:
         stated = next(p for p in self.machine.brief.points if p.name == point)
         rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
         return (self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
 
-    def floor_motion(self, rate: int = 0) -> NDArray[np.generic]:
+    def floor_motion(self, rate: int = 0) -> Responses:
         rows = np.zeros((3, self.machine.size))
         rows[:, self.machine.floor_axes] = np.eye(3)
         return (self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
 
-    def station_deflection(self, station: str, rate: int = 0) -> NDArray[np.generic]:
+    def station_deflection(self, station: str, rate: int = 0) -> Responses:
         stated = station_named(self.machine, station)
         rows = self.machine.axes(stated).T @ self._rows(self.machine.across(stated))
         return (self.rates[rate] @ rows.T)[None]
 
-    def station_force(self, station: str) -> NDArray[np.generic]:
+    def station_force(self, station: str) -> Responses:
         return self._force(station_named(self.machine, station))[None]
 
     def _count(self, station: Station) -> float:
         return self.machine.share(station) / self.machine.factor(station)
 
-    def _force(self, station: Station) -> NDArray[np.generic]:
+    def _force(self, station: Station) -> Responses:
         # Each mode moves the part at the stiffness of the mode's own frequency; for constant stiffness and a
         # dashpot the sum over modes is k times the deflection and c times its rate.
         omega = TWO_PI * self.found.frequency
         stiffness = self.machine.factor(station) * self.machine.part(station, omega)
-        across = (self.machine.axes(station).T @ self._rows(self.machine.across(station)) @ self.found.shapes).T
+        across = (
+            self.machine.axes(station).T @ self._rows(self.machine.across(station)) @ self.found.shapes
+        ).T
         carried = self.found.mass @ self.found.shapes
         moved, fast = self.rates[0] @ carried, self.rates[1] @ carried / omega
-        return moved @ (across * stiffness.real) + fast @ (across * stiffness.imag)
+        force = moved @ (across * stiffness.real) + fast @ (across * stiffness.imag)
+        if self.more is not None:
+            force[:, 2] += self.more[self.machine.brief.stations.index(station)]
+        return force
 
-    def total_force(self, surface: str) -> NDArray[np.generic]:
+    def total_force(self, surface: str) -> Responses:
         brief, floor = self.machine.brief, self.machine.floor
         total = np.zeros((len(self.lagged), 3), dtype=self.rates.dtype)
         for station in brief.stations:
@@ -87,14 +99,20 @@ class DirectMotion:
         for c in brief.connections:
             if c.to == FLOOR:
                 position = np.array(c.position)
-                rows = self.machine.place(body_of(brief, c.on), position) - self.machine.place(FLOOR, position)
-                moved, fast, lagged = (x @ self._rows(rows).T for x in (self.rates[0], self.rates[1], self.lagged))
+                rows = self.machine.place(body_of(brief, c.on), position) - self.machine.place(
+                    FLOOR, position
+                )
+                moved, fast, lagged = (
+                    x @ self._rows(rows).T for x in (self.rates[0], self.rates[1], self.lagged)
+                )
                 stiffness = np.array(c.stiffness)
                 total = total + stiffness * moved + stiffness * (c.loss_factor or 0.0) * lagged
                 total = total + np.array(c.viscous or (0.0, 0.0, 0.0)) * fast
         if surface == "ground" and floor is not None:
             column = int(np.flatnonzero(np.flatnonzero(self.machine.free) == self.machine.floor_vertical)[0])
-            total[:, 2] = floor.stiffness * self.rates[0][:, column] + floor.damping * self.rates[1][:, column]
+            total[:, 2] = (
+                floor.stiffness * self.rates[0][:, column] + floor.damping * self.rates[1][:, column]
+            )
         return total[None]
 
 
@@ -120,6 +138,10 @@ def direct_transient_values(
     total = np.zeros(len(pairs))
     for transient in transients:
         views = _transient_motion(machine, found, transient)
+        if any(view.beyond for view, _ in views):
+            # A part off its curve has met its stop: nothing is known of what it does there.
+            total[:] = np.inf
+            continue
         duration = sum(step * (len(view.lagged) - 1) for view, step in views)
         if transient.record is not None:
             duration = transient.step * (len(transient.record) - 1)
@@ -148,22 +170,35 @@ def _transient_motion(
     follow = lead[machine.free]
     load = pattern[machine.free] - found.mass @ follow
     state = np.zeros(2 * len(load))
+    resting = machine.rest is None or bool(np.all(np.isfinite(machine.rest.q)))
+    curved = curved_parts(machine) if resting else ()
     if transient.weight_acts:
-        state[: len(load)] = -np.linalg.solve(found.stiffness, machine.dead_load[machine.free])
+        weight = machine.dead_load[machine.free]
+        state[: len(load)] = (
+            unloaded(found, curved, weight) if curved else -np.linalg.solve(found.stiffness, weight)
+        )
     state[len(load) :] = -transient.velocity * follow
     floor = np.array([0.0, 0.0 if transient.weight_acts else transient.velocity])
     if transient.record is not None:
         # The floor's velocity at the start is unknown; over the record its mean is taken as zero.
         floor[1] = -float(np.mean(_integrated(transient.record, transient.step, np.zeros(2))[1]))
     views = []
+    more, beyond = None, not resting
     for step, values in _sampled(transient, found):
-        rates = _simulated(found, load, values, step, state)
+        if curved and not beyond:
+            rates, more, beyond = simulated_on_curves(
+                found, curved, modal_damping(found), load, values, step, state, len(machine.brief.stations)
+            )
+        else:
+            rates = _simulated(found, load, values, step, state)
         state = np.concatenate([rates[0, -1], rates[1, -1]])
         free = np.zeros((3, len(values)))
         if transient.base is not None:
             free = _integrated(values, step, floor)
             floor = free[:2, -1]
-        views.append((DirectMotion(machine, found, rates, rates[1] @ lagging(found).T, free, base), step))
+        lagged = rates[1] @ lagging(found).T
+        own = None if beyond else more
+        views.append((DirectMotion(machine, found, rates, lagged, free, base, own, beyond), step))
     return views
 
 
@@ -182,7 +217,9 @@ def _sampled(transient: Transient, found: DirectModes) -> list[tuple[float, Floa
     elif transient.record is not None:
         finer = max(1, int(np.ceil(transient.step / (2.0 * longest))))
         time = np.arange((len(transient.record) - 1) * finer + 1) / finer
-        pieces.append((transient.step / finer, np.interp(time, np.arange(len(transient.record)), transient.record)))
+        pieces.append(
+            (transient.step / finer, np.interp(time, np.arange(len(transient.record)), transient.record))
+        )
     rest = rest_time(found.frequency, found.loss_factor)
     return [*pieces, (longest, np.zeros(int(np.ceil(rest / longest)) + 1))]
 
@@ -194,7 +231,9 @@ def _integrated(values: Floats, step: float, start: Floats) -> Floats:
     velocity = start[1] + cumulative_trapezoid(values, dx=step, initial=0.0)
     # The trapezoidal rule misses the third of each step's bend.
     bend = np.append(0.0, np.cumsum(np.diff(values))) * step**2 / 12.0
-    return np.stack([start[0] + cumulative_trapezoid(velocity, dx=step, initial=0.0) - bend, velocity, values])
+    return np.stack(
+        [start[0] + cumulative_trapezoid(velocity, dx=step, initial=0.0) - bend, velocity, values]
+    )
 
 
 def _simulated(found: DirectModes, load: Floats, values: Floats, step: float, state: Floats) -> Floats:
@@ -241,7 +280,10 @@ def direct_passage_values(
             simulate(found.mass, damping, found.stiffness, half, moment[1]) for half in (load.real, load.imag)
         ]
         rates = np.stack(
-            [getattr(parts[0], name) + 1j * getattr(parts[1], name) for name in ("displacement", "velocity", "acceleration")]
+            [
+                getattr(parts[0], name) + 1j * getattr(parts[1], name)
+                for name in ("displacement", "velocity", "acceleration")
+            ]
         )
         lagged = rates[1] @ lagging(found).T
         view = DirectMotion(machine, found, rates, lagged, np.zeros((3, count)), np.zeros(3))

@@ -7,10 +7,13 @@ Floats = NDArray[np.float64]
 
 
 def upper_margin(value: Floats, limit: Floats) -> Floats:
-    """Return limit / value - 1. A value of zero or less has an infinite margin; a limit of zero has -1 if exceeded."""
+    """Return limit / value - 1. A value of zero or less has an infinite margin; a limit of zero has -1 if exceeded.
+
+    A value without bound has -1, except where the limit is infinite, which is none.
+    """
     value, limit = np.broadcast_arrays(np.asarray(value, float), np.asarray(limit, float))
     margin = np.full(value.shape, np.inf)
-    np.divide(limit, value, out=margin, where=value > 0.0)
+    np.divide(limit, value, out=margin, where=(value > 0.0) & ~np.isinf(limit))
     return margin - 1.0
 
 

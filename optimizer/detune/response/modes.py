@@ -22,6 +22,10 @@ class ModeBatch:
     shapes: Floats
     loss_factor: Floats
 
+    def take(self, index: NDArray[np.generic]) -> "ModeBatch":
+        """Return the modes of the designs at these indices, or where this mask holds."""
+        return ModeBatch(self.frequency[index], self.shapes[index], self.loss_factor[index])
+
     def view(self, dynamic: Dynamic, intervals: Sequence[tuple[float, float]]) -> ModeView:
         """Return what a mode allowable looks at. dynamic: the matrices of these designs."""
         with np.errstate(divide="ignore"):

@@ -9,7 +9,7 @@ from detune.brief.allowable import HarmonicAllowable
 from detune.brief.allowable.base import noise_amplitude
 from detune.brief.brief import Brief, body_of
 from detune.brief.forcing import Noise
-from detune.physics.random_response import variance
+from detune.physics.random_response import QuadratureNotConverged, variance
 from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
 from detune.response.loads import Load
@@ -21,6 +21,7 @@ Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
+WITHOUT_BOUND = 1e200
 
 
 @dataclass(frozen=True, eq=False)
@@ -70,7 +71,10 @@ def noise_values(
 def noise_variances(
     model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, pairs: Pairs, each: NoiseLoad
 ) -> Floats:
-    """Return the variance of each row and of its rate (2, R, D); of a resultant, the sum over its axes."""
+    """Return the variance of each row and of its rate (2, R, D); of a resultant, the sum over its axes.
+
+    A design whose undamped mode the noise excites has none; a value that no limit admits stands for it.
+    """
 
     def transfer(omega: Floats) -> Complexes:
         view = ToneBatch(model, designs, dynamic, (each.load,), omega)
@@ -85,7 +89,15 @@ def noise_variances(
 
     centre = TWO_PI * modal.frequency
     width = np.maximum(0.5 * modal.loss_factor, 1e-9) * centre
-    parts = variance(transfer, each.noise.spectrum, centre, width)
+    try:
+        parts = variance(transfer, each.noise.spectrum, centre, width)
+    except QuadratureNotConverged:
+        if designs.count == 1:
+            return np.full((2, len(pairs), 1), WITHOUT_BOUND)
+        halves = np.array_split(np.arange(designs.count), 2)
+        taken = ((designs.take(half), dynamic.take(half), modal.take(half)) for half in halves)
+        found = [noise_variances(model, *some, pairs, each) for some in taken]
+        return np.concatenate(found, axis=2)
     count = len(parts) // 2
     sizes = [1 if allowable.along() is not None else 3 for allowable, _ in pairs]
     starts = np.cumsum([0, *sizes[:-1]])

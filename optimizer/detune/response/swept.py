@@ -19,7 +19,7 @@ from detune.response.designs import Designs
 from detune.response.loads import Family, Load
 from detune.response.model import Model
 from detune.response.modes import ModeBatch
-from detune.response.transient import MotionView, motion_view, one_mode_batch
+from detune.response.transient import MotionView, motion_view
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -66,7 +66,7 @@ def swept_values(
     for index in range(designs.count):
         one = np.array([index])
         stiffness, damping = causal_matrices(dynamic, modal, index)
-        undamped = one_mode_batch(modal, index)
+        undamped = modal.take(one)
         system = System(stiffness, damping, _modes(dynamic.mass[index], damping, stiffness), undamped)
         for passage in passages:
             found = _passage(model, dynamic.take(one), system, pairs, passage)

@@ -80,9 +80,7 @@ def transient_values(
     for index in range(designs.count):
         one = np.array([index])
         for load in loads:
-            views = motion_views(
-                model, designs.take(one), dynamic.take(one), one_mode_batch(modal, index), load
-            )
+            views = motion_views(model, designs.take(one), dynamic.take(one), modal.take(one), load)
             if any(view.beyond for view in views):
                 # A part off its curve has met its stop: nothing is known of what it does there.
                 total[:, index] = np.inf
@@ -90,7 +88,9 @@ def transient_values(
             for row, (allowable, place) in enumerate(pairs):
                 statistic = allowable.statistic()
                 seen = [(allowable.observed(view, place), view.step) for view in views]
-                part = record_amplitude(seen, allowable.along(), statistic, rms_duration(views, load.transient))
+                part = record_amplitude(
+                    seen, allowable.along(), statistic, rms_duration(views, load.transient)
+                )
                 total[row, index] = combine(total[row, index], part[0], statistic)
     return total
 
@@ -102,14 +102,9 @@ def rms_duration(views: Sequence["MotionView"], transient: Transient) -> float:
     return sum(view.step * (len(view.lagged) - 1) for view in views)
 
 
-def one_mode_batch(modal: ModeBatch, index: int) -> ModeBatch:
-    """Return the modes of one design, as a batch of one."""
-    return ModeBatch(modal.frequency[[index]], modal.shapes[[index]], modal.loss_factor[[index]])
-
-
 @dataclass(frozen=True, eq=False)
 class MotionView:
-    """The response of one design over one stretch of time (D = 1, samples `step` s apart), as allowables look at it.
+    """The response of one design (D = 1) over one stretch of time, samples `step` s apart.
 
     `relative` to the floor's free motion, complex where it is the envelope of a passage; `lagged` (T, n) is the velocity of each mode over its
     own frequency, on which loss-factor forces stand; `floor` (3 rates, T) is the free motion along `base`. On
@@ -226,7 +221,15 @@ def motion_views(
     for step, values in stretches(transient, finer(modal.frequency[0], system), modal.loss_factor[0]):
         if system is None or beyond:
             moved = simulate(
-                mass, damping, stiffness, values[:, None], step, pattern[:, None], None, displacement, velocity
+                mass,
+                damping,
+                stiffness,
+                values[:, None],
+                step,
+                pattern[:, None],
+                None,
+                displacement,
+                velocity,
             )
         else:
             moved, more, beyond = system.simulated(values, pattern, step, displacement, velocity)

@@ -53,7 +53,7 @@ class _Picture:
         return np.asarray((np.stack([self._in(x, 0), self._in(y, 1)], axis=-1) - self.low) / self.span)
 
     def outward(self, points: Floats) -> Floats:
-        real = self.low + points * self.span
+        real: Floats = self.low + points * self.span
         for axis in range(2):
             if self.logarithmic[axis]:
                 real[..., axis] = np.exp(real[..., axis])

@@ -125,7 +125,7 @@ class BandLimit(BandAllowable):
         if np.any(np.diff(index) <= 0):
             raise refuse(found, "centre frequencies that rise, each band once", at=at)
         if np.any(limit <= 0.0):
-            raise refuse(found, "limits above zero in every band", at=at)
+            raise refuse(found, "limits above zero in every band", at="file" if self.file else "velocity_rms")
         self._index, self._limit = index, limit
 
     def data_files(self) -> tuple[str, ...]:

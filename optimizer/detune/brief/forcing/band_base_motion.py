@@ -78,6 +78,9 @@ class BandBaseMotion(Forcing):
 
     def _check_bands(self, centre: FloatArray, rms: FloatArray, at: str) -> None:
         found = self.file if at == "file" and self.file is not None else list(centre)
+        if np.any(rms < 0.0):
+            where = "file" if at == "file" else "velocity_rms"
+            raise refuse(found, "rms velocities of zero or more", at=where)
         try:
             spectrum_from_third_octaves(centre, rms)
         except ValueError as error:

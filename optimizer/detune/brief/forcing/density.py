@@ -5,7 +5,7 @@ from itertools import pairwise
 
 from pydantic import ValidationInfo
 
-from detune.brief.data_file import read_named
+from detune.brief.data_file import DataFileFault, read_named
 from detune.brief.statement import refuse
 from detune.physics.spectra import PowerSpectralDensity, differentiated, spectrum_from_slopes
 
@@ -28,7 +28,7 @@ def sloped_density(
         if not 0.0 < before < after:
             raise refuse(list(corners), "corner frequencies above zero that rise", at="corners")
     if len(slopes) != len(corners) - 1:
-        expected = f"{max(len(corners) - 1, 0)} slopes, one between each two corners"
+        expected = f"one slope between each two of the {len(corners)} corners"
         raise refuse(list(slopes), expected, at="slopes")
     if level[1] <= 0.0:
         raise refuse(list(level), "a density above zero", at="level")
@@ -54,8 +54,10 @@ def tabulated_density(info: ValidationInfo, file: str, kinds: Mapping[str, int])
                 wrong = table.line == table.line[row]
                 table.refuse_rows(wrong, "frequency", "a frequency that does not fall from row to row")
         drawn = PowerSpectralDensity(table.columns["frequency"], table.columns[name])
+    except DataFileFault as fault:
+        raise refuse(file, str(fault), at="file") from None
     except ValueError as error:
-        raise refuse(file, f"{_sentence(error)} ({file})", at="file") from None
+        raise refuse(file, f"{_sentence(error)} (rows below the headers of {file})", at="file") from None
     return differentiated(drawn, kinds[name])
 
 
@@ -69,4 +71,5 @@ def one_way(stated: Mapping[str, bool]) -> str:
 
 
 def _sentence(error: ValueError) -> str:
-    return f"a spectrum that can be drawn on log-log paper: {error}"
+    told = str(error).removeprefix("power spectral density: ")
+    return f"a spectrum that can be drawn on log-log paper: {told}"

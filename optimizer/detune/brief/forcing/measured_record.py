@@ -4,10 +4,11 @@ import cmath
 from collections.abc import Mapping
 from typing import ClassVar, Literal
 
+import numpy as np
 from pydantic import PrivateAttr, ValidationInfo, model_validator
 
 from detune.brief.condition import SpeedRange
-from detune.brief.data_file import DataTable, read_named
+from detune.brief.data_file import DataFileFault, DataTable, read_named
 from detune.brief.forcing.base import Forcing, Noise, Tone, Transient
 from detune.brief.forcing.fixed_lines import MOST_LINES, FixedLine, line_tones
 from detune.brief.statement import (
@@ -77,6 +78,8 @@ class MeasuredRecord(Forcing):
         self._check_place()
         try:
             self._read(table)
+        except DataFileFault as fault:
+            raise refuse(self.file, str(fault), at="file") from None
         except ValueError as error:
             raise refuse(self.file, f"a record that can be used: {error} ({self.file})", at="file") from None
         return self
@@ -111,7 +114,11 @@ class MeasuredRecord(Forcing):
         try:
             rate = records.sample_rate(time)
         except records.RecordFault as fault:
-            raise records.RecordFault(f"{fault}; rows are counted below the headers") from None
+            if fault.row is None:
+                raise
+            table.refuse_rows(
+                np.arange(len(time)) == fault.row - 1, "time", "evenly spaced times, without a gap"
+            )
         record = records.checked(table.columns[self._quantity])
         if self.detrend != "none":
             record = records.detrended(record, DEGREE[self.detrend])

@@ -16,6 +16,7 @@ from detune.brief.statement import (
     Mass,
     Name,
     Position,
+    Ratio,
     Unbalance,
     positive,
     refuse,
@@ -43,7 +44,7 @@ class TwoPlaneUnbalance(ShaftForcing):
     grade: BalanceGrade | None = None
     rotor_mass: Mass | None = None
     grade_speed: Frequency | None = None
-    shares: tuple[float, float] | None = None
+    shares: tuple[Ratio, Ratio] | None = None
 
     @model_validator(mode="after")
     def _values(self) -> "TwoPlaneUnbalance":

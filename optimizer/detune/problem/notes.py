@@ -1,0 +1,78 @@
+"""What a problem replaces or approximates for the parts it may choose, in words for the report."""
+
+from collections.abc import Callable, Iterable
+
+from detune.brief.brief import Brief, applies
+from detune.brief.condition import Condition
+from detune.parts.kinds.mount import Mount
+
+NAMED = 4
+
+
+def problem_notes(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> tuple[str, ...]:
+    """Return what is taken in another form than stated, for any part that some group may take."""
+    mounts = tuple(dict.fromkeys(mount for group in candidates for mount in group))
+    return (*_in_time(brief, mounts), *_laws(brief, mounts))
+
+
+def _in_time(brief: Brief, mounts: tuple[Mount, ...]) -> list[str]:
+    lossy = any(any(mount.loss_factor) for mount in mounts) or any(c.loss_factor for c in brief.connections)
+    changing = _named(mounts, lambda m: m.relaxation is not None or m.law_table is not None)
+    notes = []
+    for condition in brief.conditions:
+        if not _calculated_in_time(brief, condition):
+            continue
+        if lossy:
+            notes.append(
+                f'loss-factor damping in condition "{condition.name}" stands as viscous damping of each mode\'s own'
+                " loss factor, as a loss factor is not causal"
+            )
+        if changing:
+            notes.append(
+                f'stiffness over frequency ({changing}) in condition "{condition.name}": each mode keeps the stiffness'
+                " and damping of its own natural frequency"
+            )
+    return notes
+
+
+def _laws(brief: Brief, mounts: tuple[Mount, ...]) -> list[str]:
+    tabled = _named(mounts, lambda m: m.law_table is not None)
+    curved = _named(mounts, lambda m: m.load_curve is not None or m.follows_load)
+    moving = _named(mounts, lambda m: m.amplitude_table is not None)
+    unknown = _named(mounts, lambda m: m.damping_unknown is not None)
+    shocked = any(_transients(brief, condition) for condition in brief.conditions)
+    notes = []
+    if tabled:
+        notes.append(f"table of {tabled}: taken at its end value for natural frequencies outside it")
+    if curved:
+        whole = "; in shocks and records the whole curve counts, and a part that leaves it fails" if shocked else ""
+        notes.append(
+            f"load-deflection curve of {curved}: tones, noise and run-ups see its tangent stiffness at rest{whole}"
+        )
+    if moving:
+        notes.append(
+            f"stiffness over amplitude of {moving}: every response is taken at the amplitude it produces itself, found"
+            " by iteration; natural frequencies and separation at the listed stiffness; ratios to a unit load and band"
+            " limits at the worse of that amplitude and none; beyond the ends of a table its end values hold"
+        )
+    if unknown:
+        notes.append(
+            f"damping of unknown kind ({unknown}): every response is judged with it read as viscous and read as a"
+            " loss factor, and the worse counts"
+        )
+    return notes
+
+
+def _calculated_in_time(brief: Brief, condition: Condition) -> bool:
+    return bool(condition.run_up or condition.coast_down) or _transients(brief, condition)
+
+
+def _transients(brief: Brief, condition: Condition) -> bool:
+    return any(f.transients() for f in brief.forcing if applies(f.conditions, condition.name))
+
+
+def _named(mounts: Iterable[Mount], chosen: Callable[[Mount], bool]) -> str:
+    """Return the names of the mounts that are chosen, the first few of many; empty where there is none."""
+    names = list(dict.fromkeys(mount.base or mount.part for mount in mounts if chosen(mount)))
+    more = f" and {len(names) - NAMED} more" if len(names) > NAMED else ""
+    return ", ".join(names[:NAMED]) + more

@@ -1,0 +1,251 @@
+"""Sizing a study: unknowns to a design made to order, assessed; then the nearest real parts, map, front, specification."""
+
+from __future__ import annotations
+
+import time
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.finding import Finding, faults_without_lines
+from detune.ground.errors import BriefError
+from detune.problem.build import Problem, build
+from detune.response.assess import assess
+from detune.response.assessment import Assessment
+from detune.sizing.made_parts import bounds, made_design, sizing_of
+from detune.solvers import size_many_starts, size_one_axis
+from detune.solvers.size_batch import batch, judge
+from detune.solvers.size_front import SizingFront, one_axis_front
+from detune.solvers.size_many_starts import ManyStarts, start_points
+from detune.solvers.size_map import SizingMap, sizing_map
+from detune.solvers.size_nearest import Nearest, nearest_parts
+from detune.solvers.size_one_axis import OneAxisSizing
+from detune.study.load import Study
+
+Floats = NDArray[np.float64]
+# Points at which it is tried whether an unknown matters to anything.
+TRIED = 6
+
+
+@dataclass(frozen=True)
+class SizedBest:
+    """The best design of one branch or of the local searches: the unknowns (u,), objective and its assessment.
+
+    `bound` is what stopped an unknown at the end of its own range, in words, where nothing else did.
+    """
+
+    name: str
+    values: Floats
+    objective: float
+    assessment: Assessment
+    tight: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class SizingResult:
+    """What a sizing study came to.
+
+    `branches` are all assessed, best first. `exact` holds the one-axis answer, `searches` that of many starts.
+    `worth` says in words what the best is worth; `bound` is a proven bound on the objective, None where there is none.
+    """
+
+    study: Study
+    method: str
+    why_method: str
+    worth: str
+    branches: tuple[SizedBest, ...]
+    bound: float | None
+    exact: OneAxisSizing | None
+    searches: ManyStarts | None
+    nearest: Nearest | None
+    map: SizingMap | None
+    front: SizingFront | None
+    cautions: tuple[str, ...]
+    seconds: float
+
+    @property
+    def answer(self) -> SizedBest | None:
+        """The best design that the assessor says meets the brief, None where there is none."""
+        return next((branch for branch in self.branches if branch.assessment.meets), None)
+
+    @property
+    def exit_code(self) -> int:
+        """0 a design meets the brief, 1 none does."""
+        return 0 if self.answer is not None else 1
+
+
+def size_study(study: Study, drawings: bool = True) -> SizingResult:
+    """Return the result of sizing a study. Raises BriefError where it states no sizing, or one without sense."""
+    started = time.perf_counter()
+    brief = study.brief
+    if brief.sizing is None:
+        expected = "a [sizing] table with its unknowns"
+        raise BriefError(faults_without_lines(brief.file, (Finding(("sizing",), "", expected),)))
+    sizing = brief.sizing
+    cautions = check_sense(study)
+    low, _ = bounds(brief)
+    problem, _ = batch(brief, [made_design(brief, low)])
+    solved = size_one_axis.solve(brief, problem)
+    searches: ManyStarts | None = None
+    exact: OneAxisSizing | None = None
+    if isinstance(solved, str):
+        why = f"{solved}, so the exact one-axis method does not apply"
+        searches = _searched(study, ())
+        branches, worth, bound = _of_searches(study, searches), searches.worth, None
+    else:
+        exact, bound = solved, solved.bound
+        why = "one mass on one stiffness and one damping: every feasible branch is found"
+        branches = _of_branches(study, exact)
+        worth = "global: proven best of all feasible branches"
+        if exact.branches and exact.statement.relaxed and not branches[0].assessment.meets:
+            # The relaxation's best misses what it left out: go on by local searches, with its bound.
+            searches = _searched(study, tuple(branch.values for branch in exact.branches))
+            branches = tuple(sorted((*_of_searches(study, searches), *branches), key=_rank(sizing.sense)))
+            worth = f"{searches.worth}; the relaxed problem bounds it"
+    found = SizingResult(
+        study, "one axis, exact" if searches is None else "many starts", why, worth, branches, bound, exact, searches,
+        None, None, None, cautions, 0.0,
+    )  # fmt: skip
+    return _with_rest(found, problem, drawings, started)
+
+
+def _rank(sense: float):  # type: ignore[no-untyped-def]
+    return lambda branch: (not branch.assessment.meets, sense * branch.objective)
+
+
+def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: float) -> SizingResult:
+    from dataclasses import replace
+
+    study, best = found.study, found.answer
+    brief = study.brief
+    sizing = sizing_of(brief)
+    cautions = list(found.cautions)
+    near = plan = front = None
+    mounts = ()
+    if best is not None:
+        cautions += _at_ends(best, study)
+        if brief.choices:
+            there = made_design(brief, best.values).brief
+            real = build(there, study.catalogs)
+            mounts = tuple(dict.fromkeys(mount for group in real.candidates for mount in group))
+            near = nearest_parts(there, best.values, real, sizing.goal, sizing.sense)
+    around = best or (found.branches[0] if found.branches else None)
+    axis = None if found.exact is None else found.exact.statement
+    if drawings and sizing.map and around is not None:
+        plan = sizing_map(brief, sizing.map, around.values, axis, mounts, sizing.goal)
+    if drawings and sizing.trade and best is not None:
+        front = _front(found, best)
+    return replace(
+        found, nearest=near, map=plan, front=front, cautions=tuple(cautions), seconds=time.perf_counter() - started
+    )
+
+
+def _front(found: SizingResult, best: SizedBest) -> SizingFront:
+    brief = found.study.brief
+    if found.exact is not None and found.searches is None:
+        return one_axis_front(brief, found.exact.statement, sizing_of(brief).front_points)
+    from detune.solvers.size_front_searched import searched_front
+
+    return searched_front(brief, best.values)
+
+
+def _searched(study: Study, first: tuple[Floats, ...]) -> ManyStarts:
+    sizing = sizing_of(study.brief)
+    return size_many_starts.solve(
+        study.brief, sizing.goal, sizing.sense, starts=sizing.starts, seed=sizing.seed, first=first
+    )
+
+
+def _of_branches(study: Study, exact: OneAxisSizing) -> tuple[SizedBest, ...]:
+    found = []
+    for branch in exact.branches:
+        made = made_design(study.brief, branch.values)
+        assessment = assess(made.brief, made.design)
+        found.append(SizedBest(branch.name, branch.values, branch.objective, assessment, branch.tight))
+    return tuple(found)
+
+
+def _of_searches(study: Study, searches: ManyStarts) -> tuple[SizedBest, ...]:
+    """The best three local answers that differ, assessed."""
+    found: list[SizedBest] = []
+    low, high = bounds(study.brief)
+    for search in searches.searches:
+        near = [np.allclose(search.values, other.values, rtol=1e-2, atol=1e-3 * (high - low).max()) for other in found]
+        if any(near) or len(found) == 3:
+            continue
+        made = made_design(study.brief, search.values)
+        assessment = assess(made.brief, made.design)
+        tight = tuple(row.label for row in assessment.margins if abs(row.margin) < 1e-3)
+        found.append(SizedBest(f"local search {len(found) + 1}", search.values, search.objective, assessment, tight))
+    return tuple(found)
+
+
+def _at_ends(best: SizedBest, study: Study) -> list[str]:
+    """Say where an unknown came to rest on the bound the user gave."""
+    notes = []
+    for unknown, value in zip(sizing_of(study.brief).unknown, best.values.tolist(), strict=True):
+        low, high = unknown.bounds
+        if low == high:
+            continue
+        for end, name in ((low, "lower"), (high, "upper")):
+            if abs(value - end) <= 1e-6 * max(abs(end), 1e-9) and not (end == 0.0 and name == "lower"):
+                notes.append(
+                    f"{unknown.title} rests on its {name} bound, which the study states: no requirement stops it there, "
+                    "and a wider bound would change the answer"
+                )
+    return notes
+
+
+def check_sense(study: Study) -> tuple[str, ...]:
+    """Refuse an unknown nothing depends on, and an objective no unknown changes; return cautions.
+
+    Every unknown is moved between its bounds, the others at a few points: what changes neither a requirement nor the
+    objective has no answer. Raises BriefError with every such unknown.
+    """
+    brief = study.brief
+    sizing = sizing_of(brief)
+    unknowns = sizing.unknown
+    to = size_many_starts.Coordinates(brief)
+    base = start_points(len(unknowns), TRIED, sizing.seed)
+    findings: list[Finding] = []
+    cautions: list[str] = []
+    moved = []
+    for column in range(len(unknowns)):
+        for end in (0.0, 1.0):
+            there = base.copy()
+            there[:, column] = end
+            moved.append(there)
+    found = judge(brief, to.outward(np.concatenate(moved)))
+    margins = found.margins.reshape(len(found.requirements), len(unknowns), 2, TRIED)
+    objective = found.objectives[sizing.goal].reshape(len(unknowns), 2, TRIED)
+    felt = np.abs(margins[:, :, 0] - margins[:, :, 1]).max(axis=(0, 2)) > 1e-9
+    shift = np.abs(objective[:, 0] - objective[:, 1]).max(axis=1)
+    counts = shift > 1e-9 * max(float(np.abs(objective).max()), 1e-300)
+    for index, unknown in enumerate(unknowns):
+        low, high = unknown.bounds
+        if low == high or felt[index]:
+            continue
+        path = ("sizing", "unknown", index)
+        if not counts[index]:
+            expected = "an unknown on which a requirement or the objective depends: nothing here changes with it"
+            findings.append(Finding(path, unknown.title, expected))
+        else:
+            cautions.append(
+                f"no requirement depends on {unknown.title}; the objective alone moves it, to an end of its range"
+            )
+    if not counts.any() and not findings:
+        what = "minimise" if sizing.minimise else "maximise"
+        if sizing.goal == "cost":
+            expected = "a price on some unknown (cost_per_stiffness, cost_per_damping, cost_per_loss_factor, or the ballast's cost_per_kg): as stated every design costs the same"
+        elif not np.isfinite(objective).all():
+            expected = "an objective that has a finite value: nothing excites the machine steadily, so the separation has no bound"
+        else:
+            expected = "an objective that some unknown changes: as stated it is the same for every design"
+        findings.append(Finding(("sizing", what), sizing.goal, expected))
+    elif not np.isfinite(objective).all():
+        expected = "an objective that has a finite value for every design"
+        findings.append(Finding(("sizing",), sizing.goal, expected))
+    if findings:
+        raise BriefError(faults_without_lines(brief.file, tuple(findings)))
+    return tuple(cautions)

@@ -1,0 +1,188 @@
+"""The same problems given to general-purpose libraries: Pyomo with SCIP and HiGHS, and differential evolution."""
+
+from __future__ import annotations
+
+import importlib.util
+import statistics
+import time
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import pytest
+
+from detune.proof.exact_test import exact_accept, natural_frequencies, separation, static_margin
+from detune.proof.instances import InstanceSettings, make_instance
+from detune.proof.response_rows import response_margin
+from detune.proof.search import SearchSettings
+from detune.proof.search_front import search_least_cost
+from detune.proof.search_tables import design_cost
+from detune.proof.selection_data import Selection
+from detune.sizing.one_axis import solve_one_axis
+from detune.sizing.one_axis_pyomo import build_model, solve_with_scip
+from detune.sizing.statement import SizingError
+from detune.solvers.own_process import OwnProcess
+from detune.solvers.pyomo_model import Task, run
+from detune.solvers.second_opinion import least_cost
+
+pytestmark = pytest.mark.benchmark
+TESTS = Path(__file__).parents[1]
+
+
+def _load(name: str, path: Path) -> Any:
+    spec = importlib.util.spec_from_file_location(name, path)
+    assert spec is not None and spec.loader is not None
+    module = importlib.util.module_from_spec(spec)
+    spec.loader.exec_module(module)
+    return module
+
+
+briefs = _load("briefs", TESTS / "solvers" / "briefs.py")
+sizing_instances = _load("sizing_instances", TESTS / "sizing" / "instances.py")
+
+
+def search_seconds(selection: Selection, kernels: Any, repeats: int = 5) -> tuple[float, float | None]:
+    """The median time of a warm search, and the least cost."""
+    settings = SearchSettings(kernels=kernels)
+    search_least_cost(selection, settings=settings)
+    times = []
+    for _ in range(repeats):
+        started = time.perf_counter()
+        result = search_least_cost(selection, settings=settings)
+        times.append(time.perf_counter() - started)
+    return statistics.median(times), result.designs[0].cost if result.designs else None
+
+
+@pytest.mark.parametrize("backend", ["scip_direct", "highs"])
+def test_twenty_parts_at_three_groups_by_pyomo(backend: Any, figures: dict[str, Any], long: bool) -> None:
+    """Seconds inside the MILP solver alone, without Pyomo's own work and the process; ten minutes at most."""
+    runs = []
+    for seed in (1, 2, 3) if long else (1,):
+        selection = make_instance(InstanceSettings(parts=20, groups=3, seed=seed))
+        fastest, cost = min((search_seconds(selection, k) for k in ("numpy", "compiled")), key=lambda x: x[0])
+        judge = exact_accept(selection)
+
+        def meets(parts: tuple[int, ...], step: int, judge: Any = judge) -> bool:
+            return bool(judge(np.array([[*parts, step]]))[0][0])
+
+        with OwnProcess(run) as process:
+            question = Task(briefs.statement_of_selection(selection), (), (), backend, 600.0)
+            started = time.perf_counter()
+            opinion = least_cost(process, question, meets, 600.0)
+            whole = time.perf_counter() - started
+        found = None
+        if opinion.parts is not None:
+            found = float(design_cost(selection, np.array([[*opinion.parts, opinion.step]]))[0])
+        runs.append(
+            {
+                "seed": seed,
+                "search_seconds": fastest,
+                "solver_seconds": opinion.solver_seconds,
+                "whole_seconds": whole,
+                "runs": opinion.runs,
+                "stopped": opinion.stopped,
+                "times": opinion.solver_seconds / fastest,
+                "same_cost": found == cost,
+                "lower_bound": opinion.lower_bound,
+                "least_cost": cost,
+            }
+        )
+        assert opinion.stopped != "finished" or found == cost
+    figures[f"20^3 by Pyomo and {backend}"] = {
+        "median_times": statistics.median(entry["times"] for entry in runs),
+        "runs": runs,
+    }
+
+
+class OutOfTime(Exception):
+    """Differential evolution has used its time."""
+
+
+@dataclass
+class Penalised:
+    """Cost plus a penalty for what is not met, by the batched numpy evaluator; keeps the best feasible design."""
+
+    selection: Selection
+    until: float
+    best: float = np.inf
+    asked: int = 0
+
+    def __call__(self, x: np.ndarray) -> np.ndarray:
+        if time.perf_counter() > self.until:
+            raise OutOfTime
+        selection = self.selection
+        part = np.minimum(np.floor(x.T).astype(np.int64), np.array(selection.sizes) - 1)
+        designs = np.column_stack([np.maximum(part, 0), np.zeros(len(part), dtype=np.int64)])
+        self.asked += len(designs)
+        cost = design_cost(selection, designs)
+        miss = np.maximum(-np.nan_to_num(static_margin(selection, designs), neginf=-10.0, posinf=10.0), 0.0)
+        apart = separation(natural_frequencies(selection, designs), selection.bands)
+        miss += np.maximum(selection.bands.separation.max() - apart, 0.0)
+        miss += np.maximum(-response_margin(selection, designs), 0.0)
+        met = miss <= 0.0
+        if met.any():
+            self.best = min(self.best, float(cost[met].min()))
+        return cost + np.where(met, 0.0, 500.0 * (1.0 + miss))
+
+
+def test_differential_evolution_given_ten_times_the_time(figures: dict[str, Any]) -> None:
+    """200 parts at 4 groups, five seeds; with restarts until the time is over."""
+    from scipy.optimize import differential_evolution
+
+    selection = make_instance(InstanceSettings(parts=200, groups=4, seed=1))
+    seconds, optimum = search_seconds(selection, "compiled", 3)
+    assert optimum is not None
+    gaps = []
+    for seed in range(5):
+        penalised = Penalised(selection, time.perf_counter() + 10.0 * seconds)
+        restart = 0
+        try:
+            while True:
+                differential_evolution(
+                    penalised, [(0.0, 200.0)] * 4, seed=100 * seed + restart, vectorized=True,
+                    updating="deferred", popsize=40, maxiter=10_000, polish=False, tol=1e-6,
+                )  # fmt: skip
+                restart += 1
+        except OutOfTime:
+            found = np.isfinite(penalised.best)
+            gaps.append(penalised.best / optimum - 1.0 if found else None)
+    figures["differential evolution 200^4, ten times the time"] = {
+        "search_seconds": seconds,
+        "optimum": optimum,
+        "gaps": gaps,
+        "found_nothing": sum(gap is None for gap in gaps),
+    }
+
+
+def test_one_axis_sizing_against_scip(figures: dict[str, Any]) -> None:
+    problems, seed = [], 0
+    while len(problems) < 40:
+        problem = sizing_instances.random_problem(seed)
+        seed += 1
+        try:
+            build_model(problem)
+        except SizingError:
+            continue
+        problems.append(problem)
+    second = solve_with_scip(problems, 20.0)
+    solve_one_axis(problems[0])
+    exact, scip, worst, undecided = [], [], 0.0, 0
+    for problem, other in zip(problems, second, strict=True):
+        started = time.perf_counter()
+        first = solve_one_axis(problem)
+        exact.append(time.perf_counter() - started)
+        if other.status != "optimal":
+            undecided += other.status not in ("infeasible",)
+            continue
+        scip.append((other.seconds, exact[-1]))
+        best = first.best.objective
+        worst = max(worst, abs(other.objective - best) / max(abs(best), 1e-9))
+    figures["one-axis sizing"] = {
+        "exact_median_ms": 1e3 * statistics.median(exact),
+        "scip_median_ms": 1e3 * statistics.median(seconds for seconds, _ in scip),
+        "median_ratio": statistics.median(a / b for a, b in scip),
+        "largest_difference": worst,
+        "compared": len(scip),
+        "undecided_by_scip": undecided,
+    }
