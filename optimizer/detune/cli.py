@@ -10,6 +10,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
+    from detune.brief.brief import Brief
+    from detune.response.assessment import Assessment
     from collections.abc import Callable
 
     from detune.solvers.outcome import Progress, Settings
@@ -108,12 +110,16 @@ def _check(options: argparse.Namespace) -> int:
     steps = len(brief.ballast.steps) if brief.ballast else 1
     print(f"{options.study}: no fault found")
     print(f"  {brief.title}")
-    print(
-        f"  {len(brief.stations)} stations in {len(brief.groups)} groups, {len(brief.conditions)} conditions,"
+    counted = (
+        (len(brief.stations), "station"),
+        (len(brief.groups), "group"),
+        (len(brief.conditions), "condition"),
+        (len(brief.forcing), "forcing"),
+        (len(brief.allowables), "allowable"),
+        (steps, "ballast step"),
     )
-    print(
-        f"  {len(brief.forcing)} forcings, {len(brief.allowables)} allowables, {steps} ballast steps; parts: {parts}"
-    )
+    print("  " + ", ".join(f"{count} {name}{'' if count == 1 else 's'}" for count, name in counted))
+    print(f"  parts: {parts}")
     return MEETS
 
 
@@ -136,23 +142,31 @@ def _run(options: argparse.Namespace) -> int:
 
 
 def _assess(options: argparse.Namespace) -> int:
-    options.design = [options.design]
-    return _compare(options)
+    from detune.report.summary import assess_text
+
+    brief, (assessment,) = _judged(options.study, [options.design])
+    print(assess_text(brief, assessment))
+    return MEETS if assessment.meets else NONE_MEETS
 
 
 def _compare(options: argparse.Namespace) -> int:
-    from detune.problem.build import build
     from detune.report.summary import compare_text
+
+    _, assessments = _judged(options.study, options.design)
+    print(compare_text(assessments))
+    return MEETS if any(assessment.meets for assessment in assessments) else NONE_MEETS
+
+
+def _judged(path: str, texts: Sequence[str]) -> "tuple[Brief, list[Assessment]]":
+    from detune.problem.build import build
     from detune.response.assess import assess
     from detune.study.load import load_study
     from detune.study.named import named_design
 
-    study = load_study(options.study)
+    study = load_study(path)
     build(study.brief, study.catalogs)
-    designs = [named_design(study.brief, study.catalogs, text) for text in options.design]
-    assessments = [assess(study.brief, design) for design in designs]
-    print(compare_text(assessments))
-    return MEETS if any(assessment.meets for assessment in assessments) else NONE_MEETS
+    designs = [named_design(study.brief, study.catalogs, text) for text in texts]
+    return study.brief, [assess(study.brief, design) for design in designs]
 
 
 def _vary(options: argparse.Namespace) -> int:

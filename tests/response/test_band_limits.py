@@ -96,7 +96,9 @@ def test_c5_below_eight_hertz() -> None:
     # C5: VC-A flat at 260 ug between 4 and 8 Hz: 101.45 um/s at 4 Hz; ISO lines at constant acceleration: velocity
     # times 8/f; ISO base 5 mm/s^2 at 8 Hz = 99.47 um/s (ISO 2631-2:1989; Gordon, SPIE 1619 (1991)).
     assert followed(tone(4.0, 101.45e-6), curve(criterion="VC-A")).value == pytest.approx(1.0, rel=1e-4)
-    assert followed(tone(4.0, 2 * 812.8e-6), curve(criterion="workshop")).value == pytest.approx(1.0, rel=1e-6)
+    assert followed(tone(4.0, 2 * 812.8e-6), curve(criterion="workshop")).value == pytest.approx(
+        1.0, rel=1e-6
+    )
     base = curve(criterion="ISO 2631-2 base curve", multiplier=1.0)
     assert followed(tone(8.0, 99.47e-6), base).value == pytest.approx(1.0, rel=1e-4)
     four = curve(criterion="ISO 2631-2 base curve", multiplier=4.0)
@@ -107,7 +109,9 @@ def test_editions_differ_by_a_sixtieth() -> None:
     # C4: VC-A is 50.8 um/s in inches and commonly rounded to 50.
     row = followed(tone(20.0, 50e-6), curve(criterion="VC-A", edition="metric"))
     assert row.value == pytest.approx(1.0, rel=1e-6)
-    assert followed(tone(20.0, 50e-6), curve(criterion="VC-A", edition="inch")).value == pytest.approx(50 / 50.8)
+    assert followed(tone(20.0, 50e-6), curve(criterion="VC-A", edition="inch")).value == pytest.approx(
+        50 / 50.8
+    )
 
 
 def test_lines_in_one_band_add_as_mean_squares() -> None:

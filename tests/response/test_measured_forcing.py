@@ -69,7 +69,14 @@ def written(folder: Path, header: str, columns: Any, name: str = "record.csv") -
 
 
 def record(folder: Path, use: str, **changes: Any) -> MeasuredRecord:
-    stated = {"name": "floor", "direction": "z", "file": "record.csv", "use": use, "detrend": "none", "kind": "measured-record"}
+    stated = {
+        "name": "floor",
+        "direction": "z",
+        "file": "record.csv",
+        "use": use,
+        "detrend": "none",
+        "kind": "measured-record",
+    }
     return MeasuredRecord.model_validate({**stated, **changes}, context={"folder": folder})
 
 
@@ -221,11 +228,10 @@ def test_six_axes_long_record_against_its_density(tmp_path: Path, seed: int) -> 
 def test_torque_reaction_turns_the_machine_about_its_axis() -> None:
     # A couple M about x on an inertia I that no spring holds against roll but one at each side, k b^2/2 together:
     # the angle is M/(K - I w^2).
-    couple = TorqueReaction(
-        name="motor", shaft="rotor", axis="x", orders=[{"order": 2.0, "torque": "5 N m"}]
-    )
+    couple = TorqueReaction(name="motor", shaft="rotor", axis="x", orders=[{"order": 2.0, "torque": "5 N m"}])
     stations = tuple(
-        machines.Station(name=name, group="G", position=(0.0, y, 0.0)) for name, y in (("L", -0.5), ("R", 0.5))
+        machines.Station(name=name, group="G", position=(0.0, y, 0.0))
+        for name, y in (("L", -0.5), ("R", 0.5))
     )
     inertia = machines.InertiaTensor(xx=4.0, yy=5.0, zz=6.0)
     brief = machines.brief_of(

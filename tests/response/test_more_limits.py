@@ -44,7 +44,9 @@ G = 9.80665
 MASS = 20.0
 
 
-def rows_of(brief: Brief, mounts: tuple[Mount, ...], *limits: Allowable, rel: float = 1e-4) -> list[MarginRow]:
+def rows_of(
+    brief: Brief, mounts: tuple[Mount, ...], *limits: Allowable, rel: float = 1e-4
+) -> list[MarginRow]:
     """The assessor's rows of these limits, after making sure that the batch evaluation has the same margins."""
     # A study needs some limit on a response.
     far = () if any(isinstance(limit, HarmonicAllowable) for limit in limits) else (machines.far_limit(),)
@@ -96,7 +98,9 @@ def rocker(**changes: Any) -> Brief:
     places = (("L", -0.5), ("R", 0.5))
     return machines.brief_of(
         **{
-            "bodies": (Body(name="machine", free=("z", "ry"), mass=MASS, centre=(0.1, 0, 0), inertia=inertia),),
+            "bodies": (
+                Body(name="machine", free=("z", "ry"), mass=MASS, centre=(0.1, 0, 0), inertia=inertia),
+            ),
             "points": (
                 *(Point(name=name, position=(x, 0.0, 0.0)) for name, x in places),
                 Point(name="P", position=(0.0, 0.0, 0.0)),
@@ -136,7 +140,9 @@ def test_floor_velocity_on_a_soft_floor() -> None:
     floor = Floor(kind="mass-spring-damper", mass=mf, stiffness=kf, damping=cf)
     part = machines.mount(k=k, loss=0.1)
     complex_k = k * (1 + 0.1j)
-    matrix = np.array([[complex_k - w * w * MASS, -complex_k], [-complex_k, complex_k + kf + 1j * w * cf - w * w * mf]])
+    matrix = np.array(
+        [[complex_k - w * w * MASS, -complex_k], [-complex_k, complex_k + kf + 1j * w * cf - w * w * mf]]
+    )
     _, moved = np.linalg.solve(matrix, [50.0, 0.0])
     brief = machines.one_axis(MASS, machines.force(9.0, 50.0), floor=floor)
     limit = FloorVelocity(measure="rms", limit=1.0)
@@ -146,7 +152,9 @@ def test_floor_velocity_on_a_soft_floor() -> None:
     own = (kf + 1j * w * cf - w * w * mf) * 1e-3 / (1j * w)
     _, moved = np.linalg.solve(matrix, [0.0, own])
     brief = machines.one_axis(MASS, free, floor=floor)
-    assert value(brief, part, FloorVelocity(measure="peak", limit=1.0)) == pytest.approx(abs(moved) * w, rel=1e-9)
+    assert value(brief, part, FloorVelocity(measure="peak", limit=1.0)) == pytest.approx(
+        abs(moved) * w, rel=1e-9
+    )
 
 
 def test_c7_weighting_of_tones() -> None:

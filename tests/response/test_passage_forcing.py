@@ -109,9 +109,7 @@ def test_a_slow_passage_is_the_steady_state_and_a_fast_one_less() -> None:
     assert slow == pytest.approx(whole, rel=5e-3)
     assert fast < 0.8 * whole
     # The worse of the two ways counts.
-    ways = passing(
-        5.0, 20.0, machines.unbalance(0.02), run_up={"rotor": 60.0}, coast_down={"rotor": 0.5}
-    )
+    ways = passing(5.0, 20.0, machines.unbalance(0.02), run_up={"rotor": 60.0}, coast_down={"rotor": 0.5})
     assert both(ways, part, DISPLACEMENT) == pytest.approx(slow, rel=1e-4)
 
 

@@ -195,7 +195,8 @@ def test_an_undamped_mode_under_noise_meets_no_limit() -> None:
     limit = acceleration()
     brief = machines.one_axis(10.0, flat_motion(0.04, 1.0, 400.0)).model_copy(update={"allowables": (limit,)})
     parts = [
-        machines.mount(f"p{i}", k=10.0 * (TWO_PI * 20.0) ** 2, loss=loss) for i, loss in enumerate([0.1, 0.0, 0.2])
+        machines.mount(f"p{i}", k=10.0 * (TWO_PI * 20.0) ** 2, loss=loss)
+        for i, loss in enumerate([0.1, 0.0, 0.2])
     ]
     problem = build(brief, {"list": machines.catalog(*parts)})
     designs = Designs(np.arange(3)[:, None].astype(np.intp), np.zeros(3, dtype=np.intp))

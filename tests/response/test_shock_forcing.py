@@ -147,9 +147,7 @@ def test_drop_is_seen_from_the_floor_at_rest() -> None:
     velocity = Velocity(at="P", direction="z", measure="peak", limit=1e9)
     assert both(brief, tuned(5.0), velocity) == pytest.approx(math.sqrt(2 * G * 0.2 + G * sag), rel=1e-4)
     displacement = Displacement(at="P", direction="z", measure="peak", limit=1e9)
-    assert both(brief, tuned(5.0), displacement) == pytest.approx(
-        math.sqrt(sag**2 + 2 * 0.2 * sag), rel=1e-4
-    )
+    assert both(brief, tuned(5.0), displacement) == pytest.approx(math.sqrt(sag**2 + 2 * 0.2 * sag), rel=1e-4)
 
 
 @pytest.mark.parametrize(
@@ -173,7 +171,9 @@ def test_k6_heavy_damping_peaks_at_once() -> None:
 def test_force_pulse_moves_as_a_base_pulse_and_jumps_at_once() -> None:
     # A force F(t) on the mass deflects the mount as a base acceleration F/m (the equation of relative motion); the
     # deflection's maxima are those of K1. A rectangle gives the mass F/m at its first moment.
-    step = ForcePulse(name="hit", position=(0, 0, 0), force=(0, 0, MASS * G), shape="rectangle", duration=0.05)
+    step = ForcePulse(
+        name="hit", position=(0, 0, 0), force=(0, 0, MASS * G), shape="rectangle", duration=0.05
+    )
     brief = machines.one_axis(MASS, step)
     assert both(brief, tuned(40.0, 0.3), ACCELERATION) == pytest.approx(G, rel=1e-9)
     wn = TWO_PI * 100.0
@@ -216,9 +216,7 @@ def test_six_axes_batch_equals_assessor(seed: int, flexible: bool, viscous: bool
     )
     for forcing in (shock, hit, Drop(name="fall", height=0.03)):
         running = (Condition(name="running"),)
-        each = brief.model_copy(
-            update={"allowables": limits, "forcing": (forcing,), "conditions": running}
-        )
+        each = brief.model_copy(update={"allowables": limits, "forcing": (forcing,), "conditions": running})
         assert_batch_equals_assessor(each, mounts)
 
 

@@ -146,8 +146,9 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     if candidates.findings:
         raise BriefError(faults_without_lines(brief.file, candidates.findings))
     notes = tuple(str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed))
-    stated = (*brief.forcing, *brief.allowables)
-    notes = (*(note for statement in stated for note in statement.assumed()), *notes)
+    stated = [note for forcing in brief.forcing for note in forcing.assumed()]
+    stated += [note for allowable in brief.allowables for note in allowable.assumed()]
+    notes = (*stated, *notes)
     return _problem(brief, candidates.mounts, candidates.dropped, notes)
 
 

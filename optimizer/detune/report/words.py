@@ -47,8 +47,8 @@ def margin_text(margin: float) -> str:
 
 
 def separation_text(separation: float) -> str:
-    """Return a separation in per cent; without a steady excitation there is none."""
-    return "no steady excitation" if math.isinf(separation) else percent(separation)
+    """Return a separation in per cent; where nothing excites at frequencies of its own, response governs."""
+    return "none, governed by response" if math.isinf(separation) else percent(separation)
 
 
 def frequency_text(frequency: float | None, is_shaft: bool) -> str:

@@ -57,17 +57,17 @@ class DirectMotion:
     def motion(self, point: str, rate: int = 0) -> Responses:
         stated = next(p for p in self.machine.brief.points if p.name == point)
         rows = self.machine.place(body_of(self.machine.brief, stated.on), np.array(stated.position))
-        return (self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
+        return np.asarray(self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
 
     def floor_motion(self, rate: int = 0) -> Responses:
         rows = np.zeros((3, self.machine.size))
         rows[:, self.machine.floor_axes] = np.eye(3)
-        return (self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
+        return np.asarray(self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
 
     def station_deflection(self, station: str, rate: int = 0) -> Responses:
         stated = station_named(self.machine, station)
         rows = self.machine.axes(stated).T @ self._rows(self.machine.across(stated))
-        return (self.rates[rate] @ rows.T)[None]
+        return np.asarray(self.rates[rate] @ rows.T)[None]
 
     def station_force(self, station: str) -> Responses:
         return self._force(station_named(self.machine, station))[None]
@@ -85,7 +85,7 @@ class DirectMotion:
         ).T
         carried = self.found.mass @ self.found.shapes
         moved, fast = self.rates[0] @ carried, self.rates[1] @ carried / omega
-        force = moved @ (across * stiffness.real) + fast @ (across * stiffness.imag)
+        force: Responses = moved @ (across * stiffness.real) + fast @ (across * stiffness.imag)
         if self.more is not None:
             force[:, 2] += self.more[self.machine.brief.stations.index(station)]
         return force

@@ -46,6 +46,7 @@ def steady_intervals(brief: Brief, state: str | None = None) -> list[tuple[float
             for condition in brief.conditions
             if condition.steady and condition.state == state
             for tone in tones_of(brief, condition)
+            if not tone.broadband
         }
     )
 

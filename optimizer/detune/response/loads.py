@@ -88,21 +88,26 @@ def unit_families(
     return tuple(families)
 
 
-def excitation_intervals(brief: Brief, conditions: tuple[Condition, ...]) -> tuple[tuple[float, float], ...]:
+def excitation_intervals(
+    brief: Brief, conditions: tuple[Condition, ...], broadband: bool = True
+) -> tuple[tuple[float, float], ...]:
     """Return the excitation intervals (Hz), each order its own, without repetition and in order."""
     found = {
         (tone.order * tone.low, tone.order * tone.high)
         for condition in conditions
         for tone in condition_tones(brief, condition)
+        if broadband or not tone.broadband
     }
     return tuple(sorted(found))
 
 
 def steady_intervals(brief: Brief, *states: str | None) -> tuple[tuple[float, float], ...]:
-    """Return the excitation intervals of the steady conditions (in these states; none named: in any)."""
-    return excitation_intervals(
-        brief, tuple(c for c in brief.conditions if c.steady and (not states or c.state in states))
-    )
+    """Return the excitation intervals of the steady conditions (in these states; none named: in any).
+
+    Separation is judged against them. Bands of a spectrum are none: broadband excitation is governed by response.
+    """
+    steady = tuple(c for c in brief.conditions if c.steady and (not states or c.state in states))
+    return excitation_intervals(brief, steady, broadband=False)
 
 
 def _coherent_sets(brief: Brief, model: Model, tones: list[Tone]) -> tuple[tuple[Load, ...], ...]:

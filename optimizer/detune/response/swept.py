@@ -118,7 +118,7 @@ def _passage(
         at = np.where(better, times[values.argmax(axis=1)], at)
         best = np.maximum(best, values.max(axis=1))
         half = half * (4.0 / len(ROUND_LARGEST))
-    return best
+    return np.asarray(best)
 
 
 def _slowest(modes: StateModes) -> float:
@@ -149,7 +149,7 @@ def _swept_view(
         acting += (turned * speed**load.power)[:, None] * load.vector
     held = moved[0] @ system.stiffness.T + moved[1] @ system.damping.T
     acceleration = np.linalg.solve(dynamic.mass[0], (acting - held).T).T
-    motion = Motion(0.0, moved[0], moved[1], acceleration, acceleration)  # type: ignore[arg-type]
+    motion = Motion(0.0, moved[0], moved[1], acceleration, acceleration)
     return motion_view(model, dynamic, system.undamped, motion), speed
 
 

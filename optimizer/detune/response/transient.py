@@ -7,6 +7,7 @@ carry and what the machine does agree. Motion is relative to the floor's own fre
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,13 +21,13 @@ from detune.physics.simulation import Motion, simulate
 from detune.response.assemble import Dynamic
 from detune.response.causal_design import causal_matrices
 from detune.response.designs import Designs
-from detune.response.model import Model, StationRows
+from detune.response.model import Model, StationRows, find_station
 from detune.response.modes import ModeBatch
 from detune.response.progressive import finer, has_curves, progressive_system
-from detune.response.views import find_station
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
+Responses = NDArray[Any]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
 # Samples per cycle of the fastest mode: the parabola through three samples then errs by about 1e-5.
@@ -106,53 +107,53 @@ def rms_duration(views: Sequence["MotionView"], transient: Transient) -> float:
 class MotionView:
     """The response of one design (D = 1) over one stretch of time, samples `step` s apart.
 
-    `relative` to the floor's free motion, complex where it is the envelope of a passage; `lagged` (T, n) is the velocity of each mode over its
-    own frequency, on which loss-factor forces stand; `floor` (3 rates, T) is the free motion along `base`. On
-    load-deflection curves, `more` (S, T) is one part's axial force beyond its tangent, and `beyond` tells that a part
-    has left its curve.
+    `relative` to the floor's free motion, complex where it is the envelope of a passage; `lagged` (T, n) is the
+    velocity of each mode over its own frequency, on which loss-factor forces stand; `floor` (3 rates, T) is the
+    free motion along `base`. On load-deflection curves, `more` (S, T) is one part's axial force beyond its tangent,
+    and `beyond` tells that a part has left its curve.
     """
 
     model: Model
     dynamic: Dynamic
     modal: ModeBatch
     relative: Motion
-    lagged: Floats
+    lagged: Responses
     floor: Floats
     base: Floats
     step: float
     more: Floats | None = None
     beyond: bool = False
 
-    def _rates(self, rate: int) -> Floats:
+    def _rates(self, rate: int) -> Responses:
         return (self.relative.displacement, self.relative.velocity, self.relative.acceleration)[rate]
 
-    def motion(self, point: str, rate: int = 0) -> Floats:
+    def motion(self, point: str, rate: int = 0) -> Responses:
         moved = self._rates(rate) @ self.model.points[point].T
-        return (moved + self.floor[rate][:, None] * self.base)[None]
+        return np.asarray(moved + self.floor[rate][:, None] * self.base)[None]
 
-    def floor_motion(self, rate: int = 0) -> Floats:
+    def floor_motion(self, rate: int = 0) -> Responses:
         total = self.floor[rate][:, None] * self.base + np.zeros_like(self._rates(rate)[:, :1])
         if self.model.frame.flexible_floor:
             total = total + self._rates(rate)[:, -1:] * np.array([0.0, 0.0, 1.0])
         return total[None]
 
-    def station_deflection(self, station: str, rate: int = 0) -> Floats:
-        return (self._rates(rate) @ find_station(self.model, station).rows.T)[None]
+    def station_deflection(self, station: str, rate: int = 0) -> Responses:
+        return np.asarray(self._rates(rate) @ find_station(self.model, station).rows.T)[None]
 
-    def station_force(self, station: str) -> Floats:
+    def station_force(self, station: str) -> Responses:
         return self._force(find_station(self.model, station))[None]
 
-    def _force(self, station: StationRows) -> Floats:
+    def _force(self, station: StationRows) -> Responses:
         k, eta, c = (each[0] for each in self.dynamic.parts.constants(self.model.stations.index(station)))
         moved, fast, lagged = (x @ station.rows.T for x in (self._rates(0), self._rates(1), self.lagged))
-        force: Floats = station.factor * (k * moved + c * fast + k * eta * lagged)
+        force: Responses = station.factor * (k * moved + c * fast + k * eta * lagged)
         if self.dynamic.parts.with_frequency:
             force = force + self._frequency_force(station, station.factor * (k * (1.0 + 1j * eta)), c)
         if self.more is not None:
             force[:, 2] += self.more[self.model.stations.index(station)]
         return force
 
-    def _frequency_force(self, station: StationRows, constant: Complexes, viscous: Floats) -> Floats:
+    def _frequency_force(self, station: StationRows, constant: Complexes, viscous: Floats) -> Responses:
         """What a frequency law adds: each mode moves the part at the stiffness of the mode's own frequency."""
         omega = TWO_PI * self.modal.frequency
         own = self.dynamic.parts.stiffness(station, omega)[0]
@@ -160,9 +161,9 @@ class MotionView:
         carried = self.dynamic.mass[0] @ self.modal.shapes[0]
         moved, fast = self._rates(0) @ carried, self._rates(1) @ carried / omega[0]
         across = (station.rows @ self.modal.shapes[0]).T
-        return moved @ (across * added.real) + fast @ (across * added.imag)
+        return np.asarray(moved @ (across * added.real) + fast @ (across * added.imag))
 
-    def total_force(self, surface: str) -> Floats:
+    def total_force(self, surface: str) -> Responses:
         total = np.zeros((len(self.lagged), 3), dtype=self.lagged.dtype)
         for station in self.model.stations:
             if station.on_floor:

@@ -34,7 +34,7 @@ NO_LIMIT = 1.0e6
 class Opinion:
     """What came of it: the design of least cost, or none, why it stopped, and below what cost none lies.
 
-    `runs` counts the solver's runs, `cuts` what was cut off, `solver_seconds` the time inside the solver alone.
+    `runs` counts the solver's runs, `cuts` what was cut off, `solver_seconds` the processor time inside the solver alone.
     """
 
     stopped: Stopped

@@ -16,7 +16,6 @@ from detune.sizing.batch_trace import Margins, Traced, trace_batch
 from detune.sizing.made_parts import bounds, logarithmic, sizing_of
 from detune.sizing.one_axis_map import RegionPiece, feasible_region
 from detune.sizing.statement import STANDARD_GRAVITY, Ballast, OneAxisProblem, power_form
-from detune.sizing.trace import one_axis_lines
 from detune.sizing.worst_frequency import worst
 from detune.solvers.one_axis_statement import OneAxis
 from detune.solvers.size_batch import judge
@@ -186,14 +185,18 @@ def _with_islands(
         return x, y, ()
     fixed = _at_ballast(axis.problem, unknowns, values)
     per = axis.pieces if unknowns[j].kind == "viscous" else 1
-    lines = one_axis_lines(fixed, axis.pieces * x, per * y)
-    pieces = feasible_region(fixed)
     scaled = tuple(
         replace(piece, stiffness=piece.stiffness / axis.pieces, least_damping=piece.least_damping / per,
                 greatest_damping=piece.greatest_damping / per)
-        for piece in pieces
+        for piece in feasible_region(fixed)
     )  # fmt: skip
-    return _apart(lines[0] / axis.pieces, x), _apart(lines[1] / per, y), scaled
+    more_x, more_y = list(x), list(y)
+    for piece in scaled:
+        # A node inside every branch, however small; the branch itself is drawn from its exact curves.
+        for k in np.linspace(0, len(piece.stiffness) - 1, 5).astype(int)[1:-1]:
+            more_x.append(float(piece.stiffness[k]))
+            more_y.append(float(0.5 * (piece.least_damping[k] + piece.greatest_damping[k])))
+    return _apart(np.unique(more_x), x), _apart(np.unique(more_y), y), scaled
 
 
 def _apart(lines: Floats, plain: Floats) -> Floats:

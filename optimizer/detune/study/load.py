@@ -99,6 +99,7 @@ def _hashes(
     for source in brief.catalogs:
         files.append(brief.folder / source.file)
         files += [Path(name) for name in catalogs[source.name].further_files]
-    named = [name for statement in (*brief.forcing, *brief.allowables) for name in statement.data_files()]
+    named = [name for forcing in brief.forcing for name in forcing.data_files()]
+    named += [name for allowable in brief.allowables for name in allowable.data_files()]
     files += [brief.folder / name for name in dict.fromkeys(named)]
     return tuple((file.name, hashlib.sha256(file.read_bytes()).hexdigest()) for file in files)

@@ -113,11 +113,11 @@ class BandLimit(BandAllowable):
         elif self.centres is None or self.velocity_rms is None:
             raise refuse("velocity_rms", '"centres" and "velocity_rms" together')
         elif len(self.centres) != len(self.velocity_rms) or not self.centres:
-            found = f"{len(self.centres)} centres and {len(self.velocity_rms)} limits"
-            raise refuse(found, "one limit for each centre", at="velocity_rms")
+            counted = f"{len(self.centres)} centres and {len(self.velocity_rms)} limits"
+            raise refuse(counted, "one limit for each centre", at="velocity_rms")
         else:
             centre, limit = np.array(self.centres), np.array(self.velocity_rms)
-        found = self.file if self.file is not None else [float(value) for value in centre]
+        found: object = self.file if self.file is not None else [float(value) for value in centre]
         try:
             index = band_index_of_centre(centre)
         except ValueError as error:
@@ -159,7 +159,7 @@ class BandLimit(BandAllowable):
 
     def quantity(self) -> str:
         where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
-        curve = self.criterion or "the stated mask"
+        curve: str = self.criterion or "the stated mask"
         if self.multiplier is not None and self.multiplier != 1.0:
             curve = f"{self.multiplier:g} times the {curve}"
         return f"{self.title} {where}, rms over {curve}"

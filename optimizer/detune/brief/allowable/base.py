@@ -253,7 +253,7 @@ def parabolic_maximum(signal: Floats) -> Floats:
     bend = left - 2.0 * top + right
     curved = inner & (bend < 0.0)
     rise = (right - left) ** 2 / (-8.0 * np.where(curved, bend, -1.0))
-    return np.where(curved, top + rise, top)
+    return np.asarray(np.where(curved, top + rise, top))
 
 
 def combine(first: Floats, second: Floats, statistic: Statistic) -> Floats:

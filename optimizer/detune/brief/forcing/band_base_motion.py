@@ -106,6 +106,7 @@ class BandBaseMotion(Forcing):
         low, high, peak = tones_from_third_octaves(self._centre, self._rms)
         return tuple(
             Tone(
+                broadband=True,
                 source=f"{self.name}, {centre:g} Hz band",
                 speed=f"{self.name}, {centre:g} Hz band",
                 order=1.0,

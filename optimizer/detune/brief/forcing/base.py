@@ -24,7 +24,8 @@ class Tone:
     `force` N and `moment` N m act at `position` on body `on`, times omega**power with omega the
     tone's own angular frequency in rad/s. A tone with `base` moves the floor instead: displacement
     phasor in m, times omega**power. Tones of one `speed` name share one speed. Tones with
-    `phase_known` of the same speed and order add as phasors, all others by their amplitudes.
+    `phase_known` of the same speed and order add as phasors, all others by their amplitudes. A `broadband` tone
+    stands for a band of a spectrum and makes no excitation interval for separation.
     """
 
     source: str
@@ -39,6 +40,7 @@ class Tone:
     base: Complex3 | None = None
     power: int = 0
     phase_known: bool = False
+    broadband: bool = False
 
 
 @dataclass(frozen=True, eq=False)

@@ -148,7 +148,7 @@ def caption(data: FrontData) -> str:
         parts.append("There are too many dots for hover texts; designs.csv lists every one.")
     for column, name in enumerate(data.trade):
         if len(data.values) and np.isnan(data.values[:, column]).all():
-            parts.append(f"No design has a {OBJECTIVE_WORDS[name]} that can be drawn (no steady excitation).")
+            parts.append(f"No design has a {OBJECTIVE_WORDS[name]} that can be drawn (governed by response).")
     return " ".join(parts)
 
 

@@ -1,0 +1,212 @@
+"""A machine under scatter as arrays: factors by lot and by part together, mass and centre, and all limited rows.
+
+    D(x, w) = -w^2 (M + sum_k p_k(x) M_k) + K + sum_k p_k(x) G_k + j (H + w C) + sum_a b_a^T kappa_a b_a
+    kappa_a = s_a k_a + j t_a (s_a h_a + w c_a),     s_a, t_a, p_k: products of variables
+
+A response row is a vector of three components y = rows q + sum_a force_a kappa_a (b_a q - u_a) + direct, times w^rate;
+it counts as the major semi-axis of its ellipse, or as the root of its summed squares (rms). Sets of loads of one
+shaft share its speed; those of one order add linearly, different orders linearly or as squares. The last variable
+of a box is the square of the speed, (rad/s)^2.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from detune.proof.robust_data import RobustError
+from detune.proof.selection_data import Complexes, Flags, Floats, Integers
+
+
+@dataclass(frozen=True, eq=False)
+class ScatterSystem:
+    """A linear machine with V uncertain variables, n freedoms and A spring axes.
+
+    mass, fixed_dynamic, fixed_hysteretic, fixed_viscous (n, n): certain, mass positive definite. axes (A, n), stiffness,
+    loss, viscous (A,): of all spring axes, parallel parts included. stiffness_factors, damping_factors (A, 2):
+    variables whose product is s and t, -1 for none. mass_terms (P, n, n), mass_factors (P, 3) and
+    stiffness_terms (Q, n, n), stiffness_factors_of_terms (Q, 3): symmetric matrices times products of variables.
+    low, high (V,): interval of each variable. names: what each is, in words.
+    """
+
+    mass: Floats
+    fixed_dynamic: Floats
+    fixed_hysteretic: Floats
+    fixed_viscous: Floats
+    axes: Floats
+    stiffness: Floats
+    loss: Floats
+    viscous: Floats
+    stiffness_factors: Integers
+    damping_factors: Integers
+    mass_terms: Floats
+    mass_factors: Integers
+    stiffness_terms: Floats
+    stiffness_term_factors: Integers
+    low: Floats
+    high: Floats
+    names: tuple[str, ...] = ()
+
+    def __post_init__(self) -> None:
+        n, count, variables = self.mass.shape[0], self.axes.shape[0], self.low.shape[0]
+        shapes = {
+            "mass": (n, n),
+            "fixed_dynamic": (n, n),
+            "fixed_hysteretic": (n, n),
+            "fixed_viscous": (n, n),
+            "axes": (count, n),
+            "stiffness": (count,),
+            "loss": (count,),
+            "viscous": (count,),
+            "stiffness_factors": (count, 2),
+            "damping_factors": (count, 2),
+            "mass_terms": (len(self.mass_factors), n, n),
+            "mass_factors": (len(self.mass_factors), 3),
+            "stiffness_terms": (len(self.stiffness_term_factors), n, n),
+            "stiffness_term_factors": (len(self.stiffness_term_factors), 3),
+            "high": (variables,),
+        }
+        for name, shape in shapes.items():
+            if getattr(self, name).shape != shape:
+                raise RobustError(f"{name} must have shape {shape}")
+        if not bool((self.high >= self.low).all()):
+            raise RobustError("every variable needs low <= high")
+        for name in ("stiffness_factors", "damping_factors", "mass_factors", "stiffness_term_factors"):
+            index = getattr(self, name)
+            if index.size and (index.min() < -1 or index.max() >= variables):
+                raise RobustError(f"{name} names a variable that does not exist")
+        for name in ("stiffness_factors", "damping_factors"):
+            used = getattr(self, name)
+            if bool((self.low[used[used >= 0]] <= 0.0).any()):
+                raise RobustError("stiffness and damping factors must be positive")
+        for name in ("stiffness", "loss", "viscous"):
+            if bool((getattr(self, name) < 0.0).any()):
+                raise RobustError(f"{name} must not be negative")
+
+    @property
+    def variables(self) -> int:
+        """Number V of uncertain variables."""
+        return int(self.low.shape[0])
+
+
+@dataclass(frozen=True, eq=False)
+class LoadSet:
+    """One coherent set of loads of one order, by powers of omega (of the tone).
+
+    powers (L,); loads (L, n) and base motion of the axes (L, A), both at omega = 1; direct (L, R, 3): what the rows
+    contain besides q and forces, at omega = 1.
+    """
+
+    order: float
+    powers: Floats
+    loads: Complexes
+    bases: Complexes
+    direct: Complexes
+
+
+@dataclass(frozen=True, eq=False)
+class LimitedRows:
+    """R rows of one family of loads (one shaft) with upper limits, over a speed interval (Hz).
+
+    rows (R, 3, n), forces (R, 3, A): components, zeros where a row has fewer than three. rate (R,): power of omega.
+    ellipse (R,): major semi-axis, else root of the summed squares. factor (R,): multiplies the value (peak to rms,
+    greatest forcing). squares (R,): orders combine as squares. limit (R,).
+    """
+
+    rows: Floats
+    forces: Floats
+    rate: Floats
+    ellipse: Flags
+    factor: Floats
+    squares: Flags
+    limit: Floats
+    sets: tuple[LoadSet, ...]
+    speed: tuple[float, float]
+
+    def __post_init__(self) -> None:
+        low, high = self.speed
+        if not 0.0 < low <= high:
+            raise RobustError("the speed interval needs 0 < low <= high")
+        if not bool((self.limit >= 0.0).all()):
+            raise RobustError("limits must be numbers that are not negative")
+
+    @property
+    def count(self) -> int:
+        """Number R of rows."""
+        return int(self.rows.shape[0])
+
+
+def first_corners(system: ScatterSystem, limits: LimitedRows) -> tuple[Floats, Floats]:
+    """Lower and upper corner (V+1,) of the whole box; the last variable is the squared speed in (rad/s)^2."""
+    low, high = limits.speed
+    return (
+        np.append(system.low, (2.0 * np.pi * low) ** 2),
+        np.append(system.high, (2.0 * np.pi * high) ** 2),
+    )
+
+
+def products(points: Floats, factors: Integers) -> Floats:
+    """Products (N, K) of the variables named by factors (K, m) at points (N, V+1); -1 counts as 1."""
+    padded = np.concatenate([points[:, :-1], np.ones((len(points), 1))], axis=1)
+    result: Floats = np.prod(padded[:, factors], axis=2)
+    return result
+
+
+def matrices_at(system: ScatterSystem, points: Floats, order: float) -> tuple[Complexes, Complexes]:
+    """D (N, n, n) and kappa (N, A) at points (N, V+1) for an order of the speed."""
+    squares = order**2 * points[:, -1]
+    omega = np.sqrt(squares)
+    s, t = products(points, system.stiffness_factors), products(points, system.damping_factors)
+    kappa = s * system.stiffness + 1j * t * (s * system.loss + omega[:, None] * system.viscous)
+    shape, size = (len(points), *system.mass.shape), system.mass.size
+    outer = np.einsum("ai,aj->aij", system.axes, system.axes).reshape(-1, size)
+    total = (kappa @ outer).reshape(shape) + system.fixed_dynamic
+    total = total + 1j * (system.fixed_hysteretic + omega[:, None, None] * system.fixed_viscous)
+    mass = (products(points, system.mass_factors) @ system.mass_terms.reshape(-1, size)).reshape(shape)
+    total = total - squares[:, None, None] * (system.mass + mass)
+    own = products(points, system.stiffness_term_factors) @ system.stiffness_terms.reshape(-1, size)
+    return total + own.reshape(shape), kappa
+
+
+def vector_size(vectors: Complexes, ellipse: Flags) -> Floats:
+    """What vectors (..., R, 3) of phasors count as: major semi-axis where `ellipse` (R,), else root of squares.
+
+    The major semi-axis a of the ellipse Re(y e^(j phi)) has 2 a^2 = |y|^2 + |y . y|.
+    """
+    squares = np.sum(vectors.real**2 + vectors.imag**2, axis=-1)
+    dot = np.abs(np.sum(vectors * vectors, axis=-1))
+    size: Floats = np.sqrt(np.where(ellipse, 0.5 * (squares + dot), squares))
+    return size
+
+
+def combine_sets(limits: LimitedRows, sizes: list[Floats]) -> Floats:
+    """Values (N, R) of all sets together: one order linearly, different orders linearly or as squares."""
+    by_order: dict[float, Floats] = {}
+    for loads, size in zip(limits.sets, sizes, strict=True):
+        earlier = by_order.get(loads.order)
+        by_order[loads.order] = size if earlier is None else earlier + size
+    every = np.stack(list(by_order.values()))
+    total: Floats = np.where(limits.squares, np.sqrt((every**2).sum(axis=0)), every.sum(axis=0))
+    return total * limits.factor
+
+
+def values_at(system: ScatterSystem, limits: LimitedRows, points: Floats) -> Floats:
+    """Values (N, R) of all rows at points (N, V+1), by direct solves."""
+    sizes = []
+    factored: dict[float, tuple[Complexes, Complexes]] = {}
+    for loads in limits.sets:
+        if loads.order not in factored:
+            factored[loads.order] = matrices_at(system, points, loads.order)
+        matrices, kappa = factored[loads.order]
+        omega = loads.order * np.sqrt(points[:, -1])
+        scale = omega[:, None] ** loads.powers
+        base = scale @ loads.bases
+        right = scale @ loads.loads + (kappa * base) @ system.axes
+        q = np.linalg.solve(matrices, right[:, :, None])[:, :, 0]
+        force = kappa * (q @ system.axes.T - base)
+        n, axes = len(system.mass), len(system.axes)
+        y = q @ limits.rows.reshape(-1, n).T + force @ limits.forces.reshape(-1, axes).T
+        y = y.reshape(len(points), limits.count, 3) + np.einsum("bl,lrc->brc", scale, loads.direct)
+        sizes.append(vector_size(y, limits.ellipse) * omega[:, None] ** limits.rate)
+    return combine_sets(limits, sizes)
