@@ -10,10 +10,10 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    from detune.brief.brief import Brief
-    from detune.response.assessment import Assessment
     from collections.abc import Callable
 
+    from detune.brief.brief import Brief
+    from detune.response.assessment import Assessment
     from detune.solvers.outcome import Progress, Settings
 
 MEETS, NONE_MEETS, FAULTY, STOPPED = 0, 1, 2, 3
@@ -63,10 +63,14 @@ def _parser() -> argparse.ArgumentParser:
     compare.set_defaults(verb=_compare)
     vary = verbs.add_parser("vary", help="run the study again for several values of one number")
     vary.set_defaults(verb=_vary)
+    size = verbs.add_parser(
+        "size", help="size stiffness, damping, ballast and absorbers between bounds, before there are parts"
+    )
+    size.set_defaults(verb=_size)
     schema = verbs.add_parser("schema", help="print the JSON Schema of a study file, for editors")
     schema.set_defaults(verb=_schema)
 
-    for verb in (check, run, assess, compare, vary):
+    for verb in (check, run, assess, compare, vary, size):
         verb.add_argument("study", metavar="STUDY", help="the study file (TOML)")
     wording = 'a design, as "group=part, group=2 x part + damper, group=(empty), ballast=40 kg"'
     run.add_argument(
@@ -76,10 +80,11 @@ def _parser() -> argparse.ArgumentParser:
     compare.add_argument(
         "--design", action="append", required=True, help=f"{wording}; repeat for each design"
     )
-    run.add_argument(
-        "--out", metavar="FOLDER", help="where the results go (default: results/ and the study's name)"
-    )
-    run.add_argument("--overwrite", action="store_true", help="replace an existing result folder")
+    for verb in (run, size):
+        verb.add_argument(
+            "--out", metavar="FOLDER", help="where the results go (default: results/ and the study's name)"
+        )
+        verb.add_argument("--overwrite", action="store_true", help="replace an existing result folder")
     vary.add_argument(
         "--set", required=True, metavar="KEY", help="the key to replace, such as allowable[2].limit"
     )
@@ -185,6 +190,22 @@ def _vary(options: argparse.Namespace) -> int:
             f"  {answer.design}"
         )
     return code
+
+
+def _size(options: argparse.Namespace) -> int:
+    from detune.report.folder import check_folder
+    from detune.report.sizing_page import sizing_summary, write_sizing
+    from detune.study.load import load_study
+    from detune.study.size import size_study
+
+    study = load_study(options.study)
+    folder = Path(options.out) if options.out else Path("results") / f"{Path(options.study).stem}-sizing"
+    check_folder(folder, options.overwrite)
+    result = size_study(study)
+    write_sizing(result, folder, options.overwrite)
+    print(sizing_summary(result))
+    print(f"\nResult folder: {folder} (open report.html in a browser)")
+    return result.exit_code
 
 
 def _schema(options: argparse.Namespace) -> int:

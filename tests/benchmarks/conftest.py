@@ -13,7 +13,9 @@ import pytest
 
 
 def pytest_addoption(parser: pytest.Parser) -> None:
-    parser.addoption("--benchmark-json-out", default=None, help="file for the figures of the benchmarks (JSON)")
+    parser.addoption(
+        "--benchmark-json-out", default=None, help="file for the figures of the benchmarks (JSON)"
+    )
     parser.addoption("--benchmark-long", action="store_true", help="also measure what takes minutes")
 
 
@@ -25,7 +27,11 @@ def figures(request: pytest.FixtureRequest) -> Iterator[dict[str, Any]]:
     found: dict[str, Any] = {}
     if path is not None and path.exists():
         found = json.loads(path.read_text(encoding="utf-8"))
-    found["machine"] = {"cores": os.cpu_count(), "architecture": platform.machine(), "python": platform.python_version()}
+    found["machine"] = {
+        "cores": os.cpu_count(),
+        "architecture": platform.machine(),
+        "python": platform.python_version(),
+    }
     yield found
     if path is not None:
         path.write_text(json.dumps(found, indent=1) + "\n", encoding="utf-8")

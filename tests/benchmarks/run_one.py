@@ -1,6 +1,6 @@
 """One bounded search in a process of its own: prints its time, answer and peak memory as JSON.
 
-    python tests/benchmarks/run_one.py PARTS GROUPS SEED AIM WORKERS
+python tests/benchmarks/run_one.py PARTS GROUPS SEED AIM WORKERS
 """
 
 from __future__ import annotations

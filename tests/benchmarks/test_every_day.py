@@ -38,7 +38,10 @@ def command(*arguments: str, repeats: int = 5) -> float:
     for _ in range(repeats + 1):
         before = resource.getrusage(resource.RUSAGE_CHILDREN)
         done = subprocess.run(
-            [sys.executable, *arguments], check=False, capture_output=True, env={**os.environ, "PYTHONPATH": path}
+            [sys.executable, *arguments],
+            check=False,
+            capture_output=True,
+            env={**os.environ, "PYTHONPATH": path},
         )
         after = resource.getrusage(resource.RUSAGE_CHILDREN)
         times.append(after.ru_utime + after.ru_stime - before.ru_utime - before.ru_stime)

@@ -2,21 +2,34 @@
 
 from __future__ import annotations
 
+import importlib.util
 import re
 import statistics
 import time
 from collections.abc import Callable
+from pathlib import Path
 from typing import Any
 
 import numpy as np
 import pytest
 
+from detune.proof.instances import InstanceSettings, make_instance, random_designs
 from detune.proof.kernel_source import BLOCK, complex_source, factor_source, inertia_source
 from detune.proof.kernels_numba import load_kernels
 from detune.proof.kernels_numpy import pack
+from detune.proof.response_rows import response_margin
+from detune.proof.search_compiled import response_screen
+
+_spec = importlib.util.spec_from_file_location(
+    "brute_force", Path(__file__).parents[1] / "proof" / "brute_force.py"
+)
+assert _spec is not None and _spec.loader is not None
+brute: Any = importlib.util.module_from_spec(_spec)
+_spec.loader.exec_module(brute)
 
 pytestmark = pytest.mark.benchmark
-BLOCKS, FREEDOMS = 64, 6
+# Eight blocks lie in the second-level cache, as those of a search do.
+BLOCKS, FREEDOMS = 8, 6
 
 
 def median_seconds(work: Callable[[], object], repeats: int = 9) -> float:
@@ -70,21 +83,23 @@ def test_complex_response_solves(figures: dict[str, Any]) -> None:
     blocks = np.ascontiguousarray(np.concatenate([lanes(np.ascontiguousarray(p)) for p in parts], axis=1))
     complex_block = kernels.complex_block
 
-    @njit
-    def all_blocks(blocks, space, out):
-        for k in range(blocks.shape[0]):
-            for i in range(blocks.shape[1]):
-                space[i] = blocks[k, i]
-            complex_block(space)
-            for i in range(out.shape[1]):
-                out[k, i] = space[blocks.shape[1] + i]
+    # The kernel leaves the systems as they are and writes the solution behind them.
+    space = np.concatenate([blocks, np.zeros((BLOCKS, (2 * n + 1) * BLOCK))], axis=1)
 
-    space = np.empty((2 * m + 4 * n + 1) * BLOCK)
-    out = np.empty((BLOCKS, 2 * n * BLOCK))
-    count = BLOCKS * BLOCK
-    kernel = median_seconds(lambda: all_blocks(blocks, space, out), 51) / count
-    batched = median_seconds(lambda: np.linalg.solve(matrices, right[:, :, None])) / count
-    loop = median_seconds(lambda: [np.linalg.solve(a, b) for a, b in zip(matrices, right, strict=True)], 3) / count
+    @njit
+    def all_blocks(space, times):
+        for _ in range(times):
+            for k in range(space.shape[0]):
+                complex_block(space[k])
+
+    count, times = BLOCKS * BLOCK, 100
+    kernel = median_seconds(lambda: all_blocks(space, times), 25) / (times * count)
+    batched = median_seconds(lambda: np.linalg.solve(matrices, right[:, :, None]), 25) / count
+    loop = (
+        median_seconds(lambda: [np.linalg.solve(a, b) for a, b in zip(matrices, right, strict=True)], 3)
+        / count
+    )
+    out = space[:, (2 * m + 2 * n) * BLOCK : -BLOCK]
     got = out.reshape(BLOCKS, 2, n, BLOCK).transpose(1, 0, 3, 2).reshape(2, count, n)
     expected = np.linalg.solve(matrices, right[:, :, None])[:, :, 0]
     assert np.allclose(got[0] + 1j * got[1], expected, rtol=1e-8, atol=1e-8)
@@ -114,22 +129,25 @@ def test_static_and_eigenvalue_kernels(figures: dict[str, Any]) -> None:
     factor_block, inertia_block = kernels.factor_block, kernels.inertia_block
 
     @njit
-    def factor_all(blocks, space, load):
-        for k in range(blocks.shape[0]):
-            for i in range(blocks.shape[1]):
-                space[i] = blocks[k, i]
-            factor_block(space, load)
+    def factor_all(blocks, space, load, times):
+        for _ in range(times):
+            for k in range(blocks.shape[0]):
+                for i in range(blocks.shape[1]):
+                    space[i] = blocks[k, i]
+                factor_block(space, load)
 
     @njit
-    def count_all(blocks, shift, count, good):
-        for k in range(blocks.shape[0]):
-            inertia_block(blocks[k], shift, count, good)
+    def count_all(blocks, shift, count, good, times):
+        for _ in range(times):
+            for k in range(blocks.shape[0]):
+                inertia_block(blocks[k], shift, count, good)
 
     load, space = np.ones(n), np.empty((m + n + 4) * BLOCK)
     shift, count, good = np.full(BLOCK, 2.0), np.empty(BLOCK), np.empty(BLOCK)
     total = BLOCKS * BLOCK
-    static = median_seconds(lambda: factor_all(blocks, space, load), 51) / total
-    inertia = median_seconds(lambda: count_all(blocks, shift, count, good), 51) / total
+    times = 300
+    static = median_seconds(lambda: factor_all(blocks, space, load, times), 25) / (times * total)
+    inertia = median_seconds(lambda: count_all(blocks, shift, count, good, times), 25) / (times * total)
     rate = dgemm_rate()
     solve = median_seconds(lambda: np.linalg.solve(stiffness, np.ones((total, n, 1)))) / total
     eigen = median_seconds(lambda: np.linalg.eigvalsh(stiffness)) / total
@@ -144,4 +162,35 @@ def test_static_and_eigenvalue_kernels(figures: dict[str, Any]) -> None:
         "batched_eigvalsh_ns": 1e9 * eigen,
         "times_batched_eigvalsh": eigen / inertia,
         "share_of_dgemm": operations(inertia_source(n)) / inertia / rate,
+    }
+
+
+def test_response_of_designs_with_all_limits(figures: dict[str, Any]) -> None:
+    """Assemble, solve and judge 15 frequencies of a design: compiled, batched numpy, and the tests' plain loop."""
+    selection = make_instance(InstanceSettings(parts=200, groups=4, seed=1))
+    designs = random_designs(selection, 4096, np.random.default_rng(3))
+    screen = response_screen(selection, load_kernels(FREEDOMS))
+    cases = len(selection.harmonic.frequency)
+    expected = response_margin(selection, designs)
+    assert np.allclose(screen(selection, designs), expected, rtol=1e-8, atol=1e-8)
+    compiled = median_seconds(lambda: screen(selection, designs), 15) / (4096 * cases)
+    batched = median_seconds(lambda: response_margin(selection, designs), 7) / (4096 * cases)
+    few = designs[:40].tolist()
+
+    def loop() -> None:
+        for *parts, step in few:
+            dynamic = selection.fixed.dynamic.copy()
+            for s, g in enumerate(selection.station_group):
+                for a in range(3):
+                    b = selection.stations[s, a]
+                    dynamic += selection.groups[g].kappa_dynamic[parts[g], a] * np.outer(b, b)
+            brute.response_margin(selection, parts, selection.ballast.mass[step], dynamic, FREEDOMS)
+
+    plain = median_seconds(loop, 3) / (len(few) * cases)
+    figures["response of a design at a frequency, all limits"] = {
+        "compiled_ns": 1e9 * compiled,
+        "batched_numpy_ns": 1e9 * batched,
+        "plain_loop_ns": 1e9 * plain,
+        "times_batched_numpy": batched / compiled,
+        "times_plain_loop": plain / compiled,
     }

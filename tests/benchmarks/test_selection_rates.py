@@ -36,7 +36,9 @@ def one(parts: int, groups: int, seed: int, aim: str = "least cost", workers: in
     return found
 
 
-def several(parts: int, groups: int, aim: str = "least cost", seeds: tuple[int, ...] = SEEDS) -> dict[str, Any]:
+def several(
+    parts: int, groups: int, aim: str = "least cost", seeds: tuple[int, ...] = SEEDS
+) -> dict[str, Any]:
     runs = [one(parts, groups, seed, aim) for seed in seeds]
     return {
         "median_seconds": statistics.median(run["seconds"] for run in runs),
@@ -75,7 +77,17 @@ def test_whole_front(figures: dict[str, Any], long: bool) -> None:
 
 def test_growth_with_parts_and_groups(figures: dict[str, Any]) -> None:
     found = {}
-    for parts, groups in [(100, 2), (100, 3), (100, 4), (50, 4), (400, 3), (200, 3), (200, 2), (800, 3), (400, 4)]:
+    for parts, groups in [
+        (100, 2),
+        (100, 3),
+        (100, 4),
+        (50, 4),
+        (400, 3),
+        (200, 3),
+        (200, 2),
+        (800, 3),
+        (400, 4),
+    ]:
         figure = several(parts, groups)
         found[f"{parts}^{groups}"] = {key: figure[key] for key in figure if key != "runs"}
     figures["growth"] = found

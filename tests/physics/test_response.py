@@ -77,7 +77,6 @@ class TestAgainstOthers:
     def test_peak_over_all_frequencies_against_python_control(self, seed):
         # X2: the H-infinity norm (a Hamiltonian bisection, nothing like a search over frequency).
         control = pytest.importorskip("control")
-        pytest.importorskip("slycot")
         m, k, _, c = machine(seed)
         a, b = state_space(m, k, c)
         reference = control.norm(control.ss(a, b[:, 2:3], np.eye(6, 12)[2:3], 0), p="inf")

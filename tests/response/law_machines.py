@@ -23,6 +23,7 @@ from detune.brief.allowable import (
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
 from detune.brief.forcing import BaseMotion, BasePulse, ForcePulse, RandomBaseMotion, RandomForce
+from detune.brief.state import State
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import AmplitudeTable, LawTable, LoadCurve, Relaxation, UnknownDamping
 from detune.problem.build import Problem, build
@@ -145,6 +146,18 @@ def conditions(kind: str, state: str | None = None) -> tuple[Condition, ...]:
         return (Condition(name="running", state=state),)
     times: dict[str, Any] = {"shafts": {"rotor": (5.0, 40.0)}, "run_up": {"rotor": 1.5}}
     return (Condition(name="running", steady=False, state=state, **times),)
+
+
+def machines_state(name: str, **changes: Any) -> State:
+    return State(name=name, **changes)
+
+
+def in_state(brief: Brief, state: State | None) -> Brief:
+    """The same brief with every condition judged in a state."""
+    if state is None:
+        return brief
+    judged = tuple(condition.model_copy(update={"state": state.name}) for condition in brief.conditions)
+    return brief.model_copy(update={"states": (state,), "conditions": judged})
 
 
 def problem_of(brief: Brief, *mounts: Mount) -> Problem:

@@ -75,7 +75,7 @@ def test_a_damper_is_refused_where_it_does_not_simply_add() -> None:
     assert "in series" in str(damper_refused(in_series, POT))
     assert "elastic" in str(damper_refused(ASH, elastic))
     for mount, damper in ((in_series, POT), (ASH, elastic)):
-        with pytest.raises(ValueError, match="series|elastic"):
+        with pytest.raises(ValueError, match=r"series|elastic"):
             with_damper(mount, damper)
     with pytest.raises(ValueError, match="0 mounts"):
         in_parallel(ASH, 0)

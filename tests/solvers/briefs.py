@@ -8,7 +8,15 @@ from typing import Any
 
 import numpy as np
 
-from detune.brief.allowable import Acceleration, Displacement, Sag, Separation, Tilt, TransmittedForce, Velocity
+from detune.brief.allowable import (
+    Acceleration,
+    Displacement,
+    Sag,
+    Separation,
+    Tilt,
+    TransmittedForce,
+    Velocity,
+)
 from detune.brief.brief import Brief
 from detune.brief.choice import Ballast, CatalogSource, Choice, Objectives
 from detune.brief.machine import Station
@@ -123,7 +131,9 @@ def small_problem(seed: int, trade: tuple[str, str] | None = None, most: int = 4
                 brief.forcing[1].model_copy(update={"unbalance": 1e-3}),
             ),
             "ballast": Ballast(position=(0.0, 0.0, 0.1), size=(0.8, 0.5, 0.1), steps=steps, cost_per_kg=0.05),
-            "objectives": Objectives(trade=trade or (("cost", "separation"), ("cost", "least-margin"))[seed % 2]),
+            "objectives": Objectives(
+                trade=trade or (("cost", "separation"), ("cost", "least-margin"))[seed % 2]
+            ),
         }
     )
     dashpots = dampers(damper("d1", 900.0, 3.0), damper("d2", 3000.0, 6.0, lateral=400.0))

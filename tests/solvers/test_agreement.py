@@ -15,6 +15,7 @@ from detune.proof.exact_test import exact_accept
 from detune.proof.instances import InstanceSettings, make_instance
 from detune.proof.search import SearchSettings
 from detune.proof.search_front import search_least_cost
+from detune.response.designs import Designs
 from detune.solvers import bounded, enumeration
 from detune.solvers.final_test import FinalTest
 from detune.solvers.nondominated import as_minimised, nondominated
@@ -23,7 +24,6 @@ from detune.solvers.own_process import OwnProcess
 from detune.solvers.pyomo_model import Task, run
 from detune.solvers.pyomo_statement import statement_of
 from detune.solvers.second_opinion import least_cost
-from detune.response.designs import Designs
 
 
 def _load(name: str, path: Path) -> Any:

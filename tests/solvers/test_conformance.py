@@ -1,4 +1,4 @@
-"""What every solver in `SOLVERS` must do: known optima, "none exists", early stops that are labelled, counts that add up."""
+"""What every solver must do: known optima, "none exists", labelled early stops, counts that add up."""
 
 from __future__ import annotations
 
@@ -58,7 +58,9 @@ def on_two_mounts() -> Problem:
         Station(name="S", group="G", position=(0.0, 0.0, 0.0)),
         Station(name="T", group="H", position=(0.0, 0.0, 0.0)),
     )
-    return on_one_mount(20.0, stations=stations, choices=tuple(briefs.Choice(group=g, catalogs=("list",)) for g in "GH"))
+    return on_one_mount(
+        20.0, stations=stations, choices=tuple(briefs.Choice(group=g, catalogs=("list",)) for g in "GH")
+    )
 
 
 @ALL
@@ -85,7 +87,9 @@ def test_finds_the_known_optimum_of_two_groups(solver: ModuleType) -> None:
 @ALL
 def test_takes_the_ballast_that_opens_the_brief(solver: ModuleType) -> None:
     """The mass moves by 100 N / (m w^2 - k): 44.1 um with 100 kg on ash, 30.7 um with 140 kg (40 kg at 0.1 each)."""
-    ballast = Ballast(position=(0.0, 0.0, 0.0), size=(0.1, 0.1, 0.1), steps=(0.0, 40.0, 80.0), cost_per_kg=0.1)
+    ballast = Ballast(
+        position=(0.0, 0.0, 0.0), size=(0.1, 0.1, 0.1), steps=(0.0, 40.0, 80.0), cost_per_kg=0.1
+    )
     limit = Displacement(at="P", direction="z", measure="peak", limit=35e-6)
     brief = machines.one_axis(100.0, machines.force(25.0, 100.0), [limit], ballast=ballast)
     ash = [part for part in parts() if part.part != "elm"]

@@ -13,8 +13,8 @@ import numpy as np
 import pytest
 
 from detune.ground.errors import SolveError
-from detune.proof.instances import InstanceSettings, make_instance, random_designs
 from detune.proof.exact_test import exact_accept, natural_frequencies, separation_met
+from detune.proof.instances import InstanceSettings, make_instance, random_designs
 from detune.solvers import second_opinion
 from detune.solvers.outcome import Settings
 from detune.solvers.own_process import OwnProcess
@@ -67,9 +67,7 @@ def test_a_process_that_fails_or_dies_is_an_error() -> None:
 @pytest.mark.parametrize("backend", ["highs", "scip_direct"])
 def test_statuses_are_mapped_honestly(backend: Any) -> None:
     """Infeasible once everything is cut off; a limit that is over at once proves nothing."""
-    everything = tuple(
-        Cut(tuple(tuple(range(size)) for size in STATEMENT.sizes), step) for step in range(2)
-    )
+    everything = tuple(Cut(tuple(tuple(range(size)) for size in STATEMENT.sizes), step) for step in range(2))
     none = run(Task(STATEMENT, everything, (), backend, 60.0))
     assert none.status == "infeasible" and none.bound == math.inf
     some = run(Task(STATEMENT, (), (), backend, 120.0))

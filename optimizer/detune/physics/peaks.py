@@ -23,6 +23,7 @@ COARSE_GAP_AT_EDGE = 0.5
 COARSE_GAP_BETWEEN = 0.3
 # Most that a response rises beside a pole on the slope of another, over the sample at that pole.
 SHOULDER_RISE = 3.0
+CROWDED_RISE = 20.0
 # Most that a sampled peak is taken to fall short of the true one while a neighbour is that far down.
 COARSE_RISE = 5.0
 # The same while its neighbours are only far away, per gap in distances to the nearest pole.
@@ -152,15 +153,20 @@ def _wide_gaps(samples: Samples, peak: BoolArray) -> Peaks:
 
 
 def _shoulders(samples: Samples, peak: BoolArray) -> Peaks:
-    """Samples at a pole on the slope of another: two close poles can make a hump on the falling side."""
+    """Samples at a pole that are no peak: two close poles can make a hump on the falling side.
+
+    Where poles crowd, two may all but cancel at their own frequencies and stand high beside them.
+    """
     used = np.isfinite(samples.omega)
     place = np.where(used, samples.omega, 0.0)
     pole = samples.nearest_pole(slice(None), place)
-    beside = np.abs(place[..., None] - samples.poles[:, None, :]).min(axis=2, initial=np.inf)
-    at_pole = used & (beside < 0.2 * pole)
+    beside = np.abs(place[..., None] - samples.poles[:, None, :])
+    at_pole = used & (beside.min(axis=2, initial=np.inf) < 0.2 * pole)
+    crowded = np.sum(beside < 2.0 * samples.half_widths[:, None, :], axis=2) > 1
+    most = np.where(crowded, CROWDED_RISE, SHOULDER_RISE)
     gap = np.where(used[:, 1:], np.diff(place, axis=1), 0.0)
     values = samples.values
-    high = (SHOULDER_RISE * values > samples.best[:, None]) & ~peak
+    high = (most[samples.design] * values > samples.best[:, None]) & ~peak
     found = []
     for side in (1, -1):
         here, there = (slice(None, -1), slice(1, None))[::side]
@@ -169,8 +175,8 @@ def _shoulders(samples: Samples, peak: BoolArray) -> Peaks:
         i = i + (side < 0)
         design = samples.design[curve]
         step = 0.9 * COARSE_GAP * pole[design, i]
-        rise = np.full(curve.size, 0.5 * (1.0 + SHOULDER_RISE))
-        found.append(Peaks(curve, values[curve, i], rise, place[design, i] + side * step, 0.2 * step))
+        rise = 0.5 * (1.0 + most[design, i])
+        found.append(Peaks(curve, values[curve, i], rise, place[design, i] + side * step, 0.1 * step))
     return _joined(found)
 
 
@@ -198,7 +204,7 @@ def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[Float
     return (
         np.where(coarse, hidden, rise),
         places,
-        np.where(coarse, 0.3 * np.minimum(to_left, to_right), reach),
+        np.where(coarse, 0.1 * np.minimum(to_left, to_right), reach),
     )
 
 
@@ -229,7 +235,7 @@ def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatAr
     step = np.minimum(np.minimum(_foot(near, y_near), 0.9 * COARSE_GAP_AT_EDGE * bracket.pole), 0.4 * near)
     place = np.where(coarse, step, np.clip(vertex, 0.05 * near, 0.7 * near))
     rise = np.where(coarse, _hidden(rise, y_near, near / bracket.pole), rise)
-    reach = np.where(coarse, 0.3 * step, np.minimum(reach, 0.3 * place))
+    reach = np.where(coarse, 0.1 * step, np.minimum(reach, 0.3 * place))
     return rise, [np.where(rightward, place, -place)], reach
 
 

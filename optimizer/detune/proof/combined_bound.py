@@ -16,8 +16,10 @@ import numpy as np
 from detune.proof.scatter_data import LimitedRows, LoadSet, ScatterSystem, combine_sets, vector_size
 from detune.proof.selection_data import Complexes, Floats, Integers
 
-WIDENING = 1.0e-7
-CLEAR = 1.0 + 1.0e-7
+WIDENING = 1.0e-6
+"""Relative widening for rounding: see LOST."""
+LOST = 1.0e-9
+"""Least distance from singular, over the greatest eigenvalue, so that inverses keep six digits."""
 TRIALS: tuple[tuple[bool, float], ...] = tuple(
     (turned, shift) for turned in (False, True) for shift in (0.0, 0.3, 1.0, 3.0, 10.0)
 )
@@ -113,7 +115,7 @@ def scaled_matrices(system: ScatterSystem, frame: Frame, high: Floats, found: Di
     cover = (found.rho @ frame.absolute.reshape(-1, size)).reshape(shape)
     # A little of the mass matrix keeps R invertible; a larger R is still a cover.
     trace = np.einsum("bii->b", cover) / np.trace(system.mass)
-    floor = 1e-6 * np.maximum(trace, 1e-6 * high[:, -1])
+    floor = 1e-4 * np.maximum(trace, 1e-6 * high[:, -1])
     cover = cover + floor[:, None, None] * system.mass
     weight = np.linalg.inv(np.linalg.cholesky(cover))
     return Scaled(d0, weight @ d0 @ np.swapaxes(weight, 1, 2), weight, found)
@@ -204,8 +206,8 @@ def _ball(
     d = (scaled.matrix * turn[:, None, None] + 1j * shift * np.eye(n)) / r[:, None, None]
     adjoint = np.swapaxes(d.conj(), 1, 2)
     gram = adjoint @ d
-    least = np.linalg.eigvalsh(gram)[:, 0]
-    bounded = least > CLEAR
+    values = np.linalg.eigvalsh(gram)
+    bounded = values[:, 0] - 1.0 > LOST * values[:, -1]
     # Where unbounded, any invertible stand-in serves: its result is replaced by infinity.
     lift = np.where(bounded, -1.0, 1.0)[:, None, None] * np.eye(n)
     g, h = np.linalg.inv(gram + lift), np.linalg.inv(d @ adjoint + lift)

@@ -15,8 +15,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from detune.proof.loewner import Flags
 from detune.proof.robust_data import RobustError
-from detune.proof.selection_data import Complexes, Flags, Floats, Integers
+from detune.proof.selection_data import Complexes, Floats, Integers
 
 
 @dataclass(frozen=True, eq=False)

@@ -37,11 +37,11 @@ def write_folder(result: Result, folder: str | Path, overwrite: bool = False) ->
     target = Path(folder)
     _check(target, overwrite)
     target.parent.mkdir(parents=True, exist_ok=True)
-    building = _sibling(target, "writing")
+    building = sibling(target, "writing")
     building.mkdir()
     try:
         _fill(result, building)
-        _put_in_place(building, target)
+        put_in_place(building, target)
     finally:
         shutil.rmtree(building, ignore_errors=True)
     return target
@@ -70,16 +70,18 @@ def _check(target: Path, overwrite: bool) -> None:
         )
 
 
-def _sibling(target: Path, purpose: str) -> Path:
+def sibling(target: Path, purpose: str) -> Path:
+    """Return the name of a folder beside the target, in which it is written or kept meanwhile."""
     resolved = target.resolve()
     return resolved.with_name(f".{resolved.name}.{purpose}-{os.getpid()}")
 
 
-def _put_in_place(building: Path, target: Path) -> None:
+def put_in_place(building: Path, target: Path) -> None:
+    """Rename a finished folder to its target, replacing an earlier one only when that is out of the way."""
     if not target.exists():
         building.rename(target)
         return
-    earlier = _sibling(target, "earlier")
+    earlier = sibling(target, "earlier")
     target.rename(earlier)
     try:
         building.rename(target)

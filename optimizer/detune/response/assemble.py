@@ -58,7 +58,8 @@ class PartBatch:
             static = group.arrays.stiffness_static[part, 2]
             curved = np.array([group.laws.curves[index] is not None for index in part])
             tangent = self.working.tangent[number] / (station.factor if station.factor > 0.0 else 1.0)
-            ratio = np.where(curved, tangent / static, 1.0)
+            # A design that finds no rest topples; the listed stiffness keeps its numbers finite.
+            ratio = np.where(curved & np.isfinite(tangent), tangent / static, 1.0)
             stiffness = stiffness * np.stack([np.ones_like(ratio), np.ones_like(ratio), ratio], axis=1)
         if self.amplitude is not None and group.laws is not None and group.laws.with_amplitude:
             ratio, eta = amplitude_part(group.laws, part, self.amplitude[number])
@@ -98,7 +99,7 @@ class Dynamic:
 
     The dynamic stiffness is D(w) = K + j H + j w C - w^2 M, and what frequency laws of `parts` add. K contains
     gravity's geometric stiffness, which `geometric` holds alone. A design that would not stand on its dynamic
-    stiffness `topples` (D,): K is then without gravity, and no response of it counts.
+    stiffness, or finds no rest on its curves, `topples` (D,): K is then without gravity, and no response counts.
     """
 
     mass: Floats
@@ -163,7 +164,7 @@ def _standing(dynamic: Dynamic) -> Dynamic:
     except np.linalg.LinAlgError:
         topples = np.linalg.eigvalsh(lowest)[:, 0] <= 0.0
         kept = dynamic.stiffness - np.where(topples[:, None, None], dynamic.geometric, 0.0)
-        return replace(dynamic, stiffness=kept, topples=topples)
+        return replace(dynamic, stiffness=kept, topples=topples | dynamic.topples)
     return dynamic
 
 
@@ -179,10 +180,9 @@ def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Flo
     viscous = np.repeat(model.fixed_viscous[None], designs.count, axis=0)
     for number, station in enumerate(model.stations):
         k, eta, c = parts.constants(number)
-        # A design that finds no rest has failed its static limits; its response is not looked at.
-        k = np.nan_to_num(k)
         for matrix, values in ((stiffness, k), (hysteretic, k * eta), (viscous, c)):
             scaled = station.parallel * station.factor * values
             matrix += np.einsum("da,ai,aj->dij", scaled, station.rows, station.rows, optimize=True)
-    still = np.zeros(designs.count, dtype=bool)
+    working = parts.working
+    still = np.zeros(designs.count, dtype=bool) if working is None else ~np.isfinite(working.q).all(axis=1)
     return _standing(Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric, still))

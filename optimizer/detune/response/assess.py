@@ -22,6 +22,7 @@ from detune.brief.allowable import (
 from detune.brief.allowable.views import DesignView, Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
+from detune.ground.units import show
 from detune.parts.kinds.mount import Mount
 from detune.physics import modes, separation
 from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
@@ -36,6 +37,7 @@ from detune.response.direct_amplitude import (
 )
 from detune.response.direct_bands import direct_band_ratio
 from detune.response.direct_modes import DirectModes, direct_modes
+from detune.response.direct_random import RandomPart
 from detune.response.direct_supremum import (
     Pairs,
     Supremum,
@@ -52,6 +54,7 @@ Floats = NDArray[np.float64]
 TWO_PI = 2.0 * np.pi
 BY_ITERATION = "at the amplitude it produces itself, by iteration"
 DOES_NOT_STAND = "the machine does not stand"
+LEFT_ITS_CURVE = "a part left its load-deflection curve"
 NONE_FOUND = "no amplitude was found that reproduces itself"
 
 
@@ -139,7 +142,8 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
         judged = _band_rows(each, condition, allowables, working)
         judged += _harmonic_rows(each, condition, allowables, working)
         judged = judged if working is None else [_at_amplitude(row) for row in judged]
-        rows += [_without_rest(row) for row in judged] if each.machine.topples else judged
+        topples = each.machine.topples
+        rows += [_without_rest(row) if topples else _on_curve(each, row) for row in judged]
     return [_noted(each, row) for row in rows]
 
 
@@ -162,6 +166,12 @@ def _without_rest(row: MarginRow) -> MarginRow:
     # Every response is without bound where the machine falls; a limit of infinity holds all the same.
     free = row.upper is not None and np.isinf(row.upper)
     return row if free else replace(row, value=np.inf, margin=-1.0, note=DOES_NOT_STAND)
+
+
+def _on_curve(each: _InState, row: MarginRow) -> MarginRow:
+    """Return a row, with a note where no finite value came of it because a part left its curve."""
+    left = np.isinf(row.value) and bool(row.upper is not None and np.isfinite(row.upper)) and each.machine.rest is not None
+    return replace(row, note=LEFT_ITS_CURVE) if left and not row.note else row
 
 
 def _at_amplitude(row: MarginRow) -> MarginRow:
@@ -316,9 +326,18 @@ def _judged(static: DirectStatic, condition: Condition, pairs: Pairs, found: Sup
             None,
             float(allowable.bound(static, place)[0]),
             None if np.isnan(found.speed[index]) else float(found.speed[index]),
+            "" if found.noise is None else _random_note(allowable, found.noise, index),
         )
         for index, (allowable, place) in enumerate(pairs)
     ]
+
+
+def _random_note(allowable: HarmonicAllowable, noise: RandomPart, index: int) -> str:
+    """Return how the random part is counted: as its expected extreme, or with that beside it."""
+    lasting = show(noise.duration, "time")
+    if allowable.statistic() in ("peak", "peak-to-peak"):
+        return f"random part: expected extreme in {lasting}"
+    return f"expected extreme of the random part in {lasting}: {show(float(noise.extreme[index]), allowable.unit)}"
 
 
 def _station_rows(brief: Brief, static: DirectStatic, design: Design) -> tuple[StationRow, ...]:

@@ -359,7 +359,9 @@ class DirectMachine:
 
     @cached_property
     def topples(self) -> bool:
-        """Whether the machine would not stand on its dynamic stiffness."""
+        """Whether the machine would not stand on its dynamic stiffness, or finds no rest on its curves."""
+        if self.rest is not None and not np.all(np.isfinite(self.rest.q)):
+            return True
         mesh = np.ix_(self.free, self.free)
         own = self.stiffness(np.array([1e-3]), with_gravity=False)[0].real[mesh]
         if self.brief.gravity_stiffness:

@@ -28,20 +28,35 @@ class Variances:
     rates: Floats
 
 
+@dataclass(frozen=True, eq=False)
+class RandomPart:
+    """What noise counts as in each row (R,), and its mean largest magnitude (R,) in the `duration` (s) it lasts."""
+
+    value: Floats
+    extreme: Floats
+    duration: float
+
+
 def direct_noise_values(
     machine: DirectMachine, found: DirectModes, noises: tuple[Noise, ...], pairs: Pairs
 ) -> Floats:
     """Return what independent noises together count as in each row (R,), all lasting as long as the longest."""
+    return direct_noise(machine, found, noises, pairs).value
+
+
+def direct_noise(
+    machine: DirectMachine, found: DirectModes, noises: tuple[Noise, ...], pairs: Pairs
+) -> RandomPart:
+    """Return what independent noises together count as in each row, and their expected extremes beside it."""
     parts = [direct_variances(machine, found, noise, pairs) for noise in noises]
     moved = sum((part.moved for part in parts), np.zeros(len(pairs)))
     rates = sum((part.rates for part in parts), np.zeros(len(pairs)))
     duration = max(noise.duration for noise in noises)
-    return np.array(
-        [
-            noise_amplitude(moved[[index]], rates[[index]], duration, allowable.statistic())[0]
-            for index, (allowable, _) in enumerate(pairs)
-        ]
-    )
+    value = [
+        noise_amplitude(moved[[index]], rates[[index]], duration, allowable.statistic())[0]
+        for index, (allowable, _) in enumerate(pairs)
+    ]
+    return RandomPart(np.array(value), noise_amplitude(moved, rates, duration, "peak"), duration)
 
 
 def direct_variances(machine: DirectMachine, found: DirectModes, noise: Noise, pairs: Pairs) -> Variances:

@@ -14,7 +14,7 @@ from detune.brief.forcing import Tone
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_motion import direct_passage_values, direct_transient_values
-from detune.response.direct_random import direct_noise_values
+from detune.response.direct_random import RandomPart, direct_noise
 from detune.response.direct_views import DirectTone
 
 Floats = NDArray[np.float64]
@@ -53,10 +53,14 @@ def steady_intervals(brief: Brief, state: str | None = None) -> list[tuple[float
 
 @dataclass(frozen=True)
 class Supremum:
-    """Amplitude of each row over the whole range, and the speed (Hz) of its largest part; both (R,)."""
+    """Amplitude of each row over the whole range, and the speed (Hz) of its largest part; both (R,).
+
+    `noise`: what random forcing has in it, None where there is none.
+    """
 
     value: Floats
     speed: Floats
+    noise: RandomPart | None = None
 
 
 def forced_suprema(machine: DirectMachine, found: DirectModes, condition: Condition, pairs: Pairs) -> Supremum:
@@ -85,15 +89,16 @@ def forced_suprema(machine: DirectMachine, found: DirectModes, condition: Condit
         largest = np.maximum(largest, part.value)
     noises = tuple(noise for forcing in acting for noise in forcing.noises())
     transients = tuple(transient for forcing in acting for transient in forcing.transients())
-    if noises:
-        parts.append(direct_noise_values(machine, found, noises, pairs))
+    random = direct_noise(machine, found, noises, pairs) if noises else None
+    if random is not None:
+        parts.append(random.value)
     if transients:
         parts.append(direct_transient_values(machine, found, transients, pairs))
     total = np.zeros(len(pairs))
     for part_values in parts:
         for index, (allowable, _) in enumerate(pairs):
             total[index] = combine(total[[index]], part_values[[index]], allowable.statistic())[0]
-    return Supremum(total, at)
+    return Supremum(total, at, random)
 
 
 def coherent_sets(tones: Iterable[Tone]) -> list[tuple[Tone, ...]]:

@@ -9,10 +9,11 @@ Floats = NDArray[np.float64]
 def upper_margin(value: Floats, limit: Floats) -> Floats:
     """Return limit / value - 1. A value of zero or less has an infinite margin; a limit of zero has -1 if exceeded.
 
-    A value without bound has -1, except where the limit is infinite, which is none.
+    A value without bound has -1, except where the limit is infinite, which is none. A value that is not a number
+    has a margin that is none.
     """
     value, limit = np.broadcast_arrays(np.asarray(value, float), np.asarray(limit, float))
-    margin = np.full(value.shape, np.inf)
+    margin = np.where(np.isnan(value), np.nan, np.inf)
     np.divide(limit, value, out=margin, where=(value > 0.0) & ~np.isinf(limit))
     return margin - 1.0
 
@@ -26,7 +27,7 @@ def lower_margin(value: Floats, limit: Floats) -> Floats:
     value, limit = np.broadcast_arrays(np.asarray(value, float), np.asarray(limit, float))
     at_zero = np.where(value > 0.0, np.inf, np.where(value < 0.0, -np.inf, 1.0))
     at_zero = np.where(np.isneginf(limit) & ~np.isnan(value), np.inf, at_zero)
-    ratio = at_zero.copy()
+    ratio = np.where(np.isnan(value), np.nan, at_zero)
     np.divide(value, limit, out=ratio, where=limit > 0.0)
     ratio = np.where((limit < 0.0) & (value >= 0.0), np.inf, ratio)
     np.divide(limit, value, out=ratio, where=(limit < 0.0) & (value < 0.0))

@@ -135,7 +135,7 @@ class MotionView:
         total = self.floor[rate][:, None] * self.base + np.zeros_like(self._rates(rate)[:, :1])
         if self.model.frame.flexible_floor:
             total = total + self._rates(rate)[:, -1:] * np.array([0.0, 0.0, 1.0])
-        return total[None]
+        return np.asarray(total)[None]
 
     def station_deflection(self, station: str, rate: int = 0) -> Responses:
         return np.asarray(self._rates(rate) @ find_station(self.model, station).rows.T)[None]

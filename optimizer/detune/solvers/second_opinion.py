@@ -34,7 +34,7 @@ NO_LIMIT = 1.0e6
 class Opinion:
     """What came of it: the design of least cost, or none, why it stopped, and below what cost none lies.
 
-    `runs` counts the solver's runs, `cuts` what was cut off, `solver_seconds` the processor time inside the solver alone.
+    `runs` counts the solver's runs, `cuts` what was cut off; `solver_seconds` is its processor time alone.
     """
 
     stopped: Stopped
@@ -166,7 +166,7 @@ def _outcome(problem: Problem, tests: FinalTest, opinion: Opinion, seconds: floa
     designs = none if opinion.parts is None else _designs(opinion.parts, opinion.step)
     least = tests.judge(designs)[1] if designs.count else np.zeros(0)
     finished = opinion.stopped == "finished"
-    rule = f"not cheaper, or excluded by a static limit, a tone or one of {opinion.cuts} cuts: proven by the MILP solver"
+    rule = f"not cheaper, or excluded by a static limit, a tone or one of {opinion.cuts} cuts: proven by a MILP solver"
     excluded = problem.count - designs.count if finished else 0
     return Outcome(
         method=NAME,

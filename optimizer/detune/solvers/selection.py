@@ -4,6 +4,8 @@ What the arrays cannot state (resultants, sums over orders, suprema between samp
 out there and decided by the final test, so a design the search discards is rightly discarded.
 """
 
+import math
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -183,7 +185,7 @@ def _sampled(family: Family, loads: tuple[Load, ...]) -> Floats:
 
 
 def _factor(statistic: str) -> float:
-    return {"peak": 1.0, "3-sigma": 1.0, "rms": 2.0**0.5, "peak-to-peak": 0.5}[statistic]
+    return {"peak": 1.0, "3-sigma": 1.0, "rms": math.sqrt(2.0), "peak-to-peak": 0.5}[statistic]
 
 
 def _point_limit(group: HarmonicRequirements, key: tuple[str, int], omega: float) -> float:

@@ -117,27 +117,45 @@ def nondominated(points: list[FrontPoint], trade: tuple[str, ...]) -> tuple[Fron
 
 
 def _range(brief: Brief, axis: OneAxis, problem: OneAxisProblem, name: str) -> tuple[float, float] | None:
-    """Least and greatest useful level of an objective that is held; None where nothing is feasible."""
+    """Levels of an objective from its best to the worst it needs where another is best; None where none is feasible."""
     if name == "worst-response":
         low, outcome = least_level(problem)
         return (low * (1.0 + 1e-6), 1.0) if outcome.branches and low <= 1.0 else None
-    outcome = solve_one_axis(replace(problem, objective=objective_of(brief, problem, name)))
-    if not outcome.branches:
+    best = _best(brief, axis, problem, name)
+    if best is None:
         return None
-    best = outcome.branches[0].best.objective
+    ends = [best]
+    for other in sizing_of(brief).trade:
+        if other == name:
+            continue
+        held = _at_best(brief, axis, problem, other)
+        value = None if held is None else _best(brief, axis, held, name)
+        if other == "cost":
+            free = solve_one_axis(replace(problem, objective=objective_of(brief, problem, "cost")))
+            at = values_of(brief, axis.pieces, free.branches[0].best)
+            value = float(one_axis_objectives(brief, axis, at[None])[name][0])
+        ends += [] if value is None else [value]
+    low, high = min(ends), max(ends)
     if name == "separation":
-        return (max(problem.separation or 0.0, 0.0), best * (1.0 - 1e-6))
-    if name == "added-mass":
-        assert problem.ballast is not None
-        return (best, problem.ballast.most)
-    # The level at which it no longer binds: its value where the other objective is free.
-    free = solve_one_axis(replace(problem, objective=objective_of(brief, problem, _other(brief, name))))
-    loose = one_axis_objectives(brief, axis, values_of(brief, axis.pieces, free.branches[0].best)[None])[name][0]
-    return (best * (1.0 + 1e-6), max(float(loose), best * 1.01))
+        return low, high * (1.0 - 1e-6)
+    return low * (1.0 + 1e-6), high * (1.0 + 2e-6)
 
 
-def _other(brief: Brief, name: str) -> str:
-    return next(each for each in ORDER if each in sizing_of(brief).trade and each != name)
+def _best(brief: Brief, axis: OneAxis, problem: OneAxisProblem, name: str) -> float | None:
+    outcome = solve_one_axis(replace(problem, objective=objective_of(brief, problem, name)))
+    return outcome.branches[0].best.objective if outcome.branches else None
+
+
+def _at_best(brief: Brief, axis: OneAxis, problem: OneAxisProblem, name: str) -> OneAxisProblem | None:
+    """The problem with an objective held at its own best."""
+    if name == "cost":
+        return None
+    if name == "worst-response":
+        return at_level(problem, least_level(problem)[0] * (1.0 + 1e-6))
+    best = _best(brief, axis, problem, name)
+    if best is None:
+        return None
+    return HOLD[name](problem, best * (1.0 - 1e-6) if name == "separation" else best * (1.0 + 1e-6))
 
 
 def _held(
@@ -153,11 +171,13 @@ def _held(
     return solve_one_axis(replace(changed, objective=objective_of(brief, changed, minimised)))
 
 
-def _least_mass(problem: OneAxisProblem, level: float) -> OneAxisProblem | None:
+def _mass_at(problem: OneAxisProblem, level: float) -> OneAxisProblem | None:
+    """Ballast held at the level itself: every point of the front has some ballast, and is best among its equals."""
     ballast = problem.ballast
-    if ballast is None or level < ballast.least - 1e-9:
+    if ballast is None or not ballast.least - 1e-9 <= level <= ballast.most + 1e-9:
         return None
-    return replace(problem, ballast=Ballast(ballast.least, max(level, ballast.least), ballast.step))
+    level = min(max(level, ballast.least), ballast.most)
+    return replace(problem, ballast=Ballast(level, level))
 
 
 def _bounded(key: str) -> Callable[[OneAxisProblem, float], OneAxisProblem | None]:
@@ -174,7 +194,7 @@ def _apart(problem: OneAxisProblem, level: float) -> OneAxisProblem | None:
 
 
 HOLD: dict[str, Callable[[OneAxisProblem, float], OneAxisProblem | None]] = {
-    "added-mass": _least_mass,
+    "added-mass": _mass_at,
     "damping": _bounded("damping_bounds"),
     "stiffness": _bounded("stiffness_bounds"),
     "separation": _apart,

@@ -27,6 +27,8 @@ from detune.sizing.made_parts import Made, made_design
 from detune.solvers.size_batch import batch, exact_stages, response_margin
 
 Floats = NDArray[np.float64]
+# Rank, predicted shortfall, part of each group, ballast step.
+_Listed = tuple[float, float, tuple[int, ...], int]
 STEP = 1e-3
 LEAST_LOSS = 1e-3
 SHORT_LIST = 300
@@ -58,8 +60,29 @@ class Nearest:
     met: int
 
 
-def nearest_parts(brief: Brief, values: Floats, problem: Problem, goal: str, sense: float, shown: int = 5) -> Nearest:
-    """Nearest real designs of the study's own `problem` to the point `values` (u,) of the unknowns."""
+def nearest_parts(
+    brief: Brief, ideals: list[Floats], problem: Problem, goal: str, sense: float, shown: int = 4
+) -> Nearest:
+    """Nearest real designs of the study's own `problem` to the points `ideals`, each (u,), best ideal first.
+
+    Every ideal (the best of each branch, points of the front) has an equal share of the short list.
+    """
+    merged: dict[tuple[tuple[int, ...], int], _Listed] = {}
+    lists = [_short_list(brief, values, problem) for values in ideals]
+    for place in range(max(len(each) for each in lists)):
+        for each in lists:
+            if place < len(each) and len(merged) < SHORT_LIST:
+                merged.setdefault((each[place][2], each[place][3]), each[place])
+    listed = list(merged.values())
+    designs = Designs(
+        np.array([item[2] for item in listed], dtype=np.intp).reshape(len(listed), -1),
+        np.array([item[3] for item in listed], dtype=np.intp),
+    )
+    return _judged(brief, problem, designs, listed, goal, sense, shown)
+
+
+def _short_list(brief: Brief, values: Floats, problem: Problem) -> list[_Listed]:
+    """Real designs by their predicted shortfall from one ideal, the least first."""
     ideal = made_design(brief, values)
     margins, slope, offsets = sensitivities(ideal)
     loads = assess(ideal.brief, ideal.design).stations
@@ -83,19 +106,14 @@ def nearest_parts(brief: Brief, values: Floats, problem: Problem, goal: str, sen
             tie = MOVED * float(np.linalg.norm(there - margins))
             listed.append((short + tie, short, tuple(each[0] for each in chosen), step))
     listed.sort(key=lambda item: (item[0], item[2], item[3]))
-    listed = listed[:SHORT_LIST]
-    designs = Designs(
-        np.array([item[2] for item in listed], dtype=np.intp).reshape(len(listed), -1),
-        np.array([item[3] for item in listed], dtype=np.intp),
-    )
-    return _judged(brief, problem, designs, listed, goal, sense, shown)
+    return listed[:SHORT_LIST]
 
 
 def _judged(
     brief: Brief,
     problem: Problem,
     designs: Designs,
-    listed: list[tuple[float, float, tuple[int, ...], int]],
+    listed: list[_Listed],
     goal: str,
     sense: float,
     shown: int,
@@ -110,7 +128,7 @@ def _judged(
     met = least >= -1e-6
     order = sorted(range(designs.count), key=lambda k: (not met[k], sense * values[goal][k] if met[k] else -least[k]))
     found: list[NearDesign] = []
-    for k in order[: 4 * shown]:
+    for k in order[: 2 * shown]:
         judged = assess(brief, problem.design(designs, k))
         if judged.meets or not met.any():
             found.append(NearDesign(judged, listed[k][0], listed[k][1]))

@@ -120,7 +120,6 @@ def values_of(brief: Brief, pieces: int, design: SizedDesign) -> Floats:
 def _told(
     brief: Brief, statement: OneAxis, outcome: OneAxisOutcome, inside: OneAxisOutcome, level: float | None
 ) -> OneAxisSizing:
-    nearby = {branch.name: branch.best for branch in inside.branches}
     branches = []
     constant = constant_cost(brief) if sizing_of(brief).goal == "cost" else 0.0
     for branch in outcome.branches:
@@ -131,15 +130,43 @@ def _told(
             SizedBranch(
                 name=branch.name,
                 stiffness=(low / statement.pieces, high / statement.pieces),
-                values=values_of(brief, statement.pieces, nearby.get(branch.name, best)),
+                values=values_of(brief, statement.pieces, _inside(inside, best)),
                 objective=value,
                 natural_frequency=best.natural_frequency,
                 tight=best.tight,
             )
         )
+    branches = _named_apart(branches, brief)
     bound = outcome.bound + constant if level is None else level
     gap = outcome.gap if level is None else LEVEL * level
     return OneAxisSizing(statement, tuple(branches), bound, gap)
+
+
+def _inside(inside: OneAxisOutcome, best: SizedDesign) -> SizedDesign:
+    """The design of the tightened problem that belongs to a branch; the branch's own where its island is too small."""
+
+    def away(other: SizedDesign) -> float:
+        pairs = ((best.stiffness, other.stiffness), (best.damping, other.damping), (best.mass, other.mass))
+        return max(abs(a - b) / max(abs(a), abs(b), 1e-300) for a, b in pairs)
+
+    near = min((branch.best for branch in inside.branches), key=away, default=best)
+    return near if away(near) < 0.02 else best
+
+
+def _named_apart(branches: list[SizedBranch], brief: Brief) -> list[SizedBranch]:
+    """Branches of one name told apart by their ballast, or else by number."""
+    from detune.ground.units import show
+
+    names = [branch.name for branch in branches]
+    column = next((k for k, u in enumerate(sizing_of(brief).unknown) if u.kind == "ballast"), None)
+    told: list[SizedBranch] = []
+    for branch in branches:
+        name = branch.name
+        if names.count(name) > 1 and column is not None:
+            name = f"{name}, ballast {show(float(branch.values[column]), 'mass')}"
+        earlier = sum(1 for other in told if other.name.split(" (")[0] == name)
+        told.append(replace(branch, name=f"{name} ({earlier + 1})" if earlier else name))
+    return told
 
 
 def constant_cost(brief: Brief) -> float:

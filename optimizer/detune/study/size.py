@@ -26,6 +26,8 @@ from detune.study.load import Study
 Floats = NDArray[np.float64]
 # Points at which it is tried whether an unknown matters to anything.
 TRIED = 6
+# Points of the front from which real parts are looked for as well.
+ANCHORS = 6
 
 
 @dataclass(frozen=True)
@@ -125,17 +127,21 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
     mounts = ()
     if best is not None:
         cautions += _at_ends(best, study)
+        if drawings and sizing.trade:
+            front = _front(found, best)
         if brief.choices:
             there = made_design(brief, best.values).brief
             real = build(there, study.catalogs)
             mounts = tuple(dict.fromkeys(mount for group in real.candidates for mount in group))
-            near = nearest_parts(there, best.values, real, sizing.goal, sizing.sense)
+            ideals = [best.values, *(b.values for b in found.branches if b.assessment.meets and b is not best)][:3]
+            if front is not None and front.points:
+                chosen = np.linspace(0, len(front.points) - 1, ANCHORS).round().astype(int)
+                ideals += [front.points[k].values for k in dict.fromkeys(chosen.tolist())]
+            near = nearest_parts(there, ideals, real, sizing.goal, sizing.sense)
     around = best or (found.branches[0] if found.branches else None)
     axis = None if found.exact is None else found.exact.statement
     if drawings and sizing.map and around is not None:
         plan = sizing_map(brief, sizing.map, around.values, axis, mounts, sizing.goal)
-    if drawings and sizing.trade and best is not None:
-        front = _front(found, best)
     return replace(
         found, nearest=near, map=plan, front=front, cautions=tuple(cautions), seconds=time.perf_counter() - started
     )

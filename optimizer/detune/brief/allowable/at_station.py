@@ -19,7 +19,7 @@ def local_part(phasor: Responses, direction: LocalDirection) -> Responses:
     """Return a local phasor vector (D, F, 3) with the axial part removed where only lateral counts."""
     if direction != "lateral":
         return phasor
-    return phasor * np.array([1.0, 1.0, 0.0])
+    return np.asarray(phasor * np.array([1.0, 1.0, 0.0]))
 
 
 def local_along(direction: LocalDirection) -> Direction | None:

@@ -1,0 +1,203 @@
+"""Static rows under scatter of stiffness by lot and by part, mass and centre: enclosed over boxes, bisected.
+
+    K = fixed + sum_a s_a k_a b_a^T b_a,   q = K^-1 sum_l p_l load_l,   y = scale s (rows q + shift)
+with s_a, s and p_l products of variables. K grows with every factor, so `loewner.static_interval` encloses every row
+of K^-1 load_l over a box. A row counts as its first component, or as the root of its summed squares.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from detune.proof.bisect import DecisionStatus
+from detune.proof.combined_bound import product_interval
+from detune.proof.loewner import Flags, static_interval
+from detune.proof.scatter_data import products
+from detune.proof.selection_data import Floats, Integers
+
+
+@dataclass(frozen=True, eq=False)
+class StaticLimits:
+    """R static rows with limits over V variables.
+
+    fixed (n, n); axes (A, n), stiffness (A,), factors (A, 2). loads (L, n) with load_factors (L, 3), variables whose
+    product multiplies each load. rows (R, 3, n); scale (R,) and row_factors (R, 2); shift (R,), added to the first
+    component; length (R,): root of the summed squares instead of the first component. lower, upper (R,). low, high (V,).
+    """
+
+    fixed: Floats
+    axes: Floats
+    stiffness: Floats
+    factors: Integers
+    loads: Floats
+    load_factors: Integers
+    rows: Floats
+    scale: Floats
+    row_factors: Integers
+    shift: Floats
+    length: Flags
+    lower: Floats
+    upper: Floats
+    low: Floats
+    high: Floats
+
+
+@dataclass(frozen=True)
+class StaticRowsDecision:
+    """What became of the R static rows: attained (least, most) exactly, enclosed (least, most), where, status."""
+
+    status: tuple[DecisionStatus, ...]
+    attained_low: tuple[float, ...]
+    attained_high: tuple[float, ...]
+    bound_low: tuple[float, ...]
+    bound_high: tuple[float, ...]
+    where_low: tuple[tuple[float, ...], ...]
+    where_high: tuple[tuple[float, ...], ...]
+    boxes: int
+
+
+def _padded(points: Floats) -> Floats:
+    """Points (N, V) with the place of the speed, which statics do not have."""
+    return np.concatenate([points, np.zeros((len(points), 1))], axis=1)
+
+
+def _stiffness(problem: StaticLimits, weights: Floats) -> Floats:
+    outer = np.einsum("ai,aj->aij", problem.axes, problem.axes).reshape(-1, problem.fixed.size)
+    total: Floats = problem.fixed + ((weights * problem.stiffness) @ outer).reshape(-1, *problem.fixed.shape)
+    return total
+
+
+def static_values_at(problem: StaticLimits, points: Floats) -> Floats:
+    """Exact values (N, R) at points (N, V); raises numpy.linalg.LinAlgError for a singular stiffness."""
+    padded = _padded(points)
+    load = products(padded, problem.load_factors) @ problem.loads
+    q = np.linalg.solve(_stiffness(problem, products(padded, problem.factors)), load[:, :, None])[:, :, 0]
+    y = np.einsum("rcn,bn->brc", problem.rows, q)
+    y[:, :, 0] += problem.shift
+    y *= (problem.scale * products(padded, problem.row_factors))[:, :, None]
+    value: Floats = np.where(problem.length, np.sqrt((y**2).sum(axis=2)), y[:, :, 0])
+    return value
+
+
+def static_enclosures(problem: StaticLimits, low: Floats, high: Floats) -> tuple[Floats, Floats]:
+    """Enclosures (N, R) of all values over boxes low, high (N, V)."""
+    below, above = _padded(low), _padded(high)
+    s_low, s_high = product_interval(below, above, problem.factors)
+    soft, stiff = _stiffness(problem, s_low), _stiffness(problem, s_high)
+    p_low, p_high = product_interval(below, above, problem.load_factors)
+    count, rows = len(low), len(problem.scale)
+    flat = problem.rows.reshape(3 * rows, -1)
+    least, most = np.zeros((count, 3 * rows)), np.zeros((count, 3 * rows))
+    with np.errstate(invalid="ignore"):
+        for number, load in enumerate(problem.loads):
+            z_low, z_high, _ = static_interval(soft, stiff, flat, load)
+            edges = np.stack([z * p[:, number, None] for z in (z_low, z_high) for p in (p_low, p_high)])
+            least, most = least + edges.min(axis=0), most + edges.max(axis=0)
+        least, most = least.reshape(count, rows, 3), most.reshape(count, rows, 3)
+        least[:, :, 0] += problem.shift
+        most[:, :, 0] += problem.shift
+        f_low, f_high = product_interval(below, above, problem.row_factors)
+        f_low, f_high = (f[:, :, None] * problem.scale[:, None] for f in (f_low, f_high))
+        edges = np.stack([z * f for z in (least, most) for f in (f_low, f_high)])
+        lost = np.isnan(edges).any(axis=0)
+        least, most = np.where(lost, -np.inf, edges.min(axis=0)), np.where(lost, np.inf, edges.max(axis=0))
+        greatest = np.sqrt((np.maximum(np.abs(least), np.abs(most)) ** 2).sum(axis=2))
+    inside = np.where((least < 0.0) & (most > 0.0), 0.0, np.minimum(np.abs(least), np.abs(most)))
+    smallest = np.sqrt((inside**2).sum(axis=2))
+    widen = 1e-9
+    lower = np.where(problem.length, smallest * (1.0 - widen), least[:, :, 0])
+    upper = np.where(problem.length, greatest * (1.0 + widen), most[:, :, 0])
+    return lower - widen * np.abs(lower), upper + widen * np.abs(upper)
+
+
+def decide_static_rows(problem: StaticLimits, *, max_boxes: int = 6000, gap: float = 0.01) -> StaticRowsDecision:
+    """Bisect until every row is decided and enclosed to a relative gap, or max_boxes; undecided rows say so."""
+    low, high = problem.low[None], problem.high[None]
+    rows = len(problem.scale)
+    reached = _Reached(problem)
+    closed_low, closed_high = np.full(rows, np.inf), np.full(rows, -np.inf)
+    boxes = 0
+    while True:
+        reached.evaluate(np.concatenate([0.5 * (low + high), low, high]))
+        least, most = static_enclosures(problem, low, high)
+        boxes += len(low)
+        kept = (least >= problem.lower) & (most <= problem.upper)
+        size = np.maximum(_size(problem), np.maximum(np.abs(reached.most), np.abs(reached.least)))
+        close = (most <= reached.most + gap * size) & (least >= reached.least - gap * size)
+        done = (kept & close).all(axis=1)
+        closed_low = np.minimum(closed_low, least[done].min(axis=0, initial=np.inf))
+        closed_high = np.maximum(closed_high, most[done].max(axis=0, initial=-np.inf))
+        left = ~done
+        if not left.any() or boxes + 2 * int(left.sum()) > max_boxes or reached.broken:
+            break
+        if not bool((high[left] > low[left]).any(axis=1).all()):
+            break
+        low, high = _halve(low[left], high[left])
+    bound_low = np.minimum(np.minimum(closed_low, least[left].min(axis=0, initial=np.inf)), reached.least)
+    bound_high = np.maximum(np.maximum(closed_high, most[left].max(axis=0, initial=-np.inf)), reached.most)
+    return reached.decision(bound_low, bound_high, boxes)
+
+
+def _size(problem: StaticLimits) -> Floats:
+    """Size (R,) of the limits, zero where there is none."""
+    edges = np.abs(np.stack([problem.lower, problem.upper]))
+    return np.asarray(np.where(np.isfinite(edges), edges, 0.0).max(axis=0))
+
+
+class _Reached:
+    """Extremes evaluated exactly, and where."""
+
+    def __init__(self, problem: StaticLimits) -> None:
+        self.problem = problem
+        count, start = len(problem.scale), 0.5 * (problem.low + problem.high)
+        self.least, self.most = np.full(count, np.inf), np.full(count, -np.inf)
+        self.at_least, self.at_most = np.tile(start, (count, 1)), np.tile(start, (count, 1))
+
+    def evaluate(self, points: Floats) -> None:
+        values = static_values_at(self.problem, points)
+        for pick, extreme, where in (
+            (values.argmin(axis=0), self.least, self.at_least),
+            (values.argmax(axis=0), self.most, self.at_most),
+        ):
+            found = values[pick, np.arange(len(pick))]
+            better = found < extreme if extreme is self.least else found > extreme
+            extreme[better], where[better] = found[better], points[pick[better]]
+
+    @property
+    def broken(self) -> bool:
+        """Whether some limit is broken at a point evaluated."""
+        return bool((self.least < self.problem.lower).any() or (self.most > self.problem.upper).any())
+
+    def decision(self, bound_low: Floats, bound_high: Floats, boxes: int) -> StaticRowsDecision:
+        """Put together what is known."""
+        status: list[DecisionStatus] = []
+        for row in range(len(self.least)):
+            lower, upper = self.problem.lower[row], self.problem.upper[row]
+            if self.least[row] < lower or self.most[row] > upper:
+                status.append("violated")
+            else:
+                kept = bound_low[row] >= lower and bound_high[row] <= upper
+                status.append("proven" if kept else "undecided")
+        return StaticRowsDecision(
+            status=tuple(status),
+            attained_low=tuple(self.least.tolist()),
+            attained_high=tuple(self.most.tolist()),
+            bound_low=tuple(bound_low.tolist()),
+            bound_high=tuple(bound_high.tolist()),
+            where_low=tuple(tuple(p.tolist()) for p in self.at_least),
+            where_high=tuple(tuple(p.tolist()) for p in self.at_most),
+            boxes=boxes,
+        )
+
+
+def _halve(low: Floats, high: Floats) -> tuple[Floats, Floats]:
+    """Cut every box along its widest side."""
+    side = np.argmax(high - low, axis=1)
+    index = np.arange(len(low))
+    cut = 0.5 * (low[index, side] + high[index, side])
+    first_high, second_low = high.copy(), low.copy()
+    first_high[index, side] = cut
+    second_low[index, side] = cut
+    return np.concatenate([low, second_low]), np.concatenate([first_high, high])

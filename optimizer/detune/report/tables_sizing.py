@@ -1,0 +1,148 @@
+"""Tables of a sizing study: the answer, its branches, the spread of starts, the nearest parts, the specification."""
+
+from __future__ import annotations
+
+from detune.ground.units import show
+from detune.report.tables import Table
+from detune.report.words import margin_text, number, percent
+from detune.sizing.made_parts import sizing_of
+from detune.study.size import SizedBest, SizingResult
+
+GOALS = {
+    "cost": "cost",
+    "added-mass": "added mass",
+    "worst-response": "worst response over its limit",
+    "stiffness": "axial stiffness, all parts",
+    "damping": "damping, all parts",
+    "separation": "separation",
+}
+
+
+def goal_text(name: str, value: float) -> str:
+    """An objective with its unit."""
+    if name == "separation":
+        return percent(value)
+    if name == "added-mass":
+        return show(value, "mass")
+    if name == "stiffness":
+        return show(value, "stiffness")
+    return number(value, 5)
+
+
+def unknowns_table(result: SizingResult, best: SizedBest) -> Table:
+    """Every unknown: its bounds and its value in the answer."""
+    rows = []
+    for unknown, value in zip(sizing_of(result.study.brief).unknown, best.values.tolist(), strict=True):
+        low, high = unknown.bounds
+        rows.append(
+            (unknown.title, show(value, unknown.unit, 5), show(low, unknown.unit), show(high, unknown.unit))
+        )
+    note = "Stiffness (dynamic) and damping are those of one part. Lower and upper: as the study states them."
+    return Table("Sized", ("unknown", "value", "lower", "upper"), tuple(rows), frozenset({1, 2, 3}), note)
+
+
+def branches_table(result: SizingResult) -> Table:
+    """Every branch (or distinct local answer) with its best design, the best first."""
+    sizing = sizing_of(result.study.brief)
+    names = [unknown.title for unknown in sizing.unknown]
+    rows = []
+    for branch in result.branches:
+        values = [
+            show(value, unknown.unit)
+            for unknown, value in zip(sizing.unknown, branch.values.tolist(), strict=True)
+        ]
+        judged = branch.assessment
+        meets = "meets the brief" if judged.meets else f"misses {judged.tightest.label}"
+        tight = "; ".join(branch.tight) or "none"
+        rows.append(
+            (branch.name, goal_text(sizing.goal, branch.objective), *values, margin_text(judged.least_margin), meets, tight)
+        )
+    columns = ("branch", GOALS[sizing.goal], *names, "least margin", "assessed", "tight")
+    note = (
+        "A branch is one connected region of designs that meet every limit; its name says where the natural frequency "
+        "lies among the excitations. Designs stand two parts in a million inside their limits."
+        if result.searches is None
+        else "Distinct answers of the local searches."
+    )
+    title = "Branches" if result.searches is None else "Local answers"
+    numeric = frozenset(range(1, 3 + len(names)))
+    return Table(title, columns, tuple(rows), numeric, note)
+
+
+def searches_text(result: SizingResult) -> str:
+    """How the starts ended, in a sentence; empty where no local search was made."""
+    found = result.searches
+    if found is None:
+        return ""
+    goal = sizing_of(result.study.brief).goal
+    total = len(found.searches)
+    if not found.met:
+        return f"None of {total} local searches met every requirement; that is no proof that none exists."
+    best, median, worst = (goal_text(goal, value) for value in found.spread)
+    return (
+        f"{found.met} of {total} local searches met every requirement; their {GOALS[goal]}: best {best}, median {median}, "
+        f"worst {worst}; {found.near:.0%} of them within 1 % of the best. {found.evaluations} designs were evaluated."
+    )
+
+
+def nearest_table(result: SizingResult) -> Table:
+    """The nearest real designs, each assessed, with what they cost against the ideal."""
+    nearest, best = result.nearest, result.answer
+    assert nearest is not None and best is not None
+    goal = sizing_of(result.study.brief).goal
+    rows = []
+    for design in nearest.designs:
+        judged = design.assessment
+        value = _value(result, design.assessment, goal)
+        rows.append(
+            (
+                str(judged.design),
+                "meets the brief" if judged.meets else f"misses {judged.tightest.label}",
+                margin_text(judged.least_margin),
+                number(judged.cost, 6),
+                "" if value is None else _more(value, best.objective, goal),
+            )
+        )
+    note = (
+        f"Of {nearest.of} real designs the {nearest.looked_at} with the least predicted shortfall were evaluated exactly, "
+        f"{nearest.met} met every requirement; those shown were assessed. That is no proof of the cheapest: "
+        "`detune run` gives it. The last column compares with the ideal at the price stated for parts made to order."
+    )
+    columns = ("real design", "assessed", "least margin", "cost", f"{GOALS[goal]} against the ideal")
+    return Table("Nearest real parts", columns, tuple(rows), frozenset({2, 3, 4}), note)
+
+
+def _value(result: SizingResult, judged: object, goal: str) -> float | None:
+    from detune.response.assessment import Assessment
+
+    assert isinstance(judged, Assessment)
+    if goal == "cost":
+        return judged.cost
+    if goal == "added-mass":
+        return judged.added_mass
+    return judged.separation if goal == "separation" else None
+
+
+def _more(value: float, ideal: float, goal: str) -> str:
+    if goal == "separation":
+        return f"{percent(value)} instead of {percent(ideal)}"
+    if ideal == 0.0:
+        return goal_text(goal, value)
+    share = value / ideal - 1.0
+    return f"{goal_text(goal, value)}, {'+' if share >= 0.0 else ''}{percent(share)}"
+
+
+def front_table(result: SizingResult) -> Table:
+    """The points of the front with their unknowns."""
+    front = result.front
+    assert front is not None
+    unknowns = sizing_of(result.study.brief).unknown
+    rows = tuple(
+        (
+            *(goal_text(name, point.objectives[name]) for name in front.trade),
+            *(show(v, u.unit) for u, v in zip(unknowns, point.values.tolist(), strict=True)),
+        )
+        for point in front.points
+    )
+    columns = (*(GOALS[name] for name in front.trade), *(unknown.title for unknown in unknowns))
+    return Table("Points of the front", columns, rows, frozenset(range(len(columns))), front.worth + ".")

@@ -1,0 +1,180 @@
+"""The response limits of a problem as rows for the bounds: each allowable is asked what it observes, once per freedom.
+
+An allowable's `observed` is linear in the response. So it is shown a view in which the axis of frequencies runs over
+unit displacements, unit forces of all axes and unit motions of the floor; what it returns are its rows.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.allowable import HarmonicAllowable
+from detune.brief.allowable.base import TONE_FACTOR
+from detune.problem.build import HarmonicRequirements
+from detune.proof.scatter_data import LimitedRows, LoadSet
+from detune.response.loads import Family
+from detune.response.model import Model, find_station
+
+Floats = NDArray[np.float64]
+
+
+class NotBounded(Exception):
+    """A requirement of a kind the bounds do not know; the text says why."""
+
+
+@dataclass
+class UnitView:
+    """A response view whose frequency axis counts unit freedoms (n), unit axis forces (A), unit floor motion (3)."""
+
+    model: Model
+    rates: set[int]
+    ground: bool = False
+
+    @property
+    def axes(self) -> int:
+        """Number A of axes, in the order of `scatter_system`."""
+        return 3 * (len(self.model.stations) + len(self.model.connections)) + int(self.model.frame.flexible_floor)
+
+    def _empty(self, rate: int) -> Floats:
+        self.rates.add(rate)
+        return np.zeros((1, self.model.frame.count + self.axes + 3, 3))
+
+    @property
+    def _prescribed(self) -> Floats:
+        """Which floor motion is prescribed (3, 3): all of it, or the level part over a flexible floor."""
+        return np.diag([1.0, 1.0, 0.0 if self.model.frame.flexible_floor else 1.0])
+
+    def motion(self, point: str, rate: int = 0) -> Floats:
+        out = self._empty(rate)
+        out[0, : self.model.frame.count] = self.model.points[point].T
+        return out
+
+    def floor_motion(self, rate: int = 0) -> Floats:
+        out = self._empty(rate)
+        out[0, -3:] = self._prescribed
+        if self.model.frame.flexible_floor:
+            out[0, self.model.frame.count - 1, 2] = 1.0
+        return out
+
+    def station_deflection(self, station: str, rate: int = 0) -> Floats:
+        out, found = self._empty(rate), find_station(self.model, station)
+        out[0, : self.model.frame.count] = found.rows.T
+        if found.on_floor:
+            out[0, -3:] = -self._prescribed @ found.axes
+        return out
+
+    def station_force(self, station: str) -> Floats:
+        out, found = self._empty(0), find_station(self.model, station)
+        first = self.model.frame.count + 3 * self.model.stations.index(found)
+        out[0, first : first + 3] = np.eye(3) / max(found.parallel, 1)
+        return out
+
+    def total_force(self, surface: str) -> Floats:
+        out, n = self._empty(0), self.model.frame.count
+        for number, station in enumerate(self.model.stations):
+            if station.on_floor:
+                out[0, n + 3 * number : n + 3 * number + 3] = station.axes.T
+        for number, connection in enumerate(self.model.connections):
+            first = n + 3 * (len(self.model.stations) + number)
+            if connection.on_floor:
+                out[0, first : first + 3] = np.eye(3)
+        if surface == "ground" and self.model.frame.flexible_floor:
+            self.ground = True
+            out[..., 2] = 0.0
+            out[0, n + self.axes - 1, 2] = 1.0
+        return out
+
+
+@dataclass(frozen=True, eq=False)
+class ObservedRow:
+    """One requirement's components: on freedoms (3, n), axis forces (3, A) and floor motion (3, 3), and its rate."""
+
+    rows: Floats
+    forces: Floats
+    base: Floats
+    rate: int
+    ellipse: bool
+    factor: float
+    squares: bool
+
+
+def observed_row(model: Model, allowable: HarmonicAllowable, place: str, families: tuple[Family, ...]) -> ObservedRow:
+    """Return the components of a requirement. Raises NotBounded."""
+    if allowable.has_weighting():
+        raise NotBounded("it is weighted by frequency")
+    view = UnitView(model, set())
+    seen = np.asarray(allowable.observed(view, place))[0]
+    if len(view.rates) != 1:
+        raise NotBounded("it mixes displacement with its derivatives")
+    if view.ground and any(load.base is not None for f in families for loads in f.sets for load in loads):
+        raise NotBounded("it is the force into the ground under a moved flexible floor")
+    along = allowable.along()
+    if along is not None:
+        seen = (seen @ np.asarray(along))[:, None] * np.array([1.0, 0.0, 0.0])
+    n, statistic = model.frame.count, allowable.statistic()
+    return ObservedRow(
+        rows=np.ascontiguousarray(seen[:n].T),
+        forces=np.ascontiguousarray(seen[n:-3].T),
+        base=np.ascontiguousarray(seen[-3:].T),
+        rate=view.rates.pop(),
+        ellipse=statistic != "rms",
+        factor=TONE_FACTOR[statistic],
+        squares=statistic == "rms",
+    )
+
+
+def limited_rows(
+    group: HarmonicRequirements, rows: list[ObservedRow], limits: Floats, family: Family, forcing: float
+) -> LimitedRows:
+    """Return the rows of a family with limits (R,); forcing: factor of the greatest amplitude."""
+    return LimitedRows(
+        rows=np.stack([row.rows for row in rows]),
+        forces=np.stack([row.forces for row in rows]),
+        rate=np.array([row.rate for row in rows], dtype=np.float64),
+        ellipse=np.array([row.ellipse for row in rows]),
+        factor=forcing * np.array([row.factor for row in rows]),
+        squares=np.array([row.squares for row in rows]),
+        limit=limits,
+        sets=tuple(_load_set(group.model, loads, rows) for loads in family.sets),
+        speed=(family.low, family.high),
+    )
+
+
+def _load_set(model: Model, loads: tuple, rows: list[ObservedRow]) -> LoadSet:  # type: ignore[type-arg]
+    n, by_power = model.frame.count, {}  # type: ignore[var-annotated]
+    axes = rows[0].forces.shape[1]
+
+    def at(power: float) -> list[NDArray[np.complex128]]:
+        return by_power.setdefault(
+            power,
+            [np.zeros(n, complex), np.zeros(axes, complex), np.zeros((len(rows), 3), complex)],
+        )
+
+    flexible = model.frame.flexible_floor
+    for load in loads:
+        here = at(float(load.power))
+        if load.base is None:
+            here[0] += load.vector
+            continue
+        prescribed = load.base * np.array([1.0, 1.0, 0.0 if flexible else 1.0])
+        for number, station in enumerate(model.stations):
+            if station.on_floor:
+                here[1][3 * number : 3 * number + 3] += prescribed @ station.axes
+        for number, connection in enumerate(model.connections):
+            first = 3 * (len(model.stations) + number)
+            if connection.on_floor:
+                here[1][first : first + 3] += prescribed
+        here[2] += np.einsum("rck,k->rc", np.stack([row.base for row in rows]), load.base)
+        if flexible:
+            # What the bare floor does freely needs D_floor u: its spring is an axis, its inertia a load.
+            here[1][-1] += load.base[2]
+            at(float(load.power) + 2.0)[0][-1] -= model.floor_mass * load.base[2]
+    powers = sorted(by_power)
+    return LoadSet(
+        order=loads[0].order,
+        powers=np.array(powers),
+        loads=np.stack([by_power[p][0] for p in powers]),
+        bases=np.stack([by_power[p][1] for p in powers]),
+        direct=np.stack([by_power[p][2] for p in powers]),
+    )
