@@ -95,7 +95,8 @@ def test_a_small_shock_is_that_of_the_tangent() -> None:
     one = machines.value(law_machines.agreed(brief, part(), rel=1e-3), "acceleration")
     assert one == pytest.approx(machines.value(machines.assessed(brief, plain), "acceleration"), rel=1e-3)
     # A large one is not: the mount hardens.
-    hard = brief.model_copy(update={"forcing": (shock.model_copy(update={"amplitude": 80.0}),)})
+    hit = BasePulse(name="shock", direction="z", shape="half-sine", amplitude=80.0, duration=0.03)
+    hard = brief.model_copy(update={"forcing": (hit,)})
     large = machines.value(machines.assessed(hard, part()), "acceleration")
     assert large > 1.2 * machines.value(machines.assessed(hard, plain), "acceleration")
 

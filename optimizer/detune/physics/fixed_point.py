@@ -14,6 +14,8 @@ TOLERANCE = 1e-8
 # What a column that ran out of rounds may still lack, in tolerances: near a fold, where two answers meet, it closes
 # slowly.
 LEFT_OVER = 100.0
+# A full first step from far away could leap over the answer that is next.
+FIRST_SHARE = 0.5
 LEAST_SHARE = 1.0 / 64.0
 GROWTH = 1.25
 
@@ -35,7 +37,7 @@ def fixed_points(
     """Columns a (S, K) with a = step(a), each from its own start (S, K) on; values are not negative.
 
     step: values (S, A) and the numbers (A,) of their columns -> (S, A). Each column takes a share of the way to
-    step(a): all of it at first, half as much whenever the difference has grown or turned its sign, more again while
+    step(a): half of it at first, half as much whenever the difference has grown or turned its sign, more again while
     it shrinks. So a map that falls with a slope of size L settles with a share of about 1/(1 + L). A column has
     settled when its difference is below `tolerance` of its largest value.
     """
@@ -43,7 +45,7 @@ def fixed_points(
     count = value.shape[1]
     settled = np.zeros(count, dtype=bool)
     active = np.arange(count)
-    share = np.ones(count)
+    share = np.full(count, FIRST_SHARE)
     before = np.full(value.shape, np.nan)
     missing = np.full(count, np.inf)
     for _ in range(most_rounds):

@@ -2,8 +2,8 @@
 
 Every station works at the peak of its own axial dynamic deflection under all that acts in the condition. At each
 speed of a tone that is the deflection at that speed; what else acts beside it (tones of other speeds, noise,
-records, passages) adds its own largest deflection. It is found by iteration, from a small amplitude and from a
-large one: where the two come to different ends, the larger response counts.
+records, passages) adds its own largest deflection. It is found by iteration from several amplitudes, none and one
+a decade of the tables: where they come to different ends, the largest response counts.
 """
 
 from collections.abc import Callable
@@ -51,7 +51,7 @@ class Working:
 
     def beside(self, source: int) -> Floats:
         """Amplitude (S, D) of everything but one source."""
-        return np.maximum(self.total - self.deflection[source], 0.0)
+        return np.asarray(np.maximum(self.total - self.deflection[source], 0.0))
 
 
 def works_by_amplitude(model: Model) -> bool:
@@ -182,12 +182,19 @@ def _at_speeds(
         return total
 
     values, found = np.zeros((len(rows.pairs), designs.count)), np.ones(designs.count, dtype=bool)
-    for start in (beside, beside + _amplitude_range(model)[1]):
+    for level in _levels(*_amplitude_range(model)):
+        start = beside + level
         ends = fixed_points(step, start)
         at = at_amplitude(dynamic, ends.value)
         values = np.maximum(values, family_amplitude(model, designs, at, rows, family, speed)[..., 0])
         found &= ends.settled & ~at.topples
     return values, found
+
+
+def _levels(least: float, greatest: float) -> Floats:
+    """Return the amplitudes (m) to start from: none, and from the greatest down one a decade."""
+    decades = int(np.floor(np.log10(greatest / least))) + 1
+    return np.concatenate([[0.0], greatest * 10.0 ** -np.arange(decades)])
 
 
 def _peaks(model: Model, dynamic: Dynamic, family: Family) -> tuple[Floats, Floats]:

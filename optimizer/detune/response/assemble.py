@@ -112,10 +112,12 @@ class Dynamic:
 
     def take(self, index: NDArray[np.generic]) -> "Dynamic":
         """Return the matrices of the designs at these indices, or where this mask holds."""
-        matrices = (self.mass, self.stiffness, self.hysteretic, self.viscous)
         geometric = self.geometric[index] if isinstance(self.geometric, np.ndarray) else self.geometric
         return Dynamic(
-            *(matrix[index] for matrix in matrices),
+            mass=self.mass[index],
+            stiffness=self.stiffness[index],
+            hysteretic=self.hysteretic[index],
+            viscous=self.viscous[index],
             parts=self.parts.take(index),
             geometric=geometric,
             topples=self.topples[index],
@@ -125,7 +127,7 @@ class Dynamic:
         """Return D(w) (D, F, n, n) at omega (D, F) in rad/s."""
         w = omega[:, :, None, None]
         constant = self.stiffness + 1j * self.hysteretic
-        matrix: Complexes = constant[:, None] - (w**2) * self.mass[:, None]
+        matrix: Complexes = np.asarray(constant[:, None] - (w**2) * self.mass[:, None], dtype=complex)
         if self.viscous.any():
             matrix = matrix + 1j * w * self.viscous[:, None]
         if self.parts.with_frequency:
@@ -184,5 +186,7 @@ def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Flo
             scaled = station.parallel * station.factor * values
             matrix += np.einsum("da,ai,aj->dij", scaled, station.rows, station.rows, optimize=True)
     working = parts.working
-    still = np.zeros(designs.count, dtype=bool) if working is None else ~np.isfinite(working.q).all(axis=1)
+    still = np.zeros(designs.count, dtype=bool)
+    if working is not None:
+        still = np.asarray(~np.isfinite(working.q).all(axis=1))
     return _standing(Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric, still))

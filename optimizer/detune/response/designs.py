@@ -89,4 +89,4 @@ def part_numbers(model: Model, designs: Designs) -> Floats:
     every = np.sort(np.concatenate(rows, axis=1), axis=1)
     new = np.ones_like(every, dtype=bool)
     new[:, 1:] = np.diff(every, axis=1) > 0
-    return np.count_nonzero(new & (every >= 0), axis=1).astype(float)
+    return np.asarray(np.count_nonzero(new & (every >= 0), axis=1), dtype=float)

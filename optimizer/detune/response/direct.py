@@ -389,4 +389,4 @@ def connection_stiffness(connection: Connection, omega: Floats | None) -> Comple
         static = connection.stiffness_static
         return (dynamic if static is None else np.array(static)).astype(complex)
     lossy = dynamic * (1.0 + 1j * (connection.loss_factor or 0.0))
-    return lossy + 1j * omega[:, None] * np.array(connection.viscous or (0.0, 0.0, 0.0))
+    return np.asarray(lossy + 1j * omega[:, None] * np.array(connection.viscous or (0.0, 0.0, 0.0)))

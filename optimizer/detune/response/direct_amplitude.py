@@ -1,8 +1,8 @@
 """The assessor's own search for the amplitude at which parts that follow it work, and the responses there.
 
 Every station works at the peak of its own axial deflection under all that acts in the condition, at each speed of a
-tone at that speed's. It is approached from a small and from a large amplitude, by steps that are made shorter and
-shorter; where the two come to different ends, the larger response counts.
+tone at that speed's. It is approached from several amplitudes by steps that are made shorter and shorter; where
+they come to different ends, the largest response counts.
 """
 
 from collections.abc import Callable
@@ -26,7 +26,7 @@ from detune.response.direct_supremum import Pairs, Supremum, amplitudes_at, cohe
 Floats = NDArray[np.float64]
 AXIAL = MountDeflection(part="dynamic", direction="axial", limit=1.0)
 # Share of the way taken in each step, and how many such steps: shorter ones settle steeper maps.
-SHARES = ((1.0, 30), (0.5, 200), (0.2, 400), (0.05, 1200), (0.015, 3000))
+SHARES = ((0.6, 60), (0.4, 200), (0.2, 400), (0.05, 1200), (0.015, 3000))
 CLOSED = 1e-8
 # Of several sources together, whose suprema over speed are known to about as much.
 CLOSE = 2e-5
@@ -71,7 +71,7 @@ class WorkingAmplitude:
         """Amplitude (S,) in m of everything but one source."""
         if len(self.sources) == 1:
             return np.zeros(len(self.machine.brief.stations))
-        return np.maximum(self.total - self._found[0][number], 0.0)
+        return np.asarray(np.maximum(self.total - self._found[0][number], 0.0))
 
 
 def follows_amplitude(machine: DirectMachine) -> bool:
@@ -195,9 +195,12 @@ def _over_speed(
     def amplitudes(speed: Floats) -> Floats:
         nonlocal settled
         best = np.zeros((len(pairs), len(speed)))
-        for start in (beside, beside + greatest):
-            columns = np.repeat(start[:, None], len(speed), axis=1)
-            amplitude, closed = _approached(lambda a, index: _deflected(machine, sets, speed[index], beside, a), columns)
+
+        def step(amplitude: Floats, index: NDArray[np.intp]) -> Floats:
+            return _deflected(machine, sets, speed[index], beside, amplitude)
+
+        for level in (0.0, *np.geomspace(least, greatest, max(2, int(2.0 * np.log10(greatest / least))))):
+            amplitude, closed = _approached(step, np.repeat(beside[:, None] + level, len(speed), axis=1))
             settled = settled and bool(np.all(closed))
             best = np.maximum(best, amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed))
         return best

@@ -54,7 +54,7 @@ def part_stiffness(
     the peak axial deflection at which it works. Beyond the ends of an amplitude table its end values hold.
     """
     if omega is None:
-        return np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex)
+        return np.asarray(np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex), dtype=complex)
     listed = np.nan_to_num(np.array(mount.stiffness_dynamic, dtype=float)) * np.array([1.0, 1.0, axial_ratio])
     viscous = 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
     if mount.law_table is not None:
@@ -63,7 +63,7 @@ def part_stiffness(
         low, high = 2.0 * np.pi * table.frequency[0], 2.0 * np.pi * table.frequency[-1]
         inside = np.minimum(np.maximum(omega, low * (1.0 + 1e-12)), high * (1.0 - 1e-12))
         ratio = table_stiffness(table, inside, temperature)
-        return listed * ratio[:, None] + viscous
+        return np.asarray(listed * ratio[:, None] + viscous, dtype=complex)
     constant = listed * (1.0 + 1j * np.nan_to_num(np.array(mount.loss_factor, dtype=float)))
     if mount.amplitude_table is not None and amplitude is not None:
         steps, ratios, losses = (
@@ -78,8 +78,8 @@ def part_stiffness(
         constant = listed * (np.interp(at, steps, ratios) * (1.0 + 1j * np.interp(at, steps, losses)))[:, None]
     if mount.relaxation is not None:
         series = mount.relaxation.stiffness_ratio * listed
-        return constant + viscous * series / np.where(series > 0.0, series + viscous, 1.0)
-    return constant + viscous
+        return np.asarray(constant + viscous * series / np.where(series > 0.0, series + viscous, 1.0), dtype=complex)
+    return np.asarray(constant + viscous, dtype=complex)
 
 
 def rest_on_laws(

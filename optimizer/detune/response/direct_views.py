@@ -127,7 +127,7 @@ class DirectTone:
         return self._solved[2]
 
     def _rate(self, rate: int) -> Complexes:
-        return (1j * self.omega[..., None]) ** rate
+        return np.asarray((1j * self.omega[..., None]) ** rate, dtype=complex)
 
     def motion(self, point: str, rate: int = 0) -> Complexes:
         stated = next(p for p in self.machine.brief.points if p.name == point)
@@ -157,7 +157,7 @@ class DirectTone:
             # the floor; with it alone, what the floor passes on.
             own = (floor.stiffness + 1j * self.omega[0] * floor.damping) * q[:, self.machine.floor_vertical]
             received[:, 2] = own if surface == "ground" else received[:, 2] + own
-        return received[None]
+        return np.asarray(received[None], dtype=complex)
 
     def power(self) -> tuple[Floats, Floats]:
         """Mean power (F,) put in by the loads and by moved supports, and dissipated in the parts.

@@ -70,7 +70,7 @@ class Frame:
         rows = np.zeros((3, self.count))
         for column, (name, freedom) in enumerate(self.names):
             if name == body:
-                rows[:, column] = full[:, FREEDOMS.index(freedom)]  # type: ignore[arg-type]
+                rows[:, column] = full[:, FREEDOMS.index(freedom)]
         return rows
 
 
@@ -169,7 +169,7 @@ def build_model(
     """
     properties = {body.name: mass_properties(body) for body in brief.bodies}
     floor = floor_freedom(brief.floor)
-    names = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
+    names: list[tuple[str, str]] = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
     structure = brief.structure
     nodes = {} if structure is None else {node.name: structure.shape_rows(node.name) for node in structure.nodes}
     if structure is not None:

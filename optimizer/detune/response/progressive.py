@@ -64,10 +64,11 @@ class ProgressiveSystem:
 
     def unloaded(self, weight: Floats) -> Floats | None:
         """Return where the design stands (n,) with its weight (n,) taken off, None where a curve says nothing of it."""
-        rows, laws, offset, steady = self._elements()
-        held = [_straight_below(law) if law.curve is not None else law for law in laws]
+        rows, laws, offset, _ = self._elements()
+        # Forces count from those at rest: the whole ones vanish, and nothing would measure what is left of them.
+        held = [_straight_below(each.law, each.force) for each in self.curved] + laws[len(self.curved) :]
         try:
-            rest = at_rest(rows, held, steady - weight, offset)
+            rest = at_rest(rows, held, -weight, offset)
         except (OutsideTable, NotAtRest, UnsupportedMachine):
             return None
         return np.asarray(rest.displacement)
@@ -180,15 +181,15 @@ def _from(curve: LoadCurve, start: float) -> LoadCurve:
     )
 
 
-def _straight_below(law: ElementLaw) -> ElementLaw:
-    """Return a law that also pulls, straight on below its first point: at the point of no force it has a slope."""
+def _straight_below(law: ElementLaw, force: float) -> ElementLaw:
+    """Return a law less a force (N) that also pulls, straight on below its first point, so that it has a slope there."""
     assert law.curve is not None
     reach = float(np.ptp(law.curve.deflection))
     load, slope = law_force(ElementLaw(curve=law.curve), law.curve.deflection[0] - reach)
     return ElementLaw(
         curve=LoadCurve(
             np.r_[law.curve.deflection[0] - reach, law.curve.deflection],
-            np.r_[float(load), law.curve.load],
+            np.r_[float(load), law.curve.load] - force,
             np.r_[float(slope), law.curve.slope],
         )
     )
@@ -198,4 +199,4 @@ def finer(frequency: Floats, system: ProgressiveSystem | None) -> Floats:
     """Return frequencies (n,) with the last as high as the samples in time have to follow."""
     if system is None:
         return frequency
-    return np.r_[frequency[:-1], frequency[-1] * system.stiffening]
+    return np.asarray(np.r_[frequency[:-1], frequency[-1] * system.stiffening])

@@ -34,7 +34,7 @@ class ToneBatch:
             return None
         total = np.zeros((*self.omega.shape, 3), dtype=complex)
         for load in moving:
-            total = total + self.omega[..., None] ** load.power * load.base
+            total = total + self.omega[..., None] ** float(load.power) * np.asarray(load.base)
         return total
 
     @cached_property
@@ -72,13 +72,13 @@ class ToneBatch:
         """Floor motion that is prescribed (D, F, 3): all of it, or only the level part over a flexible floor."""
         if self.base is None or not self.model.frame.flexible_floor:
             return self.base
-        return self.base * np.array([1.0, 1.0, 0.0])
+        return np.asarray(self.base * np.array([1.0, 1.0, 0.0]))
 
     def _stiffness(self, station: str) -> Complexes:
         return self.dynamic.parts.stiffness(find_station(self.model, station), self.omega)
 
     def _rate(self, rate: int) -> Complexes:
-        return (1j * self.omega[..., None]) ** rate
+        return np.asarray((1j * self.omega[..., None]) ** rate, dtype=complex)
 
     def motion(self, point: str, rate: int = 0) -> Complexes:
         return self._rate(rate) * (self.q @ self.model.points[point].T)
@@ -121,4 +121,4 @@ class ToneBatch:
         level = self.total_force("floor") * np.array([1.0, 1.0, 0.0])
         own = self.model.floor_stiffness + 1j * self.omega * self.model.floor_damping
         vertical = own * self.q[..., -1]
-        return level + vertical[..., None] * np.array([0.0, 0.0, 1.0])
+        return np.asarray(level + vertical[..., None] * np.array([0.0, 0.0, 1.0]))

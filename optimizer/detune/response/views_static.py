@@ -93,5 +93,4 @@ def static_batch(model: Model, designs: Designs) -> StaticBatch:
         # Empty stations can leave a design without support, which fails every static limit.
         q, supported = solve_static_where_supported(stiffness, load)
         return StaticBatch(model, designs, np.where(supported[:, None], q, np.nan))
-    q = np.linalg.solve(stiffness, load[..., None])[..., 0]
-    return StaticBatch(model, designs, q)
+    return StaticBatch(model, designs, np.asarray(np.linalg.solve(stiffness, load[..., None])[..., 0], float))
