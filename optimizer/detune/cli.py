@@ -241,7 +241,7 @@ def _settings(options: argparse.Namespace) -> "Settings":
 def _progress() -> "Callable[[Progress], None]":
     def tell(far: "Progress") -> None:
         bracket = ""
-        if far.lower_bound is not None and far.settled < far.designs:
+        if far.lower_bound is not None and far.lower_bound < float("inf"):
             bracket = f"; none left is cheaper than {far.lower_bound:.2f}"
         found = "" if far.incumbent is None else f"; best so far {far.incumbent:.2f}"
         end = "\n" if far.settled >= far.designs else ""

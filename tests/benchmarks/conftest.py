@@ -20,21 +20,26 @@ def pytest_addoption(parser: pytest.Parser) -> None:
 
 
 @pytest.fixture(scope="session")
-def figures(request: pytest.FixtureRequest) -> Iterator[dict[str, Any]]:
-    """Where each benchmark puts its figures, by name; kept figures of an earlier run in the same file stay."""
-    stated = request.config.getoption("--benchmark-json-out") or os.environ.get("DETUNE_BENCHMARK_JSON")
-    path = Path(stated) if stated else None
-    found: dict[str, Any] = {}
-    if path is not None and path.exists():
-        found = json.loads(path.read_text(encoding="utf-8"))
-    found["machine"] = {
-        "cores": os.cpu_count(),
-        "architecture": platform.machine(),
-        "python": platform.python_version(),
+def all_figures() -> dict[str, Any]:
+    """The figures of the whole run."""
+    return {
+        "machine": {
+            "cores": os.cpu_count(),
+            "architecture": platform.machine(),
+            "python": platform.python_version(),
+        }
     }
-    yield found
-    if path is not None:
-        path.write_text(json.dumps(found, indent=1) + "\n", encoding="utf-8")
+
+
+@pytest.fixture
+def figures(request: pytest.FixtureRequest, all_figures: dict[str, Any]) -> Iterator[dict[str, Any]]:
+    """Where each benchmark puts its figures, by name; written after each, and beside those of an earlier run."""
+    yield all_figures
+    stated = request.config.getoption("--benchmark-json-out") or os.environ.get("DETUNE_BENCHMARK_JSON")
+    if stated:
+        path = Path(stated)
+        earlier = json.loads(path.read_text(encoding="utf-8")) if path.exists() else {}
+        path.write_text(json.dumps({**earlier, **all_figures}, indent=1) + "\n", encoding="utf-8")
 
 
 @pytest.fixture(scope="session")

@@ -2,6 +2,9 @@
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
 from detune.physics.damping import relaxation_stiffness
 from detune.physics.envelope import supremum
 from detune.physics.modes import damped_poles
@@ -15,8 +18,6 @@ from detune.physics.response import (
     solve_response,
 )
 from detune.physics.rigid_body import attachment, box_inertia, mass_matrix
-from hypothesis import given, settings
-from hypothesis import strategies as st
 
 quick = settings(deadline=None, max_examples=40)
 seeds = st.integers(0, 2**32 - 1)
@@ -27,7 +28,9 @@ def machine(seed):
     rng = np.random.default_rng(seed)
     mass = rng.uniform(100, 1000)
     m = mass_matrix(mass, rng.normal(0, 0.1, 3), box_inertia(mass, rng.uniform(0.4, 2.0, 3)))
-    b = attachment(np.concatenate([rng.normal(0, 0.2, (1, 3)), [[1, 1, -1], [1, -1, 0], [-1, 1, 0], [-1, -1, -1]]]))
+    b = attachment(
+        np.concatenate([rng.normal(0, 0.2, (1, 3)), [[1, 1, -1], [1, -1, 0], [-1, 1, 0], [-1, -1, -1]]])
+    )
     each = np.exp(rng.uniform(np.log(2e4), np.log(8e5), (5, 3)))
     k, h, c = (
         np.einsum("sai,sa,saj->ij", b, each * share, b)
@@ -46,6 +49,8 @@ def state_space(m, k, c):
 
 
 class TestAgainstOthers:
+    # Its way through polynomials warns of its own conditioning; four states still agree.
+    @pytest.mark.filterwarnings("ignore::scipy.signal.BadCoefficients")
     def test_two_freedoms_with_absorber_against_scipy(self):
         # X1: scipy.signal.StateSpace and freqresp, seven frequencies, 1e-9 relative.
         signal = pytest.importorskip("scipy.signal")
@@ -73,7 +78,7 @@ class TestAgainstOthers:
             reference = system(1j * omega)
             np.testing.assert_allclose(found, reference, atol=1e-10 * np.abs(reference).max())
 
-    @pytest.mark.parametrize("seed", range(4))
+    @pytest.mark.parametrize("seed", [0, *(pytest.param(s, marks=pytest.mark.nightly) for s in range(1, 8))])
     def test_peak_over_all_frequencies_against_python_control(self, seed):
         # X2: the H-infinity norm (a Hamiltonian bisection, nothing like a search over frequency).
         control = pytest.importorskip("control")
@@ -82,7 +87,9 @@ class TestAgainstOthers:
         reference = control.norm(control.ss(a, b[:, 2:3], np.eye(6, 12)[2:3], 0), p="inf")
         poles = damped_poles(m, c, 0 * k, k)
         found = supremum(
-            lambda w: np.abs(solve_response(dynamic_stiffness(m, k, 0 * k, c, w), np.eye(6)[2])[None, ..., 2]),
+            lambda w: np.abs(
+                solve_response(dynamic_stiffness(m, k, 0 * k, c, w), np.eye(6)[2])[None, ..., 2]
+            ),
             0.0,
             2e3,
             poles.imag,
@@ -166,7 +173,9 @@ class TestTheorems:
         turn = six_axis_rotation(rotation_about([0.3, 1.0, -0.4], angle))
         load = np.arange(1.0, 7.0) + 0.5j
         q = solve_response(dynamic_stiffness(m, k, h, c, 80.0), load)
-        turned = solve_response(dynamic_stiffness(*(turn @ a @ turn.T for a in (m, k, h, c)), 80.0), turn @ load)
+        turned = solve_response(
+            dynamic_stiffness(*(turn @ a @ turn.T for a in (m, k, h, c)), 80.0), turn @ load
+        )
         np.testing.assert_allclose(turned, turn @ q, atol=1e-9 * np.abs(q).max())
         assert ellipse_major(turned[:3]) == pytest.approx(ellipse_major(q[:3]), rel=1e-8)
 

@@ -2,6 +2,10 @@
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from hypothesis.extra import numpy as arrays
+
 from detune.physics.orientation import axes_from_direction, rotation_about, six_axis_rotation
 from detune.physics.rigid_body import (
     attachment,
@@ -15,9 +19,6 @@ from detune.physics.rigid_body import (
     skew,
     weighed_mass_and_centre,
 )
-from hypothesis import given, settings
-from hypothesis import strategies as st
-from hypothesis.extra import numpy as arrays
 
 vectors = arrays.arrays(float, 3, elements=st.floats(-3, 3))
 quick = settings(deadline=None, max_examples=40)
@@ -43,7 +44,9 @@ class TestSkewAndAttachment:
     def test_local_axes(self):
         # Local axial direction along global x: the third row is the motion along x.
         axes = axes_from_direction([1.0, 0.0, 0.0], [0.0, 0.0, 1.0])
-        np.testing.assert_allclose(attachment([0, 0, 0.5], axes) @ [1, 0, 0, 0, 0.2, 0], [0, 0, 1.1], atol=1e-15)
+        np.testing.assert_allclose(
+            attachment([0, 0, 0.5], axes) @ [1, 0, 0, 0, 0.2, 0], [0, 0, 1.1], atol=1e-15
+        )
 
     def test_batches(self):
         r = np.arange(24.0).reshape(2, 4, 3)
@@ -105,7 +108,10 @@ class TestInertia:
     @quick
     @given(vectors, vectors)
     def test_combining_agrees_with_adding_mass_matrices(self, first, second):
-        parts = [(3.0, first, box_inertia(3.0, [0.2, 0.3, 0.5])), (5.0, second, cylinder_inertia(5.0, 0.2, 0.7, 1))]
+        parts = [
+            (3.0, first, box_inertia(3.0, [0.2, 0.3, 0.5])),
+            (5.0, second, cylinder_inertia(5.0, 0.2, 0.7, 1)),
+        ]
         mass, centre, inertia = combine(*zip(*parts, strict=True))
         total = sum(mass_matrix(*part) for part in parts)
         np.testing.assert_allclose(mass_matrix(mass, centre, inertia), total, atol=1e-10)
@@ -166,7 +172,9 @@ class TestOrientation:
     @quick
     @given(vectors, vectors)
     def test_right_handed_and_orthonormal(self, axial, radial):
-        if np.linalg.norm(np.cross(axial, radial)) < 1e-3 * (1e-3 + np.linalg.norm(axial) * np.linalg.norm(radial)):
+        if np.linalg.norm(np.cross(axial, radial)) < 1e-3 * (
+            1e-3 + np.linalg.norm(axial) * np.linalg.norm(radial)
+        ):
             return
         if min(np.linalg.norm(axial), np.linalg.norm(radial)) < 1e-3:
             return
@@ -178,7 +186,8 @@ class TestOrientation:
         np.testing.assert_allclose(axes[:, 1] @ radial, 0.0, atol=1e-9)
 
     @pytest.mark.parametrize(
-        ("axial", "radial"), [([0, 0, 0], None), ([0, 0, 1], [0, 0, -2]), ([np.nan, 0, 1], None), ([0, 0, 1], [0, 0, 0])]
+        ("axial", "radial"),
+        [([0, 0, 0], None), ([0, 0, 1], [0, 0, -2]), ([np.nan, 0, 1], None), ([0, 0, 1], [0, 0, 0])],
     )
     def test_undecided_directions(self, axial, radial):
         with pytest.raises(ValueError, match="direction"):

@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+
 from detune.physics import levels, octaves
 from detune.physics.balance import (
     permissible_eccentricity,
@@ -81,9 +82,7 @@ class TestSliderCrank:
 
     def test_two_in_line_opposed(self):
         # Cranks at 0 and 180 degrees: primary couple m r a, secondary force twice that of one cylinder.
-        forces = reciprocating_forces(
-            1.0, 0.04, 0.16, [0, np.pi], [0, 0, 1], [[0.1, 0, 0], [-0.1, 0, 0]]
-        )
+        forces = reciprocating_forces(1.0, 0.04, 0.16, [0, np.pi], [0, 0, 1], [[0.1, 0, 0], [-0.1, 0, 0]])
         np.testing.assert_allclose(forces.force[0], 0, atol=1e-15)
         np.testing.assert_allclose(forces.moment[0], [0, -0.2 * 0.04, 0], atol=1e-15)
         np.testing.assert_allclose(forces.force[1], [0, 0, 2 * 0.01], atol=1e-15)
@@ -93,7 +92,9 @@ class TestSliderCrank:
         # 0, 120, 240, 240, 120, 0 degrees: primary and secondary, forces and couples.
         place = np.zeros((6, 3))
         place[:, 0] = np.arange(6) * 0.1 - 0.25
-        forces = reciprocating_forces(1.0, 0.04, 0.16, np.radians([0, 120, 240, 240, 120, 0]), [0, 0, 1], place)
+        forces = reciprocating_forces(
+            1.0, 0.04, 0.16, np.radians([0, 120, 240, 240, 120, 0]), [0, 0, 1], place
+        )
         np.testing.assert_allclose(forces.force, 0, atol=1e-14)
         np.testing.assert_allclose(forces.moment, 0, atol=1e-14)
 
@@ -133,7 +134,9 @@ class TestOctaves:
 
     def test_nominal_is_not_exact(self):
         # A trap of CHECKS 14: the band called 8 Hz is centred at 7.943 Hz, the one called 31.5 at 31.623.
-        np.testing.assert_array_equal(octaves.nominal_centre([-21, -15, -30, -31, 0, 2]), [8, 31.5, 1, 0.8, 1000, 1600])
+        np.testing.assert_array_equal(
+            octaves.nominal_centre([-21, -15, -30, -31, 0, 2]), [8, 31.5, 1, 0.8, 1000, 1600]
+        )
         assert octaves.exact_centre(-15) == pytest.approx(31.6228, abs=1e-4)
 
     def test_nominal_centres_find_their_own_band(self):

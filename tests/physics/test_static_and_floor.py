@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+
 from detune.ground.errors import DetuneError
 from detune.physics.floor import floor_frequency_from_sag, floor_from_frequency, floor_modal_mass
 from detune.physics.modes import undamped_frequencies

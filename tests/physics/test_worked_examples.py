@@ -2,6 +2,7 @@
 
 import numpy as np
 import pytest
+
 from detune.physics import oscillator
 from detune.physics.damping import complex_stiffness, viscous_from_ratio_at_rated_load
 from detune.physics.modes import undamped_frequencies, undamped_modes
@@ -16,7 +17,9 @@ def force_response(mass, stiffness, viscous, force, omega):
 
 def with_absorber(mass, stiffness, absorber_mass, absorber_stiffness):
     m = np.diag([mass, absorber_mass])
-    k = np.array([[stiffness + absorber_stiffness, -absorber_stiffness], [-absorber_stiffness, absorber_stiffness]])
+    k = np.array(
+        [[stiffness + absorber_stiffness, -absorber_stiffness], [-absorber_stiffness, absorber_stiffness]]
+    )
     return m, k
 
 
@@ -69,7 +72,9 @@ def test_three_springs_for_a_tenth():
 def test_four_inverse_designs():
     # Rao 5e Examples 9.4, 9.5, 9.8 and the absorber of the diesel engine (from memory, recomputed). W5.
     each = 9969.3
-    assert abs(4 * each * force_response(40.0, 4 * each, 0.0, 1.0, 2 * np.pi * 1000 / 60)) == pytest.approx(0.1, rel=1e-4)
+    assert abs(4 * each * force_response(40.0, 4 * each, 0.0, 1.0, 2 * np.pi * 1000 / 60)) == pytest.approx(
+        0.1, rel=1e-4
+    )
     x = force_response(50.0, 34285.7, 0.0, 1000.0, 120.0)
     assert abs(34285.7 * x) == pytest.approx(0.05 * 1000.0, rel=1e-4)
     assert abs(x) == pytest.approx(1.45833e-3, rel=1e-4)
@@ -95,7 +100,9 @@ def test_spring_and_damping_from_amplitudes():
     mass, w = 20.0 / 386.0, 2 * np.pi * 10
     assert abs(15.735 * force_response(mass, 15.735, 0.0, 1.0, w)) == pytest.approx(1 / 12, rel=1e-4)
     for ratio, far, near in ((0.05417, 1.3, 12.0), (0.066667, 0.08, 0.60)):
-        share = abs(oscillator.unbalance_response(1.0, ratio)) / abs(oscillator.unbalance_response(1e5, ratio))
+        share = abs(oscillator.unbalance_response(1.0, ratio)) / abs(
+            oscillator.unbalance_response(1e5, ratio)
+        )
         assert share == pytest.approx(near / far, rel=1e-4)
 
 
@@ -131,7 +138,7 @@ class TestAbsorbers:
         # Rao 5e ch. 9, motor-generator: tuned at 3000 rpm, lower frequency 2000 rpm (only that one of its trial data
         # is consistent, CHECKS 13). W17.
         m, k = with_absorber(14.8760, 14.8760 * (2 * np.pi * 50) ** 2, 10.3306, 1.01959e6)
-        assert 10.3306 / 14.8760 == pytest.approx(0.694444, rel=1e-5)
+        assert pytest.approx(0.694444, rel=1e-5) == 10.3306 / 14.8760
         np.testing.assert_allclose(undamped_frequencies(m, k) * 60, [2000.0, 4500.0], rtol=1e-5)
 
     def test_stroke_limit(self):
@@ -151,7 +158,9 @@ class TestAbsorbers:
         _, stroke = solve_response(dynamic_stiffness(m, k, 0 * k, 0 * k, w), np.array([13.0, 0.0]))
         assert abs(stroke) == pytest.approx(2e-3, rel=1e-9)
 
-    @pytest.mark.parametrize(("share", "low", "high"), [(0.05, 0.894427, 1.118034), (0.2, 0.801088, 1.248302)])
+    @pytest.mark.parametrize(
+        ("share", "low", "high"), [(0.05, 0.894427, 1.118034), (0.2, 0.801088, 1.248302)]
+    )
     def test_product_and_sum_of_the_split(self, share, low, high):
         # P2: r1 r2 = 1 and r1^2 + r2^2 = 2 + mu for an absorber tuned to the natural frequency.
         m, k = with_absorber(1.0, 1.0, share, share)
@@ -204,6 +213,11 @@ def test_equations_of_motion_by_lagrange():
     free = np.ix_([0, 2, 4], [0, 2, 4])
     b = attachment([rx, 0.0, rz])
     np.testing.assert_allclose(
-        mass_matrix(mass, [cx, 0.0, cz], np.diag([1.0, inertia, 1.0]))[free], expected_mass, rtol=1e-12, atol=1e-12
+        mass_matrix(mass, [cx, 0.0, cz], np.diag([1.0, inertia, 1.0]))[free],
+        expected_mass,
+        rtol=1e-12,
+        atol=1e-12,
     )
-    np.testing.assert_allclose((b.T @ np.diag([kx, 0.0, kz]) @ b)[free], expected_stiffness, rtol=1e-12, atol=1e-9)
+    np.testing.assert_allclose(
+        (b.T @ np.diag([kx, 0.0, kz]) @ b)[free], expected_stiffness, rtol=1e-12, atol=1e-9
+    )

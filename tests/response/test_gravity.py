@@ -70,8 +70,10 @@ def test_a_machine_that_topples_is_refused_in_a_sentence(share: float) -> None:
     assert f"{carried:.0f} N"[:3] in sentence.replace(",", "") or f"{carried / 1e3:.3g} kN" in sentence
     assert "mass centre lies" in sentence and "no higher than" in sentence
     # By hand: 4 k a^2 = 5000 N m over 2942 N.
-    assert CRITICAL == pytest.approx(1.69953, abs=1e-5)
-    assert f"{1e3 * CRITICAL:.4g}"[:4] in sentence.replace(",", "") or f"{CRITICAL:.3g} m" in sentence, sentence
+    assert pytest.approx(1.69953, abs=1e-5) == CRITICAL
+    assert f"{1e3 * CRITICAL:.4g}"[:4] in sentence.replace(",", "") or f"{CRITICAL:.3g} m" in sentence, (
+        sentence
+    )
     assert weight > carried
 
 

@@ -14,7 +14,7 @@ from scipy.optimize import brentq
 import detune.response.amplitude as batch_amplitude
 import detune.response.direct_amplitude as direct_amplitude
 from detune.brief.allowable import Acceleration, Displacement, Separation, Transmissibility, TransmittedForce
-from detune.brief.forcing import RandomForce
+from detune.brief.forcing import BaseMotion, RandomForce
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import AmplitudeTable, UnknownDamping
 from detune.physics.fixed_point import fixed_points
@@ -80,7 +80,10 @@ def test_two_answers_take_the_larger() -> None:
     # A strongly softening, lightly damped mount just below its natural frequency: a small and a large vibration
     # both reproduce themselves (the fold of a resonance curve that leans over).
     table = replace(
-        TABLE, amplitude=(1e-5, 2e-4, 1e-3, 5e-3), stiffness_ratio=(1.0, 1.0, 0.5, 0.45), loss_factor=(0.02,) * 4
+        TABLE,
+        amplitude=(1e-5, 2e-4, 1e-3, 5e-3),
+        stiffness_ratio=(1.0, 1.0, 0.5, 0.45),
+        loss_factor=(0.02,) * 4,
     )
     force, frequency = 8.0, 6.0
     several = roots(frequency, force, table)
@@ -138,7 +141,11 @@ def test_noise_works_at_its_expected_extreme() -> None:
     table = replace(TABLE, loss_factor=(0.02, 0.02, 0.02, 0.02))
     density, low, high = 30.0, 0.05, 400.0
     jet = RandomForce(
-        name="jet", position=(0, 0, 0), direction="z", duration=60.0, break_points=((low, density), (high, density))
+        name="jet",
+        position=(0, 0, 0),
+        direction="z",
+        duration=60.0,
+        break_points=((low, density), (high, density)),
     )
     found = law_machines.agreed(machines.one_axis(MASS, jet), part(table))
 
@@ -178,13 +185,17 @@ def test_no_amplitude_found_fails_and_says_so(monkeypatch: pytest.MonkeyPatch) -
     assert "no amplitude was found that reproduces itself" in row.label
 
 
-@pytest.mark.parametrize("kind", ["base motion", *(pytest.param(k, marks=NIGHTLY) for k in ("noise", "pulse", "passage"))])
+SLOW = [pytest.param(kind, marks=NIGHTLY) for kind in ("base motion", "noise", "pulse", "passage")]
+
+
+@pytest.mark.parametrize("kind", ["one frequency", *SLOW])
 def test_six_axes_batch_equals_assessor(kind: str) -> None:
     brief, (one, other) = machines.random_machine(3)
     limits = law_machines.LIMITS[1:] if kind == "pulse" else law_machines.LIMITS
+    road = BaseMotion(name="road", frequency=14.0, direction=(0.3, -0.5, 1.0), velocity=4e-3)
     update = {
         "gravity_stiffness": True,
-        "forcing": law_machines.forcings(3)[kind],
+        "forcing": (road,) if kind == "one frequency" else law_machines.forcings(3)[kind],
         "conditions": law_machines.conditions(kind),
         "allowables": limits,
     }
@@ -192,11 +203,26 @@ def test_six_axes_batch_equals_assessor(kind: str) -> None:
     assert all(row.note == FOUND for row in found.margins if row.condition == "running")
 
 
+def test_amplitudes_outside_what_the_list_holds_for_are_told() -> None:
+    small = machines.one_axis(MASS, machines.force(9.0, 1e-3))
+    (note,) = machines.assessed(small, part()).notes
+    assert note.startswith("S, running: m: a dynamic deflection of") and "is below 10 um" in note.replace(
+        "\u00b5", "u"
+    ), note
+    stated = replace(machines.mount(k=K, loss=0.1), amplitude_min=1e-6, amplitude_max=1e-4)
+    brief = machines.one_axis(MASS, machines.force(9.0, 100.0))
+    (note,) = machines.assessed(brief, stated).notes
+    assert "the greatest for which its figures hold" in note
+    assert machines.assessed(brief, replace(stated, amplitude_max=1.0)).notes == ()
+
+
 def test_the_problem_says_what_is_approximated() -> None:
     brief = machines.one_axis(MASS, machines.force(9.0, 100.0))
     problem = build(brief, {"list": machines.catalog(part(), unknown("u"))})
     assert any("stiffness over amplitude of m" in note and "by iteration" in note for note in problem.assumed)
-    assert any("damping of unknown kind (u)" in note and "the worse counts" in note for note in problem.assumed)
+    assert any(
+        "damping of unknown kind (u)" in note and "the worse counts" in note for note in problem.assumed
+    )
 
 
 ETA = 0.1
@@ -207,7 +233,10 @@ def unknown(name: str = "m") -> Mount:
     c = ETA * math.sqrt(K * MASS)
     readings = UnknownDamping(loss_factor=(None, None, ETA), viscous=(None, None, c))
     return replace(
-        machines.mount(name, K, loss=ETA), load_rated=MASS * 9.80665, damping_kind="unknown", damping_unknown=readings
+        machines.mount(name, K, loss=ETA),
+        load_rated=MASS * 9.80665,
+        damping_kind="unknown",
+        damping_unknown=readings,
     )
 
 
@@ -215,13 +244,17 @@ def test_s9_unknown_damping_well_above_resonance_is_judged_as_viscous() -> None:
     # S9: at ten times the natural frequency a loss factor of 0.1 passes 0.010151 on, a damping ratio of 0.05
     # 0.014284; further above the viscous one passes ever more (DESIGN 4: twofold well above resonance).
     ratio = Transmissibility(of="force", direction="z", limit=1.0)
-    found = law_machines.agreed(machines.one_axis(MASS, machines.force(10.0 * FN), (ratio,)), unknown(), rel=1e-6)
+    found = law_machines.agreed(
+        machines.one_axis(MASS, machines.force(10.0 * FN), (ratio,)), unknown(), rel=1e-6
+    )
     (row,) = [row for row in found.margins if row.kind == "transmissibility"]
     assert row.value == pytest.approx(0.014284, abs=5e-7)
     assert row.note == "damping read as viscous"
     assert row.label.startswith("transmissibility, force ratio, z (damping read as viscous)")
     r = 17.436
-    found = law_machines.agreed(machines.one_axis(MASS, machines.force(r * FN), (ratio,)), unknown(), rel=1e-6)
+    found = law_machines.agreed(
+        machines.one_axis(MASS, machines.force(r * FN), (ratio,)), unknown(), rel=1e-6
+    )
     (row,) = [row for row in found.margins if row.kind == "transmissibility"]
     as_loss_factor = math.sqrt((1.0 + ETA**2) / ((1.0 - r**2) ** 2 + ETA**2))
     assert row.value / as_loss_factor == pytest.approx(2.0, rel=2e-3)
@@ -260,7 +293,7 @@ def test_a_mode_is_exempt_only_where_both_readings_damp_it() -> None:
     assert not found.modes[0].exempt
 
 
-@pytest.mark.parametrize("kind", ["tones", *(pytest.param(k, marks=NIGHTLY) for k in ("noise", "pulse"))])
+@pytest.mark.parametrize("kind", ["tones", *SLOW[1:3]])
 def test_unknown_damping_in_six_axes(kind: str) -> None:
     brief, (one, other) = machines.random_machine(4)
     if kind != "tones":
@@ -274,7 +307,9 @@ def test_unknown_damping_in_six_axes(kind: str) -> None:
         known = replace(
             one,
             loss_factor=one.loss_factor if reading == "loss_factor" else (0.0,) * 3,
-            viscous=(0.0,) * 3 if reading == "loss_factor" else law_machines.unknown(one).damping_unknown.viscous,
+            viscous=(0.0,) * 3
+            if reading == "loss_factor"
+            else law_machines.unknown(one).damping_unknown.viscous,
         )
         for row in machines.assessed(brief, known, other).margins:
             key = (row.quantity, row.place, row.condition)

@@ -40,7 +40,10 @@ LAWS = {
 }
 
 
-@pytest.mark.parametrize("kind", ["tones", "pulse", *(pytest.param(k, marks=NIGHTLY) for k in ("base motion", "noise", "passage"))])
+SLOW = [pytest.param(kind, marks=NIGHTLY) for kind in ("base motion", "noise", "passage")]
+
+
+@pytest.mark.parametrize("kind", ["tones", "pulse", *SLOW])
 @pytest.mark.parametrize("law", LAWS)
 def test_six_axes_batch_equals_assessor(law: str, kind: str) -> None:
     """Each law on one of two groups, a flexible floor, an offset centre and inclined stations."""
@@ -83,9 +86,7 @@ def test_relaxation_transmissibility_in_closed_form(ratio: float, r: float) -> N
     # Ruzicka and Derby, Influence of Damping in Vibration Isolation (1971), from memory, recomputed: an elastically
     # coupled dashpot, T^2 = (1 + 4 ((N+1)/N)^2 z^2 r^2)/((1 - r^2)^2 + 4 z^2 r^2 (N + 1 - r^2)^2/N^2).
     z = 0.2
-    part = replace(
-        machines.mount(k=K, c=2.0 * z * math.sqrt(K * MASS)), relaxation=Relaxation(ratio)
-    )
+    part = replace(machines.mount(k=K, c=2.0 * z * math.sqrt(K * MASS)), relaxation=Relaxation(ratio))
     brief = machines.one_axis(MASS, base(r * FN), (MOTION,))
     lost = 2.0 * z * r / ratio
     expected = math.sqrt(
@@ -99,7 +100,9 @@ def test_relaxation_against_a_state_space_with_an_inner_state() -> None:
     ratio, c = 4.0, 900.0
     series = ratio * K
     a = np.array([[0, 1, 0], [-(K + series) / MASS, 0, series / MASS], [series / c, 0, -series / c]])
-    system = scipy.signal.StateSpace(a, [[0], [1 / MASS], [0]], [[1, 0, 0], [K + series, 0, -series]], [[0], [0]])
+    system = scipy.signal.StateSpace(
+        a, [[0], [1 / MASS], [0]], [[1, 0, 0], [K + series, 0, -series]], [[0], [0]]
+    )
     part = replace(machines.mount(k=K, c=c), relaxation=Relaxation(ratio))
     force = TransmittedForce(through="floor", direction="z", measure="peak", limit=1e6)
     for f in (3.0, 8.0, 11.0, 40.0):
@@ -187,7 +190,9 @@ def test_t1_fixed_points_of_an_absorber(z2: float) -> None:
 def test_tabled_mount_at_the_points_of_its_table(temperature: float | None, row: int) -> None:
     # At a point of the table nothing is interpolated: X = F/|k r (1 + j eta) - m w^2|.
     part = law_machines.tabled(machines.mount(k=K), temperature=(-20.0, 20.0))
-    state = None if temperature in (None, 20.0) else law_machines.machines_state("cold", temperature=temperature)
+    state = (
+        None if temperature in (None, 20.0) else law_machines.machines_state("cold", temperature=temperature)
+    )
     for column, f in ((1, 10.0), (2, 100.0)):
         brief = machines.one_axis(MASS, machines.force(f))
         brief = law_machines.in_state(brief, state)
@@ -233,7 +238,9 @@ def test_a_load_beyond_the_curve_fails_the_brief() -> None:
     part = replace(machines.mount(k=1e5), load_curve=LoadCurve(d, load, "curve.csv"), deflection_max=4e-3)
     found = machines.assessed(machines.one_axis(MASS, machines.force(20.0)), part)
     assert not found.meets and found.least_margin < 0.0
-    batch = law_machines.batch_rows(law_machines.problem_of(machines.one_axis(MASS, machines.force(20.0)), part))
+    batch = law_machines.batch_rows(
+        law_machines.problem_of(machines.one_axis(MASS, machines.force(20.0)), part)
+    )
     assert any(np.isnan(margin) or margin < 0.0 for margin in batch.values())
 
 

@@ -27,6 +27,8 @@ from detune.brief.brief import Brief
 from detune.brief.condition import Condition
 from detune.brief.forcing import BasePulse, Drop, ForcePulse, VelocityStep
 from detune.parts.kinds.mount import Mount
+from detune.physics.pulses import half_sine, symmetric_triangle, terminal_peak_sawtooth
+from detune.physics.shock import pulse_shock_spectrum
 from detune.problem.build import build
 from detune.response.designs import Designs
 
@@ -103,6 +105,16 @@ def test_k2_damped_half_sine(ratio: float, cycles: float, maximum: float) -> Non
     # K2: computed with the project's table of checks.
     brief = machines.one_axis(MASS, base_pulse("half-sine", 0.02))
     assert both(brief, tuned(cycles / 0.02, ratio), ACCELERATION) / G == pytest.approx(maximum, rel=1e-4)
+
+
+@pytest.mark.parametrize("shape", ["half-sine", "terminal-peak-sawtooth", "triangle"])
+@pytest.mark.parametrize(("cycles", "ratio"), [(0.1, 0.3), (0.8, 0.05), (4.0, 0.0)])
+def test_maxima_beside_the_edges_of_a_pulse(shape: str, cycles: float, ratio: float) -> None:
+    # The closed forms on each piece of a pulse (physics.shock), which sample nothing that is simulated here.
+    pulse = {"half-sine": half_sine, "triangle": symmetric_triangle}.get(shape, terminal_peak_sawtooth)(G, 0.011)
+    expected = float(pulse_shock_spectrum(pulse, [cycles / 0.011], ratio).overall[0])
+    brief = machines.one_axis(MASS, base_pulse(shape, 0.011))
+    assert both(brief, tuned(cycles / 0.011, ratio), ACCELERATION) == pytest.approx(expected, rel=5e-5)
 
 
 K4 = {"half-sine": 2.0 / math.pi, "terminal-peak-sawtooth": 0.5, "trapezoid": 0.9}

@@ -31,6 +31,7 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
             _bodies,
             _stations,
             _states,
+            _structure,
             _forcing,
             _allowables,
             _choices,
@@ -75,6 +76,7 @@ def _unique_names(brief: Brief) -> list[Finding]:
         "condition": [c.name for c in brief.conditions],
         "forcing": [f.name for f in brief.forcing],
         "catalog": [c.name for c in brief.catalogs],
+        "state": [s.name for s in brief.states],
     }
     for table, names in tables.items():
         for index, name in enumerate(names):
@@ -85,6 +87,29 @@ def _unique_names(brief: Brief) -> list[Finding]:
             findings.append(
                 Finding(("body", index, "name"), body.name, 'a name other than "floor" and "ground"')
             )
+    return findings
+
+
+def _structure(brief: Brief) -> list[Finding]:
+    """Names of the structure's nodes, and ratios to a motion of the floor, which says nothing of its supports."""
+    if brief.structure is None:
+        return []
+    findings = [
+        Finding(("body", index, "name"), body.name, 'a name other than "structure", which stands for its modes')
+        for index, body in enumerate(brief.bodies)
+        if body.name == "structure"
+    ]
+    taken = ["floor", "ground", *(body.name for body in brief.bodies)]
+    for index, node in enumerate(brief.structure.nodes):
+        if node.name in taken:
+            path: Path = ("structure", "nodes", index, "name")
+            findings.append(Finding(path, node.name, "a name that no body and no other node has", depends=("body",)))
+        taken.append(node.name)
+    expected = "a ratio of forces beside a [structure]: how the supports that hold it move is not stated"
+    for index, allowable in enumerate(brief.allowables):
+        unit = allowable.unit_load() if isinstance(allowable, HarmonicAllowable) else None
+        if unit is not None and unit[0] == "base":
+            findings.append(Finding(("allowable", index), allowable.kind, expected))
     return findings
 
 

@@ -81,7 +81,9 @@ class SizingUnknown(Statement):
         self._low, self._high = self._read(self.lower, "lower"), self._read(self.upper, "upper")
         if self._high < self._low:
             found = f"{describe(self.lower)} to {describe(self.upper)}"
-            raise refuse(found, "the lower bound first, the upper bound second: these are crossed", at="lower")
+            raise refuse(
+                found, "the lower bound first, the upper bound second: these are crossed", at="lower"
+            )
         least = 0.0 if self.kind in FROM_ZERO else None
         if (least is None and self._low <= 0.0) or self._low < 0.0:
             wanted = "a lower bound of zero or more" if least == 0.0 else "a lower bound above zero"
@@ -201,7 +203,9 @@ class Sizing(Statement):
     made: tuple[MadePart, ...] = ()
     minimise: Minimised | None = None
     maximise: Maximised | None = None
-    trade: tuple[Literal["cost", "added-mass", "worst-response", "stiffness", "damping", "separation"], ...] = ()
+    trade: tuple[
+        Literal["cost", "added-mass", "worst-response", "stiffness", "damping", "separation"], ...
+    ] = ()
     map: tuple[Name, ...] = ()
     starts: int = 12
     seed: int = 1

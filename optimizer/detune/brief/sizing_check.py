@@ -1,6 +1,6 @@
 """Checks between `[sizing]` and the rest of the brief."""
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Set
 
 from detune.brief.brief import Brief
 from detune.brief.finding import Finding, Path
@@ -62,7 +62,9 @@ def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
 def _group(brief: Brief, sizing: Sizing, group: str) -> list[Finding]:
     """A group of parts needs its stiffness, its damping, and a lateral ratio where it can move sideways."""
     own = {unknown.kind for unknown in sizing.unknown if unknown.group == group}
-    axes = {unknown.axis for unknown in sizing.unknown if unknown.group == group and unknown.kind == "stiffness"}
+    axes = {
+        unknown.axis for unknown in sizing.unknown if unknown.group == group and unknown.kind == "stiffness"
+    }
     index, made = next(
         ((i, m) for i, m in enumerate(sizing.made) if m.group == group), (len(sizing.made), None)
     )
@@ -80,19 +82,19 @@ def _group(brief: Brief, sizing: Sizing, group: str) -> list[Finding]:
     return findings
 
 
-def _stated_once(path: Path, made: MadePart, own: set[str], axes: set[str | None]) -> list[Finding]:
+def _stated_once(path: Path, made: MadePart, own: Set[str], axes: Set[str | None]) -> list[Finding]:
     findings = []
     sought = "axial" in axes or "absorber-tuning" in own
     if sought == (made.stiffness is not None):
-        expected = (
-            f'the axial stiffness of group "{made.group}" once: as an unknown, or as "stiffness" here'
-        )
+        expected = f'the axial stiffness of group "{made.group}" once: as an unknown, or as "stiffness" here'
         findings.append(Finding((*path, "stiffness"), "both" if sought else "neither", expected))
     viscous = bool(own & {"viscous", "absorber-damping"})
     damped = "loss-factor" in own or viscous
     stated = made.loss_factor is not None or made.viscous is not None
     if not damped and not stated:
-        expected = f'the damping of group "{made.group}": an unknown, "loss_factor" or "viscous" (zero is an answer)'
+        expected = (
+            f'the damping of group "{made.group}": an unknown, "loss_factor" or "viscous" (zero is an answer)'
+        )
         findings.append(Finding(path, "no damping", expected))
     for key, sought in (("loss_factor", "loss-factor" in own), ("viscous", viscous)):
         if sought and getattr(made, key) is not None:

@@ -1,8 +1,8 @@
 """Named states of the machine: one mount lost, cold, crept, levelled."""
 
-from pydantic import model_validator
+from pydantic import field_validator, model_validator
 
-from detune.brief.statement import Length, Name, Ratio, Statement, Temperature, refuse
+from detune.brief.statement import Length, Name, Ratio, Statement, Temperature, listed_once, refuse
 
 
 class State(Statement):
@@ -11,8 +11,8 @@ class State(Statement):
     `lost`: stations whose part carries nothing. `stiffness_factor`: every part's stiffness, static
     and dynamic, times this (cold rubber 1.3 to 2; common practice); `groups` restricts it. `creep`: added
     to every static deflection, as a share of it. `packing`: thickness put under a station, m, so that the
-    machine stands level or the floor's unevenness is counted. `temperature` (degC, 20 if left out): where
-    parts state a table over temperature it is read there.
+    machine stands level or the floor's unevenness is counted (negative where the floor lies low).
+    `temperature` (degC, 20 if left out): where parts state a table over temperature it is read there.
     """
 
     name: Name
@@ -22,6 +22,11 @@ class State(Statement):
     creep: Ratio = 0.0
     temperature: Temperature = 20.0
     packing: dict[Name, Length] = {}
+
+    @field_validator("groups", "lost")
+    @classmethod
+    def _some_names(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        return listed_once(value)
 
     @model_validator(mode="after")
     def _values(self) -> "State":

@@ -6,6 +6,7 @@ under which station.
 
 from dataclasses import dataclass
 from pathlib import Path
+from zipfile import BadZipFile
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +15,9 @@ from pydantic import Field, PrivateAttr, ValidationInfo, model_validator
 from detune.brief.statement import Frequency, Name, Ratio, Statement, Text, refuse
 
 Floats = NDArray[np.float64]
+# Least squared frequency over the greatest below which the structure floats: a mesh of 200 elements has 1e-10, a free
+# motion comes out at rounding size.
+NOT_HELD = 1e-12
 
 
 class Node(Statement):
@@ -25,11 +29,15 @@ class Node(Statement):
 
 @dataclass(frozen=True, eq=False)
 class StructureModes:
-    """Modes of the structure on its own: frequency (m,) Hz, loss as damping ratio (m,), shapes (d, m), mass-normalised."""
+    """Modes of the structure on its own: frequency (m,) Hz, loss as damping ratio (m,), shapes (d, m), mass-normalised.
+
+    `left_out`: how many more there are above the highest one kept.
+    """
 
     frequency: Floats
     damping_ratio: Floats
     shapes: Floats
+    left_out: int = 0
 
 
 class Structure(Statement):
@@ -50,6 +58,9 @@ class Structure(Statement):
 
     @model_validator(mode="after")
     def _read(self, info: ValidationInfo) -> "Structure":
+        if self._modes is not None:
+            # A structure that is put into a brief is checked once more, then without its folder.
+            return self
         folder = Path((info.context or {}).get("folder", "."))
         if not 0.0 < self.damping_ratio < 1.0:
             raise refuse(f"{self.damping_ratio:g}", "a damping ratio above 0 and below 1")
@@ -88,11 +99,14 @@ def _read_modes(structure: Structure, folder: Path) -> StructureModes:
             frequency, shapes = np.asarray(arrays["frequency"], float), np.asarray(arrays["shapes"], float)
             if (
                 frequency.ndim != 1
+                or frequency.size == 0
                 or shapes.ndim != 2
                 or shapes.shape[1] != len(frequency)
                 or frequency.min() <= 0
             ):
                 raise refuse(structure.file, 'positive "frequency" (m,) and "shapes" (d, m)')
+            if not np.all(np.isfinite(frequency)) or not np.all(np.isfinite(shapes)):
+                raise refuse(structure.file, "finite numbers alone")
             return _kept(structure, frequency, shapes)
         if not {"mass", "stiffness"} <= set(arrays):
             raise refuse(
@@ -119,7 +133,7 @@ def _solved(structure: Structure, mass: Floats, stiffness: Floats) -> StructureM
         values, shapes = eigh(stiffness, mass)
     except LinAlgError:
         raise refuse("mass matrix", "a positive definite mass matrix") from None
-    if values[0] <= 1e-9 * values[-1]:
+    if values[0] <= NOT_HELD * values[-1]:
         raise refuse("a structure that is not held", "a stiffness matrix that holds the structure")
     return _kept(structure, np.sqrt(values) / (2.0 * np.pi), shapes)
 
@@ -128,14 +142,17 @@ def _kept(structure: Structure, frequency: Floats, shapes: Floats) -> StructureM
     keep = frequency <= (structure.up_to or np.inf)
     if not keep.any():
         raise refuse(f"up_to below {frequency.min():.4g} Hz", "at least one mode of the structure below it")
-    return StructureModes(frequency[keep], np.full(int(keep.sum()), structure.damping_ratio), shapes[:, keep])
+    kept = int(keep.sum())
+    ratio = np.full(kept, structure.damping_ratio)
+    return StructureModes(frequency[keep], ratio, shapes[:, keep], len(keep) - kept)
 
 
 def _npz(folder: Path, name: str) -> dict[str, NDArray[np.generic]]:
     try:
         with np.load(folder / name, allow_pickle=False) as archive:
             return {key: archive[key] for key in archive.files}
-    except (OSError, ValueError) as error:
+    except (OSError, ValueError, EOFError, TypeError, BadZipFile) as error:
+        # numpy raises TypeError for a single array (.npy), which is no archive.
         raise refuse(name, f"an NPZ file that can be read ({error})") from None
 
 

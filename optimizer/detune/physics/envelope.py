@@ -103,11 +103,24 @@ def centres_of_orders(
     centre.
     """
     omega = 2.0 * np.pi * np.asarray(frequency, dtype=float)
-    half = np.minimum(np.asarray(loss_factor, dtype=float), 2.0) / 2.0
-    turns = np.asarray(orders, dtype=float)
-    centres = omega[..., :, None] / turns
-    shape = (*omega.shape[:-1], omega.shape[-1] * turns.size)
-    return centres.reshape(shape), (centres * half[..., :, None]).reshape(shape)
+    half_width = omega * np.minimum(np.asarray(loss_factor, dtype=float), 2.0) / 2.0
+    return _by_order(omega, orders), _by_order(half_width, orders)
+
+
+def centres_of_poles(poles: ArrayLike, orders: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """The same from damped poles: Im p / order and -Re p / order.
+
+    Shapes: poles (..., n) complex in rad/s (``modes.damped_poles``), orders (k) -> two (..., n k) in rad/s. Prefer
+    it wherever dashpots or loss factors above about 0.2 make modes of different damping overlap; the half widths of
+    undamped modes are then no longer those of the peaks.
+    """
+    p = np.asarray(poles, dtype=complex)
+    return _by_order(p.imag, orders), _by_order(-p.real, orders)
+
+
+def _by_order(omega: FloatArray, orders: ArrayLike) -> FloatArray:
+    turned = omega[..., :, None] / np.asarray(orders, dtype=float)
+    return np.asarray(turned.reshape((*omega.shape[:-1], -1)))
 
 
 def first_samples(low: FloatArray, high: FloatArray, centres: FloatArray, extra: int) -> FloatArray:

@@ -61,7 +61,9 @@ def fixed_points(
         turned = np.sum(difference * before[:, active], axis=0) < 0.0
         grown = np.abs(difference).max(axis=0) > np.abs(before[:, active]).max(axis=0)
         share[active] = np.where(
-            turned | grown, np.maximum(0.5 * share[active], LEAST_SHARE), np.minimum(GROWTH * share[active], 1.0)
+            turned | grown,
+            np.maximum(0.5 * share[active], LEAST_SHARE),
+            np.minimum(GROWTH * share[active], 1.0),
         )
         before[:, active] = difference
         value[:, active] = np.maximum(value[:, active] + share[active] * difference, 0.0)

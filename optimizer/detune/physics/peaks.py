@@ -50,11 +50,13 @@ class Samples:
     half_widths: FloatArray
 
     def nearest_pole(self, design: IntArray | slice, place: FloatArray) -> FloatArray:
-        """Distance of places (N, ...) of designs (N,) to the nearest pole of each, infinite without poles."""
-        shape = (-1, *(1,) * (place.ndim - 1), self.poles.shape[1])
-        away = place[..., None] - self.poles[design].reshape(shape)
+        """Distance of places (N,) or (N, P) of designs (N,) to the nearest pole of each, infinite without poles."""
+        poles, half_widths = self.poles[design], self.half_widths[design]
+        if place.ndim > 1:
+            poles, half_widths = poles[:, None, :], half_widths[:, None, :]
+        away = place[..., None] - poles
         away *= away
-        away += (self.half_widths[design] ** 2).reshape(shape)
+        away += half_widths**2
         return np.asarray(np.sqrt(away.min(axis=-1, initial=np.inf)))
 
 
@@ -193,9 +195,10 @@ def _inside(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[Float
     coarse_right = (y_right > COARSE) | (right > COARSE_GAP * bracket.pole)
     coarse = coarse_left | coarse_right
     # Too far for a parabola: 1/amplitude is a V with its foot about one half width from the peak sample.
-    foot = np.minimum(np.minimum(_foot(left, y_left), _foot(right, y_right)), 0.9 * COARSE_GAP * bracket.pole)
-    to_left = np.minimum(np.maximum(foot, np.where(coarse_right, 0.0, 2.0 * right)), 0.4 * left)
-    to_right = np.minimum(np.maximum(foot, np.where(coarse_left, 0.0, 2.0 * left)), 0.4 * right)
+    foot = np.minimum(_foot(left, y_left), _foot(right, y_right))
+    limit = 0.9 * COARSE_GAP * bracket.pole
+    to_left = _stride(foot, limit, left, np.where(coarse_right, 0.0, 2.0 * right))
+    to_right = _stride(foot, limit, right, np.where(coarse_left, 0.0, 2.0 * left))
     hidden = _hidden(rise, np.maximum(y_left, y_right), np.maximum(left, right) / bracket.pole)
     places = [
         np.where(coarse, np.where(coarse_left, -to_left, np.nan), place),
@@ -232,7 +235,7 @@ def _edge(bracket: _Bracket, tolerance: float) -> tuple[FloatArray, list[FloatAr
     rise += doubt
     reach = np.where(curved, np.sqrt(0.5 * tolerance * lowest / bend), 0.1 * near)
     coarse = (y_near > COARSE) | (near > COARSE_GAP_AT_EDGE * bracket.pole)
-    step = np.minimum(np.minimum(_foot(near, y_near), 0.9 * COARSE_GAP_AT_EDGE * bracket.pole), 0.4 * near)
+    step = _stride(_foot(near, y_near), 0.9 * COARSE_GAP_AT_EDGE * bracket.pole, near, np.zeros_like(near))
     place = np.where(coarse, step, np.clip(vertex, 0.05 * near, 0.7 * near))
     rise = np.where(coarse, _hidden(rise, y_near, near / bracket.pole), rise)
     reach = np.where(coarse, 0.1 * step, np.minimum(reach, 0.3 * place))
@@ -275,6 +278,15 @@ def _third_difference(bracket: _Bracket, bend: FloatArray) -> FloatArray:
 def _foot(gap: FloatArray, ordinate: FloatArray) -> FloatArray:
     """Distance of the foot of the V from the peak sample, by the sample ``gap`` away."""
     return np.asarray(gap / np.maximum(np.sqrt(ordinate) - 1.0, 1e-3))
+
+
+def _stride(foot: FloatArray, limit: FloatArray, gap: FloatArray, least: FloatArray) -> FloatArray:
+    """Step from the peak sample into a coarse gap.
+
+    A neighbour in an anti-resonance puts the foot next to the sample, hence a tenth of what the gap allows at least.
+    """
+    limit = np.minimum(limit, 0.4 * gap)
+    return np.asarray(np.minimum(np.maximum(np.clip(foot, 0.1 * limit, limit), least), 0.4 * gap))
 
 
 def _hidden(rise: FloatArray, ordinate: FloatArray, gap: FloatArray) -> FloatArray:

@@ -35,8 +35,8 @@ from detune.response.design import Design
 from detune.response.designs import Designs, all_designs, design_count
 from detune.response.evaluate import Rows
 from detune.response.loads import steady_intervals, unit_families
-from detune.response.static_stiffness import static_stiffness
 from detune.response.model import Model, build_model
+from detune.response.static_stiffness import static_stiffness
 
 
 @dataclass(frozen=True)

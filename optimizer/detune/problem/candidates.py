@@ -10,11 +10,12 @@ from detune.brief.statement import describe, unit_direction
 from detune.ground import units
 from detune.ground.errors import nearest_name
 from detune.parts.catalog import Catalog, filter_parts
-from detune.parts.kinds import KINDS
 from detune.parts.columns import column_named
 from detune.parts.compose import damper_refused, empty_station, in_parallel, with_damper
+from detune.parts.kinds import KINDS
 from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Mount
+from detune.response.part_laws import ROOM_TEMPERATURE
 
 
 @dataclass(frozen=True)
@@ -223,8 +224,12 @@ def _outside_tables(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Findi
                 found = f"{mount.part}: its table covers {low:g} to {high:g} Hz"
                 expected = f"a table over all that excites, {asked[0]:.4g} to {asked[1]:.4g} Hz"
                 findings.append(Finding(("choice", index), found, expected))
+            warm = table.temperature
+            if warm and not warm[0] <= ROOM_TEMPERATURE <= warm[-1]:
+                found = f"{mount.part}: its table covers {warm[0]:g} to {warm[-1]:g} degC"
+                expected = f"a table that holds {ROOM_TEMPERATURE:g} degC, at which the machine is judged as installed"
+                findings.append(Finding(("choice", index), found, expected))
             for number, state in enumerate(brief.states):
-                warm = table.temperature
                 if warm and not warm[0] <= state.temperature <= warm[-1]:
                     found = f"{state.temperature:g} degC; the table of {mount.part} covers {warm[0]:g} to {warm[-1]:g} degC"
                     findings.append(

@@ -4,6 +4,7 @@ from collections.abc import Callable, Iterable
 
 from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
+from detune.ground.units import show
 from detune.parts.kinds.mount import Mount
 
 NAMED = 4
@@ -12,7 +13,18 @@ NAMED = 4
 def problem_notes(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> tuple[str, ...]:
     """Return what is taken in another form than stated, for any part that some group may take."""
     mounts = tuple(dict.fromkeys(mount for group in candidates for mount in group))
-    return (*_in_time(brief, mounts), *_laws(brief, mounts))
+    return (*_in_time(brief, mounts), *_laws(brief, mounts), *_structure(brief))
+
+
+def _structure(brief: Brief) -> list[str]:
+    structure = brief.structure
+    if structure is None or structure.modes.left_out == 0:
+        return []
+    kept, highest = len(structure.modes.frequency), show(structure.modes.frequency[-1], "frequency")
+    return [
+        f"{structure.name}: {structure.modes.left_out} modes above {highest} are"
+        f" left out ({kept} are kept); at rest and in vibration it yields by the modes kept alone"
+    ]
 
 
 def _in_time(brief: Brief, mounts: tuple[Mount, ...]) -> list[str]:
@@ -45,7 +57,11 @@ def _laws(brief: Brief, mounts: tuple[Mount, ...]) -> list[str]:
     if tabled:
         notes.append(f"table of {tabled}: taken at its end value for natural frequencies outside it")
     if curved:
-        whole = "; in shocks and records the whole curve counts, and a part that leaves it fails" if shocked else ""
+        whole = (
+            "; in shocks and records the whole curve counts, and a part that leaves it fails"
+            if shocked
+            else ""
+        )
         notes.append(
             f"load-deflection curve of {curved}: tones, noise and run-ups see its tangent stiffness at rest{whole}"
         )

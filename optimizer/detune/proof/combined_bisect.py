@@ -132,7 +132,7 @@ def decide_rows(
         boxes += len(batch)
         if len(trials) == len(TRIALS):
             wins += bounds.wins
-            if wins.sum() > 2 * BATCH * len(limits.sets):
+            if wins.sum() > 2 * BATCH:
                 trials = tuple(TRIALS[i] for i in np.argsort(-wins, kind="stable")[:KEPT_TRIALS])
         left = []
         for node, upper, weight in zip(batch, bounds.upper, bounds.weight, strict=True):

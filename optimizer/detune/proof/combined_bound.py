@@ -1,10 +1,11 @@
-"""Matrix-ball bound of all limited rows of one family at once, over boxes of scatter and speed.
+"""Bound of all limited rows of a family at once over boxes of scatter and speed: expansion plus matrix ball.
 
-The bound is that of `ball.py` (ALGORITHMS: matrix ball with the loss-angle shift), in the form
-    Y0 = G^-1 D^H,  |c^T (D^-1 - Y0) f| <= sqrt(c^T G^-1 c*) sqrt(f^H H^-1 f),   G = D^H D - I,  H = D D^H - I,
-for D scaled by the cover of everything that varies. One matrix and its two inverses serve all rows and loads.
-The size of a vector of phasors (ellipse or root of squares) is a norm, so that it is at most the size of the centres
-plus the root of the summed squared radii.
+For any p and q, and D = D0 + sum e_t P_t symmetric, c^T D^-1 f = p^T f + c^T q - p^T D q + (c - D p)^T D^-1 (f - D q).
+With D0 q = f0 and D0 p = c0 the first part is exact to first order in all e_t; with R = sum rho_t |P_t| = L L^T and
+|e_t| <= rho_t the last term is at most nu sqrt(sum rho_t p_t^2) sqrt(sum rho_t q_t^2), where p_t and q_t are the
+"deflections" of the terms and nu bounds ||(L^-1 D L^-T)^-1|| over the whole ball, by the loss-angle shift:
+nu = 1 / (sigma_min(D~ e^-j phi + j g) - r), r^2 = 1 + 2 g s + g^2 (ALGORITHMS: matrix ball). So bounds err by the
+square of a box's width, and one factorisation serves all rows and loads.
 """
 
 from __future__ import annotations
@@ -13,117 +14,197 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from detune.proof.scatter_data import LimitedRows, LoadSet, ScatterSystem, combine_sets, vector_size
+from detune.proof.expansion import (
+    Box,
+    Expansion,
+    UpperPlane,
+    add_planes,
+    speed_power,
+    upper_length,
+    upper_major_axis,
+    variable_products,
+)
+from detune.proof.scatter_data import LimitedRows, LoadSet, ScatterSystem
 from detune.proof.selection_data import Complexes, Floats, Integers
 
-WIDENING = 1.0e-6
-"""Relative widening for rounding: see LOST."""
-LOST = 1.0e-9
-"""Least distance from singular, over the greatest eigenvalue, so that inverses keep six digits."""
+WIDENING = 1.0e-7
+"""Relative widening of every bound for rounding."""
+CLEAR = 1.0e-6
 TRIALS: tuple[tuple[bool, float], ...] = tuple(
-    (turned, shift) for turned in (False, True) for shift in (0.0, 0.3, 1.0, 3.0, 10.0)
+    (turned, shift) for turned in (False, True) for shift in (0.0, 0.3, 1.0, 3.0, 10.0, 30.0)
 )
 """Whether to rotate by the mean loss angle, and the shift g; every one gives a correct bound, the best is kept."""
 
 
 @dataclass(frozen=True, eq=False)
 class Frame:
-    """What does not change from box to box: matrices of the varying scalars, their absolute values, axis rows."""
+    """What does not change from box to box.
 
+    terms and absolute (T, n, n): matrices of the varying scalars beyond the axes, and their absolute values.
+    used: components of rows that are not zero, as indices into R * 3.
+    """
+
+    outer: Floats
     terms: Floats
     absolute: Floats
-    forced: Integers
+    used: Integers
+    rows: Floats
+    forces: Floats
 
 
 def frame_of(system: ScatterSystem, limits: LimitedRows) -> Frame:
-    """Terms in the order axes, mass terms, stiffness terms, mass, fixed viscous."""
+    """Terms in the order mass terms, stiffness terms, mass, fixed viscous."""
     outer = np.einsum("ai,aj->aij", system.axes, system.axes)
     plain = np.stack([system.mass, system.fixed_viscous])
-    terms = np.concatenate([outer, system.mass_terms, system.stiffness_terms, plain])
+    terms = np.concatenate([system.mass_terms, system.stiffness_terms, plain])
     values, vectors = np.linalg.eigh(terms)
     absolute = np.einsum("tik,tk,tjk->tij", vectors, np.abs(values), vectors)
-    return Frame(terms, absolute, np.flatnonzero((limits.forces != 0.0).any(axis=(0, 1))))
+    rows = limits.rows.reshape(3 * limits.count, -1)
+    forces = limits.forces.reshape(3 * limits.count, -1)
+    direct = sum((np.abs(each.direct).sum(axis=0).ravel() for each in limits.sets), np.zeros(3 * limits.count))
+    used = np.flatnonzero((rows != 0.0).any(axis=1) | (forces != 0.0).any(axis=1) | (direct > 0.0))
+    return Frame(outer, terms, absolute, used, rows[used], forces[used])
 
 
-@dataclass(frozen=True, eq=False)
-class Discs:
-    """Centres (N, T) of all varying scalars, the deviations of their corners (N, T, 8), and greatest ones (N, T)."""
-
-    centre: Complexes
-    deviation: Complexes
-    rho: Floats
-
-
-def product_interval(low: Floats, high: Floats, factors: Integers) -> tuple[Floats, Floats]:
-    """Least and greatest product (N, K) of independent variables in boxes low, high (N, V+1); factors (K, m)."""
-    ones = np.ones((len(low), 1))
-    below, above = (np.concatenate([edge[:, :-1], ones], axis=1) for edge in (low, high))
-    least, most = np.ones((len(low), len(factors))), np.ones((len(low), len(factors)))
-    for column in range(factors.shape[1]):
-        a, b = below[:, factors[:, column]], above[:, factors[:, column]]
-        corners = np.stack([least * a, least * b, most * a, most * b])
-        least, most = corners.min(axis=0), corners.max(axis=0)
-    return least, most
-
-
-def discs(system: ScatterSystem, low: Floats, high: Floats, order: float) -> Discs:
-    """Cover the scalars of D over boxes (N, V+1): kappa of each axis by its eight corners, the others by intervals."""
-    count, axes = len(low), len(system.axes)
-    squares = order**2 * low[:, -1], order**2 * high[:, -1]
-    omegas = np.sqrt(squares[0]), np.sqrt(squares[1])
-    s_edges = product_interval(low, high, system.stiffness_factors)
-    t_edges = product_interval(low, high, system.damping_factors)
-    kappa = np.stack(
-        [
-            s * system.stiffness + 1j * t * (s * system.loss + omega[:, None] * system.viscous)
-            for s in s_edges
-            for t in t_edges
-            for omega in omegas
-        ],
-        axis=2,
+def scalars(system: ScatterSystem, box: Box, order: float) -> Expansion:
+    """All varying scalars of D: kappa (A), -omega^2 p of mass terms, p of stiffness terms, -omega^2, j omega."""
+    s = variable_products(box, system.stiffness_factors)
+    t = variable_products(box, system.damping_factors)
+    ones = np.ones(1)
+    omega, square = speed_power(box, order, ones), speed_power(box, order, 2.0 * ones)
+    square = Expansion(-square.centre, -square.slope, square.remainder)
+    ts = t.times(s, box)
+    tw = t.times(omega, box)
+    k, h, c = system.stiffness, system.loss, system.viscous
+    masses = variable_products(box, system.mass_factors).times(square, box)
+    own = variable_products(box, system.stiffness_term_factors)
+    return Expansion(
+        np.concatenate(
+            [
+                k * s.centre + 1j * (h * ts.centre + c * tw.centre),
+                masses.centre,
+                own.centre,
+                square.centre,
+                1j * omega.centre,
+            ],
+            axis=1,
+        ),
+        np.concatenate(
+            [
+                k[:, None] * s.slope + 1j * (h[:, None] * ts.slope + c[:, None] * tw.slope),
+                masses.slope,
+                own.slope,
+                square.slope,
+                1j * omega.slope,
+            ],
+            axis=1,
+        ),
+        np.concatenate(
+            [
+                k * s.remainder + h * ts.remainder + c * tw.remainder,
+                masses.remainder,
+                own.remainder,
+                square.remainder,
+                omega.remainder,
+            ],
+            axis=1,
+        ),
     )
-    least, most = product_interval(low, high, system.mass_factors)
-    each = np.stack([-square[:, None] * edge for square in squares for edge in (least, most)])
-    own_least, own_most = product_interval(low, high, system.stiffness_term_factors)
-    below = np.concatenate([each.min(axis=0), own_least, -squares[1][:, None], omegas[0][:, None]], axis=1)
-    above = np.concatenate([each.max(axis=0), own_most, -squares[0][:, None], omegas[1][:, None]], axis=1)
-    corners = np.empty((count, axes + below.shape[1], 8), dtype=np.complex128)
-    corners[:, :axes] = kappa
-    corners[:, axes:, :4], corners[:, axes:, 4:] = below[:, :, None], above[:, :, None]
-    corners[:, -1] *= 1j
-    real, imag = corners.real, corners.imag
-    centre = 0.5 * (real.max(axis=2) + real.min(axis=2)) + 0.5j * (imag.max(axis=2) + imag.min(axis=2))
-    deviation = corners - centre[:, :, None]
-    return Discs(centre, deviation, np.abs(deviation).max(axis=2) * (1.0 + 1e-12))
 
 
 @dataclass(frozen=True, eq=False)
-class Scaled:
-    """D at the centre of every box, scaled by the cover: D~ = W D W^T."""
+class Solved:
+    """The machine at one order over N boxes: its scalars, D0, deflections of the terms, and nu.
 
-    plain: Complexes
+    rho (N, T). p (N, C, n), with axis deflections p_axes (N, C, A). nu (N,), infinite where not bounded.
+    """
+
+    each: Expansion
+    rho: Floats
     matrix: Complexes
-    weight: Floats
-    discs: Discs
+    p: Complexes
+    p_axes: Complexes
+    p_size: Floats
+    nu: Floats
 
 
-def scaled_matrices(system: ScatterSystem, frame: Frame, high: Floats, found: Discs) -> Scaled:
-    """Assemble D0 and its cover R = L L^T, W = L^-1."""
-    size, shape = system.mass.size, (len(high), *system.mass.shape)
-    flat = frame.terms.reshape(-1, size)
-    d0 = (found.centre @ flat).reshape(shape) + system.fixed_dynamic + 1j * system.fixed_hysteretic
-    cover = (found.rho @ frame.absolute.reshape(-1, size)).reshape(shape)
+def solved(
+    system: ScatterSystem, frame: Frame, box: Box, order: float, trials: tuple[tuple[bool, float], ...], wins: Integers
+) -> Solved:
+    """Factor D0, solve it for all rows, and bound the inverse over the ball."""
+    each = scalars(system, box, order)
+    axes, n, count = len(system.axes), len(system.mass), len(box.low)
+    rho = (each.reach(box) + each.remainder) * (1.0 + 1e-12)
+    shape, size = (count, n, n), n * n
+    every = np.concatenate([frame.outer, frame.terms]).reshape(-1, size)
+    d0 = (each.centre @ every).reshape(shape) + system.fixed_dynamic + 1j * system.fixed_hysteretic
+    cover = (rho @ np.concatenate([frame.outer, frame.absolute]).reshape(-1, size)).reshape(shape)
     # A little of the mass matrix keeps R invertible; a larger R is still a cover.
     trace = np.einsum("bii->b", cover) / np.trace(system.mass)
-    floor = 1e-4 * np.maximum(trace, 1e-6 * high[:, -1])
-    cover = cover + floor[:, None, None] * system.mass
+    cover = cover + (1e-5 * np.maximum(trace, 1e-6 * box.high[:, -1]))[:, None, None] * system.mass
+    c0 = frame.rows + (frame.forces * each.centre[:, None, :axes]) @ system.axes
+    p = np.swapaxes(np.linalg.solve(np.swapaxes(d0, 1, 2), np.swapaxes(c0, 1, 2)), 1, 2)
+    p_axes = p @ system.axes.T - frame.forces
+    nu = np.minimum(
+        _nu(each, rho, d0, cover, box, trials, wins), _dissipation(frame, each, d0, cover, box)
+    )
+    return Solved(each, rho, d0, p, p_axes, _reach_size(frame, rho, p, p_axes), nu)
+
+
+def _reach_size(frame: Frame, rho: Floats, vectors: Complexes, deflections: Complexes) -> Floats:
+    """sqrt(sum rho_t x_t^2) (N, C) for vectors (N, C, n) with axis deflections (N, C, A)."""
+    axes = deflections.shape[2]
+    total = np.einsum("ba,bca->bc", rho[:, :axes], deflections.real**2 + deflections.imag**2)
+    inner = np.tensordot(rho[:, axes:], frame.absolute, axes=1)
+    total = total + ((vectors.conj() @ inner) * vectors).real.sum(axis=2)
+    return np.asarray(np.sqrt(np.maximum(total, 0.0)))
+
+
+def _dissipation(frame: Frame, each: Expansion, d0: Complexes, cover: Floats, box: Box) -> Floats:
+    """Bound (N,) of the scaled inverse from damping alone: Im D >= H > 0 gives |u^T D^-1 v| <= sqrt(u H^-1 u v H^-1 v)."""
+    lean = np.einsum("btv,bv->bt", np.abs(each.slope.imag), box.half) + each.remainder
+    size = d0.shape[-1] ** 2
+    spread = (lean @ np.concatenate([frame.outer, frame.absolute]).reshape(-1, size)).reshape(d0.shape)
     weight = np.linalg.inv(np.linalg.cholesky(cover))
-    return Scaled(d0, weight @ d0 @ np.swapaxes(weight, 1, 2), weight, found)
+    values = np.linalg.eigvalsh(weight @ (d0.imag - spread) @ np.swapaxes(weight, 1, 2))
+    least = values[:, 0] - 1e-12 * np.abs(values[:, -1])
+    return np.where(least > CLEAR, 1.0 / np.maximum(least, 1e-300), np.inf)
+
+
+def _nu(
+    each: Expansion,
+    rho: Floats,
+    d0: Complexes,
+    cover: Floats,
+    box: Box,
+    trials: tuple[tuple[bool, float], ...],
+    wins: Integers,
+) -> Floats:
+    """Bound (N,) of the scaled inverse over the ball, the least of all trials."""
+    n = d0.shape[-1]
+    weight = np.linalg.inv(np.linalg.cholesky(cover))
+    matrix = weight @ d0 @ np.swapaxes(weight, 1, 2)
+    mean = np.angle(np.where(each.centre.imag > 0.0, each.centre, 0.0).sum(axis=1) + 1e-300)
+    found = []
+    for turned, shift in trials:
+        turn = np.exp(-1j * mean) if turned else np.ones(len(d0), dtype=np.complex128)
+        lean = np.einsum("btv,bv->bt", np.abs((each.slope * turn[:, None, None]).imag), box.half) + each.remainder
+        sine = np.minimum((lean / np.maximum(rho, 1e-300)).max(axis=1) * (1.0 + 1e-12), 1.0)
+        r = np.sqrt(1.0 + 2.0 * shift * sine + shift**2)
+        d = matrix * turn[:, None, None] + 1j * shift * np.eye(n)
+        values = np.linalg.eigvalsh(np.swapaxes(d.conj(), 1, 2) @ d)
+        # Eigenvalues of the square are off by rounding of the greatest one.
+        least = np.sqrt(np.maximum(values[:, 0] - 1e-14 * values[:, -1], 0.0))
+        gap = least - r
+        found.append(np.where(gap > CLEAR * r, 1.0 / np.maximum(gap, 1e-300), np.inf))
+    every = np.stack(found)
+    wins += np.bincount(np.argmin(every, axis=0), minlength=len(trials))
+    return np.asarray(every.min(axis=0))
 
 
 @dataclass(frozen=True, eq=False)
 class Bounds:
-    """Upper bounds (N, R) of all rows, the variable's weights (N, V+1) for cutting, and how often each trial won."""
+    """Upper bounds (N, R) of all rows, the variables' weights (N, V+1) for cutting, how often each trial won."""
 
     upper: Floats
     weight: Floats
@@ -139,174 +220,125 @@ def rows_bound(
     trials: tuple[tuple[bool, float], ...] = TRIALS,
 ) -> Bounds:
     """Bound every row over boxes with corners low, high (N, V+1)."""
-    sizes: list[Floats] = []
-    parts: list[tuple[Scaled, LoadSet]] = []
-    by_order: dict[float, Scaled] = {}
+    box = Box(low, high)
     wins = np.zeros(len(trials), dtype=np.int64)
+    by_order: dict[float, Solved] = {}
+    planes: dict[float, list[UpperPlane]] = {}
+    shares: list[tuple[Solved, Floats]] = []
     for loads in limits.sets:
         if loads.order not in by_order:
-            by_order[loads.order] = scaled_matrices(system, frame, high, discs(system, low, high, loads.order))
-        scaled = by_order[loads.order]
-        tried = _set_sizes(system, limits, frame, loads, scaled, low, high, trials)
-        share = tried / np.maximum(limits.limit, 1e-300)
-        wins += np.bincount(np.argmin(share.max(axis=2), axis=0), minlength=len(trials))
-        sizes.append(tried.min(axis=0))
-        parts.append((scaled, loads))
-    upper = combine_sets(limits, sizes) * (1.0 + WIDENING)
+            by_order[loads.order] = solved(system, frame, box, loads.order, trials, wins)
+        plane, share = _set_plane(system, limits, frame, loads, by_order[loads.order], box)
+        planes.setdefault(loads.order, []).append(plane)
+        shares.append((by_order[loads.order], share))
+    orders = [add_planes(each) for each in planes.values()]
+    upper = _combined(limits, orders, box) * limits.factor * (1.0 + WIDENING)
     upper = np.where(np.isnan(upper), np.inf, upper)
-    return Bounds(upper, _weights(system, limits, frame, parts, upper, low, high), wins)
+    return Bounds(upper, _weights(limits, shares, upper, box), wins)
 
 
-def _set_sizes(
-    system: ScatterSystem,
-    limits: LimitedRows,
-    frame: Frame,
-    loads: LoadSet,
-    scaled: Scaled,
-    low: Floats,
-    high: Floats,
-    trials: tuple[tuple[bool, float], ...],
-) -> Floats:
-    """Upper bounds (trials, N, R) of the rows' sizes under one coherent set, w^rate included, factors not."""
-    count, n, axes = len(low), len(system.mass), len(system.axes)
-    kappa, rho = scaled.discs.centre[:, :axes], scaled.discs.rho[:, :axes]
-    forces = limits.forces.reshape(-1, axes)
-    moving = np.flatnonzero((loads.bases != 0.0).any(axis=0))
-    turned_axes = system.axes @ np.swapaxes(scaled.weight, 1, 2)
-    left = (limits.rows.reshape(-1, n) + np.einsum("ca,ba,ai->bci", forces, kappa, system.axes, optimize=True)) @ (
-        np.swapaxes(scaled.weight, 1, 2)
+def _combined(limits: LimitedRows, orders: list[UpperPlane], box: Box) -> Floats:
+    """Greatest values (N, R) of all orders together: summed, or the root of summed squares."""
+    total = add_planes(orders).greatest(box)
+    if not limits.squares.any():
+        return total
+    with np.errstate(invalid="ignore"):
+        root = upper_length(
+            np.stack([plane.centre for plane in orders], axis=2),
+            np.stack([plane.slope for plane in orders], axis=2),
+            np.stack([plane.remainder for plane in orders], axis=2),
+            box,
+        ).greatest(box)
+    return np.where(limits.squares, np.minimum(np.where(np.isnan(root), np.inf, root), total), total)
+
+
+def _set_plane(
+    system: ScatterSystem, limits: LimitedRows, frame: Frame, loads: LoadSet, state: Solved, box: Box
+) -> tuple[UpperPlane, Floats]:
+    """Upper plane of the rows' sizes under one coherent set, and the shares (N, R, T) of the terms in the error."""
+    count, axes = len(box.low), len(system.axes)
+    components, variables = 3 * limits.count, box.low.shape[1]
+    kappa = state.each.centre[:, :axes]
+    f0 = loads.loads + (loads.bases * kappa[:, None, :]) @ system.axes
+    q = np.swapaxes(np.linalg.solve(state.matrix, np.swapaxes(f0, 1, 2)), 1, 2)
+    q_axes = q @ system.axes.T - loads.bases
+    q_size = _reach_size(frame, state.rho, q, q_axes)
+    c0 = frame.rows + (frame.forces * kappa[:, None, :]) @ system.axes
+    zero = c0 @ np.swapaxes(q, 1, 2) - np.einsum(
+        "ca,ba,la->bcl", frame.forces, kappa, loads.bases, optimize=True
     )
-    left = np.concatenate([left, turned_axes[:, frame.forced]], axis=1)
-    right = loads.loads + np.einsum("la,ba,ai->bli", loads.bases, kappa, system.axes, optimize=True)
-    right = np.concatenate([right @ np.swapaxes(scaled.weight, 1, 2), turned_axes[:, moving]], axis=1)
-    shift_out = loads.direct.reshape(len(loads.powers), -1) - np.einsum(
-        "ca,ba,la->blc", forces, kappa, loads.bases, optimize=True
+    zero = zero + loads.direct.reshape(len(loads.powers), -1)[:, frame.used].T
+    other = np.einsum("bci,tij,blj->bclt", state.p, frame.terms, q, optimize=True)
+    pairs = np.concatenate([state.p_axes[:, :, None, :] * q_axes[:, None, :, :], other], axis=3)
+    slope = -(pairs.reshape(count, -1, pairs.shape[3]) @ state.each.slope).reshape(*pairs.shape[:3], variables)
+    second = state.p_size[:, :, None] * q_size[:, None, :]
+    with np.errstate(invalid="ignore"):
+        rest = np.einsum("bclt,bt->bcl", np.abs(pairs), state.each.remainder) + state.nu[:, None, None] * second
+    rate = limits.rate[frame.used // 3]
+    total = _scaled_sum(box, loads, rate, zero, slope, np.where(np.isnan(rest), np.inf, rest))
+    centre = np.zeros((count, components), dtype=np.complex128)
+    slopes = np.zeros((count, components, variables), dtype=np.complex128)
+    remainder = np.zeros((count, components))
+    centre[:, frame.used], slopes[:, frame.used], remainder[:, frame.used] = total.centre, total.slope, total.remainder
+    share = np.zeros((count, components, pairs.shape[3]))
+    scale = np.abs(speed_power(box, loads.order, loads.powers).centre)
+    share[:, frame.used] = np.einsum("bclt,bt,bl->bct", np.abs(pairs), state.rho, scale, optimize=True)
+    shape = (count, limits.count, 3)
+    plane = _size_plane(
+        limits, centre.reshape(shape), slopes.reshape(*shape, variables), remainder.reshape(shape), box
     )
-    mean = np.angle(kappa.sum(axis=1)) if axes else np.zeros(count)
-    found = []
-    for turned, shift in trials:
-        phi = mean if turned else np.zeros(count)
-        middle, radius = _ball(scaled, left, np.swapaxes(right, 1, 2), phi, shift)
-        found.append(
-            _sizes(limits, frame, loads, middle, radius, rho, shift_out, moving, low, high)
+    return plane, share.reshape(*shape, -1).sum(axis=2)
+
+
+def _scaled_sum(
+    box: Box, loads: LoadSet, rate: Floats, zero: Complexes, slope: Complexes, rest: Floats
+) -> Expansion:
+    """Sum over the powers of omega^(power + rate) times the expansions (N, C, L) of each power's share."""
+    total: Expansion | None = None
+    for number, power in enumerate(loads.powers):
+        scale = speed_power(box, loads.order, power + rate)
+        own = Expansion(zero[:, :, number], slope[:, :, number], rest[:, :, number]).times(scale, box)
+        total = (
+            own
+            if total is None
+            else Expansion(
+                total.centre + own.centre, total.slope + own.slope, total.remainder + own.remainder
+            )
         )
-    return np.stack(found)
+    assert total is not None
+    return total
 
 
-def _ball(
-    scaled: Scaled, left: Complexes, right: Complexes, phi: Floats, shift: float
-) -> tuple[Complexes, Floats]:
-    """Centre and radius (N, C, F) of left D^-1 right over the ball, inf where it is not bounded."""
-    n = scaled.matrix.shape[-1]
-    turn = np.exp(-1j * phi)
-    rho = np.maximum(scaled.discs.rho, 1e-300)
-    lean = np.abs((scaled.discs.deviation * turn[:, None, None]).imag).max(axis=2) / rho
-    sine = np.minimum(lean.max(axis=1) * (1.0 + 1e-12), 1.0)
-    r = np.sqrt(1.0 + 2.0 * shift * sine + shift**2)
-    d = (scaled.matrix * turn[:, None, None] + 1j * shift * np.eye(n)) / r[:, None, None]
-    adjoint = np.swapaxes(d.conj(), 1, 2)
-    gram = adjoint @ d
-    values = np.linalg.eigvalsh(gram)
-    bounded = values[:, 0] - 1.0 > LOST * values[:, -1]
-    # Where unbounded, any invertible stand-in serves: its result is replaced by infinity.
-    lift = np.where(bounded, -1.0, 1.0)[:, None, None] * np.eye(n)
-    g, h = np.linalg.inv(gram + lift), np.linalg.inv(d @ adjoint + lift)
-    towards = left.conj()
-    g_left = towards @ np.swapaxes(g, 1, 2)
-    row = np.sqrt(np.maximum(np.einsum("bci,bci->bc", left, g_left, optimize=True).real, 0.0))
-    column = np.sqrt(np.maximum(np.einsum("bif,bif->bf", right.conj(), h @ right, optimize=True).real, 0.0))
-    middle = (left @ (g @ (adjoint @ right))) * (turn / r)[:, None, None]
-    radius = row[:, :, None] * column[:, None, :] / r[:, None, None]
-    return middle, np.where(bounded[:, None, None], radius, np.inf)
+def _size_plane(limits: LimitedRows, centre: Complexes, slope: Complexes, remainder: Floats, box: Box) -> UpperPlane:
+    """Upper plane of what vectors of phasors count as: major semi-axis or root of squares."""
+    finite = np.isfinite(remainder).all(axis=2)
+    remainder = np.where(np.isfinite(remainder), remainder, 0.0)
+    length = upper_length(
+        np.concatenate([centre.real, centre.imag], axis=2),
+        np.concatenate([slope.real, slope.imag], axis=2),
+        np.concatenate([remainder, np.zeros_like(remainder)], axis=2),
+        box,
+    )
+    plane = length
+    vector = limits.ellipse & ((limits.rows != 0.0).any(axis=2) | (limits.forces != 0.0).any(axis=2))[:, 1:].any(axis=1)
+    if vector.any():
+        major = upper_major_axis(centre[:, vector], slope[:, vector], remainder[:, vector], box)
+        plane.centre[:, vector], plane.slope[:, vector] = major.centre, major.slope
+        plane.remainder[:, vector] = major.remainder
+    return UpperPlane(plane.centre, plane.slope, np.where(finite, plane.remainder, np.inf))
 
 
-def _sizes(
-    limits: LimitedRows,
-    frame: Frame,
-    loads: LoadSet,
-    middle: Complexes,
-    radius: Floats,
-    rho: Floats,
-    shift_out: Complexes,
-    moving: Integers,
-    low: Floats,
-    high: Floats,
-) -> Floats:
-    """Sizes (N, R) from the balls of all components and forced axes under all loads and moved axes."""
-    count, powers, components = len(low), len(loads.powers), 3 * limits.count
-    sway = rho[:, None, moving] * np.abs(loads.bases[:, moving])
-    more = np.einsum("bcf,blf->bcl", np.abs(middle[:, :, powers:]) + radius[:, :, powers:], sway)
-    centre = middle[:, :components, :powers] + np.swapaxes(shift_out, 1, 2)
-    spread = radius[:, :components, :powers] + more[:, :components]
-    if len(frame.forced):
-        bases = loads.bases[:, frame.forced].T
-        own = np.abs(middle[:, components:, :powers] - bases) + radius[:, components:, :powers]
-        own = (own + more[:, components:]) * rho[:, frame.forced, None]
-        spread = spread + np.abs(limits.forces.reshape(components, -1)[:, frame.forced]) @ own
-    exponent = loads.powers[:, None] + limits.rate
-    edges = [(loads.order * np.sqrt(edge[:, -1]))[:, None, None] ** exponent for edge in (low, high)]
-    least, most = np.minimum(*edges), np.maximum(*edges)
-    shape = (count, limits.count, 3, powers)
-    centre, spread = centre.reshape(shape), spread.reshape(shape)
-    scale, half = (np.swapaxes(v, 1, 2)[:, :, None, :] for v in (0.5 * (most + least), 0.5 * (most - least)))
-    total = (centre * scale).sum(axis=3)
-    around = (spread * (scale + half) + np.abs(centre) * half).sum(axis=3)
-    if powers == 1:
-        # One power scales the whole vector: its greatest value counts, direction kept.
-        total, around = centre[..., 0] * (scale + half)[..., 0], spread[..., 0] * (scale + half)[..., 0]
-    size: Floats = vector_size(total, limits.ellipse) + np.sqrt((around**2).sum(axis=2))
-    return size
-
-
-def _weights(
-    system: ScatterSystem,
-    limits: LimitedRows,
-    frame: Frame,
-    parts: list[tuple[Scaled, LoadSet]],
-    upper: Floats,
-    low: Floats,
-    high: Floats,
-) -> Floats:
-    """First-order share of each variable in the row that is worst against its limit: sum of rho |p^T P q|."""
-    count, n, axes = len(low), len(system.mass), len(system.axes)
-    worst = np.argmax(np.where(np.isfinite(upper), upper, 1e300) / np.maximum(limits.limit, 1e-300), axis=1)
-    share = np.zeros((count, frame.terms.shape[0]))
-    for scaled, loads in parts:
-        kappa = scaled.discs.centre[:, :axes]
-        omega = loads.order * np.sqrt(0.5 * (low[:, -1] + high[:, -1]))
-        scale = omega[:, None] ** loads.powers
-        load = scale @ loads.loads + ((scale @ loads.bases) * kappa) @ system.axes
-        rows = limits.rows[worst] + np.einsum("bca,ba,ai->bci", limits.forces[worst], kappa, system.axes, optimize=True)
-        q = np.linalg.solve(scaled.plain, load[:, :, None])[:, :, 0]
-        p = np.linalg.solve(np.swapaxes(scaled.plain, 1, 2), np.swapaxes(rows, 1, 2).astype(complex))
-        q_part = np.einsum("bi,tij,bj->bt", q.conj(), frame.absolute, q, optimize=True).real
-        p_part = np.einsum("bic,tij,bjc->bt", p.conj(), frame.absolute, p, optimize=True).real
-        own = scaled.discs.rho * np.sqrt(np.maximum(q_part, 0.0) * np.maximum(p_part, 0.0))
-        share += own * (omega ** limits.rate[worst])[:, None]
-    return _spread_out(system, share, low, high)
-
-
-def _spread_out(system: ScatterSystem, share: Floats, low: Floats, high: Floats) -> Floats:
-    """Distribute the shares (N, T) of all terms over their variables by relative width (N, V+1)."""
-    axes, masses, own = len(system.axes), len(system.mass_terms), len(system.stiffness_terms)
-    last = low.shape[1] - 1
-    width = high - low
-    relative = width / np.maximum(np.maximum(np.abs(high), np.abs(low)), 1e-300)
-    weight = np.zeros_like(low)
-    for t in range(share.shape[1]):
-        names = {last}
-        if t < axes:
-            names = set(system.stiffness_factors[t].tolist()) | set(system.damping_factors[t].tolist())
-            names |= {last} if system.viscous[t] > 0.0 else set()
-        elif t < axes + masses:
-            names |= set(system.mass_factors[t - axes].tolist())
-        elif t < axes + masses + own:
-            names = set(system.stiffness_term_factors[t - axes - masses].tolist())
-        names -= {-1}
-        if not names:
-            continue
-        total = np.maximum(sum((relative[:, v] for v in names), np.zeros(len(low))), 1e-300)
-        for v in names:
-            weight[:, v] += share[:, t] * relative[:, v] / total
-    weight += 1e-12 * relative
-    return np.where(width > 0.0, weight, -1.0)
+def _weights(limits: LimitedRows, shares: list[tuple[Solved, Floats]], upper: Floats, box: Box) -> Floats:
+    """Share of each variable in the error of the row that is worst against its limit (N, V+1); -1 for no width."""
+    ratio = np.where(np.isfinite(upper), upper, 1e300) / np.maximum(limits.limit, 1e-300)
+    worst = np.argmax(ratio, axis=1)
+    index = np.arange(len(worst))
+    weight = np.zeros_like(box.low)
+    for state, share in shares:
+        moved = np.abs(state.each.slope) * box.half[:, None, :]
+        part = moved / np.maximum(moved.sum(axis=2), 1e-300)[:, :, None]
+        size = np.abs(share[index, worst])
+        # Without a bound the terms that keep it from being one count, whatever the row.
+        weight += np.einsum("bt,btv->bv", size, part)
+    weight += 1e-12 * box.half / np.maximum(np.abs(box.middle), 1e-300)
+    return np.where(box.half > 0.0, weight, -1.0)

@@ -82,7 +82,7 @@ def search_robust(
         return RobustSearchResult(status, None, (), 0, bound, nominal)
     cap, most = nominal.designs[0].cost, _most_cost(selection)
     while True:
-        found, result = _collect(selection, nominal_test, _rest(settings, started), cap, done_to)
+        found, result = designs_between(selection, nominal_test, _rest(settings, started), cap, done_to)
         if result.status != "complete":
             return RobustSearchResult(
                 result.status, None, tuple(undecided), examined, _after(done_to, result.lower_bound), nominal
@@ -129,7 +129,7 @@ def _stopped(settings: SearchSettings, started: float) -> Literal["time_limit", 
     return None
 
 
-def _collect(
+def designs_between(
     selection: Selection, test: Accept, settings: SearchSettings, cap: float, done_to: float
 ) -> tuple[list[FoundDesign], SearchResult]:
     """All nominally feasible designs of cost in (done_to, cap], in order of cost; every one, not only a front."""

@@ -154,6 +154,18 @@ def products(points: Floats, factors: Integers) -> Floats:
     return result
 
 
+def product_interval(low: Floats, high: Floats, factors: Integers) -> tuple[Floats, Floats]:
+    """Least and greatest product (N, K) of independent variables in boxes low, high (N, V+1); factors (K, m)."""
+    ones = np.ones((len(low), 1))
+    below, above = (np.concatenate([edge[:, :-1], ones], axis=1) for edge in (low, high))
+    least, most = np.ones((len(low), len(factors))), np.ones((len(low), len(factors)))
+    for column in range(factors.shape[1]):
+        a, b = below[:, factors[:, column]], above[:, factors[:, column]]
+        corners = np.stack([least * a, least * b, most * a, most * b])
+        least, most = corners.min(axis=0), corners.max(axis=0)
+    return least, most
+
+
 def matrices_at(system: ScatterSystem, points: Floats, order: float) -> tuple[Complexes, Complexes]:
     """D (N, n, n) and kappa (N, A) at points (N, V+1) for an order of the speed."""
     squares = order**2 * points[:, -1]

@@ -12,8 +12,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from detune.proof.bisect import DecisionStatus
-from detune.proof.combined_bound import product_interval
-from detune.proof.loewner import Flags, static_interval
+from detune.proof.expansion import Box, Expansion, upper_length, variable_products
+from detune.proof.loewner import Flags
 from detune.proof.scatter_data import products
 from detune.proof.selection_data import Floats, Integers
 
@@ -82,37 +82,81 @@ def static_values_at(problem: StaticLimits, points: Floats) -> Floats:
 
 
 def static_enclosures(problem: StaticLimits, low: Floats, high: Floats) -> tuple[Floats, Floats]:
-    """Enclosures (N, R) of all values over boxes low, high (N, V)."""
-    below, above = _padded(low), _padded(high)
-    s_low, s_high = product_interval(below, above, problem.factors)
-    soft, stiff = _stiffness(problem, s_low), _stiffness(problem, s_high)
-    p_low, p_high = product_interval(below, above, problem.load_factors)
-    count, rows = len(low), len(problem.scale)
-    flat = problem.rows.reshape(3 * rows, -1)
-    least, most = np.zeros((count, 3 * rows)), np.zeros((count, 3 * rows))
+    """Enclosures (N, R) of all values over boxes low, high (N, V); infinite where a box is not bounded.
+
+    With K0 q = load0 and K0 p = row: row K^-1 load = p load + row q - p K q + (row - K p) K^-1 (load - K q), the last
+    term at most sqrt(sum rho p_a^2) sqrt(sum rho q_a^2 ...) / (lambda_min - 1) (combined_bound.py).
+    """
+    box = Box(_padded(low), _padded(high))
+    count, rows, n = len(low), len(problem.scale), len(problem.fixed)
+    s = variable_products(box, problem.factors)
+    kappa = Expansion(
+        s.centre * problem.stiffness, s.slope * problem.stiffness[:, None], s.remainder * problem.stiffness
+    )
+    rho = (kappa.reach(box) + kappa.remainder) * (1.0 + 1e-12)
+    outer = np.einsum("ai,aj->aij", problem.axes, problem.axes).reshape(-1, n * n)
+    k0 = problem.fixed + (kappa.centre @ outer).reshape(count, n, n)
+    nu, weight = _inverse_bound(k0, (rho @ outer).reshape(count, n, n))
+    share = variable_products(box, problem.load_factors)
+    flat = problem.rows.reshape(3 * rows, n)
+    q = np.linalg.solve(k0, (share.centre @ problem.loads)[:, :, None])[:, :, 0]
+    p = np.swapaxes(np.linalg.solve(k0, np.broadcast_to(flat.T, (count, n, 3 * rows))), 1, 2)
+    p_axes, q_axes = p @ problem.axes.T, q @ problem.axes.T
+    zero = q @ flat.T
+    loads = p @ problem.loads.T
+    pairs = p_axes * q_axes[:, None, :]
+    slope = loads @ share.slope - pairs @ kappa.slope
+    p_size = np.sqrt(np.einsum("ba,bca->bc", rho, p_axes**2))
+    q_size = np.sqrt(np.einsum("ba,ba->b", rho, q_axes**2))
+    spare = share.reach(box) + share.remainder
+    moved = np.sqrt(((weight @ problem.loads.T) ** 2).sum(axis=1))
+    second = p_size * (q_size + (spare * moved).sum(axis=1))[:, None] * nu[:, None]
     with np.errstate(invalid="ignore"):
-        for number, load in enumerate(problem.loads):
-            z_low, z_high, _ = static_interval(soft, stiff, flat, load)
-            edges = np.stack([z * p[:, number, None] for z in (z_low, z_high) for p in (p_low, p_high)])
-            least, most = least + edges.min(axis=0), most + edges.max(axis=0)
-        least, most = least.reshape(count, rows, 3), most.reshape(count, rows, 3)
-        least[:, :, 0] += problem.shift
-        most[:, :, 0] += problem.shift
-        f_low, f_high = product_interval(below, above, problem.row_factors)
-        f_low, f_high = (f[:, :, None] * problem.scale[:, None] for f in (f_low, f_high))
-        edges = np.stack([z * f for z in (least, most) for f in (f_low, f_high)])
-        lost = np.isnan(edges).any(axis=0)
-        least, most = np.where(lost, -np.inf, edges.min(axis=0)), np.where(lost, np.inf, edges.max(axis=0))
-        greatest = np.sqrt((np.maximum(np.abs(least), np.abs(most)) ** 2).sum(axis=2))
-    inside = np.where((least < 0.0) & (most > 0.0), 0.0, np.minimum(np.abs(least), np.abs(most)))
-    smallest = np.sqrt((inside**2).sum(axis=2))
+        rest = np.abs(loads) @ share.remainder[:, :, None]
+        rest = rest[:, :, 0] + np.einsum("bca,ba->bc", np.abs(pairs), kappa.remainder) + second
+    return _rows_enclosed(problem, box, zero.reshape(count, rows, 3), slope.reshape(count, rows, 3, -1),
+                          np.where(np.isnan(rest), np.inf, rest).reshape(count, rows, 3))  # fmt: skip
+
+
+def _inverse_bound(k0: Floats, cover: Floats) -> tuple[Floats, Floats]:
+    """1 / (lambda_min - 1) (N,) of W K0 W^T, infinite where K may become singular, and W (N, n, n) of the cover."""
+    trace = np.einsum("bii->b", k0)
+    scale = np.einsum("bii->bi", k0)
+    padded = cover + np.einsum("bi,ij->bij", 1e-9 * scale + 1e-15 * trace[:, None], np.eye(k0.shape[-1]))
+    weight = np.linalg.inv(np.linalg.cholesky(padded))
+    values = np.linalg.eigvalsh(weight @ k0 @ np.swapaxes(weight, 1, 2))
+    gap = values[:, 0] - 1e-13 * values[:, -1] - 1.0
+    return np.where(gap > 1e-6, 1.0 / np.maximum(gap, 1e-300), np.inf), weight
+
+
+def _rows_enclosed(
+    problem: StaticLimits, box: Box, zero: Floats, slope: Floats, rest: Floats
+) -> tuple[Floats, Floats]:
+    """Enclosures (N, R) of rows from the expansions (N, R, 3) of their components."""
+    count, rows = zero.shape[:2]
+    zero = zero.copy()
+    zero[:, :, 0] += problem.shift
+    factor = variable_products(box, problem.row_factors)
+    each = []
+    for component in range(3):
+        own = Expansion(zero[:, :, component], slope[:, :, component], rest[:, :, component])
+        each.append(own.times(factor, box))
+    unbounded = ~np.isfinite(rest).all(axis=2)
+    centre, slopes = (np.stack([getattr(e, name) for e in each], axis=2) for name in ("centre", "slope"))
+    remainder = np.nan_to_num(np.stack([e.remainder for e in each], axis=2), posinf=0.0)
+    scale = np.abs(problem.scale)
+    length = upper_length(centre, slopes, remainder, box).greatest(box) * scale
+    first = each[0]
+    around = first.reach(box) + np.nan_to_num(first.remainder, posinf=0.0)
+    middle = first.centre * problem.scale
     widen = 1e-9
-    lower = np.where(problem.length, smallest * (1.0 - widen), least[:, :, 0])
-    upper = np.where(problem.length, greatest * (1.0 + widen), most[:, :, 0])
-    return lower - widen * np.abs(lower), upper + widen * np.abs(upper)
+    lower = np.where(problem.length, 0.0, middle - around * scale)
+    upper = np.where(problem.length, length, middle + around * scale)
+    lower, upper = lower - widen * np.abs(lower), upper + widen * np.abs(upper)
+    return np.where(unbounded, -np.inf, lower), np.where(unbounded, np.inf, upper)
 
 
-def decide_static_rows(problem: StaticLimits, *, max_boxes: int = 6000, gap: float = 0.01) -> StaticRowsDecision:
+def decide_static_rows(problem: StaticLimits, *, max_boxes: int = 4000, gap: float = 0.03) -> StaticRowsDecision:
     """Bisect until every row is decided and enclosed to a relative gap, or max_boxes; undecided rows say so."""
     low, high = problem.low[None], problem.high[None]
     rows = len(problem.scale)
@@ -125,7 +169,7 @@ def decide_static_rows(problem: StaticLimits, *, max_boxes: int = 6000, gap: flo
         boxes += len(low)
         kept = (least >= problem.lower) & (most <= problem.upper)
         size = np.maximum(_size(problem), np.maximum(np.abs(reached.most), np.abs(reached.least)))
-        close = (most <= reached.most + gap * size) & (least >= reached.least - gap * size)
+        close = (most <= reached.most + gap * size) & (problem.length | (least >= reached.least - gap * size))
         done = (kept & close).all(axis=1)
         closed_low = np.minimum(closed_low, least[done].min(axis=0, initial=np.inf))
         closed_high = np.maximum(closed_high, most[done].max(axis=0, initial=-np.inf))

@@ -5,6 +5,7 @@ from importlib.resources import files
 from pathlib import Path
 from types import ModuleType
 
+from detune.ground.units import show
 from detune.report import tables, tables_sizing
 from detune.report.figures import Drawn, draw_one
 from detune.report.folder import MARK, check_folder, put_in_place, sibling
@@ -15,6 +16,7 @@ from detune.report.strict_json import json_text
 from detune.report.tables_sizing import GOALS, goal_text
 from detune.report.words import margin_text, row_text
 from detune.sizing.made_parts import sizing_of
+from detune.solvers.size_specification import PurchaseSpecification
 from detune.study.cautions import CAUTIONS
 from detune.study.size import SizingResult
 
@@ -102,7 +104,13 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
         found.append(Section("nearest", "Nearest real parts", tables=(tables_sizing.nearest_table(result),)))
     found += _further(result)
     if best is not None:
-        found.append(Section("margins", "Margins of the sized design", tables=(tables.margins_table(brief, best.assessment),)))
+        found.append(
+            Section(
+                "margins",
+                "Margins of the sized design",
+                tables=(tables.margins_table(brief, best.assessment),),
+            )
+        )
         shown_tables = (tables.stations_table(best.assessment), tables.modes_table(best.assessment))
         found.append(Section("stations", "Stations and modes", tables=shown_tables))
     hashes = tables.Table("Files read", ("file", "SHA-256"), result.study.hashes)
@@ -111,7 +119,29 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
 
 
 def _further(result: SizingResult) -> list[Section]:
-    return []
+    found = []
+    if result.convex:
+        found.append(Section("convex", "Convex answers", tables=(tables_sizing.convex_table(result),)))
+    if result.detuned:
+        found.append(
+            Section("detuning", "Detuning of absorbers", tables=(tables_sizing.detuning_table(result),))
+        )
+    bought = result.specification
+    if isinstance(bought, str):
+        found.append(Section("specification", "Purchase specification", (f"None: {bought}.",)))
+    elif bought is not None:
+        unknowns = sizing_of(result.study.brief).unknown
+        held = [
+            f"{u.title} {show(v, u.unit)}"
+            for u, v in zip(unknowns, bought.values.tolist(), strict=True)
+            if u not in bought.unknowns
+        ]
+        text = (
+            "For a design with room inside its limits" + (f", with {', '.join(held)}" if held else "") + "."
+        )
+        table = tables_sizing.specification_table(bought)
+        found.append(Section("specification", table.title, (text,), tables=(table,)))
+    return found
 
 
 def sizing_page(result: SizingResult, drawn: tuple[Drawn, ...]) -> str:
@@ -153,12 +183,20 @@ def _fill(result: SizingResult, folder: Path) -> None:
         "study.toml": result.study.source,
         "inputs.json": json_text({"sha256": dict(result.study.hashes)}),
         "sizing.json": json_text(_numbers(result)),
-        MARK: json_text({"method": result.method, "worth": result.worth, "bound": result.bound, "seconds": result.seconds}),
+        MARK: json_text(
+            {"method": result.method, "worth": result.worth, "bound": result.bound, "seconds": result.seconds}
+        ),
         "report.html": sizing_page(result, drawn),
     }
     shown = [tables_sizing.branches_table(result)] if result.branches else []
     shown += [tables_sizing.front_table(result)] if result.front is not None else []
-    shown += [tables_sizing.nearest_table(result)] if result.nearest is not None and result.answer is not None else []
+    shown += (
+        [tables_sizing.nearest_table(result)]
+        if result.nearest is not None and result.answer is not None
+        else []
+    )
+    if isinstance(result.specification, PurchaseSpecification):
+        shown.append(tables_sizing.specification_table(result.specification))
     for table in shown:
         texts[f"{table.title.lower().replace(' ', '-')}.csv"] = _csv(table)
     for plot in drawn:

@@ -6,6 +6,7 @@ from detune.ground.units import show
 from detune.report.tables import Table
 from detune.report.words import margin_text, number, percent
 from detune.sizing.made_parts import sizing_of
+from detune.solvers.size_specification import PurchaseSpecification
 from detune.study.size import SizedBest, SizingResult
 
 GOALS = {
@@ -55,7 +56,14 @@ def branches_table(result: SizingResult) -> Table:
         meets = "meets the brief" if judged.meets else f"misses {judged.tightest.label}"
         tight = "; ".join(branch.tight) or "none"
         rows.append(
-            (branch.name, goal_text(sizing.goal, branch.objective), *values, margin_text(judged.least_margin), meets, tight)
+            (
+                branch.name,
+                goal_text(sizing.goal, branch.objective),
+                *values,
+                margin_text(judged.least_margin),
+                meets,
+                tight,
+            )
         )
     columns = ("branch", GOALS[sizing.goal], *names, "least margin", "assessed", "tight")
     note = (
@@ -80,7 +88,8 @@ def searches_text(result: SizingResult) -> str:
         return f"None of {total} local searches met every requirement; that is no proof that none exists."
     best, median, worst = (goal_text(goal, value) for value in found.spread)
     return (
-        f"{found.met} of {total} local searches met every requirement; their {GOALS[goal]}: best {best}, median {median}, "
+        f"{found.met} of {total} local searches met every requirement; their {GOALS[goal]}: best {best}, "
+        f"median {median}, "
         f"worst {worst}; {found.near:.0%} of them within 1 % of the best. {found.evaluations} designs were evaluated."
     )
 
@@ -104,7 +113,8 @@ def nearest_table(result: SizingResult) -> Table:
             )
         )
     note = (
-        f"Of {nearest.of} real designs the {nearest.looked_at} with the least predicted shortfall were evaluated exactly, "
+        f"Of {nearest.of} real designs the {nearest.looked_at} with the least predicted shortfall were evaluated "
+        "exactly, "
         f"{nearest.met} met every requirement; those shown were assessed. That is no proof of the cheapest: "
         "`detune run` gives it. The last column compares with the ideal at the price stated for parts made to order."
     )
@@ -146,3 +156,80 @@ def front_table(result: SizingResult) -> Table:
     )
     columns = (*(GOALS[name] for name in front.trade), *(unknown.title for unknown in unknowns))
     return Table("Points of the front", columns, rows, frozenset(range(len(columns))), front.worth + ".")
+
+
+def specification_table(found: PurchaseSpecification) -> Table:
+    """What to ask of a supplier: ranges of stiffness and damping, the load to carry, and what lies beyond each face."""
+    rows = []
+    for place, unknown in enumerate(found.unknowns):
+        low, high = float(found.box.lower[place]), float(found.box.upper[place])
+        beyond = []
+        for end, face, missed in zip(
+            ("below", "above") * len(found.unknowns), found.box.faces, found.beyond, strict=True
+        ):
+            if face.quantity != unknown.title:
+                continue
+            if face.stopped_by == "limit of the search":
+                beyond.append(f"{end}: the study's own bound")
+            elif missed is None:
+                beyond.append(f"{end}: not tight, no failing part found; the proof ends here")
+            else:
+                beyond.append(f"{end}: some parts miss {missed}")
+        kind = "dynamic" if unknown.kind == "stiffness" else ""
+        rows.append(
+            (
+                f"{unknown.title} {kind}".strip(),
+                show(low, unknown.unit),
+                show(high, unknown.unit),
+                "; ".join(beyond),
+            )
+        )
+    for group in found.groups:
+        low, high = group.load
+        load = (f"static load carried by one part of {group.group}", show(low, "force"), show(high, "force"))
+        rows.append((*load, "the part's own load range must hold all of it"))
+        ratio = f"{group.dynamic_to_static:g}"
+        rows.append((f"dynamic over static stiffness, {group.group}", ratio, ratio, "as the study states it"))
+    note = (
+        "Every part inside these ranges, those of one group alike, is proven to meet the limits over whole frequency "
+        f"ranges (matrix-ball bound with bisection; {found.box.questions} boxes asked for). {found.inside} random "
+        "parts "
+        f"inside were judged exactly: {found.failed} missed a requirement. No single face can be pushed out further by "
+        "this proof; it is not the box of greatest volume."
+    )
+    if found.cut_short:
+        note += " The work allowed for the proof was used up: faces may stand further in than need be."
+    if found.left_out:
+        note += f" Not proven, only sampled: {'; '.join(found.left_out)}."
+    return Table(
+        "Purchase specification",
+        ("quantity", "at least", "at most", "just outside"),
+        tuple(rows),
+        frozenset({1, 2}),
+        note,
+    )
+
+
+def convex_table(result: SizingResult) -> Table:
+    """The convex answers of both sides, with what each is worth."""
+    rows = []
+    unknowns = sizing_of(result.study.brief).unknown
+    for answer in result.convex:
+        values = "; ".join(
+            f"{u.title} {show(v, u.unit)}" for u, v in zip(unknowns, answer.values.tolist(), strict=True)
+        )
+        rows.append((answer.side, answer.what, goal_text(answer.what, answer.value), answer.worth, values))
+    columns = ("side", "quantity", "value", "worth", "at")
+    note = "Damping and what the convex forms leave alone stand at the middle of their ranges."
+    return Table("Convex answers", columns, tuple(rows), frozenset({2}), note)
+
+
+def detuning_table(result: SizingResult) -> Table:
+    """What an absorber off its tuning does to the worst response."""
+    rows = tuple(
+        (each.unknown, f"{each.share:+.0%}", number(each.worst_response, 4)) for each in result.detuned
+    )
+    note = "Everything else as sized. Above 1 a limit on a response is missed."
+    return Table(
+        "Detuning", ("unknown", "off by", "worst response over its limit"), rows, frozenset({1, 2}), note
+    )

@@ -178,7 +178,9 @@ def _at_speeds(
     def step(amplitude: Floats, index: Integers) -> Floats:
         at = at_amplitude(dynamic.take(index), amplitude)
         total = beside[:, index].copy()
-        total[numbers] += family_amplitude(model, designs.take(index), at, watched, family, speed[index])[..., 0]
+        total[numbers] += family_amplitude(model, designs.take(index), at, watched, family, speed[index])[
+            ..., 0
+        ]
         return total
 
     values, found = np.zeros((len(rows.pairs), designs.count)), np.ones(designs.count, dtype=bool)
@@ -210,14 +212,16 @@ def _peaks(model: Model, dynamic: Dynamic, family: Family) -> tuple[Floats, Floa
 
 def _amplitude_range(model: Model) -> tuple[float, float]:
     """Return the least and the greatest amplitude (m) in any table."""
-    tables = [t for group in model.groups if group.laws is not None for t in group.laws.amplitudes if t is not None]
+    tables = [
+        t for group in model.groups if group.laws is not None for t in group.laws.amplitudes if t is not None
+    ]
     return min(t.amplitude[0] for t in tables), max(t.amplitude[-1] for t in tables)
 
 
 def worse_of_two_amplitudes(
     model: Model, designs: Designs, dynamic: Dynamic, driving: Rows, values: Callable[[Dynamic], Floats]
 ) -> Floats:
-    """Return the larger of values (R, D) at no amplitude and at the one the forcing gives; infinite if none is found."""
+    """Return the larger of values (R, D) at no amplitude and at that of the forcing; infinite if none is found."""
     working = working_amplitudes(model, designs, dynamic, driving)
     ends = [values(at_amplitude(dynamic, a)) for a in (np.zeros_like(working.total), working.total)]
     return np.where(working.settled, np.maximum(*ends), np.inf)

@@ -48,14 +48,11 @@ from detune.response.direct_supremum import (
 )
 from detune.response.direct_views import DirectStatic, DirectTone
 from detune.response.margin import window_margin
+from detune.response.row_notes import amplitude_cautions, noted, worse_reading
 from detune.response.standing import toppling
 
 Floats = NDArray[np.float64]
 TWO_PI = 2.0 * np.pi
-BY_ITERATION = "at the amplitude it produces itself, by iteration"
-DOES_NOT_STAND = "the machine does not stand"
-LEFT_ITS_CURVE = "a part left its load-deflection curve"
-NONE_FOUND = "no amplitude was found that reproduces itself"
 
 
 def assess(brief: Brief, design: Design) -> Assessment:
@@ -71,7 +68,9 @@ def assess(brief: Brief, design: Design) -> Assessment:
     readings = readings_of(design.mounts)
     found = [_in_state(brief, design, name, reading) for name in states_of(brief) for reading in readings]
     for first in range(0, len(found), len(readings)):
-        rows += _worse([_rows_in_state(each, allowables) for each in found[first : first + len(readings)]])
+        rows += worse_reading(
+            [(each.reading, _rows_in_state(each, allowables)) for each in found[first : first + len(readings)]]
+        )
     kept = tuple(row for row in rows if row.upper is None or np.isfinite(row.upper))
     counted = [row.margin for row in kept if row.kind not in ("cost", "added-mass", "part-numbers")]
     installed = found[0]
@@ -88,7 +87,7 @@ def assess(brief: Brief, design: Design) -> Assessment:
         modes=_livelier([_mode_rows(each.modes, exempt) for each in found[: len(readings)]]),
         power=tuple(power for each in found for power in _power_rows(each)),
         total_load=float(-installed.machine.dead_load[2 : 6 * len(brief.bodies) : 6].sum()),
-        notes=tuple(note for each in found[:: len(readings)] if (note := toppling(each.static)) is not None),
+        notes=_notes(found[:: len(readings)], rows),
     )
 
 
@@ -103,6 +102,13 @@ class _InState:
     modes: DirectModes
     conditions: tuple[Condition, ...]
     places: Places
+
+
+def _notes(found: list[_InState], rows: list[MarginRow]) -> tuple[str, ...]:
+    """Return what no row says: why the machine does not stand, and amplitudes outside what parts are listed for."""
+    falls = [note for each in found if (note := toppling(each.static)) is not None]
+    at_rest = {condition.name: each.static for each in found for condition in each.conditions}
+    return (*falls, *amplitude_cautions(rows, at_rest))
 
 
 def states_of(brief: Brief) -> tuple[str | None, ...]:
@@ -141,45 +147,16 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
         working = working_amplitude(each.machine, condition) if follows_amplitude(each.machine) else None
         judged = _band_rows(each, condition, allowables, working)
         judged += _harmonic_rows(each, condition, allowables, working)
-        judged = judged if working is None else [_at_amplitude(row) for row in judged]
-        topples = each.machine.topples
-        rows += [_without_rest(row) if topples else _on_curve(each, row) for row in judged]
-    return [_noted(each, row) for row in rows]
-
-
-def _worse(readings: list[list[MarginRow]]) -> list[MarginRow]:
-    """Return of each requirement the row of the worse reading, which says so where the readings differ."""
-    kept = []
-    for rows in zip(*readings, strict=True):
-        worst = min(rows, key=lambda row: row.margin)
-        alike = all(row.value == worst.value for row in rows)
-        kept.append(replace(worst, note="") if alike and len(rows) > 1 else worst)
-    return kept
-
-
-def _noted(each: _InState, row: MarginRow) -> MarginRow:
-    notes = [note for note in (row.note, each.reading) if note]
-    return replace(row, note="; ".join(notes))
-
-
-def _without_rest(row: MarginRow) -> MarginRow:
-    # Every response is without bound where the machine falls; a limit of infinity holds all the same.
-    free = row.upper is not None and np.isinf(row.upper)
-    return row if free else replace(row, value=np.inf, margin=-1.0, note=DOES_NOT_STAND)
-
-
-def _on_curve(each: _InState, row: MarginRow) -> MarginRow:
-    """Return a row, with a note where no finite value came of it because a part left its curve."""
-    left = np.isinf(row.value) and bool(row.upper is not None and np.isfinite(row.upper)) and each.machine.rest is not None
-    return replace(row, note=LEFT_ITS_CURVE) if left and not row.note else row
-
-
-def _at_amplitude(row: MarginRow) -> MarginRow:
-    return replace(row, note=BY_ITERATION if np.isfinite(row.value) else NONE_FOUND)
+        machine = each.machine
+        stands, curves = not machine.topples, machine.rest is not None
+        rows += [
+            noted(row, stands=stands, on_curves=curves, at_amplitude=working is not None) for row in judged
+        ]
+    return rows
 
 
 def _ends(each: _InState, working: WorkingAmplitude | None) -> list[tuple[DirectMachine, DirectModes]]:
-    """Return the machine and its modes at every amplitude a ratio or a band is judged at: none, and the one it works at."""
+    """Return the machine and its modes at the amplitudes a ratio or a band is judged at: none, and its own."""
     if working is None:
         return [(each.machine, each.modes)]
     machines = [each.machine.at_amplitude(a) for a in (np.zeros_like(working.total), working.total)]

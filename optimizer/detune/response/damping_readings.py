@@ -33,8 +33,11 @@ def read_as(mount: Mount, reading: str | None) -> Mount:
     first_viscous = not any(mount.loss_factor)
     beside = _minus(mount.viscous, unknown.viscous) if first_viscous else mount.viscous
     if reading == READ_AS_VISCOUS:
-        nothing: Axes = (None if mount.loss_factor[0] is None else 0.0, None if mount.loss_factor[1] is None else 0.0, 0.0)
-        return replace(mount, loss_factor=nothing, viscous=_plus(unknown.viscous, beside))
+        return replace(
+            mount,
+            loss_factor=_minus(mount.loss_factor, mount.loss_factor),
+            viscous=_plus(unknown.viscous, beside),
+        )
     return replace(mount, loss_factor=unknown.loss_factor, viscous=beside)
 
 

@@ -31,7 +31,7 @@ CLOSED = 1e-8
 # Of several sources together, whose suprema over speed are known to about as much.
 CLOSE = 2e-5
 LEFT_OVER = 100.0
-LOOKS = 5
+LOOKS = 3
 
 
 @dataclass(frozen=True, eq=False)
@@ -100,7 +100,9 @@ def _deflections(
         here = deflection.reshape(shape)
         for number, source in enumerate(sources):
             beside = here.sum(axis=0) - here[number]
-            part, found = _values(machine, condition, source, pairs, here.sum(axis=0), np.maximum(beside, 0.0))
+            part, found = _values(
+                machine, condition, source, pairs, here.sum(axis=0), np.maximum(beside, 0.0)
+            )
             there[number, held] = part.value
             settled = settled and found
         return there.reshape(-1, 1)
@@ -189,7 +191,9 @@ def _over_speed(
     tables = [m.amplitude_table for m in machine.design.mounts if m.amplitude_table is not None]
     least, greatest = min(t.amplitude[0] for t in tables), max(t.amplitude[-1] for t in tables)
     shape = np.ones(len(beside))
-    poles = [direct_modes(machine.at_amplitude(a * shape), []).poles for a in np.geomspace(least, greatest, LOOKS)]
+    poles = [
+        direct_modes(machine.at_amplitude(a * shape), []).poles for a in np.geomspace(least, greatest, LOOKS)
+    ]
     settled = True
 
     def amplitudes(speed: Floats) -> Floats:
@@ -199,7 +203,8 @@ def _over_speed(
         def step(amplitude: Floats, index: NDArray[np.intp]) -> Floats:
             return _deflected(machine, sets, speed[index], beside, amplitude)
 
-        for level in (0.0, *np.geomspace(least, greatest, max(2, int(2.0 * np.log10(greatest / least))))):
+        # None, and about one a decade of the tables.
+        for level in (0.0, *np.geomspace(least, greatest, int(np.log10(greatest / least)) + 2)):
             amplitude, closed = _approached(step, np.repeat(beside[:, None] + level, len(speed), axis=1))
             settled = settled and bool(np.all(closed))
             best = np.maximum(best, amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed))
@@ -221,7 +226,10 @@ def _deflected(
 
 
 def _approached(
-    step: Callable[[Floats, NDArray[np.intp]], Floats], start: Floats, rounds: float = 1.0, close: float = CLOSED
+    step: Callable[[Floats, NDArray[np.intp]], Floats],
+    start: Floats,
+    rounds: float = 1.0,
+    close: float = CLOSED,
 ) -> tuple[Floats, NDArray[np.bool_]]:
     """Return columns (S, K) with a = step(a) to `close`, and which closed; `rounds` scales how long it is tried."""
     value = start.copy()
@@ -232,7 +240,9 @@ def _approached(
             if not len(active):
                 return value, missing <= LEFT_OVER * close
             change = step(value[:, active], active) - value[:, active]
-            size = np.maximum(np.abs(value[:, active]).max(axis=0), np.abs(value[:, active] + change).max(axis=0))
+            size = np.maximum(
+                np.abs(value[:, active]).max(axis=0), np.abs(value[:, active] + change).max(axis=0)
+            )
             missing[active] = np.abs(change).max(axis=0) / np.where(size > 0.0, size, 1.0)
             value[:, active] += np.where(missing[active] > close, share, 0.0) * change
     return value, missing <= LEFT_OVER * close

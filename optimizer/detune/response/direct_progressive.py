@@ -79,7 +79,7 @@ def curved_parts(machine: DirectMachine) -> tuple[CurvedPart, ...]:
 
 
 def unloaded(found: DirectModes, parts: tuple[CurvedPart, ...], weight: Floats) -> Floats:
-    """Return where the machine stands (n,) with its weight (n,) taken off, parts that cannot pull held as if they could."""
+    """Return where the machine stands (n,) with its weight (n,) taken off; any part holds as if it could pull."""
     from scipy.optimize import root
 
     other = _other(found, parts)
@@ -88,10 +88,10 @@ def unloaded(found: DirectModes, parts: tuple[CurvedPart, ...], weight: Floats) 
 
     def missing(x: Floats) -> Floats:
         moved = x * size
-        pushed = sum(
-            (p.row * p.share * p.ratio * (float(law_force(p.law, p.deflection - p.row @ moved)[0]) - p.force) for p in parts),
-            np.zeros(len(x)),
-        )
+        pushed = np.zeros(len(x))
+        for p in parts:
+            listed, _ = law_force(p.law, p.deflection - p.row @ moved)
+            pushed += p.row * p.share * p.ratio * (float(listed) - p.force)
         balance: Floats = weight + other @ moved - pushed
         return balance
 
@@ -131,7 +131,9 @@ def simulated_on_curves(
         f = np.interp(t, time, values)
         return np.concatenate([y[n:], accelerated(np.atleast_1d(f), y[None, :n], y[None, n:])[0]])
 
-    scale = np.abs(state[:n]).max() + np.abs(np.linalg.solve(found.stiffness, load)).max() * np.abs(values).max()
+    scale = (
+        np.abs(state[:n]).max() + np.abs(np.linalg.solve(found.stiffness, load)).max() * np.abs(values).max()
+    )
     omega = 2.0 * np.pi * float(found.frequency[-1])
     absolute = RELATIVE * np.repeat([scale, scale * omega], n) if scale > 0.0 else 1e-15
     solved = solve_ivp(rates, (0.0, time[-1]), state, method="DOP853", t_eval=time, rtol=RELATIVE, atol=absolute,

@@ -9,8 +9,8 @@ from numpy.typing import NDArray
 from detune.brief.brief import body_of
 from detune.brief.forcing import Tone
 from detune.brief.machine import Station
-from detune.response.gravity import NEVER
 from detune.response.direct import FLOOR, DirectMachine, connection_stiffness
+from detune.response.gravity import NEVER
 from detune.response.solve import solve_or_resonate
 
 Floats = NDArray[np.float64]

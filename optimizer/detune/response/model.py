@@ -19,8 +19,8 @@ from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.physics import rigid_body
 from detune.physics.orientation import axes_from_direction
-from detune.response.gravity import gravity_stiffness
 from detune.response.damping_readings import read_as
+from detune.response.gravity import gravity_stiffness
 from detune.response.part_laws import ROOM_TEMPERATURE, GroupLaws, group_laws
 
 Floats = NDArray[np.float64]

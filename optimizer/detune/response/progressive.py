@@ -27,7 +27,7 @@ STIFFENING_COVERED = 16.0
 
 @dataclass(frozen=True, eq=False)
 class CurvedStation:
-    """A station whose part follows a curve: its number, its whole axial law, the deflection it rests at beyond zero force.
+    """A station whose part follows a curve: its number, its row (n,) along its axis, and its whole axial law.
 
     `law`: force of all its parts, compression positive, over deflection from where the force is zero (a part that
     cannot pull) or from rest. `rest` (m): that deflection at rest. `force` (N): all parts at rest. `tangent` (N/m):
@@ -76,7 +76,10 @@ class ProgressiveSystem:
     def simulated(
         self, values: Floats, pattern: Floats, step: float, displacement: Floats, velocity: Floats
     ) -> tuple[Motion, Floats, bool]:
-        """Return the motion under values (T,) along pattern (n,), one part's axial force beyond its tangent (S, T), and beyond."""
+        """Return the motion under values (T,) along pattern (n,), and what the curves do to it.
+
+        That is one part's axial force beyond its tangent (S, T), and whether some part has left its curve.
+        """
         rows, laws, offset, steady = self._elements()
         found = simulate_on_laws(
             self.mass,
@@ -101,7 +104,9 @@ class ProgressiveSystem:
     def stiffening(self) -> float:
         """How much faster than the linear motion the samples have to be."""
         steepest = [
-            float(np.max(each.law.curve.slope)) / each.tangent for each in self.curved if each.law.curve is not None
+            float(np.max(each.law.curve.slope)) / each.tangent
+            for each in self.curved
+            if each.law.curve is not None
         ]
         return float(np.sqrt(max(1.0, max(steepest) / STIFFENING_COVERED)))
 
@@ -182,7 +187,7 @@ def _from(curve: LoadCurve, start: float) -> LoadCurve:
 
 
 def _straight_below(law: ElementLaw, force: float) -> ElementLaw:
-    """Return a law less a force (N) that also pulls, straight on below its first point, so that it has a slope there."""
+    """Return a law less a force (N) that also pulls, straight on below its first point: it has a slope there."""
     assert law.curve is not None
     reach = float(np.ptp(law.curve.deflection))
     load, slope = law_force(ElementLaw(curve=law.curve), law.curve.deflection[0] - reach)

@@ -55,7 +55,8 @@ def standing_height(machine: DirectMachine) -> tuple[float, float] | None:
     foot = np.array([centre[0], centre[1], levels[0]])
     own = machine.stiffness(None).real[:6, :6]
     # The body's freedoms at its own reference point, moved by a unit motion of the foot.
-    moved = np.vstack([attachment(machine.centres[brief.bodies[0].name] - foot), np.hstack([np.zeros((3, 3)), np.eye(3)])])
+    arm = machine.centres[brief.bodies[0].name] - foot
+    moved = np.vstack([attachment(arm), np.hstack([np.zeros((3, 3)), np.eye(3)])])
     critical = float(critical_height(moved.T @ own @ moved, mass * STANDARD_GRAVITY))
     return float(centre[2] - levels[0]), critical
 

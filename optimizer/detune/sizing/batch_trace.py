@@ -61,9 +61,16 @@ class _Picture:
 
 
 def _closed_in(
-    margins: Margins, picture: _Picture, a: Floats, b: Floats, va: Floats, vb: Floats, row: NDArray[np.intp], rounds: int
-) -> Floats:  # fmt: skip
-    """Points (N, 2) of zero margin between a and b (N, 2), where requirement row[i] has va and vb of opposite sign."""
+    margins: Margins,
+    picture: _Picture,
+    a: Floats,
+    b: Floats,
+    va: Floats,
+    vb: Floats,
+    row: NDArray[np.intp],
+    rounds: int,
+) -> Floats:
+    """Points (N, 2) of zero margin between a and b, where requirement row[i] has va and vb of opposite sign."""
     low, high = np.zeros(len(a)), np.ones(len(a))
     fa, fb = np.clip(va, -1.0, 1.0), np.clip(vb, -1.0, 1.0)
     middle = 0.5 * (low + high)

@@ -47,8 +47,8 @@ def stop_on_interrupt(question: Callable[[], bool] | None = None) -> Iterator[St
         stop.asked = True
         signal.signal(signal.SIGINT, earlier)
 
-    # A handler that was not set from Python could not be put back.
-    if earlier is None:
+    # One that was not set from Python could not be put back; a process in the background ignores Ctrl-C on purpose.
+    if earlier is None or earlier is signal.SIG_IGN:
         yield stop
         return
     signal.signal(signal.SIGINT, note)

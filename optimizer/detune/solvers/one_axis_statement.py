@@ -41,6 +41,7 @@ from detune.physics.octaves import band_edges
 from detune.problem.build import Problem
 from detune.response.loads import Load, condition_families, excitation_intervals
 from detune.sizing.made_parts import made_table, sizing_of
+from detune.sizing.never_binds import never_binds
 from detune.sizing.statement import (
     STANDARD_GRAVITY,
     Ballast,
@@ -50,7 +51,6 @@ from detune.sizing.statement import (
     ResponseLimit,
     SagLimit,
     Source,
-    power_form,
 )
 
 FACTOR = {"peak": 1.0, "3-sigma": 1.0, "rms": 2.0**0.5, "peak-to-peak": 0.5}
@@ -69,7 +69,8 @@ EDGE = 1e-9
 class OneAxis:
     """The one-axis problem of a brief. `pieces` equal parts share its stiffness and damping.
 
-    Limits that every design within the bounds meets are left out (`never_binds`). `relaxed` tells in words what the problem leaves out or holds one source at a time; where it is empty, the
+    Limits that every design within the bounds meets are left out (`never_binds`). `relaxed` tells in words what the
+    problem leaves out or holds one source at a time; where it is empty, the
     problem is the brief. `labels` names for each limit of the problem the requirement it belongs to.
     """
 
@@ -143,26 +144,6 @@ def one_axis(brief: Brief, problem: Problem) -> OneAxis:
     )
     labels = tuple(limits.labels[i] for i in kept)
     return OneAxis(stated, pieces, tuple(dict.fromkeys(limits.relaxed)), labels)
-
-
-def never_binds(problem: OneAxisProblem, limit: ResponseLimit) -> bool:
-    """Whether a limit is met by every design within the bounds, by |D| >= Im D alone.
-
-    Viscous: |D| >= w c and |K/D|^2 <= 1 + (k/(w c))^2; loss factor: |D| >= eta k and |K/D|^2 <= 1 + 1/eta^2. With the
-    greatest k and least damping of the bounds and the ends of the range, whichever is worse.
-    """
-    form = power_form(limit)
-    if problem.damping_bounds[0] <= 0.0:
-        return False
-    (softest, stiffest), damping = problem.stiffness_bounds, problem.damping_bounds[0]
-    heaviest = problem.mass + (0.0 if problem.ballast is None else problem.ballast.most)
-    ends = [2.0 * np.pi * f for f in (limit.lower_frequency, limit.upper_frequency)]
-    loss = ends[0] * damping if problem.damping_kind == "viscous" else damping * softest
-    angle = stiffest / (ends[0] * damping) if problem.damping_kind == "viscous" else 1.0 / damping
-    # The factor and the power of w at their worst each: never below the true ratio.
-    top = 1.0 + angle**2 if form.transmission else 1.0 / loss**2
-    scale = form.scale * (heaviest**2 if form.mass_proportional else 1.0)
-    return bool(scale * max(w ** (2 * form.power) for w in ends) * top < 1.0)
 
 
 def _scaled(unknown: SizingUnknown | None, fixed: float | None, pieces: int) -> tuple[float, float]:

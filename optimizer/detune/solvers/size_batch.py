@@ -43,13 +43,20 @@ def judge(brief: Brief, values: Floats) -> Judged:
     """Margins and objectives at points `values` (N, u). Raises BriefError where the machine is not held."""
     if not changes_brief(brief):
         return _judge_alike(brief, [made_design(brief, row) for row in values])
-    made = [made_design(brief, row) for row in values]
-    parts = [_judge_alike(each.brief, [each]) for each in made]
+    # Points that share absorber mass and positions stand in one machine and are judged together.
+    machine = [k for k, u in enumerate(sizing_of(brief).unknown) if u.kind in ("absorber-mass", "position")]
+    _, which = np.unique(values[:, machine], axis=0, return_inverse=True)
+    groups = [np.flatnonzero(which.ravel() == number) for number in range(int(which.max()) + 1)]
+    parts = []
+    for group in groups:
+        made = [made_design(brief, row) for row in values[group]]
+        parts.append(_judge_alike(made[0].brief, made))
+    back = np.argsort(np.concatenate(groups), kind="stable")
     names = parts[0].objectives
     return Judged(
         parts[0].requirements,
-        np.concatenate([part.margins for part in parts], axis=1),
-        {name: np.concatenate([part.objectives[name] for part in parts]) for name in names},
+        np.concatenate([part.margins for part in parts], axis=1)[:, back],
+        {name: np.concatenate([part.objectives[name] for part in parts])[back] for name in names},
     )
 
 

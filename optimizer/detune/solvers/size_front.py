@@ -55,7 +55,11 @@ def one_axis_objectives(brief: Brief, axis: OneAxis, points: Floats) -> dict[str
     added = mass - problem.mass
     frequency = np.sqrt(stiffness / mass) / (2.0 * np.pi)
     intervals = problem.excitation_intervals
-    apart = np.min([distance(frequency, a, b) for a, b in intervals], axis=0) if intervals else np.full(len(mass), np.inf)
+    apart = (
+        np.min([distance(frequency, a, b) for a, b in intervals], axis=0)
+        if intervals
+        else np.full(len(mass), np.inf)
+    )
     names, margins = one_axis_margins(axis, stiffness, damping, mass)
     response = [k for k, name in enumerate(names) if name in set(axis.labels)]
     worst = 1.0 / (1.0 + margins[response].min(axis=0)) if response else np.zeros(len(mass))

@@ -21,7 +21,7 @@ MOST = 12
 def searched_front(brief: Brief, best: Floats) -> SizingFront:
     """The front over the traded objectives round the best design `best` (u,)."""
     sizing = sizing_of(brief)
-    trade = sizing.trade
+    trade: tuple[str, ...] = sizing.trade
     minimised = next(name for name in ORDER if name in trade)
     held = tuple(name for name in trade if name != minimised)
     ends: list[Floats] = [best]
@@ -35,7 +35,7 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
     spans = [[point.objectives[name] for point in points] for name in held]
     levels = [np.linspace(min(span), max(span), count + 2)[1:-1] for span in spans]
     for each in itertools.product(*levels):
-        limits = {name: float(level) for name, level in zip(held, each, strict=True)}
+        limits: dict[str, float] = {name: float(level) for name, level in zip(held, each, strict=True)}
         near = min(points, key=lambda point: _misses(point, limits))
         found = size_many_starts.solve(
             brief, minimised, -1.0 if minimised == "separation" else 1.0, starts=1, seed=sizing.seed,

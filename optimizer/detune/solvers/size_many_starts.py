@@ -129,7 +129,9 @@ class _Functions:
         rows = [np.minimum(margins, FAR) - ROOM]
         for name, level in self.held.items():
             over = found.objectives[name]
-            rows.append((over - level)[None] if name == "separation" else (1.0 - over / max(level, 1e-9))[None])
+            rows.append(
+                (over - level)[None] if name == "separation" else (1.0 - over / max(level, 1e-9))[None]
+            )
         if self.goal == "worst-response":
             ratio = 1.0 / (1.0 + response_margin(found.requirements, found.margins))
             rows.append(-np.minimum(ratio, 1e3)[None])
@@ -194,7 +196,11 @@ def solve(
     judged = functions.at(drawn)
     order = np.argsort(-np.minimum(judged.margins, 0.0).sum(axis=0), kind="stable")
     points = [functions.to.inward(values) for values in first] + list(drawn[order[:starts]])
-    functions.unit = max(float(np.abs(judged.objectives.get(goal, np.ones(1))).max()), 1e-12) if not functions.extra else 1.0
+    functions.unit = (
+        max(float(np.abs(judged.objectives.get(goal, np.ones(1))).max()), 1e-12)
+        if not functions.extra
+        else 1.0
+    )
     done = []
     for y in points:
         if interrupted is not None and interrupted():
@@ -224,7 +230,9 @@ def _search(functions: _Functions, y: Floats, iterations: int) -> LocalSearch:
     if functions.extra:
         here = functions.at(y[None])
         level = float(here.objectives[functions.goal][0])
-        start = np.append(y, min(level, 1e3) if functions.goal == "worst-response" else max(min(level, FAR), -1.0))
+        start = np.append(
+            y, min(level, 1e3) if functions.goal == "worst-response" else max(min(level, FAR), -1.0)
+        )
         limits.append((0.0, None) if functions.goal == "worst-response" else (-1.0, FAR))
     rows: dict[str, Any] = {"type": "ineq", "fun": functions.constraint, "jac": functions.constraint_slope}
     with np.errstate(all="ignore"):

@@ -56,7 +56,9 @@ class SizingMap:
     left_out: tuple[str, ...]
 
 
-def one_axis_margins(axis: OneAxis, stiffness: Floats, damping: Floats, mass: Floats) -> tuple[tuple[str, ...], Floats]:
+def one_axis_margins(
+    axis: OneAxis, stiffness: Floats, damping: Floats, mass: Floats
+) -> tuple[tuple[str, ...], Floats]:
     """Names (R) and margins (R, N) of a one-axis problem, closed form over whole ranges; totals (N,) in SI."""
     problem = axis.problem
     viscous = problem.damping_kind == "viscous"
@@ -78,7 +80,12 @@ def one_axis_margins(axis: OneAxis, stiffness: Floats, damping: Floats, mass: Fl
 
 
 def sizing_map(
-    brief: Brief, names: tuple[str, ...], values: Floats, axis: OneAxis | None, mounts: tuple[Mount, ...], goal: str
+    brief: Brief,
+    names: tuple[str, ...],
+    values: Floats,
+    axis: OneAxis | None,
+    mounts: tuple[Mount, ...],
+    goal: str,
 ) -> SizingMap:
     """The map in the two unknowns of these names round the point `values` (u,)."""
     unknowns = sizing_of(brief).unknown
@@ -210,7 +217,9 @@ def _apart(lines: Floats, plain: Floats) -> Floats:
     return np.array([*kept, float(plain[-1])])
 
 
-def _at_ballast(problem: OneAxisProblem, unknowns: tuple[SizingUnknown, ...], values: Floats) -> OneAxisProblem:
+def _at_ballast(
+    problem: OneAxisProblem, unknowns: tuple[SizingUnknown, ...], values: Floats
+) -> OneAxisProblem:
     if problem.ballast is None:
         return problem
     column = next(k for k, unknown in enumerate(unknowns) if unknown.kind == "ballast")

@@ -40,7 +40,7 @@ MOVED = 1e-3
 
 @dataclass(frozen=True)
 class NearDesign:
-    """One real design near the ideal: predicted shortfall of margins, exact least margin, objective, and its assessment."""
+    """One real design near the ideal: its rank, the predicted shortfall of its margins, and its assessment."""
 
     assessment: Assessment
     distance: float
@@ -123,10 +123,14 @@ def _judged(
     values = objective_values(problem, designs, least)
     values["worst-response"] = 1.0 / np.maximum(1.0 + response_margin(requirements, margins), 1e-12)
     if goal not in values:
-        values[goal] = np.array([_total(problem.design(designs, k), brief, goal) for k in range(designs.count)])
+        values[goal] = np.array(
+            [_total(problem.design(designs, k), brief, goal) for k in range(designs.count)]
+        )
     # Rounding of two ways to the same number must not drop a design that stands on its limit.
     met = least >= -1e-6
-    order = sorted(range(designs.count), key=lambda k: (not met[k], sense * values[goal][k] if met[k] else -least[k]))
+    order = sorted(
+        range(designs.count), key=lambda k: (not met[k], sense * values[goal][k] if met[k] else -least[k])
+    )
     found: list[NearDesign] = []
     for k in order[: 2 * shown]:
         judged = assess(brief, problem.design(designs, k))
@@ -191,7 +195,11 @@ def coordinates(mount: Mount, omega: float) -> tuple[float, float, float]:
     if axial <= 0.0:
         return (-20.0, 0.0, 0.0)
     loss = max(mount.loss_factor[2] + mount.viscous[2] * omega / axial, LEAST_LOSS)
-    return (float(np.log(axial)), float(np.log(lateral)) if lateral > 0.0 else 0.0, float(np.log(loss * axial)))
+    return (
+        float(np.log(axial)),
+        float(np.log(lateral)) if lateral > 0.0 else 0.0,
+        float(np.log(loss * axial)),
+    )
 
 
 def sensitivities(ideal: Made) -> tuple[Floats, Floats, Offsets]:

@@ -1,15 +1,19 @@
 """Running a study: build, solve, assess, and gather what the report needs."""
 
 import time
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
-from detune.ground.errors import BriefError, Fault
+import numpy as np
+
+from detune.ground.errors import BriefError, Fault, SolveError
 from detune.problem.build import Problem, build
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.response.design import Design
+from detune.response.designs import Designs
 from detune.solvers import SOLVERS, choose
 from detune.solvers.outcome import Outcome, Settings
+from detune.solvers.robust import RobustResult, numbers_of, robust_selection
 from detune.study.front import Front, assessed_front
 from detune.study.load import Study
 from detune.study.why import PartReason, part_reasons
@@ -34,12 +38,29 @@ class Result:
     reasons: tuple[PartReason, ...]
     seconds: float
     why_method: str = ""
+    robust: RobustResult | None = None
+    robust_answer: Assessment | None = None
+
+    @property
+    def guaranteed(self) -> bool:
+        """Whether the brief asks for every limit over an interval of scatter."""
+        return self.robust is not None and self.robust.judge == "interval"
+
+    @property
+    def subject(self) -> Assessment | None:
+        """The design a reader looks at: the proven one, else the nominal answer, else the closest."""
+        return self.robust_answer or self.answer or self.closest
 
     @property
     def exit_code(self) -> int:
-        """0 a design meets the brief, 1 none does, 3 stopped early."""
-        if self.outcome.stopped != "finished":
+        """0 a design meets the brief (over its scatter, where it states an interval), 1 none does, 3 stopped early.
+
+        Where no design could be proven and some could not be decided either, that is 3 as well.
+        """
+        if self.outcome.stopped != "finished" or (self.robust is not None and self.robust.stopped != "finished"):
             return 3
+        if self.robust is not None and self.guaranteed and self.robust.winner is None:
+            return 3 if self.robust.undecided or self.robust.sampled else 1
         return 0 if self.answer is not None else 1
 
 
@@ -63,6 +84,7 @@ def run_study(
     outcome = SOLVERS[method].solve(problem, settings or Settings())
     front = assessed_front(problem, outcome)
     reasons = part_reasons(problem, outcome)
+    robust = _over_scatter(problem, outcome, front, settings or Settings(), started)
     return Result(
         study=study,
         problem=problem,
@@ -73,8 +95,37 @@ def run_study(
         closest=None if front.points else _closest(problem, outcome),
         reasons=reasons,
         why_method=why_method,
+        robust=robust,
+        robust_answer=_robust_answer(problem, robust),
         seconds=time.perf_counter() - started,
     )
+
+
+def _over_scatter(
+    problem: Problem, outcome: Outcome, front: Front, settings: Settings, started: float
+) -> RobustResult | None:
+    """Return what the brief's scatter makes of the designs that meet it at listed values, None without scatter."""
+    if problem.brief.scatter is None:
+        return None
+    left = settings.time_limit
+    if left is not None:
+        left = max(0.0, left - (time.perf_counter() - started))
+    points = [numbers_of(front.designs, index) for index in front.index]
+    return robust_selection(problem, outcome, points, replace(settings, time_limit=left))
+
+
+def _robust_answer(problem: Problem, robust: RobustResult | None) -> Assessment | None:
+    """Return the assessment of the proven design at listed values. Raises SolveError where the assessor refuses it."""
+    if robust is None or robust.winner is None:
+        return None
+    chosen = Designs(np.array([robust.winner.part], dtype=np.intp), np.array([robust.winner.step], dtype=np.intp))
+    assessment = assess(problem.brief, problem.design(chosen, 0))
+    if not assessment.meets:
+        raise SolveError(
+            f"The design ({assessment.design}) was proven over the scatter, but the assessor finds "
+            f"{assessment.tightest.label} missed at listed values. No answer is given; please report this."
+        )
+    return assessment
 
 
 def _closest(problem: Problem, outcome: Outcome) -> Assessment | None:

@@ -1,31 +1,44 @@
-"""Sizing a study: unknowns to a design made to order, assessed; then the nearest real parts, map, front, specification."""
+"""Sizing a study: unknowns to an assessed design made to order, then real parts, map, front and specification."""
 
 from __future__ import annotations
 
 import time
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.brief.allowable import Separation
 from detune.brief.finding import Finding, faults_without_lines
 from detune.ground.errors import BriefError
+from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem, build
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.sizing.made_parts import bounds, made_design, sizing_of
 from detune.solvers import size_many_starts, size_one_axis
+from detune.solvers.size_absorber import Detuned, absorber_starts, detuning
 from detune.solvers.size_batch import batch, judge
+from detune.solvers.size_convex import ConvexSizing, convex_answers, why_not_convex
 from detune.solvers.size_front import SizingFront, one_axis_front
 from detune.solvers.size_many_starts import ManyStarts, start_points
 from detune.solvers.size_map import SizingMap, sizing_map
 from detune.solvers.size_nearest import Nearest, nearest_parts
 from detune.solvers.size_one_axis import OneAxisSizing
+from detune.solvers.size_specification import (
+    PurchaseSpecification,
+    brief_with_room,
+    specify,
+    why_no_specification,
+)
 from detune.study.load import Study
 
 Floats = NDArray[np.float64]
 # Points at which it is tried whether an unknown matters to anything.
 TRIED = 6
+# Shares of room inside the limits that the design of a specification is tried with.
+ROOMS = (0.2, 0.1, 0.05, 0.02)
 # Points of the front from which real parts are looked for as well.
 ANCHORS = 6
 
@@ -63,6 +76,9 @@ class SizingResult:
     nearest: Nearest | None
     map: SizingMap | None
     front: SizingFront | None
+    convex: tuple[ConvexSizing, ...]
+    specification: PurchaseSpecification | str | None
+    detuned: tuple[Detuned, ...]
     cautions: tuple[str, ...]
     seconds: float
 
@@ -89,11 +105,15 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
     low, _ = bounds(brief)
     problem, _ = batch(brief, [made_design(brief, low)])
     solved = size_one_axis.solve(brief, problem)
+    convex: tuple[ConvexSizing, ...] = ()
     searches: ManyStarts | None = None
     exact: OneAxisSizing | None = None
     if isinstance(solved, str):
         why = f"{solved}, so the exact one-axis method does not apply"
-        searches = _searched(study, ())
+        convex = _convex(study, problem)
+        middle = size_many_starts.Coordinates(brief).outward(np.full(len(sizing.unknown), 0.5))
+        first = (*(answer.values for answer in convex), *absorber_starts(brief, middle))
+        searches = _searched(study, first)
         branches, worth, bound = _of_searches(study, searches), searches.worth, None
     else:
         exact, bound = solved, solved.bound
@@ -107,24 +127,22 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
             worth = f"{searches.worth}; the relaxed problem bounds it"
     found = SizingResult(
         study, "one axis, exact" if searches is None else "many starts", why, worth, branches, bound, exact, searches,
-        None, None, None, cautions, 0.0,
+        None, None, None, convex, None, (), cautions, 0.0,
     )  # fmt: skip
     return _with_rest(found, problem, drawings, started)
 
 
-def _rank(sense: float):  # type: ignore[no-untyped-def]
+def _rank(sense: float) -> Callable[[SizedBest], tuple[bool, float]]:
     return lambda branch: (not branch.assessment.meets, sense * branch.objective)
 
 
 def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: float) -> SizingResult:
-    from dataclasses import replace
-
     study, best = found.study, found.answer
     brief = study.brief
     sizing = sizing_of(brief)
     cautions = list(found.cautions)
     near = plan = front = None
-    mounts = ()
+    mounts: tuple[Mount, ...] = ()
     if best is not None:
         cautions += _at_ends(best, study)
         if drawings and sizing.trade:
@@ -133,7 +151,10 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
             there = made_design(brief, best.values).brief
             real = build(there, study.catalogs)
             mounts = tuple(dict.fromkeys(mount for group in real.candidates for mount in group))
-            ideals = [best.values, *(b.values for b in found.branches if b.assessment.meets and b is not best)][:3]
+            ideals = [
+                best.values,
+                *(b.values for b in found.branches if b.assessment.meets and b is not best),
+            ][:3]
             if front is not None and front.points:
                 chosen = np.linspace(0, len(front.points) - 1, ANCHORS).round().astype(int)
                 ideals += [front.points[k].values for k in dict.fromkeys(chosen.tolist())]
@@ -142,8 +163,18 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
     axis = None if found.exact is None else found.exact.statement
     if drawings and sizing.map and around is not None:
         plan = sizing_map(brief, sizing.map, around.values, axis, mounts, sizing.goal)
+    plan_of_purchase = None
+    if best is not None and sizing.specification:
+        plan_of_purchase = _specified(found, best)
     return replace(
-        found, nearest=near, map=plan, front=front, cautions=tuple(cautions), seconds=time.perf_counter() - started
+        found,
+        specification=plan_of_purchase,
+        detuned=() if best is None else detuning(brief, best.values),
+        nearest=near,
+        map=plan,
+        front=front,
+        cautions=tuple(cautions),
+        seconds=time.perf_counter() - started,
     )
 
 
@@ -163,6 +194,45 @@ def _searched(study: Study, first: tuple[Floats, ...]) -> ManyStarts:
     )
 
 
+def _convex(study: Study, problem: Problem) -> tuple[ConvexSizing, ...]:
+    """Convex answers of both sides, which also serve as starts; none where the forms do not hold the unknowns."""
+    brief = study.brief
+    if why_not_convex(brief, problem) is not None:
+        return ()
+    middle = size_many_starts.Coordinates(brief).outward(np.full(len(sizing_of(brief).unknown), 0.5))
+    asked = max((a.limit for a in brief.allowables if isinstance(a, Separation)), default=0.0)
+    return convex_answers(brief, problem, middle, asked)
+
+
+def with_room(study: Study, best: SizedBest, exact: bool) -> tuple[float, Floats] | None:
+    """A design of the same objective with the most room of ROOMS inside its limits, for the specification."""
+    sizing = sizing_of(study.brief)
+    for room in ROOMS:
+        tight = brief_with_room(study.brief, room)
+        if exact:
+            problem, _ = batch(tight, [made_design(tight, best.values)])
+            found = size_one_axis.solve(tight, problem)
+            if not isinstance(found, str) and found.branches:
+                return room, found.branches[0].values
+            continue
+        searched = size_many_starts.solve(
+            tight, sizing.goal, sizing.sense, starts=2, seed=sizing.seed, first=(best.values,)
+        )
+        if searched.best is not None:
+            return room, searched.best.values
+    return None
+
+
+def _specified(found: SizingResult, best: SizedBest) -> PurchaseSpecification | str:
+    why = why_no_specification(found.study.brief)
+    if why is not None:
+        return why
+    roomy = with_room(found.study, best, found.searches is None)
+    if roomy is None:
+        return "no design has room inside its limits: any scatter of a part would miss one"
+    return specify(found.study.brief, roomy[1])
+
+
 def _of_branches(study: Study, exact: OneAxisSizing) -> tuple[SizedBest, ...]:
     found = []
     for branch in exact.branches:
@@ -177,13 +247,18 @@ def _of_searches(study: Study, searches: ManyStarts) -> tuple[SizedBest, ...]:
     found: list[SizedBest] = []
     low, high = bounds(study.brief)
     for search in searches.searches:
-        near = [np.allclose(search.values, other.values, rtol=1e-2, atol=1e-3 * (high - low).max()) for other in found]
+        near = [
+            np.allclose(search.values, other.values, rtol=1e-2, atol=1e-3 * (high - low).max())
+            for other in found
+        ]
         if any(near) or len(found) == 3:
             continue
         made = made_design(study.brief, search.values)
         assessment = assess(made.brief, made.design)
         tight = tuple(row.label for row in assessment.margins if abs(row.margin) < 1e-3)
-        found.append(SizedBest(f"local search {len(found) + 1}", search.values, search.objective, assessment, tight))
+        found.append(
+            SizedBest(f"local search {len(found) + 1}", search.values, search.objective, assessment, tight)
+        )
     return tuple(found)
 
 
@@ -197,8 +272,8 @@ def _at_ends(best: SizedBest, study: Study) -> list[str]:
         for end, name in ((low, "lower"), (high, "upper")):
             if abs(value - end) <= 1e-6 * max(abs(end), 1e-9) and not (end == 0.0 and name == "lower"):
                 notes.append(
-                    f"{unknown.title} rests on its {name} bound, which the study states: no requirement stops it there, "
-                    "and a wider bound would change the answer"
+                    f"{unknown.title} rests on its {name} bound, which the study states: no requirement stops it "
+                    "there, and a wider bound would change the answer"
                 )
     return notes
 
@@ -234,7 +309,9 @@ def check_sense(study: Study) -> tuple[str, ...]:
             continue
         path = ("sizing", "unknown", index)
         if not counts[index]:
-            expected = "an unknown on which a requirement or the objective depends: nothing here changes with it"
+            expected = (
+                "an unknown on which a requirement or the objective depends: nothing here changes with it"
+            )
             findings.append(Finding(path, unknown.title, expected))
         else:
             cautions.append(
@@ -243,9 +320,15 @@ def check_sense(study: Study) -> tuple[str, ...]:
     if not counts.any() and not findings:
         what = "minimise" if sizing.minimise else "maximise"
         if sizing.goal == "cost":
-            expected = "a price on some unknown (cost_per_stiffness, cost_per_damping, cost_per_loss_factor, or the ballast's cost_per_kg): as stated every design costs the same"
+            expected = (
+                "a price on some unknown (cost_per_stiffness, cost_per_damping, cost_per_loss_factor, or the ballast's "
+                "cost_per_kg): as stated every design costs the same"
+            )
         elif not np.isfinite(objective).all():
-            expected = "an objective that has a finite value: nothing excites the machine steadily, so the separation has no bound"
+            expected = (
+                "an objective that has a finite value: nothing excites the machine steadily, so the separation has no "
+                "bound"
+            )
         else:
             expected = "an objective that some unknown changes: as stated it is the same for every design"
         findings.append(Finding(("sizing", what), sizing.goal, expected))

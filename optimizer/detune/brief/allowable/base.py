@@ -241,19 +241,21 @@ def record_amplitude(
 
 
 def parabolic_maximum(signal: Floats) -> Floats:
-    """Return the largest value (D,) of signals (D, T), refined by the parabola through its neighbours."""
-    best = np.argmax(signal, axis=-1)
-    rows = np.arange(len(signal))
-    top = signal[rows, best]
-    inner = (best > 0) & (best < signal.shape[1] - 1)
-    left, right = (
-        signal[rows, np.maximum(best - 1, 0)],
-        signal[rows, np.minimum(best + 1, signal.shape[1] - 1)],
-    )
-    bend = left - 2.0 * top + right
-    curved = inner & (bend < 0.0)
+    """Return the largest value (D,) of signals (D, T), each maximum by the parabola through three samples.
+
+    The first and the last three also tell of a maximum beside the end.
+    """
+    top: Floats = signal.max(axis=-1)
+    if signal.shape[-1] < 3:
+        return top
+    left, middle, right = signal[:, :-2], signal[:, 1:-1], signal[:, 2:]
+    bend = left - 2.0 * middle + right
+    # Distance of the vertex from the middle sample, in steps, is |rise|/(2 |bend|).
+    reach = np.ones(middle.shape[-1])
+    reach[[0, -1]] = 2.0
+    curved = (bend < 0.0) & (np.abs(right - left) <= -reach * bend)
     rise = (right - left) ** 2 / (-8.0 * np.where(curved, bend, -1.0))
-    return np.asarray(np.where(curved, top + rise, top))
+    return np.asarray(np.maximum(top, np.where(curved, middle + rise, -np.inf).max(axis=-1)))
 
 
 def combine(first: Floats, second: Floats, statistic: Statistic) -> Floats:

@@ -38,8 +38,12 @@ def data(result: SizingResult) -> FrontData | None:
     unknowns = sizing_of(result.study.brief).unknown
     texts = []
     for point in front.points:
-        sized = ", ".join(f"{u.title} {show(v, u.unit)}" for u, v in zip(unknowns, point.values.tolist(), strict=True))
-        texts.append(", ".join(f"{GOALS[n]} {goal_text(n, point.objectives[n])}" for n in front.trade) + f": {sized}")
+        sized = ", ".join(
+            f"{u.title} {show(v, u.unit)}" for u, v in zip(unknowns, point.values.tolist(), strict=True)
+        )
+        texts.append(
+            ", ".join(f"{GOALS[n]} {goal_text(n, point.objectives[n])}" for n in front.trade) + f": {sized}"
+        )
     values = np.array([[point.objectives[name] for name in front.trade] for point in front.points])
     best = min(front.points, key=lambda p: p.objectives[front.trade[0]])
     return FrontData(
@@ -49,7 +53,9 @@ def data(result: SizingResult) -> FrontData | None:
 
 def caption(data: FrontData) -> str:
     """Return what the plot shows, in words."""
-    text = f"Each dot is a design that no other one beats in {', '.join(GOALS[name] for name in data.trade)}. "
+    text = (
+        f"Each dot is a design that no other one beats in {', '.join(GOALS[name] for name in data.trade)}. "
+    )
     if len(data.trade) == 3:
         text += f"The lines join designs of nearly equal {GOALS[data.trade[2]]}; the larger the dot, the more of it. "
     return text + f"What the points are worth: {data.worth}."
@@ -78,10 +84,18 @@ def draw(data: FrontData, figure: "Figure") -> Titles:
     else:
         order = np.argsort(data.values[:, 0], kind="stable")
         ax.plot(data.values[order, 0], data.values[order, 1], color=GREY, linewidth=0.8, zorder=1)
-    drawn = ax.scatter(data.values[:, 0], data.values[:, 1], s=sizes, facecolors="none", edgecolors=BLUE, zorder=3)
+    drawn = ax.scatter(
+        data.values[:, 0], data.values[:, 1], s=sizes, facecolors="none", edgecolors=BLUE, zorder=3
+    )
     drawn.set_gid("points")
     ax.plot([data.answer[0]], [data.answer[1]], marker="D", color=VERMILION, markersize=6, zorder=4)
-    ax.annotate(f"least {GOALS[a]}", data.answer[:2], xytext=(8, 7), textcoords="offset points", fontsize=8)
+    ax.annotate(
+        f"least {GOALS[a]}",
+        (data.answer[0], data.answer[1]),
+        xytext=(8, 7),
+        textcoords="offset points",
+        fontsize=8,
+    )
     ax.set_xlabel(f"{GOALS[a]} [{UNIT[a]}]")
     ax.set_ylabel(f"{GOALS[b]} [{UNIT[b]}]")
     return {"points": data.texts}

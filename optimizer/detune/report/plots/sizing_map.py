@@ -94,7 +94,9 @@ def data(result: SizingResult) -> MapData | None:
         outside=len(dots) - len(inside),
         best=(here[found.first.title] * a, here[found.second.title] * b),
         held=tuple(
-            f"{u.title} {show(here[u.title], u.unit)}" for u in unknowns if u not in (found.first, found.second)
+            f"{u.title} {show(here[u.title], u.unit)}"
+            for u in unknowns
+            if u not in (found.first, found.second)
         ),
         exact=found.exact,
         left_out=found.left_out,
@@ -122,10 +124,11 @@ def caption(data: MapData) -> str:
     text += f"Thin grey lines: {data.objective_name} of parts made to order. The diamond is the answer. "
     text += (
         f"Dots: every part of the lists where it has such a figure, dampers beside mounts included; {data.outside} lie "
-        "outside the frame. A dot ignores a part's load range and what its list states besides; only an assessment judges."
+        "outside the frame. A dot ignores a part's load range and what its list states besides; only an assessment "
+        "judges."
     )
     if data.left_out:
-        text += f" On this map: {'; '.join(data.left_out)}."
+        text += f" Not in full on this map: {'; '.join(data.left_out)}."
     if data.always_failed:
         text += f" Missed everywhere: {'; '.join(data.always_failed)}."
     return text
@@ -147,7 +150,9 @@ def draw(data: MapData, figure: "Figure") -> Titles:
     handles = _lines(ax, data)
     titles: Titles = {}
     if data.dots:
-        drawn = ax.scatter([d.x for d in data.dots], [d.y for d in data.dots], s=13, color=BLACK, linewidths=0, zorder=4)
+        drawn = ax.scatter(
+            [d.x for d in data.dots], [d.y for d in data.dots], s=13, color=BLACK, linewidths=0, zorder=4
+        )
         drawn.set_gid("parts")
         titles["parts"] = tuple(dot.name for dot in data.dots)
     ax.plot(*([value] for value in data.best), marker="D", color=VERMILION, markersize=6, zorder=6)
@@ -171,16 +176,24 @@ def _feasible(ax: "Axes", data: MapData) -> None:
         for x, low, high in data.pieces:
             ax.fill_between(x, low, high, color="white", linewidth=0, zorder=0.5)
     elif bool((data.least >= 0.0).any()):
-        ax.contourf(data.x, data.y, np.clip(data.least, -1.0, 1.0), levels=[0.0, 2.0], colors=["white"], zorder=0.5)
+        ax.contourf(
+            data.x, data.y, np.clip(data.least, -1.0, 1.0), levels=[0.0, 2.0], colors=["white"], zorder=0.5
+        )
 
 
 def _contours(ax: "Axes", data: MapData) -> None:
     low, high = float(data.objective.min()), float(data.objective.max())
     if not np.isfinite([low, high]).all() or high - low <= 1e-9 * max(abs(high), 1e-300):
         return
-    levels = np.geomspace(low, high, 9)[1:-1] if low > 0.0 and high > 10.0 * low else np.linspace(low, high, 9)[1:-1]
-    lines = ax.contour(data.x, data.y, data.objective, levels=levels, colors=[GREY], linewidths=0.5, zorder=1.5)
-    ax.clabel(lines, fmt="%.3g", fontsize=6.5)
+    levels = (
+        np.geomspace(low, high, 9)[1:-1]
+        if low > 0.0 and high > 10.0 * low
+        else np.linspace(low, high, 9)[1:-1]
+    )
+    lines = ax.contour(
+        data.x, data.y, data.objective, levels=levels, colors=[GREY], linewidths=0.5, zorder=1.5
+    )
+    ax.clabel(lines, fmt="%.4g", fontsize=6.5)
 
 
 def _lines(ax: "Axes", data: MapData) -> "list[Artist]":
@@ -190,19 +203,26 @@ def _lines(ax: "Axes", data: MapData) -> "list[Artist]":
     names = list(dict.fromkeys(line.name for line in data.boundaries))
     names.sort(key=lambda name: -sum(int(b.binding.sum()) for b in data.boundaries if b.name == name))
     for index, name in enumerate(names):
-        colour, style = LINES[index % len(LINES)] if index < NAMED else (LIGHT, "-")
+        colour, style = LINES[index % len(LINES)]
+        colour = colour if index < NAMED else LIGHT
         for line in data.boundaries:
             if line.name != name:
                 continue
-            ax.plot(line.points[:, 0], line.points[:, 1], color=colour, linestyle=style, linewidth=0.9, zorder=2.5)
+            ax.plot(
+                line.points[:, 0], line.points[:, 1], color=colour, linestyle=style, linewidth=0.9, zorder=2.5
+            )
             kept = np.where(line.binding[:, None], line.points, np.nan)
             ax.plot(kept[:, 0], kept[:, 1], color=colour, linewidth=2.2, zorder=3)
         if index < NAMED:
             handles.append(
                 Line2D([], [], color=colour, linestyle=style, linewidth=1.6, label=shorten(name, 110))
             )
-    handles.append(Line2D([], [], color=VERMILION, marker="D", markersize=6, linestyle="none", label="the answer"))
-    handles.append(Line2D([], [], color=BLACK, marker="o", markersize=4, linestyle="none", label="a part of the lists"))
+    handles.append(
+        Line2D([], [], color=VERMILION, marker="D", markersize=6, linestyle="none", label="the answer")
+    )
+    handles.append(
+        Line2D([], [], color=BLACK, marker="o", markersize=4, linestyle="none", label="a part of the lists")
+    )
     handles.append(Line2D([], [], color=GREY, linewidth=0.5, label=data.objective_name))
     return handles
 
