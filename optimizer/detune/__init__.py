@@ -15,6 +15,8 @@ _HOME = {
     "Result": "detune.study.run",
     "run_study": "detune.study.run",
     "vary_study": "detune.study.vary",
+    "size_study": "detune.study.size",
+    "SizingResult": "detune.study.size",
     "named_design": "detune.study.named",
     "Design": "detune.response.design",
     "Assessment": "detune.response.assessment",

@@ -67,6 +67,9 @@ def _parser() -> argparse.ArgumentParser:
         "size", help="size stiffness, damping, ballast and absorbers between bounds, before there are parts"
     )
     size.set_defaults(verb=_size)
+    verify = verbs.add_parser("verify", help="check a proof record again, by code of its own")
+    verify.add_argument("record", metavar="RECORD", help="proof-record.json of a result folder, or the folder")
+    verify.set_defaults(verb=_verify)
     schema = verbs.add_parser("schema", help="print the JSON Schema of a study file, for editors")
     schema.set_defaults(verb=_schema)
 
@@ -206,6 +209,20 @@ def _size(options: argparse.Namespace) -> int:
     print(sizing_summary(result))
     print(f"\nResult folder: {folder} (open report.html in a browser)")
     return result.exit_code
+
+
+def _verify(options: argparse.Namespace) -> int:
+    from detune.proof.checker import check_record
+
+    path = Path(options.record)
+    report = check_record(path / "proof-record.json" if path.is_dir() else path)
+    print(f"{'Confirmed' if report.confirmed else 'REJECTED'}: {report.entries} entries of {options.record}")
+    for fault in report.faults:
+        print(f"  not confirmed: {fault}")
+    print(f"Computed again: {report.boxes} boxes, {report.designs} designs and candidates.")
+    for remark in report.not_reproven:
+        print(f"Not computed again: {remark}.")
+    return MEETS if report.confirmed else NONE_MEETS
 
 
 def _schema(options: argparse.Namespace) -> int:

@@ -68,9 +68,7 @@ def check(machine: DirectMachine, tone: Tone, load: np.ndarray, follow: np.ndarr
     found = direct_modes(machine, [])
     n = len(found.mass)
     inverse = np.linalg.inv(found.mass)
-    matrix = np.block(
-        [[np.zeros((n, n)), np.eye(n)], [-inverse @ found.stiffness, -inverse @ found.viscous]]
-    )
+    matrix = np.block([[np.zeros((n, n)), np.eye(n)], [-inverse @ found.stiffness, -inverse @ found.viscous]])
     omega = TWO_PI * frequency
     # Until what the start left has decayed to 1e-6.
     settled = 14.0 / float(np.min(-found.poles.real))

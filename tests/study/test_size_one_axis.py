@@ -13,6 +13,7 @@ import pytest
 from detune.ground.errors import BriefError
 from detune.response.assess import assess
 from detune.sizing.made_parts import made_design
+from detune.solvers import size_nearest
 from detune.solvers.size_batch import judge
 from detune.study.load import load_study, study_of
 from detune.study.size import size_study
@@ -136,7 +137,11 @@ def test_nothing_feasible_is_said_to_be_proven(tmp_path):
 
 
 BAD = {
-    "crossed": ("lower = '10.0 N/m'\nupper = '100000.0 N/m'", "lower = '5 N/mm'\nupper = '1 N/mm'", "crossed"),
+    "crossed": (
+        "lower = '10.0 N/m'\nupper = '100000.0 N/m'",
+        "lower = '5 N/mm'\nupper = '1 N/mm'",
+        "crossed",
+    ),
     "no unit": ("lower = '10.0 N/m'", "lower = 10.0", "above zero"),
     "no goal": ("maximise = 'stiffness'", "", "exactly one"),
     "no damping": (UNDAMPED, "", "damping"),
@@ -166,11 +171,10 @@ def test_an_unknown_nothing_depends_on_and_an_objective_nothing_changes(tmp_path
     )  # fmt: skip
     with pytest.raises(BriefError, match="every design costs the same"):
         briefs.sized(tmp_path, free)
-    loss = "[[sizing.unknown]]\nkind = 'loss-factor'\ngroup = 'feet'\nlower = 0.01\nupper = 0.2"
+    place = "[[sizing.unknown]]\nkind = 'position'\n"
+    place += "stations = ['A']\naxis = 'x'\nlower = '0.1 m'\nupper = '0.4 m'"
     idle = briefs.one_axis(
-        more="[[allowable]]\nkind = 'separation'\nlimit = 0.2\n[[allowable]]\nkind = 'displacement'\nat = 'top'\n"
-        "direction = 'x'\nmeasure = 'peak'\nlimit = '1 mm'\n",
-        goal="minimise = 'stiffness'", unknowns=loss, mass=30.0, frequency="'10 Hz'", softest=10.0, stiffest=1e5,
+        more=briefs.DISPLACEMENT.format(limit=1.0), goal="minimise = 'stiffness'", unknowns=place, **common,
     )  # fmt: skip
     with pytest.raises(BriefError, match="nothing here changes with it"):
         briefs.sized(tmp_path, idle)
@@ -184,7 +188,9 @@ def platform():
     """The demonstration with a small front and no specification."""
     brief = load_study(STUDY).brief
     small = brief.sizing.model_copy(update={"front_points": 4, "specification": False})
-    return size_study(study_of(brief.model_copy(update={"sizing": small})))
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(size_nearest, "SHORT_LIST", 60)
+        return size_study(study_of(brief.model_copy(update={"sizing": small})))
 
 
 def test_platform_demo(platform):
@@ -193,7 +199,9 @@ def test_platform_demo(platform):
     # No random design within the bounds that meets the brief is cheaper.
     rng = np.random.default_rng(0)
     low, high = np.array([4e3, 20.0, 0.0]), np.array([4e5, 4000.0, 120.0])
-    drawn = np.column_stack([np.exp(rng.uniform(np.log(low[:2]), np.log(high[:2]), (150, 2))), rng.uniform(0, 120, 150)])
+    drawn = np.column_stack(
+        [np.exp(rng.uniform(np.log(low[:2]), np.log(high[:2]), (150, 2))), rng.uniform(0, 120, 150)]
+    )
     judged = judge(platform.study.brief, drawn)
     assert judged.met.any()
     assert judged.objectives["cost"][judged.met].min() >= best.objective * (1.0 - 1e-6)
@@ -242,7 +250,13 @@ def test_platform_report_opens_and_names_everything(platform, tmp_path):
 
     folder = write_sizing(platform, tmp_path / "out")
     page = (folder / "report.html").read_text(encoding="utf-8")
-    for heading in ("The sized design", "Branches", "Map of what is feasible", "Front:", "Nearest real parts"):
+    for heading in (
+        "The sized design",
+        "Branches",
+        "Map of what is feasible",
+        "Front:",
+        "Nearest real parts",
+    ):
         assert heading in page
     assert "http://" not in page.replace("http://www.w3.org", "")
     assert (folder / "plots" / "sizing-map.png").is_file() and (folder / "branches.csv").is_file()

@@ -11,9 +11,8 @@ from detune.physics.absorber import den_hartog, minimax_tuning
 from detune.response.assess import assess
 from detune.sizing.made_parts import bounds, made_design
 from detune.solvers import size_many_starts
-from detune.solvers.size_batch import judge
+from detune.solvers.size_batch import batch, judge
 from detune.solvers.size_convex import convex_answers, stiffness_model
-from detune.solvers.size_batch import batch
 from detune.solvers.size_specification import specify
 from detune.study.load import load_study
 from detune.study.size import size_study
@@ -53,7 +52,7 @@ def _of(brief, values):
 
 
 def test_no_random_design_is_cheaper(skid, skid_result):
-    low, high = bounds(skid.brief)
+    low, _ = bounds(skid.brief)
     to = size_many_starts.Coordinates(skid.brief)
     drawn = to.outward(np.random.default_rng(3).random((200, len(low))))
     # One position for all, so that they are judged as one batch.
@@ -113,14 +112,18 @@ def test_absorber_tuning_of_the_books(tmp_path):
     form, exact = den_hartog(0.05), minimax_tuning(0.05)
     assert tuning / 10.0 == pytest.approx(exact.frequency_ratio, rel=2e-3)
     assert damping == pytest.approx(exact.damping_ratio, rel=2e-2)
-    assert tuning / 10.0 == pytest.approx(0.952381, rel=5e-3) and form.frequency_ratio == pytest.approx(0.952381, rel=1e-6)
+    assert tuning / 10.0 == pytest.approx(0.952381, rel=5e-3) and form.frequency_ratio == pytest.approx(
+        0.952381, rel=1e-6
+    )
     row = next(row for row in best.assessment.margins if row.kind == "displacement")
     static = 1.0 / (100.0 * (2.0 * np.pi * 10.0) ** 2)
     assert row.value / static == pytest.approx(exact.reached, rel=2e-3)
     assert row.value / static == pytest.approx(6.403124, rel=5e-3)
     assert {each.share for each in result.detuned} >= {-0.05, 0.05}
     on = next(e.worst_response for e in result.detuned if e.share == 0.0)
-    assert all(each.worst_response >= on * (1.0 - 1e-3) for each in result.detuned if "mass" not in each.unknown)
+    assert all(
+        each.worst_response >= on * (1.0 - 1e-3) for each in result.detuned if "mass" not in each.unknown
+    )
 
 
 def test_specification_holds_inside_and_is_tight_outside(tmp_path):

@@ -86,7 +86,9 @@ class Scatter(Statement):
         if self.judge == "interval":
             for key in ("distribution", "samples"):
                 if getattr(self, key) is not None:
-                    raise refuse(key, f'no "{key}" with judge = "interval", which holds for every value', at=key)
+                    raise refuse(
+                        key, f'no "{key}" with judge = "interval", which holds for every value', at=key
+                    )
         elif self.distribution is None:
             raise refuse("no distribution", 'distribution = "lognormal" or "uniform"', at="distribution")
         return self
@@ -102,7 +104,9 @@ class Scatter(Statement):
             )
         exact = [name for name in ("mass", "centre", "forcing") if getattr(self, name) is None]
         if exact:
-            notes.append(f"scatter: {', '.join(exact)} exactly as stated in the brief, since no scatter of it is stated")
+            notes.append(
+                f"scatter: {', '.join(exact)} exactly as stated in the brief, since no scatter of it is stated"
+            )
         if self.judge == "distribution" and self.samples is None:
             notes.append(f"yield: {self.sample_count} samples")
         return tuple(notes)
@@ -120,9 +124,13 @@ def _interval(value: float | tuple[float, float]) -> tuple[float, float]:
     if low > high:
         raise refuse(f"{100 * low:g} % to {100 * high:g} %", "the lower deviation first, the upper second")
     if low > 0.0 or high < 0.0:
-        raise refuse(f"{100 * low:g} % to {100 * high:g} %", "an interval that contains the listed value (0 %)")
+        raise refuse(
+            f"{100 * low:g} % to {100 * high:g} %", "an interval that contains the listed value (0 %)"
+        )
     if low < -LARGEST or high > LARGEST:
-        raise refuse(f"{100 * low:g} % to {100 * high:g} %", f"deviations within plus and minus {100 * LARGEST:g} %")
+        raise refuse(
+            f"{100 * low:g} % to {100 * high:g} %", f"deviations within plus and minus {100 * LARGEST:g} %"
+        )
     return low, high
 
 

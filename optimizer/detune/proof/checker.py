@@ -17,7 +17,8 @@ import numpy as np
 
 from detune.proof.checker_arithmetic import UNIT, Matrix
 from detune.proof.checker_boxes import read_system, upper_bounds
-from detune.proof.checker_designs import check_search, exact_output, number
+from detune.proof.checker_claims import check_response, check_selection, check_separation, check_static
+from detune.proof.checker_designs import LARGEST_ENUMERATION, check_search, exact_output, number
 
 FORMAT = "detune proof record 1"
 BATCH = 256
@@ -27,13 +28,17 @@ MOST_OPEN = 2048
 
 @dataclass(frozen=True)
 class CheckReport:
-    """Outcome of a check: whether everything was confirmed, what was not, and how much was recomputed."""
+    """Outcome of a check: whether everything was confirmed, what was not, and how much was recomputed.
+
+    not_reproven: what the record states and the checker has only read, in words.
+    """
 
     confirmed: bool
     faults: tuple[str, ...]
     entries: int
     boxes: int
     designs: int
+    not_reproven: tuple[str, ...] = ()
 
 
 def check_record(path: Path) -> CheckReport:
@@ -54,15 +59,29 @@ def check_entries(entries: Any) -> CheckReport:
     faults += check_chain(entries)
     if faults:
         return CheckReport(False, tuple(faults), len(entries), 0, 0)
+    remarks: dict[str, None] = {}
     for position, entry in enumerate(entries):
         label = f"entry {position} ({entry['kind']})"
         try:
+            for remark in taken_as_stated(entry):
+                remarks[remark] = None
             if entry["kind"] == "decision":
                 found, count = check_decision(entry["data"])
                 boxes += count
             elif entry["kind"] == "search":
                 found, count = check_search(entry["data"])
                 designs += count
+            elif entry["kind"] == "scatter-response":
+                found, count = check_response(entry["data"], rebuild, halve)
+                boxes += count
+            elif entry["kind"] == "scatter-static":
+                found, count = check_static(entry["data"], halve)
+                boxes += count
+            elif entry["kind"] == "scatter-separation":
+                found = check_separation(entry["data"])
+            elif entry["kind"] == "selection":
+                found = check_selection(entries)
+                designs += sum(1 for other in entries if other["kind"] == "candidate")
             else:
                 found = []
         except (
@@ -75,7 +94,35 @@ def check_entries(entries: Any) -> CheckReport:
         ) as problem:
             found = [f"cannot be checked: {type(problem).__name__}: {problem}"]
         faults += [f"{label}: {text}" for text in found]
-    return CheckReport(not faults, tuple(faults), len(entries), boxes, designs)
+    return CheckReport(not faults, tuple(faults), len(entries), boxes, designs, tuple(remarks))
+
+
+def taken_as_stated(entry: dict[str, Any]) -> list[str]:
+    """What an entry states that the checker does not compute again, in words."""
+    kind, data = entry["kind"], entry["data"]
+    if kind == "record":
+        return [
+            "that the recorded arrays and limits are those of the study file and its lists, with static parts taken "
+            "off the limits (inputs are known by their hashes alone)",
+            "who wrote the record: the chain of hashes shows alterations, it is no signature",
+        ]
+    if kind == "rules":
+        return [
+            f"that each of the {sum(int(rule['excluded']) for rule in data['rules'])} designs excluded at listed values "
+            "fails the rule it is counted under (only the sums are checked)"
+        ]
+    if kind == "search" and data["designs"]:
+        known = data["selection"] is not None and data["final_test"] == "rows"
+        return (
+            []
+            if known and data["design_count"] <= LARGEST_ENUMERATION
+            else [
+                f"that no cheaper design exists among the {data['design_count']} of the search, beyond what was enumerated"
+            ]
+        )
+    if kind == "candidate":
+        return [f"candidate {data['position']}: {text}" for text in data["not_in_record"]]
+    return []
 
 
 def check_chain(entries: list[Any]) -> list[str]:

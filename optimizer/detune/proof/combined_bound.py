@@ -61,7 +61,9 @@ def frame_of(system: ScatterSystem, limits: LimitedRows) -> Frame:
     absolute = np.einsum("tik,tk,tjk->tij", vectors, np.abs(values), vectors)
     rows = limits.rows.reshape(3 * limits.count, -1)
     forces = limits.forces.reshape(3 * limits.count, -1)
-    direct = sum((np.abs(each.direct).sum(axis=0).ravel() for each in limits.sets), np.zeros(3 * limits.count))
+    direct = sum(
+        (np.abs(each.direct).sum(axis=0).ravel() for each in limits.sets), np.zeros(3 * limits.count)
+    )
     used = np.flatnonzero((rows != 0.0).any(axis=1) | (forces != 0.0).any(axis=1) | (direct > 0.0))
     return Frame(outer, terms, absolute, used, rows[used], forces[used])
 
@@ -129,7 +131,12 @@ class Solved:
 
 
 def solved(
-    system: ScatterSystem, frame: Frame, box: Box, order: float, trials: tuple[tuple[bool, float], ...], wins: Integers
+    system: ScatterSystem,
+    frame: Frame,
+    box: Box,
+    order: float,
+    trials: tuple[tuple[bool, float], ...],
+    wins: Integers,
 ) -> Solved:
     """Factor D0, solve it for all rows, and bound the inverse over the ball."""
     each = scalars(system, box, order)
@@ -145,9 +152,7 @@ def solved(
     c0 = frame.rows + (frame.forces * each.centre[:, None, :axes]) @ system.axes
     p = np.swapaxes(np.linalg.solve(np.swapaxes(d0, 1, 2), np.swapaxes(c0, 1, 2)), 1, 2)
     p_axes = p @ system.axes.T - frame.forces
-    nu = np.minimum(
-        _nu(each, rho, d0, cover, box, trials, wins), _dissipation(frame, each, d0, cover, box)
-    )
+    nu = np.minimum(_nu(each, rho, d0, cover, box, trials, wins), _dissipation(frame, each, d0, cover, box))
     return Solved(each, rho, d0, p, p_axes, _reach_size(frame, rho, p, p_axes), nu)
 
 
@@ -188,7 +193,10 @@ def _nu(
     found = []
     for turned, shift in trials:
         turn = np.exp(-1j * mean) if turned else np.ones(len(d0), dtype=np.complex128)
-        lean = np.einsum("btv,bv->bt", np.abs((each.slope * turn[:, None, None]).imag), box.half) + each.remainder
+        lean = (
+            np.einsum("btv,bv->bt", np.abs((each.slope * turn[:, None, None]).imag), box.half)
+            + each.remainder
+        )
         sine = np.minimum((lean / np.maximum(rho, 1e-300)).max(axis=1) * (1.0 + 1e-12), 1.0)
         r = np.sqrt(1.0 + 2.0 * shift * sine + shift**2)
         d = matrix * turn[:, None, None] + 1j * shift * np.eye(n)
@@ -270,16 +278,24 @@ def _set_plane(
     zero = zero + loads.direct.reshape(len(loads.powers), -1)[:, frame.used].T
     other = np.einsum("bci,tij,blj->bclt", state.p, frame.terms, q, optimize=True)
     pairs = np.concatenate([state.p_axes[:, :, None, :] * q_axes[:, None, :, :], other], axis=3)
-    slope = -(pairs.reshape(count, -1, pairs.shape[3]) @ state.each.slope).reshape(*pairs.shape[:3], variables)
+    slope = -(pairs.reshape(count, -1, pairs.shape[3]) @ state.each.slope).reshape(
+        *pairs.shape[:3], variables
+    )
     second = state.p_size[:, :, None] * q_size[:, None, :]
     with np.errstate(invalid="ignore"):
-        rest = np.einsum("bclt,bt->bcl", np.abs(pairs), state.each.remainder) + state.nu[:, None, None] * second
+        rest = (
+            np.einsum("bclt,bt->bcl", np.abs(pairs), state.each.remainder) + state.nu[:, None, None] * second
+        )
     rate = limits.rate[frame.used // 3]
     total = _scaled_sum(box, loads, rate, zero, slope, np.where(np.isnan(rest), np.inf, rest))
     centre = np.zeros((count, components), dtype=np.complex128)
     slopes = np.zeros((count, components, variables), dtype=np.complex128)
     remainder = np.zeros((count, components))
-    centre[:, frame.used], slopes[:, frame.used], remainder[:, frame.used] = total.centre, total.slope, total.remainder
+    centre[:, frame.used], slopes[:, frame.used], remainder[:, frame.used] = (
+        total.centre,
+        total.slope,
+        total.remainder,
+    )
     share = np.zeros((count, components, pairs.shape[3]))
     scale = np.abs(speed_power(box, loads.order, loads.powers).centre)
     share[:, frame.used] = np.einsum("bclt,bt,bl->bct", np.abs(pairs), state.rho, scale, optimize=True)
@@ -309,7 +325,9 @@ def _scaled_sum(
     return total
 
 
-def _size_plane(limits: LimitedRows, centre: Complexes, slope: Complexes, remainder: Floats, box: Box) -> UpperPlane:
+def _size_plane(
+    limits: LimitedRows, centre: Complexes, slope: Complexes, remainder: Floats, box: Box
+) -> UpperPlane:
     """Upper plane of what vectors of phasors count as: major semi-axis or root of squares."""
     finite = np.isfinite(remainder).all(axis=2)
     remainder = np.where(np.isfinite(remainder), remainder, 0.0)
@@ -320,7 +338,9 @@ def _size_plane(limits: LimitedRows, centre: Complexes, slope: Complexes, remain
         box,
     )
     plane = length
-    vector = limits.ellipse & ((limits.rows != 0.0).any(axis=2) | (limits.forces != 0.0).any(axis=2))[:, 1:].any(axis=1)
+    vector = limits.ellipse & ((limits.rows != 0.0).any(axis=2) | (limits.forces != 0.0).any(axis=2))[
+        :, 1:
+    ].any(axis=1)
     if vector.any():
         major = upper_major_axis(centre[:, vector], slope[:, vector], remainder[:, vector], box)
         plane.centre[:, vector], plane.slope[:, vector] = major.centre, major.slope

@@ -122,7 +122,9 @@ def upper_length(centre: Floats, slope: Floats, remainder: Floats, box: Box) -> 
     rest = np.sqrt((remainder**2).sum(axis=2))
     # Where the linear part may turn the vector round, its greatest length is taken all over the box.
     flat = size - par <= 0.3 * size
-    bent = np.where(flat, np.sqrt((size + par) ** 2 + perp**2) - size, 0.5 * perp**2 / np.maximum(size - par, TINY))
+    bent = np.where(
+        flat, np.sqrt((size + par) ** 2 + perp**2) - size, 0.5 * perp**2 / np.maximum(size - par, TINY)
+    )
     return UpperPlane(size, np.where(flat[:, :, None], 0.0, along), bent + rest)
 
 

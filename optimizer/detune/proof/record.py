@@ -176,7 +176,12 @@ def add_note(record: ProofRecord, kind: str, data: dict[str, Any]) -> ProofRecor
     return append(record, kind, data)
 
 
+def record_text(record: ProofRecord) -> str:
+    """Return a record as JSON, one entry a line."""
+    lines = [json.dumps(plain(entry), allow_nan=False) for entry in record.entries]
+    return "[\n" + ",\n".join(lines) + "\n]\n"
+
+
 def write_record(record: ProofRecord, path: Path) -> None:
     """Write a record as JSON."""
-    text = json.dumps([plain(entry) for entry in record.entries], indent=1, allow_nan=False)
-    path.write_text(text + "\n", encoding="ascii")
+    path.write_text(record_text(record), encoding="ascii")

@@ -156,7 +156,9 @@ def _rows_enclosed(
     return np.where(unbounded, -np.inf, lower), np.where(unbounded, np.inf, upper)
 
 
-def decide_static_rows(problem: StaticLimits, *, max_boxes: int = 4000, gap: float = 0.03) -> StaticRowsDecision:
+def decide_static_rows(
+    problem: StaticLimits, *, max_boxes: int = 4000, gap: float = 0.03
+) -> StaticRowsDecision:
     """Bisect until every row is decided and enclosed to a relative gap, or max_boxes; undecided rows say so."""
     low, high = problem.low[None], problem.high[None]
     rows = len(problem.scale)

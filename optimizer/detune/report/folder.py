@@ -18,6 +18,8 @@ from detune.report.figures import draw_all
 from detune.report.page import page_text
 from detune.report.response_data import response_curves
 from detune.report.strict_json import json_text
+from detune.proof.record import record_text
+from detune.solvers.robust_record import proof_record
 from detune.study.run import Result
 
 MARK = "proof.json"
@@ -92,13 +94,16 @@ def put_in_place(building: Path, target: Path) -> None:
 
 
 def _fill(result: Result, folder: Path) -> None:
-    subject = result.answer if result.answer is not None else result.closest
+    subject = result.subject
     curves = response_curves(result.study.brief, subject) if subject is not None else ()
     texts = {
         "study.toml": result.study.source,
         "inputs.json": json_text({"sha256": dict(result.study.hashes)}),
         "answer.json": json_text(_answer(result)),
         MARK: json_text(_proof(result)),
+        "proof-record.json": record_text(
+            proof_record(result.problem, result.outcome, result.robust, dict(result.study.hashes))
+        ),
         "front.csv": front_csv(result),
         "designs.csv": designs_csv(result),
         "why.csv": why_csv(result),
@@ -126,9 +131,28 @@ def _answer(result: Result) -> dict[str, object]:
         "exit_code": result.exit_code,
         "traded": result.front.trade,
         "answer": result.answer,
+        "proven_over_scatter": result.robust_answer,
+        "scatter": _scatter(result),
         "closest": result.closest,
         "compared": result.compared,
         "units": "SI: m, kg, s, N, rad, Hz; cost in the currency of the lists; margins and separation are ratios",
+    }
+
+
+def _scatter(result: Result) -> dict[str, object] | None:
+    robust = result.robust
+    if robust is None:
+        return None
+    return {
+        "judge": robust.judge,
+        "stopped": robust.stopped,
+        "price_of_robustness": robust.price,
+        "cheapest_proven": robust.optimal,
+        "winner": None if robust.winner is None else {"cost": robust.winner.cost, "rows": robust.winner.rows},
+        "front": [None if verdict is None else verdict.status for verdict in robust.front],
+        "undecided": len(robust.undecided) + len(robust.sampled),
+        "violated": len(robust.violated),
+        "yields": robust.yields,
     }
 
 

@@ -4,14 +4,19 @@ from dataclasses import dataclass
 from importlib.resources import files
 from pathlib import Path
 
+from detune.brief.brief import Brief
 from detune.ground.units import show
 from detune.report import tables, tables_study
 from detune.report.alternatives import alternatives
+from detune.report.contributions import contributions
 from detune.report.figures import Drawn, draw_all
+from detune.report.forced_rows import forced_rows, tightest_of_each
 from detune.report.points_to_check import points_to_check, study_points
+from detune.report.robust import robust_lines, robust_tables
 from detune.report.service_loads import service_loads
 from detune.report.summary import none_lines, partial_words, proof_lines
 from detune.report.tables import Table
+from detune.report.tables_contributions import contributions_table
 from detune.report.words import (
     design_text,
     limit_text,
@@ -22,7 +27,7 @@ from detune.report.words import (
     value_text,
 )
 from detune.response.assessment import Assessment
-from detune.study.cautions import CAUTIONS
+from detune.study.cautions import cautions
 from detune.study.run import Result
 
 TEMPLATE = "report.html.jinja"
@@ -106,9 +111,12 @@ def page_text(result: Result, drawn: tuple[Drawn, ...]) -> str:
 
 def sections(result: Result, plots: dict[str, Drawn]) -> tuple[Section, ...]:
     """Return the sections in the order of a design review; those with nothing to say are left out."""
-    subject = result.answer if result.answer is not None else result.closest
+    subject = result.subject
     found: list[Section] = [_answer(result)]
-    found.append(Section("cautions", "Cautions", points=CAUTIONS))
+    found.append(Section("cautions", "Cautions", points=cautions(result.study.brief)))
+    shown = robust_tables(result)
+    if shown:
+        found.append(Section("scatter", "Over the scatter", texts=tuple(robust_lines(result)), tables=shown))
     if result.problem.assumed:
         found.append(Section("assumed", "What was assumed", points=result.problem.assumed))
     if "front" in plots:
@@ -149,9 +157,10 @@ def _answer(result: Result) -> Section:
             shown = (*shown, tables.answer_table(brief, result.closest))
         heading = "No design meets the brief" if result.outcome.none_exists else "None found"
         return Section("answer", heading, tuple(texts), points, tables=shown)
-    answer = result.answer
+    answer = result.subject or result.answer
     texts = [
-        f"{_described(answer)}.",
+        *robust_lines(result),
+        f"{_described(answer)}{' (at listed values)' if result.robust is not None else ''}.",
         f"Least margin: {row_text(brief, answer.tightest)}.",
         *proof_lines(result),
     ]
@@ -192,17 +201,30 @@ def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> 
     ]  # fmt: skip
     if "response" in plots:
         found.append(Section("responses", f"Responses against limits{of}", plots=_only(plots, "response")))
+    found += _in_time_and_noise(brief, subject, plots, of)
     speeds = tables_study.speeds_table(result, subject)
     shown = [tables.modes_table(subject), tables.bump_table(subject)]
     if speeds.rows:
         shown.append(speeds)
-    shown.append(tables.power_table(subject))
+    power = tables.power_table(subject)
+    if power.rows:
+        shown.append(power)
     found.append(Section("modes", f"Modes{of}", plots=_only(plots, "modes-speed"), tables=tuple(shown)))
     if "stiffness-damping" in plots:
         found.append(
             Section("map", "Map of stiffness against damping", plots=_only(plots, "stiffness-damping"))
         )
     return found
+
+
+def _in_time_and_noise(brief: Brief, subject: Assessment, plots: dict[str, Drawn], of: str) -> list[Section]:
+    """Return what noise, shocks, records and run-ups do, where any of them acts."""
+    rows = tightest_of_each(forced_rows(brief, subject))
+    if not rows:
+        return []
+    table = contributions_table(contributions(rows))
+    shown = (*_only(plots, "spectral-density"), *_only(plots, "shock"))
+    return [Section("sources", f"Noise, shocks and run-ups{of}", plots=shown, tables=(table,))]
 
 
 def _only(plots: dict[str, Drawn], name: str) -> tuple[Drawn, ...]:

@@ -18,7 +18,7 @@ def points_to_check(brief: Brief, assessment: Assessment) -> tuple[str, ...]:
         *(f"Not met: {row_text(brief, row)}." for row in assessment.failed),
         *_power(assessment),
         *_tight(brief, assessment),
-        *_scatter(assessment),
+        *(_scatter(assessment) if brief.scatter is None else []),
         *_nearest_mode(assessment),
         *_exempt(assessment),
         *_stock(brief, assessment),
@@ -111,7 +111,11 @@ def _stock(brief: Brief, assessment: Assessment) -> list[str]:
 
 
 def _height(assessment: Assessment) -> list[str]:
-    heights = [row.installed_height for row in assessment.stations if row.installed_height is not None]
+    heights = [
+        row.installed_height
+        for row in assessment.stations
+        if row.levels and row.installed_height is not None
+    ]
     if len(heights) < 2:
         return []
     difference = max(heights) - min(heights)

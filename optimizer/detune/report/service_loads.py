@@ -4,8 +4,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from detune.brief.allowable import Displacement, HarmonicAllowable, TransmittedForce
-from detune.brief.brief import Brief, state_of
+from detune.brief.allowable import Displacement, HarmonicAllowable, RelativeMotion, TransmittedForce
+from detune.brief.brief import Brief, applies, state_of
+from detune.brief.condition import Condition
 from detune.response.assess import states_of
 from detune.response.assessment import Assessment
 from detune.response.direct import DirectMachine
@@ -33,28 +34,9 @@ class ServiceLoad:
 def service_loads(brief: Brief, assessment: Assessment) -> tuple[ServiceLoad, ...]:
     """Return the peak force into the floor along each axis and the peak movement of each named point.
 
-    Phasor sums over all parts and connections; suprema over the continuous range as in the assessment.
+    Phasor sums over all parts and connections; suprema over the continuous range as in the assessment. Where the
+    floor itself is moved, points are seen from the floor: with it the whole building or vehicle moves.
     """
-    wanted: list[tuple[HarmonicAllowable, str, str, str]] = []
-    for axis in AXES:
-        # The limit is needed to build the statement and plays no part here.
-        force = TransmittedForce.model_validate(
-            {
-                "kind": "transmitted-force",
-                "through": "floor",
-                "direction": axis,
-                "measure": "peak",
-                "limit": 1.0,
-            }
-        )
-        wanted.append((force, "floor", "dynamic force into the floor", axis))
-    for point in brief.points:
-        for axis in AXES:
-            moved = Displacement.model_validate(
-                {"kind": "displacement", "at": point.name, "direction": axis, "measure": "peak", "limit": 1.0}
-            )
-            wanted.append((moved, point.name, "displacement", axis))
-    pairs = tuple((allowable, place) for allowable, place, _, _ in wanted)
     loads = []
     for state in states_of(brief):
         machine = DirectMachine(brief, assessment.design, state_of(brief, state))
@@ -64,6 +46,8 @@ def service_loads(brief: Brief, assessment: Assessment) -> tuple[ServiceLoad, ..
                 continue
             tones = tones_of(brief, condition)
             is_shaft = bool(tones) and all(tone.speed in condition.shafts for tone in tones)
+            wanted = _wanted(brief, _moves_floor(brief, condition))
+            pairs = tuple((allowable, place) for allowable, place, _, _ in wanted)
             result = forced_suprema(machine, found, condition, pairs)
             for (allowable, place, what, axis), value, speed in zip(
                 wanted, result.value, result.speed, strict=True
@@ -73,3 +57,33 @@ def service_loads(brief: Brief, assessment: Assessment) -> tuple[ServiceLoad, ..
                     ServiceLoad(condition.name, what, place, axis, allowable.unit, float(value), at, is_shaft)
                 )
     return tuple(loads)
+
+
+def _moves_floor(brief: Brief, condition: Condition) -> bool:
+    return any(
+        forcing.floor_direction() is not None
+        for forcing in brief.forcing
+        if applies(forcing.conditions, condition.name)
+    )
+
+
+def _wanted(brief: Brief, from_floor: bool) -> list[tuple[HarmonicAllowable, str, str, str]]:
+    """Return what is looked at: allowable, place, what it is, axis. The limits play no part here."""
+    # Every kind of statement needs a measure and a limit to be built.
+    common = {"measure": "peak", "limit": 1.0}
+    wanted: list[tuple[HarmonicAllowable, str, str, str]] = []
+    for axis in AXES:
+        force = TransmittedForce.model_validate(
+            {"kind": "transmitted-force", "through": "floor", "direction": axis, **common}
+        )
+        wanted.append((force, "floor", "dynamic force into the floor", axis))
+    for point in brief.points:
+        for axis in AXES:
+            stated = {"at": point.name, "direction": axis, **common}
+            if from_floor:
+                seen = RelativeMotion.model_validate({"kind": "relative-motion", "to": "floor", **stated})
+                wanted.append((seen, point.name, "movement against the floor", axis))
+            else:
+                moved = Displacement.model_validate({"kind": "displacement", **stated})
+                wanted.append((moved, point.name, "displacement", axis))
+    return wanted

@@ -7,6 +7,7 @@ from pathlib import Path
 
 from detune.brief.brief import Brief
 from detune.report.points_to_check import points_to_check, study_points
+from detune.report.robust import robust_lines
 from detune.report.words import (
     BEST_WORDS,
     OBJECTIVE_WORDS,
@@ -19,7 +20,7 @@ from detune.report.words import (
     value_text,
 )
 from detune.response.assessment import Assessment, MarginRow
-from detune.study.cautions import CAUTIONS
+from detune.study.cautions import cautions
 from detune.study.run import Result
 
 WIDTH = 100
@@ -34,12 +35,12 @@ def summary(result: Result, folder: Path | None = None) -> str:
     lines += _answer(result) if result.answer is not None else none_lines(result)
     for other in result.compared:
         lines += ["", "Named design", *_design(result.study.brief, other)]
-    subject = result.answer if result.answer is not None else result.closest
+    subject = result.subject
     if subject is not None:
         points = (*points_to_check(result.study.brief, subject), *study_points(result))
         heading = "Look at" if result.answer is not None else "Look at, in the closest design"
         lines += ["", heading, *_bullets(points)]
-    lines += ["", "Cautions", *_bullets(CAUTIONS)]
+    lines += ["", "Cautions", *_bullets(cautions(result.study.brief))]
     if folder is not None:
         lines += ["", "Files", f"  {folder}", f"  {folder / 'report.html'}"]
     return "\n".join(lines) + "\n"
@@ -51,7 +52,7 @@ def assess_text(brief: Brief, assessment: Assessment) -> str:
     for row in sorted(assessment.margins, key=lambda row: row.margin):
         lines += _wrapped(row_text(brief, row), "  ")
     lines += ["", "Look at", *_bullets(points_to_check(brief, assessment))]
-    lines += ["", "Cautions", *_bullets(CAUTIONS)]
+    lines += ["", "Cautions", *_bullets(cautions(brief))]
     return "\n".join(lines) + "\n"
 
 
@@ -116,9 +117,16 @@ def proof_lines(result: Result) -> list[str]:
     met = result.front.designs.count
     return [
         f"Proven by {record.method}: of {record.designs} designs every one is counted, each excluded one under the "
-        f"requirement it failed; {met} remain, and this is the {BEST_WORDS[trade[0]]} of them, confirmed by the "
+        f"requirement it failed; {met} remain, and {_which(result)} the {BEST_WORDS[trade[0]]} of them, confirmed by the "
         "assessor. Parts at their listed values."
     ]
+
+
+def _which(result: Result) -> str:
+    """Return what is the best at listed values: the design shown, or another one than the proven design shown."""
+    if result.robust_answer is None or result.answer is None or result.robust_answer.design == result.answer.design:
+        return "this is"
+    return f"{design_text(result.answer.design)} (cost {objective_text(result.answer, 'cost')}) is"
 
 
 def none_lines(result: Result) -> list[str]:
@@ -176,7 +184,9 @@ def _answer(result: Result) -> list[str]:
     assert result.answer is not None
     brief, trade = result.study.brief, result.front.trade
     lines = [
-        *_design(brief, result.answer),
+        *(line for text in robust_lines(result) for line in _wrapped(text)),
+        *([""] if result.robust is not None else []),
+        *_design(brief, result.subject or result.answer),
         *(line for text in proof_lines(result) for line in _wrapped(text)),
     ]
     points = result.front.points
@@ -193,6 +203,8 @@ def _answer(result: Result) -> list[str]:
 
 def _design(brief: Brief, assessment: Assessment) -> list[str]:
     verdict = "Meets the brief" if assessment.meets else "Does not meet the brief"
+    if brief.scatter is not None:
+        verdict += " at listed values"
     lines = _wrapped(f"{verdict}: {design_text(assessment.design)}")
     lines.append(
         f"  cost {objective_text(assessment, 'cost')}, separation {separation_text(assessment.separation)}, "

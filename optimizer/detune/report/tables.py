@@ -81,14 +81,15 @@ def margins_table(brief: Brief, assessment: Assessment) -> Table:
 
 def stations_table(assessment: Assessment) -> Table:
     """Return the installation sheet: part, place, load, compression, height and shim of each station."""
-    heights = [row.installed_height for row in assessment.stations]
+    heights = [row.installed_height for row in assessment.stations if row.levels]
     known = [height for height in heights if height is not None]
     highest = max(known) if len(known) == len(heights) and known else None
     rows = tuple(_station(row, highest) for row in assessment.stations)
     note = (
         "Load and compression of one part under gravity and steady loads, at the static stiffness; creep is not "
-        "contained. Shim: what brings every station to the height of the highest one, if the floor and the feet are "
-        "as stated and level; heights scatter by 1-2 mm in common practice, so measure and shim under load."
+        "contained. Shim: what brings every upright part on the floor to the height of the highest one, if the floor "
+        "and the feet are as stated and level; heights scatter by 1-2 mm in common practice, so measure and shim "
+        "under load."
     )
     columns = (
         *("station", "group", "part", "in parallel", "x", "y", "z", "load", "its range", "lateral load"),
@@ -103,7 +104,7 @@ def _station(row: StationRow, highest: float | None) -> tuple[str, ...]:
 
     shim = (
         ""
-        if highest is None or row.installed_height is None
+        if highest is None or row.installed_height is None or not row.levels
         else f"{1e3 * (highest - row.installed_height):.1f} mm"
     )
     return (

@@ -41,7 +41,7 @@ def front_table(result: Result) -> Table:
 
 def comparison_table(result: Result) -> Table:
     """Return the named designs beside the answer (or, without one, beside the closest design)."""
-    subject = result.answer if result.answer is not None else result.closest
+    subject = result.subject
     heads = [f"named {i + 1}" if len(result.compared) > 1 else "named" for i in range(len(result.compared))]
     shown: list[Assessment] = list(result.compared)
     if subject is not None:

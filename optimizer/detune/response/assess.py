@@ -22,13 +22,14 @@ from detune.brief.allowable import (
 from detune.brief.allowable.views import DesignView, Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
+from detune.brief.statement import unit_direction
 from detune.ground.units import show
 from detune.parts.kinds.mount import Mount
 from detune.physics import modes, separation
 from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
 from detune.response.damping_readings import readings_of
 from detune.response.design import Design
-from detune.response.direct import DirectMachine
+from detune.response.direct import FLOOR, DirectMachine
 from detune.response.direct_amplitude import (
     WorkingAmplitude,
     follows_amplitude,
@@ -337,6 +338,7 @@ def _station_rows(brief: Brief, static: DirectStatic, design: Design) -> tuple[S
                 installed_height=None if mount.free_height is None else mount.free_height - compression,
                 load_min=mount.load_min,
                 load_max=mount.load_max,
+                levels=station.to == FLOOR and abs(unit_direction(station.axial)[2]) == 1.0,
             )
         )
     return tuple(rows)

@@ -43,6 +43,7 @@ class StationRow:
     """What the fitter needs at one station; loads and deflections are those of one part.
 
     Axial load is positive in compression; `installed_height` is None where the part states no height.
+    `levels`: the part stands upright on the floor, so that its height counts in levelling the machine.
     """
 
     station: str
@@ -57,6 +58,7 @@ class StationRow:
     installed_height: float | None
     load_min: float
     load_max: float
+    levels: bool = True
 
 
 @dataclass(frozen=True)

@@ -137,7 +137,7 @@ def direct_transient_values(
     """Return what the transients together count as in each row (R,); different ones add linearly."""
     total = np.zeros(len(pairs))
     for transient in transients:
-        views = _transient_motion(machine, found, transient)
+        views = transient_motion(machine, found, transient)
         if any(view.beyond for view, _ in views):
             # A part off its curve has met its stop: nothing is known of what it does there.
             total[:] = np.inf
@@ -153,7 +153,7 @@ def direct_transient_values(
     return total
 
 
-def _transient_motion(
+def transient_motion(
     machine: DirectMachine, found: DirectModes, transient: Transient
 ) -> list[tuple[DirectMotion, float]]:
     """Return the motion and its time step (s) on each stretch between jumps of the load."""

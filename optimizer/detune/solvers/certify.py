@@ -35,6 +35,7 @@ from detune.solvers.verdict import (
 
 Floats = NDArray[np.float64]
 MAX_BOXES = 20_000
+SPARE = 0.005
 
 
 def certify(
@@ -177,7 +178,15 @@ class _Work:
             return
         status: Status = "proven" if worst >= allowable.limit else "violated"
         point = tuple(self.made.map.low.tolist())
-        self._row(requirement, status, worst, worst, (allowable.limit, None), point, where="all parts at their softest")
+        self._row(
+            requirement,
+            status,
+            worst,
+            worst,
+            (allowable.limit, None),
+            point,
+            where="all parts at their softest",
+        )
 
     def _modes(self) -> None:
         for requirement, each, system in self.made.separations():
@@ -185,14 +194,25 @@ class _Work:
             assert isinstance(allowable, Separation)
             found = separation_worst(self.made.problem.brief, each, system, allowable, self.made.map)
             kept = found.guaranteed >= allowable.limit
-            status: Status = "violated" if found.worst < allowable.limit else "proven" if kept else "undecided"
+            status: Status = (
+                "violated" if found.worst < allowable.limit else "proven" if kept else "undecided"
+            )
             if self.made.map.stiffness_only:
                 self.proofs.append(
-                    SeparationProof(requirement.label, system, each.intervals, allowable.limit, status, found.worst)
+                    SeparationProof(
+                        requirement.label, system, each.intervals, allowable.limit, status, found.worst
+                    )
                 )
             limits = (allowable.limit, None)
             self._row(
-                requirement, status, found.worst, found.guaranteed, limits, found.point, found.frequency, found.where
+                requirement,
+                status,
+                found.worst,
+                found.guaranteed,
+                limits,
+                found.point,
+                found.frequency,
+                found.where,
             )
 
     def _responses(self) -> None:
@@ -204,7 +224,6 @@ class _Work:
                 self._judge(each, 0)
                 if self._over():
                     return
-                self.rows = [row for row in self.rows if row.condition != each.condition or row.frequency is None]
         for each in work:
             self._judge(each, self.max_boxes)
             if self._over():
@@ -212,16 +231,25 @@ class _Work:
 
     def _judge(self, each: "_Response", max_boxes: int) -> None:
         each.decide(max_boxes, self.interrupted)
-        self.boxes += each.boxes
+        self.boxes, each.boxes = self.boxes + each.boxes, 0
         if max_boxes:
             self.proofs += each.proofs()
         for index, requirement in enumerate(each.group.requirements):
             found = each.verdict(index)
             if max_boxes or found.status == "violated":
                 limits = (None, found.limit)
-                self._row(requirement, found.status, found.worst, found.bound, limits, found.point, found.speed)
+                self._row(
+                    requirement, found.status, found.worst, found.bound, limits, found.point, found.speed
+                )
         if not max_boxes and self._over():
             self.proofs += each.proofs()
+
+
+def claimed(decision: StaticRowsDecision, row: int) -> tuple[float, float]:
+    """The enclosure that is claimed of a static row: the one proven, half a per cent wider, so that it can be re-checked."""
+    low, high = decision.bound_low[row], decision.bound_high[row]
+    spare = SPARE * max(abs(low), abs(high))
+    return low - spare, high + spare
 
 
 class _Found:
@@ -259,10 +287,11 @@ class _Response:
         labels = tuple(self.group.requirements[i].label for i, *_ in rows)
         self.static = StaticProof(f"static parts of responses, {self.condition}", labels, limits, decision)
         for number, (index, _, how) in enumerate(rows):
+            low, high = claimed(decision, number)
             if how == "limits":
-                self.limit[index] = max(decision.bound_low[number], 0.0)
+                self.limit[index] = max(low, 0.0)
             else:
-                self.adds[index] = decision.bound_high[number]
+                self.adds[index] = high
 
     def sample(self, stop: bool) -> None:
         """Corners, grid and pattern search; families at independent speeds get each its share of the limit."""
@@ -329,6 +358,8 @@ class _Response:
         # Families that are worst at different points of the scatter are no witness together; the greatest alone is.
         alone = float(lower[:, index].max()) if len(lower) > 1 else worst
         if alone + adds > limit:
-            return _Found("violated", alone + adds, bound + self.adds[index], limit, point, biggest.speed[index])
+            return _Found(
+                "violated", alone + adds, bound + self.adds[index], limit, point, biggest.speed[index]
+            )
         stated = float(self.limit[index])
         return _Found(status, worst + adds, bound + self.adds[index], stated, point, biggest.speed[index])

@@ -82,7 +82,10 @@ def static_row(
         arrays = model.groups[find_station(model, place).group].arrays
         index = part[find_station(model, place).group]
         base = _load_row(each, part, found, place)
-        lower, upper = _limit(float(arrays.load_min[index]), -np.inf), _limit(float(arrays.load_max[index]), np.inf)
+        lower, upper = (
+            _limit(float(arrays.load_min[index]), -np.inf),
+            _limit(float(arrays.load_max[index]), np.inf),
+        )
         return [StaticRow(base.rows, base.scale, base.factors, base.shift, False, lower, upper)]
     if isinstance(allowable, Sag):
         return [StaticRow(_single(-creep * model.points[place][2]), upper=allowable.limit)]
@@ -109,7 +112,9 @@ def offset_row(
             return None, ""
         station = find_station(model, place)
         creep = 1.0 + model.creep
-        return StaticRow(_single(creep * station.rows[2]), shift=-creep * station.packing, length=True), "adds"
+        return StaticRow(
+            _single(creep * station.rows[2]), shift=-creep * station.packing, length=True
+        ), "adds"
     if isinstance(allowable, Gap):
         if allowable.clearance_of == "installed":
             return None, ""
@@ -126,7 +131,12 @@ def offset_row(
 
 
 def static_limits(
-    brief: Brief, each: StateModel, part: NDArray[np.intp], step: int, found: ScatterMap, rows: list[StaticRow]
+    brief: Brief,
+    each: StateModel,
+    part: NDArray[np.intp],
+    step: int,
+    found: ScatterMap,
+    rows: list[StaticRow],
 ) -> StaticLimits:
     """Return static rows of a design in a state as the arrays of the proof floor."""
     model = each.model
@@ -146,7 +156,7 @@ def static_limits(
         loads.append(vector)
         load_factors.append(names)
     return StaticLimits(
-        fixed=model.fixed_static,
+        fixed=0.5 * (model.fixed_static + model.fixed_static.T),
         axes=np.array(axes),
         stiffness=np.array(stiffness),
         factors=np.array(factors, dtype=np.int64),
@@ -200,14 +210,18 @@ def separation_worst(
     if allowable.exempt_amplification is not None:
         raise NotBounded("modes are exempted by amplification")
     if not each.intervals:
-        return SeparationFound(np.inf, np.inf, float("nan"), "nothing excites steadily", tuple(found.nominal.tolist()))
+        return SeparationFound(
+            np.inf, np.inf, float("nan"), "nothing excites steadily", tuple(found.nominal.tolist())
+        )
     intervals = np.array(each.intervals, dtype=float).reshape(-1, 2)
     bands = ForbiddenBands(intervals[:, 0], intervals[:, 1], np.full(len(intervals), allowable.limit))
     if not found.stiffness_only:
         return _by_boxes(brief, each, system, bands, found)
     corners = [modes_at(system, edge) for edge in (system.low, system.high)]
     worst = float(interval_separation(corners[0][None], corners[1][None], bands)[0].min())
-    for frequency, edge, words in zip(corners, (system.low, system.high), ("softest", "stiffest"), strict=True):
+    for frequency, edge, words in zip(
+        corners, (system.low, system.high), ("softest", "stiffest"), strict=True
+    ):
         least, mode = _least(frequency, bands)
         if least <= worst + 1e-12:
             return SeparationFound(worst, worst, mode, f"all parts at their {words}", tuple(edge.tolist()))
@@ -277,7 +291,9 @@ def _stiffness_at(system: ScatterSystem, point: Floats) -> Floats:
     points = np.append(point, 0.0)[None]
     weights = products(points, system.stiffness_factors)[0] * system.stiffness
     total: Floats = system.fixed_dynamic + (system.axes.T * weights) @ system.axes
-    return total + np.einsum("t,tij->ij", products(points, system.stiffness_term_factors)[0], system.stiffness_terms)
+    return total + np.einsum(
+        "t,tij->ij", products(points, system.stiffness_term_factors)[0], system.stiffness_terms
+    )
 
 
 def modes_at(system: ScatterSystem, point: Floats) -> Floats:

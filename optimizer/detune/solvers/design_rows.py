@@ -49,7 +49,8 @@ class ResponseGroup:
     def families(self, limit: Floats, forcing: float) -> list[LimitedRows]:
         """The rows under every family, with limits (R,)."""
         return [
-            limited_rows(self.group, self.observed, limit, family, forcing) for family in self.group.rows.families
+            limited_rows(self.group, self.observed, limit, family, forcing)
+            for family in self.group.rows.families
         ]
 
 
@@ -113,7 +114,9 @@ class DesignRows:
         out = []
         for requirement in self.problem.modes:
             each = next(
-                s for s in self.problem.states if (s.state, s.reading) == (requirement.state, requirement.reading)
+                s
+                for s in self.problem.states
+                if (s.state, s.reading) == (requirement.state, requirement.reading)
             )
             try:
                 if not isinstance(requirement.allowable, Separation):

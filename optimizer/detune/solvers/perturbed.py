@@ -12,14 +12,14 @@ from detune.response.design import Design
 from detune.solvers.scatter_machine import NOTHING, ScatterMap
 
 
-def perturbed(brief: Brief, design: Design, found: ScatterMap, point: tuple[float, ...]) -> tuple[Brief, Design]:
+def perturbed(
+    brief: Brief, design: Design, found: ScatterMap, point: tuple[float, ...]
+) -> tuple[Brief, Design]:
     """Return brief and design with the parts, masses and centres of `point`; every station is then its own group.
 
     The scatter of the forcing is not in it.
     """
-    stations = tuple(
-        station.model_copy(update={"group": station.name}) for station in brief.stations
-    )
+    stations = tuple(station.model_copy(update={"group": station.name}) for station in brief.stations)
 
     def factor(pair: tuple[int, int]) -> float:
         return float(np.prod([point[v] for v in pair if v != NOTHING]))
@@ -33,12 +33,11 @@ def perturbed(brief: Brief, design: Design, found: ScatterMap, point: tuple[floa
         for number, station in enumerate(brief.stations)
     )
     bodies = tuple(
-        _moved(body, point, found.mass[number], found.centre[number]) for number, body in enumerate(brief.bodies)
+        _moved(body, point, found.mass[number], found.centre[number])
+        for number, body in enumerate(brief.bodies)
     )
     groups = tuple(station.name for station in stations)
-    changed = brief.model_copy(
-        update={"stations": stations, "bodies": bodies, "states": _states(brief)}
-    )
+    changed = brief.model_copy(update={"stations": stations, "bodies": bodies, "states": _states(brief)})
     return changed, Design(groups, mounts, design.ballast)
 
 
@@ -57,7 +56,9 @@ def _states(brief: Brief) -> tuple[object, ...]:
 def scaled_mount(mount: Mount, stiffness: float, damping: float) -> Mount:
     """Return a mount with both stiffnesses times one factor, loss factor and viscous coefficient times another."""
 
-    def times(axes: tuple[float | None, float | None, float], factor: float) -> tuple[float | None, float | None, float]:
+    def times(
+        axes: tuple[float | None, float | None, float], factor: float
+    ) -> tuple[float | None, float | None, float]:
         x, y, z = axes
         return (None if x is None else x * factor, None if y is None else y * factor, z * factor)
 
@@ -75,7 +76,9 @@ def _moved(body: Body, point: tuple[float, ...], mass: int, centre: tuple[int, i
         return body
     known = mass_properties(body)
     factor = 1.0 + (0.0 if mass == NOTHING else point[mass])
-    moved = [float(c) + (0.0 if v == NOTHING else point[v]) for c, v in zip(known.centre, centre, strict=True)]
+    moved = [
+        float(c) + (0.0 if v == NOTHING else point[v]) for c, v in zip(known.centre, centre, strict=True)
+    ]
     tensor = factor * known.inertia
     inertia = InertiaTensor(
         xx=float(tensor[0, 0]), yy=float(tensor[1, 1]), zz=float(tensor[2, 2]),

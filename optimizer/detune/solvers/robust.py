@@ -163,7 +163,9 @@ class _Certifying:
         found: list[Yield | None] = []
         for numbers in front:
             found.append(
-                None if self.halt() else design_yield(self.problem, np.array(numbers[0], dtype=np.intp), numbers[1])
+                None
+                if self.halt()
+                else design_yield(self.problem, np.array(numbers[0], dtype=np.intp), numbers[1])
             )
         return RobustResult(
             "distribution", self.stopped if outcome.stopped == "finished" else outcome.stopped,
@@ -192,7 +194,8 @@ class _Certifying:
         trade = self.problem.brief.objectives.trade[1]
         cap, done_to, rise = float(outcome.objectives["cost"].min()), -np.inf, FIRST_STEP
         most = sum(
-            sum(s.bought for s in self.problem.model.stations if s.group == g) * float(group.arrays.cost.max())
+            sum(s.bought for s in self.problem.model.stations if s.group == g)
+            * float(group.arrays.cost.max())
             for g, group in enumerate(self.problem.model.groups)
         ) + float(self.problem.model.ballast_cost.max())
         while not self.halt():
@@ -221,4 +224,3 @@ class _Certifying:
 def numbers_of(designs: Designs, index: int) -> Numbers:
     """Part numbers and ballast step of one design of a batch."""
     return tuple(int(p) for p in designs.part[index]), int(designs.step[index])
-

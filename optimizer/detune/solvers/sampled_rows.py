@@ -19,7 +19,9 @@ CORNERS = 4
 INSIDE = 4
 
 
-def sample_scatter(found: ScatterMap, corners: int = CORNERS, inside: int = INSIDE) -> list[tuple[float, ...]]:
+def sample_scatter(
+    found: ScatterMap, corners: int = CORNERS, inside: int = INSIDE
+) -> list[tuple[float, ...]]:
     """Nominal point, corners of up to `corners` variables (the others together), and points of a Sobol sequence."""
     low, high = found.low, found.high
     points = [tuple(found.nominal.tolist())]

@@ -59,13 +59,20 @@ class Variable:
 
 
 def corner_words(variables: tuple[Variable, ...], point: tuple[float, ...]) -> str:
-    """A point of the scatter in words, variables with the same value together; "as listed" where nothing deviates."""
-    groups: dict[str, list[str]] = {}
+    """A point of the scatter in words, what deviates alike together; "as listed" where nothing deviates."""
+    groups: dict[tuple[str, str], list[str]] = {}
     for variable, value in zip(variables, point, strict=True):
         told = variable.value_words(value)
-        groups.setdefault(told, []).append(variable.words)
-    told = [f"{', '.join(names)} {value}" for value, names in groups.items() if value not in ("+0 %", "+0 mm")]
-    return "; ".join(told) or "as listed"
+        if told not in ("+0 %", "+0 mm"):
+            place = (
+                f"{variable.owner} {'xyz'[variable.axis]}" if variable.kind == "centre" else variable.owner
+            )
+            groups.setdefault((variable.kind, told), []).append(place)
+    words = []
+    for (kind, told), owners in groups.items():
+        who = {"lot": "lot", "part": "part at"}.get(kind.split()[-1], "of")
+        words.append(f"{kind.split()[0]} {who} {', '.join(owners)} {told}")
+    return "; ".join(words) or "as listed"
 
 
 def lot_of(mount: Mount) -> tuple[str, str]:
@@ -110,7 +117,9 @@ def scatter_map(brief: Brief, design: Design) -> ScatterMap:
     variables: list[Variable] = []
     known: dict[tuple[str, str, str], int] = {}
 
-    def number(kind: str, key: tuple[str, str], owner: str, interval: tuple[float, float], axis: int = 0) -> int:
+    def number(
+        kind: str, key: tuple[str, str], owner: str, interval: tuple[float, float], axis: int = 0
+    ) -> int:
         if interval == (0.0, 0.0):
             return NOTHING
         if (kind, *key) not in known:
@@ -127,7 +136,9 @@ def scatter_map(brief: Brief, design: Design) -> ScatterMap:
             if mount.pieces == 0 or (figure == "damping" and not _damped(mount)):
                 pairs[figure].append((NOTHING, NOTHING))
                 continue
-            lot = number(f"{figure} lot", lot_of(mount), mount.base or mount.part, _of(brief, stated.lot, mount))
+            lot = number(
+                f"{figure} lot", lot_of(mount), mount.base or mount.part, _of(brief, stated.lot, mount)
+            )
             part = number(f"{figure} part", ("", station.name), station.name, _of(brief, stated.part, mount))
             pairs[figure].append((lot, part))
     masses, centres = [], []
@@ -159,7 +170,9 @@ def _of(brief: Brief, stated: str | Interval | None, mount: Mount) -> tuple[floa
     if not isinstance(stated, str):
         return interval_of(stated)
     if mount.tolerance != mount.tolerance:
-        expected = "a tolerance in the list for every part that may be chosen, or the scatter stated as a ratio"
+        expected = (
+            "a tolerance in the list for every part that may be chosen, or the scatter stated as a ratio"
+        )
         finding = Finding(("scatter", "stiffness"), f'"listed", and {mount.part} states none', expected)
         raise BriefError(faults_without_lines(brief.file, (finding,)))
     return -mount.tolerance, mount.tolerance
@@ -266,12 +279,16 @@ def _bodies(brief: Brief, model: Model) -> list[tuple[str, float, Floats, Floats
     for body in brief.bodies:
         known = mass_properties(body)
         move = model.frame.motion_rows(body.name, known.centre)
-        by = np.stack([model.frame.motion_rows(body.name, known.centre + np.eye(3)[i]) - move for i in range(3)])
+        by = np.stack(
+            [model.frame.motion_rows(body.name, known.centre + np.eye(3)[i]) - move for i in range(3)]
+        )
         out.append((body.name, known.mass, known.inertia, move, by))
     return out
 
 
-def _mass_terms(brief: Brief, model: Model, found: ScatterMap) -> tuple[list[Floats], list[tuple[int, int, int]]]:
+def _mass_terms(
+    brief: Brief, model: Model, found: ScatterMap
+) -> tuple[list[Floats], list[tuple[int, int, int]]]:
     """What mass and centre of the bodies change in M: (1 + m) times the mass matrix about the moved centre, less M."""
     terms: list[Floats] = []
     factors: list[tuple[int, int, int]] = []
@@ -313,7 +330,9 @@ def weight_terms(brief: Brief, model: Model, found: ScatterMap) -> list[tuple[Fl
     return [(vector, names) for vector, names in out if np.any(vector != 0.0)]
 
 
-def _gravity_terms(brief: Brief, model: Model, found: ScatterMap) -> tuple[list[Floats], list[tuple[int, int, int]]]:
+def _gravity_terms(
+    brief: Brief, model: Model, found: ScatterMap
+) -> tuple[list[Floats], list[tuple[int, int, int]]]:
     """What mass and centre change in gravity's geometric stiffness, which is linear in all forces at given places."""
     terms: list[Floats] = []
     factors: list[tuple[int, int, int]] = []

@@ -34,7 +34,9 @@ class UnitView:
     @property
     def axes(self) -> int:
         """Number A of axes, in the order of `scatter_system`."""
-        return 3 * (len(self.model.stations) + len(self.model.connections)) + int(self.model.frame.flexible_floor)
+        return 3 * (len(self.model.stations) + len(self.model.connections)) + int(
+            self.model.frame.flexible_floor
+        )
 
     def _empty(self, rate: int) -> Floats:
         self.rates.add(rate)
@@ -99,7 +101,9 @@ class ObservedRow:
     squares: bool
 
 
-def observed_row(model: Model, allowable: HarmonicAllowable, place: str, families: tuple[Family, ...]) -> ObservedRow:
+def observed_row(
+    model: Model, allowable: HarmonicAllowable, place: str, families: tuple[Family, ...]
+) -> ObservedRow:
     """Return the components of a requirement. Raises NotBounded."""
     if allowable.has_weighting():
         raise NotBounded("it is weighted by frequency")

@@ -12,6 +12,8 @@ from detune.problem.build import Problem, with_parts
 from detune.problem.requirement import Requirement
 from detune.problem.stages import Stage, objective_values, stages
 from detune.response.designs import Designs
+from detune.response.direct import DirectMachine
+from detune.response.direct_views import DirectStatic
 from detune.sizing.made_parts import Made, changes_brief, made_design, sizing_of
 
 Floats = NDArray[np.float64]
@@ -142,3 +144,9 @@ def _margins(stage: Stage, designs: Designs) -> Floats:
 def unknown_titles(brief: Brief) -> tuple[str, ...]:
     """The unknowns in words."""
     return tuple(unknown.title for unknown in sizing_of(brief).unknown)
+
+
+def static_loads(made: Made) -> tuple[tuple[str, float], ...]:
+    """Group and static axial load (N, compression positive) of one part at every station of a design."""
+    static = DirectStatic(DirectMachine(made.brief, made.design))
+    return tuple((s.group, float(-static.station_load(s.name)[0][2])) for s in made.brief.stations)

@@ -15,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
+from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Axes, Mount
 from detune.problem.build import Problem
 from detune.problem.requirement import Requirement
@@ -24,7 +25,7 @@ from detune.response.assessment import Assessment
 from detune.response.design import Design
 from detune.response.designs import Designs
 from detune.sizing.made_parts import Made, made_design
-from detune.solvers.size_batch import batch, exact_stages, response_margin
+from detune.solvers.size_batch import batch, exact_stages, response_margin, static_loads
 
 Floats = NDArray[np.float64]
 # Rank, predicted shortfall, part of each group, ballast step.
@@ -85,11 +86,11 @@ def _short_list(brief: Brief, values: Floats, problem: Problem) -> list[_Listed]
     """Real designs by their predicted shortfall from one ideal, the least first."""
     ideal = made_design(brief, values)
     margins, slope, offsets = sensitivities(ideal)
-    loads = assess(ideal.brief, ideal.design).stations
+    loads = static_loads(ideal)
     ranked = []
     for group, mounts in enumerate(problem.candidates):
         name = brief.groups[group]
-        carried = [row.axial_load for row in loads if row.group == name]
+        carried = [load for group_name, load in loads if group_name == name]
         away = [offsets.away(group, mount) for mount in mounts]
         moved = slope[group] @ np.array(away).T
         short = _shortfall(margins[:, None] + moved) + _overload(mounts, carried)
@@ -218,15 +219,18 @@ def sensitivities(ideal: Made) -> tuple[Floats, Floats, Offsets]:
     groups = len(design.mounts)
     slopes = np.stack([(margins[:, 1 + 3 * g : 4 + 3 * g] - base[:, None]) / STEP for g in range(groups)])
     per_kg = (margins[:, -1] - base) / 1e-2 if brief.ballast is not None else np.zeros(len(base))
-    omega = 2.0 * np.pi * _lowest(ideal)
+    omega = vertical_omega(ideal)
     return base, slopes, Offsets(design.mounts, omega, per_kg)
 
 
-def _lowest(ideal: Made) -> float:
-    """Frequency (Hz) of the mode that moves the most mass vertically, at which dampings are compared."""
-    modes = assess(ideal.brief, ideal.design).modes
-    share = np.nan_to_num([mode.participation[2] for mode in modes])
-    return modes[int(np.argmax(share))].frequency
+def vertical_omega(ideal: Made) -> float:
+    """Angular frequency (rad/s) of the carried mass on all axial springs, at which dampings are compared."""
+    total = stiffness = 0.0
+    for station, (_, load) in zip(ideal.brief.stations, static_loads(ideal), strict=True):
+        mount = ideal.design.mounts[ideal.design.groups.index(station.group)]
+        total += station.parallel * abs(load)
+        stiffness += station.parallel * mount.stiffness_dynamic[2]
+    return float(np.sqrt(stiffness * STANDARD_GRAVITY / max(total, 1e-9)))
 
 
 def _changed(design: Design, group: int, which: int) -> Design:

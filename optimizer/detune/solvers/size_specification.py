@@ -25,7 +25,7 @@ from detune.response.assess import assess
 from detune.sizing.made_parts import bounds, made_design, sizing_of
 from detune.sizing.specification import Specification, largest_proven_box
 from detune.sizing.statement import SizingError
-from detune.solvers.size_batch import batch, judge
+from detune.solvers.size_batch import batch, judge, static_loads
 from detune.solvers.specification_outputs import Outputs, outputs_of
 
 Floats = NDArray[np.float64]
@@ -284,21 +284,10 @@ def _loads(
     carried: dict[str, list[float]] = {group: [] for group in brief.groups}
     for corner in corners:
         made = made_design(brief, _points(values, columns, np.array([corner]))[0])
-        for row in assess_stations(made.brief, made.design):
+        for row in static_loads(made):
             carried[row[0]].append(row[1])
     ratio = {made.group: made.dynamic_to_static for made in sizing_of(brief).made}
     return tuple(SpecifiedGroup(g, (min(loads), max(loads)), ratio[g]) for g, loads in carried.items())
-
-
-def assess_stations(brief: Brief, design: object) -> list[tuple[str, float]]:
-    """Group and static axial load (N) of one part at every station of a design."""
-    from detune.response.design import Design
-    from detune.response.direct import DirectMachine
-    from detune.response.direct_views import DirectStatic
-
-    assert isinstance(design, Design)
-    static = DirectStatic(DirectMachine(brief, design))
-    return [(s.group, float(-static.station_load(s.name)[0][2])) for s in brief.stations]
 
 
 def brief_with_room(brief: Brief, room: float) -> Brief:

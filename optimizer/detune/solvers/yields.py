@@ -128,7 +128,9 @@ def design_yield(problem: Problem, part: NDArray[np.intp], step: int) -> Yield:
         for index, requirement in enumerate(found.requirements):
             note(requirement.label, ~(total[:, index] + adds[:, index] <= limit[:, index]))
     if rows.unknown:
-        wanted = {(r.allowable.kind, r.condition, r.place, r.allowable.quantity()): r.label for r, _ in rows.unknown}
+        wanted = {
+            (r.allowable.kind, r.condition, r.place, r.allowable.quantity()): r.label for r, _ in rows.unknown
+        }
         for number, point in enumerate(points):
             brief, design = perturbed(problem.brief, rows.design, rows.map, tuple(point.tolist()))
             for row in assess(brief, design).margins:
@@ -140,8 +142,12 @@ def design_yield(problem: Problem, part: NDArray[np.intp], step: int) -> Yield:
         broken |= flags
     met = int(count - broken.sum())
     low, high = clopper_pearson(met, count, scatter.confidence)
-    ranked = sorted(((label, int(flags.sum())) for label, flags in missed.items() if flags.any()), key=lambda m: -m[1])
-    return Yield(met, count, low, high, scatter.confidence, scatter.distribution, tuple(ranked), bool(rows.unknown))
+    ranked = sorted(
+        ((label, int(flags.sum())) for label, flags in missed.items() if flags.any()), key=lambda m: -m[1]
+    )
+    return Yield(
+        met, count, low, high, scatter.confidence, scatter.distribution, tuple(ranked), bool(rows.unknown)
+    )
 
 
 def _unstable(rows: DesignRows, group: StaticGroup) -> list[Requirement]:

@@ -112,7 +112,7 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
         why = f"{solved}, so the exact one-axis method does not apply"
         convex = _convex(study, problem)
         middle = size_many_starts.Coordinates(brief).outward(np.full(len(sizing.unknown), 0.5))
-        first = (*(answer.values for answer in convex), *absorber_starts(brief, middle))
+        first = (*(answer.values for answer in convex), *_best_two(study, absorber_starts(brief, middle)))
         searches = _searched(study, first)
         branches, worth, bound = _of_searches(study, searches), searches.worth, None
     else:
@@ -130,6 +130,14 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
         None, None, None, convex, None, (), cautions, 0.0,
     )  # fmt: skip
     return _with_rest(found, problem, drawings, started)
+
+
+def _best_two(study: Study, points: tuple[Floats, ...]) -> tuple[Floats, ...]:
+    """The two closed-form starts with the least worst response."""
+    if not points:
+        return ()
+    worst = judge(study.brief, np.array(points)).objectives["worst-response"]
+    return tuple(points[k] for k in np.argsort(worst, kind="stable")[:2])
 
 
 def _rank(sense: float) -> Callable[[SizedBest], tuple[bool, float]]:

@@ -5,7 +5,13 @@ from typing import Literal
 import numpy as np
 from pydantic import field_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, read_direction
+from detune.brief.allowable.base import (
+    HarmonicAllowable,
+    Statistic,
+    above_zero,
+    direction_words,
+    read_direction,
+)
 from detune.brief.allowable.views import Floats, Places, StaticView
 from detune.brief.statement import AxisName, Direction, Name
 
@@ -47,5 +53,4 @@ class PointAllowable(HarmonicAllowable):
         return np.full(view.count, self.limit)
 
     def quantity(self) -> str:
-        where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
-        return f"{self.title} {where}, {self.measure}"
+        return f"{self.title} {direction_words(self.direction)}, {self.measure}"

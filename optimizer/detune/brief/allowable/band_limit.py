@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 from pydantic import PrivateAttr, ValidationInfo, model_validator
 
-from detune.brief.allowable.base import BandAllowable, above_zero
+from detune.brief.allowable.base import BandAllowable, above_zero, direction_words
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView
 from detune.brief.data_file import read_named
 from detune.brief.statement import (
@@ -158,11 +158,10 @@ class BandLimit(BandAllowable):
         return view.floor_motion(rate=1) if place == FLOOR else view.motion(place, rate=1)
 
     def quantity(self) -> str:
-        where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
         curve: str = self.criterion or "the stated mask"
         if self.multiplier is not None and self.multiplier != 1.0:
             curve = f"{self.multiplier:g} times the {curve}"
-        return f"{self.title} {where}, rms over {curve}"
+        return f"{self.title} {direction_words(self.direction)}, rms over {curve}"
 
 
 assert set(get_args(Criterion)) == {*VELOCITY_LINES, BASE_CURVE}

@@ -292,6 +292,17 @@ def read_direction(direction: AxisName | Literal["resultant"] | Direction) -> Di
     return None if direction == "resultant" else unit_direction(direction)
 
 
+def direction_words(direction: AxisName | Literal["resultant"] | Direction) -> str:
+    """Return a direction for tables: the name of an axis, with a minus sign where it points the other way."""
+    if isinstance(direction, str):
+        return direction
+    unit = unit_direction(direction)
+    for axis, value in zip("xyz", unit, strict=True):
+        if abs(value) == 1.0:
+            return axis if value > 0.0 else f"-{axis}"
+    return f"along ({', '.join(f'{value:.3g}' for value in unit)})"
+
+
 def above_zero(value: float, what: str, at: str | None = None) -> float:
     """Return a limit that is above zero, else refuse it."""
     if value <= 0.0:

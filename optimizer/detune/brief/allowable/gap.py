@@ -5,7 +5,7 @@ from typing import ClassVar, Literal
 import numpy as np
 from pydantic import model_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero
+from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, direction_words
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import AxisName, Direction, Length, Name, unit_direction
 
@@ -65,5 +65,4 @@ class Gap(HarmonicAllowable):
         return np.full(view.count, self.clearance)
 
     def quantity(self) -> str:
-        where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
-        return f"travel to a stop on {self.stands_on} {where}, from {self.clearance_of}"
+        return f"travel to a stop on {self.stands_on} {direction_words(self.direction)}, from {self.clearance_of}"

@@ -5,7 +5,7 @@ from typing import ClassVar, Literal
 import numpy as np
 from pydantic import model_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic
+from detune.brief.allowable.base import HarmonicAllowable, Statistic, direction_words
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import AxisName, Direction, Name, unit_direction
 from detune.physics.criteria import MACHINE_ZONES
@@ -74,5 +74,4 @@ class MachineVelocity(HarmonicAllowable):
         return np.full(view.count, self.zone_limit())
 
     def quantity(self) -> str:
-        where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
-        return f"machine velocity {where}, zone {self.boundary}, rms"
+        return f"machine velocity {direction_words(self.direction)}, zone {self.boundary}, rms"

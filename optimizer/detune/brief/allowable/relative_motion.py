@@ -5,7 +5,13 @@ from typing import ClassVar, Literal
 import numpy as np
 from pydantic import model_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, read_direction
+from detune.brief.allowable.base import (
+    HarmonicAllowable,
+    Statistic,
+    above_zero,
+    direction_words,
+    read_direction,
+)
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import AxisName, Direction, Length, Name, refuse
 
@@ -52,5 +58,4 @@ class RelativeMotion(HarmonicAllowable):
         return np.full(view.count, self.limit)
 
     def quantity(self) -> str:
-        where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
-        return f"motion relative to {self.to} {where}, {self.measure}"
+        return f"motion relative to {self.to} {direction_words(self.direction)}, {self.measure}"

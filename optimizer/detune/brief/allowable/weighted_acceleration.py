@@ -5,7 +5,7 @@ from typing import ClassVar, Literal
 import numpy as np
 from pydantic import model_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero
+from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, direction_words
 from detune.brief.allowable.views import Complexes, Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import Acceleration, AxisName, Direction, Name, unit_direction
 from detune.physics.weighting import frequency_weighting
@@ -56,5 +56,4 @@ class WeightedAcceleration(HarmonicAllowable):
         return np.full(view.count, self.limit)
 
     def quantity(self) -> str:
-        where = self.direction if isinstance(self.direction, str) else "along " + str(list(self.direction))
-        return f"acceleration {where}, weighted {self.weighting} (ISO 2631-1), rms"
+        return f"acceleration {direction_words(self.direction)}, weighted {self.weighting} (ISO 2631-1), rms"

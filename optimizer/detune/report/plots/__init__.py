@@ -7,12 +7,23 @@ markers by the identifier of their group.
 
 from types import ModuleType
 
-from detune.report.plots import front, margins, modes_speed, response, stiffness_damping, why
+from detune.report.plots import (
+    front,
+    margins,
+    modes_speed,
+    response,
+    shock,
+    spectral_density,
+    stiffness_damping,
+    why,
+)
 
 PLOTS: dict[str, ModuleType] = {
     "front": front,
     "margins": margins,
     "response": response,
+    "spectral-density": spectral_density,
+    "shock": shock,
     "modes-speed": modes_speed,
     "stiffness-damping": stiffness_damping,
     "why": why,

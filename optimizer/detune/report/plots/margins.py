@@ -42,7 +42,7 @@ class MarginsData:
 
 def data(result: Result) -> MarginsData | None:
     """Return the numbers of the plot, None where no design was assessed."""
-    subject = result.answer if result.answer is not None else result.closest
+    subject = result.subject
     if subject is None:
         return None
     rows = sorted(subject.margins, key=lambda row: row.margin)

@@ -84,11 +84,11 @@ class ModesData:
 
 
 def data(result: Result) -> ModesData | None:
-    """Return the numbers of the plot, None where no design was assessed."""
-    subject = result.answer if result.answer is not None else result.closest
-    if subject is None:
-        return None
+    """Return the numbers of the plot, None where nothing has a speed or no design was assessed."""
+    subject = result.subject
     sources = excitation_sources(result.study.brief)
+    if subject is None or not sources:
+        return None
     return ModesData(
         subject="the answer" if result.answer is not None else "the closest design",
         frequencies=tuple(mode.frequency for mode in subject.modes),

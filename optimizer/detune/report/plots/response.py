@@ -66,7 +66,7 @@ class ResponseData:
 
 def data(result: Result) -> ResponseData | None:
     """Return the numbers of the plot, None where nothing vibrates or no design was assessed."""
-    subject = result.answer if result.answer is not None else result.closest
+    subject = result.subject
     if subject is None:
         return None
     groups: dict[tuple[str, ...], list[ResponseCurve]] = {}

@@ -86,7 +86,7 @@ class MapData:
 
 def data(result: Result) -> MapData | None:
     """Return the numbers of the plot, None where no design was assessed."""
-    subject = result.answer if result.answer is not None else result.closest
+    subject = result.subject
     if subject is None:
         return None
     brief, problem = result.study.brief, result.problem
