@@ -112,8 +112,13 @@ class Penalised:
         if time.process_time() > self.until:
             raise OutOfTime
         selection = self.selection
-        part = np.minimum(np.floor(x.T).astype(np.int64), np.array(selection.sizes) - 1)
-        designs = np.column_stack([np.maximum(part, 0), np.zeros(len(part), dtype=np.int64)])
+        place = np.clip(np.floor(x.T).astype(np.int64), 0, np.array(selection.sizes) - 1)
+        # Neighbours are to be alike: the parts stand in the order of their axial stiffness.
+        part = [
+            np.argsort(group.kappa_static[:, 2])[p]
+            for group, p in zip(selection.groups, place.T, strict=True)
+        ]
+        designs = np.column_stack([*part, np.zeros(len(place), dtype=np.int64)])
         self.asked += len(designs)
         cost = design_cost(selection, designs)
         miss = np.maximum(-np.nan_to_num(static_margin(selection, designs), neginf=-10.0, posinf=10.0), 0.0)

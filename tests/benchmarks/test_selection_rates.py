@@ -87,8 +87,12 @@ def test_two_workers(figures: dict[str, Any]) -> None:
     """The same answer and counts that add up, whatever the number of workers."""
     ratios, runs = [], []
     for seed in SEEDS:
-        alone, both = one(600, 4, seed), one(600, 4, seed, workers=2)
+        alone, both = one(1000, 4, seed), one(1000, 4, seed, workers=2)
         assert alone["cost"] == both["cost"]
         ratios.append(alone["seconds"] / both["seconds"])
         runs += [alone, both]
-    figures["two workers 600^4"] = {"median_ratio": statistics.median(ratios), "ratios": ratios, "runs": runs}
+    figures["two workers 1000^4"] = {
+        "median_ratio": statistics.median(ratios),
+        "ratios": ratios,
+        "runs": runs,
+    }

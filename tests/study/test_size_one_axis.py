@@ -163,7 +163,8 @@ def test_bad_tables_are_refused_in_plain_words(tmp_path, name):
 
 def test_an_unknown_nothing_depends_on_and_an_objective_nothing_changes(tmp_path):
     ballast = "[[sizing.unknown]]\nkind = 'ballast'\nlower = '0 kg'\nupper = '50 kg'"
-    table = "[ballast]\nposition = ['0 m', '0 m', '0 m']\nsize = ['1 m', '1 m', '1 m']\nsteps = ['0 kg']\ncost_per_kg = 0\n"
+    table = "[ballast]\nposition = ['0 m', '0 m', '0 m']\n"
+    table += "size = ['1 m', '1 m', '1 m']\nsteps = ['0 kg']\ncost_per_kg = 0\n"
     common = {"mass": 30.0, "frequency": "'10 Hz'", "softest": 10.0, "stiffest": 1e5, "made": UNDAMPED}
     free = briefs.one_axis(
         more=table + "[[allowable]]\nkind = 'separation'\nlimit = 0.2\n" + briefs.DISPLACEMENT.format(limit=1.0),

@@ -148,6 +148,7 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     notes = tuple(str(group) for catalog in catalogs.values() for group in group_assumed(catalog.assumed))
     stated = [note for forcing in brief.forcing for note in forcing.assumed()]
     stated += [note for allowable in brief.allowables for note in allowable.assumed()]
+    stated += () if brief.scatter is None else brief.scatter.assumed()
     notes = (*stated, *notes)
     return _problem(brief, candidates.mounts, candidates.dropped, notes)
 

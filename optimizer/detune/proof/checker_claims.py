@@ -11,7 +11,8 @@ from detune.proof.checker_arithmetic import OUTWARD, UNIT, Matrix, fractions
 from detune.proof.checker_boxes import array
 from detune.proof.checker_designs import PI_HIGH, PI_LOW, count_below, number
 from detune.proof.checker_lines import Line, length_plane, plus, scaled, times, variable_product
-from detune.proof.checker_scatter import exact_rows, least_eigenvalue, read_rows, read_scatter, row_bounds
+from detune.proof.checker_scatter import least_eigenvalue, read_rows, read_scatter, row_bounds
+from detune.proof.checker_witness import exact_rows
 
 BATCH = 256
 DEEPEST = 6
@@ -265,7 +266,7 @@ def check_separation(data: dict[str, Any]) -> list[str]:
 
 
 def _corner(system: dict[str, Matrix], edge: Matrix) -> list[list[Fraction]]:
-    out = fractions(system["fixed_dynamic"].tolist())
+    out: list[list[Fraction]] = fractions(system["fixed_dynamic"].tolist())
     size = range(len(out))
     for b, k, names in zip(system["axes"], system["stiffness"], system["stiffness_factors"], strict=True):
         weight = Fraction(float(k))

@@ -17,6 +17,7 @@ import numpy as np
 from detune.proof.expansion import (
     Box,
     Expansion,
+    Numbers,
     UpperPlane,
     add_planes,
     speed_power,
@@ -124,8 +125,8 @@ class Solved:
     each: Expansion
     rho: Floats
     matrix: Complexes
-    p: Complexes
-    p_axes: Complexes
+    p: Numbers
+    p_axes: Numbers
     p_size: Floats
     nu: Floats
 
@@ -156,7 +157,7 @@ def solved(
     return Solved(each, rho, d0, p, p_axes, _reach_size(frame, rho, p, p_axes), nu)
 
 
-def _reach_size(frame: Frame, rho: Floats, vectors: Complexes, deflections: Complexes) -> Floats:
+def _reach_size(frame: Frame, rho: Floats, vectors: Numbers, deflections: Numbers) -> Floats:
     """sqrt(sum rho_t x_t^2) (N, C) for vectors (N, C, n) with axis deflections (N, C, A)."""
     axes = deflections.shape[2]
     total = np.einsum("ba,bca->bc", rho[:, :axes], deflections.real**2 + deflections.imag**2)
@@ -228,7 +229,18 @@ def rows_bound(
     trials: tuple[tuple[bool, float], ...] = TRIALS,
 ) -> Bounds:
     """Bound every row over boxes with corners low, high (N, V+1)."""
-    box = Box(low, high)
+    # A box without a bound has an infinite remainder; what that makes of products ends as infinity below.
+    with np.errstate(invalid="ignore", over="ignore"):
+        return _bounds(system, limits, frame, Box(low, high), trials)
+
+
+def _bounds(
+    system: ScatterSystem,
+    limits: LimitedRows,
+    frame: Frame,
+    box: Box,
+    trials: tuple[tuple[bool, float], ...],
+) -> Bounds:
     wins = np.zeros(len(trials), dtype=np.int64)
     by_order: dict[float, Solved] = {}
     planes: dict[float, list[UpperPlane]] = {}
@@ -301,13 +313,13 @@ def _set_plane(
     share[:, frame.used] = np.einsum("bclt,bt,bl->bct", np.abs(pairs), state.rho, scale, optimize=True)
     shape = (count, limits.count, 3)
     plane = _size_plane(
-        limits, centre.reshape(shape), slopes.reshape(*shape, variables), remainder.reshape(shape), box
+        limits, frame, centre.reshape(shape), slopes.reshape(*shape, variables), remainder.reshape(shape), box
     )
     return plane, share.reshape(*shape, -1).sum(axis=2)
 
 
 def _scaled_sum(
-    box: Box, loads: LoadSet, rate: Floats, zero: Complexes, slope: Complexes, rest: Floats
+    box: Box, loads: LoadSet, rate: Floats, zero: Numbers, slope: Numbers, rest: Floats
 ) -> Expansion:
     """Sum over the powers of omega^(power + rate) times the expansions (N, C, L) of each power's share."""
     total: Expansion | None = None
@@ -326,7 +338,7 @@ def _scaled_sum(
 
 
 def _size_plane(
-    limits: LimitedRows, centre: Complexes, slope: Complexes, remainder: Floats, box: Box
+    limits: LimitedRows, frame: Frame, centre: Numbers, slope: Numbers, remainder: Floats, box: Box
 ) -> UpperPlane:
     """Upper plane of what vectors of phasors count as: major semi-axis or root of squares."""
     finite = np.isfinite(remainder).all(axis=2)
@@ -338,9 +350,8 @@ def _size_plane(
         box,
     )
     plane = length
-    vector = limits.ellipse & ((limits.rows != 0.0).any(axis=2) | (limits.forces != 0.0).any(axis=2))[
-        :, 1:
-    ].any(axis=1)
+    several = np.isin(np.arange(limits.count), frame.used[frame.used % 3 > 0] // 3)
+    vector = limits.ellipse & several
     if vector.any():
         major = upper_major_axis(centre[:, vector], slope[:, vector], remainder[:, vector], box)
         plane.centre[:, vector], plane.slope[:, vector] = major.centre, major.slope

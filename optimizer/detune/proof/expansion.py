@@ -8,12 +8,16 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from detune.proof.selection_data import Floats, Integers
 
 TINY = 1.0e-300
+Numbers = NDArray[Any]
+"""Real or complex arrays."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -36,8 +40,8 @@ class Box:
 class Expansion:
     """K quantities over N boxes: centre (N, K), slope (N, K, V+1), both real or complex, remainder (N, K) real."""
 
-    centre: Floats
-    slope: Floats
+    centre: Numbers
+    slope: Numbers
     remainder: Floats
 
     def reach(self, box: Box) -> Floats:
@@ -108,7 +112,7 @@ class UpperPlane:
         return result
 
 
-def upper_length(centre: Floats, slope: Floats, remainder: Floats, box: Box) -> UpperPlane:
+def upper_length(centre: Numbers, slope: Numbers, remainder: Floats, box: Box) -> UpperPlane:
     """Upper plane of the Euclidean length of real vectors: centre (N, R, m), slope (N, R, m, V+1), remainder (N, R, m).
 
     With x = a + w, a the centre: |x| <= sqrt((|a| + par)^2 + perp^2) <= |a| + par + perp^2 / (2 (|a| + par)).
@@ -128,7 +132,7 @@ def upper_length(centre: Floats, slope: Floats, remainder: Floats, box: Box) -> 
     return UpperPlane(size, np.where(flat[:, :, None], 0.0, along), bent + rest)
 
 
-def upper_major_axis(centre: Floats, slope: Floats, remainder: Floats, box: Box) -> UpperPlane:
+def upper_major_axis(centre: Numbers, slope: Numbers, remainder: Floats, box: Box) -> UpperPlane:
     """Upper plane of the major semi-axis of ellipses: complex centre (N, R, 3), slope (N, R, 3, V+1), remainder (N, R, 3).
 
     2 a^2 = |y|^2 + |y . y|; the square root lies below its tangent. Never above the bound of the plain length.

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from detune.proof.bisect import DecisionStatus
+from detune.proof.bisect import DecisionStatus, sample_points
 from detune.proof.expansion import Box, Expansion, upper_length, variable_products
 from detune.proof.loewner import Flags
 from detune.proof.scatter_data import products
@@ -133,7 +133,6 @@ def _rows_enclosed(
     problem: StaticLimits, box: Box, zero: Floats, slope: Floats, rest: Floats
 ) -> tuple[Floats, Floats]:
     """Enclosures (N, R) of rows from the expansions (N, R, 3) of their components."""
-    count, rows = zero.shape[:2]
     zero = zero.copy()
     zero[:, :, 0] += problem.shift
     factor = variable_products(box, problem.row_factors)
@@ -163,6 +162,7 @@ def decide_static_rows(
     low, high = problem.low[None], problem.high[None]
     rows = len(problem.scale)
     reached = _Reached(problem)
+    reached.corners()
     closed_low, closed_high = np.full(rows, np.inf), np.full(rows, -np.inf)
     boxes = 0
     while True:
@@ -210,6 +210,19 @@ class _Reached:
             found = values[pick, np.arange(len(pick))]
             better = found < extreme if extreme is self.least else found > extreme
             extreme[better], where[better] = found[better], points[pick[better]]
+
+    def corners(self) -> None:
+        """Corners of the whole box, and from the best one of every row those that differ in one variable, twice."""
+        low, high = self.problem.low, self.problem.high
+        self.evaluate(sample_points(np.append(low, 1.0), np.append(high, 1.0))[:, :-1])
+        for _ in range(3):
+            starts = np.unique(np.concatenate([self.at_least, self.at_most]), axis=0)
+            flipped = np.repeat(starts[:, None], 2 * len(low), axis=1)
+            for variable in range(len(low)):
+                flipped[:, 2 * variable, variable] = low[variable]
+                flipped[:, 2 * variable + 1, variable] = high[variable]
+            if flipped.size:
+                self.evaluate(flipped.reshape(-1, len(low)))
 
     @property
     def broken(self) -> bool:

@@ -71,7 +71,9 @@ class PartBatch:
         """One part's complex dynamic stiffness (D, F, 3) at a station, in its state: k (1 + j eta) + j w c and laws."""
         number = self.model.stations.index(station)
         constant, loss, viscous = self.constants(number)
-        total: Complexes = (constant * (1.0 + 1j * loss))[:, None, :] + 1j * omega[:, :, None] * viscous[:, None, :]
+        total: Complexes = (constant * (1.0 + 1j * loss))[:, None, :] + 1j * omega[:, :, None] * viscous[
+            :, None, :
+        ]
         group = self.model.groups[station.group]
         if group.laws is not None and group.laws.with_frequency:
             part = self.designs.part[:, station.group]
@@ -189,4 +191,6 @@ def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Flo
     still = np.zeros(designs.count, dtype=bool)
     if working is not None:
         still = np.asarray(~np.isfinite(working.q).all(axis=1))
-    return _standing(Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric, still))
+    return _standing(
+        Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric, still)
+    )

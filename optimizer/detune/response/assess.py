@@ -70,7 +70,10 @@ def assess(brief: Brief, design: Design) -> Assessment:
     found = [_in_state(brief, design, name, reading) for name in states_of(brief) for reading in readings]
     for first in range(0, len(found), len(readings)):
         rows += worse_reading(
-            [(each.reading, _rows_in_state(each, allowables)) for each in found[first : first + len(readings)]]
+            [
+                (each.reading, _rows_in_state(each, allowables))
+                for each in found[first : first + len(readings)]
+            ]
         )
     kept = tuple(row for row in rows if row.upper is None or np.isfinite(row.upper))
     counted = [row.margin for row in kept if row.kind not in ("cost", "added-mass", "part-numbers")]

@@ -84,7 +84,9 @@ def part_numbers(model: Model, designs: Designs) -> Floats:
         codes = np.full((len(group.mounts), 2), -1)
         for number, mount in enumerate(group.mounts):
             for place, name in enumerate(mount.bought):
-                codes[number, place] = known.setdefault(("damper" if place else mount.catalog, name), len(known))
+                codes[number, place] = known.setdefault(
+                    ("damper" if place else mount.catalog, name), len(known)
+                )
         rows.append(codes[designs.part[:, index]])
     every = np.sort(np.concatenate(rows, axis=1), axis=1)
     new = np.ones_like(every, dtype=bool)

@@ -27,6 +27,7 @@ from detune.physics.rigid_body import box_inertia, skew
 from detune.physics.static import solve_static
 from detune.response.damping_readings import read_as
 from detune.response.design import Design
+from detune.response.direct_gravity import gravity_stiffness
 from detune.response.direct_laws import DirectRest, follows_curve, part_stiffness, rest_on_laws
 from detune.response.part_laws import ROOM_TEMPERATURE
 
@@ -245,7 +246,11 @@ class DirectMachine:
             return None
         stations, free = self.brief.stations, self.free
         springs = sum(
-            self.across(s).T @ self.axes(s) @ np.diag(self.share(s) * self.part(s, None).real) @ self.axes(s).T @ self.across(s)
+            self.across(s).T
+            @ self.axes(s)
+            @ np.diag(self.share(s) * self.part(s, None).real)
+            @ self.axes(s).T
+            @ self.across(s)
             for s in stations
         )
         mesh = np.ix_(free, free)
@@ -284,57 +289,13 @@ class DirectMachine:
         return load
 
     def gravity_stiffness(self) -> Floats:
-        """Geometric stiffness (N, N) of all static forces on each body: sum (F.r) I - (r F^T + F r^T)/2 on its turns.
+        """Geometric stiffness (N, N) of all static forces on each body (direct_gravity)."""
+        return gravity_stiffness(self)
 
-        The forces are those of equal springs at all stations. Source: physics.gravity; written out once more.
-        """
-        total = np.zeros((self.size, self.size))
-        for body in self.brief.bodies:
-            matrix = np.zeros((3, 3))
-            for arm, force in self._forces_on(body.name):
-                matrix += (arm @ force) * np.eye(3) - 0.5 * (np.outer(arm, force) + np.outer(force, arm))
-            total += self.turn(body.name).T @ matrix @ self.turn(body.name)
-        return total
-
-    def _forces_on(self, body: str) -> list[tuple[Floats, Floats]]:
-        """Arm from the body's centre and force of everything static that acts on a body, its weight included."""
-        down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
-        centre = self.centres[body]
-        own = next(b for b in self.brief.bodies if b.name == body)
-        found = [(np.zeros(3), mass_properties(own).mass * down)]
-        ballast = self.brief.ballast
-        if ballast is not None and body_of(self.brief, ballast.on) == body:
-            found.append((np.array(ballast.position) - centre, self.design.ballast * down))
-        for steady in self.brief.steady_loads:
-            if body_of(self.brief, steady.on) == body:
-                found.append((np.array(steady.position) - centre, np.array(steady.force)))
-        for station in self.brief.stations:
-            times = 0 if self.share(station) == 0.0 else station.parallel
-            pushed = -times * self.across(station) @ self._rest_on_equal_springs
-            found += self._ends(body, station.on, station.to, np.array(station.position), pushed)
-        return found
-
-    @cached_property
-    def _rest_on_equal_springs(self) -> Floats:
-        """Static displacements (N,) if every station had springs of 1 N/m in all directions, on rigid ground."""
-        equal = np.zeros((self.size, self.size))
-        for station in self.brief.stations:
-            times = 0 if self.share(station) == 0.0 else station.parallel
-            equal += times * self.across(station).T @ self.across(station)
-        bodies = self.free & (np.arange(self.size) < 6 * len(self.brief.bodies))
-        q = np.zeros(self.size)
-        mesh = np.ix_(bodies, bodies)
-        if np.linalg.matrix_rank(equal[mesh], hermitian=True) == int(bodies.sum()):
-            q[bodies] = np.linalg.solve(equal[mesh], self._weight_alone[bodies])
-        return q
-
-    def _ends(self, body: str, on: str | None, to: str, place: Floats, force: Floats) -> list[tuple[Floats, Floats]]:
-        ends = []
-        if body_of(self.brief, on) == body:
-            ends.append((place - self.centres[body], force))
-        if to == body:
-            ends.append((place - self.centres[body], -force))
-        return ends
+    @property
+    def weight_alone(self) -> Floats:
+        """Static load (N,) of weight and steady loads, without what packing adds."""
+        return self._weight_alone
 
     @cached_property
     def static_q(self) -> Floats:

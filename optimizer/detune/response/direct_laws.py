@@ -54,7 +54,9 @@ def part_stiffness(
     the peak axial deflection at which it works. Beyond the ends of an amplitude table its end values hold.
     """
     if omega is None:
-        return np.asarray(np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex), dtype=complex)
+        return np.asarray(
+            np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex), dtype=complex
+        )
     listed = np.nan_to_num(np.array(mount.stiffness_dynamic, dtype=float)) * np.array([1.0, 1.0, axial_ratio])
     viscous = 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
     if mount.law_table is not None:
@@ -75,10 +77,14 @@ def part_stiffness(
             )
         )
         at = np.clip(np.atleast_1d(amplitude), steps[0], steps[-1])
-        constant = listed * (np.interp(at, steps, ratios) * (1.0 + 1j * np.interp(at, steps, losses)))[:, None]
+        constant = (
+            listed * (np.interp(at, steps, ratios) * (1.0 + 1j * np.interp(at, steps, losses)))[:, None]
+        )
     if mount.relaxation is not None:
         series = mount.relaxation.stiffness_ratio * listed
-        return np.asarray(constant + viscous * series / np.where(series > 0.0, series + viscous, 1.0), dtype=complex)
+        return np.asarray(
+            constant + viscous * series / np.where(series > 0.0, series + viscous, 1.0), dtype=complex
+        )
     return np.asarray(constant + viscous, dtype=complex)
 
 

@@ -40,7 +40,9 @@ class DirectModes:
         """What a mode allowable looks at."""
         with np.errstate(divide="ignore"):
             amplification = 1.0 / self.loss_factor
-        return ModeView(self.frequency[None], amplification[None], self.intervals, lambda: -self.poles.real[None])
+        return ModeView(
+            self.frequency[None], amplification[None], self.intervals, lambda: -self.poles.real[None]
+        )
 
     def least_separation(self, exempt: float | None) -> float:
         """Return the least separation over all modes that are not exempt."""

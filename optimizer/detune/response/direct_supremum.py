@@ -63,7 +63,9 @@ class Supremum:
     noise: RandomPart | None = None
 
 
-def forced_suprema(machine: DirectMachine, found: DirectModes, condition: Condition, pairs: Pairs) -> Supremum:
+def forced_suprema(
+    machine: DirectMachine, found: DirectModes, condition: Condition, pairs: Pairs
+) -> Supremum:
     """Return the values of all rows under the forcing of a condition: tones, noise, records and passages.
 
     Speeds are independent of each other: peaks add linearly, rms values as squares.

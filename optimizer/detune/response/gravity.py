@@ -16,9 +16,7 @@ Floats = NDArray[np.float64]
 NEVER = 1e-9
 
 
-def gravity_stiffness(
-    turn: Floats, arms: Sequence[Floats], forces: Sequence[Floats]
-) -> Floats:
+def gravity_stiffness(turn: Floats, arms: Sequence[Floats], forces: Sequence[Floats]) -> Floats:
     """Return the geometric stiffness (B, n, n) of static forces on one body (physics.gravity).
 
     turn (3, n): its rotation rows. arms (3,) m from its reference point, forces (B, 3) N: everything static

@@ -20,7 +20,7 @@ from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.physics import rigid_body
 from detune.physics.orientation import axes_from_direction
 from detune.response.damping_readings import read_as
-from detune.response.gravity import gravity_stiffness
+from detune.response.model_gravity import geometric_stiffness_of
 from detune.response.part_laws import ROOM_TEMPERATURE, GroupLaws, group_laws
 
 Floats = NDArray[np.float64]
@@ -171,7 +171,9 @@ def build_model(
     floor = floor_freedom(brief.floor)
     names: list[tuple[str, str]] = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
     structure = brief.structure
-    nodes = {} if structure is None else {node.name: structure.shape_rows(node.name) for node in structure.nodes}
+    nodes = (
+        {} if structure is None else {node.name: structure.shape_rows(node.name) for node in structure.nodes}
+    )
     if structure is not None:
         names += [(STRUCTURE, f"mode {i + 1}") for i in range(len(structure.modes.frequency))]
     if floor is not None:
@@ -228,7 +230,7 @@ def build_model(
         ballast_mass=ballast_mass,
         ballast_cost=ballast_cost,
         creep=0.0 if state is None else state.creep,
-        geometric=_geometric(brief, frame, properties, stations, weight),
+        geometric=geometric_stiffness_of(brief, frame, properties, stations, connections, weight),
         with_gravity_stiffness=brief.gravity_stiffness,
         assumed=tuple(notes),
     )
@@ -340,44 +342,6 @@ def _without_gaps(arrays: MountArrays) -> MountArrays:
     """Put zero where a list states nothing lateral; `problem.candidates` admits that only where nothing moves so."""
     names = ("stiffness_static", "stiffness_dynamic", "loss_factor", "viscous")
     return replace(arrays, **{name: np.nan_to_num(getattr(arrays, name)) for name in names})
-
-
-def _geometric(
-    brief: Brief,
-    frame: Frame,
-    properties: dict[str, MassProperties],
-    stations: tuple[StationRows, ...],
-    weight: Floats,
-) -> Floats:
-    """Return gravity's geometric stiffness (B, n, n), from the forces that equal springs would carry."""
-    total = np.zeros((len(weight), frame.count, frame.count))
-    own = [column for column, (name, _) in enumerate(frame.names) if name not in (FLOOR, STRUCTURE)]
-    rows = [station.rows[:, own] for station in stations]
-    equal = sum(s.parallel * row.T @ row for s, row in zip(stations, rows, strict=True))
-    if np.linalg.matrix_rank(equal, hermitian=True) < len(own):
-        return total
-    rest = np.linalg.solve(equal, weight[:, own].T).T
-    steps = np.array([0.0] if brief.ballast is None else brief.ballast.steps)
-    down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
-    for body in brief.bodies:
-        centre = frame.references[body.name]
-        arms = [np.zeros(3)]
-        forces = [np.repeat(properties[body.name].mass * down[None], len(steps), axis=0)]
-        if brief.ballast is not None and body_of(brief, brief.ballast.on) == body.name:
-            arms.append(np.array(brief.ballast.position) - centre)
-            forces.append(steps[:, None] * down)
-        for steady in brief.steady_loads:
-            if body_of(brief, steady.on) == body.name:
-                arms.append(np.array(steady.position) - centre)
-                forces.append(np.repeat(np.array(steady.force)[None], len(steps), axis=0))
-        for station, row in zip(stations, rows, strict=True):
-            pushed = -station.parallel * (rest @ row.T) @ station.axes.T
-            for end, sign in ((station.on, 1.0), (station.to, -1.0)):
-                if end == body.name:
-                    arms.append(station.position - centre)
-                    forces.append(sign * pushed)
-        total += gravity_stiffness(frame.rotation_rows(body.name), arms, forces)
-    return total
 
 
 def _spread(stations: tuple[StationRows, ...], group: int, n: int) -> Floats:

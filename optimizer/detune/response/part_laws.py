@@ -57,7 +57,9 @@ def group_laws(
         curves=tuple(axial_curve(mount) for mount in mounts),
         relaxation=relaxed,
         dashpot=np.where(relaxed[:, None] > 0.0, np.nan_to_num(arrays.viscous), 0.0),
-        tables=tuple(None if m.law_table is None else table_physics(m.law_table, temperature) for m in mounts),
+        tables=tuple(
+            None if m.law_table is None else table_physics(m.law_table, temperature) for m in mounts
+        ),
         amplitudes=tuple(mount.amplitude_table for mount in mounts),
         temperature=temperature,
     )
@@ -80,7 +82,9 @@ def axial_curve(mount: Mount) -> LoadCurve | None:
     return load_curve(length * np.log(AIR_SPRING_RANGE), mount.load_rated * AIR_SPRING_RANGE)
 
 
-def frequency_part(laws: GroupLaws, arrays: MountArrays, part: Integers, stiffness: Floats, omega: Floats) -> Complexes:
+def frequency_part(
+    laws: GroupLaws, arrays: MountArrays, part: Integers, stiffness: Floats, omega: Floats
+) -> Complexes:
     """Return what a frequency law adds (D, F, 3) to the constant k (1 + j eta) of `stiffness` (D, 3).
 
     Relaxation: j w c N k / (N k + j w c). Table: k (r (1 + j eta_table) - (1 + j eta)). Sources: parts.laws.
@@ -109,7 +113,9 @@ def within_table(table: StiffnessTable, omega: Floats) -> Floats:
     Excitation outside a table is refused when the problem is built; only a search for natural frequencies
     goes beyond, and takes the end value there.
     """
-    return np.clip(omega, TWO_PI * table.frequency[0] * (1.0 + 1e-12), TWO_PI * table.frequency[-1] * (1.0 - 1e-12))
+    return np.clip(
+        omega, TWO_PI * table.frequency[0] * (1.0 + 1e-12), TWO_PI * table.frequency[-1] * (1.0 - 1e-12)
+    )
 
 
 def amplitude_part(laws: GroupLaws, part: Integers, amplitude: Floats) -> tuple[Floats, Floats]:

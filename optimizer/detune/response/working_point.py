@@ -77,5 +77,7 @@ def _elements(model: Model, designs: Designs, index: int) -> tuple[list[Floats],
         if curve is None or station.parallel == 0:
             laws.append(ElementLaw(stiffness=float(static[2])))
         else:
-            laws.append(ElementLaw(curve=LoadCurve(curve.deflection, scale * curve.load, scale * curve.slope)))
+            laws.append(
+                ElementLaw(curve=LoadCurve(curve.deflection, scale * curve.load, scale * curve.slope))
+            )
     return rows, laws, np.array(offsets)

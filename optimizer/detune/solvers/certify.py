@@ -317,7 +317,7 @@ class _Response:
         if self.group.largest or len(values) == 1:
             return np.asarray(values.max(axis=0))
         squares = np.array([row.squares for row in self.group.observed])
-        return np.where(squares, np.sqrt((values**2).sum(axis=0)), values.sum(axis=0))
+        return np.asarray(np.where(squares, np.sqrt((values**2).sum(axis=0)), values.sum(axis=0)))
 
     @property
     def may_be_violated(self) -> bool:

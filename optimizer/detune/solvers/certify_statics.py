@@ -291,9 +291,8 @@ def _stiffness_at(system: ScatterSystem, point: Floats) -> Floats:
     points = np.append(point, 0.0)[None]
     weights = products(points, system.stiffness_factors)[0] * system.stiffness
     total: Floats = system.fixed_dynamic + (system.axes.T * weights) @ system.axes
-    return total + np.einsum(
-        "t,tij->ij", products(points, system.stiffness_term_factors)[0], system.stiffness_terms
-    )
+    own = np.einsum("t,tij->ij", products(points, system.stiffness_term_factors)[0], system.stiffness_terms)
+    return np.asarray(total + own)
 
 
 def modes_at(system: ScatterSystem, point: Floats) -> Floats:

@@ -12,8 +12,8 @@ from typing import Literal
 import numpy as np
 
 from detune.problem.build import Problem
-from detune.proof.search import SearchSettings
 from detune.proof.robust_search import designs_between
+from detune.proof.search import SearchSettings
 from detune.response.designs import Designs
 from detune.solvers import bounded
 from detune.solvers.certify import MAX_BOXES, certify

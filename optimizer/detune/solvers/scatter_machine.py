@@ -254,8 +254,9 @@ def _axes(
         c.append(model.floor_damping)
     s += [(NOTHING, NOTHING)] * (len(k) - len(s))
     t += [(NOTHING, NOTHING)] * (len(k) - len(t))
-    values = (np.array(rows), *(np.array(v, dtype=np.float64) for v in (k, h, c)))
-    return (*values, np.array(s, dtype=np.int64), np.array(t, dtype=np.int64))
+    stiffness, loss, viscous = (np.array(v, dtype=np.float64) for v in (k, h, c))
+    pairs = np.array(s, dtype=np.int64), np.array(t, dtype=np.int64)
+    return np.array(rows), stiffness, loss, viscous, *pairs
 
 
 def _take_out(model: Model, fixed: dict[str, Floats]) -> None:
@@ -310,7 +311,8 @@ def _mass_terms(
         for matrix, names in parts:
             if np.any(matrix != 0.0):
                 terms.append(_even(matrix))
-                factors.append((*names, *([NOTHING] * (3 - len(names))))[:3])
+                padded = (*names, NOTHING, NOTHING)
+                factors.append((padded[0], padded[1], padded[2]))
     return terms, factors
 
 

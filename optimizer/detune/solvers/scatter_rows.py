@@ -13,7 +13,7 @@ from detune.brief.allowable import HarmonicAllowable
 from detune.brief.allowable.base import TONE_FACTOR
 from detune.problem.build import HarmonicRequirements
 from detune.proof.scatter_data import LimitedRows, LoadSet
-from detune.response.loads import Family
+from detune.response.loads import Family, Load
 from detune.response.model import Model, find_station
 
 Floats = NDArray[np.float64]
@@ -145,8 +145,9 @@ def limited_rows(
     )
 
 
-def _load_set(model: Model, loads: tuple, rows: list[ObservedRow]) -> LoadSet:  # type: ignore[type-arg]
-    n, by_power = model.frame.count, {}  # type: ignore[var-annotated]
+def _load_set(model: Model, loads: tuple[Load, ...], rows: list[ObservedRow]) -> LoadSet:
+    n = model.frame.count
+    by_power: dict[float, list[NDArray[np.complex128]]] = {}
     axes = rows[0].forces.shape[1]
 
     def at(power: float) -> list[NDArray[np.complex128]]:

@@ -118,7 +118,8 @@ class DesignVerdict:
 def design_status(rows: tuple[RowVerdict, ...]) -> Status:
     """Return what the rows of a design make of it: the worst of them."""
     found = {row.status for row in rows}
-    for status in ("violated", "undecided", "sampled"):
+    ranked: tuple[Status, ...] = ("violated", "undecided", "sampled")
+    for status in ranked:
         if status in found:
-            return status  # type: ignore[return-value]
+            return status
     return "proven"

@@ -19,9 +19,9 @@ from detune.proof.static_rows import static_values_at
 from detune.response.assess import assess
 from detune.solvers.certify_statics import StaticRow, modes_at, stability_worst
 from detune.solvers.design_rows import DesignRows, StaticGroup
-from detune.solvers.scatter_rows import NotBounded
 from detune.solvers.perturbed import perturbed
 from detune.solvers.scatter_machine import ScatterMap
+from detune.solvers.scatter_rows import NotBounded
 
 Floats = NDArray[np.float64]
 Flags = NDArray[np.bool_]

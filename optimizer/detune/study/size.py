@@ -37,6 +37,8 @@ from detune.study.load import Study
 Floats = NDArray[np.float64]
 # Points at which it is tried whether an unknown matters to anything.
 TRIED = 6
+# A gap of the proof above this share of the objective is told.
+GAP = 1e-5
 # Shares of room inside the limits that the design of a specification is tried with.
 ROOMS = (0.2, 0.1, 0.05, 0.02)
 # Points of the front from which real parts are looked for as well.
@@ -119,7 +121,7 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
         exact, bound = solved, solved.bound
         why = "one mass on one stiffness and one damping: every feasible branch is found"
         branches = _of_branches(study, exact)
-        worth = "global: proven best of all feasible branches"
+        worth = _worth(exact, branches)
         if exact.branches and exact.statement.relaxed and not branches[0].assessment.meets:
             # The relaxation's best misses what it left out: go on by local searches, with its bound.
             searches = _searched(study, tuple(branch.values for branch in exact.branches))
@@ -130,6 +132,17 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
         None, None, None, convex, None, (), cautions, 0.0,
     )  # fmt: skip
     return _with_rest(found, problem, drawings, started)
+
+
+def _worth(exact: OneAxisSizing, branches: tuple[SizedBest, ...]) -> str:
+    """What the first branch that meets the brief is worth, in words."""
+    if not branches:
+        return "global: proven that no design within the bounds meets the limits"
+    if not branches[0].assessment.meets:
+        return f"best of the branches the assessor accepts; nothing is better than {branches[0].objective:.6g} (proven)"
+    if exact.gap > GAP * max(abs(branches[0].objective), 1e-12):
+        return f"within {exact.gap:.2g} of the global best (proven)"
+    return "global: proven best of all feasible branches"
 
 
 def _best_two(study: Study, points: tuple[Floats, ...]) -> tuple[Floats, ...]:
