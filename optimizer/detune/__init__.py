@@ -35,7 +35,7 @@ _HOME = {
     "SolveError": "detune.ground.errors",
 }
 
-__all__ = list(_HOME)  # noqa: PLE0604
+__all__ = list(_HOME)
 __version__ = "0.1.0"
 
 

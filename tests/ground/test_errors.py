@@ -3,6 +3,7 @@
 import pickle
 
 import pytest
+
 from detune.ground.errors import BriefError, DetuneError, Fault, SolveError, nearest_name
 
 MASS = Fault("studies/x.toml", 12, "machine.mass", "640", 'a mass with its unit, for example "640 kg"')

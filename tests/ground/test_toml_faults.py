@@ -3,10 +3,11 @@
 from pathlib import Path
 
 import pytest
-from detune.ground.errors import BriefError, Fault
-from detune.ground.toml_lines import load
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
+from detune.ground.errors import BriefError, Fault
+from detune.ground.toml_lines import load
 
 # text, line, where (beginning), words of what is expected
 BROKEN = [

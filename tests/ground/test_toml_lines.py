@@ -3,10 +3,11 @@
 from pathlib import Path
 
 import pytest
-from detune.ground.toml_lines import Positions, dotted, load
-from detune.ground.toml_positions import KeyPath, positions_of
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
+from detune.ground.toml_lines import Positions, dotted, load
+from detune.ground.toml_positions import KeyPath, positions_of
 
 TRICKY = r'''# a comment with [brackets] and key = "value"
 title = "a # that is no comment [nor a table]"

@@ -7,9 +7,10 @@ from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
-import detune.ground
 import pint
 import pytest
+
+import detune.ground
 from detune.ground.unit_table import UnitTextError, known_units, measure_of
 
 LIST = Path(detune.ground.__path__[0]) / "units.txt"

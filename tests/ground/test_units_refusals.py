@@ -3,6 +3,7 @@
 import pickle
 
 import pytest
+
 from detune.ground.units import KINDS, UnitError, parse, parse_column
 
 REFUSALS = [

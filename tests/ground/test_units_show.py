@@ -3,9 +3,10 @@
 import math
 
 import pytest
-from detune.ground.units import KINDS, UnitError, convert, parse, parse_column, show
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
+from detune.ground.units import KINDS, UnitError, convert, parse, parse_column, show
 
 SHOWN = [
     (0.012, "length", "12 mm"),

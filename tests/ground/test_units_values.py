@@ -7,6 +7,7 @@ Sources: "SP 811" is NIST Special Publication 811 (2008), appendix B; "exact" is
 import math
 
 import pytest
+
 from detune.ground.units import KINDS, STANDARD_GRAVITY, convert, parse, parse_column
 
 SEVEN_DIGITS = 5e-7

@@ -164,7 +164,7 @@ def test_clopper_pearson():
 
 def test_yield_is_the_binomial_share():
     """Sag is inverse to the lot's factor alone when one lot carries everything: its share is the distribution's."""
-    brief, mounts = machines.one_axis_scatter() if hasattr(machines, "one_axis_scatter") else (None, None)
+    brief, _mounts = machines.one_axis_scatter() if hasattr(machines, "one_axis_scatter") else (None, None)
     if brief is None:
         problem = problem_of(8, {"stiffness": PartScatter(lot=0.2), "damping": PartScatter(lot=0.0)})
         stated = problem.brief.model_copy(
@@ -222,7 +222,7 @@ def test_lognormal_points_have_the_stated_spread():
 def test_base_motion_rows_equal_the_assessor():
     """Nominal point, moved floor under flexible and rigid floors: the rows' worst is the assessor's value."""
     for flexible in (True, False):
-        brief, mounts = machines.random_machine(11, flexible_floor=flexible)
+        _brief, _mounts = machines.random_machine(11, flexible_floor=flexible)
         moved = BaseMotion(
             name="floor", frequency=(8.0, 8.0), direction=(0.3, 0.2, 1.0), quantity="displacement", amplitude=1e-4
         ) if "quantity" in BaseMotion.model_fields else None

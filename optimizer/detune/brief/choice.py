@@ -31,8 +31,9 @@ LARGER_IS_BETTER: dict[str, bool] = {
 class CatalogSource(Statement):
     """A parts list. `file` is taken relative to the study file.
 
-    `sheet` names the sheet of a workbook that has several. `headers` maps our column names to the supplier's, `units` gives the unit of a mapped column,
-    `constants` gives one value (with its unit) for a column the list does not have.
+    `sheet` names the sheet of a workbook that has several. `headers` maps our column names to the
+    supplier's, `units` gives the unit of a mapped column, `constants` gives one value (with its unit) for a
+    column the list does not have.
     """
 
     name: Name

@@ -14,8 +14,9 @@ class Condition(Statement):
     excites every frequency of its range. `steady` is false where the machine only passes through
     (run-up, coast-down): such a condition is judged by response and takes no part in separation.
 
-    `state` names the state of the machine it is judged in; left out, as installed. `run_up` and `coast_down` give, for a shaft, the time in which it passes its whole range at a constant
-    rate; both may be given, and the worse counts. Left out, the steady state at every speed is taken.
+    `state` names the state of the machine it is judged in; left out, as installed. `run_up` and `coast_down`
+    give, for a shaft, the time in which it passes its whole range at a constant rate; both may be given, and
+    the worse counts. Left out, the steady state at every speed is taken.
     """
 
     name: Name

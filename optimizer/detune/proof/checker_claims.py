@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from fractions import Fraction
 from typing import Any
 
@@ -295,7 +296,7 @@ def check_selection(entries: list[dict[str, Any]]) -> list[str]:
             if any(int(rule["excluded"]) < 0 for rule in data["rules"]):
                 faults.append("a rule excluded a negative number of designs")
     costs = [number(candidate["cost"]) for candidate in candidates]
-    if any(b < a for a, b in zip(costs, costs[1:], strict=False)):
+    if any(b < a for a, b in itertools.pairwise(costs)):
         faults.append("the candidates are not in order of cost")
     for candidate in candidates:
         own = [

@@ -5,6 +5,7 @@ import shutil
 from pathlib import Path
 
 from detune.ground.errors import DetuneError
+from detune.proof.record import record_text
 from detune.report.csv_files import (
     designs_csv,
     front_csv,
@@ -18,7 +19,6 @@ from detune.report.figures import draw_all
 from detune.report.page import page_text
 from detune.report.response_data import response_curves
 from detune.report.strict_json import json_text
-from detune.proof.record import record_text
 from detune.solvers.robust_record import proof_record
 from detune.study.run import Result
 

@@ -17,7 +17,7 @@ def condition_rows(
     """Return the rows of a condition under its own forcing: tones, noise, records and passages."""
     acting = [forcing for forcing in brief.forcing if applies(forcing.conditions, condition.name)]
     families = condition_families(brief, model, condition)
-    passed = [name for name in (*condition.run_up, *condition.coast_down)]
+    passed = (*condition.run_up, *condition.coast_down)
     return Rows(
         pairs=pairs,
         families=tuple(family for family in families if family.speed not in passed),

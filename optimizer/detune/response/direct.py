@@ -273,7 +273,7 @@ class DirectMachine:
 
     @cached_property
     def _weight_alone(self) -> Floats:
-        """Static load (N,): gravity on bodies and ballast, and the steady loads. The floor's own weight is not in it."""
+        """Static load (N,): gravity on bodies and ballast, and the steady loads; not the floor's own weight."""
         load = np.zeros(len(self.free))
         down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
         for body in self.brief.bodies:
