@@ -103,7 +103,7 @@ def test_the_parts_of_each_judged_value_add_up_to_it(sorter: Result) -> None:
         assert part.random_rms is not None and part.extreme is not None
         low, high = (2.0, 4.0) if part.duration == 5.0 else (3.0, 5.5)
         assert low < part.extreme / part.random_rms < high
-    braking = next(r for r in rows if r.row.kind == "gap" and "x, from free" in r.row.quantity)
+    braking = next(r for r in rows if r.row.kind == "gap" and "towards x to" in r.row.quantity)
     (part,) = contributions([braking])
     assert part.at_rest > 0.5e-3
 

@@ -52,7 +52,9 @@ def test_every_method_gives_the_same_answer_and_a_result_folder(
     assert proof["method"] == method and proof["accounted"] and proof["designs"] == 50
 
 
-def test_a_method_that_cannot_treat_the_study_says_why(path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+def test_a_method_that_cannot_treat_the_study_says_why(
+    path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
     text = path.read_text().replace('trade = ["cost", "separation"]', 'trade = ["added-mass", "cost"]')
     path.write_text(text)
     for method, words in (("bounded search", "fronts of cost"), ("second opinion", "the least cost")):

@@ -2,7 +2,7 @@
 
 from collections.abc import Callable, Iterable
 
-from detune.brief.brief import Brief, applies
+from detune.brief.brief import Brief, applies, body_of
 from detune.brief.condition import Condition
 from detune.ground.units import show
 from detune.parts.kinds.mount import Mount
@@ -13,7 +13,7 @@ NAMED = 4
 def problem_notes(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> tuple[str, ...]:
     """Return what is taken in another form than stated, for any part that some group may take."""
     mounts = tuple(dict.fromkeys(mount for group in candidates for mount in group))
-    return (*_in_time(brief, mounts), *_laws(brief, mounts), *_structure(brief))
+    return (*_in_time(brief, mounts), *_laws(brief, mounts), *_structure(brief), *_guided(brief))
 
 
 def _structure(brief: Brief) -> list[str]:
@@ -25,6 +25,21 @@ def _structure(brief: Brief) -> list[str]:
         f"{structure.name}: {structure.modes.left_out} modes above {highest} are"
         f" left out ({kept} are kept); at rest and in vibration it yields by the modes kept alone"
     ]
+
+
+def _guided(brief: Brief) -> list[str]:
+    """A direction in which a body is not free is held against the ground, whatever else the body stands on."""
+    bodies = {body.name: body for body in brief.bodies}
+    notes = []
+    for station in brief.stations:
+        own, other = bodies[body_of(brief, station.on)], bodies.get(station.to)
+        held = [] if other is None else [f for f in other.free if f not in own.free]
+        if other is not None and held:
+            notes.append(
+                f"{own.name}: along {', '.join(held)} it is held by the ground and not by {other.name}, whose motion"
+                f" there the parts between them therefore resist; let it be free there if it goes along with {other.name}"
+            )
+    return list(dict.fromkeys(notes))
 
 
 def _in_time(brief: Brief, mounts: tuple[Mount, ...]) -> list[str]:

@@ -6,7 +6,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import DesignAllowable, HarmonicAllowable, ModeAllowable, StaticAllowable
+from detune.brief.allowable import (
+    DesignAllowable,
+    HarmonicAllowable,
+    ModeAllowable,
+    Stability,
+    StaticAllowable,
+)
 from detune.brief.allowable.separation import least_separation
 from detune.brief.allowable.views import DesignView
 from detune.problem.build import BandRequirements, HarmonicRequirements, Problem
@@ -44,8 +50,13 @@ def stages(problem: Problem) -> tuple[Stage, ...]:
     result: list[Stage] = []
     if problem.totals:
         result.append(Stage("totals", problem.totals, lambda d: _totals(problem, d), False, 100_000))
-    if problem.statics:
-        result.append(Stage("statics", problem.statics, lambda d: _statics(problem, d), False, 20_000))
+    # Toppling takes an eigenvalue problem a design, so it waits until the loads have been looked at.
+    standing = tuple(r for r in problem.statics if isinstance(r.allowable, Stability))
+    loads = tuple(r for r in problem.statics if r not in standing)
+    if loads:
+        result.append(Stage("statics", loads, lambda d: _statics(problem, d, loads), False, 20_000))
+    if standing:
+        result.append(Stage("stability", standing, lambda d: _statics(problem, d, standing), False, 20_000))
     if problem.modes:
         result.append(Stage("separation", problem.modes, lambda d: _modes(problem, d), False, 20_000))
     # Where parts follow the amplitude, a few speeds or a part of the forcing bound nothing.
@@ -88,13 +99,13 @@ def _totals(problem: Problem, designs: Designs) -> Floats:
     return np.stack(rows)
 
 
-def _statics(problem: Problem, designs: Designs) -> Floats:
+def _statics(problem: Problem, designs: Designs, requirements: tuple[Requirement, ...]) -> Floats:
     first = problem.states[0].reading
     views = {
         each.state: static_batch(each.model, designs) for each in problem.states if each.reading == first
     }
     rows = []
-    for requirement in problem.statics:
+    for requirement in requirements:
         assert isinstance(requirement.allowable, StaticAllowable)
         view = views[requirement.state]
         lower, upper = requirement.allowable.bounds(view, requirement.place)

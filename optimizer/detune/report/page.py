@@ -222,9 +222,15 @@ def _in_time_and_noise(brief: Brief, subject: Assessment, plots: dict[str, Drawn
     rows = tightest_of_each(forced_rows(brief, subject))
     if not rows:
         return []
-    table = contributions_table(contributions(rows))
+    present = (
+        ("noise", any(row.noises for row in rows)),
+        ("shocks and records", any(row.transients for row in rows)),
+        ("run-ups", any(row.condition.run_up or row.condition.coast_down for row in rows)),
+    )
+    words = ", ".join(word for word, acts in present if acts)
     shown = (*_only(plots, "spectral-density"), *_only(plots, "shock"))
-    return [Section("sources", f"Noise, shocks and run-ups{of}", plots=shown, tables=(table,))]
+    table = contributions_table(contributions(rows))
+    return [Section("sources", f"{words[0].upper()}{words[1:]}{of}", plots=shown, tables=(table,))]
 
 
 def _only(plots: dict[str, Drawn], name: str) -> tuple[Drawn, ...]:

@@ -112,9 +112,7 @@ def _stock(brief: Brief, assessment: Assessment) -> list[str]:
 
 def _height(assessment: Assessment) -> list[str]:
     heights = [
-        row.installed_height
-        for row in assessment.stations
-        if row.levels and row.installed_height is not None
+        row.installed_height for row in assessment.stations if row.levels and row.installed_height is not None
     ]
     if len(heights) < 2:
         return []

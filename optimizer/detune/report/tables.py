@@ -20,6 +20,8 @@ from detune.response.assessment import Assessment, ModeRow, StationRow
 
 DIRECTIONS = ("x", "y", "z", "about x", "about y", "about z")
 SMALL_SHARE = 0.005
+# A lateral load below this share of the axial one is what rounding leaves of none.
+ROUNDING = 1e-9
 
 
 @dataclass(frozen=True)
@@ -115,7 +117,7 @@ def _station(row: StationRow, highest: float | None) -> tuple[str, ...]:
         *(f"{1e3 * value:.0f} mm" for value in row.position),
         show(row.axial_load, "force"),
         f"{number(row.load_min)} to {show(row.load_max, 'force')}",
-        show(row.lateral_load, "force", 2),
+        show(row.lateral_load if row.lateral_load > ROUNDING * abs(row.axial_load) else 0.0, "force", 2),
         length(row.compression),
         length(row.free_height),
         length(row.installed_height),
