@@ -68,7 +68,9 @@ def _parser() -> argparse.ArgumentParser:
     )
     size.set_defaults(verb=_size)
     verify = verbs.add_parser("verify", help="check a proof record again, by code of its own")
-    verify.add_argument("record", metavar="RECORD", help="proof-record.json of a result folder, or the folder")
+    verify.add_argument(
+        "record", metavar="RECORD", help="proof-record.json of a result folder, or the folder"
+    )
     verify.set_defaults(verb=_verify)
     schema = verbs.add_parser("schema", help="print the JSON Schema of a study file, for editors")
     schema.set_defaults(verb=_schema)

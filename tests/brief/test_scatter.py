@@ -24,9 +24,9 @@ def test_lot_and_part_together():
         ({"mass": "-5 %"}, "zero or more"),
         ({"mass": ["1 %", "5 %"]}, "contains the listed value"),
         ({"stifness": {"lot": "5 %"}}, "Extra inputs"),
-        ({"stiffness": {}}, "by \"lot\""),
+        ({"stiffness": {}}, 'by "lot"'),
         ({"damping": {"lot": "listed"}}, "a tolerance of stiffness alone"),
-        ({"samples": 100}, "no \"samples\""),
+        ({"samples": 100}, 'no "samples"'),
         ({"judge": "distribution"}, "lognormal"),
         ({"judge": "distribution", "distribution": "uniform", "samples": 3}, "whole number of samples"),
         ({"centre": ["-1 mm", "0 mm", "0 mm"]}, "zero or more"),
@@ -43,6 +43,12 @@ def test_refusals(keys, words):
 
 def test_what_is_filled_in_is_told():
     notes = " | ".join(read().assumed())
-    assert "listed tolerance, by lot" in notes and "30 % by lot" in notes and "mass, centre, forcing exactly" in notes
-    told = read(stiffness={"lot": "1 %"}, damping={"lot": "0 %"}, mass="1 %", forcing="1 %", centre=["0 mm"] * 3)
+    assert (
+        "listed tolerance, by lot" in notes
+        and "30 % by lot" in notes
+        and "mass, centre, forcing exactly" in notes
+    )
+    told = read(
+        stiffness={"lot": "1 %"}, damping={"lot": "0 %"}, mass="1 %", forcing="1 %", centre=["0 mm"] * 3
+    )
     assert told.assumed() == ()

@@ -71,7 +71,9 @@ def machine(seed, loss=0.1):
         squares=np.array([False, True, False, False]),
         limit=np.ones(4),
         sets=(
-            LoadSet(1.0, np.array([0.0, 2.0]), complexes[0] * [[1.0], [1e-3]], bases, np.zeros((2, 4, 3), complex)),
+            LoadSet(
+                1.0, np.array([0.0, 2.0]), complexes[0] * [[1.0], [1e-3]], bases, np.zeros((2, 4, 3), complex)
+            ),
             LoadSet(2.0, np.array([2.0]), complexes[1, :1] * 1e-3, bases[1:], np.full((1, 4, 3), 1e-9 + 0j)),
         ),
         speed=(4.0, 40.0),
@@ -169,7 +171,9 @@ def test_never_below_ten_thousand_samples_and_a_local_search(seed):
     for row in range(limits.count):
         start = (points[values[:, row].argmax()] - low) / (high - low)
         best = minimize(
-            lambda x, row=row: -values_at(system, limits, (low + (high - low) * np.clip(x, 0, 1))[None])[0, row],
+            lambda x, row=row: (
+                -values_at(system, limits, (low + (high - low) * np.clip(x, 0, 1))[None])[0, row]
+            ),
             start,
             method="Powell",
             bounds=[(0, 1)] * len(low),

@@ -34,7 +34,12 @@ def study():
     brief, _ = machines.random_machine(1)
     parts = [
         machines.mount(
-            f"p{i}", 1.2e5 * 1.35**i, lateral=0.8e5 * 1.3**i, static=0.8, loss=0.2, cost=20.0 + 3 * (i % 2) - 2 * i
+            f"p{i}",
+            1.2e5 * 1.35**i,
+            lateral=0.8e5 * 1.3**i,
+            static=0.8,
+            loss=0.2,
+            cost=20.0 + 3 * (i % 2) - 2 * i,
         )
         for i in range(3)
     ]
@@ -174,7 +179,16 @@ def test_forged_records_are_rejected(entries):
     def better_optimum(e):
         e[-1]["data"]["winner"] = 0
 
-    for change in (lower_limit, cut_tree, wider, other_status, drop_entry, miscount, no_witness, better_optimum):
+    for change in (
+        lower_limit,
+        cut_tree,
+        wider,
+        other_status,
+        drop_entry,
+        miscount,
+        no_witness,
+        better_optimum,
+    ):
         assert not forge(entries, change).confirmed, change.__name__
     assert forge(entries, lambda e: None).confirmed
 

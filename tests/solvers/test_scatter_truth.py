@@ -149,7 +149,9 @@ def test_an_undecided_design_is_never_called_proven():
     problem = problem_of(7, BY_BOTH, scale=1e-2)
     for boxes in (1, 5):
         verdict = certify(problem, np.array([0, 0]), 0, max_boxes=boxes, stop_at_violation=False)
-        open_rows = [row for row in verdict.rows if row.guaranteed_margin is not None and row.guaranteed_margin < 0.0]
+        open_rows = [
+            row for row in verdict.rows if row.guaranteed_margin is not None and row.guaranteed_margin < 0.0
+        ]
         assert all(row.status != "proven" for row in open_rows)
         assert verdict.status != "proven" or not open_rows
 
@@ -173,10 +175,17 @@ def test_yield_is_the_binomial_share():
     )
     mount = problem.candidates[0][0]
     stated = problem.brief.model_copy(
-        update={"scatter": scatter, "floor": machines.RIGID, "connections": (), "forcing": problem.brief.forcing[1:]}
+        update={
+            "scatter": scatter,
+            "floor": machines.RIGID,
+            "connections": (),
+            "forcing": problem.brief.forcing[1:],
+        }
     )
     far = build(stated, {"list": machines.catalog(mount)})
-    sag = next(row.value for row in assess(far.brief, far.design(_first(far), 0)).margins if row.kind == "sag")
+    sag = next(
+        row.value for row in assess(far.brief, far.design(_first(far), 0)).margins if row.kind == "sag"
+    )
     # A limit of sag / 0.9 is kept where the factor is 0.9 or more: three quarters of -20 % to +20 %.
     allowables = tuple(
         a.model_copy(update={"limit": sag / 0.9}) if isinstance(a, Sag) else a for a in stated.allowables

@@ -95,7 +95,9 @@ def _structure(brief: Brief) -> list[Finding]:
     if brief.structure is None:
         return []
     findings = [
-        Finding(("body", index, "name"), body.name, 'a name other than "structure", which stands for its modes')
+        Finding(
+            ("body", index, "name"), body.name, 'a name other than "structure", which stands for its modes'
+        )
         for index, body in enumerate(brief.bodies)
         if body.name == "structure"
     ]
@@ -103,7 +105,9 @@ def _structure(brief: Brief) -> list[Finding]:
     for index, node in enumerate(brief.structure.nodes):
         if node.name in taken:
             path: Path = ("structure", "nodes", index, "name")
-            findings.append(Finding(path, node.name, "a name that no body and no other node has", depends=("body",)))
+            findings.append(
+                Finding(path, node.name, "a name that no body and no other node has", depends=("body",))
+            )
         taken.append(node.name)
     expected = "a ratio of forces beside a [structure]: how the supports that hold it move is not stated"
     for index, allowable in enumerate(brief.allowables):

@@ -181,9 +181,7 @@ def _unknown_tables(data: Mapping[str, Any]) -> Iterator[Finding]:
             yield Finding((name,), "", f"{table}, which every study states")
 
 
-def _read_many(
-    name: str, raw: Any, findings: list[Finding], folder: Path
-) -> Iterator[tuple[int, Statement]]:
+def _read_many(name: str, raw: Any, findings: list[Finding], folder: Path) -> Iterator[tuple[int, Statement]]:
     if not isinstance(raw, list):
         findings.append(Finding((name,), describe(raw), f"a list of tables, each opened by [[{name}]]"))
         return

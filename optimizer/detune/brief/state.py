@@ -40,7 +40,8 @@ class State(Statement):
         changed = changed or self.temperature != 20.0
         if not changed:
             raise refuse(
-                self.name, "a state that changes something: lost, stiffness_factor, creep, temperature or packing"
+                self.name,
+                "a state that changes something: lost, stiffness_factor, creep, temperature or packing",
             )
         return self
 

@@ -181,9 +181,7 @@ def between(spectrum: PowerSpectralDensity, low: float, high: float) -> PowerSpe
     inside = (points > low) & (points < high)
     # At a step the first end belongs to what follows it, the last to what comes before.
     ends = density_at(spectrum, low), density_at(spectrum, low + (high - low) * (1.0 - 1e-12))
-    return PowerSpectralDensity(
-        np.r_[low, points[inside], high], np.r_[ends[0], density[inside], ends[1]]
-    )
+    return PowerSpectralDensity(np.r_[low, points[inside], high], np.r_[ends[0], density[inside], ends[1]])
 
 
 def band_averaged(spectrum: PowerSpectralDensity, edges: ArrayLike) -> PowerSpectralDensity:

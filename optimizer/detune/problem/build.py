@@ -164,7 +164,10 @@ def with_parts(brief: Brief, mounts: tuple[tuple[Mount, ...], ...]) -> Problem:
 
 
 def _problem(
-    brief: Brief, mounts: tuple[tuple[Mount, ...], ...], dropped: tuple[Dropped, ...], catalog_notes: tuple[str, ...]
+    brief: Brief,
+    mounts: tuple[tuple[Mount, ...], ...],
+    dropped: tuple[Dropped, ...],
+    catalog_notes: tuple[str, ...],
 ) -> Problem:
     states = _state_models(brief, mounts)
     allowables, demanded_notes = demanded(brief)
@@ -288,7 +291,8 @@ def _driving(brief: Brief, condition: Condition, each: StateModel) -> Rows | Non
 
 def _group(brief: Brief, rows: Rows, condition: Condition, each: StateModel) -> HarmonicRequirements:
     requirements = tuple(
-        Requirement(allowable, condition.name, place, each.state, each.reading) for allowable, place in rows.pairs
+        Requirement(allowable, condition.name, place, each.state, each.reading)
+        for allowable, place in rows.pairs
     )
     return HarmonicRequirements(rows, requirements, each.model, _driving(brief, condition, each))
 

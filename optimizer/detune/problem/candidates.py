@@ -109,7 +109,11 @@ def _from_catalog(
         place = (*path, "where", name)
         column = column_named(known, name)
         if column is None:
-            findings.append(Finding(place, name, "a column of the catalog", nearest_name(name, [each.name for each in known])))
+            findings.append(
+                Finding(
+                    place, name, "a column of the catalog", nearest_name(name, [each.name for each in known])
+                )
+            )
             sound = False
         elif isinstance(wanted, Window):
             window = _window(place, wanted, column.kind, findings)

@@ -124,7 +124,11 @@ def proof_lines(result: Result) -> list[str]:
 
 def _which(result: Result) -> str:
     """Return what is the best at listed values: the design shown, or another one than the proven design shown."""
-    if result.robust_answer is None or result.answer is None or result.robust_answer.design == result.answer.design:
+    if (
+        result.robust_answer is None
+        or result.answer is None
+        or result.robust_answer.design == result.answer.design
+    ):
         return "this is"
     return f"{design_text(result.answer.design)} (cost {objective_text(result.answer, 'cost')}) is"
 

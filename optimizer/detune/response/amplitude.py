@@ -18,7 +18,7 @@ from detune.physics import envelope
 from detune.physics.fixed_point import fixed_points
 from detune.response.assemble import Dynamic, at_amplitude
 from detune.response.designs import Designs
-from detune.response.evaluate import TWO_PI, UNDAMPED, Amplitudes, Rows, family_amplitude, response_values
+from detune.response.evaluate import TWO_PI, Amplitudes, Rows, family_amplitude, response_values
 from detune.response.loads import Family
 from detune.response.model import Model
 from detune.response.modes import mode_batch
@@ -204,9 +204,8 @@ def _peaks(model: Model, dynamic: Dynamic, family: Family) -> tuple[Floats, Floa
     stations, count = len(model.stations), dynamic.mass.shape[0]
     looks = []
     for amplitude in np.geomspace(*_amplitude_range(model), LOOKS):
-        modal = mode_batch(at_amplitude(dynamic, np.full((stations, count), amplitude)))
-        loss = np.maximum(modal.loss_factor, UNDAMPED)
-        looks.append(envelope.centres_of_orders(modal.frequency, loss, family.orders))
+        there = at_amplitude(dynamic, np.full((stations, count), amplitude))
+        looks.append(envelope.centres_of_poles(sharp_poles(there, mode_batch(there)), family.orders))
     return np.concatenate([c for c, _ in looks], axis=1), np.concatenate([w for _, w in looks], axis=1)
 
 

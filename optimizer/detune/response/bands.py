@@ -17,7 +17,7 @@ from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
 from detune.response.loads import Family, condition_families
 from detune.response.model import Model
-from detune.response.modes import ModeBatch
+from detune.response.modes import ModeBatch, sharp_poles
 from detune.response.random import WITHOUT_BOUND, NoiseLoad, noise_load
 from detune.response.views import ToneBatch
 
@@ -27,7 +27,6 @@ Integers = NDArray[np.int64]
 Pairs = tuple[tuple[BandAllowable, str], ...]
 Entry = tuple[int, int]
 TWO_PI = 2.0 * np.pi
-UNDAMPED = 1e-9
 
 
 @dataclass(frozen=True)
@@ -98,8 +97,7 @@ def _family_bands(
 ) -> dict[Entry, Floats]:
     """Return the largest rms (D,) of each row and band over the speeds of a family."""
     largest: dict[Entry, Floats] = {}
-    loss = np.maximum(modal.loss_factor, UNDAMPED)
-    centres, widths = envelope.centres_of_orders(modal.frequency, loss, family.orders)
+    centres, widths = envelope.centres_of_poles(sharp_poles(dynamic, modal), family.orders)
     for low, high in speed_pieces(family.low, family.high, family.orders, limited_bands(pairs)):
         middle = np.sqrt(low * high)
         band_of = {order: int(band_index(order * middle)) for order in family.orders}
@@ -172,8 +170,8 @@ def _noise_bands(
     model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, pairs: Pairs, noise: NoiseLoad
 ) -> dict[Entry, Floats]:
     """Return the mean square (D,) of each row and band under a noise."""
-    centre = TWO_PI * modal.frequency
-    width = np.maximum(0.5 * modal.loss_factor, UNDAMPED) * centre
+    poles = sharp_poles(dynamic, modal)
+    centre, width = poles.imag, -poles.real
     found: dict[Entry, Floats] = {}
     for band in limited_bands(pairs).tolist():
         low, high = (float(edge) for edge in band_edges(band))

@@ -12,7 +12,7 @@ from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
 from detune.response.loads import Family
 from detune.response.model import Model
-from detune.response.modes import ModeBatch
+from detune.response.modes import ModeBatch, sharp_poles
 from detune.response.random import NoiseLoad, noise_values
 from detune.response.swept import Passage, swept_values
 from detune.response.transient import TransientLoad, transient_values
@@ -21,7 +21,6 @@ from detune.response.views import ToneBatch
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 TWO_PI = 2.0 * np.pi
-UNDAMPED = 1e-9
 
 
 @dataclass(frozen=True)
@@ -99,10 +98,9 @@ def suprema(model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, 
     value = np.zeros((len(rows.pairs), designs.count))
     frequency = np.full_like(value, np.nan)
     largest = np.full_like(value, -np.inf)
+    poles = sharp_poles(dynamic, modal)
     for family in rows.families:
-        # An undamped mode has no width of its own; one of rounding size keeps the search going.
-        loss = np.maximum(modal.loss_factor, UNDAMPED)
-        centres, widths = envelope.centres_of_orders(modal.frequency, loss, family.orders)
+        centres, widths = envelope.centres_of_poles(poles, family.orders)
 
         def amplitude(speed: Floats, family: Family = family) -> Floats:
             return family_amplitude(model, designs, dynamic, rows, family, speed)

@@ -12,6 +12,7 @@ from detune.response.assemble import Dynamic
 
 Floats = NDArray[np.float64]
 ITERATIONS = 400
+UNDAMPED = 1e-9
 
 
 @dataclass(frozen=True)
@@ -72,6 +73,22 @@ def _iterated(dynamic: Dynamic, frequency: Floats, shapes: Floats) -> ModeBatch:
         )
         loss[:, mode] = each[:, mode]
     return ModeBatch(frequency, _orthogonal(dynamic.mass, shapes), loss)
+
+
+def sharp_poles(dynamic: Dynamic, modal: ModeBatch) -> NDArray[np.complex128]:
+    """Return damped poles (D, n) in rad/s round which responses peak, none without a width.
+
+    Strong dashpots lock bodies together and move peaks far from every undamped frequency, so the poles are
+    those of the damped system; where stiffness depends on frequency, each mode's own.
+    """
+    if dynamic.parts.with_frequency or not dynamic.viscous.any():
+        omega = 2.0 * np.pi * modal.frequency
+        poles = omega * (1j - 0.5 * np.minimum(modal.loss_factor, 2.0))
+    else:
+        poles = modes.damped_poles(dynamic.mass, dynamic.viscous, dynamic.hysteretic, dynamic.stiffness)
+    # An undamped mode has no width of its own; one of rounding size keeps the search going.
+    width = np.maximum(-poles.real, 0.5 * UNDAMPED * np.maximum(np.abs(poles), 1e-9))
+    return np.asarray(1j * poles.imag - width)
 
 
 def _orthogonal(mass: Floats, shapes: Floats) -> Floats:

@@ -14,7 +14,7 @@ from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
 from detune.response.loads import Load
 from detune.response.model import Model
-from detune.response.modes import ModeBatch
+from detune.response.modes import ModeBatch, sharp_poles
 from detune.response.views import ToneBatch
 
 Floats = NDArray[np.float64]
@@ -87,8 +87,8 @@ def noise_variances(
         moved = np.stack(rows)
         return np.concatenate([moved, 1j * omega * moved])
 
-    centre = TWO_PI * modal.frequency
-    width = np.maximum(0.5 * modal.loss_factor, 1e-9) * centre
+    poles = sharp_poles(dynamic, modal)
+    centre, width = poles.imag, -poles.real
     try:
         parts = variance(transfer, each.noise.spectrum, centre, width)
     except QuadratureNotConverged:

@@ -14,6 +14,7 @@ from detune.brief.allowable import Separation, Stability
 from detune.problem.build import Problem
 from detune.problem.requirement import Requirement
 from detune.proof.combined_bisect import RowsDecision, Sampler, decide_rows, sampled
+from detune.proof.scatter_data import values_at
 from detune.proof.static_rows import StaticRowsDecision, decide_static_rows
 from detune.response.designs import total_cost
 from detune.response.margin import window_margin
@@ -345,6 +346,22 @@ class _Response:
             found.append(ResponseProof(name, labels, self.group.system, samples.limits, decision))
         return found
 
+    def _at_one_point(self, index: int, point: Floats) -> tuple[float, float, float, tuple[float, ...]]:
+        """By how much a row breaks its limit at one point of the scatter, every family at its worst speed; the value."""
+        values = []
+        for samples, decision in zip(self.samples, self.decisions, strict=True):
+            low, high = samples.limits.speed
+            speeds = np.append(np.linspace(low, high, 65), np.clip(decision.speed[index], low, high))
+            points = np.concatenate(
+                [np.tile(point, (len(speeds), 1)), ((2.0 * np.pi * speeds) ** 2)[:, None]], axis=1
+            )
+            values.append(values_at(self.group.system, samples.limits, points)[:, index].max())
+        every = np.zeros((len(values), len(self.limit)))
+        every[:, index] = values
+        adds, limit = (float(v[0, index]) for v in self.made.static_parts(self.group, point[None]))
+        value = float(self._together(every)[index]) + adds
+        return value - limit, value, limit, tuple(point.tolist())
+
     def verdict(self, index: int) -> _Found:
         """What is known of one row. Violated only where one point of the scatter breaks the limit by itself."""
         lower = np.array([decision.lower for decision in self.decisions])
@@ -355,11 +372,16 @@ class _Response:
         statuses = {decision.status[index] for decision in self.decisions}
         status: Status = "proven" if statuses == {"proven"} else "undecided"
         adds, limit = (v[0, index] for v in self.made.static_parts(self.group, np.array(point)[None]))
-        # Families that are worst at different points of the scatter are no witness together; the greatest alone is.
-        alone = float(lower[:, index].max()) if len(lower) > 1 else worst
-        if alone + adds > limit:
-            return _Found(
-                "violated", alone + adds, bound + self.adds[index], limit, point, biggest.speed[index]
+        if len(self.decisions) > 1 and not self.group.largest:
+            # Families that are worst at different points of the scatter are no witness: they have to be at one.
+            found = max(
+                (self._at_one_point(index, np.array(d.worst[index])) for d in self.decisions),
+                key=lambda f: f[0],
             )
+            broken, value, limit, point = found
+        else:
+            broken, value = worst + adds - limit, worst + adds
+        if broken > 0.0:
+            return _Found("violated", value, bound + self.adds[index], limit, point, biggest.speed[index])
         stated = float(self.limit[index])
         return _Found(status, worst + adds, bound + self.adds[index], stated, point, biggest.speed[index])

@@ -191,7 +191,7 @@ def stability_worst(
 
 @dataclass(frozen=True)
 class SeparationFound:
-    """Worst separation evaluated and guaranteed over the scatter, the mode's frequency (Hz) and the corner (words) where it occurs."""
+    """Worst separation evaluated and guaranteed, the mode's frequency (Hz) and the corner in words where it occurs."""
 
     worst: float
     guaranteed: float

@@ -1,9 +1,9 @@
 """Yield: the share of machines that meet the brief when parts, machine and forcing scatter by a distribution.
 
-Points come from a scrambled Sobol sequence (scipy.stats.qmc); every requirement the bounds know is evaluated exactly at
-a grid of speeds with the natural frequencies in it, with a parabola through the greatest samples, the others by the assessor at each sample. The
-interval of confidence is that of Clopper and Pearson (Biometrika 26, 1934) for independent trials, which is on the
-safe side for a Sobol sequence as a rule, not by proof.
+Points come from a scrambled Sobol sequence (scipy.stats.qmc). Every requirement the bounds know is evaluated exactly
+at a grid of speeds with the natural frequencies in it and a parabola through the greatest samples, the others by the
+assessor at each sample. The interval of confidence is that of Clopper and Pearson (Biometrika 26, 1934) for
+independent trials, which is on the safe side for a Sobol sequence as a rule, not by proof.
 """
 
 from dataclasses import dataclass

@@ -72,7 +72,13 @@ def _catalogs(
     for index, source in enumerate(sources):
         try:
             catalogs[source.name] = read_catalog(
-                folder / source.file, source.name, source.kind, source.headers, source.units, source.constants, source.sheet
+                folder / source.file,
+                source.name,
+                source.kind,
+                source.headers,
+                source.units,
+                source.constants,
+                source.sheet,
             )
         except BriefError as error:
             faults += [_told_at_its_name(fault, index, source, study, positions) for fault in error.faults]
@@ -87,14 +93,14 @@ def _told_at_its_name(
         return fault
     path = ("catalog", index, fault.where)
     found = source.file if fault.where == "file" else source.kind
-    expected = f"{fault.expected} ({fault.found})" if fault.where == "file" and fault.found else fault.expected
+    expected = (
+        f"{fault.expected} ({fault.found})" if fault.where == "file" and fault.found else fault.expected
+    )
     line = None if positions is None else positions.line(path)
     return Fault(study, line, dotted(path), found, expected, fault.nearest)
 
 
-def _hashes(
-    brief: Brief, catalogs: Mapping[str, Catalog], study: Path | None
-) -> tuple[tuple[str, str], ...]:
+def _hashes(brief: Brief, catalogs: Mapping[str, Catalog], study: Path | None) -> tuple[tuple[str, str], ...]:
     files = [] if study is None else [study]
     for source in brief.catalogs:
         files.append(brief.folder / source.file)

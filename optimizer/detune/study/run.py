@@ -57,7 +57,9 @@ class Result:
 
         Where no design could be proven and some could not be decided either, that is 3 as well.
         """
-        if self.outcome.stopped != "finished" or (self.robust is not None and self.robust.stopped != "finished"):
+        if self.outcome.stopped != "finished" or (
+            self.robust is not None and self.robust.stopped != "finished"
+        ):
             return 3
         if self.robust is not None and self.guaranteed and self.robust.winner is None:
             return 3 if self.robust.undecided or self.robust.sampled else 1
@@ -118,7 +120,9 @@ def _robust_answer(problem: Problem, robust: RobustResult | None) -> Assessment 
     """Return the assessment of the proven design at listed values. Raises SolveError where the assessor refuses it."""
     if robust is None or robust.winner is None:
         return None
-    chosen = Designs(np.array([robust.winner.part], dtype=np.intp), np.array([robust.winner.step], dtype=np.intp))
+    chosen = Designs(
+        np.array([robust.winner.part], dtype=np.intp), np.array([robust.winner.step], dtype=np.intp)
+    )
     assessment = assess(problem.brief, problem.design(chosen, 0))
     if not assessment.meets:
         raise SolveError(
