@@ -21,7 +21,7 @@ from detune.response.designs import Designs
 from detune.response.evaluate import TWO_PI, Amplitudes, Rows, family_amplitude, response_values
 from detune.response.loads import Family
 from detune.response.model import Model
-from detune.response.modes import mode_batch
+from detune.response.modes import mode_batch, sharp_poles
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.intp]
