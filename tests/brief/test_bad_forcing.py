@@ -270,7 +270,10 @@ def test_one_fault_in_its_place(case: Case, tmp_path: Path) -> None:
 GOOD = {
     "density": (NOISE + FILE, PSD + "5,0.01\n50,0.01\n"),
     "step": (NOISE + FILE, PSD + "5,0.01\n50,0.01\n50,0.001\n90,0.001\n"),
-    "velocity density": (NOISE + FILE, "# survey\nfrequency [Hz]\tvelocity_psd [(mm/s)^2/Hz]\n5\t0.01\n\n50\t0.01\n"),
+    "velocity density": (
+        NOISE + FILE,
+        "# survey\nfrequency [Hz]\tvelocity_psd [(mm/s)^2/Hz]\n5\t0.01\n\n50\t0.01\n",
+    ),
     "record": (RECORD, TIME + "0,1\n0.1,2\n0.2,1\n0.3,2\n"),
     "bands": (BANDS + FILE, "frequency [Hz];velocity_rms [um/s]\n8;12\n10;14\n"),
     "lines": (LINES + FILE, "frequency [rpm],acceleration [mg],phase [deg]\n1480,12,0\n2960,14,90\n"),

@@ -113,7 +113,9 @@ def test_a_slow_passage_is_the_steady_state_and_a_fast_one_less() -> None:
     assert both(ways, part, DISPLACEMENT) == pytest.approx(slow, rel=1e-4)
 
 
-@pytest.mark.parametrize("seed", [0, *(pytest.param(seed, marks=pytest.mark.nightly) for seed in range(1, 5))])
+@pytest.mark.parametrize(
+    "seed", [0, *(pytest.param(seed, marks=pytest.mark.nightly) for seed in range(1, 5))]
+)
 @pytest.mark.parametrize("viscous", [False, True])
 def test_six_axes_batch_equals_assessor(seed: int, viscous: bool) -> None:
     brief, mounts = machines.random_machine(seed, viscous=viscous)

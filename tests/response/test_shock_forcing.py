@@ -111,7 +111,9 @@ def test_k2_damped_half_sine(ratio: float, cycles: float, maximum: float) -> Non
 @pytest.mark.parametrize(("cycles", "ratio"), [(0.1, 0.3), (0.8, 0.05), (4.0, 0.0)])
 def test_maxima_beside_the_edges_of_a_pulse(shape: str, cycles: float, ratio: float) -> None:
     # The closed forms on each piece of a pulse (physics.shock), which sample nothing that is simulated here.
-    pulse = {"half-sine": half_sine, "triangle": symmetric_triangle}.get(shape, terminal_peak_sawtooth)(G, 0.011)
+    pulse = {"half-sine": half_sine, "triangle": symmetric_triangle}.get(shape, terminal_peak_sawtooth)(
+        G, 0.011
+    )
     expected = float(pulse_shock_spectrum(pulse, [cycles / 0.011], ratio).overall[0])
     brief = machines.one_axis(MASS, base_pulse(shape, 0.011))
     assert both(brief, tuned(cycles / 0.011, ratio), ACCELERATION) == pytest.approx(expected, rel=5e-5)
