@@ -35,6 +35,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except DetuneError as error:
         print(error, file=sys.stderr)
         return FAULTY
+    except BrokenPipeError:
+        # Whoever read the output has seen enough; nothing may be written after that.
+        sys.stdout = None
+        return MEETS
     except OSError as error:
         print(f"{error.filename or 'file'}: {error.strerror or error}", file=sys.stderr)
         return FAULTY

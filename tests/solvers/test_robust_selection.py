@@ -12,9 +12,9 @@ import pytest
 from detune.brief.allowable import Displacement, Sag, Tilt, TransmittedForce
 from detune.brief.choice import CatalogSource, Choice
 from detune.brief.scatter import PartScatter, Scatter
+from detune.problem.build import build
 from detune.proof.checker import check_entries
 from detune.proof.record import plain
-from detune.problem.build import build
 from detune.response.designs import all_designs
 from detune.solvers import enumeration
 from detune.solvers.certify import certify
@@ -86,7 +86,7 @@ def test_first_proven_in_order_of_cost(study):
 
 
 def test_violated_nominal_winner_has_a_witness_inside_the_scatter(study):
-    problem, _, robust = study
+    _, _, robust = study
     assert robust.nominal is not None and robust.nominal.status == "violated"
     witness = robust.nominal.witness
     assert witness.kind == "transmitted-force" and witness.frequency is not None
