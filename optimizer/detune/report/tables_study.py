@@ -191,7 +191,8 @@ def inputs_table(result: Result) -> Table:
 def objective_words(result: Result) -> str:
     """Return the traded objectives in words, with the value of the answer."""
     words = " against ".join(OBJECTIVE_WORDS[name] for name in result.front.trade)
-    if result.answer is None:
+    answer = result.robust_answer or (None if result.guaranteed else result.answer)
+    if answer is None:
         return words
-    values = {name: objective_text(result.answer, name) for name in result.front.trade}
+    values = {name: objective_text(answer, name) for name in result.front.trade}
     return f"{words} (answer: {', '.join(f'{OBJECTIVE_WORDS[n]} {v}' for n, v in values.items())})"

@@ -108,8 +108,11 @@ def data(result: Result) -> FrontData | None:
 
 def _marked(result: Result) -> tuple[Marked, ...]:
     named: list[tuple[str, Assessment]] = []
-    if result.answer is not None:
-        named.append(("answer", result.answer))
+    if result.robust_answer is not None:
+        named.append(("answer", result.robust_answer))
+    if result.answer is not None and result.answer != result.robust_answer:
+        # Over a stated scatter only a proven design is the answer.
+        named.append(("cheapest at listed values" if result.guaranteed else "answer", result.answer))
     count = len(result.compared)
     named += [(f"named {i + 1}" if count > 1 else "named", a) for i, a in enumerate(result.compared)]
     if result.answer is None and result.closest is not None:
