@@ -212,3 +212,12 @@ def test_lognormal_points_have_the_stated_spread():
     inside = ((points >= found.low) & (points <= found.high)).mean()
     assert inside == pytest.approx(0.9973, abs=1e-3)
     assert np.median(points) == pytest.approx(1.0, abs=2e-3) and (forcing == 1.0).all()
+
+
+def test_gravity_under_scatter_of_mass_and_centre_is_bounded():
+    """The weight to topple, by the assessor at moved centres, never falls below what is guaranteed."""
+    problem = problem_of(12, WITH_MASS)
+    verdict = certify(problem, np.array([0, 1]), 0, max_boxes=1, stop_at_violation=False)
+    row = next(row for row in verdict.rows if row.kind == "stability")
+    samples = worst_of_samples(problem, verdict, 8, 3)[key(row)]
+    assert row.status == "proven" and min(sample.value for sample in samples) >= row.guaranteed > 1.0

@@ -75,7 +75,7 @@ def check_entries(entries: Any) -> CheckReport:
                 found, count = check_response(entry["data"], rebuild, halve)
                 boxes += count
             elif entry["kind"] == "scatter-static":
-                found, count = check_static(entry["data"], halve)
+                found, count = check_static(entry["data"])
                 boxes += count
             elif entry["kind"] == "scatter-separation":
                 found = check_separation(entry["data"])

@@ -187,7 +187,7 @@ def read_static(data: dict[str, Any]) -> dict[str, Any]:
     return out
 
 
-def check_static(data: dict[str, Any], halve: Cut) -> tuple[list[str], int]:
+def check_static(data: dict[str, Any]) -> tuple[list[str], int]:
     """Faults of static rows: the enclosures claimed, and the limits, over boxes cut anew; violations at their points."""
     arrays = read_static(data["limits"])
     claimed = (
@@ -201,6 +201,7 @@ def check_static(data: dict[str, Any], halve: Cut) -> tuple[list[str], int]:
         return [], 0
     need_low, need_high = np.maximum(arrays["lower"], claimed[0]), np.minimum(arrays["upper"], claimed[1])
     low, high, count = arrays["low"][None], arrays["high"][None], 0
+    scale = cut_scale(arrays)
     while len(low):
         if count + len(low) > MOST_STATIC:
             return [f"{len(low)} boxes of static rows could not be confirmed"], count
@@ -214,10 +215,30 @@ def check_static(data: dict[str, Any], halve: Cut) -> tuple[list[str], int]:
         failed = np.concatenate(left)
         if not failed.any():
             break
-        if not bool((high[failed] > low[failed]).any(axis=1).all()):
+        low, high = low[failed], high[failed]
+        side = ((high - low) * scale).argmax(axis=1)
+        index = np.arange(len(low))
+        if not bool(((high - low)[index, side] > 0.0).all()):
             return ["static rows could not be confirmed"], count
-        low, high = halve(low[failed], high[failed])
+        middle = 0.5 * (low[index, side] + high[index, side])
+        first_high, second_low = high.copy(), low.copy()
+        first_high[index, side], second_low[index, side] = middle, middle
+        low, high = np.concatenate([low, second_low]), np.concatenate([first_high, high])
     return [], count
+
+
+def cut_scale(arrays: dict[str, Any]) -> Matrix:
+    """What a unit of each variable is worth when boxes are cut: any choice is correct, a good one is quick."""
+    out = np.zeros(len(arrays["low"]))
+    sizes = np.sqrt((arrays["loads"] ** 2).sum(axis=1))
+    for load, names in enumerate(arrays["load_factors"]):
+        for name in names:
+            if name >= 0:
+                out[name] = max(out[name], sizes[load] / max(sizes[0], 1e-300))
+    for name in np.concatenate([arrays["factors"].ravel(), arrays["row_factors"].ravel()]):
+        if name >= 0:
+            out[name] = 1.0
+    return out
 
 
 def _static_witness(data: dict[str, Any], arrays: dict[str, Any], statuses: list[str]) -> list[str]:

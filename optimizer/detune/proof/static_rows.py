@@ -163,6 +163,7 @@ def decide_static_rows(
     rows = len(problem.scale)
     reached = _Reached(problem)
     reached.corners()
+    influence = _influence(problem)
     closed_low, closed_high = np.full(rows, np.inf), np.full(rows, -np.inf)
     boxes = 0
     while True:
@@ -178,9 +179,9 @@ def decide_static_rows(
         left = ~done
         if not left.any() or boxes + 2 * int(left.sum()) > max_boxes or reached.broken:
             break
-        if not bool((high[left] > low[left]).any(axis=1).all()):
+        if not bool(((high[left] > low[left]) & (influence > 0.0)).any(axis=1).all()):
             break
-        low, high = _halve(low[left], high[left])
+        low, high = _halve(low[left], high[left], influence)
     bound_low = np.minimum(np.minimum(closed_low, least[left].min(axis=0, initial=np.inf)), reached.least)
     bound_high = np.maximum(np.maximum(closed_high, most[left].max(axis=0, initial=-np.inf)), reached.most)
     return reached.decision(bound_low, bound_high, boxes)
@@ -251,9 +252,22 @@ class _Reached:
         )
 
 
-def _halve(low: Floats, high: Floats) -> tuple[Floats, Floats]:
-    """Cut every box along its widest side."""
-    side = np.argmax(high - low, axis=1)
+def _influence(problem: StaticLimits) -> Floats:
+    """How much a unit of each variable (V,) moves statics, roughly: factors 1, loads by their size, others nothing."""
+    out = np.zeros(len(problem.low))
+    for names in (problem.factors, problem.row_factors):
+        used = names[names >= 0]
+        out[used] = 1.0
+    size = max(float(np.linalg.norm(problem.loads[0])), 1e-300)
+    for load, names in zip(problem.loads, problem.load_factors, strict=True):
+        for name in names[names >= 0]:
+            out[name] = max(out[name], float(np.linalg.norm(load)) / size)
+    return out
+
+
+def _halve(low: Floats, high: Floats, influence: Floats) -> tuple[Floats, Floats]:
+    """Cut every box along the side of greatest width times influence."""
+    side = np.argmax((high - low) * influence, axis=1)
     index = np.arange(len(low))
     cut = 0.5 * (low[index, side] + high[index, side])
     first_high, second_low = high.copy(), low.copy()

@@ -22,7 +22,6 @@ from detune.solvers.certify_statics import StaticRow, separation_worst, stabilit
 from detune.solvers.design_rows import DesignRows, ResponseGroup, StaticGroup
 from detune.solvers.sampled_rows import sampled_verdicts
 from detune.solvers.scatter_machine import corner_words
-from detune.solvers.scatter_rows import NotBounded
 from detune.solvers.verdict import (
     DesignVerdict,
     Proof,
@@ -170,20 +169,18 @@ class _Work:
         allowable = requirement.allowable
         assert isinstance(allowable, Stability)
         nothing = StaticRow(np.zeros((3, group.each.model.frame.count)))
-        try:
-            worst = stability_worst(
-                group.each, self.made.limits(group.each, [nothing]), self.made.step, allowable, self.made.map
-            )
-        except NotBounded as problem:
-            self.made.unknown.append((requirement, str(problem)))
-            return
-        status: Status = "proven" if worst >= allowable.limit else "violated"
+        made = self.made
+        worst, bound = stability_worst(
+            made.problem.brief, group.each, made.limits(group.each, [nothing]), made.step, made.map
+        )
+        kept: Status = "proven" if bound >= allowable.limit else "undecided"
+        status: Status = kept if worst >= allowable.limit else "violated"
         point = tuple(self.made.map.low.tolist())
         self._row(
             requirement,
             status,
             worst,
-            worst,
+            bound,
             (allowable.limit, None),
             point,
             where="all parts at their softest",

@@ -13,7 +13,6 @@ from detune.brief.allowable import (
     MountDeflection,
     Sag,
     Separation,
-    Stability,
     Tilt,
     Uplift,
 )
@@ -29,7 +28,7 @@ from detune.proof.separation_box import UncertainBody, body_mass, box_separation
 from detune.proof.static_rows import StaticLimits
 from detune.response.gravity import weight_to_topple
 from detune.response.model import find_station
-from detune.solvers.scatter_machine import NOTHING, ScatterMap, weight_terms
+from detune.solvers.scatter_machine import NOTHING, ScatterMap, gravity_terms, weight_terms
 from detune.solvers.scatter_rows import NotBounded
 
 Floats = NDArray[np.float64]
@@ -175,18 +174,27 @@ def static_limits(
 
 
 def stability_worst(
-    each: StateModel, limits: StaticLimits, step: int, allowable: Stability, found: ScatterMap
-) -> float:
-    """Worst weight to topple over stiffness scatter: at the softest corner, since it grows with the stiffness.
+    brief: Brief, each: StateModel, limits: StaticLimits, step: int, found: ScatterMap
+) -> tuple[float, float]:
+    """Weight to topple at the softest corner, and what it never falls below.
 
-    Exact for stiffness factors (Loewner order). Raises NotBounded where mass or centre scatter.
+    It grows with the stiffness (Loewner order), so the two agree for stiffness factors alone; what mass and centre
+    change in gravity's stiffness is taken at its full absolute value.
     """
-    if not found.stiffness_only:
-        raise NotBounded("with scatter of mass or centre its worst place is not known")
     points = np.concatenate([limits.low, [0.0]])[None]
     weights = products(points, limits.factors)[0] * limits.stiffness
-    stiffness = limits.fixed + (limits.axes.T * weights) @ limits.axes
-    return float(weight_to_topple(stiffness[None], each.model.geometric[[step]])[0])
+    stiffness = (limits.fixed + (limits.axes.T * weights) @ limits.axes)[None]
+    geometric = each.model.geometric[[step]]
+    worst = float(weight_to_topple(stiffness, geometric)[0])
+    terms, names = gravity_terms(brief, each.model, found)
+    if not terms:
+        return worst, worst
+    low, high = (np.append(edge, 0.0)[None] for edge in (found.low, found.high))
+    least, most = product_interval(low, high, np.array(names, dtype=np.int64))
+    values, vectors = np.linalg.eigh(np.array(terms))
+    absolute = np.einsum("tik,tk,tjk->tij", vectors, np.abs(values), vectors)
+    spread = np.einsum("t,tij->ij", np.maximum(np.abs(least), np.abs(most))[0], absolute)
+    return worst, float(weight_to_topple(stiffness, geometric - spread)[0])
 
 
 @dataclass(frozen=True)

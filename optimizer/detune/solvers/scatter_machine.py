@@ -200,7 +200,7 @@ def scatter_system(
     if model.with_gravity_stiffness:
         fixed["dynamic"] = fixed["dynamic"] + model.geometric[step]
     mass_terms, mass_factors = _mass_terms(brief, model, found)
-    own_terms, own_factors = _gravity_terms(brief, model, found)
+    own_terms, own_factors = gravity_terms(brief, model, found) if model.with_gravity_stiffness else ([], [])
     n = model.frame.count
     return ScatterSystem(
         mass=_even(model.mass[step]),
@@ -332,13 +332,13 @@ def weight_terms(brief: Brief, model: Model, found: ScatterMap) -> list[tuple[Fl
     return [(vector, names) for vector, names in out if np.any(vector != 0.0)]
 
 
-def _gravity_terms(
+def gravity_terms(
     brief: Brief, model: Model, found: ScatterMap
 ) -> tuple[list[Floats], list[tuple[int, int, int]]]:
     """What mass and centre change in gravity's geometric stiffness, which is linear in all forces at given places."""
     terms: list[Floats] = []
     factors: list[tuple[int, int, int]] = []
-    if not model.with_gravity_stiffness or found.stiffness_only:
+    if found.stiffness_only:
         return terms, factors
     down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
     for number, (name, mass, _, move, by) in enumerate(_bodies(brief, model)):

@@ -21,7 +21,6 @@ from detune.solvers.certify_statics import StaticRow, modes_at, stability_worst
 from detune.solvers.design_rows import DesignRows, StaticGroup
 from detune.solvers.perturbed import perturbed
 from detune.solvers.scatter_machine import ScatterMap
-from detune.solvers.scatter_rows import NotBounded
 
 Floats = NDArray[np.float64]
 Flags = NDArray[np.bool_]
@@ -156,12 +155,8 @@ def _unstable(rows: DesignRows, group: StaticGroup) -> list[Requirement]:
     nothing = StaticRow(np.zeros((3, group.each.model.frame.count)))
     for requirement in group.stability:
         assert isinstance(requirement.allowable, Stability)
-        try:
-            worst = stability_worst(
-                group.each, rows.limits(group.each, [nothing]), rows.step, requirement.allowable, rows.map
-            )
-        except NotBounded:
-            worst = 0.0
+        limits = rows.limits(group.each, [nothing])
+        _, worst = stability_worst(rows.problem.brief, group.each, limits, rows.step, rows.map)
         if worst < 2.0 * requirement.allowable.limit:
             out.append(requirement)
     return out
