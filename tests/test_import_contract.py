@@ -97,19 +97,17 @@ KINDS = {f"brief/{kind}": ROOT / "brief" / kind for kind in ("forcing", "allowab
 
 
 def kind_modules(where: Path) -> set[str]:
-    """The modules of a folder that hold a kind: those whose names its `KINDS` table uses."""
+    """The modules of a folder that hold a kind: those that its `KINDS` table names, as "file.Name"."""
     tree = ast.parse((where / "__init__.py").read_text(encoding="utf-8"))
-    came_from: dict[str, str] = {}
     for node in tree.body:
-        if isinstance(node, ast.ImportFrom) and node.module is not None:
-            for alias in node.names:
-                module = node.module.split(".")[-1]
-                came_from[alias.asname or alias.name] = alias.name if module == where.name else module
-    for node in tree.body:
-        target = node.targets[0] if isinstance(node, ast.Assign) else getattr(node, "target", None)
-        if isinstance(target, ast.Name) and target.id == "KINDS":
-            values = {n.id for n in ast.walk(node.value) if isinstance(n, ast.Name)}  # type: ignore[attr-defined]
-            return {came_from[value] for value in values if value in came_from}
+        if (
+            isinstance(node, ast.AnnAssign)
+            and isinstance(node.target, ast.Name)
+            and node.target.id == "KINDS"
+        ):
+            tables = [n for n in ast.walk(node) if isinstance(n, ast.Dict)]
+            values = [v.value for table in tables for v in table.values if isinstance(v, ast.Constant)]
+            return {str(value).partition(".")[0] for value in values}
     raise AssertionError(f"{where} has no KINDS")
 
 

@@ -4,6 +4,7 @@ Exit codes: 0 a design meets the brief; 1 none does; 2 the brief or a file is wr
 """
 
 import argparse
+import os
 import sys
 from collections.abc import Sequence
 from pathlib import Path
@@ -21,6 +22,8 @@ MEETS, NONE_MEETS, FAULTY, STOPPED = 0, 1, 2, 3
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run one verb and return its exit code."""
+    # Nothing installed beside us may hook into how a study is read, and looking for hooks costs start-up time.
+    os.environ.setdefault("PYDANTIC_DISABLE_PLUGINS", "__all__")
     options = _parser().parse_args(arguments)
     from detune.ground.errors import BriefError, DetuneError, SolveError
 
@@ -55,32 +58,39 @@ def _parser() -> argparse.ArgumentParser:
     )
     verbs = parser.add_subparsers(title="verbs", required=True, metavar="VERB")
 
-    check = verbs.add_parser("check", help="read a study and its catalogs, and tell every fault")
-    check.set_defaults(verb=_check)
-    run = verbs.add_parser(
-        "run", help="find the cheapest design that meets the brief, the front, and the reasons"
-    )
-    run.set_defaults(verb=_run)
-    assess = verbs.add_parser("assess", help="judge one design you name")
-    assess.set_defaults(verb=_assess)
-    compare = verbs.add_parser("compare", help="set designs you name side by side")
-    compare.set_defaults(verb=_compare)
-    vary = verbs.add_parser("vary", help="run the study again for several values of one number")
-    vary.set_defaults(verb=_vary)
-    size = verbs.add_parser(
-        "size", help="size stiffness, damping, ballast and absorbers between bounds, before there are parts"
-    )
-    size.set_defaults(verb=_size)
-    verify = verbs.add_parser("verify", help="check a proof record again, by code of its own")
-    verify.add_argument(
+    told = {
+        "check": (_check, "read a study and its catalogs, and tell every fault"),
+        "run": (_run, "find the cheapest design that meets the brief, the front, and the reasons"),
+        "assess": (_assess, "judge one design you name"),
+        "compare": (_compare, "set designs you name side by side"),
+        "vary": (_vary, "run the study again for several values of one number"),
+        "size": (
+            _size,
+            "size stiffness, damping, ballast and absorbers between bounds, before there are parts",
+        ),
+        "verify": (_verify, "check a proof record again, by code of its own"),
+        "schema": (_schema, "print the JSON Schema of a study file, for editors"),
+    }
+    parsers = {}
+    for name, (verb, text) in told.items():
+        parsers[name] = verbs.add_parser(name, help=text)
+        parsers[name].set_defaults(verb=verb)
+    _add_options(**{name: parsers[name] for name in ("run", "assess", "compare", "vary", "size")})
+    parsers["verify"].add_argument(
         "record", metavar="RECORD", help="proof-record.json of a result folder, or the folder"
     )
-    verify.set_defaults(verb=_verify)
-    schema = verbs.add_parser("schema", help="print the JSON Schema of a study file, for editors")
-    schema.set_defaults(verb=_schema)
+    for name in ("check", "run", "assess", "compare", "vary", "size"):
+        parsers[name].add_argument("study", metavar="STUDY", help="the study file (TOML)")
+    return parser
 
-    for verb in (check, run, assess, compare, vary, size):
-        verb.add_argument("study", metavar="STUDY", help="the study file (TOML)")
+
+def _add_options(
+    run: argparse.ArgumentParser,
+    assess: argparse.ArgumentParser,
+    compare: argparse.ArgumentParser,
+    vary: argparse.ArgumentParser,
+    size: argparse.ArgumentParser,
+) -> None:
     wording = 'a design, as "group=part, group=2 x part + damper, group=(empty), ballast=40 kg"'
     run.add_argument(
         "--design", action="append", default=[], help=f"{wording}, set beside the answer; may be repeated"
@@ -112,7 +122,6 @@ def _parser() -> argparse.ArgumentParser:
     )
     for verb in (run, vary):
         verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
-    return parser
 
 
 def _check(options: argparse.Namespace) -> int:

@@ -10,11 +10,15 @@ import numpy as np
 import pytest
 from pydantic import ValidationError
 
-from detune.brief.allowable import Acceleration, TransmittedForce, Velocity
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.condition import Condition
 from detune.brief.floor import Floor, floor_freedom
-from detune.brief.forcing import BaseMotion, HarmonicForce, RotatingUnbalance, SliderCrank
-from detune.brief.forcing.slider_crank import Cylinder
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.harmonic_force import HarmonicForce
+from detune.brief.forcing.rotating_unbalance import RotatingUnbalance
+from detune.brief.forcing.slider_crank import Cylinder, SliderCrank
 from detune.brief.machine import Body, Shape, Weighing
 from detune.brief.mass_properties import mass_properties
 from detune.brief.read import read_brief

@@ -111,13 +111,14 @@ def loaded(caption: str, folder: Path) -> ModuleType:
 def register(
     monkeypatch: pytest.MonkeyPatch, folder: Path, kind: ModuleType, file: str, registry: str
 ) -> None:
-    """Do what the page says: the import and the entry, read from its own lines."""
-    lines = block("python", registry)
-    (imported,) = re.findall(r"^from (\S+) import (\w+)$", lines, re.MULTILINE)
-    ((name, value),) = re.findall(r'^    "([\w-]+)": (\w+),$', lines, re.MULTILINE)
-    assert value == imported[1]
-    monkeypatch.setitem(sys.modules, imported[0], loaded(file, folder))
-    monkeypatch.setitem(kind.KINDS, name, getattr(sys.modules[imported[0]], value))
+    """Do what the page says: the one line of the table, read from the page."""
+    ((name, home),) = re.findall(
+        r'^        "([\w-]+)": "([\w.]+)",$', block("python", registry), re.MULTILINE
+    )
+    package = kind.__name__
+    monkeypatch.setitem(sys.modules, f"{package}.{home.partition('.')[0]}", loaded(file, folder))
+    homes = {known: kind.KINDS.home(known) for known in kind.KINDS}
+    monkeypatch.setattr(kind.KINDS, "_homes", homes | {name: home})
 
 
 def judged(folder: Path, text: str) -> Assessment:

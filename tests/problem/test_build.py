@@ -11,7 +11,10 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from detune.brief.allowable import LoadRange, MountDeflection, Separation, Uplift
+from detune.brief.allowable.load_range import LoadRange
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.uplift import Uplift
 from detune.brief.brief import Brief, demanded
 from detune.brief.choice import CatalogSource, Choice
 from detune.brief.condition import Condition

@@ -10,19 +10,21 @@ from typing import Any
 
 import numpy as np
 
-from detune.brief.allowable import (
-    Acceleration,
-    Displacement,
-    MountDeflection,
-    Sag,
-    Separation,
-    Tilt,
-    TransmittedForce,
-    Velocity,
-)
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
-from detune.brief.forcing import BaseMotion, BasePulse, ForcePulse, RandomBaseMotion, RandomForce
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.base_pulse import BasePulse
+from detune.brief.forcing.force_pulse import ForcePulse
+from detune.brief.forcing.random_base_motion import RandomBaseMotion
+from detune.brief.forcing.random_force import RandomForce
 from detune.brief.state import State
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import AmplitudeTable, LawTable, LoadCurve, Relaxation, UnknownDamping

@@ -8,12 +8,15 @@ from typing import Any
 
 import numpy as np
 
-from detune.brief.allowable import Allowable, Displacement
+from detune.brief.allowable.base import Allowable
+from detune.brief.allowable.displacement import Displacement
 from detune.brief.brief import Brief
 from detune.brief.choice import CatalogSource, Choice
 from detune.brief.condition import Condition
 from detune.brief.floor import Floor
-from detune.brief.forcing import Forcing, HarmonicForce, RotatingUnbalance
+from detune.brief.forcing.base import Forcing
+from detune.brief.forcing.harmonic_force import HarmonicForce
+from detune.brief.forcing.rotating_unbalance import RotatingUnbalance
 from detune.brief.machine import Body, Connection, InertiaTensor, Point, Station
 from detune.parts.catalog import Catalog
 from detune.parts.kinds.mount import Mount

@@ -13,18 +13,16 @@ from typing import Any
 import numpy as np
 import pytest
 
-from detune.brief.allowable import BandLimit
+from detune.brief.allowable.band_limit import BandLimit
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
-from detune.brief.forcing import (
-    BandBaseMotion,
-    BaseMotion,
-    Forcing,
-    HarmonicForce,
-    LineSpectrum,
-    RandomBaseMotion,
-    ShaftOrders,
-)
+from detune.brief.forcing.band_base_motion import BandBaseMotion
+from detune.brief.forcing.base import Forcing
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.harmonic_force import HarmonicForce
+from detune.brief.forcing.line_spectrum import LineSpectrum
+from detune.brief.forcing.random_base_motion import RandomBaseMotion
+from detune.brief.forcing.shaft_orders import ShaftOrders
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import build
 from detune.response.assessment import MarginRow

@@ -11,7 +11,7 @@ from typing import Any
 import numpy as np
 import pytest
 
-from detune.brief.allowable import Displacement
+from detune.brief.allowable.displacement import Displacement
 from detune.brief.choice import Choice
 from detune.brief.machine import Station
 from detune.parts.compose import damper_refused, empty_station, in_parallel, with_damper

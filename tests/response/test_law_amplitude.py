@@ -13,8 +13,13 @@ from scipy.optimize import brentq
 
 import detune.response.amplitude as batch_amplitude
 import detune.response.direct_amplitude as direct_amplitude
-from detune.brief.allowable import Acceleration, Displacement, Separation, Transmissibility, TransmittedForce
-from detune.brief.forcing import BaseMotion, RandomForce
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.transmissibility import Transmissibility
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.random_force import RandomForce
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import AmplitudeTable, UnknownDamping
 from detune.physics.fixed_point import fixed_points

@@ -12,8 +12,12 @@ import pytest
 from scipy.integrate import solve_ivp
 from scipy.optimize import brentq
 
-from detune.brief.allowable import Acceleration, MountDeflection, TransmittedForce
-from detune.brief.forcing import BasePulse, Drop, ForcePulse
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.forcing.base_pulse import BasePulse
+from detune.brief.forcing.drop import Drop
+from detune.brief.forcing.force_pulse import ForcePulse
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import LoadCurve
 from detune.problem.build import build

@@ -13,9 +13,11 @@ import scipy.signal
 from scipy.interpolate import PchipInterpolator
 from scipy.optimize import brentq
 
-from detune.brief.allowable import Sag, Transmissibility, TransmittedForce
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.transmissibility import Transmissibility
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.brief import Brief
-from detune.brief.forcing import BaseMotion
+from detune.brief.forcing.base_motion import BaseMotion
 from detune.brief.machine import Body, Point, Station
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import LoadCurve, Relaxation

@@ -13,23 +13,19 @@ from typing import Any
 import numpy as np
 import pytest
 
-from detune.brief.allowable import (
-    Acceleration,
-    Allowable,
-    Displacement,
-    MountDeflection,
-    TransmittedForce,
-    Velocity,
-)
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.base import Allowable
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
-from detune.brief.forcing import (
-    LineSpectrum,
-    MeasuredRecord,
-    RandomBaseMotion,
-    TorqueReaction,
-    TwoPlaneUnbalance,
-)
+from detune.brief.forcing.line_spectrum import LineSpectrum
+from detune.brief.forcing.measured_record import MeasuredRecord
+from detune.brief.forcing.random_base_motion import RandomBaseMotion
+from detune.brief.forcing.torque_reaction import TorqueReaction
+from detune.brief.forcing.two_plane_unbalance import TwoPlaneUnbalance
 from detune.brief.machine import Body
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import build

@@ -13,20 +13,19 @@ from typing import Any
 import numpy as np
 import pytest
 
-from detune.brief.allowable import (
-    Allowable,
-    FloorVelocity,
-    Gap,
-    HarmonicAllowable,
-    LevelDifference,
-    MachineVelocity,
-    RelativeMotion,
-    SettlingTime,
-    WeightedAcceleration,
-)
+from detune.brief.allowable.base import Allowable, HarmonicAllowable
+from detune.brief.allowable.floor_velocity import FloorVelocity
+from detune.brief.allowable.gap import Gap
+from detune.brief.allowable.level_difference import LevelDifference
+from detune.brief.allowable.machine_velocity import MachineVelocity
+from detune.brief.allowable.relative_motion import RelativeMotion
+from detune.brief.allowable.settling_time import SettlingTime
+from detune.brief.allowable.weighted_acceleration import WeightedAcceleration
 from detune.brief.brief import Brief
 from detune.brief.floor import Floor
-from detune.brief.forcing import BaseMotion, BasePulse, RandomBaseMotion
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.base_pulse import BasePulse
+from detune.brief.forcing.random_base_motion import RandomBaseMotion
 from detune.brief.machine import Body, InertiaTensor, Point, Station
 from detune.parts.kinds.mount import Mount
 from detune.physics.weighting import weighted_rms_of_spectrum

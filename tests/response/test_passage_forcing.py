@@ -13,10 +13,14 @@ import numpy as np
 import pytest
 from scipy.integrate import solve_ivp
 
-from detune.brief.allowable import Acceleration, Allowable, Displacement, MountDeflection, TransmittedForce
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.base import Allowable
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
-from detune.brief.forcing import ShaftOrders
+from detune.brief.forcing.shaft_orders import ShaftOrders
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import build
 from detune.response.designs import Designs

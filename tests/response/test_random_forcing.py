@@ -13,9 +13,14 @@ from typing import Any
 import numpy as np
 import pytest
 
-from detune.brief.allowable import Acceleration, Allowable, Displacement, MountDeflection, TransmittedForce
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.base import Allowable
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.brief import Brief
-from detune.brief.forcing import RandomBaseMotion, RandomForce
+from detune.brief.forcing.random_base_motion import RandomBaseMotion
+from detune.brief.forcing.random_force import RandomForce
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import build
 from detune.response.designs import Designs

@@ -10,10 +10,9 @@ from typing import Any
 import numpy as np
 import pytest
 
-from detune.brief.allowable import Separation
+from detune.brief.allowable.separation import Separation
 from detune.brief.condition import Condition
-from detune.brief.forcing import ShaftOrders
-from detune.brief.forcing.shaft_orders import Order
+from detune.brief.forcing.shaft_orders import Order, ShaftOrders
 from detune.brief.machine import Body, InertiaTensor, Point, Station
 from detune.response.assemble import dynamic_matrices
 from detune.response.design import Design

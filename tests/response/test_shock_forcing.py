@@ -14,18 +14,19 @@ from typing import Any
 import numpy as np
 import pytest
 
-from detune.brief.allowable import (
-    Acceleration,
-    Allowable,
-    Displacement,
-    MountDeflection,
-    RelativeMotion,
-    TransmittedForce,
-    Velocity,
-)
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.base import Allowable
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.relative_motion import RelativeMotion
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
-from detune.brief.forcing import BasePulse, Drop, ForcePulse, VelocityStep
+from detune.brief.forcing.base_pulse import BasePulse
+from detune.brief.forcing.drop import Drop
+from detune.brief.forcing.force_pulse import ForcePulse
+from detune.brief.forcing.velocity_step import VelocityStep
 from detune.parts.kinds.mount import Mount
 from detune.physics.pulses import half_sine, symmetric_triangle, terminal_peak_sawtooth
 from detune.physics.shock import pulse_shock_spectrum

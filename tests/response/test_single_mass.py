@@ -13,17 +13,15 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from detune.brief.allowable import (
-    Acceleration,
-    Allowable,
-    Displacement,
-    Transmissibility,
-    TransmittedForce,
-    Velocity,
-)
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.base import Allowable
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.transmissibility import Transmissibility
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief
-from detune.brief.forcing import BaseMotion, ShaftOrders
-from detune.brief.forcing.shaft_orders import Order
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.shaft_orders import Order, ShaftOrders
 from detune.parts.kinds.mount import Mount
 
 _spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))

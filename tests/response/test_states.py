@@ -11,7 +11,11 @@ import numpy as np
 import pytest
 from pydantic import ValidationError
 
-from detune.brief.allowable import LoadRange, MountDeflection, Sag, Separation, Tilt
+from detune.brief.allowable.load_range import LoadRange
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
 from detune.brief.cross_check import cross_check

@@ -14,10 +14,14 @@ import scipy.linalg
 import scipy.sparse
 from pydantic import ValidationError
 
-from detune.brief.allowable import Sag, Separation, Transmissibility
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.transmissibility import Transmissibility
 from detune.brief.brief import Brief
 from detune.brief.cross_check import cross_check
-from detune.brief.forcing import BaseMotion, ForcePulse, RandomForce
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.force_pulse import ForcePulse
+from detune.brief.forcing.random_force import RandomForce
 from detune.brief.machine import Body, InertiaTensor, Point, Station
 from detune.brief.structure import Structure
 from detune.parts.kinds.mount import Mount

@@ -16,7 +16,8 @@ import numpy as np
 import pytest
 import scipy.linalg
 
-from detune.brief.forcing import BaseMotion, Tone
+from detune.brief.forcing.base import Tone
+from detune.brief.forcing.base_motion import BaseMotion
 from detune.response.design import Design
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import direct_modes

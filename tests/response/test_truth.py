@@ -14,7 +14,8 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from detune.brief.brief import Brief
-from detune.brief.forcing import BaseMotion, HarmonicForce
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.harmonic_force import HarmonicForce
 from detune.brief.machine import InertiaTensor, Point
 from detune.parts.kinds.mount import Mount
 from detune.physics.unsupported import UnsupportedMachine

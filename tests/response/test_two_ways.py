@@ -12,10 +12,12 @@ import numpy as np
 import pytest
 import scipy.signal
 
-from detune.brief.allowable import MountDeflection, TransmittedForce, Velocity
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief
-from detune.brief.forcing import BaseMotion, ShaftOrders
-from detune.brief.forcing.shaft_orders import Order
+from detune.brief.forcing.base_motion import BaseMotion
+from detune.brief.forcing.shaft_orders import Order, ShaftOrders
 from detune.brief.machine import Body, InertiaTensor, Point, Station
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import build

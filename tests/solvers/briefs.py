@@ -8,15 +8,13 @@ from typing import Any
 
 import numpy as np
 
-from detune.brief.allowable import (
-    Acceleration,
-    Displacement,
-    Sag,
-    Separation,
-    Tilt,
-    TransmittedForce,
-    Velocity,
-)
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief
 from detune.brief.choice import Ballast, CatalogSource, Choice, Objectives
 from detune.brief.machine import Station

@@ -10,7 +10,8 @@ from typing import Any
 
 import pytest
 
-from detune.brief.allowable import Displacement, TransmittedForce
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.choice import Ballast
 from detune.brief.machine import Station
 from detune.problem.build import Problem, build

@@ -13,7 +13,9 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from detune.brief.allowable import Displacement, Separation, TransmittedForce
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.brief import Brief
 from detune.brief.choice import LARGER_IS_BETTER, Ballast, Objectives
 from detune.parts.kinds.mount import Mount

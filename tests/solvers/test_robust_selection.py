@@ -9,7 +9,10 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from detune.brief.allowable import Displacement, Sag, Tilt, TransmittedForce
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.choice import CatalogSource, Choice
 from detune.brief.scatter import PartScatter, Scatter
 from detune.problem.build import build

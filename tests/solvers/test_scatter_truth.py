@@ -6,7 +6,13 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from detune.brief.allowable import Displacement, Gap, Sag, Separation, Tilt, TransmittedForce, Velocity
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.gap import Gap
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.choice import CatalogSource, Choice
 from detune.brief.scatter import PartScatter, Scatter
 from detune.problem.build import build

@@ -13,7 +13,7 @@ import numpy as np
 import pytest
 import scipy.signal
 
-from detune.brief.forcing import MeasuredRecord
+from detune.brief.forcing.measured_record import MeasuredRecord
 from detune.report.figures import draw_all
 from detune.report.page import page_text
 from detune.response.assessment import MarginRow

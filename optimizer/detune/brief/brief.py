@@ -1,20 +1,27 @@
 """The brief: everything the user states, as one frozen object."""
 
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from pydantic import SerializeAsAny
 
-from detune.brief.allowable import Allowable, LoadRange, MountDeflection, Stability, Uplift
+from detune.brief.absorber import Absorber
+from detune.brief.allowable.base import Allowable
 from detune.brief.choice import Ballast, CatalogSource, Choice, Objectives
 from detune.brief.condition import Condition
 from detune.brief.floor import Floor
-from detune.brief.forcing import Forcing
+from detune.brief.forcing.base import Forcing
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
 from detune.brief.scatter import Scatter
 from detune.brief.sizing import Sizing
 from detune.brief.state import State
 from detune.brief.statement import Name, Statement, Text
 from detune.brief.structure import Structure
+
+if TYPE_CHECKING:
+    from detune.brief.allowable.load_range import LoadRange
+    from detune.brief.allowable.mount_deflection import MountDeflection
+    from detune.brief.allowable.uplift import Uplift
 
 
 class Brief(Statement):
@@ -36,6 +43,7 @@ class Brief(Statement):
     allowables: tuple[SerializeAsAny[Allowable], ...]
     catalogs: tuple[CatalogSource, ...]
     choices: tuple[Choice, ...]
+    absorbers: tuple[Absorber, ...] = ()
     ballast: Ballast | None = None
     objectives: Objectives = Objectives()
     sizing: Sizing | None = None
@@ -44,9 +52,31 @@ class Brief(Statement):
     file: Text = "brief from Python"
 
     @property
-    def groups(self) -> tuple[str, ...]:
+    def station_groups(self) -> tuple[str, ...]:
         """Groups of stations in the order of their first station."""
         return tuple(dict.fromkeys(station.group for station in self.stations))
+
+    @property
+    def groups(self) -> tuple[str, ...]:
+        """Groups of stations in the order of their first station, then the absorbers, each a group of its own."""
+        return (*self.station_groups, *(absorber.name for absorber in self.absorbers))
+
+    @property
+    def every_station(self) -> tuple[Station, ...]:
+        """The stations, then the places of absorbers: from the moving mass to the body of their point."""
+        return (*self.stations, *(self._place_of(absorber) for absorber in self.absorbers))
+
+    def _place_of(self, absorber: Absorber) -> Station:
+        point = next(point for point in self.points if point.name == absorber.at)
+        body = body_of(self, point.on)
+        return Station(
+            name=absorber.name,
+            group=absorber.name,
+            on=body,
+            to=body,
+            position=point.position,
+            axial=absorber.direction,
+        )
 
 
 def demanded(brief: Brief) -> tuple[tuple[Allowable, ...], tuple[str, ...]]:
@@ -56,6 +86,11 @@ def demanded(brief: Brief) -> tuple[tuple[Allowable, ...], tuple[str, ...]]:
     station and in every condition: a design that overloads a part cannot meet any brief. A brief that
     states one of them for some stations or conditions does not free the others of it.
     """
+    from detune.brief.allowable.load_range import LoadRange
+    from detune.brief.allowable.mount_deflection import MountDeflection
+    from detune.brief.allowable.stability import Stability
+    from detune.brief.allowable.uplift import Uplift
+
     demands: tuple[tuple[LoadRange | MountDeflection | Uplift, str], ...] = (
         (LoadRange(), "each part carries a static load within its own range (load_min to load_max)"),
         (
@@ -79,7 +114,7 @@ def demanded(brief: Brief) -> tuple[tuple[Allowable, ...], tuple[str, ...]]:
     return (*brief.allowables, *added), tuple(notes)
 
 
-def _stations_free_of(brief: Brief, demand: LoadRange | MountDeflection | Uplift) -> tuple[str, ...]:
+def _stations_free_of(brief: Brief, demand: "LoadRange | MountDeflection | Uplift") -> tuple[str, ...]:
     """Return the stations where no allowable of the brief states a demand for every condition."""
     covered: set[str] = set()
     for stated in brief.allowables:

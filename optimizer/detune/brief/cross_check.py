@@ -2,10 +2,12 @@
 
 from collections.abc import Iterable
 
-from detune.brief.allowable import BandAllowable, HarmonicAllowable, Separation
+from detune.brief.allowable.base import BandAllowable, HarmonicAllowable
 from detune.brief.brief import Brief, applies
 from detune.brief.finding import Finding, Path
-from detune.brief.forcing import Forcing
+from detune.brief.floor_check import floor_checked
+from detune.brief.forcing.base import Forcing
+from detune.brief.listed_check import listed_checked
 from detune.brief.machine import Connection, Station
 from detune.brief.matching import not_matching
 from detune.brief.sense import without_sense
@@ -36,9 +38,11 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
             _allowables,
             _choices,
             _ballast,
+            listed_checked,
             without_sense,
             not_matching,
             sizing_checked,
+            floor_checked,
         )
         for finding in check(brief)
     ]
@@ -253,7 +257,7 @@ def _allowables(brief: Brief) -> list[Finding]:
         for i, name in enumerate(allowable.stations_named()):
             if name not in stations:
                 findings.append(_unknown((*path, "stations", i), name, stations, "a station", "station"))
-        if isinstance(allowable, Separation) and not any(c.steady for c in brief.conditions):
+        if allowable.kind == "separation" and not any(c.steady for c in brief.conditions):
             expected = "at least one steady condition, since separation counts only those"
             findings.append(Finding(path, "separation", expected, depends=("condition",)))
     if not any(isinstance(a, (HarmonicAllowable, BandAllowable)) for a in brief.allowables):
@@ -271,7 +275,7 @@ def _allowables(brief: Brief) -> list[Finding]:
 
 def _choices(brief: Brief) -> list[Finding]:
     findings = []
-    groups = brief.groups
+    groups = brief.station_groups
     catalogs = [catalog.name for catalog in brief.catalogs]
     chosen = [choice.group for choice in brief.choices]
     for index, choice in enumerate(brief.choices):
@@ -297,10 +301,7 @@ def _choices(brief: Brief) -> list[Finding]:
 
 
 def _ballast(brief: Brief) -> list[Finding]:
-    if brief.ballast is None and "added-mass" in brief.objectives.trade:
-        return [
-            Finding(
-                ("objectives", "trade"), "added-mass", "a [ballast] table, without which no mass is added"
-            )
-        ]
+    if brief.ballast is None and not brief.absorbers and "added-mass" in brief.objectives.trade:
+        expected = "a [ballast] table or an [[absorber]], without which no mass is added"
+        return [Finding(("objectives", "trade"), "added-mass", expected, depends=("absorber",))]
     return []

@@ -1,17 +1,10 @@
 """Forcing and limits that are each sound and yet cannot be judged together, told before any design is looked at."""
 
-from detune.brief.allowable import (
-    BandAllowable,
-    Displacement,
-    FloorVelocity,
-    HarmonicAllowable,
-    Separation,
-    Transmissibility,
-)
+from detune.brief.allowable.base import BandAllowable, HarmonicAllowable
 from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
 from detune.brief.finding import Finding, Path
-from detune.brief.forcing import Forcing, Tone, Transient
+from detune.brief.forcing.base import Forcing, Tone, Transient
 from detune.brief.statement import Direction
 from detune.physics.octaves import band_edges
 
@@ -26,15 +19,15 @@ def not_matching(brief: Brief) -> list[Finding]:
         findings += _floor_motion(brief, ("forcing", index), forcing)
     for index, allowable in enumerate(brief.allowables):
         path: Path = ("allowable", index)
-        if isinstance(allowable, Separation):
+        if allowable.kind == "separation":
             findings += _nothing_to_separate_from(brief, path)
         elif isinstance(allowable, BandAllowable):
             findings += _bands(brief, path, allowable)
         elif isinstance(allowable, HarmonicAllowable):
-            if isinstance(allowable, FloorVelocity) and brief.floor.kind == "rigid":
+            if allowable.kind == "floor-velocity" and brief.floor.kind == "rigid":
                 expected = "a floor that is not rigid, whose velocity the parts decide"
                 findings.append(Finding(path, "floor-velocity", expected, depends=("floor",)))
-            if isinstance(allowable, Transmissibility):
+            if allowable.kind in ("transmissibility", "floor-ratio"):
                 findings += _no_excitation_frequency(brief, path, allowable)
             findings += _in_time(brief, path, allowable)
     return findings
@@ -86,7 +79,7 @@ def _nothing_to_separate_from(brief: Brief, path: Path) -> list[Finding]:
     return [Finding(path, "separation", expected, depends=("condition", "forcing"))]
 
 
-def _no_excitation_frequency(brief: Brief, path: Path, allowable: Transmissibility) -> list[Finding]:
+def _no_excitation_frequency(brief: Brief, path: Path, allowable: HarmonicAllowable) -> list[Finding]:
     """A ratio is judged at the excitation frequencies; where no tone acts there are none."""
     conditions = [c for c in brief.conditions if applies(allowable.conditions, c.name)]
     if not conditions or any(_tones(brief, condition) for condition in conditions):
@@ -95,7 +88,7 @@ def _no_excitation_frequency(brief: Brief, path: Path, allowable: Transmissibili
         "a condition in which a tone acts: a ratio is judged at the excitation frequencies, and random or shock "
         "forcing is limited by its response"
     )
-    return [Finding(path, "transmissibility", expected, depends=("condition", "forcing"))]
+    return [Finding(path, allowable.kind, expected, depends=("condition", "forcing"))]
 
 
 def _bands(brief: Brief, path: Path, allowable: BandAllowable) -> list[Finding]:
@@ -149,7 +142,7 @@ def _why_not(
     where = f'conditions without "{forcing.name}", as "conditions" ("{condition.name}" has it)'
     if allowable.has_weighting():
         return f"tones and noise alone under a frequency-weighted limit: {where}"
-    if transient.base is not None and not transient.weight_acts and isinstance(allowable, Displacement):
+    if transient.base is not None and not transient.weight_acts and allowable.kind == "displacement":
         return (
             'kind = "relative-motion" with to = "floor" under a shock or record of the floor\'s acceleration, which '
             f"does not say where the floor ends up; or {where}"

@@ -3,26 +3,31 @@
 Such a limit would be met by every design, which a reader would take for a proof.
 """
 
+from typing import TYPE_CHECKING, cast
+
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import (
-    BandLimit,
-    HarmonicAllowable,
-    MachineVelocity,
-    Transmissibility,
-    TransmittedForce,
-    WeightedAcceleration,
-)
 from detune.brief.allowable.at_point import PointAllowable
+from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.brief import Brief, applies
 from detune.brief.finding import Finding, Path
-from detune.brief.forcing import Noise, Tone, Transient
+from detune.brief.forcing.base import Noise, Tone, Transient
 from detune.brief.machine import Body
 from detune.brief.mass_properties import mass_properties
 from detune.brief.statement import FREEDOMS, Direction
 from detune.ground.units import show
 from detune.physics.rigid_body import attachment
+
+if TYPE_CHECKING:
+    from detune.brief.allowable.band_limit import BandLimit
+    from detune.brief.allowable.machine_velocity import MachineVelocity
+    from detune.brief.allowable.transmissibility import Transmissibility
+    from detune.brief.allowable.transmitted_force import TransmittedForce
+    from detune.brief.allowable.weighted_acceleration import WeightedAcceleration
+
+# Kinds that watch a point of a body along a direction, beside the motions of a point.
+AT_A_POINT = ("weighted-acceleration", "machine-velocity", "band-limit")
 
 # Components below this share of the whole are rounding of the digits people write.
 NOTHING = 1e-9
@@ -33,12 +38,14 @@ def without_sense(brief: Brief) -> list[Finding]:
     findings = []
     for index, allowable in enumerate(brief.allowables):
         path: Path = ("allowable", index)
-        if isinstance(allowable, (PointAllowable, WeightedAcceleration, MachineVelocity, BandLimit)):
-            findings += _point_cannot_move(brief, path, allowable)
-        elif isinstance(allowable, Transmissibility):
-            findings += _transmissibility(brief, path, allowable)
-        elif isinstance(allowable, TransmittedForce) and allowable.through == "ground":
-            findings += _ground_under_base_motion(brief, path, allowable)
+        if isinstance(allowable, PointAllowable) or allowable.kind in AT_A_POINT:
+            findings += _point_cannot_move(brief, path, cast("BandLimit", allowable))
+        elif allowable.kind in ("transmissibility", "floor-ratio"):
+            findings += _transmissibility(brief, path, cast("Transmissibility", allowable))
+        elif allowable.kind == "transmitted-force":
+            force = cast("TransmittedForce", allowable)
+            if force.through == "ground":
+                findings += _ground_under_base_motion(brief, path, force)
     if len(brief.bodies) == 1:
         for index, forcing in enumerate(brief.forcing):
             if forcing.floor_direction() is None and _moves_nothing(brief, index):
@@ -73,7 +80,7 @@ def _cannot_move(body: Body, position: tuple[float, float, float], along: Direct
 def _point_cannot_move(
     brief: Brief,
     path: Path,
-    allowable: PointAllowable | WeightedAcceleration | MachineVelocity | BandLimit,
+    allowable: "PointAllowable | WeightedAcceleration | MachineVelocity | BandLimit",
 ) -> list[Finding]:
     along = allowable.along()
     point = next((point for point in brief.points if point.name == allowable.at), None)
@@ -85,10 +92,10 @@ def _point_cannot_move(
     return [Finding((*path, "direction"), found, expected, depends=("body", "point"))]
 
 
-def _transmissibility(brief: Brief, path: Path, allowable: Transmissibility) -> list[Finding]:
+def _transmissibility(brief: Brief, path: Path, allowable: "Transmissibility") -> list[Finding]:
     findings = []
     along = allowable.along()
-    if along is not None and allowable.of == "force" and brief.bodies:
+    if along is not None and getattr(allowable, "of", "force") == "force" and brief.bodies:
         body = brief.bodies[0]
         centre = mass_properties(body).centre
         if _cannot_move(body, (float(centre[0]), float(centre[1]), float(centre[2])), along):

@@ -6,7 +6,6 @@ under which station.
 
 from dataclasses import dataclass
 from pathlib import Path
-from zipfile import BadZipFile
 
 import numpy as np
 from numpy.typing import NDArray
@@ -148,6 +147,8 @@ def _kept(structure: Structure, frequency: Floats, shapes: Floats) -> StructureM
 
 
 def _npz(folder: Path, name: str) -> dict[str, NDArray[np.generic]]:
+    from zipfile import BadZipFile
+
     try:
         with np.load(folder / name, allow_pickle=False) as archive:
             return {key: archive[key] for key in archive.files}

@@ -1,13 +1,17 @@
-"""What may stand at a station besides one mount: several of it in parallel, a damper beside it, or nothing."""
+"""What may stand at a station besides one mount: several in parallel, a damper beside it, an absorber, or nothing."""
 
 from __future__ import annotations
 
 import math
 from dataclasses import replace
+from typing import TYPE_CHECKING
 
-from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Axes, Mount
 from detune.parts.laws import UnknownDamping
+
+if TYPE_CHECKING:
+    from detune.parts.kinds.absorber import Absorber
+    from detune.parts.kinds.damper import Damper
 
 EMPTY = "(empty)"
 
@@ -67,6 +71,9 @@ def with_damper(mount: Mount, damper: Damper) -> Mount:
         mass=None if mount.mass is None else mount.mass + (damper.mass or 0.0),
         cost=mount.cost + damper.cost,
         damper_cost=damper.cost,
+        damper_catalog=damper.catalog,
+        damper_breaks=damper.cost_breaks,
+        damper_stock=damper.stock,
     )
 
 
@@ -77,6 +84,37 @@ def damper_refused(mount: Mount, damper: Damper) -> str | None:
     if damper.stiffness_series is not None:
         return f"{damper.part} has elastic rods; a damper beside a mount is taken as rigid in itself"
     return None
+
+
+def absorber_mount(absorber: Absorber) -> Mount:
+    """Return an absorber as the spring and dashpot between its moving mass and its frame, along its own axis.
+
+    k = m (2 pi f)^2 and c = 2 z m 2 pi f of the tuning f and damping ratio z on a fixed base. A tolerance t of the
+    tuning is one of (1 + t)^2 - 1 of the stiffness. It carries its own mass alone, so no load range is stated.
+    """
+    omega = 2.0 * math.pi * absorber.frequency
+    return replace(
+        empty_station(absorber.catalog),
+        file=absorber.file,
+        line=absorber.line,
+        part=absorber.part,
+        family="absorber",
+        stiffness_static=(0.0, 0.0, absorber.mass * omega**2),
+        stiffness_dynamic=(0.0, 0.0, absorber.mass * omega**2),
+        viscous=(0.0, 0.0, 2.0 * absorber.damping_ratio * absorber.mass * omega),
+        damping_from="damping_ratio",
+        damping_stated=absorber.damping_ratio,
+        damping_kind="viscous",
+        mass=absorber.mass + absorber.mass_fixed,
+        cost=absorber.cost,
+        cost_breaks=absorber.cost_breaks,
+        tolerance=(1.0 + absorber.tolerance) ** 2 - 1.0,
+        stock=absorber.stock,
+        pieces=1,
+        moving_mass=absorber.mass,
+        riding_mass=absorber.mass_fixed,
+        stroke=absorber.stroke,
+    )
 
 
 def empty_station(catalog: str) -> Mount:

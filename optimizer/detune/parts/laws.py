@@ -19,6 +19,9 @@ Axes: TypeAlias = tuple[float | None, float | None, float]
 
 Row: TypeAlias = tuple[float, ...]
 
+ROOM_TEMPERATURE = 20.0
+"""degC, at which a machine is judged where no state says otherwise."""
+
 
 @dataclass(frozen=True, slots=True)
 class Relaxation:

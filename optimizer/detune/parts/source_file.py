@@ -5,9 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 from detune.ground.errors import BriefError, Fault
-from detune.parts.parquet_file import read_parquet
 from detune.parts.sheet import Sheet, read_sheet
-from detune.parts.workbook import read_workbook
 
 _WORKBOOKS = (".xlsx", ".xlsm")
 _PARQUET = (".parquet", ".pq")
@@ -22,6 +20,8 @@ def read_rows(path: str | Path, sheet: str | None = None) -> Sheet:
     """
     ending = Path(path).suffix.lower()
     if ending in _WORKBOOKS:
+        from detune.parts.workbook import read_workbook
+
         return read_workbook(path, sheet)
     if ending in _NOT_READ:
         expected = "a list in CSV, XLSX or Parquet; save this workbook as XLSX"
@@ -29,4 +29,8 @@ def read_rows(path: str | Path, sheet: str | None = None) -> Sheet:
     if sheet is not None:
         expected = "no sheet, for only a workbook (.xlsx) has sheets"
         raise BriefError([Fault(str(path), None, "sheet", sheet, expected)])
-    return read_parquet(path) if ending in _PARQUET else read_sheet(path)
+    if ending in _PARQUET:
+        from detune.parts.parquet_file import read_parquet
+
+        return read_parquet(path)
+    return read_sheet(path)

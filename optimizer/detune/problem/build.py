@@ -5,15 +5,15 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from detune.brief.allowable import (
+from detune.brief.allowable.base import (
     Allowable,
     BandAllowable,
     DesignAllowable,
     HarmonicAllowable,
     ModeAllowable,
-    Separation,
     StaticAllowable,
 )
+from detune.brief.allowable.separation import Separation
 from detune.brief.allowable.views import Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition

@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-from detune.brief.allowable import Allowable
+from detune.brief.allowable.base import Allowable
 
 
 @dataclass(frozen=True)

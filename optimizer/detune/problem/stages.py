@@ -6,14 +6,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import (
-    DesignAllowable,
-    HarmonicAllowable,
-    ModeAllowable,
-    Stability,
-    StaticAllowable,
-)
+from detune.brief.allowable.base import DesignAllowable, HarmonicAllowable, ModeAllowable, StaticAllowable
 from detune.brief.allowable.separation import least_separation
+from detune.brief.allowable.stability import Stability
 from detune.brief.allowable.views import DesignView
 from detune.problem.build import BandRequirements, HarmonicRequirements, Problem
 from detune.problem.requirement import Requirement

@@ -2,11 +2,11 @@
 
 from dataclasses import dataclass
 
-from detune.brief.allowable import HarmonicAllowable
+from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.allowable.views import Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
-from detune.brief.forcing import Noise, Transient
+from detune.brief.forcing.base import Noise, Transient
 from detune.response.assess import states_of
 from detune.response.assessment import Assessment, MarginRow
 from detune.response.damping_readings import readings_of

@@ -5,12 +5,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine
+from detune.brief.allowable.base import HarmonicAllowable, combine
 from detune.brief.allowable.views import Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
-from detune.brief.forcing import Tone
+from detune.brief.forcing.base import Tone
 from detune.response.assess import states_of
 from detune.response.assessment import Assessment, MarginRow
 from detune.response.direct import DirectMachine

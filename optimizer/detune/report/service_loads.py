@@ -4,7 +4,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from detune.brief.allowable import Displacement, HarmonicAllowable, RelativeMotion, TransmittedForce
+from detune.brief.allowable.base import HarmonicAllowable
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.relative_motion import RelativeMotion
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.brief import Brief, applies, state_of
 from detune.brief.condition import Condition
 from detune.response.assess import states_of

@@ -2,7 +2,8 @@
 
 import math
 
-from detune.brief.allowable import KINDS, HarmonicAllowable
+from detune.brief.allowable import KINDS
+from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.brief import Brief
 from detune.ground.units import convert, show
 from detune.response.assessment import Assessment, MarginRow

@@ -12,8 +12,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable, MountDeflection
-from detune.brief.allowable.base import combine
+from detune.brief.allowable.base import HarmonicAllowable, combine
+from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.physics import envelope
 from detune.physics.fixed_point import fixed_points
 from detune.response.assemble import Dynamic, at_amplitude

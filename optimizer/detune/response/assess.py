@@ -10,15 +10,15 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import (
+from detune.brief.allowable.base import (
     Allowable,
     BandAllowable,
     DesignAllowable,
     HarmonicAllowable,
     ModeAllowable,
-    Separation,
     StaticAllowable,
 )
+from detune.brief.allowable.separation import Separation
 from detune.brief.allowable.views import DesignView, Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
@@ -37,6 +37,7 @@ from detune.response.direct_amplitude import (
     working_amplitude,
 )
 from detune.response.direct_bands import direct_band_ratio
+from detune.response.direct_floor import with_force_ratio
 from detune.response.direct_modes import DirectModes, direct_modes
 from detune.response.direct_random import RandomPart
 from detune.response.direct_supremum import (
@@ -284,7 +285,8 @@ def _harmonic_rows(
             found = _larger([end for end in ends if end is not None])
             if found is not None and working is not None and not working.settled:
                 found = replace(found, value=np.full_like(found.value, np.inf))
-            rows += [] if found is None else _judged(static, condition, pairs, found)
+            judged = [] if found is None else _judged(static, condition, pairs, found)
+            rows += with_force_ratio(machine, allowable, judged)
     return rows
 
 

@@ -1,6 +1,6 @@
 """All loads of a condition put on the rows that are judged under them."""
 
-from detune.brief.allowable import HarmonicAllowable
+from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
 from detune.response.evaluate import Rows

@@ -15,13 +15,14 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief, body_of
 from detune.brief.floor import FloorFreedom, floor_freedom
-from detune.brief.forcing import Tone
+from detune.brief.forcing.base import Tone
 from detune.brief.machine import Connection, Station
 from detune.brief.mass_properties import mass_properties
 from detune.brief.state import State
 from detune.brief.statement import FREEDOMS, unit_direction
 from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount
+from detune.parts.laws import ROOM_TEMPERATURE
 from detune.physics.orientation import axes_from_direction
 from detune.physics.rigid_body import box_inertia, skew
 from detune.physics.static import solve_static
@@ -29,7 +30,6 @@ from detune.response.damping_readings import read_as
 from detune.response.design import Design
 from detune.response.direct_gravity import gravity_stiffness
 from detune.response.direct_laws import DirectRest, follows_curve, part_stiffness, rest_on_laws
-from detune.response.part_laws import ROOM_TEMPERATURE
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -172,6 +172,11 @@ class DirectMachine:
     def across(self, station: Station) -> Floats:
         """Rows (3, N): global displacement of the body at a station relative to what it stands on."""
         return self._geometry[station.name][1]
+
+    def foot(self, station: Station) -> Floats:
+        """Rows (3, N): global motion of the floor or structure under a station, zero where it stands on a body."""
+        rows = self.place(station.to, np.array(station.position))
+        return rows * (station.to not in self.centres)
 
     @cached_property
     def mass(self) -> Floats:

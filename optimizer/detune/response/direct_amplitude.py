@@ -12,11 +12,11 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable, MountDeflection
-from detune.brief.allowable.base import combine
+from detune.brief.allowable.base import HarmonicAllowable, combine
+from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.brief.brief import applies
 from detune.brief.condition import Condition
-from detune.brief.forcing import Noise, Tone, Transient
+from detune.brief.forcing.base import Noise, Tone, Transient
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import direct_modes
 from detune.response.direct_motion import direct_passage_values, direct_transient_values

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from detune.brief.allowable.base import BandAllowable
 from detune.brief.brief import applies
 from detune.brief.condition import Condition
-from detune.brief.forcing import Noise, Tone
+from detune.brief.forcing.base import Noise, Tone
 from detune.physics.octaves import band_edges, band_index, nominal_centre
 from detune.physics.spectra import density_at
 from detune.response.direct import DirectMachine

@@ -10,10 +10,15 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import SumOfOrders, combine, record_amplitude, tone_amplitude
+from detune.brief.allowable.base import (
+    HarmonicAllowable,
+    SumOfOrders,
+    combine,
+    record_amplitude,
+    tone_amplitude,
+)
 from detune.brief.brief import body_of
-from detune.brief.forcing import Tone, Transient
+from detune.brief.forcing.base import Tone, Transient
 from detune.brief.machine import Station
 from detune.physics.pulses import pulse_value
 from detune.physics.simulation import simulate

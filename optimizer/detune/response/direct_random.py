@@ -5,9 +5,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import noise_amplitude
-from detune.brief.forcing import Noise, Tone
+from detune.brief.allowable.base import HarmonicAllowable, noise_amplitude
+from detune.brief.forcing.base import Noise, Tone
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_views import DirectTone

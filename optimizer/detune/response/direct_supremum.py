@@ -6,12 +6,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import SumOfOrders, combine, tone_amplitude
+from detune.brief.allowable.base import HarmonicAllowable, SumOfOrders, combine, tone_amplitude
 from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
-from detune.brief.forcing import Tone
+from detune.brief.forcing.base import Tone
 from detune.response.direct import DirectMachine
+from detune.response.direct_floor import beside_reference
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_motion import direct_passage_values, direct_transient_values
 from detune.response.direct_random import RandomPart, direct_noise
@@ -131,7 +131,9 @@ def unit_load_suprema(
     centre = machine.centres[body]
     along = (complex(unit[1][0]), complex(unit[1][1]), complex(unit[1][2]))
     best: Supremum | None = None
-    bands = {(tone.order * tone.low, tone.order * tone.high) for tone in tones_of(machine.brief, condition)}
+    tones = tones_of(machine.brief, condition)
+    found = beside_reference(machine, found, allowable, tones)
+    bands = {(tone.order * tone.low, tone.order * tone.high) for tone in tones}
     for low, high in sorted(bands):
         low = max(low, allowable.lowest_frequency())
         if high < low:

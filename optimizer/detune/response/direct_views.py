@@ -7,9 +7,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.brief import body_of
-from detune.brief.forcing import Tone
+from detune.brief.forcing.base import Tone
 from detune.brief.machine import Station
 from detune.response.direct import FLOOR, DirectMachine, connection_stiffness
+from detune.response.direct_floor import direct_floor_ratio
 from detune.response.gravity import NEVER
 from detune.response.solve import solve_or_resonate
 
@@ -158,6 +159,9 @@ class DirectTone:
             own = (floor.stiffness + 1j * self.omega[0] * floor.damping) * q[:, self.machine.floor_vertical]
             received[:, 2] = own if surface == "ground" else received[:, 2] + own
         return np.asarray(received[None], dtype=complex)
+
+    def floor_ratio(self) -> Complexes:
+        return direct_floor_ratio(self.machine, self.omega[0], self.load, self.q)
 
     def power(self) -> tuple[Floats, Floats]:
         """Mean power (F,) put in by the loads and by moved supports, and dissipated in the parts.

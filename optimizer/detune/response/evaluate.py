@@ -5,11 +5,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import SumOfOrders, combine, tone_amplitude
+from detune.brief.allowable.base import HarmonicAllowable, SumOfOrders, combine, tone_amplitude
 from detune.physics import envelope
 from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
+from detune.response.floor_ratio import reference_zeros
 from detune.response.loads import Family
 from detune.response.model import Model
 from detune.response.modes import ModeBatch, sharp_poles
@@ -19,6 +19,7 @@ from detune.response.transient import TransientLoad, transient_values
 from detune.response.views import ToneBatch
 
 Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
 Integers = NDArray[np.int64]
 TWO_PI = 2.0 * np.pi
 
@@ -89,6 +90,14 @@ def response_values(
     return Amplitudes(value, tones.frequency)
 
 
+def beside_reference(model: Model, designs: Designs, rows: Rows, poles: Complexes) -> Complexes:
+    """Return the poles (D, m) with the places added at which a floor ratio may peak for want of a reference."""
+    if not any(allowable.kind == "floor-ratio" for allowable, _ in rows.pairs):
+        return poles
+    (load,) = rows.families[0].sets[0]
+    return np.concatenate([poles, reference_zeros(model, load.vector)[designs.step]], axis=1)
+
+
 def suprema(model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, rows: Rows) -> Amplitudes:
     """Return each row's supremum over the continuous speed range of every family, put together.
 
@@ -98,7 +107,8 @@ def suprema(model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, 
     value = np.zeros((len(rows.pairs), designs.count))
     frequency = np.full_like(value, np.nan)
     largest = np.full_like(value, -np.inf)
-    poles = sharp_poles(dynamic, modal)
+    poles = sharp_poles(dynamic, modal) if rows.families else np.zeros((designs.count, 0), dtype=complex)
+    poles = beside_reference(model, designs, rows, poles)
     for family in rows.families:
         centres, widths = envelope.centres_of_poles(poles, family.orders)
 

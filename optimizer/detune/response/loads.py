@@ -5,10 +5,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
+from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.brief import Brief, applies, body_of
 from detune.brief.condition import Condition
-from detune.brief.forcing import Tone
+from detune.brief.forcing.base import Tone
 from detune.response.model import Model
 
 Floats = NDArray[np.float64]

@@ -17,11 +17,12 @@ from detune.brief.statement import FREEDOMS, unit_direction
 from detune.brief.structure import Structure
 from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
+from detune.parts.laws import ROOM_TEMPERATURE
 from detune.physics import rigid_body
 from detune.physics.orientation import axes_from_direction
 from detune.response.damping_readings import read_as
 from detune.response.model_gravity import geometric_stiffness_of
-from detune.response.part_laws import ROOM_TEMPERATURE, GroupLaws, group_laws
+from detune.response.part_laws import GroupLaws, group_laws
 
 Floats = NDArray[np.float64]
 FLOOR = "floor"
@@ -78,6 +79,8 @@ class Frame:
 class StationRows:
     """One station: deflection rows (3, n) in local axes, its axes (3, 3) and how many parts share it.
 
+    `foot` (3, n): global motion of the floor or structure under it, zero where it stands on a body.
+
     In a state, `factor` multiplies the part's stiffness and `packing` (m) lifts its foot; a lost
     station has no parts.
     """
@@ -94,6 +97,7 @@ class StationRows:
     axes: Floats
     on_floor: bool
     position: Floats
+    foot: Floats
 
 
 @dataclass(frozen=True)
@@ -266,6 +270,7 @@ def _station(brief: Brief, frame: Frame, station: Station, state: State | None) 
         axes=axes,
         on_floor=station.to == FLOOR,
         position=position,
+        foot=frame.motion_rows(station.to, position) * (station.to not in frame.references),
     )
 
 

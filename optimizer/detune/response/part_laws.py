@@ -13,7 +13,6 @@ from detune.physics.relaxation import StiffnessTable, table_stiffness
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 Integers = NDArray[np.intp]
-ROOM_TEMPERATURE = 20.0
 TWO_PI = 2.0 * np.pi
 AIR_SPRING_RANGE = np.geomspace(0.02, 5.0, 400)
 

@@ -5,13 +5,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import noise_amplitude
+from detune.brief.allowable.base import HarmonicAllowable, noise_amplitude
 from detune.brief.brief import Brief, body_of
-from detune.brief.forcing import Noise
+from detune.brief.forcing.base import Noise
 from detune.physics.random_response import QuadratureNotConverged, variance
 from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
+from detune.response.expansion import Expansion, expansion_of
 from detune.response.loads import Load
 from detune.response.model import Model
 from detune.response.modes import ModeBatch, sharp_poles
@@ -22,6 +22,8 @@ Complexes = NDArray[np.complex128]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
 WITHOUT_BOUND = 1e200
+# Designs at once, so that the responses at all their frequencies stay in the processor's cache.
+TOGETHER = 32
 
 
 @dataclass(frozen=True, eq=False)
@@ -75,28 +77,51 @@ def noise_variances(
 
     A design whose undamped mode the noise excites has none; a value that no limit admits stands for it.
     """
+    found = np.empty((2, len(pairs), designs.count))
+    expanded = np.zeros(designs.count, dtype=bool)
+    if not dynamic.parts.with_frequency:
+        expansion, expanded = expansion_of(dynamic)
+    for chosen, by_poles in ((expanded, True), (~expanded, False)):
+        index = np.flatnonzero(chosen)
+        for some in np.array_split(index, max(1, -(-len(index) // TOGETHER))) if len(index) else []:
+            own = expansion.take(some) if by_poles else None
+            taken = designs.take(some), dynamic.take(some), modal.take(some)
+            found[:, :, some] = _variances(model, *taken, pairs, each, own)
+    return found
 
+
+def _variances(
+    model: Model,
+    designs: Designs,
+    dynamic: Dynamic,
+    modal: ModeBatch,
+    pairs: Pairs,
+    each: NoiseLoad,
+    expansion: Expansion | None,
+) -> Floats:
     def transfer(omega: Floats) -> Complexes:
-        view = ToneBatch(model, designs, dynamic, (each.load,), omega)
+        view = ToneBatch(model, designs, dynamic, (each.load,), omega, expansion)
         rows = []
         for allowable, place in pairs:
             observed = allowable.weighted(allowable.observed(view, place), omega / TWO_PI)
             along = allowable.along()
             axes = observed @ np.asarray(along)[:, None] if along is not None else observed
             rows += [axes[..., axis] for axis in range(axes.shape[-1])]
-        moved = np.stack(rows)
-        return np.concatenate([moved, 1j * omega * moved])
+        return np.stack(rows)
 
     poles = sharp_poles(dynamic, modal)
     centre, width = poles.imag, -poles.real
     try:
-        parts = variance(transfer, each.noise.spectrum, centre, width)
+        parts = variance(transfer, each.noise.spectrum, centre, width, with_rates=True)
     except QuadratureNotConverged:
         if designs.count == 1:
             return np.full((2, len(pairs), 1), WITHOUT_BOUND)
         halves = np.array_split(np.arange(designs.count), 2)
-        taken = ((designs.take(half), dynamic.take(half), modal.take(half)) for half in halves)
-        found = [noise_variances(model, *some, pairs, each) for some in taken]
+        found = []
+        for half in halves:
+            taken = designs.take(half), dynamic.take(half), modal.take(half)
+            own = None if expansion is None else expansion.take(half)
+            found.append(_variances(model, *taken, pairs, each, own))
         return np.concatenate(found, axis=2)
     count = len(parts) // 2
     sizes = [1 if allowable.along() is not None else 3 for allowable, _ in pairs]

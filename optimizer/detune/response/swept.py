@@ -9,8 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import SumOfOrders, tone_amplitude
+from detune.brief.allowable.base import HarmonicAllowable, SumOfOrders, tone_amplitude
 from detune.physics.simulation import DefectiveModes, Motion, StateModes, state_modes
 from detune.physics.sweep import sweep_envelope
 from detune.response.assemble import Dynamic

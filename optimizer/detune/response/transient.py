@@ -12,10 +12,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import combine, record_amplitude
+from detune.brief.allowable.base import HarmonicAllowable, combine, record_amplitude
 from detune.brief.brief import Brief, body_of
-from detune.brief.forcing import Transient
+from detune.brief.forcing.base import Transient
 from detune.physics.pulses import Pulse
 from detune.physics.simulation import Motion, simulate
 from detune.response.assemble import Dynamic

@@ -9,7 +9,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import Separation
+from detune.brief.allowable.separation import Separation
 from detune.brief.finding import Finding, faults_without_lines
 from detune.ground.errors import BriefError
 from detune.parts.kinds.mount import Mount

@@ -3,15 +3,17 @@
 import cmath
 from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import TYPE_CHECKING, ClassVar
 
 from pydantic import field_validator, model_validator
 
 from detune.brief.condition import SpeedRange, check_range
 from detune.brief.statement import Direction, Frequency, Name, Statement, listed_once, refuse
-from detune.physics.array_types import FloatArray
-from detune.physics.pulses import Pulse
-from detune.physics.spectra import PowerSpectralDensity
+
+if TYPE_CHECKING:
+    from detune.physics.array_types import FloatArray
+    from detune.physics.pulses import Pulse
+    from detune.physics.spectra import PowerSpectralDensity
 
 Complex3 = tuple[complex, complex, complex]
 ZERO3: Complex3 = (0j, 0j, 0j)
@@ -53,7 +55,7 @@ class Noise:
     """
 
     source: str
-    spectrum: PowerSpectralDensity
+    spectrum: "PowerSpectralDensity"
     duration: float
     on: str | None = None
     position: tuple[float, float, float] = (0.0, 0.0, 0.0)
@@ -72,8 +74,8 @@ class Transient:
     """
 
     source: str
-    pulse: Pulse | None = None
-    record: FloatArray | None = None
+    pulse: "Pulse | None" = None
+    record: "FloatArray | None" = None
     step: float = 0.0
     velocity: float = 0.0
     weight_acts: bool = False

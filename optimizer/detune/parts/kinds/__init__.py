@@ -3,20 +3,22 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from typing import Any, Protocol, TypeAlias
+from typing import TYPE_CHECKING, Any, Protocol, TypeAlias
 
 from detune.ground.errors import Fault
+from detune.ground.kind_table import KindTable
 from detune.parts.assumed import Assumed
 from detune.parts.columns import Column
-from detune.parts.kinds import absorber, ballast, damper, mount, pad
-from detune.parts.kinds.absorber import Absorber
-from detune.parts.kinds.ballast import Ballast
-from detune.parts.kinds.damper import Damper
-from detune.parts.kinds.mount import Mount
-from detune.parts.kinds.pad import Pad
 from detune.parts.table import Table
 
-Part: TypeAlias = Mount | Damper | Ballast | Absorber | Pad
+if TYPE_CHECKING:
+    from detune.parts.kinds.absorber import Absorber
+    from detune.parts.kinds.ballast import Ballast
+    from detune.parts.kinds.damper import Damper
+    from detune.parts.kinds.mount import Mount
+    from detune.parts.kinds.pad import Pad
+
+Part: TypeAlias = "Mount | Damper | Ballast | Absorber | Pad"
 """What a catalog holds, all of one kind."""
 
 
@@ -41,10 +43,13 @@ class Kind(Protocol):
         """Return the further files that a part was read from."""
 
 
-KINDS: dict[str, Kind] = {
-    "mount": mount,
-    "damper": damper,
-    "ballast": ballast,
-    "absorber": absorber,
-    "pad": pad,
-}
+KINDS: KindTable[Kind] = KindTable(
+    __name__,
+    {
+        "mount": "mount",
+        "damper": "damper",
+        "ballast": "ballast",
+        "absorber": "absorber",
+        "pad": "pad",
+    },
+)

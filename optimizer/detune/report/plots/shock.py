@@ -5,7 +5,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from detune.brief.forcing import Transient
+from detune.brief.forcing.base import Transient
 from detune.ground.units import convert
 from detune.physics.pulses import pulse_value
 from detune.report.contributions import Contribution, contributions

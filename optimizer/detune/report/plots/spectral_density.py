@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from detune.brief.forcing import Noise
+from detune.brief.forcing.base import Noise
 from detune.ground.units import convert, show
 from detune.physics.spectra import density_at, root_mean_square
 from detune.report.contributions import Contribution, contributions

@@ -5,7 +5,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from detune.brief.allowable import LoadRange
+from detune.brief.allowable.load_range import LoadRange
 from detune.brief.brief import Brief
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem, with_mounts
