@@ -5,18 +5,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import (
-    Gap,
-    HarmonicAllowable,
-    LevelDifference,
-    LoadRange,
-    MountDeflection,
-    Sag,
-    Separation,
-    Tilt,
-    Uplift,
-)
-from detune.brief.allowable.base import Allowable
+from detune.brief.allowable.base import Allowable, HarmonicAllowable
+from detune.brief.allowable.gap import Gap
+from detune.brief.allowable.level_difference import LevelDifference
+from detune.brief.allowable.load_range import LoadRange
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.uplift import Uplift
 from detune.brief.brief import Brief
 from detune.brief.mass_properties import mass_properties
 from detune.brief.statement import unit_direction

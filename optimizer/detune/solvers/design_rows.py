@@ -5,7 +5,9 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable, Separation, Stability
+from detune.brief.allowable.base import HarmonicAllowable
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.stability import Stability
 from detune.problem.build import HarmonicRequirements, Problem, StateModel
 from detune.problem.requirement import Requirement
 from detune.proof.scatter_data import LimitedRows, ScatterSystem

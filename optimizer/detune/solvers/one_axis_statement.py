@@ -12,26 +12,22 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from detune.brief.allowable import (
-    Acceleration,
-    AddedMass,
-    Allowable,
-    BandAllowable,
-    BandLimit,
-    CostLimit,
-    Displacement,
-    HarmonicAllowable,
-    LoadRange,
-    MountDeflection,
-    Sag,
-    Separation,
-    Stability,
-    Tilt,
-    Transmissibility,
-    TransmittedForce,
-    Uplift,
-    Velocity,
-)
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.added_mass import AddedMass
+from detune.brief.allowable.band_limit import BandLimit
+from detune.brief.allowable.base import Allowable, BandAllowable, HarmonicAllowable
+from detune.brief.allowable.cost import CostLimit
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.load_range import LoadRange
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.stability import Stability
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.transmissibility import Transmissibility
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.uplift import Uplift
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief, applies, demanded
 from detune.brief.condition import Condition
 from detune.brief.mass_properties import mass_properties

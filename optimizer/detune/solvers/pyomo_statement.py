@@ -9,7 +9,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import Acceleration, Displacement, LoadRange, Sag, Separation, Tilt, Velocity
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.load_range import LoadRange
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.velocity import Velocity
 from detune.problem.build import Problem
 
 Floats = NDArray[np.float64]

@@ -4,7 +4,7 @@ import itertools
 
 import numpy as np
 
-from detune.brief.allowable import StaticAllowable
+from detune.brief.allowable.base import StaticAllowable
 from detune.brief.brief import Brief
 from detune.problem.requirement import Requirement
 from detune.response.assess import assess

@@ -9,8 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import HarmonicAllowable
-from detune.brief.allowable.base import TONE_FACTOR
+from detune.brief.allowable.base import TONE_FACTOR, HarmonicAllowable
 from detune.problem.build import HarmonicRequirements
 from detune.proof.scatter_data import LimitedRows, LoadSet
 from detune.response.loads import Family, Load

@@ -5,12 +5,18 @@ out there and decided by the final test, so a design the search discards is righ
 """
 
 import math
+from collections.abc import Callable
 
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import LoadRange, MountDeflection, Sag, Separation, Tilt, TransmittedForce
 from detune.brief.allowable.at_point import PointAllowable
+from detune.brief.allowable.load_range import LoadRange
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.sag import Sag
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.problem.build import HarmonicRequirements, Problem
 from detune.proof.selection_data import (
     BallastSteps,
@@ -23,9 +29,11 @@ from detune.proof.selection_data import (
 )
 from detune.response.loads import Family, Load
 from detune.response.model import Model
+from detune.response.prices import bought_stations, has_breaks, least_costs, quantity_prices
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
+Integers = NDArray[np.int64]
 TWO_PI = 2.0 * np.pi
 SAMPLES = 4
 RATES = {"displacement": 0, "velocity": 1, "acceleration": 2}
@@ -35,8 +43,6 @@ def why_not(problem: Problem) -> str | None:
     """Return why a problem has no selection arrays, None if it has."""
     if any(group.laws is not None for group in problem.model.groups):
         return "some parts' stiffness follows load, frequency or amplitude, for which the bounds do not hold"
-    if any(mount.cost_breaks for group in problem.model.groups for mount in group.mounts):
-        return "prices fall with the quantity bought, so the cost of a group depends on the others"
     if problem.exempt_amplification is not None:
         return "modes are exempted by amplification, which the eigenvalue bound does not know"
     return None
@@ -65,13 +71,21 @@ def selection_of(problem: Problem, step: int) -> Selection:
         bands=_bands(problem),
         static_rows=_static_rows(problem),
         harmonic=_harmonic(problem, rows),
+        whole_cost=_whole_cost(problem, step),
     )
+
+
+def _whole_cost(problem: Problem, step: int) -> Callable[[Integers], Floats] | None:
+    """Return the cost of whole designs where prices fall with the quantity; what `total_cost` says of them."""
+    prices, extra = quantity_prices(problem.model), float(problem.model.ballast_cost[step])
+    if prices is None:
+        return None
+    return lambda numbers: extra + prices.cost(np.asarray(numbers[:, :-1], dtype=np.intp))
 
 
 def _parts(problem: Problem, index: int) -> GroupParts:
     model = problem.model
     arrays = model.groups[index].arrays
-    pieces = sum(station.bought for station in model.stations if station.group == index)
     named = {
         place
         for requirement in problem.statics
@@ -87,11 +101,18 @@ def _parts(problem: Problem, index: int) -> GroupParts:
         kappa_dynamic=arrays.stiffness_dynamic,
         loss=arrays.stiffness_dynamic * arrays.loss_factor,
         viscous=arrays.viscous,
-        cost=pieces * arrays.cost,
+        cost=_least_costs(model, index),
         load_min=arrays.load_min if limited else np.full(count, -np.inf),
         load_max=arrays.load_max if limited else np.full(count, np.inf),
         deflection_max=arrays.deflection_max if travels else np.full(count, np.inf),
     )
+
+
+def _least_costs(model: Model, index: int) -> Floats:
+    """Return the cost of each part of a group (P,): exact, or at its lowest price where some price falls."""
+    if any(has_breaks(group.mounts) for group in model.groups):
+        return least_costs(model, index)
+    return np.asarray(bought_stations(model, index) * model.groups[index].arrays.cost)
 
 
 def _travel_limited(problem: Problem) -> set[str]:

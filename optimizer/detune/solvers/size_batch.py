@@ -81,7 +81,7 @@ def _judge_alike(brief: Brief, made: list[Made]) -> Judged:
 
 def response_margin(requirements: tuple[Requirement, ...], margins: Floats) -> Floats:
     """Least margin (N,) of the limits on responses to the forcing, statics, modes and totals left out."""
-    from detune.brief.allowable import BandAllowable, HarmonicAllowable
+    from detune.brief.allowable.base import BandAllowable, HarmonicAllowable
 
     forms = (HarmonicAllowable, BandAllowable)
     rows = [i for i, r in enumerate(requirements) if isinstance(r.allowable, forms)]

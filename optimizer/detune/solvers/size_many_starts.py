@@ -123,7 +123,7 @@ class _Functions:
         """What must not be negative: margins, levels held, and last the row of the extra variable."""
         margins = found.margins
         if self.goal == "worst-response":
-            from detune.brief.allowable import BandAllowable, HarmonicAllowable
+            from detune.brief.allowable.base import BandAllowable, HarmonicAllowable
 
             forms = (HarmonicAllowable, BandAllowable)
             keep = [i for i, r in enumerate(found.requirements) if not isinstance(r.allowable, forms)]

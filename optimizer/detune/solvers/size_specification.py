@@ -13,8 +13,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import Allowable, HarmonicAllowable, Separation, StaticAllowable
 from detune.brief.allowable.band_limit import BandLimit
+from detune.brief.allowable.base import Allowable, HarmonicAllowable, StaticAllowable
+from detune.brief.allowable.separation import Separation
 from detune.brief.brief import Brief, demanded
 from detune.brief.sizing import SizingUnknown
 from detune.problem.build import Problem

@@ -7,18 +7,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import (
-    Acceleration,
-    BandAllowable,
-    BandLimit,
-    Displacement,
-    HarmonicAllowable,
-    MountDeflection,
-    Transmissibility,
-    TransmittedForce,
-    Uplift,
-    Velocity,
-)
+from detune.brief.allowable.acceleration import Acceleration
+from detune.brief.allowable.band_limit import BandLimit
+from detune.brief.allowable.base import BandAllowable, HarmonicAllowable
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.transmissibility import Transmissibility
+from detune.brief.allowable.transmitted_force import TransmittedForce
+from detune.brief.allowable.uplift import Uplift
+from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief, applies, demanded
 from detune.brief.condition import Condition
 from detune.brief.statement import unit_direction

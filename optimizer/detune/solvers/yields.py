@@ -11,7 +11,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable import Separation, Stability
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.stability import Stability
 from detune.problem.build import Problem
 from detune.problem.requirement import Requirement
 from detune.proof.scatter_data import LimitedRows, ScatterSystem, values_at
