@@ -22,6 +22,7 @@ CANDIDATES = 5
 FEWEST_LOOKS = 1500
 MOST_LOOKS = 20_000
 UNDAMPED = 1e-12
+AT_ONCE = 256
 
 
 @dataclass(frozen=True, eq=False)
@@ -68,8 +69,9 @@ def sweep_envelope(
         inside = (asked >= at[i]) & (asked <= at[i + 1])
         since = np.r_[asked[inside] - at[i], length]
         turned = np.exp(1j * phase) * drive
-        piece = start * np.exp(modes.poles * since[:, None])
-        piece = piece + turned * _forced(modes.poles, omega[i], rate, power, since)
+        piece = turned * _forced(modes.poles, omega[i], rate, power, since)
+        if np.any(start):
+            piece = piece + start * np.exp(modes.poles * since[:, None])
         y[inside] = piece[:-1]
         start = piece[-1]
         phase += omega[i] * length + 0.5 * rate * length**2
@@ -156,6 +158,15 @@ def _checked(
 
 
 def _forced(poles: ComplexArray, omega: float, rate: float, power: int, time: FloatArray) -> ComplexArray:
+    """The integral of `_forced_at`, (T, m), for so many times at once that the arrays stay in the cache."""
+    blocks = [
+        _forced_at(poles, omega, rate, power, time[first : first + AT_ONCE])
+        for first in range(0, time.size, AT_ONCE)
+    ]
+    return np.concatenate(blocks)
+
+
+def _forced_at(poles: ComplexArray, omega: float, rate: float, power: int, time: FloatArray) -> ComplexArray:
     """exp(pole t) integral_0^t (omega + rate u)^power exp(j(omega u + rate u^2/2) - pole u) du, (T, m)."""
     t = time[:, None]
     if rate == 0.0:
@@ -180,7 +191,7 @@ def _forced(poles: ComplexArray, omega: float, rate: float, power: int, time: Fl
 def _chirp(
     poles: ComplexArray, omega: float, rate: float, t: FloatArray, carrier: ComplexArray, decay: ComplexArray
 ) -> ComplexArray:
-    """The integral of `_forced` for power 0, by the Faddeeva function on the side where it is bounded.
+    """The integral of `_forced_at` for power 0, by the Faddeeva function on the side where it is bounded.
 
     With xi = kappa (u + b), kappa = sqrt(-j rate/2), b = (j omega - pole)/(j rate), the antiderivative of
     exp(q(u)) is -sqrt(pi)/(2 kappa) exp(q) w(j xi), or the same with the other sign and w(-j xi) plus a
@@ -195,7 +206,8 @@ def _chirp(
     first = np.where(start.real < 0.0, 1.0, -1.0)
     last = np.where(end.real < 0.0, 1.0, -1.0)
     passed = (first > 0.0) & (last < 0.0)
-    free = np.exp(np.where(passed, poles * t - 0.5j * rate * b**2, -np.inf))
+    free = np.zeros(passed.shape, dtype=complex)
+    np.exp(poles * t - 0.5j * rate * b**2, out=free, where=passed)
     ends = last * carrier * wofz(-1j * last * end) - first * decay * wofz(-1j * first * start)
     return np.asarray(scale * (ends + 2.0 * free))
 

@@ -24,11 +24,11 @@ Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 Pairs = tuple[tuple[HarmonicAllowable, str], ...]
 TWO_PI = 2.0 * np.pi
-EVENLY = 1200
+EVENLY = 800
 CLOSER_LOOKS = 2
 ROUND_LARGEST = np.linspace(-1.0, 1.0, 121)
 ROUND_PASSAGE = np.concatenate(
-    [np.linspace(-8.0, -3.0, 60, endpoint=False), np.linspace(-3.0, 6.0, 240), np.linspace(6.0, 20.0, 100)]
+    [np.linspace(-8.0, -3.0, 20, endpoint=False), np.linspace(-3.0, 6.0, 80), np.linspace(6.0, 20.0, 40)]
 )
 
 

@@ -118,6 +118,11 @@ def equivalent_loss_factor(mount: Mount, omega: float) -> float:
     return mount.loss_factor[2] + mount.viscous[2] * omega / mount.stiffness_dynamic[2]
 
 
+def _carries(mount: Mount) -> bool:
+    """Whether it carries the machine: not an empty station, nor an absorber, which keep what they are on the map."""
+    return mount.pieces > 0 and mount.moving_mass == 0.0
+
+
 def _vertical_omega(brief: Brief, subject: Assessment) -> float:
     """Angular frequency of the mode that moves the most mass vertically, at which viscous damping is compared."""
     share = [mode.participation[2] for mode in subject.modes]
@@ -127,6 +132,8 @@ def _vertical_omega(brief: Brief, subject: Assessment) -> float:
 def _design_point(brief: Brief, design: Design, omega: float) -> tuple[float, float]:
     total = lost = 0.0
     for group, mount in zip(design.groups, design.mounts, strict=True):
+        if not _carries(mount):
+            continue
         stiffness = pieces_in_group(brief, group) * mount.stiffness_dynamic[2]
         total += stiffness
         lost += stiffness * equivalent_loss_factor(mount, omega)
@@ -138,10 +145,12 @@ def _parts(brief: Brief, problem: Problem, subject: Assessment, omega: float) ->
     share = subject.total_load / pieces
     groups: dict[Mount, list[str]] = {}
     for group in problem.model.groups:
-        for mount in group.mounts:
+        for mount in filter(_carries, group.mounts):
             groups.setdefault(mount, []).append(group.name)
     chosen: dict[Mount, list[str]] = {}
     for name, mount in zip(subject.design.groups, subject.design.mounts, strict=True):
+        if not _carries(mount):
+            continue
         chosen.setdefault(mount, []).append(name)
         groups.setdefault(mount, [])
     return tuple(
@@ -170,6 +179,8 @@ def scaled_mount(mount: Mount, axial: float, loss: float) -> Mount:
 
     Its lateral and static stiffness keep their ratios to the axial dynamic one; its load range is lifted.
     """
+    if not _carries(mount):
+        return mount
     factor = axial / mount.stiffness_dynamic[2]
 
     def scale(axes: tuple[float | None, float | None, float]) -> tuple[float, float, float]:
@@ -194,7 +205,11 @@ def _fields(
     nodes = [(k / total, eta) for eta in loss.tolist() for k in stiffness.tolist()]
     scaled = [tuple(scaled_mount(mount, k, eta) for k, eta in nodes) for mount in design.mounts]
     changed = with_mounts(problem, tuple(scaled))
-    step = int(np.abs(changed.model.ballast_mass - design.ballast).argmin())
+    step = (
+        changed.model.ballast.index(design.stack)
+        if design.stack in changed.model.ballast
+        else int(np.abs(changed.model.ballast_mass - design.ballast).argmin())
+    )
     numbers = np.arange(len(nodes), dtype=np.intp)
     designs = Designs(
         np.repeat(numbers[:, None], len(scaled), axis=1), np.full(len(nodes), step, dtype=np.intp)
@@ -325,9 +340,11 @@ def _dots(ax: "Axes", data: MapData) -> Titles:
         if chosen:
             drawn = ax.scatter(x, y, s=80, facecolors="none", edgecolors=BLACK, linewidths=1.4, zorder=6)
             for part, a, b in zip(dots, x, y, strict=True):
+                # A name on the right half would run over the edge of the map.
+                left = a > float(np.sqrt(data.stiffness[0] * data.stiffness[-1])) / 1e3
                 ax.annotate(
-                    f"{part.part} ({', '.join(part.in_answer)})", (a, b), xytext=(8, 7), textcoords="offset points",
-                    fontsize=8, zorder=7, bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.8},
+                    f"{part.part} ({', '.join(part.in_answer)})", (a, b), xytext=(-8 if left else 8, 7),
+                    textcoords="offset points", ha="right" if left else "left", fontsize=8, zorder=7, bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.8},
                 )  # fmt: skip
         elif carries:
             drawn = ax.scatter(x, y, s=16, color=BLACK, linewidths=0, zorder=4)
