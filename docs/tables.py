@@ -108,6 +108,13 @@ MEANING: dict[str, str] = {
     "Floor.damping_ratio": "left out: 2 %, printed as assumed",
     "Floor.stiffness": "of `mass-spring-damper`",
     "Floor.damping": "of `mass-spring-damper`",
+    "Floor.file": "of `dynamic-stiffness`: CSV file with frequency, stiffness, and imaginary or loss_factor",
+    "Floor.static_stiffness": "of `dynamic-stiffness`: stiffness for loads at rest",
+    "Floor.stations": "of `stiffness-matrix`: the stations in the order of its rows",
+    "Floor.directions": "of `stiffness-matrix`: directions that move, for each station; left out: z alone",
+    "Floor.stiffness_matrix": "of `stiffness-matrix`: rows of values, or a CSV file",
+    "Floor.mass_matrix": "of `stiffness-matrix`: the same of its mass; left out: a floor without mass",
+    "Floor.loss_factor": "of `stiffness-matrix`; left out: 4 %, printed as assumed",
     "Structure.mass": "Matrix Market file of the mass matrix",
     "Structure.stiffness": "Matrix Market file of the stiffness matrix",
     "Structure.file": "NPZ file with `mass` and `stiffness`, or with `frequency` and `shapes`",
@@ -129,6 +136,7 @@ MEANING: dict[str, str] = {
     "Condition.state": "the state of the machine it is judged in; left out: as installed",
     "Condition.run_up": "time in which a shaft runs through its range upwards",
     "Condition.coast_down": "time in which a shaft runs through its range downwards",
+    "Condition.barred": "bands of a shaft's range in which a steady machine may not dwell",
     # Choices
     "CatalogSource.file": "parts list: CSV, XLSX or Parquet, its path relative to the study file",
     "CatalogSource.kind": "kind of part it lists",
@@ -140,15 +148,31 @@ MEANING: dict[str, str] = {
     "Choice.where": "column -> texts admitted, or a window",
     "Choice.parts": "part numbers admitted; left out: all",
     "CatalogSource.sheet": "of a workbook; left out: the first that is not hidden",
+    "Choice.sizes": "width and length of the rectangles that pads may be cut to",
     "Choice.parallel": "how many of the same part may stand side by side at each station",
     "Choice.dampers": "damper catalogs, of which one damper or none stands beside each mount",
     "Choice.empty": "whether the group may be left without parts",
     "Window.min": "least value, with its unit",
     "Window.max": "greatest value, with its unit",
-    "Ballast.position": "centre of the ballast",
+    "Ballast.position": "centre of the ballast; with `catalogs` the middle of the face the pieces are stacked on",
     "Ballast.size": "edges of the box, the same for every step",
     "Ballast.steps": "the masses that may be added",
     "Ballast.cost_per_kg": "cost of each kilogram",
+    "Ballast.catalogs": "lists of ballast to take pieces from, in place of `size`, `steps` and `cost_per_kg`",
+    "Ballast.where": "column -> texts admitted, or a window",
+    "Ballast.parts": "part numbers admitted; left out: all",
+    "Ballast.pieces": "most pieces of one part number, one upon the other",
+    "Ballast.stack": "whether the pieces stand on the face or hang from it",
+    "Ballast.empty": "whether none may be taken",
+    "Absorber.at": "the named point of a body it is fixed to",
+    "Absorber.direction": "along which its mass moves: axis name or a vector of three numbers, of any length",
+    "Absorber.catalogs": "the lists of absorbers it may come from",
+    "Absorber.where": "column -> texts admitted, or a window",
+    "Absorber.parts": "part numbers admitted; left out: all",
+    "Absorber.tunings": "frequencies to which absorbers that can be set may be set, besides their listed one",
+    "Absorber.empty": "whether it may be left out",
+    "Stroke.absorbers": "the absorbers for which it holds; left out: all",
+    "Stroke.limit": "`\"part\"` for the stroke the list states, or a length",
     "Objectives.trade": "the first decides the answer; the front is over all",
     # Sizing
     "Sizing.unknown": "the unknowns",
@@ -231,6 +255,12 @@ MEANING: dict[str, str] = {
     "BandLimit.velocity_rms": "limit of each band of a mask",
     "Separation.exempt_amplification": "modes that amplify less are left out of the limit; left out: none is",
     "SettlingTime.to": "share of the amplitude that is left",
+    "FloorRatio.direction": "along which the unit force acts: axis name or a vector",
+    "FloorRatio.from_frequency": "what lies below is not judged",
+    "DwellBands.shaft": "the shaft whose speeds are barred",
+    "DwellBands.width": "greatest total width of all bands, in speed; this or `share`",
+    "DwellBands.share": "greatest total width as a share of the shaft's range",
+    "DwellBands.bands": "how many bands there may be; left out: any number",
     "Transmissibility.of": "ratio of forces or of motions",
     "Transmissibility.at": "the point whose motion is compared, for `motion`",
     "Transmissibility.from_frequency": "what lies below is not judged",
@@ -288,6 +318,14 @@ def _quantity(kind: str) -> str:
     return f'{unit.meaning}, `"{unit.examples[0]}"`'
 
 
+# Keys of which one group is due where the other is left out.
+LEFT_OUT: dict[str, str] = {
+    "Ballast.size": "required without `catalogs`",
+    "Ballast.steps": "required without `catalogs`",
+    "Ballast.cost_per_kg": "required without `catalogs`",
+}
+
+
 def default_of(field: FieldInfo) -> str:
     """Return what holds where a key is left out."""
     if field.is_required():
@@ -331,7 +369,8 @@ def key_table(cls: type[Statement], left_out: tuple[str, ...] = ()) -> str:
     for key, field in cls.model_fields.items():
         if key not in left_out:
             what = words_of(field.annotation, tuple(field.metadata))
-            lines.append(f"| `{key}` | {what} | {default_of(field)} | {meaning_of(cls, key)} |")
+            default = LEFT_OUT.get(f"{cls.__name__}.{key}") or default_of(field)
+            lines.append(f"| `{key}` | {what} | {default} | {meaning_of(cls, key)} |")
     return "\n".join(lines) + "\n"
 
 

@@ -120,6 +120,14 @@ def _add_options(
     run.add_argument(
         "--workers", type=int, default=1, metavar="N", help="worker threads of the bounded search"
     )
+    size.add_argument(
+        "--second-opinion",
+        action="store_true",
+        help="on one axis: solve the same problem by SCIP as well, and set its answer beside the exact one",
+    )
+    size.add_argument(
+        "--time-limit", metavar="TIME", help='of the second opinion, for example "20 s" (default: 60 s)'
+    )
     for verb in (run, vary):
         verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
 
@@ -137,16 +145,20 @@ def _check(options: argparse.Namespace) -> int:
         gc.enable()
     brief = study.brief
     parts = ", ".join(f"{len(catalog.parts)} in {name}" for name, catalog in study.catalogs.items())
-    steps = len(brief.ballast.steps) if brief.ballast else 1
+    ballast = brief.ballast
+    steps = (1, "ballast step") if ballast is None else (len(ballast.steps), "ballast step")
+    if ballast is not None and ballast.catalogs:
+        steps = (len(ballast.catalogs), "ballast list")
     print(f"{options.study}: no fault found")
     print(f"  {brief.title}")
     counted = (
         (len(brief.stations), "station"),
-        (len(brief.groups), "group"),
+        (len(brief.station_groups), "group"),
+        *([(len(brief.absorbers), "absorber")] if brief.absorbers else []),
         (len(brief.conditions), "condition"),
         (len(brief.forcing), "forcing"),
         (len(brief.allowables), "allowable"),
-        (steps, "ballast step"),
+        steps,
     )
     print("  " + ", ".join(f"{count} {name}{'' if count == 1 else 's'}" for count, name in counted))
     print(f"  parts: {parts}")
@@ -218,15 +230,20 @@ def _vary(options: argparse.Namespace) -> int:
 
 
 def _size(options: argparse.Namespace) -> int:
+    from detune.ground.errors import BriefError, Fault
     from detune.report.folder import check_folder
     from detune.report.sizing_page import sizing_summary, write_sizing
     from detune.study.load import load_study
     from detune.study.size import size_study
 
+    if options.time_limit is not None and not options.second_opinion:
+        expected = "--second-opinion beside it: sizing itself takes no time limit"
+        raise BriefError([Fault("--time-limit", None, "--time-limit", options.time_limit, expected)])
     study = load_study(options.study)
     folder = Path(options.out) if options.out else Path("results") / f"{Path(options.study).stem}-sizing"
     check_folder(folder, options.overwrite)
-    result = size_study(study)
+    limit = _settings(options).time_limit or 60.0
+    result = size_study(study, opinion_limit=limit if options.second_opinion else None)
     write_sizing(result, folder, options.overwrite)
     print(sizing_summary(result))
     print(f"\nResult folder: {folder} (open report.html in a browser)")

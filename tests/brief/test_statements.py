@@ -156,3 +156,16 @@ def test_schema_names_every_table_and_kind(tmp_path: Path) -> None:
         if "kind" in definition.get("properties", {})
     }
     assert {f.kind for f in good.forcing} | {a.kind for a in good.allowables} <= kinds
+
+
+def test_schema_asks_for_lists_or_a_sizing_table() -> None:
+    """A study that sizes its parts may stand before there is a parts list; absorbers and ballast of lists are known."""
+    schema = json.loads(json.dumps(study_schema()))
+    assert {"catalog", "choice"}.isdisjoint(schema["required"])
+    assert schema["anyOf"] == [{"required": ["catalog", "choice"]}, {"required": ["sizing"]}]
+    assert schema["properties"]["absorber"]["items"] == {"$ref": "#/$defs/Absorber"}
+    assert {"name", "at", "direction", "catalogs"} == set(schema["$defs"]["Absorber"]["required"])
+    ballast = schema["$defs"]["Ballast"]
+    assert ballast["required"] == ["position"]
+    assert [each["required"] for each in ballast["oneOf"]] == [["size", "steps", "cost_per_kg"], ["catalogs"]]
+    assert "sizes" in schema["$defs"]["Choice"]["properties"] and "Stroke" in schema["$defs"]

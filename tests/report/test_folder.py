@@ -12,7 +12,7 @@ from detune.report.strict_json import json_text, plain
 
 FILES = {
     "study.toml", "inputs.json", "answer.json", "proof.json", "proof-record.json", "front.csv", "designs.csv", "responses.csv",
-    "margins.csv", "stations.csv", "modes.csv", "why.csv", "report.html", "plots",
+    "margins.csv", "stations.csv", "modes.csv", "contributions.csv", "why.csv", "report.html", "plots",
 }  # fmt: skip
 
 

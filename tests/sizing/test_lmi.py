@@ -123,6 +123,59 @@ def test_limits_that_hold_whatever_the_damping_are_never_unsafe():
     assert max(conservative) > 0.2
 
 
+@pytest.mark.parametrize("side", ["below", "above"])
+def test_sums_and_resultants_on_either_side_hold_at_thousands_of_dampings(side):
+    """Two loads that act together share one limit, and of three rows the root of the summed squares is limited.
+
+    Checked by plain complex solves at 3000 random dampings (of any rank, viscous and loss factor) for each side.
+    """
+    for seed in range(4):
+        model = random_model(seed)
+        rng = np.random.default_rng(seed + 50)
+        none = np.zeros(0)
+        soft, stiff = model.frequencies(model.lower, none)[-1], model.frequencies(model.upper, none)[0]
+        hertz = 1.5 * soft if side == "below" else stiff / 1.5
+        rows = rng.normal(size=(3, 4))
+        loads = [rng.normal(size=4) * 40 + 1j * rng.normal(size=4) * 20 for _ in range(2)]
+        parts = [DampingFreeLimit("sum", hertz, rows, load, 1.0, side) for load in loads]
+        at = model.lower if side == "below" else model.upper
+        most = 1.4 * sum(damping_free_bound(model, part, at, none) for part in parts)
+        limits = tuple(DampingFreeLimit("sum", hertz, rows, load, most, side) for load in loads)
+        weights = -np.ones(3) if side == "below" else np.ones(3)
+        edges = {"modes_below": hertz} if side == "below" else {"modes_above": hertz}
+        answer = cheapest(model, weights, none, limits=limits, **edges)
+        assert answer.status == "solved"
+        assert sum(damping_free_bound(model, x, answer.stiffness, none) for x in limits) <= most * (1 + 1e-6)
+        stiffness = model.stiffness_at(answer.stiffness)
+        worst = 0.0
+        for _ in range(750):
+            root = rng.normal(size=(4, int(rng.integers(1, 5)))) * 10 ** rng.uniform(-2, 4)
+            stretch = rng.uniform(1.0, 3.0) if side == "below" else rng.uniform(0.05, 1.0)
+            w = 2 * math.pi * hertz * stretch
+            kind = w if rng.random() < 0.5 else 1.0
+            d = stiffness - w**2 * model.mass + 1j * kind * root @ root.T
+            total = sum(float(np.sqrt((np.abs(rows @ np.linalg.solve(d, load)) ** 2).sum())) for load in loads)
+            worst = max(worst, total)
+        assert worst <= most * (1 + 1e-6)
+        assert worst > 0.05 * most
+
+
+def test_stiffness_that_goes_with_the_ballast():
+    """Gravity takes stiffness away with every kg: the ballast that the soft side then wants, by hand for one freedom.
+
+    m = 10 + b, k = 2e4 - 100 b, below 10 Hz with 20 %: k <= (2 pi 8)^2 m, so b = (2e4 - 10 w^2)/(100 + w^2).
+    """
+    model = StiffnessModel(
+        np.array([[10.0]]), np.array([[[1.0]]]), np.zeros((1, 1)), np.array([2e4]), np.array([2e4]),
+        np.array([[[1.0]]]), np.array([100.0]), np.array([[[-100.0]]]),
+    )  # fmt: skip
+    w2 = (2 * math.pi * 8.0) ** 2
+    answer = cheapest(model, np.zeros(1), np.ones(1), modes_below=8.0)
+    assert answer.status == "solved"
+    assert answer.ballast[0] == pytest.approx((2e4 - 10 * w2) / (100 + w2), rel=1e-6)
+    assert model.frequencies(answer.stiffness, answer.ballast)[0] == pytest.approx(8.0, rel=1e-6)
+
+
 def test_collocated_limit_is_exact_without_damping():
     # Drive point (row = load direction): sqrt(c A^-1 c f A^-1 f) is the undamped response itself.
     model = random_model(3)

@@ -3,17 +3,19 @@
 from __future__ import annotations
 
 import importlib.util
-import json
+import math
 import pathlib
-import statistics
-import time
 from dataclasses import replace
 
+import numpy as np
 import pytest
 
 from detune.sizing.one_axis import solve_one_axis
-from detune.sizing.one_axis_pyomo import MountCount, build_model, solve_with_scip
-from detune.sizing.statement import Ballast, Objective, OneAxisProblem, ResponseLimit, SizingError
+from detune.sizing.one_axis_pyomo import PartCount, needs_lines
+from detune.sizing.one_axis_pyomo_limits import Scaled, worst_place
+from detune.sizing.statement import Ballast, Objective, OneAxisProblem, ResponseLimit
+from detune.solvers import size_scip
+from detune.solvers.size_scip import solve_with_scip
 
 _spec = importlib.util.spec_from_file_location(
     "sizing_instances", pathlib.Path(__file__).with_name("instances.py")
@@ -23,96 +25,61 @@ instances = importlib.util.module_from_spec(_spec)
 _spec.loader.exec_module(instances)
 
 
-def statable(count: int, first: int, ballast: str = "none"):
-    problems, seed = [], first
-    while len(problems) < count:
-        problem = instances.random_problem(seed, ballast=ballast)
-        seed += 1
-        try:
-            build_model(problem)
-        except SizingError:
-            continue
-        problems.append(problem)
-    return problems
+def random_problems(count: int, first: int, ballast: str = "none"):
+    return [instances.random_problem(seed, ballast=ballast) for seed in range(first, first + count)]
 
 
 def agree(problems, time_limit: float):
-    """Compare; returns (disjoint instances, undecided by SCIP, time ratios)."""
-    disjoint, undecided, ratios = 0, 0, []
+    """Compare; returns (disjoint instances, infeasible ones, those SCIP left undecided)."""
+    disjoint = empty = undecided = 0
     for problem, second in zip(problems, solve_with_scip(problems, time_limit), strict=True):
-        start = time.perf_counter()
         first = solve_one_axis(problem)
-        seconds = time.perf_counter() - start
         disjoint += len(first.branches) > 1
-        if second.status == "time limit":
+        if second.status in ("time limit", "failed"):
+            # An error of SCIP's own (of its LP solver, say) ends its process; it says nothing, like a time limit.
             undecided += 1
             continue
         if not first.branches:
-            assert second.status == "infeasible"
+            assert second.status == "infeasible", second
+            empty += 1
             continue
         assert second.status == "optimal", second
         assert second.objective == pytest.approx(first.best.objective, rel=1e-6, abs=1e-9)
-        ratios.append(second.seconds / seconds)
-    return disjoint, undecided, ratios
+    return disjoint, empty, undecided
 
 
-def test_twenty_random_instances_agree():
-    disjoint, undecided, _ = agree(statable(20, 0), 6.0)
-    assert disjoint >= 3
+def test_fifteen_random_instances_agree():
+    disjoint, empty, undecided = agree(random_problems(15, 10), 10.0)
+    assert disjoint >= 2 and empty >= 1
     assert undecided <= 1
 
 
 def test_ballast_in_steps_agrees():
-    _, undecided, _ = agree(statable(4, 1000, "steps"), 6.0)
-    assert undecided <= 1
+    disjoint, _, undecided = agree(random_problems(4, 1000, "steps"), 10.0)
+    assert disjoint >= 2 and undecided <= 1
 
 
 @pytest.mark.nightly
-def test_two_hundred_random_instances_agree():
-    disjoint, undecided, _ = agree(statable(200, 0), 20.0)
+def test_two_hundred_random_instances_agree(capsys):
+    """DESIGN 6: agreement within 1e-6 on 200 instances, those whose feasible set has several parts among them."""
+    disjoint, empty, undecided = agree(random_problems(200, 0), 20.0)
+    with capsys.disabled():
+        print(f" 200 instances: {disjoint} disjoint, {empty} infeasible, {undecided} left undecided by SCIP")
     assert disjoint >= 20
     assert undecided <= 10
 
 
 @pytest.mark.nightly
 def test_ballast_random_instances_agree():
-    agree(statable(25, 3000, "steps") + statable(25, 4000, "continuous"), 20.0)
-
-
-@pytest.mark.benchmark
-def test_time_ratio_of_the_two(tmp_path):
-    _, undecided, ratios = agree(statable(60, 0), 20.0)
-    thirty = [thirty_lines(seed) for seed in range(20)]
-    _, more, wide = agree(thirty, 20.0)
-    figures = {
-        "median ratio, few limits": statistics.median(ratios),
-        "median ratio, thirty lines": statistics.median(wide),
-        "undecided by SCIP": undecided + more,
-    }
-    (tmp_path / "one_axis.json").write_text(json.dumps(figures))
-    print(json.dumps(figures))
-
-
-def thirty_lines(seed: int) -> OneAxisProblem:
-    import numpy as np
-
-    rng = np.random.default_rng(seed)
-    problem = instances.random_problem(seed, ranges=False)
-    k = float(np.exp(rng.uniform(*np.log(problem.stiffness_bounds))))
-    d = float(np.exp(rng.uniform(*np.log(problem.damping_bounds))))
-    limits = []
-    for i, f in enumerate(np.linspace(5, 60, 30)):
-        raw = ResponseLimit(f"{i}", "displacement", 1.0, float(f), float(f), "force", 1.0)
-        level = float(instances.response(raw, problem.damping_kind, k, d, problem.mass, f))
-        limits.append(replace(raw, limit=level * float(rng.uniform(1.0, 3.0))))
-    return replace(problem, limits=tuple(limits), sag=None)
+    _, _, undecided = agree(random_problems(25, 3000, "steps") + random_problems(25, 4000, "continuous"), 20.0)
+    assert undecided <= 5
 
 
 def test_a_count_of_equal_mounts_is_chosen_like_by_trying_each():
     limit = ResponseLimit("X", "displacement", 2e-4, 12.0, 12.0, "force", 900.0)
     goal = Objective("weighted sum", stiffness_weight=2e-5, damping_weight=1e-3)
     problem = OneAxisProblem(300.0, "viscous", (5e4, 1.5e6), (50.0, 4000.0), goal, (limit,))
-    second = solve_with_scip([problem], 20.0, [MountCount(2, 6, 3.0)])[0]
+    second = solve_with_scip([problem], 20.0, [PartCount(2, 6, 3.0)])[0]
     tried = {}
     for n in range(2, 7):
         bounds = (5e4 * n, 1.5e6 * n), (50.0 * n, 4000.0 * n)
@@ -139,8 +106,64 @@ def test_separation_objective_agrees():
     assert second.objective == pytest.approx(solve_one_axis(problem).best.objective, rel=1e-6)
 
 
-def test_a_range_of_high_degree_is_refused_with_a_reason():
-    limit = ResponseLimit("a", "acceleration", 1.0, 10.0, 20.0, "unbalance", 1.0)
-    problem = OneAxisProblem(1.0, "viscous", (1.0, 2.0), (0.0, 1.0), Objective("softest"), (limit,))
-    with pytest.raises(SizingError, match="State it at lines"):
-        build_model(problem)
+def test_a_force_through_one_part_is_shared_by_their_number():
+    """Undamped, T = k/(m w^2 - k): the force through one of n parts is F T / n, by hand for every n."""
+    mass, hertz, force, each = 200.0, 20.0, 500.0, 12.0
+    limit = ResponseLimit("through one", "transmitted force", each, hertz, hertz, "force", force)
+    problem = OneAxisProblem(mass, "viscous", (1e4, 1e6), (0.0, 0.0), Objective("stiffest"), (limit,))
+    inertia = mass * (2 * math.pi * hertz) ** 2
+    second = solve_with_scip([problem], 20.0, [PartCount(1, 4, 0.0, 0.0, ("through one",))])[0]
+    share = 4 * each / force
+    assert second.count == 4
+    assert second.stiffness == pytest.approx(inertia * share / (1 + share), rel=1e-6)
+
+
+def test_the_least_level_of_all_limits():
+    """Peak of a range holding the resonance at zeta = 0.1: 5.122774 (Rao 5e ch. 3, CHECKS S5), so half of it is level 2."""
+    k, m = 3e5, 40.0
+    c = 0.2 * math.sqrt(k * m)
+    limit = ResponseLimit("T", "transmissibility", 0.5 * 5.122774, 0.01, 1000.0)
+    problem = OneAxisProblem(m, "viscous", (k, k), (c, c), Objective("least damping"), (limit,))
+    assert solve_with_scip([problem], 20.0, level=True)[0].objective == pytest.approx(2.0, rel=1e-6)
+
+
+def test_a_range_of_high_degree_is_closed_by_its_worst_places():
+    """Degree three and more in w^2 over a range: several runs, and SCIP's design holds between the lines."""
+    problem = instances.random_problem(135)
+    assert sum(needs_lines(limit) for limit in problem.limits) == 2
+    second = solve_with_scip([problem], 20.0)[0]
+    assert second.status == "optimal" and second.runs > 1
+    assert second.objective == pytest.approx(solve_one_axis(problem).best.objective, rel=1e-6)
+    assert instances.meets(
+        problem,
+        np.array([second.stiffness]),
+        np.array([second.damping]),
+        problem.mass,
+        points=5000,
+        slack=1e-6,
+    )[0]
+
+
+def test_worst_place_against_a_dense_look():
+    limit = ResponseLimit("a", "acceleration", 1.0, 5.0, 60.0, "unbalance", 0.02)
+    problem = OneAxisProblem(50.0, "viscous", (1e5, 1e6), (0.0, 1e4), Objective("softest"), (limit,))
+    scaled = Scaled(problem)
+    k, c = 2e5, 300.0
+    parts = (k / scaled.stiffness) ** 2, (c / scaled.damping) ** 2
+    square, place = worst_place(scaled.limit(limit), k / scaled.stiffness, 1.0, parts)
+    dense = {
+        f: float(instances.response(limit, "viscous", k, c, 50.0, f))
+        for f in (5 + i * 55 / 40000 for i in range(40001))
+    }
+    best = max(dense, key=dense.__getitem__)
+    assert math.sqrt(square) == pytest.approx(dense[best], rel=1e-7)
+    assert math.sqrt(place * scaled.omega2) / (2 * math.pi) == pytest.approx(best, rel=1e-3)
+
+
+def test_a_process_that_overruns_says_nothing(monkeypatch):
+    """A limit that is over at once: no status but "time limit", no numbers."""
+    problem = instances.random_problem(112)
+    second = solve_with_scip([problem], 1e-9)[0]
+    assert second.status == "time limit" and math.isnan(second.objective)
+    monkeypatch.setattr(size_scip, "run", math.sqrt)
+    assert solve_with_scip([problem], 5.0)[0].status == "failed"

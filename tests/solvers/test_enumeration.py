@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import importlib.util
 import itertools
+import time
 from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
@@ -23,6 +24,7 @@ from detune.problem.build import Problem, build
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.response.design import Design
+from detune.response.designs import Designs
 from detune.solvers import enumeration
 from detune.solvers.nondominated import as_minimised, nondominated
 from detune.solvers.outcome import Outcome, Progress, Settings
@@ -265,3 +267,30 @@ def test_the_enumeration_does_not_depend_on_its_block_size(monkeypatch: pytest.M
     assert np.array_equal(whole.designs.part, pieces.designs.part)
     assert [rule.excluded for rule in whole.record.rules] == [rule.excluded for rule in pieces.record.rules]
     assert whole.closest_of == pieces.closest_of
+
+
+@pytest.mark.parametrize("way", ["time limit", "interrupted"])
+def test_a_slow_stage_is_left_within_a_second(monkeypatch: pytest.MonkeyPatch, way: str) -> None:
+    """A last stage that takes 20 ms a design, 48 of them in one block: stopped on the way, nothing half counted."""
+    real = enumeration.stages
+
+    def slow_stages(problem: Problem) -> tuple[object, ...]:
+        *first, last = real(problem)
+
+        def margins(designs: Designs) -> object:
+            time.sleep(0.02 * designs.count)
+            return last.margins(designs)
+
+        # Before all others, so that every design comes to it.
+        return (replace(last, margins=margins, bound=True), *first, last)
+
+    monkeypatch.setattr(enumeration, "stages", slow_stages)
+    problem = build(study(3), {"list": machines.catalog(*parts_list(3, 4))})
+    begun = time.perf_counter()
+    asked = Settings(time_limit=0.3) if way == "time limit" else Settings(
+        interrupted=lambda: time.perf_counter() - begun > 0.3
+    )  # fmt: skip
+    outcome = enumeration.solve(problem, asked)
+    # All 48 would take 0.96 s in this stage alone; sixteen at most are judged at once.
+    assert outcome.stopped == way and outcome.record.looked_at < 48
+    assert outcome.record.met + sum(r.excluded for r in outcome.record.rules) == outcome.record.looked_at

@@ -134,7 +134,8 @@ def test_the_drawn_shock_is_the_judged_one(sorter: Result) -> None:
         # 6.5 g for 11 ms.
         assert panel.input.max() == pytest.approx(6.5 * GRAVITY, rel=1e-3)
         assert panel.input_time[-1] == pytest.approx(0.011)
-        assert np.abs(panel.value).max() == pytest.approx(abs(panel.largest), rel=1e-12)
+        ends = panel.value.max(), panel.value.min()
+        assert min(abs(end - panel.largest) for end in ends) <= 1e-12 * abs(panel.largest)
         assert abs(panel.largest) <= panel.room * (1.0 + 1e-9)
     first = data.panels[0]
     assert first.title.startswith("acceleration z, peak") and first.unit == "m/s²"

@@ -108,10 +108,27 @@ def demanded(brief: Brief) -> tuple[tuple[Allowable, ...], tuple[str, ...]]:
         everywhere = len(free) == len(brief.stations)
         added.append(demand if everywhere else demand.model_copy(update={"stations": free}))
         notes.append(note if everywhere else f"{note} (also at {', '.join(free)})")
+    if brief.absorbers:
+        stroke = _stroke_demanded(brief)
+        added += stroke
+        notes += ["the mass of an absorber moves within the stroke its list states"] * len(stroke)
     if not any(isinstance(stated, Stability) for stated in brief.allowables):
         added.append(Stability())
         notes.append("the machine stands: it would not topple under its own weight")
     return (*brief.allowables, *added), tuple(notes)
+
+
+def _stroke_demanded(brief: Brief) -> list[Allowable]:
+    """Return the limit on the strokes of absorbers for which no allowable states it in every condition."""
+    from detune.brief.allowable.stroke import Stroke
+
+    names = [absorber.name for absorber in brief.absorbers]
+    covered: set[str] = set()
+    for stated in brief.allowables:
+        if isinstance(stated, Stroke) and stated.limit == "part" and stated.conditions is None:
+            covered.update(stated.absorbers or names)
+    free = tuple(name for name in names if name not in covered)
+    return [Stroke(absorbers=free)] if free else []
 
 
 def _stations_free_of(brief: Brief, demand: "LoadRange | MountDeflection | Uplift") -> tuple[str, ...]:

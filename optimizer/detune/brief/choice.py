@@ -1,8 +1,8 @@
-"""What may be chosen: catalogs, the parts each group may take, and ballast in steps."""
+"""What may be chosen: catalogs, the parts each group may take, and ballast in steps or from a list."""
 
 from typing import Annotated, Literal
 
-from pydantic import BeforeValidator, field_validator, model_validator
+from pydantic import BeforeValidator, ConfigDict, Field, field_validator, model_validator
 
 from detune.brief.statement import (
     Cost,
@@ -78,6 +78,8 @@ class Window(Statement):
 class Choice(Statement):
     """The parts one group may take: from which catalogs, filtered by columns, or named one by one.
 
+    `catalogs` are lists of mounts or of pads. `sizes`: width and length of the rectangles a pad may be cut to, along
+    the local x and y of its station; a pad takes every size that its sheet and its range of shape factors allow.
     `parallel`: how many of the same part may stand side by side at each station, for example [1, 2].
     `dampers`: damper catalogs of which one damper, or none, may stand beside each mount. `empty`: whether
     the group may be left without parts.
@@ -87,9 +89,20 @@ class Choice(Statement):
     catalogs: tuple[Name, ...]
     where: dict[Name, tuple[Text, ...] | Window] = {}
     parts: tuple[Name, ...] | None = None
+    sizes: tuple[tuple[Length, Length], ...] = ()
     parallel: tuple[int, ...] = (1,)
     dampers: tuple[Name, ...] = ()
     empty: bool = False
+
+    @field_validator("sizes")
+    @classmethod
+    def _sizes(cls, value: tuple[tuple[float, float], ...]) -> tuple[tuple[float, float], ...]:
+        for size in value:
+            if min(size) <= 0.0:
+                raise refuse(f"{1e3 * size[0]:g} x {1e3 * size[1]:g} mm", "a width and a length above zero")
+        if len(set(value)) != len(value):
+            raise refuse("a size twice", "each size once")
+        return value
 
     @field_validator("parallel")
     @classmethod
@@ -112,19 +125,63 @@ class Choice(Statement):
 
 
 class Ballast(Statement):
-    """Mass that may be added in steps: a uniform box centred at `position`, grown at constant size.
+    """Mass that may be added: in steps of a uniform box, or as pieces of a list.
 
-    Each step is a total mass; put "0 kg" in the list to allow none.
+    In steps: a box of `size` centred at `position`, grown at constant size; each of `steps` is a total mass (put
+    "0 kg" in the list to allow none) at `cost_per_kg`. From a list: up to `pieces` equal pieces of one row of
+    `catalogs`, filtered by `where` and `parts`, one upon the other, with their own mass, size and price; `position`
+    is then the middle of the face they are stacked on, `stack` whether "up" or "down" from it, and `empty` whether
+    none may be taken. No more pieces are taken than the list states in stock.
     """
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "oneOf": [{"required": ["size", "steps", "cost_per_kg"]}, {"required": ["catalogs"]}]
+        }
+    )
 
     on: Name | None = None
     position: Position
-    size: tuple[Length, Length, Length]
-    steps: tuple[Mass, ...]
-    cost_per_kg: Cost
+    size: tuple[Length, Length, Length] = (0.0, 0.0, 0.0)
+    steps: tuple[Mass, ...] = ()
+    cost_per_kg: Cost = 0.0
+    catalogs: tuple[Name, ...] = ()
+    where: dict[Name, tuple[Text, ...] | Window] = {}
+    parts: tuple[Name, ...] | None = None
+    pieces: int = Field(default=1, strict=True)
+    stack: Literal["up", "down"] = "up"
+    empty: bool = True
+
+    @field_validator("parts")
+    @classmethod
+    def _some(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
+        return listed_once(value)
 
     @model_validator(mode="after")
-    def _values(self) -> "Ballast":
+    def _one_way(self) -> "Ballast":
+        ladder, listed = ("size", "steps", "cost_per_kg"), ("where", "parts", "pieces", "stack", "empty")
+        stated = self.model_fields_set
+        if "catalogs" in stated:
+            listed_once(self.catalogs)
+            for key in ladder:
+                if key in stated:
+                    raise refuse(
+                        key, f'no "{key}" beside "catalogs": the pieces of the list have their own', at=key
+                    )
+            if self.pieces < 1:
+                raise refuse(self.pieces, "a whole number of pieces, 1 or more", at="pieces")
+            return self
+        for key in ladder:
+            if key not in stated:
+                raise refuse("", f'"{key}", which has no default (or "catalogs", to take pieces of a list)')
+        for key in listed:
+            if key in stated:
+                raise refuse(
+                    key, f'"{key}" beside "catalogs" alone, the lists that pieces are taken from', at=key
+                )
+        return self._sound_steps()
+
+    def _sound_steps(self) -> "Ballast":
         if not self.steps:
             raise refuse("[]", 'at least one step, for example ["0 kg", "40 kg"]', at="steps")
         if min(self.steps) < 0.0:

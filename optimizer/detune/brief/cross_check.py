@@ -4,6 +4,8 @@ from collections.abc import Iterable
 
 from detune.brief.allowable.base import BandAllowable, HarmonicAllowable
 from detune.brief.brief import Brief, applies
+from detune.brief.dwell import barred_checked
+from detune.brief.dwell_check import dwell_checked
 from detune.brief.finding import Finding, Path
 from detune.brief.floor_check import floor_checked
 from detune.brief.forcing.base import Forcing
@@ -43,6 +45,8 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
             not_matching,
             sizing_checked,
             floor_checked,
+            barred_checked,
+            dwell_checked,
         )
         for finding in check(brief)
     ]
@@ -181,10 +185,27 @@ def _states(brief: Brief) -> list[Finding]:
                 findings.append(
                     _unknown(("state", index, "groups"), name, brief.groups, "a group", "station")
                 )
+        if any(state.sustained_acceleration):
+            findings += _sustained(brief, ("state", index, "sustained_acceleration"))
         if not any(condition.state == state.name for condition in brief.conditions):
             expected = f'a condition judged in it, with state = "{state.name}"'
             findings.append(Finding(("state", index, "name"), state.name, expected, depends=("condition",)))
     return findings
+
+
+def _sustained(brief: Brief, path: Path) -> list[Finding]:
+    """What a sustained acceleration is not carried through to."""
+    found = "a sustained acceleration"
+    if brief.absorbers:
+        expected = "none beside absorbers, whose masses it would pull along their springs"
+        return [Finding(path, found, expected, depends=("absorber",))]
+    if brief.scatter is not None and (brief.scatter.mass is not None or brief.scatter.centre is not None):
+        expected = "none under scatter of mass or centre: the pull would scatter with them"
+        return [Finding(path, found, expected, depends=("scatter",))]
+    if brief.structure is not None:
+        expected = "none beside a [structure], whose own masses it would pull too"
+        return [Finding(path, found, expected, depends=("structure",))]
+    return []
 
 
 def _conditions_named(path: Path, named: tuple[str, ...] | None, brief: Brief) -> list[Finding]:

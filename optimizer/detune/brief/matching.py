@@ -143,10 +143,19 @@ def _why_not(
     if allowable.has_weighting():
         return f"tones and noise alone under a frequency-weighted limit: {where}"
     if transient.base is not None and not transient.weight_acts and allowable.kind == "displacement":
-        return (
-            'kind = "relative-motion" with to = "floor" under a shock or record of the floor\'s acceleration, which '
-            f"does not say where the floor ends up; or {where}"
-        )
+        return f'kind = "relative-motion" with to = "floor" under {_never_ends(transient)}; or {where}'
     if transient.record is None and allowable.statistic() == "rms":
         return f'measure = "peak" under a shock, whose rms depends on how long one looks; or {where}'
     return ""
+
+
+def _never_ends(transient: Transient) -> str:
+    """Say why an absolute displacement has no largest value under a motion of the floor."""
+    if transient.record is not None:
+        return (
+            "a record of the floor's acceleration, which does not say where the floor was nor how fast at its start"
+        )
+    return (
+        "a pulse or step, after which the floor keeps the velocity it was given (it is at rest before), so that its "
+        "displacement grows for ever"
+    )

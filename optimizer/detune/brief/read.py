@@ -9,10 +9,12 @@ from typing import Any
 from pydantic import ValidationError
 
 from detune.brief import allowable, forcing
+from detune.brief.absorber import Absorber
 from detune.brief.brief import Brief
 from detune.brief.choice import Ballast, CatalogSource, Choice, Objectives
 from detune.brief.condition import Condition
 from detune.brief.cross_check import cross_check
+from detune.brief.dwell import without_barred
 from detune.brief.finding import Finding
 from detune.brief.floor import Floor
 from detune.brief.machine import Body, Connection, Point, Station, SteadyLoad
@@ -42,6 +44,7 @@ REPEATED: dict[str, type[Statement]] = {
     "condition": Condition,
     "catalog": CatalogSource,
     "choice": Choice,
+    "absorber": Absorber,
 }
 BY_KIND: dict[str, Mapping[str, type[Statement]]] = {"forcing": forcing.KINDS, "allowable": allowable.KINDS}
 FIELD = {
@@ -54,6 +57,7 @@ FIELD = {
     "condition": "conditions",
     "catalog": "catalogs",
     "choice": "choices",
+    "absorber": "absorbers",
     "forcing": "forcing",
     "allowable": "allowables",
 }
@@ -140,7 +144,7 @@ def scan_data(data: Mapping[str, Any], positions: Positions, path: str | Path) -
     )
     findings += [_in_file(finding, rows) for finding in cross_check(whole, not_read)]
     faults = tuple(to_fault(str(path), finding, positions) for finding in findings)
-    return Reading(None if faults else whole, read.get("catalogs", ()), faults, positions)
+    return Reading(None if faults else without_barred(whole), read.get("catalogs", ()), faults, positions)
 
 
 def _nothing() -> dict[str, tuple[Statement, ...]]:

@@ -2,7 +2,7 @@
 
 from typing import Any
 
-from detune.brief.read import BY_KIND, REPEATED, REQUIRED, SINGLE, TEXTS, YES_NO
+from detune.brief.read import BY_KIND, LISTS, REPEATED, REQUIRED, SINGLE, TEXTS, YES_NO
 
 
 def study_schema() -> dict[str, Any]:
@@ -33,7 +33,9 @@ def study_schema() -> dict[str, Any]:
         "title": "detune study",
         "type": "object",
         "properties": properties,
-        "required": list(REQUIRED),
+        "required": [name for name in REQUIRED if name not in LISTS],
+        # A study that sizes its parts may stand before there is a parts list.
+        "anyOf": [{"required": list(LISTS)}, {"required": ["sizing"]}],
         "additionalProperties": False,
         "$defs": definitions,
     }

@@ -31,6 +31,7 @@ Kind = Literal[
     "absorber-tuning",
     "absorber-damping",
     "position",
+    "parallel",
 ]
 UNITS: dict[str, str] = {
     "stiffness": "stiffness",
@@ -41,13 +42,12 @@ UNITS: dict[str, str] = {
     "absorber-tuning": "frequency",
     "absorber-damping": "ratio",
     "position": "length",
+    "parallel": "count",
 }
-OF_GROUP = ("stiffness", "loss-factor", "viscous", "absorber-tuning", "absorber-damping")
+OF_GROUP = ("stiffness", "loss-factor", "viscous", "absorber-tuning", "absorber-damping", "parallel")
 OF_BODY = ("absorber-mass", "absorber-tuning", "absorber-damping")
 FROM_ZERO = ("ballast", "viscous", "position")
-LESS = ("cost", "added-mass", "worst-response", "stiffness", "damping")
-MORE = ("separation", "stiffness")
-Minimised = Literal["cost", "added-mass", "worst-response", "stiffness", "damping"]
+Minimised = Literal["cost", "added-mass", "worst-response", "stiffness", "damping", "absorber-mass"]
 Maximised = Literal["separation", "stiffness"]
 Bound = Text | float
 
@@ -59,7 +59,8 @@ class SizingUnknown(Statement):
     both lateral directions, "x" and "y" one of them. `loss-factor` and `viscous` are those of one part of the
     group. `ballast` is the added mass, in steps of `step` where one is stated. `absorber-mass` is the mass of the
     body; `absorber-tuning` its frequency on its own group's parts with the machine held, `absorber-damping` the
-    damping ratio there. `position`: the distance of the stations from the origin along `axis`, each on its own side.
+    damping ratio there. `position`: the distance of the stations from the origin along `axis`, each on its own side. `parallel`: a
+    whole number of equal parts side by side at each station of the group, sought on one axis alone.
     """
 
     kind: Kind
@@ -94,6 +95,9 @@ class SizingUnknown(Statement):
             self._step = self._read(self.step, "step")
             if self._step <= 0.0:
                 raise refuse(describe(self.step), "a step above zero", at="step")
+        if self.kind == "parallel" and (self._low % 1.0 or self._high % 1.0):
+            found = f"{describe(self.lower)} to {describe(self.upper)}"
+            raise refuse(found, "whole numbers of parts, such as 1 and 4", at="lower")
         self._belonging()
         return self
 
@@ -152,6 +156,8 @@ class SizingUnknown(Statement):
             return f"damping of {self.group}"
         if self.kind == "position":
             return f"{self.axis} distance of {', '.join(self.stations)}"
+        if self.kind == "parallel":
+            return f"parts in parallel of {self.group}"
         return "ballast" if self.kind == "ballast" else f"{self.kind.replace('-', ' ')} of {self.body}"
 
 

@@ -4,6 +4,7 @@ from collections.abc import Iterable, Set
 
 from detune.brief.brief import Brief
 from detune.brief.finding import Finding, Path
+from detune.brief.machine import Station
 from detune.brief.sizing import MadePart, Sizing, SizingUnknown
 from detune.brief.statement import unit_direction
 from detune.ground.errors import nearest_name
@@ -23,6 +24,9 @@ def sizing_checked(brief: Brief) -> list[Finding]:
             findings.append(_unknown_name(path, made.group, brief.groups, "a group of stations"))
     for group in brief.groups:
         findings += _group(brief, sizing, group)
+    if sizing.goal == "absorber-mass" and all(u.kind != "absorber-mass" for u in sizing.unknown):
+        expected = 'an unknown of kind "absorber-mass", or another objective: as stated the mass is known'
+        findings.append(Finding(("sizing", "minimise"), "absorber-mass", expected))
     if brief.ballast is None:
         wants = [f'"{name}"' for name in (sizing.goal, *sizing.trade) if name == "added-mass"]
         if wants:
@@ -48,6 +52,10 @@ def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
     for index, name in enumerate(unknown.stations):
         if name not in stations:
             findings.append(_unknown_name((*path, "stations", index), name, stations, "a station"))
+    if unknown.kind in ("absorber-tuning", "absorber-damping") and unknown.body in bodies:
+        if not _stands_on(brief, str(unknown.body), str(unknown.group)):
+            expected = f'the body that stands on the parts of group "{unknown.group}" alone and is tuned by them'
+            findings.append(Finding((*path, "body"), str(unknown.body), expected))
     if unknown.kind == "ballast" and brief.ballast is None:
         expected = "a [ballast] table with its position, size and cost_per_kg"
         findings.append(Finding((*path, "kind"), "ballast", expected))
@@ -57,6 +65,20 @@ def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
             expected = 'an absorber body that states its "mass", which is then varied'
             findings.append(Finding((*path, "body"), body.name, expected))
     return findings
+
+
+def _stands_on(brief: Brief, body: str, group: str) -> bool:
+    """Whether a body is the one of the two that a group joins which the group carries."""
+
+    def ends(station: Station) -> tuple[str, str]:
+        return station.on or brief.bodies[0].name, station.to
+
+    own = [ends(station) for station in brief.stations if station.group == group]
+    others = {end for station in brief.stations if station.group != group for end in ends(station)}
+    if not all(body in pair for pair in own):
+        return False
+    partners = {end for pair in own for end in pair} - {body}
+    return body not in others or any(end in others or end == "floor" for end in partners)
 
 
 def _group(brief: Brief, sizing: Sizing, group: str) -> list[Finding]:

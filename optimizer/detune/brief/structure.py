@@ -30,13 +30,15 @@ class Node(Statement):
 class StructureModes:
     """Modes of the structure on its own: frequency (m,) Hz, loss as damping ratio (m,), shapes (d, m), mass-normalised.
 
-    `left_out`: how many more there are above the highest one kept.
+    `left_out`: how many more there are above the highest one kept. `loss_factor` (m,): a loss that does not grow with
+    frequency, beside or instead of the damping ratio.
     """
 
     frequency: Floats
     damping_ratio: Floats
     shapes: Floats
     left_out: int = 0
+    loss_factor: Floats | None = None
 
 
 class Structure(Statement):

@@ -28,6 +28,7 @@ _ALL = (
     Kind("mass", "kg", "mass", ("640 kg", "350 g", "28 lb")),
     Kind("time", "s", "time", ("11 ms", "30 s", "2 h")),
     Kind("temperature", "degC", "temperature", ("-20 degC", "68 degF", "293 K")),
+    Kind("temperature_difference", "K", "temperature difference", ("15 K",)),
     Kind("force", "N", "force", ("1200 N", "3.5 kN", "50 kgf")),
     Kind("moment", "N m", "moment", ("85 N m", "1.2 kN m", "40 lbf ft")),
     Kind("pressure", "Pa", "pressure", ("4 MPa", "6 bar", "60 psi")),

@@ -14,6 +14,7 @@ _LADDERS: dict[str, tuple[tuple[str, float], ...]] = {
     "mass": (("g", 0.0), ("kg", 1.0)),
     "time": (("µs", 0.0), ("ms", 1e-3), ("s", 1.0), ("h", 36000.0)),
     "temperature": (("degC", 0.0),),
+    "temperature_difference": (("K", 0.0),),
     "force": (("N", 0.0), ("kN", 1e4), ("MN", 1e7)),
     "moment": (("N m", 0.0), ("kN m", 1e4)),
     "pressure": (("Pa", 0.0), ("kPa", 1e3), ("MPa", 1e5), ("GPa", 1e10)),

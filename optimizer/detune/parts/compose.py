@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -71,6 +72,8 @@ def with_damper(mount: Mount, damper: Damper) -> Mount:
         mass=None if mount.mass is None else mount.mass + (damper.mass or 0.0),
         cost=mount.cost + damper.cost,
         damper_cost=damper.cost,
+        temperature_min=_known(max, mount.temperature_min, damper.temperature_min),
+        temperature_max=_known(min, mount.temperature_max, damper.temperature_max),
         damper_catalog=damper.catalog,
         damper_breaks=damper.cost_breaks,
         damper_stock=damper.stock,
@@ -84,6 +87,20 @@ def damper_refused(mount: Mount, damper: Damper) -> str | None:
     if damper.stiffness_series is not None:
         return f"{damper.part} has elastic rods; a damper beside a mount is taken as rigid in itself"
     return None
+
+
+def retuned(absorber: Absorber, frequency: float) -> Mount:
+    """Return an absorber set to another tuning (Hz), with its own mass, damping ratio and stroke.
+
+    Raises ValueError outside the frequencies between which it can be set.
+    """
+    low, high = absorber.frequency_min, absorber.frequency_max
+    if low is None or high is None:
+        raise ValueError(f"{absorber.part} cannot be set")
+    if not low <= frequency <= high:
+        raise ValueError(f"{absorber.part} can be set between {low:g} Hz and {high:g} Hz")
+    name = f"{absorber.part} at {frequency:g} Hz"
+    return replace(absorber_mount(replace(absorber, frequency=frequency)), part=name, base=absorber.part)
 
 
 def absorber_mount(absorber: Absorber) -> Mount:
@@ -141,11 +158,17 @@ def empty_station(catalog: str) -> Mount:
         mass=0.0,
         cost=0.0,
         tolerance=0.0,
-        temperature_min=None,
-        temperature_max=None,
+        # What is not there is fit for every temperature.
+        temperature_min=-math.inf,
+        temperature_max=math.inf,
         stock=None,
         pieces=0,
     )
+
+
+def _known(narrower: Callable[[float, float], float], one: float | None, other: float | None) -> float | None:
+    """Return the end of the temperatures that both take, None where one of them is not stated."""
+    return None if one is None or other is None else narrower(one, other)
 
 
 def _times(figures: Axes, count: int) -> Axes:

@@ -2,8 +2,8 @@
 
     M q'' + C q' + sum rows[e].T force_e(rows[e] q + offset_e) = f(t)
 
-The classical Runge-Kutta method of fourth order with a step taken from the stiffest slope that any curve or
-stop has; the run is repeated with half the step, and the difference of the peaks is the stated error.
+By `nonlinear_recursion`, with a step taken from the stiffest slope that any curve or stop has; the run is repeated
+with half the step, and the difference of the peaks is the stated error.
 """
 
 from __future__ import annotations
@@ -15,6 +15,7 @@ import numpy as np
 
 from detune.physics.array_types import ArrayLike, FloatArray
 from detune.physics.load_curve import ElementLaw, LawPieces, law_pieces, pieces_force
+from detune.physics.nonlinear_recursion import run_on_laws
 from detune.physics.simulation import Motion
 
 # Radians of the stiffest motion in one step.
@@ -69,9 +70,9 @@ def simulate_on_laws(
     pieces = law_pieces(laws)
     parts = max(1, int(np.ceil(step * _fastest(m, c, b, pieces) / ANGLE_PER_STEP)))
     inverse = np.linalg.inv(m)
-    setting = (inverse, c, b, pieces, gap, load, step)
-    rough = _run(*setting, parts, start)
-    fine = _run(*setting, 2 * parts, start)
+    setting = (m, c, b, laws, gap, load, step)
+    rough = run_on_laws(*setting, parts, start)
+    fine = run_on_laws(*setting, 2 * parts, start)
     deflection = fine[:, 0] @ b.T + gap
     force = pieces_force(pieces, deflection)[0]
     rough_force = pieces_force(pieces, rough[:, 0] @ b.T + gap)[0]
@@ -94,39 +95,6 @@ def _fastest(m: FloatArray, c: FloatArray, b: FloatArray, pieces: LawPieces) -> 
     stiffness = inverse @ (b.T @ (steepest[:, None] * b)) @ inverse.T
     damper = np.linalg.norm(inverse @ c @ inverse.T, 2)
     return float(np.sqrt(np.linalg.eigvalsh(stiffness)[-1]) + damper)
-
-
-def _run(
-    inverse: FloatArray,
-    c: FloatArray,
-    b: FloatArray,
-    pieces: LawPieces,
-    gap: FloatArray,
-    load: FloatArray,
-    step: float,
-    parts: int,
-    start: FloatArray,
-) -> FloatArray:
-    """States (T, 2, n) at the samples, `parts` steps of Runge and Kutta between each two."""
-    h = step / parts
-
-    def rate(state: FloatArray, f: FloatArray) -> FloatArray:
-        force = pieces_force(pieces, b @ state[0] + gap)[0]
-        return np.stack([state[1], inverse @ (f - c @ state[1] - force @ b)])
-
-    states = np.empty((load.shape[0], *start.shape))
-    states[0] = state = start
-    for i in range(load.shape[0] - 1):
-        rise = (load[i + 1] - load[i]) / parts
-        for part in range(parts):
-            f = load[i] + part * rise
-            k1 = rate(state, f)
-            k2 = rate(state + 0.5 * h * k1, f + 0.5 * rise)
-            k3 = rate(state + 0.5 * h * k2, f + 0.5 * rise)
-            k4 = rate(state + h * k3, f + rise)
-            state = state + h / 6.0 * (k1 + 2.0 * k2 + 2.0 * k3 + k4)
-        states[i + 1] = state
-    return states
 
 
 def _beyond(laws: Sequence[ElementLaw], deflection: FloatArray) -> tuple[bool, ...]:

@@ -81,6 +81,7 @@ def variance(
     centres: ArrayLike,
     half_widths: ArrayLike,
     tolerance: float = 1e-4,
+    with_rates: bool = False,
 ) -> FloatArray:
     """Mean square (R, D) of R responses for D designs: integral of |H(2 pi f)|^2 S(f) df over the spectrum.
 
@@ -89,18 +90,19 @@ def variance(
     half_widths (D, m): imaginary part and decay rate in rad/s of the poles, -half_width + j centre; a pole
     that does not oscillate has centre 0. Rough values cost points and not accuracy, but every lightly damped
     pole in the band must be among them: a needle that nobody announces can stand between all points.
-    tolerance: relative, on the estimated error of each response. Raises ValueError for a half width that is
+    tolerance: relative, on the estimated error of each response. with_rates: after the R mean squares come those
+    of the responses' rates, the integrals of |omega H|^2 S, so that (2R, D) is returned. Raises ValueError for a half width that is
     not above zero (an undamped resonance has no variance), and QuadratureNotConverged.
     """
     centre, width = _poles(spectrum, centres, half_widths)
     panels = _first_panels(spectrum, centre, width)
-    value, error = _panel_integrals(transfer, spectrum, centre, width, panels)
+    value, error = _panel_integrals(transfer, spectrum, centre, width, panels, with_rates)
     for _ in range(MOST_HALVINGS):
         total, late = _judge(panels, value, error, centre.shape[0], tolerance)
         if not np.any(late):
             return total
         kept, fine = panels.chosen(~late), panels.chosen(late).halved()
-        fine_value, fine_error = _panel_integrals(transfer, spectrum, centre, width, fine)
+        fine_value, fine_error = _panel_integrals(transfer, spectrum, centre, width, fine, with_rates)
         panels = kept.joined(fine)
         value = np.concatenate([value[:, ~late], fine_value], axis=1)
         error = np.concatenate([error[:, ~late], fine_error], axis=1)
@@ -194,6 +196,7 @@ def _panel_integrals(
     centre: FloatArray,
     width: FloatArray,
     panels: _Panels,
+    with_rates: bool,
 ) -> tuple[FloatArray, FloatArray]:
     """Kronrod integral and error estimate (R, P) of every panel, from one call of the transfer function."""
     short = panels.high - panels.low < SHORT_PANEL
@@ -207,6 +210,8 @@ def _panel_integrals(
     grid[design, column] = omega
     response = np.asarray(transfer(grid))[:, design, column]
     power = (response.real**2 + response.imag**2) * _density(spectrum, omega)
+    if with_rates:
+        power = np.concatenate([power, power * omega**2])
     value = np.empty((power.shape[0], panels.low.size))
     error = np.empty_like(value)
     offset = 0

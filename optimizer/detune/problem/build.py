@@ -18,6 +18,7 @@ from detune.brief.allowable.views import Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
 from detune.brief.cross_check import cross_check
+from detune.brief.dwell import chosen_in, without_barred
 from detune.brief.finding import Finding, faults_without_lines
 from detune.ground.errors import BriefError
 from detune.parts.assumed import group_assumed
@@ -25,9 +26,11 @@ from detune.parts.catalog import Catalog
 from detune.parts.kinds.mount import Mount
 from detune.physics.static import is_supported
 from detune.problem.candidates import Dropped, find_candidates
+from detune.problem.dwell import DwellRequirements, dwell_requirements
 from detune.problem.notes import problem_notes
 from detune.problem.requirement import Requirement
 from detune.response.amplitude import deflection_pairs, works_by_amplitude
+from detune.response.ballast import BallastStep
 from detune.response.bands import BandRows, band_rows
 from detune.response.condition_rows import condition_rows
 from detune.response.damping_readings import readings_of
@@ -94,6 +97,7 @@ class Problem:
     exempt_amplification: float | None
     dropped: tuple[Dropped, ...]
     assumed: tuple[str, ...]
+    dwell: tuple[DwellRequirements, ...] = ()
 
     @property
     def model(self) -> Model:
@@ -115,7 +119,8 @@ class Problem:
         """Every requirement, in the order of the stages that judge them."""
         harmonic = tuple(r for group in self.harmonics for r in group.requirements)
         banded = tuple(r for group in self.bands for r in group.requirements)
-        return (*self.totals, *self.statics, *self.modes, *harmonic, *banded)
+        dwelling = tuple(each.requirement for each in self.dwell)
+        return (*self.totals, *self.statics, *self.modes, *harmonic, *banded, *dwelling)
 
     @property
     def candidates(self) -> tuple[tuple[Mount, ...], ...]:
@@ -130,7 +135,12 @@ class Problem:
                 group.mounts[part] for group, part in zip(self.model.groups, designs.part[index], strict=True)
             ),
             ballast=float(self.model.ballast_mass[designs.step[index]]),
+            stack=_listed(self.model.ballast[designs.step[index]]),
         )
+
+
+def _listed(step: BallastStep) -> BallastStep | None:
+    return step if step.listed else None
 
 
 def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
@@ -139,6 +149,7 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     if findings:
         # Candidates are found by the names that have just been checked.
         raise BriefError(faults_without_lines(brief.file, findings))
+    brief = without_barred(brief)
     if not brief.choices:
         expected = "a [[choice]] of parts for each group; a study that has none can be sized, not run"
         raise BriefError(faults_without_lines(brief.file, (Finding(("choice",), "", expected),)))
@@ -150,17 +161,22 @@ def build(brief: Brief, catalogs: Mapping[str, Catalog]) -> Problem:
     stated += [note for allowable in brief.allowables for note in allowable.assumed()]
     stated += () if brief.scatter is None else brief.scatter.assumed()
     notes = (*stated, *notes)
-    return _problem(brief, candidates.mounts, candidates.dropped, notes)
+    return _problem(brief, candidates.mounts, candidates.dropped, notes, candidates.ballast)
 
 
 def with_mounts(problem: Problem, mounts: tuple[tuple[Mount, ...], ...]) -> Problem:
     """Return the same requirements over other mounts, `mounts[g]` for group g."""
-    return with_parts(problem.brief, mounts)
+    return with_parts(problem.brief, mounts, problem.model.ballast)
 
 
-def with_parts(brief: Brief, mounts: tuple[tuple[Mount, ...], ...]) -> Problem:
-    """Return the requirements of a brief over any mounts, of a list or made to order, `mounts[g]` for group g."""
-    return _problem(brief, mounts, (), ())
+def with_parts(
+    brief: Brief, mounts: tuple[tuple[Mount, ...], ...], ballast: tuple[BallastStep, ...] | None = None
+) -> Problem:
+    """Return the requirements of a brief over any mounts, of a list or made to order, `mounts[g]` for group g.
+
+    `ballast`: the steps it may take; None those that the brief states itself.
+    """
+    return _problem(brief, mounts, (), (), ballast)
 
 
 def _problem(
@@ -168,8 +184,9 @@ def _problem(
     mounts: tuple[tuple[Mount, ...], ...],
     dropped: tuple[Dropped, ...],
     catalog_notes: tuple[str, ...],
+    ballast: tuple[BallastStep, ...] | None = None,
 ) -> Problem:
-    states = _state_models(brief, mounts)
+    states = _state_models(brief, mounts, ballast)
     allowables, demanded_notes = demanded(brief)
     model, places = states[0].model, states[0].places
     return Problem(
@@ -208,20 +225,30 @@ def _problem(
         ),
         dropped=dropped,
         assumed=(*model.assumed, *demanded_notes, *problem_notes(brief, mounts), *catalog_notes),
+        dwell=dwell_requirements(
+            brief, tuple((each.state, each.model, each.places) for each in states), allowables
+        ),
     )
 
 
-def _state_models(brief: Brief, mounts: tuple[tuple[Mount, ...], ...]) -> tuple[StateModel, ...]:
+def _state_models(
+    brief: Brief, mounts: tuple[tuple[Mount, ...], ...], ballast: tuple[BallastStep, ...] | None
+) -> tuple[StateModel, ...]:
     """Return the machine as installed and in every other state that a condition names, in every reading."""
     named = dict.fromkeys([None, *(condition.state for condition in brief.conditions)])
     readings = readings_of(mount for group in mounts for mount in group)
     models = []
     for name in named:
         for reading in readings:
-            model = build_model(brief, mounts, state_of(brief, name), reading)
+            model = build_model(brief, mounts, state_of(brief, name), reading, ballast)
             _check_support(brief, model, name)
-            carrying = tuple(station.name for station in model.stations if station.parallel > 0)
-            places = Places(tuple(model.points), carrying, tuple(body.name for body in brief.bodies))
+            held = [station for station in model.stations if station.parallel > 0]
+            places = Places(
+                tuple(model.points),
+                tuple(station.name for station in held if not station.is_absorber),
+                tuple(body.name for body in brief.bodies),
+                tuple(absorber.name for absorber in brief.absorbers),
+            )
             models.append(StateModel(name, model, places, steady_intervals(brief, name), reading))
     return tuple(models)
 
@@ -246,7 +273,12 @@ def _expand(
 def _harmonic(
     brief: Brief, each: StateModel, condition: Condition, allowables: tuple[Allowable, ...]
 ) -> list[HarmonicRequirements]:
-    """Return the groups of a condition: one under its forcing, and one for each unit load."""
+    """Return the groups of a condition: one under its forcing, and one for each unit load.
+
+    None where the speeds not to dwell at are found for each design: those limits stand in `Problem.dwell`.
+    """
+    if chosen_in(brief, condition) is not None:
+        return []
     forced: list[tuple[HarmonicAllowable, str]] = []
     groups: list[HarmonicRequirements] = []
     for allowable in allowables:
@@ -301,10 +333,10 @@ def _check_support(brief: Brief, model: Model, state: str | None) -> None:
     """Refuse a machine that its stations leave free to move: every design would share that fault."""
     if bool(np.all(is_supported(static_stiffness(model, all_designs(model, 0, 1))))):
         return
-    free = ", ".join(dict.fromkeys(name for _, name in model.frame.names))
+    free = ", ".join(dict.fromkeys(name for _, name in model.frame.names if name != "along"))
     finding = Finding(
         ("station",) if state is None else ("state",),
-        f"{sum(station.parallel > 0 for station in model.stations)} stations that leave a motion of the machine without stiffness",
+        f"{sum(s.parallel > 0 for s in model.stations if not s.is_absorber)} stations that leave a motion of the machine without stiffness",
         f"stations that hold every free direction ({free}); or fewer free directions",
     )
     raise BriefError(faults_without_lines(brief.file, (finding,)))

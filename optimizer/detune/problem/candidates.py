@@ -2,38 +2,40 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import TYPE_CHECKING, cast
 
 from detune.brief.brief import Brief, applies
-from detune.brief.choice import Choice, Window
+from detune.brief.choice import Choice
 from detune.brief.finding import Finding, Path
-from detune.brief.statement import describe, unit_direction
-from detune.ground import units
+from detune.brief.statement import unit_direction
 from detune.ground.errors import nearest_name
-from detune.parts.catalog import Catalog, filter_parts
-from detune.parts.columns import column_named
+from detune.parts.catalog import Catalog
 from detune.parts.compose import damper_refused, empty_station, in_parallel, with_damper
-from detune.parts.kinds import KINDS
-from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Mount
-from detune.response.part_laws import ROOM_TEMPERATURE
+from detune.parts.laws import ROOM_TEMPERATURE
+from detune.problem.listed import Dropped, of_kind, rows_wanted
+from detune.problem.other_candidates import absorber_candidates, ballast_candidates, pieces_of
+from detune.response.ballast import NOTHING, BallastStep
 
+if TYPE_CHECKING:
+    from detune.parts.kinds import Part
+    from detune.parts.kinds.damper import Damper
+    from detune.parts.kinds.pad import Pad
 
-@dataclass(frozen=True)
-class Dropped:
-    """A part that a group may not take, and the reason."""
-
-    group: str
-    mount: Mount
-    reason: str
+__all__ = ["Candidates", "Dropped", "excited_range", "find_candidates", "lateral_missing"]
 
 
 @dataclass(frozen=True)
 class Candidates:
-    """The parts each group may take, in the brief's order of groups, and those left out."""
+    """The parts each group may take, in the brief's order of groups, those left out, and the ballast by cost.
+
+    An absorber is a group of its own, of parts with a moving mass; the groups of absorbers come last.
+    """
 
     mounts: tuple[tuple[Mount, ...], ...]
     dropped: tuple[Dropped, ...]
     findings: tuple[Finding, ...]
+    ballast: tuple[BallastStep, ...] = (NOTHING,)
 
 
 def find_candidates(brief: Brief, catalogs: Mapping[str, Catalog]) -> Candidates:
@@ -41,31 +43,37 @@ def find_candidates(brief: Brief, catalogs: Mapping[str, Catalog]) -> Candidates
     findings: list[Finding] = []
     dropped: list[Dropped] = []
     mounts: list[tuple[Mount, ...]] = []
-    for group in brief.groups:
+    for group in brief.station_groups:
         index, choice = next((i, c) for i, c in enumerate(brief.choices) if c.group == group)
         path: Path = ("choice", index)
-        kept: list[Mount] = []
-        earlier, before = len(findings), len(dropped)
-        for i, name in enumerate(choice.catalogs):
-            if name in catalogs and _of_kind((*path, "catalogs", i), catalogs[name], "mount", findings):
-                kept += _from_catalog(path, choice, catalogs[name], dropped, findings)
-        kept = _named(path, choice, kept, catalogs, dropped, findings)
-        if not kept and len(findings) == earlier:
-            first = dropped[before]
-            expected = (
-                f"a filter that some part passes; the first one left out, {first.mount.part}: {first.reason}"
-            )
-            findings.append(Finding((*path, "where"), f"no part left for group {group}", expected))
+        rows = rows_wanted(path, choice, group, ("mount", "pad"), catalogs, dropped, findings)
+        kept = _mounts(path, choice, rows, dropped, findings)
         mounts.append(_composed(path, choice, kept, catalogs, dropped, findings))
     findings += lateral_missing(brief, mounts)
     findings += _outside_tables(brief, mounts)
-    return Candidates(tuple(mounts), tuple(dropped), tuple(findings))
+    mounts += absorber_candidates(brief, catalogs, dropped, findings)
+    ballast = ballast_candidates(brief, catalogs, dropped, findings)
+    return Candidates(tuple(mounts), tuple(dropped), tuple(findings), ballast)
 
 
-def _of_kind(path: Path, catalog: Catalog, kind: str, findings: list[Finding]) -> bool:
-    if catalog.kind != kind:
-        findings.append(Finding(path, f"{catalog.name}, a {catalog.kind} list", f"a {kind} list"))
-    return catalog.kind == kind
+def _mounts(
+    path: Path, choice: Choice, rows: "list[Part]", dropped: list[Dropped], findings: list[Finding]
+) -> list[Mount]:
+    """Return the rows of a choice as mounts: each sheet of a pad list in every size that can be cut from it."""
+    found = [row for row in rows if isinstance(row, Mount)]
+    sheets = cast("list[Pad]", [row for row in rows if not isinstance(row, Mount)])
+    if choice.sizes and rows and not sheets:
+        expected = 'a list of pads among the catalogs, or no "sizes", which are those that pads are cut to'
+        findings.append(Finding((*path, "sizes"), f"{len(choice.sizes)} sizes", expected))
+    if sheets and not choice.sizes:
+        expected = 'the sizes pads may be cut to, as "sizes", for example [["80 mm", "120 mm"]]'
+        findings.append(Finding(path, f"pads of {sheets[0].catalog}", expected))
+    cut = pieces_of(sheets, choice, dropped)
+    if sheets and choice.sizes and not cut and not found:
+        first = next(each for each in reversed(dropped) if each.group == choice.group)
+        expected = f"a size that some sheet can be cut to; {first.reason}"
+        findings.append(Finding((*path, "sizes"), f"no pad left for group {choice.group}", expected))
+    return [*found, *cut]
 
 
 def _composed(
@@ -81,8 +89,8 @@ def _composed(
     for i, name in enumerate(choice.dampers):
         if name not in catalogs:
             findings.append(Finding((*path, "dampers", i), name, "a catalog", nearest_name(name, catalogs)))
-        elif _of_kind((*path, "dampers", i), catalogs[name], "damper", findings):
-            dampers += [part for part in catalogs[name].parts if isinstance(part, Damper)]
+        elif of_kind((*path, "dampers", i), catalogs[name], ("damper",), findings):
+            dampers += cast("tuple[Damper, ...]", catalogs[name].parts)
     found: list[Mount] = []
     for count in choice.parallel:
         for mount in kept:
@@ -99,99 +107,11 @@ def _composed(
     return tuple(found)
 
 
-def _from_catalog(
-    path: Path, choice: Choice, catalog: Catalog, dropped: list[Dropped], findings: list[Finding]
-) -> list[Mount]:
-    known = KINDS[catalog.kind].COLUMNS
-    criteria: dict[str, list[str] | dict[str, float]] = {}
-    sound = True
-    for name, wanted in choice.where.items():
-        place = (*path, "where", name)
-        column = column_named(known, name)
-        if column is None:
-            findings.append(
-                Finding(
-                    place, name, "a column of the catalog", nearest_name(name, [each.name for each in known])
-                )
-            )
-            sound = False
-        elif isinstance(wanted, Window):
-            window = _window(place, wanted, column.kind, findings)
-            sound = sound and window is not None
-            criteria[name] = window or {}
-        elif column.kind not in ("text", "yes-no"):
-            findings.append(
-                Finding(
-                    place, describe(wanted), f'a window such as {{ min = "...", max = "..." }} for {name}'
-                )
-            )
-            sound = False
-        elif not wanted:
-            findings.append(Finding(place, "[]", f"at least one text, or {name} left out"))
-            sound = False
-        elif column.kind == "yes-no" and not set(wanted) <= {"yes", "no"}:
-            findings.append(Finding(place, describe(wanted), '"yes", "no" or both'))
-            sound = False
-        else:
-            criteria[name] = list(wanted)
-    if not sound:
-        return []
-    kept, reasons = filter_parts(catalog, criteria)
-    dropped += [Dropped(choice.group, catalog.mounts[i], reason) for i, reason in reasons.items()]
-    return [catalog.mounts[i] for i in kept]
-
-
-def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> dict[str, float] | None:
-    if kind in ("text", "yes-no"):
-        findings.append(
-            Finding(place, f"a window for {place[-1]}", 'a list of admitted texts, for example ["rubber"]')
-        )
-        return None
-    bounds: dict[str, float] = {}
-    for end in ("min", "max"):
-        text = getattr(window, end)
-        if text is None:
-            continue
-        try:
-            bounds[end] = units.parse(text, "ratio" if kind == "count" else kind)
-        except units.UnitError as error:
-            findings.append(Finding((*place, end), error.found, error.expected, error.nearest))
-            return None
-    if "min" in bounds and "max" in bounds and bounds["min"] > bounds["max"]:
-        findings.append(
-            Finding(place, f"{window.min} to {window.max}", "the lower end first, the upper end second")
-        )
-        return None
-    return bounds
-
-
-def _named(
-    path: Path,
-    choice: Choice,
-    kept: list[Mount],
-    catalogs: Mapping[str, Catalog],
-    dropped: list[Dropped],
-    findings: list[Finding],
-) -> list[Mount]:
-    if choice.parts is None:
-        return kept
-    known = [m.part for name in choice.catalogs if name in catalogs for m in catalogs[name].mounts]
-    for i, part in enumerate(choice.parts):
-        if part not in known:
-            findings.append(
-                Finding((*path, "parts", i), part, "a part of the chosen catalogs", nearest_name(part, known))
-            )
-    dropped += [
-        Dropped(choice.group, m, "not among the parts named") for m in kept if m.part not in choice.parts
-    ]
-    return [m for m in kept if m.part in choice.parts]
-
-
 def lateral_missing(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Finding]:
     """A part without lateral stiffness can only stand where nothing but its axis matters."""
     vertical_only = all(freedom == "z" for body in brief.bodies for freedom in body.free)
     findings = []
-    for group, candidates in zip(brief.groups, mounts, strict=True):
+    for group, candidates in zip(brief.station_groups, mounts, strict=False):
         upright = all(
             abs(unit_direction(station.axial)[2]) == 1.0
             for station in brief.stations
@@ -217,7 +137,7 @@ def _outside_tables(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Findi
     """A measured table says nothing outside its own frequencies and temperatures."""
     asked = excited_range(brief)
     findings = []
-    for group, candidates in zip(brief.groups, mounts, strict=True):
+    for group, candidates in zip(brief.station_groups, mounts, strict=False):
         index = next(i for i, c in enumerate(brief.choices) if c.group == group)
         for mount in candidates:
             table = mount.law_table

@@ -4,6 +4,7 @@ from collections.abc import Callable, Iterable
 
 from detune.brief.brief import Brief, applies, body_of
 from detune.brief.condition import Condition
+from detune.brief.dwell import dwell_notes
 from detune.ground.units import show
 from detune.parts.kinds.mount import Mount
 
@@ -13,7 +14,34 @@ NAMED = 4
 def problem_notes(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> tuple[str, ...]:
     """Return what is taken in another form than stated, for any part that some group may take."""
     mounts = tuple(dict.fromkeys(mount for group in candidates for mount in group))
-    return (*_in_time(brief, mounts), *_laws(brief, mounts), *_structure(brief), *_guided(brief))
+    return (
+        *_in_time(brief, mounts),
+        *_laws(brief, mounts),
+        *_structure(brief),
+        *_guided(brief),
+        *dwell_notes(brief),
+        *_pads(mounts),
+        *_absorbers(brief),
+    )
+
+
+def _pads(mounts: tuple[Mount, ...]) -> list[str]:
+    cut = _named(mounts, lambda mount: bool(mount.approximate))
+    if not cut:
+        return []
+    return [
+        f"stiffness of pads ({cut}) is estimated from the rubber and the shape factor, both faces held from sliding: good"
+        " for a first size, not for a proof"
+    ]
+
+
+def _absorbers(brief: Brief) -> list[str]:
+    return [
+        f"{absorber.name}: a point mass guided on its body along its direction; its mode counts in separation like"
+        " any other, its stroke from where it rests, and its spring is not limited at rest"
+        + ("; set to another tuning it keeps mass, damping ratio and stroke" if absorber.tunings else "")
+        for absorber in brief.absorbers
+    ]
 
 
 def _structure(brief: Brief) -> list[str]:

@@ -12,6 +12,7 @@ from detune.brief.allowable.stability import Stability
 from detune.brief.allowable.views import DesignView
 from detune.problem.build import BandRequirements, HarmonicRequirements, Problem
 from detune.problem.requirement import Requirement
+from detune.response.absorbers import added_mass
 from detune.response.amplitude import values_at_own_amplitude, worse_of_two_amplitudes
 from detune.response.assemble import Dynamic, dynamic_matrices
 from detune.response.bands import band_ratios
@@ -61,6 +62,9 @@ def stages(problem: Problem) -> tuple[Stage, ...]:
     for group in problem.harmonics:
         result.append(_response(group, slow_parts=True))
     result += [_banded(group) for group in problem.bands]
+    result += [
+        Stage("speeds not to dwell at", (each.requirement,), each.margins, False, 100) for each in problem.dwell
+    ]
     return tuple(result)
 
 
@@ -71,11 +75,13 @@ def objective_values(problem: Problem, designs: Designs, least_margin: Floats) -
         dynamic = dynamic_matrices(each.model, designs)
         view = mode_batch(dynamic).view(dynamic, each.intervals)
         separation = np.minimum(separation, least_separation(view, problem.exempt_amplification))
+    for dwell in problem.dwell:
+        separation = np.minimum(separation, dwell.separations(designs, problem.exempt_amplification))
     return {
         "cost": total_cost(problem.model, designs),
         "separation": separation,
         "least-margin": least_margin,
-        "added-mass": problem.model.ballast_mass[designs.step],
+        "added-mass": added_mass(problem.model, designs),
         "part-numbers": part_numbers(problem.model, designs),
     }
 
@@ -83,7 +89,7 @@ def objective_values(problem: Problem, designs: Designs, least_margin: Floats) -
 def _totals(problem: Problem, designs: Designs) -> Floats:
     view = DesignView(
         total_cost(problem.model, designs),
-        problem.model.ballast_mass[designs.step],
+        added_mass(problem.model, designs),
         part_numbers(problem.model, designs),
     )
     rows = []

@@ -19,6 +19,7 @@ from detune.proof.checker_arithmetic import UNIT, Matrix
 from detune.proof.checker_boxes import read_system, upper_bounds
 from detune.proof.checker_claims import check_response, check_selection, check_separation, check_static
 from detune.proof.checker_designs import LARGEST_ENUMERATION, check_search, exact_output, number
+from detune.proof.checker_noise import check_noise
 
 FORMAT = "detune proof record 1"
 BATCH = 256
@@ -73,6 +74,9 @@ def check_entries(entries: Any) -> CheckReport:
                 designs += count
             elif entry["kind"] == "scatter-response":
                 found, count = check_response(entry["data"], rebuild, halve)
+                boxes += count
+            elif entry["kind"] == "scatter-noise":
+                found, count = check_noise(entry["data"], rebuild, halve)
                 boxes += count
             elif entry["kind"] == "scatter-static":
                 found, count = check_static(entry["data"])

@@ -77,17 +77,19 @@ def read_rows(data: dict[str, Any]) -> dict[str, Any]:
     rows["squares"] = np.array(data["squares"], dtype=bool)
     if not (rows["factor"] >= 0.0).all():
         raise ValueError("a factor is negative")
-    rows["sets"] = [
-        {
-            "order": float(each["order"]),
-            "powers": array(each["powers"]),
-            "loads": array(each["loads"]),
-            "bases": array(each["bases"]),
-            "direct": array(each["direct"]),
-        }
-        for each in data["sets"]
-    ]
+    rows["sets"] = [read_set(each) for each in data["sets"]]
     return rows
+
+
+def read_set(each: dict[str, Any]) -> dict[str, Any]:
+    """Arrays of one recorded coherent set."""
+    return {
+        "order": float(each["order"]),
+        "powers": array(each["powers"]),
+        "loads": array(each["loads"]),
+        "bases": array(each["bases"]),
+        "direct": array(each["direct"]),
+    }
 
 
 def scalar_lines(system: dict[str, Matrix], low: Matrix, high: Matrix, order: float) -> tuple[Line, Line]:
@@ -231,7 +233,30 @@ def _row_bounds(system: dict[str, Matrix], rows: dict[str, Any], low: Matrix, hi
 
 def set_plane(rows: dict[str, Any], each: dict[str, Any], machine: Machine) -> Line:
     """Upper plane (N, R) of the sizes of all rows under one coherent set."""
-    system, count = machine.system, len(machine.low)
+    out, count, number = set_lines(rows, each, machine), len(machine.low), len(rows["rate"])
+    shape = (count, number, 3)
+    centre, parts = out.centre.reshape(shape), out.parts.reshape(*shape, -1)
+    rest = out.rest.reshape(shape)
+    bounded = np.isfinite(rest).all(axis=2)
+    rest = np.where(np.isfinite(rest), rest, 0.0)
+    zeros = np.zeros_like(rest)
+    plain = length_plane(
+        np.concatenate([centre.real, centre.imag], axis=2),
+        np.concatenate([parts.real, parts.imag], axis=2),
+        np.concatenate([rest, zeros], axis=2),
+    )
+    major = major_axis_bound(centre, parts, rest)
+    use = rows["ellipse"]
+    return Line(
+        np.where(use, major.centre, plain.centre),
+        np.where(use[:, None], major.parts, plain.parts),
+        np.where(bounded, np.where(use, major.rest, plain.rest), np.inf),
+    )
+
+
+def set_lines(rows: dict[str, Any], each: dict[str, Any], machine: Machine) -> Line:
+    """The components (N, 3 R) of all rows under one coherent set, times omega^rate."""
+    system = machine.system
     n, number = len(system["mass"]), len(rows["rate"])
     row, force = rows["rows"].reshape(3 * number, n), rows["forces"].reshape(3 * number, -1)
     axes, kappa = system["axes"], machine.kappa.centre
@@ -253,24 +278,7 @@ def set_plane(rows: dict[str, Any], each: dict[str, Any], machine: Machine) -> L
             line = times(line, scale)
         out = line if out is None else plus(out, line)
     assert out is not None
-    shape = (count, number, 3)
-    centre, parts = out.centre.reshape(shape), out.parts.reshape(*shape, -1)
-    rest = out.rest.reshape(shape)
-    bounded = np.isfinite(rest).all(axis=2)
-    rest = np.where(np.isfinite(rest), rest, 0.0)
-    zeros = np.zeros_like(rest)
-    plain = length_plane(
-        np.concatenate([centre.real, centre.imag], axis=2),
-        np.concatenate([parts.real, parts.imag], axis=2),
-        np.concatenate([rest, zeros], axis=2),
-    )
-    major = major_axis_bound(centre, parts, rest)
-    use = rows["ellipse"]
-    return Line(
-        np.where(use, major.centre, plain.centre),
-        np.where(use[:, None], major.parts, plain.parts),
-        np.where(bounded, np.where(use, major.rest, plain.rest), np.inf),
-    )
+    return out
 
 
 def deviation(machine: Machine, x: Matrix, given: Matrix, moved: Matrix) -> tuple[Matrix, Matrix]:

@@ -14,6 +14,7 @@ import numpy as np
 
 from detune.proof.bisect import DecisionStatus, sample_points
 from detune.proof.combined_bound import TRIALS, frame_of, rows_bound
+from detune.proof.loewner import Flags
 from detune.proof.scatter_data import LimitedRows, ScatterSystem, first_corners, values_at
 from detune.proof.selection_data import Floats
 
@@ -78,7 +79,12 @@ class Sampler:
     @property
     def violated(self) -> bool:
         """Whether some row exceeds its limit at a point met so far."""
-        return bool((self.best > self.limits.limit).any())
+        return self.breaks(None)
+
+    def breaks(self, rows: Flags | None) -> bool:
+        """Whether one of some rows (R,), None for all, exceeds its limit at a point met so far."""
+        broken = self.best > self.limits.limit
+        return bool((broken if rows is None else broken & rows).any())
 
     def start(self) -> None:
         """Corners of the scatter over a grid of speeds."""
@@ -114,8 +120,12 @@ def decide_rows(
     max_boxes: int = 20_000,
     interrupted: Callable[[], bool] | None = None,
     samples: Sampler | None = None,
+    fatal: Flags | None = None,
 ) -> RowsDecision:
-    """Decide whether every row keeps its limit over all variables and the whole speed interval."""
+    """Decide whether every row keeps its limit over all variables and the whole speed interval.
+
+    The work ends when a `fatal` (R,) row, None for any, is violated; else the other rows are decided all the same.
+    """
     found = sampled(system, limits) if samples is None else samples
     frame = frame_of(system, limits)
     root = _Node(found.low, found.high, np.full(limits.count, np.inf))
@@ -123,8 +133,9 @@ def decide_rows(
     boxes, trials = 0, TRIALS
     wins = np.zeros(len(TRIALS), dtype=np.int64)
     stuck: list[_Node] = []
-    while open_nodes and not found.violated:
-        if boxes >= max_boxes or (interrupted is not None and interrupted()):
+    while open_nodes and not found.breaks(fatal):
+        limit = np.where(found.best > limits.limit, np.inf, limits.limit)
+        if boxes >= max_boxes or not np.isfinite(limit).any() or (interrupted is not None and interrupted()):
             break
         batch, open_nodes = open_nodes[-BATCH:], open_nodes[:-BATCH]
         low, high = np.stack([node.low for node in batch]), np.stack([node.high for node in batch])
@@ -137,7 +148,7 @@ def decide_rows(
         left = []
         for node, upper, weight in zip(batch, bounds.upper, bounds.weight, strict=True):
             node.upper = np.minimum(node.upper, upper)
-            if bool((node.upper <= limits.limit).all()):
+            if bool((node.upper <= limit).all()):
                 settled = np.maximum(settled, node.upper)
                 continue
             left.append(0.5 * (node.low + node.high))

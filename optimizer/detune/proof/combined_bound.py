@@ -276,8 +276,30 @@ def _set_plane(
     system: ScatterSystem, limits: LimitedRows, frame: Frame, loads: LoadSet, state: Solved, box: Box
 ) -> tuple[UpperPlane, Floats]:
     """Upper plane of the rows' sizes under one coherent set, and the shares (N, R, T) of the terms in the error."""
-    count, axes = len(box.low), len(system.axes)
-    components, variables = 3 * limits.count, box.low.shape[1]
+    count, components, variables = len(box.low), 3 * limits.count, box.low.shape[1]
+    total, parts = set_expansion(system, limits, frame, loads, state, box)
+    centre = np.zeros((count, components), dtype=np.complex128)
+    slopes = np.zeros((count, components, variables), dtype=np.complex128)
+    remainder = np.zeros((count, components))
+    centre[:, frame.used], slopes[:, frame.used], remainder[:, frame.used] = (
+        total.centre,
+        total.slope,
+        total.remainder,
+    )
+    share = np.zeros((count, components, parts.shape[2]))
+    share[:, frame.used] = parts
+    shape = (count, limits.count, 3)
+    plane = _size_plane(
+        limits, frame, centre.reshape(shape), slopes.reshape(*shape, variables), remainder.reshape(shape), box
+    )
+    return plane, share.reshape(*shape, -1).sum(axis=2)
+
+
+def set_expansion(
+    system: ScatterSystem, limits: LimitedRows, frame: Frame, loads: LoadSet, state: Solved, box: Box
+) -> tuple[Expansion, Floats]:
+    """The used components (N, C) of all rows under one coherent set, and the terms' shares (N, C, T) in the error."""
+    count, axes, variables = len(box.low), len(system.axes), box.low.shape[1]
     kappa = state.each.centre[:, :axes]
     f0 = loads.loads + (loads.bases * kappa[:, None, :]) @ system.axes
     q = np.swapaxes(np.linalg.solve(state.matrix, np.swapaxes(f0, 1, 2)), 1, 2)
@@ -300,22 +322,9 @@ def _set_plane(
         )
     rate = limits.rate[frame.used // 3]
     total = _scaled_sum(box, loads, rate, zero, slope, np.where(np.isnan(rest), np.inf, rest))
-    centre = np.zeros((count, components), dtype=np.complex128)
-    slopes = np.zeros((count, components, variables), dtype=np.complex128)
-    remainder = np.zeros((count, components))
-    centre[:, frame.used], slopes[:, frame.used], remainder[:, frame.used] = (
-        total.centre,
-        total.slope,
-        total.remainder,
-    )
-    share = np.zeros((count, components, pairs.shape[3]))
     scale = np.abs(speed_power(box, loads.order, loads.powers).centre)
-    share[:, frame.used] = np.einsum("bclt,bt,bl->bct", np.abs(pairs), state.rho, scale, optimize=True)
-    shape = (count, limits.count, 3)
-    plane = _size_plane(
-        limits, frame, centre.reshape(shape), slopes.reshape(*shape, variables), remainder.reshape(shape), box
-    )
-    return plane, share.reshape(*shape, -1).sum(axis=2)
+    share: Floats = np.einsum("bclt,bt,bl->bct", np.abs(pairs), state.rho, scale, optimize=True)
+    return total, share
 
 
 def _scaled_sum(

@@ -115,6 +115,8 @@ def build_table(selection: Selection, step: int) -> SearchTable:
 
 def design_cost(selection: Selection, designs: Integers) -> Floats:
     """Cost (D,) of designs (D, G+1): part of each group, then ballast step; summed in this order always."""
+    if selection.whole_cost is not None:
+        return selection.whole_cost(designs)
     cost = selection.ballast.cost[designs[:, -1]].astype(np.float64)
     for number, group in enumerate(selection.groups):
         cost = cost + group.cost[designs[:, number]]

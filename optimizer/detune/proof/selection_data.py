@@ -12,6 +12,7 @@ All numbers are SI (N/m, kg, rad), frequencies are in Hz, amplitudes are peak.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -122,6 +123,8 @@ class Selection:
     station_group (S,): group of each station.
     support_sign (S,): static compression is support_sign * b[s, 2] q (for axis 2 upwards: -1).
     groups: candidate parts of each of the G groups.
+    whole_cost: cost (D,) of whole designs (D, G+1) where prices fall with the quantity bought; the costs of the
+    groups are then lower bounds, and never sum to more than it (beyond rounding).
     Raises SelectionError where shapes or values do not fit.
     """
 
@@ -135,6 +138,7 @@ class Selection:
     static_rows: StaticRows
     harmonic: HarmonicCases
     names: tuple[str, ...] = field(default=())
+    whole_cost: Callable[[Integers], Floats] | None = None
 
     def __post_init__(self) -> None:
         check_selection(self)

@@ -6,13 +6,16 @@ import math
 from collections.abc import Iterable, Sequence
 
 from detune.ground.units import KINDS
+from detune.report.forcing_shares import ForcingShare
 from detune.report.response_data import ResponseCurve
 from detune.report.words import OBJECTIVE_WORDS
 from detune.response.assessment import Assessment
+from detune.response.design import Design
 from detune.study.front import objective_of
 from detune.study.run import Result
 
 Cell = str | float | int | None
+BALLAST = ("ballast [kg]", "ballast pieces")
 OBJECTIVE_UNITS: dict[str, str] = {"added-mass": "kg"}
 
 
@@ -44,8 +47,8 @@ def front_csv(result: Result) -> str:
     for index, point in enumerate(result.front.points):
         design = point.design
         values: list[Cell] = [objective_of(point, name) for name in OBJECTIVE_WORDS]
-        rows.append([index + 1, *design.parts, design.ballast, *values, point.tightest.label])
-    columns = ["number", *(f"part of {g}" for g in groups), "ballast [kg]", *_objective_headers(), "tightest"]
+        rows.append([index + 1, *design.parts, *_ballast(design), *values, point.tightest.label])
+    columns = ["number", *(f"part of {g}" for g in groups), *BALLAST, *_objective_headers(), "tightest"]
     return csv_text(columns, rows)
 
 
@@ -61,16 +64,22 @@ def designs_csv(result: Result) -> str:
     for i in order:
         design = problem.design(front.designs, i)
         values: list[Cell] = [float(front.objectives[name][i]) for name in OBJECTIVE_WORDS]
-        rows.append([*design.parts, design.ballast, *values, "yes" if i in assessed else "no"])
+        rows.append([*design.parts, *_ballast(design), *values, "yes" if i in assessed else "no"])
     groups = result.study.brief.groups
     return csv_text(
-        [*(f"part of {g}" for g in groups), "ballast [kg]", *_objective_headers(), "assessed"], rows
+        [*(f"part of {g}" for g in groups), *BALLAST, *_objective_headers(), "assessed"], rows
     )
+
+
+def _ballast(design: Design) -> tuple[Cell, Cell]:
+    """Mass of the ballast, and its pieces where it comes from a list."""
+    return design.ballast, "" if design.stack is None else design.stack.part
 
 
 def margins_csv(assessment: Assessment) -> str:
     """Return every requirement of an assessed design."""
     columns = ["condition", "place", "quantity", "unit", "value", "lower limit", "upper limit", "margin [-]"]
+    columns += ["at speed or frequency [Hz]", "note", "level reference"]
     rows: list[list[Cell]] = [
         [
             r.condition,
@@ -82,10 +91,26 @@ def margins_csv(assessment: Assessment) -> str:
             r.upper,
             r.margin,
             r.frequency,
+            r.note,
+            r.reference,
         ]
         for r in assessment.margins
     ]
-    return csv_text([*columns, "at speed or frequency [Hz]"], rows)
+    # What no requirement says is told at the end, so that it cannot be missed.
+    rows += [["note", "", "", "", None, None, None, None, None, note, None] for note in assessment.notes]
+    return csv_text(columns, rows)
+
+
+def contributions_csv(shares: Sequence[ForcingShare]) -> str:
+    """Return the share of each forcing in each governing response."""
+    columns = ["condition", "place", "quantity", "unit", "forcing", "kind of forcing", "value of it alone"]
+    columns += ["share [-]", "static part", "value of all together", "limit"]
+    rows: list[list[Cell]] = []
+    for s in shares:
+        r = s.of.row
+        head: list[Cell] = [r.condition, s.of.place, r.quantity, KINDS[r.unit].si_unit or "-"]
+        rows.append([*head, s.forcing, s.kind, s.alone, s.share, s.at_rest, r.value, r.upper])
+    return csv_text(columns, rows)
 
 
 def stations_csv(assessment: Assessment) -> str:

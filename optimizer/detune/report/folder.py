@@ -7,6 +7,7 @@ from pathlib import Path
 from detune.ground.errors import DetuneError
 from detune.proof.record import record_text
 from detune.report.csv_files import (
+    contributions_csv,
     designs_csv,
     front_csv,
     margins_csv,
@@ -16,10 +17,13 @@ from detune.report.csv_files import (
     why_csv,
 )
 from detune.report.figures import draw_all
+from detune.report.forcing_shares import forcing_shares
 from detune.report.page import page_text
 from detune.report.response_data import response_curves
 from detune.report.strict_json import json_text
+from detune.report.tables_listed import absorbers_csv
 from detune.solvers.robust_record import proof_record
+from detune.solvers.outcome import Integers
 from detune.study.run import Result
 
 MARK = "proof.json"
@@ -113,6 +117,9 @@ def _fill(result: Result, folder: Path) -> None:
         texts["margins.csv"] = margins_csv(subject)
         texts["stations.csv"] = stations_csv(subject)
         texts["modes.csv"] = modes_csv(subject)
+        texts["contributions.csv"] = contributions_csv(forcing_shares(result.study.brief, subject))
+        if result.study.brief.absorbers:
+            texts["absorbers.csv"] = absorbers_csv(result.study.brief, subject)
     (folder / "plots").mkdir()
     drawn = draw_all(result)
     for plot in drawn:
@@ -156,6 +163,15 @@ def _scatter(result: Result) -> dict[str, object] | None:
     }
 
 
+def _by_stack(result: Result, by_part: tuple[Integers, ...]) -> dict[str, dict[str, int]]:
+    """Return the counts by ballast, where it is taken from a list and they are told apart by it."""
+    model = result.problem.model
+    if len(by_part) == len(model.groups):
+        return {}
+    counts = zip(model.ballast, by_part[-1], strict=True)
+    return {"ballast": {f"{step.catalog}: {step.part}": int(n) for step, n in counts if n}}
+
+
 def _proof(result: Result) -> dict[str, object]:
     record = result.outcome.record
     return {
@@ -178,8 +194,9 @@ def _proof(result: Result) -> dict[str, object]:
                         for m, n in zip(group.mounts, counts, strict=True)
                         if n
                     }
-                    for group, counts in zip(result.problem.model.groups, rule.by_part, strict=True)
+                    for group, counts in zip(result.problem.model.groups, rule.by_part, strict=False)
                 }
+                | _by_stack(result, rule.by_part)
                 # Whole sets of designs at once are not told apart by part.
                 if rule.by_part
                 else None,

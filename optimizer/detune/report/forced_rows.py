@@ -32,9 +32,10 @@ class ForcedRow:
     transients: tuple[Transient, ...]
 
 
-def forced_rows(brief: Brief, assessment: Assessment) -> tuple[ForcedRow, ...]:
+def forced_rows(brief: Brief, assessment: Assessment, every: bool = False) -> tuple[ForcedRow, ...]:
     """Return the requirements of all conditions with noise, pulses, records or run-ups, in the brief's order.
 
+    `every`: those of all other conditions too.
     Where parts follow the amplitude of their own vibration, the sources do not act one by one: a condition in
     which the design has such parts is left out.
     """
@@ -44,7 +45,7 @@ def forced_rows(brief: Brief, assessment: Assessment) -> tuple[ForcedRow, ...]:
         judged.setdefault((row.kind, row.quantity, row.place, row.condition), []).append(row)
     rows: list[ForcedRow] = []
     for state in states_of(brief):
-        conditions = [c for c in brief.conditions if c.state == state and _moves_in_time(brief, c)]
+        conditions = [c for c in brief.conditions if c.state == state and (every or _moves_in_time(brief, c))]
         if not conditions:
             continue
         machines = {
@@ -116,6 +117,7 @@ def _pairs(brief: Brief, machine: DirectMachine, condition: Condition) -> list[t
         tuple(point.name for point in brief.points),
         tuple(station.name for station in brief.stations if machine.share(station) > 0.0),
         tuple(body.name for body in brief.bodies),
+        tuple(absorber.station.name for absorber in machine.absorbers),
     )
     return [
         (allowable, place)

@@ -16,7 +16,9 @@ from detune.report.robust import robust_lines, robust_tables
 from detune.report.service_loads import service_loads
 from detune.report.summary import none_lines, partial_words, proof_lines
 from detune.report.tables import Table
+from detune.report.tables_dwell import dwell_table, dwell_words
 from detune.report.tables_contributions import contributions_table
+from detune.report.tables_listed import absorbers_table, ballast_table
 from detune.report.words import (
     design_text,
     limit_text,
@@ -197,8 +199,14 @@ def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> 
         Section("margins", f"Margins{of}", points=missed, plots=_only(plots, "margins"),
                 tables=(tables.margins_table(brief, subject),)),
         Section("stations", f"Stations{of}: installation sheet", texts=(_total_load(subject),),
-                tables=(tables.stations_table(subject), tables_study.service_table(service_loads(brief, subject)))),
+                tables=(tables.stations_table(subject), *_besides(brief, subject),
+                        tables_study.service_table(service_loads(brief, subject)))),
     ]  # fmt: skip
+    barred = dwell_table(brief, subject)
+    if barred is not None:
+        found.append(
+            Section("dwell", f"Speeds not to dwell at{of}", texts=dwell_words(brief), tables=(barred,))
+        )
     if "response" in plots:
         found.append(Section("responses", f"Responses against limits{of}", plots=_only(plots, "response")))
     found += _in_time_and_noise(brief, subject, plots, of)
@@ -235,6 +243,12 @@ def _in_time_and_noise(brief: Brief, subject: Assessment, plots: dict[str, Drawn
 
 def _only(plots: dict[str, Drawn], name: str) -> tuple[Drawn, ...]:
     return (plots[name],) if name in plots else ()
+
+
+def _besides(brief: Brief, subject: Assessment) -> list[Table]:
+    """Absorbers and ballast, where the design has any."""
+    both = (absorbers_table(brief, subject), ballast_table(brief, subject))
+    return [table for table in both if table.rows]
 
 
 def _total_load(subject: Assessment) -> str:

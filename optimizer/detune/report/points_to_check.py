@@ -1,11 +1,12 @@
 """What a reader should look at first in an assessed design: facts of this result, not general cautions."""
 
-from collections import Counter
-
 from detune.brief.brief import Brief
 from detune.ground.units import show
+from detune.report.dwell_words import dwell_lines
 from detune.report.words import margin_text, percent, row_text
 from detune.response.assessment import Assessment
+from detune.response.bill import bill
+from detune.response.direct_dwell import LEFT
 from detune.study.run import Result
 
 TIGHT = 0.05
@@ -16,12 +17,15 @@ def points_to_check(brief: Brief, assessment: Assessment) -> tuple[str, ...]:
     """Return what to look at in one assessed design, the most pressing first."""
     return (
         *(f"Not met: {row_text(brief, row)}." for row in assessment.failed),
+        *dwell_lines(assessment),
+        *assessment.notes,
         *_power(assessment),
         *_tight(brief, assessment),
         *(_scatter(assessment) if brief.scatter is None else []),
         *_nearest_mode(assessment),
         *_exempt(assessment),
         *_stock(brief, assessment),
+        *_estimated(assessment),
         *_height(assessment),
     )
 
@@ -52,12 +56,14 @@ def _power(assessment: Assessment) -> list[str]:
 
 
 def _tight(brief: Brief, assessment: Assessment) -> list[str]:
-    tight = sorted((r for r in assessment.margins if 0.0 <= r.margin < TIGHT), key=lambda r: r.margin)
+    # At the edge of a barred band a limit is just met by intent.
+    near = (r for r in assessment.margins if 0.0 <= r.margin < TIGHT and LEFT not in r.note)
+    tight = sorted(near, key=lambda r: r.margin)
     return [f"Tight: {row_text(brief, row)}." for row in tight]
 
 
 def _scatter(assessment: Assessment) -> list[str]:
-    parts = {mount.part: mount.tolerance for mount in assessment.design.mounts}
+    parts = {mount.part: mount.tolerance for mount in assessment.design.mounts if mount.pieces}
     listed = ", ".join(
         f"{part} plus or minus {100.0 * tolerance:g} %"
         for part, tolerance in parts.items()
@@ -90,24 +96,19 @@ def _exempt(assessment: Assessment) -> list[str]:
     return [f"Exempted from separation by the brief: {', '.join(names)}."] if names else []
 
 
-def pieces(brief: Brief, assessment: Assessment) -> dict[tuple[str, str], int]:
-    """Return how many of each part a design takes, by catalog and part number."""
-    design = assessment.design
-    count: Counter[tuple[str, str]] = Counter()
-    for station in brief.stations:
-        mount = design.mounts[design.groups.index(station.group)]
-        count[(mount.catalog, mount.part)] += station.parallel
-    return dict(count)
+def _estimated(assessment: Assessment) -> list[str]:
+    return [
+        f"{part}: {why}; an estimate, so load a sample before relying on it."
+        for part, why in {m.part: m.approximate for m in assessment.design.mounts if m.approximate}.items()
+    ]
 
 
 def _stock(brief: Brief, assessment: Assessment) -> list[str]:
-    stock = {(m.catalog, m.part): m.stock for m in assessment.design.mounts}
-    notes = []
-    for key, count in pieces(brief, assessment).items():
-        held = stock[key]
-        if held is not None and held < count:
-            notes.append(f"{count} of {key[1]} are needed and the list {key[0]} states {held} in stock.")
-    return notes
+    return [
+        f"{row.quantity:g} of {row.part} are needed and the list {row.catalog} states {row.stock} in stock."
+        for row in bill(brief, assessment.design)
+        if row.stock is not None and row.stock < row.quantity
+    ]
 
 
 def _height(assessment: Assessment) -> list[str]:

@@ -12,6 +12,7 @@ from detune.brief.condition import Condition
 from detune.brief.forcing.base import Tone
 from detune.response.assess import states_of
 from detune.response.assessment import Assessment, MarginRow
+from detune.response.damping_readings import readings_of
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes, direct_modes
 from detune.response.direct_supremum import Pairs, amplitudes_at, coherent_sets, steady_intervals, tones_of
@@ -71,31 +72,36 @@ class _Sweep:
 def response_curves(brief: Brief, assessment: Assessment) -> tuple[ResponseCurve, ...]:
     """Return the curves of every harmonic requirement of an assessed design, state by state.
 
-    A requirement under noise, pulses or records alone has no curve over speed.
+    A requirement under noise, pulses or records alone has no curve over speed. Of damping of unknown kind the worse
+    reading is drawn, speed by speed.
     """
     rows = {(r.kind, r.quantity, r.place, r.condition): r for r in assessment.margins}
     curves: list[ResponseCurve] = []
     for state in states_of(brief):
-        machine = DirectMachine(brief, assessment.design, state_of(brief, state))
-        found = direct_modes(machine, steady_intervals(brief, state))
+        looks = []
+        for reading in readings_of(assessment.design.mounts):
+            machine = DirectMachine(brief, assessment.design, state_of(brief, state), reading)
+            looks.append((machine, direct_modes(machine, steady_intervals(brief, state))))
         for condition in brief.conditions:
             if condition.state == state:
-                curves += _condition_curves(machine, found, condition, rows)
+                curves += _condition_curves(looks, condition, rows)
     return tuple(curves)
 
 
 def _condition_curves(
-    machine: DirectMachine,
-    found: DirectModes,
+    looks: list[tuple[DirectMachine, DirectModes]],
     condition: Condition,
     rows: dict[tuple[str, str, str, str], MarginRow],
 ) -> list[ResponseCurve]:
+    """Return the curves of a condition, at each speed the larger value of the readings of unknown damping."""
+    machine = looks[0][0]
     brief = machine.brief
     static = DirectStatic(machine)
     names = Places(
         tuple(p.name for p in brief.points),
         tuple(s.name for s in brief.stations if machine.share(s) > 0.0),
         tuple(b.name for b in brief.bodies),
+        tuple(absorber.station.name for absorber in machine.absorbers),
     )
     known = [
         (a, place)
@@ -113,8 +119,8 @@ def _condition_curves(
     for pairs, sweeps in groups:
         judged = [rows[_key(*pair, condition)] for pair in pairs]
         for sweep in sweeps:
-            speed = _speeds(sweep, found, judged)
-            amplitude = amplitudes_at(machine, pairs, sweep.sets, speed)
+            speed = np.unique(np.concatenate([_speeds(sweep, found, judged) for _, found in looks]))
+            amplitude = np.max([amplitudes_at(each, pairs, sweep.sets, speed) for each, _ in looks], axis=0)
             inside = (speed >= sweep.low) & (speed <= sweep.high)
             for (allowable, place), row, value in zip(pairs, judged, amplitude, strict=True):
                 offset = float(allowable.offset(static, place)[0])

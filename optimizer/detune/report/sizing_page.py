@@ -6,11 +6,11 @@ from pathlib import Path
 from types import ModuleType
 
 from detune.ground.units import show
-from detune.report import tables, tables_sizing
+from detune.report import tables, tables_absorber, tables_convex, tables_opinion, tables_sizing
 from detune.report.figures import Drawn, draw_one
 from detune.report.folder import MARK, check_folder, put_in_place, sibling
 from detune.report.page import TEMPLATE, Section
-from detune.report.plots import sizing_front, sizing_map
+from detune.report.plots import sizing_absorber, sizing_front, sizing_map
 from detune.report.points_to_check import points_to_check
 from detune.report.strict_json import json_text
 from detune.report.tables_sizing import GOALS, goal_text
@@ -20,7 +20,13 @@ from detune.solvers.size_specification import PurchaseSpecification
 from detune.study.cautions import CAUTIONS
 from detune.study.size import SizingResult
 
-PLOTS: dict[str, ModuleType] = {"sizing-map": sizing_map, "sizing-front": sizing_front}
+# Branches besides the best that the terminal lists.
+SHOWN = 6
+PLOTS: dict[str, ModuleType] = {
+    "sizing-map": sizing_map,
+    "sizing-front": sizing_front,
+    "sizing-absorber": sizing_absorber,
+}
 
 
 def draw_sizing(result: SizingResult) -> tuple[Drawn, ...]:
@@ -48,7 +54,16 @@ def sizing_summary(result: SizingResult) -> str:
         lines += [f"  {row[0]}: {row[1]}" for row in table.rows]
         lines.append(f"Least margin: {row_text(brief, best.assessment.tightest)}.")
         others = [branch for branch in result.branches if branch is not best]
-        lines += [f"Other branch: {b.name}, {GOALS[goal]} {goal_text(goal, b.objective)}" for b in others]
+        lines += [
+            f"Other branch: {b.name}, {GOALS[goal]} {goal_text(goal, b.objective)}" for b in others[:SHOWN]
+        ]
+        lines += [f"and {len(others) - SHOWN} more branches, in the report"] if len(others) > SHOWN else []
+    lines += [tables_opinion.opinion_text(result)] if result.opinion is not None else []
+    lines += [
+        f"Under the stated scatter the worst response grows from {each.nominal:.4g} to {each.greatest:.4g} of its limit "
+        f"(absorber {each.absorber}; sampled, no proof)"
+        for each in result.scattered
+    ]
     spread = tables_sizing.searches_text(result)
     lines += [spread] if spread else []
     near = result.nearest
@@ -91,6 +106,11 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
         spread = tables_sizing.searches_text(result)
         table = tables_sizing.branches_table(result)
         found.append(Section("branches", table.title, (spread,) if spread else (), tables=(table,)))
+    if result.opinion is not None:
+        text = tables_opinion.opinion_text(result)
+        found.append(
+            Section("opinion", "Second opinion", (text,), tables=(tables_opinion.opinion_table(result),))
+        )
     if result.exact is not None and result.exact.statement.relaxed:
         text = "What the one-axis problem leaves to the assessor, which judged every branch in full:"
         found.append(Section("relaxed", "What the assessor decided", (text,), result.exact.statement.relaxed))
@@ -102,7 +122,7 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
         found.append(Section("front", heading, plots=shown, folded=(tables_sizing.front_table(result),)))
     if result.nearest is not None:
         found.append(Section("nearest", "Nearest real parts", tables=(tables_sizing.nearest_table(result),)))
-    found += _further(result)
+    found += _further(result, plots)
     if best is not None:
         found.append(
             Section(
@@ -118,14 +138,19 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
     return tuple(found)
 
 
-def _further(result: SizingResult) -> list[Section]:
+def _further(result: SizingResult, plots: dict[str, Drawn]) -> list[Section]:
     found = []
     if result.convex:
-        found.append(Section("convex", "Convex answers", tables=(tables_sizing.convex_table(result),)))
-    if result.detuned:
+        points = tables_convex.convex_points(result)
         found.append(
-            Section("detuning", "Detuning of absorbers", tables=(tables_sizing.detuning_table(result),))
+            Section("convex", "Convex answers", points=points, tables=(tables_convex.convex_table(result),))
         )
+    if result.detuned:
+        shown = [tables_absorber.forms_table(result)] if result.closed_forms else []
+        shown += [tables_absorber.scatter_table(result)] if result.scattered else []
+        drawn = (plots["sizing-absorber"],) if "sizing-absorber" in plots else ()
+        folded = (tables_absorber.detuning_table(result),)
+        found.append(Section("absorber", "Absorber", plots=drawn, tables=tuple(shown), folded=folded))
     bought = result.specification
     if isinstance(bought, str):
         found.append(Section("specification", "Purchase specification", (f"None: {bought}.",)))
@@ -197,6 +222,8 @@ def _fill(result: SizingResult, folder: Path) -> None:
     )
     if isinstance(result.specification, PurchaseSpecification):
         shown.append(tables_sizing.specification_table(result.specification))
+    shown += [tables_absorber.forms_table(result)] if result.closed_forms else []
+    shown += [tables_opinion.opinion_table(result)] if result.opinion is not None else []
     for table in shown:
         texts[f"{table.title.lower().replace(' ', '-')}.csv"] = _csv(table)
     for plot in drawn:
@@ -229,6 +256,11 @@ def _numbers(result: SizingResult) -> dict[str, object]:
         "branches": result.branches,
         "nearest": None if result.nearest is None else result.nearest.designs,
         "front": None if result.front is None else result.front.points,
+        "second_opinion": result.opinion,
+        "convex": result.convex,
+        "parts_bounds": result.parts_bounds,
+        "closed_forms": result.closed_forms,
+        "scattered": result.scattered,
         "cautions": result.cautions,
         "units": "SI: m, kg, s, N, rad, Hz; cost in the currency of the study; margins and separation are ratios",
     }

@@ -80,7 +80,7 @@ def comparison_rows(assessments: Sequence[Assessment]) -> list[tuple[str, tuple[
     rows.append(("meets the brief", tuple("yes" if a.meets else "no" for a in assessments)))
     for index, group in enumerate(assessments[0].design.groups):
         rows.append((group, tuple(a.design.parts[index] for a in assessments)))
-    rows.append(("ballast", tuple(f"{a.design.ballast:g} kg" for a in assessments)))
+    rows.append(("ballast", tuple(a.design.ballast_name for a in assessments)))
     rows.append(("cost", tuple(objective_text(a, "cost") for a in assessments)))
     rows.append(("separation", tuple(separation_text(a.separation) for a in assessments)))
     rows.append(("least margin", tuple(margin_text(a.least_margin) for a in assessments)))

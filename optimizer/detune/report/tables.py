@@ -5,7 +5,6 @@ from dataclasses import dataclass
 
 from detune.brief.brief import Brief
 from detune.ground.units import show
-from detune.report.points_to_check import pieces
 from detune.report.words import (
     frequency_text,
     is_shaft_speed,
@@ -17,6 +16,7 @@ from detune.report.words import (
     value_text,
 )
 from detune.response.assessment import Assessment, ModeRow, StationRow
+from detune.response.bill import bill
 
 DIRECTIONS = ("x", "y", "z", "about x", "about y", "about z")
 SMALL_SHARE = 0.005
@@ -37,26 +37,22 @@ class Table:
 
 def answer_table(brief: Brief, assessment: Assessment) -> Table:
     """Return the parts list: what to buy."""
-    count = pieces(brief, assessment)
-    by_key = {(mount.catalog, mount.part): mount for mount in assessment.design.mounts}
-    rows = []
-    for key, mount in by_key.items():
-        groups = [
-            g for g, m in zip(assessment.design.groups, assessment.design.mounts, strict=True) if m == mount
-        ]
-        stock = "not stated" if mount.stock is None else str(mount.stock)
-        cost = number(count[key] * mount.cost, 6)
-        rows.append(
-            (mount.part, key[0], ", ".join(groups), str(count[key]), number(mount.cost, 6), cost, stock)
+    rows = [
+        (
+            row.part,
+            row.catalog,
+            ", ".join(row.groups),
+            f"{row.quantity:g} kg" if row.by_weight else f"{row.quantity:g}",
+            f"{number(row.price, 6)} per kg" if row.by_weight else number(row.price, 6),
+            number(row.cost, 6),
+            "" if row.by_weight else "not stated" if row.stock is None else str(row.stock),
         )
-    if assessment.design.ballast and brief.ballast is not None:
-        mass, each = assessment.design.ballast, brief.ballast.cost_per_kg
-        rows.append(
-            ("ballast", "", "", f"{mass:g} kg", f"{number(each, 6)} per kg", number(mass * each, 6), "")
-        )
+        for row in bill(brief, assessment.design)
+    ]
     rows.append(("total", "", "", "", "", number(assessment.cost, 6), ""))
     columns = ("part", "list", "groups", "number", "price", "cost", "in stock")
-    return Table("Parts", columns, tuple(rows), frozenset({3, 4, 5, 6}))
+    note = "The price is that of one piece at the number bought of it together."
+    return Table("Parts", columns, tuple(rows), frozenset({3, 4, 5, 6}), note)
 
 
 def margins_table(brief: Brief, assessment: Assessment) -> Table:
@@ -65,7 +61,7 @@ def margins_table(brief: Brief, assessment: Assessment) -> Table:
         (
             row.condition,
             row.place,
-            row.quantity,
+            row.told,
             value_text(row),
             limit_text(row),
             margin_text(row.margin),
@@ -77,6 +73,11 @@ def margins_table(brief: Brief, assessment: Assessment) -> Table:
         "Margin: limit / value - 1 for an upper limit, value / limit - 1 for a lower one, the lesser of both for a "
         "window; positive is met. Amplitudes are peak unless rms or peak-to-peak is said. Parts at their listed values."
     )
+    if any(row.reference is not None for row in assessment.margins):
+        note += (
+            " Levels in dB are 20 log10 of the rms value over the reference that stands with them (ISO 1683); their "
+            "margin is the ratio of the amplitudes too, 10^(difference / 20 dB) - 1."
+        )
     columns = ("condition", "place", "quantity", "value", "limit", "margin", "worst at")
     return Table("Margins", columns, rows, frozenset({3, 4, 5, 6}), note)
 

@@ -16,6 +16,7 @@ GOALS = {
     "stiffness": "axial stiffness, all parts",
     "damping": "damping, all parts",
     "separation": "separation",
+    "absorber-mass": "mass of the absorber",
 }
 
 
@@ -23,7 +24,7 @@ def goal_text(name: str, value: float) -> str:
     """An objective with its unit."""
     if name == "separation":
         return percent(value)
-    if name == "added-mass":
+    if name in ("added-mass", "absorber-mass"):
         return show(value, "mass")
     if name == "stiffness":
         return show(value, "stiffness")
@@ -207,29 +208,4 @@ def specification_table(found: PurchaseSpecification) -> Table:
         tuple(rows),
         frozenset({1, 2}),
         note,
-    )
-
-
-def convex_table(result: SizingResult) -> Table:
-    """The convex answers of both sides, with what each is worth."""
-    rows = []
-    unknowns = sizing_of(result.study.brief).unknown
-    for answer in result.convex:
-        values = "; ".join(
-            f"{u.title} {show(v, u.unit)}" for u, v in zip(unknowns, answer.values.tolist(), strict=True)
-        )
-        rows.append((answer.side, answer.what, goal_text(answer.what, answer.value), answer.worth, values))
-    columns = ("side", "quantity", "value", "worth", "at")
-    note = "Damping and what the convex forms leave alone stand at the middle of their ranges."
-    return Table("Convex answers", columns, tuple(rows), frozenset({2}), note)
-
-
-def detuning_table(result: SizingResult) -> Table:
-    """What an absorber off its tuning does to the worst response."""
-    rows = tuple(
-        (each.unknown, f"{each.share:+.0%}", number(each.worst_response, 4)) for each in result.detuned
-    )
-    note = "Everything else as sized. Above 1 a limit on a response is missed."
-    return Table(
-        "Detuning", ("unknown", "off by", "worst response over its limit"), rows, frozenset({1, 2}), note
     )

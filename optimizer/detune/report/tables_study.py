@@ -27,7 +27,7 @@ def front_table(result: Result) -> Table:
         (
             str(index + 1),
             *point.design.parts,
-            f"{point.design.ballast:g} kg",
+            point.design.ballast_name,
             *(objective_text(point, name) for name in OBJECTIVE_WORDS),
             point.tightest.label,
         )
@@ -163,7 +163,7 @@ def speeds_table(result: Result, assessment: Assessment) -> Table:
     columns = ("source", "speed", "order", "mode", "condition", "state")
     note = "Pass these speeds without stopping; the amplitudes there are in the margins of the condition."
     ordered = tuple(cells for _, cells in sorted(rows, key=lambda row: row[0]))
-    return Table("Speeds not to dwell at", columns, ordered, frozenset({1, 2}), note)
+    return Table("Speeds at which an order meets a mode", columns, ordered, frozenset({1, 2}), note)
 
 
 def service_table(loads: tuple[ServiceLoad, ...]) -> Table:
@@ -173,7 +173,12 @@ def service_table(loads: tuple[ServiceLoad, ...]) -> Table:
         where = frequency_text(load.frequency, load.is_shaft)
         text = show(load.value, load.unit) + (f" at {where}" if where else "") if load.value else "none"
         rows.setdefault((load.condition, load.what, load.place), {})[load.direction] = text
-    note = "Peak values over the whole range of the condition; sources with speeds of their own are added linearly."
+    note = (
+        "Peak values over the whole range of the condition; sources with speeds of their own are added linearly. The "
+        "force into the floor is the phasor sum over all parts and connections, each with its phase; beside it the "
+        "magnitudes are added as if all pushed together (given connections as one), which no phase can exceed. Of "
+        "damping whose kind a list leaves open, the worse reading."
+    )
     return Table(
         "Forces into the floor and movement at the points",
         ("condition", "quantity", "place", "x", "y", "z"),

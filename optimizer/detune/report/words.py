@@ -5,6 +5,8 @@ import math
 from detune.brief.allowable import KINDS
 from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.brief import Brief
+from detune.brief.levels import REFERENCES
+from detune.ground.units import KINDS as KINDS_OF_UNIT
 from detune.ground.units import convert, show
 from detune.response.assessment import Assessment, MarginRow
 from detune.response.design import Design
@@ -78,13 +80,32 @@ def value_text(row: MarginRow) -> str:
     """Return the value of a row, in the unit of its limit."""
     if row.kind == "separation":
         return separation_text(row.value)
+    if row.reference is not None:
+        return level_text(row.value, row)
     return _in_unit(row.value, row.unit, _unit_of_limit(row))
+
+
+def level_text(value: float, row: MarginRow) -> str:
+    """Return a value as the level that the limit of its row is stated in, with the reference."""
+    assert row.reference is not None
+    if not 0.0 < value < math.inf:
+        return show(value, row.unit)
+    reference = reference_text(row.reference, row.unit)
+    return f"{20.0 * math.log10(value / row.reference):.1f} dB re {reference}"
+
+
+def reference_text(reference: float, kind: str) -> str:
+    """Return the reference of a level as it is written: "1 nm/s"."""
+    usual, written = REFERENCES[kind]
+    return written if math.isclose(reference, usual, rel_tol=1e-9) else f"{reference:g} {KINDS_OF_UNIT[kind].si_unit}"
 
 
 def limit_text(row: MarginRow) -> str:
     """Return the limit of a row: "at most", "at least", or a window."""
 
     def text(limit: float) -> str:
+        if row.reference is not None:
+            return level_text(limit, row)
         return percent(limit) if row.kind == "separation" else _in_unit(limit, row.unit, _unit_of_limit(row))
 
     has_lower = row.lower is not None and not math.isnan(row.lower)
@@ -153,7 +174,7 @@ def design_text(design: Design) -> str:
     """Return a design on one line; several groups with one part are named together."""
     if len(set(design.parts)) == 1 and len(design.parts) > 1:
         text = f"{design.parts[0]} at every station ({', '.join(design.groups)})"
-        return f"{text}; ballast {design.ballast:g} kg" if design.ballast else text
+        return f"{text}; ballast {design.ballast_name}" if design.ballast else text
     return str(design)
 
 

@@ -2,8 +2,9 @@
 
 Every station works at the peak of its own axial dynamic deflection under all that acts in the condition. At each
 speed of a tone that is the deflection at that speed; what else acts beside it (tones of other speeds, noise,
-records, passages) adds its own largest deflection. It is found by iteration from several amplitudes, none and one
-a decade of the tables: where they come to different ends, the largest response counts.
+records, passages) adds its own largest deflection. It is found by iteration from several amplitudes, at each speed
+from none and one a decade of the tables, for all sources together from none and the greatest: where they come to
+different ends, the largest response counts.
 """
 
 from collections.abc import Callable
@@ -12,13 +13,14 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable.base import HarmonicAllowable, combine
+from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.physics import envelope
 from detune.physics.fixed_point import fixed_points
 from detune.response.assemble import Dynamic, at_amplitude
+from detune.response.coincidence import meeting
 from detune.response.designs import Designs
-from detune.response.evaluate import TWO_PI, Amplitudes, Rows, family_amplitude, response_values
+from detune.response.evaluate import TWO_PI, Amplitudes, Rows, combined, family_amplitude, response_values
 from detune.response.loads import Family
 from detune.response.model import Model
 from detune.response.modes import mode_batch, sharp_poles
@@ -32,6 +34,8 @@ BACKGROUND = 64
 # What several sources together are iterated to: a supremum over speed is known to about as much.
 MOST_ROUNDS = 60
 CLOSE = 2e-5
+# Relative difference from which two ends are two answers.
+APART = 1e-3
 AXIAL = MountDeflection(part="dynamic", direction="axial", limit=1.0)
 
 
@@ -72,33 +76,57 @@ def values_at_own_amplitude(
     Rows under a unit load take the worse of that amplitude and none. Infinite where no amplitude was found that
     reproduces itself.
     """
-    working = working_amplitudes(model, designs, dynamic, driving)
-    settled = working.settled.copy()
+    ends = working_amplitudes(model, designs, dynamic, driving)
+    settled = np.all([end.settled for end in ends], axis=0)
     value = np.zeros((len(rows.pairs), designs.count))
     frequency = np.full_like(value, np.nan)
     if rows.largest:
-        for amplitude in (np.zeros_like(working.total), working.total):
+        for amplitude in (np.zeros_like(ends[0].total), *(end.total for end in ends)):
             at = at_amplitude(dynamic, amplitude)
             part = response_values(model, designs, at, mode_batch(at), rows)
             settled &= ~at.topples
             frequency = np.where(part.value > value, part.frequency, frequency)
             value = np.maximum(value, part.value)
     else:
-        largest = np.full_like(value, -np.inf)
-        for number, source in enumerate(working.sources):
-            judged = replace(source, pairs=rows.pairs)
-            part, found = _source_values(model, designs, dynamic, judged, working, number)
+        for end in ends:
+            part, found = _together(model, designs, dynamic, rows, end)
             settled &= found
-            for index, (allowable, _) in enumerate(rows.pairs):
-                value[index] = combine(value[index], part.value[index], allowable.statistic())
-            bigger = np.isfinite(part.frequency) & (part.value > largest)
-            frequency = np.where(bigger, part.frequency, frequency)
-            largest = np.where(bigger, part.value, largest)
+            frequency = np.where(part.value > value, part.frequency, frequency)
+            value = np.maximum(value, part.value)
     return Amplitudes(np.where(settled, value, np.inf), frequency)
 
 
-def working_amplitudes(model: Model, designs: Designs, dynamic: Dynamic, driving: Rows) -> Working:
-    """Return the amplitudes at which the parts of D designs work under the forcing of a condition."""
+def _together(
+    model: Model, designs: Designs, dynamic: Dynamic, rows: Rows, working: Working
+) -> tuple[Amplitudes, Booleans]:
+    """Return the rows' values under all sources at one end, and the designs for which every speed was settled."""
+    settled = np.ones(designs.count, dtype=bool)
+    value = np.zeros((len(rows.pairs), designs.count))
+    frequency, largest = np.full_like(value, np.nan), np.full_like(value, -np.inf)
+    tones = [source.families[0] for source in working.sources if source.families]
+    # What has no family of its own meets nothing; families come first among the sources.
+    linked = (*meeting(tones), *range(len(tones), len(working.sources)))
+    together: dict[int, Floats] = {}
+    for number, source in enumerate(working.sources):
+        judged = replace(source, pairs=rows.pairs)
+        part, found = _source_values(model, designs, dynamic, judged, working, number)
+        settled &= found
+        together[linked[number]] = together.get(linked[number], 0.0) + part.value
+        bigger = np.isfinite(part.frequency) & (part.value > largest)
+        frequency = np.where(bigger, part.frequency, frequency)
+        largest = np.where(bigger, part.value, largest)
+    for each in together.values():
+        value = combined(rows, value, each)
+    return Amplitudes(value, frequency), settled
+
+
+def working_amplitudes(
+    model: Model, designs: Designs, dynamic: Dynamic, driving: Rows
+) -> tuple[Working, ...]:
+    """Return the amplitudes at which the parts of D designs work under the forcing of a condition.
+
+    More than one where some design comes to another end from large amplitudes than from none.
+    """
     watched = replace(driving, pairs=deflection_pairs(model))
     sources = _sources(watched)
     shape = (len(sources), len(model.stations), designs.count)
@@ -109,18 +137,33 @@ def working_amplitudes(model: Model, designs: Designs, dynamic: Dynamic, driving
         chosen, matrices = designs.take(index), dynamic.take(index)
         here = Working(sources, columns.reshape(*shape[:2], len(index)), np.ones(len(index), dtype=bool))
         there = np.zeros_like(here.deflection)
+        together = np.ones(len(index), dtype=bool)
         for number, source in enumerate(sources):
             part, found = _source_values(model, chosen, matrices, source, here, number)
             there[number, numbers] = part.value
-            settled[index[~found]] = False
+            together &= found
+        # What counts is the last look at each design: on the way a part may be softer than it ends.
+        settled[index] = together
         return there.reshape(columns.shape)
 
     start = np.zeros((shape[0] * shape[1], shape[2]))
     if len(sources) == 1 and sources[0].families:
         # One speed alone finds its own amplitude within.
-        return Working(sources, step(start, np.arange(designs.count)).reshape(shape), settled)
-    found = fixed_points(step, start, MOST_ROUNDS, CLOSE)
-    return Working(sources, found.value.reshape(shape), settled & found.settled)
+        return (Working(sources, step(start, np.arange(designs.count)).reshape(shape), settled),)
+    ends: list[Working] = []
+    for level in (0.0, _amplitude_range(model)[1]):
+        found = fixed_points(step, start + level, MOST_ROUNDS, CLOSE)
+        end = Working(sources, found.value.reshape(shape), settled & found.settled)
+        if not ends or not _one_answer(ends[0], end):
+            ends.append(end)
+    return tuple(ends)
+
+
+def _one_answer(first: Working, second: Working) -> bool:
+    """Return whether two ends are the same for every design."""
+    size = np.maximum(first.total.max(axis=0), second.total.max(axis=0))
+    apart = np.abs(first.total - second.total).max(axis=0) > APART * size
+    return not np.any(apart | (first.settled != second.settled))
 
 
 def _sources(rows: Rows) -> tuple[Rows, ...]:
@@ -221,6 +264,7 @@ def worse_of_two_amplitudes(
     model: Model, designs: Designs, dynamic: Dynamic, driving: Rows, values: Callable[[Dynamic], Floats]
 ) -> Floats:
     """Return the larger of values (R, D) at no amplitude and at that of the forcing; infinite if none is found."""
-    working = working_amplitudes(model, designs, dynamic, driving)
-    ends = [values(at_amplitude(dynamic, a)) for a in (np.zeros_like(working.total), working.total)]
-    return np.where(working.settled, np.maximum(*ends), np.inf)
+    ends = working_amplitudes(model, designs, dynamic, driving)
+    amplitudes = (np.zeros_like(ends[0].total), *(end.total for end in ends))
+    found = np.max([values(at_amplitude(dynamic, amplitude)) for amplitude in amplitudes], axis=0)
+    return np.where(np.all([end.settled for end in ends], axis=0), found, np.inf)

@@ -5,7 +5,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.response.absorbers import geometric_of, mass_of, spare_damping, spare_stiffness
 from detune.response.designs import Designs
+from detune.response.floor_table import beyond_spring
 from detune.response.model import Model, StationRows
 from detune.response.part_laws import amplitude_part, frequency_part
 from detune.response.static_stiffness import group_sum
@@ -42,7 +44,9 @@ class PartBatch:
 
     @property
     def with_frequency(self) -> bool:
-        """Whether some part's stiffness changes with frequency other than by a dashpot."""
+        """Whether some part's stiffness, or the floor's, changes with frequency other than by a dashpot."""
+        if self.model.floor_table is not None:
+            return True
         return any(group.laws is not None and group.laws.with_frequency for group in self.model.groups)
 
     def constants(self, number: int) -> tuple[Floats, Floats, Floats]:
@@ -81,9 +85,13 @@ class PartBatch:
         return station.factor * total
 
     def frequency_matrix(self, omega: Floats) -> Complexes:
-        """What the frequency laws add (D, F, n, n) to the dynamic stiffness matrix."""
+        """What frequency laws and a tabulated floor add (D, F, n, n) to the dynamic stiffness matrix."""
         n = self.model.frame.count
         total = np.zeros((*omega.shape, n, n), dtype=complex)
+        if self.model.floor_table is not None:
+            model = self.model
+            spring = model.floor_mass, model.floor_stiffness
+            total[..., -1, -1] = beyond_spring(self.model.floor_table, *spring, omega)
         for number, station in enumerate(self.model.stations):
             group = self.model.groups[station.group]
             if group.laws is None or not group.laws.with_frequency or station.parallel == 0:
@@ -140,17 +148,20 @@ class Dynamic:
 def dynamic_matrices(model: Model, designs: Designs, amplitude: Floats | None = None) -> Dynamic:
     """Return the dynamic matrices of a batch, at the parts' dynamic stiffness at their load (and amplitude)."""
     parts = PartBatch(model, designs, working_point(model, designs), amplitude)
-    geometric = model.geometric[designs.step] if model.with_gravity_stiffness else 0.0
+    geometric = geometric_of(model, designs) if model.with_gravity_stiffness else 0.0
     if parts.by_station:
         return _by_station(model, designs, parts, geometric)
     dynamic = Dynamic(
-        mass=model.mass[designs.step],
+        mass=mass_of(model, designs),
         stiffness=model.fixed_dynamic
+        + spare_stiffness(model, designs)
         + geometric
         + group_sum(model, designs, lambda group: group.arrays.stiffness_dynamic),
         hysteretic=model.fixed_hysteretic
         + group_sum(model, designs, lambda group: group.arrays.stiffness_dynamic * group.arrays.loss_factor),
-        viscous=model.fixed_viscous + group_sum(model, designs, lambda group: group.arrays.viscous),
+        viscous=model.fixed_viscous
+        + spare_damping(model, designs)
+        + group_sum(model, designs, lambda group: group.arrays.viscous),
         parts=parts,
         geometric=geometric,
         topples=np.zeros(designs.count, dtype=bool),
@@ -180,8 +191,9 @@ def at_amplitude(dynamic: Dynamic, amplitude: Floats) -> Dynamic:
 
 def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Floats | float) -> Dynamic:
     stiffness = np.repeat(model.fixed_dynamic[None], designs.count, axis=0) + geometric
+    stiffness = stiffness + spare_stiffness(model, designs)
     hysteretic = np.repeat(model.fixed_hysteretic[None], designs.count, axis=0)
-    viscous = np.repeat(model.fixed_viscous[None], designs.count, axis=0)
+    viscous = np.repeat(model.fixed_viscous[None], designs.count, axis=0) + spare_damping(model, designs)
     for number, station in enumerate(model.stations):
         k, eta, c = parts.constants(number)
         for matrix, values in ((stiffness, k), (hysteretic, k * eta), (viscous, c)):
@@ -192,5 +204,5 @@ def _by_station(model: Model, designs: Designs, parts: PartBatch, geometric: Flo
     if working is not None:
         still = np.asarray(~np.isfinite(working.q).all(axis=1))
     return _standing(
-        Dynamic(model.mass[designs.step], stiffness, hysteretic, viscous, parts, geometric, still)
+        Dynamic(mass_of(model, designs), stiffness, hysteretic, viscous, parts, geometric, still)
     )

@@ -22,14 +22,14 @@ from detune.brief.allowable.separation import Separation
 from detune.brief.allowable.views import DesignView, Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
-from detune.brief.statement import unit_direction
+from detune.brief.dwell import without_barred
 from detune.ground.units import show
-from detune.parts.kinds.mount import Mount
-from detune.physics import modes, separation
-from detune.response.assessment import Assessment, MarginRow, ModeRow, PowerRow, StationRow
+from detune.response.assess_rows import livelier, mode_rows, station_rows
+from detune.response.assessment import Assessment, MarginRow, PowerRow
+from detune.response.bill import bill
 from detune.response.damping_readings import readings_of
 from detune.response.design import Design
-from detune.response.direct import FLOOR, DirectMachine
+from detune.response.direct import DirectMachine
 from detune.response.direct_amplitude import (
     WorkingAmplitude,
     follows_amplitude,
@@ -37,9 +37,11 @@ from detune.response.direct_amplitude import (
     working_amplitude,
 )
 from detune.response.direct_bands import direct_band_ratio
+from detune.response.direct_dwell import DwellFound, Judged, dwell_found, over_left, with_left
 from detune.response.direct_floor import with_force_ratio
 from detune.response.direct_modes import DirectModes, direct_modes
 from detune.response.direct_random import RandomPart
+from detune.response.direct_stand_in import told_of_stand_ins
 from detune.response.direct_supremum import (
     Pairs,
     Supremum,
@@ -59,6 +61,7 @@ TWO_PI = 2.0 * np.pi
 
 def assess(brief: Brief, design: Design) -> Assessment:
     """Return the assessment of one design. Raises UnsupportedMachine where statics have no solution."""
+    brief = without_barred(brief)
     allowables, _ = demanded(brief)
     totals = design_totals(brief, design)
     rows: list[MarginRow] = []
@@ -69,10 +72,15 @@ def assess(brief: Brief, design: Design) -> Assessment:
     exempt = exempt_amplification(brief)
     readings = readings_of(design.mounts)
     found = [_in_state(brief, design, name, reading) for name in states_of(brief) for reading in readings]
+    dwelling = _dwelling(brief, found, allowables)
+    found = [_held_against_left(each, dwelling) for each in found]
+    rows += [
+        _row(d.limit, d.condition.name, d.limit.shaft, d.width, None, d.allowance) for d in dwelling.values()
+    ]
     for first in range(0, len(found), len(readings)):
         rows += worse_reading(
             [
-                (each.reading, _rows_in_state(each, allowables))
+                (each.reading, _rows_in_state(each, allowables, dwelling))
                 for each in found[first : first + len(readings)]
             ]
         )
@@ -88,12 +96,20 @@ def assess(brief: Brief, design: Design) -> Assessment:
         separation=min(each.modes.least_separation(exempt) for each in found),
         least_margin=min(counted),
         margins=kept,
-        stations=_station_rows(brief, installed.static, design),
-        modes=_livelier([_mode_rows(each.modes, exempt) for each in found[: len(readings)]]),
+        stations=station_rows(brief, installed.static, design),
+        modes=livelier([mode_rows(each.modes, exempt, each.machine) for each in found[: len(readings)]]),
         power=tuple(power for each in found for power in _power_rows(each)),
-        total_load=float(-installed.machine.dead_load[2 : 6 * len(brief.bodies) : 6].sum()),
-        notes=_notes(found[:: len(readings)], rows),
+        total_load=_total_load(installed.machine),
+        notes=_notes(found[:: len(readings)], rows) + told_of_stand_ins(found, allowables),
+        barred=tuple(band for d in dwelling.values() for band in d.bands),
     )
+
+
+def _total_load(machine: DirectMachine) -> float:
+    """Return the static load downward of everything that stands on the parts, N."""
+    total = machine.dead_load[2 : 6 * len(machine.brief.bodies) : 6].sum()
+    total += sum(machine.dead_load @ each.own(machine) * each.along[2] for each in machine.absorbers)
+    return float(-total)
 
 
 @dataclass(frozen=True)
@@ -107,6 +123,28 @@ class _InState:
     modes: DirectModes
     conditions: tuple[Condition, ...]
     places: Places
+
+
+def _dwelling(
+    brief: Brief, found: list[_InState], allowables: tuple[Allowable, ...]
+) -> dict[str, DwellFound]:
+    """Return what is barred in every condition that asks for speeds not to dwell at, by its name."""
+    dwelling = {}
+    for condition in brief.conditions:
+        here = [
+            Judged(each.machine, each.static, each.modes, each.places)
+            for each in found
+            if each.state == condition.state
+        ]
+        judged = dwell_found(brief, condition, here, allowables)
+        if judged is not None:
+            dwelling[condition.name] = judged
+    return dwelling
+
+
+def _held_against_left(each: _InState, dwelling: dict[str, DwellFound]) -> _InState:
+    own = [d for d in dwelling.values() if d.condition.state == each.state]
+    return replace(each, modes=with_left(each.modes, own)) if own else each
 
 
 def _notes(found: list[_InState], rows: list[MarginRow]) -> tuple[str, ...]:
@@ -124,6 +162,7 @@ def states_of(brief: Brief) -> tuple[str | None, ...]:
 def _in_state(brief: Brief, design: Design, name: str | None, reading: str | None) -> _InState:
     machine = DirectMachine(brief, design, state_of(brief, name), reading)
     carrying = tuple(s.name for s in brief.stations if machine.share(s) > 0.0)
+    fitted = tuple(absorber.station.name for absorber in machine.absorbers)
     return _InState(
         state=name,
         reading=reading,
@@ -131,11 +170,15 @@ def _in_state(brief: Brief, design: Design, name: str | None, reading: str | Non
         static=DirectStatic(machine),
         modes=direct_modes(machine, steady_intervals(brief, name)),
         conditions=tuple(c for c in brief.conditions if c.state == name),
-        places=Places(tuple(p.name for p in brief.points), carrying, tuple(b.name for b in brief.bodies)),
+        places=Places(
+            tuple(p.name for p in brief.points), carrying, tuple(b.name for b in brief.bodies), fitted
+        ),
     )
 
 
-def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[MarginRow]:
+def _rows_in_state(
+    each: _InState, allowables: tuple[Allowable, ...], dwelling: dict[str, DwellFound]
+) -> list[MarginRow]:
     told = "" if each.state is None else f", {each.state}"
     rows: list[MarginRow] = []
     for allowable in allowables:
@@ -149,22 +192,32 @@ def _rows_in_state(each: _InState, allowables: tuple[Allowable, ...]) -> list[Ma
             limits = allowable.lower_limit(), allowable.upper_limit()
             rows.append(_row(allowable, f"steady conditions{told}", "whole machine", value, *limits))
     for condition in each.conditions:
-        working = working_amplitude(each.machine, condition) if follows_amplitude(each.machine) else None
-        judged = _band_rows(each, condition, allowables, working)
-        judged += _harmonic_rows(each, condition, allowables, working)
-        machine = each.machine
-        stands, curves = not machine.topples, machine.rest is not None
-        rows += [
-            noted(row, stands=stands, on_curves=curves, at_amplitude=working is not None) for row in judged
-        ]
+        if condition.name in dwelling:
+            found = dwelling[condition.name]
+            rows += over_left(found, lambda piece: _rows_in_condition(each, piece, allowables))
+        else:
+            rows += _rows_in_condition(each, condition, allowables)
     return rows
+
+
+def _rows_in_condition(
+    each: _InState, condition: Condition, allowables: tuple[Allowable, ...]
+) -> list[MarginRow]:
+    working = working_amplitude(each.machine, condition) if follows_amplitude(each.machine) else None
+    judged = _band_rows(each, condition, allowables, working)
+    judged += _harmonic_rows(each, condition, allowables, working)
+    stands, curves = not each.machine.topples, each.machine.rest is not None
+    several = working is not None and working.several
+    told = {"stands": stands, "on_curves": curves, "at_amplitude": working is not None, "several": several}
+    return [noted(row, **told) for row in judged]
 
 
 def _ends(each: _InState, working: WorkingAmplitude | None) -> list[tuple[DirectMachine, DirectModes]]:
     """Return the machine and its modes at the amplitudes a ratio or a band is judged at: none, and its own."""
     if working is None:
         return [(each.machine, each.modes)]
-    machines = [each.machine.at_amplitude(a) for a in (np.zeros_like(working.total), working.total)]
+    ends = working.totals
+    machines = [each.machine.at_amplitude(a) for a in (np.zeros_like(ends[0]), *ends)]
     return [(machine, direct_modes(machine, [])) for machine in machines]
 
 
@@ -190,27 +243,14 @@ def _band_rows(
 
 def design_totals(brief: Brief, design: Design) -> DesignView:
     """Return cost, added mass and number of part numbers of one design."""
-    quantity: dict[tuple[str, str], int] = {}
-    cost = 0.0
-    for station in brief.stations:
-        mount = design.mounts[design.groups.index(station.group)]
-        cost += station.parallel * mount.damper_cost
-        if mount.pieces:
-            key = (mount.catalog, mount.base or mount.part)
-            quantity[key] = quantity.get(key, 0) + station.parallel * mount.pieces
-    for mount in {(m.catalog, m.base or m.part): m for m in design.mounts if m.pieces}.values():
-        bought = quantity[mount.catalog, mount.base or mount.part]
-        single = (mount.cost - mount.damper_cost) / mount.pieces
-        reached = [price for least, price in mount.cost_breaks if bought >= least]
-        cost += bought * (reached[-1] if reached else single)
-    if brief.ballast is not None:
-        cost += design.ballast * brief.ballast.cost_per_kg
-    numbers = len({(place, name) for mount in design.mounts for place, name in _bought(mount)})
-    return DesignView(np.array([cost]), np.array([design.ballast]), np.array([float(numbers)]))
-
-
-def _bought(mount: Mount) -> list[tuple[str, str]]:
-    return [("damper" if place else mount.catalog, name) for place, name in enumerate(mount.bought)]
+    rows = bill(brief, design)
+    added = design.ballast + sum(
+        design.mounts[design.groups.index(absorber.name)].moving_mass
+        + design.mounts[design.groups.index(absorber.name)].riding_mass
+        for absorber in brief.absorbers
+    )
+    numbers = len({(row.what, row.catalog, row.part) for row in rows if not row.by_weight})
+    return DesignView(np.array([sum(row.cost for row in rows)]), np.array([added]), np.array([float(numbers)]))
 
 
 def exempt_amplification(brief: Brief) -> float | None:
@@ -248,6 +288,7 @@ def _row(
         margin=-np.inf if np.isnan(value) else margin,
         frequency=frequency,
         note=note,
+        reference=allowable.level_reference() if isinstance(allowable, HarmonicAllowable) else None,
     )
 
 
@@ -321,64 +362,6 @@ def _random_note(allowable: HarmonicAllowable, noise: RandomPart, index: int) ->
     if allowable.statistic() in ("peak", "peak-to-peak"):
         return f"random part: expected extreme in {lasting}"
     return f"expected extreme of the random part in {lasting}: {show(float(noise.extreme[index]), allowable.unit)}"
-
-
-def _station_rows(brief: Brief, static: DirectStatic, design: Design) -> tuple[StationRow, ...]:
-    rows = []
-    for station in brief.stations:
-        mount = design.mounts[design.groups.index(station.group)]
-        load = static.station_load(station.name)[0]
-        compression = float(-static.station_deflection(station.name)[0, 2])
-        rows.append(
-            StationRow(
-                station=station.name,
-                group=station.group,
-                part=mount.part,
-                parallel=station.parallel,
-                position=station.position,
-                axial_load=float(-load[2]),
-                lateral_load=float(np.hypot(load[0], load[1])),
-                compression=compression,
-                free_height=mount.free_height,
-                installed_height=None if mount.free_height is None else mount.free_height - compression,
-                load_min=mount.load_min,
-                load_max=mount.load_max,
-                levels=station.to == FLOOR and abs(unit_direction(station.axial)[2]) == 1.0,
-            )
-        )
-    return tuple(rows)
-
-
-def _mode_rows(found: DirectModes, exempt: float | None) -> tuple[ModeRow, ...]:
-    rows = []
-    # In a direction in which nothing can move there is no mass to take part: its share is zero.
-    moves = np.any(found.directions != 0.0, axis=0)
-    share = np.zeros((len(found.frequency), len(moves)))
-    share[:, moves] = modes.participation(found.mass, found.shapes, found.directions[:, moves])
-    for index, frequency in enumerate(found.frequency):
-        each = [
-            (float(separation.separation(frequency, low, high)), (float(low), float(high)))
-            for low, high in found.intervals
-        ]
-        nearest = min(each) if each else None
-        amplification = float(found.view.amplification[0, index])
-        rows.append(
-            ModeRow(
-                frequency=float(frequency),
-                name=modes.mode_name(found.shapes[:, index], found.names, found.mass),
-                amplification=amplification,
-                separation=None if nearest is None else nearest[0],
-                interval=None if nearest is None else nearest[1],
-                participation=tuple(float(value) for value in share[index]),
-                exempt=exempt is not None and amplification < exempt,
-            )
-        )
-    return tuple(rows)
-
-
-def _livelier(readings: list[tuple[ModeRow, ...]]) -> tuple[ModeRow, ...]:
-    """Return the modes, which every reading of unknown damping has alike, each with its greatest amplification."""
-    return tuple(max(rows, key=lambda row: row.amplification) for rows in zip(*readings, strict=True))
 
 
 def _power_rows(each: _InState) -> tuple[PowerRow, ...]:

@@ -11,7 +11,8 @@ class MarginRow:
 
     `unit` is a kind of unit. `frequency` (Hz) is the speed or frequency at which the worst occurs,
     None where there is none. `note` says how the value came about where that is not plain: which reading of an
-    unknown damping kind was the worse, that an amplitude was found by iteration.
+    unknown damping kind was the worse, that an amplitude was found by iteration. `reference` (SI) is that of the
+    decibels in which the limit was stated, None for a limit in a unit; the values are in SI in either case.
     """
 
     kind: str
@@ -25,6 +26,7 @@ class MarginRow:
     margin: float
     frequency: float | None
     note: str = ""
+    reference: float | None = None
 
     @property
     def told(self) -> str:
@@ -90,10 +92,22 @@ class PowerRow:
 
 
 @dataclass(frozen=True)
+class BarredBand:
+    """A band of speed (Hz) of a shaft in which the machine may not dwell in a condition, and `why` in words."""
+
+    condition: str
+    shaft: str
+    low: float
+    high: float
+    why: str
+
+
+@dataclass(frozen=True)
 class Assessment:
     """What the exact equations say of one design. Only this may say "meets the brief".
 
-    `notes`: sentences that no row says, such as why the machine does not stand.
+    `notes`: sentences that no row says, such as why the machine does not stand. `barred`: speeds not to dwell at
+    that were found for the design, where the brief asks for them.
     """
 
     design: Design
@@ -109,6 +123,7 @@ class Assessment:
     power: tuple[PowerRow, ...]
     total_load: float
     notes: tuple[str, ...] = ()
+    barred: tuple[BarredBand, ...] = ()
 
     @property
     def tightest(self) -> MarginRow:

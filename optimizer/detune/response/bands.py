@@ -14,6 +14,7 @@ from detune.physics.octaves import band_edges, band_index, nominal_centre
 from detune.physics.random_response import QuadratureNotConverged, variance
 from detune.physics.spectra import PowerSpectralDensity, between
 from detune.response.assemble import Dynamic
+from detune.response.coincidence import meeting
 from detune.response.designs import Designs
 from detune.response.loads import Family, condition_families
 from detune.response.model import Model
@@ -58,9 +59,13 @@ def band_ratios(
 ) -> BandRatios:
     """Return the largest ratio of each row."""
     square: dict[Entry, Floats] = {}
-    for family in rows.families:
+    # Families that can come to one frequency add linearly, within a band too.
+    linked: dict[tuple[int, Entry], Floats] = {}
+    for family, number in zip(rows.families, meeting(rows.families), strict=True):
         for entry, amplitude in _family_bands(model, designs, dynamic, modal, rows.pairs, family).items():
-            square[entry] = square.get(entry, np.zeros(designs.count)) + amplitude**2
+            linked[number, entry] = linked.get((number, entry), np.zeros(designs.count)) + amplitude
+    for (_, entry), amplitude in linked.items():
+        square[entry] = square.get(entry, np.zeros(designs.count)) + amplitude**2
     for noise in rows.noises:
         for entry, found in _noise_bands(model, designs, dynamic, modal, rows.pairs, noise).items():
             square[entry] = square.get(entry, np.zeros(designs.count)) + found

@@ -15,21 +15,24 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief, body_of
 from detune.brief.floor import FloorFreedom, floor_freedom
+from detune.brief.floor_matrix import FloorStructure, elastic_of, foot_of
 from detune.brief.forcing.base import Tone
 from detune.brief.machine import Connection, Station
 from detune.brief.mass_properties import mass_properties
-from detune.brief.state import State
+from detune.brief.state import State, apparent_gravity
 from detune.brief.statement import FREEDOMS, unit_direction
-from detune.ground.units import STANDARD_GRAVITY
+from detune.brief.structure import Structure
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import ROOM_TEMPERATURE
 from detune.physics.orientation import axes_from_direction
 from detune.physics.rigid_body import box_inertia, skew
 from detune.physics.static import solve_static
 from detune.response.damping_readings import read_as
-from detune.response.design import Design
+from detune.response.design import Design, ballast_of
+from detune.response.direct_absorbers import DirectAbsorber, absorber_mass, absorber_weight, absorbers_of
 from detune.response.direct_gravity import gravity_stiffness
 from detune.response.direct_laws import DirectRest, follows_curve, part_stiffness, rest_on_laws
+from detune.response.floor_table import floor_spring
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -64,9 +67,17 @@ class DirectMachine:
 
     @property
     def with_frequency_laws(self) -> bool:
-        """Whether some part's stiffness changes with frequency other than by a dashpot."""
+        """Whether some part's stiffness, or the floor's, changes with frequency other than by a dashpot."""
         mounts = self.design.mounts
-        return any(mount.relaxation is not None or mount.law_table is not None for mount in mounts)
+        tabulated = self.floor is not None and self.floor.table is not None
+        return tabulated or any(
+            mount.relaxation is not None or mount.law_table is not None for mount in mounts
+        )
+
+    @cached_property
+    def elastic(self) -> Structure | FloorStructure | None:
+        """What is elastic under the machine with modes of its own."""
+        return elastic_of(self.brief)
 
     @property
     def floor_axes(self) -> slice:
@@ -82,8 +93,23 @@ class DirectMachine:
     @property
     def size(self) -> int:
         """Number of freedoms N."""
-        modes = 0 if self.brief.structure is None else len(self.brief.structure.modes.frequency)
-        return 6 * len(self.nodes) + modes
+        return int(self._modal.stop) + len(self.absorbers)
+
+    @property
+    def _modal(self) -> slice:
+        """The modes of the structure among the N freedoms."""
+        modes = 0 if self.elastic is None else len(self.elastic.modes.frequency)
+        return slice(6 * len(self.nodes), 6 * len(self.nodes) + modes)
+
+    @cached_property
+    def absorbers(self) -> tuple[DirectAbsorber, ...]:
+        """The absorbers that are fitted; their freedoms are the last ones."""
+        return absorbers_of(self.brief, self.design)
+
+    @cached_property
+    def stations(self) -> tuple[Station, ...]:
+        """The stations, then the places of the absorbers that are fitted."""
+        return (*self.brief.stations, *(absorber.station for absorber in self.absorbers))
 
     @cached_property
     def free(self) -> NDArray[np.bool_]:
@@ -96,15 +122,20 @@ class DirectMachine:
     def names(self) -> tuple[tuple[str, str], ...]:
         """Node and freedom of each freedom that can move."""
         every: list[tuple[str, str]] = [(node, freedom) for node in self.nodes for freedom in FREEDOMS]
-        every += [("structure", f"mode {i + 1}") for i in range(self.size - len(every))]
+        node = FLOOR if isinstance(self.elastic, FloorStructure) else "structure"
+        every += [(node, f"mode {i + 1}") for i in range(self._modal.stop - len(every))]
+        every += [(absorber.station.name, "along") for absorber in self.absorbers]
         return tuple(name for name, moves in zip(every, self.free, strict=True) if moves)
 
     def place(self, node: str, position: Floats) -> Floats:
         """Rows (3, N): global displacement of a place on a node."""
         rows = np.zeros((3, self.size))
         if node not in self.nodes:
-            assert self.brief.structure is not None  # the cross-check admits no other place
-            rows[:, 6 * len(self.nodes) :] = self.brief.structure.shape_rows(node)
+            assert self.elastic is not None  # the cross-check admits no other place
+            rows[:, self._modal] = self.elastic.shape_rows(node)
+            if isinstance(self.elastic, FloorStructure):
+                # Held directions go by the floor's node, so that their reaction is seen there.
+                rows[:, self.floor_axes] += np.diag(~np.any(self.elastic.total_rows != 0.0, axis=1))
             return rows
         first = 6 * self.nodes.index(node)
         rows[:, first : first + 3] = np.eye(3)
@@ -139,8 +170,11 @@ class DirectMachine:
             radial = None if station.radial is None else np.array(unit_direction(station.radial))
             axes = axes_from_direction(np.array(unit_direction(station.axial)), radial)
             position = np.array(station.position)
-            across = self.place(body_of(self.brief, station.on), position) - self.place(station.to, position)
+            foot = foot_of(self.brief, station)
+            across = self.place(body_of(self.brief, station.on), position) - self.place(foot, position)
             found[station.name] = (axes, across)
+        for absorber in self.absorbers:
+            found[absorber.station.name] = axes_from_direction(absorber.along), absorber.across(self)
         return found
 
     def axes(self, station: Station) -> Floats:
@@ -175,7 +209,7 @@ class DirectMachine:
 
     def foot(self, station: Station) -> Floats:
         """Rows (3, N): global motion of the floor or structure under a station, zero where it stands on a body."""
-        rows = self.place(station.to, np.array(station.position))
+        rows = self.place(foot_of(self.brief, station), np.array(station.position))
         return rows * (station.to not in self.centres)
 
     @cached_property
@@ -185,26 +219,24 @@ class DirectMachine:
         pieces = [
             (b.name, p.mass, p.centre, p.inertia) for b in self.brief.bodies for p in (mass_properties(b),)
         ]
-        ballast = self.brief.ballast
-        if ballast is not None and self.design.ballast > 0.0:
-            inertia = box_inertia(self.design.ballast, np.array(ballast.size))
-            pieces.append(
-                (body_of(self.brief, ballast.on), self.design.ballast, np.array(ballast.position), inertia)
-            )
+        if self.brief.ballast is not None and self.design.ballast > 0.0:
+            box = ballast_of(self.brief, self.design)
+            inertia = box_inertia(box.mass, np.array(box.size))
+            pieces.append((body_of(self.brief, self.brief.ballast.on), box.mass, np.array(box.centre), inertia))
         for node, mass, centre, inertia in pieces:
             move, turn = self.place(node, centre), self.turn(node)
             total += mass * move.T @ move + turn.T @ inertia @ turn
         if self.floor is not None:
             total[self.floor_vertical, self.floor_vertical] += self.floor.mass
-        modal = range(6 * len(self.nodes), self.size)
+        modal = range(self._modal.start, self._modal.stop)
         total[modal, modal] += 1.0
-        return total
+        return total + absorber_mass(self)
 
     def stiffness(self, omega: Floats | None, with_gravity: bool = True) -> Complexes:
         """Static stiffness (N, N) where omega is None, else complex dynamic stiffness (F, N, N)."""
         shape = (len(self.free), len(self.free))
         total = np.zeros(shape if omega is None else (len(omega), *shape), dtype=complex)
-        for station in self.brief.stations:
+        for station in self.stations:
             rows, axes = self.across(station), self.axes(station)
             local = self.share(station) * self.part(station, omega)
             turned = np.einsum("ia,...a,ja->...ij", axes, local, axes)
@@ -217,19 +249,16 @@ class DirectMachine:
             rows = self.place(on, position) - self.place(connection.to, position)
             total += rows.T @ (connection_stiffness(connection, omega)[..., :, None] * rows)
         if self.floor is not None:
-            own = (
-                self.floor.stiffness
-                if omega is None
-                else self.floor.stiffness + 1j * omega * self.floor.damping
-            )
+            own = self.floor.stiffness if omega is None else floor_spring(self.floor, omega)
             total[..., self.floor_vertical, self.floor_vertical] += own
-        if self.brief.structure is not None:
-            modal = range(6 * len(self.nodes), self.size)
-            circular = 2.0 * np.pi * self.brief.structure.modes.frequency
+        if self.elastic is not None:
+            modal = range(self._modal.start, self._modal.stop)
+            circular = 2.0 * np.pi * self.elastic.modes.frequency
             total[..., modal, modal] += circular**2
             if omega is not None:
-                ratio = self.brief.structure.modes.damping_ratio
+                ratio, loss = self.elastic.modes.damping_ratio, self.elastic.modes.loss_factor
                 total[..., modal, modal] += 2j * ratio * circular * omega[:, None]
+                total[..., modal, modal] += 0.0 if loss is None else 1j * loss * circular**2
         return total
 
     def part(self, station: Station, omega: Floats | None) -> Complexes:
@@ -237,19 +266,19 @@ class DirectMachine:
         mount = self.mount(station)
         ratio = 1.0
         if omega is not None and follows_curve(mount) and self.rest is not None:
-            tangent = float(self.rest.tangent[self.brief.stations.index(station)])
+            tangent = float(self.rest.tangent[self.stations.index(station)])
             ratio = tangent / mount.stiffness_static[2] if np.isfinite(tangent) else 1.0
         temperature = ROOM_TEMPERATURE if self.state is None else self.state.temperature
-        number = self.brief.stations.index(station)
+        number = self.stations.index(station)
         amplitude = None if self.amplitude is None else self.amplitude[number]
         return part_stiffness(mount, omega, ratio, temperature, amplitude)
 
     @cached_property
     def rest(self) -> DirectRest | None:
         """Where the machine rests if some part has no straight load-deflection line, else None."""
-        if not any(follows_curve(self.mount(station)) for station in self.brief.stations):
+        if not any(follows_curve(self.mount(station)) for station in self.stations):
             return None
-        stations, free = self.brief.stations, self.free
+        stations, free = self.stations, self.free
         springs = sum(
             self.across(s).T
             @ self.axes(s)
@@ -271,7 +300,7 @@ class DirectMachine:
     def dead_load(self) -> Floats:
         """Static load (N,) on straight springs: weight, steady loads, and what packing puts on the springs."""
         load = self._weight_alone.copy()
-        for station in self.brief.stations:
+        for station in self.stations:
             lift = self.share(station) * self.packing(station) * self.part(station, None)[2].real
             load += lift * (self.axes(station).T @ self.across(station))[2]
         return load
@@ -280,18 +309,19 @@ class DirectMachine:
     def _weight_alone(self) -> Floats:
         """Static load (N,): gravity on bodies and ballast, and the steady loads; not the floor's own weight."""
         load = np.zeros(len(self.free))
-        down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
+        down = np.array(apparent_gravity(self.state))
         for body in self.brief.bodies:
             properties = mass_properties(body)
             load += self.place(body.name, properties.centre).T @ (properties.mass * down)
         if self.brief.ballast is not None:
             on = body_of(self.brief, self.brief.ballast.on)
-            load += self.place(on, np.array(self.brief.ballast.position)).T @ (self.design.ballast * down)
+            box = ballast_of(self.brief, self.design)
+            load += self.place(on, np.array(box.centre)).T @ (box.mass * down)
         for steady in self.brief.steady_loads:
             node = body_of(self.brief, steady.on)
             load += self.place(node, np.array(steady.position)).T @ np.array(steady.force)
             load += self.turn(node).T @ np.array(steady.moment)
-        return load
+        return load + absorber_weight(self)
 
     def gravity_stiffness(self) -> Floats:
         """Geometric stiffness (N, N) of all static forces on each body (direct_gravity)."""

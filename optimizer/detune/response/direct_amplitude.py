@@ -18,6 +18,7 @@ from detune.brief.brief import applies
 from detune.brief.condition import Condition
 from detune.brief.forcing.base import Noise, Tone, Transient
 from detune.response.direct import DirectMachine
+from detune.response.direct_coincidence import added
 from detune.response.direct_modes import direct_modes
 from detune.response.direct_motion import direct_passage_values, direct_transient_values
 from detune.response.direct_random import direct_noise_values
@@ -30,6 +31,8 @@ SHARES = ((0.6, 60), (0.4, 200), (0.2, 400), (0.05, 1200), (0.015, 3000))
 CLOSED = 1e-8
 # Of several sources together, whose suprema over speed are known to about as much.
 CLOSE = 2e-5
+# Relative difference from which two ends are two answers.
+APART = 1e-3
 LEFT_OVER = 100.0
 LOOKS = 3
 
@@ -53,25 +56,34 @@ class WorkingAmplitude:
     sources: tuple[Source, ...]
 
     @cached_property
-    def _found(self) -> tuple[Floats, bool]:
+    def _found(self) -> tuple[list[Floats], bool]:
         return _deflections(self.machine, self.condition, self.sources)
 
     @property
-    def total(self) -> Floats:
-        """Amplitude (S,) in m at which the parts work."""
-        amplitude: Floats = self._found[0].sum(axis=0)
-        return amplitude
+    def totals(self) -> tuple[Floats, ...]:
+        """Amplitudes (S,) in m at which the parts work: several where the iteration has several ends."""
+        return tuple(each.sum(axis=0) for each in self._found[0])
 
     @property
     def settled(self) -> bool:
         """Whether the amplitude reproduces itself."""
         return self._found[1]
 
-    def beside(self, number: int) -> Floats:
-        """Amplitude (S,) in m of everything but one source."""
+    @property
+    def alone(self) -> bool:
+        """Whether one steady speed acts alone: parts then work at each speed's own amplitude."""
+        return len(self.sources) == 1 and not _works_at_total(self.sources[0])
+
+    @property
+    def several(self) -> bool:
+        """Whether the sources together come to other amplitudes from large ones than from none."""
+        return not self.alone and len(self.totals) > 1
+
+    def beside(self, end: int, number: int) -> Floats:
+        """Amplitude (S,) in m of everything but one source, at one end."""
         if len(self.sources) == 1:
-            return np.zeros(len(self.machine.brief.stations))
-        return np.asarray(np.maximum(self.total - self._found[0][number], 0.0))
+            return np.zeros(len(self.machine.stations))
+        return np.asarray(np.maximum(self.totals[end] - self._found[0][end][number], 0.0))
 
 
 def follows_amplitude(machine: DirectMachine) -> bool:
@@ -86,11 +98,14 @@ def working_amplitude(machine: DirectMachine, condition: Condition) -> WorkingAm
 
 def _deflections(
     machine: DirectMachine, condition: Condition, sources: tuple[Source, ...]
-) -> tuple[Floats, bool]:
-    """Return the axial deflection (J, S) in m that each source gives the stations, and whether it reproduces itself."""
+) -> tuple[list[Floats], bool]:
+    """Return the axial deflections (J, S) in m that each source gives the stations, and whether they settled.
+
+    Started from none and from the greatest amplitude of any table; one where both come to the same end.
+    """
     pairs = _watched(machine)
-    held = [index for index, station in enumerate(machine.brief.stations) if machine.share(station) > 0.0]
-    shape = (len(sources), len(machine.brief.stations))
+    held = [index for index, station in enumerate(machine.stations) if machine.share(station) > 0.0]
+    shape = (len(sources), len(machine.stations))
     settled = True
 
     def step(deflection: Floats) -> Floats:
@@ -109,28 +124,50 @@ def _deflections(
 
     start = np.zeros((shape[0] * shape[1], 1))
     if len(sources) == 1 and not _works_at_total(sources[0]):
-        return step(start).reshape(shape), settled
-    deflection, closed = _approached(lambda a, _: step(a), start, 0.1, CLOSE)
-    return deflection.reshape(shape), settled and bool(closed[0])
+        return [step(start).reshape(shape)], settled
+    tables = [m.amplitude_table for m in machine.design.mounts if m.amplitude_table is not None]
+    ends: list[Floats] = []
+    every = True
+    for level in (0.0, max(table.amplitude[-1] for table in tables)):
+        deflection, closed = _approached(lambda a, _: step(a), start + level, 0.1, CLOSE)
+        every = every and settled and bool(closed[0])
+        end = deflection.reshape(shape)
+        totals = [each.sum(axis=0) for each in (*ends[:1], end)]
+        if len(totals) == 1 or np.abs(totals[1] - totals[0]).max() > APART * np.max(totals):
+            ends.append(end)
+    return ends, every
 
 
 def suprema_at_amplitude(
     machine: DirectMachine, condition: Condition, pairs: Pairs, working: WorkingAmplitude
 ) -> Supremum:
     """Return the values of rows under the forcing of a condition; infinite where no amplitude reproduces itself."""
-    total, at = np.zeros(len(pairs)), np.full(len(pairs), np.nan)
-    largest = np.full(len(pairs), -np.inf)
-    alone = len(working.sources) == 1 and not _works_at_total(working.sources[0])
+    alone = working.alone
     settled = alone or working.settled
-    for number, source in enumerate(working.sources):
-        amplitude = working.beside(number) if alone else working.total
-        part, found = _values(machine, condition, source, pairs, amplitude, working.beside(number))
-        settled = settled and found
-        for index, (allowable, _) in enumerate(pairs):
-            total[index] = combine(total[[index]], part.value[[index]], allowable.statistic())[0]
-        bigger = np.isfinite(part.speed) & (part.value > largest)
-        at, largest = np.where(bigger, part.speed, at), np.where(bigger, part.value, largest)
-    return Supremum(total if settled else np.full(len(pairs), np.inf), at)
+    worst, where = np.full(len(pairs), -np.inf), np.full(len(pairs), np.nan)
+    for end in range(1 if alone else len(working.totals)):
+        total, at = np.zeros(len(pairs)), np.full(len(pairs), np.nan)
+        steady: list[tuple[Tone, ...]] = []
+        of_steady: list[Floats] = []
+        apart: list[Floats] = []
+        largest = np.full(len(pairs), -np.inf)
+        for number, source in enumerate(working.sources):
+            beside = working.beside(end, number)
+            amplitude = beside if alone else working.totals[end]
+            part, found = _values(machine, condition, source, pairs, amplitude, beside)
+            settled = settled and found
+            if source.tones and not source.ways:
+                steady.append(source.tones)
+                of_steady.append(part.value)
+            else:
+                apart.append(part.value)
+            bigger = np.isfinite(part.speed) & (part.value > largest)
+            at, largest = np.where(bigger, part.speed, at), np.where(bigger, part.value, largest)
+        for each in (*added(steady, of_steady), *apart):
+            for index, (allowable, _) in enumerate(pairs):
+                total[index] = combine(total[[index]], each[[index]], allowable.statistic())[0]
+        where, worst = np.where(total > worst, at, where), np.maximum(worst, total)
+    return Supremum(worst if settled else np.full(len(pairs), np.inf), where)
 
 
 def _sources(machine: DirectMachine, condition: Condition) -> tuple[Source, ...]:
@@ -156,7 +193,7 @@ def _works_at_total(source: Source) -> bool:
 
 
 def _watched(machine: DirectMachine) -> tuple[tuple[HarmonicAllowable, str], ...]:
-    return tuple((AXIAL, s.name) for s in machine.brief.stations if machine.share(s) > 0.0)
+    return tuple((AXIAL, s.name) for s in machine.stations if machine.share(s) > 0.0)
 
 
 def _values(
@@ -220,7 +257,7 @@ def _deflected(
     """Return the amplitude (S, F) that parts working at `amplitude` (S, F) give at speeds (F,) in Hz."""
     pairs = _watched(machine)
     found = np.repeat(beside[:, None], len(speed), axis=1)
-    held = [index for index, station in enumerate(machine.brief.stations) if machine.share(station) > 0.0]
+    held = [index for index, station in enumerate(machine.stations) if machine.share(station) > 0.0]
     found[held] += amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed)
     return found
 

@@ -13,6 +13,7 @@ from detune.brief.forcing.base import Noise, Tone
 from detune.physics.octaves import band_edges, band_index, nominal_centre
 from detune.physics.spectra import density_at
 from detune.response.direct import DirectMachine
+from detune.response.direct_coincidence import added
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_random import mesh, unit_tone
 from detune.response.direct_supremum import coherent_sets, supremum, tones_of
@@ -33,9 +34,11 @@ def direct_band_ratio(
     noises = [noise for forcing in acting for noise in forcing.noises()]
     worst, at = 0.0, float("nan")
     for band, limit in zip(*allowable.bands(), strict=True):
-        square = sum(
-            _tone_rms(machine, found, tones, allowable, place, int(band)) ** 2 for tones in by_speed.values()
-        )
+        each = [
+            np.array([_tone_rms(machine, found, tones, allowable, place, int(band))])
+            for tones in by_speed.values()
+        ]
+        square = sum(float(part[0]) ** 2 for part in added(tuple(by_speed.values()), each))
         square += sum(_noise_square(machine, found, noise, allowable, place, int(band)) for noise in noises)
         ratio = float(np.sqrt(square) / limit)
         if ratio > worst:

@@ -12,7 +12,9 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import body_of
 from detune.brief.mass_properties import mass_properties
-from detune.ground.units import STANDARD_GRAVITY
+from detune.brief.state import apparent_gravity
+from detune.response.design import ballast_of
+from detune.response.direct_absorbers import carried_weight, sliding_gravity
 
 if TYPE_CHECKING:
     from detune.response.direct import DirectMachine
@@ -36,18 +38,23 @@ def gravity_stiffness(machine: "DirectMachine") -> Floats:
         ):
             matrix += (arm @ force) * np.eye(3) - 0.5 * (np.outer(arm, force) + np.outer(force, arm))
         total += machine.turn(body.name).T @ matrix @ machine.turn(body.name)
-    return total
+    return total + sliding_gravity(machine)
 
 
 def _dead_forces(machine: "DirectMachine", body: str) -> Iterator[tuple[Floats, Floats]]:
     """Arm from the body's centre and force of its weight, its ballast and the steady loads on it."""
-    down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
+    down = np.array(apparent_gravity(machine.state))
     centre = machine.centres[body]
     own = next(b for b in machine.brief.bodies if b.name == body)
     yield np.zeros(3), mass_properties(own).mass * down
     ballast = machine.brief.ballast
     if ballast is not None and body_of(machine.brief, ballast.on) == body:
-        yield np.array(ballast.position) - centre, machine.design.ballast * down
+        box = ballast_of(machine.brief, machine.design)
+        yield np.array(box.centre) - centre, box.mass * down
+    for absorber in machine.absorbers:
+        if absorber.body == body:
+            whole = absorber.mount.riding_mass + absorber.mount.moving_mass
+            yield absorber.position - centre, whole * down
     for steady in machine.brief.steady_loads:
         if body_of(machine.brief, steady.on) == body:
             yield np.array(steady.position) - centre, np.array(steady.force)
@@ -83,7 +90,7 @@ def _rest_on_equal_springs(machine: "DirectMachine") -> tuple[list[Spring], Floa
         if not _held(springs, bodies):
             return springs, rest
     mesh = np.ix_(bodies, bodies)
-    rest[bodies] = np.linalg.solve(_sum(springs, machine.size)[mesh], machine.weight_alone[bodies])
+    rest[bodies] = np.linalg.solve(_sum(springs, machine.size)[mesh], carried_weight(machine)[bodies])
     return springs, rest
 
 

@@ -10,6 +10,7 @@ from detune.brief.allowable.views import ModeView
 from detune.brief.statement import FREEDOMS
 from detune.physics import modes
 from detune.response.direct import FLOOR, DirectMachine
+from detune.response.direct_table import with_resonances
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -67,6 +68,9 @@ def direct_modes(machine: DirectMachine, intervals: list[tuple[float, float]]) -
     else:
         poles = modes.damped_poles(mass, viscous, hysteretic, stiffness)
     directions = np.array([[float(freedom == name) for name in FREEDOMS] for _, freedom in machine.names])
+    for absorber in machine.absorbers:
+        directions[absorber.number - len(machine.absorbers), :3] = absorber.along
+    poles = with_resonances(machine, poles)
     return DirectModes(
         mass=mass,
         stiffness=stiffness,
@@ -83,7 +87,7 @@ def direct_modes(machine: DirectMachine, intervals: list[tuple[float, float]]) -
 
 
 def _spoken(machine: DirectMachine, node: str, freedom: str) -> str:
-    if node in (FLOOR, "structure"):
+    if node in (FLOOR, "structure") or freedom == "along":
         return node
     return f"{node} {freedom}" if len(machine.brief.bodies) > 1 else freedom
 

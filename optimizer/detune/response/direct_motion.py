@@ -14,6 +14,7 @@ from detune.brief.allowable.base import (
     HarmonicAllowable,
     SumOfOrders,
     combine,
+    parabolic_maximum,
     record_amplitude,
     tone_amplitude,
 )
@@ -25,7 +26,7 @@ from detune.physics.simulation import simulate
 from detune.response.direct import FLOOR, DirectMachine
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_progressive import curved_parts, simulated_on_curves, unloaded
-from detune.response.direct_views import station_named
+from detune.response.direct_views import DirectStatic, station_named
 from detune.response.transient import rest_time
 
 Floats = NDArray[np.float64]
@@ -92,7 +93,7 @@ class DirectMotion:
         moved, fast = self.rates[0] @ carried, self.rates[1] @ carried / omega
         force: Responses = moved @ (across * stiffness.real) + fast @ (across * stiffness.imag)
         if self.more is not None:
-            force[:, 2] += self.more[self.machine.brief.stations.index(station)]
+            force[:, 2] += self.more[self.machine.stations.index(station)]
         return force
 
     def total_force(self, surface: str) -> Responses:
@@ -139,8 +140,14 @@ def lagging(found: DirectModes) -> Floats:
 def direct_transient_values(
     machine: DirectMachine, found: DirectModes, transients: tuple[Transient, ...], pairs: Pairs
 ) -> Floats:
-    """Return what the transients together count as in each row (R,); different ones add linearly."""
+    """Return what the transients together count as in each row (R,); different ones add linearly.
+
+    Of a row with sides it is by how much the farthest travel exceeds the farthest static part.
+    """
     total = np.zeros(len(pairs))
+    static = DirectStatic(machine)
+    sides = [allowable.sides(static, place) for allowable, place in pairs]
+    travel = [[float(at_rest[0]) for at_rest, _ in side] for side in sides]
     for transient in transients:
         views = transient_motion(machine, found, transient)
         if any(view.beyond for view, _ in views):
@@ -153,27 +160,43 @@ def direct_transient_values(
         for index, (allowable, place) in enumerate(pairs):
             statistic = allowable.statistic()
             seen = [(np.asarray(allowable.observed(view, place)), step) for view, step in views]
+            if sides[index]:
+                for number, (_, towards) in enumerate(sides[index]):
+                    peaks = [float(parabolic_maximum(x @ np.asarray(towards))[0]) for x, _ in seen]
+                    travel[index][number] += max(0.0, *peaks)
+                continue
             part = record_amplitude(seen, allowable.along(), statistic, duration)
             total[index] = combine(total[[index]], part, statistic)[0]
+    for index, travelled in enumerate(travel):
+        if travelled:
+            total[index] += max(travelled) - max(float(at_rest[0]) for at_rest, _ in sides[index])
     return total
 
 
-def transient_motion(
-    machine: DirectMachine, found: DirectModes, transient: Transient
-) -> list[tuple[DirectMotion, float]]:
-    """Return the motion and its time step (s) on each stretch between jumps of the load."""
+def pattern_of(machine: DirectMachine, found: DirectModes, transient: Transient) -> tuple[Floats, Floats]:
+    """Return the load (n,) per unit of a transient, and the motion (n,) of all that follows the floor by one unit."""
     lead = np.zeros(len(machine.free))
     pattern = np.zeros(len(machine.free))
     base = np.array(transient.base or (0.0, 0.0, 0.0))
     if transient.base is not None:
         for node in range(len(machine.brief.bodies)):
             lead[6 * node : 6 * node + 3] = transient.base
+        for absorber in machine.absorbers:
+            lead += (absorber.along @ base) * absorber.own(machine)
     else:
         body = body_of(machine.brief, transient.on)
         place = machine.place(body, np.array(transient.position))
         pattern = place.T @ np.array(transient.force) + machine.turn(body).T @ np.array(transient.moment)
     follow = lead[machine.free]
-    load = pattern[machine.free] - found.mass @ follow
+    return pattern[machine.free] - found.mass @ follow, follow
+
+
+def transient_motion(
+    machine: DirectMachine, found: DirectModes, transient: Transient
+) -> list[tuple[DirectMotion, float]]:
+    """Return the motion and its time step (s) on each stretch between jumps of the load."""
+    base = np.array(transient.base or (0.0, 0.0, 0.0))
+    load, follow = pattern_of(machine, found, transient)
     state = np.zeros(2 * len(load))
     resting = machine.rest is None or bool(np.all(np.isfinite(machine.rest.q)))
     curved = curved_parts(machine) if resting else ()
@@ -192,7 +215,7 @@ def transient_motion(
     for step, values in _sampled(transient, found):
         if curved and not beyond:
             rates, more, beyond = simulated_on_curves(
-                found, curved, modal_damping(found), load, values, step, state, len(machine.brief.stations)
+                found, curved, modal_damping(found), load, values, step, state, len(machine.stations)
             )
         else:
             rates = _simulated(found, load, values, step, state)

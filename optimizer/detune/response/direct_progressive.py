@@ -4,6 +4,8 @@ A part with a curve pushes along its axis with P = F0 + r (F(d) - F0), never les
 F0 its force at rest, F its listed curve, r its dynamic over its static tangent there. Motion counts from rest.
 """
 
+from bisect import bisect_right
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -39,6 +41,28 @@ class CurvedPart:
         push = self.force + self.ratio * (listed - self.force)
         return (push if self.pulls else np.maximum(push, 0.0)) - self.force
 
+    def push_at(self) -> Callable[[float], float]:
+        """Return `push` for one motion at a time, in plain numbers: an integration asks for it very often."""
+        curve = self.law.curve
+        assert curve is not None
+        places, loads, slopes = (x.tolist() for x in (curve.deflection, curve.load, curve.slope))
+        least, last = -self.force, len(places) - 2
+
+        def push(moved: float) -> float:
+            asked = self.deflection - moved
+            inside = min(max(asked, places[0]), places[-1])
+            i = min(bisect_right(places, inside) - 1, last)
+            width = places[i + 1] - places[i]
+            t, rise = (inside - places[i]) / width, loads[i + 1] - loads[i]
+            early, late = slopes[i] * width, slopes[i + 1] * width
+            third, second = early + late - 2.0 * rise, 3.0 * rise - 2.0 * early - late
+            listed = loads[i] + t * (early + t * (second + t * third))
+            listed += (early + t * (2.0 * second + 3.0 * t * third)) / width * (asked - inside)
+            more: float = self.ratio * (listed - self.force)
+            return more if self.pulls else max(more, least)
+
+        return push
+
     def leaves(self, moved: Floats) -> bool:
         """Return whether the part leaves its curve; a part that cannot pull may hang free below it."""
         curve = self.law.curve
@@ -55,7 +79,7 @@ def curved_parts(machine: DirectMachine) -> tuple[CurvedPart, ...]:
     if rest is None:
         return ()
     parts = []
-    for number, station in enumerate(machine.brief.stations):
+    for number, station in enumerate(machine.stations):
         mount = machine.mount(station)
         if not follows_curve(mount) or machine.share(station) <= 0.0:
             continue
@@ -127,9 +151,17 @@ def simulated_on_curves(
         rate: Floats = force @ inverse.T
         return rate
 
+    rows = np.array([part.row for part in parts])
+    pushes = [(part.push_at(), part.share) for part in parts]
+    by_load, by_state = inverse @ load, np.hstack([-inverse @ other, -inverse @ damping])
+    by_push = inverse @ rows.T
+    last = len(values) - 2
+
     def rates(t: float, y: Floats) -> Floats:
-        f = np.interp(t, time, values)
-        return np.concatenate([y[n:], accelerated(np.atleast_1d(f), y[None, :n], y[None, n:])[0]])
+        i = min(max(int(t / step), 0), last)
+        f = values[i] + (t / step - i) * (values[i + 1] - values[i])
+        pushed = [share * push(x) for (push, share), x in zip(pushes, (rows @ y[:n]).tolist(), strict=True)]
+        return np.concatenate([y[n:], f * by_load + by_state @ y + by_push @ pushed])
 
     scale = (
         np.abs(state[:n]).max() + np.abs(np.linalg.solve(found.stiffness, load)).max() * np.abs(values).max()

@@ -9,8 +9,10 @@ from numpy.typing import NDArray
 from detune.brief.allowable.base import HarmonicAllowable, SumOfOrders, combine, tone_amplitude
 from detune.brief.brief import Brief, applies
 from detune.brief.condition import Condition
+from detune.brief.dwell import chosen_in
 from detune.brief.forcing.base import Tone
 from detune.response.direct import DirectMachine
+from detune.response.direct_coincidence import added
 from detune.response.direct_floor import beside_reference
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_motion import direct_passage_values, direct_transient_values
@@ -38,15 +40,26 @@ def tones_of(brief: Brief, condition: Condition) -> list[Tone]:
     ]
 
 
+def moved_shaft(brief: Brief, condition: Condition) -> str | None:
+    """Return the shaft whose speeds not to dwell at are found for each design in a condition, or None."""
+    chosen = chosen_in(brief, condition)
+    return None if chosen is None else chosen.shaft
+
+
 def steady_intervals(brief: Brief, state: str | None = None) -> list[tuple[float, float]]:
-    """Return the excitation intervals (Hz) of the steady conditions in a state, each order its own."""
+    """Return the excitation intervals (Hz) of the steady conditions in a state, each order its own.
+
+    Orders of a shaft whose speeds not to dwell at are found for each design are left out; `direct_dwell` adds them.
+    """
+    if brief.floor.kind == "dynamic-stiffness":
+        return []
     return sorted(
         {
             (tone.order * tone.low, tone.order * tone.high)
             for condition in brief.conditions
             if condition.steady and condition.state == state
             for tone in tones_of(brief, condition)
-            if not tone.broadband
+            if not tone.broadband and tone.speed != moved_shaft(brief, condition)
         }
     )
 
@@ -64,17 +77,24 @@ class Supremum:
 
 
 def forced_suprema(
-    machine: DirectMachine, found: DirectModes, condition: Condition, pairs: Pairs
+    machine: DirectMachine,
+    found: DirectModes,
+    condition: Condition,
+    pairs: Pairs,
+    without: str | None = None,
 ) -> Supremum:
     """Return the values of all rows under the forcing of a condition: tones, noise, records and passages.
 
-    Speeds are independent of each other: peaks add linearly, rms values as squares.
+    Speeds are independent of each other: peaks add linearly, rms values as squares, but linearly too where two can
+    come to one frequency. `without`: a speed left out.
     """
     by_speed: dict[str, list[Tone]] = {}
-    for tone in tones_of(machine.brief, condition):
+    for tone in (tone for tone in tones_of(machine.brief, condition) if tone.speed != without):
         by_speed.setdefault(tone.speed, []).append(tone)
     acting = [f for f in machine.brief.forcing if applies(f.conditions, condition.name)]
     parts = []
+    steady: list[list[Tone]] = []
+    values: list[Floats] = []
     largest = np.full(len(pairs), -np.inf)
     at = np.full(len(pairs), np.nan)
     for speed, tones in by_speed.items():
@@ -86,9 +106,11 @@ def forced_suprema(
             parts.append(np.max(each, axis=0))
             continue
         part = _supremum(machine, found, pairs, coherent_sets(tones), (low, high))
-        parts.append(part.value)
+        steady.append(tones)
+        values.append(part.value)
         at = np.where(part.value > largest, part.speed, at)
         largest = np.maximum(largest, part.value)
+    parts += added(steady, values)
     noises = tuple(noise for forcing in acting for noise in forcing.noises())
     transients = tuple(transient for forcing in acting for transient in forcing.transients())
     random = direct_noise(machine, found, noises, pairs) if noises else None

@@ -10,7 +10,8 @@ from detune.brief.brief import body_of
 from detune.brief.forcing.base import Tone
 from detune.brief.machine import Station
 from detune.response.direct import FLOOR, DirectMachine, connection_stiffness
-from detune.response.direct_floor import direct_floor_ratio
+from detune.response.direct_floor import between_stations, direct_floor_ratio
+from detune.response.floor_table import floor_spring
 from detune.response.gravity import NEVER
 from detune.response.solve import solve_or_resonate
 
@@ -20,7 +21,7 @@ Complexes = NDArray[np.complex128]
 
 def station_named(machine: DirectMachine, name: str) -> Station:
     """Return the station of this name."""
-    return next(station for station in machine.brief.stations if station.name == name)
+    return next(station for station in machine.stations if station.name == name)
 
 
 @dataclass(frozen=True)
@@ -43,7 +44,7 @@ class DirectStatic:
         mesh = np.ix_(free, free)
         stiffness = self.machine.stiffness(None).real[mesh]
         if self.machine.rest is not None:
-            for number, station in enumerate(self.machine.brief.stations):
+            for number, station in enumerate(self.machine.stations):
                 row = (self.machine.axes(station).T @ self.machine.across(station))[2, free]
                 listed = self.machine.part(station, None)[2].real
                 more = self.machine.share(station) * (self.machine.rest.tangent[number] - listed)
@@ -79,7 +80,7 @@ class DirectStatic:
         own = self.machine.factor(stated) * self.machine.part(stated, None).real
         load: Floats = own * self._elastic(stated)
         if self.machine.rest is not None and self.machine.share(stated) > 0.0:
-            number = self.machine.brief.stations.index(stated)
+            number = self.machine.stations.index(stated)
             load[0, 2] = -self.machine.factor(stated) * self.machine.rest.force[number]
         return load
 
@@ -110,7 +111,7 @@ class DirectTone:
             if machine.floor is not None:
                 # What the bare floor does freely needs this load on it: D_floor u_free.
                 f = machine.floor
-                own = f.stiffness + 1j * omega * f.damping - omega**2 * f.mass
+                own = floor_spring(f, omega) - omega**2 * f.mass
                 load[:, machine.floor_vertical] += own * motion[:, machine.floor_vertical]
                 motion[:, machine.floor_vertical] = 0.0
             q += motion
@@ -156,8 +157,9 @@ class DirectTone:
         if floor is not None:
             # The node's own spring to the ground is part of the matrix; without it, what the machine puts on
             # the floor; with it alone, what the floor passes on.
-            own = (floor.stiffness + 1j * self.omega[0] * floor.damping) * q[:, self.machine.floor_vertical]
+            own = floor_spring(floor, self.omega[0]) * q[:, self.machine.floor_vertical]
             received[:, 2] = own if surface == "ground" else received[:, 2] + own
+        received += between_stations(self.machine, self.omega[0], q, surface)
         return np.asarray(received[None], dtype=complex)
 
     def floor_ratio(self) -> Complexes:
@@ -176,7 +178,7 @@ class DirectTone:
         acting = np.where(self.machine.free, load, np.einsum("fij,fj->fi", dynamic, q))
         put_in = 0.5 * np.sum(acting * velocity.conj(), axis=1).real
         lost = np.zeros(len(omega))
-        for station in self.machine.brief.stations:
+        for station in self.machine.stations:
             deflection = self.station_deflection(station.name)[0]
             loss = self.machine.part(station, omega).imag
             lost += self.machine.share(station) * 0.5 * omega * np.sum(loss * np.abs(deflection) ** 2, axis=1)
@@ -187,13 +189,15 @@ class DirectTone:
             loss = connection_stiffness(connection, omega).imag
             lost += 0.5 * omega * np.sum(loss * np.abs(q @ rows.T) ** 2, axis=1)
         if self.machine.floor is not None:
-            lost += (
-                0.5 * omega**2 * self.machine.floor.damping * np.abs(q[:, self.machine.floor_vertical]) ** 2
-            )
-        if self.machine.brief.structure is not None:
-            own_modes = self.machine.brief.structure.modes
-            rate = 2.0 * own_modes.damping_ratio * 2.0 * np.pi * own_modes.frequency
-            lost += 0.5 * omega**2 * np.sum(rate * np.abs(q[:, -len(rate) :]) ** 2, axis=1)
+            loss = floor_spring(self.machine.floor, omega).imag
+            lost += 0.5 * omega * loss * np.abs(q[:, self.machine.floor_vertical]) ** 2
+        if self.machine.elastic is not None:
+            own_modes, first = self.machine.elastic.modes, 6 * len(self.machine.nodes)
+            circular = 2.0 * np.pi * own_modes.frequency
+            loss = 2.0 * own_modes.damping_ratio * circular * omega[:, None]
+            loss = loss + (0.0 if own_modes.loss_factor is None else own_modes.loss_factor * circular**2)
+            moved = np.abs(q[:, first : first + len(circular)]) ** 2
+            lost += 0.5 * omega * np.sum(loss * moved, axis=1)
         return put_in, lost
 
 

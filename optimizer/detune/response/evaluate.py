@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from detune.brief.allowable.base import HarmonicAllowable, SumOfOrders, combine, tone_amplitude
 from detune.physics import envelope
 from detune.response.assemble import Dynamic
+from detune.response.coincidence import meeting
 from detune.response.designs import Designs
 from detune.response.floor_ratio import reference_zeros
 from detune.response.loads import Family
@@ -84,9 +85,7 @@ def response_values(
     if slow_parts:
         parts += [swept_values(model, designs, dynamic, modal, rows.pairs, each) for each in rows.passages]
     for part in parts:
-        value = np.stack(
-            [combine(value[i], part[i], allowable.statistic()) for i, (allowable, _) in enumerate(rows.pairs)]
-        )
+        value = combined(rows, value, part)
     return Amplitudes(value, tones.frequency)
 
 
@@ -101,15 +100,16 @@ def beside_reference(model: Model, designs: Designs, rows: Rows, poles: Complexe
 def suprema(model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, rows: Rows) -> Amplitudes:
     """Return each row's supremum over the continuous speed range of every family, put together.
 
-    Families have independent speeds: peaks add linearly, rms values as squares; where
-    `rows.largest`, the families are alternatives and the largest counts.
+    Families have independent speeds: peaks add linearly, rms values as squares, but linearly too where two can come
+    to one frequency; where `rows.largest`, the families are alternatives and the largest counts.
     """
     value = np.zeros((len(rows.pairs), designs.count))
+    together: dict[int, Floats] = {}
     frequency = np.full_like(value, np.nan)
     largest = np.full_like(value, -np.inf)
     poles = sharp_poles(dynamic, modal) if rows.families else np.zeros((designs.count, 0), dtype=complex)
     poles = beside_reference(model, designs, rows, poles)
-    for family in rows.families:
+    for family, number in zip(rows.families, meeting(rows.families), strict=True):
         centres, widths = envelope.centres_of_poles(poles, family.orders)
 
         def amplitude(speed: Floats, family: Family = family) -> Floats:
@@ -127,7 +127,15 @@ def suprema(model: Model, designs: Designs, dynamic: Dynamic, modal: ModeBatch, 
         largest = np.maximum(largest, found.value)
         if rows.largest:
             value = np.maximum(value, found.value)
-            continue
-        for index, (allowable, _) in enumerate(rows.pairs):
-            value[index] = combine(value[index], found.value[index], allowable.statistic())
+        else:
+            together[number] = together.get(number, 0.0) + found.value
+    for part in together.values():
+        value = combined(rows, value, part)
     return Amplitudes(value, frequency)
+
+
+def combined(rows: Rows, value: Floats, part: Floats) -> Floats:
+    """Return the values (R, D) of rows and an independent part of them together."""
+    statistics = [allowable.statistic() for allowable, _ in rows.pairs]
+    each = zip(value, part, statistics, strict=True)
+    return np.stack([combine(one, other, statistic) for one, other, statistic in each])

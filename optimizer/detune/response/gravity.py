@@ -19,11 +19,11 @@ NEVER = 1e-9
 def gravity_stiffness(turn: Floats, arms: Sequence[Floats], forces: Sequence[Floats]) -> Floats:
     """Return the geometric stiffness (B, n, n) of static forces on one body (physics.gravity).
 
-    turn (3, n): its rotation rows. arms (3,) m from its reference point, forces (B, 3) N: everything static
+    turn (3, n): its rotation rows. arms (3,) or (B, 3) m from its reference point, forces (B, 3) N: everything static
     that acts on it, its weight included, so that the reference point does not matter.
     """
     steps = len(forces[0])
-    places = np.broadcast_to(np.stack(arms), (steps, len(arms), 3))
+    places = np.stack([np.broadcast_to(arm, (steps, 3)) for arm in arms], axis=1)
     each = geometric_stiffness(places, np.stack(forces, axis=1))
     return np.asarray(np.einsum("ai,bac,cj->bij", turn, each, turn, optimize=True))
 

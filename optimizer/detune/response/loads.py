@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from detune.brief.allowable.base import HarmonicAllowable
 from detune.brief.brief import Brief, applies, body_of
 from detune.brief.condition import Condition
+from detune.brief.dwell import chosen_in
 from detune.brief.forcing.base import Tone
 from detune.response.model import Model
 
@@ -105,9 +106,22 @@ def steady_intervals(brief: Brief, *states: str | None) -> tuple[tuple[float, fl
     """Return the excitation intervals of the steady conditions (in these states; none named: in any).
 
     Separation is judged against them. Bands of a spectrum are none: broadband excitation is governed by response.
+    Orders of a shaft whose speeds not to dwell at are found for each design are left out: `problem.dwell` has them.
     """
-    steady = tuple(c for c in brief.conditions if c.steady and (not states or c.state in states))
-    return excitation_intervals(brief, steady, broadband=False)
+    found: set[tuple[float, float]] = set()
+    if brief.floor.kind == "dynamic-stiffness":
+        # A tabulated floor has resonances that its one freedom does not count: the response governs.
+        return ()
+    for condition in brief.conditions:
+        if condition.steady and (not states or condition.state in states):
+            chosen = chosen_in(brief, condition)
+            moved = None if chosen is None else chosen.shaft
+            found |= {
+                (tone.order * tone.low, tone.order * tone.high)
+                for tone in condition_tones(brief, condition)
+                if not tone.broadband and tone.speed != moved
+            }
+    return tuple(sorted(found))
 
 
 def _coherent_sets(brief: Brief, model: Model, tones: list[Tone]) -> tuple[tuple[Load, ...], ...]:

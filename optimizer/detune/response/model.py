@@ -10,110 +10,39 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief, body_of
 from detune.brief.floor import floor_freedom
+from detune.brief.floor_files import FloorTable
+from detune.brief.floor_matrix import FloorStructure, elastic_of, foot_of
 from detune.brief.machine import Connection, Station
 from detune.brief.mass_properties import MassProperties, mass_properties
-from detune.brief.state import State
-from detune.brief.statement import FREEDOMS, unit_direction
+from detune.brief.state import State, apparent_gravity
+from detune.brief.statement import unit_direction
 from detune.brief.structure import Structure
-from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.parts.laws import ROOM_TEMPERATURE
-from detune.physics import rigid_body
 from detune.physics.orientation import axes_from_direction
+from detune.response.absorbers import AbsorberRows, absorber_freedoms, absorber_places, absorber_rows
+from detune.response.ballast import NOTHING, BallastStep, ladder
 from detune.response.damping_readings import read_as
-from detune.response.model_gravity import geometric_stiffness_of
+from detune.response.frame import FLOOR, STRUCTURE, ConnectionRows, Frame, StationRows
+from detune.response.model_gravity import equal_springs, geometric_stiffness_of, unit_geometric
+from detune.response.model_masses import absorber_station, top_of, with_ballast
 from detune.response.part_laws import GroupLaws, group_laws
 
+__all__ = [
+    "FLOOR",
+    "STRUCTURE",
+    "ConnectionRows",
+    "Frame",
+    "Group",
+    "Model",
+    "StationRows",
+    "build_model",
+    "find_station",
+    "stiffness_factor",
+]
+
 Floats = NDArray[np.float64]
-FLOOR = "floor"
-STRUCTURE = "structure"
-
-
-@dataclass(frozen=True)
-class Frame:
-    """Which column of the freedoms belongs to which direction of which body."""
-
-    names: tuple[tuple[str, str], ...]
-    references: dict[str, Floats]
-    flexible_floor: bool
-    nodes: dict[str, Floats]
-
-    @property
-    def count(self) -> int:
-        """Number of freedoms n."""
-        return len(self.names)
-
-    def motion_rows(self, body: str, position: Floats, axes: Floats | None = None) -> Floats:
-        """Rows (3, n) giving the displacement of a place on a body along the columns of `axes`."""
-        turned = np.eye(3) if axes is None else axes
-        if body == FLOOR:
-            rows = np.zeros((3, self.count))
-            if self.flexible_floor:
-                rows[:, self.count - 1] = turned[2]
-            return rows
-        if body in self.nodes:
-            return self._on_structure(body, turned)
-        full = rigid_body.attachment(position - self.references[body], turned)
-        return self._spread(body, full)
-
-    def rotation_rows(self, body: str) -> Floats:
-        """Rows (3, n) giving the rotation of a body about the global axes."""
-        return self._spread(body, np.hstack([np.zeros((3, 3)), np.eye(3)]))
-
-    def _on_structure(self, node: str, turned: Floats) -> Floats:
-        """Rows (3, n) of a node of the structure: its shapes on the modal freedoms."""
-        rows = np.zeros((3, self.count))
-        columns = [column for column, (name, _) in enumerate(self.names) if name == STRUCTURE]
-        rows[:, columns] = turned.T @ self.nodes[node]
-        return rows
-
-    def _spread(self, body: str, full: Floats) -> Floats:
-        rows = np.zeros((3, self.count))
-        for column, (name, freedom) in enumerate(self.names):
-            if name == body:
-                rows[:, column] = full[:, FREEDOMS.index(freedom)]
-        return rows
-
-
-@dataclass(frozen=True)
-class StationRows:
-    """One station: deflection rows (3, n) in local axes, its axes (3, 3) and how many parts share it.
-
-    `foot` (3, n): global motion of the floor or structure under it, zero where it stands on a body.
-
-    In a state, `factor` multiplies the part's stiffness and `packing` (m) lifts its foot; a lost
-    station has no parts.
-    """
-
-    name: str
-    on: str
-    to: str
-    group: int
-    parallel: int
-    bought: int
-    factor: float
-    packing: float
-    rows: Floats
-    axes: Floats
-    on_floor: bool
-    position: Floats
-    foot: Floats
-
-
-@dataclass(frozen=True)
-class ConnectionRows:
-    """One given connection: rows (3, n) along global axes, its stiffness and damping, each (3,)."""
-
-    name: str
-    on: str
-    to: str
-    position: Floats
-    rows: Floats
-    stiffness: Floats
-    stiffness_static: Floats
-    hysteretic: Floats
-    viscous: Floats
-    on_floor: bool
+Complexes = NDArray[np.complex128]
 
 
 @dataclass(frozen=True)
@@ -155,6 +84,10 @@ class Model:
     geometric: Floats
     with_gravity_stiffness: bool
     assumed: tuple[str, ...]
+    ballast: tuple[BallastStep, ...] = (NOTHING,)
+    absorbers: tuple[AbsorberRows, ...] = ()
+    floor_table: FloorTable | None = None
+    ground: Complexes | None = None
 
     @property
     def station_names(self) -> tuple[str, ...]:
@@ -166,15 +99,18 @@ def build_model(
     candidates: tuple[tuple[Mount, ...], ...],
     state: State | None = None,
     reading: str | None = None,
+    ballast: tuple[BallastStep, ...] | None = None,
 ) -> Model:
     """Return the model of a brief, in a state, whose group g may take the mounts `candidates[g]`.
 
-    `reading` says how damping of unknown kind is read (damping_readings); None takes it as listed.
+    `reading` says how damping of unknown kind is read (damping_readings); None takes it as listed. `ballast`: the
+    steps it may take; None those that the brief states itself.
     """
     properties = {body.name: mass_properties(body) for body in brief.bodies}
     floor = floor_freedom(brief.floor)
     names: list[tuple[str, str]] = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
-    structure = brief.structure
+    names += absorber_freedoms(brief)
+    structure = elastic_of(brief)
     nodes = (
         {} if structure is None else {node.name: structure.shape_rows(node.name) for node in structure.nodes}
     )
@@ -203,14 +139,35 @@ def build_model(
         fixed["viscous"][-1, -1] += floor.damping
     if structure is not None:
         _add_structure(frame, structure, base_mass, fixed)
-    mass, weight, ballast_mass, ballast_cost = _with_ballast(brief, frame, base_mass, properties)
+    steps = ladder(brief) if ballast is None else ballast
+    gravity = np.array(apparent_gravity(state))
+    mass, weight = with_ballast(brief, frame, base_mass, properties, steps, gravity)
+    springs = equal_springs(frame, stations, connections)
+    places = absorber_places(brief, frame)
+    stations += tuple(
+        absorber_station(brief, absorber, place, stiffness_factor(state, absorber.name))
+        for absorber, place in zip(brief.absorbers, places, strict=True)
+    )
     temperature = ROOM_TEMPERATURE if state is None else state.temperature
     groups = tuple(
         _group(name, mounts, reading, _spread(stations, index, n), temperature)
         for index, (name, mounts) in enumerate(zip(brief.groups, candidates, strict=True))
     )
+    absorbers = (
+        ()
+        if not places
+        else absorber_rows(
+            brief,
+            frame,
+            places,
+            candidates,
+            [unit_geometric(brief, springs, place.body, place.position) for place in places],
+            top_of(frame, base_mass, fixed["dynamic"], groups, places),
+        )
+    )
     notes = [note for p in properties.values() for note in p.assumed]
     notes += list(floor.assumed) if floor is not None else []
+    notes += list(structure.assumed) if isinstance(structure, FloorStructure) else []
     notes += [
         f"{c.name}: static stiffness taken equal to the dynamic one"
         for c in brief.connections
@@ -231,31 +188,51 @@ def build_model(
         floor_mass=floor.mass if floor else 0.0,
         floor_stiffness=floor.stiffness if floor else 0.0,
         floor_damping=floor.damping if floor else 0.0,
-        ballast_mass=ballast_mass,
-        ballast_cost=ballast_cost,
+        ballast_mass=np.array([step.mass for step in steps]),
+        ballast_cost=np.array([step.cost for step in steps]),
         creep=0.0 if state is None else state.creep,
-        geometric=geometric_stiffness_of(brief, frame, properties, stations, connections, weight),
+        geometric=geometric_stiffness_of(brief, springs, properties, steps, weight, gravity),
         with_gravity_stiffness=brief.gravity_stiffness,
         assumed=tuple(notes),
+        ballast=steps,
+        absorbers=absorbers,
+        floor_table=None if floor is None else floor.table,
+        ground=_ground_rows(frame, structure),
     )
 
 
-def _add_structure(frame: Frame, structure: Structure, mass: Floats, fixed: dict[str, Floats]) -> None:
-    """Put the structure's modes on the diagonals: unit mass, omega^2, and 2 z omega of viscous damping."""
+def _add_structure(
+    frame: Frame, structure: Structure | FloorStructure, mass: Floats, fixed: dict[str, Floats]
+) -> None:
+    """Put the modes on the diagonals: unit mass, omega^2, 2 z omega of viscous damping, eta omega^2 of another."""
     columns = [column for column, (name, _) in enumerate(frame.names) if name == STRUCTURE]
     omega = 2.0 * np.pi * structure.modes.frequency
     mass[columns, columns] += 1.0
     fixed["static"][columns, columns] += omega**2
     fixed["dynamic"][columns, columns] += omega**2
     fixed["viscous"][columns, columns] += 2.0 * structure.modes.damping_ratio * omega
+    if structure.modes.loss_factor is not None:
+        fixed["hysteretic"][columns, columns] += structure.modes.loss_factor * omega**2
+
+
+def _ground_rows(frame: Frame, structure: Structure | FloorStructure | None) -> Complexes | None:
+    """Return rows (3, n) of the force a floor known between stations passes on, None for any other."""
+    if not isinstance(structure, FloorStructure):
+        return None
+    columns = [column for column, (name, _) in enumerate(frame.names) if name == STRUCTURE]
+    rows = np.zeros((3, frame.count), dtype=complex)
+    spring = structure.stiffness * (1.0 + 1j * structure.loss_factor)
+    rows[:, columns] = structure.total_rows @ spring @ structure.modes.shapes
+    return rows
 
 
 def _station(brief: Brief, frame: Frame, station: Station, state: State | None) -> StationRows:
     radial = None if station.radial is None else np.array(unit_direction(station.radial))
     axes = axes_from_direction(np.array(unit_direction(station.axial)), radial)
     position = np.array(station.position)
+    foot = foot_of(brief, station)
     rows = frame.motion_rows(body_of(brief, station.on), position, axes) - frame.motion_rows(
-        station.to, position, axes
+        foot, position, axes
     )
     return StationRows(
         name=station.name,
@@ -264,19 +241,19 @@ def _station(brief: Brief, frame: Frame, station: Station, state: State | None) 
         group=brief.groups.index(station.group),
         parallel=0 if state is not None and station.name in state.lost else station.parallel,
         bought=station.parallel,
-        factor=stiffness_factor(state, station),
+        factor=stiffness_factor(state, station.group),
         packing=0.0 if state is None else state.packing.get(station.name, 0.0),
         rows=rows,
         axes=axes,
         on_floor=station.to == FLOOR,
         position=position,
-        foot=frame.motion_rows(station.to, position) * (station.to not in frame.references),
+        foot=frame.motion_rows(foot, position) * (foot not in frame.references),
     )
 
 
-def stiffness_factor(state: State | None, station: Station) -> float:
-    """Return what a state makes of the stiffness of the part at a station."""
-    if state is None or (state.groups is not None and station.group not in state.groups):
+def stiffness_factor(state: State | None, group: str) -> float:
+    """Return what a state makes of the stiffness of the parts of a group."""
+    if state is None or (state.groups is not None and group not in state.groups):
         return 1.0
     return state.stiffness_factor
 
@@ -306,33 +283,6 @@ def _body_mass(frame: Frame, body: str, properties: MassProperties) -> Floats:
     move = frame.motion_rows(body, properties.centre)
     turn = frame.rotation_rows(body)
     return properties.mass * move.T @ move + turn.T @ properties.inertia @ turn
-
-
-def _with_ballast(
-    brief: Brief, frame: Frame, base_mass: Floats, properties: dict[str, MassProperties]
-) -> tuple[Floats, Floats, Floats, Floats]:
-    """Return mass (B, n, n), static load (B, n), added mass (B,) and its cost (B,)."""
-    gravity = np.array([0.0, 0.0, -STANDARD_GRAVITY])
-    load = np.zeros(frame.count)
-    for name, p in properties.items():
-        load += frame.motion_rows(name, p.centre).T @ (p.mass * gravity)
-    for steady in brief.steady_loads:
-        body = body_of(brief, steady.on)
-        load += frame.motion_rows(body, np.array(steady.position)).T @ np.array(steady.force)
-        load += frame.rotation_rows(body).T @ np.array(steady.moment)
-    ballast = brief.ballast
-    if ballast is None:
-        return base_mass[None], load[None], np.zeros(1), np.zeros(1)
-    body = body_of(brief, ballast.on)
-    move = frame.motion_rows(body, np.array(ballast.position))
-    turn = frame.rotation_rows(body)
-    masses, loads = [], []
-    for step in ballast.steps:
-        inertia = rigid_body.box_inertia(step, np.array(ballast.size))
-        masses.append(base_mass + step * move.T @ move + turn.T @ inertia @ turn)
-        loads.append(load + move.T @ (step * gravity))
-    steps = np.array(ballast.steps)
-    return np.array(masses), np.array(loads), steps, steps * ballast.cost_per_kg
 
 
 def _group(

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 from detune.brief.allowable.views import ModeView
 from detune.physics import modes
 from detune.response.assemble import Dynamic
+from detune.response.floor_table import table_places
 
 Floats = NDArray[np.float64]
 ITERATIONS = 400
@@ -76,7 +77,7 @@ def _iterated(dynamic: Dynamic, frequency: Floats, shapes: Floats) -> ModeBatch:
 
 
 def sharp_poles(dynamic: Dynamic, modal: ModeBatch) -> NDArray[np.complex128]:
-    """Return damped poles (D, n) in rad/s round which responses peak, none without a width.
+    """Return damped poles (D, n or more) in rad/s round which responses peak, none without a width.
 
     Strong dashpots lock bodies together and move peaks far from every undamped frequency, so the poles are
     those of the damped system; where stiffness depends on frequency, each mode's own.
@@ -88,7 +89,12 @@ def sharp_poles(dynamic: Dynamic, modal: ModeBatch) -> NDArray[np.complex128]:
         poles = modes.damped_poles(dynamic.mass, dynamic.viscous, dynamic.hysteretic, dynamic.stiffness)
     # An undamped mode has no width of its own; one of rounding size keeps the search going.
     width = np.maximum(-poles.real, 0.5 * UNDAMPED * np.maximum(np.abs(poles), 1e-9))
-    return np.asarray(1j * poles.imag - width)
+    sharp = np.asarray(1j * poles.imag - width)
+    table = dynamic.parts.model.floor_table
+    if table is None:
+        return sharp
+    # On a tabulated floor there may be more resonances than freedoms: its rows are looked at as well.
+    return np.concatenate([sharp, np.repeat(table_places(table)[None], len(sharp), axis=0)], axis=1)
 
 
 def _orthogonal(mass: Floats, shapes: Floats) -> Floats:

@@ -12,6 +12,10 @@ from detune.response.direct_views import DirectStatic, station_named
 BY_ITERATION = "at the amplitude it produces itself, by iteration"
 DOES_NOT_STAND = "the machine does not stand"
 LEFT_ITS_CURVE = "a part left its load-deflection curve"
+BY_SEVERAL = (
+    "at the worst of several amplitudes that reproduce themselves: from rest and from large motion the iteration "
+    "comes to different ends"
+)
 NONE_FOUND = "no amplitude was found that reproduces itself"
 
 
@@ -27,11 +31,13 @@ def worse_reading(readings: list[tuple[str | None, list[MarginRow]]]) -> list[Ma
     return kept
 
 
-def noted(row: MarginRow, *, stands: bool, on_curves: bool, at_amplitude: bool) -> MarginRow:
+def noted(
+    row: MarginRow, *, stands: bool, on_curves: bool, at_amplitude: bool, several: bool = False
+) -> MarginRow:
     """Return a judged row of a response with what has to be told of it.
 
     `stands`: whether the machine does; `on_curves`: whether parts follow load-deflection curves; `at_amplitude`:
-    whether the amplitude was found by iteration.
+    whether the amplitude was found by iteration; `several`: whether it has several ends.
     """
     limited = row.upper is not None and bool(np.isfinite(row.upper))
     endless = limited and bool(np.isinf(row.value))
@@ -39,7 +45,8 @@ def noted(row: MarginRow, *, stands: bool, on_curves: bool, at_amplitude: bool) 
         # Every response is without bound where the machine falls.
         return replace(row, value=np.inf, margin=-1.0, note=DOES_NOT_STAND)
     if at_amplitude:
-        return replace(row, note=NONE_FOUND if endless else BY_ITERATION)
+        found = BY_SEVERAL if several else BY_ITERATION
+        return replace(row, note=NONE_FOUND if endless else found)
     return replace(row, note=LEFT_ITS_CURVE) if endless and on_curves else row
 
 

@@ -7,6 +7,7 @@ from detune.brief.mass_properties import mass_properties
 from detune.ground.units import STANDARD_GRAVITY, show
 from detune.physics.gravity import critical_height
 from detune.physics.rigid_body import attachment
+from detune.response.design import ballast_of
 from detune.response.direct import FLOOR, DirectMachine
 from detune.response.direct_views import DirectStatic
 
@@ -44,7 +45,7 @@ def standing_height(machine: DirectMachine) -> tuple[float, float] | None:
     """
     brief = machine.brief
     plain = len(brief.bodies) == 1 and not brief.connections and not brief.steady_loads
-    plain = plain and machine.floor is None and brief.structure is None and machine.rest is None
+    plain = plain and machine.floor is None and machine.elastic is None and machine.rest is None
     carrying = [station for station in brief.stations if machine.share(station) > 0.0]
     if not plain or int(machine.free.sum()) != 6 or any(station.to != FLOOR for station in carrying):
         return None
@@ -66,6 +67,9 @@ def _total(machine: DirectMachine) -> tuple[float, Floats]:
     brief = machine.brief
     pieces = [(p.mass, p.centre) for p in (mass_properties(body) for body in brief.bodies)]
     if brief.ballast is not None and machine.design.ballast > 0.0:
-        pieces.append((machine.design.ballast, np.array(brief.ballast.position)))
+        box = ballast_of(brief, machine.design)
+        pieces.append((box.mass, np.array(box.centre)))
+    for absorber in machine.absorbers:
+        pieces.append((absorber.mount.riding_mass + absorber.mount.moving_mass, absorber.position))
     mass = sum(each for each, _ in pieces)
     return mass, np.sum([each * centre for each, centre in pieces], axis=0) / mass

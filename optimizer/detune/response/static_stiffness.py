@@ -5,6 +5,7 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.response.absorbers import spare_stiffness
 from detune.response.designs import Designs
 from detune.response.model import Group, Model
 
@@ -13,7 +14,8 @@ Floats = NDArray[np.float64]
 
 def static_stiffness(model: Model, designs: Designs) -> Floats:
     """Return the static stiffness (D, n, n) of a batch of straight springs."""
-    return model.fixed_static + group_sum(model, designs, lambda group: group.arrays.stiffness_static)
+    straight = group_sum(model, designs, lambda group: group.arrays.stiffness_static)
+    return model.fixed_static + spare_stiffness(model, designs) + straight
 
 
 def group_sum(model: Model, designs: Designs, values: Callable[[Group], Floats]) -> Floats:

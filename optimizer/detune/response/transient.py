@@ -12,17 +12,19 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable.base import HarmonicAllowable, combine, record_amplitude
+from detune.brief.allowable.base import HarmonicAllowable, combine, record_amplitude, record_reach
 from detune.brief.brief import Brief, body_of
 from detune.brief.forcing.base import Transient
 from detune.physics.pulses import Pulse
 from detune.physics.simulation import Motion, simulate
+from detune.response.absorbers import weight_of
 from detune.response.assemble import Dynamic
 from detune.response.causal_design import causal_matrices
 from detune.response.designs import Designs
 from detune.response.model import Model, StationRows, find_station
 from detune.response.modes import ModeBatch
 from detune.response.progressive import finer, has_curves, progressive_system
+from detune.response.views_static import static_batch
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -60,6 +62,8 @@ def transient_load(brief: Brief, model: Model, transient: Transient) -> Transien
         for column, (body, freedom) in enumerate(model.frame.names):
             if body != "floor" and freedom in "xyz":
                 lead[column] = transient.base["xyz".index(freedom)]
+        for absorber in model.absorbers:
+            lead[absorber.column] = absorber.along @ np.array(transient.base)
         return TransientLoad(transient, np.zeros(n), lead)
     body = body_of(brief, transient.on)
     vector = model.frame.motion_rows(body, np.array(transient.position)).T @ np.array(transient.force)
@@ -75,8 +79,15 @@ def transient_values(
     pairs: Pairs,
     loads: tuple[TransientLoad, ...],
 ) -> Floats:
-    """Return what the transients together count as in each row (R, D); different ones add linearly."""
+    """Return what the transients together count as in each row (R, D); different ones add linearly.
+
+    Where an allowable has sides, the larger of each side's static part and what is reached there, less the largest
+    static part.
+    """
     total = np.zeros((len(pairs), designs.count))
+    static = static_batch(model, designs)
+    sides = [allowable.sides(static, place) for allowable, place in pairs]
+    reached = [np.zeros((len(side), designs.count)) for side in sides]
     for index in range(designs.count):
         one = np.array([index])
         for load in loads:
@@ -88,10 +99,17 @@ def transient_values(
             for row, (allowable, place) in enumerate(pairs):
                 statistic = allowable.statistic()
                 seen = [(allowable.observed(view, place), view.step) for view in views]
+                if sides[row]:
+                    reached[row][:, index] += [record_reach(seen, towards)[0] for _, towards in sides[row]]
+                    continue
                 part = record_amplitude(
                     seen, allowable.along(), statistic, rms_duration(views, load.transient)
                 )
                 total[row, index] = combine(total[row, index], part[0], statistic)
+    for row, side in enumerate(sides):
+        if side:
+            at_rest = np.stack([static_part for static_part, _ in side])
+            total[row] += np.max(at_rest + reached[row], axis=0) - at_rest.max(axis=0)
     return total
 
 
@@ -209,7 +227,7 @@ def motion_views(
     curved = has_curves(model, dynamic)
     system = progressive_system(model, dynamic, stiffness, damping) if curved else None
     if transient.weight_acts:
-        weight = model.weight[designs.step[0]]
+        weight = weight_of(model, designs)[0]
         displacement = -np.linalg.solve(stiffness, weight) if system is None else system.unloaded(weight)
     velocity = -transient.velocity * load.lead
     base = np.array(transient.base or (0.0, 0.0, 0.0))

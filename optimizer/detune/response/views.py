@@ -8,6 +8,9 @@ from numpy.typing import NDArray
 
 from detune.response.assemble import Dynamic
 from detune.response.designs import Designs
+from detune.response.expansion import Expansion
+from detune.response.floor_ratio import floor_ratio
+from detune.response.floor_table import beyond_spring
 from detune.response.loads import Load
 from detune.response.model import Model, find_station
 from detune.response.solve import solve_or_resonate
@@ -18,13 +21,17 @@ Complexes = NDArray[np.complex128]
 
 @dataclass(frozen=True)
 class ToneBatch:
-    """Response of D designs to one coherent set of loads at `omega` (D, F) rad/s of the tone."""
+    """Response of D designs to one coherent set of loads at `omega` (D, F) rad/s of the tone.
+
+    With an `expansion` by poles no matrix is solved.
+    """
 
     model: Model
     designs: Designs
     dynamic: Dynamic
     loads: tuple[Load, ...]
     omega: Floats
+    expansion: Expansion | None = None
 
     @cached_property
     def base(self) -> Complexes | None:
@@ -40,6 +47,8 @@ class ToneBatch:
     @cached_property
     def q(self) -> Complexes:
         """Response of the freedoms (D, F, n)."""
+        if self.expansion is not None:
+            return self.expansion.response(self.omega, self._load_vector())
         return solve_or_resonate(
             self.dynamic.at(self.omega), self.dynamic.stiffness[:, None], self._load_vector()
         )
@@ -64,6 +73,8 @@ class ToneBatch:
         if self.model.frame.flexible_floor:
             m, k, c_floor = self.model.floor_mass, self.model.floor_stiffness, self.model.floor_damping
             own = k - self.omega**2 * m + 1j * self.omega * c_floor
+            if self.model.floor_table is not None:
+                own = own + beyond_spring(self.model.floor_table, m, k, self.omega)
             total[..., -1] += own * self.base[..., 2]
         return total
 
@@ -104,6 +115,9 @@ class ToneBatch:
     def total_force(self, surface: str) -> Complexes:
         if surface == "ground" and self.model.frame.flexible_floor:
             return self._ground_force()
+        if surface == "ground" and self.model.ground is not None:
+            held = ~np.any(self.model.ground != 0.0, axis=1)
+            return np.asarray(self.total_force("floor") * held + self.q @ self.model.ground.T)
         total = np.zeros((*self.omega.shape, 3), dtype=complex)
         for station in self.model.stations:
             if station.on_floor:
@@ -116,6 +130,9 @@ class ToneBatch:
                     deflection = deflection - self._prescribed
                 total += stiffness * deflection
         return total
+
+    def floor_ratio(self) -> Complexes:
+        return floor_ratio(self.model, self.designs.step, self.omega, self._load_vector(), self.q)
 
     def _ground_force(self) -> Complexes:
         level = self.total_force("floor") * np.array([1.0, 1.0, 0.0])

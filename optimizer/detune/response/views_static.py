@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.physics.static import solve_static_where_supported
+from detune.response.absorbers import geometric_of, weight_of
 from detune.response.designs import Designs
 from detune.response.gravity import weight_to_topple
 from detune.response.model import Model, StationRows, find_station
@@ -57,7 +58,7 @@ class StaticBatch:
         return load
 
     def weight_to_topple(self) -> Floats:
-        return weight_to_topple(self._tangent(), self.model.geometric[self.designs.step])
+        return weight_to_topple(self._tangent(), geometric_of(self.model, self.designs))
 
     def _tangent(self) -> Floats:
         """Static stiffness (D, n, n) at the working load."""
@@ -83,7 +84,7 @@ def static_batch(model: Model, designs: Designs) -> StaticBatch:
     if working is not None:
         return StaticBatch(model, designs, working.q, working)
     stiffness = static_stiffness(model, designs)
-    load = model.weight[designs.step]
+    load = weight_of(model, designs)
     for station in model.stations:
         if station.packing != 0.0 and station.parallel > 0:
             part = model.groups[station.group].arrays.stiffness_static[designs.part[:, station.group], 2]

@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from detune.physics.load_curve import ElementLaw, LoadCurve, NotAtRest, at_rest
 from detune.physics.tables import OutsideTable
 from detune.physics.unsupported import UnsupportedMachine
+from detune.response.absorbers import weight_of
 from detune.response.designs import Designs
 from detune.response.model import Model
 
@@ -45,12 +46,13 @@ def working_point(model: Model, designs: Designs) -> WorkingPoint | None:
     fixed = [ElementLaw(stiffness=float(value)) for value in values[held]]
     for index in range(count):
         rows, laws, offsets = _elements(model, designs, index)
+        spare, held_spare = _spare(model, designs, index)
         try:
             rest = at_rest(
-                np.vstack([*rows, vectors[:, held].T]),
-                [*laws, *fixed],
-                model.weight[designs.step[index]],
-                np.concatenate([offsets, np.zeros(len(fixed))]),
+                np.vstack([*rows, vectors[:, held].T, *spare]),
+                [*laws, *fixed, *held_spare],
+                weight_of(model, designs.take(np.array([index])))[0],
+                np.concatenate([offsets, np.zeros(len(fixed) + len(spare))]),
             )
         except (OutsideTable, NotAtRest, UnsupportedMachine):
             continue
@@ -60,6 +62,18 @@ def working_point(model: Model, designs: Designs) -> WorkingPoint | None:
         found.force[:, index] = rest.force[axial] / parts
         found.tangent[:, index] = rest.tangent[axial] / parts
     return found
+
+
+def _spare(model: Model, designs: Designs, index: int) -> tuple[list[Floats], list[ElementLaw]]:
+    """Return rows (1, n) and laws of what holds the freedoms of absorbers that are left out."""
+    rows, laws = [], []
+    for absorber in model.absorbers:
+        own = absorber.column
+        stiffness = float(absorber.stiffness[designs.part[index, absorber.group], own, own])
+        if stiffness > 0.0:
+            rows.append(np.eye(model.frame.count)[[own]])
+            laws.append(ElementLaw(stiffness=stiffness))
+    return rows, laws
 
 
 def _elements(model: Model, designs: Designs, index: int) -> tuple[list[Floats], list[ElementLaw], Floats]:

@@ -83,7 +83,7 @@ def selection_bound(
 
 @dataclass(frozen=True)
 class SoftSideAnswer:
-    """k (N/m), c (N s/m) and m (kg) on the soft side with the cost reached.
+    """k (N/m), damping and m (kg) on the soft side with the cost reached; damping as c (N s/m) or as h = eta k (N/m).
 
     `worth` is "global" for transmissibility and affine rows alone and "safe restriction" once a displacement limit
     stands in it (its affine form is exact at c = 0 and conservative otherwise).
@@ -104,11 +104,15 @@ def soft_side_one_axis(
     mass_bounds: tuple[float, float],
     transmissibilities: tuple[tuple[float, float], ...],
     displacements: tuple[tuple[float, float, float], ...] = (),
+    loss_factor: bool = False,
+    stiffness_per_mass: tuple[float, float] = (0.0, math.inf),
 ) -> SoftSideAnswer:
-    """Least weights . (k, c, m) for one viscous axis with the natural frequency below every frequency given.
+    """Least weights . (k, c, m) for one axis with the natural frequency below every frequency given.
 
-    `transmissibilities` are (frequency Hz, T < 1), each the cone ||(k, sqrt(1-T^2) w c)|| <= T (m w^2 - k);
-    `displacements` are (frequency Hz, force N, limit m), each k <= m w^2 - F/X. Raises SizingError for T >= 1.
+    `transmissibilities` are (frequency Hz, T < 1), each the cone ||(k, sqrt(1-T^2) w c)|| <= T (m w^2 - k), with
+    h = eta k in the place of w c where `loss_factor` (damping_bounds are then those of eta); `displacements` are
+    (frequency Hz, force N, limit m), each k <= m w^2 - F/X; k/m lies within `stiffness_per_mass` in s^-2.
+    Raises SizingError for T >= 1, and where no frequency is given.
     """
     cp = convex_library()
 
@@ -119,19 +123,23 @@ def soft_side_one_axis(
     if not first:
         raise SizingError("the soft side needs at least one frequency")
     omega = 2 * math.pi * min(first)
-    unit_k, unit_c = unit_m * omega**2, unit_m * omega
+    unit_k, unit_c = unit_m * omega**2, unit_m * omega * (omega if loss_factor else 1.0)
     k, c, m = cp.Variable(), cp.Variable(), cp.Variable()
     rows: list[Any] = [
         k >= stiffness_bounds[0] / unit_k,
         k <= stiffness_bounds[1] / unit_k,
-        c >= damping_bounds[0] / unit_c,
-        c <= damping_bounds[1] / unit_c,
+        c >= (damping_bounds[0] * k if loss_factor else damping_bounds[0] / unit_c),
+        c <= (damping_bounds[1] * k if loss_factor else damping_bounds[1] / unit_c),
         m >= mass_bounds[0] / unit_m,
         m <= 1,
+        k >= stiffness_per_mass[0] / omega**2 * m,
     ]
+    if stiffness_per_mass[1] < math.inf:
+        rows.append(k <= stiffness_per_mass[1] / omega**2 * m)
     for frequency, limit in transmissibilities:
         r = 2 * math.pi * frequency / omega
-        rows.append(cp.SOC(limit * (m * r**2 - k), cp.hstack([k, math.sqrt(1 - limit**2) * r * c])))
+        turn = 1.0 if loss_factor else r
+        rows.append(cp.SOC(limit * (m * r**2 - k), cp.hstack([k, math.sqrt(1 - limit**2) * turn * c])))
     for frequency, force, stroke in displacements:
         r = 2 * math.pi * frequency / omega
         rows.append(k <= m * r**2 - force / stroke / unit_k)
@@ -139,18 +147,13 @@ def soft_side_one_axis(
     size = float(np.abs(scaled).max()) or 1.0
     problem = cp.Problem(cp.Minimize((scaled / size) @ cp.hstack([k, c, m])), rows)
     worth = "safe restriction" if displacements else "global"
+    nothing = (math.nan,) * 4
     try:
         problem.solve(solver=cp.CLARABEL)
     except cp.SolverError:
-        return SoftSideAnswer("failed", worth, math.nan, math.nan, math.nan, math.nan)
+        return SoftSideAnswer("failed", worth, *nothing)
     if problem.status != cp.OPTIMAL:
         status = "infeasible" if problem.status == cp.INFEASIBLE else "failed"
-        return SoftSideAnswer(status, worth, math.nan, math.nan, math.nan, math.nan)
-    return SoftSideAnswer(
-        "solved",
-        worth,
-        float(problem.value) * size,
-        float(k.value) * unit_k,
-        float(c.value) * unit_c,
-        float(m.value) * unit_m,
-    )
+        return SoftSideAnswer(status, worth, *nothing)
+    found = float(k.value) * unit_k, float(c.value) * unit_c, float(m.value) * unit_m
+    return SoftSideAnswer("solved", worth, float(problem.value) * size, *found)

@@ -4,11 +4,11 @@ Stiffness K(k) = K0 + sum_i k_i T_i with T_i positive semidefinite, mass M(b) = 
 
 * All modes below f is K(k) <= (2 pi f)^2 M(b), all modes above f is K(k) >= (2 pi f)^2 M(b), in the Loewner
   order (Courant-Fischer). Both are convex, so sizing under them is solved globally.
-* Soft side, A = w^2 M - K > 0: for any damping matrix C >= 0 (viscous or loss factor),
+* Soft side, A = w^2 M - K > 0, and stiff side, A = K - w^2 M > 0: for any damping C >= 0 (viscous or loss factor),
   |c^T (-A + j C)^-1 f| <= sqrt(c^T A^-1 c  f^H A^-1 f): a congruence makes A the identity and C diagonal, then
   Cauchy-Schwarz. So c^T A^-1 c <= L s and f^H A^-1 f <= L / s, two Schur complements, keep |response| <= L
   whatever the damping: a safe restriction. A grows with w, so for a force of constant amplitude the limit
-  then holds at every higher frequency too.
+  then holds at every higher frequency too; on the stiff side at every lower one.
 * One axis, soft side: transmissibility <= T < 1 at w is the cone ||(k, sqrt(1-T^2) w c)|| <= T (m w^2 - k).
 
 All forms are scaled by the Cholesky factor of the mass and the frequency before they reach the solver.
@@ -28,6 +28,7 @@ from detune.sizing.statement import SizingError
 Floats = NDArray[np.float64]
 Worth = Literal["global", "safe restriction", "lower bound"]
 Status = Literal["solved", "infeasible", "inaccurate", "failed"]
+Side = Literal["below", "above"]
 
 
 def convex_library() -> Any:
@@ -41,7 +42,8 @@ def convex_library() -> Any:
 class StiffnessModel:
     """Arrays of a linear sizing model: `mass` (n, n), `patterns` (p, n, n), `constant` (n, n), bounds (p,) N/m.
 
-    `ballast_patterns` (q, n, n) per kg with `ballast_most` (q,) kg. Raises SizingError for shapes that do not
+    `ballast_patterns` (q, n, n) per kg with `ballast_most` (q,) kg; `ballast_stiffness` (q, n, n) is what a kg adds to
+    K (gravity's stiffness, of either sign), zero where left out. Raises SizingError for shapes that do not
     fit, a pattern that is not positive semidefinite, or crossed bounds.
     """
 
@@ -52,6 +54,7 @@ class StiffnessModel:
     upper: Floats
     ballast_patterns: Floats
     ballast_most: Floats
+    ballast_stiffness: Floats | None = None
 
     def __post_init__(self) -> None:
         n = self.mass.shape[0]
@@ -67,9 +70,12 @@ class StiffnessModel:
                 if lowest < -1e-9 * float(np.abs(pattern).max()):
                     raise SizingError(f"{name} pattern {i} is not positive semidefinite")
 
-    def stiffness_at(self, k: Floats) -> Floats:
-        """K(k), shape (n, n)."""
-        return np.asarray(self.constant + np.tensordot(k, self.patterns, axes=1))
+    def stiffness_at(self, k: Floats, ballast: Floats | None = None) -> Floats:
+        """K(k, b), shape (n, n); b zero where left out."""
+        total = self.constant + np.tensordot(k, self.patterns, axes=1)
+        if ballast is not None and self.ballast_stiffness is not None:
+            total = total + np.tensordot(ballast, self.ballast_stiffness, axes=1)
+        return np.asarray(total)
 
     def mass_at(self, ballast: Floats) -> Floats:
         """M(b), shape (n, n)."""
@@ -79,15 +85,17 @@ class StiffnessModel:
         """Undamped natural frequencies in Hz, rising, shape (n,), by the exact eigenvalues."""
         from scipy.linalg import eigh
 
-        values = eigh(self.stiffness_at(k), self.mass_at(ballast), eigvals_only=True)
+        values = eigh(self.stiffness_at(k, ballast), self.mass_at(ballast), eigvals_only=True)
         return np.asarray(np.sqrt(np.maximum(values, 0.0)) / (2 * np.pi))
 
 
 @dataclass(frozen=True)
 class DampingFreeLimit:
-    """|row^T q| <= limit at `frequency` (Hz) and above under the constant `load`, whatever the damping.
+    """|row^T q| <= limit under the constant `load`, whatever the damping, with every mode on one side of `frequency`.
 
-    `row` (n,) real, `load` (n,) real or complex.
+    `row` (n,) or (r, n) real, of several the root of the summed squares; `load` (n,) real or complex. Below (all modes
+    under the frequency in Hz) it then holds at every higher frequency, above at every lower one. Limits of one name
+    bound parts of one sum: their responses together stay within `limit`, which they share.
     """
 
     name: str
@@ -95,6 +103,7 @@ class DampingFreeLimit:
     row: Floats
     load: NDArray[np.complex128]
     limit: float
+    side: Side = "below"
 
 
 @dataclass(frozen=True)
@@ -145,6 +154,11 @@ class _Form:
                 self.y[j] * (congruent(t) * model.ballast_most[j])
                 for j, t in enumerate(model.ballast_patterns)
             )
+            if model.ballast_stiffness is not None:
+                self.stiffness = self.stiffness + sum(
+                    self.y[j] * (congruent(t) * (model.ballast_most[j] / self.omega2))
+                    for j, t in enumerate(model.ballast_stiffness)
+                )
             self.constraints += [self.y >= 0, self.y <= 1]
 
     def solve(self, goal: Any, extra: list[Any]) -> tuple[Status, str, float]:
@@ -172,9 +186,7 @@ class _Form:
         return k, np.clip(np.asarray(self.y.value), 0.0, 1.0) * self.model.ballast_most
 
 
-def greatest_separation(
-    model: StiffnessModel, frequency: float, side: Literal["below", "above"]
-) -> ConvexAnswer:
+def greatest_separation(model: StiffnessModel, frequency: float, side: Side) -> ConvexAnswer:
     """Global: all modes as far as possible below (1 - f_max/f) or above (f_min/f - 1) the frequency `f` in Hz.
 
     One semidefinite program when the mass is fixed; bisection of feasibility programs when ballast is free
@@ -260,15 +272,14 @@ def _bisect(form: _Form, side: str) -> tuple[Floats, Floats, float] | None:
     return best[0], best[1], low if side == "below" else high
 
 
-def _schur(form: _Form, w_ratio: float, vector: NDArray[Any], cap: Any) -> list[Any]:
-    """v^H A^-1 v <= cap with A = w_ratio M - K in scaled form; real and imaginary parts add."""
+def _schur(form: _Form, w_ratio: float, vectors: Floats, cap: Any, side: Side) -> list[Any]:
+    """sum of v^T A^-1 v over the rows v of `vectors` (r, n) <= cap, with A = +-(w_ratio M - K) in scaled form."""
     cp = convex_library()
 
     a = w_ratio * form.mass - form.stiffness
-    parts = [np.real(vector), np.imag(vector)] if np.iscomplexobj(vector) else [vector]
-    parts = [p for p in parts if np.any(p)]
+    a = a if side == "below" else -a
     rows, caps = [], []
-    for part in parts:
+    for part in vectors[np.any(vectors != 0.0, axis=1)]:
         v = form.factor @ part
         size = float(np.linalg.norm(v))
         g = cp.Variable(nonneg=True)
@@ -276,6 +287,11 @@ def _schur(form: _Form, w_ratio: float, vector: NDArray[Any], cap: Any) -> list[
         rows.append(cp.bmat([[cp.reshape(g, (1, 1), order="C"), unit.T], [unit, a]]) >> 0)
         caps.append(size**2 * g)
     return [*rows, sum(caps) <= cap]
+
+
+def load_rows(load: NDArray[np.complex128]) -> Floats:
+    """Real and imaginary part (2, n) of a load: f^H A^-1 f is the sum over both."""
+    return np.stack([np.real(load), np.imag(load)])
 
 
 def cheapest(
@@ -308,16 +324,19 @@ def cheapest(
     cost = (stiffness_cost * model.upper) @ form.x
     if form.y is not None:
         cost = cost + (ballast_cost * model.ballast_most) @ form.y
-    size = float(np.abs(stiffness_cost * model.upper).sum()) + 1e-300
+    size = float(np.abs(stiffness_cost * model.upper).sum() + np.abs(ballast_cost * model.ballast_most).sum())
+    size = size or 1.0
     worth: Worth = "safe restriction" if limits else "global"
     best = _nothing(model.lower.size, model.ballast_most.size, worth, "infeasible", "no round was feasible")
     split = [_first_split(form, x) for x in limits]
+    shares = [1.0 / sum(x.name == y.name for y in limits) for x in limits]
     for _ in range(rounds if limits else 1):
         rows = list(extra)
-        for limit, s in zip(limits, split, strict=True):
+        for limit, s, share in zip(limits, split, shares, strict=True):
             ratio = (limit.frequency / reference) ** 2
-            rows += _schur(form, ratio, limit.row, limit.limit * form.omega2 * s)
-            rows += _schur(form, ratio, limit.load, limit.limit * form.omega2 / s)
+            cap = limit.limit * share * form.omega2
+            rows += _schur(form, ratio, np.atleast_2d(limit.row), cap * s, limit.side)
+            rows += _schur(form, ratio, load_rows(limit.load), cap / s, limit.side)
         status, detail, value = form.solve(cp.Minimize(cost / size), rows)
         if status in ("infeasible", "failed"):
             if math.isnan(best.value):
@@ -328,26 +347,48 @@ def cheapest(
         if math.isnan(best.value) or exact < best.value:
             best = ConvexAnswer(status, worth, exact, value * size, k, ballast, detail)
         split = [_balanced(model, x, k, ballast) for x in limits]
+        shares = _shares(model, limits, k, ballast)
     return best
 
 
+def _shares(
+    model: StiffnessModel, limits: tuple[DampingFreeLimit, ...], k: Floats, ballast: Floats
+) -> list[float]:
+    """Shares of the limits of one name in proportion to their bounds at a design; they sum to one."""
+    bounds = [damping_free_bound(model, x, k, ballast) for x in limits]
+    totals = [sum(b for b, y in zip(bounds, limits, strict=True) if y.name == x.name) for x in limits]
+    equal = [1.0 / sum(x.name == y.name for y in limits) for x in limits]
+    return [
+        b / total if 0.0 < total < math.inf else each
+        for b, total, each in zip(bounds, totals, equal, strict=True)
+    ]
+
+
 def _first_split(form: _Form, limit: DampingFreeLimit) -> float:
-    row = float(np.linalg.norm(form.factor @ limit.row))
-    return row / float(np.linalg.norm(form.factor @ limit.load))
+    row = float(np.linalg.norm(form.factor @ np.atleast_2d(limit.row).T))
+    return row / float(np.linalg.norm(form.factor @ load_rows(limit.load).T))
 
 
 def _balanced(model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats) -> float:
-    a = (2 * math.pi * limit.frequency) ** 2 * model.mass_at(ballast) - model.stiffness_at(k)
-    row = float(limit.row @ np.linalg.solve(a, limit.row))
-    load = float(np.real(np.conj(limit.load) @ np.linalg.solve(a, limit.load)))
+    row, load = _compliances(model, limit, k, ballast)
     return math.sqrt(abs(row) / abs(load))
 
 
-def damping_free_bound(model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats) -> float:
-    """sqrt(c^T A^-1 c f^H A^-1 f) at one design: never below the response at any damping; inf off the soft side."""
-    a = (2 * math.pi * limit.frequency) ** 2 * model.mass_at(ballast) - model.stiffness_at(k)
+def _compliances(
+    model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats
+) -> tuple[float, float]:
+    """c^T A^-1 c and f^H A^-1 f, each summed over its rows; infinite where A is not positive definite."""
+    a = (2 * math.pi * limit.frequency) ** 2 * model.mass_at(ballast) - model.stiffness_at(k, ballast)
+    a = a if limit.side == "below" else -a
     if float(np.linalg.eigvalsh(a)[0]) <= 0:
-        return math.inf
-    row = float(limit.row @ np.linalg.solve(a, limit.row))
-    load = float(np.real(np.conj(limit.load) @ np.linalg.solve(a, limit.load)))
+        return math.inf, math.inf
+    rows, loads = np.atleast_2d(limit.row), load_rows(limit.load)
+    return float(np.sum(rows.T * np.linalg.solve(a, rows.T))), float(
+        np.sum(loads.T * np.linalg.solve(a, loads.T))
+    )
+
+
+def damping_free_bound(model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats) -> float:
+    """sqrt(c^T A^-1 c f^H A^-1 f) at one design: never below the response at any damping; inf off its side."""
+    row, load = _compliances(model, limit, k, ballast)
     return math.sqrt(row * load)

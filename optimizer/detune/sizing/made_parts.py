@@ -17,6 +17,8 @@ from detune.response.design import Design
 Floats = NDArray[np.float64]
 CATALOG = "made to order"
 AXES = ("x", "y", "z")
+# Unknowns that belong to the machine and not to its parts.
+OF_MACHINE = ("absorber-mass", "position", "parallel")
 
 
 @dataclass(frozen=True)
@@ -43,12 +45,12 @@ def bounds(brief: Brief) -> tuple[Floats, Floats]:
 def logarithmic(unknown: SizingUnknown) -> bool:
     """Whether an unknown is searched for and drawn by its logarithm."""
     low, _ = unknown.bounds
-    return unknown.kind not in ("ballast", "position") and low > 0.0
+    return unknown.kind not in ("ballast", "position", "parallel") and low > 0.0
 
 
 def changes_brief(brief: Brief) -> bool:
     """Whether some unknown is a property of the machine and not of its parts or ballast."""
-    return any(unknown.kind in ("absorber-mass", "position") for unknown in sizing_of(brief).unknown)
+    return any(unknown.kind in OF_MACHINE for unknown in sizing_of(brief).unknown)
 
 
 def values_by_unknown(brief: Brief, values: Floats) -> dict[SizingUnknown, float]:
@@ -59,9 +61,10 @@ def values_by_unknown(brief: Brief, values: Floats) -> dict[SizingUnknown, float
 def made_design(brief: Brief, values: Floats) -> Made:
     """The brief and the design that the values (u,) of the unknowns (SI) describe."""
     given = values_by_unknown(brief, values)
-    mounts = tuple(made_mount(brief, group, given) for group in brief.groups)
+    varied = varied_brief(brief, given)
+    mounts = tuple(made_mount(varied, group, given) for group in brief.groups)
     ballast = next((value for unknown, value in given.items() if unknown.kind == "ballast"), 0.0)
-    return Made(varied_brief(brief, given), Design(brief.groups, mounts, ballast))
+    return Made(varied, Design(brief.groups, mounts, ballast))
 
 
 def made_table(brief: Brief, group: str) -> MadePart:
@@ -158,7 +161,7 @@ def _axial(brief: Brief, made: MadePart, given: Mapping[SizingUnknown, float]) -
 
 
 def varied_brief(brief: Brief, given: Mapping[SizingUnknown, float]) -> Brief:
-    """The brief with absorber masses and station positions put in."""
+    """The brief with absorber masses, station positions and numbers of parts put in."""
     bodies, stations = brief.bodies, brief.stations
     for unknown, value in given.items():
         if unknown.kind == "absorber-mass":
@@ -166,6 +169,11 @@ def varied_brief(brief: Brief, given: Mapping[SizingUnknown, float]) -> Brief:
         if unknown.kind == "position":
             stations = tuple(
                 _moved(station, str(unknown.axis), value) if station.name in unknown.stations else station
+                for station in stations
+            )
+        if unknown.kind == "parallel":
+            stations = tuple(
+                station.model_copy(update={"parallel": round(value)}) if station.group == unknown.group else station
                 for station in stations
             )
     if bodies is brief.bodies and stations is brief.stations:
@@ -189,3 +197,26 @@ def _moved(station: Station, axis: str, distance: float) -> Station:
     index = AXES.index(axis)
     place[index] = -distance if place[index] < 0.0 else distance
     return station.model_copy(update={"position": tuple(place)})
+
+
+def parallel_range(brief: Brief) -> tuple[int, int] | None:
+    """Least and greatest number of parts side by side, None where that is no unknown."""
+    for unknown in sizing_of(brief).unknown:
+        if unknown.kind == "parallel":
+            return round(unknown.bounds[0]), round(unknown.bounds[1])
+    return None
+
+
+def with_parallel(brief: Brief, count: int) -> Brief:
+    """The brief with `count` parts side by side and the unknown held there; itself where that is no unknown."""
+    sizing = sizing_of(brief)
+    fixed = {u: float(count) for u in sizing.unknown if u.kind == "parallel"}
+    if not fixed:
+        return brief
+    held = tuple(
+        SizingUnknown.model_validate({**u.model_dump(exclude_unset=True), "lower": count, "upper": count})
+        if u in fixed
+        else u
+        for u in sizing.unknown
+    )
+    return varied_brief(brief, fixed).model_copy(update={"sizing": sizing.model_copy(update={"unknown": held})})

@@ -1,41 +1,63 @@
-"""One-axis sizing stated a second time, in Pyomo, and solved globally by SCIP in a process of its own.
+"""One-axis sizing stated a second time, in Pyomo, and solved globally by SCIP.
 
 The statement shares only the input types with `one_axis`. Unknowns: k, c (or the loss force h = eta k), ballast
-(continuous or in whole steps) and optionally a whole number of equal mounts. A limit over a range is not
-sampled: with u = w^2 it says that a polynomial P(u) is not negative on [ua, ub], and for degree two that holds
-if and only if some tau >= 0 makes P(u) - tau (u - ua)(ub - u) non-negative for every real u (the S-lemma,
-lossless for one quadratic): its three coefficients then satisfy p0, p2 >= 0 and 4 p0 p2 >= p1^2.
+(continuous or in whole steps), optionally a whole number of equal parts side by side, and optionally one level by
+which all response limits are multiplied. A limit over a range is not sampled: with u = w^2 it says that a polynomial
+P(u) is not negative on [ua, ub]. For degree two that holds if and only if some tau >= 0 makes
+P(u) - tau (u - ua)(ub - u) non-negative for every real u (the S-lemma, lossless for one quadratic): its three
+coefficients then satisfy p0, p2 >= 0 and 4 p0 p2 >= p1^2. A limit of higher degree is stated at lines, and the worst
+place of its range joins them until none is exceeded: each such run is a relaxation, so its bound holds throughout.
 """
 
 from __future__ import annotations
 
 import math
-import multiprocessing
 import time
 from dataclasses import dataclass
 from typing import Any, Literal
 
-from detune.sizing.statement import STANDARD_GRAVITY, OneAxisProblem, ResponseLimit, SizingError
+from detune.sizing.one_axis_pyomo_limits import Scaled, degree, limit_sides, range_of, worst_place
+from detune.sizing.statement import STANDARD_GRAVITY, OneAxisProblem, ResponseLimit
 
 Status = Literal["optimal", "infeasible", "time limit", "failed"]
-
-_ORDER = {"displacement": 0, "velocity": 1, "acceleration": 2, "deflection": 0}
+# A limit may be exceeded by this share of its square before another line is stated; lines nearer than SAME are one, for
+# SCIP holds a line only within its own tolerance. At most ROUNDS runs are made.
+EXCESS, SAME, ROUNDS = 2e-9, 1e-6, 60
+Lines = dict[str, tuple[float, ...]]
 
 
 @dataclass(frozen=True)
-class MountCount:
-    """A whole number of equal mounts in parallel, each at `cost`; the bounds of k and c are then per mount."""
+class PartCount:
+    """A whole number n of equal parts side by side; the bounds of k and c in the problem are then those for n = 1.
+
+    Each adds `cost` and `cost_per_damping` times the damping to a weighted sum. Limits named in `shared` are n times
+    as wide: they hold the force through one part.
+    """
 
     least: int
     most: int
     cost: float
+    cost_per_damping: float = 0.0
+    shared: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True)
-class SecondOpinion:
+class ScipTask:
+    """One question. `level`: the objective is the least factor on all response limits, not that of the problem."""
+
+    problem: OneAxisProblem
+    count: PartCount | None
+    level: bool
+    time_limit: float
+    gap: float
+
+
+@dataclass(frozen=True)
+class ScipAnswer:
     """What SCIP said. Design values are NaN unless `status` is "optimal" (or a time limit left an incumbent).
 
-    `seconds` is the solver call alone, without process start and imports. `detail` is the solver's own word.
+    `seconds` is from the statement to the answer, without process start and imports; `runs` how often SCIP ran.
+    `detail` is its own word.
     """
 
     status: Status
@@ -46,80 +68,22 @@ class SecondOpinion:
     ballast: float
     count: int
     seconds: float
+    runs: int
     detail: str
 
 
-def _nothing(status: Status, detail: str, seconds: float = math.nan) -> SecondOpinion:
+def nothing(status: Status, detail: str, seconds: float = math.nan, runs: int = 0) -> ScipAnswer:
+    """An answer without a design."""
     nan = math.nan
-    return SecondOpinion(status, nan, nan, nan, nan, nan, 0, seconds, detail)
+    return ScipAnswer(status, nan, nan, nan, nan, nan, 0, seconds, runs, detail)
 
 
-def _limit_polynomial(limit: ResponseLimit, v: dict[str, Any]) -> list[Any]:
-    """Coefficients in u of |D|^2 - numerator / limit^2, multiplied through by a power of u where one divides."""
-    k, m = v["k"], v["m"]
-    zero, one = v["modulus"]  # |K|^2 = zero + one u
-    dynamic = [zero, one - 2 * k * m, m * m]
-    ratio = (limit.amplitude / limit.limit) ** 2
-    base = limit.source.startswith("base")
-    if base:
-        order = ("displacement", "velocity", "acceleration").index(limit.source.split()[1])
-    if limit.quantity == "transmissibility":
-        power, top = 0, [ratio * zero, ratio * one]
-    elif limit.quantity == "transmitted force":
-        power, top = (2 if limit.source == "unbalance" else 0), [ratio * zero, ratio * one]
-    elif base and limit.quantity == "deflection":
-        power, top = 2 - order, [ratio * m * m]
-    elif base:
-        power, top = _ORDER[limit.quantity] - order, [ratio * zero, ratio * one]
-    else:
-        power = _ORDER[limit.quantity] + (2 if limit.source == "unbalance" else 0)
-        top = [ratio]
-    through = max(0, -power)
-    left = [0] * through + dynamic
-    right = [0] * max(0, power) + top
-    size = max(len(left), len(right))
-    left += [0] * (size - len(left))
-    right += [0] * (size - len(right))
-    return [a - b for a, b in zip(left, right, strict=True)]
-
-
-def _degree(coefficients: list[Any]) -> int:
-    return max(i for i, x in enumerate(coefficients) if not (isinstance(x, int | float) and x == 0))
-
-
-class _Scaled:
-    """Units in which k, m and u are of order one: kg of the bare mass, and the geometric middle stiffness."""
-
-    def __init__(self, problem: OneAxisProblem) -> None:
-        low, high = problem.stiffness_bounds
-        self.mass = problem.mass
-        self.stiffness = math.sqrt(low * high)
-        self.omega2 = self.stiffness / self.mass
-        self.damping = self.stiffness / math.sqrt(self.omega2)
-
-    def limit(self, limit: ResponseLimit) -> ResponseLimit:
-        from dataclasses import replace
-
-        # Length 1 m, time 1/omega, mass m: a force unit is k * 1 m.
-        w = math.sqrt(self.omega2)
-        unit = {"displacement": 1.0, "deflection": 1.0, "velocity": w, "acceleration": w**2}
-        unit |= {"transmitted force": self.stiffness, "transmissibility": 1.0}
-        source = {"force": self.stiffness, "unbalance": self.mass, "unit": 1.0}
-        source |= {"base displacement": 1.0, "base velocity": w, "base acceleration": w**2}
-        return replace(
-            limit,
-            limit=limit.limit / unit[limit.quantity],
-            amplitude=limit.amplitude / source[limit.source],
-            lower_frequency=limit.lower_frequency / w,
-            upper_frequency=limit.upper_frequency / w,
-        )
-
-
-def build_model(problem: OneAxisProblem, count: MountCount | None = None) -> Any:
-    """The Pyomo model in scaled unknowns; raises SizingError for a range limit of degree above two in w^2."""
+def build_model(task: ScipTask, lines: Lines) -> Any:
+    """The Pyomo model in scaled unknowns; `lines` are the u (scaled) at which limits of high degree are stated."""
     import pyomo.environ as pyo
 
-    scaled = _Scaled(problem)
+    problem, count = task.problem, task.count
+    scaled = Scaled(problem)
     model = pyo.ConcreteModel()
     most = count.most if count else 1
     k_low, k_high = (x / scaled.stiffness for x in problem.stiffness_bounds)
@@ -143,16 +107,21 @@ def build_model(problem: OneAxisProblem, count: MountCount | None = None) -> Any
         model.h = pyo.Var(bounds=(d_low * k_low, d_high * k_high * most))
         model.rows.add(model.h == model.d * model.k)
         modulus = (model.k**2 + model.h**2, 0)
-    variables = {"k": model.k, "m": model.m, "modulus": modulus}
+    # |K|^2 = modulus[0] + modulus[1] u; `level` is squared, as the limits are.
+    model.level = pyo.Var(bounds=(0.0, None) if task.level else (1.0, 1.0))
     model.tau = pyo.VarList(domain=pyo.NonNegativeReals)
     for limit in problem.limits:
-        _add_limit(model, scaled.limit(limit), variables)
+        scale: Any = model.level if task.level else 1
+        if count and limit.name in count.shared:
+            scale = scale * model.n**2
+        sides = limit_sides(scaled.limit(limit), model.k, model.m, modulus, scale)
+        _add_limit(model, scaled.limit(limit), [a - b for a, b in zip(*sides, strict=True)], lines)
     _placement(model, problem, scaled)
-    _objective(model, problem, scaled, variables, count)
+    _objective(model, task, scaled, modulus)
     return model
 
 
-def _ballast(model: Any, problem: OneAxisProblem, scaled: _Scaled) -> None:
+def _ballast(model: Any, problem: OneAxisProblem, scaled: Scaled) -> None:
     import pyomo.environ as pyo
 
     ballast = problem.ballast
@@ -166,30 +135,31 @@ def _ballast(model: Any, problem: OneAxisProblem, scaled: _Scaled) -> None:
         model.rows.add(model.m == low + model.steps * (ballast.step / scaled.mass))
 
 
-def _add_limit(model: Any, limit: ResponseLimit, variables: dict[str, Any]) -> None:
-    coefficients = _limit_polynomial(limit, variables)
-    low, high = ((2 * math.pi * f) ** 2 for f in (limit.lower_frequency, limit.upper_frequency))
-    if low == high:
-        # Divided by u^2 so that a row far above resonance is of the order of the mass squared.
-        size = max(low * low, 1.0)
-        model.rows.add(sum(x * low**i for i, x in enumerate(coefficients)) / size >= 0)
+def needs_lines(limit: ResponseLimit) -> bool:
+    """Whether a limit is one over a range whose polynomial is of higher degree than two."""
+    if limit.lower_frequency == limit.upper_frequency:
+        return False
+    return degree([a - b for a, b in zip(*limit_sides(limit, 1.0, 1.0, (2.0, 3.0), 5.0), strict=True)]) > 2
+
+
+def _add_limit(model: Any, limit: ResponseLimit, coefficients: list[Any], lines: Lines) -> None:
+    low, high = range_of(limit)
+    if low == high or limit.name in lines:
+        for u in lines.get(limit.name, (low,)):
+            # Divided by u^2 so that a row far above resonance is of the order of the mass squared.
+            model.rows.add(sum(x * u**i for i, x in enumerate(coefficients)) / max(u * u, 1.0) >= 0)
         return
-    degree = _degree(coefficients)
-    if degree > 2:
-        raise SizingError(
-            f"limit '{limit.name}': over a range this limit has degree {degree} in the squared frequency; the "
-            "second statement holds ranges up to degree two. State it at lines."
-        )
     p = coefficients[:3] + [0] * (3 - len(coefficients))
     tau = model.tau.add()
     p0, p1, p2 = p[0] + tau * low * high, p[1] - tau * (low + high), p[2] + tau
-    middle = 0.5 * (low + high)
-    model.rows.add(p0 / middle**2 >= 0)
+    # Below resonance p0 is of the order of k^2, which is one; above it grows as the ends of the range.
+    size = max(low * high, 1.0)
+    model.rows.add(p0 / size >= 0)
     model.rows.add(p2 >= 0)
-    model.rows.add((4 * p0 * p2 - p1**2) / middle**2 >= 0)
+    model.rows.add((4 * p0 * p2 - p1**2) / size >= 0)
 
 
-def _placement(model: Any, problem: OneAxisProblem, scaled: _Scaled) -> None:
+def _placement(model: Any, problem: OneAxisProblem, scaled: Scaled) -> None:
     import pyomo.environ as pyo
 
     k, m = model.k, model.m
@@ -221,15 +191,16 @@ def _placement(model: Any, problem: OneAxisProblem, scaled: _Scaled) -> None:
         model.rows.add(model.f / high - 1 >= model.s - (big_high + bound) * (1 - model.above[i]))
 
 
-def _objective(
-    model: Any, problem: OneAxisProblem, scaled: _Scaled, v: dict[str, Any], count: MountCount | None
-) -> None:
+def _objective(model: Any, task: ScipTask, scaled: Scaled, modulus: tuple[Any, Any]) -> None:
     import pyomo.environ as pyo
 
+    problem, count = task.problem, task.count
     goal, objective = problem.objective.goal, problem.objective
     unit = scaled.damping if problem.damping_kind == "viscous" else 1.0
     added = (model.m - 1) * scaled.mass
-    if goal == "softest":
+    if task.level:
+        expression = model.level
+    elif goal == "softest":
         expression = model.k
     elif goal == "stiffest":
         expression = -model.k
@@ -240,16 +211,7 @@ def _objective(
     elif goal == "greatest separation":
         expression = -model.s
     elif goal == "least transmissibility":
-        assert objective.frequency is not None
-        u = (2 * math.pi * objective.frequency) ** 2 / scaled.omega2
-        zero, one = v["modulus"]
-        top = zero + one * u
-        model.t = pyo.Var(bounds=(0, None))
-        # Times 1/k_min^2: the solver's absolute tolerance must not decide a small transmissibility.
-        size = float(model.k.lb) ** 2
-        dynamic = top - 2 * model.k * model.m * u + (model.m * u) ** 2
-        model.rows.add((model.t**2 * dynamic - top) / size >= 0)
-        expression = model.t
+        expression = _transmissibility(model, problem, scaled, modulus)
     else:
         expression = (
             objective.stiffness_weight * scaled.stiffness * model.k
@@ -258,13 +220,27 @@ def _objective(
             + objective.mass_weight * added
         )
         if count:
-            expression = expression + count.cost * model.n
-    if objective.damping_squared_weight and goal == "weighted sum":
-        # SCIP takes a linear objective only; the epigraph keeps the rest in a row.
-        model.cost = pyo.Var()
-        model.rows.add(model.cost >= expression)
-        expression = model.cost
+            expression = expression + count.cost * model.n + count.cost_per_damping * unit * model.d * model.n
+        if objective.damping_squared_weight or (count and count.cost_per_damping):
+            # SCIP takes a linear objective only; the epigraph keeps the rest in a row.
+            model.cost = pyo.Var()
+            model.rows.add(model.cost >= expression)
+            expression = model.cost
     model.goal = pyo.Objective(expr=expression)
+
+
+def _transmissibility(model: Any, problem: OneAxisProblem, scaled: Scaled, modulus: tuple[Any, Any]) -> Any:
+    import pyomo.environ as pyo
+
+    assert problem.objective.frequency is not None
+    u = (2 * math.pi * problem.objective.frequency) ** 2 / scaled.omega2
+    top = modulus[0] + modulus[1] * u
+    model.t = pyo.Var(bounds=(0, None))
+    # Times 1/k_min^2: the solver's absolute tolerance must not decide a small transmissibility.
+    size = float(model.k.lb) ** 2
+    dynamic = top - 2 * model.k * model.m * u + (model.m * u) ** 2
+    model.rows.add((model.t**2 * dynamic - top) / size >= 0)
+    return model.t
 
 
 def _value(variable: Any) -> float:
@@ -272,14 +248,58 @@ def _value(variable: Any) -> float:
     return float(variable.lb if variable.value is None else variable.value)
 
 
-def _run(problem: OneAxisProblem, count: MountCount | None, limit: float, gap: float) -> SecondOpinion:
+def run(task: ScipTask | None) -> ScipAnswer:
+    """Solve one question; None only imports the libraries. To be run in a process of its own."""
+    import pyscipopt  # noqa: F401
+
+    if task is None:
+        return nothing("optimal", "ready")
+    scaled = Scaled(task.problem)
+    ranged = {limit.name: scaled.limit(limit) for limit in task.problem.limits if needs_lines(limit)}
+    lines: Lines = {name: range_of(limit) for name, limit in ranged.items()}
+    seconds = 0.0
+    answer = nothing("failed", "no run")
+    for runs in range(1, ROUNDS + 1):
+        left = task.time_limit - seconds
+        if left <= 0.0:
+            return nothing("time limit", "between two runs", seconds, runs - 1)
+        answer, model = _once(task, scaled, lines, left, seconds, runs)
+        seconds = answer.seconds
+        if answer.status != "optimal":
+            return answer
+        more = _exceeded(task, model, ranged, lines)
+        if not more:
+            return answer
+        lines = {name: (*places, *more.get(name, ())) for name, places in lines.items()}
+    return nothing(
+        "failed", f"the worst frequencies of a range were still moving after {ROUNDS} runs", seconds, ROUNDS
+    )
+
+
+def _exceeded(task: ScipTask, model: Any, ranged: dict[str, ResponseLimit], lines: Lines) -> Lines:
+    """The worst place of every limit that is exceeded between its lines."""
+    k, m, d, n = (_value(each) for each in (model.k, model.m, model.d, model.n))
+    modulus = (k * k, d * d) if task.problem.damping_kind == "viscous" else (k * k * (1.0 + d * d), 0.0)
+    found: Lines = {}
+    for name, limit in ranged.items():
+        worst, place = worst_place(limit, k, m, modulus)
+        allowed = _value(model.level) if task.level else 1.0
+        allowed *= n * n if task.count and name in task.count.shared else 1.0
+        new = all(abs(place - u) > SAME * u for u in lines[name])
+        if new and worst > allowed * (1.0 + EXCESS):
+            found[name] = (place,)
+    return found
+
+
+def _once(
+    task: ScipTask, scaled: Scaled, lines: Lines, limit: float, before: float, runs: int
+) -> tuple[ScipAnswer, Any]:
     from pyomo.contrib.solver.common.factory import SolverFactory
     from pyomo.contrib.solver.common.results import SolutionStatus, TerminationCondition
 
-    model = build_model(problem, count)
-    scaled = _Scaled(problem)
     solver = SolverFactory("scip_direct")
     start = time.perf_counter()
+    model = build_model(task, lines)
     result = solver.solve(
         model,
         load_solutions=False,
@@ -288,106 +308,44 @@ def _run(problem: OneAxisProblem, count: MountCount | None, limit: float, gap: f
         solver_options={
             "numerics/feastol": 1e-9,
             "numerics/dualfeastol": 1e-9,
-            "limits/gap": gap,
+            "limits/gap": task.gap,
             "limits/absgap": 0.0,
         },
     )
-    seconds = time.perf_counter() - start
+    seconds = before + time.perf_counter() - start
     why = result.termination_condition
     detail = f"{why.name}, {result.solution_status.name}"
     if why == TerminationCondition.provenInfeasible:
-        return _nothing("infeasible", detail, seconds)
+        return nothing("infeasible", detail, seconds, runs), model
     done = why == TerminationCondition.convergenceCriteriaSatisfied
     if result.solution_status not in (SolutionStatus.optimal, SolutionStatus.feasible):
-        return _nothing(
-            "time limit" if why == TerminationCondition.maxTimeLimit else "failed", detail, seconds
-        )
+        status: Status = "time limit" if why == TerminationCondition.maxTimeLimit else "failed"
+        return nothing(status, detail, seconds, runs), model
     if not done and why != TerminationCondition.maxTimeLimit:
-        return _nothing("failed", detail, seconds)
+        return nothing("failed", detail, seconds, runs), model
     result.solution_loader.load_vars()
-    goal = problem.objective.goal
+    objective, bound = _in_si(task, scaled, float(result.incumbent_objective), float(result.objective_bound))
+    return ScipAnswer(
+        "optimal" if done else "time limit",
+        objective,
+        bound,
+        _value(model.k) * scaled.stiffness,
+        _value(model.d) * (scaled.damping if task.problem.damping_kind == "viscous" else 1.0),
+        (_value(model.m) - 1.0) * scaled.mass,
+        round(_value(model.n)) if task.count else 1,
+        seconds,
+        runs,
+        detail,
+    ), model
+
+
+def _in_si(task: ScipTask, scaled: Scaled, *values: float) -> tuple[float, ...]:
+    """Objective values in SI and in the sense of the goal."""
+    if task.level:
+        return tuple(math.sqrt(max(value, 0.0)) for value in values)
     unit = {"softest": scaled.stiffness, "stiffest": -scaled.stiffness, "least added mass": scaled.mass}
     unit |= {"greatest separation": -1.0}
-    if problem.damping_kind == "viscous":
+    if task.problem.damping_kind == "viscous":
         unit["least damping"] = scaled.damping
-    factor = unit.get(goal, 1.0)
-    return SecondOpinion(
-        "optimal" if done else "time limit",
-        factor * float(result.incumbent_objective),
-        factor * float(result.objective_bound),
-        _value(model.k) * scaled.stiffness,
-        _value(model.d) * (scaled.damping if problem.damping_kind == "viscous" else 1.0),
-        (_value(model.m) - 1.0) * scaled.mass,
-        round(_value(model.n)) if count else 1,
-        seconds,
-        detail,
-    )
-
-
-def _serve(connection: Any) -> None:
-    import pyomo.environ  # noqa: F401
-    import pyscipopt  # noqa: F401
-
-    connection.send("ready")
-    while True:
-        try:
-            task = connection.recv()
-        except EOFError:
-            return
-        try:
-            connection.send(_run(*task))
-        except (SizingError, ValueError, RuntimeError, ArithmeticError) as error:
-            connection.send(_nothing("failed", f"{type(error).__name__}: {error}"))
-
-
-def solve_with_scip(
-    problems: list[OneAxisProblem],
-    time_limit: float,
-    counts: list[MountCount | None] | None = None,
-    gap: float = 1e-8,
-) -> list[SecondOpinion]:
-    """Solve each problem globally by SCIP; `time_limit` (s) is hard and per problem.
-
-    One child process serves the list; one that does not answer within the limit and two seconds is ended and
-    replaced (its imports, before the clock starts, are given a minute).
-    Raises SizingError, before any run, for a problem that cannot be stated.
-    """
-    many = counts if counts is not None else [None] * len(problems)
-    for problem, count in zip(problems, many, strict=True):
-        build_model(problem, count)
-    context = multiprocessing.get_context("spawn")
-    answers: list[SecondOpinion] = []
-    process: Any = None
-    ours: Any = None
-    for problem, count in zip(problems, many, strict=True):
-        if process is None:
-            ours, theirs = context.Pipe()
-            process = context.Process(target=_serve, args=(theirs,), daemon=True)
-            process.start()
-            theirs.close()
-            if not ours.poll(60.0):
-                process.kill()
-                raise SizingError("the solver's process did not start within a minute")
-            ours.recv()
-        ours.send((problem, count, time_limit, gap))
-        answer: SecondOpinion | None = None
-        if ours.poll(time_limit + 2.0):
-            try:
-                answer = ours.recv()
-            except EOFError:
-                answer = _nothing("failed", "the solver's process died")
-                process.join()
-                process = None
-        else:
-            process.kill()
-            process.join()
-            process = None
-            answer = _nothing("time limit", "ended from outside: the solver ignored its limit", time_limit)
-        answers.append(answer)
-    if process is not None:
-        ours.close()
-        process.join(5.0)
-        if process.is_alive():
-            process.kill()
-            process.join()
-    return answers
+    factor = unit.get(task.problem.objective.goal, 1.0)
+    return tuple(factor * value for value in values)

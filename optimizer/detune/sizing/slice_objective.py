@@ -19,7 +19,6 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.polynomial import polynomial
 from numpy.typing import NDArray
 
 from detune.sizing.statement import OneAxisProblem
@@ -187,16 +186,29 @@ def _loss_points(parabolas: Floats, stiffness: float, damping: float, squared: f
     if stiffness == 0.0:
         with np.errstate(divide="ignore", invalid="ignore"):
             return np.asarray(-2.0 * parabolas[:, 0] / parabolas[:, 1], dtype=float)
-    found: list[float] = []
-    for p0, p1, p2 in parabolas:
-        half = np.array([-p0, -0.5 * p1])
-        if squared:
-            coefficients = np.array([-2.0 * p0 * squared, -p1 * squared, 0.0, stiffness])
-        else:
-            left = stiffness**2 * np.array([0.0, 0.0, 0.0, 0.0, p0, p1, p2])
-            coefficients = polynomial.polysub(left, damping**2 * polynomial.polymul(half, half))
-        coefficients = np.trim_zeros(coefficients, "b")
-        if coefficients.size > 1:
-            roots = polynomial.polyroots(coefficients)
-            found.extend(float(r.real) for r in roots if abs(r.imag) <= 1e-6 * abs(r))
-    return np.array(found)
+    p0, p1, p2 = parabolas.T
+    none = np.zeros_like(p0)
+    if squared:
+        rows = np.column_stack([-2.0 * p0 * squared, -p1 * squared, none, none + stiffness])
+    else:
+        # stiffness^2 k^4 p = damping^2 (p' k/2 - p)^2 with p' k/2 - p = -p0 - p1 k/2.
+        own = damping**2 * np.column_stack([p0 * p0, p0 * p1, 0.25 * p1 * p1])
+        rows = np.column_stack([-own, none, stiffness**2 * np.column_stack([p0, p1, p2])])
+    roots = _real_roots(rows)
+    return roots[roots > 0.0]
+
+
+def _real_roots(rows: Floats) -> Floats:
+    """Real roots of polynomials (n, degree + 1), lowest power first, as the eigenvalues of companion matrices."""
+    found = []
+    degrees = np.where(rows != 0.0, np.arange(rows.shape[1]), 0).max(axis=1, initial=0)
+    for degree in set(degrees.tolist()) - {0}:
+        own = rows[degrees == degree]
+        companion = np.zeros((len(own), degree, degree))
+        companion[:, np.arange(1, degree), np.arange(degree - 1)] = 1.0
+        with np.errstate(over="ignore"):
+            companion[:, :, -1] = -own[:, :degree] / own[:, degree, None]
+        companion = companion[np.isfinite(companion).all(axis=(1, 2))]
+        roots = np.linalg.eigvals(companion).ravel()
+        found.append(roots.real[np.abs(roots.imag) <= 1e-6 * np.abs(roots)])
+    return np.concatenate(found) if found else np.zeros(0)

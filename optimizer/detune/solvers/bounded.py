@@ -15,11 +15,12 @@ from detune.problem.stages import objective_values
 from detune.proof.search import SearchProgress, SearchResult, SearchSettings
 from detune.proof.search_front import search_front, search_least_cost
 from detune.response.designs import Designs
+from detune.response.prices import least_costs
 from detune.solvers.final_test import FinalTest
 from detune.solvers.interrupt import Stop, stop_on_interrupt
 from detune.solvers.nondominated import as_minimised, nondominated
 from detune.solvers.outcome import Outcome, Progress, ProofRecord, RuleCount, Settings, Stopped
-from detune.solvers.selection import selection_of, why_not
+from detune.solvers.selection import Case, cases_of, selection_of, why_not
 
 NAME = "bounded search"
 RULES = {
@@ -51,11 +52,12 @@ def accepts(problem: Problem) -> bool:
 def solve(problem: Problem, settings: Settings) -> Outcome:
     """Return the whole front of cost against separation (or least margin), its cheapest design first.
 
-    Without `settings.front` it is the cheapest design alone. One search for each ballast step, cheapest step first.
+    Without `settings.front` it is the cheapest design alone. One search for each ballast step and each choice of
+    absorbers, which decide the mass: those with the cheapest designs first.
     """
     with stop_on_interrupt(settings.interrupted) as stop:
         work = _Work(problem, settings, stop)
-        for step in np.argsort(problem.model.ballast_cost, kind="stable"):
+        for case in sorted(work.open, key=lambda case: work.open[case]):
             # A search may be over before it first looks at the clock.
             if stop():
                 work.stopped = "interrupted"
@@ -63,12 +65,12 @@ def solve(problem: Problem, settings: Settings) -> Outcome:
                 work.stopped = "time limit"
             if work.stopped != "finished":
                 break
-            work.search(int(step))
+            work.search(case)
         return work.outcome()
 
 
 class _Work:
-    """The searches of all ballast steps: what they found, what they excluded, and what is still open."""
+    """The searches of all cases: what they found, what they excluded, and what is still open."""
 
     def __init__(self, problem: Problem, settings: Settings, stop: Stop) -> None:
         self.started = time.perf_counter()
@@ -77,7 +79,7 @@ class _Work:
         self.found: list[_Found] = []
         self.counts: dict[str, int] = {}
         self.stopped: Stopped = "finished"
-        self.open = {step: self._least(step) for step in range(len(problem.model.ballast_mass))}
+        self.open = {case: self._least(case) for case in cases_of(problem)}
 
     def left(self) -> float | None:
         """Seconds left, None for no limit."""
@@ -88,8 +90,8 @@ class _Work:
         """A cost that no unsettled design falls below."""
         return min(self.open.values())
 
-    def search(self, step: int) -> None:
-        """Search one ballast step."""
+    def search(self, case: Case) -> None:
+        """Search one ballast step with one choice of absorbers."""
         settings, trade = self.settings, self.problem.brief.objectives.trade
         margin = trade[1] == "least-margin"
         chosen = SearchSettings(
@@ -100,38 +102,39 @@ class _Work:
             time_limit=self.left(),
             interrupted=self.stop,
             announce=settings.announce,
-            progress=None if settings.progress is None else self._progress(step),
+            progress=None if settings.progress is None else self._progress(case),
             workers=settings.workers,
         )
         ask = search_front if settings.front else search_least_cost
-        result = ask(selection_of(self.problem, step), self.tests.at_step(step, trade[1]), chosen)
-        self._take(step, result)
+        accept = self.tests.at_step(case.step, trade[1], case.fixed)
+        result = ask(selection_of(self.problem, case.step, case.fixed), accept, chosen)
+        self._take(case, result)
 
-    def _take(self, step: int, result: SearchResult) -> None:
-        self.found += [_Found(design.parts, step, design.cost) for design in result.designs]
+    def _take(self, case: Case, result: SearchResult) -> None:
+        self.found += [
+            _Found(case.parts(design.parts), case.step, design.cost) for design in result.designs
+        ]
         for rule, count in result.counts.items():
             self.counts[rule] = self.counts.get(rule, 0) + count
-        self.open[step] = result.lower_bound
+        self.open[case] = result.lower_bound
         if result.status != "complete":
             self.stopped = "time limit" if result.status == "time_limit" else "interrupted"
 
-    def _least(self, step: int) -> float:
-        """The cost of the cheapest parts at one ballast step."""
-        model = self.problem.model
-        cost = float(model.ballast_cost[step])
-        for index, group in enumerate(model.groups):
-            stations = sum(station.bought for station in model.stations if station.group == index)
-            cost += stations * float(group.arrays.cost.min())
-        return cost
+    def _least(self, case: Case) -> float:
+        """The cost of the cheapest parts of one case."""
+        model, fixed = self.problem.model, dict(case.fixed)
+        costs = [least_costs(model, index) for index in range(len(model.groups))]
+        least = (float(each[fixed[g]] if g in fixed else each.min()) for g, each in enumerate(costs))
+        return float(model.ballast_cost[case.step]) + sum(least)
 
-    def _progress(self, step: int) -> Callable[[SearchProgress], None]:
+    def _progress(self, case: Case) -> Callable[[SearchProgress], None]:
         tell, before = self.settings.progress, sum(self.counts.values())
         assert tell is not None
         each = self.problem.count // len(self.open)
 
         def report(state: SearchProgress) -> None:
             costs = [found.cost for found in self.found]
-            others = [bound for number, bound in self.open.items() if number != step]
+            others = [bound for number, bound in self.open.items() if number != case]
             progress = Progress(
                 settled=before + round(state.share_excluded * each),
                 designs=self.problem.count,

@@ -10,15 +10,17 @@ from detune.brief.allowable.separation import Separation
 from detune.brief.allowable.stability import Stability
 from detune.problem.build import HarmonicRequirements, Problem, StateModel
 from detune.problem.requirement import Requirement
+from detune.proof.noise_data import NoiseRows
 from detune.proof.scatter_data import LimitedRows, ScatterSystem
 from detune.proof.static_rows import StaticLimits, static_values_at
 from detune.response.designs import Designs
 from detune.solvers.certify_statics import StaticRow, offset_row, static_limits, static_row
 from detune.solvers.scatter_machine import NOTHING, ScatterMap, scatter_map, scatter_system, why_not_linear
-from detune.solvers.scatter_rows import NotBounded, ObservedRow, limited_rows, observed_row
+from detune.solvers.scatter_rows import NotBounded, ObservedRow, limited_rows, noise_rows, observed_row
 
 Floats = NDArray[np.float64]
-NOT_IN_TIME = "noise, shock and passages through resonance are not bounded over the scatter"
+NOT_KNOWN = "the bounds do not know this limit"
+NOT_IN_TIME = "shock and passages through resonance are not bounded over the scatter"
 
 
 @dataclass
@@ -55,6 +57,16 @@ class ResponseGroup:
             for family in self.group.rows.families
         ]
 
+    @property
+    def parts(self) -> int:
+        """How many independent parts add up: families, and all noise together."""
+        return len(self.group.rows.families) + bool(self.group.rows.noises)
+
+    def noise(self, limit: Floats, forcing: float) -> NoiseRows | None:
+        """The rows under all noise with limits (R,), None without noise."""
+        noises = self.group.rows.noises
+        return noise_rows(self.group.model, noises, self.observed, limit, forcing) if noises else None
+
 
 class DesignRows:
     """The rows of a design (part (G,), ballast step) under the scatter of the problem's brief."""
@@ -65,6 +77,7 @@ class DesignRows:
         self.design = problem.design(self.designs, 0)
         self.map: ScatterMap = scatter_map(problem.brief, self.design)
         self.unknown: list[tuple[Requirement, str]] = []
+        self._known: set[int] = set()
         self._systems: dict[int, ScatterSystem | str] = {}
 
     def system(self, each: StateModel) -> ScatterSystem:
@@ -101,11 +114,13 @@ class DesignRows:
                         raise NotBounded(reason)
                     if isinstance(requirement.allowable, Stability):
                         group.stability.append(requirement)
+                        self._known.add(id(requirement))
                         continue
                     more = static_row(each, self.part, self.map, requirement)
                 except NotBounded as problem:
                     self.unknown.append((requirement, str(problem)))
                     continue
+                self._known.add(id(requirement))
                 group.rows += more
                 group.owner += [requirement] * len(more)
             out.append(group)
@@ -126,6 +141,7 @@ class DesignRows:
                 if requirement.allowable.exempt_amplification is not None:
                     raise NotBounded("modes are exempted by amplification")
                 out.append((requirement, each, self.system(each)))
+                self._known.add(id(requirement))
             except NotBounded as problem:
                 self.unknown.append((requirement, str(problem)))
         return out
@@ -137,13 +153,18 @@ class DesignRows:
             self.unknown += [(r, "band limits are not bounded over the scatter") for r in group.requirements]
         return [group for group in out if group is not None and group.requirements]
 
+    def unasked(self) -> list[Requirement]:
+        """Requirements of which neither the bounds nor `unknown` have heard, once all rows were asked for."""
+        left = {id(requirement) for requirement, _ in self.unknown} | self._known
+        return [r for r in self.problem.requirements if not r.is_total and id(r) not in left]
+
     def _response(self, group: HarmonicRequirements) -> ResponseGroup | None:
         rows = group.rows
         each = next(state for state in self.problem.states if state.model is group.model)
         try:
             if group.driving is not None:
                 raise NotBounded("parts follow the amplitude")
-            if rows.noises or rows.transients or rows.passages:
+            if rows.transients or rows.passages:
                 raise NotBounded(NOT_IN_TIME)
             found = ResponseGroup(group, each, self.system(each))
         except NotBounded as problem:
@@ -153,16 +174,18 @@ class DesignRows:
             try:
                 bound = self._plain_bound(each, allowable, place)
                 if np.isinf(bound):
+                    self._known.add(id(requirement))
                     continue
                 unit = allowable.unit_load()
                 moved = any(c != NOTHING for centre in self.map.centre for c in centre)
                 if unit is not None and unit[0] == "force" and moved:
                     raise NotBounded("a unit force at a mass centre that scatters")
-                row = observed_row(group.model, allowable, place, rows.families)
+                row = observed_row(group.model, allowable, place, rows)
                 static = offset_row(each, self.part, self.map, allowable, place)
             except NotBounded as problem:
                 self.unknown.append((requirement, str(problem)))
                 continue
+            self._known.add(id(requirement))
             found.requirements.append(requirement)
             found.observed.append(row)
             found.limit.append(bound)

@@ -5,20 +5,27 @@ kept, so the cheapest kept one is the optimum and the nondominated kept ones are
 """
 
 import time
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem
 from detune.problem.stages import Stage, objective_values, stages
 from detune.response.designs import Designs, all_designs, total_cost
+from detune.response.prices import least_costs
 from detune.solvers.outcome import Outcome, Progress, ProofRecord, RuleCount, Settings, Stopped
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 BLOCK = 20_000
+FIRST_BLOCK = 500
+BLOCK_SECONDS = 5.0
+"""A block is booked as a whole, so that a stop loses no more than about this much work."""
+LOOK_SECONDS = 0.7
+"""How often the time and a wish to stop are looked at."""
+FIRST_CHUNK = 16
 NAME = "enumeration"
 
 
@@ -37,23 +44,37 @@ def solve(problem: Problem, settings: Settings) -> Outcome:
     started = time.perf_counter()
     tally = _Tally(problem, stages(problem))
     stopped: Stopped = "finished"
-    looked_at = 0
+    looked_at, block = 0, min(FIRST_BLOCK, BLOCK)
+
+    def look() -> None:
+        if settings.time_limit is not None and time.perf_counter() - started > settings.time_limit:
+            raise _Halted("time limit")
+        if settings.interrupted is not None and settings.interrupted():
+            raise _Halted("interrupted")
+
     try:
-        for first in range(0, problem.count, BLOCK):
-            if settings.time_limit is not None and time.perf_counter() - started > settings.time_limit:
-                stopped = "time limit"
-                break
-            if settings.interrupted is not None and settings.interrupted():
-                stopped = "interrupted"
-                break
-            last = min(first + BLOCK, problem.count)
-            tally.go_through(all_designs(problem.model, first, last))
+        while looked_at < problem.count:
+            look()
+            begun, last = time.perf_counter(), min(looked_at + block, problem.count)
+            tally.go_through(all_designs(problem.model, looked_at, last), look)
             looked_at = last
             if settings.progress is not None:
                 settings.progress(tally.progress(looked_at))
+            taken = max(time.perf_counter() - begun, 1e-6)
+            block = int(min(BLOCK, max(1.0, 4.0 * block), max(1.0, block * BLOCK_SECONDS / taken)))
+    except _Halted as halted:
+        stopped = halted.why
     except KeyboardInterrupt:
         stopped = "interrupted"
     return tally.outcome(problem, stopped, looked_at, time.perf_counter() - started)
+
+
+class _Halted(Exception):
+    """The time is up, or a stop is wished for; the block under work counts as not looked at."""
+
+    def __init__(self, why: Stopped) -> None:
+        super().__init__(why)
+        self.why: Stopped = why
 
 
 @dataclass
@@ -67,13 +88,15 @@ class _Tally:
     counts: list[list[Integers]] = field(default_factory=list)
     reach: list[Floats] = field(default_factory=list)
     furthest: list[Integers] = field(default_factory=list)
+    chunk: dict[int, int] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
-        sizes = [len(group.mounts) for group in self.problem.model.groups]
+        sizes = choice_sizes(self.problem)
         rules = sum(len(step.requirements) for step in self.steps)
         self.counts = [[np.zeros(size, dtype=np.int64) for size in sizes] for _ in range(rules)]
         self.reach = [np.full(size, -np.inf) for size in sizes]
-        self.furthest = [np.zeros((size, len(sizes) + 1), dtype=np.int64) for size in sizes]
+        columns = len(self.problem.model.groups) + 1
+        self.furthest = [np.zeros((size, columns), dtype=np.int64) for size in sizes]
 
     def progress(self, looked_at: int) -> Progress:
         """How far the work is, with the least cost among the designs kept."""
@@ -82,15 +105,15 @@ class _Tally:
             looked_at, self.problem.count, min(least, default=None), open_bound(self.problem, looked_at)
         )
 
-    def go_through(self, designs: Designs) -> None:
+    def go_through(self, designs: Designs, look: Callable[[], None]) -> None:
+        """Judge a block of designs, asking `look` now and then, which raises to stop; then nothing is booked."""
         least = np.full(designs.count, np.inf)
         rule = 0
         # Booked at the end of the block, so that an interrupt leaves no half-counted designs behind.
         excluded: list[tuple[Designs, Floats, NDArray[np.bool_], int, int]] = []
         for number, step in enumerate(self.steps):
             alive = []
-            for first in range(0, designs.count, step.size):
-                index = np.arange(first, min(first + step.size, designs.count))
+            for index in self._chunks(number, designs.count, step.size, look):
                 margins = step.margins(designs.take(index))
                 # A value that is not a number must never pass.
                 margins = np.where(np.isnan(margins), -np.inf, margins)
@@ -115,6 +138,21 @@ class _Tally:
             self.kept.append(designs)
             self.margins.append(least)
 
+    def _chunks(
+        self, number: int, count: int, most: int, look: Callable[[], None]
+    ) -> Iterator[NDArray[np.intp]]:
+        """Indices of designs to judge at once in a stage: as many as are quick enough, at most `most`."""
+        first = 0
+        while first < count:
+            look()
+            size = min(self.chunk.get(number, FIRST_CHUNK), most)
+            begun = time.perf_counter()
+            yield np.arange(first, min(first + size, count))
+            taken = max(time.perf_counter() - begun, 1e-6)
+            done = min(first + size, count) - first
+            first += size
+            self.chunk[number] = int(max(1.0, min(most, 4.0 * size, done * LOOK_SECONDS / taken)))
+
     def _exclude(
         self, designs: Designs, margins: Floats, failed: NDArray[np.bool_], rule: int, stage: int
     ) -> None:
@@ -124,7 +162,7 @@ class _Tally:
         # Later stages outrank; within one, the design that misses by least got furthest.
         reach = stage + 1.0 / (1.0 - margins.min(axis=0))
         numbers = np.column_stack([designs.part, designs.step])
-        for group, part in enumerate(designs.part.T):
+        for group, part in enumerate(numbers.T[: len(self.reach)]):
             for row in np.unique(first):
                 chosen = part[first == row]
                 self.counts[rule + row][group] += np.bincount(
@@ -155,8 +193,9 @@ class _Tally:
         )
         closest_of = []
         closest = []
-        for group in range(groups):
-            alive = np.unique(kept.part[:, group])
+        every = np.column_stack([kept.part, kept.step])
+        for group in range(len(self.reach)):
+            alive = np.unique(every[:, group])
             for part in range(len(self.reach[group])):
                 if part not in alive and np.isfinite(self.reach[group][part]):
                     closest_of.append((group, part))
@@ -182,6 +221,12 @@ class _Tally:
         )
 
 
+def choice_sizes(problem: Problem) -> list[int]:
+    """Return how many parts each group may take, and last how much ballast, where that is taken from a list."""
+    sizes = [len(group.mounts) for group in problem.model.groups]
+    return [*sizes, len(problem.model.ballast)] if problem.model.ballast[0].listed else sizes
+
+
 def open_bound(problem: Problem, looked_at: int) -> float:
     """Return a cost that no design from number `looked_at` on falls below; infinite where none is left."""
     model = problem.model
@@ -191,13 +236,6 @@ def open_bound(problem: Problem, looked_at: int) -> float:
     # The part of the first group changes slowest: those before the present one are done with.
     sizes = [len(group.mounts) for group in model.groups]
     done = looked_at * sizes[0] // problem.count
-    for index, group in enumerate(model.groups):
-        stations = sum(station.bought for station in model.stations if station.group == index)
-        bound += stations * min(_lowest_cost(mount) for mount in group.mounts[done if index == 0 else 0 :])
+    for index in range(len(model.groups)):
+        bound += float(least_costs(model, index)[done if index == 0 else 0 :].min())
     return bound
-
-
-def _lowest_cost(mount: Mount) -> float:
-    """Return what a mount costs at best, at any quantity."""
-    reduced = [mount.damper_cost + mount.pieces * price for _, price in mount.cost_breaks]
-    return min([mount.cost, *reduced])

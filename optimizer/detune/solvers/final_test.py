@@ -22,17 +22,21 @@ class FinalTest:
         self.asked = 0
         self.failed: dict[tuple[str, str], int] = {}
 
-    def at_step(self, step: int, value: str) -> Callable[[Integers], tuple[NDArray[np.bool_], Floats]]:
-        """Return the test of designs (D, G + 1) at one ballast step."""
+    def at_step(
+        self, step: int, value: str, fixed: tuple[tuple[int, int], ...] = ()
+    ) -> Callable[[Integers], tuple[NDArray[np.bool_], Floats]]:
+        """Return the test of designs (D, G + 1) at one ballast step; `fixed` holds the part of some groups."""
 
         def accept(numbers: Integers) -> tuple[NDArray[np.bool_], Floats]:
-            part = np.asarray(numbers[:, :-1], dtype=np.intp)
+            part = np.array(numbers[:, :-1], dtype=np.intp)
+            for group, chosen in fixed:
+                part[:, group] = chosen
             designs = Designs(part, np.full(len(part), step, dtype=np.intp))
             feasible, least = self.judge(designs)
             worth = np.full(designs.count, -np.inf)
             if feasible.any():
-                chosen = designs.take(feasible)
-                worth[feasible] = objective_values(self.problem, chosen, least[feasible])[value]
+                kept = designs.take(feasible)
+                worth[feasible] = objective_values(self.problem, kept, least[feasible])[value]
             return feasible, worth
 
         return accept

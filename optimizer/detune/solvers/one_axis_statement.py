@@ -79,7 +79,9 @@ class OneAxis:
 def why_not_one_axis(brief: Brief) -> str | None:
     """Why the brief is no one-axis problem, None if it is."""
     sizing = sizing_of(brief)
-    if len(brief.bodies) > 1 or brief.bodies[0].free != ("z",):
+    if len(brief.bodies) > 1:
+        return "there are several bodies"
+    if brief.bodies[0].free != ("z",):
         return "the machine moves in more than the vertical"
     if brief.floor.kind != "rigid" or brief.structure is not None:
         return "the floor moves"
@@ -94,15 +96,18 @@ def why_not_one_axis(brief: Brief) -> str | None:
     kinds = [unknown.kind for unknown in sizing.unknown]
     if any(unknown.kind == "stiffness" and unknown.axis != "axial" for unknown in sizing.unknown):
         return "a lateral stiffness is unknown"
-    if not set(kinds) <= {"stiffness", "loss-factor", "viscous", "ballast"}:
+    if not set(kinds) <= {"stiffness", "loss-factor", "viscous", "ballast", "parallel"}:
         return "absorbers or positions are unknown"
     made = made_table(brief, brief.groups[0])
     both = ("viscous" in kinds or bool(made.viscous)) and ("loss-factor" in kinds or bool(made.loss_factor))
     return "viscous and loss-factor damping act together" if both else None
 
 
-def one_axis(brief: Brief, problem: Problem) -> OneAxis:
-    """The brief as a one-axis problem; `problem` is the brief's own with any parts (for its loads)."""
+def one_axis(brief: Brief, problem: Problem, every_limit: bool = False) -> OneAxis:
+    """The brief as a one-axis problem; `problem` is the brief's own with any parts, for its loads.
+
+    `every_limit`: those too that no design within the bounds can miss.
+    """
     sizing = sizing_of(brief)
     group = brief.groups[0]
     made = made_table(brief, group)
@@ -132,7 +137,9 @@ def one_axis(brief: Brief, problem: Problem) -> OneAxis:
         separation=limits.separation,
         ballast=added if free else None,
     )
-    kept = [i for i, limit in enumerate(statement.limits) if not never_binds(statement, limit)]
+    # Where the level of all limits is sought, one that holds at the level of the brief may not hold at another.
+    every_limit = every_limit or "worst-response" in (sizing.goal, *sizing.trade)
+    kept = [i for i, each in enumerate(statement.limits) if every_limit or not never_binds(statement, each)]
     stated = replace(
         statement,
         objective=objective_of(brief, statement),

@@ -38,7 +38,7 @@ def perturbed(
     )
     groups = tuple(station.name for station in stations)
     changed = brief.model_copy(update={"stations": stations, "bodies": bodies, "states": _states(brief)})
-    return changed, Design(groups, mounts, design.ballast)
+    return changed, Design(groups, mounts, design.ballast, design.stack)
 
 
 def _states(brief: Brief) -> tuple[object, ...]:

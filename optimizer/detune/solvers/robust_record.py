@@ -7,10 +7,23 @@ import numpy as np
 from detune.problem.build import Problem
 from detune.proof.record import ProofRecord, append, new_record
 from detune.response.designs import Designs
-from detune.solvers.certify import claimed
+from detune.solvers.certify_response import claimed
 from detune.solvers.outcome import Outcome
 from detune.solvers.robust import RobustResult
-from detune.solvers.verdict import DesignVerdict, Proof, ResponseProof, SeparationProof, StaticProof
+from detune.solvers.verdict import (
+    DesignVerdict,
+    NoiseProof,
+    Proof,
+    ResponseProof,
+    SeparationProof,
+    StaticProof,
+)
+
+KINDS = {
+    "ResponseProof": "scatter-response",
+    "NoiseProof": "scatter-noise",
+    "StaticProof": "scatter-static",
+}
 
 
 def proof_record(
@@ -85,15 +98,13 @@ def _candidate(record: ProofRecord, problem: Problem, position: int, verdict: De
         },
     )  # fmt: skip
     for proof, data in kept:
-        kind = {"ResponseProof": "scatter-response", "StaticProof": "scatter-static"}.get(
-            type(proof).__name__, "scatter-separation"
-        )
+        kind = KINDS.get(type(proof).__name__, "scatter-separation")
         record = append(record, kind, {"candidate": position, **data})
     return record
 
 
 def _data(proof: Proof) -> dict[str, object]:
-    if isinstance(proof, ResponseProof):
+    if isinstance(proof, (ResponseProof, NoiseProof)):
         return {
             "name": proof.name,
             "labels": list(proof.labels),

@@ -180,6 +180,8 @@ def _of(brief: Brief, stated: str | Interval | None, mount: Mount) -> tuple[floa
 
 def why_not_linear(each: StateModel, part: NDArray[np.intp]) -> str | None:
     """Return why a design in a state has no matrices for the bounds, None if it has."""
+    if each.model.floor_table is not None:
+        return "the floor's stiffness follows frequency"
     for group, index in zip(each.model.groups, part, strict=True):
         if not bool(group.arrays.plain[index]):
             return f"the stiffness of {group.mounts[index].part} follows load, frequency or amplitude"

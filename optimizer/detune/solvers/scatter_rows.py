@@ -9,11 +9,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable.base import TONE_FACTOR, HarmonicAllowable
+from detune.brief.allowable.base import TONE_FACTOR, HarmonicAllowable, Statistic
 from detune.problem.build import HarmonicRequirements
+from detune.proof.noise_data import NoiseRows, NoiseSet
 from detune.proof.scatter_data import LimitedRows, LoadSet
+from detune.response.coincidence import any_meet
+from detune.response.evaluate import Rows
 from detune.response.loads import Family, Load
 from detune.response.model import Model, find_station
+from detune.response.random import NoiseLoad
 
 Floats = NDArray[np.float64]
 
@@ -80,6 +84,8 @@ class UnitView:
             first = n + 3 * (len(self.model.stations) + number)
             if connection.on_floor:
                 out[0, first : first + 3] = np.eye(3)
+        if surface == "ground" and self.model.ground is not None:
+            raise NotBounded("it is the force that a floor between stations passes on")
         if surface == "ground" and self.model.frame.flexible_floor:
             self.ground = True
             out[..., 2] = 0.0
@@ -96,21 +102,31 @@ class ObservedRow:
     base: Floats
     rate: int
     ellipse: bool
-    factor: float
-    squares: bool
+    statistic: Statistic
+    meets: bool = False
+
+    @property
+    def factor(self) -> float:
+        """What a tone's peak counts as."""
+        return TONE_FACTOR[self.statistic]
+
+    @property
+    def squares(self) -> bool:
+        """Whether different orders and speeds add as squares; linearly where speeds can come to one frequency."""
+        return self.statistic == "rms" and not self.meets
 
 
-def observed_row(
-    model: Model, allowable: HarmonicAllowable, place: str, families: tuple[Family, ...]
-) -> ObservedRow:
-    """Return the components of a requirement. Raises NotBounded."""
+def observed_row(model: Model, allowable: HarmonicAllowable, place: str, rows: Rows) -> ObservedRow:
+    """Return the components of a requirement under the loads of `rows`. Raises NotBounded."""
     if allowable.has_weighting():
         raise NotBounded("it is weighted by frequency")
     view = UnitView(model, set())
     seen = np.asarray(allowable.observed(view, place))[0]
     if len(view.rates) != 1:
         raise NotBounded("it mixes displacement with its derivatives")
-    if view.ground and any(load.base is not None for f in families for loads in f.sets for load in loads):
+    loads = [load for family in rows.families for loads in family.sets for load in loads]
+    loads += [each.load for each in rows.noises]
+    if view.ground and any(load.base is not None for load in loads):
         raise NotBounded("it is the force into the ground under a moved flexible floor")
     along = allowable.along()
     if along is not None:
@@ -122,8 +138,8 @@ def observed_row(
         base=np.ascontiguousarray(seen[-3:].T),
         rate=view.rates.pop(),
         ellipse=statistic != "rms",
-        factor=TONE_FACTOR[statistic],
-        squares=statistic == "rms",
+        statistic=statistic,
+        meets=any_meet(rows.families),
     )
 
 
@@ -141,6 +157,30 @@ def limited_rows(
         limit=limits,
         sets=tuple(_load_set(group.model, loads, rows) for loads in family.sets),
         speed=(family.low, family.high),
+    )
+
+
+def noise_rows(
+    model: Model, noises: tuple[NoiseLoad, ...], rows: list[ObservedRow], limits: Floats, forcing: float
+) -> NoiseRows:
+    """Return the rows under noise with limits (R,); forcing: factor of the greatest amplitude."""
+    counted: dict[Statistic, float] = {"rms": 1.0, "3-sigma": 3.0, "peak": 1.0, "peak-to-peak": 2.0}
+    return NoiseRows(
+        rows=np.stack([row.rows for row in rows]),
+        forces=np.stack([row.forces for row in rows]),
+        rate=np.array([row.rate for row in rows], dtype=np.float64),
+        factor=forcing * np.array([counted[row.statistic] for row in rows]),
+        extreme=np.array([row.statistic in ("peak", "peak-to-peak") for row in rows]),
+        duration=max(each.noise.duration for each in noises),
+        limit=limits,
+        sets=tuple(
+            NoiseSet(
+                _load_set(model, (each.load,), rows),
+                each.noise.spectrum.frequency,
+                each.noise.spectrum.density,
+            )
+            for each in noises
+        ),
     )
 
 

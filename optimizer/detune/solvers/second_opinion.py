@@ -15,6 +15,7 @@ from detune.ground.errors import SolveError
 from detune.problem.build import Problem
 from detune.problem.stages import objective_values
 from detune.response.designs import Designs
+from detune.response.prices import has_breaks
 from detune.solvers.final_test import FinalTest
 from detune.solvers.interrupt import Stop, stop_on_interrupt
 from detune.solvers.outcome import Outcome, Progress, ProofRecord, RuleCount, Settings, Stopped
@@ -52,10 +53,14 @@ def refusal(problem: Problem) -> str | None:
     sizes = [len(group.mounts) for group in problem.model.groups]
     if problem.brief.objectives.trade[0] != "cost":
         return "it looks for the least cost, and the brief puts another objective first"
+    if problem.model.floor_table is not None:
+        return "the floor's stiffness follows frequency"
     if any(group.laws is not None for group in problem.model.groups):
         return "some parts' stiffness follows load, frequency or amplitude, which it does not state"
-    if any(mount.cost_breaks for group in problem.model.groups for mount in group.mounts):
+    if any(has_breaks(group.mounts) for group in problem.model.groups):
         return "prices fall with the quantity bought, which it does not state"
+    if problem.model.absorbers:
+        return "an absorber's mass depends on the part, which it does not state"
     if max(sizes) > MOST_PARTS or len(sizes) > MOST_GROUPS or len(problem.model.ballast_mass) > MOST_STEPS:
         return (
             f"it is a check on small problems: up to {MOST_PARTS} parts for each of {MOST_GROUPS} groups and "

@@ -4,8 +4,10 @@ What the arrays cannot state (resultants, sums over orders, suprema between samp
 out there and decided by the final test, so a design the search discards is rightly discarded.
 """
 
+import itertools
 import math
 from collections.abc import Callable
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -27,6 +29,8 @@ from detune.proof.selection_data import (
     Selection,
     StaticRows,
 )
+from detune.response.absorbers import geometric_of, mass_of, spare_damping, spare_stiffness, weight_of
+from detune.response.designs import Designs
 from detune.response.loads import Family, Load
 from detune.response.model import Model
 from detune.response.prices import bought_stations, has_breaks, least_costs, quantity_prices
@@ -41,6 +45,8 @@ RATES = {"displacement": 0, "velocity": 1, "acceleration": 2}
 
 def why_not(problem: Problem) -> str | None:
     """Return why a problem has no selection arrays, None if it has."""
+    if problem.model.floor_table is not None:
+        return "the floor's stiffness follows frequency, for which the bounds do not hold"
     if any(group.laws is not None for group in problem.model.groups):
         return "some parts' stiffness follows load, frequency or amplitude, for which the bounds do not hold"
     if problem.exempt_amplification is not None:
@@ -48,39 +54,86 @@ def why_not(problem: Problem) -> str | None:
     return None
 
 
-def selection_of(problem: Problem, step: int) -> Selection:
-    """Return the arrays of a problem at one ballast step, as installed.
+@dataclass(frozen=True)
+class Case:
+    """One ballast step and one part for every absorber, as (group, part): what decides the masses of a search."""
 
-    One step at a time, because gravity's geometric stiffness changes with it. Stations with parts in parallel are
-    written as that many stations.
+    step: int
+    fixed: tuple[tuple[int, int], ...] = ()
+
+    def parts(self, found: tuple[int, ...]) -> tuple[int, ...]:
+        """Return the parts of a design found in this case, whose absorbers have one part alone."""
+        known = dict(self.fixed)
+        return tuple(known.get(group, part) for group, part in enumerate(found))
+
+
+def cases_of(problem: Problem) -> tuple[Case, ...]:
+    """Return every case of a problem."""
+    model = problem.model
+    groups = [absorber.group for absorber in model.absorbers]
+    every = itertools.product(*(range(len(model.groups[group].mounts)) for group in groups))
+    chosen = [tuple(zip(groups, parts, strict=True)) for parts in every]
+    return tuple(Case(step, fixed) for step in range(len(model.ballast_mass)) for fixed in chosen)
+
+
+def selection_of(problem: Problem, step: int, fixed: tuple[tuple[int, int], ...] = ()) -> Selection:
+    """Return the arrays of a problem at one ballast step, as installed; `fixed` holds the part of each absorber.
+
+    One step and one choice of absorbers at a time, because mass and gravity's geometric stiffness change with them.
+    Stations with parts in parallel are written as that many stations.
     """
     model = problem.model
+    one = Designs(np.zeros((1, len(model.groups)), dtype=np.intp), np.array([step], dtype=np.intp))
+    for number, part in fixed:
+        one.part[0, number] = part
     place = [number for number, station in enumerate(model.stations) for _ in range(station.parallel)]
     rows = np.array([model.stations[number].rows for number in place])
     group = np.array([model.stations[number].group for number in place])
-    own = model.geometric[step] if model.with_gravity_stiffness else np.zeros_like(model.fixed_dynamic)
+    spare = np.zeros_like(model.fixed_dynamic) + spare_stiffness(model, one)
+    spare = spare.reshape(model.fixed_dynamic.shape)
+    own = spare + geometric_of(model, one)[0] if model.with_gravity_stiffness else spare
+    lossy = (model.fixed_viscous + spare_damping(model, one)).reshape(spare.shape)
     return Selection(
         stations=rows,
         station_group=group,
         support_sign=-np.ones(len(place)),
-        groups=tuple(_parts(problem, index) for index in range(len(model.groups))),
-        ballast=BallastSteps(model.mass[[step]], model.weight[[step]], model.ballast_cost[[step]]),
+        groups=tuple(
+            _only(_parts(problem, index), dict(fixed).get(index)) for index in range(len(model.groups))
+        ),
+        ballast=BallastSteps(mass_of(model, one), weight_of(model, one), model.ballast_cost[[step]]),
         fixed=FixedStiffness(
-            model.fixed_static, model.fixed_dynamic + own, model.fixed_hysteretic, model.fixed_viscous
+            model.fixed_static + spare, model.fixed_dynamic + own, model.fixed_hysteretic, lossy
         ),
         bands=_bands(problem),
         static_rows=_static_rows(problem),
         harmonic=_harmonic(problem, rows),
-        whole_cost=_whole_cost(problem, step),
+        whole_cost=_whole_cost(problem, step, fixed),
     )
 
 
-def _whole_cost(problem: Problem, step: int) -> Callable[[Integers], Floats] | None:
+def _only(parts: GroupParts, chosen: int | None) -> GroupParts:
+    """Return the parts of a group, or the one that is fixed."""
+    if chosen is None:
+        return parts
+    arrays = {name: getattr(parts, name)[[chosen]] for name in vars(parts) if name != "count"}
+    return replace(parts, **arrays)
+
+
+def _whole_cost(
+    problem: Problem, step: int, fixed: tuple[tuple[int, int], ...]
+) -> Callable[[Integers], Floats] | None:
     """Return the cost of whole designs where prices fall with the quantity; what `total_cost` says of them."""
     prices, extra = quantity_prices(problem.model), float(problem.model.ballast_cost[step])
     if prices is None:
         return None
-    return lambda numbers: extra + prices.cost(np.asarray(numbers[:, :-1], dtype=np.intp))
+
+    def cost(numbers: Integers) -> Floats:
+        part = np.array(numbers[:, :-1], dtype=np.intp)
+        for group, chosen in fixed:
+            part[:, group] = chosen
+        return extra + prices.cost(part)
+
+    return cost
 
 
 def _parts(problem: Problem, index: int) -> GroupParts:

@@ -8,13 +8,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
+from detune.brief.mass_properties import mass_properties
 from detune.problem.build import Problem, with_parts
 from detune.problem.requirement import Requirement
 from detune.problem.stages import Stage, objective_values, stages
 from detune.response.designs import Designs
 from detune.response.direct import DirectMachine
 from detune.response.direct_views import DirectStatic
-from detune.sizing.made_parts import Made, changes_brief, made_design, sizing_of
+from detune.sizing.made_parts import OF_MACHINE, Made, changes_brief, made_design, sizing_of
 
 Floats = NDArray[np.float64]
 # A margin of infinity (nothing limited) is shown and compared as this.
@@ -44,15 +45,15 @@ class Judged:
 def judge(brief: Brief, values: Floats) -> Judged:
     """Margins and objectives at points `values` (N, u). Raises BriefError where the machine is not held."""
     if not changes_brief(brief):
-        return _judge_alike(brief, [made_design(brief, row) for row in values])
+        return judge_alike(brief, [made_design(brief, row) for row in values])
     # Points that share absorber mass and positions stand in one machine and are judged together.
-    machine = [k for k, u in enumerate(sizing_of(brief).unknown) if u.kind in ("absorber-mass", "position")]
+    machine = [k for k, u in enumerate(sizing_of(brief).unknown) if u.kind in OF_MACHINE]
     _, which = np.unique(values[:, machine], axis=0, return_inverse=True)
     groups = [np.flatnonzero(which.ravel() == number) for number in range(int(which.max()) + 1)]
     parts = []
     for group in groups:
         made = [made_design(brief, row) for row in values[group]]
-        parts.append(_judge_alike(made[0].brief, made))
+        parts.append(judge_alike(made[0].brief, made))
     back = np.argsort(np.concatenate(groups), kind="stable")
     names = parts[0].objectives
     return Judged(
@@ -62,7 +63,7 @@ def judge(brief: Brief, values: Floats) -> Judged:
     )
 
 
-def _judge_alike(brief: Brief, made: list[Made]) -> Judged:
+def judge_alike(brief: Brief, made: list[Made]) -> Judged:
     """Judge designs that stand in one and the same brief, but for their ballast."""
     problem, designs = batch(brief, made)
     requirements: list[Requirement] = []
@@ -76,6 +77,7 @@ def _judge_alike(brief: Brief, made: list[Made]) -> Judged:
     found["worst-response"] = 1.0 / np.maximum(1.0 + response_margin(tuple(requirements), margins), 1e-12)
     found["stiffness"] = _sums(problem, made, "stiffness")
     found["damping"] = _sums(problem, made, "damping")
+    found["absorber-mass"] = np.full(len(made), absorber_mass(brief))
     return Judged(tuple(requirements), margins, found)
 
 
@@ -86,6 +88,12 @@ def response_margin(requirements: tuple[Requirement, ...], margins: Floats) -> F
     forms = (HarmonicAllowable, BandAllowable)
     rows = [i for i, r in enumerate(requirements) if isinstance(r.allowable, forms)]
     return np.asarray(margins[rows].min(axis=0))
+
+
+def absorber_mass(brief: Brief) -> float:
+    """Mass in kg of the bodies whose mass is an unknown."""
+    named = {unknown.body for unknown in sizing_of(brief).unknown if unknown.kind == "absorber-mass"}
+    return sum(mass_properties(body).mass for body in brief.bodies if body.name in named)
 
 
 def _sums(problem: Problem, made: list[Made], what: str) -> Floats:
@@ -150,3 +158,23 @@ def static_loads(made: Made) -> tuple[tuple[str, float], ...]:
     """Group and static axial load (N, compression positive) of one part at every station of a design."""
     static = DirectStatic(DirectMachine(made.brief, made.design))
     return tuple((s.group, float(-static.station_load(s.name)[0][2])) for s in made.brief.stations)
+
+
+def margins_of(
+    brief: Brief, values: Floats, wanted: tuple[Requirement, ...]
+) -> tuple[tuple[Requirement, ...], Floats]:
+    """Some requirements and their margins (R, N) at points `values` (N, u), as `judge` finds them."""
+    columns: list[Floats] = []
+    told: list[Requirement] = []
+    for row in values if changes_brief(brief) else values[None]:
+        made = [made_design(brief, each) for each in np.atleast_2d(row)]
+        problem, designs = batch(made[0].brief, made)
+        told, rows = [], []
+        for stage in exact_stages(problem):
+            kept = [i for i, r in enumerate(stage.requirements) if r in wanted]
+            if kept:
+                told += [stage.requirements[i] for i in kept]
+                rows.append(_margins(stage, designs)[kept])
+        columns.append(np.concatenate(rows))
+    margins = np.nan_to_num(np.concatenate(columns, axis=1), nan=-1.0)
+    return tuple(told), np.clip(margins, -1.0, LARGEST)

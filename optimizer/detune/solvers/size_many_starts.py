@@ -11,7 +11,10 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
 from detune.sizing.made_parts import bounds, logarithmic, sizing_of
+from detune.physics.unsupported import UnsupportedMachine
 from detune.solvers.size_batch import Judged, judge, response_margin
+from detune.solvers.size_gradients import Gradients, Sides, prepared, sides
+from detune.solvers.size_slopes import ROOM, Handed, handed
 
 Floats = NDArray[np.float64]
 WORTH = "best of many local searches from seeded starts; not proven global"
@@ -19,9 +22,7 @@ STEP = 1e-4
 # Margins beyond this never bind and are flattened.
 FAR = 3.0
 MET = -1e-6
-# The search keeps this margin, so that rounding of two ways to the same number does not decide.
-ROOM = 1e-5
-# A minimax creeps along the edge between two peaks; further iterations gain nothing.
+# Differenced, a minimax creeps along the edge between two peaks; further iterations gain nothing.
 MINIMAX = 25
 EXTRA = ("worst-response", "separation")
 
@@ -41,6 +42,8 @@ class ManyStarts:
     """Every local search, best first; those that missed a requirement last. `evaluations` counts designs judged.
 
     `spread` (best, median, worst) of the objective and `near`, the share within 1 % of the best, over those that met.
+    `slopes` counts points at which slopes were found; `slopes_from` says how; `differenced` names the requirements whose
+    rows were differenced because they have no adjoint.
     """
 
     searches: tuple[LocalSearch, ...]
@@ -48,6 +51,9 @@ class ManyStarts:
     spread: tuple[float, float, float]
     near: float
     evaluations: int
+    slopes: int = 0
+    slopes_from: str = "adjoint"
+    differenced: tuple[str, ...] = ()
     worth: str = WORTH
 
     @property
@@ -75,12 +81,19 @@ class Coordinates:
         raw = low + np.clip(y, 0.0, 1.0) * (high - low)
         return np.clip(np.where(self.logs, np.exp(np.where(self.logs, raw, 0.0)), raw), self.low, self.high)
 
+    def scale(self, values: Floats) -> Floats:
+        """How values (u,) in SI change with their coordinates."""
+        low, high = self._scale(self.low), self._scale(self.high)
+        return np.asarray((high - low) * np.where(self.logs, values, 1.0))
+
     def _scale(self, values: Floats) -> Floats:
         return np.where(self.logs, np.log(np.where(self.logs, values, 1.0)), values)
 
 
-class _Functions:
-    """Objective and margins with their slopes by one batch of designs at each point."""
+class _Differenced:
+    """Objective and margins with their slopes by one batch of a design and its neighbours at each point."""
+
+    way = "finite differences"
 
     def __init__(self, brief: Brief, goal: str, sense: float, held: dict[str, float]) -> None:
         self.brief, self.goal, self.sense, self.held = brief, goal, sense, held
@@ -107,7 +120,7 @@ class _Functions:
         # Steps go inward at the upper bound.
         step = np.where(x + STEP <= 1.0, STEP, -STEP)
         found = self.at(np.concatenate([x[None], x + np.diag(step)]))
-        rows = self._rows(found)
+        rows = self.rows_of(found)
         slopes = (rows[:, 1:] - rows[:, :1]) / step
         if self.extra:
             slopes = np.column_stack([slopes, np.zeros(len(rows))])
@@ -119,7 +132,7 @@ class _Functions:
                 rows[-1, 0] -= y[-1]
         self.values, self.slopes = rows[:, 0], slopes
 
-    def _rows(self, found: Judged) -> Floats:
+    def rows_of(self, found: Judged) -> Floats:
         """What must not be negative: margins, levels held, and last the row of the extra variable."""
         margins = found.margins
         if self.goal == "worst-response":
@@ -142,6 +155,16 @@ class _Functions:
         else:
             self.target = found.objectives[self.goal]
         return np.concatenate(rows)
+
+    def start(self, y: Floats) -> tuple[Floats, list[tuple[float, float | None]]]:
+        """The variables at coordinates y, and their bounds."""
+        limits: list[tuple[float, float | None]] = [(0.0, 1.0)] * self.size
+        if not self.extra:
+            return y, limits
+        level = float(self.at(y[None]).objectives[self.goal][0])
+        worst = self.goal == "worst-response"
+        limits.append((0.0, None) if worst else (-1.0, FAR))
+        return np.append(y, min(level, 1e3) if worst else max(min(level, FAR), -1.0)), limits
 
     def objective(self, y: Floats) -> float:
         if self.extra:
@@ -168,6 +191,56 @@ class _Functions:
         return self.slopes
 
 
+class _Adjoint(_Differenced):
+    """Objective and rows with slopes by adjoint; only requirements without one are differenced, in their own rows."""
+
+    way = "adjoint"
+
+    def __init__(self, brief: Brief, goal: str, sense: float, held: dict[str, float], found: Gradients) -> None:
+        super().__init__(brief, goal, sense, held)
+        self.gradients = found
+        self.sides: Sides = ()
+        self.last: Handed | None = None
+        self.slopes_found = 0
+
+    def refresh(self, y: Floats) -> None:
+        if y.tobytes() == self.key:
+            return
+        values = self.to.outward(np.clip(y[: self.size], 0.0, 1.0))
+        level = float(y[-1]) if self.extra else 0.0
+        self.last = handed(
+            self.gradients, values, self.to.scale(values), self.sides, self.goal, self.held, level
+        )
+        self.key = y.tobytes()
+        self.slopes_found += 1
+        self.values, self.slopes = self.last.rows, self.last.slopes
+
+    def start(self, y: Floats) -> tuple[Floats, list[tuple[float, float | None]]]:
+        limits: list[tuple[float, float | None]] = [(0.0, 1.0)] * self.size
+        self.key = b""
+        self.sides = sides(self.gradients, self.to.outward(y))
+        if not self.extra:
+            return y, limits
+        level = float(self.at(y[None]).objectives[self.goal][0])
+        if self.goal == "worst-response":
+            return np.append(y, np.log(min(max(level, 1e-8), 1e6))), [*limits, (None, None)]  # type: ignore[list-item]
+        return np.append(y, max(min(level, FAR), -1.0)), [*limits, (-1.0, FAR)]
+
+    def objective(self, y: Floats) -> float:
+        if self.extra:
+            return float(y[-1]) if self.goal == "worst-response" else -float(y[-1])
+        self.refresh(y)
+        assert self.last is not None
+        return self.sense * self.last.goal / self.unit
+
+    def objective_slope(self, y: Floats) -> Floats:
+        if self.extra:
+            return super().objective_slope(y)
+        self.refresh(y)
+        assert self.last is not None and self.last.goal_slopes is not None
+        return np.asarray(self.sense * self.last.goal_slopes / self.unit)
+
+
 def start_points(size: int, starts: int, seed: int) -> Floats:
     """Latin hypercube (starts, u) in coordinates."""
     rng = np.random.default_rng(seed)
@@ -184,16 +257,21 @@ def solve(
     seed: int,
     first: tuple[Floats, ...] = (),
     held: dict[str, float] | None = None,
-    iterations: int = 40,
+    iterations: int = 80,
     pool: int = 12,
+    adjoint: bool = True,
     interrupted: Callable[[], bool] | None = None,
 ) -> ManyStarts:
     """Best of `starts` local searches; the starts are the least-violating share of `pool` times as many points.
 
     `first` are values (u,) to start from besides; `held` holds other objectives at levels (upper ones; separation
-    lower). The points are drawn with `seed`: the same call gives the same answer.
+    lower). The points are drawn with `seed`: the same call gives the same answer. Without `adjoint` every slope is
+    differenced.
     """
-    functions = _Functions(brief, goal, sense, held or {})
+    functions = _Differenced(brief, goal, sense, held or {})
+    # A whole number of parts has no slopes.
+    if adjoint and all(u.kind != "parallel" or u.bounds[0] == u.bounds[1] for u in sizing_of(brief).unknown):
+        functions = _Adjoint(brief, goal, sense, held or {}, prepared(brief))
     drawn = start_points(functions.size, starts * pool, seed)
     judged = functions.at(drawn)
     order = np.argsort(-np.minimum(judged.margins, 0.0).sum(axis=0), kind="stable")
@@ -211,7 +289,7 @@ def solve(
     return gather(functions, done, sense)
 
 
-def gather(functions: _Functions, done: list[LocalSearch], sense: float) -> ManyStarts:
+def gather(functions: _Differenced, done: list[LocalSearch], sense: float) -> ManyStarts:
     """Order the searches and tell their spread."""
     good = sorted((s for s in done if s.least_margin >= MET), key=lambda s: sense * s.objective)
     bad = sorted((s for s in done if s.least_margin < MET), key=lambda s: -s.least_margin)
@@ -221,36 +299,49 @@ def gather(functions: _Functions, done: list[LocalSearch], sense: float) -> Many
         values = np.array([s.objective for s in good])
         spread = (float(values[0]), float(np.median(values)), float(values[-1]))
         near = float(np.mean(np.abs(values - values[0]) <= 0.01 * abs(values[0])))
-    return ManyStarts((*good, *bad), len(good), spread, near, functions.count)
+    found: tuple[int, tuple[str, ...]] = (0, ())
+    if isinstance(functions, _Adjoint):
+        found = functions.slopes_found, tuple(dict.fromkeys(r.label for r in functions.gradients.differenced))
+    return ManyStarts((*good, *bad), len(good), spread, near, functions.count, found[0], functions.way, found[1])
 
 
-def _search(functions: _Functions, y: Floats, iterations: int) -> LocalSearch:
+def _search(functions: _Differenced, y: Floats, iterations: int) -> LocalSearch:
+    found = _descended(functions, y, iterations)
+    if isinstance(functions, _Adjoint) and found.least_margin < MET:
+        # Modes are held to the sides they had at the start; from where it ended they may lie on others.
+        again = functions.to.inward(found.values)
+        if sides(functions.gradients, found.values) != functions.sides:
+            found = max(found, _descended(functions, again, iterations), key=lambda s: s.least_margin)
+    return found
+
+
+def _descended(functions: _Differenced, y: Floats, iterations: int) -> LocalSearch:
     from scipy.optimize import minimize
 
-    limits: list[tuple[float, float | None]] = [(0.0, 1.0)] * functions.size
-    start = y
-    if functions.extra:
-        here = functions.at(y[None])
-        level = float(here.objectives[functions.goal][0])
-        start = np.append(
-            y, min(level, 1e3) if functions.goal == "worst-response" else max(min(level, FAR), -1.0)
-        )
-        limits.append((0.0, None) if functions.goal == "worst-response" else (-1.0, FAR))
     rows: dict[str, Any] = {"type": "ineq", "fun": functions.constraint, "jac": functions.constraint_slope}
-    with np.errstate(all="ignore"):
-        found = minimize(
-            functions.objective, start, method="SLSQP", jac=functions.objective_slope, bounds=limits,
-            constraints=[rows],
-            options={"maxiter": min(iterations, MINIMAX) if functions.extra else iterations, "ftol": 1e-9},
-        )  # fmt: skip
-    x = np.clip(np.asarray(found.x[: functions.size]), 0.0, 1.0)
+    creeps = functions.extra and functions.way != "adjoint"
+    options = {"maxiter": min(iterations, MINIMAX) if creeps else iterations, "ftol": 1e-9}
+    try:
+        start, limits = functions.start(y)
+        with np.errstate(all="ignore"):
+            found = minimize(
+                functions.objective, start, method="SLSQP", jac=functions.objective_slope, bounds=limits,
+                constraints=[rows], options=options,
+            )  # fmt: skip
+        end, word = np.asarray(found.x[: functions.size]), str(found.message)
+    except (np.linalg.LinAlgError, UnsupportedMachine) as error:
+        end, word = y, f"stopped where the machine is not held: {error}"
+    return _judged(functions, np.clip(end, 0.0, 1.0), word)
+
+
+def _judged(functions: _Differenced, x: Floats, word: str) -> LocalSearch:
     judged = functions.at(x[None])
     least = float(judged.margins[:, 0].min())
     for name, level in functions.held.items():
         over = float(judged.objectives[name][0])
         least = min(least, over - level if name == "separation" else 1.0 - over / max(level, 1e-9))
     if functions.goal == "worst-response":
-        rows_kept = functions._rows(judged)[:-1, 0]
+        rows_kept = functions.rows_of(judged)[:-1, 0]
         least = float(rows_kept.min(initial=0.0)) + ROOM
     values = functions.to.outward(x)
-    return LocalSearch(values, float(judged.objectives[functions.goal][0]), least, str(found.message))
+    return LocalSearch(values, float(judged.objectives[functions.goal][0]), least, word)

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
 from detune.problem.build import Problem
-from detune.sizing.made_parts import sizing_of
+from detune.sizing.made_parts import parallel_range, sizing_of, with_parallel
 from detune.sizing.one_axis import OneAxisOutcome, SizedDesign, solve_one_axis
 from detune.sizing.statement import OneAxisProblem, ResponseLimit
 from detune.solvers.one_axis_statement import OneAxis, one_axis, why_not_one_axis
@@ -50,10 +50,49 @@ class OneAxisSizing:
 
 
 def solve(brief: Brief, problem: Problem) -> OneAxisSizing | str:
-    """The exact answer, or why the brief is no one-axis problem."""
+    """The exact answer, or why the brief is no one-axis problem.
+
+    A number of parts side by side that is sought is tried from the least to the greatest, each answer exact.
+    """
     why = why_not_one_axis(brief)
     if why is not None:
         return why
+    counts = parallel_range(brief)
+    if counts is None:
+        return _solve(brief, problem)
+    return _best_count(brief, [_solve(with_parallel(brief, n), problem) for n in range(counts[0], counts[1] + 1)])
+
+
+def _best_count(brief: Brief, found: list[OneAxisSizing]) -> OneAxisSizing:
+    """The answers for every number of parts as one: branches, best first, and the best of the bounds.
+
+    Of ballast in steps the best of each position of the natural frequency is kept, unless the assessor has to decide.
+    """
+    sense = sizing_of(brief).sense
+    column = next(k for k, u in enumerate(sizing_of(brief).unknown) if u.kind == "parallel")
+    told = [
+        replace(branch, name=f"{branch.name}, {round(branch.values[column])} in parallel")
+        for each in found
+        for branch in (each.branches if each.statement.relaxed else _of_positions(each.branches))
+    ]
+    bound = sense * min(sense * each.bound for each in found)
+    if not told:
+        return replace(found[0], bound=bound)
+    branches = tuple(sorted(told, key=lambda branch: sense * branch.objective))
+    best = min((each for each in found if each.branches), key=lambda each: sense * each.branches[0].objective)
+    return OneAxisSizing(best.statement, branches, bound, max(0.0, sense * (branches[0].objective - bound)))
+
+
+def _of_positions(branches: tuple[SizedBranch, ...]) -> tuple[SizedBranch, ...]:
+    """The first branch of each position among the excitations."""
+    first: dict[str, SizedBranch] = {}
+    for branch in branches:
+        first.setdefault(branch.name.split(", ballast")[0], branch)
+    return tuple(first.values())
+
+
+def _solve(brief: Brief, problem: Problem) -> OneAxisSizing:
+    """The exact answer to a one-axis brief whose number of parts is known."""
     statement = one_axis(brief, problem)
     if sizing_of(brief).goal == "worst-response":
         level, outcome = least_level(statement.problem)
@@ -112,6 +151,7 @@ def values_of(brief: Brief, pieces: int, design: SizedDesign) -> Floats:
         "viscous": design.damping / pieces,
         "loss-factor": design.damping,
         "ballast": design.ballast,
+        "parallel": pieces / len(brief.stations),
     }
     unknowns = sizing_of(brief).unknown
     return np.array([np.clip(given[unknown.kind], *unknown.bounds) for unknown in unknowns])

@@ -4,6 +4,7 @@ from dataclasses import dataclass, field
 from typing import Literal
 
 from detune.proof.combined_bisect import RowsDecision
+from detune.proof.noise_data import NoiseRows
 from detune.proof.scatter_data import LimitedRows, ScatterSystem
 from detune.proof.static_rows import StaticLimits, StaticRowsDecision
 
@@ -61,6 +62,17 @@ class ResponseProof:
 
 
 @dataclass(frozen=True, eq=False)
+class NoiseProof:
+    """Response rows under noise decided."""
+
+    name: str
+    labels: tuple[str, ...]
+    system: ScatterSystem
+    limits: NoiseRows
+    decision: RowsDecision
+
+
+@dataclass(frozen=True, eq=False)
 class StaticProof:
     """Static rows decided."""
 
@@ -82,7 +94,7 @@ class SeparationProof:
     worst: float
 
 
-Proof = ResponseProof | StaticProof | SeparationProof
+Proof = ResponseProof | NoiseProof | StaticProof | SeparationProof
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,9 +1,9 @@
 """Yield: the share of machines that meet the brief when parts, machine and forcing scatter by a distribution.
 
 Points come from a scrambled Sobol sequence (scipy.stats.qmc). Every requirement the bounds know is evaluated exactly
-at a grid of speeds with the natural frequencies in it and a parabola through the greatest samples, the others by the
-assessor at each sample. The interval of confidence is that of Clopper and Pearson (Biometrika 26, 1934) for
-independent trials, which is on the safe side for a Sobol sequence as a rule, not by proof.
+at a grid of speeds with the natural frequencies in it and a parabola through the greatest samples, noise by quadrature
+to 1e-4, the others by the assessor at each sample. The interval of confidence is that of Clopper and Pearson
+(Biometrika 26, 1934) for independent trials, which is on the safe side for a Sobol sequence as a rule, not by proof.
 """
 
 from dataclasses import dataclass
@@ -15,11 +15,12 @@ from detune.brief.allowable.separation import Separation
 from detune.brief.allowable.stability import Stability
 from detune.problem.build import Problem
 from detune.problem.requirement import Requirement
+from detune.proof.noise_values import noise_values_at
 from detune.proof.scatter_data import LimitedRows, ScatterSystem, values_at
 from detune.proof.static_rows import static_values_at
 from detune.response.assess import assess
 from detune.solvers.certify_statics import StaticRow, modes_at, stability_worst
-from detune.solvers.design_rows import DesignRows, StaticGroup
+from detune.solvers.design_rows import NOT_KNOWN, DesignRows, StaticGroup
 from detune.solvers.perturbed import perturbed
 from detune.solvers.scatter_machine import ScatterMap
 
@@ -99,6 +100,7 @@ def design_yield(problem: Problem, part: NDArray[np.intp], step: int) -> Yield:
     statics, separations, responses = rows.statics(), rows.separations(), rows.responses()
     for group in statics:
         rows.unknown += [(requirement, "judged sample by sample") for requirement in _unstable(rows, group)]
+    rows.unknown += [(requirement, NOT_KNOWN) for requirement in rows.unasked()]
     count = min(scatter.sample_count, SLOW_SAMPLES) if rows.unknown else scatter.sample_count
     points, forcing = sample_points(rows.map, scatter.distribution, count)
     missed: dict[str, Flags] = {}
@@ -124,6 +126,11 @@ def design_yield(problem: Problem, part: NDArray[np.intp], step: int) -> Yield:
             value = value if found.largest else value * forcing[:, None]
             both = np.where(limited.squares, np.hypot(total, value), total + value)
             total = np.maximum(total, value) if found.largest else both
+        noise = found.noise(np.ones(len(found.requirements)), 1.0)
+        if noise is not None:
+            value = noise_values_at(found.system, noise, points) * forcing[:, None]
+            squares = np.array([row.squares for row in found.observed])
+            total = np.where(squares, np.hypot(total, value), total + value)
         adds, limit = rows.static_parts(found, points)
         for index, requirement in enumerate(found.requirements):
             note(requirement.label, ~(total[:, index] + adds[:, index] <= limit[:, index]))

@@ -9,6 +9,7 @@ from typing import Any
 from detune.brief.brief import Brief
 from detune.brief.choice import CatalogSource
 from detune.brief.cross_check import cross_check
+from detune.brief.dwell import without_barred
 from detune.brief.finding import faults_without_lines
 from detune.brief.read import scan_data, to_fault
 from detune.ground.errors import BriefError, Fault
@@ -58,7 +59,8 @@ def study_of(brief: Brief) -> Study:
     faults += faults_without_lines(brief.file, findings)
     if faults:
         raise BriefError(dict.fromkeys(faults))
-    return Study(brief, catalogs, _hashes(brief, catalogs, None), brief.model_dump_json(indent=2))
+    source = brief.model_dump_json(indent=2)
+    return Study(without_barred(brief), catalogs, _hashes(brief, catalogs, None), source)
 
 
 def _catalogs(
@@ -107,5 +109,6 @@ def _hashes(brief: Brief, catalogs: Mapping[str, Catalog], study: Path | None) -
         files += [Path(name) for name in catalogs[source.name].further_files]
     named = [name for forcing in brief.forcing for name in forcing.data_files()]
     named += [name for allowable in brief.allowables for name in allowable.data_files()]
+    named += brief.floor.data_files()
     files += [brief.folder / name for name in dict.fromkeys(named)]
     return tuple((file.name, hashlib.sha256(file.read_bytes()).hexdigest()) for file in files)

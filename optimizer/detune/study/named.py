@@ -1,9 +1,5 @@
 """A design the user names: `group=part` pairs and the ballast."""
 
-import re
-from collections.abc import Sequence
-from typing import TypeVar
-
 from detune.brief.brief import Brief
 from detune.ground.errors import BriefError, Fault, nearest_name
 from detune.ground.units import UnitError, parse
@@ -12,15 +8,24 @@ from detune.parts.compose import EMPTY, damper_refused, empty_station, in_parall
 from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Mount
 from detune.problem.candidates import lateral_missing
+from detune.response.ballast import BallastStep
 from detune.response.design import Design
-
-SOURCE = "--design"
-SEVERAL = re.compile(r"(?P<count>\d+) *[x×] +(?P<part>.+)", re.ASCII)
-Part = TypeVar("Part", Mount, Damper)
+from detune.study.named_rows import (
+    SEVERAL,
+    SOURCE,
+    named_absorber,
+    named_pad,
+    named_stack,
+    of_name,
+    one_named,
+)
 
 
 def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Design:
     """Return the design written as "group=part, group=2 x part + damper, group=(empty), ballast=40 kg".
+
+    A pad is written with its size, "sheet 80 x 120 mm"; an absorber under its own name; ballast of a list in pieces,
+    "ballast=3 x piece".
 
     Every part of every catalog of the study may be named, filters or not, in any number and with any damper: the
     design is one the user has in mind, and is judged like any other. A number that several catalogs have is
@@ -29,6 +34,9 @@ def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Desig
     faults: list[Fault] = []
     chosen: dict[str, Mount | None] = {}
     ballast: float | None = None
+    stack: BallastStep | None = None
+    pieces_due = brief.ballast is not None and bool(brief.ballast.catalogs)
+    absorbers = {absorber.name for absorber in brief.absorbers}
     seen: list[str] = []
     for piece in (piece.strip() for piece in text.split(",")):
         key, equals, value = (side.strip() for side in piece.partition("="))
@@ -36,8 +44,13 @@ def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Desig
             faults.append(Fault(SOURCE, None, piece, piece, 'pieces such as "group=part" or "ballast=40 kg"'))
         elif key in seen:
             faults.append(Fault(SOURCE, None, key, value, f"each group once; {key} stands here twice"))
+        elif key in absorbers:
+            chosen[key] = named_absorber(catalogs, key, value, faults)
         elif key in brief.groups:
             chosen[key] = _part(catalogs, key, value, faults)
+        elif key == "ballast" and pieces_due:
+            stack = named_stack(brief, catalogs, value, faults)
+            ballast = None if stack is None else stack.mass
         elif key == "ballast":
             ballast = _ballast(brief, value, faults)
         else:
@@ -49,7 +62,10 @@ def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Desig
     for group in brief.groups:
         if group not in chosen:
             faults.append(Fault(SOURCE, None, group, "", f'a part for group "{group}", as "{group}=part"'))
-    if brief.ballast is not None and "ballast" not in seen:
+    if pieces_due and "ballast" not in seen:
+        expected = 'the ballast, as "ballast=2 x part" or "ballast=(empty)"'
+        faults.append(Fault(SOURCE, None, "ballast", "", expected))
+    elif brief.ballast is not None and "ballast" not in seen:
         steps = ", ".join(f"{step:g} kg" for step in brief.ballast.steps)
         faults.append(Fault(SOURCE, None, "ballast", "", f'the ballast, as "ballast=40 kg" (steps: {steps})'))
     mounts = tuple(mount for mount in (chosen.get(group) for group in brief.groups) if mount is not None)
@@ -58,13 +74,13 @@ def named_design(brief: Brief, catalogs: dict[str, Catalog], text: str) -> Desig
             faults.append(Fault(SOURCE, None, "parts", finding.found, finding.expected))
     if faults:
         raise BriefError(faults)
-    return Design(brief.groups, mounts, ballast or 0.0)
+    return Design(brief.groups, mounts, ballast or 0.0, stack)
 
 
 def _part(catalogs: dict[str, Catalog], group: str, value: str, faults: list[Fault]) -> Mount | None:
     """Return what stands at a station of the group: a part, or several of it, with a damper beside them, or nothing."""
     mounts = [m for catalog in catalogs.values() for m in catalog.parts if isinstance(m, Mount)]
-    whole = _of_name(mounts, value)
+    whole = of_name(mounts, value)
     if len(whole) == 1:
         return whole[0]
     if value.casefold() == EMPTY:
@@ -74,9 +90,15 @@ def _part(catalogs: dict[str, Catalog], group: str, value: str, faults: list[Fau
     count, name = (int(several["count"]), several["part"]) if several else (1, text)
     if count < 1:
         faults.append(Fault(SOURCE, None, group, text, f'one mount or more, for example "2 x {name}"'))
-    found = _one(mounts, group, name, ("a part of the study's catalogs", f'"{EMPTY}"'), faults)
+    before = len(faults)
+    pad = named_pad(catalogs, group, name, faults)
+    if len(faults) > before:
+        return None
+    expected = ("a part of the study's catalogs", f'"{EMPTY}"')
+    found = pad if pad is not None else one_named(mounts, group, name, expected, faults)
     dampers = [d for catalog in catalogs.values() for d in catalog.parts if isinstance(d, Damper)]
-    damper = _one(dampers, group, beside, ("a damper of the study's catalogs",), faults) if plus else None
+    wanted = ("a damper of the study's catalogs",)
+    damper = one_named(dampers, group, beside, wanted, faults) if plus else None
     if found is None or count < 1 or (plus and damper is None):
         return None
     mount = in_parallel(found, count)
@@ -89,34 +111,6 @@ def _part(catalogs: dict[str, Catalog], group: str, value: str, faults: list[Fau
         )
         return None
     return with_damper(mount, damper)
-
-
-def _of_name(parts: Sequence[Part], value: str) -> list[Part]:
-    """Return the parts of this number, or of "catalog:part"."""
-    named, colon, number = value.partition(":")
-    if colon and any(part.catalog == named for part in parts):
-        return [part for part in parts if part.catalog == named and part.part == number.strip()]
-    return [part for part in parts if part.part == value]
-
-
-def _one(
-    parts: Sequence[Part], group: str, value: str, expected: tuple[str, ...], faults: list[Fault]
-) -> Part | None:
-    found = _of_name(parts, value)
-    if len(found) == 1:
-        return found[0]
-    if found:
-        spelt = " or ".join(f'"{part.catalog}:{part.part}"' for part in found)
-        faults.append(
-            Fault(SOURCE, None, group, value, f"which of the catalogs that have this part: {spelt}")
-        )
-        return None
-    colon = ":" in value and any(part.catalog == value.partition(":")[0] for part in parts)
-    known = [f"{part.catalog}:{part.part}" if colon else part.part for part in parts]
-    known += [word.strip('"') for word in expected[1:]]
-    words = " or ".join(expected) if parts else f"{expected[0]}, which have none"
-    faults.append(Fault(SOURCE, None, group, value, words, nearest_name(value, known)))
-    return None
 
 
 def _ballast(brief: Brief, value: str, faults: list[Fault]) -> float | None:

@@ -9,8 +9,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.brief.allowable.separation import Separation
-from detune.brief.finding import Finding, faults_without_lines
+from detune.brief.finding import Finding
 from detune.ground.errors import BriefError
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem, build
@@ -18,14 +17,25 @@ from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.sizing.made_parts import bounds, made_design, sizing_of
 from detune.solvers import size_many_starts, size_one_axis
-from detune.solvers.size_absorber import Detuned, absorber_starts, detuning
+from detune.solvers.size_absorber import (
+    ClosedForm,
+    Detuned,
+    ScatteredAbsorber,
+    absorber_starts,
+    closed_forms,
+    detuning,
+    scattered,
+)
 from detune.solvers.size_batch import batch, judge
 from detune.solvers.size_convex import ConvexSizing, convex_answers, why_not_convex
+from detune.solvers.size_convex_axis import soft_side
+from detune.solvers.size_convex_parts import PartsBound, parts_bounds
 from detune.solvers.size_front import SizingFront, one_axis_front
-from detune.solvers.size_many_starts import ManyStarts, start_points
+from detune.solvers.size_many_starts import ManyStarts
 from detune.solvers.size_map import SizingMap, sizing_map
 from detune.solvers.size_nearest import Nearest, nearest_parts
 from detune.solvers.size_one_axis import OneAxisSizing
+from detune.solvers.size_second_opinion import SizingOpinion, at_best_count, second_opinion
 from detune.solvers.size_specification import (
     PurchaseSpecification,
     brief_with_room,
@@ -33,10 +43,9 @@ from detune.solvers.size_specification import (
     why_no_specification,
 )
 from detune.study.load import Study
+from detune.study.size_sense import check_sense, faults_of, one_axis_only
 
 Floats = NDArray[np.float64]
-# Points at which it is tried whether an unknown matters to anything.
-TRIED = 6
 # A gap of the proof above this share of the objective is told.
 GAP = 1e-5
 # Shares of room inside the limits that the design of a specification is tried with.
@@ -83,6 +92,10 @@ class SizingResult:
     detuned: tuple[Detuned, ...]
     cautions: tuple[str, ...]
     seconds: float
+    opinion: SizingOpinion | None = None
+    parts_bounds: tuple[PartsBound, ...] = ()
+    closed_forms: tuple[ClosedForm, ...] = ()
+    scattered: tuple[ScatteredAbsorber, ...] = ()
 
     @property
     def answer(self) -> SizedBest | None:
@@ -95,13 +108,16 @@ class SizingResult:
         return 0 if self.answer is not None else 1
 
 
-def size_study(study: Study, drawings: bool = True) -> SizingResult:
-    """Return the result of sizing a study. Raises BriefError where it states no sizing, or one without sense."""
+def size_study(study: Study, drawings: bool = True, opinion_limit: float | None = None) -> SizingResult:
+    """Return the result of sizing a study. Raises BriefError where it states no sizing, or one without sense.
+
+    `opinion_limit` (s) asks for a second opinion on one axis, with that hard time limit; elsewhere it is refused.
+    """
     started = time.perf_counter()
     brief = study.brief
     if brief.sizing is None:
         expected = "a [sizing] table with its unknowns"
-        raise BriefError(faults_without_lines(brief.file, (Finding(("sizing",), "", expected),)))
+        raise BriefError(faults_of(study, (Finding(("sizing",), "", expected),)))
     sizing = brief.sizing
     cautions = check_sense(study)
     low, _ = bounds(brief)
@@ -110,11 +126,14 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
     convex: tuple[ConvexSizing, ...] = ()
     searches: ManyStarts | None = None
     exact: OneAxisSizing | None = None
+    opinion: SizingOpinion | None = None
     if isinstance(solved, str):
+        one_axis_only(study, solved, opinion_limit is not None)
         why = f"{solved}, so the exact one-axis method does not apply"
         convex = _convex(study, problem)
         middle = size_many_starts.Coordinates(brief).outward(np.full(len(sizing.unknown), 0.5))
-        first = (*(answer.values for answer in convex), *_best_two(study, absorber_starts(brief, middle)))
+        starts = (answer.values for answer in convex if np.isfinite(answer.value))
+        first = (*starts, *_best_two(study, absorber_starts(brief, middle)))
         searches = _searched(study, first)
         branches, worth, bound = _of_searches(study, searches), searches.worth, None
     else:
@@ -122,6 +141,9 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
         why = "one mass on one stiffness and one damping: every feasible branch is found"
         branches = _of_branches(study, exact)
         worth = _worth(exact, branches)
+        if opinion_limit is not None:
+            opinion = second_opinion(brief, problem, exact, opinion_limit)
+            worth = opinion.worth(worth)
         if exact.branches and exact.statement.relaxed and not branches[0].assessment.meets:
             # The relaxation's best misses what it left out: go on by local searches, with its bound.
             searches = _searched(study, tuple(branch.values for branch in exact.branches))
@@ -129,7 +151,7 @@ def size_study(study: Study, drawings: bool = True) -> SizingResult:
             worth = f"{searches.worth}; the relaxed problem bounds it"
     found = SizingResult(
         study, "one axis, exact" if searches is None else "many starts", why, worth, branches, bound, exact, searches,
-        None, None, None, convex, None, (), cautions, 0.0,
+        None, None, None, convex, None, (), cautions, 0.0, opinion,
     )  # fmt: skip
     return _with_rest(found, problem, drawings, started)
 
@@ -158,16 +180,20 @@ def _rank(sense: float) -> Callable[[SizedBest], tuple[bool, float]]:
 
 
 def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: float) -> SizingResult:
-    study, best = found.study, found.answer
-    brief = study.brief
+    best = found.answer
+    # What is drawn and specified holds the number of parts side by side where the best has it.
+    brief = at_best_count(found.study.brief, None if best is None else best.values)
+    study = replace(found.study, brief=brief)
     sizing = sizing_of(brief)
     cautions = list(found.cautions)
     near = plan = front = None
+    sides: tuple[PartsBound, ...] = ()
+    convex = found.convex
     mounts: tuple[Mount, ...] = ()
     if best is not None:
-        cautions += _at_ends(best, study)
+        cautions += _at_ends(best, found.study)
         if drawings and sizing.trade:
-            front = _front(found, best)
+            front = _front(replace(found, study=study), best)
         if brief.choices:
             there = made_design(brief, best.values).brief
             real = build(there, study.catalogs)
@@ -176,27 +202,56 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
                 best.values,
                 *(b.values for b in found.branches if b.assessment.meets and b is not best),
             ][:3]
+            ideals = [values for values in ideals if at_best_count(found.study.brief, values) == brief]
             if front is not None and front.points:
                 chosen = np.linspace(0, len(front.points) - 1, ANCHORS).round().astype(int)
                 ideals += [front.points[k].values for k in dict.fromkeys(chosen.tolist())]
             near = nearest_parts(there, ideals, real, sizing.goal, sizing.sense)
+            sides = parts_bounds(real) if drawings else ()
     around = best or (found.branches[0] if found.branches else None)
     axis = None if found.exact is None else found.exact.statement
+    if drawings and axis is not None and best is not None:
+        soft = soft_side(brief, axis)
+        convex = convex if soft is None else (soft,)
     if drawings and sizing.map and around is not None:
         plan = sizing_map(brief, sizing.map, around.values, axis, mounts, sizing.goal)
     plan_of_purchase = None
     if best is not None and sizing.specification:
-        plan_of_purchase = _specified(found, best)
+        plan_of_purchase = _specified(replace(found, study=study), best)
     return replace(
         found,
         specification=plan_of_purchase,
         detuned=() if best is None else detuning(brief, best.values),
+        closed_forms=() if best is None else closed_forms(brief, best.values),
+        scattered=() if best is None else scattered(brief, best.values),
         nearest=near,
         map=plan,
         front=front,
+        convex=convex,
+        parts_bounds=sides,
+        worth=with_convex(found, convex),
         cautions=tuple(cautions),
         seconds=time.perf_counter() - started,
     )
+
+
+def with_convex(found: SizingResult, convex: tuple[ConvexSizing, ...]) -> str:
+    """What the answer of local searches is worth beside the convex bound of its own side."""
+    best, sizing = found.answer, sizing_of(found.study.brief)
+    if best is None or found.searches is None or found.exact is not None:
+        return found.worth
+    frequencies = [mode.frequency for mode in best.assessment.modes]
+    for answer in convex:
+        low, high = answer.excitation
+        here = max(frequencies) < low if answer.side == "below" else min(frequencies) > high
+        if not here or answer.what != sizing.goal or answer.form == "restriction" or answer.partial:
+            continue
+        gap = sizing.sense * (best.objective - answer.bound) / max(abs(best.objective), 1e-12)
+        side = f"designs with every mode {answer.side} all excitation"
+        if gap <= GAP:
+            return f"global among {side}, by the convex bound; of other designs {found.worth}"
+        return f"{found.worth}; at most {100.0 * gap:.2g} % from the global best among {side} (convex bound)"
+    return found.worth
 
 
 def _front(found: SizingResult, best: SizedBest) -> SizingFront:
@@ -221,8 +276,7 @@ def _convex(study: Study, problem: Problem) -> tuple[ConvexSizing, ...]:
     if why_not_convex(brief, problem) is not None:
         return ()
     middle = size_many_starts.Coordinates(brief).outward(np.full(len(sizing_of(brief).unknown), 0.5))
-    asked = max((a.limit for a in brief.allowables if isinstance(a, Separation)), default=0.0)
-    return convex_answers(brief, problem, middle, asked)
+    return convex_answers(brief, problem, middle)
 
 
 def with_room(study: Study, best: SizedBest, exact: bool) -> tuple[float, Floats] | None:
@@ -297,65 +351,3 @@ def _at_ends(best: SizedBest, study: Study) -> list[str]:
                     "there, and a wider bound would change the answer"
                 )
     return notes
-
-
-def check_sense(study: Study) -> tuple[str, ...]:
-    """Refuse an unknown nothing depends on, and an objective no unknown changes; return cautions.
-
-    Every unknown is moved between its bounds, the others at a few points: what changes neither a requirement nor the
-    objective has no answer. Raises BriefError with every such unknown.
-    """
-    brief = study.brief
-    sizing = sizing_of(brief)
-    unknowns = sizing.unknown
-    to = size_many_starts.Coordinates(brief)
-    base = start_points(len(unknowns), TRIED, sizing.seed)
-    findings: list[Finding] = []
-    cautions: list[str] = []
-    moved = []
-    for column in range(len(unknowns)):
-        for end in (0.0, 1.0):
-            there = base.copy()
-            there[:, column] = end
-            moved.append(there)
-    found = judge(brief, to.outward(np.concatenate(moved)))
-    margins = found.margins.reshape(len(found.requirements), len(unknowns), 2, TRIED)
-    objective = found.objectives[sizing.goal].reshape(len(unknowns), 2, TRIED)
-    felt = np.abs(margins[:, :, 0] - margins[:, :, 1]).max(axis=(0, 2)) > 1e-9
-    shift = np.abs(objective[:, 0] - objective[:, 1]).max(axis=1)
-    counts = shift > 1e-9 * max(float(np.abs(objective).max()), 1e-300)
-    for index, unknown in enumerate(unknowns):
-        low, high = unknown.bounds
-        if low == high or felt[index]:
-            continue
-        path = ("sizing", "unknown", index)
-        if not counts[index]:
-            expected = (
-                "an unknown on which a requirement or the objective depends: nothing here changes with it"
-            )
-            findings.append(Finding(path, unknown.title, expected))
-        else:
-            cautions.append(
-                f"no requirement depends on {unknown.title}; the objective alone moves it, to an end of its range"
-            )
-    if not counts.any() and not findings:
-        what = "minimise" if sizing.minimise else "maximise"
-        if sizing.goal == "cost":
-            expected = (
-                "a price on some unknown (cost_per_stiffness, cost_per_damping, cost_per_loss_factor, or the ballast's "
-                "cost_per_kg): as stated every design costs the same"
-            )
-        elif not np.isfinite(objective).all():
-            expected = (
-                "an objective that has a finite value: nothing excites the machine steadily, so the separation has no "
-                "bound"
-            )
-        else:
-            expected = "an objective that some unknown changes: as stated it is the same for every design"
-        findings.append(Finding(("sizing", what), sizing.goal, expected))
-    elif not np.isfinite(objective).all():
-        expected = "an objective that has a finite value for every design"
-        findings.append(Finding(("sizing",), sizing.goal, expected))
-    if findings:
-        raise BriefError(faults_without_lines(brief.file, tuple(findings)))
-    return tuple(cautions)

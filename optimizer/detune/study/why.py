@@ -1,18 +1,20 @@
 """Why each part fell out: the first rule that excluded it and the hardest one."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
-from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem
+from detune.problem.listed import Listed
+from detune.problem.other_candidates import BALLAST
 from detune.problem.stages import stages
 from detune.solvers.outcome import Outcome
 
 
 @dataclass(frozen=True)
 class PartReason:
-    """What became of one part in one group.
+    """What became of one part in one group, or of one stack of ballast (group "ballast").
 
     `meets` is how many designs with it met the brief, of `designs`; `cheapest` the least cost among
     them. A part that fell out has the first rule that excluded designs with it (and how many), and
@@ -20,7 +22,7 @@ class PartReason:
     """
 
     group: str
-    mount: Mount
+    mount: Listed
     designs: int
     meets: int
     cheapest: float | None
@@ -46,10 +48,11 @@ def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
     """Return what became of every part of every group, the filtered ones included."""
     hardest = _hardest(problem, outcome)
     reasons = []
-    for group, data in enumerate(problem.model.groups):
-        each = problem.count // len(data.mounts)
-        for part, mount in enumerate(data.mounts):
-            with_part = np.flatnonzero(outcome.designs.part[:, group] == part)
+    chosen = np.column_stack([outcome.designs.part, outcome.designs.step])
+    for group, (name, mounts) in enumerate(_choices(problem)):
+        each = problem.count // len(mounts)
+        for part, mount in enumerate(mounts):
+            with_part = np.flatnonzero(chosen[:, group] == part)
             counts = [
                 (rule.rule, int(rule.by_part[group][part])) for rule in outcome.record.rules if rule.by_part
             ]
@@ -57,7 +60,7 @@ def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
             first = next(((rule, count) for rule, count in counts if count), (judged.first, 0))
             reasons.append(
                 PartReason(
-                    group=data.name,
+                    group=name,
                     mount=mount,
                     designs=each,
                     meets=len(with_part),
@@ -75,6 +78,14 @@ def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
             PartReason(dropped.group, dropped.mount, 0, 0, None, dropped.reason, None, 0, None, None, None)
         )
     return tuple(reasons)
+
+
+def _choices(problem: Problem) -> list[tuple[str, Sequence[Listed]]]:
+    """Return every group with its parts, and ballast with its stacks where it is taken from a list."""
+    found: list[tuple[str, Sequence[Listed]]] = [(group.name, group.mounts) for group in problem.model.groups]
+    if problem.model.ballast[0].listed:
+        found.append((BALLAST, problem.model.ballast))
+    return found
 
 
 def _hardest(problem: Problem, outcome: Outcome) -> dict[tuple[int, int], _Judged]:

@@ -4,7 +4,7 @@ from typing import ClassVar, Literal
 
 from detune.brief.allowable.at_point import PointAllowable
 from detune.brief.allowable.views import Responses, ResponseView
-from detune.brief.statement import Acceleration as AccelerationQuantity
+from detune.brief.levels import AccelerationOrLevel
 
 
 class Acceleration(PointAllowable):
@@ -13,7 +13,7 @@ class Acceleration(PointAllowable):
     title: ClassVar[str] = "acceleration"
     unit: ClassVar[str] = "acceleration"
     kind: Literal["acceleration"] = "acceleration"
-    limit: AccelerationQuantity
+    limit: AccelerationOrLevel
 
     def observed(self, view: ResponseView, place: str) -> Responses:
         return view.motion(place, rate=2)

@@ -3,7 +3,7 @@
 from typing import Literal
 
 import numpy as np
-from pydantic import field_validator
+from pydantic import field_validator, model_validator
 
 from detune.brief.allowable.base import (
     HarmonicAllowable,
@@ -13,11 +13,16 @@ from detune.brief.allowable.base import (
     read_direction,
 )
 from detune.brief.allowable.views import Floats, Places, StaticView
+from detune.brief.levels import Level, level_note, refuse_unless_rms
 from detune.brief.statement import AxisName, Direction, Name
 
 
 class PointAllowable(HarmonicAllowable):
-    """A limit at a named point `at`, along a `direction` or on the resultant, as a stated `measure`."""
+    """A limit at a named point `at`, along a `direction` or on the resultant, as a stated `measure`.
+
+    Of displacement, velocity and acceleration the `limit` may be a level in decibels, "105 dB", re 1 pm, 1 nm/s and
+    1 µm/s² (ISO 1683) or another reference that is stated with it; a level is of the rms value.
+    """
 
     at: Name
     direction: AxisName | Literal["resultant"] | Direction
@@ -28,6 +33,17 @@ class PointAllowable(HarmonicAllowable):
     @classmethod
     def _limit_above_zero(cls, value: float) -> float:
         return above_zero(value, "a limit")
+
+    @model_validator(mode="after")
+    def _level_of_rms(self) -> "PointAllowable":
+        refuse_unless_rms(self.limit, self.measure)
+        return self
+
+    def level_reference(self) -> float | None:
+        return self.limit.reference if isinstance(self.limit, Level) else None
+
+    def assumed(self) -> tuple[str, ...]:
+        return level_note(f"limit on {self.title} at {self.at}", self.limit, self.unit)
 
     @field_validator("direction")
     @classmethod

@@ -24,6 +24,7 @@ from detune.physics.response import ellipse_major
 Statistic = Literal["peak", "rms", "peak-to-peak", "3-sigma"]
 TONE_FACTOR: dict[Statistic, float] = {"peak": 1.0, "rms": 0.5**0.5, "peak-to-peak": 2.0, "3-sigma": 1.0}
 UnitLoad = tuple[Literal["force", "base"], Direction]
+Side = tuple[Floats, Direction]
 
 
 class Allowable(Statement):
@@ -92,6 +93,15 @@ class HarmonicAllowable(Allowable):
         """Return a static part (D,) that is added to the amplitude."""
         return np.zeros(view.count)
 
+    def sides(self, view: StaticView, place: str) -> tuple[Side, ...]:
+        """Return the sides that are judged one by one: static part (D,) of each and its unit direction.
+
+        A response in time counts towards each side with what it reaches on that side, and the worst side is the
+        value; `offset` is the largest of the static parts. Tones and noise reach as far to one side as to the other.
+        No sides: a response in time counts with its magnitude.
+        """
+        return ()
+
     def bound(self, view: StaticView, place: str) -> Floats:
         """Return the upper limit (D,)."""
         raise NotImplementedError(type(self).__name__)
@@ -107,6 +117,10 @@ class HarmonicAllowable(Allowable):
     def has_weighting(self) -> bool:
         """Return whether `weighted` changes anything; such a limit is for tones and noise alone."""
         return False
+
+    def level_reference(self) -> float | None:
+        """Return the reference (SI) of the decibels its limit is stated in, None for a limit in a unit."""
+        return None
 
     def lowest_frequency(self) -> float:
         """Return the frequency (Hz) below which this allowable does not apply."""
@@ -238,6 +252,15 @@ def record_amplitude(
         return np.asarray(np.maximum(highest, 0.0) + np.maximum(lowest, 0.0))
     largest = np.asarray(np.maximum(highest, lowest))
     return 2.0 * largest if statistic == "peak-to-peak" else largest
+
+
+def record_reach(stretches: Sequence[tuple[Floats, float]], towards: Direction) -> Floats:
+    """Return how far (D,) a response over time comes to one side, not less than nothing: it starts or ends at rest.
+
+    stretches: as in `record_amplitude`.
+    """
+    signals = [parabolic_maximum(values @ np.asarray(towards)) for values, _ in stretches]
+    return np.asarray(np.maximum(np.max(signals, axis=0), 0.0))
 
 
 def parabolic_maximum(signal: Floats) -> Floats:

@@ -4,7 +4,7 @@ from typing import ClassVar, Literal
 
 from detune.brief.allowable.at_point import PointAllowable
 from detune.brief.allowable.views import Responses, ResponseView
-from detune.brief.statement import Length
+from detune.brief.levels import LengthOrLevel
 
 
 class Displacement(PointAllowable):
@@ -13,7 +13,7 @@ class Displacement(PointAllowable):
     title: ClassVar[str] = "displacement"
     unit: ClassVar[str] = "length"
     kind: Literal["displacement"] = "displacement"
-    limit: Length
+    limit: LengthOrLevel
 
     def observed(self, view: ResponseView, place: str) -> Responses:
         return view.motion(place)

@@ -5,7 +5,7 @@ from typing import ClassVar, Literal
 import numpy as np
 from pydantic import model_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, direction_words
+from detune.brief.allowable.base import HarmonicAllowable, Side, Statistic, above_zero, direction_words
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import AxisName, Direction, Length, Name, unit_direction
 
@@ -15,9 +15,9 @@ FLOOR = "floor"
 class Gap(HarmonicAllowable):
     """Travel of the point `at` towards `direction` stays below `clearance`.
 
-    Travel is the signed sum of the static displacement towards the stop (creep of the state included) and the
-    dynamic one, which counts alike both ways: peaks of tones, the expected extreme of noise and the largest motion
-    in a shock add linearly. `stands_on`: the stop moves with the "floor", or is another point. `clearance_of`:
+    Travel is the signed sum of the static displacement towards the stop (creep of the state included), the peaks of
+    tones and the expected extreme of noise, which reach as far one way as the other, and of each shock and record the
+    farthest it comes towards the stop; what moves away from the stop counts in no shock. `stands_on`: the stop moves with the "floor", or is another point. `clearance_of`:
     "free", measured before the machine settles on its mounts, so that sag uses it up; "installed", measured with
     the machine at rest on them.
     """
@@ -60,6 +60,9 @@ class Gap(HarmonicAllowable):
         # A floor's own sag takes the stop along with it.
         other = view.floor_motion() if self.stands_on == FLOOR else view.motion(self.stands_on)
         return np.asarray((moved - other) @ np.asarray(unit_direction(self.direction)))
+
+    def sides(self, view: StaticView, place: str) -> tuple[Side, ...]:
+        return ((self.offset(view, place), unit_direction(self.direction)),)
 
     def bound(self, view: StaticView, place: str) -> Floats:
         return np.full(view.count, self.clearance)

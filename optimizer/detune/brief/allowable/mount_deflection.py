@@ -6,7 +6,7 @@ import numpy as np
 from pydantic import model_validator
 
 from detune.brief.allowable.at_station import LocalDirection, chosen_stations, local_along, local_part
-from detune.brief.allowable.base import HarmonicAllowable, above_zero
+from detune.brief.allowable.base import HarmonicAllowable, Side, above_zero
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
 from detune.brief.statement import Direction, Length, Name, refuse
 
@@ -15,8 +15,10 @@ class MountDeflection(HarmonicAllowable):
     """Upper limit on the deflection of each part.
 
     `part = "dynamic"` counts the vibration amplitude along `direction`. `part = "combined"` is the
-    axial travel: static deflection plus vibration amplitude, summed linearly. `limit = "part"`
-    takes each part's own `deflection_max`; a part that states none is not limited by it.
+    axial travel from the free height, compression and extension each by itself and the larger of both: static
+    deflection with its sign, plus the amplitudes of tones and noise, plus of each shock and record the farthest it
+    comes to that side, summed linearly. `limit = "part"` takes each part's own `deflection_max`; a part that states
+    none is not limited by it.
     """
 
     title: ClassVar[str] = "mount deflection"
@@ -55,6 +57,12 @@ class MountDeflection(HarmonicAllowable):
         if self.part == "dynamic":
             return np.zeros(view.count)
         return np.abs(view.station_deflection(place)[:, 2])
+
+    def sides(self, view: StaticView, place: str) -> tuple[Side, ...]:
+        if self.part == "dynamic":
+            return ()
+        at_rest = view.station_deflection(place)[:, 2]
+        return ((-at_rest, (0.0, 0.0, -1.0)), (at_rest, (0.0, 0.0, 1.0)))
 
     def bound(self, view: StaticView, place: str) -> Floats:
         if self.limit == "part":

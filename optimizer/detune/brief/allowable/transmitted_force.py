@@ -8,7 +8,8 @@ from pydantic import model_validator
 from detune.brief.allowable.at_station import LocalDirection, chosen_stations, local_along, local_part
 from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, read_direction
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
-from detune.brief.statement import AxisName, Direction, Force, Name, describe, refuse
+from detune.brief.levels import ForceOrLevel, Level, level_note, refuse_unless_rms
+from detune.brief.statement import AxisName, Direction, Name, describe, refuse
 
 LOCAL = ("axial", "lateral", "resultant")
 
@@ -19,7 +20,8 @@ class TransmittedForce(HarmonicAllowable):
     `through = "each-station"`: the force through one part at each station (or the `stations`
     named), `direction` "axial", "lateral" or "resultant". `through = "floor"`: the phasor sum of
     all forces the machine's parts and connections put on the floor; `through = "ground"`: what
-    the floor passes on. Then `direction` is a global axis, a vector or "resultant".
+    the floor passes on. Then `direction` is a global axis, a vector or "resultant". The `limit` may be a level in
+    decibels of the rms value, "80 dB", re 1 µN (ISO 1683) or another reference that is stated with it.
     """
 
     title: ClassVar[str] = "transmitted force"
@@ -29,11 +31,12 @@ class TransmittedForce(HarmonicAllowable):
     stations: tuple[Name, ...] | None = None
     direction: AxisName | LocalDirection | Direction
     measure: Statistic
-    limit: Force
+    limit: ForceOrLevel
 
     @model_validator(mode="after")
     def _values(self) -> "TransmittedForce":
         above_zero(self.limit, "a limit", at="limit")
+        refuse_unless_rms(self.limit, self.measure)
         if self.through == "each-station":
             if self.direction not in LOCAL:
                 raise refuse(
@@ -66,6 +69,12 @@ class TransmittedForce(HarmonicAllowable):
 
     def statistic(self) -> Statistic:
         return self.measure
+
+    def level_reference(self) -> float | None:
+        return self.limit.reference if isinstance(self.limit, Level) else None
+
+    def assumed(self) -> tuple[str, ...]:
+        return level_note("limit on transmitted force", self.limit, self.unit)
 
     def along(self) -> Direction | None:
         if self.direction in ("axial", "lateral", "resultant"):

@@ -4,7 +4,7 @@ from typing import ClassVar, Literal
 
 from detune.brief.allowable.at_point import PointAllowable
 from detune.brief.allowable.views import Responses, ResponseView
-from detune.brief.statement import Velocity as VelocityQuantity
+from detune.brief.levels import VelocityOrLevel
 
 
 class Velocity(PointAllowable):
@@ -13,7 +13,7 @@ class Velocity(PointAllowable):
     title: ClassVar[str] = "velocity"
     unit: ClassVar[str] = "velocity"
     kind: Literal["velocity"] = "velocity"
-    limit: VelocityQuantity
+    limit: VelocityOrLevel
 
     def observed(self, view: ResponseView, place: str) -> Responses:
         return view.motion(place, rate=1)

@@ -23,6 +23,7 @@ class Places:
     points: tuple[str, ...]
     stations: tuple[str, ...]
     bodies: tuple[str, ...]
+    absorbers: tuple[str, ...] = ()
 
 
 class StaticView(Protocol):
@@ -75,6 +76,9 @@ class ResponseView(Protocol):
 
     def total_force(self, surface: str) -> Responses:
         """Force (D, F, 3) in N, global axes, summed with phase: into the "floor" or the "ground"."""
+
+    def floor_ratio(self) -> Responses:
+        """Floor's motion over that with the machine bolted down, along z of (D, F, 3); of tones alone."""
 
 
 @dataclass(frozen=True)

@@ -20,6 +20,7 @@ KINDS: KindTable[type[Forcing]] = KindTable(
         "band-base-motion": "band_base_motion.BandBaseMotion",
         "line-spectrum": "line_spectrum.LineSpectrum",
         "measured-record": "measured_record.MeasuredRecord",
+        "torque-pulse": "torque_pulse.TorquePulse",
         "torque-reaction": "torque_reaction.TorqueReaction",
         "two-plane-unbalance": "two_plane_unbalance.TwoPlaneUnbalance",
     },

@@ -21,8 +21,10 @@ from detune.physics.pulses import Pulse
 class BasePulse(Forcing):
     """One pulse of floor acceleration along `direction`: peak `amplitude`, whole `duration`.
 
-    Shapes as in IEC 60068-2-27. The floor keeps the velocity the pulse gives it. On a flexible floor this is
-    the free motion. `rise` and `fall` are shares of the duration, for a trapezoid alone.
+    Shapes as in IEC 60068-2-27. The floor is at rest before the pulse and keeps the velocity the pulse gives it, the
+    area under the pulse, so that absolute velocities are those of a floor that goes on moving, and absolute
+    displacements have no largest value: motion relative to the floor is what a limit on travel is put on. On a
+    flexible floor this is the free motion. `rise` and `fall` are shares of the duration, for a trapezoid alone.
     """
 
     title: ClassVar[str] = "base pulse"

@@ -11,6 +11,8 @@ from detune.brief.statement import AxisName, Direction, Velocity, positive, unit
 class VelocityStep(Forcing):
     """The floor gains `velocity` along `direction` at once and keeps it: a shock far shorter than any mode.
 
+    It is at rest before; as it goes on moving, absolute displacements have no largest value.
+
     On a flexible floor this is the free motion.
     """
 

@@ -65,7 +65,9 @@ class Mount:
     approximate: why the figures are an estimate, empty for a row of a list.
 
     What parts.compose puts together: base, the part number of the mount itself; pieces of it; the part number
-    of a damper beside it, and damper_cost, its share of the cost.
+    of a damper beside it, with damper_cost, its share of the cost, and its catalog, quantity breaks and stock.
+    Of an absorber, which is a mount that carries nothing but its own mass: moving_mass, kg, riding_mass of its
+    frame, kg, and stroke, m peak.
     """
 
     catalog: str
@@ -106,6 +108,12 @@ class Mount:
     pieces: int = 1
     damper: str = ""
     damper_cost: float = 0.0
+    damper_catalog: str = ""
+    damper_breaks: Breaks = ()
+    damper_stock: int | None = None
+    moving_mass: float = 0.0
+    riding_mass: float = 0.0
+    stroke: float | None = None
 
     @property
     def bought(self) -> tuple[str, ...]:

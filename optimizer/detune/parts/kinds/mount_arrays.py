@@ -21,8 +21,8 @@ if TYPE_CHECKING:
 class MountArrays:
     """P mounts as read-only arrays, SI. Columns of the (P, 3) arrays are the local axes x, y, z.
 
-    Where a part states none, lateral figures, free_height and mass are nan and deflection_max is inf. cost:
-    of one piece; cost_breaks: of several. plain: whether these figures say all of its stiffness and damping;
+    Where a part states none, lateral figures, free_height, mass and temperatures are nan, deflection_max and stroke
+    inf. cost: of one piece; cost_breaks: of several. plain: whether these figures say all of its stiffness and damping;
     a mount that is not plain has a law, to be read from the mount itself.
     """
 
@@ -40,6 +40,9 @@ class MountArrays:
     tolerance: NDArray[np.float64]
     cost_breaks: CostBreaks
     plain: NDArray[np.bool_]
+    stroke: NDArray[np.float64]
+    temperature_min: NDArray[np.float64]
+    temperature_max: NDArray[np.float64]
 
     def __len__(self) -> int:
         return len(self.cost)
@@ -93,4 +96,7 @@ def mount_arrays(mounts: Iterable[Mount]) -> MountArrays:
         tolerance=column([part.tolerance for part in parts]),
         cost_breaks=cost_breaks(parts),
         plain=flags([is_plain(part) for part in parts]),
+        stroke=column([part.stroke for part in parts], math.inf),
+        temperature_min=column([part.temperature_min for part in parts]),
+        temperature_max=column([part.temperature_max for part in parts]),
     )

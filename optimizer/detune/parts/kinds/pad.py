@@ -240,7 +240,7 @@ def cut(pad: Pad, width: float, length: float) -> Mount:
         catalog=pad.catalog,
         file=pad.file,
         line=pad.line,
-        part=f"{pad.part} {1e3 * width:g} x {1e3 * length:g} mm",
+        part=piece_name(pad, width, length),
         family=pad.family,
         stiffness_static=(lateral, lateral, axial),
         stiffness_dynamic=(ratio * lateral, ratio * lateral, ratio * axial),
@@ -263,6 +263,11 @@ def cut(pad: Pad, width: float, length: float) -> Mount:
         damping_kind="loss factor",
         approximate=f"stiffness estimated from {source} and shape factor {shape:.2g}",
     )
+
+
+def piece_name(pad: Pad, width: float, length: float) -> str:
+    """Return what a rectangle of width and length (m) of a sheet is called."""
+    return f"{pad.part} {1e3 * width:g} x {1e3 * length:g} mm"
 
 
 def _require_size(pad: Pad, width: float, length: float, shape: float) -> None:

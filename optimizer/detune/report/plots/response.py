@@ -57,11 +57,15 @@ class Panel:
 
 @dataclass(frozen=True)
 class ResponseData:
-    """Panels by ascending margin; `left_out` is how many with larger margins are not shown."""
+    """Panels by ascending margin; `left_out` is how many with larger margins are not shown.
+
+    `two_readings`: some part's damping is of unknown kind, and the worse reading is drawn at each speed.
+    """
 
     subject: str
     panels: tuple[Panel, ...]
     left_out: int
+    two_readings: bool = False
 
 
 def data(result: Result) -> ResponseData | None:
@@ -90,6 +94,7 @@ def data(result: Result) -> ResponseData | None:
         subject="the answer" if result.answer is not None else "the closest design",
         panels=tuple(_panel(curve, places) for curve, places in ranked[:SHOWN]),
         left_out=max(0, len(ranked) - SHOWN),
+        two_readings=any(mount.damping_unknown is not None for mount in subject.design.mounts),
     )
 
 
@@ -132,6 +137,10 @@ def caption(data: ResponseData) -> str:
         "(found over the continuous range, not on a grid). The thin line outside the band continues the same forcing "
         "to show where the resonances lie; it is not judged."
     )
+    if data.two_readings:
+        text += (
+            " The list leaves open what kind some damping is: at each speed the larger of both readings is drawn."
+        )
     return (
         f"{text} {data.left_out} quantities with larger margins are in responses.csv."
         if data.left_out

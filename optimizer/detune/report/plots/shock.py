@@ -13,6 +13,7 @@ from detune.report.forced_rows import ForcedRow, forced_rows, tightest_of_each
 from detune.report.plots.style import BLACK, BLUE, GREY, VERMILION, Floats, Titles, shorten
 from detune.report.words import margin_text, number, unit_of
 from detune.response.direct_motion import direct_transient_values, transient_motion
+from detune.response.direct_views import DirectStatic
 from detune.study.run import Result
 
 if TYPE_CHECKING:
@@ -32,7 +33,8 @@ FADED = 0.03
 class Panel:
     """One quantity over time (T,) s: value (T,) in `unit`, its largest magnitude at `at` s.
 
-    `room` is what the limit leaves for the shock beside all else, in `unit`. `input_time` (P,) and `input` (P,)
+    `room` is what the limit leaves for the shock beside all else on the side of the largest value, in `unit`, and
+    `lines` are the values it reaches there, or on each side that is judged. `input_time` (P,) and `input` (P,)
     are what excites it, in `input_unit`, empty for a drop or a velocity step. `one_sided`: a resultant, never
     negative.
     """
@@ -45,6 +47,7 @@ class Panel:
     at: float
     largest: float
     room: float
+    lines: tuple[float, ...]
     input_time: Floats
     input: Floats
     input_unit: str
@@ -91,17 +94,19 @@ def _panel(part: Contribution) -> Panel:
     each = [float(direct_transient_values(row.machine, row.found, (t,), pair)[0]) for t in row.transients]
     transient = row.transients[int(np.argmax(each))]
     time, value = _response(row, transient)
-    top = int(np.argmax(np.abs(value)))
+    rooms = _rooms(row, max(each))
+    # The largest value is the one that comes nearest to its limit, or goes farthest beyond it.
+    top = int(np.argmin(np.min([room - sign * value for sign, room in rooms], axis=0)))
+    room = min(rooms, key=lambda side: side[1] - side[0] * value[top])[1]
     unit = unit_of(row.row.upper if row.row.upper else row.row.value, row.row.unit)
     scale = convert(1.0, row.row.unit, unit) if unit else 1.0
     assert part.shocks is not None and row.row.upper is not None
-    room = row.row.upper - (row.row.value - max(each))
     shown = _thinned(value)
     input_time, excites, input_unit = _input(transient)
     return Panel(
         title=(
             f"{row.row.quantity}\n{row.condition.name}, {row.place}; margin {margin_text(row.row.margin)}\n"
-            f"{transient.source}: largest {number(scale * max(each), 3)} {unit}"
+            f"{transient.source}: largest {number(scale * abs(float(value[top])), 3)} {unit}"
         ),
         source=transient.source,
         unit=unit,
@@ -110,11 +115,29 @@ def _panel(part: Contribution) -> Panel:
         at=float(time[top]),
         largest=float(scale * value[top]),
         room=scale * room,
+        lines=tuple(sign * scale * own for sign, own in rooms),
         input_time=input_time,
         input=excites,
         input_unit=input_unit,
         one_sided=row.allowable.along() is None,
     )
+
+
+def _rooms(row: ForcedRow, shock: float) -> list[tuple[float, float]]:
+    """Return the sides that are judged, as the sign of their values, and what the limit leaves on each for the shock.
+
+    shock: what the shock has in the judged value.
+    """
+    assert row.row.upper is not None
+    room, along = row.row.upper - (row.row.value - shock), row.allowable.along()
+    static = DirectStatic(row.machine)
+    sides = row.allowable.sides(static, row.place)
+    if not sides or along is None:
+        return [(1.0, room)] if along is None else [(1.0, room), (-1.0, room)]
+    at_rest = float(row.allowable.offset(static, row.place)[0])
+    return [
+        (float(np.sign(np.dot(towards, along))), room + at_rest - float(own[0])) for own, towards in sides
+    ]
 
 
 def _response(row: ForcedRow, transient: Transient) -> tuple[Floats, Floats]:
@@ -205,8 +228,8 @@ def _draw_response(ax: "Axes", panel: Panel) -> None:
     ax.plot(1e3 * panel.time, panel.value, color=BLUE, linewidth=1.3)
     ax.plot([1e3 * panel.at], [panel.largest], marker="o", color=VERMILION, markersize=5.0)
     if np.isfinite(panel.room) and panel.room > 0.0:
-        for side in (1.0,) if panel.one_sided else (1.0, -1.0):
-            ax.axhline(side * panel.room, color=BLACK, linewidth=1.1, linestyle=(0, (5, 2)))
+        for line in panel.lines:
+            ax.axhline(line, color=BLACK, linewidth=1.1, linestyle=(0, (5, 2)))
     reach = 1.12 * max(abs(panel.largest), min(max(panel.room, 0.0), 3.0 * abs(panel.largest)))
     ax.set_ylim(-0.05 * reach if panel.one_sided else -reach, reach)
     ax.set_xlabel("time [ms]", fontsize=7.5, labelpad=1.0)

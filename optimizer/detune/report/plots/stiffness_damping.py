@@ -344,7 +344,8 @@ def _dots(ax: "Axes", data: MapData) -> Titles:
                 left = a > float(np.sqrt(data.stiffness[0] * data.stiffness[-1])) / 1e3
                 ax.annotate(
                     f"{part.part} ({', '.join(part.in_answer)})", (a, b), xytext=(-8 if left else 8, 7),
-                    textcoords="offset points", ha="right" if left else "left", fontsize=8, zorder=7, bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.8},
+                    textcoords="offset points", ha="right" if left else "left", fontsize=8, zorder=7,
+                    bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.8},
                 )  # fmt: skip
         elif carries:
             drawn = ax.scatter(x, y, s=16, color=BLACK, linewidths=0, zorder=4)

@@ -1,0 +1,277 @@
+"""Requirements as smooth rows with their slopes: not negative where met.
+
+A limit on a response is -ln(value/limit), which near zero is its margin, for each of its peaks; below 1/e of the limit
+it goes on as a straight line (`smooth`). Levels of dynamic against static force (uplift) are differences over a
+reference force, so that nothing breaks where the static force changes sign.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detune.brief.allowable.base import HarmonicAllowable, StaticAllowable
+from detune.brief.allowable.level_difference import LevelDifference
+from detune.brief.allowable.mount_deflection import MountDeflection
+from detune.brief.allowable.tilt import Tilt
+from detune.brief.allowable.uplift import Uplift
+from detune.problem.build import HarmonicRequirements
+from detune.problem.requirement import Requirement
+from detune.response.coincidence import any_meet
+from detune.response.model import Model, find_station
+from detune.solvers.gradient_mixture import ResponsePlan, mixed_slopes, mixture
+from detune.solvers.gradient_noise import noise_rows
+from detune.solvers.gradient_peaks import observed, peaks
+from detune.solvers.gradient_probe import NoMap, StaticProbe, linear, static_map, static_size
+from detune.solvers.gradient_state import StateAt
+from detune.solvers.gradient_static import Rest, static_slopes
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+# What a row without anything to limit is worth.
+NOTHING = 2.0
+# A response below this share of its limit (and of the largest response over its limit) is left without slopes.
+FAR = 0.15
+# Below this share of its limit a response is followed at sampled speeds.
+NEAR = 0.1
+LEAST_LOG = -20.0
+
+
+@dataclass(frozen=True)
+class Rows:
+    """Rows (m,) with slopes (m, u), the requirement of each, and the log of response over limit where it is one.
+
+    A row without a requirement forbids toppling on the dynamic stiffness. `log` (m,) and `log_slopes` (m, u) are nan for rows that limit no response to forcing. `omega` (m,): where the peak
+    stands, rad/s, nan where there is none.
+    """
+
+    value: Floats
+    slopes: Floats
+    requirement: tuple[Requirement | None, ...]
+    log: Floats
+    log_slopes: Floats
+    omega: Floats
+
+
+def smooth(ratio: Floats, slopes: Floats) -> tuple[Floats, Floats]:
+    """-ln(ratio) (m,), as a straight line below 1/e, and its slopes (m, u) from those of the ratio."""
+    ratio = np.minimum(ratio, 1e12)
+    high = ratio >= 1.0 / np.e
+    safe = np.where(high, ratio, 1.0)
+    value = np.where(high, -np.log(safe), 2.0 - np.e * ratio)
+    return value, np.where(high, -1.0 / safe, -np.e)[:, None] * slopes
+
+
+def logged(ratio: Floats, slopes: Floats) -> tuple[Floats, Floats]:
+    """ln(ratio) and its slopes, flat where next to nothing responds."""
+    counts = ratio > np.exp(LEAST_LOG)
+    safe = np.where(counts, np.minimum(ratio, 1e12), 1.0)
+    return np.where(counts, np.log(safe), LEAST_LOG), np.where(counts, 1.0 / safe, 0.0)[:, None] * slopes
+
+
+def together(parts: list[Rows], unknowns: int) -> Rows:
+    """All rows, in order."""
+    return Rows(
+        np.concatenate([np.zeros(0), *(p.value for p in parts)]),
+        np.concatenate([np.zeros((0, unknowns)), *(p.slopes for p in parts)]),
+        tuple(r for p in parts for r in p.requirement),
+        np.concatenate([np.zeros(0), *(p.log for p in parts)]),
+        np.concatenate([np.zeros((0, unknowns)), *(p.log_slopes for p in parts)]),
+        np.concatenate([np.zeros(0), *(p.omega for p in parts)]),
+    )
+
+
+def plain(value: Floats, slopes: Floats, requirement: tuple[Requirement | None, ...]) -> Rows:
+    """Rows that limit no response to forcing."""
+    none = np.full(len(value), np.nan)
+    return Rows(value, slopes, requirement, none, np.full_like(slopes, np.nan), none)
+
+
+# --- static requirements -------------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class StaticPlan:
+    """A static requirement as maps (V, static_size) of the features, judged by their value, or length for a tilt."""
+
+    requirement: Requirement
+    maps: Floats
+    is_length: bool
+
+
+def static_plan(requirement: Requirement, model: Model) -> StaticPlan:
+    """How a static requirement is followed. Raises NoMap where it can only be differenced."""
+    allowable, place = requirement.allowable, requirement.place
+    assert isinstance(allowable, StaticAllowable)
+    if isinstance(allowable, Tilt):
+        pair = [linear(lambda view, k=k: view.rotation(place)[:, k], model) for k in (0, 1)]
+        return StaticPlan(requirement, np.array(pair), True)
+    if isinstance(allowable, LevelDifference):
+        heights = [linear(lambda view, p=p: view.motion(p)[:, 2], model) for p in allowable.points]
+        pairs = [a - b for a in heights for b in heights if a is not b]
+        return StaticPlan(requirement, np.array(pairs), False)
+    return StaticPlan(requirement, static_map(allowable, place, model)[None], False)
+
+
+def static_rows(plans: tuple[StaticPlan, ...], found: Rest, reference: float) -> Rows:
+    """Rows of static requirements; a bound of zero is judged by the `reference` force (N) or length."""
+    if not plans:
+        return plain(np.zeros(0), np.zeros((0, found.at.part_slopes.shape[2])), ())
+    maps = np.concatenate([plan.maps for plan in plans])
+    values = maps @ found.features
+    slopes = static_slopes(found, maps)
+    rows: list[tuple[float, Floats]] = []
+    told: list[Requirement] = []
+    start = 0
+    for plan in plans:
+        end = start + len(plan.maps)
+        v, s = values[start:end], slopes[start:end]
+        if plan.is_length:
+            size = float(np.hypot(*v))
+            v, s = np.array([size]), (v @ s / max(size, 1e-300))[None]
+        start = end
+        for one, by in zip(v.tolist(), s, strict=True):
+            each = _bounded(plan.requirement, found.view, one, by, reference)
+            rows += each
+            told += [plan.requirement] * len(each)
+    return plain(np.array([value for value, _ in rows]), np.array([slope for _, slope in rows]), tuple(told))
+
+
+def _bounded(
+    requirement: Requirement, view: StaticProbe, value: float, slopes: Floats, reference: float
+) -> list[tuple[float, Floats]]:
+    allowable = requirement.allowable
+    assert isinstance(allowable, StaticAllowable)
+    rows: list[tuple[float, Floats]] = []
+    lower, upper = allowable.bounds(view, requirement.place)
+    if lower is not None and np.isfinite(lower[0]):
+        bound = float(lower[0])
+        scale = abs(bound) if bound else reference
+        rows.append(((value - bound) / scale, slopes / scale))
+    if upper is not None and np.isfinite(upper[0]):
+        bound = float(upper[0])
+        if bound > 0.0:
+            g, by = smooth(np.array([value / bound]), slopes[None] / bound)
+            rows.append((float(g[0]), by[0]))
+        else:
+            rows.append(((bound - value) / reference, -slopes / reference))
+    return rows
+
+
+# --- responses to forcing ------------------------------------------------------------------------------------------
+
+
+def response_plan(
+    group: HarmonicRequirements, model: Model
+) -> tuple[ResponsePlan | None, tuple[Requirement, ...]]:
+    """The limits of a group that have slopes, and the requirements that can only be differenced."""
+    rows = group.rows
+    every = tuple(group.requirements)
+    if group.driving is not None or rows.has_slow_parts or not (rows.families or rows.noises):
+        return None, every
+    kept: list[tuple[Requirement, tuple[HarmonicAllowable, str], Floats, bool, Floats]] = []
+    left: list[Requirement] = []
+    for requirement, (allowable, place) in zip(every, rows.pairs, strict=True):
+        if isinstance(allowable, Uplift) and _pulls(model, place):
+            continue
+        try:
+            observed(((allowable, place),), model)
+            offset, is_size, compression = _static_parts(allowable, place, model)
+        except NoMap:
+            left.append(requirement)
+            continue
+        kept.append((requirement, (allowable, place), offset, is_size, compression))
+    if not kept:
+        return None, tuple(left)
+    plan = ResponsePlan(
+        tuple(each[0] for each in kept),
+        observed(tuple(each[1] for each in kept), model),
+        rows.families,
+        rows.largest,
+        rows.noises,
+        np.array([each[2] for each in kept]),
+        np.array([each[3] for each in kept]),
+        np.array([each[4] for each in kept]),
+    )
+    return plan, tuple(left)
+
+
+def _pulls(model: Model, station: str) -> bool:
+    return bool(model.groups[find_station(model, station).group].mounts[0].pulls)
+
+
+def _static_parts(allowable: HarmonicAllowable, place: str, model: Model) -> tuple[Floats, bool, Floats]:
+    size = static_size(model)
+    none = np.zeros(size)
+    if isinstance(allowable, Uplift):
+        return none, False, linear(lambda view: -view.station_load(place)[:, 2], model)
+    if isinstance(allowable, MountDeflection):
+        if allowable.part == "dynamic":
+            return none, False, none
+        return linear(lambda view: view.station_deflection(place)[:, 2], model), True, none
+    return linear(lambda view: allowable.offset(view, place), model), False, none
+
+
+def response_rows(
+    plan: ResponsePlan, at: StateAt, found: Rest, poles: Complexes, reference: float, whole: bool = False
+) -> Rows:
+    """Rows of limits on responses, one for each peak kept.
+
+    Limits that are far from being reached get no slopes (`FAR`), which saves most of the work, unless `whole`.
+    """
+    limits, unknowns = plan.limits, at.part_slopes.shape[2]
+    maps = np.concatenate([plan.offset, plan.compression])
+    static, by_static = maps @ found.features, static_slopes(found, maps)
+    count = limits.count
+    shift = np.where(plan.offset_is_size, np.abs(static[:count]), static[:count])
+    by_shift = np.where(plan.offset_is_size, np.sign(static[:count]), 1.0)[:, None] * by_static[:count]
+    bounds = _bounds(plan, found, static[count:], reference)
+    low = np.zeros(count) if whole else np.maximum(NEAR * bounds / max(len(plan.families), 1) - shift, 0.0)
+    each = [peaks(limits, at, family, poles, low) for family in plan.families]
+    noise = noise_rows(limits, at, plan.noises, poles) if plan.noises else None
+    mixed = mixture(plan, each, noise)
+    ratio = (mixed.value + shift[:, None]) / bounds[:, None]
+    largest = ratio.max(axis=1)
+    wanted = largest >= (0.0 if whole else FAR * min(1.0, float(largest.max(initial=0.0))))
+    slopes = mixed_slopes(plan, mixed, at, each, noise, wanted, unknowns)
+    rows = []
+    for index, requirement in enumerate(plan.requirements):
+        size, by = mixed.value[index] + shift[index], slopes[index] + by_shift[index]
+        seen = mixed.value[index] > 0.0
+        seen[0] = True
+        if isinstance(requirement.allowable, Uplift):
+            told = _uplifted(size, by, static[count + index], by_static[count + index], reference)
+        else:
+            by = by / bounds[index]
+            told = (*smooth(ratio[index], by), *logged(np.maximum(ratio[index], 0.0), by))
+        g, dg, log, dlog = told
+        if not wanted[index]:
+            dg, dlog = np.zeros_like(dg), np.zeros_like(dlog)
+        g, log = np.where(seen, g, NOTHING), np.where(seen, log, LEAST_LOG)
+        dg, dlog = np.where(seen[:, None], dg, 0.0), np.where(seen[:, None], dlog, 0.0)
+        rows.append(Rows(g, dg, (requirement,) * len(g), log, dlog, mixed.omega[index]))
+    return together(rows, unknowns)
+
+
+def _bounds(plan: ResponsePlan, found: Rest, held: Floats, reference: float) -> Floats:
+    """Upper limit (R,) of each response; of uplift the static force, not below a thousandth of the reference."""
+    bounds = np.maximum(held, 1e-3 * reference)
+    for index, requirement in enumerate(plan.requirements):
+        allowable = requirement.allowable
+        if not isinstance(allowable, Uplift):
+            assert isinstance(allowable, HarmonicAllowable)
+            bounds[index] = float(allowable.bound(found.view, requirement.place)[0])
+    return bounds
+
+
+def _uplifted(
+    size: Floats, by: Floats, held: float, by_held: Floats, reference: float
+) -> tuple[Floats, Floats, Floats, Floats]:
+    """Rows of a dynamic force (m,) against the static one `held` (N)."""
+    g, dg = (held - size) / reference, (by_held - by) / reference
+    floor = max(held, 1e-3 * reference)
+    counts = held > 1e-3 * reference
+    by_ratio = by / floor - (size / floor**2)[:, None] * by_held * counts
+    return g, dg, *logged(size / floor, by_ratio)

@@ -1,0 +1,477 @@
+"""Speeds not to dwell at: stated by the brief, and found for each design."""
+
+from __future__ import annotations
+
+import importlib.util
+import math
+from pathlib import Path
+from types import ModuleType
+from typing import Any
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from detune.brief.allowable.displacement import Displacement
+from detune.brief.allowable.dwell_bands import DwellBands
+from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.transmissibility import Transmissibility
+from detune.brief.allowable.velocity import Velocity
+from detune.brief.brief import Brief
+from detune.brief.choice import Objectives
+from detune.brief.condition import Condition
+from detune.brief.cross_check import cross_check
+from detune.brief.dwell import joined, left_of, without_barred
+from detune.brief.forcing.shaft_orders import Order, ShaftOrders
+from detune.brief.read import read_brief, scan_brief
+from detune.physics.crossing import stretches_above
+from detune.problem.build import build
+from detune.report.tables_dwell import dwell_table
+from detune.response.assess import assess
+from detune.response.designs import all_designs
+from detune.solvers import bounded, enumeration
+from detune.solvers.outcome import Settings
+from detune.study.front import assessed_front
+
+
+def _load(name: str) -> ModuleType:
+    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
+    assert spec is not None and spec.loader is not None
+    module = importlib.util.module_from_spec(spec)
+    spec.loader.exec_module(module)
+    return module
+
+
+machines = _load("machines")
+TWO_PI = 2.0 * math.pi
+RPM = 1.0 / 60.0
+M, K, C, ME = 120.0, 4.0e5, 500.0, 2.0e-3
+RANGE = (6.0, 18.0)
+TIMES = st.floats(0.0, 10.0)
+
+
+@settings(deadline=None, max_examples=60)
+@given(st.lists(st.tuples(TIMES, TIMES).map(sorted), max_size=5), TIMES)
+def test_what_is_left_is_what_no_band_holds(bands: list[list[float]], point: float) -> None:
+    """A speed is left, or strictly inside a band, or on an edge; every one of 50,000 speeds by comparison."""
+    barred = tuple((a, b) for a, b in bands)
+    left = left_of(2.0, 8.0, barred)
+    inside = any(a < point < b for a, b in barred)
+    assert all(a < b for a, b in left)
+    assert all(left[i][1] <= left[i + 1][0] for i in range(len(left) - 1))
+    if inside or not 2.0 <= point <= 8.0:
+        assert not any(a < point < b for a, b in left)
+    edge = any(point in band for band in barred)
+    if 2.0 <= point <= 8.0 and not inside and not edge:
+        assert any(a <= point <= b for a, b in left)
+
+
+def test_bands_are_joined_across_the_narrowest_gaps() -> None:
+    bands = [(1.0, 2.0), (6.0, 7.0), (2.5, 3.0), (1.5, 2.2), (9.0, 9.5)]
+    assert joined(bands) == ((1.0, 2.2), (2.5, 3.0), (6.0, 7.0), (9.0, 9.5))
+    assert joined(bands, 3) == ((1.0, 3.0), (6.0, 7.0), (9.0, 9.5))
+    assert joined(bands, 1) == ((1.0, 9.5),)
+
+
+def test_stretches_of_known_curves() -> None:
+    """sin x > 0.5 on (pi/6, 5 pi/6) + 2 pi n, cut off at 14; and a needle at 3 that only its centre tells of."""
+    found = stretches_above(lambda x: np.sin(x) - 0.5, 0.0, 14.0, [], [])
+    expected = [[math.pi / 6 + n * TWO_PI, min(5 * math.pi / 6 + n * TWO_PI, 14.0)] for n in range(3)]
+    assert np.array(found) == pytest.approx(np.array(expected), abs=1e-8)
+
+    def needle(x: np.ndarray) -> np.ndarray:
+        return 2.0 / (1.0 + ((x - 3.0) / 1e-6) ** 2) - 1.0
+
+    ((low, high),) = stretches_above(needle, 0.0, 14.0, [3.0], [1e-6])
+    assert (low - 3.0, high - 3.0) == pytest.approx((-1e-6, 1e-6), rel=1e-3)
+
+
+def fan(*more: Any, mass: float = M, barred: Any = None, **changes: Any) -> Brief:
+    condition = Condition(name="running", shafts={"rotor": RANGE}, barred=barred or {})
+    return machines.one_axis(mass, machines.unbalance(ME), more, **{"conditions": (condition,), **changes})
+
+
+def size(speed: np.ndarray, k: float = K, c: float = C, mass: float = M) -> np.ndarray:
+    """Displacement under rotating unbalance, peak: m e w^2 / |k - m w^2 + j w c|."""
+    w = TWO_PI * np.asarray(speed)
+    return np.asarray(ME * w**2 / np.abs(k - mass * w**2 + 1j * w * c))
+
+
+def edges(limit: float) -> tuple[float, float]:
+    """Where the displacement is at the limit: (m e)^2 x^2 = L^2 ((k - m x)^2 + c^2 x) with x = w^2, a quadratic."""
+    a = ME**2 - limit**2 * M**2
+    b = limit**2 * (2.0 * K * M - C**2)
+    low, high = sorted(np.roots([a, b, -(limit**2) * K**2]).real)
+    return float(np.sqrt(low)) / TWO_PI, float(np.sqrt(high)) / TWO_PI
+
+
+class TestStated:
+    """Barred bands that the brief states."""
+
+    bands = ((8.0, 9.6), (9.4, 10.2), (17.0, 20.0))
+
+    def test_limits_hold_over_what_is_left(self) -> None:
+        """The resonance at 9.19 Hz is barred: of what is left the values at its edges count, by the closed form."""
+        limit = Displacement(at="P", direction="z", measure="peak", limit=1.0)
+        found = machines.assessed(fan(limit, barred={"rotor": self.bands}), machines.mount(k=K, c=C))
+        rows = {r.condition: r for r in found.margins if r.kind == "displacement" and r.upper == 1.0}
+        assert sorted(rows) == [
+            "running, rotor 360 to 480 rev/min",
+            "running, rotor 612 to 1020 rev/min",
+        ]
+        low, high = (rows[name] for name in sorted(rows))
+        assert low.value == pytest.approx(float(size(np.array(8.0))), rel=1e-9)
+        assert high.value == pytest.approx(float(size(np.array(10.2))), rel=1e-9)
+        assert (low.frequency, high.frequency) == (8.0, 10.2)
+
+    def test_separation_counts_what_is_left(self) -> None:
+        """f_n = sqrt(k/m)/2 pi = 9.189 Hz lies above 8 Hz by f/8 - 1 and below 10.2 Hz by 1 - f/10.2."""
+        natural = math.sqrt(K / M) / TWO_PI
+        found = machines.assessed(fan(barred={"rotor": self.bands}), machines.mount(k=K, c=C))
+        assert found.separation == pytest.approx(1.0 - natural / 10.2, rel=1e-9)
+        assert machines.assessed(fan(), machines.mount(k=K, c=C)).separation < 0.0
+
+    def test_batch_agrees(self) -> None:
+        limit = Velocity(at="P", direction="z", measure="rms", limit=1e-3)
+        problem = build(
+            fan(limit, barred={"rotor": self.bands}), {"list": machines.catalog(machines.mount(k=K, c=C))}
+        )
+        margins = machines.batch_margins(problem, all_designs(problem.model, 0, 1))
+        found = assess(problem.brief, problem.design(all_designs(problem.model, 0, 1), 0))
+        for row in found.margins:
+            if row.kind == "velocity":
+                assert margins[row.quantity, row.place, row.condition][0] == pytest.approx(
+                    row.margin, rel=1e-6
+                )
+
+    def test_two_shafts_are_judged_in_every_combination(self) -> None:
+        both = Condition(
+            name="running", shafts={"rotor": RANGE, "pump": (20.0, 30.0)},
+            barred={"rotor": ((8.0, 10.0),), "pump": ((22.0, 23.0),)},
+        )  # fmt: skip
+        brief = fan(conditions=(both,))
+        other = machines.unbalance(ME, name="other", shaft="pump")
+        pieces = without_barred(brief.model_copy(update={"forcing": (*brief.forcing, other)}))
+        assert [c.shafts for c in pieces.conditions] == [
+            {"rotor": r, "pump": p} for r in ((6.0, 8.0), (10.0, 18.0)) for p in ((20.0, 22.0), (23.0, 30.0))
+        ]
+
+    def test_report_lists_them(self) -> None:
+        brief = without_barred(fan(barred={"rotor": self.bands}))
+        table = dwell_table(brief, machines.assessed(brief, machines.mount(k=K, c=C)))
+        assert table is not None
+        assert [row[2:4] for row in table.rows[:3]] == [
+            ("480.0", "576.0"),
+            ("564.0", "612.0"),
+            ("1020.0", "1200.0"),
+        ]
+        # 8 to 10.2 Hz and 17 to 18 Hz of 12 Hz: 192 of 720 rev/min.
+        assert table.rows[3][4] == "192.0" and table.rows[3][5].startswith("in all, 26.7 %")
+        (note,) = [
+            n for n in build(brief, {"list": machines.catalog(machines.mount(k=K))}).assumed if "barred" in n
+        ]
+        assert "which no condition with a run-up or coast-down judges" in note
+
+
+def limited(limit: float, width: float, **changes: Any) -> tuple[Displacement, DwellBands]:
+    return (
+        Displacement(at="P", direction="z", measure="peak", limit=limit),
+        DwellBands(shaft="rotor", width=width, **changes),
+    )
+
+
+class TestFound:
+    """Bands found for each design."""
+
+    @pytest.mark.parametrize("limit", [2e-5, 3e-5, 5e-5, 1.5e-4])
+    def test_edges_are_the_roots_of_a_quadratic(self, limit: float) -> None:
+        """Both ways within 1e-7 of the roots and never inside them."""
+        low, high = edges(limit)
+        # At 20 um the upper edge is out of the range.
+        high = min(high, RANGE[1])
+        brief = fan(*limited(limit, 4.0))
+        part = machines.mount(k=K, c=C)
+        found = machines.assessed(brief, part)
+        ((band),) = found.barred
+        problem = build(brief, {"list": machines.catalog(part)})
+        ((first, last),) = problem.dwell[0].bands(all_designs(problem.model, 0, 1)) or ()
+        for a, b in ((band.low, band.high), (first, last)):
+            assert (a, b) == pytest.approx((low, high), rel=1e-7)
+            assert a <= low * (1.0 + 1e-12) and b >= high * (1.0 - 1e-12)
+        row = next(r for r in found.margins if r.kind == "dwell-bands")
+        assert row.value == pytest.approx(high - low, rel=1e-6)
+        assert row.margin == pytest.approx(4.0 / (high - low) - 1.0, rel=1e-6)
+        assert found.meets == (high - low <= 4.0)
+
+    def test_limits_are_judged_over_what_is_left(self) -> None:
+        found = machines.assessed(fan(*limited(3e-5, 4.0)), machines.mount(k=K, c=C))
+        row = next(r for r in found.margins if r.kind == "displacement" and r.upper == 3e-5)
+        assert row.note == "over the speeds that are left"
+        assert 0.0 <= row.margin < 1e-6
+        assert "displacement z, peak at P: " in found.barred[0].why
+
+    def test_nothing_is_barred_where_nothing_is_exceeded(self) -> None:
+        found = machines.assessed(fan(*limited(1.0, 4.0)), machines.mount(k=K, c=C))
+        assert found.barred == () and found.meets
+
+    def test_separation_is_kept_over_what_is_left(self) -> None:
+        """f_n / (1 + s) to f_n / (1 - s), and the whole range where the separation cannot be had."""
+        natural = math.sqrt(K / M) / TWO_PI
+        brief = fan(*limited(1.0, 6.0), Separation(limit=0.2))
+        found = machines.assessed(brief, machines.mount(k=K, c=C))
+        (band,) = found.barred
+        assert (band.low, band.high) == pytest.approx((natural / 1.2, natural / 0.8), rel=1e-8)
+        assert found.separation == pytest.approx(0.2, rel=1e-7) and found.meets
+        problem = build(brief, {"list": machines.catalog(machines.mount(k=K, c=C))})
+        outcome = enumeration.solve(problem, Settings())
+        assert outcome.objectives["separation"] == pytest.approx([0.2], rel=1e-7)
+
+    def test_a_second_source_takes_room(self) -> None:
+        """A steady force of another frequency adds its own peak at any speed: the limit left is L - F / |k - m w^2|."""
+        other = machines.force(40.0, size=40.0)
+        brief = fan(*limited(3e-5, 4.0))
+        brief = brief.model_copy(update={"forcing": (*brief.forcing, other)})
+        w = TWO_PI * 40.0
+        room = 3e-5 - 40.0 / abs(K - M * w**2 + 1j * w * C)
+        (band,) = machines.assessed(brief, machines.mount(k=K, c=C)).barred
+        assert (band.low, band.high) == pytest.approx(edges(room), rel=1e-7)
+        loud = brief.model_copy(update={"forcing": (brief.forcing[0], machines.force(40.0, size=2000.0))})
+        found = machines.assessed(loud, machines.mount(k=K, c=C))
+        row = next(r for r in found.margins if r.kind == "dwell-bands")
+        assert (row.value, row.margin, found.meets) == (math.inf, -1.0, False)
+        problem = build(loud, {"list": machines.catalog(machines.mount(k=K, c=C))})
+        assert problem.dwell[0].margins(all_designs(problem.model, 0, 1)).tolist() == [[-1.0]]
+
+    def test_two_orders_make_two_bands_or_one(self) -> None:
+        """Orders 1 and 1.5, each with a force that exceeds the limit near its own resonance; brute force by numpy."""
+        orders = ShaftOrders(
+            name="orders", shaft="rotor", position=(0.0, 0.0, 0.0),
+            orders=(Order(order=1.0, force=(0.0, 0.0, 4.0)), Order(order=1.5, force=(0.0, 0.0, 5.0))),
+        )  # fmt: skip
+        limit = 1e-4
+        part = machines.mount(k=K, c=C)
+        brief = machines.one_axis(
+            M,
+            orders,
+            limited(limit, 4.0),
+            conditions=(Condition(name="running", shafts={"rotor": (4.0, 14.0)}),),
+        )
+        speed = np.linspace(4.0, 14.0, 2_000_001)
+        w = TWO_PI * speed
+        total = sum(f / np.abs(K - M * (p * w) ** 2 + 1j * p * w * C) for p, f in ((1.0, 4.0), (1.5, 5.0)))
+        above = np.flatnonzero(np.diff((total > limit).astype(int)))
+        expected = speed[above]
+        found = machines.assessed(brief, part)
+        assert [x for band in found.barred for x in (band.low, band.high)] == pytest.approx(
+            list(expected), abs=1e-5
+        )
+        one = machines.one_axis(M, orders, limited(limit, 6.0, bands=1), conditions=brief.conditions)
+        (band,) = machines.assessed(one, part).barred
+        assert (band.low, band.high) == pytest.approx((expected[0], expected[3]), abs=1e-5)
+
+    @pytest.mark.parametrize("seed", range(3))
+    def test_six_axes_by_brute_force(self, seed: int) -> None:
+        """Every speed of 60,000 that exceeds the limit by numpy's solver lies in a band, and no band is too wide."""
+        two_ways = _load("test_two_ways")
+        brief, mounts = machines.random_machine(seed, viscous=True)
+        turning = brief.forcing[1]
+        low, high = 6.0, 30.0
+        mass, damping, stiffness = two_ways.by_hand(brief, mounts)
+        speed = np.linspace(low, high, 60_001)
+        (tone,) = turning.tones({"rotor": (low, high)})
+        (body,), point = brief.bodies, np.array(brief.points[0].position)
+        arm = np.array(tone.position) - np.array(body.centre)
+        load = np.zeros(7, dtype=complex)
+        load[:3], load[3:6] = tone.force, np.cross(arm, np.array(tone.force))
+        w = TWO_PI * speed
+        matrix = stiffness + 1j * w[:, None, None] * damping - w[:, None, None] ** 2 * mass
+        q = np.linalg.solve(matrix, (w[:, None] ** 2 * load)[..., None])[..., 0]
+        moved = q[:, :3] + np.cross(q[:, 3:6], point - np.array(body.centre))
+        value = np.abs(w * moved[:, 2]) / math.sqrt(2.0)
+        limit = float(np.quantile(value, 0.8))
+        brief = brief.model_copy(
+            update={
+                "forcing": (turning,),
+                "conditions": (Condition(name="running", shafts={"rotor": (low, high)}),),
+                "allowables": (
+                    Velocity(at="P", direction="z", measure="rms", limit=limit),
+                    DwellBands(shaft="rotor", share=0.9),
+                ),
+            }
+        )
+        bands = machines.assessed(brief, *mounts).barred
+        inside = np.zeros(len(speed), dtype=bool)
+        for band in bands:
+            inside |= (speed >= band.low) & (speed <= band.high)
+        assert not np.any((value > limit * (1.0 + 1e-9)) & ~inside)
+        assert np.sum(inside) <= np.sum(value > limit) + 2 * len(bands)
+        problem = build(brief, {"list": machines.catalog(*mounts)})
+        designs = all_designs(problem.model, 0, problem.count)
+        own = next(
+            i
+            for i in range(problem.count)
+            if problem.design(designs, i).parts == tuple(m.part for m in mounts)
+        )
+        batch = problem.dwell[0].bands(designs.take(np.array([own])))
+        assert batch is not None
+        assert np.array(batch) == pytest.approx(np.array([(b.low, b.high) for b in bands]), rel=1e-7)
+
+    def test_the_cheapest_design_whose_bands_are_narrow_enough(self) -> None:
+        """Of 6 mounts the width by the closed form decides; enumeration and bounded search find the same."""
+        limit, allowed = 3e-5, 2.0
+        parts = [
+            machines.mount(f"m{i}", k, c=c, cost=cost)
+            for i, (k, c, cost) in enumerate(
+                [(4e5, 500.0, 3.0), (4e5, 1500.0, 7.0), (2.4e6, 500.0, 9.0), (1e5, 300.0, 5.0), (6e5, 800.0, 4.0),
+                 (3e5, 3000.0, 6.0)]
+            )
+        ]  # fmt: skip
+        speed = np.linspace(*RANGE, 400_001)
+        step = speed[1] - speed[0]
+        widths = {
+            p.part: step * np.sum(size(speed, p.stiffness_dynamic[2], p.viscous[2]) > limit) for p in parts
+        }
+        good = {p.cost: p.part for p in parts if widths[p.part] <= allowed}
+        assert 0 < len(good) < len(parts)
+        brief = fan(*limited(limit, allowed), objectives=Objectives(trade=("cost", "separation")))
+        problem = build(brief, {"list": machines.catalog(*parts)})
+        for solver in (enumeration, bounded):
+            front = assessed_front(problem, solver.solve(problem, Settings()))
+            assert front.points[0].design.parts == (good[min(good)],)
+            assert not front.withdrawn
+        met = enumeration.solve(problem, Settings()).designs
+        assert {problem.design(met, i).parts[0] for i in range(met.count)} == set(good.values())
+
+
+@pytest.mark.parametrize(
+    "brief, key, words",
+    [
+        (fan(*limited(1e-5, 13.0)), ("allowable", 2, "width"), "less than the whole range, 720 rev/min"),
+        (
+            fan(limited(1e-5, 1.0)[0], DwellBands(shaft="pump", width=1.0)),
+            ("allowable", 2, "shaft"),
+            "a shaft of",
+        ),
+        (
+            fan(*limited(1e-5, 1.0), barred={"rotor": ((8.0, 9.0),)}),
+            ("allowable", 2),
+            'either "barred" speeds',
+        ),
+        (
+            fan(*limited(1e-5, 1.0), Transmissibility(of="force", direction="z", limit=1.0)),
+            ("allowable", 2),
+            "limits on responses at one speed",
+        ),
+        (
+            fan(*limited(1e-5, 1.0), objectives=Objectives(trade=("cost", "least-margin"))),
+            ("objectives", "trade"),
+            'objectives without "least-margin"',
+        ),
+        (fan(barred={"rotor": ((5.0, 19.0),)}), ("condition", 0, "barred", "rotor"), "bands that leave some"),
+        (
+            fan(barred={"rotor": ((8.0, 9.0), (19.0, 20.0))}),
+            ("condition", 0, "barred", "rotor", 1),
+            "a band within the range of rotor, 360 to 1080 rev/min",
+        ),
+    ],
+)
+def test_what_is_refused(brief: Brief, key: tuple[Any, ...], words: str) -> None:
+    (fault,) = cross_check(brief)
+    assert fault.path == key and words in fault.expected
+
+
+STUDY = """title = "t"
+[[body]]
+name = "m"
+free = ["z"]
+mass = "120 kg"
+centre = ["0 m", "0 m", "0 m"]
+[[point]]
+name = "P"
+position = ["0 m", "0 m", "0 m"]
+[[station]]
+name = "S"
+group = "G"
+position = ["0 m", "0 m", "0 m"]
+[floor]
+kind = "rigid"
+[[condition]]
+name = "running"
+shafts = { rotor = ["360 rpm", "1080 rpm"] }
+barred = { rotor = [["480 rpm", "560 rpm"]] }
+[[forcing]]
+kind = "rotating-unbalance"
+name = "u"
+shaft = "rotor"
+position = ["0 m", "0 m", "0 m"]
+axis = "x"
+unbalance = "2000 g mm"
+[[allowable]]
+kind = "displacement"
+at = "P"
+direction = "z"
+measure = "peak"
+limit = "0.03 mm"
+conditions = ["running"]
+[[catalog]]
+name = "list"
+file = "list.csv"
+[[choice]]
+group = "G"
+catalogs = ["list"]
+"""
+
+
+def test_a_study_file_is_taken_apart(tmp_path: Path) -> None:
+    study = tmp_path / "study.toml"
+    study.write_text(STUDY, encoding="utf-8")
+    brief = read_brief(study)
+    names = ("running, rotor 360 to 480 rev/min", "running, rotor 560 to 1080 rev/min")
+    assert tuple(c.name for c in brief.conditions) == names
+    assert brief.allowables[0].conditions == names
+    assert brief.conditions[0].whole.name == "running"
+
+
+@pytest.mark.parametrize(
+    "old, new, line, where, words",
+    [
+        ('"560 rpm"', '"470 rpm"', 19, "condition[1].barred", "the lower end first"),
+        ('"480 rpm"', '"480"', 19, "condition[1].barred.rotor[1][1]", "unit"),
+        (
+            "barred = { rotor",
+            "barred = { pump",
+            19,
+            "condition[1].barred",
+            "a shaft of this condition: rotor",
+        ),
+        ("barred", "steady = false\nbarred", 20, "condition[1].barred", "in a steady condition alone"),
+        ("barred", "bared", 19, "condition[1].bared", "one of the keys"),
+    ],
+)
+def test_faults_of_a_study_file(
+    tmp_path: Path, old: str, new: str, line: int, where: str, words: str
+) -> None:
+    study = tmp_path / "study.toml"
+    study.write_text(STUDY.replace(old, new), encoding="utf-8")
+    (fault,) = scan_brief(study).faults
+    assert (fault.line, fault.where) == (line, where) and words in fault.expected
+
+
+@pytest.mark.parametrize(
+    "text, where, words",
+    [
+        ('width = "2 Hz"\nshare = "10 %"', "allowable[2]", 'either "width"'),
+        ("", "allowable[2]", 'either "width"'),
+        ('share = "120 %"', "allowable[2].share", "a share above 0 and below 100 %"),
+        ('width = "2 Hz"\nbands = 0', "allowable[2].bands", "a whole number of bands"),
+        ('width = "2"', "allowable[2].width", "unit"),
+    ],
+)
+def test_faults_of_the_limit(tmp_path: Path, text: str, where: str, words: str) -> None:
+    limit = f'[[allowable]]\nkind = "dwell-bands"\nshaft = "rotor"\n{text}\n[[catalog]]'
+    study = tmp_path / "study.toml"
+    stated = STUDY.replace('barred = { rotor = [["480 rpm", "560 rpm"]] }\n', "")
+    study.write_text(stated.replace("[[catalog]]", limit), encoding="utf-8")
+    (fault,) = scan_brief(study).faults
+    assert fault.where == where and words in fault.expected
