@@ -255,6 +255,7 @@ MEANING: dict[str, str] = {
     "BandLimit.velocity_rms": "limit of each band of a mask",
     "Separation.exempt_amplification": "modes that amplify less are left out of the limit; left out: none is",
     "SettlingTime.to": "share of the amplitude that is left",
+    "FloorVelocity.stations": "of a floor of kind `stiffness-matrix`: where it is judged",
     "FloorRatio.direction": "along which the unit force acts: axis name or a vector",
     "FloorRatio.from_frequency": "what lies below is not judged",
     "DwellBands.shaft": "the shaft whose speeds are barred",

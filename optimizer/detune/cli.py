@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from detune.brief.brief import Brief
     from detune.response.assessment import Assessment
     from detune.solvers.outcome import Progress, Settings
+    from detune.study.over_scatter import OverScatter
 
 MEETS, NONE_MEETS, FAULTY, STOPPED = 0, 1, 2, 3
 
@@ -130,6 +131,13 @@ def _add_options(
     )
     for verb in (run, vary):
         verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
+    for verb in (assess, compare):
+        verb.add_argument(
+            "--time-limit",
+            metavar="TIME",
+            default="60 s",
+            help="for the proof over a stated scatter, each design (default: 60 s)",
+        )
 
 
 def _check(options: argparse.Namespace) -> int:
@@ -184,31 +192,51 @@ def _run(options: argparse.Namespace) -> int:
 
 
 def _assess(options: argparse.Namespace) -> int:
+    from detune.report.named_scatter import scatter_text
     from detune.report.summary import assess_text
 
-    brief, (assessment,) = _judged(options.study, [options.design])
+    brief, (assessment,), (scatter,) = _judged(options, [options.design])
     print(assess_text(brief, assessment))
-    return MEETS if assessment.meets else NONE_MEETS
+    if scatter is not None:
+        print(scatter_text(brief, scatter))
+    return _code([assessment], [scatter])
 
 
 def _compare(options: argparse.Namespace) -> int:
+    from detune.report.named_scatter import scatter_rows
     from detune.report.summary import compare_text
 
-    _, assessments = _judged(options.study, options.design)
-    print(compare_text(assessments))
-    return MEETS if any(assessment.meets for assessment in assessments) else NONE_MEETS
+    _, assessments, judged = _judged(options, options.design)
+    print(compare_text(assessments, more=scatter_rows(judged)))
+    return _code(assessments, judged)
 
 
-def _judged(path: str, texts: Sequence[str]) -> "tuple[Brief, list[Assessment]]":
+def _code(assessments: "Sequence[Assessment]", judged: "Sequence[OverScatter | None]") -> int:
+    """0 one of the designs meets the brief (over its scatter, where that is an interval), 3 one is open, 1 none does."""
+    met = [each for a, each in zip(assessments, judged, strict=True) if a.meets]
+    if any(each is None or each.verdict is None or each.proven for each in met):
+        return MEETS
+    return STOPPED if any(each is not None and each.proven is None for each in met) else NONE_MEETS
+
+
+def _judged(
+    options: argparse.Namespace, texts: Sequence[str]
+) -> "tuple[Brief, list[Assessment], list[OverScatter | None]]":
     from detune.problem.build import build
     from detune.response.assess import assess
     from detune.study.load import load_study
     from detune.study.named import named_design
+    from detune.study.over_scatter import over_scatter
 
-    study = load_study(path)
-    build(study.brief, study.catalogs)
+    study = load_study(options.study)
+    problem = build(study.brief, study.catalogs)
+    limit = _settings(options).time_limit
     designs = [named_design(study.brief, study.catalogs, text) for text in texts]
-    return study.brief, [assess(study.brief, design) for design in designs]
+    return (
+        study.brief,
+        [assess(study.brief, design) for design in designs],
+        [over_scatter(problem, design, limit) for design in designs],
+    )
 
 
 def _vary(options: argparse.Namespace) -> int:

@@ -88,7 +88,9 @@ def test_a_level_is_judged_as_its_rms_value_and_shown_with_its_reference() -> No
         ("1e5 dB", "rms", "between -400 dB and 400 dB"),
     ],
 )
-def test_what_is_no_level_is_refused_in_place(limit: str, measure: str, expected: str, tmp_path: Path) -> None:
+def test_what_is_no_level_is_refused_in_place(
+    limit: str, measure: str, expected: str, tmp_path: Path
+) -> None:
     allowable = bad.LIMIT.replace("acceleration", "velocity").replace("peak", measure)
     study = bad.BASE.replace("FORCING", bad.TONE).replace("ALLOWABLE", allowable.replace("1 m/s^2", limit))
     (tmp_path / "study.toml").write_text(study, encoding="utf-8")

@@ -23,7 +23,9 @@ def by_scipy(mass: np.ndarray, damping: np.ndarray, rows: np.ndarray, laws: list
         held = np.array([float(law_force(law, x)[0]) for law, x in zip(laws, d, strict=True)])
         return np.r_[y[n:], inverse @ (f - damping @ y[n:] - rows.T @ held)]
 
-    found = solve_ivp(rates, (0.0, time[-1]), start.ravel(), t_eval=time, rtol=1e-10, atol=1e-13, max_step=STEP)
+    found = solve_ivp(
+        rates, (0.0, time[-1]), start.ravel(), t_eval=time, rtol=1e-10, atol=1e-13, max_step=STEP
+    )
     return found.y[:n].T
 
 
@@ -40,7 +42,8 @@ def test_two_masses_against_an_adaptive_integrator(kind: str, parts: int) -> Non
     }[kind]
     laws = [first, ElementLaw(stiffness=3e4)]
     time = STEP * np.arange(COUNT)
-    load = np.outer(np.where(time < 0.02, 900.0 * np.sin(np.pi * time / 0.02), 0.0), [1.0, 0.3]) + [100.0, 0.0]
+    pulse = np.where(time < 0.02, 900.0 * np.sin(np.pi * time / 0.02), 0.0)
+    load = np.stack([100.0 + pulse, 0.3 * pulse], axis=1)
     start = np.array([[5e-3, 6e-3], [0.1, -0.2]])
     found = run_on_laws(mass, damping, rows, laws, np.zeros(2), load, STEP, parts, start)
     expected = by_scipy(mass, damping, rows, laws, load, start)

@@ -92,7 +92,9 @@ def test_the_worse_reading_is_drawn_and_told() -> None:
     # displacement at 8 to 60 Hz meets the reading with the larger value at every speed.
     part = law_machines.unknown(machines.mount(k=K, loss=0.3), rated=400.0)
     limit = Displacement(at="P", direction="z", measure="peak", limit=1.0)
-    brief = machines.one_axis(MASS, machines.force((4.0, 60.0), 50.0)).model_copy(update={"allowables": (limit,)})
+    brief = machines.one_axis(MASS, machines.force((4.0, 60.0), 50.0)).model_copy(
+        update={"allowables": (limit,)}
+    )
     found = assessed(brief, part)
     (curve,) = response_curves(brief, found)
     w = TWO_PI * curve.speed

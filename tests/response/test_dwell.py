@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import importlib.util
 import math
+from dataclasses import replace
 from pathlib import Path
 from types import ModuleType
 from typing import Any
@@ -13,6 +14,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from detune.brief.allowable.acceleration import Acceleration
 from detune.brief.allowable.displacement import Displacement
 from detune.brief.allowable.dwell_bands import DwellBands
 from detune.brief.allowable.separation import Separation
@@ -27,12 +29,18 @@ from detune.brief.forcing.shaft_orders import Order, ShaftOrders
 from detune.brief.read import read_brief, scan_brief
 from detune.physics.crossing import stretches_above
 from detune.problem.build import build
+from detune.report.page import sections
 from detune.report.tables_dwell import dwell_table
 from detune.response.assess import assess
+from detune.response.design import Design
 from detune.response.designs import all_designs
-from detune.solvers import bounded, enumeration
+from detune.response.direct import DirectMachine
+from detune.response.direct_supremum import amplitudes_at, coherent_sets, tones_of
+from detune.solvers import SOLVERS
 from detune.solvers.outcome import Settings
 from detune.study.front import assessed_front
+from detune.study.load import load_study
+from detune.study.run import run_study
 
 
 def _load(name: str) -> ModuleType:
@@ -224,7 +232,7 @@ class TestFound:
         assert (band.low, band.high) == pytest.approx((natural / 1.2, natural / 0.8), rel=1e-8)
         assert found.separation == pytest.approx(0.2, rel=1e-7) and found.meets
         problem = build(brief, {"list": machines.catalog(machines.mount(k=K, c=C))})
-        outcome = enumeration.solve(problem, Settings())
+        outcome = SOLVERS["enumeration"].solve(problem, Settings())
         assert outcome.objectives["separation"] == pytest.approx([0.2], rel=1e-7)
 
     def test_a_second_source_takes_room(self) -> None:
@@ -336,11 +344,12 @@ class TestFound:
         assert 0 < len(good) < len(parts)
         brief = fan(*limited(limit, allowed), objectives=Objectives(trade=("cost", "separation")))
         problem = build(brief, {"list": machines.catalog(*parts)})
-        for solver in (enumeration, bounded):
+        for solver in SOLVERS.values():
+            assert solver.refusal(problem) is None
             front = assessed_front(problem, solver.solve(problem, Settings()))
             assert front.points[0].design.parts == (good[min(good)],)
             assert not front.withdrawn
-        met = enumeration.solve(problem, Settings()).designs
+        met = SOLVERS["enumeration"].solve(problem, Settings()).designs
         assert {problem.design(met, i).parts[0] for i in range(met.count)} == set(good.values())
 
 
@@ -475,3 +484,92 @@ def test_faults_of_the_limit(tmp_path: Path, text: str, where: str, words: str) 
     study.write_text(stated.replace("[[catalog]]", limit), encoding="utf-8")
     (fault,) = scan_brief(study).faults
     assert fault.where == where and words in fault.expected
+
+
+def test_the_whole_road(tmp_path: Path) -> None:
+    """A study file with a limit on the barred width, run, assessed and reported; the width by the closed form."""
+    limit = '[[allowable]]\nkind = "dwell-bands"\nshaft = "rotor"\nwidth = "260 rpm"\n[[catalog]]'
+    run_up = (
+        '[[condition]]\nname = "start"\nsteady = false\nshafts = { rotor = ["60 rpm", "1080 rpm"] }\n'
+        'run_up = { rotor = "8 s" }\n[[forcing]]'
+    )
+    stated = STUDY.replace('barred = { rotor = [["480 rpm", "560 rpm"]] }\n', "").replace(
+        "[[forcing]]", run_up
+    )
+    stated = stated.replace("[[catalog]]", limit.replace("width", 'conditions = ["running"]\nwidth'))
+    (tmp_path / "study.toml").write_text(stated, encoding="utf-8")
+    (tmp_path / "list.csv").write_text(
+        "part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],viscous [N s/m],load_min [N],load_max [N],"
+        "pulls,tolerance [%],cost\nash,spring,400,400,500,0,9000,yes,10,5\nelm,spring,400,400,3000,0,9000,yes,10,9\n",
+        encoding="utf-8",
+    )
+    result = run_study(load_study(tmp_path / "study.toml"), Settings())
+    low, high = edges(3e-5)
+    assert high - low > 260.0 * RPM
+    assert result.answer is not None and result.answer.design.parts == ("elm",)
+    found = {s.name: s for s in sections(result, {})}["dwell"]
+    assert found.heading == "Speeds not to dwell at"
+    assert 'passing through them is judged in condition "start"' in found.texts[0]
+    (table,) = found.tables
+    (band,) = result.answer.barred
+    assert table.rows[0][:2] == ("running", "rotor")
+    assert float(table.rows[0][2]) <= 60.0 * band.low and 60.0 * band.high <= float(table.rows[0][3])
+    assert float(table.rows[0][3]) - float(table.rows[0][2]) == pytest.approx(
+        60.0 * (band.high - band.low), abs=0.2
+    )
+    assert table.rows[1][5].endswith("260 rev/min may be barred")
+    speed = np.linspace(*RANGE, 400_001)
+    above = speed[size(speed, K, 3000.0) > 3e-5]
+    assert (band.low, band.high) == pytest.approx((above[0], above[-1]), abs=1e-4)
+
+
+@pytest.mark.parametrize(
+    "seed", [2, 7, 16, *(pytest.param(s, marks=pytest.mark.nightly) for s in range(20, 50))]
+)
+def test_random_machines_both_ways_and_by_dense_sampling(seed: int) -> None:
+    """Up to three orders, two limits, loss factors down to 1e-4: the same bands, and no sampled speed missed."""
+    random = np.random.default_rng(seed + 100)
+    brief, mounts = machines.random_machine(seed, flexible_floor=bool(seed % 2))
+    loss = float(10 ** random.uniform(-4, -1))
+    mounts = tuple(replace(mount, loss_factor=(loss,) * 3) for mount in mounts)
+    orders = ShaftOrders(
+        name="orders",
+        shaft="rotor",
+        position=(0.1, 0.0, 0.2),
+        orders=tuple(
+            Order(order=p, force=tuple(float(f) for f in random.normal(0, 20, 3)))
+            for p in (1.0, 2.0, 0.5)[: 1 + seed % 3]
+        ),
+    )
+    limits = (
+        Velocity(
+            at="P",
+            direction="resultant",
+            measure="rms" if seed % 2 else "peak",
+            limit=float(10 ** random.uniform(-1.8, 0.0)),
+        ),
+        Acceleration(at="P", direction="x", measure="peak", limit=float(10 ** random.uniform(0.5, 3))),
+    )
+    brief = brief.model_copy(
+        update={
+            "forcing": (brief.forcing[1], orders),
+            "conditions": (Condition(name="running", shafts={"rotor": (5.0, 40.0)}),),
+            "allowables": (*limits, DwellBands(shaft="rotor", share=0.9, bands=None if seed % 4 else 3)),
+        }
+    )
+    problem = build(brief, {"list": machines.catalog(*mounts)})
+    designs = all_designs(problem.model, 0, problem.count)
+    parts = tuple(mount.part for mount in mounts)
+    own = next(i for i in range(problem.count) if problem.design(designs, i).parts == parts)
+    batch = problem.dwell[0].bands(designs.take(np.array([own])))
+    found = machines.assessed(brief, *mounts)
+    bands = [(band.low, band.high) for band in found.barred]
+    assert np.array(batch).reshape(-1, 2) == pytest.approx(np.array(bands).reshape(-1, 2), rel=1e-7)
+    assert all(row.margin >= 0.0 for row in found.margins if "are left" in row.note)
+    speed = np.linspace(5.0, 40.0, 20_001)
+    sets = coherent_sets(tones_of(brief, brief.conditions[0]))
+    machine = DirectMachine(brief, Design(brief.groups, mounts, 0.0))
+    values = amplitudes_at(machine, tuple((limit, "P") for limit in limits), sets, speed)
+    over = np.any(values > np.array([[limit.limit * (1.0 + 1e-9)] for limit in limits]), axis=0)
+    inside = np.any([(speed >= a) & (speed <= b) for a, b in bands] or [np.zeros(len(speed), bool)], axis=0)
+    assert not np.any(over & ~inside)

@@ -33,7 +33,7 @@ from detune.problem.build import build
 from detune.response.assemble import dynamic_matrices
 from detune.response.assess import assess
 from detune.response.design import Design
-from detune.response.designs import all_designs
+from detune.response.designs import Designs, all_designs
 from detune.response.direct import DirectMachine
 from detune.response.direct_views import DirectTone
 from detune.response.loads import condition_families
@@ -257,6 +257,33 @@ class TestBetweenStations:
         for kind in ("sag", "displacement"):
             assert machines.value(one, kind) == pytest.approx(machines.value(other, kind), rel=1e-4)
 
+    def test_velocity_of_the_floor_under_a_station(self) -> None:
+        """Every foot by numpy, rms; both ways."""
+        _, feet = by_hand(23.0, *HUM, floor_at(23.0))
+        limit = FloorVelocity(stations=("B", "D"), measure="rms", limit=1.0)
+        brief = machine_on(slab(), limit)
+        found = machines.assessed(brief, PART)
+        margins = machines.batch_margins(
+            build(brief, {"list": machines.catalog(PART)}), Designs(np.zeros((1, 1), int), np.zeros(1, int))
+        )
+        for name, foot in zip(CORNERS, feet, strict=True):
+            if name in ("B", "D"):
+                expected = TWO_PI * 23.0 * abs(foot) / math.sqrt(2.0)
+                assert machines.value(found, "floor-velocity", name) == pytest.approx(expected, rel=1e-8)
+                margin = margins[limit.quantity(), name, "running"][0]
+                assert 1.0 / (1.0 + margin) == pytest.approx(expected, rel=1e-8)
+
+    def test_a_push_in_time_moves_the_floor_under_a_station_alike_both_ways(self) -> None:
+        pulse = ForcePulse(
+            name="bump", shape="half-sine", duration=0.02, position=(0.0, 0.0, 0.3), force=(0.0, 0.0, 900.0)
+        )
+        limit = FloorVelocity(stations=("B",), measure="peak", limit=1.0)
+        brief = machine_on(slab(), limit, forcing=(pulse,))
+        value = machines.value(machines.assessed(brief, PART), "floor-velocity")
+        assert machines.batch_value(brief, PART, limit) == pytest.approx(value, rel=1e-3)
+        # The impulse 2/pi F T moves no part of the floor faster than it would move the lightest foot alone.
+        assert 0.0 < value < 2.0 / math.pi * 900.0 * 0.02 / np.linalg.eigvalsh(FLOOR_MASS)[0]
+
     def test_the_bounded_search_treats_it(self) -> None:
         brief = machine_on(slab(), Velocity(at="P", direction="z", measure="peak", limit=1.0))
         problem = build(brief, {"list": machines.catalog(PART)})
@@ -318,8 +345,11 @@ class TestBetweenStations:
 
         base = BaseMotion(name="road", frequency=(10.0, 60.0), direction="z", velocity=2e-3)
         assert "how the places under the stations move" in fault(forcing=(*good.forcing, base)).expected
-        kinds = (*good.allowables, FloorVelocity(measure="rms", limit=1.0))
+        kinds: Any = (*good.allowables, FloorVelocity(measure="rms", limit=1.0))
         assert "moves differently under every station" in fault(allowables=kinds).expected
+        under = FloorVelocity(stations=("A",), measure="rms", limit=1.0)
+        plain = Floor(kind="mass-spring-damper", mass=900.0, stiffness=8e6, damping=6e3)
+        assert fault(floor=plain, allowables=(*good.allowables, under)).expected.startswith('no "stations"')
         short = slab(stations=("A", "B", "C"), stiffness_matrix=matrix(STIFFNESS[:3, :3]),
                      mass_matrix=matrix(FLOOR_MASS[:3, :3]))  # fmt: skip
         assert fault(floor=short).expected == "every station that stands on the floor; D is left out"

@@ -97,6 +97,8 @@ def test_two_answers_take_the_larger() -> None:
     brief = machines.one_axis(MASS, machines.force(frequency, force))
     found = law_machines.agreed(brief, part(table), rel=1e-6)
     assert machines.value(found, "displacement") == pytest.approx(max(several), rel=1e-6)
+    (row,) = [row for row in found.margins if row.kind == "displacement"]
+    assert row.note.startswith("at the worst of several amplitudes")
 
 
 def test_each_speed_has_its_own_amplitude() -> None:
@@ -192,6 +194,7 @@ def test_of_two_amplitudes_under_noise_the_larger_counts() -> None:
     (row,) = [row for row in found.margins if row.kind == "displacement"]
     assert row.value == pytest.approx(large, rel=1e-3)
     assert row.note.startswith("at the worst of several amplitudes")
+
 
 def test_a_ratio_to_a_unit_load_is_taken_at_no_amplitude_and_at_the_one_it_works_at() -> None:
     # T at 25 Hz: the stiffer, small amplitude passes more on, and 30 N leave it there; at resonance the other way.
@@ -358,3 +361,25 @@ def test_limits_on_displacement_hold_under_both_readings_in_every_condition() ->
     # At the resonance under the rated load the readings agree: nothing is told of them.
     rows = [row for row in found.margins if row.kind == "displacement"]
     assert {round(row.value * K * ETA, 6) for row in rows} == {1.0}
+
+
+def test_agreeing_readings_of_unknown_damping_keep_what_else_is_told() -> None:
+    # Far below resonance neither damping counts: both readings give one value, and the note on the noise stays.
+    jet = RandomForce(
+        name="jet",
+        position=(0, 0, 0),
+        direction="z",
+        duration=60.0,
+        break_points=((0.01, 1.0), (0.011, 1.0)),
+    )
+    brief = machines.one_axis(MASS, jet)
+    found = machines.assessed(brief, law_machines.unknown(machines.mount(k=K, loss=0.1)))
+    (row,) = [row for row in found.margins if row.kind == "displacement"]
+    assert "random part: expected extreme in 60 s" in row.note
+    from detune.response.row_notes import worse_reading
+
+    alike = [("damping read as viscous", [row]), ("damping read as loss factor", [row])]
+    assert worse_reading(alike) == [row]
+    other = replace(row, value=2.0 * row.value, margin=row.margin / 2.0)
+    (worse,) = worse_reading([alike[0], ("damping read as loss factor", [other])])
+    assert worse.note == f"{row.note}; damping read as loss factor"

@@ -35,7 +35,8 @@ def row(part: Any, allowable: Any) -> Any:
 
 
 @pytest.mark.parametrize(
-    ("low", "high", "reserve"), [(-30.0, 80.0, 10.0), (-20.0, 60.0, 0.0), (-15.0, 90.0, -5.0), (-40.0, 55.0, -5.0)]
+    ("low", "high", "reserve"),
+    [(-30.0, 80.0, 10.0), (-20.0, 60.0, 0.0), (-15.0, 90.0, -5.0), (-40.0, 55.0, -5.0)],
 )
 def test_the_reserve_of_a_temperature_range(low: float, high: float, reserve: float) -> None:
     # Asked: -20 to 60 degC. Reserve is the lesser of both ends by subtraction; a limit of zero is met by zero.

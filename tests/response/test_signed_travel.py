@@ -79,7 +79,8 @@ def test_a_tone_reaches_both_ways_and_adds() -> None:
 
 def test_several_shocks_add_on_each_side() -> None:
     # A force upwards of m a acts as the floor's acceleration downwards.
-    push = ForcePulse(name="push", position=(0.0, 0.0, 0.0), force=(0.0, 0.0, MASS * PEAK), shape="half-sine", duration=TIME)  # fmt: skip
+    at, force = (0.0, 0.0, 0.0), (0.0, 0.0, MASS * PEAK)
+    push = ForcePulse(name="push", position=at, force=force, shape="half-sine", duration=TIME)
     up, down = extremes()
     found = values((SHOCK, push), UP, DOWN, COMBINED)
     assert found == pytest.approx([up + down - SAG, up + down + SAG, up + down + SAG], rel=1e-4)
@@ -91,5 +92,7 @@ def test_a_fall_compresses_farther_than_it_draws_out() -> None:
     brief = machines.one_axis(MASS, Drop(name="fall", height=0.05))
     brief = brief.model_copy(update={"allowables": (UP, DOWN, COMBINED)})
     found = law_machines.agreed(brief, machines.mount(k=K), rel=1e-4)
-    kept = [row.value for row in found.margins if row.kind in ("gap", "mount-deflection") and row.upper == 1.0]
+    kept = [
+        row.value for row in found.margins if row.kind in ("gap", "mount-deflection") and row.upper == 1.0
+    ]
     assert kept == pytest.approx([SAG * (root - 1.0), SAG * (root + 1.0), SAG * (root + 1.0)], rel=1e-4)

@@ -15,10 +15,10 @@ from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.forcing.base_pulse import BasePulse
 from detune.brief.forcing.force_pulse import ForcePulse
+from detune.response.design import Design
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import direct_modes
 from detune.response.direct_stand_in import stand_in_difference
-from detune.response.design import Design
 
 _spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
 assert _spec is not None and _spec.loader is not None
@@ -26,7 +26,9 @@ machines: Any = importlib.util.module_from_spec(_spec)
 _spec.loader.exec_module(machines)
 MASS, K, ETA = 50.0, 2.0e5, 0.2
 SHOCK = BasePulse(name="shock", direction="z", shape="half-sine", amplitude=50.0, duration=0.011)
-PUSH = ForcePulse(name="push", position=(0.0, 0.0, 0.0), force=(0.0, 0.0, 100.0), shape="half-sine", duration=0.01)
+PUSH = ForcePulse(
+    name="push", position=(0.0, 0.0, 0.0), force=(0.0, 0.0, 100.0), shape="half-sine", duration=0.01
+)
 
 
 def ratio(what: str) -> tuple[np.ndarray, np.ndarray]:
@@ -66,7 +68,10 @@ def test_the_assessment_states_it_once_for_each_condition() -> None:
     limit = Acceleration(at="P", direction="z", measure="peak", limit=1e3)
     brief = machines.one_axis(MASS, SHOCK).model_copy(update={"allowables": (limit,)})
     (note,) = machines.assessed(brief, machines.mount(k=K, loss=ETA)).notes
-    assert note.startswith("running: in time each mode is damped viscously") and "axial dynamic force against uplift, S" in note
+    assert (
+        note.startswith("running: in time each mode is damped viscously")
+        and "axial dynamic force against uplift, S" in note
+    )
     # Of the force the closed form above, of the motion less.
     assert f"{100.0 * ratio('force')[1].max():.2g} %" in note
     # A dashpot is what it is in time and in frequency; tones need no stand-in.

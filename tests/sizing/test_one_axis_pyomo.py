@@ -71,7 +71,9 @@ def test_two_hundred_random_instances_agree(capsys):
 
 @pytest.mark.nightly
 def test_ballast_random_instances_agree():
-    _, _, undecided = agree(random_problems(25, 3000, "steps") + random_problems(25, 4000, "continuous"), 20.0)
+    _, _, undecided = agree(
+        random_problems(25, 3000, "steps") + random_problems(25, 4000, "continuous"), 20.0
+    )
     assert undecided <= 5
 
 

@@ -405,8 +405,8 @@ def test_an_absorber_that_can_be_set_is_tried_at_every_tuning_in_its_range(tmp_p
     named = named_design(loaded.brief, loaded.catalogs, "feet=elm-c, tuned mass=pear-s at 15 Hz")
     assert assess(loaded.brief, named) == result.answer
     files = pages(result, tmp_path / "out")
-    assert "<td>pear-s</td>" in files["report.html"].replace(' class="text"', "")
-    with pytest.raises(BriefError, match="can be set between 11 Hz and 15.5 Hz"):
+    assert ">pear-s</td>" in files["report.html"]
+    with pytest.raises(BriefError, match=r"can be set between 11 Hz and 15\.5 Hz"):
         named_design(loaded.brief, loaded.catalogs, "feet=elm-c, tuned mass=pear-s at 17 Hz")
 
 
@@ -482,11 +482,6 @@ BAD = [
         ABSORBER_STUDY.replace("empty = true", 'where = { frequency = { min = "30 Hz" } }'),
         "absorber[1].where",
         "a filter that some part passes",
-    ),
-    (
-        ABSORBER_STUDY + '\n[scatter]\njudge = "interval"\nstiffness = { lot = "listed" }\n',
-        "absorber",
-        "no [scatter]",
     ),
     (
         ABSORBER_STUDY.replace("empty = true", 'tunings = ["14 Hz"]'),

@@ -45,7 +45,9 @@ def test_w4_refrigerator_on_three_springs(tmp_path):
 
 def test_w5_four_springs(tmp_path):
     """W5, Rao 5e Example 9.4: 40 kg, 1000 rev/min, 10 %, four springs: 9969.3 N/m each (Rao 9969.6)."""
-    assert transmissibility_design(tmp_path, "40 kg", "1000 rpm", 0.1, 4).values[0] == pytest.approx(9969.3, rel=1e-5)
+    assert transmissibility_design(tmp_path, "40 kg", "1000 rpm", 0.1, 4).values[0] == pytest.approx(
+        9969.3, rel=1e-5
+    )
 
 
 def test_w5_five_per_cent_and_its_amplitude(tmp_path):

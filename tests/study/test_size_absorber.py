@@ -129,7 +129,9 @@ unbalance = "0.01 kg m"
 
 def test_t6_mount_deflection_under_base_acceleration(tmp_path):
     """T6: height 6.645944 exactly, Warburton .940401, .135333, 6.640783."""
-    limits = briefs.limit("mount-deflection", "3 mm", 'part = "dynamic"\ndirection = "axial"\nstations = ["foot"]')
+    limits = briefs.limit(
+        "mount-deflection", "3 mm", 'part = "dynamic"\ndirection = "axial"\nstations = ["foot"]'
+    )
     forcing = FLOOR.format(amplitude='acceleration = "1 m/s^2"')
     tuning, damping, value = answer(tmp_path, forcing, limits, "mount-deflection")
     assert value * OMEGA**2 == pytest.approx(6.645944, rel=1e-6)
@@ -184,7 +186,9 @@ direction = "z"
 duration = "60 s"
 break_points = [["0.01 Hz", "0.1 (m/s^2)^2/Hz"], ["1000 Hz", "0.1 (m/s^2)^2/Hz"]]
 """
-    limits = briefs.limit("relative-motion", "5 mm", 'at = "top"\nto = "floor"\ndirection = "z"\nmeasure = "rms"')
+    limits = briefs.limit(
+        "relative-motion", "5 mm", 'at = "top"\nto = "floor"\ndirection = "z"\nmeasure = "rms"'
+    )
     tuning, damping, _ = answer(tmp_path, forcing, limits, "relative-motion")
     mu = 0.05
     assert tuning == pytest.approx(math.sqrt(1 - mu / 2) / (1 + mu), rel=1e-5)
@@ -247,7 +251,9 @@ def test_detuning_by_the_stated_scatter(tmp_path):
     assert found.greatest < 3.0 * found.nominal
     # The curve of detuning is lowest where nothing is off.
     shares, worst = found.curve
-    assert worst.min() == pytest.approx(found.nominal, rel=1e-6) and shares[worst.argmin()] == pytest.approx(0.0)
+    assert worst.min() == pytest.approx(found.nominal, rel=1e-6) and shares[worst.argmin()] == pytest.approx(
+        0.0
+    )
     assert "grows from" in sizing_summary(result)
     folder = write_sizing(result, tmp_path / "out")
     page = (folder / "report.html").read_text(encoding="utf-8")

@@ -91,7 +91,9 @@ def test_no_damping_breaks_a_limit_held_whatever_the_damping(skid):
     wide = brief.sizing.model_copy(
         update={
             "unknown": tuple(
-                u.model_validate({**u.model_dump(exclude_unset=True), "lower": 1e-4, "upper": 5.0}) if k in damping else u
+                u.model_validate({**u.model_dump(exclude_unset=True), "lower": 1e-4, "upper": 5.0})
+                if k in damping
+                else u
                 for k, u in enumerate(brief.sizing.unknown)
             )
         }
@@ -102,7 +104,9 @@ def test_no_damping_breaks_a_limit_held_whatever_the_damping(skid):
     response = 1.0 / (1.0 + judged.margins[row])
     compared, closest = 0, 0.0
     for values, ratio in zip(drawn, response, strict=True):
-        bound = sum(damping_free_bound(model, x, values[columns], values[[ballast]]) / x.limit for x in held.limits)
+        bound = sum(
+            damping_free_bound(model, x, values[columns], values[[ballast]]) / x.limit for x in held.limits
+        )
         if math.isfinite(bound):
             compared += 1
             assert ratio <= bound * (1 + 1e-9)
@@ -134,7 +138,10 @@ def test_bounds_are_never_beaten_and_the_restriction_is_safe(skid, sized):
 
 
 def test_the_worth_tells_the_distance_to_the_bound(sized):
-    assert "from the global best among designs with every mode below all excitation (convex bound)" in sized.worth
+    assert (
+        "from the global best among designs with every mode below all excitation (convex bound)"
+        in sized.worth
+    )
     table = convex_table(sized)
     assert len(table.rows) == len(sized.convex) and all(len(row) == len(table.columns) for row in table.rows)
     assert any("held whatever the damping" in point for point in convex_points(sized))
@@ -142,7 +149,9 @@ def test_the_worth_tells_the_distance_to_the_bound(sized):
 
 def test_a_side_without_other_limits_is_global(tmp_path):
     """Separation alone binds: the cheapest soft side is its bound, and the local search finds the same design."""
-    text = SKID.replace('minimise = "cost"', 'maximise = "separation"').replace('limit = "1.2 mm/s"', 'limit = "1 m/s"')
+    text = SKID.replace('minimise = "cost"', 'maximise = "separation"').replace(
+        'limit = "1.2 mm/s"', 'limit = "1 m/s"'
+    )
     text = text.replace('limit = "12 N"', 'limit = "1 MN"').replace('limit = "6 mm"', 'limit = "1 m"')
     # The machine's own weight must not lift a part off its spring on so soft a mount.
     text = text.replace("dynamic_to_static = 1.2", "dynamic_to_static = 1.2\npulls = true")
@@ -166,8 +175,12 @@ def test_no_restriction_is_told_as_no_proof(tmp_path):
 
 def test_the_stiff_side_holds_limits_as_well(tmp_path):
     """One mass free in x, y and z far above its excitation: |X| <= F/(k - m w^2) at any damping, and by hand at none."""
-    text = SKID.replace('limit = "1.2 mm/s"', 'limit = "0.5 mm/s"').replace('limit = "12 N"', 'limit = "1 MN"')
-    text = text.replace('shafts = { rotor = ["1350 rpm","1500 rpm"] }', 'shafts = { rotor = ["100 rpm","150 rpm"] }')
+    text = SKID.replace('limit = "1.2 mm/s"', 'limit = "0.5 mm/s"').replace(
+        'limit = "12 N"', 'limit = "1 MN"'
+    )
+    text = text.replace(
+        'shafts = { rotor = ["1350 rpm","1500 rpm"] }', 'shafts = { rotor = ["100 rpm","150 rpm"] }'
+    )
     brief = written(tmp_path, text).brief
     problem, middle = parts_of(brief)
     answers = convex_answers(brief, problem, middle)
@@ -183,13 +196,17 @@ def test_the_stiff_side_holds_limits_as_well(tmp_path):
     judged = judge(brief, drawn)
     row = next(i for i, each in enumerate(judged.requirements) if each.label in held.held)
     for values, ratio in zip(drawn, 1.0 / (1.0 + judged.margins[row]), strict=True):
-        bound = sum(damping_free_bound(model, x, values[columns], values[[ballast]]) / x.limit for x in held.limits)
+        bound = sum(
+            damping_free_bound(model, x, values[columns], values[[ballast]]) / x.limit for x in held.limits
+        )
         assert ratio <= bound * (1 + 1e-9)
 
 
 def test_cone_on_one_axis_is_exact_and_its_restriction_near(tmp_path):
     """Transmissibility alone: the cone's optimum is the exact one. With a limit on motion it is dearer, and said so."""
-    unknown = "[[sizing.unknown]]\nkind = 'viscous'\ngroup = 'feet'\nlower = '200 N s/m'\nupper = '4000 N s/m'"
+    unknown = (
+        "[[sizing.unknown]]\nkind = 'viscous'\ngroup = 'feet'\nlower = '200 N s/m'\nupper = '4000 N s/m'"
+    )
     common = {
         "goal": "maximise = 'stiffness'", "mass": 60.0, "frequency": "['14 Hz', '25 Hz']", "softest": 1e4,
         "stiffest": 3e6, "unknowns": unknown,
@@ -238,7 +255,9 @@ def test_no_real_design_of_a_side_is_cheaper_than_its_bound(tmp_path):
     least = {"below": math.inf, "above": math.inf}
     for *parts, step in itertools.product(*(range(n) for n in sizes), range(len(problem.model.ballast_mass))):
         mounts = tuple(group.mounts[j] for group, j in zip(problem.model.groups, parts, strict=True))
-        judged = assess(study.brief, Design(study.brief.groups, mounts, float(problem.model.ballast_mass[step])))
+        judged = assess(
+            study.brief, Design(study.brief.groups, mounts, float(problem.model.ballast_mass[step]))
+        )
         frequencies = [mode.frequency for mode in judged.modes]
         if max(frequencies) <= low:
             least["below"] = min(least["below"], judged.cost)

@@ -85,7 +85,13 @@ def _stations(result: SizingResult):
 
 
 @pytest.mark.parametrize(
-    "goal", ["minimise = 'worst-response'", "maximise = 'separation'", "minimise = 'added-mass'", "minimise = 'stiffness'"]
+    "goal",
+    [
+        "minimise = 'worst-response'",
+        "maximise = 'separation'",
+        "minimise = 'added-mass'",
+        "minimise = 'stiffness'",
+    ],
 )
 def test_every_goal_agrees(tmp_path, goal):
     text = whole_numbers(goal=goal, unknowns=LOSS + STEPS)
@@ -95,7 +101,9 @@ def test_every_goal_agrees(tmp_path, goal):
 
 def test_disjoint_branches_and_viscous_damping_agree(tmp_path):
     """Between two lines: the feasible set has two parts, and the cheaper one wins in both statements."""
-    unknown = "[[sizing.unknown]]\nkind = 'viscous'\ngroup = 'feet'\nlower = '20 N s/m'\nupper = '500 N s/m'\n"
+    unknown = (
+        "[[sizing.unknown]]\nkind = 'viscous'\ngroup = 'feet'\nlower = '20 N s/m'\nupper = '500 N s/m'\n"
+    )
     text = briefs.one_axis(
         more=briefs.DISPLACEMENT.format(limit=4e-5), goal="minimise = 'cost'", mass=100.0, force=100.0,
         frequency="'10 Hz'", softest=2e5, stiffest=4e6, unknowns=unknown,
@@ -125,7 +133,15 @@ def test_a_disagreement_withdraws_the_answer_and_a_time_limit_says_nothing(tmp_p
     """A solver that answers otherwise is put in SCIP's place: neither is called proven."""
 
     def wrong(problems, *_):
-        return [replace(nothing("optimal", "", 0.1), objective=1.0, bound=1.0, stiffness=2e4, damping=0.1, ballast=0.0, count=1)]  # fmt: skip
+        design = {
+            "objective": 1.0,
+            "bound": 1.0,
+            "stiffness": 2e4,
+            "damping": 0.1,
+            "ballast": 0.0,
+            "count": 1,
+        }
+        return [replace(nothing("optimal", "", 0.1), **design)]
 
     monkeypatch.setattr(size_second_opinion, "solve_with_scip", wrong)
     result = asked(tmp_path, whole_numbers())
@@ -143,7 +159,9 @@ def test_a_disagreement_withdraws_the_answer_and_a_time_limit_says_nothing(tmp_p
 
 def test_the_verb_writes_it_beside_the_exact_answer(tmp_path, capsys):
     path = tmp_path / "study.toml"
-    path.write_text(whole_numbers().replace("[sizing]\n", "[sizing]\nspecification = false\n"), encoding="utf-8")
+    path.write_text(
+        whole_numbers().replace("[sizing]\n", "[sizing]\nspecification = false\n"), encoding="utf-8"
+    )
     out = tmp_path / "out"
     assert main(["size", str(path), "--second-opinion", "--time-limit", "20 s", "--out", str(out)]) == 0
     said = capsys.readouterr().out
@@ -160,7 +178,9 @@ def test_refusals_name_what_and_where(tmp_path, capsys):
     path.write_text(whole_numbers(), encoding="utf-8")
     assert main(["size", str(path), "--time-limit", "20 s", "--out", str(tmp_path / "a")]) == 2
     assert "--second-opinion beside it" in capsys.readouterr().err
-    assert main(["size", str(path), "--second-opinion", "--time-limit", "20", "--out", str(tmp_path / "b")]) == 2
+    assert (
+        main(["size", str(path), "--second-opinion", "--time-limit", "20", "--out", str(tmp_path / "b")]) == 2
+    )
     assert "--time-limit" in capsys.readouterr().err
     two_ways = whole_numbers().replace('free = ["z"]', 'free = ["z", "ry"]')
     two_ways = two_ways.replace('centre = ["0 m", "0 m", "0 m"]', 'centre = ["0 m", "0 m", "0 m"]\n'
@@ -174,7 +194,9 @@ def test_refusals_name_what_and_where(tmp_path, capsys):
     with pytest.raises(BriefError) as caught:
         size_study(load_study(path), False, 10.0)
     text = str(caught.value)
-    assert "more than the vertical" in text and "--second-opinion" in text and "sought on one axis alone" in text
+    assert (
+        "more than the vertical" in text and "--second-opinion" in text and "sought on one axis alone" in text
+    )
     assert any(fault.line is not None for fault in caught.value.faults)
 
 

@@ -1,10 +1,11 @@
 """What of a brief does not go with its floor, told before any design is looked at."""
 
-from detune.brief.allowable.base import HarmonicAllowable
+from detune.brief.allowable.base import Allowable, HarmonicAllowable
 from detune.brief.brief import Brief
 from detune.brief.finding import Finding, Path
 from detune.brief.floor_limits import between_stations_checked, tabulated_checked
 from detune.brief.statement import describe
+from detune.ground.errors import nearest_name
 
 # Components below this share of the whole are rounding of the digits people write.
 NOTHING = 1e-9
@@ -15,6 +16,8 @@ def floor_checked(brief: Brief) -> list[Finding]:
     findings = []
     for index, allowable in enumerate(brief.allowables):
         path: Path = ("allowable", index)
+        if allowable.kind == "floor-velocity":
+            findings += _under_stations(brief, path, allowable)
         if allowable.kind == "floor-ratio" and isinstance(allowable, HarmonicAllowable):
             findings += _floor_ratio(brief, path, allowable)
             if brief.absorbers:
@@ -52,3 +55,28 @@ def _floor_ratio(brief: Brief, path: Path, allowable: HarmonicAllowable) -> list
         "and bolted down the machine would leave it at rest"
     )
     return [Finding((*path, "direction"), found, expected, depends=("body", "floor"))]
+
+
+def _under_stations(brief: Brief, path: Path, allowable: Allowable) -> list[Finding]:
+    """The floor's velocity under named stations, where the floor is known there and moves up and down."""
+    named, floor = allowable.stations_named(), brief.floor
+    if not named or floor.kind == "rigid":
+        return []
+    if floor.kind != "stiffness-matrix":
+        expected = 'no "stations": this floor has one motion'
+        return [Finding((*path, "stations"), describe(list(named)), expected, depends=("floor",))]
+    if "z" not in (floor.directions or ("z",)):
+        expected = "a floor that moves along z"
+        return [Finding(path, allowable.kind, expected, depends=("floor",))]
+    known = floor.stations or ()
+    return [
+        Finding(
+            (*path, "stations", index),
+            name,
+            f"a station of the floor ({', '.join(known)})",
+            nearest_name(name, known),
+            ("floor",),
+        )
+        for index, name in enumerate(named)
+        if name not in known and any(station.name == name for station in brief.stations)
+    ]

@@ -54,7 +54,7 @@ def _one_motion(path: Path, allowable: object) -> list[Finding]:
     """Limits that take the floor as one place."""
     kind = str(getattr(allowable, "kind", ""))
     unit = allowable.unit_load() if isinstance(allowable, HarmonicAllowable) else None
-    of_floor = kind == "floor-velocity" or "floor" in (
+    of_floor = (kind == "floor-velocity" and getattr(allowable, "stations", None) is None) or "floor" in (
         getattr(allowable, "stands_on", None) if kind == "gap" else None,
         getattr(allowable, "to", None) if kind == "relative-motion" else None,
         getattr(allowable, "at", None) if kind == "band-limit" else None,
@@ -62,8 +62,8 @@ def _one_motion(path: Path, allowable: object) -> list[Finding]:
     if not of_floor and not (unit is not None and unit[0] == "base"):
         return []
     expected = (
-        "a limit on the machine, on forces or on the floor ratio: a floor of kind stiffness-matrix moves differently "
-        "under every station"
+        'a limit on the machine, on forces, on the floor ratio, or on floor-velocity with its "stations": a floor of kind '
+        "stiffness-matrix moves differently under every station"
     )
     return [Finding(path, kind, expected, depends=("floor",))]
 

@@ -16,7 +16,9 @@ REFERENCES: dict[str, tuple[float, str]] = {
     "acceleration": (1e-6, "1 µm/s²"),
     "force": (1e-6, "1 µN"),
 }
-_LEVEL = re.compile(r"\s*(?P<number>[^\sa-df-zA-DF-Z]+)\s*dB(?P<weighting>\(?[A-Z]\)?)?(?P<rest>\s.*)?\s*\Z", re.DOTALL)
+_LEVEL = re.compile(
+    r"\s*(?P<number>[^\sa-df-zA-DF-Z]+)\s*dB(?P<weighting>\(?[A-Z]\)?)?(?P<rest>\s.*)?\s*\Z", re.DOTALL
+)
 _RE = re.compile(r"\s*(?:re|ref)\.?\s+(?P<reference>.+?)\s*\Z", re.DOTALL)
 
 
@@ -40,7 +42,9 @@ class QuantityOrLevel(Quantity):
     def __get_pydantic_json_schema__(self, schema: Any, handler: Any) -> dict[str, Any]:
         found = super().__get_pydantic_json_schema__(schema, handler)
         _, written = REFERENCES[self.kind]
-        found["description"] += f", or the level of its rms value, re {written} (ISO 1683) where nothing else is said"
+        found["description"] += (
+            f", or the level of its rms value, re {written} (ISO 1683) where nothing else is said"
+        )
         found["examples"] = [*found["examples"], "105 dB", f"105 dB re {written}"]
         return found
 

@@ -31,12 +31,6 @@ def listed_checked(brief: Brief) -> list[Finding]:
             "no [sizing] beside an [[absorber]]: sizing does not know it; size one as a body of its own"
         )
         findings.append(Finding(("absorber",), brief.absorbers[0].name, expected, depends=("sizing",)))
-    if brief.absorbers and brief.scatter is not None:
-        expected = (
-            "no [scatter] beside an [[absorber]]: proofs over scatter do not know its mass and tuning yet; state it as a"
-            " body on stations of its own, or leave the scatter out"
-        )
-        findings.append(Finding(("absorber",), brief.absorbers[0].name, expected, depends=("scatter",)))
     if brief.ballast is not None and brief.ballast.catalogs:
         findings += _catalogs(brief, ("ballast",), brief.ballast.catalogs)
         if brief.sizing is not None:

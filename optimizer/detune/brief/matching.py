@@ -152,9 +152,7 @@ def _why_not(
 def _never_ends(transient: Transient) -> str:
     """Say why an absolute displacement has no largest value under a motion of the floor."""
     if transient.record is not None:
-        return (
-            "a record of the floor's acceleration, which does not say where the floor was nor how fast at its start"
-        )
+        return "a record of the floor's acceleration, which does not say where the floor was nor how fast at its start"
     return (
         "a pulse or step, after which the floor keeps the velocity it was given (it is at rest before), so that its "
         "displacement grows for ever"

@@ -21,6 +21,7 @@ from detune.brief.statement import (
     refuse,
 )
 from detune.ground import units
+from detune.ground.kinds import KINDS
 
 Kind = Literal[
     "stiffness",
@@ -110,6 +111,11 @@ class SizingUnknown(Statement):
                 raise refuse(error.found, error.expected, at=at, nearest=error.nearest) from None
         if abs(value) == float("inf") or value != value:
             raise refuse(describe(value), "a finite bound; without one the search has no end", at=at)
+        known = KINDS[kind]
+        if not known.bare_number:
+            raise refuse(
+                describe(value), f'a {known.meaning} with its unit, such as "{known.examples[0]}"', at=at
+            )
         return float(value)
 
     def _belonging(self) -> None:

@@ -52,10 +52,10 @@ def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
     for index, name in enumerate(unknown.stations):
         if name not in stations:
             findings.append(_unknown_name((*path, "stations", index), name, stations, "a station"))
-    if unknown.kind in ("absorber-tuning", "absorber-damping") and unknown.body in bodies:
-        if not _stands_on(brief, str(unknown.body), str(unknown.group)):
-            expected = f'the body that stands on the parts of group "{unknown.group}" alone and is tuned by them'
-            findings.append(Finding((*path, "body"), str(unknown.body), expected))
+    absorber = unknown.kind in ("absorber-tuning", "absorber-damping") and unknown.body in bodies
+    if absorber and not _stands_on(brief, str(unknown.body), str(unknown.group)):
+        expected = f'the body that stands on the parts of group "{unknown.group}" alone and is tuned by them'
+        findings.append(Finding((*path, "body"), str(unknown.body), expected))
     if unknown.kind == "ballast" and brief.ballast is None:
         expected = "a [ballast] table with its position, size and cost_per_kg"
         findings.append(Finding((*path, "kind"), "ballast", expected))

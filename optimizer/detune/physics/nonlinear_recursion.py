@@ -143,7 +143,7 @@ def _kinks(pieces: LawPieces) -> BoolArray:
 
     left, right = slope(0), slope(1)
     largest = np.max(np.where(finite, np.maximum(np.abs(left), np.abs(right)), 0.0), axis=1, initial=0.0)
-    return finite & (np.abs(right - left) > KINK * largest[:, None])
+    return np.asarray(finite & (np.abs(right - left) > KINK * largest[:, None]))
 
 
 def _propagator(system: FloatArray, spread: FloatArray, rows: FloatArray, time: float) -> _Step:
@@ -183,7 +183,7 @@ def _window(
     bend, rate = curved.bend(curved.deflected(state[None], n), fast * state[None, n:] @ curved.rows.T)
     bend = np.repeat(bend, load.shape[0], axis=0)
     rate = np.repeat(rate, load.shape[0], axis=0)
-    before = np.inf
+    before = np.full((load.shape[0], curved.gap.size), np.inf)
     for _ in range(MOST_ITERATIONS):
         drive = pushed - _bent(step, bend, rate)
         for i in range(len(drive)):
@@ -205,12 +205,11 @@ def _bent(step: _Step, bend: FloatArray, rate: FloatArray) -> FloatArray:
     early, late = step.time * rate[:-1], step.time * rate[1:]
     added: FloatArray = bend[:-1] @ step.bends[0].T + early @ step.bends[1].T
     added += 2.0 * (3.0 * rise - 2.0 * early - late) @ step.bends[2].T
-    return added + 6.0 * (early + late - 2.0 * rise) @ step.bends[3].T
+    added += 6.0 * (early + late - 2.0 * rise) @ step.bends[3].T
+    return added
 
 
-def _one_by_one(
-    step: _Step, curved: _Curved, fast: float, load: FloatArray, state: FloatArray
-) -> FloatArray:
+def _one_by_one(step: _Step, curved: _Curved, fast: float, load: FloatArray, state: FloatArray) -> FloatArray:
     """States of a window that did not settle as a whole, step after step."""
     states = [state]
     for i in range(len(load) - 1):

@@ -90,9 +90,10 @@ def variance(
     half_widths (D, m): imaginary part and decay rate in rad/s of the poles, -half_width + j centre; a pole
     that does not oscillate has centre 0. Rough values cost points and not accuracy, but every lightly damped
     pole in the band must be among them: a needle that nobody announces can stand between all points.
-    tolerance: relative, on the estimated error of each response. with_rates: after the R mean squares come those
-    of the responses' rates, the integrals of |omega H|^2 S, so that (2R, D) is returned. Raises ValueError for a half width that is
-    not above zero (an undamped resonance has no variance), and QuadratureNotConverged.
+    tolerance: relative, on the estimated error of each response. with_rates: after the R mean squares come
+    those of the responses' rates, the integrals of |omega H|^2 S, so that (2R, D) is returned. Raises
+    ValueError for a half width that is not above zero (an undamped resonance has no variance), and
+    QuadratureNotConverged.
     """
     centre, width = _poles(spectrum, centres, half_widths)
     panels = _first_panels(spectrum, centre, width)

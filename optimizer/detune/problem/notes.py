@@ -22,6 +22,7 @@ def problem_notes(brief: Brief, candidates: tuple[tuple[Mount, ...], ...]) -> tu
         *dwell_notes(brief),
         *_pads(mounts),
         *_absorbers(brief),
+        *_pieces(brief),
     )
 
 
@@ -33,6 +34,12 @@ def _pads(mounts: tuple[Mount, ...]) -> list[str]:
         f"stiffness of pads ({cut}) is estimated from the rubber and the shape factor, both faces held from sliding: good"
         " for a first size, not for a proof"
     ]
+
+
+def _pieces(brief: Brief) -> list[str]:
+    if brief.ballast is None or not brief.ballast.catalogs or brief.scatter is None:
+        return []
+    return ["the tolerance of pieces of ballast is not in the scatter: each has its listed mass"]
 
 
 def _absorbers(brief: Brief) -> list[str]:

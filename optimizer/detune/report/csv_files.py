@@ -66,9 +66,7 @@ def designs_csv(result: Result) -> str:
         values: list[Cell] = [float(front.objectives[name][i]) for name in OBJECTIVE_WORDS]
         rows.append([*design.parts, *_ballast(design), *values, "yes" if i in assessed else "no"])
     groups = result.study.brief.groups
-    return csv_text(
-        [*(f"part of {g}" for g in groups), *BALLAST, *_objective_headers(), "assessed"], rows
-    )
+    return csv_text([*(f"part of {g}" for g in groups), *BALLAST, *_objective_headers(), "assessed"], rows)
 
 
 def _ballast(design: Design) -> tuple[Cell, Cell]:

@@ -37,7 +37,8 @@ class ResponseCurve:
     sources of the condition add (other speeds, noise, records) is contained, so that the largest value
     inside is the one judged. `source` names the speed; `is_shaft` tells revolutions from frequency.
     `passage`: the source runs through its speeds in a stated time and is judged so; the curve is then
-    its own steady state alone, for comparison.
+    its own steady state alone, for comparison. `pair`, `sets`, `state` and `rest` are what it was made of: the
+    requirement, the tones, the state of the machine, and what the other sources add.
     """
 
     row: MarginRow
@@ -49,6 +50,10 @@ class ResponseCurve:
     high: float
     limit: float
     passage: bool
+    pair: tuple[HarmonicAllowable, str]
+    sets: tuple[tuple[Tone, ...], ...]
+    state: str | None
+    rest: float
 
     @property
     def inside(self) -> NDArray[np.bool_]:
@@ -97,12 +102,7 @@ def _condition_curves(
     machine = looks[0][0]
     brief = machine.brief
     static = DirectStatic(machine)
-    names = Places(
-        tuple(p.name for p in brief.points),
-        tuple(s.name for s in brief.stations if machine.share(s) > 0.0),
-        tuple(b.name for b in brief.bodies),
-        tuple(absorber.station.name for absorber in machine.absorbers),
-    )
+    names = _places(machine)
     known = [
         (a, place)
         for a in demanded(brief)[0]
@@ -124,6 +124,7 @@ def _condition_curves(
             inside = (speed >= sweep.low) & (speed <= sweep.high)
             for (allowable, place), row, value in zip(pairs, judged, amplitude, strict=True):
                 offset = float(allowable.offset(static, place)[0])
+                rest = 0.0
                 if sweep.added:
                     rest = _rest(
                         row.value - offset, float(value[inside].max()), allowable.statistic() == "rms"
@@ -141,9 +142,23 @@ def _condition_curves(
                         high=sweep.high,
                         limit=row.upper,
                         passage=sweep.passage,
+                        pair=(allowable, place),
+                        sets=tuple(sweep.sets),
+                        state=condition.state,
+                        rest=rest,
                     )
                 )
     return curves
+
+
+def _places(machine: DirectMachine) -> Places:
+    brief = machine.brief
+    return Places(
+        tuple(p.name for p in brief.points),
+        tuple(s.name for s in brief.stations if machine.share(s) > 0.0),
+        tuple(b.name for b in brief.bodies),
+        tuple(absorber.station.name for absorber in machine.absorbers),
+    )
 
 
 def _rest(judged: float, own: float, is_rms: bool) -> float:

@@ -60,7 +60,7 @@ def as_margin_row(row: RowVerdict, guaranteed: bool = False) -> MarginRow:
     )  # fmt: skip
 
 
-def _told(brief: Brief, row: RowVerdict) -> str:
+def told(brief: Brief, row: RowVerdict) -> str:
     """One row at its worst place, in words."""
     own = as_margin_row(row)
     at = _frequency(brief, row)
@@ -72,6 +72,22 @@ def _told(brief: Brief, row: RowVerdict) -> str:
 
 def _frequency(brief: Brief, row: RowVerdict) -> str:
     return frequency_text(row.frequency, is_shaft_speed(brief, as_margin_row(row)))
+
+
+def subject_verdict(result: Result) -> DesignVerdict | None:
+    """Return what certification says of the design a reader looks at, None where it was not certified."""
+    import numpy as np
+
+    robust, subject = result.robust, result.subject
+    if robust is None or subject is None:
+        return None
+    for verdict in (robust.winner, robust.nominal, *robust.front):
+        if verdict is None:
+            continue
+        chosen = Designs(np.array([verdict.part], dtype=np.intp), np.array([verdict.step], dtype=np.intp))
+        if result.problem.design(chosen, 0) == subject.design:
+            return verdict
+    return None
 
 
 def design_words(result: Result, verdict: DesignVerdict) -> str:
@@ -87,20 +103,20 @@ def robust_lines(result: Result) -> list[str]:
     robust, brief = result.robust, result.study.brief
     if robust is None:
         return []
-    told = scatter_words(brief)
+    stated = scatter_words(brief)
     if robust.judge == "distribution":
         return [
-            f"Scatter ({told}), judged as a distribution:",
+            f"Scatter ({stated}), judged as a distribution:",
             *(_yield_line(result, i, y) for i, y in enumerate(robust.yields)),
         ]
     lines: list[str] = []
     if robust.winner is not None:
         tight = robust.winner.tightest
         lines.append(
-            f"Proven to meet the brief over the stated scatter ({told}) and the whole speed range: "
+            f"Proven to meet the brief over the stated scatter ({stated}) and the whole speed range: "
             f"{design_words(result, robust.winner)}; cost {robust.winner.cost:g}."
         )
-        lines.append(f"Tightest over the scatter: {_told(brief, tight)}.")
+        lines.append(f"Tightest over the scatter: {told(brief, tight)}.")
         if robust.price is not None and robust.nominal is not None:
             lines.append(
                 f"Price of robustness: {percent(robust.price)} over the cheapest design at listed values "
@@ -118,7 +134,7 @@ def robust_lines(result: Result) -> list[str]:
                 "neither proven nor violated, so a cheaper one may exist."
             )
     elif robust.nominal is not None:
-        lines.append(f"NOT PROVEN over the stated scatter ({told}): {_no_winner(robust)}")
+        lines.append(f"NOT PROVEN over the stated scatter ({stated}): {_no_winner(robust)}")
         lines.append(f"The cheapest design at listed values is {_fate(brief, robust.nominal)}.")
     if robust.stopped != "finished":
         bound = (
@@ -149,19 +165,21 @@ def _fate(brief: Brief, verdict: DesignVerdict) -> str:
     """What becomes of a design over the scatter, as the end of a sentence."""
     witness = verdict.witness
     if witness is not None:
-        return f"violated over the scatter: {_told(brief, witness)}"
+        return f"violated over the scatter: {told(brief, witness)}"
     return {
         "proven": "proven over the scatter as well",
         "sampled": "within its limits at every sample, which is no proof",
     }.get(
         verdict.status,
         "undecided over the scatter: "
-        + "; ".join(_bracket(row) for row in verdict.rows if row.status == "undecided"),
+        + "; ".join(bracket_words(row) for row in verdict.rows if row.status == "undecided"),
     )
 
 
-def _bracket(row: RowVerdict) -> str:
-    bound = "no bound" if row.guaranteed is None else value_text(as_margin_row(row, guaranteed=True))
+def bracket_words(row: RowVerdict) -> str:
+    """What is known of an undecided row: the greatest value found, and the bound, in words."""
+    known = row.guaranteed is not None and abs(row.guaranteed) < float("inf")
+    bound = "no bound" if not known else value_text(as_margin_row(row, guaranteed=True))
     return f"{row.label}: at least {value_text(as_margin_row(row))} occurs, at most {bound} is proven"
 
 
@@ -245,7 +263,7 @@ def points_table(result: Result) -> Table | None:
                 separation_text(point.separation),
                 design_text(point.design),
                 "not examined" if verdict is None else STATUS_WORDS[verdict.status],
-                "" if row is None else _told(result.study.brief, row),
+                "" if row is None else told(result.study.brief, row),
             )
         )
     columns = ("cost", "separation at listed values", "design", "over the scatter", "tightest or violated")
@@ -261,12 +279,14 @@ def cheaper_table(result: Result) -> Table | None:
     rows = []
     for verdict in every[:SHOWN_CHEAPER]:
         witness = verdict.witness
-        told = (
-            _told(result.study.brief, witness)
+        why = (
+            told(result.study.brief, witness)
             if witness is not None
-            else "; ".join(_bracket(row) for row in verdict.rows if row.status in ("undecided", "sampled"))
+            else "; ".join(
+                bracket_words(row) for row in verdict.rows if row.status in ("undecided", "sampled")
+            )
         )
-        rows.append((f"{verdict.cost:g}", design_words(result, verdict), STATUS_WORDS[verdict.status], told))
+        rows.append((f"{verdict.cost:g}", design_words(result, verdict), STATUS_WORDS[verdict.status], why))
     if not rows:
         return None
     note = (

@@ -39,7 +39,8 @@ class ServiceLoad:
 def service_loads(brief: Brief, assessment: Assessment) -> tuple[ServiceLoad, ...]:
     """Return the peak force into the floor along each axis and the peak movement of each named point.
 
-    Phasor sums over all parts and connections, and beside them the sum of the magnitudes; suprema over the continuous range as in the assessment. Where the
+    Phasor sums over all parts and connections, and beside them the sum of the magnitudes; suprema over the
+    continuous range as in the assessment. Where the
     floor itself is moved, points are seen from the floor: with it the whole building or vehicle moves.
     """
     loads = []

@@ -64,8 +64,9 @@ def sizing_summary(result: SizingResult) -> str:
         f"(absorber {each.absorber}; sampled, no proof)"
         for each in result.scattered
     ]
-    spread = tables_sizing.searches_text(result)
-    lines += [spread] if spread else []
+    lines += [
+        text for text in (tables_sizing.searches_text(result), tables_sizing.slopes_text(result)) if text
+    ]
     near = result.nearest
     if near is not None and near.designs:
         first = near.designs[0].assessment
@@ -103,9 +104,9 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
         found.append(Section("answer", "The sized design", (text, worth), points, tables=(table,)))
     found.append(Section("cautions", "Cautions", points=CAUTIONS))
     if result.branches:
-        spread = tables_sizing.searches_text(result)
+        told = (tables_sizing.searches_text(result), tables_sizing.slopes_text(result))
         table = tables_sizing.branches_table(result)
-        found.append(Section("branches", table.title, (spread,) if spread else (), tables=(table,)))
+        found.append(Section("branches", table.title, tuple(text for text in told if text), tables=(table,)))
     if result.opinion is not None:
         text = tables_opinion.opinion_text(result)
         found.append(

@@ -56,15 +56,20 @@ def assess_text(brief: Brief, assessment: Assessment) -> str:
     return "\n".join(lines) + "\n"
 
 
-def compare_text(assessments: Sequence[Assessment], names: Sequence[str] | None = None) -> str:
-    """Return assessments side by side, one column each; `names` heads the columns.
+def compare_text(
+    assessments: Sequence[Assessment],
+    names: Sequence[str] | None = None,
+    more: Sequence[tuple[str, tuple[str, ...]]] = (),
+) -> str:
+    """Return assessments side by side, one column each; `names` heads the columns, `more` are further rows on top.
 
     A requirement is one row; all designs of one brief have the same requirements, save limits that
     only some parts state.
     """
     heads = list(names) if names is not None else [str(i + 1) for i in range(len(assessments))]
     table: list[list[str]] = [["", *heads]]
-    for name, cells in comparison_rows(assessments):
+    first, *others = comparison_rows(assessments)
+    for name, cells in (first, *more, *others):
         table.append([name, *cells])
     widths = [max(len(row[column]) for row in table) for column in range(len(table[0]))]
     lines = [

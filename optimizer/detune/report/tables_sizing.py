@@ -6,6 +6,8 @@ from detune.ground.units import show
 from detune.report.tables import Table
 from detune.report.words import margin_text, number, percent
 from detune.sizing.made_parts import sizing_of
+from detune.solvers.size_front import FrontPoint
+from detune.solvers.size_front_bounds import gap
 from detune.solvers.size_specification import PurchaseSpecification
 from detune.study.size import SizedBest, SizingResult
 
@@ -95,6 +97,21 @@ def searches_text(result: SizingResult) -> str:
     )
 
 
+def slopes_text(result: SizingResult) -> str:
+    """Where the slopes of the searches come from, in a sentence; empty where no local search was made."""
+    found = result.searches
+    if found is None:
+        return ""
+    if found.slopes_from != "adjoint":
+        return "Slopes of all requirements by finite differences."
+    if not found.differenced:
+        return f"Slopes of all requirements by adjoint, at {found.slopes} points."
+    return (
+        f"Slopes by adjoint, at {found.slopes} points; by finite differences in the rows of {len(found.differenced)} "
+        f"requirements alone: {'; '.join(found.differenced)}."
+    )
+
+
 def nearest_table(result: SizingResult) -> Table:
     """The nearest real designs, each assessed, with what they cost against the ideal."""
     nearest, best = result.nearest, result.answer
@@ -151,12 +168,22 @@ def front_table(result: SizingResult) -> Table:
     rows = tuple(
         (
             *(goal_text(name, point.objectives[name]) for name in front.trade),
+            *(() if front.exact else (_gap_text(front.minimised, point),)),
             *(show(v, u.unit) for u, v in zip(unknowns, point.values.tolist(), strict=True)),
         )
         for point in front.points
     )
-    columns = (*(GOALS[name] for name in front.trade), *(unknown.title for unknown in unknowns))
-    return Table("Points of the front", columns, rows, frozenset(range(len(columns))), front.worth + ".")
+    gap = () if front.exact else (f"gap in {GOALS[front.minimised]}",)
+    columns = (*(GOALS[name] for name in front.trade), *gap, *(unknown.title for unknown in unknowns))
+    numeric = frozenset(range(len(columns))) - (frozenset() if front.exact else {len(front.trade)})
+    return Table("Points of the front", columns, rows, numeric, front.worth + ".")
+
+
+def _gap_text(minimised: str, point: FrontPoint) -> str:
+    found = gap(minimised, point)
+    if found is None:
+        return "no bound known"
+    return f"at most {percent(found[0])} ({found[1]})"
 
 
 def specification_table(found: PurchaseSpecification) -> Table:

@@ -97,7 +97,11 @@ def level_text(value: float, row: MarginRow) -> str:
 def reference_text(reference: float, kind: str) -> str:
     """Return the reference of a level as it is written: "1 nm/s"."""
     usual, written = REFERENCES[kind]
-    return written if math.isclose(reference, usual, rel_tol=1e-9) else f"{reference:g} {KINDS_OF_UNIT[kind].si_unit}"
+    return (
+        written
+        if math.isclose(reference, usual, rel_tol=1e-9)
+        else f"{reference:g} {KINDS_OF_UNIT[kind].si_unit}"
+    )
 
 
 def limit_text(row: MarginRow) -> str:

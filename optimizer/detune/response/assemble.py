@@ -45,8 +45,11 @@ class PartBatch:
     @property
     def with_frequency(self) -> bool:
         """Whether some part's stiffness, or the floor's, changes with frequency other than by a dashpot."""
-        if self.model.floor_table is not None:
-            return True
+        return self.model.floor_table is not None or self.laws_with_frequency
+
+    @property
+    def laws_with_frequency(self) -> bool:
+        """Whether some part's stiffness changes with frequency other than by a dashpot."""
         return any(group.laws is not None and group.laws.with_frequency for group in self.model.groups)
 
     def constants(self, number: int) -> tuple[Floats, Floats, Floats]:
@@ -84,11 +87,11 @@ class PartBatch:
             total = total + frequency_part(group.laws, group.arrays, part, constant, omega)
         return station.factor * total
 
-    def frequency_matrix(self, omega: Floats) -> Complexes:
+    def frequency_matrix(self, omega: Floats, with_floor: bool = True) -> Complexes:
         """What frequency laws and a tabulated floor add (D, F, n, n) to the dynamic stiffness matrix."""
         n = self.model.frame.count
         total = np.zeros((*omega.shape, n, n), dtype=complex)
-        if self.model.floor_table is not None:
+        if self.model.floor_table is not None and with_floor:
             model = self.model
             spring = model.floor_mass, model.floor_stiffness
             total[..., -1, -1] = beyond_spring(self.model.floor_table, *spring, omega)

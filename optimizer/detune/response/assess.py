@@ -52,7 +52,7 @@ from detune.response.direct_supremum import (
 )
 from detune.response.direct_views import DirectStatic, DirectTone
 from detune.response.margin import window_margin
-from detune.response.row_notes import amplitude_cautions, noted, worse_reading
+from detune.response.row_notes import BY_SEVERAL, amplitude_cautions, noted, worse_reading
 from detune.response.standing import toppling
 
 Floats = NDArray[np.float64]
@@ -350,14 +350,16 @@ def _judged(static: DirectStatic, condition: Condition, pairs: Pairs, found: Sup
             None,
             float(allowable.bound(static, place)[0]),
             None if np.isnan(found.speed[index]) else float(found.speed[index]),
-            "" if found.noise is None else _random_note(allowable, found.noise, index),
+            BY_SEVERAL if found.several else _random_note(allowable, found.noise, index),
         )
         for index, (allowable, place) in enumerate(pairs)
     ]
 
 
-def _random_note(allowable: HarmonicAllowable, noise: RandomPart, index: int) -> str:
+def _random_note(allowable: HarmonicAllowable, noise: RandomPart | None, index: int) -> str:
     """Return how the random part is counted: as its expected extreme, or with that beside it."""
+    if noise is None:
+        return ""
     lasting = show(noise.duration, "time")
     if allowable.statistic() in ("peak", "peak-to-peak"):
         return f"random part: expected extreme in {lasting}"

@@ -7,7 +7,7 @@ each other.
 """
 
 from copy import copy
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 import numpy as np
@@ -67,12 +67,18 @@ class DirectMachine:
 
     @property
     def with_frequency_laws(self) -> bool:
-        """Whether some part's stiffness, or the floor's, changes with frequency other than by a dashpot."""
+        """Whether some part's stiffness changes with frequency other than by a dashpot."""
         mounts = self.design.mounts
-        tabulated = self.floor is not None and self.floor.table is not None
-        return tabulated or any(
-            mount.relaxation is not None or mount.law_table is not None for mount in mounts
-        )
+        return any(mount.relaxation is not None or mount.law_table is not None for mount in mounts)
+
+    @property
+    def without_table(self) -> "DirectMachine":
+        """The same machine with the spring and mass near a tabulated floor in its place."""
+        if self.floor is None or self.floor.table is None:
+            return self
+        other = copy(self)
+        object.__setattr__(other, "floor", replace(self.floor, table=None))
+        return other
 
     @cached_property
     def elastic(self) -> Structure | FloorStructure | None:

@@ -6,7 +6,7 @@ they come to different ends, the largest response counts.
 """
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -18,7 +18,7 @@ from detune.brief.brief import applies
 from detune.brief.condition import Condition
 from detune.brief.forcing.base import Noise, Tone, Transient
 from detune.response.direct import DirectMachine
-from detune.response.direct_coincidence import added
+from detune.response.direct_coincidence import added, sharing
 from detune.response.direct_modes import direct_modes
 from detune.response.direct_motion import direct_passage_values, direct_transient_values
 from detune.response.direct_random import direct_noise_values
@@ -144,6 +144,7 @@ def suprema_at_amplitude(
     """Return the values of rows under the forcing of a condition; infinite where no amplitude reproduces itself."""
     alone = working.alone
     settled = alone or working.settled
+    several = False
     worst, where = np.full(len(pairs), -np.inf), np.full(len(pairs), np.nan)
     for end in range(1 if alone else len(working.totals)):
         total, at = np.zeros(len(pairs)), np.full(len(pairs), np.nan)
@@ -155,7 +156,7 @@ def suprema_at_amplitude(
             beside = working.beside(end, number)
             amplitude = beside if alone else working.totals[end]
             part, found = _values(machine, condition, source, pairs, amplitude, beside)
-            settled = settled and found
+            settled, several = settled and found, several or part.several
             if source.tones and not source.ways:
                 steady.append(source.tones)
                 of_steady.append(part.value)
@@ -163,11 +164,11 @@ def suprema_at_amplitude(
                 apart.append(part.value)
             bigger = np.isfinite(part.speed) & (part.value > largest)
             at, largest = np.where(bigger, part.speed, at), np.where(bigger, part.value, largest)
-        for each in (*added(steady, of_steady), *apart):
+        for each in (*added(sharing(steady), of_steady), *apart):
             for index, (allowable, _) in enumerate(pairs):
                 total[index] = combine(total[[index]], each[[index]], allowable.statistic())[0]
         where, worst = np.where(total > worst, at, where), np.maximum(worst, total)
-    return Supremum(worst if settled else np.full(len(pairs), np.inf), where)
+    return Supremum(worst if settled else np.full(len(pairs), np.inf), where, several=several)
 
 
 def _sources(machine: DirectMachine, condition: Condition) -> tuple[Source, ...]:
@@ -231,11 +232,12 @@ def _over_speed(
     poles = [
         direct_modes(machine.at_amplitude(a * shape), []).poles for a in np.geomspace(least, greatest, LOOKS)
     ]
-    settled = True
+    settled, several = True, False
 
     def amplitudes(speed: Floats) -> Floats:
-        nonlocal settled
+        nonlocal settled, several
         best = np.zeros((len(pairs), len(speed)))
+        first: Floats | None = None
 
         def step(amplitude: Floats, index: NDArray[np.intp]) -> Floats:
             return _deflected(machine, sets, speed[index], beside, amplitude)
@@ -244,11 +246,13 @@ def _over_speed(
         for level in (0.0, *np.geomspace(least, greatest, int(np.log10(greatest / least)) + 2)):
             amplitude, closed = _approached(step, np.repeat(beside[:, None] + level, len(speed), axis=1))
             settled = settled and bool(np.all(closed))
+            first = amplitude if first is None else first
+            several = several or bool(np.any(np.abs(amplitude - first) > APART * np.maximum(amplitude, first)))
             best = np.maximum(best, amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed))
         return best
 
     found = supremum(amplitudes, (low, high), np.concatenate(poles), orders)
-    return found, settled
+    return replace(found, several=several), settled
 
 
 def _deflected(

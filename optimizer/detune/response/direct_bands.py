@@ -13,7 +13,7 @@ from detune.brief.forcing.base import Noise, Tone
 from detune.physics.octaves import band_edges, band_index, nominal_centre
 from detune.physics.spectra import density_at
 from detune.response.direct import DirectMachine
-from detune.response.direct_coincidence import added
+from detune.response.direct_coincidence import added, sharing
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_random import mesh, unit_tone
 from detune.response.direct_supremum import coherent_sets, supremum, tones_of
@@ -32,13 +32,14 @@ def direct_band_ratio(
         by_speed.setdefault(tone.speed, []).append(tone)
     acting = [f for f in machine.brief.forcing if applies(f.conditions, condition.name)]
     noises = [noise for forcing in acting for noise in forcing.noises()]
+    linked = sharing(tuple(by_speed.values()))
     worst, at = 0.0, float("nan")
     for band, limit in zip(*allowable.bands(), strict=True):
         each = [
             np.array([_tone_rms(machine, found, tones, allowable, place, int(band))])
             for tones in by_speed.values()
         ]
-        square = sum(float(part[0]) ** 2 for part in added(tuple(by_speed.values()), each))
+        square = sum(float(part[0]) ** 2 for part in added(linked, each))
         square += sum(_noise_square(machine, found, noise, allowable, place, int(band)) for noise in noises)
         ratio = float(np.sqrt(square) / limit)
         if ratio > worst:

@@ -15,26 +15,24 @@ ALIKE = 1e-9
 
 def sharing(speeds: Sequence[Sequence[Tone]]) -> list[list[int]]:
     """Return the speeds, each given by its tones, in sets linked by frequencies they can have in common."""
-    if len(speeds) < 2:
-        return [[number] for number in range(len(speeds))]
-    from scipy.sparse.csgraph import connected_components
-
-    owner = np.array([number for number, tones in enumerate(speeds) for _ in tones])
+    owner = np.array([number for number, tones in enumerate(speeds) for _ in tones], dtype=int)
     low = np.array([tone.order * tone.low for tones in speeds for tone in tones])
     high = np.array([tone.order * tone.high for tones in speeds for tone in tones])
-    start, end = np.maximum.outer(low, low), np.minimum.outer(high, high)
-    fixed = np.logical_or.outer(low == high, low == high)
-    # Bands of a spectrum that only touch have no frequency in common.
-    common = np.where(fixed, end - start >= -ALIKE * start, end - start > ALIKE * start)
-    graph = np.zeros((len(speeds), len(speeds)), dtype=bool)
-    np.logical_or.at(graph, (owner[:, None], owner[None, :]), common)
-    count, label = connected_components(graph, directed=False)
-    return [np.flatnonzero(label == each).tolist() for each in range(count)]
+    label = np.arange(len(speeds))
+    for number in range(len(low)):
+        start, end = np.maximum(low, low[number]), np.minimum(high, high[number])
+        fixed = (low == high) | (low[number] == high[number])
+        # Bands of a spectrum that only touch have no frequency in common.
+        common = np.where(fixed, end - start >= -ALIKE * start, end - start > ALIKE * start)
+        met = np.unique(label[owner[common]])
+        if len(met) > 1:
+            label[np.isin(label, met)] = met[0]
+    return [np.flatnonzero(label == each).tolist() for each in np.unique(label)]
 
 
-def added(speeds: Sequence[Sequence[Tone]], values: Sequence[Floats]) -> list[Floats]:
+def added(sets: Sequence[Sequence[int]], values: Sequence[Floats]) -> list[Floats]:
     """Return the values (R,) of each speed, those of one set as their sum."""
-    return [np.sum([values[number] for number in members], axis=0) for members in sharing(speeds)]
+    return [np.sum([values[number] for number in members], axis=0) for members in sets]
 
 
 def speeds_meet(brief: Brief, condition: Condition) -> bool:

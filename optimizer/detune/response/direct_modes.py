@@ -51,7 +51,11 @@ class DirectModes:
 
 
 def direct_modes(machine: DirectMachine, intervals: list[tuple[float, float]]) -> DirectModes:
-    """Return the modes of one design, and the excitation intervals they are held against."""
+    """Return the modes of one design, and the excitation intervals they are held against.
+
+    A floor of tabulated dynamic stiffness stands in the modes as the spring and mass near it, in the poles as it is.
+    """
+    whole, machine = machine, machine.without_table
     mesh = np.ix_(machine.free, machine.free)
     mass = machine.mass[mesh]
     # Every element is k (1 + j eta) + j w c, so two frequencies tell hysteretic from viscous.
@@ -70,7 +74,7 @@ def direct_modes(machine: DirectMachine, intervals: list[tuple[float, float]]) -
     directions = np.array([[float(freedom == name) for name in FREEDOMS] for _, freedom in machine.names])
     for absorber in machine.absorbers:
         directions[absorber.number - len(machine.absorbers), :3] = absorber.along
-    poles = with_resonances(machine, poles)
+    poles = with_resonances(whole, poles)
     return DirectModes(
         mass=mass,
         stiffness=stiffness,

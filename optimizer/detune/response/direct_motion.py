@@ -70,6 +70,10 @@ class DirectMotion:
         rows[:, self.machine.floor_axes] = np.eye(3)
         return np.asarray(self.rates[rate] @ self._rows(rows).T + self.floor[rate][:, None] * self.base)[None]
 
+    def foot_motion(self, station: str, rate: int = 0) -> Responses:
+        rows = self._rows(self.machine.foot(station_named(self.machine, station)))
+        return np.asarray(self.rates[rate] @ rows.T)[None]
+
     def station_deflection(self, station: str, rate: int = 0) -> Responses:
         stated = station_named(self.machine, station)
         rows = self.machine.axes(stated).T @ self._rows(self.machine.across(stated))

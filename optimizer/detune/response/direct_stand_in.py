@@ -142,11 +142,13 @@ def _acting(
 
 def _unit(transient: Transient) -> Tone:
     """The tone of one unit of the floor's acceleration or of the load."""
-    plain = {"source": transient.source, "speed": transient.source, "order": 1.0, "low": 0.0, "high": 0.0}
+    name, place = transient.source, transient.position
     if transient.base is not None:
         x, y, z = transient.base
-        return Tone(**plain, on=None, position=transient.position, base=(-x + 0j, -y + 0j, -z + 0j), power=-2)  # type: ignore[arg-type]
-    return Tone(**plain, on=transient.on, position=transient.position, force=transient.force, moment=transient.moment)  # type: ignore[arg-type]  # fmt: skip
+        moved = (-x + 0j, -y + 0j, -z + 0j)
+        return Tone(name, name, 1.0, 0.0, 0.0, on=None, position=place, base=moved, power=-2)
+    pushed = {"force": transient.force, "moment": transient.moment}
+    return Tone(name, name, 1.0, 0.0, 0.0, on=transient.on, position=place, **pushed)  # type: ignore[arg-type]
 
 
 def _with_stand_in(
@@ -161,4 +163,4 @@ def _with_stand_in(
     # The free motion of a floor with one unit of acceleration.
     floor = np.stack([-1.0 / omega**2, 1.0 / (1j * omega), np.ones(len(omega))])
     moves = float(np.any(base != 0.0))
-    return DirectMotion(machine, found, rates, rates[1] @ lagging(found).T, moves * floor, base)  # type: ignore[arg-type]
+    return DirectMotion(machine, found, rates, rates[1] @ lagging(found).T, moves * floor, base)

@@ -12,7 +12,7 @@ from detune.brief.condition import Condition
 from detune.brief.dwell import chosen_in
 from detune.brief.forcing.base import Tone
 from detune.response.direct import DirectMachine
-from detune.response.direct_coincidence import added
+from detune.response.direct_coincidence import added, sharing
 from detune.response.direct_floor import beside_reference
 from detune.response.direct_modes import DirectModes
 from detune.response.direct_motion import direct_passage_values, direct_transient_values
@@ -68,12 +68,14 @@ def steady_intervals(brief: Brief, state: str | None = None) -> list[tuple[float
 class Supremum:
     """Amplitude of each row over the whole range, and the speed (Hz) of its largest part; both (R,).
 
-    `noise`: what random forcing has in it, None where there is none.
+    `noise`: what random forcing has in it, None where there is none. `several`: at some speed more than one
+    amplitude reproduces itself, and the worst counts.
     """
 
     value: Floats
     speed: Floats
     noise: RandomPart | None = None
+    several: bool = False
 
 
 def forced_suprema(
@@ -110,7 +112,7 @@ def forced_suprema(
         values.append(part.value)
         at = np.where(part.value > largest, part.speed, at)
         largest = np.maximum(largest, part.value)
-    parts += added(steady, values)
+    parts += added(sharing(steady), values)
     noises = tuple(noise for forcing in acting for noise in forcing.noises())
     transients = tuple(transient for forcing in acting for transient in forcing.transients())
     random = direct_noise(machine, found, noises, pairs) if noises else None

@@ -139,6 +139,10 @@ class DirectTone:
     def floor_motion(self, rate: int = 0) -> Complexes:
         return self._rate(rate) * self.q[:, self.machine.floor_axes][None]
 
+    def foot_motion(self, station: str, rate: int = 0) -> Complexes:
+        rows = self.machine.foot(station_named(self.machine, station))
+        return self._rate(rate) * (self.q @ rows.T)[None]
+
     def station_deflection(self, station: str, rate: int = 0) -> Complexes:
         stated = station_named(self.machine, station)
         local = self.q @ self.machine.across(stated).T @ self.machine.axes(stated)

@@ -1,8 +1,9 @@
-"""Responses of a batch of designs by their poles: one eigenvalue problem a design instead of a solution a frequency.
+"""Responses of a batch of designs by their poles: one eigenvalue problem a design, not a solution a frequency.
 
-With M = L L^T and everything divided by L on both sides, (p^2 + p C + K + j H)^-1 is V (p - poles)^-1 V^-1 of its
-companion matrix, and without dashpots V (poles^2 + p^2)^-1 V^-1 of K + j H alone (Tisseur and Meerbergen, SIAM Rev.
-43 (2001) 235). The inverse of V stands for the left vectors, so that equal poles of symmetric machines do no harm.
+With M = L L^T and everything divided by L on both sides, (p^2 + p C + K + j H)^-1 is V (p - poles)^-1 V^-1 of
+its companion matrix, and without dashpots V (poles^2 + p^2)^-1 V^-1 of K + j H alone (Tisseur and Meerbergen,
+SIAM Rev. 43 (2001) 235). The inverse of V stands for the left vectors, so that equal poles of symmetric
+machines do no harm.
 """
 
 from dataclasses import dataclass
@@ -23,7 +24,7 @@ LEAST_DECAY = 1e-8
 
 @dataclass(frozen=True, eq=False)
 class Expansion:
-    """D designs by m poles: q = left (D, n, m) times (right (D, m, n) f) over (j w - pole), or over (pole - w^2).
+    """D designs by m poles: q = left (D, n, m) (right (D, m, n) f) over (j w - pole), or over (pole - w^2).
 
     `squares`: the poles (D, m) are squared frequencies, those of machines without dashpots.
     """
@@ -49,8 +50,8 @@ class Expansion:
 def expansion_of(dynamic: Dynamic) -> tuple[Expansion, Booleans]:
     """Return the expansion of a batch without frequency laws, and the designs (D,) it holds for.
 
-    It does not hold where poles coincide without a full set of vectors (critical damping), where one hardly decays,
-    or where the residual at the poles' frequencies is not small.
+    It does not hold where poles coincide without a full set of vectors (critical damping), where one hardly
+    decays, or where the residual at the poles' frequencies is not small.
     """
     n = dynamic.mass.shape[-1]
     inverse = np.linalg.inv(np.linalg.cholesky(dynamic.mass))
@@ -82,17 +83,17 @@ def expansion_of(dynamic: Dynamic) -> tuple[Expansion, Booleans]:
 
 def _inverse(vectors: Complexes) -> tuple[Complexes, Booleans]:
     try:
-        return np.linalg.inv(vectors), np.ones(len(vectors), dtype=bool)
+        return np.asarray(np.linalg.inv(vectors), dtype=complex), np.ones(len(vectors), dtype=bool)
     except np.linalg.LinAlgError:
         singular = np.linalg.slogdet(vectors)[1] == -np.inf
         kept = np.where(singular[:, None, None], np.eye(vectors.shape[-1]), vectors)
-        return np.linalg.inv(kept), ~singular
+        return np.asarray(np.linalg.inv(kept), dtype=complex), np.asarray(~singular)
 
 
 def _residual(
     found: Expansion, good: Booleans, inverse: Floats, held: Complexes, viscous: Complexes, frequency: Floats
 ) -> Floats:
-    """Largest residual of D(w) D(w)^-1 = 1 of the good designs, at their least, middle and greatest frequency."""
+    """Largest residual of D(w) D(w)^-1 = 1 of the good designs, at their least, middle and highest frequency."""
     ordered = np.sort(frequency[good], axis=1)
     places = [0, ordered.shape[1] // 2, -1]
     omega = ordered[:, places]

@@ -9,7 +9,6 @@ from detune.brief.floor_files import FloorTable
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 TWO_PI = 2.0 * np.pi
-MOST_ROWS = 200
 
 
 def beyond_spring(table: FloorTable, mass: float, stiffness: float, omega: Floats) -> Complexes:
@@ -23,13 +22,6 @@ def beyond_spring(table: FloorTable, mass: float, stiffness: float, omega: Float
     held = np.clip(frequency, low, high)
     rest: Complexes = table.at(held) - (stiffness - (TWO_PI * held) ** 2 * mass)
     return np.asarray(rest * np.minimum(frequency / low, 1.0))
-
-
-def table_places(table: FloorTable) -> Complexes:
-    """Return the rows of a table (m,) as poles in rad/s whose half width is their distance, thinned to `MOST_ROWS`."""
-    omega = TWO_PI * table.frequency
-    thinned = omega[:: max(1, len(omega) // MOST_ROWS)]
-    return np.asarray(1j * thinned - np.gradient(thinned))
 
 
 def floor_spring(floor: FloorFreedom, omega: Floats) -> Complexes:

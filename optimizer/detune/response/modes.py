@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from detune.brief.allowable.views import ModeView
 from detune.physics import modes
 from detune.response.assemble import Dynamic
-from detune.response.floor_table import table_places
+from detune.response.floor_resonances import table_places, table_resonances
 
 Floats = NDArray[np.float64]
 ITERATIONS = 400
@@ -37,7 +37,7 @@ class ModeBatch:
 
     def _decay(self, dynamic: Dynamic) -> Floats:
         """Rates of decay (D, n) in 1/s: of the damped poles, or by the loss factors of frequency laws."""
-        if dynamic.parts.with_frequency:
+        if dynamic.parts.laws_with_frequency:
             return np.asarray(np.pi * self.loss_factor * self.frequency)
         matrices = dynamic.mass, dynamic.viscous, dynamic.hysteretic, dynamic.stiffness
         return np.asarray(-modes.damped_poles(*matrices).real)
@@ -45,8 +45,9 @@ class ModeBatch:
 
 def mode_batch(dynamic: Dynamic) -> ModeBatch:
     """Return the undamped modes at the dynamic stiffness, with each mode's equivalent loss factor."""
+    # A floor of tabulated dynamic stiffness stands here as the spring and mass near it.
     frequency, shapes = modes.undamped_modes(dynamic.mass, dynamic.stiffness)
-    if dynamic.parts.with_frequency:
+    if dynamic.parts.laws_with_frequency:
         return _iterated(dynamic, frequency, shapes)
     loss = modes.modal_loss_factors(shapes, dynamic.hysteretic, dynamic.viscous, frequency)
     return ModeBatch(frequency, shapes, loss)
@@ -63,7 +64,7 @@ def _iterated(dynamic: Dynamic, frequency: Floats, shapes: Floats) -> ModeBatch:
     for mode in range(frequency.shape[1]):
         for _ in range(ITERATIONS):
             omega = 2.0 * np.pi * frequency[:, [mode]]
-            added = dynamic.parts.frequency_matrix(omega)[:, 0]
+            added = dynamic.parts.frequency_matrix(omega, with_floor=False)[:, 0]
             found, found_shapes = modes.undamped_modes(dynamic.mass, dynamic.stiffness + added.real)
             settled = np.allclose(found[:, mode], frequency[:, mode], rtol=1e-9)
             frequency[:, mode], shapes[:, :, mode] = found[:, mode], found_shapes[:, :, mode]
@@ -82,7 +83,7 @@ def sharp_poles(dynamic: Dynamic, modal: ModeBatch) -> NDArray[np.complex128]:
     Strong dashpots lock bodies together and move peaks far from every undamped frequency, so the poles are
     those of the damped system; where stiffness depends on frequency, each mode's own.
     """
-    if dynamic.parts.with_frequency or not dynamic.viscous.any():
+    if dynamic.parts.laws_with_frequency or not dynamic.viscous.any():
         omega = 2.0 * np.pi * modal.frequency
         poles = omega * (1j - 0.5 * np.minimum(modal.loss_factor, 2.0))
     else:
@@ -93,8 +94,9 @@ def sharp_poles(dynamic: Dynamic, modal: ModeBatch) -> NDArray[np.complex128]:
     table = dynamic.parts.model.floor_table
     if table is None:
         return sharp
-    # On a tabulated floor there may be more resonances than freedoms: its rows are looked at as well.
-    return np.concatenate([sharp, np.repeat(table_places(table)[None], len(sharp), axis=0)], axis=1)
+    # On a tabulated floor there may be more resonances than freedoms, and its rows are looked at as well.
+    rows = np.repeat(table_places(table)[None], len(sharp), axis=0)
+    return np.concatenate([sharp, table_resonances(dynamic, table), rows], axis=1)
 
 
 def _orthogonal(mass: Floats, shapes: Floats) -> Floats:

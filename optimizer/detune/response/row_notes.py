@@ -45,7 +45,7 @@ def noted(
         # Every response is without bound where the machine falls.
         return replace(row, value=np.inf, margin=-1.0, note=DOES_NOT_STAND)
     if at_amplitude:
-        found = BY_SEVERAL if several else BY_ITERATION
+        found = BY_SEVERAL if several or row.note == BY_SEVERAL else BY_ITERATION
         return replace(row, note=NONE_FOUND if endless else found)
     return replace(row, note=LEFT_ITS_CURVE) if endless and on_curves else row
 

@@ -154,6 +154,9 @@ class MotionView:
             total = total + self._rates(rate)[:, -1:] * np.array([0.0, 0.0, 1.0])
         return np.asarray(total)[None]
 
+    def foot_motion(self, station: str, rate: int = 0) -> Responses:
+        return np.asarray(self._rates(rate) @ find_station(self.model, station).foot.T)[None]
+
     def station_deflection(self, station: str, rate: int = 0) -> Responses:
         return np.asarray(self._rates(rate) @ find_station(self.model, station).rows.T)[None]
 

@@ -102,6 +102,9 @@ class ToneBatch:
             total[..., 2] += self.q[..., -1]
         return self._rate(rate) * total
 
+    def foot_motion(self, station: str, rate: int = 0) -> Complexes:
+        return self._rate(rate) * (self.q @ find_station(self.model, station).foot.T)
+
     def station_deflection(self, station: str, rate: int = 0) -> Complexes:
         found = find_station(self.model, station)
         deflection: Complexes = self.q @ found.rows.T

@@ -17,6 +17,8 @@ from detune.sizing.exchange import LinePool, solve_slice
 
 GAP = 1e-7
 BOXES = 3000
+# A position that cannot beat the best of the others is left after so many boxes, as near to its own best as it has come.
+HOPELESS = 400
 
 Found = tuple[float, Segment, float]
 
@@ -74,9 +76,12 @@ def _polish(pool: LinePool, best: Found, low: float, high: float, place: tuple[f
 
 
 def _search(
-    pool: LinePool, place: tuple[float, float], low: float, high: float
+    pool: LinePool, place: tuple[float, float], low: float, high: float, others: float
 ) -> tuple[Found | None, float]:
-    """Best of one position class and its proven lower bound (infinite: proved empty)."""
+    """Best of one position class and its proven lower bound (infinite: proved empty).
+
+    `others` is the best value of the other classes found before.
+    """
     best: Found | None = None
 
     def consider(mass: float) -> None:
@@ -92,8 +97,10 @@ def _search(
         best = _polish(pool, best, max(low, best[0] - step), min(high, best[0] + step), place)
     count = itertools.count()
     heap = [(_bound(pool, low, high, place), next(count), low, high)]
-    for _ in range(BOXES):
+    for done in range(BOXES):
         bound, _, a, b = heapq.heappop(heap)
+        if done >= HOPELESS and bound >= others - GAP * abs(others):
+            return best, bound
         target = math.inf if best is None else best[1].value
         if bound == math.inf or bound >= target - GAP * max(abs(target), 1e-12) or b - a <= 1e-12 * b:
             return best, bound
@@ -120,8 +127,13 @@ def search_masses(
     low, high = ((pool.problem.mass + x) / unit for x in (ballast.least, ballast.most))
     results: list[Found] = []
     bounds: list[float] = []
-    for place in _classes(pool, intervals):
-        best, bound = _search(pool, place, low, high)
+    places = _classes(pool, intervals)
+    # Positions with a design at some mass first, so that those without one know what they have to beat.
+    tried = [[_at(pool, low + (high - low) * i / 4, place)[0] for i in range(5)] for place in places]
+    found = [min((s.value for s in each if s is not None), default=math.inf) for each in tried]
+    for place in sorted(places, key=lambda each: found[places.index(each)]):
+        others = min((x[1].value for x in results), default=math.inf)
+        best, bound = _search(pool, place, low, high, others)
         bounds.append(bound)
         if best is not None:
             results.append(best)

@@ -37,8 +37,8 @@ def selection_bound(
 ) -> SelectionBound:
     """Least cost over weights in [0, 1] summing to one in each group: a lower bound on real selections.
 
-    `group_matrices[g]` has shape (parts, n, n): what each part adds to K; `costs[g]` (parts,). Every real choice is
-    a 0/1 point of this set, so its cost is never below the bound. Frequencies in Hz.
+    `group_matrices[g]` has shape (parts, n, n): what each part adds to K; `costs[g]` (parts,). Every real
+    choice is a 0/1 point of this set, so its cost is never below the bound. Frequencies in Hz.
     """
     cp = convex_library()
 
@@ -85,8 +85,8 @@ def selection_bound(
 class SoftSideAnswer:
     """k (N/m), damping and m (kg) on the soft side with the cost reached; damping as c (N s/m) or as h = eta k (N/m).
 
-    `worth` is "global" for transmissibility and affine rows alone and "safe restriction" once a displacement limit
-    stands in it (its affine form is exact at c = 0 and conservative otherwise).
+    `worth` is "global" for transmissibility and affine rows alone and "safe restriction" once a displacement
+    limit stands in it (its affine form is exact at c = 0 and conservative otherwise).
     """
 
     status: str
@@ -109,10 +109,10 @@ def soft_side_one_axis(
 ) -> SoftSideAnswer:
     """Least weights . (k, c, m) for one axis with the natural frequency below every frequency given.
 
-    `transmissibilities` are (frequency Hz, T < 1), each the cone ||(k, sqrt(1-T^2) w c)|| <= T (m w^2 - k), with
-    h = eta k in the place of w c where `loss_factor` (damping_bounds are then those of eta); `displacements` are
-    (frequency Hz, force N, limit m), each k <= m w^2 - F/X; k/m lies within `stiffness_per_mass` in s^-2.
-    Raises SizingError for T >= 1, and where no frequency is given.
+    `transmissibilities` are (frequency Hz, T < 1), each the cone ||(k, sqrt(1-T^2) w c)|| <= T (m w^2 - k),
+    with h = eta k in the place of w c where `loss_factor` (damping_bounds are then those of eta);
+    `displacements` are (frequency Hz, force N, limit m), each k <= m w^2 - F/X; k/m lies within
+    `stiffness_per_mass` in s^-2. Raises SizingError for T >= 1, and where no frequency is given.
     """
     cp = convex_library()
 

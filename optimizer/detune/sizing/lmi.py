@@ -17,18 +17,37 @@ All forms are scaled by the Cholesky factor of the mass and the frequency before
 from __future__ import annotations
 
 import math
+import warnings
 from dataclasses import dataclass
 from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.sizing.damping_free import (
+    DampingFreeLimit,
+    Side,
+    balanced_split,
+    damping_free_bound,
+    load_rows,
+    shares_of,
+)
 from detune.sizing.statement import SizingError
+from detune.sizing.stiffness_model import StiffnessModel
+
+__all__ = [
+    "ConvexAnswer",
+    "DampingFreeLimit",
+    "Side",
+    "StiffnessModel",
+    "cheapest",
+    "damping_free_bound",
+    "greatest_separation",
+]
 
 Floats = NDArray[np.float64]
 Worth = Literal["global", "safe restriction", "lower bound"]
 Status = Literal["solved", "infeasible", "inaccurate", "failed"]
-Side = Literal["below", "above"]
 
 
 def convex_library() -> Any:
@@ -36,74 +55,6 @@ def convex_library() -> Any:
     import cvxpy
 
     return cvxpy
-
-
-@dataclass(frozen=True)
-class StiffnessModel:
-    """Arrays of a linear sizing model: `mass` (n, n), `patterns` (p, n, n), `constant` (n, n), bounds (p,) N/m.
-
-    `ballast_patterns` (q, n, n) per kg with `ballast_most` (q,) kg; `ballast_stiffness` (q, n, n) is what a kg adds to
-    K (gravity's stiffness, of either sign), zero where left out. Raises SizingError for shapes that do not
-    fit, a pattern that is not positive semidefinite, or crossed bounds.
-    """
-
-    mass: Floats
-    patterns: Floats
-    constant: Floats
-    lower: Floats
-    upper: Floats
-    ballast_patterns: Floats
-    ballast_most: Floats
-    ballast_stiffness: Floats | None = None
-
-    def __post_init__(self) -> None:
-        n = self.mass.shape[0]
-        if self.patterns.shape[1:] != (n, n) or self.constant.shape != (n, n):
-            raise SizingError("stiffness patterns and mass do not have the same freedoms")
-        if self.ballast_patterns.shape != (self.ballast_most.size, n, n):
-            raise SizingError("ballast patterns and ballast bounds do not fit the freedoms")
-        if np.any(self.lower > self.upper) or self.lower.size != self.patterns.shape[0]:
-            raise SizingError("stiffness bounds are crossed or do not fit the patterns")
-        for name, stack in (("stiffness", self.patterns), ("ballast", self.ballast_patterns)):
-            for i, pattern in enumerate(stack):
-                lowest = float(np.linalg.eigvalsh(pattern)[0])
-                if lowest < -1e-9 * float(np.abs(pattern).max()):
-                    raise SizingError(f"{name} pattern {i} is not positive semidefinite")
-
-    def stiffness_at(self, k: Floats, ballast: Floats | None = None) -> Floats:
-        """K(k, b), shape (n, n); b zero where left out."""
-        total = self.constant + np.tensordot(k, self.patterns, axes=1)
-        if ballast is not None and self.ballast_stiffness is not None:
-            total = total + np.tensordot(ballast, self.ballast_stiffness, axes=1)
-        return np.asarray(total)
-
-    def mass_at(self, ballast: Floats) -> Floats:
-        """M(b), shape (n, n)."""
-        return np.asarray(self.mass + np.tensordot(ballast, self.ballast_patterns, axes=1))
-
-    def frequencies(self, k: Floats, ballast: Floats) -> Floats:
-        """Undamped natural frequencies in Hz, rising, shape (n,), by the exact eigenvalues."""
-        from scipy.linalg import eigh
-
-        values = eigh(self.stiffness_at(k, ballast), self.mass_at(ballast), eigvals_only=True)
-        return np.asarray(np.sqrt(np.maximum(values, 0.0)) / (2 * np.pi))
-
-
-@dataclass(frozen=True)
-class DampingFreeLimit:
-    """|row^T q| <= limit under the constant `load`, whatever the damping, with every mode on one side of `frequency`.
-
-    `row` (n,) or (r, n) real, of several the root of the summed squares; `load` (n,) real or complex. Below (all modes
-    under the frequency in Hz) it then holds at every higher frequency, above at every lower one. Limits of one name
-    bound parts of one sum: their responses together stay within `limit`, which they share.
-    """
-
-    name: str
-    frequency: float
-    row: Floats
-    load: NDArray[np.complex128]
-    limit: float
-    side: Side = "below"
 
 
 @dataclass(frozen=True)
@@ -166,7 +117,10 @@ class _Form:
 
         problem = cp.Problem(goal, self.constraints + extra)
         try:
-            problem.solve(solver=cp.CLARABEL)
+            with warnings.catch_warnings():
+                # That an answer is inaccurate is told by its status.
+                warnings.simplefilter("ignore", UserWarning)
+                problem.solve(solver=cp.CLARABEL)
         except cp.SolverError as error:
             return "failed", str(error), math.nan
         status: Status = "failed"
@@ -190,7 +144,8 @@ def greatest_separation(model: StiffnessModel, frequency: float, side: Side) -> 
     """Global: all modes as far as possible below (1 - f_max/f) or above (f_min/f - 1) the frequency `f` in Hz.
 
     One semidefinite program when the mass is fixed; bisection of feasibility programs when ballast is free
-    (below: K <= t M is linear in (k, b) for each t; above likewise). `bound` is proven to the solver's tolerance.
+    (below: K <= t M is linear in (k, b) for each t; above likewise). `bound` is proven to the solver's
+    tolerance.
     """
     cp = convex_library()
 
@@ -289,11 +244,6 @@ def _schur(form: _Form, w_ratio: float, vectors: Floats, cap: Any, side: Side) -
     return [*rows, sum(caps) <= cap]
 
 
-def load_rows(load: NDArray[np.complex128]) -> Floats:
-    """Real and imaginary part (2, n) of a load: f^H A^-1 f is the sum over both."""
-    return np.stack([np.real(load), np.imag(load)])
-
-
 def cheapest(
     model: StiffnessModel,
     stiffness_cost: Floats,
@@ -305,10 +255,10 @@ def cheapest(
 ) -> ConvexAnswer:
     """Least stiffness_cost . k + ballast_cost . b with all modes on one side and limits that hold at any damping.
 
-    Costs per N/m and per kg, shapes (p,) and (q,). Without `limits` the answer is global; with them it is a safe
-    restriction (never unsafe, perhaps dearer than needed). The split between a limit's two factors is
-    rebalanced `rounds` times; each round is a valid restriction and the best is kept.
-    Raises SizingError when neither a side nor a limit is given.
+    Costs per N/m and per kg, shapes (p,) and (q,). Without `limits` the answer is global; with them it is a
+    safe restriction (never unsafe, perhaps dearer than needed). The split between a limit's two factors is
+    rebalanced `rounds` times; each round is a valid restriction and the best is kept. Raises SizingError when
+    neither a side nor a limit is given.
     """
     cp = convex_library()
 
@@ -328,8 +278,13 @@ def cheapest(
     size = size or 1.0
     worth: Worth = "safe restriction" if limits else "global"
     best = _nothing(model.lower.size, model.ballast_most.size, worth, "infeasible", "no round was feasible")
-    split = [_first_split(form, x) for x in limits]
-    shares = [1.0 / sum(x.name == y.name for y in limits) for x in limits]
+    # The corner where every bound is least: if the limits can be met at all, the first round is feasible.
+    below = all(x.side == "below" for x in limits)
+    corner = model.lower if below else model.upper
+    ballast = model.ballast_most * float(below)
+    split = [balanced_split(model, x, corner, ballast) for x in limits]
+    split = [s if math.isfinite(s) else _first_split(form, x) for s, x in zip(split, limits, strict=True)]
+    shares = shares_of(model, limits, corner, ballast)
     for _ in range(rounds if limits else 1):
         rows = list(extra)
         for limit, s, share in zip(limits, split, shares, strict=True):
@@ -344,51 +299,13 @@ def cheapest(
             break
         k, ballast = form.point()
         exact = float(stiffness_cost @ k + (ballast_cost @ ballast if ballast.size else 0.0))
-        if math.isnan(best.value) or exact < best.value:
+        if math.isnan(best.value) or (status != "solved", exact) < (best.status != "solved", best.value):
             best = ConvexAnswer(status, worth, exact, value * size, k, ballast, detail)
-        split = [_balanced(model, x, k, ballast) for x in limits]
-        shares = _shares(model, limits, k, ballast)
+        split = [balanced_split(model, x, k, ballast) for x in limits]
+        shares = shares_of(model, limits, k, ballast)
     return best
-
-
-def _shares(
-    model: StiffnessModel, limits: tuple[DampingFreeLimit, ...], k: Floats, ballast: Floats
-) -> list[float]:
-    """Shares of the limits of one name in proportion to their bounds at a design; they sum to one."""
-    bounds = [damping_free_bound(model, x, k, ballast) for x in limits]
-    totals = [sum(b for b, y in zip(bounds, limits, strict=True) if y.name == x.name) for x in limits]
-    equal = [1.0 / sum(x.name == y.name for y in limits) for x in limits]
-    return [
-        b / total if 0.0 < total < math.inf else each
-        for b, total, each in zip(bounds, totals, equal, strict=True)
-    ]
 
 
 def _first_split(form: _Form, limit: DampingFreeLimit) -> float:
     row = float(np.linalg.norm(form.factor @ np.atleast_2d(limit.row).T))
     return row / float(np.linalg.norm(form.factor @ load_rows(limit.load).T))
-
-
-def _balanced(model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats) -> float:
-    row, load = _compliances(model, limit, k, ballast)
-    return math.sqrt(abs(row) / abs(load))
-
-
-def _compliances(
-    model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats
-) -> tuple[float, float]:
-    """c^T A^-1 c and f^H A^-1 f, each summed over its rows; infinite where A is not positive definite."""
-    a = (2 * math.pi * limit.frequency) ** 2 * model.mass_at(ballast) - model.stiffness_at(k, ballast)
-    a = a if limit.side == "below" else -a
-    if float(np.linalg.eigvalsh(a)[0]) <= 0:
-        return math.inf, math.inf
-    rows, loads = np.atleast_2d(limit.row), load_rows(limit.load)
-    return float(np.sum(rows.T * np.linalg.solve(a, rows.T))), float(
-        np.sum(loads.T * np.linalg.solve(a, loads.T))
-    )
-
-
-def damping_free_bound(model: StiffnessModel, limit: DampingFreeLimit, k: Floats, ballast: Floats) -> float:
-    """sqrt(c^T A^-1 c f^H A^-1 f) at one design: never below the response at any damping; inf off its side."""
-    row, load = _compliances(model, limit, k, ballast)
-    return math.sqrt(row * load)

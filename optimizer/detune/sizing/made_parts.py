@@ -173,7 +173,9 @@ def varied_brief(brief: Brief, given: Mapping[SizingUnknown, float]) -> Brief:
             )
         if unknown.kind == "parallel":
             stations = tuple(
-                station.model_copy(update={"parallel": round(value)}) if station.group == unknown.group else station
+                station.model_copy(update={"parallel": round(value)})
+                if station.group == unknown.group
+                else station
                 for station in stations
             )
     if bodies is brief.bodies and stations is brief.stations:
@@ -219,4 +221,6 @@ def with_parallel(brief: Brief, count: int) -> Brief:
         else u
         for u in sizing.unknown
     )
-    return varied_brief(brief, fixed).model_copy(update={"sizing": sizing.model_copy(update={"unknown": held})})
+    return varied_brief(brief, fixed).model_copy(
+        update={"sizing": sizing.model_copy(update={"unknown": held})}
+    )

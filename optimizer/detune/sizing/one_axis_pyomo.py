@@ -1,12 +1,13 @@
 """One-axis sizing stated a second time, in Pyomo, and solved globally by SCIP.
 
-The statement shares only the input types with `one_axis`. Unknowns: k, c (or the loss force h = eta k), ballast
-(continuous or in whole steps), optionally a whole number of equal parts side by side, and optionally one level by
-which all response limits are multiplied. A limit over a range is not sampled: with u = w^2 it says that a polynomial
-P(u) is not negative on [ua, ub]. For degree two that holds if and only if some tau >= 0 makes
-P(u) - tau (u - ua)(ub - u) non-negative for every real u (the S-lemma, lossless for one quadratic): its three
-coefficients then satisfy p0, p2 >= 0 and 4 p0 p2 >= p1^2. A limit of higher degree is stated at lines, and the worst
-place of its range joins them until none is exceeded: each such run is a relaxation, so its bound holds throughout.
+The statement shares only the input types with `one_axis`. Unknowns: k, c (or the loss force h = eta k),
+ballast (continuous or in whole steps), optionally a whole number of equal parts side by side, and optionally
+one level by which all response limits are multiplied. A limit over a range is not sampled: with u = w^2 it
+says that a polynomial P(u) is not negative on [ua, ub]. For degree two that holds if and only if some tau >=
+0 makes P(u) - tau (u - ua)(ub - u) non-negative for every real u (the S-lemma, lossless for one quadratic):
+its three coefficients then satisfy p0, p2 >= 0 and 4 p0 p2 >= p1^2. A limit of higher degree is stated at
+lines, and the worst place of its range joins them until none is exceeded: each such run is a relaxation, so
+its bound holds throughout.
 """
 
 from __future__ import annotations
@@ -30,8 +31,8 @@ Lines = dict[str, tuple[float, ...]]
 class PartCount:
     """A whole number n of equal parts side by side; the bounds of k and c in the problem are then those for n = 1.
 
-    Each adds `cost` and `cost_per_damping` times the damping to a weighted sum. Limits named in `shared` are n times
-    as wide: they hold the force through one part.
+    Each adds `cost` and `cost_per_damping` times the damping to a weighted sum. Limits named in `shared` are
+    n times as wide: they hold the force through one part.
     """
 
     least: int
@@ -56,8 +57,8 @@ class ScipTask:
 class ScipAnswer:
     """What SCIP said. Design values are NaN unless `status` is "optimal" (or a time limit left an incumbent).
 
-    `seconds` is from the statement to the answer, without process start and imports; `runs` how often SCIP ran.
-    `detail` is its own word.
+    `seconds` is from the statement to the answer, without process start and imports; `runs` how often SCIP
+    ran. `detail` is its own word.
     """
 
     status: Status

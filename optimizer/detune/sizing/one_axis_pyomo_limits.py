@@ -1,8 +1,8 @@
 """Limits of the second statement of one-axis sizing: polynomials in u = w^2 that may not be negative.
 
-Written apart from `envelope` and `worst_frequency`, of which the exact method is made, and sharing only the input
-types. A limit says  scale^2 |D(u)|^2 >= (amplitude/limit)^2 top(u)  at every u of its range; `scale` loosens it (by a
-number of parts that share a force, or by a level that is itself sought).
+Written apart from `envelope` and `worst_frequency`, of which the exact method is made, and sharing only the
+input types. A limit says  scale^2 |D(u)|^2 >= (amplitude/limit)^2 top(u)  at every u of its range; `scale`
+loosens it (by a number of parts that share a force, or by a level that is itself sought).
 """
 
 from __future__ import annotations

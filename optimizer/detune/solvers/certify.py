@@ -103,6 +103,7 @@ class _Work:
         point: tuple[float, ...],
         frequency: float | None = None,
         where: str = "",
+        bound_margin: float | None = None,
     ) -> None:
         allowable = requirement.allowable
         lower, upper = (None if v is None or not np.isfinite(v) else float(v) for v in limits)
@@ -124,7 +125,11 @@ class _Work:
                 lower=lower,
                 upper=upper,
                 margin=margin(worst),
-                guaranteed_margin=None if guaranteed is None else margin(guaranteed),
+                guaranteed_margin=None
+                if guaranteed is None
+                else margin(guaranteed)
+                if bound_margin is None
+                else bound_margin,
                 frequency=None if frequency is None or np.isnan(frequency) else frequency,
                 where=where or corner_words(self.made.map.variables, point),
                 point=point,
@@ -151,22 +156,27 @@ class _Work:
     def _static_verdict(
         self, requirement: Requirement, index: list[int], rows: list[StaticRow], decision: StaticRowsDecision
     ) -> None:
-        """The worst side of the worst of a requirement's rows."""
-        sides = []
+        """The worst side of the worst of a requirement's rows, and the bound that comes nearest to a limit or beyond."""
+        worst: tuple[float, float, tuple[float, ...], StaticRow] | None = None
+        least = (np.inf, np.nan)
         for i in index:
             row = rows[i]
-            for worst, bound, where in (
+            lower, upper = (np.array(v) if np.isfinite(v) else None for v in (row.lower, row.upper))
+            for found, bound, where in (
                 (decision.attained_low[i], decision.bound_low[i], decision.where_low[i]),
                 (decision.attained_high[i], decision.bound_high[i], decision.where_high[i]),
             ):
-                lower, upper = (np.array(v) if np.isfinite(v) else None for v in (row.lower, row.upper))
-                sides.append((float(window_margin(np.array(worst), lower, upper)), worst, bound, where, row))
-        _, worst, bound, where, row = min(sides, key=lambda side: side[0])
-        found = {decision.status[i] for i in index}
+                margin = float(window_margin(np.array(found), lower, upper))
+                least = min(least, (float(window_margin(np.array(bound), lower, upper)), bound))
+                if worst is None or margin < worst[0]:
+                    worst = margin, found, where, row
+        assert worst is not None
+        statuses = {decision.status[i] for i in index}
         status: Status = (
-            "violated" if "violated" in found else "undecided" if "undecided" in found else "proven"
+            "violated" if "violated" in statuses else "undecided" if "undecided" in statuses else "proven"
         )
-        self._row(requirement, status, worst, bound, (row.lower, row.upper), where)
+        _, value, where, row = worst
+        self._row(requirement, status, value, least[1], (row.lower, row.upper), where, bound_margin=least[0])
 
     def _stability(self, group: StaticGroup, requirement: Requirement) -> None:
         allowable = requirement.allowable
@@ -174,7 +184,7 @@ class _Work:
         nothing = StaticRow(np.zeros((3, group.each.model.frame.count)))
         made = self.made
         worst, bound = stability_worst(
-            made.problem.brief, group.each, made.limits(group.each, [nothing]), made.step, made.map
+            made.problem.brief, group.each, made.limits(group.each, [nothing]), made.designs, made.map
         )
         kept: Status = "proven" if bound >= allowable.limit else "undecided"
         status: Status = kept if worst >= allowable.limit else "violated"

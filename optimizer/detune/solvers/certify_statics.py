@@ -23,8 +23,10 @@ from detune.proof.scatter_data import ScatterSystem, product_interval, products
 from detune.proof.selection_data import ForbiddenBands
 from detune.proof.separation_box import UncertainBody, body_mass, box_separation, interval_separation
 from detune.proof.static_rows import StaticLimits
+from detune.response.absorbers import geometric_of, spare_stiffness, weight_of
+from detune.response.designs import Designs
 from detune.response.gravity import weight_to_topple
-from detune.response.model import find_station
+from detune.response.model import Model, find_station
 from detune.solvers.scatter_machine import NOTHING, ScatterMap, gravity_terms, weight_terms
 from detune.solvers.scatter_rows import NotBounded
 
@@ -137,7 +139,8 @@ def static_limits(
     """Return static rows of a design in a state as the arrays of the proof floor."""
     model = each.model
     axes, stiffness, factors = [], [], []
-    loads = [model.weight[step]]
+    one = Designs(np.array([part], dtype=np.intp), np.array([step], dtype=np.intp))
+    loads = [weight_of(model, one)[0]]
     load_factors: list[tuple[int, int, int]] = [(NOTHING, NOTHING, NOTHING)]
     for number, station in enumerate(model.stations):
         own = model.groups[station.group].arrays.stiffness_static[part[station.group]]
@@ -152,7 +155,7 @@ def static_limits(
         loads.append(vector)
         load_factors.append(names)
     return StaticLimits(
-        fixed=0.5 * (model.fixed_static + model.fixed_static.T),
+        fixed=_fixed(model, one),
         axes=np.array(axes),
         stiffness=np.array(stiffness),
         factors=np.array(factors, dtype=np.int64),
@@ -170,8 +173,14 @@ def static_limits(
     )
 
 
+def _fixed(model: Model, one: Designs) -> Floats:
+    """What no scatter changes in the static stiffness (n, n), made exactly symmetric."""
+    whole = (model.fixed_static + spare_stiffness(model, one)).reshape(model.fixed_static.shape)
+    return np.asarray(0.5 * (whole + whole.T))
+
+
 def stability_worst(
-    brief: Brief, each: StateModel, limits: StaticLimits, step: int, found: ScatterMap
+    brief: Brief, each: StateModel, limits: StaticLimits, one: Designs, found: ScatterMap
 ) -> tuple[float, float]:
     """Weight to topple at the softest corner, and what it never falls below.
 
@@ -181,7 +190,7 @@ def stability_worst(
     points = np.concatenate([limits.low, [0.0]])[None]
     weights = products(points, limits.factors)[0] * limits.stiffness
     stiffness = (limits.fixed + (limits.axes.T * weights) @ limits.axes)[None]
-    geometric = each.model.geometric[[step]]
+    geometric = geometric_of(each.model, one)
     worst = float(weight_to_topple(stiffness, geometric)[0])
     terms, names = gravity_terms(brief, each.model, found)
     if not terms:

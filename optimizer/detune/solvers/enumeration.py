@@ -44,7 +44,9 @@ def solve(problem: Problem, settings: Settings) -> Outcome:
     started = time.perf_counter()
     tally = _Tally(problem, stages(problem))
     stopped: Stopped = "finished"
-    looked_at, block = 0, min(FIRST_BLOCK, BLOCK)
+    # Without a limit and nobody to ask, Ctrl-C alone stops the work, at once; large batches are quicker then.
+    hurried = settings.time_limit is not None or settings.interrupted is not None
+    looked_at, block = 0, min(FIRST_BLOCK, BLOCK) if hurried else BLOCK
 
     def look() -> None:
         if settings.time_limit is not None and time.perf_counter() - started > settings.time_limit:
@@ -56,12 +58,13 @@ def solve(problem: Problem, settings: Settings) -> Outcome:
         while looked_at < problem.count:
             look()
             begun, last = time.perf_counter(), min(looked_at + block, problem.count)
-            tally.go_through(all_designs(problem.model, looked_at, last), look)
+            tally.go_through(all_designs(problem.model, looked_at, last), look if hurried else None)
             looked_at = last
             if settings.progress is not None:
                 settings.progress(tally.progress(looked_at))
             taken = max(time.perf_counter() - begun, 1e-6)
-            block = int(min(BLOCK, max(1.0, 4.0 * block), max(1.0, block * BLOCK_SECONDS / taken)))
+            if hurried:
+                block = int(min(BLOCK, max(1.0, 4.0 * block), max(1.0, block * BLOCK_SECONDS / taken)))
     except _Halted as halted:
         stopped = halted.why
     except KeyboardInterrupt:
@@ -105,8 +108,11 @@ class _Tally:
             looked_at, self.problem.count, min(least, default=None), open_bound(self.problem, looked_at)
         )
 
-    def go_through(self, designs: Designs, look: Callable[[], None]) -> None:
-        """Judge a block of designs, asking `look` now and then, which raises to stop; then nothing is booked."""
+    def go_through(self, designs: Designs, look: Callable[[], None] | None) -> None:
+        """Judge a block of designs, asking `look` now and then, which raises to stop: then nothing is booked.
+
+        Without `look` the batches are as large as each stage has them best.
+        """
         least = np.full(designs.count, np.inf)
         rule = 0
         # Booked at the end of the block, so that an interrupt leaves no half-counted designs behind.
@@ -139,11 +145,15 @@ class _Tally:
             self.margins.append(least)
 
     def _chunks(
-        self, number: int, count: int, most: int, look: Callable[[], None]
+        self, number: int, count: int, most: int, look: Callable[[], None] | None
     ) -> Iterator[NDArray[np.intp]]:
         """Indices of designs to judge at once in a stage: as many as are quick enough, at most `most`."""
         first = 0
         while first < count:
+            if look is None:
+                yield np.arange(first, min(first + most, count))
+                first += most
+                continue
             look()
             size = min(self.chunk.get(number, FIRST_CHUNK), most)
             begun = time.perf_counter()

@@ -79,7 +79,7 @@ def _form(springs: Carried, arms_of: Floats, forces_of: Floats, relative: bool =
 
 def under(springs: Carried, rows: Floats, positions: Floats, weight: Floats) -> Floats:
     """Geometric stiffness (B, n, n) of what the springs carry under static loads (B, n)."""
-    rest = np.linalg.solve(_stiffness(springs, rows, rows), weight[:, springs.own].T).T
+    rest = np.asarray(np.linalg.solve(_stiffness(springs, rows, rows), weight[:, springs.own].T).T, float)
     return _form(springs, positions, _forces(springs, rows, rest))
 
 
@@ -99,10 +99,10 @@ def by_position(
 ) -> Floats:
     """Derivative (n, n) of `under` a static load (n,) as rows and positions move by these amounts."""
     stiffness = _stiffness(springs, rows, rows)
-    rest = np.linalg.solve(stiffness, weight[springs.own])
+    rest = np.asarray(np.linalg.solve(stiffness, weight[springs.own]), dtype=float)
     change = _stiffness(springs, d_rows, rows)
-    d_rest = -np.linalg.solve(stiffness, (change + change.T) @ rest)
-    forces = _forces(springs, rows, np.vstack([rest, d_rest]))
+    d_rest = np.asarray(-np.linalg.solve(stiffness, (change + change.T) @ rest), dtype=float)
+    forces = _forces(springs, rows, np.array([rest, d_rest], dtype=float))
     d_forces = _forces(springs, d_rows, rest[None]) + forces[1:]
     moved = _form(springs, d_positions, forces[:1], relative=False)
     return np.asarray((_form(springs, positions, d_forces) + moved)[0])

@@ -7,6 +7,7 @@ the unknowns changes nothing, because the integral does not depend on them.
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 
 import numpy as np
@@ -22,8 +23,8 @@ from detune.solvers.gradient_tone import Tones, pulled_back, tones
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 TWO_PI = 2.0 * np.pi
-PANEL = 3.0
-POINTS = 8
+PANEL = 2.0
+POINTS = 10
 
 
 def points(spectrum: PowerSpectralDensity, poles: Complexes) -> tuple[Floats, Floats]:
@@ -36,7 +37,7 @@ def points(spectrum: PowerSpectralDensity, poles: Complexes) -> tuple[Floats, Fl
     edges = np.unique(np.concatenate([corner, np.clip(between, corner[0], corner[-1])]))
     node, weight = np.polynomial.legendre.leggauss(POINTS)
     omega, share = [], []
-    for start, end in zip(edges[:-1], edges[1:], strict=True):
+    for start, end in itertools.pairwise(edges):
         middle = 0.5 * (start + end)
         owner = int(np.argmin((middle - centre) ** 2 + width**2))
         near, scale = centre[owner], width[owner]
@@ -91,7 +92,7 @@ def noise_rows(limits: Observed, at: StateAt, noises: tuple[NoiseLoad, ...], pol
 def noise_slopes(limits: Observed, found: Noisy, wanted: NDArray[np.bool_], unknowns: int) -> Floats:
     """Slopes (R, u) of the values of the `wanted` (R,) limits, zero for the others."""
     slopes = np.zeros((limits.count, unknowns))
-    for row in np.flatnonzero(wanted):
+    for row in np.flatnonzero(wanted).tolist():
         _, by = _counted(found.moved[:, row], found.duration, limits.pairs[row][0].statistic())
         for response, weight in found.found:
             _, cotangent = _power(limits, row, response)
@@ -112,7 +113,7 @@ def _powers(limits: Observed, found: Tones) -> Floats:
     single = np.isfinite(limits.along[:, 0])
     line = np.sum(phasor * np.where(single[:, None], limits.along, 0.0), axis=2)
     whole = np.sum(phasor.real**2 + phasor.imag**2, axis=2)
-    return np.where(single, line.real**2 + line.imag**2, whole)
+    return np.asarray(np.where(single, line.real**2 + line.imag**2, whole))
 
 
 def _power(limits: Observed, row: int, found: Tones) -> tuple[Floats, Complexes]:
@@ -121,8 +122,10 @@ def _power(limits: Observed, row: int, found: Tones) -> tuple[Floats, Complexes]
     along = limits.along[row]
     if np.isfinite(along[0]):
         line = phasor @ along
-        return np.abs(line) ** 2, 2.0 * np.conj(line)[:, None] * along * weighting
-    return np.sum(np.abs(phasor) ** 2, axis=1), 2.0 * np.conj(phasor) * weighting
+        cotangent = 2.0 * np.conj(line)[:, None] * along * weighting
+        return np.asarray(np.abs(line) ** 2), np.asarray(cotangent)
+    power = np.sum(np.abs(phasor) ** 2, axis=1)
+    return np.asarray(power), np.asarray(2.0 * np.conj(phasor) * weighting)
 
 
 def _counted(variances: Floats, duration: float, statistic: str) -> tuple[float, Floats]:
@@ -142,6 +145,8 @@ def _counted(variances: Floats, duration: float, statistic: str) -> tuple[float,
     factor = u + EULER_CONSTANT / u
     by_cycles = (1.0 - EULER_CONSTANT / u**2) / (u * cycles)
     by_crossing = by_cycles * duration if crossing * duration > FEWEST_CYCLES else 0.0
-    by = factor * by_sigma + sigma * by_crossing * crossing * np.array([-0.5 / still, 0.5 / max(rate, 1e-300)])
+    by = factor * by_sigma + sigma * by_crossing * crossing * np.array(
+        [-0.5 / still, 0.5 / max(rate, 1e-300)]
+    )
     times = 2.0 if statistic == "peak-to-peak" else 1.0
     return times * factor * sigma, times * by

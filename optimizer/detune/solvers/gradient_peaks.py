@@ -63,7 +63,7 @@ def observed(pairs: tuple[tuple[HarmonicAllowable, str], ...], model: Model) -> 
     return Observed(pairs, maps, along, flat, factor, energy)
 
 
-def phasors(limits: Observed, row: NDArray[np.intp], found: Tones) -> tuple[Complexes, Floats]:
+def phasors(limits: Observed, row: NDArray[np.intp], found: Tones) -> tuple[Complexes, Complexes]:
     """Phasors (N, 3) of row `row[k]` at frequency k, and their weighting (N, 3)."""
     weight = np.ones((len(row), 3), dtype=complex)
     frequency = found.omega[None] / TWO_PI
@@ -72,8 +72,10 @@ def phasors(limits: Observed, row: NDArray[np.intp], found: Tones) -> tuple[Comp
             ones = np.ones((1, len(row), 3), dtype=complex)
             weight[row == index] = allowable.weighted(ones, frequency)[0][row == index]
     if len(row) and np.all(row == row[0]):
-        return (found.features @ limits.maps[row[0]]) * weight, weight
-    return (found.features[:, None, :] @ limits.maps[row])[:, 0] * weight, weight
+        seen = found.features @ limits.maps[row[0]]
+    else:
+        seen = (found.features[:, None, :] @ limits.maps[row])[:, 0]
+    return np.asarray(seen * weight), weight
 
 
 def _sizes(limits: Observed, row: NDArray[np.intp], phasor: Complexes) -> tuple[Floats, Complexes]:
@@ -87,13 +89,13 @@ def _sizes(limits: Observed, row: NDArray[np.intp], phasor: Complexes) -> tuple[
     major = np.sqrt(np.where(energy, whole, 0.5 * (whole + np.abs(plain))))
     size = np.where(single, np.abs(straight), major)
     safe = np.where(size > 0.0, size, 1.0)
-    turned = np.where(np.abs(plain) > 0.0, np.conj(plain) / np.where(np.abs(plain) > 0.0, np.abs(plain), 1.0), 0.0)
-    ellipse = np.where(
-        energy[:, None], np.conj(phasor), 0.5 * (np.conj(phasor) + turned[:, None] * phasor)
+    turned = np.where(
+        np.abs(plain) > 0.0, np.conj(plain) / np.where(np.abs(plain) > 0.0, np.abs(plain), 1.0), 0.0
     )
+    ellipse = np.where(energy[:, None], np.conj(phasor), 0.5 * (np.conj(phasor) + turned[:, None] * phasor))
     line = np.conj(straight)[:, None] * np.where(single[:, None], along, 0.0)
     cotangent = np.where(single[:, None], line, ellipse) / safe[:, None]
-    return factor * size, factor[:, None] * cotangent
+    return np.asarray(factor * size), np.asarray(factor[:, None] * cotangent)
 
 
 def amplitudes(
@@ -140,7 +142,7 @@ def _table(limits: Observed, at: StateAt, family: Family, speed: Floats) -> Floa
         size, _ = _sizes(limits, np.tile(every, count), phasor.reshape(-1, 3))
         by_order[order] = by_order.get(order, 0.0) + size.reshape(count, -1).T
     stacked = np.array(list(by_order.values()))
-    return np.where(energy[:, None], np.sqrt(np.sum(stacked**2, axis=0)), np.sum(stacked, axis=0))
+    return np.asarray(np.where(energy[:, None], np.sqrt(np.sum(stacked**2, axis=0)), np.sum(stacked, axis=0)))
 
 
 @dataclass(frozen=True)
@@ -269,7 +271,7 @@ def _vertex(x: Floats, y: Floats) -> Floats:
     bend = rise + fall
     shift = np.where(bend > 0.0, 0.5 * (rise * two - fall * one) / np.where(bend > 0.0, bend, 1.0), 0.0)
     aim = x[1] + shift
-    return np.clip(aim, x[0] + 1e-3 * one, x[2] - 1e-3 * two)
+    return np.asarray(np.clip(aim, x[0] + 1e-3 * one, x[2] - 1e-3 * two))
 
 
 def _narrow(x: Floats, y: Floats, active: NDArray[np.intp], vertex: Floats, value: Floats) -> None:

@@ -7,6 +7,7 @@ differenced.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,7 +30,7 @@ class ToneProbe:
     model: Model
     layout: Layout
 
-    def __getattr__(self, name: str) -> object:
+    def __getattr__(self, name: str) -> Any:
         raise NoMap(name)
 
     def _unit(self, start: int, count: int) -> Floats:
@@ -89,7 +90,7 @@ class StaticProbe:
     model: Model
     features: Floats
 
-    def __getattr__(self, name: str) -> object:
+    def __getattr__(self, name: str) -> Any:
         raise NoMap(name)
 
     @property

@@ -7,7 +7,7 @@ reference force, so that nothing breaks where the static force changes sign.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,7 +19,6 @@ from detune.brief.allowable.tilt import Tilt
 from detune.brief.allowable.uplift import Uplift
 from detune.problem.build import HarmonicRequirements
 from detune.problem.requirement import Requirement
-from detune.response.coincidence import any_meet
 from detune.response.model import Model, find_station
 from detune.solvers.gradient_mixture import ResponsePlan, mixed_slopes, mixture
 from detune.solvers.gradient_noise import noise_rows
@@ -43,8 +42,8 @@ LEAST_LOG = -20.0
 class Rows:
     """Rows (m,) with slopes (m, u), the requirement of each, and the log of response over limit where it is one.
 
-    A row without a requirement forbids toppling on the dynamic stiffness. `log` (m,) and `log_slopes` (m, u) are nan for rows that limit no response to forcing. `omega` (m,): where the peak
-    stands, rad/s, nan where there is none.
+    A row without a requirement forbids toppling on the dynamic stiffness. `log` (m,) and `log_slopes` (m, u) are nan for
+    rows that limit no response to forcing. `omega` (m,): where the peak stands, rad/s, nan where there is none.
     """
 
     value: Floats
@@ -196,6 +195,27 @@ def response_plan(
         np.array([each[4] for each in kept]),
     )
     return plan, tuple(left)
+
+
+def without(plan: ResponsePlan, requirements: list[Requirement]) -> ResponsePlan | None:
+    """The plan without some of its limits, None where none is left."""
+    kept = [i for i, r in enumerate(plan.requirements) if r not in requirements]
+    if not kept:
+        return None
+    limits = plan.limits
+    pairs = tuple(limits.pairs[i] for i in kept)
+    flat = limits.maps[kept].transpose(1, 0, 2).reshape(limits.maps.shape[1], -1).astype(complex)
+    return replace(
+        plan,
+        requirements=tuple(plan.requirements[i] for i in kept),
+        limits=replace(
+            limits, pairs=pairs, maps=limits.maps[kept], along=limits.along[kept], flat=flat,
+            factor=limits.factor[kept], energy=limits.energy[kept],
+        ),
+        offset=plan.offset[kept],
+        offset_is_size=plan.offset_is_size[kept],
+        compression=plan.compression[kept],
+    )  # fmt: skip
 
 
 def _pulls(model: Model, station: str) -> bool:

@@ -30,13 +30,13 @@ def perturbed(
             factor(found.stiffness[number]),
             factor(found.damping[number]),
         )
-        for number, station in enumerate(brief.stations)
+        for number, station in enumerate(brief.every_station)
     )
     bodies = tuple(
         _moved(body, point, found.mass[number], found.centre[number])
         for number, body in enumerate(brief.bodies)
     )
-    groups = tuple(station.name for station in stations)
+    groups = tuple(station.name for station in brief.every_station)
     changed = brief.model_copy(update={"stations": stations, "bodies": bodies, "states": _states(brief)})
     return changed, Design(groups, mounts, design.ballast, design.stack)
 
@@ -47,7 +47,7 @@ def _states(brief: Brief) -> tuple[object, ...]:
         state
         if state.groups is None
         else state.model_copy(
-            update={"groups": tuple(s.name for s in brief.stations if s.group in state.groups)}
+            update={"groups": tuple(s.name for s in brief.every_station if s.group in state.groups)}
         )
         for state in brief.states
     )

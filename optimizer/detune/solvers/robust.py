@@ -20,7 +20,7 @@ from detune.solvers.certify import MAX_BOXES, certify
 from detune.solvers.final_test import FinalTest
 from detune.solvers.interrupt import Stop, stop_on_interrupt
 from detune.solvers.outcome import Outcome, Progress, Settings, Stopped
-from detune.solvers.selection import selection_of
+from detune.solvers.selection import cases_of, selection_of
 from detune.solvers.verdict import DesignVerdict
 from detune.solvers.yields import Yield, design_yield
 
@@ -200,7 +200,7 @@ class _Certifying:
         ) + float(self.problem.model.ballast_cost.max())
         while not self.halt():
             every: list[tuple[Numbers, float]] = []
-            for step in range(len(self.problem.model.ballast_mass)):
+            for case in cases_of(self.problem):
                 chosen = SearchSettings(
                     value="margin" if trade == "least-margin" else "separation",
                     static_counts=trade == "least-margin",
@@ -208,13 +208,13 @@ class _Certifying:
                     interrupted=self.halt,
                     workers=self.settings.workers,
                 )
-                found, result = designs_between(
-                    selection_of(self.problem, step), tests.at_step(step, trade), chosen, cap, done_to
-                )
+                selection = selection_of(self.problem, case.step, case.fixed)
+                accept = tests.at_step(case.step, trade, case.fixed)
+                found, result = designs_between(selection, accept, chosen, cap, done_to)
                 if result.status != "complete":
                     self.halt()
                     return
-                every += [((tuple(design.parts), step), design.cost) for design in found]
+                every += [((case.parts(design.parts), case.step), design.cost) for design in found]
             yield from sorted(every, key=lambda item: item[1])
             if cap >= most:
                 return

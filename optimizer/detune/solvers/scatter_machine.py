@@ -18,9 +18,11 @@ from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import StateModel
 from detune.proof.scatter_data import ScatterSystem
+from detune.response.absorbers import geometric_of, mass_of, spare_damping, spare_stiffness
 from detune.response.design import Design
+from detune.response.designs import Designs
 from detune.response.gravity import gravity_stiffness
-from detune.response.model import FLOOR, STRUCTURE, Model
+from detune.response.model import Model
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -130,7 +132,7 @@ def scatter_map(brief: Brief, design: Design) -> ScatterMap:
 
     stiffness, damping = _stated(scatter)
     pairs: dict[str, list[tuple[int, int]]] = {"stiffness": [], "damping": []}
-    for station in brief.stations:
+    for station in brief.every_station:
         mount = design.mounts[design.groups.index(station.group)]
         for figure, stated in (("stiffness", stiffness), ("damping", damping)):
             if mount.pieces == 0 or (figure == "damping" and not _damped(mount)):
@@ -199,13 +201,16 @@ def scatter_system(
     axes, stiffness, loss, viscous, s_factors, t_factors = _axes(model, part, found)
     fixed = {name: getattr(model, f"fixed_{name}").copy() for name in ("dynamic", "hysteretic", "viscous")}
     _take_out(model, fixed)
+    one = Designs(np.array([part], dtype=np.intp), np.array([step], dtype=np.intp))
+    fixed["dynamic"] = _one(fixed["dynamic"] + spare_stiffness(model, one))
+    fixed["viscous"] = _one(fixed["viscous"] + spare_damping(model, one))
     if model.with_gravity_stiffness:
-        fixed["dynamic"] = fixed["dynamic"] + model.geometric[step]
+        fixed["dynamic"] = fixed["dynamic"] + geometric_of(model, one)[0]
     mass_terms, mass_factors = _mass_terms(brief, model, found)
     own_terms, own_factors = gravity_terms(brief, model, found) if model.with_gravity_stiffness else ([], [])
     n = model.frame.count
     return ScatterSystem(
-        mass=_even(model.mass[step]),
+        mass=_even(mass_of(model, one)[0]),
         fixed_dynamic=_even(fixed["dynamic"]),
         fixed_hysteretic=_even(fixed["hysteretic"]),
         fixed_viscous=_even(fixed["viscous"]),
@@ -223,6 +228,11 @@ def scatter_system(
         high=found.high,
         names=tuple(variable.words for variable in found.variables),
     )
+
+
+def _one(matrix: Floats) -> Floats:
+    """The matrix (n, n) of the only design, which may stand in a batch of one."""
+    return matrix.reshape(matrix.shape[-2:])
 
 
 def _even(matrix: Floats) -> Floats:
@@ -360,10 +370,11 @@ def gravity_terms(
 
 def _geometric(brief: Brief, model: Model, weight: Floats, body: str, arm: Floats, force: Floats) -> Floats:
     """Geometric stiffness (n, n) of a force on a body at an arm and of what equal springs answer to `weight`."""
-    own = [column for column, (name, _) in enumerate(model.frame.names) if name not in (FLOOR, STRUCTURE)]
-    rows = [station.rows[:, own] for station in model.stations]
+    own = [column for column, (name, _) in enumerate(model.frame.names) if name in model.frame.references]
+    stations = [station for station in model.stations if not station.is_absorber]
+    rows = [station.rows[:, own] for station in stations]
     equal = sum(
-        (s.parallel * row.T @ row for s, row in zip(model.stations, rows, strict=True)),
+        (s.parallel * row.T @ row for s, row in zip(stations, rows, strict=True)),
         np.zeros((len(own), len(own))),
     )
     total = np.zeros((model.frame.count, model.frame.count))
@@ -376,7 +387,7 @@ def _geometric(brief: Brief, model: Model, weight: Floats, body: str, arm: Float
         if each.name == body:
             arms.append(arm)
             forces.append(force[None])
-        for station, row in zip(model.stations, rows, strict=True):
+        for station, row in zip(stations, rows, strict=True):
             pushed = -station.parallel * station.axes @ (row @ rest)
             for end, sign in ((station.on, 1.0), (station.to, -1.0)):
                 if end == each.name:

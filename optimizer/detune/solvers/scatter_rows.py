@@ -62,6 +62,11 @@ class UnitView:
             out[0, self.model.frame.count - 1, 2] = 1.0
         return out
 
+    def foot_motion(self, station: str, rate: int = 0) -> Floats:
+        out = self._empty(rate)
+        out[0, : self.model.frame.count] = find_station(self.model, station).foot.T
+        return out
+
     def station_deflection(self, station: str, rate: int = 0) -> Floats:
         out, found = self._empty(rate), find_station(self.model, station)
         out[0, : self.model.frame.count] = found.rows.T

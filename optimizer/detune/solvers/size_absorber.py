@@ -1,9 +1,9 @@
 """Closed-form tunings of an absorber as starts and checks of its sizing, and what detuning costs.
 
-The closed forms hold for one mass with one absorber, most of them without damping of its own; the study's absorber
-stands on a machine with its own modes, limits and range of excitation. So they start the search, and beside its answer
-they are judged by the study's own equations. What detuning costs is judged in the same way: one unknown off at a time,
-and everything within the stated scatter at once.
+The closed forms hold for one mass with one absorber, most of them without damping of its own; the study's
+absorber stands on a machine with its own modes, limits and range of excitation. So they start the search, and
+beside its answer they are judged by the study's own equations. What detuning costs is judged in the same way:
+one unknown off at a time, and everything within the stated scatter at once.
 """
 
 from __future__ import annotations
@@ -46,9 +46,9 @@ class Detuned:
 class ClosedForm:
     """One closed form for one absorber at the sized mass: what it is the best for, tuning in Hz, damping ratio.
 
-    `height` is the greatest magnitude (harmonic) or the variance (white noise) the form promises on a single mass, in
-    the units of `physics.absorber`, NaN where its source states none. `worst_response` is over the limit, by the
-    study's own equations, everything else as sized.
+    `height` is the greatest magnitude (harmonic) or the variance (white noise) the form promises on a single
+    mass, in the units of `physics.absorber`, NaN where its source states none. `worst_response` is over the
+    limit, by the study's own equations, everything else as sized.
     """
 
     absorber: str
@@ -65,9 +65,9 @@ class ClosedForm:
 class ScatteredAbsorber:
     """Worst response over its limit as sized (`nominal`) and at the worst of the stated scatter (`greatest`).
 
-    `tuning` (least, greatest) is the detuning of the absorber, as a share, that the scatter of its own spring and mass
-    makes. `points` were judged: every corner, or a part of them (`all_corners`), and some inside; no proof. `stated`
-    tells what scatters. `curve` (2, N): the tuning off by, and the worst response there.
+    `tuning` (least, greatest) is the detuning of the absorber, as a share, that the scatter of its own spring
+    and mass makes. `points` were judged: every corner, or a part of them (`all_corners`), and some inside; no
+    proof. `stated` tells what scatters. `curve` (2, N): the tuning off by, and the worst response there.
     """
 
     absorber: str

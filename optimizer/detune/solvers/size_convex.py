@@ -1,9 +1,10 @@
 """Convex answers on one side of the excitation: largest separation and best objective by linear matrix inequalities.
 
-All modes below (or above) every excitation is convex in stiffness and ballast. With the separation alone the best of a
-side is a bound for any design of that side, and global where nothing else is limited. With the response limits that can
-be held whatever the damping (`size_convex_limits`) it is a restriction that errs on the safe side: how far, is judged by
-the exact response at its design and by the best design found otherwise. Every design here is a start for the search.
+All modes below (or above) every excitation is convex in stiffness and ballast. With the separation alone the
+best of a side is a bound for any design of that side, and global where nothing else is limited. With the
+response limits that can be held whatever the damping (`size_convex_limits`) it is a restriction that errs on
+the safe side: how far, is judged by the exact response at its design and by the best design found otherwise.
+Every design here is a start for the search.
 """
 
 from __future__ import annotations
@@ -41,9 +42,10 @@ class ConvexSizing:
 
     `form`: "global" among the designs of its side, "bound" on them (the design itself may miss limits), or
     "restriction", whose design holds the limits `held`. `left`: what only the assessor judges. `response` and
-    `bounded` are the largest exact response over its limit and the largest bound over it, of the limits held (NaN
-    without). `misses` is the requirement the design misses most, None where it meets the brief. `excitation`: its lowest
-    and highest frequency in Hz. `partial`: an unknown is held where it is, and nothing is said of its other values.
+    `bounded` are the largest exact response over its limit and the largest bound over it, of the limits held
+    (NaN without). `misses` is the requirement the design misses most, None where it meets the brief.
+    `excitation`: its lowest and highest frequency in Hz. `partial`: an unknown is held where it is, and
+    nothing is said of its other values.
     """
 
     side: Side
@@ -133,7 +135,10 @@ class _Place:
         values = self.middle.copy()
         values[self.columns] = answer.stiffness
         if self.ballast is not None:
-            values[self.ballast] = unknowns[self.ballast].bounds[0] + answer.ballast[0]
+            low, high = unknowns[self.ballast].bounds
+            # What the solver leaves of nothing is nothing.
+            kept = float(answer.ballast[0])
+            values[self.ballast] = low + (kept if kept > 1e-6 * (high - low) else 0.0)
         if what == "cost":
             # Damping costs, and what is stated here holds whatever it is.
             for k, unknown in enumerate(unknowns):

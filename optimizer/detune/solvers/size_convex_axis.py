@@ -1,9 +1,9 @@
 """The soft side of one-axis sizing as one convex program, beside the exact answer.
 
-With the natural frequency below all excitation a transmissibility below one is a cone in stiffness, damping and mass,
-and so exact; a limit on motion becomes the affine row that holds whatever the damping, and so safe. The answer is the
-best of its side where the first alone stand in it, and otherwise a restriction whose distance to the exact answer of
-the same side is told.
+With the natural frequency below all excitation a transmissibility below one is a cone in stiffness, damping
+and mass, and so exact; a limit on motion becomes the affine row that holds whatever the damping, and so safe.
+The answer is the best of its side where the first alone stand in it, and otherwise a restriction whose
+distance to the exact answer of the same side is told.
 """
 
 from __future__ import annotations

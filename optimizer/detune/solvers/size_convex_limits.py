@@ -1,10 +1,11 @@
 """Response limits of a brief that can be held whatever the damping, as limits of `sizing.lmi`.
 
-A limit on motion under tones whose amplitude is one power p of the frequency is |row^T q| w^r <= L with a load w^p f.
-On the soft side A = w^2 M - K > 0 the bound w^(p+r) sqrt(c^T A^-1 c  f^H A^-1 f) is w^(p+r-2) times something that
-falls with w: for p + r <= 2 its worst place is the lower end of the range. Beyond, the factor (w2/w1)^(p+r-2) is put
-on top, which errs on the safe side. On the stiff side everything grows with w, and the upper end is the worst place.
-Tones that act together are held to shares of one limit: the sum of their amplitudes is never below what they add up to.
+A limit on motion under tones whose amplitude is one power p of the frequency is |row^T q| w^r <= L with a
+load w^p f. On the soft side A = w^2 M - K > 0 the bound w^(p+r) sqrt(c^T A^-1 c  f^H A^-1 f) is w^(p+r-2)
+times something that falls with w: for p + r <= 2 its worst place is the lower end of the range. Beyond, the
+factor (w2/w1)^(p+r-2) is put on top, which errs on the safe side. On the stiff side everything grows with w,
+and the upper end is the worst place. Tones that act together are held to shares of one limit: the sum of
+their amplitudes is never below what they add up to.
 """
 
 from __future__ import annotations

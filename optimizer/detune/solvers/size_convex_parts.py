@@ -1,8 +1,8 @@
 """What real parts cost at least on one side of all excitation: catalog weights in [0, 1] under one matrix inequality.
 
-A design takes one part for each group; with weights instead of a choice the least cost is a semidefinite program, and
-no real design of that side is cheaper. Prices are the lowest of any quantity, ballast is the heaviest step below and
-the lightest above, both for nothing, so that the bound holds for every design.
+A design takes one part for each group; with weights instead of a choice the least cost is a semidefinite
+program, and no real design of that side is cheaper. Prices are the lowest of any quantity; every step of the
+ballast is a program of its own, and the least of them is the bound.
 """
 
 from __future__ import annotations
@@ -17,8 +17,8 @@ from detune.sizing.convex_selection import selection_bound
 from detune.sizing.lmi import Side
 from detune.solvers.size_convex import asked_separation
 
-# Weights of more parts than this take the solver minutes.
-MOST_PARTS = 1500
+# Weights of more parts than this, or more ballast steps, take the solver minutes.
+MOST_PARTS, MOST_STEPS = 1500, 12
 
 
 @dataclass(frozen=True)
@@ -38,25 +38,28 @@ def parts_bounds(real: Problem) -> tuple[PartsBound, ...]:
         return ()
     if sum(len(group.mounts) for group in model.groups) > MOST_PARTS:
         return ()
-    own = model.geometric if model.with_gravity_stiffness else np.zeros_like(model.mass)
-    heavy = np.argsort(model.ballast_mass, kind="stable")
-    if heavy.size > 1 and np.abs(own).max() > 0.0:
-        # Gravity's stiffness goes with the ballast, and the bound has to hold for every step.
+    if len(model.ballast_mass) > MOST_STEPS:
         return ()
+    own = model.geometric if model.with_gravity_stiffness else np.zeros_like(model.mass)
     asked = asked_separation(real.brief)
     low = min(a for a, _ in real.intervals)
     high = max(b for _, b in real.intervals)
     matrices = tuple(_matrices(real, index) for index in range(len(model.groups)))
     costs = tuple(least_costs(model, index) for index in range(len(model.groups)))
     found = []
-    sides: tuple[tuple[Side, int], ...] = (("below", int(heavy[-1])), ("above", int(heavy[0])))
-    for side, step in sides:
+    sides: tuple[Side, ...] = ("below", "above")
+    for side in sides:
         below = low * (1.0 - asked) if side == "below" else None
         above = high * (1.0 + asked) if side == "above" else None
-        constant = model.fixed_dynamic + own[step]
-        bound = selection_bound(model.mass[step], constant, matrices, costs, below, above)
-        if bound.status in ("solved", "infeasible"):
-            found.append(PartsBound(side, bound.cost))
+        steps = [
+            selection_bound(mass, model.fixed_dynamic + gravity, matrices, costs, below, above)
+            for mass, gravity in zip(model.mass, own, strict=True)
+        ]
+        if all(step.status in ("solved", "infeasible") for step in steps):
+            least = min(
+                float(step.cost + extra) for step, extra in zip(steps, model.ballast_cost, strict=True)
+            )
+            found.append(PartsBound(side, least))
     return tuple(found)
 
 

@@ -27,11 +27,16 @@ ORDER = ("cost", "damping", "stiffness", "separation", "added-mass", "worst-resp
 
 @dataclass(frozen=True)
 class FrontPoint:
-    """One design of the front: the unknowns (u,), its objectives by name, and whether it is exact."""
+    """One design of the front: the unknowns (u,), its objectives by name, and whether it is exact.
+
+    `bounds` say what no design has less of than the objective that is minimised (more, of separation): among which
+    designs, and the bound. A searched point without any has a gap that is not known.
+    """
 
     values: Floats
     objectives: dict[str, float]
     branch: str
+    bounds: tuple[tuple[str, float], ...] = ()
 
 
 @dataclass(frozen=True)
@@ -42,6 +47,7 @@ class SizingFront:
     minimised: str
     points: tuple[FrontPoint, ...]
     worth: str
+    exact: bool = True
 
 
 def one_axis_objectives(brief: Brief, axis: OneAxis, points: Floats) -> dict[str, Floats]:

@@ -1,4 +1,4 @@
-"""Fronts where no exact method applies: epsilon constraint, each point the best of local searches, gap not known."""
+"""Fronts where no exact method applies: epsilon constraint, each point the best of local searches, its gap stated."""
 
 from __future__ import annotations
 
@@ -12,6 +12,7 @@ from detune.sizing.made_parts import sizing_of
 from detune.solvers import size_many_starts
 from detune.solvers.size_batch import judge
 from detune.solvers.size_front import ORDER, FrontPoint, SizingFront, nondominated
+from detune.solvers.size_front_bounds import with_bounds
 
 Floats = NDArray[np.float64]
 STARTS = 2
@@ -44,10 +45,11 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
         if found.best is not None:
             points.append(_point(brief, found.best.values, "local"))
     worth = (
-        f"least {minimised} at levels of {', '.join(held)}, each the best of a few local searches: no proof, and the "
-        "gap to the true front is not known"
+        f"least {minimised} at levels of {', '.join(held)}, each the best of a few local searches: no proof; the gap of "
+        "each point says by how much it can lie above what no design falls below, where that is known"
     )
-    return SizingFront(trade, minimised, nondominated(points, trade), worth)
+    kept = with_bounds(brief, minimised, nondominated(points, trade))
+    return SizingFront(trade, minimised, kept, worth, exact=False)
 
 
 def _misses(point: FrontPoint, limits: dict[str, float]) -> float:

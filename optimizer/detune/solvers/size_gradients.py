@@ -6,7 +6,7 @@ features do not hold) are differenced, in their own rows only; `Gradients.differ
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,6 +15,7 @@ from detune.brief.allowable.added_mass import AddedMass
 from detune.brief.allowable.base import BandAllowable, HarmonicAllowable
 from detune.brief.allowable.cost import CostLimit
 from detune.brief.allowable.separation import Separation
+from detune.brief.allowable.settling_time import SettlingTime
 from detune.brief.allowable.stability import Stability
 from detune.brief.brief import Brief
 from detune.ground.units import STANDARD_GRAVITY
@@ -25,9 +26,11 @@ from detune.problem.requirement import Requirement
 from detune.sizing.made_parts import bounds, made_design, sizing_of
 from detune.sizing.part_slopes import LOSS, PRICE, VISCOUS
 from detune.solvers import gradient_rows as rows_of
+from detune.solvers.gradient_mixture import ResponsePlan
 from detune.solvers.gradient_modes import Modes, below, distances, modes
 from detune.solvers.gradient_probe import NoMap
-from detune.solvers.gradient_rows import NOTHING, ResponsePlan, Rows, StaticPlan, plain, together
+from detune.solvers.gradient_rows import NOTHING, Rows, StaticPlan, plain, together
+from detune.solvers.gradient_settling import decay_rates
 from detune.solvers.gradient_standing import least_share, without_gravity
 from detune.solvers.gradient_state import SizedState, StateAt, sized_states, state_at
 from detune.solvers.gradient_static import Rest, rest
@@ -38,7 +41,11 @@ Complexes = NDArray[np.complex128]
 # Sides: for every state, how many modes lie below each of its excitation intervals.
 Sides = tuple[tuple[int, ...], ...]
 STEP = 1e-4
+# Share by which a response may differ from the batch evaluation, whose suprema settle to 1e-4.
+ALIKE = 1e-3
 NARROWEST = 1e-9
+# Separation of a mode that the brief exempts: beyond any.
+EXEMPT = 1e3
 
 
 @dataclass(frozen=True)
@@ -52,7 +59,7 @@ class Gradients:
     states: tuple[SizedState, ...]
     statics: tuple[tuple[int, tuple[StaticPlan, ...]], ...]
     responses: tuple[tuple[int, ResponsePlan], ...]
-    separations: tuple[tuple[int, Requirement], ...]
+    modes: tuple[tuple[int, Requirement], ...]
     standings: tuple[tuple[int, Requirement], ...]
     totals: tuple[Requirement, ...]
     differenced: tuple[Requirement, ...]
@@ -77,7 +84,8 @@ class Point:
 def prepared(brief: Brief) -> Gradients:
     """What is to be known once of a brief before its slopes are asked for."""
     low, high = bounds(brief)
-    made = made_design(brief, 0.5 * (low + high))
+    middle = 0.5 * (low + high)
+    made = made_design(brief, middle)
     problem, _ = batch(made.brief, [made])
     states = sized_states(brief)
     number = {id(each.model): k for k, each in enumerate(problem.states)}
@@ -90,22 +98,56 @@ def prepared(brief: Brief) -> Gradients:
         left += rest_of
         if plan is not None:
             responses.append((where, plan))
-    separations = []
+    of_modes = []
     for requirement in problem.modes:
-        if not isinstance(requirement.allowable, Separation):
+        if not isinstance(requirement.allowable, Separation | SettlingTime):
             left.append(requirement)
             continue
         named = [(s.state, s.reading) for s in problem.states]
-        separations.append((named.index((requirement.state, requirement.reading)), requirement))
+        of_modes.append((named.index((requirement.state, requirement.reading)), requirement))
     totals = [r for r in problem.totals if isinstance(r.allowable, CostLimit | AddedMass)]
     left += [r for r in problem.totals if r not in totals]
     kept = tuple(a for a in brief.allowables if any(r.allowable == a for r in left))
     weight = float(np.abs(states[0].model.weight[0]).max())
-    return Gradients(
-        brief, states, statics, tuple(responses), tuple(separations), standings, tuple(totals), tuple(left),
+    found = Gradients(
+        brief, states, statics, tuple(responses), tuple(of_modes), standings, tuple(totals), tuple(left),
         brief.model_copy(update={"allowables": kept}) if left else None, problem.exempt_amplification,
         max(weight, STANDARD_GRAVITY) / max(len(brief.stations), 1),
     )  # fmt: skip
+    return _trusted(found, middle)
+
+
+def _trusted(gradients: Gradients, values: Floats) -> Gradients:
+    """Difference every response whose rows do not say what the batch evaluation says at these values.
+
+    None is known; should the two ever part company, a search goes by slow slopes and not by wrong ones.
+    """
+    rows = evaluated(gradients, values, sides(gradients, values)).rows
+    largest: dict[Requirement, float] = {}
+    for requirement, log in zip(rows.requirement, rows.log.tolist(), strict=True):
+        if requirement is not None and log == log:
+            largest[requirement] = max(log, largest.get(requirement, log))
+    told, margins = margins_of(gradients.brief, values[None], tuple(largest))
+    wrong = []
+    for requirement, margin in zip(told, margins[:, 0].tolist(), strict=True):
+        ratio = np.exp(largest[requirement])
+        # What lies far below its limit is followed at samples alone.
+        if abs(ratio * (1.0 + margin) - 1.0) > ALIKE and ratio > rows_of.NEAR and margin > -1.0:
+            wrong.append(requirement)
+    if not wrong:
+        return gradients
+    plans = []
+    for where, plan in gradients.responses:
+        kept = rows_of.without(plan, wrong)
+        plans += [] if kept is None else [(where, kept)]
+    left = (*gradients.differenced, *wrong)
+    kept_allowables = tuple(a for a in gradients.brief.allowables if any(r.allowable == a for r in left))
+    return replace(
+        gradients,
+        responses=tuple(plans),
+        differenced=left,
+        differenced_brief=gradients.brief.model_copy(update={"allowables": kept_allowables}),
+    )
 
 
 def _statics(
@@ -170,7 +212,10 @@ def evaluated(gradients: Gradients, values: Floats, held: Sides, whole: bool = F
         least, by_least = least_share(places[where][0], static=True)
         limit = requirement.allowable.limit
         parts.append(plain(np.array([1.0 + limit * least]), limit * by_least[None], (requirement,)))
-    for where, requirement in gradients.separations:
+    for where, requirement in gradients.modes:
+        if isinstance(requirement.allowable, SettlingTime):
+            parts.append(_settling(requirement, requirement.allowable, places[where][1]))
+            continue
         assert isinstance(requirement.allowable, Separation)
         distance, by = apart[where]
         parts.append(plain(distance - requirement.allowable.limit, by, (requirement,) * len(distance)))
@@ -196,9 +241,18 @@ def _apart(
     value, slopes = [np.zeros(0)], [np.zeros((0, found.slopes.shape[1]))]
     for interval, count in zip(sized.state.intervals, counts, strict=True):
         each, by = distances(found, interval, count)
-        value.append(np.where(exempt, NOTHING, np.minimum(each, NOTHING)))
-        slopes.append(np.where((exempt | (each > NOTHING))[:, None], 0.0, by))
+        value.append(np.where(exempt, EXEMPT, each))
+        slopes.append(np.where(exempt[:, None], 0.0, by))
     return np.concatenate(value), np.concatenate(slopes)
+
+
+def _settling(requirement: Requirement, allowable: SettlingTime, at: StateAt) -> Rows:
+    """One row for each pole: how long its motion takes to decay, against the limit."""
+    decay, by = decay_rates(at)
+    least = np.log(1.0 / allowable.to) / allowable.limit
+    safe = np.maximum(decay, 1e-12 * least)
+    value, slopes = rows_of.smooth(least / safe, -(least / safe**2)[:, None] * by)
+    return plain(value, slopes, (requirement,) * len(value))
 
 
 def _poles(at: StateAt, found: Modes) -> Complexes:
@@ -221,7 +275,10 @@ def _objectives(gradients: Gradients, at: StateAt, values: Floats) -> dict[str, 
         if unknown.kind == "ballast":
             added, by_added[place] = float(values[place]), 1.0
     if brief.ballast is not None:
-        cost, by_cost = cost + brief.ballast.cost_per_kg * added, by_cost + brief.ballast.cost_per_kg * by_added
+        cost, by_cost = (
+            cost + brief.ballast.cost_per_kg * added,
+            by_cost + brief.ballast.cost_per_kg * by_added,
+        )
     absorbers, by_absorbers = 0.0, np.zeros(count)
     for place, unknown in enumerate(sizing_of(brief).unknown):
         if unknown.kind == "absorber-mass":

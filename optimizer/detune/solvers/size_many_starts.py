@@ -10,8 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
-from detune.sizing.made_parts import bounds, logarithmic, sizing_of
 from detune.physics.unsupported import UnsupportedMachine
+from detune.sizing.made_parts import bounds, logarithmic, sizing_of
 from detune.solvers.size_batch import Judged, judge, response_margin
 from detune.solvers.size_gradients import Gradients, Sides, prepared, sides
 from detune.solvers.size_slopes import ROOM, Handed, handed
@@ -196,7 +196,9 @@ class _Adjoint(_Differenced):
 
     way = "adjoint"
 
-    def __init__(self, brief: Brief, goal: str, sense: float, held: dict[str, float], found: Gradients) -> None:
+    def __init__(
+        self, brief: Brief, goal: str, sense: float, held: dict[str, float], found: Gradients
+    ) -> None:
         super().__init__(brief, goal, sense, held)
         self.gradients = found
         self.sides: Sides = ()
@@ -224,7 +226,7 @@ class _Adjoint(_Differenced):
         level = float(self.at(y[None]).objectives[self.goal][0])
         if self.goal == "worst-response":
             return np.append(y, np.log(min(max(level, 1e-8), 1e6))), [*limits, (None, None)]  # type: ignore[list-item]
-        return np.append(y, max(min(level, FAR), -1.0)), [*limits, (-1.0, FAR)]
+        return np.append(y, max(min(level, FAR), -1.0)), [*limits, (-1.0, None)]
 
     def objective(self, y: Floats) -> float:
         if self.extra:
@@ -302,7 +304,9 @@ def gather(functions: _Differenced, done: list[LocalSearch], sense: float) -> Ma
     found: tuple[int, tuple[str, ...]] = (0, ())
     if isinstance(functions, _Adjoint):
         found = functions.slopes_found, tuple(dict.fromkeys(r.label for r in functions.gradients.differenced))
-    return ManyStarts((*good, *bad), len(good), spread, near, functions.count, found[0], functions.way, found[1])
+    return ManyStarts(
+        (*good, *bad), len(good), spread, near, functions.count, found[0], functions.way, found[1]
+    )
 
 
 def _search(functions: _Differenced, y: Floats, iterations: int) -> LocalSearch:

@@ -60,7 +60,9 @@ def solve(brief: Brief, problem: Problem) -> OneAxisSizing | str:
     counts = parallel_range(brief)
     if counts is None:
         return _solve(brief, problem)
-    return _best_count(brief, [_solve(with_parallel(brief, n), problem) for n in range(counts[0], counts[1] + 1)])
+    return _best_count(
+        brief, [_solve(with_parallel(brief, n), problem) for n in range(counts[0], counts[1] + 1)]
+    )
 
 
 def _best_count(brief: Brief, found: list[OneAxisSizing]) -> OneAxisSizing:

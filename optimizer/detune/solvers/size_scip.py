@@ -22,8 +22,9 @@ def solve_with_scip(
 ) -> list[ScipAnswer]:
     """Solve each problem globally by SCIP; `time_limit` (s) is hard and for each, imports apart.
 
-    `level`: find the least factor on all response limits instead of the objective. A process that dies or raises is
-    an answer "failed", never an exception; one that overruns is ended, and another takes the next problem.
+    `level`: find the least factor on all response limits instead of the objective. A process that dies or
+    raises is an answer "failed", never an exception; one that overruns is ended, and another takes the next
+    problem.
     """
     many = counts if counts is not None else [None] * len(problems)
     answers = []

@@ -1,8 +1,8 @@
 """A second opinion on one-axis sizing: the same brief stated again in Pyomo and solved globally by SCIP.
 
-The two share the statement of the limits (`one_axis_statement`) and nothing after it: the exact method walks along
-the limits, SCIP branches over stiffness, damping, ballast and the number of parts. Where they differ by more than
-AGREE neither is believed.
+The two share the statement of the limits (`one_axis_statement`) and nothing after it: the exact method walks
+along the limits, SCIP branches over stiffness, damping, ballast and the number of parts. Where they differ by
+more than AGREE neither is believed.
 """
 
 from __future__ import annotations
@@ -35,10 +35,11 @@ AGREE, TIME_LIMIT = 1e-6, 60.0
 class SizingOpinion:
     """What SCIP said of the one-axis problem, beside the exact answer.
 
-    `status` "optimal" and "infeasible" are proofs of SCIP's; a "time limit" or "failed" says nothing of the problem.
-    `objective`, `bound`, `values` (u,) and `assessment` are NaN or None without a design. `difference` is relative, to
-    the exact objective. `agrees` is None where SCIP came to no end. `seconds` of both are from the statement to the
-    answer, of the exact method with every branch. `relaxed`: what the statement leaves to the assessor.
+    `status` "optimal" and "infeasible" are proofs of SCIP's; a "time limit" or "failed" says nothing of the
+    problem. `objective`, `bound`, `values` (u,) and `assessment` are NaN or None without a design.
+    `difference` is relative, to the exact objective. `agrees` is None where SCIP came to no end. `seconds` of
+    both are from the statement to the answer, of the exact method with every branch. `relaxed`: what the
+    statement leaves to the assessor.
     """
 
     status: Status

@@ -164,7 +164,7 @@ def _unstable(rows: DesignRows, group: StaticGroup) -> list[Requirement]:
     for requirement in group.stability:
         assert isinstance(requirement.allowable, Stability)
         limits = rows.limits(group.each, [nothing])
-        _, worst = stability_worst(rows.problem.brief, group.each, limits, rows.step, rows.map)
+        _, worst = stability_worst(rows.problem.brief, group.each, limits, rows.designs, rows.map)
         if worst < 2.0 * requirement.allowable.limit:
             out.append(requirement)
     return out

@@ -50,8 +50,8 @@ def one_axis_only(study: Study, why: str, opinion: bool) -> None:
 def check_sense(study: Study) -> tuple[str, ...]:
     """Refuse an unknown nothing depends on, and an objective no unknown changes; return cautions.
 
-    Every unknown is moved between its bounds, the others at a few points: what changes neither a requirement nor the
-    objective has no answer. Raises BriefError with every such unknown.
+    Every unknown is moved between its bounds, the others at a few points: what changes neither a requirement
+    nor the objective has no answer. Raises BriefError with every such unknown.
     """
     brief = study.brief
     sizing = sizing_of(brief)
@@ -70,8 +70,10 @@ def check_sense(study: Study) -> tuple[str, ...]:
     margins = found.margins.reshape(len(found.requirements), len(unknowns), 2, TRIED)
     objective = found.objectives[sizing.goal].reshape(len(unknowns), 2, TRIED)
     felt = np.abs(margins[:, :, 0] - margins[:, :, 1]).max(axis=(0, 2)) > 1e-9
-    shift = np.abs(objective[:, 0] - objective[:, 1]).max(axis=1)
-    counts = shift > 1e-9 * max(float(np.abs(objective).max()), 1e-300)
+    # An objective without bound, such as a separation from nothing, is the same at both ends.
+    known = np.where(np.isfinite(objective), objective, 0.0)
+    shift = np.abs(known[:, 0] - known[:, 1]).max(axis=1)
+    counts = shift > 1e-9 * max(float(np.abs(known).max()), 1e-300)
     for index, unknown in enumerate(unknowns):
         low, high = unknown.bounds
         if low == high or felt[index]:

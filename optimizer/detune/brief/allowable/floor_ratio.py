@@ -1,12 +1,12 @@
 """Limit on the floor's motion with the machine on its mounts over that with the machine bolted down."""
 
-from typing import ClassVar, Literal
+from typing import ClassVar, Literal, cast
 
 import numpy as np
 from pydantic import model_validator
 
 from detune.brief.allowable.base import HarmonicAllowable, UnitLoad, above_zero
-from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
+from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView, ToneView
 from detune.brief.statement import AxisName, Direction, Frequency, Ratio, unit_direction
 
 
@@ -51,7 +51,8 @@ class FloorRatio(HarmonicAllowable):
         return True
 
     def observed(self, view: ResponseView, place: str) -> Responses:
-        return view.floor_ratio()
+        # Under a unit load the view is one of tones.
+        return cast(ToneView, view).floor_ratio()
 
     def bound(self, view: StaticView, place: str) -> Floats:
         return np.full(view.count, self.limit)

@@ -7,15 +7,19 @@ from pydantic import field_validator
 
 from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero
 from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
-from detune.brief.statement import Direction, Velocity
+from detune.brief.statement import Direction, Name, Velocity
 
 
 class FloorVelocity(HarmonicAllowable):
-    """Vertical velocity of the floor's own freedom, its free motion included, upper limit. Needs a flexible floor."""
+    """Vertical velocity of the floor's own freedom, its free motion included, upper limit. Needs a flexible floor.
+
+    `stations`: of a floor known between the stations (kind stiffness-matrix), the stations under which it is judged.
+    """
 
     title: ClassVar[str] = "floor velocity"
     unit: ClassVar[str] = "velocity"
     kind: Literal["floor-velocity"] = "floor-velocity"
+    stations: tuple[Name, ...] | None = None
     measure: Statistic
     limit: Velocity
 
@@ -25,7 +29,10 @@ class FloorVelocity(HarmonicAllowable):
         return above_zero(value, "a limit")
 
     def places(self, places: Places) -> tuple[str, ...]:
-        return ("floor",)
+        return self.stations or ("floor",)
+
+    def stations_named(self) -> tuple[str, ...]:
+        return self.stations or ()
 
     def statistic(self) -> Statistic:
         return self.measure
@@ -34,7 +41,7 @@ class FloorVelocity(HarmonicAllowable):
         return (0.0, 0.0, 1.0)
 
     def observed(self, view: ResponseView, place: str) -> Responses:
-        return view.floor_motion(rate=1)
+        return view.floor_motion(rate=1) if self.stations is None else view.foot_motion(place, rate=1)
 
     def bound(self, view: StaticView, place: str) -> Floats:
         return np.full(view.count, self.limit)

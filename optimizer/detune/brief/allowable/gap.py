@@ -15,9 +15,10 @@ FLOOR = "floor"
 class Gap(HarmonicAllowable):
     """Travel of the point `at` towards `direction` stays below `clearance`.
 
-    Travel is the signed sum of the static displacement towards the stop (creep of the state included), the peaks of
-    tones and the expected extreme of noise, which reach as far one way as the other, and of each shock and record the
-    farthest it comes towards the stop; what moves away from the stop counts in no shock. `stands_on`: the stop moves with the "floor", or is another point. `clearance_of`:
+    Travel is the signed sum of the static displacement towards the stop (creep of the state included), the peaks
+    of tones and the expected extreme of noise, which reach as far one way as the other, and of each shock and
+    record the farthest it comes towards the stop; what moves away from the stop counts in no shock. `stands_on`:
+    the stop moves with the "floor", or is another point. `clearance_of`:
     "free", measured before the machine settles on its mounts, so that sag uses it up; "installed", measured with
     the machine at rest on them.
     """

@@ -68,6 +68,9 @@ class ResponseView(Protocol):
     def floor_motion(self, rate: int = 0) -> Responses:
         """Displacement (D, F, 3) in m of the floor, its free motion included, or its derivative."""
 
+    def foot_motion(self, station: str, rate: int = 0) -> Responses:
+        """Displacement (D, F, 3) in m of a floor known between stations under one of them, or its derivative."""
+
     def station_deflection(self, station: str, rate: int = 0) -> Responses:
         """Deflection (D, F, 3) in m of the part, local axes, or its derivative."""
 
@@ -77,8 +80,12 @@ class ResponseView(Protocol):
     def total_force(self, surface: str) -> Responses:
         """Force (D, F, 3) in N, global axes, summed with phase: into the "floor" or the "ground"."""
 
+
+class ToneView(ResponseView, Protocol):
+    """The response to tones, of which a reference can be taken at each frequency."""
+
     def floor_ratio(self) -> Responses:
-        """Floor's motion over that with the machine bolted down, along z of (D, F, 3); of tones alone."""
+        """Floor's motion over that with the machine bolted down, along z of (D, F, 3)."""
 
 
 @dataclass(frozen=True)

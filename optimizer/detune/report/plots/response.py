@@ -11,6 +11,7 @@ from detune.report.plots.style import (
     BLACK,
     BLUE,
     LIGHT,
+    SKY,
     VERMILION,
     Floats,
     Titles,
@@ -18,7 +19,10 @@ from detune.report.plots.style import (
     shorten,
 )
 from detune.report.response_data import ResponseCurve, response_curves
+from detune.report.robust import scatter_words, subject_verdict
+from detune.report.scatter_band import Band, scatter_bands
 from detune.report.words import margin_text, unit_of
+from detune.solvers.verdict import DesignVerdict
 from detune.study.run import Result
 
 if TYPE_CHECKING:
@@ -36,7 +40,9 @@ class Panel:
     """One quantity in one condition at the place with the least margin.
 
     `speed` (F,) in Hz; `value` (F,), `limit` and `peak` in `unit`; judged from `low` to `high` Hz;
-    `at` Hz is where the largest value inside is, `places` how many places were judged.
+    `at` Hz is where the largest value inside is, `places` how many places were judged. With a stated scatter,
+    `band_low` and `band_high` (F,) are the least and greatest value at sampled points of it, and `guaranteed` what is
+    proven not to be exceeded over all of it and the whole range, None where there is no such proof.
     """
 
     title: str
@@ -53,12 +59,16 @@ class Panel:
     margin: float
     places: int
     passage: bool
+    band_low: Floats | None = None
+    band_high: Floats | None = None
+    guaranteed: float | None = None
 
 
 @dataclass(frozen=True)
 class ResponseData:
     """Panels by ascending margin; `left_out` is how many with larger margins are not shown.
 
+    `scatter`: the stated scatter in words, empty without; `points`: how many points of it the bands were sampled at.
     `two_readings`: some part's damping is of unknown kind, and the worse reading is drawn at each speed.
     """
 
@@ -66,6 +76,8 @@ class ResponseData:
     panels: tuple[Panel, ...]
     left_out: int
     two_readings: bool = False
+    scatter: str = ""
+    points: int = 0
 
 
 def data(result: Result) -> ResponseData | None:
@@ -90,15 +102,33 @@ def data(result: Result) -> ResponseData | None:
     ranked = sorted(tightest, key=lambda item: item[0].row.margin)
     if not ranked:
         return None
+    drawn, verdict = ranked[:SHOWN], subject_verdict(result)
+    bands = scatter_bands(result.study.brief, subject.design, [curve for curve, _ in drawn])
+    known = [band for band in bands if band is not None]
     return ResponseData(
         subject="the answer" if result.answer is not None else "the closest design",
-        panels=tuple(_panel(curve, places) for curve, places in ranked[:SHOWN]),
+        panels=tuple(
+            _panel(curve, places, band, _guaranteed(verdict, curve))
+            for (curve, places), band in zip(drawn, bands, strict=True)
+        ),
+        scatter=scatter_words(result.study.brief) if known else "",
+        points=max((band.points for band in known), default=0),
         left_out=max(0, len(ranked) - SHOWN),
         two_readings=any(mount.damping_unknown is not None for mount in subject.design.mounts),
     )
 
 
-def _panel(curve: ResponseCurve, places: int) -> Panel:
+def _guaranteed(verdict: DesignVerdict | None, curve: ResponseCurve) -> float | None:
+    """What is proven of a curve's requirement over the scatter, None where nothing is."""
+    row = curve.row
+    key = (row.kind, row.condition, row.place, row.quantity)
+    for own in () if verdict is None else verdict.rows:
+        if (own.kind, own.condition, own.place, own.quantity) == key and own.guaranteed is not None:
+            return own.guaranteed if math.isfinite(own.guaranteed) else None
+    return None
+
+
+def _panel(curve: ResponseCurve, places: int, band: Band | None, guaranteed: float | None) -> Panel:
     row = curve.row
     unit = unit_of(curve.limit, row.unit)
 
@@ -126,6 +156,9 @@ def _panel(curve: ResponseCurve, places: int) -> Panel:
         margin=row.margin,
         places=places,
         passage=curve.passage,
+        band_low=None if band is None else band.low * scale,
+        band_high=None if band is None else band.high * scale,
+        guaranteed=None if guaranteed is None else shown(guaranteed),
     )
 
 
@@ -137,10 +170,14 @@ def caption(data: ResponseData) -> str:
         "(found over the continuous range, not on a grid). The thin line outside the band continues the same forcing "
         "to show where the resonances lie; it is not judged."
     )
-    if data.two_readings:
+    if data.scatter:
         text += (
-            " The list leaves open what kind some damping is: at each speed the larger of both readings is drawn."
+            f" The pale ribbon along the curve is its range over the scatter ({data.scatter}), sampled at {data.points} "
+            "points of it, not proven; the dash-dotted line is what is proven not to be exceeded over all of the scatter "
+            "and the whole range. Where a proof stops as soon as the limit is decided, that line lies close to the limit."
         )
+    if data.two_readings:
+        text += " The list leaves open what kind some damping is: at each speed the larger of both readings is drawn."
     return (
         f"{text} {data.left_out} quantities with larger margins are in responses.csv."
         if data.left_out
@@ -170,6 +207,14 @@ def _draw_panel(ax: "Axes", panel: Panel) -> None:
         ax.axvspan(panel.low, panel.high, color=LIGHT, linewidth=0, zorder=0)
     else:
         ax.axvline(panel.low, color="#BBBBBB", linewidth=3.0, zorder=0)
+    if panel.band_low is not None and panel.band_high is not None:
+        ax.fill_between(
+            panel.speed, panel.band_low, panel.band_high, color=SKY, alpha=0.45, linewidth=0, zorder=1
+        )
+    if panel.guaranteed is not None and panel.high > panel.low:
+        ax.hlines(
+            [panel.guaranteed], panel.low, panel.high, color=BLUE, linewidth=1.2, linestyle="-.", zorder=4
+        )
     ax.plot(panel.speed, panel.value, color=BLUE, linewidth=0.6, alpha=0.8, zorder=2)
     inside = (panel.speed >= panel.low) & (panel.speed <= panel.high)
     ax.plot(panel.speed[inside], panel.value[inside], color=BLUE, linewidth=1.8, zorder=3)

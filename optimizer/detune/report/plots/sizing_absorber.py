@@ -22,8 +22,9 @@ TITLE = "Absorber"
 class AbsorberData:
     """`curves`: name, frequency in Hz and response over its limit (each (F,)) of the sized design and others.
 
-    `judged` is the interval of frequency in which the limit holds. `detuning` (2, N): share, worst response over the
-    limit. `stated`: detuning by the stated scatter, None where none is stated. `quantity` names what is drawn.
+    `judged` is the interval of frequency in which the limit holds. `detuning` (2, N): share, worst response
+    over the limit. `stated`: detuning by the stated scatter, None where none is stated. `quantity` names what
+    is drawn.
     """
 
     quantity: str

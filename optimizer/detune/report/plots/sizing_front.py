@@ -1,4 +1,4 @@
-"""The front of a sizing study: two traded objectives, the third as the size of the dot."""
+"""The front of a sizing study: the first traded objective across, each of the others up, in a panel of its own."""
 
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -57,45 +57,41 @@ def caption(data: FrontData) -> str:
         f"Each dot is a design that no other one beats in {', '.join(GOALS[name] for name in data.trade)}. "
     )
     if len(data.trade) == 3:
-        text += f"The lines join designs of nearly equal {GOALS[data.trade[2]]}; the larger the dot, the more of it. "
+        text += "The same design stands at the same place across in both panels. "
     return text + f"What the points are worth: {data.worth}."
 
 
 def size(data: FrontData) -> tuple[float, float]:
     """Return width and height in inches."""
-    return 8.6, 4.6
+    return 8.6, 4.6 if len(data.trade) == 2 else 6.6
 
 
 def draw(data: FrontData, figure: "Figure") -> Titles:
     """Draw the front and return the hover texts of its dots."""
-    ax = figure.add_axes((0.09, 0.12, 0.88, 0.84))
-    a, b = data.trade[:2]
-    sizes = np.full(len(data.values), 26.0)
-    if len(data.trade) == 3:
-        third = data.values[:, 2]
-        span = float(third.max() - third.min())
-        share = (third - third.min()) / span if span > 0.0 else np.zeros(len(third))
-        sizes = 14.0 + 70.0 * share
-        for low in np.linspace(0.0, 0.875, 8):
-            chosen = (share >= low) & (share <= low + 0.125)
-            order = np.argsort(data.values[chosen, 0], kind="stable")
-            line = data.values[chosen][order]
-            ax.plot(line[:, 0], line[:, 1], color=GREY, linewidth=0.5, zorder=1)
-    else:
-        order = np.argsort(data.values[:, 0], kind="stable")
-        ax.plot(data.values[order, 0], data.values[order, 1], color=GREY, linewidth=0.8, zorder=1)
-    drawn = ax.scatter(
-        data.values[:, 0], data.values[:, 1], s=sizes, facecolors="none", edgecolors=BLUE, zorder=3
-    )
-    drawn.set_gid("points")
-    ax.plot([data.answer[0]], [data.answer[1]], marker="D", color=VERMILION, markersize=6, zorder=4)
-    ax.annotate(
-        f"least {GOALS[a]}",
-        (data.answer[0], data.answer[1]),
-        xytext=(8, 7),
-        textcoords="offset points",
-        fontsize=8,
-    )
-    ax.set_xlabel(f"{GOALS[a]} [{UNIT[a]}]")
-    ax.set_ylabel(f"{GOALS[b]} [{UNIT[b]}]")
-    return {"points": data.texts}
+    a, *others = data.trade
+    titles: Titles = {}
+    first = None
+    for row, name in enumerate(others):
+        place = (0.09, 0.12, 0.88, 0.84) if len(others) == 1 else (0.09, 0.56 - 0.47 * row, 0.88, 0.4)
+        ax = figure.add_axes(place, sharex=first)
+        first = first or ax
+        x, y = data.values[:, 0], data.values[:, row + 1]
+        if len(others) == 1:
+            # The front of two objectives is a line; of three it is a surface, and a line would say nothing.
+            order = np.argsort(x, kind="stable")
+            ax.plot(x[order], y[order], color=GREY, linewidth=0.8, zorder=1)
+        drawn = ax.scatter(x, y, s=26.0, facecolors="none", edgecolors=BLUE, zorder=3)
+        gid = "points" if row == 0 else f"points-{name}"
+        drawn.set_gid(gid)
+        titles[gid] = data.texts
+        ax.plot([data.answer[0]], [data.answer[row + 1]], marker="D", color=VERMILION, markersize=6, zorder=4)
+        ax.annotate(
+            f"least {GOALS[a]}", (data.answer[0], data.answer[row + 1]), xytext=(8, 7), textcoords="offset points",
+            fontsize=8,
+        )  # fmt: skip
+        ax.set_ylabel(f"{GOALS[name]} [{UNIT[name]}]")
+        if row == len(others) - 1:
+            ax.set_xlabel(f"{GOALS[a]} [{UNIT[a]}]")
+        else:
+            ax.tick_params(labelbottom=False)
+    return titles
