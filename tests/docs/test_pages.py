@@ -60,7 +60,7 @@ def test_every_key_of_every_table_and_kind_is_told(tables: ModuleType) -> None:
                 continue
             row = next((line for line in own.splitlines() if line.startswith(f"| `{key}` |")), "")
             assert row, (heading, key)
-            assert ("required" in row.split(" | ")[2]) == field.is_required(), (heading, key)
+            assert (row.split(" | ")[2] == "required") == field.is_required(), (heading, key)
 
 
 def test_every_column_of_every_kind_of_part_is_told() -> None:

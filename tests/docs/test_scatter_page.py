@@ -51,7 +51,8 @@ def test_the_soft_foot_sags_as_by_hand(result):
 
 @pytest.mark.parametrize(("name", "k"), [("aspen-m", 72e3), ("aspen-h", 105e3)])
 def test_the_random_values_by_a_dense_sum(name, k):
-    """Rms of |k* / (k* - m w^2)| a over a flat 1e-6 g^2/Hz from 2 to 60 Hz, hardest and least damped, by 400,000 steps."""
+    """Rms of |k* / (k* - m w^2)| a over a flat 1e-6 g^2/Hz from 2 to 60 Hz, hardest and least damped, by
+    400,000 steps."""
     w = 2 * np.pi * np.linspace(2.0, 60.0, 400_001)
     stiff = 4 * k * 1.15 * (1 + 0.12j * 0.7)
     transmissibility = np.abs(stiff / (stiff - 120 * w**2))

@@ -1,4 +1,5 @@
-"""Rows under noise over scatter: never below a sample, exact where theory is, decided and re-proven in the right direction."""
+"""Rows under noise over scatter: never below a sample, exact where theory is, decided and re-proven in the
+right direction."""
 
 from dataclasses import replace
 
@@ -64,7 +65,8 @@ WIND = NoiseSet(PUSH, np.array([2.0, 30.0]), np.array([20.0, 1.0]))
 
 
 def rows(limit=None, sets=(ROAD, WIND)):
-    """Acceleration of the top (rms), the lower spring's force (expected extreme), motion against the base (3-sigma)."""
+    """Acceleration of the top (rms), the lower spring's force (expected extreme), motion against the base
+    (3-sigma)."""
     directions, forces = np.zeros((3, 3, 2)), np.zeros((3, 3, 2))
     directions[0, 0], directions[2, 0] = [0.0, 1.0], [1.0, 0.0]
     forces[1, 0, 0] = 1.0

@@ -1,4 +1,5 @@
-"""The scatter in the response plot, as numbers: the sampled ribbon and the guaranteed level, against the press by hand."""
+"""The scatter in the response plot, as numbers: the sampled ribbon and the guaranteed level, against the
+press by hand."""
 
 import importlib.util
 from pathlib import Path

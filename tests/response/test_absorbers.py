@@ -220,7 +220,7 @@ def compared(problem: Problem, every: int = 1, tolerance: float = 2e-4) -> int:
 
 @pytest.mark.parametrize("seed", [2, 3])
 def test_batch_and_assessor_agree_on_six_axes(seed: int) -> None:
-    """Two absorbers, one slanted, each may be left out, with gravity's stiffness: two assemblies, the same numbers."""
+    """Two absorbers, one slanted, each may be left out, with gravity's stiffness: two assemblies, one result."""
     brief, mounts = six_axes(seed)
     cold = (State(name="cold", stiffness_factor=1.4),)
     conditions = (

@@ -21,12 +21,13 @@ from detune.brief.allowable.separation import Separation
 from detune.brief.allowable.transmissibility import Transmissibility
 from detune.brief.allowable.velocity import Velocity
 from detune.brief.brief import Brief
-from detune.brief.choice import Objectives
+from detune.brief.choice import Ballast, Objectives
 from detune.brief.condition import Condition
 from detune.brief.cross_check import cross_check
 from detune.brief.dwell import joined, left_of, without_barred
 from detune.brief.forcing.shaft_orders import Order, ShaftOrders
 from detune.brief.read import read_brief, scan_brief
+from detune.brief.state import State
 from detune.physics.crossing import stretches_above
 from detune.problem.build import build
 from detune.report.page import sections
@@ -324,6 +325,50 @@ class TestFound:
         batch = problem.dwell[0].bands(designs.take(np.array([own])))
         assert batch is not None
         assert np.array(batch) == pytest.approx(np.array([(b.low, b.high) for b in bands]), rel=1e-7)
+
+    def test_damping_of_unknown_kind_bars_what_either_reading_exceeds(self) -> None:
+        """The union of the bands of a viscous mount and of one with a loss factor, each by numpy's dense sampling."""
+        laws = _load("law_machines")
+        part = laws.unknown(machines.mount(k=K, loss=0.15), rated=400.0)
+        readings = part.damping_unknown
+        assert readings is not None
+        speed = np.linspace(*RANGE, 1_200_001)
+        w = TWO_PI * speed
+        limit = 2.4e-5
+        over = np.zeros(len(speed), dtype=bool)
+        widths = []
+        for spring in (K + 1j * w * readings.viscous[2], K * (1 + 1j * readings.loss_factor[2])):
+            beyond = ME * w**2 / np.abs(spring - M * w**2) > limit
+            widths.append(speed[beyond].max() - speed[beyond].min())
+            over |= beyond
+        assert abs(widths[0] - widths[1]) > 0.01
+        brief = fan(*limited(limit, 11.0))
+        (band,) = machines.assessed(brief, part).barred
+        assert (band.low, band.high) == pytest.approx((speed[over].min(), speed[over].max()), abs=2e-5)
+        problem = build(brief, {"list": machines.catalog(part)})
+        batch = problem.dwell[0].bands(all_designs(problem.model, 0, 1))
+        assert np.array(batch) == pytest.approx(np.array([[band.low, band.high]]), rel=1e-7)
+
+    def test_ballast_and_states_move_the_bands(self) -> None:
+        """A heavier machine and a mount that is 20 % softer: the closed form with that mass and stiffness."""
+        step = 30.0
+        soft = Condition(name="cold", shafts={"rotor": RANGE}, state="soft")
+        brief = fan(
+            *limited(3e-5, 9.0),
+            conditions=(soft,),
+            states=(State(name="soft", stiffness_factor=0.8),),
+            ballast=Ballast(
+                position=(0.0, 0.0, 0.0), size=(0.1, 0.1, 0.1), steps=(0.0, step), cost_per_kg=0.1
+            ),
+        )
+        part = machines.mount(k=K, c=C)
+        speed = np.linspace(*RANGE, 1_200_001)
+        above = speed[size(speed, 0.8 * K, 0.8 * C, M + step) > 3e-5]
+        (band,) = machines.assessed(brief, part, ballast=step).barred
+        assert (band.low, band.high) == pytest.approx((above[0], above[-1]), abs=2e-5)
+        problem = build(brief, {"list": machines.catalog(part)})
+        batch = problem.dwell[0].bands(all_designs(problem.model, 1, 2))
+        assert np.array(batch) == pytest.approx(np.array([[band.low, band.high]]), rel=1e-7)
 
     def test_the_cheapest_design_whose_bands_are_narrow_enough(self) -> None:
         """Of 6 mounts the width by the closed form decides; enumeration and bounded search find the same."""

@@ -111,6 +111,17 @@ def test_undecided_candidates_are_listed_and_spoil_optimality(study):
     assert not starved.optimal and (starved.undecided or starved.winner is None)
 
 
+def test_undecided_candidates_get_a_second_look(study):
+    """With 300 boxes the cheapest provable design is undecided at first; five times as many prove it, and it wins."""
+    problem, outcome, robust = study
+    few = robust_selection(problem, outcome, [], Settings(), max_boxes=300)
+    first = certify(problem, np.array(robust.winner.part), robust.winner.step, max_boxes=300)
+    assert first.status == "undecided"
+    assert few.winner is not None and few.winner.part == robust.winner.part and few.optimal
+    report = check_entries([plain(entry) for entry in proof_record(problem, outcome, few, {}).entries])
+    assert report.confirmed, report.faults
+
+
 @pytest.fixture(scope="module")
 def entries(study):
     return [plain(entry) for entry in proof_record(*study, {"study.toml": "0" * 64}).entries]

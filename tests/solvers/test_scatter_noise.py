@@ -1,4 +1,5 @@
-"""Random responses over scatter through the whole program: statement, certificate, assessor, record and its checker."""
+"""Random responses over scatter through the whole program: statement, certificate, assessor, record and its
+checker."""
 
 import importlib.util
 from pathlib import Path
@@ -94,7 +95,8 @@ def design_of(problem, part):
 
 
 def within(problem, part, factor):
-    """The same problem with response limits at `factor` times what the assessor finds of a design at listed values."""
+    """The same problem with response limits at `factor` times what the assessor finds of a design at listed
+    values."""
     rows = assess(problem.brief, design_of(problem, part)).margins
     worst = {a.kind: max(r.value for r in rows if r.kind == a.kind) for a in problem.brief.allowables}
     limits = tuple(
@@ -198,3 +200,32 @@ def test_a_contradicted_guarantee_is_withdrawn():
     ]
     (row,) = [row for row in second_look(made, false) if row.kind == "acceleration"]
     assert row.status == "undecided" and row.guaranteed is None and "assessor finds" in row.note
+
+
+def test_nothing_acts_that_the_certifier_does_not_know():
+    """Whoever adds a kind of load to `Rows` has to bound it over the scatter, or leave it over, in
+    `solvers.design_rows`."""
+    from dataclasses import fields
+
+    from detune.response.evaluate import Rows
+
+    known = {"pairs", "families", "largest", "noises", "transients", "passages"}
+    assert {field.name for field in fields(Rows)} == known
+
+
+def test_a_requirement_nobody_asked_for_is_left_over_and_not_forgotten():
+    from detune.solvers.design_rows import DesignRows
+
+    problem = problem_of(9, BY_LOT)
+    rows = DesignRows(problem, np.array([0, 0]), 0)
+    wanted = [r for r in problem.requirements if not r.is_total]
+    assert rows.unasked() == wanted
+    rows.statics()
+    assert {r.allowable.kind for r in rows.unasked()} == {r.allowable.kind for r in wanted} - {
+        "sag",
+        "load-range",
+        "stability",
+    }
+    rows.separations()
+    rows.responses()
+    assert rows.unasked() == []

@@ -1,4 +1,5 @@
-"""A named design over the stated scatter, by `detune assess` and `detune compare`; values of one mass by hand."""
+"""A named design over the stated scatter, by `detune assess` and `detune compare`; values of one mass by
+hand."""
 
 import re
 import shutil
@@ -35,7 +36,8 @@ def transmitted(s: float, t: float, frequency: float) -> float:
 
 
 def test_a_proven_design(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    """Over +-10 % of stiffness the force is worst where the mounts are hardest and damp most, at 1,800 or 1,200 rpm."""
+    """Over +-10 % of stiffness the force is worst where the mounts are hardest and damp most, at 1,800 or
+    1,200 rpm."""
     path = study(tmp_path)
     assert main(["assess", str(path), "--design", "feet=teasel-a, ballast=0 kg"]) == 0
     text = " ".join(capsys.readouterr().out.split())
@@ -53,7 +55,8 @@ def test_a_proven_design(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> 
 
 
 def test_a_violated_design_names_its_point(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    """A limit between the listed value and the worst: met at listed values, violated over the scatter, exit code 1."""
+    """A limit between the listed value and the worst: met at listed values, violated over the scatter, exit
+    code 1."""
     listed = max(transmitted(1.0, 1.0, f) for f in (20.0, 30.0))
     path = study(tmp_path, force=f"{1.02 * listed:.4f} N")
     assert main(["assess", str(path), "--design", "feet=teasel-a, ballast=0 kg"]) == 1

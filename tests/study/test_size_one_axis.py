@@ -173,7 +173,7 @@ def test_an_unknown_nothing_depends_on_and_an_objective_nothing_changes(tmp_path
     with pytest.raises(BriefError, match="every design costs the same"):
         briefs.sized(tmp_path, free)
     place = "[[sizing.unknown]]\nkind = 'position'\n"
-    place += "stations = ['A']\naxis = 'x'\nlower = '0.1 m'\nupper = '0.4 m'"
+    place += "stations = ['A']\naxis = 'z'\nlower = '0.1 m'\nupper = '0.4 m'"
     idle = briefs.one_axis(
         more=briefs.DISPLACEMENT.format(limit=1.0), goal="minimise = 'stiffness'", unknowns=place, **common,
     )  # fmt: skip

@@ -69,10 +69,16 @@ def test_bounds_without_sense(tmp_path, name):
     assert any(fault.line is not None and abs(fault.line - near) <= 1 for fault in error.faults)
 
 
+def test_a_faulty_sizing_table_does_not_ask_for_lists(tmp_path):
+    """A study that is to be sized needs no catalogs and choices, even while its table has a fault."""
+    (fault,) = refused(tmp_path, one().replace('lower = "10.0 N/m"', 'lower = "2 kN/mm"')).faults
+    assert fault.where == "sizing.unknown[1].lower"
+
+
 def test_one_axis_an_unknown_nothing_depends_on(tmp_path):
     """A transmissibility does not know the amplitude of the force, nor where the one station stands."""
     place = "[[sizing.unknown]]\nkind = 'position'\nstations = ['A']\naxis = 'x'\nlower = '0.1 m'\nupper = '0.4 m'"
-    text = one(unknowns=place)
+    text = one(unknowns=place).replace('parallel = 1\nposition = ["0 m"', 'parallel = 1\nposition = ["0.2 m"')
     (fault,) = refused(tmp_path, text).faults
     assert fault.found == "x distance of A" and "nothing here changes with it" in fault.expected
     assert fault.where == "sizing.unknown[2]"

@@ -7,6 +7,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from detune.ground.errors import BriefError
 from detune.physics.absorber import den_hartog, minimax_tuning
 from detune.response.assess import assess
 from detune.sizing.made_parts import bounds, made_design
@@ -80,7 +81,7 @@ def test_convex_sides_are_bounds(skid, skid_result):
     )
     plain = brief.model_copy(update={"sizing": fixed})
     problem, _ = batch(plain, [made_design(plain, middle[:-1])])
-    answers = convex_answers(plain, problem, middle[:-1], 0.2)
+    answers = convex_answers(plain, problem, middle[:-1])
     best = {a.side: a for a in answers if a.what == "separation"}
     assert best
     model, columns, _ = stiffness_model(plain, problem, middle[:-1])
@@ -146,3 +147,26 @@ def test_specification_holds_inside_and_is_tight_outside(tmp_path):
         pytest.fail("no face was found tight")
     # The whole mass stands on four parts: 200 kg * 9.80665 / 4 N each.
     assert found.groups[0].load == pytest.approx((490.33, 490.33), rel=1e-5)
+
+
+BAD_POSITIONS = {
+    "a station on the origin has no side": (
+        ('position = ["-0.5 m","-0.3 m","0 m"]', 'position = ["0 m","-0.3 m","0 m"]'),
+        r'stations\[1\]: found .station "A" at x = 0., expected a station with its x above or below zero',
+    ),
+    "a station moves once along an axis": (
+        ("[[sizing.made]]", "[[sizing.unknown]]\nkind = 'position'\nstations = ['B']\naxis = 'x'\nlower = '0.2 m'\n"
+         "upper = '0.3 m'\n[[sizing.made]]"),
+        r"stations\[1\]: found .B., expected each station once along x",
+    ),
+    "bounds the wrong way round": (('lower = "0.3 m"', 'lower = "0.6 m"'), "the lower bound first"),
+    "no such station": (('stations = ["A","B"]', 'stations = ["A","E"]'), "the name of a station"),
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("name", BAD_POSITIONS)
+def test_bad_positions_are_refused(tmp_path, name):
+    (old, new), words = BAD_POSITIONS[name]
+    assert old in SKID
+    with pytest.raises(BriefError, match=words):
+        written(tmp_path, SKID.replace(old, new, 1))

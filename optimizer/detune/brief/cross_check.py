@@ -26,6 +26,9 @@ def cross_check(brief: Brief, not_read: Iterable[str] = ()) -> tuple[Finding, ..
     look wrong only for that reason is left out.
     """
     unsure = set(not_read)
+    if "sizing" in unsure and not brief.choices:
+        # A study with a [sizing] table needs no lists, whether or not the table could be read.
+        unsure |= {"catalog", "choice"}
     empty = [finding for finding in _empty_tables(brief) if finding.path[0] not in unsure]
     unsure |= {str(finding.path[0]) for finding in empty}
     found = [
@@ -197,7 +200,7 @@ def _sustained(brief: Brief, path: Path) -> list[Finding]:
     """What a sustained acceleration is not carried through to."""
     found = "a sustained acceleration"
     if brief.absorbers:
-        expected = "none beside absorbers, whose masses it would pull along their springs"
+        expected = "none beside absorbers, whose masses it would pull along their springs and out of their stroke"
         return [Finding(path, found, expected, depends=("absorber",))]
     if brief.scatter is not None and (brief.scatter.mass is not None or brief.scatter.centre is not None):
         expected = "none under scatter of mass or centre: the pull would scatter with them"

@@ -1,8 +1,8 @@
 """Speeds a machine may not dwell in: a steady condition whose shaft leaves out barred bands, taken apart.
 
-What is left of the range is a union of intervals. Each interval (with several shafts, each combination of theirs)
-becomes a steady condition of its own, so that every limit and separation is judged over exactly that union: the
-largest value over a union is the largest over its parts.
+What is left of the range is a union of intervals. Each interval (with several shafts, each combination of
+theirs) becomes a steady condition of its own, so that every limit and separation is judged over exactly that
+union: the largest value over a union is the largest over its parts.
 """
 
 from itertools import pairwise, product
@@ -21,8 +21,8 @@ MOST_PIECES = 64
 def left_of(low: float, high: float, barred: tuple[Interval, ...]) -> tuple[Interval, ...]:
     """Return what is left of [low, high] Hz without the barred bands, in order; what is left has a width.
 
-    Bands may overlap each other and reach beyond the range. The edges of a band are left: at them the machine may
-    dwell.
+    Bands may overlap each other and reach beyond the range. The edges of a band are left: at them the machine
+    may dwell.
     """
     left: list[Interval] = []
     start = low
@@ -38,7 +38,8 @@ def left_of(low: float, high: float, barred: tuple[Interval, ...]) -> tuple[Inte
 def without_barred(brief: Brief) -> Brief:
     """Return the brief with every condition that bars speeds replaced by the pieces that are left of it.
 
-    Statements that name such a condition name its pieces instead. A brief without barred speeds comes back as it is.
+    Statements that name such a condition name its pieces instead. A brief without barred speeds comes back as
+    it is.
     """
     pieces = {c.name: pieces_of(c) for c in brief.conditions if c.barred}
     if not pieces:

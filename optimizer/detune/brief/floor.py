@@ -49,11 +49,12 @@ class Floor(Statement):
     1-3 %) and printed as assumed.
 
     `dynamic-stiffness`: the vertical dynamic stiffness over frequency from a CSV `file` (columns frequency,
-    stiffness, and imaginary or loss_factor), mass included, straight between its rows and refused outside them, with
-    the `static_stiffness` for loads at rest. `stiffness-matrix`: the stiffness between the places under `stations`
-    in `directions` (z alone where left out), station by station, inline or as a CSV file with one column "station
-    direction [unit]" for each; with the mass matrix of the same places where the floor has mass that counts, and one
-    loss factor (assumed 4 % where left out). Directions that are not named are held.
+    stiffness, and imaginary or loss_factor), mass included, straight between its rows and refused outside
+    them, with the `static_stiffness` for loads at rest. `stiffness-matrix`: the stiffness between the places
+    under `stations` in `directions` (z alone where left out), station by station, inline or as a CSV file
+    with one column "station direction [unit]" for each; with the mass matrix of the same places where the
+    floor has mass that counts, and one loss factor (assumed 4 % where left out). Directions that are not
+    named are held.
     """
 
     kind: Literal[
@@ -147,8 +148,8 @@ class Floor(Statement):
 class FloorFreedom:
     """Mass kg, stiffness N/m and viscous damping N s/m of the floor's vertical freedom.
 
-    With a `table` that is what the dynamic stiffness is written around: it is stiffness - w^2 mass, and what the table
-    has beyond that. The stiffness is then the static one.
+    With a `table` that is what the dynamic stiffness is written around: it is stiffness - w^2 mass, and what
+    the table has beyond that. The stiffness is then the static one.
     """
 
     mass: float

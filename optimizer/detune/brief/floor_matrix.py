@@ -13,8 +13,8 @@ from detune.brief.structure import Structure, StructureModes
 from detune.ground.units import show
 
 Floats = NDArray[np.float64]
-# A floor without mass gets so little that its own frequencies lie so many times above the highest excitation: what
-# that changes in its dynamic stiffness is one over the square of it.
+# A floor without mass gets so little that its own frequencies lie so many times above the highest excitation:
+# what that changes in its dynamic stiffness is one over the square of it.
 ABOVE = 300.0
 
 
@@ -29,8 +29,8 @@ class FloorNode:
 class FloorStructure:
     """The floor as modes of its own, in the same form as a `Structure`; every mode is kept.
 
-    `stiffness` and `mass` (k, k) of the freedoms under the stations, station by station. Modes above `real_up_to` (Hz)
-    are those of a mass that was put in.
+    `stiffness` and `mass` (k, k) of the freedoms under the stations, station by station. Modes above
+    `real_up_to` (Hz) are those of a mass that was put in.
     """
 
     name: str

@@ -18,6 +18,7 @@ def sizing_checked(brief: Brief) -> list[Finding]:
     findings: list[Finding] = []
     for index, unknown in enumerate(sizing.unknown):
         findings += _names(brief, ("sizing", "unknown", index), unknown)
+    findings += _moved_once(brief, sizing)
     for index, made in enumerate(sizing.made):
         if made.group not in brief.groups:
             path: Path = ("sizing", "made", index, "group")
@@ -52,6 +53,8 @@ def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
     for index, name in enumerate(unknown.stations):
         if name not in stations:
             findings.append(_unknown_name((*path, "stations", index), name, stations, "a station"))
+    if unknown.kind == "position" and unknown.axis in ("x", "y"):
+        findings += _without_a_side(brief, path, unknown)
     absorber = unknown.kind in ("absorber-tuning", "absorber-damping") and unknown.body in bodies
     if absorber and not _stands_on(brief, str(unknown.body), str(unknown.group)):
         expected = f'the body that stands on the parts of group "{unknown.group}" alone and is tuned by them'
@@ -64,6 +67,34 @@ def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
         if body.mass is None:
             expected = 'an absorber body that states its "mass", which is then varied'
             findings.append(Finding((*path, "body"), body.name, expected))
+    return findings
+
+
+def _without_a_side(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
+    """Stations on the origin itself: a distance does not say to which side they move."""
+    index = "xyz".index(str(unknown.axis))
+    findings = []
+    for number, name in enumerate(unknown.stations):
+        place = next((s.position[index] for s in brief.stations if s.name == name), None)
+        if place == 0.0:
+            found = f'station "{name}" at {unknown.axis} = 0'
+            expected = (
+                f"a station with its {unknown.axis} above or below zero, which says to which side it moves"
+            )
+            findings.append(Finding((*path, "stations", number), found, expected))
+    return findings
+
+
+def _moved_once(brief: Brief, sizing: Sizing) -> list[Finding]:
+    """A station whose place along one axis is two unknowns' at once."""
+    seen: set[tuple[str, str | None]] = set()
+    findings = []
+    for index, unknown in enumerate(sizing.unknown):
+        for number, name in enumerate(unknown.stations):
+            if (name, unknown.axis) in seen:
+                path: Path = ("sizing", "unknown", index, "stations", number)
+                findings.append(Finding(path, name, f"each station once along {unknown.axis}"))
+            seen.add((name, unknown.axis))
     return findings
 
 

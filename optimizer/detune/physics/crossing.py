@@ -28,10 +28,11 @@ def stretches_above(
 ) -> list[tuple[float, float]]:
     """Stretches of [low, high] on which excess(x) > 0, in order.
 
-    excess: (F,) -> (F,), relative to the limit (0 at the limit, -1 at nothing). centres, half_widths (m,): where it
-    may have sharp peaks. Samples lie on a background and round every centre; local peaks just below zero and dips
-    just above it are closed in on. The edge that is returned is a sample that is not above zero, within 1e-10 of one
-    that is, so that a stretch contains all of what is above. ValueError unless low < high.
+    excess: (F,) -> (F,), relative to the limit (0 at the limit, -1 at nothing). centres, half_widths (m,):
+    where it may have sharp peaks. Samples lie on a background and round every centre; local peaks just below
+    zero and dips just above it are closed in on. The edge that is returned is a sample that is not above
+    zero, within 1e-10 of one that is, so that a stretch contains all of what is above. ValueError unless low
+    < high.
     """
     if not low < high:
         raise ValueError("a range needs low < high")

@@ -41,7 +41,8 @@ class DwellMachine:
 class DwellRequirements:
     """The limit on the barred width of one shaft in one condition, over all readings of unknown damping together.
 
-    low, high (Hz): the shaft's range; `orders` of it that are excited; `separation`: the limit that is kept as well.
+    low, high (Hz): the shaft's range; `orders` of it that are excited; `separation`: the limit that is kept
+    as well.
     """
 
     allowable: DwellBands

@@ -1,9 +1,9 @@
 """The checker's own bound of rows under noise over boxes of scatter, with all rounding accounted for.
 
-Over a box of scatter and an interval of the squared speed z the components are enclosed by lines (`checker_scatter`),
-y = c + L_x + L_z + rest. The mean of |y|^2 under the density is at most |c|^2 + 2 Re c* (L_x + mean L_z) +
-(reach of L_x + rms of L_z)^2 + 2 (|c| + reach + rms) rest + rest^2. The checker cuts frequency for itself: the record
-names the boxes of scatter alone.
+Over a box of scatter and an interval of the squared speed z the components are enclosed by lines
+(`checker_scatter`), y = c + L_x + L_z + rest. The mean of |y|^2 under the density is at most |c|^2 + 2 Re c*
+(L_x + mean L_z) + (reach of L_x + rms of L_z)^2 + 2 (|c| + reach + rms) rest + rest^2. The checker cuts
+frequency for itself: the record names the boxes of scatter alone.
 """
 
 from __future__ import annotations
@@ -72,9 +72,11 @@ def first_intervals(rows: dict[str, Any]) -> tuple[Matrix, Matrix]:
 def under_density(
     frequency: Matrix, density: Matrix, low: Matrix, high: Matrix
 ) -> tuple[Matrix, Matrix, Matrix, Matrix]:
-    """Area (N,) of a density over intervals of z, mean of (z - middle)/half, and its mean square from below and above.
+    """Area (N,) of a density over intervals of z, mean of (z - middle)/half, and its mean square from below
+    and above.
 
-    By moments of S = A f^n: the integral of f^p S df from a to b is S(a) a^(p+1) (e^(k L) - 1)/k with k = n + p + 1.
+    By moments of S = A f^n: the integral of f^p S df from a to b is S(a) a^(p+1) (e^(k L) - 1)/k with k = n +
+    p + 1.
     """
     a, b = np.sqrt(low) / (2.0 * np.pi), np.sqrt(high) / (2.0 * np.pi)
     at = np.sqrt(a) * np.sqrt(b)
@@ -188,7 +190,8 @@ class Strips:
 
 
 def counted(rows: dict[str, Any], moved: Matrix, rates: Matrix) -> Matrix:
-    """Rms, or expected extreme u + 0.5772/u with u^2 = 2 ln(2 f T) (Davenport 1964), times the factor; grows with both."""
+    """Rms, or expected extreme u + 0.5772/u with u^2 = 2 ln(2 f T) (Davenport 1964), times the factor; grows
+    with both."""
     out = []
     for v, w, extreme in zip(moved, rates, rows["extreme"], strict=True):
         if not math.isfinite(v) or (extreme and not math.isfinite(w)):
@@ -210,7 +213,8 @@ def refined(
 ) -> tuple[bool, int]:
     """Cut intervals of z until `decided(strips)`, or until it gets no nearer; and how many boxes that took.
 
-    error(strips): (N,) what the intervals leave open. hopeless(strips): whether cutting frequency cannot help.
+    error(strips): (N,) what the intervals leave open. hopeless(strips): whether cutting frequency cannot
+    help.
     """
     strips = Strips(system, rows, box, first_intervals(rows))
     count, before = len(strips.low), math.inf
@@ -286,7 +290,8 @@ def check_noise(data: dict[str, Any], rebuild: Cut, halve: Cut) -> tuple[list[st
 def _witness(
     data: dict[str, Any], system: dict[str, Matrix], rows: dict[str, Any], statuses: list[str]
 ) -> tuple[list[str], int]:
-    """Whether the points named break the limits of the rows called violated, by bounds from below at those points."""
+    """Whether the points named break the limits of the rows called violated, by bounds from below at those
+    points."""
     decision, faults, count = data["decision"], [], 0
     for row, status in enumerate(statuses):
         if status != "violated":

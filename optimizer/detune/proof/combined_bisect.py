@@ -15,12 +15,13 @@ import numpy as np
 from detune.proof.bisect import DecisionStatus, sample_points
 from detune.proof.combined_bound import TRIALS, frame_of, rows_bound
 from detune.proof.loewner import Flags
-from detune.proof.scatter_data import LimitedRows, ScatterSystem, first_corners, values_at
+from detune.proof.scatter_data import LimitedRows, ScatterSystem, first_corners, matrices_at, values_at
 from detune.proof.selection_data import Floats
 
 BATCH = 256
 KEPT_TRIALS = 3
 CHUNK = 4096
+LEAST_DAMPING = 1e-6
 
 
 @dataclass(frozen=True)
@@ -87,8 +88,38 @@ class Sampler:
         return bool((broken if rows is None else broken & rows).any())
 
     def start(self) -> None:
-        """Corners of the scatter over a grid of speeds."""
-        self.evaluate(sample_points(self.low, self.high))
+        """Corners of the scatter over a grid of speeds, and at their natural frequencies."""
+        points = sample_points(self.low, self.high)
+        self.evaluate(points)
+        self.evaluate(self.on_modes(points[points[:, -1] == points[0, -1]], nearest=False))
+
+    def on_modes(self, points: Floats, *, nearest: bool) -> Floats:
+        """The same scatter (K, V+1) at the undamped natural frequencies that an order excites within the range.
+
+        A light resonance is narrower than any grid. nearest: for each order the one nearest to the point's speed alone.
+        Modes without damping are left out: exactly there rounding alone would make a response of a load that is none.
+        """
+        if not len(points) or not self.high[-1] > self.low[-1]:
+            return points[:0]
+        rest, turning = points.copy(), points.copy()
+        rest[:, -1], turning[:, -1] = 0.0, 1.0
+        stiff, moving = matrices_at(self.system, rest, 1.0)[0].real, matrices_at(self.system, turning, 1.0)[0]
+        inverse = np.linalg.inv(np.linalg.cholesky(stiff - moving.real))
+        squares, modes = np.linalg.eigh(inverse @ stiff @ np.swapaxes(inverse, 1, 2))
+        lost = inverse @ moving.imag @ np.swapaxes(inverse, 1, 2)
+        damped = np.einsum("bik,bij,bjk->bk", modes, lost, modes) > LEAST_DAMPING * np.abs(squares)
+        squares = np.where(damped, squares, -1.0)
+        found = []
+        for order in dict.fromkeys(each.order for each in self.limits.sets):
+            at = squares / order**2
+            if nearest:
+                index = np.abs(at - points[:, -1:]).argmin(axis=1)
+                at = at[np.arange(len(at)), index][:, None]
+            row, column = np.nonzero((at >= self.low[-1]) & (at <= self.high[-1]))
+            moved = points[row].copy()
+            moved[:, -1] = at[row, column]
+            found.append(moved)
+        return np.concatenate(found)
 
     def climb(self, rounds: int = 14) -> None:
         """Pattern search from the best point of every row, halving the step."""
@@ -100,7 +131,9 @@ class Sampler:
             before = self.best.copy()
             steps = step[:, None, None] * np.eye(len(self.low))[moving] * (self.high - self.low)
             points = np.concatenate([self.where[:, None] + steps, self.where[:, None] - steps], axis=1)
-            self.evaluate(np.clip(points.reshape(-1, len(self.low)), self.low, self.high))
+            points = np.clip(points.reshape(-1, len(self.low)), self.low, self.high)
+            self.evaluate(points)
+            self.evaluate(self.on_modes(points, nearest=True))
             step = np.where(self.best > before * (1.0 + 1e-9), step, 0.5 * step)
 
 
@@ -137,7 +170,7 @@ def decide_rows(
         limit = np.where(found.best > limits.limit, np.inf, limits.limit)
         if boxes >= max_boxes or not np.isfinite(limit).any() or (interrupted is not None and interrupted()):
             break
-        batch, open_nodes = open_nodes[-BATCH:], open_nodes[:-BATCH]
+        batch, open_nodes = _worst(open_nodes, limit)
         low, high = np.stack([node.low for node in batch]), np.stack([node.high for node in batch])
         bounds = rows_bound(system, limits, frame, low, high, trials)
         boxes += len(batch)
@@ -160,6 +193,16 @@ def decide_rows(
         if left:
             found.evaluate(np.stack(left))
     return _decision(found, root, [*open_nodes, *stuck], settled, boxes)
+
+
+def _worst(nodes: list[_Node], limit: Floats) -> tuple[list[_Node], list[_Node]]:
+    """The boxes whose bounds are furthest beyond the limits, so that the bracket is narrow where it stays open; the rest."""
+    if len(nodes) <= BATCH:
+        return nodes, []
+    upper = np.stack([node.upper for node in nodes])
+    ratio = (np.where(np.isfinite(upper), upper, 1e300) / np.maximum(limit, 1e-300)).max(axis=1)
+    order = np.argpartition(-ratio, BATCH)
+    return [nodes[i] for i in order[:BATCH]], [nodes[i] for i in order[BATCH:]]
 
 
 def _choose(node: _Node, weight: Floats) -> int:

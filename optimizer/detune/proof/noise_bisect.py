@@ -1,11 +1,11 @@
 """Bound of rows under noise over a box of scatter, and bisection of scatter and frequency until decided.
 
-Over a box of scatter and an interval of the squared speed z, y = c + s (x - m) + e (z - z_m) + rest, |rest| <= rho
-(`combined_bound`). So |y|^2 <= |c|^2 + 2 Re c* s (x - m) + 2 Re c* e (z - z_m) + (reach + rho)^2 + 2 |c| rho, and its
-integral with S df needs the area of S, its mean of z - z_m and its mean square alone. The planes of all intervals are
-summed before their greatest value over the box is taken: what a resonance loses below and gains above as a stiffness
-grows cancels, and the bound errs by the square of the widths of frequency and scatter. Densities are zero outside
-their break points, so that nothing is left over.
+Over a box of scatter and an interval of the squared speed z, y = c + s (x - m) + e (z - z_m) + rest, |rest|
+<= rho (`combined_bound`). So |y|^2 <= |c|^2 + 2 Re c* s (x - m) + 2 Re c* e (z - z_m) + (reach + rho)^2 + 2
+|c| rho, and its integral with S df needs the area of S, its mean of z - z_m and its mean square alone. The
+planes of all intervals are summed before their greatest value over the box is taken: what a resonance loses
+below and gains above as a stiffness grows cancels, and the bound errs by the square of the widths of
+frequency and scatter. Densities are zero outside their break points, so that nothing is left over.
 """
 
 from __future__ import annotations
@@ -39,8 +39,9 @@ CUT_AT_ONCE = 0.6
 class Strips:
     """What N intervals of frequency contribute to the variances of R rows over one box of scatter.
 
-    low, high (N,): the intervals of z. centre, bent (N, R): value at the box's middle, and the greatest of what is not
-    linear. slope (N, R, V). weight (N, V+1): what the width of each variable has to do with `bent`, frequency last.
+    low, high (N,): the intervals of z. centre, bent (N, R): value at the box's middle, and the greatest of
+    what is not linear. slope (N, R, V). weight (N, V+1): what the width of each variable has to do with
+    `bent`, frequency last.
     """
 
     low: Floats
@@ -157,8 +158,9 @@ def decide_noise(
 ) -> RowsDecision:
     """Decide whether every row keeps its limit over all variables. `boxes` counts boxes of scatter and frequency.
 
-    A row is violated only by a point whose value, less the tolerance of its quadrature, exceeds the limit. The work
-    ends when a `fatal` (R,) row, None for any, is violated; else the other rows are decided all the same.
+    A row is violated only by a point whose value, less the tolerance of its quadrature, exceeds the limit.
+    The work ends when a `fatal` (R,) row, None for any, is violated; else the other rows are decided all the
+    same.
     """
     found = noise_sampled(system, noise) if samples is None else samples
     bounder, settled = Bounder(system, noise), np.full(noise.count, -np.inf)
@@ -220,7 +222,8 @@ def _work(node: _Node, bounder: Bounder, noise: NoiseRows, limit: Floats, max_bo
 def _what_to_cut(
     strips: Strips, node: _Node, ratio: Floats
 ) -> tuple[np.ndarray[tuple[int], np.dtype[np.bool_]] | None, int]:
-    """Intervals (N,) to cut, or None and the variable to cut: whichever has more to do with the worst row's error."""
+    """Intervals (N,) to cut, or None and the variable to cut: whichever has more to do with the worst row's
+    error."""
     error = strips.bent[:, int(np.argmax(ratio))]
     without = ~np.isfinite(error)
     # Where intervals are without a bound, they come first.

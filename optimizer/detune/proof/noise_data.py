@@ -1,8 +1,9 @@
-"""Rows under noise as arrays: what a Gaussian response of a machine under scatter counts as, and the areas of densities.
+"""Rows under noise as arrays: what a Gaussian response of a machine under scatter counts as, and the areas of
+densities.
 
-The variance of a row is the sum over noises and components of the integral of |y|^2 S df, y its response to a unit of
-the noise at one frequency. A row counts as its rms times a factor (3 for 3-sigma), or as the expected extreme of the
-duration, which grows with the variance of the row and with that of its rate (Davenport 1964).
+The variance of a row is the sum over noises and components of the integral of |y|^2 S df, y its response to a
+unit of the noise at one frequency. A row counts as its rms times a factor (3 for 3-sigma), or as the expected
+extreme of the duration, which grows with the variance of the row and with that of its rate (Davenport 1964).
 """
 
 from __future__ import annotations
@@ -42,9 +43,9 @@ class NoiseSet:
 class NoiseRows:
     """R rows with upper limits under independent noises.
 
-    rows (R, 3, n), forces (R, 3, A), rate (R,): components and power of omega, as in `LimitedRows`. factor (R,):
-    multiplies the rms or the expected extreme. extreme (R,): the row counts as its expected extreme in `duration`
-    (s). limit (R,).
+    rows (R, 3, n), forces (R, 3, A), rate (R,): components and power of omega, as in `LimitedRows`. factor
+    (R,): multiplies the rms or the expected extreme. extreme (R,): the row counts as its expected extreme in
+    `duration` (s). limit (R,).
     """
 
     rows: Floats
@@ -93,8 +94,8 @@ def break_points(noise: NoiseRows) -> Floats:
 def counted(noise: NoiseRows, variance: Floats, rate_variance: Floats) -> Floats:
     """What variances (N, R) of rows and their rates count as. Grows with both, so that bounds give bounds.
 
-    With u^2 = 2 ln(2 f T) >= 2 ln 20, sigma u has d(sigma u)^2 / d sigma^2 = u^2 - 1 > 0 at a fixed rate variance, and
-    sigma / u grows as well; with fewer than ten cycles the factor is fixed.
+    With u^2 = 2 ln(2 f T) >= 2 ln 20, sigma u has d(sigma u)^2 / d sigma^2 = u^2 - 1 > 0 at a fixed rate
+    variance, and sigma / u grows as well; with fewer than ten cycles the factor is fixed.
     """
     value = np.sqrt(variance)
     if noise.extreme.any():
@@ -109,9 +110,11 @@ def counted(noise: NoiseRows, variance: Floats, rate_variance: Floats) -> Floats
 
 @dataclass(frozen=True, eq=False)
 class Areas:
-    """Of one density over N intervals of the squared speed z: area (N,) of S df, mean and rms of z - middle under it.
+    """Of one density over N intervals of the squared speed z: area (N,) of S df, mean and rms of z - middle
+    under it.
 
-    lean (N,): mean of z - middle over the interval, weighted with S; spread (N,): root of the mean of its square.
+    lean (N,): mean of z - middle over the interval, weighted with S; spread (N,): root of the mean of its
+    square.
     """
 
     area: Floats
@@ -122,7 +125,8 @@ class Areas:
 def areas(each: NoiseSet, low: Floats, high: Floats) -> Areas:
     """Areas of a density over intervals of the squared speed, none of which crosses a break point.
 
-    S = S_a (f/a)^n from a to b gives the integral of f^p S df as S_a a^(p+1) expm1(k L)/k, k = n + p + 1, L = ln(b/a).
+    S = S_a (f/a)^n from a to b gives the integral of f^p S df as S_a a^(p+1) expm1(k L)/k, k = n + p + 1, L =
+    ln(b/a).
     """
     a, b = np.sqrt(low) / TWO_PI, np.sqrt(high) / TWO_PI
     centre = np.sqrt(a * b)

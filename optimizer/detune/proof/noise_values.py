@@ -1,4 +1,5 @@
-"""Variances of rows under noise at points of the scatter, by quadrature to 1e-4, and the search for the greatest."""
+"""Variances of rows under noise at points of the scatter, by quadrature to 1e-4, and the search for the
+greatest."""
 
 from __future__ import annotations
 
@@ -14,7 +15,8 @@ from detune.proof.scatter_data import ScatterSystem, matrices_at
 from detune.proof.selection_data import Complexes, Floats
 
 TOLERANCE = 1.0e-4
-"""Relative error of a variance by quadrature; a value found is lowered by so much before it counts as a witness."""
+"""Relative error of a variance by quadrature; a value found is lowered by so much before it counts as a
+witness."""
 CHUNK = 16
 ALL_CORNERS = 6
 SOME_CORNERS = 64
@@ -23,7 +25,8 @@ ROUNDS = 8
 
 
 def variances_at(system: ScatterSystem, noise: NoiseRows, points: Floats) -> tuple[Floats, Floats]:
-    """Variances of all rows and of their rates, both (N, R), at points (N, V); infinite where nothing damps a mode."""
+    """Variances of all rows and of their rates, both (N, R), at points (N, V); infinite where nothing damps a
+    mode."""
     moved, rates = np.zeros((len(points), noise.count)), np.zeros((len(points), noise.count))
     for first in range(0, len(points), CHUNK):
         part = points[first : first + CHUNK]
@@ -41,7 +44,8 @@ def noise_values_at(system: ScatterSystem, noise: NoiseRows, points: Floats) -> 
 
 
 def _poles(system: ScatterSystem, points: Floats) -> tuple[Floats, Floats]:
-    """Imaginary parts and decay rates (N, m) of the poles, the hysteretic part frozen as j H: where the needles are."""
+    """Imaginary parts and decay rates (N, m) of the poles, the hysteretic part frozen as j H: where the
+    needles are."""
     n, count = len(system.mass), len(points)
     at = np.concatenate([points, np.ones((count, 1))], axis=1)
     one = matrices_at(system, at, 1.0)[0]
@@ -116,7 +120,8 @@ def _direct(each: NoiseSet) -> Floats:
 
 
 class NoiseSampler:
-    """Values at points of the scatter, and the greatest of each row met so far, lowered by the quadrature's tolerance."""
+    """Values at points of the scatter, and the greatest of each row met so far, lowered by the quadrature's
+    tolerance."""
 
     def __init__(self, system: ScatterSystem, limits: NoiseRows) -> None:
         self.system, self.limits = system, limits

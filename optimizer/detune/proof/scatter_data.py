@@ -18,6 +18,7 @@ import numpy as np
 from detune.proof.loewner import Flags
 from detune.proof.robust_data import RobustError
 from detune.proof.selection_data import Complexes, Floats, Integers
+from detune.response.solve import solve_or_resonate
 
 
 @dataclass(frozen=True, eq=False)
@@ -204,6 +205,15 @@ def combine_sets(limits: LimitedRows, sizes: list[Floats]) -> Floats:
     return total * limits.factor
 
 
+def _solved(system: ScatterSystem, points: Floats, matrices: Complexes, right: Complexes) -> Complexes:
+    """q (N, n) of matrices q = right; a machine without damping exactly at a resonance is far beyond any limit there."""
+    try:
+        return np.asarray(np.linalg.solve(matrices, right[:, :, None])[:, :, 0])
+    except np.linalg.LinAlgError:
+        at_rest = np.concatenate([points[:, :-1], np.zeros((len(points), 1))], axis=1)
+        return solve_or_resonate(matrices, matrices_at(system, at_rest, 1.0)[0], right)
+
+
 def values_at(system: ScatterSystem, limits: LimitedRows, points: Floats) -> Floats:
     """Values (N, R) of all rows at points (N, V+1), by direct solves."""
     sizes = []
@@ -216,7 +226,7 @@ def values_at(system: ScatterSystem, limits: LimitedRows, points: Floats) -> Flo
         scale = omega[:, None] ** loads.powers
         base = scale @ loads.bases
         right = scale @ loads.loads + (kappa * base) @ system.axes
-        q = np.linalg.solve(matrices, right[:, :, None])[:, :, 0]
+        q = _solved(system, points, matrices, right)
         force = kappa * (q @ system.axes.T - base)
         n, axes = len(system.mass), len(system.axes)
         y = q @ limits.rows.reshape(-1, n).T + force @ limits.forces.reshape(-1, axes).T

@@ -1,4 +1,5 @@
-"""Named designs over the stated scatter, in words: what is proven, violated, undecided with its bracket, or sampled."""
+"""Named designs over the stated scatter, in words: what is proven, violated, undecided with its bracket, or
+sampled."""
 
 import textwrap
 from collections.abc import Sequence

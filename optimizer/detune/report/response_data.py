@@ -9,9 +9,10 @@ from detune.brief.allowable.base import HarmonicAllowable, combine
 from detune.brief.allowable.views import Places
 from detune.brief.brief import Brief, applies, demanded, state_of
 from detune.brief.condition import Condition
+from detune.brief.dwell import left_of
 from detune.brief.forcing.base import Tone
 from detune.response.assess import states_of
-from detune.response.assessment import Assessment, MarginRow
+from detune.response.assessment import Assessment, BarredBand, MarginRow
 from detune.response.damping_readings import readings_of
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes, direct_modes
@@ -38,7 +39,8 @@ class ResponseCurve:
     inside is the one judged. `source` names the speed; `is_shaft` tells revolutions from frequency.
     `passage`: the source runs through its speeds in a stated time and is judged so; the curve is then
     its own steady state alone, for comparison. `pair`, `sets`, `state` and `rest` are what it was made of: the
-    requirement, the tones, the state of the machine, and what the other sources add.
+    requirement, the tones, the state of the machine, and what the other sources add. `barred`: bands in which the
+    machine may not dwell, found for the design.
     """
 
     row: MarginRow
@@ -54,11 +56,12 @@ class ResponseCurve:
     sets: tuple[tuple[Tone, ...], ...]
     state: str | None
     rest: float
+    barred: tuple[tuple[float, float], ...] = ()
 
     @property
     def inside(self) -> NDArray[np.bool_]:
-        """Mask (F,) of the speeds at which the requirement is judged."""
-        return (self.speed >= self.low) & (self.speed <= self.high)
+        """Mask (F,) of the speeds at which the requirement is judged: the interval without its barred bands."""
+        return _judged(self.speed, self.low, self.high, self.barred)
 
 
 @dataclass(frozen=True, eq=False)
@@ -89,7 +92,7 @@ def response_curves(brief: Brief, assessment: Assessment) -> tuple[ResponseCurve
             looks.append((machine, direct_modes(machine, steady_intervals(brief, state))))
         for condition in brief.conditions:
             if condition.state == state:
-                curves += _condition_curves(looks, condition, rows)
+                curves += _condition_curves(looks, condition, rows, assessment.barred)
     return tuple(curves)
 
 
@@ -97,6 +100,7 @@ def _condition_curves(
     looks: list[tuple[DirectMachine, DirectModes]],
     condition: Condition,
     rows: dict[tuple[str, str, str, str], MarginRow],
+    barred: tuple[BarredBand, ...],
 ) -> list[ResponseCurve]:
     """Return the curves of a condition, at each speed the larger value of the readings of unknown damping."""
     machine = looks[0][0]
@@ -121,14 +125,16 @@ def _condition_curves(
         for sweep in sweeps:
             speed = np.unique(np.concatenate([_speeds(sweep, found, judged) for _, found in looks]))
             amplitude = np.max([amplitudes_at(each, pairs, sweep.sets, speed) for each, _ in looks], axis=0)
-            inside = (speed >= sweep.low) & (speed <= sweep.high)
+            bands = tuple(
+                (b.low, b.high) for b in barred if (b.condition, b.shaft) == (condition.name, sweep.source)
+            )
+            inside = _judged(speed, sweep.low, sweep.high, bands)
             for (allowable, place), row, value in zip(pairs, judged, amplitude, strict=True):
                 offset = float(allowable.offset(static, place)[0])
                 rest = 0.0
                 if sweep.added:
-                    rest = _rest(
-                        row.value - offset, float(value[inside].max()), allowable.statistic() == "rms"
-                    )
+                    own = float(value[inside].max())
+                    rest = _rest(row.value - offset, own, allowable.statistic() == "rms")
                     value = combine(value, np.full(len(speed), rest), allowable.statistic())
                 assert row.upper is not None
                 curves.append(
@@ -146,6 +152,7 @@ def _condition_curves(
                         sets=tuple(sweep.sets),
                         state=condition.state,
                         rest=rest,
+                        barred=bands,
                     )
                 )
     return curves
@@ -159,6 +166,17 @@ def _places(machine: DirectMachine) -> Places:
         tuple(b.name for b in brief.bodies),
         tuple(absorber.station.name for absorber in machine.absorbers),
     )
+
+
+def _judged(
+    speed: Floats, low: float, high: float, barred: tuple[tuple[float, float], ...]
+) -> NDArray[np.bool_]:
+    if not barred:
+        return (speed >= low) & (speed <= high)
+    inside = np.zeros(len(speed), dtype=bool)
+    for first, last in left_of(low, high, barred):
+        inside |= (speed >= first) & (speed <= last)
+    return inside
 
 
 def _rest(judged: float, own: float, is_rms: bool) -> float:

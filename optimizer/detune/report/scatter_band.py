@@ -25,7 +25,8 @@ INSIDE = 16
 
 @dataclass(frozen=True, eq=False)
 class Band:
-    """Least and greatest value (F,) at the speeds of a curve, over `points` points of the scatter, listed values included.
+    """Least and greatest value (F,) at the speeds of a curve, over `points` points of the scatter, listed
+    values included.
 
     What other sources add is taken as at listed values.
     """

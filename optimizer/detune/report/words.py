@@ -80,6 +80,8 @@ def value_text(row: MarginRow) -> str:
     """Return the value of a row, in the unit of its limit."""
     if row.kind == "separation":
         return separation_text(row.value)
+    if row.kind == "dwell-bands":
+        return speed_width_text(row.value)
     if row.reference is not None:
         return level_text(row.value, row)
     return _in_unit(row.value, row.unit, _unit_of_limit(row))
@@ -104,12 +106,19 @@ def reference_text(reference: float, kind: str) -> str:
     )
 
 
+def speed_width_text(width: float) -> str:
+    """Return a width of speed (Hz) in rev/min; without bound it is every speed."""
+    return "every speed" if math.isinf(width) else f"{number(60.0 * width)} rev/min"
+
+
 def limit_text(row: MarginRow) -> str:
     """Return the limit of a row: "at most", "at least", or a window."""
 
     def text(limit: float) -> str:
         if row.reference is not None:
             return level_text(limit, row)
+        if row.kind == "dwell-bands":
+            return speed_width_text(limit)
         return percent(limit) if row.kind == "separation" else _in_unit(limit, row.unit, _unit_of_limit(row))
 
     has_lower = row.lower is not None and not math.isnan(row.lower)

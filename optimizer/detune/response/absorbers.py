@@ -23,7 +23,6 @@ from numpy.typing import NDArray
 from detune.brief.allowable.separation import Separation
 from detune.brief.brief import Brief, applies, body_of
 from detune.brief.statement import unit_direction
-from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount
 from detune.physics.rigid_body import skew
 
@@ -99,6 +98,7 @@ def absorber_rows(
     candidates: tuple[tuple[Mount, ...], ...],
     unit_geometric: Sequence[Floats],
     top: float,
+    gravity: Floats,
 ) -> tuple[AbsorberRows, ...]:
     """Return what the absorbers of a brief add.
 
@@ -107,7 +107,6 @@ def absorber_rows(
     """
     found = []
     spare = 2.0 * math.pi * FAR * max(top, _highest_excitation(brief))
-    down = np.array([0.0, 0.0, -STANDARD_GRAVITY])
     for number, (place, geometric) in enumerate(zip(places, unit_geometric, strict=True)):
         group = len(brief.station_groups) + number
         parts = candidates[group]
@@ -116,7 +115,7 @@ def absorber_rows(
         m = np.array([part.moving_mass for part in parts])
         r = np.array([part.riding_mass for part in parts])
         empty = SPARE_MASS * np.array([float(part.pieces == 0) for part in parts])
-        turned = (-skew(place.along) @ frame.rotation_rows(place.body))[2]
+        turned = gravity @ -skew(place.along) @ frame.rotation_rows(place.body)
         sliding = np.outer(place.relative, turned)
         found.append(
             AbsorberRows(
@@ -126,9 +125,9 @@ def absorber_rows(
                 mass=_each(m, across.T @ across + corner)
                 + _each(r, place.rows.T @ place.rows)
                 + _each(empty, corner),
-                weight=np.outer(m, across.T @ down + place.own * (place.along @ down))
-                + np.outer(r, place.rows.T @ down),
-                geometric=_each(m + r, geometric) + _each(STANDARD_GRAVITY * m, sliding + sliding.T),
+                weight=np.outer(m, across.T @ gravity + place.own * (place.along @ gravity))
+                + np.outer(r, place.rows.T @ gravity),
+                geometric=_each(m + r, geometric) + _each(-m, sliding + sliding.T),
                 stiffness=_each(empty * spare**2, corner),
                 viscous=_each(2.0 * SPARE_DAMPING_RATIO * empty * spare, corner),
                 added=m + r,

@@ -12,8 +12,8 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
 from detune.brief.machine import Station
+from detune.brief.state import apparent_gravity
 from detune.brief.statement import unit_direction
-from detune.ground.units import STANDARD_GRAVITY
 from detune.parts.kinds.mount import Mount
 from detune.response.design import Design
 
@@ -21,7 +21,6 @@ if TYPE_CHECKING:
     from detune.response.direct import DirectMachine
 
 Floats = NDArray[np.float64]
-DOWN = np.array([0.0, 0.0, -STANDARD_GRAVITY])
 
 
 @dataclass(frozen=True, eq=False)
@@ -82,10 +81,10 @@ def absorber_mass(machine: "DirectMachine") -> Floats:
 
 def absorber_weight(machine: "DirectMachine") -> Floats:
     """Return the static load (N,) of all absorbers."""
-    total = np.zeros(machine.size)
+    total, down = np.zeros(machine.size), np.array(apparent_gravity(machine.state))
     for each in machine.absorbers:
-        total += machine.place(each.body, each.position).T @ (each.mount.riding_mass * DOWN)
-        total += each.moving(machine).T @ (each.mount.moving_mass * DOWN)
+        total += machine.place(each.body, each.position).T @ (each.mount.riding_mass * down)
+        total += each.moving(machine).T @ (each.mount.moving_mass * down)
     return total
 
 
@@ -94,7 +93,9 @@ def carried_weight(machine: "DirectMachine") -> Floats:
     total = machine.weight_alone - absorber_weight(machine)
     for each in machine.absorbers:
         whole = each.mount.riding_mass + each.mount.moving_mass
-        total = total + machine.place(each.body, each.position).T @ (whole * DOWN)
+        total = total + machine.place(each.body, each.position).T @ (
+            whole * np.array(apparent_gravity(machine.state))
+        )
     return total
 
 
@@ -104,11 +105,11 @@ def sliding_gravity(machine: "DirectMachine") -> Floats:
 
     The second derivative of -m g . (t x d) s.
     """
-    total = np.zeros((machine.size, machine.size))
+    total, down = np.zeros((machine.size, machine.size)), np.array(apparent_gravity(machine.state))
     for each in machine.absorbers:
         d = each.along
-        # (t x d) . DOWN = t . (d x DOWN)
-        turned = np.cross(d, each.mount.moving_mass * DOWN) @ machine.turn(each.body)
+        # (t x d) . g = t . (d x g)
+        turned = np.cross(d, each.mount.moving_mass * down) @ machine.turn(each.body)
         slid = d @ each.across(machine)
         total -= np.outer(slid, turned) + np.outer(turned, slid)
     return total

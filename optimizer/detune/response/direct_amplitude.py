@@ -247,7 +247,9 @@ def _over_speed(
             amplitude, closed = _approached(step, np.repeat(beside[:, None] + level, len(speed), axis=1))
             settled = settled and bool(np.all(closed))
             first = amplitude if first is None else first
-            several = several or bool(np.any(np.abs(amplitude - first) > APART * np.maximum(amplitude, first)))
+            several = several or bool(
+                np.any(np.abs(amplitude - first) > APART * np.maximum(amplitude, first))
+            )
             best = np.maximum(best, amplitudes_at(machine.at_amplitude(amplitude), pairs, sets, speed))
         return best
 

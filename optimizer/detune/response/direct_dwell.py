@@ -1,7 +1,8 @@
 """The assessor's speeds not to dwell at: for one design, where any limit of a condition is exceeded.
 
-Found apart from `dwell.py`: the range is halved until the response is straight between neighbours, edges are roots by
-Brent's method, and the limits are judged once more, by the assessor's own supremum, over what is left.
+Found apart from `dwell.py`: the range is halved until the response is straight between neighbours, edges are
+roots by Brent's method, and the limits are judged once more, by the assessor's own supremum, over what is
+left.
 """
 
 from collections.abc import Callable, Sequence
@@ -36,8 +37,8 @@ from detune.response.direct_views import DirectStatic
 Floats = NDArray[np.float64]
 TWO_PI = 2.0 * np.pi
 BACKGROUND = 129
-# Between two samples nothing is looked for where both and the middle stay below this share of the limit, or the
-# middle lies on the chord to this share of it.
+# Between two samples nothing is looked for where both and the middle stay below this share of the limit, or
+# the middle lies on the chord to this share of it.
 FAR_BELOW, STRAIGHT = 0.5, 0.02
 FINEST = 1e-9
 # Edges move out by this share of the speed until the limits hold there.

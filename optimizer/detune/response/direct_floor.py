@@ -1,7 +1,8 @@
 """The assessor's floor ratio: the machine bolted down by Lagrange multipliers on its full matrices.
 
-[D C^T; C 0] [q; l] = [f; 0] with C the independent rows of all stations' deflections: no basis is chosen and no
-matrix is reduced, unlike in `floor_ratio.py`. What stands at the stations does not matter, for it is not deflected.
+[D C^T; C 0] [q; l] = [f; 0] with C the independent rows of all stations' deflections: no basis is chosen and
+no matrix is reduced, unlike in `floor_ratio.py`. What stands at the stations does not matter, for it is not
+deflected.
 """
 
 from dataclasses import replace
@@ -73,7 +74,8 @@ def direct_floor_ratio(machine: DirectMachine, omega: Floats, load: Complexes, q
 def between_stations(machine: DirectMachine, omega: Floats, q: Complexes, surface: str) -> Complexes:
     """Return what a floor known between stations receives, or passes on to the ground, (F, 3) in its own directions.
 
-    By its matrices as stated: (K (1 + j eta) - w^2 M) u summed over the stations, for the ground without the mass.
+    By its matrices as stated: (K (1 + j eta) - w^2 M) u summed over the stations, for the ground without the
+    mass.
     """
     elastic = machine.elastic
     if not isinstance(elastic, FloorStructure):
@@ -100,7 +102,8 @@ def beside_reference(
 ) -> DirectModes:
     """Return the modes with places added, as poles, at which the bolted floor is nearly at rest.
 
-    There a floor ratio may peak; they are looked for by sampling the bolted machine densely over the excitation.
+    There a floor ratio may peak; they are looked for by sampling the bolted machine densely over the
+    excitation.
     """
     if not isinstance(allowable, FloorRatio):
         return found

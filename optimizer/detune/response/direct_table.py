@@ -17,8 +17,8 @@ WIDTHS = (1e-5, 1e-3, 2e-2)
 def with_resonances(machine: DirectMachine, poles: Complexes) -> Complexes:
     """Return poles (rad/s) with the resonances on a tabulated floor added, of which there may be more than freedoms.
 
-    A resonance is where an eigenvalue of Re D(w) changes its sign; their number below zero is counted on a grid finer
-    than the table, and every change is closed in on.
+    A resonance is where an eigenvalue of Re D(w) changes its sign; their number below zero is counted on a
+    grid finer than the table, and every change is closed in on.
     """
     if machine.floor is None or machine.floor.table is None:
         return poles

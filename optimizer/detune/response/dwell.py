@@ -1,7 +1,7 @@
 """Speeds not to dwell at, for one design of a batch at a time: where any limit of a condition is exceeded.
 
-The limits are those on the response under the condition's tones, of which one shaft's speed is moved and all others
-stand at their worst, and the separation of every natural frequency from every order of that shaft.
+The limits are those on the response under the condition's tones, of which one shaft's speed is moved and all
+others stand at their worst, and the separation of every natural frequency from every order of that shaft.
 """
 
 from dataclasses import replace

@@ -1,8 +1,8 @@
 """The machine bolted down on its floor, as the reference of the floor ratio, for a batch of designs.
 
-Every part is replaced by a rigid link: with C the deflections of all stations, C q = 0, and q = N p with N a basis of
-the null space of C. What is left is N^T D N p = N^T f (any text on constrained structures), in which no part stands,
-so that it depends on the ballast step alone.
+Every part is replaced by a rigid link: with C the deflections of all stations, C q = 0, and q = N p with N a
+basis of the null space of C. What is left is N^T D N p = N^T f (any text on constrained structures), in which
+no part stands, so that it depends on the ballast step alone.
 """
 
 from dataclasses import dataclass
@@ -97,8 +97,9 @@ def floor_ratio(model: Model, step: Integers, omega: Floats, load: Complexes, q:
 def reference_zeros(model: Model, vector: Complexes) -> Complexes:
     """Return frequencies (B, m) in rad/s, as poles are written, at which the bolted floor hardly moves.
 
-    There the ratio may peak. They are the finite zeros of the transfer from the load `vector` (n,) to each foot:
-    generalised eigenvalues of the system pencil bordered by load and output (Rosenbrock). Unused ones are far away.
+    There the ratio may peak. They are the finite zeros of the transfer from the load `vector` (n,) to each
+    foot: generalised eigenvalues of the system pencil bordered by load and output (Rosenbrock). Unused ones
+    are far away.
     """
     from scipy.linalg import eig
 

@@ -34,8 +34,8 @@ def table_places(table: FloorTable) -> Complexes:
 def table_resonances(dynamic: Dynamic, table: FloorTable) -> Complexes:
     """Return the resonances (D, m) of designs as poles in rad/s; unused ones lie far off.
 
-    A resonance is where an eigenvalue of Re D(w) changes its sign. Its half width is v^T Im D v over the slope of that
-    eigenvalue.
+    A resonance is where an eigenvalue of Re D(w) changes its sign. Its half width is v^T Im D v over the
+    slope of that eigenvalue.
     """
     rows = table.frequency
     count = min(MOST, FINER * (len(rows) - 1) + 1)

@@ -14,8 +14,8 @@ TWO_PI = 2.0 * np.pi
 def beyond_spring(table: FloorTable, mass: float, stiffness: float, omega: Floats) -> Complexes:
     """Return D(w) - (k - w^2 m) at omega of any shape in rad/s, D being straight between the rows of the table.
 
-    Outside the table, where nothing is judged and only the search for modes looks, it falls to zero towards rest and
-    stays as it is above.
+    Outside the table, where nothing is judged and only the search for modes looks, it falls to zero towards
+    rest and stays as it is above.
     """
     frequency = omega / TWO_PI
     low, high = table.frequency[0], table.frequency[-1]

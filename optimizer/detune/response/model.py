@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.brief import Brief, body_of
-from detune.brief.floor import floor_freedom
+from detune.brief.floor import FloorFreedom, floor_freedom
 from detune.brief.floor_files import FloorTable
 from detune.brief.floor_matrix import FloorStructure, elastic_of, foot_of
 from detune.brief.machine import Connection, Station
@@ -107,38 +107,11 @@ def build_model(
     steps it may take; None those that the brief states itself.
     """
     properties = {body.name: mass_properties(body) for body in brief.bodies}
-    floor = floor_freedom(brief.floor)
-    names: list[tuple[str, str]] = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
-    names += absorber_freedoms(brief)
-    structure = elastic_of(brief)
-    nodes = (
-        {} if structure is None else {node.name: structure.shape_rows(node.name) for node in structure.nodes}
-    )
-    if structure is not None:
-        names += [(STRUCTURE, f"mode {i + 1}") for i in range(len(structure.modes.frequency))]
-    if floor is not None:
-        names.append((FLOOR, "z"))
-    references = {name: p.centre for name, p in properties.items()}
-    frame = Frame(tuple(names), references, floor is not None, nodes)
+    floor, structure = floor_freedom(brief.floor), elastic_of(brief)
+    frame = _frame(brief, properties, floor, structure)
     stations = tuple(_station(brief, frame, station, state) for station in brief.stations)
     connections = tuple(_connection(brief, frame, connection) for connection in brief.connections)
-    n = frame.count
-    fixed = {name: np.zeros((n, n)) for name in ("static", "dynamic", "hysteretic", "viscous")}
-    for c in connections:
-        fixed["static"] += c.rows.T @ (c.stiffness_static[:, None] * c.rows)
-        fixed["dynamic"] += c.rows.T @ (c.stiffness[:, None] * c.rows)
-        fixed["hysteretic"] += c.rows.T @ (c.hysteretic[:, None] * c.rows)
-        fixed["viscous"] += c.rows.T @ (c.viscous[:, None] * c.rows)
-    base_mass = np.zeros((n, n))
-    for body in brief.bodies:
-        base_mass += _body_mass(frame, body.name, properties[body.name])
-    if floor is not None:
-        base_mass[-1, -1] += floor.mass
-        fixed["static"][-1, -1] += floor.stiffness
-        fixed["dynamic"][-1, -1] += floor.stiffness
-        fixed["viscous"][-1, -1] += floor.damping
-    if structure is not None:
-        _add_structure(frame, structure, base_mass, fixed)
+    base_mass, fixed = _given(brief, frame, properties, connections, floor, structure)
     steps = ladder(brief) if ballast is None else ballast
     gravity = np.array(apparent_gravity(state))
     mass, weight = with_ballast(brief, frame, base_mass, properties, steps, gravity)
@@ -150,29 +123,14 @@ def build_model(
     )
     temperature = ROOM_TEMPERATURE if state is None else state.temperature
     groups = tuple(
-        _group(name, mounts, reading, _spread(stations, index, n), temperature)
+        _group(name, mounts, reading, _spread(stations, index, frame.count), temperature)
         for index, (name, mounts) in enumerate(zip(brief.groups, candidates, strict=True))
     )
-    absorbers = (
-        ()
-        if not places
-        else absorber_rows(
-            brief,
-            frame,
-            places,
-            candidates,
-            [unit_geometric(brief, springs, place.body, place.position) for place in places],
-            top_of(frame, base_mass, fixed["dynamic"], groups, places),
-        )
-    )
-    notes = [note for p in properties.values() for note in p.assumed]
-    notes += list(floor.assumed) if floor is not None else []
-    notes += list(structure.assumed) if isinstance(structure, FloorStructure) else []
-    notes += [
-        f"{c.name}: static stiffness taken equal to the dynamic one"
-        for c in brief.connections
-        if c.stiffness_static is None
-    ]
+    absorbers: tuple[AbsorberRows, ...] = ()
+    if places:
+        units = [unit_geometric(brief, springs, place.body, place.position, gravity) for place in places]
+        top = top_of(frame, base_mass, fixed["dynamic"], groups, places)
+        absorbers = absorber_rows(brief, frame, places, candidates, units, top, gravity)
     return Model(
         frame=frame,
         mass=mass,
@@ -193,12 +151,78 @@ def build_model(
         creep=0.0 if state is None else state.creep,
         geometric=geometric_stiffness_of(brief, springs, properties, steps, weight, gravity),
         with_gravity_stiffness=brief.gravity_stiffness,
-        assumed=tuple(notes),
+        assumed=_assumed(brief, properties, floor, structure),
         ballast=steps,
         absorbers=absorbers,
         floor_table=None if floor is None else floor.table,
         ground=_ground_rows(frame, structure),
     )
+
+
+def _frame(
+    brief: Brief,
+    properties: dict[str, MassProperties],
+    floor: FloorFreedom | None,
+    structure: Structure | FloorStructure | None,
+) -> Frame:
+    """Return the freedoms: of the bodies, the absorbers, a structure and the floor, in this order."""
+    names: list[tuple[str, str]] = [(body.name, freedom) for body in brief.bodies for freedom in body.free]
+    names += absorber_freedoms(brief)
+    nodes = (
+        {} if structure is None else {node.name: structure.shape_rows(node.name) for node in structure.nodes}
+    )
+    if structure is not None:
+        names += [(STRUCTURE, f"mode {i + 1}") for i in range(len(structure.modes.frequency))]
+    if floor is not None:
+        names.append((FLOOR, "z"))
+    references = {name: p.centre for name, p in properties.items()}
+    return Frame(tuple(names), references, floor is not None, nodes)
+
+
+def _given(
+    brief: Brief,
+    frame: Frame,
+    properties: dict[str, MassProperties],
+    connections: tuple[ConnectionRows, ...],
+    floor: FloorFreedom | None,
+    structure: Structure | FloorStructure | None,
+) -> tuple[Floats, dict[str, Floats]]:
+    """Return what no design changes: the mass (n, n), and static, dynamic, hysteretic and viscous stiffness."""
+    n = frame.count
+    fixed = {name: np.zeros((n, n)) for name in ("static", "dynamic", "hysteretic", "viscous")}
+    for c in connections:
+        fixed["static"] += c.rows.T @ (c.stiffness_static[:, None] * c.rows)
+        fixed["dynamic"] += c.rows.T @ (c.stiffness[:, None] * c.rows)
+        fixed["hysteretic"] += c.rows.T @ (c.hysteretic[:, None] * c.rows)
+        fixed["viscous"] += c.rows.T @ (c.viscous[:, None] * c.rows)
+    base_mass = np.zeros((n, n))
+    for body in brief.bodies:
+        base_mass += _body_mass(frame, body.name, properties[body.name])
+    if floor is not None:
+        base_mass[-1, -1] += floor.mass
+        fixed["static"][-1, -1] += floor.stiffness
+        fixed["dynamic"][-1, -1] += floor.stiffness
+        fixed["viscous"][-1, -1] += floor.damping
+    if structure is not None:
+        _add_structure(frame, structure, base_mass, fixed)
+    return base_mass, fixed
+
+
+def _assumed(
+    brief: Brief,
+    properties: dict[str, MassProperties],
+    floor: FloorFreedom | None,
+    structure: Structure | FloorStructure | None,
+) -> tuple[str, ...]:
+    notes = [note for p in properties.values() for note in p.assumed]
+    notes += list(floor.assumed) if floor is not None else []
+    notes += list(structure.assumed) if isinstance(structure, FloorStructure) else []
+    notes += [
+        f"{c.name}: static stiffness taken equal to the dynamic one"
+        for c in brief.connections
+        if c.stiffness_static is None
+    ]
+    return tuple(notes)
 
 
 def _add_structure(

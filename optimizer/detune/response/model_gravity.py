@@ -8,7 +8,6 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief, body_of
 from detune.brief.mass_properties import MassProperties
-from detune.ground.units import STANDARD_GRAVITY
 from detune.response.ballast import BallastStep
 from detune.response.gravity import gravity_stiffness
 
@@ -106,9 +105,11 @@ def geometric_stiffness_of(
     return springs.geometric(tuple(body.name for body in brief.bodies), weight, dead)
 
 
-def unit_geometric(brief: Brief, springs: EqualSprings, body: str, position: Floats) -> Floats:
-    """Return the geometric stiffness (n, n) of one kilogram at a place on a body."""
-    down = np.array([[0.0, 0.0, -STANDARD_GRAVITY]])
+def unit_geometric(
+    brief: Brief, springs: EqualSprings, body: str, position: Floats, gravity: Floats
+) -> Floats:
+    """Return the geometric stiffness (n, n) of one kilogram at a place on a body, gravity (3,) in m/s^2."""
+    down = gravity[None]
     weight = down @ springs.frame.motion_rows(body, position)
     dead: Dead = {body: [(position - springs.frame.references[body], down)]}
     return np.asarray(springs.geometric(tuple(each.name for each in brief.bodies), weight, dead)[0])

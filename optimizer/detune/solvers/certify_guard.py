@@ -1,7 +1,8 @@
-"""The assessor's second look at what the bounds guarantee: at listed values and with everything at its lowest.
+"""The assessor's second look at what the bounds guarantee: at listed values and with everything at its
+lowest.
 
-Bounds and assessor build the machine apart. A guarantee that the assessor contradicts at a point of the scatter is
-worth nothing: its row becomes undecided and says so.
+Bounds and assessor build the machine apart. A guarantee that the assessor contradicts at a point of the
+scatter is worth nothing: its row becomes undecided and says so.
 """
 
 from dataclasses import replace
@@ -14,7 +15,8 @@ from detune.solvers.perturbed import perturbed
 from detune.solvers.verdict import RowVerdict
 
 AGREES = 1e-3
-"""How much worse than guaranteed the assessor's value may be: its suprema and variances are good to 1e-3 and 1e-4."""
+"""How much worse than guaranteed the assessor's value may be: its suprema and variances are good to 1e-3 and
+1e-4."""
 
 
 def second_look(made: DesignRows, rows: list[RowVerdict]) -> list[RowVerdict]:

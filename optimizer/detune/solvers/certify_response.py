@@ -1,4 +1,5 @@
-"""One group of response rows on its way to a decision: tones of every shaft, noise, and static parts together."""
+"""One group of response rows on its way to a decision: tones of every shaft, noise, and static parts
+together."""
 
 from collections.abc import Callable
 
@@ -16,12 +17,14 @@ from detune.solvers.verdict import NoiseProof, Proof, ResponseProof, StaticProof
 Floats = NDArray[np.float64]
 SPARE = 0.005
 NOISE_BOXES = 5
-"""A noise takes this many times as many boxes as a family of tones, since frequency alone takes about a hundred."""
+"""A noise takes this many times as many boxes as a family of tones, since frequency alone takes about a
+hundred."""
 Part = Sampler | NoiseSampler
 
 
 def claimed(decision: StaticRowsDecision, row: int) -> tuple[float, float]:
-    """The enclosure that is claimed of a static row: the one proven, half a per cent wider, so that it can be re-checked."""
+    """The enclosure that is claimed of a static row: the one proven, half a per cent wider, so that it can be
+    re-checked."""
     low, high = decision.bound_low[row], decision.bound_high[row]
     spare = SPARE * max(abs(low), abs(high))
     return low - spare, high + spare
@@ -79,9 +82,10 @@ class Response:
         every = np.stack([found.best for found in free])
         together = self._together(every)
         for number, found in enumerate(free):
-            share = found.best * np.where(together > 0.0, room / np.maximum(together, 1e-300), 1.0)
+            with np.errstate(invalid="ignore"):
+                share = found.best * np.where(together > 0.0, room / np.maximum(together, 1e-300), 1.0)
             # A row that a part does not move keeps a hair of the limit.
-            share = np.maximum(share, 1e-9 * room)
+            share = np.maximum(np.where(np.isfinite(share), share, room), 1e-9 * room)
             self.samples.append(self._limited(found, share, number))
 
     @property

@@ -256,23 +256,44 @@ def response_rows(
     largest = ratio.max(axis=1)
     wanted = largest >= (0.0 if whole else FAR * min(1.0, float(largest.max(initial=0.0))))
     slopes = mixed_slopes(plan, mixed, at, each, noise, wanted, unknowns)
-    rows = []
-    for index, requirement in enumerate(plan.requirements):
-        size, by = mixed.value[index] + shift[index], slopes[index] + by_shift[index]
-        seen = mixed.value[index] > 0.0
-        seen[0] = True
-        if isinstance(requirement.allowable, Uplift):
-            told = _uplifted(size, by, static[count + index], by_static[count + index], reference)
-        else:
-            by = by / bounds[index]
-            told = (*smooth(ratio[index], by), *logged(np.maximum(ratio[index], 0.0), by))
-        g, dg, log, dlog = told
-        if not wanted[index]:
-            dg, dlog = np.zeros_like(dg), np.zeros_like(dlog)
-        g, log = np.where(seen, g, NOTHING), np.where(seen, log, LEAST_LOG)
-        dg, dlog = np.where(seen[:, None], dg, 0.0), np.where(seen[:, None], dlog, 0.0)
-        rows.append(Rows(g, dg, (requirement,) * len(g), log, dlog, mixed.omega[index]))
-    return together(rows, unknowns)
+    size, by = mixed.value + shift[:, None], slopes + by_shift[:, None]
+    seen = mixed.value > 0.0
+    seen[:, 0] = True
+    g, dg, log, dlog = _smoothed(plan, size, by, bounds, static[count:], by_static[count:], reference)
+    followed = seen & wanted[:, None]
+    slots = size.shape[1]
+    return Rows(
+        np.where(seen, g, NOTHING).ravel(),
+        np.where(followed[..., None], dg, 0.0).reshape(-1, unknowns),
+        tuple(requirement for requirement in plan.requirements for _ in range(slots)),
+        np.where(seen, log, LEAST_LOG).ravel(),
+        np.where(followed[..., None], dlog, 0.0).reshape(-1, unknowns),
+        mixed.omega.ravel(),
+    )
+
+
+def _smoothed(
+    plan: ResponsePlan,
+    size: Floats,
+    by: Floats,
+    bounds: Floats,
+    held: Floats,
+    by_held: Floats,
+    reference: float,
+) -> tuple[Floats, Floats, Floats, Floats]:
+    """Rows and logs (R, slots) with their slopes (R, slots, u); of uplift against the static force `held` (R,) in N."""
+    shape, unknowns = size.shape, by.shape[2]
+    lifts = np.array([isinstance(r.allowable, Uplift) for r in plan.requirements])
+    ratio, by_ratio = size / bounds[:, None], by / bounds[:, None, None]
+    carried = lifts & (held > 1e-3 * reference)
+    moving = (size / bounds[:, None] ** 2)[..., None] * by_held[:, None]
+    by_ratio = by_ratio - np.where(carried[:, None, None], moving, 0.0)
+    log, dlog = logged(np.maximum(ratio, 0.0).ravel(), by_ratio.reshape(-1, unknowns))
+    g, dg = smooth(ratio.ravel(), by_ratio.reshape(-1, unknowns))
+    g, dg = g.reshape(shape), dg.reshape(by.shape)
+    g = np.where(lifts[:, None], (held[:, None] - size) / reference, g)
+    dg = np.where(lifts[:, None, None], (by_held[:, None] - by) / reference, dg)
+    return g, dg, log.reshape(shape), dlog.reshape(by.shape)
 
 
 def _bounds(plan: ResponsePlan, found: Rest, held: Floats, reference: float) -> Floats:
@@ -284,14 +305,3 @@ def _bounds(plan: ResponsePlan, found: Rest, held: Floats, reference: float) -> 
             assert isinstance(allowable, HarmonicAllowable)
             bounds[index] = float(allowable.bound(found.view, requirement.place)[0])
     return bounds
-
-
-def _uplifted(
-    size: Floats, by: Floats, held: float, by_held: Floats, reference: float
-) -> tuple[Floats, Floats, Floats, Floats]:
-    """Rows of a dynamic force (m,) against the static one `held` (N)."""
-    g, dg = (held - size) / reference, (by_held - by) / reference
-    floor = max(held, 1e-3 * reference)
-    counts = held > 1e-3 * reference
-    by_ratio = by / floor - (size / floor**2)[:, None] * by_held * counts
-    return g, dg, *logged(size / floor, by_ratio)

@@ -12,7 +12,7 @@ from typing import Literal
 import numpy as np
 
 from detune.problem.build import Problem
-from detune.proof.robust_search import designs_between
+from detune.proof.designs_between import designs_between
 from detune.proof.search import SearchSettings
 from detune.response.designs import Designs
 from detune.solvers import bounded
@@ -26,6 +26,9 @@ from detune.solvers.yields import Yield, design_yield
 
 Numbers = tuple[tuple[int, ...], int]
 FIRST_STEP = 0.05
+RETRIED = 3
+MORE_BOXES = 5
+"""How many undecided designs get a second look, the cheapest first, and with how many times as many boxes."""
 
 
 @dataclass(frozen=True)
@@ -137,6 +140,7 @@ class _Certifying:
                 winner = verdict
                 break
             found[verdict.status].append(verdict)
+        winner = self._second_look(found, winner)
         if self.halt() and winner is None and outcome.stopped != "finished":
             bound = None
         judged: list[DesignVerdict | None] = []
@@ -157,6 +161,33 @@ class _Certifying:
             yields=(),
             seconds=time.perf_counter() - self.started,
         )
+
+    def _second_look(
+        self, found: dict[str, list[DesignVerdict]], winner: DesignVerdict | None
+    ) -> DesignVerdict | None:
+        """Look at the cheapest undecided designs with more boxes; the winner, which may be a cheaper one then."""
+        for verdict in sorted(found["undecided"], key=lambda v: v.cost)[:RETRIED]:
+            if self.halt():
+                break
+            numbers = (verdict.part, verdict.step)
+            again = certify(
+                self.problem,
+                np.array(verdict.part, dtype=np.intp),
+                verdict.step,
+                max_boxes=MORE_BOXES * self.max_boxes,
+                interrupted=self.halt,
+            )
+            if self.stopped != "finished" and again.status == "undecided":
+                break
+            self.known[numbers] = again
+            found["undecided"].remove(verdict)
+            if again.status == "proven":
+                for status, verdicts in found.items():
+                    # What was looked at after it costs as much or more.
+                    found[status] = [v for v in verdicts if v.cost < again.cost]
+                return again
+            found[again.status].append(again)
+        return winner
 
     def yields(self, front: list[Numbers], outcome: Outcome) -> RobustResult:
         """Estimate the yield of every front point."""

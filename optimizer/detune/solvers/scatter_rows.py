@@ -74,6 +74,11 @@ class UnitView:
             out[0, -3:] = -self._prescribed @ found.axes
         return out
 
+    def __getattr__(self, name: str) -> object:
+        if name.startswith("_"):
+            raise AttributeError(name)
+        raise NotBounded(f"the bounds do not know its {name.replace('_', ' ')}")
+
     def station_force(self, station: str) -> Floats:
         out, found = self._empty(0), find_station(self.model, station)
         first = self.model.frame.count + 3 * self.model.stations.index(found)

@@ -12,6 +12,7 @@ from detune.sizing.made_parts import sizing_of
 from detune.solvers import size_many_starts
 from detune.solvers.size_batch import judge
 from detune.solvers.size_front import ORDER, FrontPoint, SizingFront, nondominated
+from detune.solvers.size_gradients import prepared
 from detune.solvers.size_front_bounds import with_bounds
 
 Floats = NDArray[np.float64]
@@ -26,9 +27,12 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
     minimised = next(name for name in ORDER if name in trade)
     held = tuple(name for name in trade if name != minimised)
     ends: list[Floats] = [best]
+    once = prepared(brief) if all(unknown.kind != "parallel" for unknown in sizing.unknown) else None
     for name in trade:
         sense = -1.0 if name == "separation" else 1.0
-        found = size_many_starts.solve(brief, name, sense, starts=STARTS, seed=sizing.seed, first=(best,))
+        found = size_many_starts.solve(
+            brief, name, sense, starts=STARTS, seed=sizing.seed, first=(best,), gradients=once
+        )
         if found.best is not None:
             ends.append(found.best.values)
     points = [_point(brief, values, "end") for values in ends]
@@ -40,7 +44,7 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
         near = min(points, key=lambda point: _misses(point, limits))
         found = size_many_starts.solve(
             brief, minimised, -1.0 if minimised == "separation" else 1.0, starts=1, seed=sizing.seed,
-            first=(near.values,), held=limits,
+            first=(near.values,), held=limits, gradients=once,
         )  # fmt: skip
         if found.best is not None:
             points.append(_point(brief, found.best.values, "local"))

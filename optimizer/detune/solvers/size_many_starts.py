@@ -262,18 +262,19 @@ def solve(
     iterations: int = 80,
     pool: int = 12,
     adjoint: bool = True,
+    gradients: Gradients | None = None,
     interrupted: Callable[[], bool] | None = None,
 ) -> ManyStarts:
     """Best of `starts` local searches; the starts are the least-violating share of `pool` times as many points.
 
     `first` are values (u,) to start from besides; `held` holds other objectives at levels (upper ones; separation
     lower). The points are drawn with `seed`: the same call gives the same answer. Without `adjoint` every slope is
-    differenced.
+    differenced. `gradients` saves preparing the same brief again.
     """
     functions = _Differenced(brief, goal, sense, held or {})
     # A whole number of parts has no slopes.
     if adjoint and all(u.kind != "parallel" or u.bounds[0] == u.bounds[1] for u in sizing_of(brief).unknown):
-        functions = _Adjoint(brief, goal, sense, held or {}, prepared(brief))
+        functions = _Adjoint(brief, goal, sense, held or {}, gradients or prepared(brief))
     drawn = start_points(functions.size, starts * pool, seed)
     judged = functions.at(drawn)
     order = np.argsort(-np.minimum(judged.margins, 0.0).sum(axis=0), kind="stable")

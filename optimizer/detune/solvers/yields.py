@@ -20,7 +20,7 @@ from detune.proof.scatter_data import LimitedRows, ScatterSystem, values_at
 from detune.proof.static_rows import static_values_at
 from detune.response.assess import assess
 from detune.solvers.certify_statics import StaticRow, modes_at, stability_worst
-from detune.solvers.design_rows import NOT_KNOWN, DesignRows, StaticGroup
+from detune.solvers.design_rows import NOT_KNOWN, DesignRows, ResponseGroup, StaticGroup
 from detune.solvers.perturbed import perturbed
 from detune.solvers.scatter_machine import ScatterMap
 
@@ -120,17 +120,7 @@ def design_yield(problem: Problem, part: NDArray[np.intp], step: int) -> Yield:
         assert isinstance(requirement.allowable, Separation)
         note(requirement.label, ~(least >= requirement.allowable.limit))
     for found in responses:
-        total = np.zeros((count, len(found.requirements)))
-        for limited in found.families(np.ones(len(found.requirements)), 1.0):
-            value = _suprema(found.system, limited, points)
-            value = value if found.largest else value * forcing[:, None]
-            both = np.where(limited.squares, np.hypot(total, value), total + value)
-            total = np.maximum(total, value) if found.largest else both
-        noise = found.noise(np.ones(len(found.requirements)), 1.0)
-        if noise is not None:
-            value = noise_values_at(found.system, noise, points) * forcing[:, None]
-            squares = np.array([row.squares for row in found.observed])
-            total = np.where(squares, np.hypot(total, value), total + value)
+        total = _response_values(found, points, forcing)
         adds, limit = rows.static_parts(found, points)
         for index, requirement in enumerate(found.requirements):
             note(requirement.label, ~(total[:, index] + adds[:, index] <= limit[:, index]))
@@ -155,6 +145,23 @@ def design_yield(problem: Problem, part: NDArray[np.intp], step: int) -> Yield:
     return Yield(
         met, count, low, high, scatter.confidence, scatter.distribution, tuple(ranked), bool(rows.unknown)
     )
+
+
+def _response_values(found: ResponseGroup, points: Floats, forcing: Floats) -> Floats:
+    """Values (N, R) of response rows at points (N, V), all families and the noise together."""
+    count, ones = len(points), np.ones(len(found.requirements))
+    total = np.zeros((count, len(ones)))
+    for limited in found.families(ones, 1.0):
+        value = _suprema(found.system, limited, points)
+        value = value if found.largest else value * forcing[:, None]
+        both = np.where(limited.squares, np.hypot(total, value), total + value)
+        total = np.maximum(total, value) if found.largest else both
+    noise = found.noise(ones, 1.0)
+    if noise is None:
+        return total
+    value = noise_values_at(found.system, noise, points) * forcing[:, None]
+    squares = np.array([row.squares for row in found.observed])
+    return np.asarray(np.where(squares, np.hypot(total, value), total + value))
 
 
 def _unstable(rows: DesignRows, group: StaticGroup) -> list[Requirement]:

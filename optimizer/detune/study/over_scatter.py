@@ -14,6 +14,8 @@ from detune.solvers.verdict import DesignVerdict
 from detune.solvers.yields import Yield, design_yield
 
 TIME_LIMIT = 60.0
+MOST_BOXES = 200_000
+"""A single design is worked at until the time is up rather than until the boxes are."""
 
 
 @dataclass(frozen=True)
@@ -41,8 +43,9 @@ def over_scatter(
 ) -> OverScatter | None:
     """Return what the scatter makes of a design, None where the study states none.
 
-    problem: of the study, as `build` makes it; the design may take any part. time_limit (s): for the proof of responses,
-    after which what is not decided stays undecided with its bracket. Raises BriefError where a tolerance is missing.
+    problem: of the study, as `build` makes it; the design may take any part. time_limit (s): for the proof of
+    responses, after which what is not decided stays undecided with its bracket. Raises BriefError where a
+    tolerance is missing.
     """
     scatter = problem.brief.scatter
     if scatter is None:
@@ -64,6 +67,6 @@ def over_scatter(
             return ended
 
         asked: Callable[[], bool] = interrupted
-        verdict = certify(own, part, 0, stop_at_violation=False, interrupted=asked)
+        verdict = certify(own, part, 0, max_boxes=MOST_BOXES, stop_at_violation=False, interrupted=asked)
     open_rows = any(row.status == "undecided" for row in verdict.rows)
     return OverScatter(verdict, None, ended and open_rows, time.perf_counter() - started)

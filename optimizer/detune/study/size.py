@@ -42,6 +42,7 @@ from detune.solvers.size_specification import (
     specify,
     why_no_specification,
 )
+from detune.solvers.size_whole import on_steps, step_of
 from detune.study.load import Study
 from detune.study.size_sense import check_sense, faults_of, one_axis_only
 
@@ -194,6 +195,8 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
         cautions += _at_ends(best, found.study)
         if drawings and sizing.trade:
             front = _front(replace(found, study=study), best)
+            if found.searches is not None and any(step_of(unknown) is not None for unknown in sizing.unknown):
+                cautions.append("the front takes ballast as continuous: its points need not stand on a step")
         if brief.choices:
             there = made_design(brief, best.values).brief
             real = build(there, study.catalogs)
@@ -265,9 +268,10 @@ def _front(found: SizingResult, best: SizedBest) -> SizingFront:
 
 def _searched(study: Study, first: tuple[Floats, ...]) -> ManyStarts:
     sizing = sizing_of(study.brief)
-    return size_many_starts.solve(
+    found = size_many_starts.solve(
         study.brief, sizing.goal, sizing.sense, starts=sizing.starts, seed=sizing.seed, first=first
     )
+    return on_steps(study.brief, found)
 
 
 def _convex(study: Study, problem: Problem) -> tuple[ConvexSizing, ...]:

@@ -11,10 +11,11 @@ from detune.brief.statement import Frequency, Name, Ratio, refuse
 class DwellBands(Allowable):
     """Upper limit on the total width of the bands of speed in which the machine may not dwell.
 
-    For each design the program finds the smallest union of bands of `shaft` outside which all limits on the response
-    in the condition hold, and the limit on separation with them; its total width is limited by `width` (in speed), or
-    by `share` of the shaft's range. `bands`: how many there may be at most; closer ones are then joined across the
-    narrowest gaps. The other limits of such a condition are judged over the speeds that are left.
+    For each design the program finds the smallest union of bands of `shaft` outside which all limits on the
+    response in the condition hold, and the limit on separation with them; its total width is limited by
+    `width` (in speed), or by `share` of the shaft's range. `bands`: how many there may be at most; closer
+    ones are then joined across the narrowest gaps. The other limits of such a condition are judged over the
+    speeds that are left.
     """
 
     title: ClassVar[str] = "speeds not to dwell at"
@@ -44,4 +45,4 @@ class DwellBands(Allowable):
         return self.width if self.width is not None else float(self.share or 0.0) * (high - low)
 
     def quantity(self) -> str:
-        return "width of the speeds not to dwell at"
+        return "total width of the barred bands"

@@ -13,12 +13,12 @@ from detune.brief.statement import AxisName, Direction, Frequency, Ratio, unit_d
 class FloorRatio(HarmonicAllowable):
     """Upper limit on the insertion ratio of the mounts, judged over every excitation interval of the condition.
 
-    The floor's motion with the machine on its mounts, over the floor's motion with the machine bolted down, for one
-    and the same unit harmonic force along `direction` at the first body's mass centre. Bolted down: at every station
-    of the study the part is replaced by a rigid link, so that the three deflections there are zero; masses, ballast,
-    given connections and floor stay as they are, whatever the design or the state. The floor's motion is that under
-    its stations; where they move differently, the root of the sum of their squares. Needs a floor that is not rigid.
-    `from_frequency` leaves out what lies below it.
+    The floor's motion with the machine on its mounts, over the floor's motion with the machine bolted down,
+    for one and the same unit harmonic force along `direction` at the first body's mass centre. Bolted down:
+    at every station of the study the part is replaced by a rigid link, so that the three deflections there
+    are zero; masses, ballast, given connections and floor stay as they are, whatever the design or the state.
+    The floor's motion is that under its stations; where they move differently, the root of the sum of their
+    squares. Needs a floor that is not rigid. `from_frequency` leaves out what lies below it.
     """
 
     title: ClassVar[str] = "floor ratio"
@@ -47,7 +47,8 @@ class FloorRatio(HarmonicAllowable):
         return self.from_frequency or 0.0
 
     def has_weighting(self) -> bool:
-        # The machine bolted down is a weighting by frequency, so nothing that is linear in the response bounds it.
+        # The machine bolted down is a weighting by frequency, so nothing that is linear in the response
+        # bounds it.
         return True
 
     def observed(self, view: ResponseView, place: str) -> Responses:

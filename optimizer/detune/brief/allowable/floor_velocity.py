@@ -13,7 +13,8 @@ from detune.brief.statement import Direction, Name, Velocity
 class FloorVelocity(HarmonicAllowable):
     """Vertical velocity of the floor's own freedom, its free motion included, upper limit. Needs a flexible floor.
 
-    `stations`: of a floor known between the stations (kind stiffness-matrix), the stations under which it is judged.
+    `stations`: of a floor known between the stations (kind stiffness-matrix), the stations under which it is
+    judged.
     """
 
     title: ClassVar[str] = "floor velocity"

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from detune.brief.dwell import left_of
 from detune.ground.units import convert
 from detune.report.plots.style import (
     BLACK,
@@ -42,7 +43,8 @@ class Panel:
     `speed` (F,) in Hz; `value` (F,), `limit` and `peak` in `unit`; judged from `low` to `high` Hz;
     `at` Hz is where the largest value inside is, `places` how many places were judged. With a stated scatter,
     `band_low` and `band_high` (F,) are the least and greatest value at sampled points of it, and `guaranteed` what is
-    proven not to be exceeded over all of it and the whole range, None where there is no such proof.
+    proven not to be exceeded over all of it and the whole range, None where there is no such proof. `barred`: bands
+    (Hz) in which the machine may not dwell.
     """
 
     title: str
@@ -62,6 +64,7 @@ class Panel:
     band_low: Floats | None = None
     band_high: Floats | None = None
     guaranteed: float | None = None
+    barred: tuple[tuple[float, float], ...] = ()
 
 
 @dataclass(frozen=True)
@@ -159,6 +162,7 @@ def _panel(curve: ResponseCurve, places: int, band: Band | None, guaranteed: flo
         band_low=None if band is None else band.low * scale,
         band_high=None if band is None else band.high * scale,
         guaranteed=None if guaranteed is None else shown(guaranteed),
+        barred=curve.barred,
     )
 
 
@@ -176,6 +180,8 @@ def caption(data: ResponseData) -> str:
             "points of it, not proven; the dash-dotted line is what is proven not to be exceeded over all of the scatter "
             "and the whole range. Where a proof stops as soon as the limit is decided, that line lies close to the limit."
         )
+    if any(panel.barred for panel in data.panels):
+        text += " Hatched are the bands of speed in which the machine may not dwell; they are not judged."
     if data.two_readings:
         text += " The list leaves open what kind some damping is: at each speed the larger of both readings is drawn."
     return (
@@ -217,7 +223,15 @@ def _draw_panel(ax: "Axes", panel: Panel) -> None:
         )
     ax.plot(panel.speed, panel.value, color=BLUE, linewidth=0.6, alpha=0.8, zorder=2)
     inside = (panel.speed >= panel.low) & (panel.speed <= panel.high)
-    ax.plot(panel.speed[inside], panel.value[inside], color=BLUE, linewidth=1.8, zorder=3)
+    for start, end in panel.barred:
+        ax.axvspan(start, end, facecolor="white", edgecolor="#BBBBBB", hatch="////", linewidth=0, zorder=0.5)
+    if panel.barred:
+        inside = np.zeros(len(panel.speed), dtype=bool)
+        for start, end in left_of(panel.low, panel.high, panel.barred):
+            inside |= (panel.speed >= start) & (panel.speed <= end)
+    # A line that is not drawn in a barred band, and not across it either.
+    heavy = np.where(inside, panel.value, np.nan)
+    ax.plot(panel.speed, heavy, color=BLUE, linewidth=1.8, zorder=3)
     ax.axhline(panel.limit, color=BLACK, linewidth=1.1, linestyle=(0, (5, 2)), zorder=4)
     if panel.passage:
         ax.hlines(
