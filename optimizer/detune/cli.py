@@ -212,7 +212,9 @@ def _compare(options: argparse.Namespace) -> int:
 
 
 def _code(assessments: "Sequence[Assessment]", judged: "Sequence[OverScatter | None]") -> int:
-    """0 one of the designs meets the brief (over its scatter, where that is an interval), 3 one is open, 1 none does."""
+    """0 one of the designs meets the brief (over its scatter, where that is an interval), 3 one is open, 1
+    none does.
+    """
     met = [each for a, each in zip(assessments, judged, strict=True) if a.meets]
     if any(each is None or each.verdict is None or each.proven for each in met):
         return MEETS

@@ -101,7 +101,10 @@ def test_what_is_no_level_is_refused_in_place(
 
 
 def test_other_limits_take_no_level(tmp_path: Path) -> None:
-    allowable = 'kind = "relative-motion"\nat = "pan"\nto = "floor"\ndirection = "z"\nmeasure = "rms"\nlimit = "90 dB"\n'
+    allowable = (
+        'kind = "relative-motion"\nat = "pan"\nto = "floor"\ndirection = "z"\nmeasure = "rms"\nlimit'
+        ' = "90 dB"\n'
+    )
     study = bad.BASE.replace("FORCING", bad.TONE).replace("ALLOWABLE", allowable)
     (tmp_path / "study.toml").write_text(study, encoding="utf-8")
     (fault,) = scan_brief(tmp_path / "study.toml").faults

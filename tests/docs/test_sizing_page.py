@@ -47,9 +47,9 @@ def test_hand_figures_of_the_page():
     """m g / sag = 180 * 9.80665 / 0.008 N/m is the static stiffness that the sag limit wants."""
     wanted = 180.0 * 9.80665 / 0.008 / 1e3
     assert wanted == pytest.approx(220.65, abs=0.005)
-    assert 4 * 66.195 / 1.2 == pytest.approx(wanted, rel=1e-4)
+    assert pytest.approx(wanted, rel=1e-4) == 4 * 66.195 / 1.2
     # Four parts at 8, 0.01 a N/mm, 30 a unit of loss factor.
-    assert 4 * (8 + 0.01 * 66.195 + 30 * 0.15021) == pytest.approx(52.673, abs=0.001)
+    assert pytest.approx(52.673, abs=0.001) == 4 * (8 + 0.01 * 66.195 + 30 * 0.15021)
     # Four parts of the skid at 30 and 0.05 a N/mm, two of them at 100 a unit of loss factor, all at their lower bounds.
-    assert 4 * (30 + 0.05 * 50) + 2 * 100 * 0.03 == pytest.approx(136.0)
-    assert 150.52 / 136.0 - 1.0 == pytest.approx(0.107, abs=0.0005)
+    assert pytest.approx(136.0) == 4 * (30 + 0.05 * 50) + 2 * 100 * 0.03
+    assert pytest.approx(0.107, abs=0.0005) == 150.52 / 136.0 - 1.0

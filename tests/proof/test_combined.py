@@ -1,4 +1,6 @@
-"""Bounds over scatter by lot and by part, mass terms and speed: never below a sample, decided in the right direction."""
+"""Bounds over scatter by lot and by part, mass terms and speed: never below a sample, decided in the right
+direction.
+"""
 
 import functools
 from dataclasses import replace
@@ -23,7 +25,9 @@ SEEDS = st.integers(0, 2**32 - 1)
 
 @functools.cache
 def machine(seed, loss=0.1):
-    """Six freedoms on four three-axis stations: two lots (0, 1), four parts (2..5), damping of a lot (6), a mass term (7)."""
+    """Six freedoms on four three-axis stations: two lots (0, 1), four parts (2..5), damping of a lot (6), a
+    mass term (7).
+    """
     random = np.random.default_rng(seed)
     mass = np.diag([500.0, 500.0, 500.0, 40.0, 50.0, 60.0])
     axes = []
@@ -121,6 +125,47 @@ def test_the_bound_errs_by_the_square_of_the_width(seed):
     assert (errors[1] < errors[0] / 2.0).all() and (errors[2] < errors[0] / 6.0).all()
 
 
+def test_a_resonance_narrower_than_any_grid_is_found_by_sampling():
+    """1 N on 10 kg and k = 4e5 N/m (+-5 %), loss factor 1e-4: at k = m w^2 it moves by 1/(0.95 k eta), by hand."""
+    one = np.ones((1, 1))
+    system = ScatterSystem(
+        mass=10.0 * one,
+        fixed_dynamic=0.0 * one,
+        fixed_hysteretic=0.0 * one,
+        fixed_viscous=0.0 * one,
+        axes=one,
+        stiffness=np.array([4e5]),
+        loss=np.array([4e1]),
+        viscous=np.zeros(1),
+        stiffness_factors=np.array([[0, -1]]),
+        damping_factors=np.array([[-1, -1]]),
+        mass_terms=np.zeros((0, 1, 1)),
+        mass_factors=np.zeros((0, 3), dtype=np.int64),
+        stiffness_terms=np.zeros((0, 1, 1)),
+        stiffness_term_factors=np.zeros((0, 3), dtype=np.int64),
+        low=np.array([0.95]),
+        high=np.array([1.05]),
+    )
+    force = LoadSet(2.0, np.zeros(1), one.astype(complex), 0j * one, np.zeros((1, 1, 3), complex))
+    limits = LimitedRows(
+        rows=np.array([[[1.0], [0.0], [0.0]]]),
+        forces=np.zeros((1, 3, 1)),
+        rate=np.zeros(1),
+        ellipse=np.array([True]),
+        factor=np.ones(1),
+        squares=np.array([False]),
+        limit=np.ones(1),
+        sets=(force,),
+        speed=(10.0, 20.0),
+    )
+    found = sampled(system, limits)
+    assert found.best[0] == pytest.approx(1.0 / (0.95 * 40.0), rel=1e-6)
+    assert np.sqrt(found.where[0, -1]) == pytest.approx(0.5 * np.sqrt(0.95 * 4e4), rel=1e-9)
+    undamped = replace(system, loss=np.zeros(1))
+    middle = np.array([[1.0, 1e4]])
+    assert values_at(undamped, limits, middle)[0, 0] > 1e6
+
+
 def away_from_resonance(seed):
     system, limits = machine(seed)
     return system, replace(limits, speed=(40.0, 55.0))
@@ -182,7 +227,9 @@ def test_never_below_ten_thousand_samples_and_a_local_search(seed):
 
 
 def beam(limit):
-    """1000 N midway on two springs of 1e5 N/m at +-1 m, each +-10 % by itself: loads 500 N, sag 5 mm / factor by hand."""
+    """1000 N midway on two springs of 1e5 N/m at +-1 m, each +-10 % by itself: loads 500 N, sag 5 mm /
+    factor by hand.
+    """
     rows = np.zeros((3, 3, 2))
     rows[0, 0], rows[1, 0], rows[2, :2] = [1.0, -1.0], [1.0, -1.0], np.array([[0.0, 1.0], [0.0, 0.0]])
     return StaticLimits(

@@ -11,7 +11,8 @@ from detune.report.folder import FolderExists, check_folder, write_folder
 from detune.report.strict_json import json_text, plain
 
 FILES = {
-    "study.toml", "inputs.json", "answer.json", "proof.json", "proof-record.json", "front.csv", "designs.csv", "responses.csv",
+    "study.toml", "inputs.json", "answer.json", "proof.json", "proof-record.json", "front.csv", "designs.csv",
+    "responses.csv",
     "margins.csv", "stations.csv", "modes.csv", "contributions.csv", "why.csv", "report.html", "plots",
 }  # fmt: skip
 

@@ -102,7 +102,8 @@ def machine_on(floor: Floor, *allowables: HarmonicAllowable | Sag, **changes: An
             "floor": floor,
             "forcing": (
                 HarmonicForce(
-                    name="hum", frequency=23.0, position=(0.2, 0.1, 0.4), force=(30.0, -20.0, 80.0), moment=(3.0, 0.0, 1.0)
+                    name="hum", frequency=23.0, position=(0.2, 0.1, 0.4), force=(30.0, -20.0, 80.0),
+                    moment=(3.0, 0.0, 1.0),
                 ),
             ),
             "allowables": (machines.far_limit(), *allowables),
@@ -164,7 +165,8 @@ class TestBetweenStations:
         centre = np.array([0.05, -0.03, HEIGHT])
         point = body[:3] + np.cross(body[3:], np.array([0.3, 0.2, 0.5]) - centre)
         level = [
-            np.array([K_SIDE, K_SIDE]) * (1 + 1j * ETA) * (body[:3] + np.cross(body[3:], np.array([x, y, 0.0]) - centre))[:2]
+            np.array([K_SIDE, K_SIDE]) * (1 + 1j * ETA)
+            * (body[:3] + np.cross(body[3:], np.array([x, y, 0.0]) - centre))[:2]
             for x, y in CORNERS.values()
         ]  # fmt: skip
         into = np.array([*np.sum(level, axis=0), (floor_at(frequency) @ feet).sum()])

@@ -121,7 +121,9 @@ def test_a_force_through_one_part_is_shared_by_their_number():
 
 
 def test_the_least_level_of_all_limits():
-    """Peak of a range holding the resonance at zeta = 0.1: 5.122774 (Rao 5e ch. 3, CHECKS S5), so half of it is level 2."""
+    """Peak of a range holding the resonance at zeta = 0.1: 5.122774 (Rao 5e ch. 3, CHECKS S5), so half of
+    it is level 2.
+    """
     k, m = 3e5, 40.0
     c = 0.2 * math.sqrt(k * m)
     limit = ResponseLimit("T", "transmissibility", 0.5 * 5.122774, 0.01, 1000.0)

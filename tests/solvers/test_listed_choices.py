@@ -1,4 +1,6 @@
-"""Absorbers, ballast and pads from lists on random machines: bounded search = enumeration, and more parts never cost more."""
+"""Absorbers, ballast and pads from lists on random machines: bounded search = enumeration, and more parts
+never cost more.
+"""
 
 from __future__ import annotations
 

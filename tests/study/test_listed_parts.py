@@ -76,7 +76,8 @@ name = "mounts"
 file = "mounts.csv"
 """
 MOUNTS = """\
-part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],loss_factor,load_min [N],load_max [N],pulls,tolerance [%],cost
+part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],loss_factor,load_min [N],load_max [N],\
+pulls,tolerance [%],cost
 elm-a,rubber,100,120,0.1,0,5000,yes,15,20
 elm-b,rubber,200,240,0.1,0,5000,yes,15,26
 elm-c,rubber,400,480,0.1,0,5000,yes,15,31
@@ -388,13 +389,16 @@ def test_the_cheapest_absorber_that_meets_is_chosen(tmp_path: Path) -> None:
 
 
 ADJUSTABLE = """\
-part,mass [kg],mass_fixed [kg],frequency [Hz],frequency_min [Hz],frequency_max [Hz],damping_ratio,stroke [mm],tolerance [%],cost
+part,mass [kg],mass_fixed [kg],frequency [Hz],frequency_min [Hz],frequency_max [Hz],damping_ratio,\
+stroke [mm],tolerance [%],cost
 pear-s,14,2,12,11,15.5,0.12,6,2,70
 """
 
 
 def test_an_absorber_that_can_be_set_is_tried_at_every_tuning_in_its_range(tmp_path: Path) -> None:
-    """pear-c at 15 Hz meets (see above); pear-s is the same with 12 Hz listed, and cheaper. 17 Hz is out of its range."""
+    """pear-c at 15 Hz meets (see above); pear-s is the same with 12 Hz listed, and cheaper. 17 Hz is out of
+    its range.
+    """
     study = ABSORBER_STUDY.replace("empty = true", 'tunings = ["12 Hz", "15 Hz", "17 Hz"]')
     result = run_it(written(tmp_path, study, absorbers=ADJUSTABLE))
     assert [mount.part for mount in result.problem.candidates[1]] == ["pear-s", "pear-s at 15 Hz"]

@@ -181,7 +181,9 @@ unbalance = "0.15 kg m"
 
 
 def test_w9_spring_for_a_twelfth(tmp_path):
-    """W9, McLean & Nelson Ex. 19-25: 20 lb at 600 rev/min, 1/12: k = 15.735 lb/in with g = 386 in/s2 (ours is 386.09)."""
+    """W9, McLean & Nelson Ex. 19-25: 20 lb at 600 rev/min, 1/12: k = 15.735 lb/in with g = 386 in/s2 (ours
+    is 386.09).
+    """
     branch = transmissibility_design(tmp_path, "20 lb", "600 rpm", 1.0 / 12.0)
     assert branch.values[0] / (4.4482216 / 0.0254) == pytest.approx(15.735 * 386.0 / 386.0886, rel=5e-5)
 

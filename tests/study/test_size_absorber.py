@@ -177,7 +177,9 @@ def test_t7_rms_under_white_noise(tmp_path):
 
 
 def test_rms_mount_deflection_under_white_base_acceleration(tmp_path):
-    """Warburton 1982, white base acceleration: f = sqrt(1 - mu/2)/(1 + mu), z2^2 = mu (1 - mu/4)/(4 (1 + mu)(1 - mu/2))."""
+    """Warburton 1982, white base acceleration: f = sqrt(1 - mu/2)/(1 + mu), z2^2 = mu (1 - mu/4)/(4 (1 +
+    mu)(1 - mu/2)).
+    """
     forcing = """
 [[forcing]]
 kind = "random-base-motion"
@@ -229,7 +231,9 @@ def test_closed_forms_stand_beside_the_answer_and_are_never_better(tmp_path):
 
 
 def test_detuning_by_the_stated_scatter(tmp_path):
-    """Springs +-8.15 % (5 % by lot, 3 % by part) and mass +-2 % put the tuning off by sqrt(.95 .97/1.02) - 1 = -4.95 %."""
+    """Springs +-8.15 % (5 % by lot, 3 % by part) and mass +-2 % put the tuning off by sqrt(.95 .97/1.02) -
+    1 = -4.95 %.
+    """
     text = briefs.tuned_absorber(UNIT, DISPLACEMENT)
     text += '[scatter]\njudge = "interval"\nstiffness = { lot = "5 %", part = "3 %" }\n'
     text += 'damping = { lot = "20 %" }\nmass = "2 %"\n'
@@ -264,9 +268,11 @@ def test_detuning_by_the_stated_scatter(tmp_path):
 
 BAD = {
     "crossed bounds": ('lower = "7.0 Hz"', 'lower = "14 Hz"', "crossed"),
-    "body not on the springs": ('body = "absorber"\nlower = 0.01', 'body = "machine"\nlower = 0.01', "stands on the parts"),
+    "body not on the springs": ('body = "absorber"\nlower ='
+                                ' 0.01', 'body = "machine"\nlower = 0.01', "stands on the parts"),
     "no such body": ('body = "absorber"\nlower = 0.01', 'body = "absorbr"\nlower = 0.01', "the name of a body"),
-    "two stiffnesses": ('[[sizing.made]]\ngroup = "spring"', '[[sizing.made]]\ngroup = "spring"\nstiffness = "5 N/mm"', "once"),
+    "two stiffnesses": ('[[sizing.made]]\ngroup = "spring"', '[[sizing.made]]\ngroup = "spring"\nstiffness ='
+                                                             ' "5 N/mm"', "once"),
     "mass known": ('minimise = "worst-response"', 'minimise = "absorber-mass"', "as stated the mass is known"),
     "no damping of it": ("lower = 0.01", "lower = 0", "above zero"),
 }  # fmt: skip

@@ -174,7 +174,9 @@ def test_no_restriction_is_told_as_no_proof(tmp_path):
 
 
 def test_the_stiff_side_holds_limits_as_well(tmp_path):
-    """One mass free in x, y and z far above its excitation: |X| <= F/(k - m w^2) at any damping, and by hand at none."""
+    """One mass free in x, y and z far above its excitation: |X| <= F/(k - m w^2) at any damping, and by
+    hand at none.
+    """
     text = SKID.replace('limit = "1.2 mm/s"', 'limit = "0.5 mm/s"').replace(
         'limit = "12 N"', 'limit = "1 MN"'
     )
@@ -243,7 +245,9 @@ def test_cone_of_a_loss_factor_agrees_with_the_exact_branch(tmp_path, seed):
 
 
 def test_no_real_design_of_a_side_is_cheaper_than_its_bound(tmp_path):
-    """Catalog weights in [0, 1] bound the cheapest of all designs with every mode on one side, gone through one by one."""
+    """Catalog weights in [0, 1] bound the cheapest of all designs with every mode on one side, gone through
+    one by one.
+    """
     (tmp_path / "study.toml").write_text(running.STUDY, encoding="utf-8")
     (tmp_path / "list.csv").write_text("\n".join([running.HEADER, *running.ROWS]) + "\n", encoding="utf-8")
     study = load_study(tmp_path / "study.toml")

@@ -399,7 +399,8 @@ def test_rows_are_the_margins_of_the_batch_evaluation(brief, gradients, point):
 def test_modes_that_coincide_share_the_slope_of_their_mean():
     """A cube on four equal corners: x and y of one frequency. One stiffness raised splits them; their mean is smooth.
 
-    For lateral x stiffness of half the feet, d(mean of w^2) = (d w_x^2 + 0)/2 by the uncoupled motion w_x^2 = sum k_x/m.
+    For lateral x stiffness of half the feet, d(mean of w^2) = (d w_x^2 + 0)/2 by the uncoupled motion w_x^2
+    = sum k_x/m.
     """
     from detune.solvers.gradient_modes import modes
 

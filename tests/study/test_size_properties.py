@@ -84,7 +84,9 @@ def scaled(text, share):
 
 @pytest.mark.parametrize("share", [0.01, 7.0])
 def test_masses_stiffnesses_and_forces_scale_together(tmp_path, share):
-    """Motions and force ratios depend on k/m and F/m alone: the stiffness found is a times as much, at the same cost."""
+    """Motions and force ratios depend on k/m and F/m alone: the stiffness found is a times as much, at the
+    same cost.
+    """
     plain = sized(brief_of(tmp_path, PAIR)).best
     other = sized(brief_of(tmp_path, scaled(PAIR, share))).best
     assert other.values[:2] == pytest.approx(share * plain.values[:2], rel=1e-5)
@@ -183,9 +185,11 @@ moment = ["0 N m", "0 N m", "0 N m"]
 
 
 def test_states_connections_and_steady_loads_have_slopes_too(tmp_path):
-    """A lost mount, packing, creep, stiffer parts, a pipe, a belt: rows as the batch says, slopes by central differences.
+    """A lost mount, packing, creep, stiffer parts, a pipe, a belt: rows as the batch says, slopes by
+    central differences.
 
-    Rows of responses are compared where both neighbours peak alike; their peaks are found anew at each, which differences see as noise.
+    Rows of responses are compared where both neighbours peak alike; their peaks are found anew at each,
+    which differences see as noise.
     """
     from detune.solvers import size_gradients
 
@@ -219,3 +223,40 @@ def test_states_connections_and_steady_loads_have_slopes_too(tmp_path):
         assert off[still].max() < 1e-5
         responses = ~still & (rows.log > -19.0)
         assert np.quantile(off[responses], 0.97) < 1e-3
+
+
+KNOCK = """
+[[condition]]
+name = "knock"
+steady = false
+[[forcing]]
+kind = "base-pulse"
+name = "knock"
+conditions = ["knock"]
+direction = "z"
+shape = "half-sine"
+duration = "11 ms"
+amplitude = "3 g"
+[[allowable]]
+kind = "acceleration"
+at = "top"
+conditions = ["knock"]
+direction = "z"
+measure = "peak"
+limit = "1.1 g"
+"""
+
+
+def test_a_shock_is_differenced_in_its_own_rows_and_the_result_says_so(tmp_path):
+    text = PAIR.replace('name = "rotor"\n', 'name = "rotor"\nconditions = ["running", "start-up"]\n')
+    brief = brief_of(tmp_path, text.replace("[sizing]", KNOCK + "[sizing]"))
+    found = size_many_starts.solve(brief, "cost", 1.0, starts=1, seed=2)
+    assert found.slopes_from == "adjoint" and found.slopes > 0
+    assert found.differenced == ("acceleration z, peak (knock)", "axial dynamic force against uplift (knock)")
+    assert found.best is not None
+    made = made_design(brief, found.best.values)
+    assessment = assess(made.brief, made.design)
+    assert assessment.meets
+    plain = size_many_starts.solve(brief, "cost", 1.0, starts=1, seed=2, adjoint=False)
+    assert plain.slopes_from == "finite differences" and plain.best is not None
+    assert found.best.objective <= plain.best.objective * (1.0 + 1e-4)

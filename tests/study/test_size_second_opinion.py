@@ -76,6 +76,26 @@ def test_steps_and_counts_agree_and_beat_every_design_of_a_grid(tmp_path):
     assert judged.objectives["cost"][judged.met].min() >= best.objective * (1 - 1e-9)
 
 
+def test_the_front_holds_the_number_of_parts_of_the_best(tmp_path):
+    """Each point meets the brief with the objectives it states, judged by the batch evaluation of the whole brief."""
+    text = whole_numbers(
+        goal="minimise = 'cost'\ntrade = ['cost', 'stiffness', 'worst-response']\nfront_points = 4"
+    )
+    path = tmp_path / "study.toml"
+    path.write_text(text.replace("[sizing]\n", "[sizing]\nspecification = false\n"), encoding="utf-8")
+    result = size_study(load_study(path))
+    best, front = result.answer, result.front
+    assert best is not None and front is not None and len(front.points) >= 3
+    points = np.array([point.values for point in front.points])
+    assert (points[:, 3] == best.values[3]).all()
+    judged = judge(result.study.brief, points)
+    assert (judged.margins >= -1e-6).all()
+    for name in front.trade:
+        told = np.array([point.objectives[name] for point in front.points])
+        assert judged.objectives[name] == pytest.approx(told, rel=1e-5)
+    assert min(point.objectives["cost"] for point in front.points) == pytest.approx(best.objective, rel=1e-4)
+
+
 def _stations(result: SizingResult):
     from detune.sizing.made_parts import made_design
 
@@ -114,7 +134,8 @@ def test_disjoint_branches_and_viscous_damping_agree(tmp_path):
     names = [branch.name for branch in result.branches]
     assert names == ["above the first excitation"]
     wide = asked(tmp_path, text.replace("200000.0 N/m", "1000.0 N/m").replace('force = ["0 N", "0 N", "100.0 N"]',
-                                                                               'force = ["0 N", "0 N", "10 N"]'))  # fmt: skip
+                                                                               'force = ["0 N", "0 N", "10'
+                                                                               ' N"]'))  # fmt: skip
     assert len(wide.branches) == 2
     assert wide.opinion is not None and wide.opinion.agrees
 
@@ -201,6 +222,11 @@ def test_refusals_name_what_and_where(tmp_path, capsys):
 
 
 BAD = {
+    "on a map": (
+        "minimise = 'cost'",
+        "minimise = 'cost'\nmap = ['parts in parallel of feet', 'ballast']",
+        "spans no map",
+    ),
     "not whole": ("lower = 1\nupper = 5", "lower = 1\nupper = 2.5", "whole numbers of parts"),
     "none": ("lower = 1\nupper = 5", "lower = 0\nupper = 5", "above zero"),
     "crossed": ("lower = 1\nupper = 5", "lower = 5\nupper = 1", "crossed"),

@@ -48,7 +48,8 @@ def one(**changes: Any) -> str:
 BOUNDS = {
     "one axis, crossed": (one(), 'lower = "10.0 N/m"', 'lower = "2 kN/mm"', "these are crossed"),
     "one axis, zero": (one(), 'lower = "10.0 N/m"', 'lower = "0 N/m"', "a lower bound above zero"),
-    "one axis, no end": (one(), 'upper = "100000.0 N/m"', "upper = inf", "a finite bound; without one the search has no end"),
+    "one axis, no end": (one(), 'upper = "100000.0 N/m"', "upper = inf", "a finite bound; without one the"
+                                                                         " search has no end"),
     "six axes, crossed": (SKID, "upper = 0.3\n", "upper = 0.01\n", "these are crossed"),
     "six axes, no end": (SKID, "upper = 0.3\n", "upper = inf\n", "a finite bound; without one the search has no end"),
     "six axes, a unit of another kind": (SKID, 'upper = "2000 N/mm"', 'upper = "2000 kg"', "stiffness"),
@@ -86,7 +87,9 @@ def test_one_axis_an_unknown_nothing_depends_on(tmp_path):
 
 
 def test_six_axes_an_unknown_nothing_depends_on(tmp_path):
-    """A cabinet on a rigid floor beside the machine: nothing shakes it and nothing limits it, so its damping is idle."""
+    """A cabinet on a rigid floor beside the machine: nothing shakes it and nothing limits it, so its
+    damping is idle.
+    """
     cabinet = '[[body]]\nname = "cabinet"\nmass = "60 kg"\ncentre = ["3 m","0 m","0.4 m"]\n'
     cabinet += 'inertia_box = ["0.5 m","0.5 m","0.8 m"]\n'
     for name, x, y in (("E", 2.8, -0.2), ("F", 2.8, 0.2), ("G", 3.2, -0.2), ("H", 3.2, 0.2)):

@@ -61,7 +61,8 @@ def read_matrices(
         raise refuse("stiffness_matrix", expected, at="stiffness_matrix")
     if m is None and least <= NONE:
         expected = (
-            '"mass_matrix" beside a stiffness matrix that leaves the floor a motion without stiffness, or a matrix that '
+            '"mass_matrix" beside a stiffness matrix that leaves the floor a motion without stiffness, or a'
+            " matrix that "
             "holds every motion"
         )
         raise refuse("stiffness_matrix", expected, at="stiffness_matrix")

@@ -36,7 +36,8 @@ def between_stations_checked(brief: Brief) -> list[Finding]:
     for index, forcing in enumerate(brief.forcing):
         if forcing.floor_direction() is not None:
             expected = (
-                "no motion of the floor beside a floor of kind stiffness-matrix: how the places under the stations move "
+                "no motion of the floor beside a floor of kind stiffness-matrix: how the places under the"
+                " stations move "
                 "is not stated"
             )
             findings.append(Finding(("forcing", index), forcing.name, expected, depends=("floor",)))
@@ -62,7 +63,8 @@ def _one_motion(path: Path, allowable: object) -> list[Finding]:
     if not of_floor and not (unit is not None and unit[0] == "base"):
         return []
     expected = (
-        'a limit on the machine, on forces, on the floor ratio, or on floor-velocity with its "stations": a floor of kind '
+        'a limit on the machine, on forces, on the floor ratio, or on floor-velocity with its "stations": a'
+        " floor of kind "
         "stiffness-matrix moves differently under every station"
     )
     return [Finding(path, kind, expected, depends=("floor",))]

@@ -60,7 +60,8 @@ class SizingUnknown(Statement):
     both lateral directions, "x" and "y" one of them. `loss-factor` and `viscous` are those of one part of the
     group. `ballast` is the added mass, in steps of `step` where one is stated. `absorber-mass` is the mass of the
     body; `absorber-tuning` its frequency on its own group's parts with the machine held, `absorber-damping` the
-    damping ratio there. `position`: the distance of the stations from the origin along `axis`, each on its own side. `parallel`: a
+    damping ratio there. `position`: the distance of the stations from the origin along `axis`, each on its
+    own side. `parallel`: a
     whole number of equal parts side by side at each station of the group, sought on one axis alone.
     """
 
@@ -245,6 +246,12 @@ class Sizing(Statement):
         for name in self.map:
             if name not in titles:
                 raise refuse(name, "an unknown: " + ", ".join(titles), at="map")
+        counted = [unknown.title for unknown in self.unknown if unknown.kind == "parallel"]
+        for name in self.map:
+            if name in counted:
+                raise refuse(
+                    name, "two unknowns that are continuous: a number of parts spans no map", at="map"
+                )
         if self.trade and (not 2 <= len(self.trade) <= 3 or len(set(self.trade)) != len(self.trade)):
             raise refuse(list(self.trade), "two or three different objectives", at="trade")
         for key in ("starts", "front_points"):

@@ -155,7 +155,10 @@ def _outside_tables(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Findi
                 findings.append(Finding(("choice", index), found, expected))
             for number, state in enumerate(brief.states):
                 if warm and not warm[0] <= state.temperature <= warm[-1]:
-                    found = f"{state.temperature:g} degC; the table of {mount.part} covers {warm[0]:g} to {warm[-1]:g} degC"
+                    found = (
+                        f"{state.temperature:g} degC; the table of {mount.part} covers {warm[0]:g} to"
+                        f" {warm[-1]:g} degC"
+                    )
                     findings.append(
                         Finding(("state", number, "temperature"), found, "a temperature inside it")
                     )

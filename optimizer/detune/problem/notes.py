@@ -31,7 +31,8 @@ def _pads(mounts: tuple[Mount, ...]) -> list[str]:
     if not cut:
         return []
     return [
-        f"stiffness of pads ({cut}) is estimated from the rubber and the shape factor, both faces held from sliding: good"
+        f"stiffness of pads ({cut}) is estimated from the rubber and the shape factor, both faces held from"
+        f" sliding: good"
         " for a first size, not for a proof"
     ]
 
@@ -72,7 +73,8 @@ def _guided(brief: Brief) -> list[str]:
         if other is not None and held:
             notes.append(
                 f"{own.name}: along {', '.join(held)} it is held by the ground and not by {other.name}, whose motion"
-                f" there the parts between them therefore resist; let it be free there if it goes along with {other.name}"
+                f" there the parts between them therefore resist; let it be free there if it goes along with"
+                f" {other.name}"
             )
     return list(dict.fromkeys(notes))
 

@@ -112,7 +112,8 @@ def taken_as_stated(entry: dict[str, Any]) -> list[str]:
         ]
     if kind == "rules":
         return [
-            f"that each of the {sum(int(rule['excluded']) for rule in data['rules'])} designs excluded at listed values "
+            f"that each of the {sum(int(rule['excluded']) for rule in data['rules'])} designs excluded at"
+            f" listed values "
             "fails the rule it is counted under (only the sums are checked)"
         ]
     if kind == "search" and data["designs"]:
@@ -121,7 +122,8 @@ def taken_as_stated(entry: dict[str, Any]) -> list[str]:
             []
             if known and data["design_count"] <= LARGEST_ENUMERATION
             else [
-                f"that no cheaper design exists among the {data['design_count']} of the search, beyond what was enumerated"
+                f"that no cheaper design exists among the {data['design_count']} of the search, beyond what"
+                f" was enumerated"
             ]
         )
     if kind == "candidate":

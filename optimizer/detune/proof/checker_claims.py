@@ -1,4 +1,6 @@
-"""The checker's view of a selection over scatter: response, static and separation entries, candidates and the winner."""
+"""The checker's view of a selection over scatter: response, static and separation entries, candidates and
+the winner.
+"""
 
 from __future__ import annotations
 
@@ -188,7 +190,9 @@ def read_static(data: dict[str, Any]) -> dict[str, Any]:
 
 
 def check_static(data: dict[str, Any]) -> tuple[list[str], int]:
-    """Faults of static rows: the enclosures claimed, and the limits, over boxes cut anew; violations at their points."""
+    """Faults of static rows: the enclosures claimed, and the limits, over boxes cut anew; violations at
+    their points.
+    """
     arrays = read_static(data["limits"])
     claimed = (
         np.array([number(v) for v in data["claimed_low"]]),

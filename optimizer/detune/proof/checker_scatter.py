@@ -1,6 +1,7 @@
 """The checker's own bound of response rows under scatter, with all rounding accounted for.
 
-For any vectors p and q (approximate solutions serve), c^T D^-1 f = p^T f + c^T q - p^T D q + (c - D p)^T D^-1 (f - D q).
+For any vectors p and q (approximate solutions serve), c^T D^-1 f = p^T f + c^T q - p^T D q + (c - D p)^T
+D^-1 (f - D q).
 The first part is enclosed to first order (`checker_lines.py`), the last by norms scaled with W, ||W R W^T|| <= gamma,
 and nu >= ||(W D W^T)^-1|| from a verified least singular value, or from damping alone.
 """

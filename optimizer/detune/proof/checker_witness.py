@@ -29,10 +29,64 @@ def exact_rows(system: dict[str, Any], rows: dict[str, Any], point: list[float],
     return out
 
 
+Exact = list[list[Fraction]]
+
+
 def _exact_sizes(
     system: dict[str, Any], rows: dict[str, Any], each: dict[str, Any], values: list[Fraction], omega: Fraction,
     n: int, number: int,
 ) -> list[float]:  # fmt: skip
+    kappa, axes, real, imag = _exact_system(system, values, omega, n)
+    vectors = [[complex(0.0)] * 3 for _ in range(number)]
+    for index, power in enumerate(each["powers"]):
+        right, base = (
+            [
+                (Fraction(float(v.real)), Fraction(float(v.imag)))
+                for v in np.asarray(each[key][index], complex)
+            ]
+            for key in ("loads", "bases")
+        )
+        for b, own, u in zip(axes, kappa, base, strict=True):
+            if any(u):
+                x, y = multiply(own, u)
+                right = [(a + b[i] * x, c + b[i] * y) for i, (a, c) in enumerate(right)]
+        q = solve_exactly(real, imag, right)
+        bent = []
+        for b, u in zip(axes, base, strict=True):
+            x = sum((v * w[0] for v, w in zip(b, q, strict=True)), Fraction(0)) - u[0]
+            y = sum((v * w[1] for v, w in zip(b, q, strict=True)), Fraction(0)) - u[1]
+            bent.append((x, y))
+        force = [multiply(own, d) for own, d in zip(kappa, bent, strict=True)]
+        for r in range(number):
+            scale = float(omega) ** (float(power) + float(rows["rate"][r]))
+            for component in range(3):
+                seen = _observed(rows["rows"][r][component], q)
+                felt = _observed(rows["forces"][r][component], force)
+                moved = complex(each["direct"][index][r][component])
+                whole = complex(float(seen[0] + felt[0]), float(seen[1] + felt[1]))
+                vectors[r][component] += (whole + moved) * scale
+    out = []
+    for r, vector in enumerate(vectors):
+        squares = sum(abs(v) ** 2 for v in vector)
+        dot = abs(sum(v * v for v in vector))
+        out.append(math.sqrt(0.5 * (squares + dot) if rows["ellipse"][r] else squares))
+    return out
+
+
+def _observed(weights: Any, values: list[tuple[Fraction, Fraction]]) -> tuple[Fraction, Fraction]:
+    """The exact sum of weights times complex values."""
+    x, y = Fraction(0), Fraction(0)
+    for weight, value in zip(weights, values, strict=True):
+        if weight:
+            x, y = x + Fraction(float(weight)) * value[0], y + Fraction(float(weight)) * value[1]
+    return x, y
+
+
+def _exact_system(
+    system: dict[str, Any], values: list[Fraction], omega: Fraction, n: int
+) -> tuple[list[tuple[Fraction, Fraction]], Exact, Exact, Exact]:
+    """Exact stiffness of each spring, its axis, and the real and imaginary part of the dynamic stiffness."""
+
     def times_all(names: Any) -> Fraction:
         out = Fraction(1)
         for name in names:
@@ -75,41 +129,4 @@ def _exact_sizes(
     for i in size:
         for j in size:
             real[i][j] -= omega * omega * mass[i][j]
-    vectors = [[complex(0.0)] * 3 for _ in range(number)]
-    for index, power in enumerate(each["powers"]):
-        right = [
-            (Fraction(float(v.real)), Fraction(float(v.imag)))
-            for v in np.asarray(each["loads"][index], complex)
-        ]
-        base = [
-            (Fraction(float(v.real)), Fraction(float(v.imag)))
-            for v in np.asarray(each["bases"][index], complex)
-        ]
-        for b, own, u in zip(axes, kappa, base, strict=True):
-            if any(u):
-                x, y = multiply(own, u)
-                right = [(a + b[i] * x, c + b[i] * y) for i, (a, c) in enumerate(right)]
-        q = solve_exactly(real, imag, right)
-        bent = []
-        for b, u in zip(axes, base, strict=True):
-            x = sum((v * w[0] for v, w in zip(b, q, strict=True)), Fraction(0)) - u[0]
-            y = sum((v * w[1] for v, w in zip(b, q, strict=True)), Fraction(0)) - u[1]
-            bent.append((x, y))
-        force = [multiply(own, d) for own, d in zip(kappa, bent, strict=True)]
-        for r in range(number):
-            scale = float(omega) ** (float(power) + float(rows["rate"][r]))
-            for component in range(3):
-                x, y = Fraction(0), Fraction(0)
-                for weight, value in zip(rows["rows"][r][component], q, strict=True):
-                    x, y = x + Fraction(float(weight)) * value[0], y + Fraction(float(weight)) * value[1]
-                for weight, value in zip(rows["forces"][r][component], force, strict=True):
-                    if weight:
-                        x, y = x + Fraction(float(weight)) * value[0], y + Fraction(float(weight)) * value[1]
-                moved = complex(each["direct"][index][r][component])
-                vectors[r][component] += (complex(float(x), float(y)) + moved) * scale
-    out = []
-    for r, vector in enumerate(vectors):
-        squares = sum(abs(v) ** 2 for v in vector)
-        dot = abs(sum(v * v for v in vector))
-        out.append(math.sqrt(0.5 * (squares + dot) if rows["ellipse"][r] else squares))
-    return out
+    return kappa, axes, real, imag

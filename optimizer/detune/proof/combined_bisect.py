@@ -196,7 +196,9 @@ def decide_rows(
 
 
 def _worst(nodes: list[_Node], limit: Floats) -> tuple[list[_Node], list[_Node]]:
-    """The boxes whose bounds are furthest beyond the limits, so that the bracket is narrow where it stays open; the rest."""
+    """The boxes whose bounds are furthest beyond the limits, so that the bracket is narrow where it stays
+    open; the rest.
+    """
     if len(nodes) <= BATCH:
         return nodes, []
     upper = np.stack([node.upper for node in nodes])

@@ -167,7 +167,9 @@ def _reach_size(frame: Frame, rho: Floats, vectors: Numbers, deflections: Number
 
 
 def _dissipation(frame: Frame, each: Expansion, d0: Complexes, cover: Floats, box: Box) -> Floats:
-    """Bound (N,) of the scaled inverse from damping alone: Im D >= H > 0 gives |u^T D^-1 v| <= sqrt(u H^-1 u v H^-1 v)."""
+    """Bound (N,) of the scaled inverse from damping alone: Im D >= H > 0 gives |u^T D^-1 v| <= sqrt(u H^-1
+    u v H^-1 v).
+    """
     lean = np.einsum("btv,bv->bt", np.abs(each.slope.imag), box.half) + each.remainder
     size = d0.shape[-1] ** 2
     spread = (lean @ np.concatenate([frame.outer, frame.absolute]).reshape(-1, size)).reshape(d0.shape)

@@ -133,7 +133,8 @@ def upper_length(centre: Numbers, slope: Numbers, remainder: Floats, box: Box) -
 
 
 def upper_major_axis(centre: Numbers, slope: Numbers, remainder: Floats, box: Box) -> UpperPlane:
-    """Upper plane of the major semi-axis of ellipses: complex centre (N, R, 3), slope (N, R, 3, V+1), remainder (N, R, 3).
+    """Upper plane of the major semi-axis of ellipses: complex centre (N, R, 3), slope (N, R, 3, V+1),
+    remainder (N, R, 3).
 
     2 a^2 = |y|^2 + |y . y|; the square root lies below its tangent. Never above the bound of the plain length.
     """

@@ -25,7 +25,8 @@ from detune.response.solve import solve_or_resonate
 class ScatterSystem:
     """A linear machine with V uncertain variables, n freedoms and A spring axes.
 
-    mass, fixed_dynamic, fixed_hysteretic, fixed_viscous (n, n): certain, mass positive definite. axes (A, n), stiffness,
+    mass, fixed_dynamic, fixed_hysteretic, fixed_viscous (n, n): certain, mass positive definite. axes (A,
+    n), stiffness,
     loss, viscous (A,): of all spring axes, parallel parts included. stiffness_factors, damping_factors (A, 2):
     variables whose product is s and t, -1 for none. mass_terms (P, n, n), mass_factors (P, 3) and
     stiffness_terms (Q, n, n), stiffness_factors_of_terms (Q, 3): symmetric matrices times products of variables.
@@ -206,7 +207,9 @@ def combine_sets(limits: LimitedRows, sizes: list[Floats]) -> Floats:
 
 
 def _solved(system: ScatterSystem, points: Floats, matrices: Complexes, right: Complexes) -> Complexes:
-    """q (N, n) of matrices q = right; a machine without damping exactly at a resonance is far beyond any limit there."""
+    """q (N, n) of matrices q = right; a machine without damping exactly at a resonance is far beyond any
+    limit there.
+    """
     try:
         return np.asarray(np.linalg.solve(matrices, right[:, :, None])[:, :, 0])
     except np.linalg.LinAlgError:

@@ -24,7 +24,8 @@ class StaticLimits:
 
     fixed (n, n); axes (A, n), stiffness (A,), factors (A, 2). loads (L, n) with load_factors (L, 3), variables whose
     product multiplies each load. rows (R, 3, n); scale (R,) and row_factors (R, 2); shift (R,), added to the first
-    component; length (R,): root of the summed squares instead of the first component. lower, upper (R,). low, high (V,).
+    component; length (R,): root of the summed squares instead of the first component. lower, upper (R,).
+    low, high (V,).
     """
 
     fixed: Floats

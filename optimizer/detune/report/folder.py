@@ -22,8 +22,8 @@ from detune.report.page import page_text
 from detune.report.response_data import response_curves
 from detune.report.strict_json import json_text
 from detune.report.tables_listed import absorbers_csv
-from detune.solvers.robust_record import proof_record
 from detune.solvers.outcome import Integers
+from detune.solvers.robust_record import proof_record
 from detune.study.run import Result
 
 MARK = "proof.json"

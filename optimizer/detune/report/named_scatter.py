@@ -58,7 +58,10 @@ def _verdict_words(brief: Brief, verdict: DesignVerdict) -> str:
     if open_rows:
         text += f" Undecided: {'; '.join(bracket_words(row) for row in open_rows)}."
     if sampled:
-        text += f" {len(sampled)} limits are sampled, not proven: every sample kept them, but no bound covers their kind."
+        text += (
+            f" {len(sampled)} limits are sampled, not proven: every sample kept them, but no bound covers"
+            f" their kind."
+        )
     return text
 
 
@@ -69,7 +72,10 @@ def _order(row: RowVerdict) -> float:
 def _row(row: RowVerdict) -> str:
     own = as_margin_row(row)
     note = f" ({row.note})" if row.note and row.status != "sampled" else ""
-    text = f"{STATUS_WORDS[row.status]}: {row.label}{note}: worst found {value_text(own)}, margin {margin_text(row.margin)}"
+    text = (
+        f"{STATUS_WORDS[row.status]}: {row.label}{note}: worst found {value_text(own)}, margin"
+        f" {margin_text(row.margin)}"
+    )
     if row.guaranteed is not None:
         bound = as_margin_row(row, guaranteed=True)
         text += f"; guaranteed {value_text(bound)}, margin {margin_text(bound.margin)}"

@@ -16,8 +16,8 @@ from detune.report.robust import robust_lines, robust_tables
 from detune.report.service_loads import service_loads
 from detune.report.summary import none_lines, partial_words, proof_lines
 from detune.report.tables import Table
-from detune.report.tables_dwell import dwell_table, dwell_words
 from detune.report.tables_contributions import contributions_table
+from detune.report.tables_dwell import dwell_table, dwell_words
 from detune.report.tables_listed import absorbers_table, ballast_table
 from detune.report.words import (
     design_text,

@@ -123,14 +123,18 @@ def robust_lines(result: Result) -> list[str]:
                 f"({design_words(result, robust.nominal)}; cost {robust.nominal.cost:g}), "
                 f"which is {_fate(brief, robust.nominal)}."
             )
-        cheaper = f"{len(robust.violated)} cheaper designs that meet the brief at listed values break a limit over the scatter"
+        cheaper = (
+            f"{len(robust.violated)} cheaper designs that meet the brief at listed values break a limit"
+            f" over the scatter"
+        )
         if robust.optimal:
             lines.append(
                 f"It is the cheapest such design: {cheaper}, each at a stated point, and none is undecided."
             )
         else:
             lines.append(
-                f"It is the cheapest PROVEN design: {cheaper}; {len(robust.undecided) + len(robust.sampled)} more could be "
+                f"It is the cheapest PROVEN design: {cheaper}; {len(robust.undecided) + len(robust.sampled)}"
+                f" more could be "
                 "neither proven nor violated, so a cheaper one may exist."
             )
     elif robust.nominal is not None:
@@ -150,7 +154,10 @@ def robust_lines(result: Result) -> list[str]:
 
 def _no_winner(robust: RobustResult) -> str:
     if robust.undecided:
-        return f"{len(robust.undecided)} designs could be neither proven nor violated, {len(robust.violated)} are violated."
+        return (
+            f"{len(robust.undecided)} designs could be neither proven nor violated, {len(robust.violated)}"
+            f" are violated."
+        )
     if robust.sampled:
         return (
             f"{len(robust.sampled)} designs kept every limit at all samples, but some limits are of kinds that "
@@ -189,7 +196,8 @@ def _yield_line(result: Result, index: int, found: Yield | None) -> str:
         return f"  {name}: not sampled before the run was stopped"
     worst = f"; missed most: {found.missed[0][0]} ({found.missed[0][1]} times)" if found.missed else ""
     return (
-        f"  {name}: yield {100 * found.share:.1f} % ({found.met} of {found.samples} samples; {100 * found.confidence:g} % "
+        f"  {name}: yield {100 * found.share:.1f} % ({found.met} of {found.samples} samples;"
+        f" {100 * found.confidence:g} % "
         f"confidence {100 * found.low:.1f} to {100 * found.high:.1f} %){worst}"
     )
 
@@ -217,12 +225,15 @@ def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
         for row in sorted(verdict.rows, key=order)
     )
     note = (
-        "Worst found: evaluated exactly at the place named. Guaranteed: no value within the scatter and the speed range is "
-        "worse; the proof was carried on only until the limit was decided, so the truth lies between the two. A lot's and "
+        "Worst found: evaluated exactly at the place named. Guaranteed: no value within the scatter and the"
+        " speed range is "
+        "worse; the proof was carried on only until the limit was decided, so the truth lies between the"
+        " two. A lot's and "
         "a part's deviation multiply. Static parts of a travel or of an uplift limit are taken at their own worst."
     )
     columns = (
-        "condition", "place", "quantity", "limit", "worst found", "margin", "guaranteed", "guaranteed margin", "worst at",
+        "condition", "place", "quantity", "limit", "worst found", "margin", "guaranteed", "guaranteed"
+                                                                                          " margin", "worst at",
         "where in the scatter", "status",
     )  # fmt: skip
     return Table("Worst case over the scatter", columns, rows, frozenset({3, 4, 5, 6, 7, 8}), note)

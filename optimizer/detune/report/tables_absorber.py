@@ -56,8 +56,10 @@ def forms_table(result: SizingResult) -> Table:
             )
     columns = ("absorber", "tuning by", "best for", "mass ratio", "tuning", "damping ratio", "height", WORST)
     note = (
-        "A closed form is for one mass on one spring under its own excitation; the machine is taken as that on the axial "
-        "stiffness of its own parts. Damping ratio: of the absorber's own frequency. Height: what the form promises, the "
+        "A closed form is for one mass on one spring under its own excitation; the machine is taken as that"
+        " on the axial "
+        "stiffness of its own parts. Damping ratio: of the absorber's own frequency. Height: what the form"
+        " promises, the "
         "greatest magnitude over the static value, or the variance under white noise of unit intensity. The last "
         "column judges every form by the study's own equations, limits and ranges."
     )
@@ -90,7 +92,8 @@ def scatter_table(result: SizingResult) -> Table:
     corners = "every corner" if first.all_corners else "some corners"
     note = (
         f"Scatter: {'; '.join(first.stated) or 'none, for parts made to order have no listed tolerance'}. Judged at "
-        f"{corners} of the scatter and at random points inside: no proof, and the truth may be a little higher. Off its "
+        f"{corners} of the scatter and at random points inside: no proof, and the truth may be a little"
+        f" higher. Off its "
         "tuning: by the scatter of its own springs and mass alone."
     )
     columns = (

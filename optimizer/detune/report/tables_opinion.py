@@ -37,7 +37,8 @@ def opinion_table(result: SizingResult) -> Table:
     rows.append(("time", show(opinion.exact_seconds, "time", 2), show(opinion.seconds, "time", 2)))
     note = (
         f"Called the same where the objectives differ by less than {AGREE:g} of their value. SCIP stands on its limits "
-        "within its own tolerance, so that its margin may be a rounding below zero; the exact design stands two parts in "
+        "within its own tolerance, so that its margin may be a rounding below zero; the exact design stands"
+        " two parts in "
         "a million inside. Times are from the statement to the answer, without the start of SCIP's process."
     )
     if opinion.relaxed:

@@ -107,8 +107,8 @@ def slopes_text(result: SizingResult) -> str:
     if not found.differenced:
         return f"Slopes of all requirements by adjoint, at {found.slopes} points."
     return (
-        f"Slopes by adjoint, at {found.slopes} points; by finite differences in the rows of {len(found.differenced)} "
-        f"requirements alone: {'; '.join(found.differenced)}."
+        f"Slopes by adjoint, at {found.slopes} points; by finite differences for these "
+        f"alone: {'; '.join(found.differenced)}."
     )
 
 

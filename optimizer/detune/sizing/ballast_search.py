@@ -17,7 +17,8 @@ from detune.sizing.exchange import LinePool, solve_slice
 
 GAP = 1e-7
 BOXES = 3000
-# A position that cannot beat the best of the others is left after so many boxes, as near to its own best as it has come.
+# A position that cannot beat the best of the others is left after so many boxes, as near to its own best as
+# it has come.
 HOPELESS = 400
 
 Found = tuple[float, Segment, float]

@@ -1,4 +1,6 @@
-"""Response limits that hold whatever the damping: |c^T q| <= sqrt(c^T A^-1 c  f^H A^-1 f) on either side (see `lmi`)."""
+"""Response limits that hold whatever the damping: |c^T q| <= sqrt(c^T A^-1 c  f^H A^-1 f) on either side
+(see `lmi`).
+"""
 
 from __future__ import annotations
 

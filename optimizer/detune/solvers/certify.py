@@ -156,7 +156,9 @@ class _Work:
     def _static_verdict(
         self, requirement: Requirement, index: list[int], rows: list[StaticRow], decision: StaticRowsDecision
     ) -> None:
-        """The worst side of the worst of a requirement's rows, and the bound that comes nearest to a limit or beyond."""
+        """The worst side of the worst of a requirement's rows, and the bound that comes nearest to a limit
+        or beyond.
+        """
         worst: tuple[float, float, tuple[float, ...], StaticRow] | None = None
         least = (np.inf, np.nan)
         for i in index:

@@ -101,7 +101,9 @@ def static_row(
 def offset_row(
     each: StateModel, part: NDArray[np.intp], found: ScatterMap, allowable: Allowable, place: str
 ) -> tuple[StaticRow | None, str]:
-    """Return the static row a response limit depends on, and how: "" not at all, "adds" or "limits". Raises NotBounded."""
+    """Return the static row a response limit depends on, and how: "" not at all, "adds" or "limits". Raises
+    NotBounded.
+    """
     model = each.model
     if isinstance(allowable, Uplift):
         return _load_row(each, part, found, place), "limits"

@@ -75,7 +75,9 @@ def below(found: Modes, interval: tuple[float, float]) -> int:
 
 
 def distances(found: Modes, interval: tuple[float, float], count: int) -> tuple[Floats, Floats]:
-    """Separation (n,) of each mode from an interval, the lowest `count` below it and the others above; slopes (n, u)."""
+    """Separation (n,) of each mode from an interval, the lowest `count` below it and the others above;
+    slopes (n, u).
+    """
     low, high = interval
     under = np.arange(len(found.frequency)) < count
     value = np.where(under, 1.0 - found.frequency / low, found.frequency / high - 1.0)

@@ -1,7 +1,8 @@
 """Responses to random forcing with their slopes: the variance on a fixed rule of points, each with its adjoint.
 
 v = integral of |z|^2 S df and dv = integral of 2 Re(conj(z) dz) S df. The points are laid by the poles as they are
-(omega = c + h sinh(s) near a pole of frequency c and half width h, as in `physics.random_response`); that they move with
+(omega = c + h sinh(s) near a pole of frequency c and half width h, as in `physics.random_response`); that
+they move with
 the unknowns changes nothing, because the integral does not depend on them.
 """
 

@@ -42,7 +42,8 @@ LEAST_LOG = -20.0
 class Rows:
     """Rows (m,) with slopes (m, u), the requirement of each, and the log of response over limit where it is one.
 
-    A row without a requirement forbids toppling on the dynamic stiffness. `log` (m,) and `log_slopes` (m, u) are nan for
+    A row without a requirement forbids toppling on the dynamic stiffness. `log` (m,) and `log_slopes` (m,
+    u) are nan for
     rows that limit no response to forcing. `omega` (m,): where the peak stands, rad/s, nan where there is none.
     """
 
@@ -167,14 +168,14 @@ def response_plan(
 ) -> tuple[ResponsePlan | None, tuple[Requirement, ...]]:
     """The limits of a group that have slopes, and the requirements that can only be differenced."""
     rows = group.rows
-    every = tuple(group.requirements)
+    bind = [not _never_binds(allowable, place, model) for allowable, place in rows.pairs]
+    every = tuple(r for r, binds in zip(group.requirements, bind, strict=True) if binds)
+    pairs = tuple(pair for pair, binds in zip(rows.pairs, bind, strict=True) if binds)
     if group.driving is not None or rows.has_slow_parts or not (rows.families or rows.noises):
         return None, every
     kept: list[tuple[Requirement, tuple[HarmonicAllowable, str], Floats, bool, Floats]] = []
     left: list[Requirement] = []
-    for requirement, (allowable, place) in zip(every, rows.pairs, strict=True):
-        if isinstance(allowable, Uplift) and _pulls(model, place):
-            continue
+    for requirement, (allowable, place) in zip(every, pairs, strict=True):
         try:
             observed(((allowable, place),), model)
             offset, is_size, compression = _static_parts(allowable, place, model)
@@ -218,8 +219,14 @@ def without(plan: ResponsePlan, requirements: list[Requirement]) -> ResponsePlan
     )  # fmt: skip
 
 
-def _pulls(model: Model, station: str) -> bool:
-    return bool(model.groups[find_station(model, station).group].mounts[0].pulls)
+def _never_binds(allowable: HarmonicAllowable, place: str, model: Model) -> bool:
+    """Whether the part itself makes a limit none: it may pull, or states no deflection of its own."""
+    if isinstance(allowable, Uplift):
+        return bool(model.groups[find_station(model, place).group].mounts[0].pulls)
+    if isinstance(allowable, MountDeflection) and allowable.limit == "part":
+        own = model.groups[find_station(model, place).group].mounts[0].deflection_max
+        return own is None or not np.isfinite(own)
+    return False
 
 
 def _static_parts(allowable: HarmonicAllowable, place: str, model: Model) -> tuple[Floats, bool, Floats]:

@@ -31,7 +31,8 @@ class MachineSlopes:
     """One state's machine at the unknowns `origin` (u,), and what changes it; columns (m,) of the unknowns.
 
     `mass` (m, n, n), `weight` (m, n), `rows` (m, S, 3, n), `positions` (m, S, 3): derivatives by those unknowns.
-    `geometric` (m, n, n) is that of gravity's stiffness and `constant` (n, n) its value at the origin, both without what
+    `geometric` (m, n, n) is that of gravity's stiffness and `constant` (n, n) its value at the origin, both
+    without what
     the stations carry where those move (`SizedState.springs`).
     """
 

@@ -1,4 +1,6 @@
-"""The proof record of a study with scatter: every rule's count, every cheaper candidate's witness, the winner's boxes."""
+"""The proof record of a study with scatter: every rule's count, every cheaper candidate's witness, the
+winner's boxes.
+"""
 
 from collections.abc import Mapping
 
@@ -91,7 +93,8 @@ def _candidate(record: ProofRecord, problem: Problem, position: int, verdict: De
             "sampled_only": not kept,
             "not_in_record": [f"{label}: taken from the run, not computed again" for label in left],
             "rows": [
-                {"label": r.label, "status": r.status, "worst": r.worst, "guaranteed": r.guaranteed, "frequency": r.frequency,
+                {"label": r.label, "status": r.status, "worst": r.worst, "guaranteed": r.guaranteed,
+                 "frequency": r.frequency,
                  "where": r.where}
                 for r in verdict.rows
             ],

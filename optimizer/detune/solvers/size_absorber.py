@@ -127,7 +127,9 @@ def tunings(ratio: float, primary_damping: float = 0.0) -> list[tuple[str, str, 
 
 
 def _carrier(brief: Brief, unknown: SizingUnknown, values: Floats) -> tuple[float, float, float]:
-    """Frequency (Hz) of the body an absorber stands on as one mass on its own parts, mass ratio, damping ratio there."""
+    """Frequency (Hz) of the body an absorber stands on as one mass on its own parts, mass ratio, damping
+    ratio there.
+    """
     made = made_design(brief, values)
     carrier = next(s.to for s in brief.stations if s.group == unknown.group)
     if carrier == unknown.body:

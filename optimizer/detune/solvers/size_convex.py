@@ -216,7 +216,9 @@ def _objective(place: _Place, frequency: float) -> list[ConvexSizing]:
 def stiffness_model(
     brief: Brief, problem: Problem, middle: Floats
 ) -> tuple[StiffnessModel, list[int], int | None]:
-    """The linear model of the stiffness unknowns (columns) and, where mass and stiffness are linear in it, the ballast."""
+    """The linear model of the stiffness unknowns (columns) and, where mass and stiffness are linear in it,
+    the ballast.
+    """
     unknowns = sizing_of(brief).unknown
     columns = [k for k, u in enumerate(unknowns) if u.kind == "stiffness"]
     ballast = next((k for k, u in enumerate(unknowns) if u.kind == "ballast"), None)

@@ -41,7 +41,9 @@ class _Rows:
 
 
 def soft_side(brief: Brief, axis: OneAxis) -> ConvexSizing | None:
-    """The best of the soft side by one convex program; None where the objective is no linear one or it has no answer."""
+    """The best of the soft side by one convex program; None where the objective is no linear one or it has
+    no answer.
+    """
     problem = axis.problem
     weights = _weights(problem)
     if weights is None or not excitations(problem):

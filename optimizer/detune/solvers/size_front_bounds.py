@@ -1,7 +1,8 @@
 """How far a point of a searched front can lie from the true front: bounds on the objective that was minimised.
 
 Two bounds are asked for. Where every price is zero or more, no design within the bounds of the unknowns has less than
-the one with every unknown at its lower end. And no design with every mode on the point's side of all excitation, as good
+the one with every unknown at its lower end. And no design with every mode on the point's side of all
+excitation, as good
 as the point in separation and added mass, has less than the convex answer of that side (`size_convex`). Where neither
 exists no bound is known.
 """

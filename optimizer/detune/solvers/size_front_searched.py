@@ -12,8 +12,8 @@ from detune.sizing.made_parts import sizing_of
 from detune.solvers import size_many_starts
 from detune.solvers.size_batch import judge
 from detune.solvers.size_front import ORDER, FrontPoint, SizingFront, nondominated
-from detune.solvers.size_gradients import prepared
 from detune.solvers.size_front_bounds import with_bounds
+from detune.solvers.size_gradients import prepared
 
 Floats = NDArray[np.float64]
 STARTS = 2
@@ -49,7 +49,8 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
         if found.best is not None:
             points.append(_point(brief, found.best.values, "local"))
     worth = (
-        f"least {minimised} at levels of {', '.join(held)}, each the best of a few local searches: no proof; the gap of "
+        f"least {minimised} at levels of {', '.join(held)}, each the best of a few local searches: no proof;"
+        f" the gap of "
         "each point says by how much it can lie above what no design falls below, where that is known"
     )
     kept = with_bounds(brief, minimised, nondominated(points, trade))

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
 from detune.physics.unsupported import UnsupportedMachine
+from detune.problem.requirement import Requirement
 from detune.sizing.made_parts import bounds, logarithmic, sizing_of
 from detune.solvers.size_batch import Judged, judge, response_margin
 from detune.solvers.size_gradients import Gradients, Sides, prepared, sides
@@ -42,7 +43,8 @@ class ManyStarts:
     """Every local search, best first; those that missed a requirement last. `evaluations` counts designs judged.
 
     `spread` (best, median, worst) of the objective and `near`, the share within 1 % of the best, over those that met.
-    `slopes` counts points at which slopes were found; `slopes_from` says how; `differenced` names the requirements whose
+    `slopes` counts points at which slopes were found; `slopes_from` says how; `differenced` names the
+    requirements whose
     rows were differenced because they have no adjoint.
     """
 
@@ -292,6 +294,11 @@ def solve(
     return gather(functions, done, sense)
 
 
+def _told(requirements: tuple[Requirement, ...]) -> tuple[str, ...]:
+    """Requirements in words, those of one quantity at several places once."""
+    return tuple(dict.fromkeys(f"{r.allowable.quantity()} ({r.condition})" for r in requirements))
+
+
 def gather(functions: _Differenced, done: list[LocalSearch], sense: float) -> ManyStarts:
     """Order the searches and tell their spread."""
     good = sorted((s for s in done if s.least_margin >= MET), key=lambda s: sense * s.objective)
@@ -304,7 +311,7 @@ def gather(functions: _Differenced, done: list[LocalSearch], sense: float) -> Ma
         near = float(np.mean(np.abs(values - values[0]) <= 0.01 * abs(values[0])))
     found: tuple[int, tuple[str, ...]] = (0, ())
     if isinstance(functions, _Adjoint):
-        found = functions.slopes_found, tuple(dict.fromkeys(r.label for r in functions.gradients.differenced))
+        found = functions.slopes_found, _told(functions.gradients.differenced)
     return ManyStarts(
         (*good, *bad), len(good), spread, near, functions.count, found[0], functions.way, found[1]
     )

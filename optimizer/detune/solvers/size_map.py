@@ -143,7 +143,7 @@ def axis_values(brief: Brief, axis: OneAxis, points: Floats) -> tuple[Floats, Fl
             damping = axis.pieces * points[:, column]
         elif unknown.kind == "loss-factor":
             damping = points[:, column]
-        else:
+        elif unknown.kind == "ballast":
             mass = problem.mass + points[:, column]
     return stiffness, damping, mass
 

@@ -165,7 +165,9 @@ def _response_values(found: ResponseGroup, points: Floats, forcing: Floats) -> F
 
 
 def _unstable(rows: DesignRows, group: StaticGroup) -> list[Requirement]:
-    """Stability requirements that are not far beyond doubt: those not met with twofold reserve at the interval's ends."""
+    """Stability requirements that are not far beyond doubt: those not met with twofold reserve at the
+    interval's ends.
+    """
     out = []
     nothing = StaticRow(np.zeros((3, group.each.model.frame.count)))
     for requirement in group.stability:

@@ -16,11 +16,13 @@ CAUTIONS: tuple[str, ...] = (
     LISTED,
 )
 STRUCTURE = (
-    "The structure moves in the modes stated and in no others, other bodies are rigid. Loose connections and a floor that "
+    "The structure moves in the modes stated and in no others, other bodies are rigid. Loose connections and"
+    " a floor that "
     "is not as stated change the response; measure the natural frequencies and the vibration after installation."
 )
 INTERVAL = (
-    "What is proven over the scatter holds for the intervals stated and for the machine as modelled, for nothing beyond: "
+    "What is proven over the scatter holds for the intervals stated and for the machine as modelled, for"
+    " nothing beyond: "
     "wear, temperature, creep and parts outside their tolerance are not in it unless the brief states them."
 )
 YIELD = (
@@ -30,6 +32,8 @@ YIELD = (
 
 
 def cautions(brief: Brief) -> tuple[str, ...]:
-    """Return the cautions of a study: rigid bodies only where there is no structure, listed values only without scatter."""
+    """Return the cautions of a study: rigid bodies only where there is no structure, listed values only
+    without scatter.
+    """
     last = LISTED if brief.scatter is None else INTERVAL if brief.scatter.judge == "interval" else YIELD
     return (*CAUTIONS[:2], RIGID if brief.structure is None else STRUCTURE, last)

@@ -8,6 +8,7 @@ import numpy as np
 
 from detune.brief.finding import Finding
 from detune.brief.read import to_fault
+from detune.brief.sizing import Sizing
 from detune.ground.errors import BriefError, Fault
 from detune.ground.toml_positions import positions_of
 from detune.sizing.made_parts import sizing_of
@@ -36,7 +37,10 @@ def one_axis_only(study: Study, why: str, opinion: bool) -> None:
     faults: list[Fault] = []
     for index, unknown in enumerate(sizing_of(study.brief).unknown):
         if unknown.kind == "parallel":
-            expected = f'the number of parts as "parallel" of the stations: it is sought on one axis alone, and here {why}'
+            expected = (
+                f'the number of parts as "parallel" of the stations: it is sought on one axis alone,'
+                f" and here {why}"
+            )
             faults += faults_of(study, (Finding(("sizing", "unknown", index), unknown.title, expected),))
     if opinion:
         expected = (
@@ -88,24 +92,28 @@ def check_sense(study: Study) -> tuple[str, ...]:
             cautions.append(
                 f"no requirement depends on {unknown.title}; the objective alone moves it, to an end of its range"
             )
-    if not counts.any() and not findings:
-        what = "minimise" if sizing.minimise else "maximise"
-        if sizing.goal == "cost":
-            expected = (
-                "a price on some unknown (cost_per_stiffness, cost_per_damping, cost_per_loss_factor, or the ballast's "
-                "cost_per_kg): as stated every design costs the same"
-            )
-        elif not np.isfinite(objective).all():
-            expected = (
-                "an objective that has a finite value: nothing excites the machine steadily, so the separation has no "
-                "bound"
-            )
-        else:
-            expected = "an objective that some unknown changes: as stated it is the same for every design"
-        findings.append(Finding(("sizing", what), sizing.goal, expected))
-    elif not np.isfinite(objective).all():
-        expected = "an objective that has a finite value for every design"
-        findings.append(Finding(("sizing",), sizing.goal, expected))
+    if not findings:
+        findings = _objective_sense(sizing, bool(counts.any()), bool(np.isfinite(objective).all()))
     if findings:
         raise BriefError(faults_of(study, findings))
     return tuple(cautions)
+
+
+def _objective_sense(sizing: Sizing, counts: bool, finite: bool) -> list[Finding]:
+    """What is wrong with an objective that no unknown `counts` for, or that is not `finite` for every design."""
+    if counts:
+        expected = "an objective that has a finite value for every design"
+        return [] if finite else [Finding(("sizing",), sizing.goal, expected)]
+    if sizing.goal == "cost":
+        expected = (
+            "a price on some unknown (cost_per_stiffness, cost_per_damping, cost_per_loss_factor, or the "
+            "ballast's cost_per_kg): as stated every design costs the same"
+        )
+    elif not finite:
+        expected = (
+            "an objective that has a finite value: nothing excites the machine steadily, so the separation has "
+            "no bound"
+        )
+    else:
+        expected = "an objective that some unknown changes: as stated it is the same for every design"
+    return [Finding(("sizing", "minimise" if sizing.minimise else "maximise"), sizing.goal, expected)]

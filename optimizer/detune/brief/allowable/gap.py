@@ -69,4 +69,7 @@ class Gap(HarmonicAllowable):
         return np.full(view.count, self.clearance)
 
     def quantity(self) -> str:
-        return f"travel towards {direction_words(self.direction)} to a stop on {self.stands_on}, from {self.clearance_of}"
+        return (
+            f"travel towards {direction_words(self.direction)} to a stop on {self.stands_on}, from"
+            f" {self.clearance_of}"
+        )
