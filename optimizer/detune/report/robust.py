@@ -202,6 +202,14 @@ def _yield_line(result: Result, index: int, found: Yield | None) -> str:
     )
 
 
+def _status_words(row: RowVerdict) -> str:
+    """The status and the note of a row, which for a sampled one says so itself."""
+    status = STATUS_WORDS[row.status]
+    if status in row.note:
+        return row.note
+    return f"{status} ({row.note})" if row.note else status
+
+
 def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
     """Return every requirement at its worst over the scatter, the least guaranteed margin first."""
 
@@ -213,6 +221,7 @@ def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
             row.condition,
             row.place,
             row.quantity,
+            _status_words(row),
             limit_text(as_margin_row(row)),
             value_text(as_margin_row(row)),
             margin_text(row.margin),
@@ -220,7 +229,6 @@ def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
             "none" if row.guaranteed_margin is None else margin_text(row.guaranteed_margin),
             _frequency(brief, row),
             row.where,
-            STATUS_WORDS[row.status] + (f" ({row.note})" if row.note else ""),
         )
         for row in sorted(verdict.rows, key=order)
     )
@@ -232,11 +240,11 @@ def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
         "a part's deviation multiply. Static parts of a travel or of an uplift limit are taken at their own worst."
     )
     columns = (
-        "condition", "place", "quantity", "limit", "worst found", "margin", "guaranteed", "guaranteed"
+        "condition", "place", "quantity", "status", "limit", "worst found", "margin", "guaranteed", "guaranteed"
                                                                                           " margin", "worst at",
-        "where in the scatter", "status",
+        "where in the scatter",
     )  # fmt: skip
-    return Table("Worst case over the scatter", columns, rows, frozenset({3, 4, 5, 6, 7, 8}), note)
+    return Table("Worst case over the scatter", columns, rows, frozenset({4, 5, 6, 7, 8, 9}), note)
 
 
 def price_table(result: Result) -> Table | None:

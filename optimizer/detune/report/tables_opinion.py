@@ -34,12 +34,12 @@ def opinion_table(result: SizingResult) -> Table:
     judged = none if opinion.assessment is None else margin_text(opinion.assessment.least_margin)
     best = none if not result.branches else margin_text(result.branches[0].assessment.least_margin)
     rows.append(("least margin, assessed", best, judged))
-    rows.append(("time", show(opinion.exact_seconds, "time", 2), show(opinion.seconds, "time", 2)))
+    rows.append(("processor time", show(opinion.exact_seconds, "time", 2), show(opinion.seconds, "time", 2)))
     note = (
         f"Called the same where the objectives differ by less than {AGREE:g} of their value. SCIP stands on its limits "
         "within its own tolerance, so that its margin may be a rounding below zero; the exact design stands"
         " two parts in "
-        "a million inside. Times are from the statement to the answer, without the start of SCIP's process."
+        "a million inside. Processor time is from the statement to the answer, without the start of SCIP's process."
     )
     if opinion.relaxed:
         note += " Both leave to the assessor: " + "; ".join(opinion.relaxed) + "."
@@ -69,9 +69,10 @@ def opinion_text(result: SizingResult) -> str:
         return f"Second opinion (SCIP): {said(result)}."
     if opinion.status == "infeasible":
         same = "none exists as well" if opinion.agrees else "none exists, WHERE THE EXACT METHOD FOUND ONE"
-        return f"Second opinion (SCIP): {same}; {times}."
+        return f"Second opinion (SCIP): {same}; {times} of processor time."
     found = goal_text(goal, opinion.objective)
     if opinion.agrees:
-        return f"Second opinion (SCIP): {found}, the same within {max(opinion.difference or 0.0, 1e-12):.1e}; {times}."
+        within = f"{max(opinion.difference or 0.0, 1e-12):.1e}"
+        return f"Second opinion (SCIP): {found}, the same within {within}; {times} of processor time."
     exact = "none" if opinion.exact is None else goal_text(goal, opinion.exact)
     return f"SECOND OPINION DIFFERS: SCIP {found}, exact {exact}. Neither is proven."

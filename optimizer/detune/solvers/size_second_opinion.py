@@ -37,9 +37,9 @@ class SizingOpinion:
 
     `status` "optimal" and "infeasible" are proofs of SCIP's; a "time limit" or "failed" says nothing of the
     problem. `objective`, `bound`, `values` (u,) and `assessment` are NaN or None without a design.
-    `difference` is relative, to the exact objective. `agrees` is None where SCIP came to no end. `seconds` of
-    both are from the statement to the answer, of the exact method with every branch. `relaxed`: what the
-    statement leaves to the assessor.
+    `difference` is relative, to the exact objective. `agrees` is None where SCIP came to no end. `seconds` of both
+    (of processor time) are from the statement to the answer, of the exact method with every branch. `relaxed`: what
+    the statement leaves to the assessor.
     """
 
     status: Status
@@ -76,9 +76,9 @@ def second_opinion(
     why = why_not_one_axis(brief)
     if why is not None:
         raise ValueError(why)
-    started = time.perf_counter()
+    started = time.process_time()
     solve(brief, problem)
-    exact_seconds = time.perf_counter() - started
+    exact_seconds = time.process_time() - started
     statement, count = _statement(brief, problem)
     level = sizing_of(brief).goal == "worst-response"
     answer = solve_with_scip([statement.problem], time_limit or TIME_LIMIT, [count], level, stop)[0]
