@@ -253,8 +253,8 @@ def _vary(options: argparse.Namespace) -> int:
             print(f"{variation.value:>24}  {'none meets the brief':>36}")
             continue
         print(
-            f"{variation.value:>24}  {answer.cost:>10.2f}  {answer.separation:>10.1%}  {answer.least_margin:>12.1%}"
-            f"  {answer.design}"
+            f"{variation.value:>24}  {answer.cost:>10.2f}  {answer.separation:>10.1%}  "
+            f"{answer.least_margin:>12.1%}  {answer.design}"
         )
     return code
 

@@ -201,8 +201,7 @@ def _around(table: "FloorTable", static: float) -> FloorFreedom:
     fitted = float(np.sum((static - table.stiffness.real) * squares) / np.sum(squares**2))
     mass = max(fitted, 1e-3 * static / float(squares[-1]))
     told = (
-        f"floor: modes are listed on a spring of {show(static, 'stiffness')} and a mass of"
-        f" {show(mass, 'mass')} near its "
-        "table; responses are on the table itself"
+        f"floor: modes are listed on a spring of {show(static, 'stiffness')} and a mass of "
+        f"{show(mass, 'mass')} near its table; responses are on the table itself"
     )
     return FloorFreedom(mass, static, 0.0, (told,), table)

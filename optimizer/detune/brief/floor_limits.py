@@ -36,9 +36,8 @@ def between_stations_checked(brief: Brief) -> list[Finding]:
     for index, forcing in enumerate(brief.forcing):
         if forcing.floor_direction() is not None:
             expected = (
-                "no motion of the floor beside a floor of kind stiffness-matrix: how the places under the"
-                " stations move "
-                "is not stated"
+                "no motion of the floor beside a floor of kind stiffness-matrix: how the places under the "
+                "stations move is not stated"
             )
             findings.append(Finding(("forcing", index), forcing.name, expected, depends=("floor",)))
     for index, allowable in enumerate(brief.allowables):

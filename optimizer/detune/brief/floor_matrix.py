@@ -111,10 +111,9 @@ def _as_modes(brief: Brief, floor: Floor, found: FloorMatrices) -> FloorStructur
         mass = found.stiffness / (2.0 * np.pi * own) ** 2
         real = 0.5 * own
         assumed.append(
-            f"floor without mass: so little is put in that its own frequencies all are {show(own, 'frequency')}, which "
-            f"changes its dynamic stiffness by less than {1.0 / ABOVE**2:.0e} at any excitation; they are no"
-            f" frequencies "
-            "of the real floor"
+            "floor without mass: so little is put in that its own frequencies all are "
+            f"{show(own, 'frequency')}, which changes its dynamic stiffness by less than {1.0 / ABOVE**2:.0e} "
+            "at any excitation; they are no frequencies of the real floor"
         )
     values, shapes = eigh(found.stiffness, mass)
     frequency = np.sqrt(np.maximum(values, 0.0)) / (2.0 * np.pi)

@@ -100,8 +100,8 @@ class Scatter(Statement):
             notes.append("scatter of stiffness: each part's listed tolerance, by lot")
         if self.damping is None:
             notes.append(
-                f"scatter of damping: plus or minus {100 * COMMON_DAMPING:g} % by lot (common practice for"
-                f" loss factors)"
+                f"scatter of damping: plus or minus {100 * COMMON_DAMPING:g} % by lot (common practice for "
+                "loss factors)"
             )
         exact = [name for name in ("mass", "centre", "forcing") if getattr(self, name) is None]
         if exact:

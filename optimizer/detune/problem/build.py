@@ -336,8 +336,8 @@ def _check_support(brief: Brief, model: Model, state: str | None) -> None:
     free = ", ".join(dict.fromkeys(name for _, name in model.frame.names if name != "along"))
     finding = Finding(
         ("station",) if state is None else ("state",),
-        f"{sum(s.parallel > 0 for s in model.stations if not s.is_absorber)} stations that leave a motion of"
-        f" the machine without stiffness",
+        f"{sum(s.parallel > 0 for s in model.stations if not s.is_absorber)} stations that leave a motion of "
+        "the machine without stiffness",
         f"stations that hold every free direction ({free}); or fewer free directions",
     )
     raise BriefError(faults_without_lines(brief.file, (finding,)))

@@ -156,8 +156,8 @@ def _outside_tables(brief: Brief, mounts: list[tuple[Mount, ...]]) -> list[Findi
             for number, state in enumerate(brief.states):
                 if warm and not warm[0] <= state.temperature <= warm[-1]:
                     found = (
-                        f"{state.temperature:g} degC; the table of {mount.part} covers {warm[0]:g} to"
-                        f" {warm[-1]:g} degC"
+                        f"{state.temperature:g} degC; the table of {mount.part} covers {warm[0]:g} to "
+                        f"{warm[-1]:g} degC"
                     )
                     findings.append(
                         Finding(("state", number, "temperature"), found, "a temperature inside it")

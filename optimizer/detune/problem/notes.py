@@ -31,9 +31,8 @@ def _pads(mounts: tuple[Mount, ...]) -> list[str]:
     if not cut:
         return []
     return [
-        f"stiffness of pads ({cut}) is estimated from the rubber and the shape factor, both faces held from"
-        f" sliding: good"
-        " for a first size, not for a proof"
+        f"stiffness of pads ({cut}) is estimated from the rubber and the shape factor, both faces held from "
+        "sliding: good for a first size, not for a proof"
     ]
 
 
@@ -45,8 +44,8 @@ def _pieces(brief: Brief) -> list[str]:
 
 def _absorbers(brief: Brief) -> list[str]:
     return [
-        f"{absorber.name}: a point mass guided on its body along its direction; its mode counts in separation like"
-        " any other, its stroke from where it rests, and its spring is not limited at rest"
+        f"{absorber.name}: a point mass guided on its body along its direction; its mode counts in separation "
+        "like any other, its stroke from where it rests, and its spring is not limited at rest"
         + ("; set to another tuning it keeps mass, damping ratio and stroke" if absorber.tunings else "")
         for absorber in brief.absorbers
     ]
@@ -58,8 +57,8 @@ def _structure(brief: Brief) -> list[str]:
         return []
     kept, highest = len(structure.modes.frequency), show(structure.modes.frequency[-1], "frequency")
     return [
-        f"{structure.name}: {structure.modes.left_out} modes above {highest} are"
-        f" left out ({kept} are kept); at rest and in vibration it yields by the modes kept alone"
+        f"{structure.name}: {structure.modes.left_out} modes above {highest} are left out ({kept} are kept); "
+        "at rest and in vibration it yields by the modes kept alone"
     ]
 
 
@@ -72,9 +71,9 @@ def _guided(brief: Brief) -> list[str]:
         held = [] if other is None else [f for f in other.free if f not in own.free]
         if other is not None and held:
             notes.append(
-                f"{own.name}: along {', '.join(held)} it is held by the ground and not by {other.name}, whose motion"
-                f" there the parts between them therefore resist; let it be free there if it goes along with"
-                f" {other.name}"
+                f"{own.name}: along {', '.join(held)} it is held by the ground and not by {other.name}, whose "
+                "motion there the parts between them therefore resist; let it be free there if it goes along "
+                f"with {other.name}"
             )
     return list(dict.fromkeys(notes))
 
@@ -119,14 +118,15 @@ def _laws(brief: Brief, mounts: tuple[Mount, ...]) -> list[str]:
         )
     if moving:
         notes.append(
-            f"stiffness over amplitude of {moving}: every response is taken at the amplitude it produces itself, found"
-            " by iteration; natural frequencies and separation at the listed stiffness; ratios to a unit load and band"
-            " limits at the worse of that amplitude and none; beyond the ends of a table its end values hold"
+            f"stiffness over amplitude of {moving}: every response is taken at the amplitude it produces "
+            "itself, found by iteration; natural frequencies and separation at the listed stiffness; ratios "
+            "to a unit load and band limits at the worse of that amplitude and none; beyond the ends of a "
+            "table its end values hold"
         )
     if unknown:
         notes.append(
-            f"damping of unknown kind ({unknown}): every response is judged with it read as viscous and read as a"
-            " loss factor, and the worse counts"
+            f"damping of unknown kind ({unknown}): every response is judged with it read as viscous and read "
+            "as a loss factor, and the worse counts"
         )
     return notes
 

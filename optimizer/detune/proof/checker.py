@@ -112,9 +112,8 @@ def taken_as_stated(entry: dict[str, Any]) -> list[str]:
         ]
     if kind == "rules":
         return [
-            f"that each of the {sum(int(rule['excluded']) for rule in data['rules'])} designs excluded at"
-            f" listed values "
-            "fails the rule it is counted under (only the sums are checked)"
+            f"that each of the {sum(int(rule['excluded']) for rule in data['rules'])} designs excluded at "
+            "listed values fails the rule it is counted under (only the sums are checked)"
         ]
     if kind == "search" and data["designs"]:
         known = data["selection"] is not None and data["final_test"] == "rows"
@@ -122,8 +121,8 @@ def taken_as_stated(entry: dict[str, Any]) -> list[str]:
             []
             if known and data["design_count"] <= LARGEST_ENUMERATION
             else [
-                f"that no cheaper design exists among the {data['design_count']} of the search, beyond what"
-                f" was enumerated"
+                f"that no cheaper design exists among the {data['design_count']} of the search, beyond what "
+                "was enumerated"
             ]
         )
     if kind == "candidate":

@@ -59,8 +59,8 @@ def _verdict_words(brief: Brief, verdict: DesignVerdict) -> str:
         text += f" Undecided: {'; '.join(bracket_words(row) for row in open_rows)}."
     if sampled:
         text += (
-            f" {len(sampled)} limits are sampled, not proven: every sample kept them, but no bound covers"
-            f" their kind."
+            f" {len(sampled)} limits are sampled, not proven: every sample kept them, but no bound covers "
+            "their kind."
         )
     return text
 
@@ -73,8 +73,8 @@ def _row(row: RowVerdict) -> str:
     own = as_margin_row(row)
     note = f" ({row.note})" if row.note and row.status != "sampled" else ""
     text = (
-        f"{STATUS_WORDS[row.status]}: {row.label}{note}: worst found {value_text(own)}, margin"
-        f" {margin_text(row.margin)}"
+        f"{STATUS_WORDS[row.status]}: {row.label}{note}: worst found {value_text(own)}, margin "
+        f"{margin_text(row.margin)}"
     )
     if row.guaranteed is not None:
         bound = as_margin_row(row, guaranteed=True)

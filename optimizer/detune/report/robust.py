@@ -124,8 +124,8 @@ def robust_lines(result: Result) -> list[str]:
                 f"which is {_fate(brief, robust.nominal)}."
             )
         cheaper = (
-            f"{len(robust.violated)} cheaper designs that meet the brief at listed values break a limit"
-            f" over the scatter"
+            f"{len(robust.violated)} cheaper designs that meet the brief at listed values break a limit over "
+            "the scatter"
         )
         if robust.optimal:
             lines.append(
@@ -133,9 +133,8 @@ def robust_lines(result: Result) -> list[str]:
             )
         else:
             lines.append(
-                f"It is the cheapest PROVEN design: {cheaper}; {len(robust.undecided) + len(robust.sampled)}"
-                f" more could be "
-                "neither proven nor violated, so a cheaper one may exist."
+                f"It is the cheapest PROVEN design: {cheaper}; {len(robust.undecided) + len(robust.sampled)} "
+                "more could be neither proven nor violated, so a cheaper one may exist."
             )
     elif robust.nominal is not None:
         lines.append(f"NOT PROVEN over the stated scatter ({stated}): {_no_winner(robust)}")
@@ -155,8 +154,8 @@ def robust_lines(result: Result) -> list[str]:
 def _no_winner(robust: RobustResult) -> str:
     if robust.undecided:
         return (
-            f"{len(robust.undecided)} designs could be neither proven nor violated, {len(robust.violated)}"
-            f" are violated."
+            f"{len(robust.undecided)} designs could be neither proven nor violated, {len(robust.violated)} "
+            "are violated."
         )
     if robust.sampled:
         return (
@@ -196,9 +195,8 @@ def _yield_line(result: Result, index: int, found: Yield | None) -> str:
         return f"  {name}: not sampled before the run was stopped"
     worst = f"; missed most: {found.missed[0][0]} ({found.missed[0][1]} times)" if found.missed else ""
     return (
-        f"  {name}: yield {100 * found.share:.1f} % ({found.met} of {found.samples} samples;"
-        f" {100 * found.confidence:g} % "
-        f"confidence {100 * found.low:.1f} to {100 * found.high:.1f} %){worst}"
+        f"  {name}: yield {100 * found.share:.1f} % ({found.met} of {found.samples} samples; "
+        f"{100 * found.confidence:g} % confidence {100 * found.low:.1f} to {100 * found.high:.1f} %){worst}"
     )
 
 
@@ -218,33 +216,28 @@ def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
 
     rows = tuple(
         (
-            row.condition,
-            row.place,
-            row.quantity,
+            row.label,
             _status_words(row),
             limit_text(as_margin_row(row)),
             value_text(as_margin_row(row)),
             margin_text(row.margin),
             "none" if row.guaranteed is None else value_text(as_margin_row(row, guaranteed=True)),
             "none" if row.guaranteed_margin is None else margin_text(row.guaranteed_margin),
-            _frequency(brief, row),
-            row.where,
+            ", ".join(text for text in (_frequency(brief, row), row.where) if text),
         )
         for row in sorted(verdict.rows, key=order)
     )
     note = (
-        "Worst found: evaluated exactly at the place named. Guaranteed: no value within the scatter and the"
-        " speed range is "
-        "worse; the proof was carried on only until the limit was decided, so the truth lies between the"
-        " two. A lot's and "
-        "a part's deviation multiply. Static parts of a travel or of an uplift limit are taken at their own worst."
+        "Worst found: evaluated exactly at the place named. Guaranteed: no value within the scatter and the speed "
+        "range is worse; the proof was carried on only until the limit was decided, so the truth lies between the "
+        "two. A lot's and a part's deviation multiply. Static parts of a travel or of an uplift limit are taken at "
+        "their own worst."
     )
     columns = (
-        "condition", "place", "quantity", "status", "limit", "worst found", "margin", "guaranteed", "guaranteed"
-                                                                                          " margin", "worst at",
-        "where in the scatter",
+        "requirement", "status", "limit", "worst found", "margin", "guaranteed", "guaranteed margin",
+        "worst at",
     )  # fmt: skip
-    return Table("Worst case over the scatter", columns, rows, frozenset({4, 5, 6, 7, 8, 9}), note)
+    return Table("Worst case over the scatter", columns, rows, frozenset({2, 3, 4, 5, 6}), note)
 
 
 def price_table(result: Result) -> Table | None:

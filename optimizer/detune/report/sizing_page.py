@@ -60,9 +60,8 @@ def sizing_summary(result: SizingResult) -> str:
         lines += [f"and {len(others) - SHOWN} more branches, in the report"] if len(others) > SHOWN else []
     lines += [tables_opinion.opinion_text(result)] if result.opinion is not None else []
     lines += [
-        f"Under the stated scatter the worst response grows from {each.nominal:.4g} to {each.greatest:.4g} of"
-        f" its limit "
-        f"(absorber {each.absorber}; sampled, no proof)"
+        f"Under the stated scatter the worst response grows from {each.nominal:.4g} to {each.greatest:.4g} of "
+        f"its limit (absorber {each.absorber}; sampled, no proof)"
         for each in result.scattered
     ]
     lines += [

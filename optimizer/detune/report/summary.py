@@ -121,10 +121,9 @@ def proof_lines(result: Result) -> list[str]:
         return ["Not proven: the counts of the proof record do not add up."]
     met = result.front.designs.count
     return [
-        f"Proven by {record.method}: of {record.designs} designs every one is counted, each excluded one under the "
-        f"requirement it failed; {met} remain, and {_which(result)} the {BEST_WORDS[trade[0]]} of them,"
-        f" confirmed by the "
-        "assessor. Parts at their listed values."
+        f"Proven by {record.method}: of {record.designs} designs every one is counted, each excluded one "
+        f"under the requirement it failed; {met} remain, and {_which(result)} the {BEST_WORDS[trade[0]]} of "
+        "them, confirmed by the assessor. Parts at their listed values."
     ]
 
 

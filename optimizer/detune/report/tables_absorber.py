@@ -56,12 +56,11 @@ def forms_table(result: SizingResult) -> Table:
             )
     columns = ("absorber", "tuning by", "best for", "mass ratio", "tuning", "damping ratio", "height", WORST)
     note = (
-        "A closed form is for one mass on one spring under its own excitation; the machine is taken as that"
-        " on the axial "
-        "stiffness of its own parts. Damping ratio: of the absorber's own frequency. Height: what the form"
-        " promises, the "
-        "greatest magnitude over the static value, or the variance under white noise of unit intensity. The last "
-        "column judges every form by the study's own equations, limits and ranges."
+        "A closed form is for one mass on one spring under its own excitation; the machine is taken as that "
+        "on the axial stiffness of its own parts. Damping ratio: of the absorber's own frequency. Height: "
+        "what the form promises, the greatest magnitude over the static value, or the variance under white "
+        "noise of unit intensity. The last column judges every form by the study's own equations, limits and "
+        "ranges."
     )
     return Table("Absorber beside closed forms", columns, tuple(rows), frozenset({3, 4, 5, 6, 7}), note)
 
@@ -91,10 +90,9 @@ def scatter_table(result: SizingResult) -> Table:
     first = result.scattered[0]
     corners = "every corner" if first.all_corners else "some corners"
     note = (
-        f"Scatter: {'; '.join(first.stated) or 'none, for parts made to order have no listed tolerance'}. Judged at "
-        f"{corners} of the scatter and at random points inside: no proof, and the truth may be a little"
-        f" higher. Off its "
-        "tuning: by the scatter of its own springs and mass alone."
+        f"Scatter: {'; '.join(first.stated) or 'none, for parts made to order have no listed tolerance'}. "
+        f"Judged at {corners} of the scatter and at random points inside: no proof, and the truth may be a "
+        "little higher. Off its tuning: by the scatter of its own springs and mass alone."
     )
     columns = (
         "absorber",

@@ -36,10 +36,10 @@ def opinion_table(result: SizingResult) -> Table:
     rows.append(("least margin, assessed", best, judged))
     rows.append(("processor time", show(opinion.exact_seconds, "time", 2), show(opinion.seconds, "time", 2)))
     note = (
-        f"Called the same where the objectives differ by less than {AGREE:g} of their value. SCIP stands on its limits "
-        "within its own tolerance, so that its margin may be a rounding below zero; the exact design stands"
-        " two parts in "
-        "a million inside. Processor time is from the statement to the answer, without the start of SCIP's process."
+        f"Called the same where the objectives differ by less than {AGREE:g} of their value. SCIP stands on "
+        "its limits within its own tolerance, so that its margin may be a rounding below zero; the exact "
+        "design stands two parts in a million inside. Processor time is from the statement to the answer, "
+        "without the start of SCIP's process."
     )
     if opinion.relaxed:
         note += " Both leave to the assessor: " + "; ".join(opinion.relaxed) + "."

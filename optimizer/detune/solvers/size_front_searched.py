@@ -49,9 +49,9 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
         if found.best is not None:
             points.append(_point(brief, found.best.values, "local"))
     worth = (
-        f"least {minimised} at levels of {', '.join(held)}, each the best of a few local searches: no proof;"
-        f" the gap of "
-        "each point says by how much it can lie above what no design falls below, where that is known"
+        f"least {minimised} at levels of {', '.join(held)}, each the best of a few local searches: no proof; "
+        "the gap of each point says by how much it can lie above what no design falls below, where that is "
+        "known"
     )
     kept = with_bounds(brief, minimised, nondominated(points, trade))
     return SizingFront(trade, minimised, kept, worth, exact=False)

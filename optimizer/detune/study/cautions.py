@@ -16,14 +16,14 @@ CAUTIONS: tuple[str, ...] = (
     LISTED,
 )
 STRUCTURE = (
-    "The structure moves in the modes stated and in no others, other bodies are rigid. Loose connections and"
-    " a floor that "
-    "is not as stated change the response; measure the natural frequencies and the vibration after installation."
+    "The structure moves in the modes stated and in no others, other bodies are rigid. Loose connections and "
+    "a floor that is not as stated change the response; measure the natural frequencies and the vibration "
+    "after installation."
 )
 INTERVAL = (
-    "What is proven over the scatter holds for the intervals stated and for the machine as modelled, for"
-    " nothing beyond: "
-    "wear, temperature, creep and parts outside their tolerance are not in it unless the brief states them."
+    "What is proven over the scatter holds for the intervals stated and for the machine as modelled, for "
+    "nothing beyond: wear, temperature, creep and parts outside their tolerance are not in it unless the "
+    "brief states them."
 )
 YIELD = (
     "A yield is an estimate from samples of the distribution stated; single machines may miss a limit, and the margins "

@@ -70,6 +70,6 @@ class Gap(HarmonicAllowable):
 
     def quantity(self) -> str:
         return (
-            f"travel towards {direction_words(self.direction)} to a stop on {self.stands_on}, from"
-            f" {self.clearance_of}"
+            f"travel towards {direction_words(self.direction)} to a stop on {self.stands_on}, from "
+            f"{self.clearance_of}"
         )

@@ -176,12 +176,10 @@ def caption(data: ResponseData) -> str:
     )
     if data.scatter:
         text += (
-            f" The pale ribbon along the curve is its range over the scatter ({data.scatter}), sampled at"
-            f" {data.points} "
-            "points of it, not proven; the dash-dotted line is what is proven not to be exceeded over all of"
-            " the scatter "
-            "and the whole range. Where a proof stops as soon as the limit is decided, that line lies close"
-            " to the limit."
+            f" The pale ribbon along the curve is its range over the scatter ({data.scatter}), sampled at "
+            f"{data.points} points of it, not proven; the dash-dotted line is what is proven not to be "
+            "exceeded over all of the scatter and the whole range. Where a proof stops as soon as the limit "
+            "is decided, that line lies close to the limit."
         )
     if any(panel.barred for panel in data.panels):
         text += " Hatched are the bands of speed in which the machine may not dwell; they are not judged."

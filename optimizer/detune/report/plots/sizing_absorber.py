@@ -94,8 +94,8 @@ def _curves(
 def caption(data: AbsorberData) -> str:
     """Return what the plot shows, in words."""
     text = (
-        f"Left: {data.quantity}, over its limit; shaded, where it is judged. Right: the worst response"
-        f" over its limit "
+        f"Left: {data.quantity}, over its limit; shaded, where it is judged. Right: the worst response over "
+        "its limit "
     )
     text += f"with the tuning of {data.absorber} off and everything else as sized"
     if data.stated is not None:
