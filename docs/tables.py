@@ -172,7 +172,7 @@ MEANING: dict[str, str] = {
     "Absorber.tunings": "frequencies to which absorbers that can be set may be set, besides their listed one",
     "Absorber.empty": "whether it may be left out",
     "Stroke.absorbers": "the absorbers for which it holds; left out: all",
-    "Stroke.limit": "`\"part\"` for the stroke the list states, or a length",
+    "Stroke.limit": '`"part"` for the stroke the list states, or a length',
     "Objectives.trade": "the first decides the answer; the front is over all",
     # Sizing
     "Sizing.unknown": "the unknowns",

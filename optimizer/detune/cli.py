@@ -150,6 +150,8 @@ def _check(options: argparse.Namespace) -> int:
 
         study = load_study(options.study)
     finally:
+        # All that was read stays until the end: the last collection need not go through it.
+        gc.freeze()
         gc.enable()
     brief = study.brief
     parts = ", ".join(f"{len(catalog.parts)} in {name}" for name, catalog in study.catalogs.items())

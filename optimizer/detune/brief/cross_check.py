@@ -200,7 +200,9 @@ def _sustained(brief: Brief, path: Path) -> list[Finding]:
     """What a sustained acceleration is not carried through to."""
     found = "a sustained acceleration"
     if brief.absorbers:
-        expected = "none beside absorbers, whose masses it would pull along their springs and out of their stroke"
+        expected = (
+            "none beside absorbers, whose masses it would pull along their springs and out of their stroke"
+        )
         return [Finding(path, found, expected, depends=("absorber",))]
     if brief.scatter is not None and (brief.scatter.mass is not None or brief.scatter.centre is not None):
         expected = "none under scatter of mass or centre: the pull would scatter with them"

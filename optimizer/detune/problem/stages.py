@@ -63,7 +63,8 @@ def stages(problem: Problem) -> tuple[Stage, ...]:
         result.append(_response(group, slow_parts=True))
     result += [_banded(group) for group in problem.bands]
     result += [
-        Stage("speeds not to dwell at", (each.requirement,), each.margins, False, 100) for each in problem.dwell
+        Stage("speeds not to dwell at", (each.requirement,), each.margins, False, 100)
+        for each in problem.dwell
     ]
     return tuple(result)
 

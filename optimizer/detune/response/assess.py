@@ -250,7 +250,9 @@ def design_totals(brief: Brief, design: Design) -> DesignView:
         for absorber in brief.absorbers
     )
     numbers = len({(row.what, row.catalog, row.part) for row in rows if not row.by_weight})
-    return DesignView(np.array([sum(row.cost for row in rows)]), np.array([added]), np.array([float(numbers)]))
+    return DesignView(
+        np.array([sum(row.cost for row in rows)]), np.array([added]), np.array([float(numbers)])
+    )
 
 
 def exempt_amplification(brief: Brief) -> float | None:

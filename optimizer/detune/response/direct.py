@@ -228,7 +228,9 @@ class DirectMachine:
         if self.brief.ballast is not None and self.design.ballast > 0.0:
             box = ballast_of(self.brief, self.design)
             inertia = box_inertia(box.mass, np.array(box.size))
-            pieces.append((body_of(self.brief, self.brief.ballast.on), box.mass, np.array(box.centre), inertia))
+            pieces.append(
+                (body_of(self.brief, self.brief.ballast.on), box.mass, np.array(box.centre), inertia)
+            )
         for node, mass, centre, inertia in pieces:
             move, turn = self.place(node, centre), self.turn(node)
             total += mass * move.T @ move + turn.T @ inertia @ turn

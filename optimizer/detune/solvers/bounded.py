@@ -111,9 +111,7 @@ class _Work:
         self._take(case, result)
 
     def _take(self, case: Case, result: SearchResult) -> None:
-        self.found += [
-            _Found(case.parts(design.parts), case.step, design.cost) for design in result.designs
-        ]
+        self.found += [_Found(case.parts(design.parts), case.step, design.cost) for design in result.designs]
         for rule, count in result.counts.items():
             self.counts[rule] = self.counts.get(rule, 0) + count
         self.open[case] = result.lower_bound
