@@ -6,18 +6,13 @@ have the signatures of `kernels_numpy.py` and take its routines wherever a facto
 
 from __future__ import annotations
 
-import hashlib
-import importlib.util
-import os
-import sys
-import tempfile
 from collections.abc import Callable
 from pathlib import Path
-from types import ModuleType
 from typing import Any
 
 import numpy as np
 
+from detune.ground import compiled
 from detune.proof import kernels_numpy
 from detune.proof.kernel_source import BLOCK, kernel_source
 from detune.proof.loewner import Flags
@@ -26,7 +21,7 @@ from detune.proof.selection_data import Complexes, Floats, Integers
 LARGEST_FREEDOMS = 9
 WORTH_WHEN_CACHED = 1_000_000
 WORTH_WHEN_NEW = 20_000_000
-MARK = "# --- compiled below ---"
+DECORATOR = '@njit(cache=True, nogil=True, fastmath={"contract"}, error_model="numpy")'
 HEADER = '''"""Generated kernels for {n} freedoms; safe to delete."""
 from __future__ import annotations
 
@@ -37,50 +32,23 @@ from detune.proof.block_data import Ask, Bench, Domain, Frame, Node
 '''
 
 
-def cache_folder() -> Path:
-    """Folder of the compiled kernels: DETUNE_CACHE, else XDG_CACHE_HOME/detune, else ~/.cache/detune.
-
-    Where none of them can be written, a folder of this user in the temporary directory.
-    """
-    stated = os.environ.get("DETUNE_CACHE")
-    base = Path(os.environ.get("XDG_CACHE_HOME") or Path.home() / ".cache") / "detune"
-    folder = Path(stated) if stated else base
-    try:
-        folder.mkdir(mode=0o700, parents=True, exist_ok=True)
-        if os.access(folder, os.W_OK):
-            return folder
-    except OSError:
-        pass
-    return Path(tempfile.mkdtemp(prefix="detune-kernels-"))
-
-
 def module_text(n: int) -> str:
     """Text of the compiled module for n freedoms: block kernels, search nodes, response nodes."""
     here = Path(__file__).parent
-    texts = [kernel_source(n)]
-    for name in ("block_rules.py", "block_search.py", "block_response.py"):
-        texts.append((here / name).read_text(encoding="utf-8").split(MARK, 1)[1])
-    body = "\n".join(texts)
-    decorated = "\n".join(
-        ('@njit(cache=True, nogil=True, fastmath={"contract"}, error_model="numpy")\n' + line)
-        if line.startswith("def ")
-        else line
-        for line in body.splitlines()
-    )
-    return HEADER.format(n=n) + decorated + "\n"
+    names = ("block_rules.py", "block_search.py", "block_response.py")
+    texts = [kernel_source(n), *((here / name).read_text(encoding="utf-8") for name in names)]
+    return HEADER.format(n=n) + compiled.decorated(texts, DECORATOR)
 
 
 def kernel_file(n: int) -> tuple[Path, str]:
     """Path and text of the generated module; the name carries a hash of the text."""
     text = module_text(n)
-    digest = hashlib.sha256(text.encode()).hexdigest()[:16]
-    return cache_folder() / f"detune_kernels_{n}_{digest}.py", text
+    return compiled.module_file(f"detune_kernels_{n}", text), text
 
 
 def is_cached(n: int) -> bool:
     """Whether kernels for n freedoms were compiled before, by this version of the program."""
-    path, _ = kernel_file(n)
-    return path.with_suffix(".ready").exists()
+    return compiled.is_ready(kernel_file(n)[0])
 
 
 def worth_compiling(predicted_designs: float, n: int) -> bool:
@@ -90,37 +58,20 @@ def worth_compiling(predicted_designs: float, n: int) -> bool:
     return predicted_designs >= WORTH_WHEN_NEW or is_cached(n)
 
 
-_loaded: dict[str, ModuleType] = {}
-
-
 def load_kernels(n: int, announce: Callable[[str], None] | None = None) -> Any:
     """The compiled module for n freedoms; tells `announce` when it has to be compiled first.
 
     Raises ValueError for n outside 1 to 9.
     """
     path, text = kernel_file(n)
-    if path.name in _loaded:
-        return _loaded[path.name]
-    if not path.exists():
-        # Another process may write the same file: an atomic rename leaves either text whole.
-        part = path.with_suffix(f".{os.getpid()}.part")
-        part.write_text(text, encoding="utf-8")
-        part.replace(path)
-    ready = path.with_suffix(".ready")
-    if not ready.exists() and announce is not None:
+    if announce is not None and not compiled.is_ready(path):
         announce("Compiling the search kernels; this is done once and takes about a minute.")
-    spec = importlib.util.spec_from_file_location(path.stem, path)
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    sys.modules[path.stem] = module
-    spec.loader.exec_module(module)
-    _loaded[path.name] = module
-    return module
+    return compiled.load(path, text)
 
 
 def mark_ready(n: int) -> None:
     """Note that the kernels for n freedoms have been compiled, so that nobody is told again."""
-    kernel_file(n)[0].with_suffix(".ready").touch()
+    compiled.mark_ready(kernel_file(n)[0])
 
 
 def _blocks(matrices: Floats) -> tuple[Floats, int]:

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.brief.allowable.base import Allowable
 from detune.brief.brief import Brief
 from detune.brief.machine import Body, Station
 from detune.brief.sizing import MadePart, Sizing, SizingUnknown
@@ -72,6 +73,15 @@ def made_table(brief: Brief, group: str) -> MadePart:
     return next(made for made in sizing_of(brief).made if made.group == group)
 
 
+def asks_for_own_range(brief: Brief, allowable: Allowable) -> bool:
+    """Whether a limit is on the load or deflection that the study states of its made parts."""
+    made = sizing_of(brief).made
+    if allowable.kind == "load-range":
+        return any(part.load_min > 0.0 or part.load_max is not None for part in made)
+    own = allowable.kind == "mount-deflection" and getattr(allowable, "limit", None) == "part"
+    return own and any(part.deflection_max is not None for part in made)
+
+
 def _value(given: Mapping[SizingUnknown, float], group: str, kind: str, *axes: str | None) -> float | None:
     for unknown, value in given.items():
         if unknown.group == group and unknown.kind == kind and (not axes or unknown.axis in axes):
@@ -123,17 +133,17 @@ def made_mount(brief: Brief, group: str, given: Mapping[SizingUnknown, float]) -
         viscous=(across, across, damping),
         damping_from="sizing",
         damping_stated=damping or eta,
-        load_min=0.0,
-        load_max=float("inf"),
+        load_min=made.load_min,
+        load_max=float("inf") if made.load_max is None else made.load_max,
         load_rated=None,
-        deflection_max=None,
+        deflection_max=made.deflection_max,
         pulls=made.pulls,
-        free_height=None,
+        free_height=made.free_height,
         mass=None,
         cost=cost,
-        tolerance=0.0,
-        temperature_min=None,
-        temperature_max=None,
+        tolerance=made.tolerance or 0.0,
+        temperature_min=made.temperature_min,
+        temperature_max=made.temperature_max,
         stock=None,
     )
 

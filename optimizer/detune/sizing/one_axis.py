@@ -1,7 +1,7 @@
 """Exact global sizing of one mount axis: stiffness, damping and ballast, every feasible branch named.
 
-At fixed mass the answer is exact (`envelope`, `exchange`). Ballast in steps is solved step by step; continuous
-ballast by branch and bound over the mass alone (`ballast_search`), with the gap stated.
+At fixed mass the answer is exact (`slice_envelope`, `slice_exchange`). Ballast in steps is solved step by
+step; continuous ballast by branch and bound over the mass alone (`ballast_search`), with the gap stated.
 """
 
 from __future__ import annotations
@@ -9,21 +9,9 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, replace
 
-import numpy as np
-
 from detune.sizing.ballast_search import search_masses
-from detune.sizing.envelope import Segment
-from detune.sizing.exchange import LinePool, solve_slice
-from detune.sizing.slice_objective import separation
-from detune.sizing.statement import (
-    STANDARD_GRAVITY,
-    OneAxisProblem,
-    ResponseLimit,
-    SizingError,
-    excitations,
-    power_form,
-)
-from detune.sizing.worst_frequency import worst
+from detune.sizing.slice_kernels import Form, Segment, Slices
+from detune.sizing.statement import STANDARD_GRAVITY, OneAxisProblem, SizingError
 
 # A limit or bound this close (relative) to its value is called tight.
 TIGHT = 1e-6
@@ -105,13 +93,18 @@ def branch_name(low: float, high: float, intervals: tuple[tuple[float, float], .
         return "no excitation stated"
     slack = 1e-9
     crossed = [i for i, (a, b) in enumerate(intervals, 1) if low < b * (1 - slack) and high > a * (1 + slack)]
-    crossed += [i for i, (a, b) in enumerate(intervals, 1) if a == b and low < a < high and i not in crossed]
+    inside = (low * (1 + slack), high * (1 - slack))
+    crossed += [
+        i
+        for i, (a, b) in enumerate(intervals, 1)
+        if a == b and inside[0] < a < inside[1] and i not in crossed
+    ]
     if crossed:
         first, last = min(crossed), max(crossed)
         a, b = intervals[first - 1]
         if first == last:
-            inside = low >= a * (1 - slack) and high <= b * (1 + slack)
-            return f"{'inside' if inside else 'across'} the {ordinal(first)} excitation"
+            within = low >= a * (1 - slack) and high <= b * (1 + slack)
+            return f"{'inside' if within else 'across'} the {ordinal(first)} excitation"
         return f"across the {ordinal(first)} to the {ordinal(last)} excitation"
     below = sum(1 for _, b in intervals if 0.5 * (low + high) > b)
     if below == 0:
@@ -121,39 +114,23 @@ def branch_name(low: float, high: float, intervals: tuple[tuple[float, float], .
     return f"between the {ordinal(below)} and the {ordinal(below + 1)} excitation"
 
 
-def margin_of(
-    limit: ResponseLimit, problem: OneAxisProblem, stiffness: float, damping: float, mass: float
-) -> LimitState:
-    """Exact margin limit/response - 1 of one limit at one design, worst over its whole range."""
-    gamma = damping**2 if problem.damping_kind == "viscous" else (damping * stiffness) ** 2
-    u = [(2 * math.pi * f) ** 2 for f in (limit.lower_frequency, limit.upper_frequency)]
-    form = power_form(limit)
-    if u[0] == u[1]:
-        loss = gamma * u[0] if problem.damping_kind == "viscous" else gamma
-        top = form.scale * u[0] ** form.power * (mass**2 if form.mass_proportional else 1.0)
-        top *= stiffness**2 + loss if form.transmission else 1.0
-        dynamic = (stiffness - mass * u[0]) ** 2 + loss
-        margin = math.sqrt(dynamic / top) - 1.0
-        return LimitState(limit.name, margin, limit.lower_frequency)
-    ratio, at = worst(
-        form,
-        problem.damping_kind,
-        np.array([stiffness]),
-        np.array([gamma]),
-        mass,
-        u[0],
-        u[1],
-    )
-    margin = -1.0 if math.isinf(ratio[0]) else 1.0 / math.sqrt(ratio[0]) - 1.0
-    return LimitState(limit.name, margin, math.sqrt(at[0]) / (2 * math.pi))
+def apart(frequency: float, intervals: tuple[tuple[float, float], ...]) -> float:
+    """Least separation of a natural frequency from all excitation intervals (Hz both).
+
+    f/f_b - 1 above and 1 - f/f_a below an interval; inside it the larger of the two, which is negative.
+    """
+    return min((max(frequency / b - 1.0, 1.0 - frequency / a) for a, b in intervals), default=math.inf)
 
 
-def describe(
-    problem: OneAxisProblem, stiffness: float, damping: float, added: float, objective: float
-) -> SizedDesign:
+def describe(slices: Slices, stiffness: float, damping: float, added: float, objective: float) -> SizedDesign:
     """Judge one design (SI, `added` the ballast in kg) by the exact equations and name what is tight."""
+    problem = slices.problem
     mass = problem.mass + added
-    states = tuple(margin_of(x, problem, stiffness, damping, mass) for x in problem.limits)
+    margins = slices.margins(mass, stiffness, damping)
+    states = tuple(
+        LimitState(limit.name, margin, frequency)
+        for limit, (margin, frequency) in zip(problem.limits, margins, strict=True)
+    )
     tight = [s.name for s in states if abs(s.margin) <= TIGHT]
     frequency = math.sqrt(stiffness / mass) / (2 * math.pi)
 
@@ -174,9 +151,9 @@ def describe(
         tight += ["greatest sag"] if at(sag, problem.sag.most) else []
         tight += ["least sag"] if at(sag, problem.sag.least) else []
     if problem.separation is not None:
-        value = float(separation(np.array([frequency]), problem.excitation_intervals)[0])
+        value = apart(frequency, problem.excitation_intervals)
         tight += ["separation"] if abs(value - problem.separation) <= TIGHT else []
-    edges = [edge for pair in excitations(problem) for edge in pair]
+    edges = [edge for pair in slices.excitations for edge in pair]
     tight += (
         ["natural frequency at the edge of an excitation"] if any(at(frequency, x) for x in edges) else []
     )
@@ -187,21 +164,24 @@ def _sign(problem: OneAxisProblem) -> float:
     return -1.0 if problem.objective.goal in ("stiffest", "greatest separation") else 1.0
 
 
-def _branch(problem: OneAxisProblem, pool: LinePool, added: float, segment: Segment) -> Branch:
-    scales = pool.scales
-    viscous = problem.damping_kind == "viscous"
+def _branch(
+    slices: Slices, added: float, segment: Segment, place: tuple[float, float] | None = None
+) -> Branch:
+    """A segment as a branch, named by its own natural frequencies or by those of a position (k/m, scaled)."""
+    problem = slices.problem
     # Scaling and back may leave a bound by one unit in the last place.
     softest, stiffest = problem.stiffness_bounds
-    stiffness = min(max(segment.stiffness * scales.stiffness, softest), stiffest)
-    root = math.sqrt(max(segment.gamma, 0.0) * scales.gamma(viscous))
-    damping = root if viscous else root / stiffness
+    stiffness = min(max(segment.stiffness, softest), stiffest)
     low, high = problem.damping_bounds
     kilograms = problem.mass + added
     value = _sign(problem) * segment.value
-    best = describe(problem, stiffness, min(max(damping, low), high), added, value)
-    ends = (max(segment.left * scales.stiffness, softest), min(segment.right * scales.stiffness, stiffest))
-    hertz = [math.sqrt(k / kilograms) / (2 * math.pi) for k in ends]
-    return Branch(branch_name(hertz[0], hertz[1], excitations(problem)), ends, best)
+    best = describe(slices, stiffness, min(max(segment.damping, low), high), added, value)
+    ends = (max(segment.left, softest), min(segment.right, stiffest))
+    if place is None:
+        hertz = [math.sqrt(k / kilograms) / (2 * math.pi) for k in ends]
+    else:
+        hertz = [math.sqrt(each / slices.scales.to_u) for each in place]
+    return Branch(branch_name(hertz[0], hertz[1], slices.excitations), ends, best)
 
 
 def _number_islands(branches: list[Branch]) -> list[Branch]:
@@ -218,35 +198,86 @@ def _number_islands(branches: list[Branch]) -> list[Branch]:
     return result
 
 
-def solve_one_axis(problem: OneAxisProblem) -> OneAxisOutcome:
+def _steps(problem: OneAxisProblem) -> tuple[float, ...] | None:
+    """The ballasts (kg) to be tried one by one; None: ballast is continuous."""
+    ballast = problem.ballast
+    if ballast is None:
+        return (0.0,)
+    if ballast.step is not None:
+        return ballast.values()
+    return (ballast.least,) if ballast.least == ballast.most else None
+
+
+def least_value(problem: OneAxisProblem, form: Form = "auto") -> float:
+    """The best goal alone, in the goal's own sense; NaN where no design meets all limits."""
+    slices = Slices(problem, form)
+    steps = _steps(problem)
+    if steps is None:
+        results, _, _ = search_masses(slices, slices.excitations, only_best=True)
+        values = [found.segment.value for found in results]
+    else:
+        values = [s.value for step in steps for s in slices.at(problem.mass + step).segments]
+    return _sign(problem) * min(values) if values else math.nan
+
+
+def best_count(
+    problem: OneAxisProblem, least: int, most: int, cost: float, form: Form = "auto"
+) -> tuple[int, OneAxisOutcome] | None:
+    """The best whole number of equal parts side by side, each of them adding `cost`, and the outcome with so many.
+
+    The bounds of stiffness and viscous damping are those of one part. Every number is solved; None where no number of
+    them has a design.
+    """
+    sign = _sign(problem)
+    tried = []
+    for count in range(least, most + 1):
+        many = _side_by_side(problem, count)
+        value = least_value(many, form)
+        if not math.isnan(value):
+            tried.append((sign * value + cost * count, count, many))
+    if not tried:
+        return None
+    _, count, many = min(tried, key=lambda each: each[:2])
+    return count, solve_one_axis(many, form)
+
+
+def _side_by_side(problem: OneAxisProblem, count: int) -> OneAxisProblem:
+    softest, stiffest = problem.stiffness_bounds
+    low, high = problem.damping_bounds
+    share = count if problem.damping_kind == "viscous" else 1
+    return replace(
+        problem,
+        stiffness_bounds=(softest * count, stiffest * count),
+        damping_bounds=(low * share, high * share),
+    )
+
+
+def solve_one_axis(problem: OneAxisProblem, form: Form = "auto") -> OneAxisOutcome:
     """Global optimum of a one-axis sizing problem with every disjoint branch, best branch first.
 
-    Raises SizingError when the problem is stated wrongly. An outcome without branches is a proof that
-    nothing within the bounds meets all limits (points of zero width excepted).
+    `form`: interpreted ("plain"), "compiled", or what serves the number of problems solved so far. Raises SizingError
+    when the problem is stated wrongly. An outcome without branches is a proof that nothing within the bounds meets
+    all limits (points of zero width excepted).
     """
-    pool = LinePool.of(problem)
-    everything = (0.0, math.inf)
+    slices = Slices(problem, form)
     branches: list[Branch] = []
-    violation, gap = 0.0, 0.0
-    ballast = problem.ballast
-    if ballast is None or ballast.step is not None or ballast.least == ballast.most:
-        if ballast is None:
-            steps: tuple[float, ...] = (0.0,)
-        else:
-            steps = ballast.values() if ballast.step is not None else (ballast.least,)
+    violation, gap, decided = 0.0, 0.0, True
+    steps = _steps(problem)
+    if steps is not None:
         for kilograms in steps:
-            mass = (problem.mass + kilograms) / pool.scales.mass()
-            answer = solve_slice(pool, mass, everything)
+            answer = slices.at(problem.mass + kilograms)
             violation, gap = max(violation, answer.excess), max(gap, answer.gap)
-            branches += [_branch(problem, pool, kilograms, s) for s in answer.segments]
+            decided = decided and answer.decided
+            branches += [_branch(slices, kilograms, s) for s in answer.segments]
         least = min((abs(b.best.objective) for b in branches), default=0.0)
-        decided = violation <= 1e-9 and gap <= 1e-7 * max(least, 1e-12)
+        decided = decided and violation <= 1e-9 and gap <= 1e-7 * max(least, 1e-12)
     else:
-        results, gap, decided = search_masses(pool, excitations(problem))
-        for mass, segment, excess in results:
-            violation = max(violation, excess)
-            added = min(max(mass * pool.scales.mass() - problem.mass, ballast.least), ballast.most)
-            branches.append(_branch(problem, pool, added, segment))
+        results, gap, decided = search_masses(slices, slices.excitations)
+        for found in results:
+            violation = max(violation, found.excess)
+            assert problem.ballast is not None
+            added = min(max(found.mass - problem.mass, problem.ballast.least), problem.ballast.most)
+            branches.append(_branch(slices, added, found.segment, found.place))
     sign = _sign(problem)
     branches = _number_islands(branches)
     branches.sort(key=lambda x: (sign * x.best.objective, x.best.mass))
