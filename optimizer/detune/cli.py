@@ -11,11 +11,9 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
-
     from detune.brief.brief import Brief
     from detune.response.assessment import Assessment
-    from detune.solvers.outcome import Progress, Settings
+    from detune.solvers.outcome import Settings
     from detune.study.over_scatter import OverScatter
 
 MEETS, NONE_MEETS, FAULTY, STOPPED = 0, 1, 2, 3
@@ -129,8 +127,10 @@ def _add_options(
     size.add_argument(
         "--time-limit", metavar="TIME", help='of the second opinion, for example "20 s" (default: 60 s)'
     )
-    for verb in (run, vary):
-        verb.add_argument("--time-limit", metavar="TIME", help='stop after this time, for example "60 s"')
+    ends = 'stop the search after this time, for example "60 s"'
+    more = f"{ends}, and what is optional after it when as much has passed again"
+    run.add_argument("--time-limit", metavar="TIME", help=more)
+    vary.add_argument("--time-limit", metavar="TIME", help=ends)
     for verb in (assess, compare):
         verb.add_argument(
             "--time-limit",
@@ -171,13 +171,19 @@ def _check(options: argparse.Namespace) -> int:
         steps,
     )
     print("  " + ", ".join(f"{count} {name}{'' if count == 1 else 's'}" for count, name in counted))
-    print(f"  parts: {parts}")
+    if parts or brief.sizing is None:
+        print(f"  parts: {parts}")
+    if brief.sizing is not None:
+        sizing = brief.sizing
+        sense = "minimise" if sizing.minimise else "maximise"
+        print(f"  to be sized ({sense} {sizing.goal}): {', '.join(u.title for u in sizing.unknown)}")
     return MEETS
 
 
 def _run(options: argparse.Namespace) -> int:
     from detune.report.folder import check_folder, write_folder
     from detune.report.summary import summary
+    from detune.study.after_search import AfterSearch
     from detune.study.load import load_study
     from detune.study.named import named_design
     from detune.study.run import run_study
@@ -186,9 +192,11 @@ def _run(options: argparse.Namespace) -> int:
     folder = Path(options.out) if options.out else Path("results") / Path(options.study).stem
     check_folder(folder, options.overwrite)
     designs = tuple(named_design(study.brief, study.catalogs, text) for text in options.design)
-    result = run_study(study, _settings(options), designs, options.method)
-    write_folder(result, folder, options.overwrite)
-    print(summary(result))
+    settings = _settings(options, stages=True)
+    work = AfterSearch(settings)
+    result = run_study(study, settings, designs, options.method, work)
+    write_folder(result, folder, options.overwrite, work)
+    print(summary(result, work=work))
     print(f"\nResult folder: {folder} (open report.html in a browser)")
     return result.exit_code
 
@@ -227,7 +235,7 @@ def _judged(
     options: argparse.Namespace, texts: Sequence[str]
 ) -> "tuple[Brief, list[Assessment], list[OverScatter | None]]":
     from detune.problem.build import build
-    from detune.response.assess import assess
+    from detune.response.assessor import Assessor
     from detune.study.load import load_study
     from detune.study.named import named_design
     from detune.study.over_scatter import over_scatter
@@ -236,9 +244,10 @@ def _judged(
     problem = build(study.brief, study.catalogs)
     limit = _settings(options).time_limit
     designs = [named_design(study.brief, study.catalogs, text) for text in texts]
+    assess = Assessor(study.brief)
     return (
         study.brief,
-        [assess(study.brief, design) for design in designs],
+        [assess(design) for design in designs],
         [over_scatter(problem, design, limit) for design in designs],
     )
 
@@ -305,9 +314,10 @@ def _schema(options: argparse.Namespace) -> int:
     return MEETS
 
 
-def _settings(options: argparse.Namespace) -> "Settings":
+def _settings(options: argparse.Namespace, stages: bool = False) -> "Settings":
     from detune.ground.errors import BriefError, Fault
     from detune.ground.units import UnitError, parse
+    from detune.report.terminal import Terminal
     from detune.solvers.outcome import Settings
 
     limit = None
@@ -318,22 +328,11 @@ def _settings(options: argparse.Namespace) -> "Settings":
             raise BriefError(
                 [Fault("--time-limit", None, "--time-limit", error.found, error.expected)]
             ) from None
+    terminal = Terminal()
     return Settings(
         time_limit=limit,
-        progress=_progress() if sys.stderr.isatty() else None,
-        announce=lambda text: print(text, file=sys.stderr, flush=True),
+        progress=terminal.progress,
+        announce=terminal.announce,
+        stage=terminal.stage if stages else None,
         workers=max(1, getattr(options, "workers", 1)),
     )
-
-
-def _progress() -> "Callable[[Progress], None]":
-    def tell(far: "Progress") -> None:
-        bracket = ""
-        if far.lower_bound is not None and far.lower_bound < float("inf"):
-            bracket = f"; none left is cheaper than {far.lower_bound:.2f}"
-        found = "" if far.incumbent is None else f"; best so far {far.incumbent:.2f}"
-        end = "\n" if far.settled >= far.designs else ""
-        text = f"{far.share:.1%} of {far.designs:,} designs settled{found}{bracket}"
-        print(f"\r{text:<100}", end=end, file=sys.stderr, flush=True)
-
-    return tell

@@ -10,56 +10,9 @@ from pathlib import Path
 
 import pytest
 
+from brief.scale_study import LIMIT, TONE, scale
 from detune.brief.read import scan_brief
 
-BASE = """title = "Scale on a bench"
-
-[[body]]
-name = "scale"
-free = ["z"]
-mass = "30 kg"
-centre = ["0 m", "0 m", "0.1 m"]
-
-[[point]]
-name = "pan"
-position = ["0 m", "0 m", "0.2 m"]
-
-[[station]]
-name = "S"
-group = "feet"
-position = ["0 m", "0 m", "0 m"]
-
-[floor]
-kind = "rigid"
-
-[[condition]]
-name = "working"
-shafts = {}
-
-[[forcing]]
-FORCING
-[[allowable]]
-ALLOWABLE
-[[catalog]]
-name = "rubber"
-file = "rubber.csv"
-
-[[choice]]
-group = "feet"
-catalogs = ["rubber"]
-"""
-TONE = """kind = "harmonic-force"
-name = "hum"
-frequency = "25 Hz"
-position = ["0 m", "0 m", "0.1 m"]
-force = ["0 N", "0 N", "5 N"]
-"""
-LIMIT = """kind = "acceleration"
-at = "pan"
-direction = "z"
-measure = "peak"
-limit = "1 m/s^2"
-"""
 NOISE = """kind = "random-base-motion"
 name = "floor"
 direction = "z"
@@ -252,7 +205,7 @@ CASES = [
 
 @pytest.mark.parametrize("case", CASES, ids=lambda case: case.name)
 def test_one_fault_in_its_place(case: Case, tmp_path: Path) -> None:
-    study = BASE.replace("FORCING", case.forcing).replace("ALLOWABLE", case.allowable)
+    study = scale(case.forcing, case.allowable)
     (tmp_path / "study.toml").write_text(study, encoding="utf-8")
     table = case.table if isinstance(case.table, bytes) else case.table.encode()
     (tmp_path / "table.csv").write_bytes(table)
@@ -285,7 +238,7 @@ GOOD = {
 def test_sound_tables_are_read(name: str, tmp_path: Path) -> None:
     forcing, table = GOOD[name]
     (tmp_path / "table.csv").write_text("\ufeff" + table, encoding="utf-8")
-    study = BASE.replace("FORCING", forcing).replace("ALLOWABLE", LIMIT)
+    study = scale(forcing)
     (tmp_path / "study.toml").write_text(study, encoding="utf-8")
     reading = scan_brief(tmp_path / "study.toml")
     assert reading.faults == ()
@@ -297,7 +250,7 @@ def test_sound_tables_are_read(name: str, tmp_path: Path) -> None:
 def test_a_table_is_read_in_its_own_units(tmp_path: Path) -> None:
     # g in an acceleration density is gravity: 0.01 g^2/Hz = 0.9617 (m/s^2)^2/Hz (9.80665^2).
     (tmp_path / "table.csv").write_text(PSD + "5,0.01\n50,0.02\n", encoding="utf-8")
-    study = BASE.replace("FORCING", NOISE + FILE).replace("ALLOWABLE", LIMIT)
+    study = scale(NOISE + FILE)
     (tmp_path / "study.toml").write_text(study, encoding="utf-8")
     brief = scan_brief(tmp_path / "study.toml").brief
     assert brief is not None

@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 import pickle
-import sys
 from pathlib import Path
 from typing import Any
 
 import pytest
 
+from brief.scale_study import LIMIT, scale
 from detune.brief.allowable.acceleration import Acceleration
 from detune.brief.allowable.displacement import Displacement
 from detune.brief.allowable.transmitted_force import TransmittedForce
@@ -19,20 +18,9 @@ from detune.brief.levels import Level
 from detune.brief.read import scan_brief
 from detune.report.tables import margins_table
 from detune.report.words import limit_text, value_text
+from response import law_machines
 
-HERE = Path(__file__)
-_spec = importlib.util.spec_from_file_location(
-    "law_machines", HERE.parents[1] / "response" / "law_machines.py"
-)
-assert _spec is not None and _spec.loader is not None
-law_machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
-_bad = importlib.util.spec_from_file_location("test_bad_forcing", HERE.with_name("test_bad_forcing.py"))
-assert _bad is not None and _bad.loader is not None
-bad: Any = importlib.util.module_from_spec(_bad)
-sys.modules["test_bad_forcing"] = bad
-_bad.loader.exec_module(bad)
 POINT = {"at": "P", "direction": "z", "measure": "rms"}
 FORCE = {"through": "floor", "direction": "z", "measure": "rms"}
 
@@ -91,8 +79,8 @@ def test_a_level_is_judged_as_its_rms_value_and_shown_with_its_reference() -> No
 def test_what_is_no_level_is_refused_in_place(
     limit: str, measure: str, expected: str, tmp_path: Path
 ) -> None:
-    allowable = bad.LIMIT.replace("acceleration", "velocity").replace("peak", measure)
-    study = bad.BASE.replace("FORCING", bad.TONE).replace("ALLOWABLE", allowable.replace("1 m/s^2", limit))
+    allowable = LIMIT.replace("acceleration", "velocity").replace("peak", measure)
+    study = scale(allowable=allowable.replace("1 m/s^2", limit))
     (tmp_path / "study.toml").write_text(study, encoding="utf-8")
     (fault,) = scan_brief(tmp_path / "study.toml").faults
     assert expected in fault.expected
@@ -105,7 +93,7 @@ def test_other_limits_take_no_level(tmp_path: Path) -> None:
         'kind = "relative-motion"\nat = "pan"\nto = "floor"\ndirection = "z"\nmeasure = "rms"\nlimit'
         ' = "90 dB"\n'
     )
-    study = bad.BASE.replace("FORCING", bad.TONE).replace("ALLOWABLE", allowable)
+    study = scale(allowable=allowable)
     (tmp_path / "study.toml").write_text(study, encoding="utf-8")
     (fault,) = scan_brief(tmp_path / "study.toml").faults
     assert fault.found == "90 dB" or "dB" in (fault.found or "")

@@ -2,29 +2,19 @@
 
 from __future__ import annotations
 
-import importlib.util
-import sys
 from pathlib import Path
-from typing import Any
 
 import pytest
 
+from brief.scale_study import scale
 from detune.brief.read import scan_brief
 from detune.brief.state import apparent_gravity
 
-_spec = importlib.util.spec_from_file_location(
-    "test_bad_forcing", Path(__file__).with_name("test_bad_forcing.py")
-)
-assert _spec is not None and _spec.loader is not None
-bad: Any = importlib.util.module_from_spec(_spec)
-sys.modules["test_bad_forcing"] = bad
-_spec.loader.exec_module(bad)
 STATE = '\n[[state]]\nname = "braking"\nsustained_acceleration = ["-0.4 g", "0 g", "0 g"]\n'
 
 
 def study(more: str, state: str = STATE) -> str:
-    text = bad.BASE.replace("FORCING", bad.TONE).replace("ALLOWABLE", bad.LIMIT)
-    return text.replace("shafts = {}", 'shafts = {}\nstate = "braking"') + state + more
+    return scale().replace("shafts = {}", 'shafts = {}\nstate = "braking"') + state + more
 
 
 def test_it_is_read_in_g() -> None:

@@ -21,68 +21,25 @@ from detune.solvers import SOLVERS
 from detune.study.load import load_study
 from detune.study.named import named_design
 from detune.study.run import run_study
+from small_studies import limit, mass_on_mounts, mount_list, parts_from, study_text, table, tone, written
 
 PAGE = Path(__file__).parents[2] / "docs" / "adding-things.md"
 BLOCK = re.compile(r"^```\{code-block\} (\w+)\n:caption: ([^\n]+)\n\n(.*?)^```$", re.DOTALL | re.MULTILINE)
 
 # A mass that moves up and down on one part: m = 100 kg, k = 100 N/mm, loss factor 0.1.
-STUDY = """
-title = "One mass"
+LIST = mount_list("rowan-x,rubber,100,100,0.1,0,2000,yes,15,10")
+FORCE = tone("12 Hz", "50 N")
+MOTION = limit("displacement", "1 mm", at="bottle")
 
-[[body]]
-name = "mass"
-free = ["z"]
-mass = "100 kg"
-centre = ["0 m", "0 m", "0 m"]
 
-[[point]]
-name = "bottle"
-position = ["0 m", "0 m", "0 m"]
-
-[[station]]
-name = "foot"
-group = "feet"
-position = ["0 m", "0 m", "0 m"]
-
-[floor]
-kind = "rigid"
-
-[[condition]]
-name = "running"
-{shafts}
-
-{forcing}
-
-{allowable}
-
-[[catalog]]
-name = "mounts"
-file = "mounts.csv"
-
-[[choice]]
-group = "feet"
-catalogs = ["mounts"]
-"""
-HEADERS = (
-    "part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],loss_factor,load_min [N],load_max [N]"
-)
-LIST = f"{HEADERS},pulls,cost\nrowan-x,rubber,100,100,0.1,0,2000,yes,10\n"
-FORCE = """
-[[forcing]]
-kind = "harmonic-force"
-name = "shaker"
-position = ["0 m", "0 m", "0 m"]
-frequency = "12 Hz"
-force = ["0 N", "0 N", "50 N"]
-"""
-MOTION = """
-[[allowable]]
-kind = "displacement"
-at = "bottle"
-direction = "z"
-measure = "peak"
-limit = "1 mm"
-"""
+def one_mass(forcing: str, allowable: str, **condition: object) -> str:
+    return study_text(
+        "One mass",
+        mass_on_mounts("100 kg", stations={"foot": 0.0}, body="mass", point="bottle"),
+        table("condition", name="running", **condition),
+        f"{forcing}\n{allowable}\n",
+        parts_from("mounts"),
+    )
 
 
 def block(language: str, caption: str) -> str:
@@ -123,9 +80,7 @@ def register(
 
 def judged(folder: Path, text: str) -> Assessment:
     """Run the study; solver and assessor must agree, and the assessment of the only design is returned."""
-    (folder / "study.toml").write_text(text, encoding="utf-8")
-    (folder / "mounts.csv").write_text(LIST, encoding="utf-8")
-    study = load_study(folder / "study.toml")
+    study = load_study(written(folder, text, mounts=LIST))
     assessment = assess(study.brief, named_design(study.brief, study.catalogs, "feet=rowan-x"))
     result = run_study(study)
     assert (result.answer is not None) == assessment.meets
@@ -134,8 +89,7 @@ def judged(folder: Path, text: str) -> Assessment:
 
 def test_a_new_allowable(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     register(monkeypatch, tmp_path, allowable, "brief/allowable/jerk.py", "brief/allowable/__init__.py")
-    limit = block("toml", "jerk in a study")
-    text = STUDY.format(shafts="", forcing=FORCE, allowable=limit)
+    text = one_mass(FORCE, block("toml", "jerk in a study"))
     assessment = judged(tmp_path, text)
     # X = F / |k (1 + j eta) - m w^2|, jerk w^3 X (definition), with numbers worked out here.
     omega = 2 * math.pi * 12
@@ -155,8 +109,8 @@ def test_a_new_allowable(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Non
 
 def test_a_new_forcing(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     register(monkeypatch, tmp_path, forcing, "brief/forcing/blade_passing.py", "brief/forcing/__init__.py")
-    shafts = 'shafts = { shaft = ["1200 rpm", "1200 rpm"] }'
-    text = STUDY.format(shafts=shafts, forcing=block("toml", "blades in a study"), allowable=MOTION)
+    shafts = {"shaft": ["1200 rpm", "1200 rpm"]}
+    text = one_mass(block("toml", "blades in a study"), MOTION, shafts=shafts)
     (row,) = (row for row in judged(tmp_path, text).margins if row.kind == "displacement")
     force = 8 * (1200 / 1450) ** 2
     moved = force / abs(1e5 * (1 + 0.1j) - 100 * (2 * math.pi * 100) ** 2)

@@ -24,7 +24,7 @@ def blocks(language: str, caption: str) -> list[str]:
     return [body for kind, name, body in BLOCK.findall(text) if (kind, name) == (language, caption)]
 
 
-@pytest.mark.parametrize("caption", ["fan.toml", "skid.toml"])
+@pytest.mark.parametrize("caption", ["fan.toml", "skid.toml", "absorber.toml"])
 def test_the_commands_print_what_the_page_says(tmp_path, monkeypatch, capsys, caption):
     monkeypatch.chdir(tmp_path)
     (study,) = blocks("toml", caption)

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import importlib.util
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -25,13 +23,7 @@ from detune.problem.stages import stages
 from detune.response.assess import assess
 from detune.response.designs import all_designs
 from detune.response.margin import lower_margin, upper_margin, window_margin
-
-_spec = importlib.util.spec_from_file_location(
-    "machines", Path(__file__).parents[1] / "response" / "machines.py"
-)
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 
 def feet(brief: Brief, *allowables: Any) -> list[tuple[str, tuple[str, ...] | None]]:

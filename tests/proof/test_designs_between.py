@@ -1,9 +1,7 @@
 """All nominally feasible designs between two costs, against a plain list of all designs."""
 
-import importlib.util
 import itertools
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -12,10 +10,7 @@ from detune.proof.designs_between import designs_between
 from detune.proof.exact_test import exact_accept
 from detune.proof.instances import InstanceSettings, make_instance
 from detune.proof.search import SearchSettings
-
-_spec = importlib.util.spec_from_file_location("brute_force", Path(__file__).with_name("brute_force.py"))
-brute = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(brute)
+from proof import brute_force as brute
 
 NUMPY = SearchSettings(kernels="numpy")
 

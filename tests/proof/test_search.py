@@ -1,8 +1,6 @@
 """Bounded search against plain enumeration: optimum, front, counts, early stops."""
 
-import importlib.util
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -12,10 +10,7 @@ from detune.proof.instances import InstanceSettings, make_instance, random_desig
 from detune.proof.response_rows import response_margin
 from detune.proof.search import SearchSettings
 from detune.proof.search_front import search_front, search_least_cost
-
-_spec = importlib.util.spec_from_file_location("brute_force", Path(__file__).with_name("brute_force.py"))
-brute = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(brute)
+from proof import brute_force as brute
 
 NUMPY = SearchSettings(kernels="numpy")
 

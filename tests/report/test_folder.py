@@ -98,8 +98,8 @@ def test_an_existing_folder_is_refused_with_a_plain_error(result, tmp_path):
 @pytest.fixture
 def light(monkeypatch):
     """No plots and no page: these tests are about the folder."""
-    monkeypatch.setattr(writing, "draw_all", lambda result: ())
-    monkeypatch.setattr(writing, "page_text", lambda result, drawn: "<html></html>")
+    monkeypatch.setattr(writing, "draw_each", lambda plots, result: ())
+    monkeypatch.setattr(writing, "page_text", lambda *_: "<html></html>")
     monkeypatch.setattr(writing, "responses_csv", lambda curves: "")
 
 
@@ -115,7 +115,7 @@ def test_a_failure_leaves_the_earlier_result_and_nothing_half_written(result, tm
     target = write_folder(result, tmp_path / "run")
     before = (target / "proof.json").read_bytes()
 
-    def fails(result, drawn):
+    def fails(*_):
         raise RuntimeError("the disk is full")
 
     monkeypatch.setattr(writing, "page_text", fails)

@@ -3,10 +3,8 @@
 from __future__ import annotations
 
 import csv
-import importlib.util
 import io
 import math
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -23,13 +21,8 @@ from detune.report.service_loads import service_loads
 from detune.report.tables import margins_table
 from detune.response.assess import assess
 from detune.response.design import Design
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location(
-    "law_machines", Path(__file__).parents[1] / "response" / "law_machines.py"
-)
-assert _spec is not None and _spec.loader is not None
-law_machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 TWO_PI = 2.0 * math.pi
 MASS, K, ETA, ARM, INERTIA = 80.0, 2.0e5, 0.1, 0.4, 5.0

@@ -3,9 +3,7 @@
 The press is a mass of 400 kg on four mounts teasel-a: 480 N/mm in all, loss factor 0.2, 5.51 Hz.
 """
 
-import importlib.util
 import math
-from pathlib import Path
 from xml.etree import ElementTree
 
 import numpy as np
@@ -18,10 +16,7 @@ from detune.report.page import sections
 from detune.report.plots import shock, spectral_density
 from detune.report.service_loads import service_loads
 from detune.report.tables_contributions import contributions_table
-
-spec = importlib.util.spec_from_file_location("press", Path(__file__).with_name("press.py"))
-press = importlib.util.module_from_spec(spec)
-spec.loader.exec_module(press)
+from report import press
 
 K, ETA = press.STIFFNESS["teasel-a"], press.LOSS["teasel-a"]
 OMEGA = math.sqrt(K / press.MASS)

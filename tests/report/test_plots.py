@@ -1,11 +1,9 @@
 """Plots as numbers, against the closed forms of press.py and costs added up by hand; then as files."""
 
-import importlib.util
 import math
 import re
 from dataclasses import replace
 from itertools import pairwise
-from pathlib import Path
 from xml.etree import ElementTree
 
 import numpy as np
@@ -15,10 +13,7 @@ from detune.report.figures import draw_one
 from detune.report.plots import PLOTS, front, margins, modes_speed, response, stiffness_damping, why
 from detune.report.plots.style import spread
 from detune.response.assess import assess
-
-spec = importlib.util.spec_from_file_location("press", Path(__file__).with_name("press.py"))
-press = importlib.util.module_from_spec(spec)
-spec.loader.exec_module(press)
+from report import press
 
 SVG = "{http://www.w3.org/2000/svg}"
 

@@ -1,18 +1,13 @@
 """Response curves against the closed forms of one mass on one spring (press.py)."""
 
-import importlib.util
 import math
-from pathlib import Path
 
 import numpy as np
 import pytest
 
 from detune.report.response_data import ResponseCurve, response_curves
 from detune.report.service_loads import service_loads
-
-spec = importlib.util.spec_from_file_location("press", Path(__file__).with_name("press.py"))
-press = importlib.util.module_from_spec(spec)
-spec.loader.exec_module(press)
+from report import press
 
 K, ETA = press.STIFFNESS["teasel-a"], press.LOSS["teasel-a"]
 

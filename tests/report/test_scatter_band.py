@@ -1,18 +1,12 @@
 """The scatter in the response plot, as numbers: the sampled ribbon and the guaranteed level, against the
 press by hand."""
 
-import importlib.util
-from pathlib import Path
-
 import numpy as np
 import pytest
 
 from detune.report.figures import draw_one
 from detune.report.plots import response
-
-spec = importlib.util.spec_from_file_location("press", Path(__file__).with_name("press.py"))
-press = importlib.util.module_from_spec(spec)
-spec.loader.exec_module(press)
+from report import press
 
 SCATTER = '\n[scatter]\njudge = "interval"\nstiffness = { lot = "10 %" }\ndamping = { lot = "20 %" }\n'
 

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from dataclasses import replace
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -34,11 +32,7 @@ from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.response.design import Design
 from detune.response.designs import Designs
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 TWO_PI = 2.0 * math.pi
 # A margin as large as this is that of a value of rounding size.

@@ -7,6 +7,7 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
+import pytest
 
 from detune.brief.allowable.base import Allowable
 from detune.brief.allowable.displacement import Displacement
@@ -161,6 +162,27 @@ def batch_value(brief: Brief, part: Mount, allowable: Allowable) -> float:
     margins = batch_margins(problem, Designs(np.zeros((1, 1), dtype=np.intp), np.zeros(1, dtype=np.intp)))
     (margin,) = [m[0] for (quantity, _, _), m in margins.items() if quantity == allowable.quantity()]
     return float(allowable.limit / (1.0 + margin))  # type: ignore[attr-defined]
+
+
+def both(brief: Brief, part: Mount, allowable: Allowable, rel: float) -> float:
+    """The assessor's value, after making sure that the batch evaluation has the same."""
+    brief = brief.model_copy(update={"allowables": (allowable,)})
+    one = value(assessed(brief, part), allowable.kind)
+    assert batch_value(brief, part, allowable) == pytest.approx(one, rel=rel)
+    return float(one)
+
+
+def assert_batch_equals_assessor(brief: Brief, mounts: tuple[Mount, ...], rel: float = 1e-3) -> None:
+    """Every stated margin of the assessment is that of the batch evaluation."""
+    problem = build(brief, {"list": catalog(*mounts)})
+    pairs = zip(problem.candidates, mounts, strict=True)
+    parts = np.array([[[m.part for m in group].index(mount.part) for group, mount in pairs]])
+    margins = batch_margins(problem, Designs(parts, np.zeros(1, dtype=np.intp)))
+    stated = {allowable.kind for allowable in brief.allowables}
+    for row in assessed(brief, *mounts).margins:
+        if row.kind in stated:
+            other = float(margins[(row.quantity, row.place, row.condition)][0])
+            assert 1.0 + other == pytest.approx(1.0 + row.margin, rel=rel), row.label
 
 
 def random_machine(

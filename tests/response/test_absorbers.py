@@ -5,7 +5,6 @@ Den Hartog, Mechanical Vibrations, sec. 3.3 (from memory, recomputed here by two
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from dataclasses import replace
 from pathlib import Path
@@ -39,23 +38,10 @@ from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.response.design import Design
 from detune.response.designs import all_designs
+from response import law_machines as laws
+from response import machines
+from response import test_structure as on_structure
 
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
-
-
-def _load(name: str) -> Any:
-    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-laws = _load("law_machines")
-on_structure = _load("test_structure")
 NIGHTLY = pytest.mark.nightly
 
 G = 9.80665

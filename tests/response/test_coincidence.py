@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -15,11 +13,8 @@ from detune.brief.allowable.velocity import Velocity
 from detune.brief.forcing.rotating_unbalance import RotatingUnbalance
 from detune.response.coincidence import meeting
 from detune.response.loads import Family, Load
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 
 TWO_PI = 2.0 * math.pi

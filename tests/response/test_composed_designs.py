@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from dataclasses import replace
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -24,11 +22,8 @@ from detune.response.design import Design
 from detune.response.designs import Designs, all_designs, part_numbers, total_cost
 from detune.solvers import enumeration
 from detune.solvers.outcome import Settings
+from solvers import briefs
 
-_spec = importlib.util.spec_from_file_location("briefs", Path(__file__).parents[1] / "solvers" / "briefs.py")
-assert _spec is not None and _spec.loader is not None
-briefs: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(briefs)
 machines = briefs.machines
 
 G = 9.80665

@@ -2,11 +2,9 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from dataclasses import replace
 from pathlib import Path
-from types import ModuleType
 from typing import Any
 
 import numpy as np
@@ -14,6 +12,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+import small_studies as small
 from detune.brief.allowable.acceleration import Acceleration
 from detune.brief.allowable.displacement import Displacement
 from detune.brief.allowable.dwell_bands import DwellBands
@@ -42,17 +41,10 @@ from detune.solvers.outcome import Settings
 from detune.study.front import assessed_front
 from detune.study.load import load_study
 from detune.study.run import run_study
+from response import law_machines as laws
+from response import machines
+from response import test_two_ways as two_ways
 
-
-def _load(name: str) -> ModuleType:
-    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-machines = _load("machines")
 TWO_PI = 2.0 * math.pi
 RPM = 1.0 / 60.0
 M, K, C, ME = 120.0, 4.0e5, 500.0, 2.0e-3
@@ -282,7 +274,6 @@ class TestFound:
     @pytest.mark.parametrize("seed", range(3))
     def test_six_axes_by_brute_force(self, seed: int) -> None:
         """Every speed of 60,000 that exceeds the limit by numpy's solver lies in a band, and no band is too wide."""
-        two_ways = _load("test_two_ways")
         brief, mounts = machines.random_machine(seed, viscous=True)
         turning = brief.forcing[1]
         low, high = 6.0, 30.0
@@ -328,7 +319,6 @@ class TestFound:
 
     def test_damping_of_unknown_kind_bars_what_either_reading_exceeds(self) -> None:
         """The union of the bands of a viscous mount and of one with a loss factor, each by numpy's dense sampling."""
-        laws = _load("law_machines")
         part = laws.unknown(machines.mount(k=K, loss=0.15), rated=400.0)
         readings = part.damping_unknown
         assert readings is not None
@@ -435,51 +425,34 @@ def test_what_is_refused(brief: Brief, key: tuple[Any, ...], words: str) -> None
     assert fault.path == key and words in fault.expected
 
 
-STUDY = """title = "t"
-[[body]]
-name = "m"
-free = ["z"]
-mass = "120 kg"
-centre = ["0 m", "0 m", "0 m"]
-[[point]]
-name = "P"
-position = ["0 m", "0 m", "0 m"]
-[[station]]
-name = "S"
-group = "G"
-position = ["0 m", "0 m", "0 m"]
-[floor]
-kind = "rigid"
-[[condition]]
-name = "running"
-shafts = { rotor = ["360 rpm", "1080 rpm"] }
-barred = { rotor = [["480 rpm", "560 rpm"]] }
-[[forcing]]
-kind = "rotating-unbalance"
-name = "u"
-shaft = "rotor"
-position = ["0 m", "0 m", "0 m"]
-axis = "x"
-unbalance = "2000 g mm"
-[[allowable]]
-kind = "displacement"
-at = "P"
-direction = "z"
-measure = "peak"
-limit = "0.03 mm"
-conditions = ["running"]
-[[catalog]]
-name = "list"
-file = "list.csv"
-[[choice]]
-group = "G"
-catalogs = ["list"]
-"""
+BARRED = {"rotor": [["480 rpm", "560 rpm"]]}
+
+
+def fan_study(*more: str, **condition: Any) -> str:
+    """A fan on one mount from 360 to 1080 rev/min; `condition`: further keys of the condition it runs in."""
+    shafts = {"rotor": ["360 rpm", "1080 rpm"]}
+    return small.study_text(
+        "A fan",
+        small.mass_on_mounts("120 kg", stations={"S": 0.0}),
+        small.table("condition", name="running", shafts=shafts, **condition),
+        small.table(
+            "forcing",
+            kind="rotating-unbalance",
+            name="u",
+            shaft="rotor",
+            position=small.place(),
+            axis="x",
+            unbalance="2000 g mm",
+        ),
+        small.limit("displacement", "0.03 mm", conditions=["running"]),
+        *more,
+        small.parts_from("mounts"),
+    )
 
 
 def test_a_study_file_is_taken_apart(tmp_path: Path) -> None:
     study = tmp_path / "study.toml"
-    study.write_text(STUDY, encoding="utf-8")
+    study.write_text(fan_study(barred=BARRED), encoding="utf-8")
     brief = read_brief(study)
     names = ("running, rotor 360 to 480 rev/min", "running, rotor 560 to 1080 rev/min")
     assert tuple(c.name for c in brief.conditions) == names
@@ -488,28 +461,22 @@ def test_a_study_file_is_taken_apart(tmp_path: Path) -> None:
 
 
 @pytest.mark.parametrize(
-    "old, new, line, where, words",
+    "old, new, where, words",
     [
-        ('"560 rpm"', '"470 rpm"', 19, "condition[1].barred", "the lower end first"),
-        ('"480 rpm"', '"480"', 19, "condition[1].barred.rotor[1][1]", "unit"),
-        (
-            "barred = { rotor",
-            "barred = { pump",
-            19,
-            "condition[1].barred",
-            "a shaft of this condition: rotor",
-        ),
-        ("barred", "steady = false\nbarred", 20, "condition[1].barred", "in a steady condition alone"),
-        ("barred", "bared", 19, "condition[1].bared", "one of the keys"),
+        ('"560 rpm"', '"470 rpm"', "condition[1].barred", "the lower end first"),
+        ('"480 rpm"', '"480"', "condition[1].barred.rotor[1][1]", "unit"),
+        ("barred = { rotor", "barred = { pump", "condition[1].barred", "a shaft of this condition: rotor"),
+        ("barred", "steady = false\nbarred", "condition[1].barred", "in a steady condition alone"),
+        ("barred", "bared", "condition[1].bared", "one of the keys"),
     ],
 )
-def test_faults_of_a_study_file(
-    tmp_path: Path, old: str, new: str, line: int, where: str, words: str
-) -> None:
+def test_faults_of_a_study_file(tmp_path: Path, old: str, new: str, where: str, words: str) -> None:
+    text = fan_study(barred=BARRED).replace(old, new)
     study = tmp_path / "study.toml"
-    study.write_text(STUDY.replace(old, new), encoding="utf-8")
+    study.write_text(text, encoding="utf-8")
     (fault,) = scan_brief(study).faults
-    assert (fault.line, fault.where) == (line, where) and words in fault.expected
+    assert fault.where == where and words in fault.expected
+    assert text.splitlines()[(fault.line or 0) - 1].startswith(("barred = {", "bared = {"))
 
 
 @pytest.mark.parametrize(
@@ -523,31 +490,26 @@ def test_faults_of_a_study_file(
     ],
 )
 def test_faults_of_the_limit(tmp_path: Path, text: str, where: str, words: str) -> None:
-    limit = f'[[allowable]]\nkind = "dwell-bands"\nshaft = "rotor"\n{text}\n[[catalog]]'
     study = tmp_path / "study.toml"
-    stated = STUDY.replace('barred = { rotor = [["480 rpm", "560 rpm"]] }\n', "")
-    study.write_text(stated.replace("[[catalog]]", limit), encoding="utf-8")
+    bands = small.table("allowable", kind="dwell-bands", shaft="rotor").rstrip() + f"\n{text}\n\n"
+    study.write_text(fan_study(bands), encoding="utf-8")
     (fault,) = scan_brief(study).faults
     assert fault.where == where and words in fault.expected
 
 
 def test_the_whole_road(tmp_path: Path) -> None:
     """A study file with a limit on the barred width, run, assessed and reported; the width by the closed form."""
-    limit = '[[allowable]]\nkind = "dwell-bands"\nshaft = "rotor"\nwidth = "260 rpm"\n[[catalog]]'
-    run_up = (
-        '[[condition]]\nname = "start"\nsteady = false\nshafts = { rotor = ["60 rpm", "1080 rpm"] }\n'
-        'run_up = { rotor = "8 s" }\n[[forcing]]'
+    start = {"rotor": ["60 rpm", "1080 rpm"]}
+    text = fan_study(
+        small.table("condition", name="start", steady=False, shafts=start, run_up={"rotor": "8 s"}),
+        small.table("allowable", kind="dwell-bands", shaft="rotor", conditions=["running"], width="260 rpm"),
     )
-    stated = STUDY.replace('barred = { rotor = [["480 rpm", "560 rpm"]] }\n', "").replace(
-        "[[forcing]]", run_up
+    mounts = small.mount_list(
+        "ash,spring,400,400,500,0,9000,yes,10,5",
+        "elm,spring,400,400,3000,0,9000,yes,10,9",
+        columns=small.MOUNT_COLUMNS.replace("loss_factor", "viscous [N s/m]"),
     )
-    stated = stated.replace("[[catalog]]", limit.replace("width", 'conditions = ["running"]\nwidth'))
-    (tmp_path / "study.toml").write_text(stated, encoding="utf-8")
-    (tmp_path / "list.csv").write_text(
-        "part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],viscous [N s/m],load_min [N],load_max [N],"
-        "pulls,tolerance [%],cost\nash,spring,400,400,500,0,9000,yes,10,5\nelm,spring,400,400,3000,0,9000,yes,10,9\n",
-        encoding="utf-8",
-    )
+    small.written(tmp_path, text, mounts=mounts)
     result = run_study(load_study(tmp_path / "study.toml"), Settings())
     low, high = edges(3e-5)
     assert high - low > 260.0 * RPM

@@ -2,10 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 from dataclasses import replace
-from pathlib import Path
-from typing import Any
 
 import numpy as np
 import pytest
@@ -14,11 +11,7 @@ from detune.problem.build import build
 from detune.response.assemble import Dynamic, dynamic_matrices
 from detune.response.designs import all_designs
 from detune.response.expansion import expansion_of
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 
 def batch(seed: int, viscous: bool) -> Dynamic:

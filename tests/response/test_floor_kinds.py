@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from pathlib import Path
-from types import ModuleType
 from typing import Any
 
 import numpy as np
@@ -40,17 +38,8 @@ from detune.response.loads import condition_families
 from detune.response.model import build_model
 from detune.response.views import ToneBatch
 from detune.solvers import bounded
+from response import machines
 
-
-def _load(name: str) -> ModuleType:
-    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-machines = _load("machines")
 TWO_PI = 2.0 * math.pi
 G = 9.80665
 CORNERS = {"A": (-0.6, -0.4), "B": (-0.6, 0.4), "C": (0.6, -0.4), "D": (0.6, 0.4)}

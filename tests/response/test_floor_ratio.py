@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from pathlib import Path
-from types import ModuleType
 
 import numpy as np
 import pytest
@@ -25,17 +23,11 @@ from detune.problem.build import build
 from detune.response.assess import assess
 from detune.response.assessment import MarginRow
 from detune.response.designs import all_designs
+from response import machines
+from response import test_structure as on
+from response import test_two_ways as two_ways
+from small_studies import mass_on_mounts, parts_from, study_text, table, tone, written
 
-
-def _load(name: str) -> ModuleType:
-    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-machines = _load("machines")
 TWO_PI = 2.0 * math.pi
 M, MF, KF, CF = 200.0, 3000.0, 2.0e7, 8.0e3
 SLAB = Floor(kind="mass-spring-damper", mass=MF, stiffness=KF, damping=CF)
@@ -115,7 +107,6 @@ def test_force_ratio_stands_beside_it_and_is_another_number() -> None:
 @pytest.mark.parametrize("seed", range(3))
 def test_six_axes_bolted_down_move_as_one_mass_with_the_floor(seed: int) -> None:
     """Bolted: F_z / (k_f + j w c_f - w^2 (m + m_f)), whatever else the machine is; on mounts by numpy's solver."""
-    two_ways = _load("test_two_ways")
     brief, mounts = machines.random_machine(seed, viscous=True)
     direction = (0.3, -0.2, 1.0)
     hum = HarmonicForce(name="hum", frequency=17.0, position=(0.0, 0.0, 0.0), force=(0.0, 0.0, 1.0))
@@ -202,7 +193,6 @@ def test_a_floor_that_stands_still_when_bolted_down_makes_a_sharp_peak() -> None
 
 def test_a_machine_on_a_beam_by_springs_as_stiff_as_bolts(tmp_path: Path) -> None:
     """Feet that move differently: root of the sum of their squares, bolted by 1e13 N/m in the full equations."""
-    on = _load("test_structure")
     brief = on.on_beam(on.structure(tmp_path))
     limit = FloorRatio(direction="z", limit=1e6)
     brief = brief.model_copy(
@@ -260,30 +250,25 @@ def test_what_is_refused() -> None:
 
 
 def test_faults_name_line_and_key(tmp_path: Path) -> None:
-    study = tmp_path / "study.toml"
-    study.write_text(
-        'title = "t"\n[[body]]\nname = "m"\nfree = ["z"]\nmass = "200 kg"\ncentre = ["0 m", "0 m", "0 m"]\n'
-        '[[point]]\nname = "P"\nposition = ["0 m", "0 m", "0 m"]\n'
-        '[[station]]\nname = "S"\ngroup = "G"\nposition = ["0 m", "0 m", "0 m"]\n'
-        '[floor]\nkind = "rigid"\n[[condition]]\nname = "running"\n'
-        '[[forcing]]\nkind = "harmonic-force"\nname = "f"\nfrequency = "20 Hz"\n'
-        'position = ["0 m", "0 m", "0 m"]\nforce = ["0 N", "0 N", "1 N"]\n'
-        '[[allowable]]\nkind = "floor-ratio"\ndirection = "z"\nlimit = "0"\n'
-        '[[catalog]]\nname = "list"\nfile = "list.csv"\n[[choice]]\ngroup = "G"\ncatalogs = ["list"]\n',
-        encoding="utf-8",
+    text = study_text(
+        "A mass",
+        mass_on_mounts("200 kg", stations={"S": 0.0}),
+        table("condition", name="running"),
+        tone("20 Hz", "1 N"),
+        table("allowable", kind="floor-ratio", direction="z", limit="0"),
+        parts_from("mounts"),
     )
+    study = written(tmp_path, text)
     (fault,) = [f for f in scan_brief(study).faults if f.where.startswith("allowable")]
-    assert (fault.line, fault.where, fault.expected) == (27, "allowable[1].limit", "a limit above zero")
-    study.write_text(
-        study.read_text(encoding="utf-8").replace('limit = "0"', 'limit = "20 %"'), encoding="utf-8"
-    )
+    assert (fault.where, fault.expected) == ("allowable[1].limit", "a limit above zero")
+    assert text.splitlines()[(fault.line or 0) - 1] == 'limit = "0"'
+    written(tmp_path, text.replace('limit = "0"', 'limit = "20 %"'))
     (fault,) = scan_brief(study).faults
     assert fault.expected.startswith(RIGID_FAULT) and fault.found == "floor-ratio"
 
 
 def test_a_lost_mount_leaves_the_reference_as_it_is() -> None:
     """Bolted at every station of the study in any state; on the mounts that are left by numpy's solver."""
-    two_ways = _load("test_two_ways")
     brief, mounts = machines.random_machine(1, viscous=True)
     hum = HarmonicForce(name="hum", frequency=17.0, position=(0.0, 0.0, 0.0), force=(0.0, 0.0, 1.0))
     left = brief.model_copy(update={"stations": brief.stations[:2] + brief.stations[3:]})

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -13,11 +11,8 @@ from detune.brief.brief import Brief
 from detune.brief.choice import Ballast
 from detune.brief.machine import Body, InertiaTensor, Point, Station
 from detune.parts.kinds.mount import Mount
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 
 TWO_PI = 2.0 * math.pi

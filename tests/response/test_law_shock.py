@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -21,11 +19,8 @@ from detune.brief.forcing.force_pulse import ForcePulse
 from detune.parts.kinds.mount import Mount
 from detune.parts.laws import LoadCurve
 from detune.problem.build import build
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 
 TWO_PI = 2.0 * math.pi

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -25,11 +23,8 @@ from detune.physics.relaxation import kramers_kronig_violation, storage_deficit
 from detune.response.assemble import PartBatch
 from detune.response.designs import Designs
 from detune.response.direct_laws import part_stiffness
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 
 NIGHTLY = pytest.mark.nightly

@@ -5,8 +5,8 @@ Time domain against frequency domain as well: a long record against its density,
 
 from __future__ import annotations
 
-import importlib.util
 import math
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -14,12 +14,10 @@ import numpy as np
 import pytest
 
 from detune.brief.allowable.acceleration import Acceleration
-from detune.brief.allowable.base import Allowable
 from detune.brief.allowable.displacement import Displacement
 from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.allowable.velocity import Velocity
-from detune.brief.brief import Brief
 from detune.brief.condition import Condition
 from detune.brief.forcing.line_spectrum import LineSpectrum
 from detune.brief.forcing.measured_record import MeasuredRecord
@@ -28,24 +26,13 @@ from detune.brief.forcing.torque_reaction import TorqueReaction
 from detune.brief.forcing.two_plane_unbalance import TwoPlaneUnbalance
 from detune.brief.machine import Body
 from detune.parts.kinds.mount import Mount
-from detune.problem.build import build
-from detune.response.designs import Designs
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 TWO_PI = 2.0 * math.pi
 MASS = 20.0
 
 
-def both(brief: Brief, part: Mount, allowable: Allowable, rel: float = 1e-4) -> float:
-    """The assessor's value, after making sure that the batch evaluation has the same."""
-    brief = brief.model_copy(update={"allowables": (allowable,)})
-    one = machines.value(machines.assessed(brief, part), allowable.kind)
-    assert machines.batch_value(brief, part, allowable) == pytest.approx(one, rel=rel)
-    return float(one)
+both = partial(machines.both, rel=1e-4)
 
 
 def tuned(frequency: float, ratio: float = 0.05) -> Mount:
@@ -221,7 +208,7 @@ def test_six_axes_long_record_against_its_density(tmp_path: Path, seed: int) -> 
     values = []
     for forcing in (spectral, simulated):
         each = brief.model_copy(update={"forcing": (forcing,), "conditions": running, "allowables": limits})
-        assert_batch_equals_assessor(each, mounts)
+        machines.assert_batch_equals_assessor(each, mounts)
         rows = machines.assessed(each, *mounts).margins
         values.append([row.value for row in rows if row.kind in {a.kind for a in limits}])
     assert values[1] == pytest.approx(values[0], rel=0.08)
@@ -309,16 +296,3 @@ def test_open_measured_record(tmp_path: Path) -> None:
     stiff = machines.mount(k=MASS * (TWO_PI * 400.0) ** 2, loss=0.3)
     found = both(machines.one_axis(MASS, ground), stiff, ACCELERATION, rel=1e-3)
     assert found == pytest.approx(4.3833e-2, rel=0.01)
-
-
-def assert_batch_equals_assessor(brief: Brief, mounts: tuple[Mount, ...], rel: float = 1e-3) -> None:
-    """Every stated margin of the assessment is that of the batch evaluation."""
-    problem = build(brief, {"list": machines.catalog(*mounts)})
-    pairs = zip(problem.candidates, mounts, strict=True)
-    parts = np.array([[[m.part for m in group].index(mount.part) for group, mount in pairs]])
-    margins = machines.batch_margins(problem, Designs(parts, np.zeros(1, dtype=np.intp)))
-    stated = {allowable.kind for allowable in brief.allowables}
-    for row in machines.assessed(brief, *mounts).margins:
-        if row.kind in stated:
-            other = float(margins[(row.quantity, row.place, row.condition)][0])
-            assert 1.0 + other == pytest.approx(1.0 + row.margin, rel=rel), row.label

@@ -5,9 +5,7 @@ Ids are those of the project's table of checks; sources stand beside each.
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -32,11 +30,7 @@ from detune.physics.weighting import weighted_rms_of_spectrum
 from detune.problem.build import build
 from detune.response.assessment import MarginRow
 from detune.response.designs import Designs
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 TWO_PI = 2.0 * math.pi
 G = 9.80665

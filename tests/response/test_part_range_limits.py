@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from dataclasses import replace
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -18,11 +16,8 @@ from detune.brief.allowable.relative_motion import RelativeMotion
 from detune.brief.allowable.temperature_range import TemperatureRange
 from detune.brief.forcing.torque_pulse import TorquePulse
 from detune.brief.machine import Body, InertiaTensor, Point, Station
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 MASS, G, K = 40.0, 9.80665, 1e5
 

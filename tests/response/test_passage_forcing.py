@@ -5,42 +5,30 @@ Ids are those of the project's table of checks; sources stand beside each.
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
+from functools import partial
 
 import numpy as np
 import pytest
 from scipy.integrate import solve_ivp
 
 from detune.brief.allowable.acceleration import Acceleration
-from detune.brief.allowable.base import Allowable
 from detune.brief.allowable.displacement import Displacement
 from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.brief import Brief
 from detune.brief.condition import Condition
 from detune.brief.forcing.shaft_orders import ShaftOrders
-from detune.parts.kinds.mount import Mount
 from detune.problem.build import build
 from detune.response.designs import Designs
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 TWO_PI = 2.0 * math.pi
 MASS, FN = 25.0, 10.0
 K = MASS * (TWO_PI * FN) ** 2
 
 
-def both(brief: Brief, part: Mount, allowable: Allowable, rel: float = 1e-3) -> float:
-    """The assessor's value, after making sure that the batch evaluation has the same."""
-    brief = brief.model_copy(update={"allowables": (allowable,)})
-    one = machines.value(machines.assessed(brief, part), allowable.kind)
-    assert machines.batch_value(brief, part, allowable) == pytest.approx(one, rel=rel)
-    return float(one)
+both = partial(machines.both, rel=1e-3)
 
 
 def passing(low: float, high: float, forcing: object, **times: object) -> Brief:

@@ -5,30 +5,23 @@ Ids are those of the project's table of checks; sources stand beside each.
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
+from functools import partial
 from typing import Any
 
 import numpy as np
 import pytest
 
 from detune.brief.allowable.acceleration import Acceleration
-from detune.brief.allowable.base import Allowable
 from detune.brief.allowable.displacement import Displacement
 from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.brief.allowable.transmitted_force import TransmittedForce
-from detune.brief.brief import Brief
 from detune.brief.forcing.random_base_motion import RandomBaseMotion
 from detune.brief.forcing.random_force import RandomForce
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import build
 from detune.response.designs import Designs
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 TWO_PI = 2.0 * math.pi
 G = 9.80665
@@ -36,12 +29,7 @@ G = 9.80665
 WIDE = (1e-3, 1e7)
 
 
-def both(brief: Brief, part: Mount, allowable: Allowable, rel: float = 2e-4) -> float:
-    """The assessor's value, after making sure that the batch evaluation has the same."""
-    brief = brief.model_copy(update={"allowables": (allowable,)})
-    one = machines.value(machines.assessed(brief, part), allowable.kind)
-    assert machines.batch_value(brief, part, allowable) == pytest.approx(one, rel=rel)
-    return float(one)
+both = partial(machines.both, rel=2e-4)
 
 
 def tuned(mass: float, frequency: float, ratio: float) -> Mount:
@@ -235,23 +223,4 @@ def test_six_axes_batch_equals_assessor(seed: int, viscous: bool) -> None:
         MountDeflection(part="dynamic", limit=1.0),
     )
     brief = brief.model_copy(update={"allowables": limits, "forcing": (*brief.forcing, motion, noise)})
-    assert_batch_equals_assessor(brief, mounts)
-
-
-def assert_batch_equals_assessor(brief: Brief, mounts: tuple[Mount, ...], rel: float = 1e-3) -> None:
-    """Every margin of the assessment is that of the batch evaluation."""
-    problem = build(brief, {"list": machines.catalog(*mounts)})
-    parts = np.array(
-        [
-            [
-                [m.part for m in group].index(mount.part)
-                for group, mount in zip(problem.candidates, mounts, strict=True)
-            ]
-        ]
-    )
-    margins = machines.batch_margins(problem, Designs(parts, np.zeros(1, dtype=np.intp)))
-    stated = {allowable.kind for allowable in brief.allowables}
-    rows = [row for row in machines.assessed(brief, *mounts).margins if row.kind in stated]
-    for row in rows:
-        other = float(margins[(row.quantity, row.place, row.condition)][0])
-        assert 1.0 + other == pytest.approx(1.0 + row.margin, rel=rel), row.label
+    machines.assert_batch_equals_assessor(brief, mounts)

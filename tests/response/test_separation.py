@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -22,11 +20,7 @@ from detune.response.direct_views import DirectTone
 from detune.response.loads import condition_families
 from detune.response.model import build_model
 from detune.response.views import ToneBatch
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 M = 100.0
 TEN_HERTZ = M * (2.0 * math.pi * 10.0) ** 2

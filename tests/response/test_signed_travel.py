@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -16,11 +14,8 @@ from detune.brief.allowable.mount_deflection import MountDeflection
 from detune.brief.forcing.base_pulse import BasePulse
 from detune.brief.forcing.drop import Drop
 from detune.brief.forcing.force_pulse import ForcePulse
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 
 MASS, K, C, G = 40.0, 2.0e5, 900.0, 9.80665

@@ -6,9 +6,8 @@ expected values are those of the project's table of checks; sources stand beside
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
+from functools import partial
 
 import numpy as np
 import pytest
@@ -19,15 +18,10 @@ from detune.brief.allowable.displacement import Displacement
 from detune.brief.allowable.transmissibility import Transmissibility
 from detune.brief.allowable.transmitted_force import TransmittedForce
 from detune.brief.allowable.velocity import Velocity
-from detune.brief.brief import Brief
 from detune.brief.forcing.base_motion import BaseMotion
 from detune.brief.forcing.shaft_orders import Order, ShaftOrders
 from detune.parts.kinds.mount import Mount
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 TWO_PI = 2.0 * math.pi
 SUPREMUM = 1e-4
@@ -39,13 +33,7 @@ RATIO = Transmissibility(of="force", direction="z", limit=1e6)
 MOTION = Transmissibility(of="motion", at="P", direction="z", limit=1e6)
 
 
-def both(brief: Brief, part: Mount, allowable: Allowable) -> float:
-    """The value by the assessor, after making sure that the batch evaluation has the same."""
-    brief = brief.model_copy(update={"allowables": (allowable,)})
-    one = machines.value(machines.assessed(brief, part), allowable.kind)
-    other = machines.batch_value(brief, part, allowable)
-    assert other == pytest.approx(one, rel=SUPREMUM)
-    return float(one)
+both = partial(machines.both, rel=SUPREMUM)
 
 
 def viscous(mass: float, k: float, z: float) -> Mount:

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -19,11 +17,8 @@ from detune.response.design import Design
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import direct_modes
 from detune.response.direct_stand_in import stand_in_difference
+from response import machines
 
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
 MASS, K, ETA = 50.0, 2.0e5, 0.2
 SHOCK = BasePulse(name="shock", direction="z", shape="half-sine", amplitude=50.0, duration=0.011)
 PUSH = ForcePulse(

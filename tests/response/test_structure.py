@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from pathlib import Path
 from typing import Any
@@ -29,11 +28,8 @@ from detune.problem.build import build
 from detune.response.design import Design
 from detune.response.direct import DirectMachine
 from detune.response.direct_views import DirectTone
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 
 TWO_PI = 2.0 * math.pi

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -16,11 +14,8 @@ from detune.brief.allowable.sag import Sag
 from detune.brief.condition import Condition
 from detune.brief.machine import Body, InertiaTensor, Point, Station
 from detune.brief.state import State
+from response import law_machines
 
-_spec = importlib.util.spec_from_file_location("law_machines", Path(__file__).with_name("law_machines.py"))
-assert _spec is not None and _spec.loader is not None
-law_machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(law_machines)
 machines = law_machines.machines
 MASS, G, K, LATERAL, HALF, HEIGHT = 120.0, 9.80665, 3.0e5, 1.0e5, 0.5, 0.3
 

@@ -7,10 +7,7 @@ the phasor times exp(j w t): both are compared freedom by freedom, by a fit of s
 
 from __future__ import annotations
 
-import importlib.util
 import math
-from pathlib import Path
-from typing import Any
 
 import numpy as np
 import pytest
@@ -22,11 +19,7 @@ from detune.response.design import Design
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import direct_modes
 from detune.response.direct_views import DirectTone
-
-_spec = importlib.util.spec_from_file_location("machines", Path(__file__).with_name("machines.py"))
-assert _spec is not None and _spec.loader is not None
-machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 TWO_PI = 2.0 * math.pi
 CYCLES = 6

@@ -254,3 +254,29 @@ def test_bad_models_are_refused():
         )
     with pytest.raises(SizingError, match="nothing binds"):
         cheapest(model, np.ones(3), np.zeros(0))
+
+
+def test_every_program_is_a_disciplined_convex_one(monkeypatch):
+    """CVXPY's own grammar (DCP) accepts each form as it is solved; so each is convex by construction."""
+    import cvxpy
+
+    seen = []
+
+    class Checked(cvxpy.Problem):
+        def solve(self, *args, **options):
+            seen.append((self.is_dcp(), self.is_qp() or self.is_dcp(dpp=True)))
+            return super().solve(*args, **options)
+
+    monkeypatch.setattr(cvxpy, "Problem", Checked)
+    model, ballasted = random_model(2), random_model(7, ballast=1)
+    greatest_separation(model, 5.0, "above")
+    greatest_separation(ballasted, 60.0, "below")
+    limit = soft_limit(model, 2, 1.3)
+    cheapest(model, -np.ones(3), np.zeros(0), limits=(limit,))
+    cheapest(ballasted, np.ones(3), np.ones(1), modes_above=3.0)
+    stack = np.stack([np.eye(2) * 1e4, np.eye(2) * 4e4])
+    selection_bound(10.0 * np.eye(2), np.zeros((2, 2)), (stack,), (np.array([1.0, 2.0]),), 30.0, None)
+    soft_side_one_axis(
+        (1.0, 0.1, 1.0), (1e3, 1e6), (1.0, 1e4), (50.0, 150.0), ((20.0, 0.4),), ((20.0, 10.0, 1e-4),)
+    )
+    assert len(seen) >= 10 and all(dcp and dpp for dcp, dpp in seen)

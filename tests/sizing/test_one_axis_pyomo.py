@@ -61,12 +61,15 @@ def test_ballast_in_steps_agrees():
 
 @pytest.mark.nightly
 def test_two_hundred_random_instances_agree(capsys):
-    """DESIGN 6: agreement within 1e-6 on 200 instances, those whose feasible set has several parts among them."""
-    disjoint, empty, undecided = agree(random_problems(200, 0), 20.0)
+    """DESIGN 6: agreement within 1e-6 on 200 instances, those whose feasible set has several parts among them.
+
+    SCIP leaves a few undecided within its time, so there are some more than 200.
+    """
+    disjoint, empty, undecided = agree(random_problems(210, 0), 20.0)
     with capsys.disabled():
-        print(f" 200 instances: {disjoint} disjoint, {empty} infeasible, {undecided} left undecided by SCIP")
+        print(f" 210 instances: {disjoint} disjoint, {empty} infeasible, {undecided} left undecided by SCIP")
     assert disjoint >= 20
-    assert undecided <= 10
+    assert 210 - undecided >= 200
 
 
 @pytest.mark.nightly
@@ -164,10 +167,17 @@ def test_worst_place_against_a_dense_look():
     assert math.sqrt(place * scaled.omega2) / (2 * math.pi) == pytest.approx(best, rel=1e-3)
 
 
-def test_a_process_that_overruns_says_nothing(monkeypatch):
+def test_a_process_that_overruns_says_nothing():
     """A limit that is over at once: no status but "time limit", no numbers."""
     problem = instances.random_problem(112)
     second = solve_with_scip([problem], 1e-9)[0]
     assert second.status == "time limit" and math.isnan(second.objective)
+
+
+def test_a_process_that_fails_is_an_answer_that_says_why(monkeypatch, capfd):
+    """A root of a task is no number: whatever SCIP or its libraries raise ends as "failed", with the error's words."""
     monkeypatch.setattr(size_scip, "run", math.sqrt)
-    assert solve_with_scip([problem], 5.0)[0].status == "failed"
+    failed = solve_with_scip([instances.random_problem(112)], 5.0)[0]
+    assert failed.status == "failed" and math.isnan(failed.objective)
+    assert "TypeError: must be real number" in failed.detail
+    assert capfd.readouterr().err == ""

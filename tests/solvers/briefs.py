@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import importlib.util
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -23,14 +21,10 @@ from detune.parts.kinds.damper import Damper
 from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem, build
 from detune.proof.selection_data import Selection
+from detune.solvers.nondominated import as_minimised, nondominated
+from detune.solvers.outcome import Outcome
 from detune.solvers.pyomo_statement import Statement, ToneSet
-
-_spec = importlib.util.spec_from_file_location(
-    "machines", Path(__file__).parents[1] / "response" / "machines.py"
-)
-assert _spec is not None and _spec.loader is not None
-machines: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 
 def damper(name: str, c: float, cost: float, stroke: float = 0.06, lateral: float = 0.0) -> Damper:
@@ -136,6 +130,16 @@ def small_problem(seed: int, trade: tuple[str, str] | None = None, most: int = 4
     )
     dashpots = dampers(damper("d1", 900.0, 3.0), damper("d2", 3000.0, 6.0, lateral=400.0))
     return build(stated, {"list": machines.catalog(*parts), "dashpots": dashpots})
+
+
+def front_of(outcome: Outcome, problem: Problem, digits: int = 7) -> list[tuple[float, float]]:
+    """Cost and the other objective of every nondominated design of a finished search, rounded, in order of cost."""
+    assert outcome.stopped == "finished" and outcome.record.accounted
+    if not outcome.designs.count:
+        return []
+    cost, other = (outcome.objectives[name] for name in problem.brief.objectives.trade)
+    kept = nondominated(as_minimised(outcome.objectives, problem.brief.objectives.trade))
+    return sorted({(round(float(cost[i]), 9), round(float(other[i]), digits)) for i in kept})
 
 
 def statement_of_selection(selection: Selection) -> Statement:

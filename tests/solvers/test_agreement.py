@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 from collections.abc import Iterator
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -24,19 +22,8 @@ from detune.solvers.own_process import OwnProcess
 from detune.solvers.pyomo_model import Task, run
 from detune.solvers.pyomo_statement import statement_of
 from detune.solvers.second_opinion import least_cost
-
-
-def _load(name: str, path: Path) -> Any:
-    spec = importlib.util.spec_from_file_location(name, path)
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-HERE = Path(__file__).parent
-briefs = _load("briefs", HERE / "briefs.py")
-brute = _load("brute_force", HERE.parent / "proof" / "brute_force.py")
+from proof import brute_force as brute
+from solvers import briefs
 
 SHAPES = [
     {"parts": 5, "groups": 2},

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import signal
-from pathlib import Path
 from types import ModuleType
 from typing import Any
 
@@ -19,11 +17,8 @@ from detune.response.assess import assess
 from detune.solvers import SOLVERS, bounded, choose, enumeration
 from detune.solvers.outcome import Progress, Settings
 from detune.study.front import assessed_front
+from solvers import briefs
 
-_spec = importlib.util.spec_from_file_location("briefs", Path(__file__).with_name("briefs.py"))
-assert _spec is not None and _spec.loader is not None
-briefs: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(briefs)
 machines = briefs.machines
 
 ALL = pytest.mark.parametrize("solver", SOLVERS.values(), ids=SOLVERS)

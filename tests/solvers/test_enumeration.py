@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-import importlib.util
 import itertools
 import time
 from collections.abc import Sequence
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -29,13 +27,7 @@ from detune.solvers import enumeration
 from detune.solvers.nondominated import as_minimised, nondominated
 from detune.solvers.outcome import Outcome, Progress, Settings
 from detune.study.front import assessed_front, objective_of
-
-_spec = importlib.util.spec_from_file_location(
-    "machines", Path(__file__).parents[1] / "response" / "machines.py"
-)
-assert _spec is not None and _spec.loader is not None
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 BALLAST = Ballast(position=(0.0, 0.0, 0.1), size=(0.8, 0.5, 0.1), steps=(0.0, 60.0, 150.0), cost_per_kg=0.3)
 

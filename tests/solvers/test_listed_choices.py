@@ -4,9 +4,7 @@ never cost more.
 
 from __future__ import annotations
 
-import importlib.util
 from dataclasses import replace
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -26,13 +24,9 @@ from detune.problem.build import Problem, build
 from detune.response.assess import assess
 from detune.response.designs import all_designs, total_cost
 from detune.solvers import bounded, choose, enumeration, second_opinion
-from detune.solvers.nondominated import as_minimised, nondominated
-from detune.solvers.outcome import Outcome, Settings
+from detune.solvers.outcome import Settings
+from solvers import briefs
 
-_spec = importlib.util.spec_from_file_location("briefs", Path(__file__).with_name("briefs.py"))
-assert _spec is not None and _spec.loader is not None
-briefs: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(briefs)
 machines = briefs.machines
 
 
@@ -105,25 +99,12 @@ def built(seed: int) -> Problem:
     return build(stated(plain), catalogs)
 
 
-def front_of(outcome: Outcome, problem: Problem) -> list[tuple[float, float]]:
-    assert outcome.stopped == "finished" and outcome.record.accounted
-    if not outcome.designs.count:
-        return []
-    trade = problem.brief.objectives.trade
-    kept = nondominated(as_minimised(outcome.objectives, trade))
-    found = {
-        (round(float(outcome.objectives["cost"][i]), 9), round(float(outcome.objectives[trade[1]][i]), 6))
-        for i in kept
-    }
-    return sorted(found)
-
-
 def check(seed: int) -> bool:
     problem = built(seed)
     assert bounded.refusal(problem) is None
     assert second_opinion.refusal(problem) is not None
     listed, searched = (solver.solve(problem, Settings()) for solver in (enumeration, bounded))
-    assert front_of(listed, problem) == front_of(searched, problem)
+    assert briefs.front_of(listed, problem, digits=6) == briefs.front_of(searched, problem, digits=6)
     for outcome in (listed, searched):
         if outcome.designs.count:
             best = problem.design(outcome.designs, int(np.argmin(outcome.objectives["cost"])))

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 from collections import Counter
 from dataclasses import replace
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -18,13 +16,9 @@ from detune.response.design import Design
 from detune.response.designs import all_designs, total_cost
 from detune.response.prices import least_cost, least_costs
 from detune.solvers import bounded, enumeration
-from detune.solvers.nondominated import as_minimised, nondominated
-from detune.solvers.outcome import Outcome, Settings
+from detune.solvers.outcome import Settings
+from solvers import briefs
 
-_spec = importlib.util.spec_from_file_location("briefs", Path(__file__).with_name("briefs.py"))
-assert _spec is not None and _spec.loader is not None
-briefs: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(briefs)
 machines = briefs.machines
 
 
@@ -75,19 +69,6 @@ def cost_by_hand(problem: Problem, design: Design) -> float:
     return total + design.ballast * problem.brief.ballast.cost_per_kg
 
 
-def front_of(outcome: Outcome, problem: Problem) -> list[tuple[float, float]]:
-    assert outcome.stopped == "finished" and outcome.record.accounted
-    if not outcome.designs.count:
-        return []
-    trade = problem.brief.objectives.trade
-    kept = nondominated(as_minimised(outcome.objectives, trade))
-    pairs = {
-        (round(float(outcome.objectives["cost"][i]), 9), round(float(outcome.objectives[trade[1]][i]), 7))
-        for i in kept
-    }
-    return sorted(pairs)
-
-
 def check(seed: int) -> bool:
     problem = priced_problem(seed)
     every = all_designs(problem.model, 0, problem.count)
@@ -103,7 +84,7 @@ def check(seed: int) -> bool:
         assert costs[index] == pytest.approx(cost_by_hand(problem, design), rel=1e-12)
     assert bounded.refusal(problem) is None
     listed, searched = (solver.solve(problem, Settings()) for solver in (enumeration, bounded))
-    assert front_of(searched, problem) == front_of(listed, problem)
+    assert briefs.front_of(searched, problem) == briefs.front_of(listed, problem)
     alone = bounded.solve(problem, Settings(front=False))
     if not listed.designs.count:
         assert alone.record.lower_bound == np.inf and not alone.designs.count

@@ -2,9 +2,7 @@
 
 import copy
 import hashlib
-import importlib.util
 import json
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -24,12 +22,7 @@ from detune.solvers.certify import certify
 from detune.solvers.outcome import Settings
 from detune.solvers.robust import numbers_of, robust_selection
 from detune.solvers.robust_record import proof_record
-
-_spec = importlib.util.spec_from_file_location(
-    "machines", Path(__file__).parents[1] / "response" / "machines.py"
-)
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 
 @pytest.fixture(scope="module")

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import importlib.util
 import itertools
 from pathlib import Path
 from typing import Any
@@ -22,20 +21,10 @@ from detune.solvers.perturbed import perturbed
 from detune.solvers.scatter_machine import scatter_map
 from detune.study.load import load_study
 from detune.study.run import run_study
+from response import machines
+from response import test_absorbers as absorbers
+from study import test_listed_parts as listed
 
-
-def _load(name: str, path: Path) -> Any:
-    spec = importlib.util.spec_from_file_location(name, path)
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-HERE = Path(__file__).parent
-machines = _load("machines", HERE.parent / "response" / "machines.py")
-absorbers = _load("test_absorbers", HERE.parent / "response" / "test_absorbers.py")
-listed = _load("test_listed_parts", HERE.parent / "study" / "test_listed_parts.py")
 SCATTER = '\n[scatter]\njudge = "interval"\nstiffness = { lot = "listed" }\ndamping = { lot = "20 %" }\n'
 
 

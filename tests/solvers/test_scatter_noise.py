@@ -1,9 +1,6 @@
 """Random responses over scatter through the whole program: statement, certificate, assessor, record and its
 checker."""
 
-import importlib.util
-from pathlib import Path
-
 import numpy as np
 import pytest
 
@@ -30,12 +27,7 @@ from detune.solvers.robust import numbers_of, robust_selection
 from detune.solvers.robust_record import proof_record
 from detune.solvers.scatter_machine import scatter_map
 from detune.solvers.yields import design_yield
-
-_spec = importlib.util.spec_from_file_location(
-    "machines", Path(__file__).parents[1] / "response" / "machines.py"
-)
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 BY_LOT = {"stiffness": PartScatter(lot=0.08), "damping": PartScatter(lot=0.15)}
 WITH_MASS = {

@@ -1,8 +1,5 @@
 """Certified designs against the assessor's own machine with scaled parts, moved centres and scaled masses."""
 
-import importlib.util
-from pathlib import Path
-
 import numpy as np
 import pytest
 
@@ -21,12 +18,7 @@ from detune.solvers.certify import certify
 from detune.solvers.perturbed import perturbed
 from detune.solvers.scatter_machine import scatter_map
 from detune.solvers.yields import clopper_pearson, design_yield, sample_points
-
-_spec = importlib.util.spec_from_file_location(
-    "machines", Path(__file__).parents[1] / "response" / "machines.py"
-)
-machines = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(machines)
+from response import machines
 
 BY_BOTH = {
     "stiffness": PartScatter(lot=(-0.1, 0.15), part=0.05),

@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
 import os
+import signal
 import time
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -27,11 +26,7 @@ from detune.solvers.pyomo_bounds import (
     worst_tone,
 )
 from detune.solvers.pyomo_model import Task, run
-
-_spec = importlib.util.spec_from_file_location("briefs", Path(__file__).with_name("briefs.py"))
-assert _spec is not None and _spec.loader is not None
-briefs: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(briefs)
+from solvers import briefs
 
 SELECTION = make_instance(
     InstanceSettings(parts=6, groups=3, seed=5, empty=True, ballast_steps=2, tight=False, separation=0.05)
@@ -60,8 +55,23 @@ def test_a_stop_ends_the_wait() -> None:
 def test_a_process_that_fails_or_dies_is_an_error() -> None:
     with OwnProcess(math.sqrt) as process, pytest.raises(SolveError, match="math domain error"):
         process.ask(-1.0, 30.0)
-    with OwnProcess(os._exit) as process, pytest.raises(SolveError, match="died"):
+    with OwnProcess(os._exit) as process, pytest.raises(SolveError, match="died: exit code 3"):
         process.ask(3, 30.0)
+    with OwnProcess(signal.raise_signal) as process, pytest.raises(SolveError, match="died: signal 9"):
+        process.ask(signal.SIGKILL, 30.0)
+
+
+def test_an_error_that_was_not_expected_stays_off_the_terminal(capfd: pytest.CaptureFixture[str]) -> None:
+    """SCIP raises a bare Exception where its LP solver fails; here a root is asked of a text, a TypeError."""
+    with OwnProcess(math.sqrt) as process:
+        with pytest.raises(SolveError, match="process died: TypeError: must be real number, not str"):
+            process.ask("four", 30.0)
+        # Another process answers the next question.
+        assert process.ask(4.0, 30.0) == 2.0
+        words = process.words
+        assert words is not None and words.exists()
+    assert not words.exists()
+    assert capfd.readouterr().err == ""
 
 
 @pytest.mark.parametrize("backend", ["highs", "scip_direct"])

@@ -20,6 +20,7 @@ from detune.response.assessment import MarginRow
 from detune.solvers.outcome import Settings
 from detune.study.load import load_study
 from detune.study.run import Result, run_study
+from small_studies import limit, mass_on_mounts, parts_from, study_text, table, written
 
 obspy = pytest.importorskip("obspy")
 
@@ -32,63 +33,24 @@ part,family,stiffness_z_static [N/m],stiffness_z_dynamic [N/m],viscous [N s/m],l
 rowan-a,spring,30000,30000,150,0,2000,yes,20
 rowan-b,spring,120000,120000,300,0,2000,yes,16
 """
-STUDY = """\
-title = "Balance on a floor that was recorded"
-
-[[body]]
-name = "balance"
-free = ["z"]
-mass = "80 kg"
-centre = ["0 m", "0 m", "0.2 m"]
-
-[[point]]
-name = "pan"
-position = ["0 m", "0 m", "0.4 m"]
-
-[[station]]
-name = "foot"
-group = "foot"
-position = ["0 m", "0 m", "0 m"]
-
-[floor]
-kind = "rigid"
-
-[[condition]]
-name = "tremor"
-steady = false
-
-[[forcing]]
-kind = "measured-record"
-name = "floor"
-direction = "z"
-file = "record.csv"
-use = "time"
-detrend = "mean"
-between = "straight"
-
-[[allowable]]
-kind = "acceleration"
-at = "pan"
-direction = "z"
-measure = "peak"
-limit = "0.06 m/s^2"
-
-[[allowable]]
-kind = "relative-motion"
-at = "pan"
-to = "floor"
-direction = "z"
-measure = "peak"
-limit = "0.2 mm"
-
-[[catalog]]
-name = "list"
-file = "list.csv"
-
-[[choice]]
-group = "foot"
-catalogs = ["list"]
-"""
+STUDY = study_text(
+    "Balance on a floor that was recorded",
+    mass_on_mounts("80 kg", stations={"foot": 0.0}, body="balance", point="pan", centre=0.2, top=0.4),
+    table("condition", name="tremor", steady=False),
+    table(
+        "forcing",
+        kind="measured-record",
+        name="floor",
+        direction="z",
+        file="record.csv",
+        use="time",
+        detrend="mean",
+        between="straight",
+    ),
+    limit("acceleration", "0.06 m/s^2", at="pan"),
+    limit("relative-motion", "0.2 mm", at="pan", to="floor"),
+    parts_from("mounts"),
+)
 
 
 @pytest.fixture(scope="module")
@@ -105,9 +67,7 @@ def result(acceleration: np.ndarray, tmp_path_factory: pytest.TempPathFactory) -
     folder = tmp_path_factory.mktemp("record")
     rows = "\n".join(f"{STEP * i:.2f},{value:.12g}" for i, value in enumerate(acceleration))
     (folder / "record.csv").write_text(f"time [s],acceleration [m/s^2]\n{rows}\n", encoding="utf-8")
-    (folder / "list.csv").write_text(LIST, encoding="utf-8")
-    (folder / "study.toml").write_text(STUDY, encoding="utf-8")
-    return run_study(load_study(folder / "study.toml"), Settings())
+    return run_study(load_study(written(folder, STUDY, mounts=LIST)), Settings())
 
 
 def by_lsim(acceleration: np.ndarray, part: str) -> tuple[float, float]:

@@ -87,6 +87,15 @@ def one_axis(
     )  # fmt: skip
 
 
+def forced(text: str, forcing: str, shafts: str = "") -> str:
+    """The study with its harmonic force replaced by another forcing, and the speeds of shafts in its condition."""
+    head, rest = text.split('[[forcing]]\nkind = "harmonic-force"', 1)
+    table, tail = rest.split("[[", 1)
+    assert "force = [" in table
+    head = head.replace('name = "running"\n', f'name = "running"\n{shafts}', 1)
+    return head + forcing + "[[" + tail
+
+
 def sized(folder: Path, text: str, drawings: bool = False) -> SizingResult:
     """The result of sizing a study given as text; the specification is left out unless the text says otherwise."""
     if "specification" not in text:

@@ -23,75 +23,29 @@ from detune.study.load import load_study
 from detune.study.named import named_design
 from detune.study.run import Result, run_study
 from detune.study.vary import vary_study
+from small_studies import catalog, limit, mass_on_mounts, mount_list, place, study_text, table, tone, written
 
 G = 9.80665
-HEAD = """\
-title = "Small"
-
-[[body]]
-name = "machine"
-free = ["z"]
-mass = "{mass} kg"
-centre = ["0 m", "0 m", "0.4 m"]
-
-[[point]]
-name = "top"
-position = ["0 m", "0 m", "0.6 m"]
-
-[[station]]
-name = "A"
-group = "feet"
-position = ["-0.4 m", "0 m", "0 m"]
-
-[[station]]
-name = "B"
-group = "feet"
-position = ["0.4 m", "0 m", "0 m"]
-
-[floor]
-kind = "rigid"
-
-[[condition]]
-name = "running"
-
-[[forcing]]
-kind = "harmonic-force"
-name = "shaker"
-position = ["0 m", "0 m", "0.4 m"]
-frequency = "{frequency} Hz"
-force = ["0 N", "0 N", "{force} N"]
-
-[[allowable]]
-kind = "displacement"
-at = "top"
-direction = "z"
-measure = "peak"
-limit = "{limit} mm"
-
-[objectives]
-trade = ["cost", "separation"]
-
-[[catalog]]
-name = "mounts"
-file = "mounts.csv"
-"""
-MOUNTS = """\
-part,family,stiffness_z_static [N/mm],stiffness_z_dynamic [N/mm],loss_factor,load_min [N],load_max [N],\
-pulls,tolerance [%],cost
-elm-a,rubber,100,120,0.1,0,5000,yes,15,20
-elm-b,rubber,200,240,0.1,0,5000,yes,15,26
-elm-c,rubber,400,480,0.1,0,5000,yes,15,31
-"""
+MOUNTS = mount_list(
+    "elm-a,rubber,100,120,0.1,0,5000,yes,15,20",
+    "elm-b,rubber,200,240,0.1,0,5000,yes,15,26",
+    "elm-c,rubber,400,480,0.1,0,5000,yes,15,31",
+)
 DYNAMIC = {"elm-a": (240e3, 40.0), "elm-b": (480e3, 52.0), "elm-c": (960e3, 62.0)}
 
 
-def written(folder: Path, study: str, **lists: str) -> Path:
-    (folder / "mounts.csv").write_text(MOUNTS, encoding="utf-8")
-    for name, text in lists.items():
-        (folder / f"{name}.csv").write_text(text, encoding="utf-8")
-    path = folder / "study.toml"
-    path.write_text(study, encoding="utf-8")
-    return path
+def machine(mass: str, frequency: str | list[str], force: str, most: str, *tables: str) -> str:
+    """A mass on two feet under a shaker, its motion limited, with the list of mounts and further tables."""
+    return study_text(
+        "Small",
+        mass_on_mounts(mass, stations={"A": -0.4, "B": 0.4}, point="top", centre=0.4, top=0.6),
+        table("condition", name="running"),
+        tone(frequency, force, at=0.4),
+        limit("displacement", most, at="top"),
+        table("objectives", trade=["cost", "separation"]),
+        catalog("mounts"),
+        *tables,
+    )
 
 
 def run_it(path: Path) -> Result:
@@ -123,20 +77,18 @@ sheet-n,rubber,2.2,0.64,0.73,1.3,0.12,20,500,1000,30,2,1.0,15,800,15
 sheet-s,rubber,1.5,0.45,0.85,1.2,0.08,12.5,500,1000,30,3,0.8,12,500,15
 """
 SIZES = [(40, 40), (40, 60), (60, 60), (60, 90), (90, 90), (20, 60)]
-PAD_STUDY = (
-    HEAD.format(mass=160, frequency=50, force=400, limit=0.035)
-    + """
-[[catalog]]
-name = "pads"
-file = "pads.csv"
-kind = "pad"
-
-[[choice]]
-group = "feet"
-catalogs = ["pads"]
-sizes = [["40 mm", "40 mm"], ["40 mm", "60 mm"], ["60 mm", "60 mm"], ["60 mm", "90 mm"], ["90 mm", "90 mm"],
-         ["20 mm", "60 mm"]]
-"""
+PAD_STUDY = machine(
+    "160 kg",
+    "50 Hz",
+    "400 N",
+    "0.035 mm",
+    catalog("pads", kind="pad"),
+    table(
+        "choice",
+        group="feet",
+        catalogs=["pads"],
+        sizes=[[f"{width} mm", f"{length} mm"] for width, length in SIZES],
+    ),
 )
 
 
@@ -171,7 +123,7 @@ def pads_by_hand() -> list[tuple[float, str]]:
 
 
 def test_pads_are_cut_to_the_cheapest_size_that_meets(tmp_path: Path) -> None:
-    path = written(tmp_path, PAD_STUDY, pads=PADS)
+    path = written(tmp_path, PAD_STUDY, mounts=MOUNTS, pads=PADS)
     result = run_it(path)
     expected = pads_by_hand()
     assert 1 < len(expected) < 8
@@ -208,23 +160,16 @@ plate-a,20,300,200,50,15,,9
 plate-b,30,300,200,75,26,18,2
 plate-c,55,300,300,90,70,,0
 """
-BALLAST_STUDY = (
-    HEAD.format(mass=100, frequency=30, force=400, limit=0.08)
-    + """
-[[choice]]
-group = "feet"
-catalogs = ["mounts"]
-
-[[catalog]]
-name = "pieces"
-file = "pieces.csv"
-kind = "ballast"
-
-[ballast]
-position = ["0 m", "0 m", "0.1 m"]
-catalogs = ["pieces"]
-pieces = 3
-"""
+BALLAST = catalog("pieces", kind="ballast") + table(
+    "ballast", position=place(z=0.1), catalogs=["pieces"], pieces=3
+)
+BALLAST_STUDY = machine(
+    "100 kg",
+    "30 Hz",
+    "400 N",
+    "0.08 mm",
+    table("choice", group="feet", catalogs=["mounts"]),
+    BALLAST,
 )
 
 
@@ -249,7 +194,7 @@ def ballast_by_hand(limit: float = 0.08e-3) -> list[tuple[float, str, str]]:
 
 
 def test_ballast_is_taken_in_pieces_at_their_price_and_stock(tmp_path: Path) -> None:
-    path = written(tmp_path, BALLAST_STUDY, pieces=PIECES)
+    path = written(tmp_path, BALLAST_STUDY, mounts=MOUNTS, pieces=PIECES)
     result = run_it(path)
     expected = ballast_by_hand()
     assert result.problem.count == 3 * 6
@@ -282,8 +227,8 @@ def test_ballast_is_taken_in_pieces_at_their_price_and_stock(tmp_path: Path) -> 
 def test_a_stack_stands_on_its_face_and_moves_the_centre(tmp_path: Path) -> None:
     """Three plates of 50 mm on z = 0.1 m: centre at 0.175 m, or at 0.025 m hanging from it."""
     for stack, z in (("up", 0.175), ("down", 0.025)):
-        study = BALLAST_STUDY.replace("pieces = 3", f'pieces = 3\nstack = "{stack}"')
-        loaded = load_study(written(tmp_path, study, pieces=PIECES))
+        text = BALLAST_STUDY.replace("pieces = 3", f'pieces = 3\nstack = "{stack}"')
+        loaded = load_study(written(tmp_path, text, mounts=MOUNTS, pieces=PIECES))
         design = named_design(loaded.brief, loaded.catalogs, "feet=elm-a, ballast=3 x plate-a")
         assert design.stack is not None
         assert design.stack.centre == pytest.approx((0.0, 0.0, z))
@@ -293,7 +238,7 @@ def test_a_stack_stands_on_its_face_and_moves_the_centre(tmp_path: Path) -> None
 
 
 def test_varying_the_limit_varies_the_pieces(tmp_path: Path) -> None:
-    path = written(tmp_path, BALLAST_STUDY, pieces=PIECES)
+    path = written(tmp_path, BALLAST_STUDY, mounts=MOUNTS, pieces=PIECES)
     for variation in vary_study(path, "allowable[1].limit", ["0.075 mm", "0.09 mm", "0.3 mm"]):
         limit = float(variation.value.split()[0]) * 1e-3
         cost, parts, stack = answer(variation.result)
@@ -309,28 +254,14 @@ pear-b,8,1,16,0.08,1.5,2,40
 pear-c,14,2,15,0.12,6,2,85
 pear-d,4,0.5,18,0.06,6,2,45
 """
-ABSORBER_STUDY = (
-    HEAD.format(mass=100, frequency="16", force=250, limit=0.55).replace(
-        'frequency = "16 Hz"', 'frequency = ["15 Hz", "17 Hz"]'
-    )
-    + """
-[[choice]]
-group = "feet"
-catalogs = ["mounts"]
-parts = ["elm-c"]
-
-[[catalog]]
-name = "absorbers"
-file = "absorbers.csv"
-kind = "absorber"
-
-[[absorber]]
-name = "tuned mass"
-at = "top"
-direction = "z"
-catalogs = ["absorbers"]
-empty = true
-"""
+ABSORBER_STUDY = machine(
+    "100 kg",
+    ["15 Hz", "17 Hz"],
+    "250 N",
+    "0.55 mm",
+    table("choice", group="feet", catalogs=["mounts"], parts=["elm-c"]),
+    catalog("absorbers", kind="absorber"),
+    table("absorber", name="tuned mass", at="top", direction="z", catalogs=["absorbers"], empty=True),
 )
 
 
@@ -360,7 +291,7 @@ def absorbers_by_hand() -> list[tuple[float, str]]:
 
 
 def test_the_cheapest_absorber_that_meets_is_chosen(tmp_path: Path) -> None:
-    path = written(tmp_path, ABSORBER_STUDY, absorbers=ABSORBERS)
+    path = written(tmp_path, ABSORBER_STUDY, mounts=MOUNTS, absorbers=ABSORBERS)
     result = run_it(path)
     expected = absorbers_by_hand()
     assert 0 < len(expected) < 4
@@ -399,8 +330,8 @@ def test_an_absorber_that_can_be_set_is_tried_at_every_tuning_in_its_range(tmp_p
     """pear-c at 15 Hz meets (see above); pear-s is the same with 12 Hz listed, and cheaper. 17 Hz is out of
     its range.
     """
-    study = ABSORBER_STUDY.replace("empty = true", 'tunings = ["12 Hz", "15 Hz", "17 Hz"]')
-    result = run_it(written(tmp_path, study, absorbers=ADJUSTABLE))
+    text = ABSORBER_STUDY.replace("empty = true", 'tunings = ["12 Hz", "15 Hz", "17 Hz"]')
+    result = run_it(written(tmp_path, text, mounts=MOUNTS, absorbers=ADJUSTABLE))
     assert [mount.part for mount in result.problem.candidates[1]] == ["pear-s", "pear-s at 15 Hz"]
     cost, parts, _ = answer(result)
     assert (cost, parts[1]) == (62.0 + 70.0, "pear-s at 15 Hz")
@@ -415,7 +346,7 @@ def test_an_absorber_that_can_be_set_is_tried_at_every_tuning_in_its_range(tmp_p
 
 
 def test_the_command_line_reads_runs_and_assesses(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
-    path = written(tmp_path, ABSORBER_STUDY, absorbers=ABSORBERS)
+    path = written(tmp_path, ABSORBER_STUDY, mounts=MOUNTS, absorbers=ABSORBERS)
     assert main(["check", str(path)]) == 0
     assert "1 absorber" in capsys.readouterr().out
     assert main(["assess", str(path), "--design", "feet=elm-c, tuned mass=pear-b"]) == 1
@@ -424,9 +355,8 @@ def test_the_command_line_reads_runs_and_assesses(tmp_path: Path, capsys: pytest
 
 def test_bounded_search_finds_what_enumeration_finds(tmp_path: Path) -> None:
     """Absorber, ballast and mounts at once: the masses differ from case to case, the front is the same."""
-    table = BALLAST_STUDY.split('catalogs = ["mounts"]')[1]
-    study = ABSORBER_STUDY.replace('parts = ["elm-c"]\n', "") + table
-    loaded = load_study(written(tmp_path, study, absorbers=ABSORBERS, pieces=PIECES))
+    text = ABSORBER_STUDY.replace('parts = ["elm-c"]\n', "") + BALLAST
+    loaded = load_study(written(tmp_path, text, mounts=MOUNTS, absorbers=ABSORBERS, pieces=PIECES))
     one, other = (run_study(loaded, solver=name) for name in ("enumeration", "bounded search"))
     assert one.problem.count == 3 * 5 * 6 and other.outcome.record.accounted
     assert [(p.cost, p.separation) for p in one.front.points] == [
@@ -447,7 +377,7 @@ BAD = [
         "choice[1].sizes",
         "a size that some sheet can be cut to",
     ),
-    (BALLAST_STUDY + 'steps = ["0 kg"]\n', "ballast.steps", 'no "steps" beside "catalogs"'),
+    (BALLAST_STUDY.rstrip() + '\nsteps = ["0 kg"]\n', "ballast.steps", 'no "steps" beside "catalogs"'),
     (BALLAST_STUDY.replace("pieces = 3", "pieces = 0"), "ballast.pieces", "1 or more"),
     (
         BALLAST_STUDY.replace("pieces = 3", 'parts = ["plate-c"]\nempty = false'),
@@ -502,7 +432,7 @@ BAD = [
 
 @pytest.mark.parametrize(("study", "where", "expected"), BAD, ids=[where for _, where, _ in BAD])
 def test_a_fault_names_its_place(study: str, where: str, expected: str, tmp_path: Path) -> None:
-    path = written(tmp_path, study, pads=PADS, pieces=PIECES, absorbers=ABSORBERS)
+    path = written(tmp_path, study, mounts=MOUNTS, pads=PADS, pieces=PIECES, absorbers=ABSORBERS)
     with pytest.raises(BriefError) as caught:
         load_study(path)
     assert where in [fault.where for fault in caught.value.faults], [str(f) for f in caught.value.faults]

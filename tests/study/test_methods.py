@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import json
 from pathlib import Path
-from typing import Any
 
 import pytest
 
@@ -17,11 +15,7 @@ from detune.solvers import SOLVERS
 from detune.solvers.outcome import Progress, Settings
 from detune.study.load import Study, load_study
 from detune.study.run import run_study
-
-_spec = importlib.util.spec_from_file_location("test_running", Path(__file__).with_name("test_running.py"))
-assert _spec is not None and _spec.loader is not None
-running: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(running)
+from study import test_running as running
 
 
 @pytest.fixture

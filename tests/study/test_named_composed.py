@@ -2,20 +2,13 @@
 
 from __future__ import annotations
 
-import importlib.util
-from pathlib import Path
-from typing import Any
-
 import pytest
 
 from detune.ground.errors import BriefError
 from detune.response.assess import assess
 from detune.study.named import named_design
+from solvers import briefs
 
-_spec = importlib.util.spec_from_file_location("briefs", Path(__file__).parents[1] / "solvers" / "briefs.py")
-assert _spec is not None and _spec.loader is not None
-briefs: Any = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(briefs)
 machines = briefs.machines
 
 ROWAN = machines.mount("rowan-c", 2e5, lateral=1e5, loss=0.1, cost=9.0)

@@ -223,11 +223,44 @@ def test_closed_forms_stand_beside_the_answer_and_are_never_better(tmp_path):
     result = briefs.sized(tmp_path, briefs.tuned_absorber(UNIT, DISPLACEMENT))
     best = result.answer
     assert best is not None
-    assert len(result.closed_forms) == 6
-    assert all(form.worst_response >= best.objective * (1 - 1e-9) for form in result.closed_forms)
+    names = [form.name for form in result.closed_forms]
+    assert names[:2] == ["Den Hartog, Brock", "Nishihara, Asami"] and len(names) == 8
+    # The form of Nishihara and Asami is the exact optimum here, which the search comes to within its own tolerance.
+    assert all(form.worst_response >= best.objective * (1 - 1e-6) for form in result.closed_forms)
+    exact = result.closed_forms[1]
+    assert best.objective == pytest.approx(exact.worst_response, rel=1e-5)
+    # Its height for mu = .05 is 6.40792077 (formula worked out by hand, and by a dense grid).
+    assert exact.height == pytest.approx(6.40792077, abs=1e-8)
+    assert all(form.within for form in result.closed_forms)
+    assert "8 closed forms" in sizing_summary(result) and "Nishihara, Asami" in sizing_summary(result)
     first = result.closed_forms[0]
     assert (first.tuning / HERTZ, first.damping) == pytest.approx((0.952381, 0.133631), abs=1e-6)
     assert first.mass_ratio == 0.05 and first.height == pytest.approx(6.403124, abs=1e-6)
+
+
+@pytest.mark.parametrize(("mu", "z1", "f", "z2", "peak"), [
+    (0.05, 0.03, 0.94269, 0.13843, 4.833152),
+    (0.05, 0.1, 0.91385, 0.14756, 3.056599),
+    (0.2, 0.1, 0.77802, 0.26448, 2.210073),
+])  # fmt: skip
+def test_a_damped_machine_against_a_grid_and_the_fit_of_ioi_and_ikeda(tmp_path, mu, z1, f, z2, peak):
+    """Least greatest displacement of a damped machine, by a dense complex grid with a simplex search of its own.
+
+    The fit of Ioi and Ikeda (Bull. JSME 21 (1978) 64, from memory) is within 1 % of it, Den Hartog's form is not.
+    """
+    wide = briefs.FORCE.format(frequency='["3 Hz", "30 Hz"]', force=1)
+    result = briefs.sized(tmp_path, briefs.tuned_absorber(wide, DISPLACEMENT, mu=mu, z1=z1))
+    best = result.answer
+    assert best is not None
+    assert best.values[0] / HERTZ == pytest.approx(f, abs=3e-5) and best.values[1] == pytest.approx(
+        z2, abs=2e-4
+    )
+    reached = (
+        next(row.value for row in best.assessment.margins if row.kind == "displacement") * MASS * OMEGA**2
+    )
+    assert reached == pytest.approx(peak, rel=3e-6)
+    forms = {form.name: form.worst_response / best.objective for form in result.closed_forms}
+    assert 1.0 < forms["Ioi, Ikeda"] < 1.01 < forms["Den Hartog, Brock"]
 
 
 def test_detuning_by_the_stated_scatter(tmp_path):
@@ -264,6 +297,26 @@ def test_detuning_by_the_stated_scatter(tmp_path):
     for words in ("Absorber beside closed forms", "Absorber under the stated scatter", "Den Hartog, Brock"):
         assert words in page
     assert (folder / "plots" / "sizing-absorber.png").is_file()
+
+
+def test_a_tuning_that_breaks_its_limit_over_the_scatter_is_sought_again(tmp_path):
+    """Both springs +-5 %, damping +-20 %: the least worst corner by a grid and a simplex outside this project.
+
+    Tuned for listed values (.95237, .13394) the worst corner moves 25.4174 um; the least is 23.2045 um, at .94502 and
+    .14762, so that a limit of 23.5 um is met over the scatter by that alone.
+    """
+    text = briefs.tuned_absorber(UNIT, briefs.limit("displacement", "0.0235 mm"))
+    text += '[scatter]\njudge = "interval"\nstiffness = { lot = "5 %" }\ndamping = { lot = "20 %" }\n'
+    result = briefs.sized(tmp_path, text)
+    over, best = result.over, result.answer
+    assert best is not None and over.changed and over.judged.proven and result.exit_code == 0
+    first = over.first.verdict.witness
+    assert first.worst == pytest.approx(25.4174e-6, rel=1e-4)
+    assert best.values == pytest.approx([9.4502, 0.14762], rel=2e-3)
+    worst = next(row for row in over.judged.verdict.rows if row.kind == "displacement")
+    assert worst.worst == pytest.approx(23.2045e-6, rel=1e-4)
+    # What it costs at listed values.
+    assert over.nominal < over.objective < 1.06 * over.nominal
 
 
 BAD = {

@@ -91,7 +91,7 @@ def test_no_damping_breaks_a_limit_held_whatever_the_damping(skid):
     wide = brief.sizing.model_copy(
         update={
             "unknown": tuple(
-                u.model_validate({**u.model_dump(exclude_unset=True), "lower": 1e-4, "upper": 5.0})
+                u.model_validate({**u.model_dump(exclude_unset=True), "lower": 1e-4, "upper": "500 %"})
                 if k in damping
                 else u
                 for k, u in enumerate(brief.sizing.unknown)

@@ -9,7 +9,8 @@ import pytest
 
 from detune.brief.sizing import SizingUnknown
 from detune.solvers import size_many_starts
-from detune.solvers.size_whole import step_of
+from detune.solvers.size_front_searched import searched_front
+from detune.solvers.size_whole import on_steps, step_of
 from detune.study.load import load_study
 from detune.study.size import size_study
 
@@ -53,11 +54,22 @@ def test_many_steps_are_tried_round_the_best_searches(tmp_path):
     assert abs(best.values[-1] - free.values[-1]) <= 7.0 + 1e-6
 
 
+def test_every_point_of_a_front_stands_on_a_step(tmp_path):
+    text = SKID.replace('upper = "150 kg"', 'upper = "150 kg"\nstep = "40 kg"')
+    text = text.replace('minimise = "cost"', 'minimise = "cost"\ntrade = ["cost", "worst-response"]')
+    text = text.replace("front_points = 4", "front_points = 2")
+    path = tmp_path / "study.toml"
+    path.write_text(text, encoding="utf-8")
+    brief = load_study(path).brief
+    best = size_many_starts.solve(brief, "cost", 1.0, starts=2, seed=1)
+    front = searched_front(brief, on_steps(brief, best).searches[0].values)
+    assert len(front.points) >= 2
+    assert {float(point.values[-1]) for point in front.points} <= {0.0, 40.0, 80.0, 120.0}
+
+
 def test_nothing_stepped_is_left_alone(tmp_path):
     brief = load_study(_written(tmp_path)).brief
     found = size_many_starts.solve(brief, "cost", 1.0, starts=1, seed=1)
-    from detune.solvers.size_whole import on_steps
-
     assert on_steps(brief, found) is found
     unknown = brief.sizing.unknown[-1]
     given = unknown.model_dump(exclude_unset=True)

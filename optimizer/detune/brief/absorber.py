@@ -2,15 +2,13 @@
 
 from pydantic import field_validator, model_validator
 
-from detune.brief.choice import Window
+from detune.brief.choice import CatalogNames, PartNames, Where
 from detune.brief.statement import (
     AxisName,
     Direction,
     Frequency,
     Name,
     Statement,
-    Text,
-    listed_once,
     positive,
     refuse,
     unit_direction,
@@ -30,9 +28,9 @@ class Absorber(Statement):
     name: Name
     at: Name
     direction: AxisName | Direction
-    catalogs: tuple[Name, ...]
-    where: dict[Name, tuple[Text, ...] | Window] = {}
-    parts: tuple[Name, ...] | None = None
+    catalogs: CatalogNames
+    where: Where = {}
+    parts: PartNames = None
     tunings: tuple[Frequency, ...] = ()
     empty: bool = False
 
@@ -44,18 +42,6 @@ class Absorber(Statement):
         if len(set(value)) != len(value):
             raise refuse(", ".join(f"{frequency:g} Hz" for frequency in value), "each frequency once")
         return value
-
-    @field_validator("catalogs")
-    @classmethod
-    def _some_catalog(cls, value: tuple[str, ...]) -> tuple[str, ...]:
-        if not value:
-            raise refuse("[]", "at least one catalog")
-        return value
-
-    @field_validator("catalogs", "parts")
-    @classmethod
-    def _some(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
-        return listed_once(value)
 
     @model_validator(mode="after")
     def _along(self) -> "Absorber":

@@ -2,7 +2,7 @@
 
 from typing import Annotated, Literal
 
-from pydantic import BeforeValidator, ConfigDict, Field, field_validator, model_validator
+from pydantic import AfterValidator, BeforeValidator, ConfigDict, Field, field_validator, model_validator
 
 from detune.brief.statement import (
     Cost,
@@ -75,6 +75,18 @@ class Window(Statement):
         return self
 
 
+def _some_catalogs(value: tuple[str, ...]) -> tuple[str, ...] | None:
+    if not value:
+        raise refuse("[]", "at least one catalog")
+    return listed_once(value)
+
+
+# What a statement says of the rows it takes: of which lists, filtered by which columns, or named one by one.
+CatalogNames = Annotated[tuple[Name, ...], AfterValidator(_some_catalogs)]
+Where = dict[Name, tuple[Text, ...] | Window]
+PartNames = Annotated[tuple[Name, ...] | None, AfterValidator(listed_once)]
+
+
 class Choice(Statement):
     """The parts one group may take: from which catalogs, filtered by columns, or named one by one.
 
@@ -86,9 +98,9 @@ class Choice(Statement):
     """
 
     group: Name
-    catalogs: tuple[Name, ...]
-    where: dict[Name, tuple[Text, ...] | Window] = {}
-    parts: tuple[Name, ...] | None = None
+    catalogs: CatalogNames
+    where: Where = {}
+    parts: PartNames = None
     sizes: tuple[tuple[Length, Length], ...] = ()
     parallel: tuple[int, ...] = (1,)
     dampers: tuple[Name, ...] = ()
@@ -110,18 +122,6 @@ class Choice(Statement):
         if not value or min(value) < 1 or len(set(value)) != len(value):
             raise refuse(list(value), "different whole numbers, each 1 or more, for example [1, 2]")
         return value
-
-    @field_validator("catalogs")
-    @classmethod
-    def _some_catalog(cls, value: tuple[str, ...]) -> tuple[str, ...]:
-        if not value:
-            raise refuse("[]", "at least one catalog")
-        return value
-
-    @field_validator("catalogs", "parts")
-    @classmethod
-    def _some(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
-        return listed_once(value)
 
 
 class Ballast(Statement):
@@ -146,16 +146,11 @@ class Ballast(Statement):
     steps: tuple[Mass, ...] = ()
     cost_per_kg: Cost = 0.0
     catalogs: tuple[Name, ...] = ()
-    where: dict[Name, tuple[Text, ...] | Window] = {}
-    parts: tuple[Name, ...] | None = None
+    where: Where = {}
+    parts: PartNames = None
     pieces: int = Field(default=1, strict=True)
     stack: Literal["up", "down"] = "up"
     empty: bool = True
-
-    @field_validator("parts")
-    @classmethod
-    def _some(cls, value: tuple[str, ...] | None) -> tuple[str, ...] | None:
-        return listed_once(value)
 
     @model_validator(mode="after")
     def _one_way(self) -> "Ballast":

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 from pydantic import PrivateAttr, ValidationInfo, model_validator
 
+from detune.brief.shares import LossFactor
 from detune.brief.statement import (
     AreaDensity,
     AxisName,
@@ -81,7 +82,7 @@ class Floor(Statement):
     directions: tuple[AxisName, ...] | None = None
     stiffness_matrix: Text | tuple[tuple[Stiffness, ...], ...] | None = None
     mass_matrix: Text | tuple[tuple[Mass, ...], ...] | None = None
-    loss_factor: Ratio | None = None
+    loss_factor: LossFactor | None = None
     _matrices: "FloorMatrices | None" = PrivateAttr(default=None)
     _table: "FloorTable | None" = PrivateAttr(default=None)
 
@@ -122,7 +123,8 @@ class Floor(Statement):
             if value < 0.0 or (value == 0.0 and name not in ("damping", "damping_ratio", "loss_factor")):
                 raise refuse(f"{name} = {value:g}", "a value above zero", at=name)
         if self.damping_ratio is not None and self.damping_ratio >= 1.0:
-            raise refuse(f"{self.damping_ratio:g}", "a damping ratio below 1", at="damping_ratio")
+            expected = 'a damping ratio below 1, such as 0.02 or "2 %"'
+            raise refuse(f"{self.damping_ratio:g}", expected, at="damping_ratio")
         return self
 
     @model_validator(mode="after")

@@ -271,7 +271,11 @@ class Connection(Statement):
         if self.loss_factor is None and self.viscous is None:
             raise refuse("no damping", 'the damping as "loss_factor" or "viscous" (zero is an answer)')
         if self.loss_factor is not None and not 0.0 <= self.loss_factor <= 1.5:
-            raise refuse(f"{self.loss_factor:g}", "a loss factor from 0 to 1.5", at="loss_factor")
+            raise refuse(
+                f"{self.loss_factor:g}",
+                'a loss factor from 0 to 1.5, such as 0.05 or "5 %"',
+                at="loss_factor",
+            )
         return self
 
 

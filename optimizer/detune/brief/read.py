@@ -73,6 +73,8 @@ EXPECTED = {
     "string_too_short": "text that is not empty",
     "bool_type": "true or false",
     "int_type": "a whole number",
+    "int_parsing": "a whole number",
+    "int_from_float": "a whole number",
     "float_type": "a number",
     "float_parsing": "a number",
     "tuple_type": "a list in square brackets",

@@ -4,9 +4,10 @@ from typing import Any, Literal
 
 from pydantic import field_validator, model_validator
 
+from detune.brief.shares import Share
 from detune.brief.statement import Length, Ratio, Statement, refuse
 
-Interval = Ratio | tuple[Ratio, Ratio]
+Interval = Share | tuple[Share, Share]
 LISTED = "listed"
 LARGEST = 0.9
 COMMON_DAMPING = 0.30

@@ -8,19 +8,30 @@ from typing import Literal
 
 from pydantic import PrivateAttr, field_validator, model_validator
 
+from detune.brief.shares import (
+    LOSS_FACTORS_BELOW,
+    SHARES_BELOW,
+    LossFactor,
+    Share,
+    refuse_if_per_cent_is_missing,
+)
 from detune.brief.statement import (
     AxisName,
     Cost,
     Damping,
+    Force,
+    Length,
     Name,
     Ratio,
     Statement,
     Stiffness,
+    Temperature,
     Text,
     describe,
     refuse,
 )
 from detune.ground import units
+from detune.ground.errors import nearest_name
 from detune.ground.kinds import KINDS
 
 Kind = Literal[
@@ -47,7 +58,17 @@ UNITS: dict[str, str] = {
 }
 OF_GROUP = ("stiffness", "loss-factor", "viscous", "absorber-tuning", "absorber-damping", "parallel")
 OF_BODY = ("absorber-mass", "absorber-tuning", "absorber-damping")
-FROM_ZERO = ("ballast", "viscous", "position")
+# What a bound of these kinds is called, and the number from which on it needs its per cent sign.
+SHARES = {
+    "loss-factor": ("a loss factor", LOSS_FACTORS_BELOW),
+    "absorber-damping": ("a damping ratio", SHARES_BELOW),
+}
+FROM_ZERO = ("ballast", "viscous")
+# Each amount of ballast and each number of parts is a problem of its own.
+MOST_STEPS, MOST_PARTS = 1000, 100
+# What may stand for the only unknown of a kind on a map, on one axis.
+NATURAL_FREQUENCY, DAMPING_RATIO = "natural frequency", "damping ratio"
+STANDS_FOR: dict[str, Kind] = {NATURAL_FREQUENCY: "stiffness", DAMPING_RATIO: "viscous"}
 Minimised = Literal["cost", "added-mass", "worst-response", "stiffness", "damping", "absorber-mass"]
 Maximised = Literal["separation", "stiffness"]
 Bound = Text | float
@@ -60,9 +81,9 @@ class SizingUnknown(Statement):
     both lateral directions, "x" and "y" one of them. `loss-factor` and `viscous` are those of one part of the
     group. `ballast` is the added mass, in steps of `step` where one is stated. `absorber-mass` is the mass of the
     body; `absorber-tuning` its frequency on its own group's parts with the machine held, `absorber-damping` the
-    damping ratio there. `position`: the distance of the stations from the origin along `axis`, each on its
-    own side. `parallel`: a
-    whole number of equal parts side by side at each station of the group, sought on one axis alone.
+    damping ratio there. `position`: the distance of the stations from the origin along `axis`, each on its own
+    side; below zero it is on the other side, so that a range may go through the origin. `parallel`: a whole number
+    of equal parts side by side at each station of the group, sought on one axis alone.
     """
 
     kind: Kind
@@ -79,6 +100,13 @@ class SizingUnknown(Statement):
     _high: float = PrivateAttr()
     _step: float | None = PrivateAttr(default=None)
 
+    @field_validator("lower", "upper", "step", mode="before")
+    @classmethod
+    def _no_truth_value(cls, value: object) -> object:
+        if isinstance(value, bool):
+            raise refuse(describe(value), "a number, with its unit where it has one")
+        return value
+
     @model_validator(mode="after")
     def _values(self) -> "SizingUnknown":
         self._low, self._high = self._read(self.lower, "lower"), self._read(self.upper, "upper")
@@ -88,7 +116,7 @@ class SizingUnknown(Statement):
                 found, "the lower bound first, the upper bound second: these are crossed", at="lower"
             )
         least = 0.0 if self.kind in FROM_ZERO else None
-        if (least is None and self._low <= 0.0) or self._low < 0.0:
+        if self.kind != "position" and ((least is None and self._low <= 0.0) or self._low < 0.0):
             wanted = "a lower bound of zero or more" if least == 0.0 else "a lower bound above zero"
             raise refuse(describe(self.lower), wanted, at="lower")
         if self.step is not None:
@@ -97,13 +125,31 @@ class SizingUnknown(Statement):
             self._step = self._read(self.step, "step")
             if self._step <= 0.0:
                 raise refuse(describe(self.step), "a step above zero", at="step")
+            if self._step > self._high - self._low > 0.0:
+                expected = (
+                    "a step that fits between the bounds, so that more than the lower bound can be chosen"
+                )
+                raise refuse(describe(self.step), expected, at="step")
+            if self._high - self._low > MOST_STEPS * self._step:
+                expected = (
+                    f"a step that leaves at most {MOST_STEPS} amounts, or none: then ballast is continuous"
+                )
+                raise refuse(describe(self.step), expected, at="step")
         if self.kind == "parallel" and (self._low % 1.0 or self._high % 1.0):
             found = f"{describe(self.lower)} to {describe(self.upper)}"
             raise refuse(found, "whole numbers of parts, such as 1 and 4", at="lower")
+        if self.kind == "parallel" and self._high > MOST_PARTS:
+            raise refuse(describe(self.upper), f"at most {MOST_PARTS} parts side by side", at="upper")
         self._belonging()
         return self
 
     def _read(self, value: Bound, at: str) -> float:
+        bound = self._in_si(value, at)
+        if self.kind in SHARES:
+            refuse_if_per_cent_is_missing(value, bound, *SHARES[self.kind], at=at)
+        return bound
+
+    def _in_si(self, value: Bound, at: str) -> float:
         kind = UNITS[self.kind]
         if isinstance(value, str):
             try:
@@ -133,7 +179,8 @@ class SizingUnknown(Statement):
         if allowed is None and self.axis is not None:
             raise refuse(self.axis, f'no "axis" for {self.kind}', at="axis")
         if allowed is not None and self.axis not in allowed:
-            raise refuse(describe(self.axis), f'"axis" as one of {", ".join(allowed)}', at="axis")
+            found = "" if self.axis is None else describe(self.axis)
+            raise refuse(found, f'"axis" as one of {", ".join(allowed)}', at="axis")
 
     @property
     def bounds(self) -> tuple[float, float]:
@@ -173,7 +220,9 @@ class MadePart(Statement):
 
     `lateral_ratio`: lateral over axial dynamic stiffness. `damping_lateral_ratio`: of viscous damping.
     `stiffness`, `loss_factor`, `viscous`: where they are no unknowns. The cost of one part is `cost` and what its
-    axial stiffness in N/mm, its loss factor and its axial damping in N s/m add to it.
+    axial stiffness in N/mm, its loss factor and its axial damping in N s/m add to it. `load_min`, `load_max`,
+    `deflection_max`, `free_height`, `temperature_min` and `temperature_max` are what a list would state of it, for the
+    limits that ask for them; `tolerance` what the scatter of a lot takes as listed.
     """
 
     group: Name
@@ -181,9 +230,16 @@ class MadePart(Statement):
     lateral_ratio: Ratio | None = None
     damping_lateral_ratio: Ratio = 0.0
     stiffness: Stiffness | None = None
-    loss_factor: Ratio | None = None
+    loss_factor: LossFactor | None = None
     viscous: Damping | None = None
     pulls: bool = False
+    load_min: Force = 0.0
+    load_max: Force | None = None
+    deflection_max: Length | None = None
+    free_height: Length | None = None
+    temperature_min: Temperature | None = None
+    temperature_max: Temperature | None = None
+    tolerance: Share | None = None
     cost: Cost = 0.0
     cost_per_stiffness: Cost = 0.0
     cost_per_loss_factor: Cost = 0.0
@@ -191,15 +247,26 @@ class MadePart(Statement):
 
     @model_validator(mode="after")
     def _values(self) -> "MadePart":
-        for key in ("dynamic_to_static", "lateral_ratio", "stiffness"):
+        for key in (
+            "dynamic_to_static",
+            "lateral_ratio",
+            "stiffness",
+            "load_max",
+            "deflection_max",
+            "free_height",
+        ):
             value = getattr(self, key)
             if value is not None and value <= 0.0:
                 raise refuse(f"{value:g}", "a value above zero", at=key)
-        for key in ("damping_lateral_ratio", "loss_factor", "viscous", "cost", "cost_per_loss_factor",
-                    "cost_per_damping"):  # fmt: skip
+        for key in ("damping_lateral_ratio", "loss_factor", "viscous", "load_min", "tolerance", "cost",
+                    "cost_per_loss_factor", "cost_per_damping"):  # fmt: skip
             value = getattr(self, key)
             if value is not None and value < 0.0:
                 raise refuse(f"{value:g}", "a value of zero or more", at=key)
+        for low, high in (("load_min", "load_max"), ("temperature_min", "temperature_max")):
+            ends = getattr(self, low), getattr(self, high)
+            if None not in ends and ends[0] > ends[1]:
+                raise refuse(f"{ends[0]:g} to {ends[1]:g}", f'"{low}" not above "{high}"', at=low)
         return self
 
 
@@ -208,7 +275,8 @@ class Sizing(Statement):
 
     Exactly one of `minimise` and `maximise`. `trade`: two or three of cost, added-mass, worst-response, stiffness,
     damping and separation, of which the front is drawn. `map`: the names of two unknowns spanning the map of what
-    is feasible. `starts` local searches from points drawn with `seed` where no exact method applies.
+    is feasible; on one axis "natural frequency" may stand for the stiffness and "damping ratio" for the viscous
+    damping. `starts` local searches from points drawn with `seed` where no exact method applies.
     `specification`: whether the purchase specification is worked out.
     """
 
@@ -237,27 +305,37 @@ class Sizing(Statement):
         if (self.minimise is None) == (self.maximise is None):
             found = "both" if self.minimise is not None else "neither"
             raise refuse(found, 'exactly one of "minimise" and "maximise"')
-        titles = [unknown.title for unknown in self.unknown]
-        for title in titles:
-            if titles.count(title) > 1:
-                raise refuse(title, "each unknown once", at="unknown")
-        if self.map and len(self.map) != 2:
-            raise refuse(list(self.map), "the names of two unknowns", at="map")
-        for name in self.map:
-            if name not in titles:
-                raise refuse(name, "an unknown: " + ", ".join(titles), at="map")
-        counted = [unknown.title for unknown in self.unknown if unknown.kind == "parallel"]
-        for name in self.map:
-            if name in counted:
-                raise refuse(
-                    name, "two unknowns that are continuous: a number of parts spans no map", at="map"
-                )
+        self._mapped([unknown.title for unknown in self.unknown])
         if self.trade and (not 2 <= len(self.trade) <= 3 or len(set(self.trade)) != len(self.trade)):
             raise refuse(list(self.trade), "two or three different objectives", at="trade")
         for key in ("starts", "front_points"):
             if getattr(self, key) < 1:
                 raise refuse(str(getattr(self, key)), "a whole number of 1 or more", at=key)
         return self
+
+    def _mapped(self, titles: list[str]) -> None:
+        """Refuse a map that is not spanned by two unknowns, or by what stands for them."""
+        if not self.map:
+            return
+        if len(self.map) != 2:
+            raise refuse(list(self.map), "the names of two unknowns", at="map")
+        kinds = [unknown.kind for unknown in self.unknown]
+        stand_ins = {name: kind for name, kind in STANDS_FOR.items() if kinds.count(kind) == 1}
+        moved: list[str] = []
+        for name in self.map:
+            if name not in titles and name not in stand_ins:
+                known = [*titles, *stand_ins]
+                near = nearest_name(name, known)
+                raise refuse(name, "an unknown: " + ", ".join(known), at="map", nearest=near)
+            moved.append(name if name in titles else titles[kinds.index(stand_ins[name])])
+        if moved[0] == moved[1]:
+            raise refuse(list(self.map), "two different unknowns", at="map")
+        counted = [unknown.title for unknown in self.unknown if unknown.kind == "parallel"]
+        for name in self.map:
+            if name in counted:
+                raise refuse(
+                    name, "two unknowns that are continuous: a number of parts spans no map", at="map"
+                )
 
     @property
     def goal(self) -> str:

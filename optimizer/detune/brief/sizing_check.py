@@ -2,12 +2,18 @@
 
 from collections.abc import Iterable, Set
 
+from detune.brief.allowable.added_mass import AddedMass
+from detune.brief.allowable.part_numbers import PartNumbers
 from detune.brief.brief import Brief
 from detune.brief.finding import Finding, Path
 from detune.brief.machine import Station
 from detune.brief.sizing import MadePart, Sizing, SizingUnknown
 from detune.brief.statement import unit_direction
 from detune.ground.errors import nearest_name
+from detune.ground.units import show
+
+# What a limit asks of every part.
+WANTED = {"height": ("free_height",), "temperature-range": ("temperature_min", "temperature_max")}
 
 
 def sizing_checked(brief: Brief) -> list[Finding]:
@@ -18,21 +24,82 @@ def sizing_checked(brief: Brief) -> list[Finding]:
     findings: list[Finding] = []
     for index, unknown in enumerate(sizing.unknown):
         findings += _names(brief, ("sizing", "unknown", index), unknown)
-    findings += _moved_once(brief, sizing)
+    findings += _moved_once(brief, sizing) + _stated_twice(sizing) + _ballast_allowed(brief, sizing)
     for index, made in enumerate(sizing.made):
+        path: Path = ("sizing", "made", index, "group")
         if made.group not in brief.groups:
-            path: Path = ("sizing", "made", index, "group")
             findings.append(_unknown_name(path, made.group, brief.groups, "a group of stations"))
     for group in brief.groups:
         findings += _group(brief, sizing, group)
     if sizing.goal == "absorber-mass" and all(u.kind != "absorber-mass" for u in sizing.unknown):
         expected = 'an unknown of kind "absorber-mass", or another objective: as stated the mass is known'
         findings.append(Finding(("sizing", "minimise"), "absorber-mass", expected))
+    findings += _asked_of_made(brief, sizing)
     if brief.ballast is None:
         wants = [f'"{name}"' for name in (sizing.goal, *sizing.trade) if name == "added-mass"]
         if wants:
             expected = "a [ballast] table and a ballast unknown, without which no mass is added"
             findings.append(Finding(("sizing",), "added-mass", expected))
+    return findings
+
+
+def _asked_of_made(brief: Brief, sizing: Sizing) -> list[Finding]:
+    """Limits and scatter that ask of a made part what only its own table can say."""
+    findings = []
+    for number, allowable in enumerate(brief.allowables):
+        wanted = WANTED.get(allowable.kind, ())
+        missing = [key for key in wanted if any(getattr(made, key) is None for made in sizing.made)]
+        if missing:
+            keys = " and ".join(f'"{key}"' for key in missing)
+            expected = (
+                f"{keys} in every [[sizing.made]] table: without it no part made to order meets this limit"
+            )
+            findings.append(Finding(("allowable", number), allowable.kind, expected, depends=("sizing",)))
+        if isinstance(allowable, PartNumbers) and allowable.limit < len(brief.groups):
+            expected = (
+                f"{len(brief.groups)} or more: parts made to order are of one part number for each group, and "
+                "groups that are to carry the same part are one group"
+            )
+            path: Path = ("allowable", number, "limit")
+            findings.append(Finding(path, str(allowable.limit), expected, depends=("sizing",)))
+    stiffness = None if brief.scatter is None else brief.scatter.stiffness
+    listed = stiffness is None or "listed" in (stiffness.lot, stiffness.part)
+    if brief.scatter is not None and listed and any(made.tolerance is None for made in sizing.made):
+        expected = (
+            'stiffness = { lot = "10 %" } or the like, or "tolerance" in every [[sizing.made]] table: parts made to '
+            "order have no listed tolerance"
+        )
+        found = "the listed tolerance" if stiffness is not None else "no stiffness"
+        findings.append(Finding(("scatter",), found, expected, depends=("sizing",)))
+    return findings
+
+
+def _stated_twice(sizing: Sizing) -> list[Finding]:
+    """An unknown, or what the parts of a group are like, that is stated a second time."""
+    findings = []
+    titles = [unknown.title for unknown in sizing.unknown]
+    for index, title in enumerate(titles):
+        if title in titles[:index]:
+            expected = f"each unknown once: it is unknown {titles.index(title) + 1} already"
+            findings.append(Finding(("sizing", "unknown", index), title, expected))
+    groups = [made.group for made in sizing.made]
+    for index, group in enumerate(groups):
+        if group in groups[:index]:
+            expected = "one [[sizing.made]] table for each group"
+            findings.append(Finding(("sizing", "made", index, "group"), group, expected))
+    return findings
+
+
+def _ballast_allowed(brief: Brief, sizing: Sizing) -> list[Finding]:
+    """The least ballast within the bounds against what may be added at all."""
+    caps = [each.limit for each in brief.allowables if isinstance(each, AddedMass)]
+    findings = []
+    for index, unknown in enumerate(sizing.unknown):
+        if unknown.kind == "ballast" and caps and unknown.bounds[0] > min(caps):
+            expected = f"a lower bound within the limit on added mass, which is {show(min(caps), 'mass')}"
+            findings.append(
+                Finding(("sizing", "unknown", index, "lower"), show(unknown.bounds[0], "mass"), expected)
+            )
     return findings
 
 
@@ -53,7 +120,7 @@ def _names(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Finding]:
     for index, name in enumerate(unknown.stations):
         if name not in stations:
             findings.append(_unknown_name((*path, "stations", index), name, stations, "a station"))
-    if unknown.kind == "position" and unknown.axis in ("x", "y"):
+    if unknown.kind == "position" and unknown.axis in ("x", "y") and unknown.bounds[0] >= 0.0:
         findings += _without_a_side(brief, path, unknown)
     absorber = unknown.kind in ("absorber-tuning", "absorber-damping") and unknown.body in bodies
     if absorber and not _stands_on(brief, str(unknown.body), str(unknown.group)):
@@ -79,7 +146,8 @@ def _without_a_side(brief: Brief, path: Path, unknown: SizingUnknown) -> list[Fi
         if place == 0.0:
             found = f'station "{name}" at {unknown.axis} = 0'
             expected = (
-                f"a station with its {unknown.axis} above or below zero, which says to which side it moves"
+                f"a station with its {unknown.axis} above or below zero, which says to which side it moves, or a "
+                "lower bound below zero, which lets it move to both"
             )
             findings.append(Finding((*path, "stations", number), found, expected))
     return findings
@@ -141,6 +209,12 @@ def _stated_once(path: Path, made: MadePart, own: Set[str], axes: Set[str | None
     if sought == (made.stiffness is not None):
         expected = f'the axial stiffness of group "{made.group}" once: as an unknown, or as "stiffness" here'
         findings.append(Finding((*path, "stiffness"), "both" if sought else "neither", expected))
+    if "lateral" in axes and axes & {"x", "y"}:
+        expected = f'lateral stiffness of group "{made.group}" once: as "lateral", or as "x" and "y"'
+        findings.append(Finding(path, "lateral and one of x and y", expected))
+    if made.lateral_ratio is not None and ("lateral" in axes or {"x", "y"} <= axes):
+        expected = 'no "lateral_ratio" here: lateral stiffness is an unknown'
+        findings.append(Finding((*path, "lateral_ratio"), f"{made.lateral_ratio:g}", expected))
     viscous = bool(own & {"viscous", "absorber-damping"})
     damped = "loss-factor" in own or viscous
     stated = made.loss_factor is not None or made.viscous is not None

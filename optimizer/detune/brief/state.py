@@ -2,6 +2,7 @@
 
 from pydantic import field_validator, model_validator
 
+from detune.brief.shares import Share
 from detune.brief.statement import (
     Acceleration,
     Direction,
@@ -32,7 +33,7 @@ class State(Statement):
     lost: tuple[Name, ...] = ()
     stiffness_factor: Ratio = 1.0
     groups: tuple[Name, ...] | None = None
-    creep: Ratio = 0.0
+    creep: Share = 0.0
     temperature: Temperature = 20.0
     packing: dict[Name, Length] = {}
     sustained_acceleration: tuple[Acceleration, Acceleration, Acceleration] = (0.0, 0.0, 0.0)

@@ -64,7 +64,8 @@ class Structure(Statement):
             return self
         folder = Path((info.context or {}).get("folder", "."))
         if not 0.0 < self.damping_ratio < 1.0:
-            raise refuse(f"{self.damping_ratio:g}", "a damping ratio above 0 and below 1")
+            expected = 'a damping ratio above 0 and below 1, such as 0.02 or "2 %"'
+            raise refuse(f"{self.damping_ratio:g}", expected)
         self._modes = _read_modes(self, folder)
         size = len(self._modes.shapes)
         for node in self.nodes:

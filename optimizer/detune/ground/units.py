@@ -22,7 +22,17 @@ from detune.ground.unit_scale import (
 from detune.ground.unit_show import show
 from detune.ground.unit_table import UnitTextError
 
-__all__ = ["KINDS", "STANDARD_GRAVITY", "Kind", "UnitError", "convert", "parse", "parse_column", "show"]
+__all__ = [
+    "KINDS",
+    "STANDARD_GRAVITY",
+    "Kind",
+    "UnitError",
+    "convert",
+    "is_bare_number",
+    "parse",
+    "parse_column",
+    "show",
+]
 
 STANDARD_GRAVITY: Final = 9.80665
 """Standard gravity in m/s^2 (definition, exact)."""
@@ -74,6 +84,11 @@ def _rest_reason(rest: str) -> str | None:
     if re.match(r"[*^·⋅×]|/\s*[0-9(.]", rest):
         return "arithmetic is not understood; write one number and then its unit"
     return None
+
+
+def is_bare_number(text: str) -> bool:
+    """Return whether a text is one number and nothing else, no unit and no per cent sign."""
+    return _NUMBER.fullmatch(text.strip().replace("\u2212", "-")) is not None
 
 
 def parse(text: str, kind: str) -> float:

@@ -18,16 +18,26 @@ from numpy.polynomial import polynomial
 from detune.physics.array_types import ArrayLike, ComplexArray, FloatArray
 
 Response = Literal[
-    "displacement", "acceleration", "transmitted force", "base motion", "base deflection", "stroke"
+    "displacement",
+    "velocity",
+    "acceleration",
+    "transmitted force",
+    "base motion",
+    "base deflection",
+    "stroke",
 ]
 RESPONSES: dict[Response, str] = {
     "displacement": "x1 k1/F: primary displacement under a force on it, over the static one",
+    "velocity": "x1' m1 w1/F: primary velocity under a force on it",
     "acceleration": "x1'' m1/F: primary acceleration under a force; also its displacement under an unbalance",
     "transmitted force": "force of spring and damper into the ground over the force on the primary",
     "base motion": "x1/y: primary over base displacement (the same function as transmitted force)",
     "base deflection": "(x1 - y) w1^2/y'': deflection of the primary's mount under base acceleration",
     "stroke": "(x2 - x1) k1/F: deflection of the absorber's own spring under a force on the primary",
 }
+
+# Mass ratios (least, greatest) and the greatest damping of the primary that the fit of Ioi and Ikeda is for.
+FITTED = (0.03, 0.4, 0.15)
 
 
 @dataclass(frozen=True)
@@ -70,6 +80,37 @@ def den_hartog(mass_ratio: float) -> AbsorberTuning:
     return AbsorberTuning(1.0 / (1.0 + mu), _root(3.0 * mu / (8.0 * (1.0 + mu))), _root(1.0 + 2.0 / mu))
 
 
+def nishihara_asami(mass_ratio: float) -> AbsorberTuning:
+    """The exact least greatest displacement under a harmonic force, undamped primary.
+
+    With a = sqrt(4 + 3 mu): f = 2/(1 + mu) sqrt(2 (16 + 23 mu + 9 mu^2 + 2 (2 + mu) a)/(3 (64 + 80 mu + 27
+    mu^2))), z2 = sqrt((8 + 9 mu - 4 a)/(1 + mu))/4, height sqrt(((8 + 9 mu)^2 (16 + 9 mu) - 128 a^3)/(3 (32 +
+    27 mu)))/(3 mu). O. Nishihara, T. Asami, J. Vib. Acoust. 124 (2002) 576.
+    """
+    mu = _mass_ratio(mass_ratio)
+    a = _root(4.0 + 3.0 * mu)
+    square = 2.0 * (16.0 + 23.0 * mu + 9.0 * mu**2 + 2.0 * (2.0 + mu) * a)
+    frequency = 2.0 / (1.0 + mu) * _root(square / (3.0 * (64.0 + 80.0 * mu + 27.0 * mu**2)))
+    damping = 0.25 * _root((8.0 + 9.0 * mu - 4.0 * a) / (1.0 + mu))
+    height = ((8.0 + 9.0 * mu) ** 2 * (16.0 + 9.0 * mu) - 128.0 * a**3) / (3.0 * (32.0 + 27.0 * mu))
+    return AbsorberTuning(frequency, damping, _root(height) / (3.0 * mu))
+
+
+def ioi_ikeda(mass_ratio: float, primary_damping: float) -> AbsorberTuning:
+    """Fitted to the least greatest displacement under a harmonic force of a DAMPED primary.
+
+    f = 1/(1 + mu) - (.241 + 1.7 mu - 2.6 mu^2) z1 - (1 - 1.9 mu + mu^2) z1^2, z2 = sqrt(3 mu/(8 (1 + mu))) + (.13 +
+    .12 mu + .4 mu^2) z1 - (.01 + .9 mu + 3 mu^2) z1^2, within 1 % for mu from .03 to .4 and z1 up to .15. T. Ioi, K.
+    Ikeda, Bull. JSME 21 (1978) 64. Raises ValueError outside that range.
+    """
+    mu, z1 = _mass_ratio(mass_ratio), primary_damping
+    if not (FITTED[0] <= mu <= FITTED[1] and 0.0 <= z1 <= FITTED[2]):
+        raise ValueError("fitted for mass ratios from 0.03 to 0.4 and damping ratios up to 0.15")
+    frequency = 1.0 / (1.0 + mu) - (0.241 + 1.7 * mu - 2.6 * mu**2) * z1 - (1.0 - 1.9 * mu + mu**2) * z1**2
+    damping = _root(3.0 * mu / (8.0 * (1.0 + mu))) + (0.13 + 0.12 * mu + 0.4 * mu**2) * z1
+    return AbsorberTuning(frequency, damping - (0.01 + 0.9 * mu + 3.0 * mu**2) * z1**2, float("nan"))
+
+
 def warburton_force_acceleration(mass_ratio: float) -> AbsorberTuning:
     """Fixed points for the acceleration under a harmonic force (the displacement under an unbalance).
 
@@ -107,6 +148,16 @@ def white_noise_force(mass_ratio: float) -> AbsorberTuning:
     damping = _root(mu * (1.0 + 0.75 * mu) / (4.0 * (1.0 + mu) * (1.0 + 0.5 * mu)))
     equivalent = 0.25 * _root(mu * (1.0 + mu) / (1.0 + 0.75 * mu))
     return AbsorberTuning(_root(1.0 + 0.5 * mu) / (1.0 + mu), damping, 0.25 / equivalent)
+
+
+def white_noise_velocity(mass_ratio: float) -> AbsorberTuning:
+    """Least variance of the velocity under a white force of unit intensity, undamped primary.
+
+    f = 1/sqrt(1 + mu), z2 = sqrt(mu)/2, variance 1/sqrt(mu (1 + mu)): the least kinetic energy. S. H. Crandall, W. D.
+    Mark, Random Vibration in Mechanical Systems (1963); the variance recomputed.
+    """
+    mu = _mass_ratio(mass_ratio)
+    return AbsorberTuning(1.0 / _root(1.0 + mu), 0.5 * _root(mu), 1.0 / _root(mu * (1.0 + mu)))
 
 
 def white_noise_base_deflection(mass_ratio: float) -> AbsorberTuning:
@@ -274,6 +325,7 @@ def _fraction(
     ground = np.array([1.0, 2.0 * primary_damping])
     tops: dict[Response, FloatArray] = {
         "displacement": inner,
+        "velocity": polynomial.polymul(inner, [0.0, 1.0]),
         "acceleration": polynomial.polymul(inner, [0.0, 0.0, 1.0]),
         "transmitted force": polynomial.polymul(inner, ground),
         "base motion": polynomial.polymul(inner, ground),

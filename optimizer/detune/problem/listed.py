@@ -6,11 +6,12 @@ from typing import TYPE_CHECKING, Protocol
 
 from detune.brief.choice import Window
 from detune.brief.finding import Finding, Path
+from detune.brief.shares import LOSS_FACTORS_BELOW, per_cent_wanted
 from detune.brief.statement import describe
 from detune.ground import units
 from detune.ground.errors import nearest_name
 from detune.parts.catalog import Catalog, filter_parts
-from detune.parts.columns import column_named
+from detune.parts.columns import Column, column_named
 from detune.parts.kinds import KINDS
 
 if TYPE_CHECKING:
@@ -119,7 +120,7 @@ def _criteria(
             nearest = nearest_name(name, [each.name for each in known])
             findings.append(Finding(place, name, "a column of the catalog", nearest))
         elif isinstance(wanted, Window):
-            criteria[name] = _window(place, wanted, column.kind, findings) or {}
+            criteria[name] = _window(place, wanted, column, findings) or {}
         elif column.kind not in ("text", "yes-no"):
             expected = f'a window such as {{ min = "...", max = "..." }} for {name}'
             findings.append(Finding(place, describe(wanted), expected))
@@ -132,8 +133,8 @@ def _criteria(
     return None if len(findings) > earlier else criteria
 
 
-def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> dict[str, float] | None:
-    if kind in ("text", "yes-no"):
+def _window(place: Path, window: Window, column: Column, findings: list[Finding]) -> dict[str, float] | None:
+    if not column.numeric:
         findings.append(
             Finding(place, f"a window for {place[-1]}", 'a list of admitted texts, for example ["rubber"]')
         )
@@ -144,9 +145,14 @@ def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> 
         if text is None:
             continue
         try:
-            bounds[end] = units.parse(text, "ratio" if kind == "count" else kind)
+            bounds[end] = units.parse(text, "ratio" if column.kind == "count" else column.kind)
         except units.UnitError as error:
             findings.append(Finding((*place, end), error.found, error.expected, error.nearest))
+            return None
+        if _per_cent_is_missing(column, text, bounds[end]):
+            what = f"a share ({column.name} is {column.limits.words(column.kind)})"
+            expected = per_cent_wanted(what, text.strip(), bounds[end])
+            findings.append(Finding((*place, end), text, expected, f"{text.strip()} %"))
             return None
     if "min" in bounds and "max" in bounds and bounds["min"] > bounds["max"]:
         findings.append(
@@ -154,6 +160,13 @@ def _window(place: Path, window: Window, kind: str, findings: list[Finding]) -> 
         )
         return None
     return bounds
+
+
+def _per_cent_is_missing(column: Column, text: str, value: float) -> bool:
+    """Return whether a window end is a share without its per cent sign that no row of the column can reach."""
+    high, high_open = column.limits.high, column.limits.high_open
+    is_share = column.kind == "ratio" and high < LOSS_FACTORS_BELOW
+    return is_share and units.is_bare_number(text) and (value > high or (high_open and value == high))
 
 
 def _named(

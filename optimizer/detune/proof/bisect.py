@@ -11,15 +11,14 @@ from __future__ import annotations
 import itertools
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from typing import Literal
 
 import numpy as np
 
 from detune.proof.ball import output_bound
+from detune.proof.bisection import DecisionStatus, Node, choose, cut, preorder
 from detune.proof.robust_data import OutputLimit, RobustSystem, first_box, output_at
 from detune.proof.selection_data import Floats, Integers
 
-DecisionStatus = Literal["proven", "violated", "undecided"]
 BATCH = 256
 LARGEST_CORNERS = 12
 
@@ -41,17 +40,6 @@ class Decision:
     frequency: float
     boxes: int
     splits: tuple[int, ...] = field(repr=False, default=())
-
-
-@dataclass
-class _Node:
-    """A box in the tree of bisections; children appear when it is cut."""
-
-    low: Floats
-    high: Floats
-    upper: float = np.inf
-    variable: int = -1
-    children: tuple[_Node, _Node] | None = None
 
 
 def sample_points(low: Floats, high: Floats) -> Floats:
@@ -91,7 +79,7 @@ class _State:
         if values[best] > self.lower:
             self.lower, self.worst = float(values[best]), points[best].copy()
 
-    def bound(self, nodes: list[_Node]) -> Floats:
+    def bound(self, nodes: list[Node[float]]) -> Floats:
         """Bound boxes; sets their upper bounds and returns the weights."""
         low, high = np.stack([node.low for node in nodes]), np.stack([node.high for node in nodes])
         upper, weight = output_bound(self.system, self.output, low, high)
@@ -135,7 +123,7 @@ def _bisect(
     low, high = first_box(system, output)
     state = _State(system, output)
     state.sample(sample_points(low, high))
-    root = _Node(low, high)
+    root = Node(low, high, np.inf)
     open_nodes = [root]
     settled = 0.0
     while open_nodes:
@@ -152,39 +140,18 @@ def _bisect(
             if node.upper <= target:
                 settled = max(settled, node.upper)
                 continue
-            variable = _choose(node, weight)
+            variable = choose(node, weight)
             if variable < 0:
                 open_nodes.insert(0, node)
                 return _decision(state, root, open_nodes, settled, limit, "undecided")
-            open_nodes.extend(_cut(node, variable))
+            open_nodes.extend(cut(node, variable))
     return _decision(state, root, open_nodes, settled, limit, None)
-
-
-def _choose(node: _Node, weight: Floats) -> int:
-    """Variable to cut: the one of greatest weight that can still be halved; -1 if none can."""
-    middle = 0.5 * (node.low + node.high)
-    possible = (middle > node.low) & (middle < node.high)
-    if not possible.any():
-        return -1
-    masked = np.where(possible, weight, -np.inf)
-    return int(np.argmax(masked))
-
-
-def _cut(node: _Node, variable: int) -> tuple[_Node, _Node]:
-    middle = 0.5 * (node.low[variable] + node.high[variable])
-    first_high, second_low = node.high.copy(), node.low.copy()
-    first_high[variable] = middle
-    second_low[variable] = middle
-    first = _Node(node.low, first_high, node.upper)
-    second = _Node(second_low, node.high, node.upper)
-    node.variable, node.children = variable, (first, second)
-    return first, second
 
 
 def _decision(
     state: _State,
-    root: _Node,
-    open_nodes: list[_Node],
+    root: Node[float],
+    open_nodes: list[Node[float]],
     settled: float,
     limit: float,
     forced: DecisionStatus | None,
@@ -205,21 +172,8 @@ def _decision(
         worst=tuple(state.worst[:-1].tolist()),
         frequency=float(np.sqrt(state.worst[-1]) / (2.0 * np.pi)),
         boxes=state.boxes,
-        splits=_preorder(root) if status == "proven" else (),
+        splits=preorder(root) if status == "proven" else (),
     )
-
-
-def _preorder(root: _Node) -> tuple[int, ...]:
-    out: list[int] = []
-    stack = [root]
-    while stack:
-        node = stack.pop()
-        if node.children is None:
-            out.append(-1)
-            continue
-        out.append(node.variable)
-        stack.extend((node.children[1], node.children[0]))
-    return tuple(out)
 
 
 def lots(station_part: Integers, stations_axes: int = 3) -> Integers:

@@ -42,7 +42,7 @@ def case_block(
     outer (S*3, m): packed b b^T, parallel count included. stations (S*3, n). counts (S*3,).
     kappa_re, kappa_im (S*3, 64): stiffness of one part. drive (S*3,): base displacement. Limits flat.
     """
-    n, m, axes = stations.shape[1], outer.shape[1], stations.shape[0]
+    n, m = stations.shape[1], outer.shape[1]
     add_springs(dynamic, outer, kappa_re, kappa_im)
     f, q = dynamic[2 * m * 64 : (2 * m + 2 * n) * 64], dynamic[(2 * m + 2 * n) * 64 : (2 * m + 4 * n) * 64]
     f_re, f_im, q_re, q_im = f[: n * 64], f[n * 64 :], q[: n * 64], q[n * 64 :]
@@ -57,10 +57,35 @@ def case_block(
     for r in range(rows.shape[0]):
         project(rows[r], q_re, q_im, re_sum, im_sum)
         worst_ratio(re_sum, im_sum, row_limit[r], ratio)
-    total_re, total_im = work[5], work[6]
+    station_ratios(
+        stations, counts, kappa_re, kappa_im, q_re, q_im, drive_re, drive_im,
+        deflection_limit, force_limit, total, total_limit, work, ratio,
+    )  # fmt: skip
+    for b in range(64):
+        margin[b] = 1.0 / np.sqrt(ratio[b]) - 1.0 if ratio[b] > 0.0 else np.inf
+
+
+def station_ratios(
+    stations: Floats,
+    counts: Floats,
+    kappa_re: Floats,
+    kappa_im: Floats,
+    q_re: Floats,
+    q_im: Floats,
+    drive_re: Floats,
+    drive_im: Floats,
+    deflection_limit: Floats,
+    force_limit: Floats,
+    total: Floats,
+    total_limit: Floats,
+    work: Floats,
+    ratio: Floats,
+) -> None:
+    """Raise ratio to that of deflections b q - u and forces kappa (b q - u) of all axes, and of total forces."""
+    re_sum, im_sum, total_re, total_im = work[3, :64], work[4, :64], work[5], work[6]
     total_re[:] = 0.0
     total_im[:] = 0.0
-    for a in range(axes):
+    for a in range(stations.shape[0]):
         project(stations[a], q_re, q_im, re_sum, im_sum)
         for b in range(64):
             re_sum[b] -= drive_re[a]
@@ -79,8 +104,6 @@ def case_block(
                     total_im[t * 64 + b] += factor * im_sum[b]
     for t in range(total.shape[0]):
         worst_ratio(total_re[t * 64 : t * 64 + 64], total_im[t * 64 : t * 64 + 64], total_limit[t], ratio)
-    for b in range(64):
-        margin[b] = 1.0 / np.sqrt(ratio[b]) - 1.0 if ratio[b] > 0.0 else np.inf
 
 
 def add_springs(dynamic: Floats, outer: Floats, kappa_re: Floats, kappa_im: Floats) -> None:

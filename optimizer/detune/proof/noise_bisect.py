@@ -12,12 +12,11 @@ from __future__ import annotations
 
 import heapq
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
-from detune.proof.bisect import DecisionStatus
-from detune.proof.combined_bisect import RowsDecision
+from detune.proof.bisection import Node, RowsDecision, cut, rows_decision
 from detune.proof.combined_bound import TRIALS, WIDENING, frame_of, set_expansion, solved
 from detune.proof.expansion import Box
 from detune.proof.loewner import Flags
@@ -134,13 +133,10 @@ class Bounder:
 
 
 @dataclass
-class _Node:
-    low: Floats
-    high: Floats
-    edges: tuple[Floats, Floats]
-    upper: Floats
-    variable: int = -1
-    children: tuple[_Node, _Node] | None = None
+class _Node(Node[Floats]):
+    """A box of scatter with the edges of the intervals of frequency it was bounded by."""
+
+    edges: tuple[Floats, Floats] = field(kw_only=True)
 
     @property
     def half(self) -> Floats:
@@ -165,7 +161,7 @@ def decide_noise(
     found = noise_sampled(system, noise) if samples is None else samples
     bounder, settled = Bounder(system, noise), np.full(noise.count, -np.inf)
     first = segments(noise, FIRST_INTERVALS)
-    root = _Node(found.low, found.high, (first[:-1], first[1:]), np.full(noise.count, np.inf))
+    root = _Node(found.low, found.high, np.full(noise.count, np.inf), edges=(first[:-1], first[1:]))
     # The worst box first, so that the bracket is as narrow as the work allows where it ends undecided.
     queue: list[tuple[float, int, _Node]] = [(0.0, 0, root)]
     number, stuck = 0, []
@@ -184,14 +180,12 @@ def decide_noise(
             stuck.append(node)
         else:
             found.evaluate(0.5 * (node.low + node.high)[None])
-            for child in _cut(node, variable):
+            for child in cut(node, variable):
                 number += 1
-                ratio = np.where(np.isfinite(child.upper), child.upper, 1e300) / np.maximum(
-                    noise.limit, 1e-300
-                )
-                heapq.heappush(queue, (-float(ratio.max()), number, child))
+                heapq.heappush(queue, (-float(_ratio(child.upper, noise.limit).max()), number, child))
     left = [node for *_, node in queue]
-    return _decision(found, root, [*left, *stuck], settled, bounder.boxes)
+    no_speed = np.full(noise.count, np.nan)
+    return rows_decision(found, root, [*left, *stuck], settled, found.where, no_speed, bounder.boxes)
 
 
 def _ratio(upper: Floats, limit: Floats) -> Floats:
@@ -245,50 +239,3 @@ def _what_to_cut(
     late = np.zeros(len(own), dtype=bool)
     late[order[:number]] = True
     return late, best
-
-
-def _cut(node: _Node, variable: int) -> tuple[_Node, _Node]:
-    middle = 0.5 * (node.low[variable] + node.high[variable])
-    first_high, second_low = node.high.copy(), node.low.copy()
-    first_high[variable] = middle
-    second_low[variable] = middle
-    node.variable = variable
-    node.children = (
-        _Node(node.low, first_high, node.edges, node.upper),
-        _Node(second_low, node.high, node.edges, node.upper),
-    )
-    return node.children
-
-
-def _decision(
-    found: NoiseSampler, root: _Node, open_nodes: list[_Node], settled: Floats, boxes: int
-) -> RowsDecision:
-    upper = settled
-    for node in open_nodes:
-        upper = np.maximum(upper, node.upper)
-    upper = np.maximum(upper, found.best)
-    status: list[DecisionStatus] = []
-    for value, bound, limit in zip(found.best, upper, found.limits.limit, strict=True):
-        status.append("violated" if value > limit else "proven" if bound <= limit else "undecided")
-    return RowsDecision(
-        status=tuple(status),
-        lower=tuple(found.best.tolist()),
-        upper=tuple(upper.tolist()),
-        worst=tuple(tuple(point.tolist()) for point in found.where),
-        speed=(float("nan"),) * len(status),
-        boxes=boxes,
-        splits=_preorder(root) if all(each == "proven" for each in status) else (),
-    )
-
-
-def _preorder(root: _Node) -> tuple[int, ...]:
-    out: list[int] = []
-    stack = [root]
-    while stack:
-        node = stack.pop()
-        if node.children is None:
-            out.append(-1)
-            continue
-        out.append(node.variable)
-        stack.extend((node.children[1], node.children[0]))
-    return tuple(out)

@@ -9,7 +9,7 @@ import numpy as np
 
 from detune.physics.random_response import QuadratureNotConverged, variance
 from detune.physics.spectra import PowerSpectralDensity
-from detune.proof.loewner import Flags
+from detune.proof.bisection import RowSamples
 from detune.proof.noise_data import NoiseRows, NoiseSet, counted
 from detune.proof.scatter_data import ScatterSystem, matrices_at
 from detune.proof.selection_data import Complexes, Floats
@@ -21,7 +21,6 @@ CHUNK = 16
 ALL_CORNERS = 6
 SOME_CORNERS = 64
 INSIDE = 16
-ROUNDS = 8
 
 
 def variances_at(system: ScatterSystem, noise: NoiseRows, points: Floats) -> tuple[Floats, Floats]:
@@ -119,33 +118,22 @@ def _direct(each: NoiseSet) -> Floats:
     return np.asarray(np.abs(each.loads.direct).sum(axis=0).ravel())
 
 
-class NoiseSampler:
-    """Values at points of the scatter, and the greatest of each row met so far, lowered by the quadrature's
-    tolerance."""
+class NoiseSampler(RowSamples):
+    """Values at points of the scatter (N, V), lowered by the quadrature's tolerance, and the greatest of each row."""
+
+    ROUNDS, GAIN = 8, 1e-6
 
     def __init__(self, system: ScatterSystem, limits: NoiseRows) -> None:
         self.system, self.limits = system, limits
-        self.low, self.high = system.low, system.high
-        self.best = np.full(limits.count, -np.inf)
-        self.where = np.tile(0.5 * (self.low + self.high), (limits.count, 1))
+        super().__init__(system.low, system.high, limits.limit)
 
     def evaluate(self, points: Floats) -> None:
         """Evaluate points (N, V)."""
-        values = noise_values_at(self.system, self.limits, points) * (1.0 - TOLERANCE)
-        top = values.argmax(axis=0)
-        greatest = values[top, np.arange(len(top))]
-        more = greatest > self.best
-        self.best[more], self.where[more] = greatest[more], points[top[more]]
+        self.keep(points, noise_values_at(self.system, self.limits, points) * (1.0 - TOLERANCE))
 
-    @property
-    def violated(self) -> bool:
-        """Whether some row exceeds its limit at a point met so far."""
-        return self.breaks(None)
-
-    def breaks(self, rows: Flags | None) -> bool:
-        """Whether one of some rows (R,), None for all, exceeds its limit at a point met so far."""
-        broken = self.best > self.limits.limit
-        return bool((broken if rows is None else broken & rows).any())
+    def around(self, points: Floats) -> None:
+        """Evaluate points, each once: a quadrature takes time."""
+        self.evaluate(np.unique(points, axis=0))
 
     def start(self) -> None:
         """Corners of the scatter, all of them or some, its middle, and points inside."""
@@ -161,25 +149,9 @@ class NoiseSampler:
         inside = self.low + (self.high - self.low) * random.uniform(size=(INSIDE, len(self.low)))
         self.evaluate(np.concatenate([corners, inside if len(moving) else inside[:0]]))
 
-    def climb(self, rounds: int = ROUNDS) -> None:
-        """Pattern search from the best point of every row, halving the step."""
-        moving = np.flatnonzero(self.high > self.low)
-        if not len(moving):
-            return
-        step = np.full(self.limits.count, 0.25)
-        for _ in range(rounds):
-            before = self.best.copy()
-            steps = step[:, None, None] * np.eye(len(self.low))[moving] * (self.high - self.low)
-            points = np.concatenate([self.where[:, None] + steps, self.where[:, None] - steps], axis=1)
-            points = np.clip(points.reshape(-1, len(self.low)), self.low, self.high)
-            self.evaluate(np.unique(points, axis=0))
-            step = np.where(self.best > before * (1.0 + 1e-6), step, 0.5 * step)
-
 
 def noise_sampled(system: ScatterSystem, noise: NoiseRows, *, stop_at_violation: bool = True) -> NoiseSampler:
     """Corners and pattern search: the greatest value of every row that was found, no bound."""
     found = NoiseSampler(system, noise)
-    found.start()
-    if not (stop_at_violation and found.violated):
-        found.climb()
+    found.search(stop_at_violation)
     return found

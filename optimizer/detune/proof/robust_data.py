@@ -24,14 +24,10 @@ class RobustError(ValueError):
 
 
 @dataclass(frozen=True, eq=False)
-class RobustSystem:
-    """A system with V uncertain variables.
+class VaryingSystem:
+    """What every system here has besides its variables: matrices (n, n) that are certain, and A spring axes.
 
-    mass, fixed_dynamic, fixed_hysteretic, fixed_viscous: (n, n), certain. axes (A, n): attachment rows of all spring
-    axes. stiffness, loss, viscous (A,): N/m, N/m, N s/m, parallel count included, not negative.
-    stiffness_variable, damping_variable (A,): index of a variable or -1.
-    mass_terms (P, n, n) symmetric with mass_variable (P,): mass added per unit of a variable.
-    low, high (V,): interval of each variable (factors of s and t must stay positive).
+    axes (A, n): attachment rows. stiffness, loss, viscous (A,): N/m, N/m, N s/m, parallel count included, not negative.
     """
 
     mass: Floats
@@ -42,6 +38,51 @@ class RobustSystem:
     stiffness: Floats
     loss: Floats
     viscous: Floats
+
+    def _check(
+        self,
+        low: Floats,
+        high: Floats,
+        shapes: dict[str, tuple[int, ...]],
+        of_axes: tuple[str, str],
+        of_terms: tuple[str, ...],
+    ) -> None:
+        """Raise RobustError unless all arrays fit: `shapes` of those a system has of its own.
+
+        `of_axes`, `of_terms`: which arrays name variables, -1 for none; those of axes have to stay above zero.
+        """
+        n, count, variables = self.mass.shape[0], self.axes.shape[0], low.shape[0]
+        common: dict[str, tuple[int, ...]] = dict.fromkeys(
+            ("mass", "fixed_dynamic", "fixed_hysteretic", "fixed_viscous"), (n, n)
+        )
+        common |= {"axes": (count, n)} | dict.fromkeys(("stiffness", "loss", "viscous"), (count,))
+        for name, shape in {**common, **shapes, "high": (variables,)}.items():
+            if getattr(self, name).shape != shape:
+                raise RobustError(f"{name} must have shape {shape}")
+        if not bool((high >= low).all()):
+            raise RobustError("every variable needs low <= high")
+        for name in (*of_axes, *of_terms):
+            index = getattr(self, name)
+            if index.size and (index.min() < -1 or index.max() >= variables):
+                raise RobustError(f"{name} names a variable that does not exist")
+        for name in of_axes:
+            used = getattr(self, name)
+            if bool((low[used[used >= 0]] <= 0.0).any()):
+                raise RobustError("stiffness and damping factors must be positive")
+        for name in ("stiffness", "loss", "viscous"):
+            if bool((getattr(self, name) < 0.0).any()):
+                raise RobustError(f"{name} must not be negative")
+
+
+@dataclass(frozen=True, eq=False)
+class RobustSystem(VaryingSystem):
+    """A system with V uncertain variables.
+
+    stiffness_variable, damping_variable (A,): index of a variable or -1.
+    mass_terms (P, n, n) symmetric with mass_variable (P,): mass added per unit of a variable.
+    low, high (V,): interval of each variable (factors of s and t must stay positive).
+    """
+
     stiffness_variable: Integers
     damping_variable: Integers
     mass_terms: Floats
@@ -50,37 +91,11 @@ class RobustSystem:
     high: Floats
 
     def __post_init__(self) -> None:
-        n, axes, variables = self.mass.shape[0], self.axes.shape[0], self.low.shape[0]
-        shapes = {
-            "mass": (n, n),
-            "fixed_dynamic": (n, n),
-            "fixed_hysteretic": (n, n),
-            "fixed_viscous": (n, n),
-            "axes": (axes, n),
-            "stiffness": (axes,),
-            "loss": (axes,),
-            "viscous": (axes,),
-            "stiffness_variable": (axes,),
-            "damping_variable": (axes,),
-            "mass_terms": (self.mass_variable.shape[0], n, n),
-            "high": (variables,),
-        }
-        for name, shape in shapes.items():
-            if getattr(self, name).shape != shape:
-                raise RobustError(f"{name} must have shape {shape}")
-        if not bool((self.high >= self.low).all()):
-            raise RobustError("every variable needs low <= high")
-        for name in ("stiffness_variable", "damping_variable", "mass_variable"):
-            index = getattr(self, name)
-            if index.size and (index.min() < -1 or index.max() >= variables):
-                raise RobustError(f"{name} names a variable that does not exist")
-        for name in ("stiffness_variable", "damping_variable"):
-            used = getattr(self, name)
-            if bool((self.low[used[used >= 0]] <= 0.0).any()):
-                raise RobustError("stiffness and damping factors must be positive")
-        for name in ("stiffness", "loss", "viscous"):
-            if bool((getattr(self, name) < 0.0).any()):
-                raise RobustError(f"{name} must not be negative")
+        n, count, terms = self.mass.shape[0], self.axes.shape[0], self.mass_variable.shape[0]
+        of_axes = ("stiffness_variable", "damping_variable")
+        shapes: dict[str, tuple[int, ...]] = dict.fromkeys(of_axes, (count,))
+        shapes["mass_terms"] = (terms, n, n)
+        self._check(self.low, self.high, shapes, of_axes, ("mass_variable",))
 
     @property
     def variables(self) -> int:

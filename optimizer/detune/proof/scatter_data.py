@@ -16,31 +16,21 @@ from dataclasses import dataclass
 import numpy as np
 
 from detune.proof.loewner import Flags
-from detune.proof.robust_data import RobustError
+from detune.proof.robust_data import RobustError, VaryingSystem
 from detune.proof.selection_data import Complexes, Floats, Integers
 from detune.response.solve import solve_or_resonate
 
 
 @dataclass(frozen=True, eq=False)
-class ScatterSystem:
+class ScatterSystem(VaryingSystem):
     """A linear machine with V uncertain variables, n freedoms and A spring axes.
 
-    mass, fixed_dynamic, fixed_hysteretic, fixed_viscous (n, n): certain, mass positive definite. axes (A,
-    n), stiffness,
-    loss, viscous (A,): of all spring axes, parallel parts included. stiffness_factors, damping_factors (A, 2):
-    variables whose product is s and t, -1 for none. mass_terms (P, n, n), mass_factors (P, 3) and
-    stiffness_terms (Q, n, n), stiffness_factors_of_terms (Q, 3): symmetric matrices times products of variables.
+    The mass is positive definite. stiffness_factors, damping_factors (A, 2): variables whose product is s and t, -1
+    for none. mass_terms (P, n, n), mass_factors (P, 3) and stiffness_terms (Q, n, n), stiffness_term_factors (Q, 3):
+    symmetric matrices times products of variables.
     low, high (V,): interval of each variable. names: what each is, in words.
     """
 
-    mass: Floats
-    fixed_dynamic: Floats
-    fixed_hysteretic: Floats
-    fixed_viscous: Floats
-    axes: Floats
-    stiffness: Floats
-    loss: Floats
-    viscous: Floats
     stiffness_factors: Integers
     damping_factors: Integers
     mass_terms: Floats
@@ -52,40 +42,16 @@ class ScatterSystem:
     names: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
-        n, count, variables = self.mass.shape[0], self.axes.shape[0], self.low.shape[0]
-        shapes = {
-            "mass": (n, n),
-            "fixed_dynamic": (n, n),
-            "fixed_hysteretic": (n, n),
-            "fixed_viscous": (n, n),
-            "axes": (count, n),
-            "stiffness": (count,),
-            "loss": (count,),
-            "viscous": (count,),
-            "stiffness_factors": (count, 2),
-            "damping_factors": (count, 2),
-            "mass_terms": (len(self.mass_factors), n, n),
-            "mass_factors": (len(self.mass_factors), 3),
-            "stiffness_terms": (len(self.stiffness_term_factors), n, n),
-            "stiffness_term_factors": (len(self.stiffness_term_factors), 3),
-            "high": (variables,),
-        }
-        for name, shape in shapes.items():
-            if getattr(self, name).shape != shape:
-                raise RobustError(f"{name} must have shape {shape}")
-        if not bool((self.high >= self.low).all()):
-            raise RobustError("every variable needs low <= high")
-        for name in ("stiffness_factors", "damping_factors", "mass_factors", "stiffness_term_factors"):
-            index = getattr(self, name)
-            if index.size and (index.min() < -1 or index.max() >= variables):
-                raise RobustError(f"{name} names a variable that does not exist")
-        for name in ("stiffness_factors", "damping_factors"):
-            used = getattr(self, name)
-            if bool((self.low[used[used >= 0]] <= 0.0).any()):
-                raise RobustError("stiffness and damping factors must be positive")
-        for name in ("stiffness", "loss", "viscous"):
-            if bool((getattr(self, name) < 0.0).any()):
-                raise RobustError(f"{name} must not be negative")
+        n, count = self.mass.shape[0], self.axes.shape[0]
+        of_axes, of_terms = (
+            ("stiffness_factors", "damping_factors"),
+            ("mass_factors", "stiffness_term_factors"),
+        )
+        shapes: dict[str, tuple[int, ...]] = dict.fromkeys(of_axes, (count, 2))
+        for terms, factors in zip(("mass_terms", "stiffness_terms"), of_terms, strict=True):
+            number = len(getattr(self, factors))
+            shapes |= {terms: (number, n, n), factors: (number, 3)}
+        self._check(self.low, self.high, shapes, of_axes, of_terms)
 
     @property
     def variables(self) -> int:

@@ -11,7 +11,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from detune.proof.bisect import DecisionStatus, sample_points
+from detune.proof.bisect import sample_points
+from detune.proof.bisection import DecisionStatus
 from detune.proof.expansion import Box, Expansion, upper_length, variable_products
 from detune.proof.loewner import Flags
 from detune.proof.scatter_data import products

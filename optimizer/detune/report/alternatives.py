@@ -7,7 +7,6 @@ from numpy.typing import NDArray
 
 from detune.report.quick_stages import quick_stages, stage_margins
 from detune.report.words import margin_text, number, percent
-from detune.response.assess import assess
 from detune.response.assessment import Assessment
 from detune.response.designs import Designs, all_designs, total_cost
 from detune.study.run import Result
@@ -64,7 +63,7 @@ def _cheaper(result: Result, answer: Assessment) -> list[Alternative]:
     looked_at = _near_misses(result, answer)
     found = []
     for index in range(looked_at.count):
-        judged = assess(result.study.brief, result.problem.design(looked_at, index))
+        judged = result.assess(result.problem.design(looked_at, index))
         why = "worse in what comes first"
         if result.front.trade[0] == "cost":
             # A design that meets is reached here only where solver and assessor differ: the reader must know.
@@ -131,7 +130,7 @@ def _safer(result: Result, answer: Assessment) -> list[Alternative]:
         if wanted <= answer.least_margin or len(able) == 0:
             continue
         index = int(able[np.lexsort((-margins[able], costs[able]))[0]])
-        judged = assess(result.study.brief, result.problem.design(front.designs, index))
+        judged = result.assess(result.problem.design(front.designs, index))
         if any(other.assessment.design == judged.design for other in found):
             continue
         why = f"costs {number(judged.cost - answer.cost, 4)} more than the answer"
@@ -139,7 +138,7 @@ def _safer(result: Result, answer: Assessment) -> list[Alternative]:
     if not found:
         index = int(margins.argmax()) if len(margins) else -1
         if index >= 0 and margins[index] > answer.least_margin:
-            judged = assess(result.study.brief, result.problem.design(front.designs, index))
+            judged = result.assess(result.problem.design(front.designs, index))
             more = number(judged.cost - answer.cost, 4)
             why = f"costs {more} more; its least margin is {margin_text(judged.least_margin)}"
             found.append(Alternative("most margin of all", judged, why))

@@ -151,6 +151,7 @@ def why_csv(result: Result) -> str:
         "hardest rule",
         "margin there [-]",
         "closest design",
+        "judged by every requirement",
     ]
     rows: list[list[Cell]] = [
         [
@@ -165,6 +166,7 @@ def why_csv(result: Result) -> str:
                 r.filtered,
             ),
             *(r.first_rule, r.first_excluded, r.hardest_rule, r.hardest_margin, r.closest),
+            None if r.hardest_rule is None else "yes" if r.whole else "no",
         ]
         for r in result.reasons
     ]

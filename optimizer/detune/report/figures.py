@@ -2,6 +2,7 @@
 
 import io
 import re
+from collections.abc import Mapping
 from dataclasses import dataclass
 from html import escape
 from types import ModuleType
@@ -34,8 +35,13 @@ class Drawn:
 
 def draw_all(result: Result) -> tuple[Drawn, ...]:
     """Return every plot that has something to show for this result, in the order of `PLOTS`."""
+    return draw_each(PLOTS, result)
+
+
+def draw_each(plots: Mapping[str, ModuleType], result: object) -> tuple[Drawn, ...]:
+    """Return those of some plots, by name, that have something to show for a result, in their order."""
     drawn = []
-    for name, module in PLOTS.items():
+    for name, module in plots.items():
         data = module.data(result)
         if data is not None:
             drawn.append(draw_one(name, module, data))

@@ -2,6 +2,8 @@
 
 import os
 import shutil
+from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 
 from detune.ground.errors import DetuneError
@@ -16,37 +18,54 @@ from detune.report.csv_files import (
     stations_csv,
     why_csv,
 )
-from detune.report.figures import draw_all
-from detune.report.forcing_shares import forcing_shares
+from detune.report.figures import Drawn, draw_each
+from detune.report.gathered import gather, left_out_of
 from detune.report.page import page_text
+from detune.report.plots import PLOTS
 from detune.report.response_data import response_curves
 from detune.report.strict_json import json_text
 from detune.report.tables_listed import absorbers_csv
-from detune.solvers.outcome import Integers
+from detune.solvers.outcome import Integers, Settings
 from detune.solvers.robust_record import proof_record
+from detune.study.after_search import AfterSearch
 from detune.study.run import Result
 
 MARK = "proof.json"
+# Plots whose numbers take long to work out.
+LONG = ("spectral-density", "shock", "stiffness-damping")
 
 
 class FolderExists(DetuneError):
     """The result folder is there already and nobody asked for it to be replaced."""
 
 
-def write_folder(result: Result, folder: str | Path, overwrite: bool = False) -> Path:
+def write_folder(
+    result: Result, folder: str | Path, overwrite: bool = False, work: AfterSearch | None = None
+) -> Path:
     """Write the result folder and return its path.
 
     Everything is written into a folder beside it and renamed at the end, so that a half-written folder
     never looks finished. Raises FolderExists where something is there already, unless `overwrite`; even
-    then only an empty folder or a result folder is replaced.
+    then only an empty folder or a result folder is replaced. work: the run's own, where it has a time limit: what is
+    optional in the report is then left out when the time is up.
+    """
+    work = work or AfterSearch(Settings())
+    with work.listening():
+        return write_whole(folder, partial(_fill, result, work), overwrite)
+
+
+def write_whole(folder: str | Path, fill: Callable[[Path], None], overwrite: bool) -> Path:
+    """Let `fill` write into a folder beside the one named, put that in its place, and return its path.
+
+    Raises FolderExists as `write_folder` does.
     """
     target = Path(folder)
-    _check(target, overwrite)
+    check_folder(target, overwrite)
     target.parent.mkdir(parents=True, exist_ok=True)
     building = sibling(target, "writing")
     building.mkdir()
     try:
-        _fill(result, building)
+        fill(building)
         put_in_place(building, target)
     finally:
         shutil.rmtree(building, ignore_errors=True)
@@ -55,10 +74,7 @@ def write_folder(result: Result, folder: str | Path, overwrite: bool = False) ->
 
 def check_folder(folder: str | Path, overwrite: bool = False) -> None:
     """Raise FolderExists if `write_folder` would refuse: to be asked before the work, not after it."""
-    _check(Path(folder), overwrite)
-
-
-def _check(target: Path, overwrite: bool) -> None:
+    target = Path(folder)
     if not target.exists() and not target.is_symlink():
         return
     if not target.is_dir() or target.is_symlink():
@@ -97,13 +113,13 @@ def put_in_place(building: Path, target: Path) -> None:
     shutil.rmtree(earlier)
 
 
-def _fill(result: Result, folder: Path) -> None:
+def _fill(result: Result, work: AfterSearch, folder: Path) -> None:
     subject = result.subject
+    gathered = gather(result, work)
     curves = response_curves(result.study.brief, subject) if subject is not None else ()
     texts = {
         "study.toml": result.study.source,
         "inputs.json": json_text({"sha256": dict(result.study.hashes)}),
-        "answer.json": json_text(_answer(result)),
         MARK: json_text(_proof(result)),
         "proof-record.json": record_text(
             proof_record(result.problem, result.outcome, result.robust, dict(result.study.hashes))
@@ -117,20 +133,47 @@ def _fill(result: Result, folder: Path) -> None:
         texts["margins.csv"] = margins_csv(subject)
         texts["stations.csv"] = stations_csv(subject)
         texts["modes.csv"] = modes_csv(subject)
-        texts["contributions.csv"] = contributions_csv(forcing_shares(result.study.brief, subject))
+        if gathered.shares is not None:
+            texts["contributions.csv"] = contributions_csv(gathered.shares)
         if result.study.brief.absorbers:
             texts["absorbers.csv"] = absorbers_csv(result.study.brief, subject)
     (folder / "plots").mkdir()
-    drawn = draw_all(result)
+    drawn = _drawn(result, work)
+    texts["answer.json"] = json_text(_answer(result, work))
     for plot in drawn:
         texts[f"plots/{plot.name}.svg"] = plot.svg
         (folder / "plots" / f"{plot.name}.png").write_bytes(plot.png)
-    texts["report.html"] = page_text(result, drawn)
+    texts["report.html"] = page_text(result, drawn, gathered, work)
     for name, text in texts.items():
         (folder / name).write_text(text, encoding="utf-8", newline="\n")
 
 
-def _answer(result: Result) -> dict[str, object]:
+def _drawn(result: Result, work: AfterSearch) -> tuple[Drawn, ...]:
+    """Return the plots; those that take long only while there is time, and after an interruption none."""
+    drawn: list[Drawn] = []
+    missing = []
+    if not work.interrupted:
+        work.tell("Drawing the plots.")
+    for name, module in PLOTS.items():
+        if work.may_begin() or not (work.interrupted or name in LONG):
+            drawn += draw_each({name: module}, result)
+        elif _may_show(result, name):
+            missing.append(name)
+    if missing:
+        work.leave_out(f"plots: {', '.join(missing)}")
+    work.tell("Writing the result folder.")
+    return tuple(drawn)
+
+
+def _may_show(result: Result, name: str) -> bool:
+    """Return whether a plot can have something to show, as far as the forcing tells."""
+    acting = result.study.brief.forcing
+    if name == "spectral-density":
+        return any(forcing.noises() for forcing in acting)
+    return name != "shock" or any(forcing.transients() for forcing in acting)
+
+
+def _answer(result: Result, work: AfterSearch) -> dict[str, object]:
     return {
         "title": result.study.brief.title,
         "stopped": result.outcome.stopped,
@@ -142,6 +185,8 @@ def _answer(result: Result) -> dict[str, object]:
         "scatter": _scatter(result),
         "closest": result.closest,
         "compared": result.compared,
+        "unassessed_on_the_front": result.front.unassessed,
+        "left_out": left_out_of(result, work)[0],
         "units": "SI: m, kg, s, N, rad, Hz; cost in the currency of the lists; margins and separation are ratios",
     }
 

@@ -38,17 +38,30 @@ def forcing_shares(brief: Brief, assessment: Assessment) -> tuple[ForcingShare, 
     Left out: limits on ratios, and conditions in which parts follow the amplitude of their own vibration, where
     forcings do not act one by one.
     """
+    rows = tightest_of_each(forced_rows(brief, assessment, every=True))
+    together: dict[tuple[int, str], list[ForcedRow]] = {}
+    for row in rows:
+        together.setdefault((id(row.machine), row.condition.name), []).append(row)
+    # Rows of one machine and condition are asked for at once: the motion they look at is the same.
+    shares: dict[int, list[ForcingShare]] = {}
+    for members in together.values():
+        shares.update(zip(map(id, members), _in_condition(brief, members), strict=True))
+    return tuple(share for row in rows for share in shares[id(row)])
+
+
+def _in_condition(brief: Brief, rows: list[ForcedRow]) -> list[list[ForcingShare]]:
+    """Return the shares in each row of one machine and condition."""
+    acting = [f for f in brief.forcing if applies(f.conditions, rows[0].condition.name)]
+    values = np.array([_alone(rows, (forcing,)) for forcing in acting]).reshape(len(acting), len(rows))
     found = []
-    for row in tightest_of_each(forced_rows(brief, assessment, every=True)):
-        acting = [f for f in brief.forcing if applies(f.conditions, row.condition.name)]
-        alone = np.array([_alone(row, (forcing,)) for forcing in acting])
+    for row, alone in zip(rows, values.T, strict=True):
         weight = alone**2 if row.allowable.statistic() == "rms" else _linear(alone, acting)
         total = float(weight.sum())
         at_rest = float(row.allowable.offset(DirectStatic(row.machine), row.place)[0])
-        for forcing, value, part in zip(acting, alone.tolist(), weight.tolist(), strict=True):
-            share = part / total if 0.0 < total < np.inf else float("nan")
-            found.append(ForcingShare(row, forcing.name, forcing.kind, value, share, at_rest))
-    return tuple(found)
+        shares = (weight / total if 0.0 < total < np.inf else np.full(len(acting), np.nan)).tolist()
+        each = zip(acting, alone.tolist(), shares, strict=True)
+        found.append([ForcingShare(row, f.name, f.kind, value, part, at_rest) for f, value, part in each])
+    return found
 
 
 def _linear(alone: Floats, acting: list[Forcing]) -> Floats:
@@ -58,9 +71,11 @@ def _linear(alone: Floats, acting: list[Forcing]) -> Floats:
     return np.where(noise, alone**2 / together if together > 0.0 else 0.0, alone)
 
 
-def _alone(row: ForcedRow, forcing: tuple[Forcing, ...]) -> float:
-    """Return what one forcing makes of a row, infinite where the machine does not stand."""
-    if row.machine.topples:
-        return float("inf")
-    machine = replace(row.machine, brief=row.machine.brief.model_copy(update={"forcing": forcing}))
-    return float(forced_suprema(machine, row.found, row.condition, ((row.allowable, row.place),)).value[0])
+def _alone(rows: list[ForcedRow], forcing: tuple[Forcing, ...]) -> Floats:
+    """Return what one forcing makes of rows (R,) of one condition, infinite where the machine does not stand."""
+    first = rows[0]
+    if first.machine.topples:
+        return np.full(len(rows), np.inf)
+    machine = replace(first.machine, brief=first.machine.brief.model_copy(update={"forcing": forcing}))
+    pairs = tuple((row.allowable, row.place) for row in rows)
+    return forced_suprema(machine, first.found, first.condition, pairs).value

@@ -18,7 +18,7 @@ def scatter_text(brief: Brief, judged: OverScatter | None) -> str:
     if judged is None:
         return ""
     stated = f"What stands above is at listed values. Over the stated scatter ({scatter_words(brief)}):"
-    lines = [*textwrap.wrap(stated, WIDTH), *_headline(brief, judged)]
+    lines = [*textwrap.wrap(stated, WIDTH), *textwrap.wrap(headline(brief, judged), WIDTH)]
     if judged.verdict is not None:
         lines += ["", "Every requirement over the scatter, least guaranteed margin first"]
         for row in sorted(judged.verdict.rows, key=_order):
@@ -26,7 +26,8 @@ def scatter_text(brief: Brief, judged: OverScatter | None) -> str:
     return "\n".join(lines) + "\n"
 
 
-def _headline(brief: Brief, judged: OverScatter) -> list[str]:
+def headline(brief: Brief, judged: OverScatter) -> str:
+    """Return what the scatter makes of one design in a sentence or two: its yield, or what is proven of it."""
     if judged.found is not None:
         found = judged.found
         text = (
@@ -35,7 +36,7 @@ def _headline(brief: Brief, judged: OverScatter) -> list[str]:
         )
         if found.missed:
             text += f" Missed most: {found.missed[0][0]} ({found.missed[0][1]} times)."
-        return textwrap.wrap(text, WIDTH)
+        return text
     verdict = judged.verdict
     assert verdict is not None
     text = _verdict_words(brief, verdict)
@@ -43,7 +44,7 @@ def _headline(brief: Brief, judged: OverScatter) -> list[str]:
         text += (
             " PARTIAL: the time limit or an interruption ended the proof; with more time more may be decided."
         )
-    return textwrap.wrap(f"{text} ({verdict.boxes:,} boxes, {judged.seconds:.1f} s)", WIDTH)
+    return f"{text} ({verdict.boxes:,} boxes, {judged.seconds:.1f} s)"
 
 
 def _verdict_words(brief: Brief, verdict: DesignVerdict) -> str:

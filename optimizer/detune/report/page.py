@@ -7,13 +7,11 @@ from pathlib import Path
 from detune.brief.brief import Brief
 from detune.ground.units import show
 from detune.report import tables, tables_study
-from detune.report.alternatives import alternatives
-from detune.report.contributions import contributions
+from detune.report.contributions import Contribution
 from detune.report.figures import Drawn, draw_all
-from detune.report.forced_rows import forced_rows, tightest_of_each
+from detune.report.gathered import Gathered, gather, left_out_of
 from detune.report.points_to_check import points_to_check, study_points
 from detune.report.robust import robust_lines, robust_tables
-from detune.report.service_loads import service_loads
 from detune.report.summary import none_lines, partial_words, proof_lines
 from detune.report.tables import Table
 from detune.report.tables_contributions import contributions_table
@@ -29,6 +27,7 @@ from detune.report.words import (
     value_text,
 )
 from detune.response.assessment import Assessment
+from detune.study.after_search import AfterSearch
 from detune.study.cautions import cautions
 from detune.study.run import Result
 
@@ -93,8 +92,16 @@ def write_page(result: Result, path: str | Path) -> None:
     Path(path).write_text(page_text(result, draw_all(result)), encoding="utf-8", newline="\n")
 
 
-def page_text(result: Result, drawn: tuple[Drawn, ...]) -> str:
-    """Return the report as HTML, with plots that were drawn already."""
+def page_text(
+    result: Result,
+    drawn: tuple[Drawn, ...],
+    gathered: Gathered | None = None,
+    work: AfterSearch | None = None,
+) -> str:
+    """Return the report as HTML, with plots that were drawn already.
+
+    gathered: the tables beside the assessment, where they are there already; work: what tells of what was left out.
+    """
     import jinja2
 
     environment = jinja2.Environment(
@@ -107,14 +114,23 @@ def page_text(result: Result, drawn: tuple[Drawn, ...]) -> str:
         title=result.study.brief.title,
         notes=result.study.brief.notes,
         partial=partial_words(result),
-        sections=sections(result, {plot.name: plot for plot in drawn}),
+        sections=sections(result, {plot.name: plot for plot in drawn}, gathered, work),
     )
 
 
-def sections(result: Result, plots: dict[str, Drawn]) -> tuple[Section, ...]:
+def sections(
+    result: Result,
+    plots: dict[str, Drawn],
+    gathered: Gathered | None = None,
+    work: AfterSearch | None = None,
+) -> tuple[Section, ...]:
     """Return the sections in the order of a design review; those with nothing to say are left out."""
+    gathered = gathered or gather(result)
     subject = result.subject
     found: list[Section] = [_answer(result)]
+    left_out, why = left_out_of(result, work)
+    if left_out:
+        found.append(Section("left-out", "Left out", (f"Left out {why}:",), left_out))
     found.append(Section("cautions", "Cautions", points=cautions(result.study.brief)))
     shown = robust_tables(result)
     if shown:
@@ -132,10 +148,10 @@ def sections(result: Result, plots: dict[str, Drawn]) -> tuple[Section, ...]:
             )
         )
     if subject is not None:
-        found += _of_design(result, subject, plots)
+        found += _of_design(result, subject, plots, gathered)
     if result.compared:
         found.append(Section("compared", "Named designs", tables=(tables_study.comparison_table(result),)))
-    found += _choices(result)
+    found += _choices(result, gathered)
     found += _why(result, plots)
     named = "The equations with their sources stand in docs/equations.md under the names in brackets."
     computed = tuple(f"{what}: {how}" for what, how in COMPUTED)
@@ -188,8 +204,11 @@ def _most_excluded(result: Result) -> Table:
     return Table("Rules that excluded most", ("rule", "stage", "designs"), rows, frozenset({2}), note)
 
 
-def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> list[Section]:
+def _of_design(
+    result: Result, subject: Assessment, plots: dict[str, Drawn], gathered: Gathered
+) -> list[Section]:
     brief = result.study.brief
+    loads = () if gathered.loads is None else (tables_study.service_table(gathered.loads),)
     of = "" if result.answer is not None else " of the closest design"
     missed = tuple(
         f"{row.label}: {value_text(row)} where the limit is {limit_text(row)}, margin {margin_text(row.margin)}"
@@ -199,8 +218,7 @@ def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> 
         Section("margins", f"Margins{of}", points=missed, plots=_only(plots, "margins"),
                 tables=(tables.margins_table(brief, subject),)),
         Section("stations", f"Stations{of}: installation sheet", texts=(_total_load(subject),),
-                tables=(tables.stations_table(subject), *_besides(brief, subject),
-                        tables_study.service_table(service_loads(brief, subject)))),
+                tables=(tables.stations_table(subject), *_besides(brief, subject), *loads)),
     ]  # fmt: skip
     barred = dwell_table(brief, subject)
     if barred is not None:
@@ -209,7 +227,7 @@ def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> 
         )
     if "response" in plots:
         found.append(Section("responses", f"Responses against limits{of}", plots=_only(plots, "response")))
-    found += _in_time_and_noise(brief, subject, plots, of)
+    found += _in_time_and_noise(gathered.sources or (), plots, of)
     speeds = tables_study.speeds_table(result, subject)
     shown = [tables.modes_table(subject), tables.bump_table(subject)]
     if speeds.rows:
@@ -225,11 +243,11 @@ def _of_design(result: Result, subject: Assessment, plots: dict[str, Drawn]) -> 
     return found
 
 
-def _in_time_and_noise(brief: Brief, subject: Assessment, plots: dict[str, Drawn], of: str) -> list[Section]:
+def _in_time_and_noise(sources: tuple[Contribution, ...], plots: dict[str, Drawn], of: str) -> list[Section]:
     """Return what noise, shocks, records and run-ups do, where any of them acts."""
-    rows = tightest_of_each(forced_rows(brief, subject))
-    if not rows:
+    if not sources:
         return []
+    rows = [part.of for part in sources]
     present = (
         ("noise", any(row.noises for row in rows)),
         ("shocks and records", any(row.transients for row in rows)),
@@ -237,7 +255,7 @@ def _in_time_and_noise(brief: Brief, subject: Assessment, plots: dict[str, Drawn
     )
     words = ", ".join(word for word, acts in present if acts)
     shown = (*_only(plots, "spectral-density"), *_only(plots, "shock"))
-    table = contributions_table(contributions(rows))
+    table = contributions_table(sources)
     return [Section("sources", f"{words[0].upper()}{words[1:]}{of}", plots=shown, tables=(table,))]
 
 
@@ -258,9 +276,9 @@ def _total_load(subject: Assessment) -> str:
     )
 
 
-def _choices(result: Result) -> list[Section]:
-    found = alternatives(result)
-    if not found.items:
+def _choices(result: Result, gathered: Gathered) -> list[Section]:
+    found = gathered.beside
+    if found is None or not found.items:
         return []
     texts: tuple[str, ...] = ()
     if found.cheaper is not None:

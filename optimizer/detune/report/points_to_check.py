@@ -67,7 +67,8 @@ def _scatter(assessment: Assessment) -> list[str]:
     listed = ", ".join(
         f"{part} plus or minus {100.0 * tolerance:g} %"
         for part, tolerance in parts.items()
-        if tolerance == tolerance
+        # A part made to order has no listed tolerance: zero stands for none.
+        if tolerance == tolerance and tolerance > 0.0
     )
     if not listed:
         return []

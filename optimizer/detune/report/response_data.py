@@ -16,7 +16,14 @@ from detune.response.assessment import Assessment, BarredBand, MarginRow
 from detune.response.damping_readings import readings_of
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes, direct_modes
-from detune.response.direct_supremum import Pairs, amplitudes_at, coherent_sets, steady_intervals, tones_of
+from detune.response.direct_supremum import (
+    Pairs,
+    amplitudes_at,
+    coherent_sets,
+    steady_intervals,
+    tones_of,
+    unit_tones,
+)
 from detune.response.direct_views import DirectStatic
 
 Floats = NDArray[np.float64]
@@ -103,24 +110,9 @@ def _condition_curves(
     barred: tuple[BarredBand, ...],
 ) -> list[ResponseCurve]:
     """Return the curves of a condition, at each speed the larger value of the readings of unknown damping."""
-    machine = looks[0][0]
-    brief = machine.brief
-    static = DirectStatic(machine)
-    names = _places(machine)
-    known = [
-        (a, place)
-        for a in demanded(brief)[0]
-        if isinstance(a, HarmonicAllowable) and applies(a.conditions, condition.name)
-        for place in a.places(names)
-        if _key(a, place, condition) in rows
-    ]
-    forced = tuple(pair for pair in known if pair[0].unit_load() is None)
-    groups: list[tuple[Pairs, list[_Sweep]]] = [(forced, _forced_sweeps(brief, condition))] if forced else []
-    for pair in known:
-        if pair[0].unit_load() is not None:
-            groups.append(((pair,), _unit_sweeps(machine, condition, pair[0])))
+    static = DirectStatic(looks[0][0])
     curves = []
-    for pairs, sweeps in groups:
+    for pairs, sweeps in _swept_together(looks[0][0], condition, rows):
         judged = [rows[_key(*pair, condition)] for pair in pairs]
         for sweep in sweeps:
             speed = np.unique(np.concatenate([_speeds(sweep, found, judged) for _, found in looks]))
@@ -156,6 +148,28 @@ def _condition_curves(
                     )
                 )
     return curves
+
+
+def _swept_together(
+    machine: DirectMachine, condition: Condition, rows: dict[tuple[str, str, str, str], MarginRow]
+) -> list[tuple[Pairs, list[_Sweep]]]:
+    """Return the limits of a condition, those under its forcing together and each one under a unit load, with their
+    sweeps.
+    """
+    brief, names = machine.brief, _places(machine)
+    known = [
+        (a, place)
+        for a in demanded(brief)[0]
+        if isinstance(a, HarmonicAllowable) and applies(a.conditions, condition.name)
+        for place in a.places(names)
+        if _key(a, place, condition) in rows
+    ]
+    forced = tuple(pair for pair in known if pair[0].unit_load() is None)
+    groups: list[tuple[Pairs, list[_Sweep]]] = [(forced, _forced_sweeps(brief, condition))] if forced else []
+    for pair in known:
+        if pair[0].unit_load() is not None:
+            groups.append(((pair,), _unit_sweeps(machine, condition, pair[0])))
+    return groups
 
 
 def _places(machine: DirectMachine) -> Places:
@@ -205,30 +219,10 @@ def _forced_sweeps(brief: Brief, condition: Condition) -> list[_Sweep]:
 
 
 def _unit_sweeps(machine: DirectMachine, condition: Condition, allowable: HarmonicAllowable) -> list[_Sweep]:
-    unit = allowable.unit_load()
-    assert unit is not None
-    body = machine.brief.bodies[0].name
-    centre = machine.centres[body]
-    along = (complex(unit[1][0]), complex(unit[1][1]), complex(unit[1][2]))
-    sweeps = []
-    bands = {(tone.order * tone.low, tone.order * tone.high) for tone in tones_of(machine.brief, condition)}
-    for low, high in sorted(bands):
-        low = max(low, allowable.lowest_frequency())
-        if high < low:
-            continue
-        tone = Tone(
-            source="unit load",
-            speed="unit load",
-            order=1.0,
-            low=low,
-            high=high,
-            on=body,
-            position=(float(centre[0]), float(centre[1]), float(centre[2])),
-            force=along if unit[0] == "force" else (0j, 0j, 0j),
-            base=along if unit[0] == "base" else None,
-        )
-        sweeps.append(_Sweep("frequency", False, [(tone,)], low, high, False, False))
-    return sweeps
+    return [
+        _Sweep("frequency", False, [(tone,)], tone.low, tone.high, False, False)
+        for tone in unit_tones(machine, condition, allowable)
+    ]
 
 
 def _speeds(sweep: _Sweep, found: DirectModes, judged: list[MarginRow]) -> Floats:

@@ -1,5 +1,7 @@
 """What the scatter makes of a study, in words and tables: nominal and proven kept apart everywhere."""
 
+import math
+
 from detune.brief.brief import Brief
 from detune.brief.scatter import interval_of
 from detune.report.tables import Table
@@ -214,6 +216,9 @@ def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
     def order(row: RowVerdict) -> float:
         return row.margin if row.guaranteed_margin is None else row.guaranteed_margin
 
+    def unknown(value: float | None) -> bool:
+        return value is None or math.isnan(value)
+
     rows = tuple(
         (
             row.label,
@@ -221,7 +226,7 @@ def worst_table(brief: Brief, verdict: DesignVerdict) -> Table:
             limit_text(as_margin_row(row)),
             value_text(as_margin_row(row)),
             margin_text(row.margin),
-            "none" if row.guaranteed is None else value_text(as_margin_row(row, guaranteed=True)),
+            "none" if unknown(row.guaranteed) else value_text(as_margin_row(row, guaranteed=True)),
             "none" if row.guaranteed_margin is None else margin_text(row.guaranteed_margin),
             ", ".join(text for text in (_frequency(brief, row), row.where) if text),
         )

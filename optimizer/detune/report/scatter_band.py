@@ -47,32 +47,53 @@ def scatter_bands(brief: Brief, design: Design, curves: Sequence[ResponseCurve])
     low = [curve.value.copy() for curve in curves]
     high = [curve.value.copy() for curve in curves]
     points = sample_scatter(found, inside=INSIDE)
+    # The forcing scatters as well; a static part in the value is scaled with it, which widens the band.
+    edges = (1.0 + found.forcing[0], 1.0 + found.forcing[1])
+    together = _under_one_load(curves)
     for point in points:
         moved, mounted = perturbed(brief, design, found, point)
-        machines: dict[tuple[str | None, str | None], DirectMachine] = {}
-        for number, curve in enumerate(curves):
-            values = []
-            for reading in readings_of(design.mounts):
-                key = (curve.state, reading)
-                if key not in machines:
-                    machines[key] = DirectMachine(moved, mounted, state_of(moved, curve.state), reading)
-                values.append(_value(machines[key], curve))
-            worst, least = np.max(values, axis=0), np.min(values, axis=0)
-            edges = (1.0 + found.forcing[0], 1.0 + found.forcing[1])
-            # The forcing scatters as well; a static part in the value is scaled with it, which widens the band.
-            low[number] = np.minimum(
-                low[number], least * (edges[0] if curve.pair[0].unit_load() is None else 1.0)
-            )
-            high[number] = np.maximum(
-                high[number], worst * (edges[1] if curve.pair[0].unit_load() is None else 1.0)
-            )
+        machines = {
+            (state, reading): DirectMachine(moved, mounted, state_of(moved, state), reading)
+            for state in dict.fromkeys(curve.state for curve in curves)
+            for reading in readings_of(design.mounts)
+        }
+        for numbers in together:
+            asked = [curves[number] for number in numbers]
+            values = [
+                _values(machines[asked[0].state, reading], asked) for reading in readings_of(design.mounts)
+            ]
+            for number, least, most in zip(
+                numbers, np.min(values, axis=0), np.max(values, axis=0), strict=True
+            ):
+                scaled = edges if curves[number].pair[0].unit_load() is None else (1.0, 1.0)
+                low[number] = np.minimum(low[number], least * scaled[0])
+                high[number] = np.maximum(high[number], most * scaled[1])
     return tuple(Band(a, b, len(points)) for a, b in zip(low, high, strict=True))
 
 
-def _value(machine: DirectMachine, curve: ResponseCurve) -> Floats:
-    allowable, place = curve.pair
-    value = amplitudes_at(machine, (curve.pair,), list(curve.sets), curve.speed)[0]
-    if curve.rest:
-        value = combine(value, np.full(len(curve.speed), curve.rest), allowable.statistic())
-    offset: Floats = value + float(allowable.offset(DirectStatic(machine), place)[0])
-    return offset
+def _under_one_load(curves: Sequence[ResponseCurve]) -> list[list[int]]:
+    """Return the numbers of the curves in sets that look at one motion: state, tones and speeds are the same."""
+    sets: list[list[int]] = []
+    for number, curve in enumerate(curves):
+        for members in sets:
+            first = curves[members[0]]
+            alike = (first.state, first.sets) == (curve.state, curve.sets)
+            if alike and np.array_equal(first.speed, curve.speed):
+                members.append(number)
+                break
+        else:
+            sets.append([number])
+    return sets
+
+
+def _values(machine: DirectMachine, curves: Sequence[ResponseCurve]) -> Floats:
+    """Return the values (C, F) of curves under one load on a machine."""
+    first, static = curves[0], DirectStatic(machine)
+    amplitude = amplitudes_at(machine, tuple(c.pair for c in curves), list(first.sets), first.speed)
+    values = []
+    for curve, own in zip(curves, amplitude, strict=True):
+        allowable, place = curve.pair
+        rest = np.full(len(own), curve.rest)
+        value = combine(own, rest, allowable.statistic()) if curve.rest else own
+        values.append(value + float(allowable.offset(static, place)[0]))
+    return np.stack(values)

@@ -1,24 +1,33 @@
 """The report and the result folder of a sizing study."""
 
-import shutil
+from functools import partial
 from importlib.resources import files
 from pathlib import Path
 from types import ModuleType
 
-from detune.ground.units import show
-from detune.report import tables, tables_absorber, tables_convex, tables_opinion, tables_sizing
-from detune.report.figures import Drawn, draw_one
-from detune.report.folder import MARK, check_folder, put_in_place, sibling
+from detune.report import (
+    tables,
+    tables_absorber,
+    tables_convex,
+    tables_nearest,
+    tables_opinion,
+    tables_size_scatter,
+    tables_sizing,
+    tables_specification,
+)
+from detune.report.figures import Drawn, draw_each
+from detune.report.folder import MARK, write_whole
 from detune.report.page import TEMPLATE, Section
 from detune.report.plots import sizing_absorber, sizing_front, sizing_map
 from detune.report.points_to_check import points_to_check
 from detune.report.strict_json import json_text
 from detune.report.tables_sizing import GOALS, goal_text
-from detune.report.words import margin_text, row_text
+from detune.report.words import percent, row_text
 from detune.sizing.made_parts import sizing_of
+from detune.solvers.size_conflict import conflict_text
 from detune.solvers.size_specification import PurchaseSpecification
-from detune.study.cautions import CAUTIONS
-from detune.study.size import SizingResult
+from detune.study.cautions import cautions
+from detune.study.size import SizedBest, SizingResult
 
 # Branches besides the best that the terminal lists.
 SHOWN = 6
@@ -31,12 +40,7 @@ PLOTS: dict[str, ModuleType] = {
 
 def draw_sizing(result: SizingResult) -> tuple[Drawn, ...]:
     """Return every plot that has something to show."""
-    drawn = []
-    for name, module in PLOTS.items():
-        data = module.data(result)
-        if data is not None:
-            drawn.append(draw_one(name, module, data))
-    return tuple(drawn)
+    return draw_each(PLOTS, result)
 
 
 def sizing_summary(result: SizingResult) -> str:
@@ -54,10 +58,12 @@ def sizing_summary(result: SizingResult) -> str:
         lines += [f"  {row[0]}: {row[1]}" for row in table.rows]
         lines.append(f"Least margin: {row_text(brief, best.assessment.tightest)}.")
         others = [branch for branch in result.branches if branch is not best]
-        lines += [
-            f"Other branch: {b.name}, {GOALS[goal]} {goal_text(goal, b.objective)}" for b in others[:SHOWN]
-        ]
+        lines += [_other(result, b, goal) for b in others[:SHOWN]]
         lines += [f"and {len(others) - SHOWN} more branches, in the report"] if len(others) > SHOWN else []
+    over = tables_size_scatter.over_text(result)
+    lines += [over] if over else []
+    forms = tables_absorber.forms_text(result)
+    lines += [forms] if forms else []
     lines += [tables_opinion.opinion_text(result)] if result.opinion is not None else []
     lines += [
         f"Under the stated scatter the worst response grows from {each.nominal:.4g} to {each.greatest:.4g} of "
@@ -67,22 +73,37 @@ def sizing_summary(result: SizingResult) -> str:
     lines += [
         text for text in (tables_sizing.searches_text(result), tables_sizing.slopes_text(result)) if text
     ]
-    near = result.nearest
-    if near is not None and near.designs:
-        first = near.designs[0].assessment
-        told = "meets the brief" if first.meets else f"misses {first.tightest.label}"
-        lines.append(f"Nearest real design: {first.design}, cost {first.cost:.6g}, {told}")
+    near = tables_nearest.nearest_text(result)
+    lines += [near] if near else []
     lines += [f"Caution: {text}" for text in result.cautions]
     lines.append(f"{result.method} ({result.why_method}); {result.seconds:.1f} s")
     return "\n".join(lines)
 
 
+def _other(result: SizingResult, branch: SizedBest, goal: str) -> str:
+    text = f"Other branch: {branch.name}, {GOALS[goal]} {goal_text(goal, branch.objective)}"
+    if not branch.assessment.meets:
+        return f"{text}; misses {branch.assessment.tightest.label}"
+    return text if result.over is None else f"{text}; {tables_sizing.met_text(result)}"
+
+
 def _none(result: SizingResult) -> str:
     if result.exact is not None and not result.exact.branches:
-        return "No stiffness, damping and ballast within the bounds meets the brief (proven)."
+        text = "No stiffness, damping and ballast within the bounds meets the brief"
+        if not result.exact.proven:
+            return (
+                "None found that meets the brief; the search ended before it was proven that there is none."
+            )
+        return f"{text} (proven)." + ("" if result.conflict is None else f" {conflict_text(result.conflict)}")
     if result.branches:
-        worst = result.branches[0].assessment.tightest
-        return f"None found that meets the brief; the best one misses {worst.label} by {margin_text(worst.margin)}."
+        assessment = result.branches[0].assessment
+        worst = assessment.tightest
+        text = (
+            f"None found that meets the brief; the best one misses {worst.label} by {percent(-worst.margin)}"
+        )
+        missed = dict.fromkeys(row.label for row in assessment.margins if not row.margin >= 0.0)
+        also = [label for label in missed if label != worst.label]
+        return f"{text}, and {', '.join(also[:SHOWN])}." if also else f"{text}."
     return "None found."
 
 
@@ -95,14 +116,16 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
         found.append(Section("answer", "No design meets the brief", (_none(result),)))
     else:
         text = (
-            f"Meets the brief: {GOALS[goal]} {goal_text(goal, best.objective)}, {best.name}. Least margin: "
+            f"{tables_size_scatter.meets_text(result)}: {GOALS[goal]} {goal_text(goal, best.objective)}, "
+            f"{best.name}. Least margin at listed values: "
             f"{row_text(brief, best.assessment.tightest)}."
         )
         worth = f"What this is worth: {result.worth}. {result.why_method[0].upper()}{result.why_method[1:]}."
         table = tables_sizing.unknowns_table(result, best)
         points = (*result.cautions, *points_to_check(brief, best.assessment))
         found.append(Section("answer", "The sized design", (text, worth), points, tables=(table,)))
-    found.append(Section("cautions", "Cautions", points=CAUTIONS))
+    found.append(Section("cautions", "Cautions", points=cautions(brief)))
+    found += _scatter(result)
     if result.branches:
         told = (tables_sizing.searches_text(result), tables_sizing.slopes_text(result))
         table = tables_sizing.branches_table(result)
@@ -122,7 +145,7 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
         heading = "Front: " + " against ".join(GOALS[name] for name in result.front.trade)
         found.append(Section("front", heading, plots=shown, folded=(tables_sizing.front_table(result),)))
     if result.nearest is not None:
-        found.append(Section("nearest", "Nearest real parts", tables=(tables_sizing.nearest_table(result),)))
+        found.append(Section("nearest", "Nearest real parts", tables=(tables_nearest.nearest_table(result),)))
     found += _further(result, plots)
     if best is not None:
         found.append(
@@ -139,6 +162,14 @@ def sizing_sections(result: SizingResult, plots: dict[str, Drawn]) -> tuple[Sect
     return tuple(found)
 
 
+def _scatter(result: SizingResult) -> list[Section]:
+    text, table = tables_size_scatter.over_text(result), tables_size_scatter.over_table(result)
+    if not text:
+        return []
+    shown = () if table is None else (table,)
+    return [Section("scatter", "Over the stated scatter", tuple(text.split("\n")), tables=shown)]
+
+
 def _further(result: SizingResult, plots: dict[str, Drawn]) -> list[Section]:
     found = []
     if result.convex:
@@ -146,6 +177,8 @@ def _further(result: SizingResult, plots: dict[str, Drawn]) -> list[Section]:
         found.append(
             Section("convex", "Convex answers", points=points, tables=(tables_convex.convex_table(result),))
         )
+    elif result.no_convex is not None:
+        found.append(Section("convex", "Convex answers", (f"None: {result.no_convex}.",)))
     if result.detuned:
         shown = [tables_absorber.forms_table(result)] if result.closed_forms else []
         shown += [tables_absorber.scatter_table(result)] if result.scattered else []
@@ -156,16 +189,8 @@ def _further(result: SizingResult, plots: dict[str, Drawn]) -> list[Section]:
     if isinstance(bought, str):
         found.append(Section("specification", "Purchase specification", (f"None: {bought}.",)))
     elif bought is not None:
-        unknowns = sizing_of(result.study.brief).unknown
-        held = [
-            f"{u.title} {show(v, u.unit)}"
-            for u, v in zip(unknowns, bought.values.tolist(), strict=True)
-            if u not in bought.unknowns
-        ]
-        text = (
-            "For a design with room inside its limits" + (f", with {', '.join(held)}" if held else "") + "."
-        )
-        table = tables_sizing.specification_table(bought)
+        text = tables_specification.specification_text(result, bought)
+        table = tables_specification.specification_table(bought)
         found.append(Section("specification", table.title, (text,), tables=(table,)))
     return found
 
@@ -189,17 +214,7 @@ def sizing_page(result: SizingResult, drawn: tuple[Drawn, ...]) -> str:
 
 def write_sizing(result: SizingResult, folder: str | Path, overwrite: bool = False) -> Path:
     """Write the result folder of a sizing study and return its path. Raises FolderExists as `write_folder` does."""
-    target = Path(folder)
-    check_folder(target, overwrite)
-    target.parent.mkdir(parents=True, exist_ok=True)
-    building = sibling(target, "writing")
-    building.mkdir()
-    try:
-        _fill(result, building)
-        put_in_place(building, target)
-    finally:
-        shutil.rmtree(building, ignore_errors=True)
-    return target
+    return write_whole(folder, partial(_fill, result), overwrite)
 
 
 def _fill(result: SizingResult, folder: Path) -> None:
@@ -217,12 +232,12 @@ def _fill(result: SizingResult, folder: Path) -> None:
     shown = [tables_sizing.branches_table(result)] if result.branches else []
     shown += [tables_sizing.front_table(result)] if result.front is not None else []
     shown += (
-        [tables_sizing.nearest_table(result)]
+        [tables_nearest.nearest_table(result)]
         if result.nearest is not None and result.answer is not None
         else []
     )
     if isinstance(result.specification, PurchaseSpecification):
-        shown.append(tables_sizing.specification_table(result.specification))
+        shown.append(tables_specification.specification_table(result.specification))
     shown += [tables_absorber.forms_table(result)] if result.closed_forms else []
     shown += [tables_opinion.opinion_table(result)] if result.opinion is not None else []
     for table in shown:
@@ -262,6 +277,7 @@ def _numbers(result: SizingResult) -> dict[str, object]:
         "parts_bounds": result.parts_bounds,
         "closed_forms": result.closed_forms,
         "scattered": result.scattered,
+        "over_scatter": tables_size_scatter.over_numbers(result),
         "cautions": result.cautions,
         "units": "SI: m, kg, s, N, rad, Hz; cost in the currency of the study; margins and separation are ratios",
     }

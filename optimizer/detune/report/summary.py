@@ -6,6 +6,7 @@ from collections.abc import Iterable, Sequence
 from pathlib import Path
 
 from detune.brief.brief import Brief
+from detune.report.gathered import left_out_of
 from detune.report.points_to_check import points_to_check, study_points
 from detune.report.robust import robust_lines
 from detune.report.words import (
@@ -20,6 +21,7 @@ from detune.report.words import (
     value_text,
 )
 from detune.response.assessment import Assessment, MarginRow
+from detune.study.after_search import AfterSearch
 from detune.study.cautions import cautions
 from detune.study.run import Result
 
@@ -28,11 +30,14 @@ SHOWN_FRONT = 12
 SHOWN_RULES = 6
 
 
-def summary(result: Result, folder: Path | None = None) -> str:
-    """Return the summary of a study as plain text."""
+def summary(result: Result, folder: Path | None = None, work: AfterSearch | None = None) -> str:
+    """Return the summary of a study as plain text; `work` tells of what its report left out."""
     lines = [result.study.brief.title, ""]
     lines += _partial(result)
     lines += _answer(result) if result.answer is not None else none_lines(result)
+    left_out, why = left_out_of(result, work)
+    if left_out:
+        lines += ["", f"Left out {why}", *_bullets(left_out)]
     for other in result.compared:
         lines += ["", "Named design", *_design(result.study.brief, other)]
     subject = result.subject
@@ -201,7 +206,8 @@ def _answer(result: Result) -> list[str]:
     points = result.front.points
     if len(points) > 1:
         words = " against ".join(OBJECTIVE_WORDS[name] for name in trade)
-        lines += ["", f"Front, {words}: {len(points)} designs"]
+        more = result.front.unassessed
+        lines += ["", f"Front, {words}: {len(points)} designs{f', {more} more not assessed' if more else ''}"]
         for point in points[:SHOWN_FRONT]:
             values = "  ".join(f"{objective_text(point, name):>9}" for name in trade)
             lines.append(f"  {values}  {design_text(point.design)}")

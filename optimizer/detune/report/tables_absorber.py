@@ -46,7 +46,7 @@ def forms_table(result: SizingResult) -> Table:
                 (
                     body,
                     form.name,
-                    form.best_for,
+                    form.best_for if form.within else f"{form.best_for} (outside the stated bounds)",
                     number(form.mass_ratio, 4),
                     show(form.tuning, "frequency", 6),
                     number(form.damping, 5),
@@ -63,6 +63,24 @@ def forms_table(result: SizingResult) -> Table:
         "ranges."
     )
     return Table("Absorber beside closed forms", columns, tuple(rows), frozenset({3, 4, 5, 6, 7}), note)
+
+
+def forms_text(result: SizingResult) -> str:
+    """The sized absorber beside the closed form that comes nearest, for the terminal; empty where none is sized."""
+    if (
+        not result.closed_forms
+        or result.answer is None
+        or sizing_of(result.study.brief).goal != "worst-response"
+    ):
+        return ""
+    worst = next((d.worst_response for d in result.detuned if d.share == 0.0), math.nan)
+    best = min(result.closed_forms, key=lambda form: form.worst_response)
+    return (
+        f"Absorber beside {len(result.closed_forms)} closed forms: {WORST} {number(worst, 5)} as sized, "
+        f"{number(best.worst_response, 5)} by the best of them ({best.name}: {best.best_for}; "
+        f"{show(best.tuning, 'frequency', 5)}, damping {number(best.damping, 4)}"
+        f"{'' if best.within else '; outside the stated bounds'})"
+    )
 
 
 def detuning_table(result: SizingResult) -> Table:

@@ -20,6 +20,8 @@ from detune.report.words import (
 from detune.response.assessment import Assessment
 from detune.study.run import Result
 
+PARTLY = "(without records and passages, for which there was no time)"
+
 
 def front_table(result: Result) -> Table:
     """Return the points of the front with every objective and the requirement that is tightest."""
@@ -107,7 +109,8 @@ def reasons_table(result: Result) -> Table:
                 if reason.first_rule
                 else ""
             )
-            words = (first, reason.hardest_rule or "", margin, reason.closest or "")
+            hardest = reason.hardest_rule or ""
+            words = (first, hardest if reason.whole else f"{hardest} {PARTLY}", margin, reason.closest or "")
         rows.append((reason.group, reason.mount.part, reason.mount.catalog, *words))
     columns = (
         "group",

@@ -17,7 +17,7 @@ from detune.brief.brief import Brief, body_of
 from detune.brief.floor import FloorFreedom, floor_freedom
 from detune.brief.floor_matrix import FloorStructure, elastic_of, foot_of
 from detune.brief.forcing.base import Tone
-from detune.brief.machine import Connection, Station
+from detune.brief.machine import Station
 from detune.brief.mass_properties import mass_properties
 from detune.brief.state import State, apparent_gravity
 from detune.brief.statement import FREEDOMS, unit_direction
@@ -32,11 +32,13 @@ from detune.response.design import Design, ballast_of
 from detune.response.direct_absorbers import DirectAbsorber, absorber_mass, absorber_weight, absorbers_of
 from detune.response.direct_gravity import gravity_stiffness
 from detune.response.direct_laws import DirectRest, follows_curve, part_stiffness, rest_on_laws
-from detune.response.floor_table import floor_spring
+from detune.response.direct_stiffness import assembled_stiffness, straight_stiffness
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
 FLOOR = "floor"
+# Frequencies up to which the stiffness is put together part by part.
+FEW = 2
 
 
 @dataclass(frozen=True)
@@ -99,10 +101,10 @@ class DirectMachine:
     @property
     def size(self) -> int:
         """Number of freedoms N."""
-        return int(self._modal.stop) + len(self.absorbers)
+        return int(self.modal.stop) + len(self.absorbers)
 
     @property
-    def _modal(self) -> slice:
+    def modal(self) -> slice:
         """The modes of the structure among the N freedoms."""
         modes = 0 if self.elastic is None else len(self.elastic.modes.frequency)
         return slice(6 * len(self.nodes), 6 * len(self.nodes) + modes)
@@ -129,7 +131,7 @@ class DirectMachine:
         """Node and freedom of each freedom that can move."""
         every: list[tuple[str, str]] = [(node, freedom) for node in self.nodes for freedom in FREEDOMS]
         node = FLOOR if isinstance(self.elastic, FloorStructure) else "structure"
-        every += [(node, f"mode {i + 1}") for i in range(self._modal.stop - len(every))]
+        every += [(node, f"mode {i + 1}") for i in range(self.modal.stop - len(every))]
         every += [(absorber.station.name, "along") for absorber in self.absorbers]
         return tuple(name for name, moves in zip(every, self.free, strict=True) if moves)
 
@@ -138,7 +140,7 @@ class DirectMachine:
         rows = np.zeros((3, self.size))
         if node not in self.nodes:
             assert self.elastic is not None  # the cross-check admits no other place
-            rows[:, self._modal] = self.elastic.shape_rows(node)
+            rows[:, self.modal] = self.elastic.shape_rows(node)
             if isinstance(self.elastic, FloorStructure):
                 # Held directions go by the floor's node, so that their reaction is seen there.
                 rows[:, self.floor_axes] += np.diag(~np.any(self.elastic.total_rows != 0.0, axis=1))
@@ -160,6 +162,7 @@ class DirectMachine:
         """Return the same machine, at rest as it is, with its parts at another amplitude (S,) or (S, F) in m."""
         moved = copy(self)
         object.__setattr__(moved, "amplitude", amplitude)
+        moved.__dict__.pop("straight", None)
         if amplitude.ndim == 1:
             for asked in ("topples", "dynamic_gravity"):
                 moved.__dict__.pop(asked, None)
@@ -213,6 +216,10 @@ class DirectMachine:
         """Rows (3, N): global displacement of the body at a station relative to what it stands on."""
         return self._geometry[station.name][1]
 
+    def deflection_rows(self, station: Station) -> Floats:
+        """Rows (3, N): the same along the station's own axes."""
+        return self.axes(station).T @ self.across(station)
+
     def foot(self, station: Station) -> Floats:
         """Rows (3, N): global motion of the floor or structure under a station, zero where it stands on a body."""
         rows = self.place(foot_of(self.brief, station), np.array(station.position))
@@ -236,38 +243,21 @@ class DirectMachine:
             total += mass * move.T @ move + turn.T @ inertia @ turn
         if self.floor is not None:
             total[self.floor_vertical, self.floor_vertical] += self.floor.mass
-        modal = range(self._modal.start, self._modal.stop)
+        modal = range(self.modal.start, self.modal.stop)
         total[modal, modal] += 1.0
         return total + absorber_mass(self)
 
     def stiffness(self, omega: Floats | None, with_gravity: bool = True) -> Complexes:
         """Static stiffness (N, N) where omega is None, else complex dynamic stiffness (F, N, N)."""
-        shape = (len(self.free), len(self.free))
-        total = np.zeros(shape if omega is None else (len(omega), *shape), dtype=complex)
-        for station in self.stations:
-            rows, axes = self.across(station), self.axes(station)
-            local = self.share(station) * self.part(station, omega)
-            turned = np.einsum("ia,...a,ja->...ij", axes, local, axes)
-            total += rows.T @ turned @ rows
-        if omega is not None and with_gravity:
-            total += self.dynamic_gravity
-        for connection in self.brief.connections:
-            position = np.array(connection.position)
-            on = body_of(self.brief, connection.on)
-            rows = self.place(on, position) - self.place(connection.to, position)
-            total += rows.T @ (connection_stiffness(connection, omega)[..., :, None] * rows)
-        if self.floor is not None:
-            own = self.floor.stiffness if omega is None else floor_spring(self.floor, omega)
-            total[..., self.floor_vertical, self.floor_vertical] += own
-        if self.elastic is not None:
-            modal = range(self._modal.start, self._modal.stop)
-            circular = 2.0 * np.pi * self.elastic.modes.frequency
-            total[..., modal, modal] += circular**2
-            if omega is not None:
-                ratio, loss = self.elastic.modes.damping_ratio, self.elastic.modes.loss_factor
-                total[..., modal, modal] += 2j * ratio * circular * omega[:, None]
-                total[..., modal, modal] += 0.0 if loss is None else 1j * loss * circular**2
-        return total
+        straight = self.straight if omega is not None and with_gravity and len(omega) > FEW else None
+        if straight is None or omega is None:
+            return assembled_stiffness(self, omega, with_gravity)
+        return np.asarray(straight[0] + 1j * omega[:, None, None] * straight[1])
+
+    @cached_property
+    def straight(self) -> tuple[Complexes, Floats] | None:
+        """Matrices (N, N) of which the dynamic stiffness is K + j omega C, None where it has a law of its own."""
+        return straight_stiffness(self)
 
     def part(self, station: Station, omega: Floats | None) -> Complexes:
         """One part's listed stiffness at a station: static (3,), or complex dynamic (F, 3) at its working load."""
@@ -384,13 +374,3 @@ class DirectMachine:
         vector = self.place(node, np.array(tone.position)).T @ np.array(tone.force)
         vector = vector + self.turn(node).T @ np.array(tone.moment)
         return growth * vector, np.zeros((len(omega), size), dtype=complex)
-
-
-def connection_stiffness(connection: Connection, omega: Floats | None) -> Complexes:
-    """A given connection's stiffness along global axes: static (3,), or complex dynamic (F, 3)."""
-    dynamic = np.array(connection.stiffness)
-    if omega is None:
-        static = connection.stiffness_static
-        return (dynamic if static is None else np.array(static)).astype(complex)
-    lossy = dynamic * (1.0 + 1j * (connection.loss_factor or 0.0))
-    return np.asarray(lossy + 1j * omega[:, None] * np.array(connection.viscous or (0.0, 0.0, 0.0)))

@@ -54,11 +54,9 @@ def part_stiffness(
     the peak axial deflection at which it works. Beyond the ends of an amplitude table its end values hold.
     """
     if omega is None:
-        return np.asarray(
-            np.nan_to_num(np.array(mount.stiffness_static, dtype=float)).astype(complex), dtype=complex
-        )
-    listed = np.nan_to_num(np.array(mount.stiffness_dynamic, dtype=float)) * np.array([1.0, 1.0, axial_ratio])
-    viscous = 1j * omega[:, None] * np.nan_to_num(np.array(mount.viscous, dtype=float))
+        return _known(mount.stiffness_static).astype(complex)
+    listed = _known(mount.stiffness_dynamic) * np.array([1.0, 1.0, axial_ratio])
+    viscous = 1j * omega[:, None] * _known(mount.viscous)
     if mount.law_table is not None:
         table = table_physics(mount.law_table, temperature)
         # Excitation outside the table is refused at the door; a search for modes takes the end value there.
@@ -66,7 +64,7 @@ def part_stiffness(
         inside = np.minimum(np.maximum(omega, low * (1.0 + 1e-12)), high * (1.0 - 1e-12))
         ratio = table_stiffness(table, inside, temperature)
         return np.asarray(listed * ratio[:, None] + viscous, dtype=complex)
-    constant = listed * (1.0 + 1j * np.nan_to_num(np.array(mount.loss_factor, dtype=float)))
+    constant = listed * (1.0 + 1j * _known(mount.loss_factor))
     if mount.amplitude_table is not None and amplitude is not None:
         steps, ratios, losses = (
             np.array(column, dtype=float)
@@ -86,6 +84,11 @@ def part_stiffness(
             constant + viscous * series / np.where(series > 0.0, series + viscous, 1.0), dtype=complex
         )
     return np.asarray(constant + viscous, dtype=complex)
+
+
+def _known(values: Sequence[float | None]) -> Floats:
+    """Return values (3,) as numbers, nothing where one is not stated."""
+    return np.array([0.0 if value is None or np.isnan(value) else value for value in values], dtype=float)
 
 
 def rest_on_laws(

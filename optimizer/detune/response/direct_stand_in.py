@@ -19,8 +19,9 @@ from detune.brief.forcing.base import Tone, Transient
 from detune.ground.units import show
 from detune.response.direct import DirectMachine
 from detune.response.direct_modes import DirectModes
-from detune.response.direct_motion import DirectMotion, lagging, modal_damping, pattern_of
+from detune.response.direct_motion import DirectMotion, lagging, pattern_of
 from detune.response.direct_random import mesh
+from detune.response.direct_stepping import Stepping
 from detune.response.direct_supremum import Pairs
 from detune.response.direct_views import DirectTone
 
@@ -156,7 +157,7 @@ def _with_stand_in(
 ) -> DirectMotion:
     """Return the harmonic motion with modal viscous damping, as calculations in time have it."""
     w = omega[:, None, None]
-    matrix = found.stiffness + 1j * w * modal_damping(found) - w**2 * found.mass
+    matrix = found.stiffness + 1j * w * Stepping(found).damping - w**2 * found.mass
     moved = np.linalg.solve(matrix, load[..., None])[..., 0]
     turn = 1j * omega[:, None]
     rates = np.stack([moved, turn * moved, turn**2 * moved])

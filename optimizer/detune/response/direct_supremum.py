@@ -1,6 +1,6 @@
 """The assessor's supremum of a response over continuous speed ranges."""
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -141,28 +141,19 @@ def coherent_sets(tones: Iterable[Tone]) -> list[tuple[Tone, ...]]:
     return sets
 
 
-def unit_load_suprema(
-    machine: DirectMachine,
-    found: DirectModes,
-    condition: Condition,
-    allowable: HarmonicAllowable,
-    pairs: Pairs,
-) -> Supremum | None:
-    """Return the suprema under the allowable's unit load over the excitation intervals, None if none remains."""
+def unit_tones(machine: DirectMachine, condition: Condition, allowable: HarmonicAllowable) -> Iterator[Tone]:
+    """Yield the allowable's unit load over each excitation interval, as far as the allowable looks at it."""
     unit = allowable.unit_load()
     assert unit is not None
     body = machine.brief.bodies[0].name
     centre = machine.centres[body]
     along = (complex(unit[1][0]), complex(unit[1][1]), complex(unit[1][2]))
-    best: Supremum | None = None
-    tones = tones_of(machine.brief, condition)
-    found = beside_reference(machine, found, allowable, tones)
-    bands = {(tone.order * tone.low, tone.order * tone.high) for tone in tones}
+    bands = {(tone.order * tone.low, tone.order * tone.high) for tone in tones_of(machine.brief, condition)}
     for low, high in sorted(bands):
         low = max(low, allowable.lowest_frequency())
         if high < low:
             continue
-        tone = Tone(
+        yield Tone(
             source="unit load",
             speed="unit load",
             order=1.0,
@@ -173,7 +164,20 @@ def unit_load_suprema(
             force=along if unit[0] == "force" else (0j, 0j, 0j),
             base=along if unit[0] == "base" else None,
         )
-        part = _supremum(machine, found, pairs, [(tone,)], (low, high))
+
+
+def unit_load_suprema(
+    machine: DirectMachine,
+    found: DirectModes,
+    condition: Condition,
+    allowable: HarmonicAllowable,
+    pairs: Pairs,
+) -> Supremum | None:
+    """Return the suprema under the allowable's unit load over the excitation intervals, None if none remains."""
+    best: Supremum | None = None
+    found = beside_reference(machine, found, allowable, tones_of(machine.brief, condition))
+    for tone in unit_tones(machine, condition, allowable):
+        part = _supremum(machine, found, pairs, [(tone,)], (tone.low, tone.high))
         if best is None:
             best = part
             continue

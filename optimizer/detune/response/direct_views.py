@@ -9,8 +9,9 @@ from numpy.typing import NDArray
 from detune.brief.brief import body_of
 from detune.brief.forcing.base import Tone
 from detune.brief.machine import Station
-from detune.response.direct import FLOOR, DirectMachine, connection_stiffness
+from detune.response.direct import FLOOR, DirectMachine
 from detune.response.direct_floor import between_stations, direct_floor_ratio
+from detune.response.direct_stiffness import connection_stiffness, moving_stiffness, restoring
 from detune.response.floor_table import floor_spring
 from detune.response.gravity import NEVER
 from detune.response.solve import solve_or_resonate
@@ -98,11 +99,9 @@ class DirectTone:
     omega: Floats
 
     @cached_property
-    def _solved(self) -> tuple[Complexes, Complexes, Complexes]:
-        """Displacements (F, N), stiffness (F, N, N) without inertia, and load (F, N)."""
+    def _solved(self) -> tuple[Complexes, Complexes]:
+        """Displacements (F, N) and load (F, N)."""
         machine, omega, free = self.machine, self.omega[0], self.machine.free
-        stiffness = machine.stiffness(omega)
-        dynamic = stiffness - omega[:, None, None] ** 2 * machine.mass
         load = np.zeros((len(omega), len(free)), dtype=complex)
         q = np.zeros_like(load)
         for tone in self.tones:
@@ -115,10 +114,15 @@ class DirectTone:
                 load[:, machine.floor_vertical] += own * motion[:, machine.floor_vertical]
                 motion[:, machine.floor_vertical] = 0.0
             q += motion
-        right = (load - np.einsum("fij,fj->fi", dynamic[:, :, ~free], q[:, ~free]))[:, free]
-        own = stiffness[:, free][:, :, free]
-        q[:, free] = solve_or_resonate(dynamic[:, free][:, :, free], own, right)
-        return q, stiffness, load
+        right = load
+        if np.any(q):
+            # Prescribed motion moves the rest through the stiffness and the mass that they share.
+            held = restoring(machine, omega, q, slice(None)) - omega[:, None] ** 2 * (q @ machine.mass.T)
+            right = load - held
+        own = moving_stiffness(machine, omega)
+        inertia = omega[:, None, None] ** 2 * machine.mass[np.ix_(free, free)]
+        q[:, free] = solve_or_resonate(own - inertia, own, right[:, free])
+        return q, load
 
     @property
     def q(self) -> Complexes:
@@ -126,7 +130,7 @@ class DirectTone:
 
     @property
     def load(self) -> Complexes:
-        return self._solved[2]
+        return self._solved[1]
 
     def _rate(self, rate: int) -> Complexes:
         return np.asarray((1j * self.omega[..., None]) ** rate, dtype=complex)
@@ -145,8 +149,8 @@ class DirectTone:
 
     def station_deflection(self, station: str, rate: int = 0) -> Complexes:
         stated = station_named(self.machine, station)
-        local = self.q @ self.machine.across(stated).T @ self.machine.axes(stated)
-        return self._rate(rate) * local[None]
+        local = (self.q @ self.machine.deflection_rows(stated).T)[None]
+        return local if rate == 0 else self._rate(rate) * local
 
     def station_force(self, station: str) -> Complexes:
         stated = station_named(self.machine, station)
@@ -155,8 +159,8 @@ class DirectTone:
 
     def total_force(self, surface: str) -> Complexes:
         """The reaction of the floor node, turned round: what it receives."""
-        q, stiffness, _ = self._solved
-        received = -np.einsum("fij,fj->fi", stiffness[:, self.machine.floor_axes, :], q)
+        q = self.q
+        received = -restoring(self.machine, self.omega[0], q, self.machine.floor_axes)
         floor = self.machine.floor
         if floor is not None:
             # The node's own spring to the ground is part of the matrix; without it, what the machine puts on
@@ -175,11 +179,11 @@ class DirectTone:
         Put in: Re(load . conj(velocity)) / 2 over all freedoms, prescribed ones with their reaction.
         Dissipated: the same sum over each part, connection and the floor from its own deflection.
         """
-        q, stiffness, load = self._solved
+        q, load = self._solved
         omega = self.omega[0]
         velocity = 1j * omega[:, None] * q
-        dynamic = stiffness - omega[:, None, None] ** 2 * self.machine.mass
-        acting = np.where(self.machine.free, load, np.einsum("fij,fj->fi", dynamic, q))
+        inertia = omega[:, None] ** 2 * (q @ self.machine.mass.T)
+        acting = np.where(self.machine.free, load, restoring(self.machine, omega, q, slice(None)) - inertia)
         put_in = 0.5 * np.sum(acting * velocity.conj(), axis=1).real
         lost = np.zeros(len(omega))
         for station in self.machine.stations:

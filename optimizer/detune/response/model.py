@@ -20,7 +20,13 @@ from detune.brief.structure import Structure
 from detune.parts.kinds.mount import Mount, MountArrays, mount_arrays
 from detune.parts.laws import ROOM_TEMPERATURE
 from detune.physics.orientation import axes_from_direction
-from detune.response.absorbers import AbsorberRows, absorber_freedoms, absorber_places, absorber_rows
+from detune.response.absorbers import (
+    AbsorberPlace,
+    AbsorberRows,
+    absorber_freedoms,
+    absorber_places,
+    absorber_rows,
+)
 from detune.response.ballast import NOTHING, BallastStep, ladder
 from detune.response.damping_readings import read_as
 from detune.response.frame import FLOOR, STRUCTURE, ConnectionRows, Frame, StationRows
@@ -116,16 +122,10 @@ def build_model(
     gravity = np.array(apparent_gravity(state))
     mass, weight = with_ballast(brief, frame, base_mass, properties, steps, gravity)
     springs = equal_springs(frame, stations, connections)
+    geometric = geometric_stiffness_of(brief, springs, properties, steps, weight, gravity)
     places = absorber_places(brief, frame)
-    stations += tuple(
-        absorber_station(brief, absorber, place, stiffness_factor(state, absorber.name))
-        for absorber, place in zip(brief.absorbers, places, strict=True)
-    )
-    temperature = ROOM_TEMPERATURE if state is None else state.temperature
-    groups = tuple(
-        _group(name, mounts, reading, _spread(stations, index, frame.count), temperature)
-        for index, (name, mounts) in enumerate(zip(brief.groups, candidates, strict=True))
-    )
+    stations += _absorber_stations(brief, places, state)
+    groups = _groups(brief, stations, candidates, reading, state, frame.count)
     absorbers: tuple[AbsorberRows, ...] = ()
     if places:
         units = [unit_geometric(brief, springs, place.body, place.position, gravity) for place in places]
@@ -149,7 +149,7 @@ def build_model(
         ballast_mass=np.array([step.mass for step in steps]),
         ballast_cost=np.array([step.cost for step in steps]),
         creep=0.0 if state is None else state.creep,
-        geometric=geometric_stiffness_of(brief, springs, properties, steps, weight, gravity),
+        geometric=geometric,
         with_gravity_stiffness=brief.gravity_stiffness,
         assumed=_assumed(brief, properties, floor, structure),
         ballast=steps,
@@ -275,6 +275,15 @@ def _station(brief: Brief, frame: Frame, station: Station, state: State | None) 
     )
 
 
+def _absorber_stations(
+    brief: Brief, places: tuple[AbsorberPlace, ...], state: State | None
+) -> tuple[StationRows, ...]:
+    return tuple(
+        absorber_station(brief, absorber, place, stiffness_factor(state, absorber.name))
+        for absorber, place in zip(brief.absorbers, places, strict=True)
+    )
+
+
 def stiffness_factor(state: State | None, group: str) -> float:
     """Return what a state makes of the stiffness of the parts of a group."""
     if state is None or (state.groups is not None and group not in state.groups):
@@ -307,6 +316,21 @@ def _body_mass(frame: Frame, body: str, properties: MassProperties) -> Floats:
     move = frame.motion_rows(body, properties.centre)
     turn = frame.rotation_rows(body)
     return properties.mass * move.T @ move + turn.T @ properties.inertia @ turn
+
+
+def _groups(
+    brief: Brief,
+    stations: tuple[StationRows, ...],
+    candidates: tuple[tuple[Mount, ...], ...],
+    reading: str | None,
+    state: State | None,
+    n: int,
+) -> tuple[Group, ...]:
+    temperature = ROOM_TEMPERATURE if state is None else state.temperature
+    return tuple(
+        _group(name, mounts, reading, _spread(stations, index, n), temperature)
+        for index, (name, mounts) in enumerate(zip(brief.groups, candidates, strict=True))
+    )
 
 
 def _group(

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from detune.brief.allowable.base import HarmonicAllowable, SumOfOrders, tone_amplitude
 from detune.physics.simulation import DefectiveModes, Motion, StateModes, state_modes
-from detune.physics.sweep import sweep_envelope
+from detune.physics.sweep import unit_sweep
 from detune.response.assemble import Dynamic
 from detune.response.causal_design import causal_matrices
 from detune.response.designs import Designs
@@ -96,8 +96,9 @@ def _passage(
 
     def amplitudes(times: Floats) -> Floats:
         sums = [SumOfOrders(allowable.statistic()) for allowable, _ in pairs]
+        known: dict[tuple[float, int], Complexes] = {}
         for loads in passage.family.sets:
-            view, speed = _swept_view(model, dynamic, system, passage, loads, times)
+            view, speed = _swept_view(model, dynamic, system, passage, loads, times, known)
             for row, (allowable, place) in enumerate(pairs):
                 observed = allowable.weighted(allowable.observed(view, place), speed[None] / TWO_PI)
                 tone = tone_amplitude(observed, allowable.along(), allowable.statistic())[0]
@@ -134,17 +135,25 @@ def _swept_view(
     passage: Passage,
     loads: tuple[Load, ...],
     times: Floats,
+    known: dict[tuple[float, int], Complexes],
 ) -> tuple[MotionView, Floats]:
-    """Return the complex envelope of one design at times (T,), and the tone's speed (T,) in rad/s."""
+    """Return the complex envelope of one design at times (T,), and the tone's speed (T,) in rad/s.
+
+    known: what one unit on each mode comes to at these times, by order and power; sets of one order share it.
+    """
     order = loads[0].order
     start, end = TWO_PI * order * passage.start, TWO_PI * order * passage.end
-    at, speeds = np.array([0.0, passage.time]), np.array([start, end])
+    modes = system.modes
     moved = np.zeros((2, len(times), model.frame.count), dtype=complex)
     acting = np.zeros((len(times), model.frame.count), dtype=complex)
     speed = start + (end - start) * times / passage.time
     turned = np.exp(1j * (start * times + 0.5 * (end - start) / passage.time * times**2))
     for load in loads:
-        moved += np.stack(sweep_envelope(system.modes, load.vector, at, speeds, load.power, times))
+        key = (order, load.power)
+        if key not in known:
+            known[key] = unit_sweep(modes, (start, end), passage.time, load.power, times)
+        each = known[key] * (modes.loads @ np.asarray(load.vector, dtype=complex))
+        moved += np.stack([each @ modes.shapes.T, (each * modes.poles) @ modes.shapes.T])
         acting += (turned * speed**load.power)[:, None] * load.vector
     held = moved[0] @ system.stiffness.T + moved[1] @ system.damping.T
     acceleration = np.linalg.solve(dynamic.mass[0], (acting - held).T).T

@@ -1,5 +1,6 @@
 """Static equilibrium of designs whose parts do not have straight load-deflection lines."""
 
+from collections import deque
 from dataclasses import dataclass
 
 import numpy as np
@@ -31,10 +32,28 @@ class WorkingPoint:
         return WorkingPoint(self.q[index], self.force[:, index], self.tangent[:, index])
 
 
+# Every stage of a problem asks for the rest of the same designs: the last few batches are remembered.
+_REMEMBERED = 8
+_known: deque[tuple[Model, Designs, WorkingPoint]] = deque(maxlen=_REMEMBERED)
+
+
 def working_point(model: Model, designs: Designs) -> WorkingPoint | None:
     """Return the working point of a batch, None where every part is a straight spring (Newton; physics.load_curve)."""
     if not any(group.laws is not None and group.laws.with_load for group in model.groups):
         return None
+    for own, batch, point in tuple(_known):
+        if own is model and _alike(batch, designs):
+            return point
+    found = _found(model, designs)
+    _known.append((model, Designs(designs.part.copy(), designs.step.copy()), found))
+    return found
+
+
+def _alike(one: Designs, other: Designs) -> bool:
+    return np.array_equal(one.part, other.part) and np.array_equal(one.step, other.step)
+
+
+def _found(model: Model, designs: Designs) -> WorkingPoint:
     count, n = designs.count, model.frame.count
     found = WorkingPoint(
         np.full((count, n), np.nan),

@@ -15,8 +15,8 @@ from dataclasses import dataclass
 
 from detune.sizing.slice_kernels import Segment, Slices
 
-GAP = 1e-7
-BOXES = 3000
+GAP = 1e-6
+BOXES = 2000
 # A position that cannot beat the best of the others is left after so many boxes, as near to its own best as
 # it has come.
 HOPELESS = 400

@@ -20,6 +20,10 @@ Floats = NDArray[np.float64]
 # Margins (R, N) at points x (N,), y (N,); met where zero or more.
 Margins = Callable[[Floats, Floats], Floats]
 TOLERANCE = 1e-4
+# A turn (radians) from which on points are put between those of a line once more.
+BEND = 0.06
+# How often the chord on which a line begins or ends to bind is halved.
+ENDS = 4
 
 
 @dataclass(frozen=True)
@@ -152,23 +156,45 @@ def _pieces(
 ) -> list[Boundary]:
     lines = [(row, points[[index[row, *key] for key in chain]], closed) for row, chain, closed in found]
     reach = 0.5 * max(1.0 / (x.size - 1), 1.0 / (y.size - 1))
-    lines = _with_middles(margins, picture, lines, reach)
+    # Between all points once, then only where the line bends, and where it begins or ends to bind.
+    for bend in (0.0, BEND, BEND):
+        lines = _with_middles(margins, picture, lines, reach, [_bent(line, bend) for _, line, _ in lines])
+    binding = _binding(margins, picture, lines)
+    for _ in range(ENDS):
+        changes = [own[:-1] != own[1:] for own in binding]
+        lines = _with_middles(margins, picture, lines, reach, changes)
+        binding = _binding(margins, picture, lines)
+    return [
+        Boundary(names[row], picture.outward(line.copy()), closed, own)
+        for (row, line, closed), own in zip(lines, binding, strict=True)
+    ]
+
+
+def _binding(
+    margins: Margins, picture: _Picture, lines: list[tuple[int, Floats, bool]]
+) -> list[NDArray[np.bool_]]:
+    """For each line whether every other requirement is met at its points (n,)."""
     every = picture.outward(np.concatenate([line for _, line, _ in lines]))
     all_margins = margins(every[:, 0], every[:, 1])
     result, first = [], 0
-    for row, line, closed in lines:
-        here = slice(first, first + len(line))
+    for row, line, _ in lines:
+        others = np.delete(all_margins[:, first : first + len(line)], row, axis=0)
         first += len(line)
-        others = np.delete(all_margins[:, here], row, axis=0)
-        binding = np.all(others >= -1e-6, axis=0) if len(others) else np.ones(len(line), dtype=bool)
-        result.append(Boundary(names[row], every[here], closed, binding))
+        result.append(np.all(others >= -1e-6, axis=0) if len(others) else np.ones(len(line), dtype=bool))
     return result
 
 
 def _with_middles(
-    margins: Margins, picture: _Picture, lines: list[tuple[int, Floats, bool]], reach: float
+    margins: Margins,
+    picture: _Picture,
+    lines: list[tuple[int, Floats, bool]],
+    reach: float,
+    wanted: list[NDArray[np.bool_]],
 ) -> list[tuple[int, Floats, bool]]:
-    """Put between any two points one more, found along the normal of their chord where it crosses there."""
+    """Put between two points one more, found along the normal of their chord where it crosses there.
+
+    `wanted`: between which points of each line.
+    """
     middle = np.concatenate([0.5 * (line[:-1] + line[1:]) for _, line, _ in lines])
     chord = np.concatenate([line[1:] - line[:-1] for _, line, _ in lines])
     row = np.concatenate([np.full(len(line) - 1, r, dtype=np.intp) for r, line, _ in lines])
@@ -176,9 +202,13 @@ def _with_middles(
     length = np.linalg.norm(normal, axis=1)
     normal = normal / np.maximum(length, 1e-30)[:, None] * np.minimum(0.5 * length, reach)[:, None]
     a, b = np.clip(middle - normal, 0.0, 1.0), np.clip(middle + normal, 0.0, 1.0)
-    ends = [picture.outward(side.copy()) for side in (a, b)]
-    va, vb = (margins(side[:, 0], side[:, 1])[row, np.arange(len(row))] for side in ends)
-    crossing = ((va >= 0.0) != (vb >= 0.0)) & (length > TOLERANCE)
+    bent = np.concatenate(wanted)
+    va, vb = np.ones(len(row)), np.ones(len(row))
+    if bent.any():
+        for value, side in ((va, a), (vb, b)):
+            place = picture.outward(side[bent].copy())
+            value[bent] = margins(place[:, 0], place[:, 1])[row[bent], np.arange(int(bent.sum()))]
+    crossing = ((va >= 0.0) != (vb >= 0.0)) & (length > TOLERANCE) & bent
     if crossing.any():
         c = crossing
         middle[c] = _closed_in(margins, picture, a[c], b[c], va[c], vb[c], row[c], 8)
@@ -193,3 +223,13 @@ def _with_middles(
             woven.append(line[number + 1])
         result.append((r, np.array(woven), closed))
     return result
+
+
+def _bent(line: Floats, bend: float) -> NDArray[np.bool_]:
+    """Whether a line (n, 2) turns by `bend` or more at an end of each of its n - 1 chords."""
+    if bend <= 0.0:
+        return np.ones(len(line) - 1, dtype=bool)
+    chord = np.diff(line, axis=0)
+    angle = np.unwrap(np.arctan2(chord[:, 1], chord[:, 0]))
+    turns = np.concatenate([[0.0], np.abs(np.diff(angle)), [0.0]]) >= bend
+    return np.asarray(turns[:-1] | turns[1:])

@@ -17,6 +17,8 @@ from typing import Any, NamedTuple
 # Kinds of a limit: at one line, over a range that its ends and one parabola state whole, over any other range.
 LINE, CLOSED, OPEN = 0, 1, 2
 LINEAR, TRANSMISSIBILITY, SEPARATION = 0, 1, 2
+# The share of a line at one u (see `Bench.pool`).
+AT_LINE = 0.0
 # A piece of an envelope brings its end, two crossings, and at most eight stationary points of the goal.
 POINTS_PER_ROW = 44
 
@@ -58,7 +60,10 @@ class Room(NamedTuple):
 
 
 class Bench(NamedTuple):
-    """Work space. `pool` (P, 2) holds the lines in use as (limit, u) and outlives a slice; `level` scales at its mass.
+    """Work space. `pool` (P, 3) outlives a slice; `level` are the scales at its mass.
+
+    An entry of the pool is a line at u (limit, u, AT_LINE), or the tangent at k of what a range asks for at u = share k
+    (limit, k, share).
 
     A row (R, 7) says gamma >= p0 + p1 k + p2 k^2 (sense 1), <= (sense -1), or p >= 0 whatever gamma (sense 0), for k
     from FROM to TO; CAUSE is its limit (-1 and -2: the damping bounds). Envelopes `lower`, `upper` and `spare` are
@@ -100,7 +105,7 @@ def pool(capacity: int, arrays: bool) -> Any:
     """Room for so many lines."""
     import numpy as np
 
-    return np.zeros((capacity, 2)) if arrays else [[0.0, 0.0] for _ in range(capacity)]
+    return np.zeros((capacity, 3)) if arrays else [[0.0, 0.0, 0.0] for _ in range(capacity)]
 
 
 _scratch = threading.local()

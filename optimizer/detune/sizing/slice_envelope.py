@@ -14,7 +14,7 @@ upper envelope of the rows from below and U the lower envelope of those from abo
       w_k k + w_d sqrt(p)/k + w_g p/k^2      p (w_k k^3 + w_g (p' k - 2 p))^2 = w_d^2 k^2 (p' k/2 - p)^2    (loss)
       T^2 = (k^2 + s p)/((k - u)^2 + s p)    a quadratic (the cubic terms cancel)
 
-All rows, not only those of the pieces, judge each cell and each point once more.
+All rows (`slice_rows`), not only those of the pieces, judge each cell and each point once more.
 """
 
 from __future__ import annotations
@@ -23,22 +23,14 @@ import math
 from typing import Any
 
 from detune.sizing.slice_data import (
-    BY_MASS,
-    CAUSE,
-    CLOSED,
     FROM,
-    HIGH,
-    KIND,
     LINEAR,
-    LOW,
     P0,
     P1,
     P2,
-    POWER,
     SENSE,
     SEPARATION,
     TO,
-    TRANSMISSION,
     Bench,
     Question,
     Room,
@@ -49,129 +41,6 @@ from detune.sizing.slice_response import quadratic_roots, roots_between
 SAME_ROOT = 1e-13
 
 # --- compiled below ---
-
-
-def closed_envelope(
-    question: Question, bench: Bench, i: int
-) -> tuple[bool, float, float, float, float, float]:
-    """(True, e0, e1, e2, k1, k2) where gamma >= e0 + e1 k + e2 k^2 on [k1, k2] is all that a range says there.
-
-    Maximising the bound at one u over u, with A^2 the level and unit mass:
-
-        loss factor, A^2            u = k                      e = A^2
-        loss factor, A^2 u          u = k + A^2/2              e = A^2 k + A^4/4
-        loss factor, A^2 u^2        u = k/(1 - A^2)            e = A^2 k^2/(1 - A^2)
-        loss factor, T > 1          u = k                      e = k^2/(T^2 - 1)
-        viscous, A^2 u              u = k                      e = A^2
-        viscous, A^2 u^2            u = k/sqrt(1 - A^2)        e = 2 k (1 - sqrt(1 - A^2))
-        viscous, T > 1              u = k sqrt(1 - 1/T^2)      e = 2 k (1 - sqrt(1 - 1/T^2)) T^2/(T^2 - 1)
-
-    In each the bound rises up to that u and falls after it (its derivative in u has one sign change), so its
-    supremum over the range is e(k) where u lies inside and the line at the nearer end where it does not.
-    """
-    level, power = bench.level[i], int(question.limits[i][POWER])
-    low, high = question.limits[i][LOW], question.limits[i][HIGH]
-    slope, offset, e0, e1, e2 = 0.0, 0.0, 0.0, 0.0, 0.0
-    if question.limits[i][TRANSMISSION] == 1:
-        if level < 1.0:
-            if question.viscous == 0:
-                slope, e2 = 1.0, level / (1.0 - level)
-            else:
-                slope = math.sqrt(1.0 - level)
-                e1 = 2.0 * (1.0 - slope) / (1.0 - level)
-    elif question.viscous == 0:
-        if power == 0:
-            slope, e0 = 1.0, level
-        elif power == 1:
-            slope, offset, e0, e1 = 1.0, 0.5 * level, 0.25 * level * level, level
-        elif level < 1.0:
-            slope, e2 = 1.0 / (1.0 - level), level / (1.0 - level)
-    elif power == 1:
-        slope, e0 = 1.0, level
-    elif level < 1.0:
-        root = math.sqrt(1.0 - level)
-        slope, e1 = 1.0 / root, 2.0 * (1.0 - root)
-    if slope == 0.0:
-        return False, 0.0, 0.0, 0.0, 0.0, 0.0
-    return True, e0, e1, e2, (low - offset) / slope, (high - offset) / slope
-
-
-def line_row(question: Question, bench: Bench, row: int, i: int, u: float, mass: float) -> float:
-    """Write the row of limit i at one u and mass; returns where in k the rows of two masses m and 1 are one.
-
-    With s = u or 1: receptance p = (level u^q [m^2] - (k - m u)^2)/s; transmission p = (level u^r k^2 - (k - m u)^2)/(s
-    free). For fixed k the left side of a limit is convex in m, or it falls with m, so over an interval of masses the
-    heavier end is the looser one for k below that place and the lighter end above it.
-    """
-    own = bench.rows[row]
-    level = bench.level[i] * u ** int(question.limits[i][POWER])
-    loss = u if question.viscous == 1 else 1.0
-    a0, a1, a2, free = -mass * mass * u * u, 2.0 * mass * u, -1.0, 1.0
-    same = 0.5 * (1.0 + mass) * u
-    if question.limits[i][TRANSMISSION] == 1.0:
-        a2, free = level - 1.0, 1.0 - level
-    elif question.limits[i][BY_MASS] == 0.0:
-        a0 += level * mass * mass
-        same = 0.5 * (1.0 + mass) * (u * u - level) / u
-    else:
-        a0 += level
-    own[SENSE] = 1.0 if free > 0.0 else (-1.0 if free < 0.0 else 0.0)
-    # A row without damping says -p >= 0 of its numerator.
-    divide = loss * free if free != 0.0 else -1.0
-    own[P0], own[P1], own[P2] = a0 / divide, a1 / divide, a2 / divide
-    own[FROM], own[TO], own[CAUSE] = -math.inf, math.inf, i
-    return float(same)
-
-
-def fill_rows(question: Question, room: Room, bench: Bench, count: int) -> int:
-    """Write the rows of all lines in use, of the damping bounds and of the closed envelopes; their number.
-
-    Over an interval of masses each line has two rows, one on either side of where they are one, and no closed envelope.
-    """
-    r = 0
-    for line in range(count):
-        i, u = int(bench.pool[line][0]), bench.pool[line][1]
-        line_row(question, bench, r, i, u, 1.0)
-        r += 1
-        if room.ratio < 1.0:
-            same = line_row(question, bench, r, i, u, room.ratio)
-            bench.rows[r - 1][TO], bench.rows[r][FROM] = same, same
-            r += 1
-    for bound in range(2):
-        damping = room.least_damping if bound == 0 else room.most_damping
-        bench.rows[r][P0], bench.rows[r][P1], bench.rows[r][P2] = 0.0, 0.0, 0.0
-        if question.viscous == 1:
-            bench.rows[r][P0] = damping * damping
-        else:
-            bench.rows[r][P2] = damping * damping
-        bench.rows[r][SENSE] = 1 if bound == 0 else -1
-        bench.rows[r][FROM], bench.rows[r][TO], bench.rows[r][CAUSE] = -math.inf, math.inf, -1 - bound
-        r += 1
-    for i in range(len(question.limits)):
-        if question.limits[i][KIND] == CLOSED and room.ratio == 1.0:
-            there, e0, e1, e2, k1, k2 = closed_envelope(question, bench, i)
-            if there:
-                bench.rows[r][P0], bench.rows[r][P1], bench.rows[r][P2], bench.rows[r][SENSE] = e0, e1, e2, 1
-                bench.rows[r][FROM], bench.rows[r][TO], bench.rows[r][CAUSE] = k1, k2, i
-                r += 1
-    return r
-
-
-def damping_interval(bench: Bench, rows: int, k: float) -> tuple[float, float, int, int]:
-    """[L, U] of gamma at k and the rows that set them; L > U where no damping serves."""
-    low, high, lower, upper = 0.0, math.inf, -1, -1
-    for r in range(rows):
-        if bench.rows[r][FROM] <= k <= bench.rows[r][TO]:
-            p = bench.rows[r][P0] + k * (bench.rows[r][P1] + k * bench.rows[r][P2])
-            if bench.rows[r][SENSE] > 0:
-                if p > low or lower < 0:
-                    low, lower = max(p, 0.0), r
-            elif bench.rows[r][SENSE] < 0:
-                if p < high:
-                    high, upper = p, r
-            elif p < 0.0:
-                high, upper = -math.inf, r
-    return low, high, lower, upper
 
 
 def emit(pieces: Any, count: int, right: float, row: int) -> int:
@@ -328,6 +197,30 @@ def value_at(question: Question, room: Room, k: float, low: float, high: float) 
     return math.sqrt(best), at
 
 
+def crossings(bench: Bench, lower: int, upper: int, count: int) -> int:
+    """Add the crossings of the pieces of L with those of U to `bench.points`; the new number of points."""
+    points = bench.points
+    i, j = 0, 0
+    while i < lower and j < upper:
+        low = max(bench.lower[i][0], bench.upper[j][0])
+        high = min(bench.lower[i + 1][0], bench.upper[j + 1][0])
+        a, b = int(bench.lower[i][1]), int(bench.upper[j][1])
+        if a >= 0 and b >= 0 and high > low:
+            one, two = bench.rows[a], bench.rows[b]
+            first, second = quadratic_roots(one[P2] - two[P2], one[P1] - two[P1], one[P0] - two[P0])
+            if low < first < high:
+                points[count] = first
+                count += 1
+            if low < second < high:
+                points[count] = second
+                count += 1
+        if bench.lower[i + 1][0] <= bench.upper[j + 1][0]:
+            i += 1
+        else:
+            j += 1
+    return count
+
+
 def collect(question: Question, room: Room, bench: Bench, rows: int, left: float, right: float) -> int:
     """All cuts of [left, right], sorted and distinct, in `bench.points`; their number."""
     points = bench.points
@@ -351,24 +244,7 @@ def collect(question: Question, room: Room, bench: Bench, rows: int, left: float
         for n in range(len(question.peaks)):
             points[count] = question.peaks[n]
             count += 1
-    i, j = 0, 0
-    while i < lower and j < upper:
-        low = max(bench.lower[i][0], bench.upper[j][0])
-        high = min(bench.lower[i + 1][0], bench.upper[j + 1][0])
-        a, b = int(bench.lower[i][1]), int(bench.upper[j][1])
-        if a >= 0 and b >= 0 and high > low:
-            one, two = bench.rows[a], bench.rows[b]
-            first, second = quadratic_roots(one[P2] - two[P2], one[P1] - two[P1], one[P0] - two[P0])
-            if low < first < high:
-                points[count] = first
-                count += 1
-            if low < second < high:
-                points[count] = second
-                count += 1
-        if bench.lower[i + 1][0] <= bench.upper[j + 1][0]:
-            i += 1
-        else:
-            j += 1
+    count = crossings(bench, lower, upper, count)
     for side in range(2):
         pieces = bench.lower if side == 0 else bench.upper
         for t in range(lower if side == 0 else upper):

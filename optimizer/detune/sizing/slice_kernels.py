@@ -1,12 +1,13 @@
 """Slices of one problem: its scaled question, the lines in use, and the rules that solve them, interpreted or compiled.
 
-The rules are one text (`slice_response`, `slice_envelope`, `slice_exchange`). Compiling takes half a minute once and
-loading the compiled form a second, so a program that solves a few slices interprets them.
+The rules are one text (`slice_response`, `slice_rows`, `slice_envelope`, `slice_holes`, `slice_exchange`). Compiling
+takes half a minute once and loading the compiled form a second, so a program that solves a few slices interprets them.
 """
 
 from __future__ import annotations
 
 import functools
+import hashlib
 import math
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -15,35 +16,26 @@ from typing import Any, Literal
 from detune.ground import compiled
 from detune.sizing import slice_exchange
 from detune.sizing.slice_data import (
-    CLOSED,
-    HIGH,
-    KIND,
     LAST,
-    LINE,
     LINEAR,
-    LOW,
-    OPEN,
-    SEPARATION,
-    TRANSMISSIBILITY,
     Bench,
     Question,
     Room,
     bench,
     pool,
 )
+from detune.sizing.slice_question import Scales, question_of, seeds
 from detune.sizing.statement import (
     STANDARD_GRAVITY,
-    DampingKind,
     OneAxisProblem,
-    PowerForm,
     excitations,
-    power_form,
 )
 
 Form = Literal["auto", "plain", "compiled"]
 # Interpreted slices (2 ms each) of this process after which compiling, or loading what was compiled before, pays.
-WORTH_COMPILING, WORTH_LOADING = 20_000, 500
-SEEDS = 7
+WORTH_COMPILING, WORTH_LOADING = 10_000, 300
+# A pool with so many lines beyond its first ones keeps only those in use: every slice asks all of them.
+MANY = 40
 HEADER = '''"""Generated rules of one-axis sizing; safe to delete."""
 from __future__ import annotations
 
@@ -53,8 +45,9 @@ from numba import njit
 
 from detune.sizing.slice_data import *
 from detune.sizing.slice_envelope import SAME_ROOT
-from detune.sizing.slice_exchange import CELLS, ROUNDS, TOUCH
-from detune.sizing.slice_response import EPSILON, VIOLATION
+from detune.sizing.slice_exchange import MET, ROUNDS
+from detune.sizing.slice_holes import CELLS, FAR, TOUCH
+from detune.sizing.slice_response import EPSILON, NEITHER, VIOLATION
 
 '''
 _solved = [0]
@@ -65,9 +58,11 @@ _marked: list[bool] = []
 def _text() -> tuple[str, Path]:
     """The compiled module's text and file."""
     here = Path(__file__).parent
-    names = ("slice_response.py", "slice_envelope.py", "slice_exchange.py")
+    names = ("slice_response.py", "slice_rows.py", "slice_envelope.py", "slice_holes.py", "slice_exchange.py")
     texts = [(here / name).read_text(encoding="utf-8") for name in names]
-    text = HEADER + compiled.decorated(texts, '@njit(cache=True, error_model="numpy")')
+    # The constants above the marks are frozen into the compiled code: the name of its file changes with them.
+    digest = hashlib.sha256("".join(texts).encode()).hexdigest()
+    text = f"# {digest}\n" + HEADER + compiled.decorated(texts, '@njit(cache=True, error_model="numpy")')
     return text, compiled.module_file("detune_slices", text)
 
 
@@ -79,42 +74,6 @@ def rules(form: Form) -> tuple[Any, bool]:
     if form == "auto" and _solved[0] < (WORTH_LOADING if compiled.is_ready(path) else WORTH_COMPILING):
         return slice_exchange, False
     return compiled.load(path, text), True
-
-
-def is_closed(form: PowerForm, kind: DampingKind) -> bool:
-    """Whether the lines at both ends of a range and `closed_envelope` together say all that the range says.
-
-    True for the forms listed there; for A^2 u^2 with A >= m, where the bound rises with u throughout; and for a
-    constant T <= 1, which binds at the lower end: (T^2 (k - m u)^2 - k^2)/(u (1 - T^2)) rises with u.
-    """
-    if form.transmission:
-        return form.power == 0
-    return form.power in ((0, 1, 2) if kind == "loss factor" else (1, 2))
-
-
-@dataclass(frozen=True)
-class Scales:
-    """Reference stiffness (N/m) and squared frequency (rad2/s2) that make the algebra dimensionless."""
-
-    stiffness: float
-    squared_frequency: float
-
-    @classmethod
-    def of(cls, problem: OneAxisProblem) -> Scales:
-        """Reference values near the middle of the problem's own stiffness bounds."""
-        low, high = problem.stiffness_bounds
-        stiffness = math.sqrt(low * high)
-        return cls(stiffness, stiffness / problem.mass)
-
-    @property
-    def mass(self) -> float:
-        """Reference mass in kg."""
-        return self.stiffness / self.squared_frequency
-
-    @property
-    def to_u(self) -> float:
-        """Factor from a squared frequency in Hz2 to u, and to stiffness per mass."""
-        return (2.0 * math.pi) ** 2 / self.squared_frequency
 
 
 @dataclass(frozen=True)
@@ -141,73 +100,6 @@ class SliceAnswer:
     decided: bool
 
 
-def separation_peaks(intervals: tuple[tuple[float, float], ...]) -> tuple[float, ...]:
-    """Frequencies where the least separation can have an inner maximum: 2 / (1/f_b + 1/f_a) of each pair."""
-    return tuple(2.0 / (1.0 / b + 1.0 / a) for _, b in intervals for a, _ in intervals if a > b)
-
-
-def question_of(problem: OneAxisProblem, scales: Scales, arrays: bool) -> Question:
-    """The scaled question, of numpy arrays for compiled code or of lists for interpreted code."""
-    import numpy as np
-
-    def table(values: list[list[float]], columns: int) -> Any:
-        return np.array(values, dtype=float).reshape(-1, columns) if arrays else values
-
-    to_u = scales.to_u
-    limits = []
-    for limit in problem.limits:
-        form = power_form(limit)
-        factor = scales.squared_frequency**form.power
-        if not form.transmission:
-            factor /= scales.squared_frequency**2 if form.mass_proportional else scales.stiffness**2
-        closed = CLOSED if is_closed(form, problem.damping_kind) else OPEN
-        limits.append(
-            [
-                float(form.transmission),
-                float(form.power),
-                form.scale * factor,
-                0.0 if form.transmission or form.mass_proportional else 1.0,
-                limit.lower_frequency**2 * to_u,
-                limit.upper_frequency**2 * to_u,
-                float(LINE if limit.lower_frequency == limit.upper_frequency else closed),
-            ]
-        )
-    forbidden: list[list[float]] = []
-    if problem.separation is not None:
-        away = problem.separation
-        forbidden = [
-            [to_u * (a * (1.0 - away)) ** 2, to_u * (b * (1.0 + away)) ** 2]
-            for a, b in problem.excitation_intervals
-        ]
-    goal = {"least transmissibility": TRANSMISSIBILITY, "greatest separation": SEPARATION}
-    frequency = problem.objective.frequency or 0.0
-    peaks = [f * f * to_u for f in separation_peaks(problem.excitation_intervals)]
-    return Question(
-        viscous=1 if problem.damping_kind == "viscous" else 0,
-        limits=table(limits, 7),
-        forbidden=table(forbidden, 2),
-        excited=table([[a * a * to_u, b * b * to_u] for a, b in problem.excitation_intervals], 2),
-        peaks=np.array(peaks, dtype=float) if arrays else peaks,
-        goal=goal.get(problem.objective.goal, LINEAR),
-        goal_u=frequency**2 * to_u,
-    )
-
-
-def seeds(question: Question) -> list[tuple[int, float]]:
-    """The lines a pool starts with: every line, the ends of a closed range, and a few places of any other."""
-    found: list[tuple[int, float]] = []
-    for i, limit in enumerate(question.limits):
-        low, high, kind = float(limit[LOW]), float(limit[HIGH]), int(limit[KIND])
-        if kind == LINE:
-            found.append((i, low))
-        elif kind == CLOSED:
-            found += [(i, low), (i, high)]
-        else:
-            step = (high / low) ** (1.0 / (SEEDS - 1))
-            found += [(i, low * step**n) for n in range(SEEDS - 1)] + [(i, high)]
-    return found
-
-
 @dataclass
 class Slices:
     """Slices of one problem at any mass. The pool of lines grows only by valid lines, so all of them share it."""
@@ -216,6 +108,7 @@ class Slices:
     form: Form = "auto"
     scales: Scales = field(init=False)
     count: int = field(init=False)
+    base: int = field(init=False)
     question: Question = field(init=False)
     bench: Bench = field(init=False)
     excitations: tuple[tuple[float, float], ...] = field(init=False)
@@ -224,14 +117,27 @@ class Slices:
     def __post_init__(self) -> None:
         self.scales = Scales.of(self.problem)
         self.excitations = excitations(self.problem)
-        self._rules, arrays = rules(self.form)
-        self._arrays = arrays
-        self.question = question_of(self.problem, self.scales, arrays)
+        self._rules, self._arrays = rules(self.form)
+        self.question = question_of(self.problem, self.scales, self._arrays)
         first = seeds(self.question)
-        self.bench = bench(pool(2 * len(first) + 24, arrays), len(self.problem.limits), arrays)
-        for n, (i, u) in enumerate(first):
-            self.bench.pool[n][0], self.bench.pool[n][1] = i, u
-        self.count = len(first)
+        self.base = self.count = len(first)
+        self._fill(2 * len(first) + 24, first)
+
+    def _fill(self, capacity: int, lines: Any) -> None:
+        """A new bench with room for so many lines, and these in its pool."""
+        self.bench = bench(pool(capacity, self._arrays), len(self.problem.limits), self._arrays)
+        for n in range(self.count):
+            for column in range(3):
+                self.bench.pool[n][column] = lines[n][column]
+
+    def _choose_rules(self) -> None:
+        """Go on with the compiled rules once so many slices have been asked that they pay."""
+        if self._arrays or self.form != "auto":
+            return
+        self._rules, self._arrays = rules(self.form)
+        if self._arrays:
+            self.question = question_of(self.problem, self.scales, True)
+            self._fill(len(self.bench.pool), self.bench.pool)
 
     def _weights(self) -> tuple[float, float, float, float]:
         """(stiffness, damping, damping squared, mass) in SI: what is minimised."""
@@ -309,13 +215,11 @@ class Slices:
         )
 
     def _grow(self) -> None:
-        old = self.bench
-        self.bench = bench(pool(2 * len(old.pool), self._arrays), len(self.problem.limits), self._arrays)
-        for n in range(self.count):
-            self.bench.pool[n][0], self.bench.pool[n][1] = old.pool[n][0], old.pool[n][1]
+        self._fill(2 * len(self.bench.pool), self.bench.pool)
 
     def at(self, mass: float, place: tuple[float, float] = (0.0, math.inf)) -> SliceAnswer:
         """The exact slice at one mass in kg."""
+        self._choose_rules()
         room = self.room(mass, mass, place)
         while True:
             _solved[0] += 1
@@ -328,12 +232,16 @@ class Slices:
         if self._arrays and not _marked:
             compiled.mark_ready(_text()[1])
             _marked.append(True)
+        if self.count > 2 * self.base + MANY:
+            self.count = self._rules.compress(self.question, room, self.bench, found, self.count, self.base)
         table = self.bench.segments[:found]
         self.cuts_used = int(table[-1][LAST]) + 1 if found else 0
         unit = self.scales.squared_frequency * mass
         viscous = self.problem.damping_kind == "viscous"
         segments = []
         for left, right, k, gamma, value, *_ in table.tolist() if self._arrays else table:
+            if value == math.inf:
+                continue
             root = math.sqrt(max(gamma, 0.0))
             damping = root * mass * math.sqrt(self.scales.squared_frequency) if viscous else root / k
             segments.append(Segment(left * unit, right * unit, k * unit, damping, value))

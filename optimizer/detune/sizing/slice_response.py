@@ -24,6 +24,8 @@ from detune.sizing.slice_data import HIGH, LOW, POWER, TRANSMISSION, Bench, Ques
 EPSILON = 2.220446049250313e-16
 # A limit counts as exceeded when its squared ratio is above one by more than this.
 VIOLATION = 1e-11
+# Where a level is this close to one, damping neither helps nor harms.
+NEITHER = 1e-12
 
 # --- compiled below ---
 
@@ -199,41 +201,143 @@ def needed_damping(question: Question, bench: Bench, i: int, k: float, u: float)
     return (top - (k - u) * (k - u)) / (loss * free), free
 
 
-def raised_damping(
-    question: Question, bench: Bench, i: int, k: float, low: float, high: float
-) -> tuple[float, float]:
-    """The least gamma >= low with which limit i holds over its whole range at k, and the last u that asked for more.
+def add_term(polynomial: Any, power: int, value: float) -> None:
+    """Add value x^power to a polynomial."""
+    polynomial[power] += value
 
-    Infinite where none up to `high` does. Each step goes to what the worst u needs: as for a sum of ratios
-    (Dinkelbach), the steps rise to the least gamma and converge faster than linearly.
+
+def stationary_bound(question: Question, bench: Bench, i: int, k: float, low: float, high: float) -> int:
+    """Places u in [low, high] where the parabola of limit i, seen over u at one k, is stationary; their number.
+
+    With A^2 the level and t = A^2 u^r the derivative of `needed_damping` in u vanishes where
+
+        viscous, receptance      (q - 1) A^2 u^q + k^2 - u^2 = 0
+        loss, receptance         q A^2 u^(q-1) + 2 (k - u) = 0
+        viscous, transmission    k^2 (1 - t)^2 - u^2 (1 - t) + r t u (2 k - u) = 0
+        loss, transmission       2 (k - u) + t (2 (r - 1) k + (2 - r) u) = 0
+
+    each times the power of u that makes it a polynomial.
     """
-    gamma, place = low, 0.0
-    for _ in range(100):
-        ratio, u = worst_place(question, bench, i, k, gamma)
-        if ratio <= 1.0 + VIOLATION:
-            return gamma, place
-        needed, free = needed_damping(question, bench, i, k, u)
-        if free <= 0.0 or needed > high * (1.0 + 1e-12):
-            return math.inf, u
-        if needed <= gamma:
-            return gamma, place
-        gamma, place = needed, u
-    return gamma, place
+    level, r = bench.level[i], int(question.limits[i][POWER])
+    c = bench.work[0]
+    for j in range(len(c)):
+        c[j] = 0.0
+    if question.limits[i][TRANSMISSION] == 0.0:
+        if question.viscous == 1:
+            add_term(c, r, (r - 1.0) * level)
+            add_term(c, 0, k * k)
+            add_term(c, 2, -1.0)
+            degree = max(r, 2)
+        else:
+            if r > 0:
+                add_term(c, r - 1, r * level)
+            add_term(c, 0, 2.0 * k)
+            add_term(c, 1, -2.0)
+            degree = max(r - 1, 1)
+    elif question.viscous == 1:
+        shift = 0 if r >= 0 else -2 * r
+        add_term(c, shift, k * k)
+        add_term(c, shift + r, -2.0 * k * k * level)
+        add_term(c, shift + 2 * r, k * k * level * level)
+        add_term(c, shift + 2, -1.0)
+        add_term(c, shift + 2 + r, (1.0 - r) * level)
+        add_term(c, shift + 1 + r, 2.0 * k * r * level)
+        degree = max(2 * r, 2 + max(r, 0)) if r >= 0 else shift + 2
+    else:
+        shift = 0 if r >= 0 else -r
+        add_term(c, shift, 2.0 * k)
+        add_term(c, shift + 1, -2.0)
+        add_term(c, shift + r, 2.0 * (r - 1.0) * level * k)
+        add_term(c, shift + r + 1, (2.0 - r) * level)
+        degree = shift + 1 + max(r, 0)
+    return roots_between(degree, low, high, bench)
 
 
-def lowered_damping(
-    question: Question, bench: Bench, i: int, k: float, low: float, high: float
-) -> tuple[float, float]:
-    """The greatest gamma <= high with which limit i holds at k; minus infinite where none down to `low` does."""
-    gamma, place = high, 0.0
-    for _ in range(100):
-        ratio, u = worst_place(question, bench, i, k, gamma)
-        if ratio <= 1.0 + VIOLATION:
-            return gamma, place
-        needed, free = needed_damping(question, bench, i, k, u)
-        if free >= 0.0 or needed < low * (1.0 - 1e-12):
-            return -math.inf, u
-        if needed >= gamma:
-            return gamma, place
-        gamma, place = needed, u
-    return gamma, place
+def part_of_range(question: Question, bench: Bench, i: int, asks: bool) -> tuple[float, float, float]:
+    """[low, high] of the u in range i where its line asks for damping (or, `asks` False, allows so much), and u where
+    neither.
+
+    low > high where there is none. Third: the u within the range where the level passes one (0: there is none).
+    """
+    low, high, power = question.limits[i][LOW], question.limits[i][HIGH], int(question.limits[i][POWER])
+    if question.limits[i][TRANSMISSION] == 0.0:
+        return (low, high, 0.0) if asks else (1.0, 0.0, 0.0)
+    one, other = bench.level[i] * low**power, bench.level[i] * high**power
+    if max(one, other) < 1.0:
+        return (low, high, 0.0) if asks else (1.0, 0.0, 0.0)
+    if min(one, other) > 1.0:
+        return (1.0, 0.0, 0.0) if asks else (low, high, 0.0)
+    if power == 0:
+        return 1.0, 0.0, low
+    passes = min(max(bench.level[i] ** (-1.0 / power), low), high)
+    if (one < 1.0) == asks:
+        return low, passes, passes
+    return passes, high, passes
+
+
+def bounding_damping(question: Question, bench: Bench, i: int, k: float, asks: bool) -> tuple[float, float]:
+    """The least gamma limit i asks for over its range at k (`asks`), or the greatest it allows, and the u that sets it.
+
+    Minus or plus infinite where it asks for none or allows any; the other infinity where no gamma serves.
+    """
+    sign = 1.0 if asks else -1.0
+    best, place = -math.inf, 0.0
+    low, high, passes = part_of_range(question, bench, i, asks)
+    # Where the level is one damping neither helps nor harms: k^2 <= (k - u)^2 or nothing.
+    if passes > 0.0 and k * k > (k - passes) * (k - passes) * (1.0 + VIOLATION):
+        return sign * math.inf, passes
+    if low > high:
+        return sign * best, place
+    count = stationary_bound(question, bench, i, k, low, high)
+    for j in range(count + 2):
+        u = low if j == 0 else (high if j == 1 else bench.work[1][j - 2])
+        bound, free = needed_damping(question, bench, i, k, u)
+        if free * sign > NEITHER and sign * bound > best:
+            best, place = sign * bound, u
+    return sign * best, place
+
+
+def ridge(
+    question: Question, bench: Bench, i: int, k: float, share: float
+) -> tuple[float, float, float, float]:
+    """(value, slope) at k of a convex C, and (e1, e2): gamma >= C(k) + e1 k + e2 k^2 where u = share k is in range.
+
+    The line at u = share k seen along k. With d = (1 - share)^2, t = A^2 u^r:
+
+        viscous, receptance      A^2 share^(q-1) k^(q-1)  -  k d/share
+        loss, receptance         A^2 share^q k^q  -  d k^2
+        viscous, transmission    (1 - d) k t/(share (1 - t))  -  k d/share
+        loss, transmission       (1 - d) k^2 t/(1 - t)  -  d k^2
+
+    C is a sum of powers of k none of which lies between zero and one. Where u = share k is the worst of its range this
+    touches the least gamma over the range, so its tangent is Newton's step on it.
+    """
+    level, r = bench.level[i], int(question.limits[i][POWER])
+    apart = (1.0 - share) * (1.0 - share)
+    viscous = question.viscous == 1
+    own = 1 if viscous else 2
+    if question.limits[i][TRANSMISSION] == 0.0:
+        power = r + own - 2
+        value = level * (share * k) ** power
+        slope = power * value / k
+    else:
+        t = level * (share * k) ** r
+        value = (1.0 - apart) * k**own * t / (1.0 - t)
+        slope = value / k * (own + r / (1.0 - t))
+        if viscous:
+            value, slope = value / share, slope / share
+    if viscous:
+        return value, slope, -apart / share, 0.0
+    return value, slope, 0.0, -apart
+
+
+def rounding_of(question: Question, bench: Bench, i: int, k: float, u: float) -> float:
+    """How far rounding may move what `needed_damping` says."""
+    level = bench.level[i] * u ** int(question.limits[i][POWER])
+    size = 2.0 * k * k + u * u + level
+    free = 1.0
+    if question.limits[i][TRANSMISSION] == 1.0:
+        size += level * k * k
+        free = abs(1.0 - level)
+    loss = u if question.viscous == 1 else 1.0
+    return float(16.0 * EPSILON * size / (loss * max(free, NEITHER)))

@@ -22,7 +22,7 @@ Oracle = Callable[[Floats, Floats], bool]
 # Whether boxes lower, upper (N, d) may be proven: no where a point of a box is known to fail.
 Possible = Callable[[Floats, Floats], NDArray[np.bool_]]
 # Shapes that a guide tries, and sections of a range in one go.
-SHAPES, SECTIONS = 32, 8
+SHAPES, SECTIONS = 24, 8
 # How far a box that may be proven is drawn in before a proof is asked for, as shares of its half widths.
 DRAWN_IN = (1e-3, 4e-3, 0.015, 0.05, 0.15, 0.4, 0.7)
 

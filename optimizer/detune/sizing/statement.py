@@ -213,8 +213,10 @@ class OneAxisProblem:
         needs = self.separation is not None or self.objective.goal == "greatest separation"
         if needs and not self.excitation_intervals:
             raise SizingError("separation is asked for but no excitation interval is given")
-        if self.separation is not None and not 0 <= self.separation < 1:
-            raise SizingError("separation must lie between 0 and 1")
+        if self.separation is not None and not 0 <= self.separation < math.inf:
+            raise SizingError(
+                "separation must be zero or more; from 1 on only the stiff side of an excitation serves"
+            )
         if self.ballast is None and (
             self.objective.goal == "least added mass" or self.objective.mass_weight != 0
         ):

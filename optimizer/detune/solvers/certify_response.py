@@ -6,7 +6,8 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.proof.combined_bisect import RowsDecision, Sampler, decide_rows, sampled
+from detune.proof.bisection import RowsDecision
+from detune.proof.combined_bisect import Sampler, decide_rows, sampled
 from detune.proof.noise_bisect import decide_noise
 from detune.proof.noise_values import TOLERANCE, NoiseSampler, noise_sampled, noise_values_at
 from detune.proof.scatter_data import values_at

@@ -202,22 +202,19 @@ class DesignRows:
             # Uplift: its limit is the static compression, which `offset_row` supplies; free where the part may pull.
             return np.inf if bool(view.part_value(place, "pulls")[0] > 0.5) else 0.0
 
-    def static_at(self, each: StateModel, row: StaticRow, points: Floats) -> Floats:
-        """Exact values (N,) of one static row at points (N, V)."""
-        return np.asarray(static_values_at(self.limits(each, [row]), points)[:, 0])
-
     def static_parts(self, group: ResponseGroup, points: Floats) -> tuple[Floats, Floats]:
         """What is added to each response row, and its limit, at points (N, V): each (N, R)."""
         adds = np.zeros((len(points), len(group.requirements)))
         limit = np.tile(np.array(group.limit), (len(points), 1))
-        for index, (row, how) in enumerate(group.static):
-            if row is None:
-                continue
-            values = self.static_at(group.each, row, points)
+        stated = [(index, row, how) for index, (row, how) in enumerate(group.static) if row is not None]
+        if not stated:
+            return adds, limit
+        values = static_values_at(self.limits(group.each, [row for _, row, _ in stated]), points)
+        for (index, _, how), value in zip(stated, values.T, strict=True):
             if how == "limits":
-                limit[:, index] = np.maximum(values, 0.0)
+                limit[:, index] = np.maximum(value, 0.0)
             else:
-                adds[:, index] = values
+                adds[:, index] = value
         return adds, limit
 
 

@@ -266,7 +266,8 @@ def _vertex(x: Floats, y: Floats) -> Floats:
     """Where the parabola through three samples of 1/y^2 is least, inside them."""
     f = 1.0 / np.maximum(y, 1e-300 + 1e-9 * y[1]) ** 2
     f = f / f[1]
-    one, two = x[1] - x[0], x[2] - x[1]
+    # An undamped resonance draws the three together until two of them are one number.
+    one, two = (np.maximum(step, np.spacing(x[1])) for step in (x[1] - x[0], x[2] - x[1]))
     rise, fall = (f[0] - 1.0) / one, (f[2] - 1.0) / two
     bend = rise + fall
     shift = np.where(bend > 0.0, 0.5 * (rise * two - fall * one) / np.where(bend > 0.0, bend, 1.0), 0.0)

@@ -36,7 +36,7 @@ from detune.brief.statement import unit_direction
 from detune.physics.octaves import band_edges
 from detune.problem.build import Problem
 from detune.response.loads import Load, condition_families, excitation_intervals
-from detune.sizing.made_parts import made_table, sizing_of
+from detune.sizing.made_parts import asks_for_own_range, made_table, sizing_of
 from detune.sizing.never_binds import never_binds
 from detune.sizing.statement import (
     STANDARD_GRAVITY,
@@ -48,6 +48,7 @@ from detune.sizing.statement import (
     SagLimit,
     Source,
 )
+from detune.solvers.one_axis_objective import objective_of
 
 FACTOR = {"peak": 1.0, "3-sigma": 1.0, "rms": 2.0**0.5, "peak-to-peak": 0.5}
 QUANTITIES: dict[type[Allowable], Quantity] = {
@@ -114,7 +115,7 @@ def one_axis(brief: Brief, problem: Problem, every_limit: bool = False) -> OneAx
     unknowns = {unknown.kind: unknown for unknown in sizing.unknown}
     pieces = sum(station.parallel for station in brief.stations)
     mass = mass_properties(brief.bodies[0]).mass
-    viscous = "viscous" in unknowns or (made.viscous is not None and "loss-factor" not in unknowns)
+    viscous = is_viscous(brief)
     added = _ballast(brief, unknowns.get("ballast"))
     limits = _Limits(brief, problem, pieces, (mass + added.least, mass + added.most))
     limits.gather()
@@ -149,6 +150,14 @@ def one_axis(brief: Brief, problem: Problem, every_limit: bool = False) -> OneAx
     return OneAxis(stated, pieces, tuple(dict.fromkeys(limits.relaxed)), labels)
 
 
+def is_viscous(brief: Brief) -> bool:
+    """Whether the damping of the one-axis problem is viscous. Where a kind is stated as zero the other one counts."""
+    kinds = {unknown.kind for unknown in sizing_of(brief).unknown}
+    made = made_table(brief, brief.groups[0])
+    stated = made.viscous is not None and not (made.viscous == 0.0 and made.loss_factor)
+    return "viscous" in kinds or (stated and "loss-factor" not in kinds)
+
+
 def _scaled(unknown: SizingUnknown | None, fixed: float | None, pieces: int) -> tuple[float, float]:
     if unknown is None:
         return (pieces * (fixed or 0.0),) * 2
@@ -162,32 +171,6 @@ def _ballast(brief: Brief, unknown: SizingUnknown | None) -> Ballast:
     least, most = unknown.bounds
     caps = [a.upper_limit() for a in brief.allowables if isinstance(a, AddedMass)]
     return Ballast(least, max(min([most, *caps]), least), unknown.steps)
-
-
-def objective_of(brief: Brief, problem: OneAxisProblem, goal: str | None = None) -> Objective:
-    """The objective of the brief (or another by name) as the one-axis problem states it."""
-    sizing = sizing_of(brief)
-    chosen = goal or sizing.goal
-    made = made_table(brief, brief.groups[0])
-    if chosen == "separation":
-        return Objective("greatest separation")
-    if chosen == "stiffness":
-        return Objective("softest" if goal or sizing.sense > 0.0 else "stiffest")
-    if chosen == "damping":
-        return Objective("least damping")
-    if chosen == "added-mass":
-        return Objective("least added mass")
-    if chosen == "worst-response":
-        return Objective("least damping")
-    pieces = sum(station.parallel for station in brief.stations)
-    viscous = problem.damping_kind == "viscous"
-    kilogram = 0.0 if brief.ballast is None or problem.ballast is None else brief.ballast.cost_per_kg
-    return Objective(
-        "weighted sum",
-        stiffness_weight=made.cost_per_stiffness / 1e3,
-        damping_weight=made.cost_per_damping if viscous else pieces * made.cost_per_loss_factor,
-        mass_weight=kilogram,
-    )
 
 
 class _Limits:
@@ -204,7 +187,9 @@ class _Limits:
     def gather(self) -> None:
         """Go through every allowable that is demanded."""
         for allowable in demanded(self.brief)[0]:
-            if isinstance(allowable, Sag):
+            if asks_for_own_range(self.brief, allowable):
+                self._relax(allowable, "the range of the part itself")
+            elif isinstance(allowable, Sag):
                 self.sag = allowable.limit if self.sag is None else min(self.sag, allowable.limit)
                 if self.brief.steady_loads:
                     self._relax(allowable, "steady loads besides the weight")

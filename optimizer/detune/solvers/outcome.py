@@ -36,13 +36,15 @@ class Progress:
 class Settings:
     """How long a solver may work (seconds, None is unlimited), with how many workers, and whom it tells.
 
-    `progress` is told how far the work is, `announce` what takes long before it starts; `interrupted` is
-    asked for a stop. `front`: whether the whole front is wanted, or the cheapest design alone.
+    `progress` is told how far the work is, `announce` what takes long before it starts, `stage` in one line what is
+    done after the search; `interrupted` is asked for a stop. `front`: whether the whole front is wanted, or the
+    cheapest design alone.
     """
 
     time_limit: float | None = None
     progress: Callable[[Progress], None] | None = None
     announce: Callable[[str], None] | None = None
+    stage: Callable[[str], None] | None = None
     interrupted: Callable[[], bool] | None = None
     workers: int = 1
     front: bool = True

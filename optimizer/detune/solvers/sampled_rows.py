@@ -22,7 +22,10 @@ INSIDE = 4
 def sample_scatter(
     found: ScatterMap, corners: int = CORNERS, inside: int = INSIDE
 ) -> list[tuple[float, ...]]:
-    """Nominal point, corners of up to `corners` variables (the others together), and points of a Sobol sequence."""
+    """Nominal point, corners of up to `corners` variables (the others together), and points of a Latin hypercube.
+
+    Of those, every variable has one in each of `inside` equal parts of its range.
+    """
     low, high = found.low, found.high
     points = [tuple(found.nominal.tolist())]
     count = len(low)
@@ -32,9 +35,10 @@ def sample_scatter(
     for signs in itertools.product((0, 1), repeat=free):
         chosen = [*signs, *([signs[-1]] * (count - free))]
         points.append(tuple(float(high[i] if s else low[i]) for i, s in enumerate(chosen)))
-    from scipy.stats import qmc
-
-    unit = qmc.Sobol(count, scramble=True, seed=20_011).random(inside)
+    # Drawn here: for a handful of points, loading scipy.stats would take longer than all that is done with them.
+    drawn = np.random.default_rng(20_011)
+    part = np.column_stack([drawn.permutation(inside) for _ in range(count)])
+    unit = (part + drawn.random((inside, count))) / inside
     points += [tuple((low + (high - low) * row).tolist()) for row in unit]
     return points
 

@@ -165,7 +165,7 @@ def limited_rows(
         factor=forcing * np.array([row.factor for row in rows]),
         squares=np.array([row.squares for row in rows]),
         limit=limits,
-        sets=tuple(_load_set(group.model, loads, rows) for loads in family.sets),
+        sets=tuple(load_set(group.model, loads, rows) for loads in family.sets),
         speed=(family.low, family.high),
     )
 
@@ -185,7 +185,7 @@ def noise_rows(
         limit=limits,
         sets=tuple(
             NoiseSet(
-                _load_set(model, (each.load,), rows),
+                load_set(model, (each.load,), rows),
                 each.noise.spectrum.frequency,
                 each.noise.spectrum.density,
             )
@@ -194,7 +194,8 @@ def noise_rows(
     )
 
 
-def _load_set(model: Model, loads: tuple[Load, ...], rows: list[ObservedRow]) -> LoadSet:
+def load_set(model: Model, loads: tuple[Load, ...], rows: list[ObservedRow]) -> LoadSet:
+    """One coherent set of loads as the arrays of the proof floor, for rows observed at one model."""
     n = model.frame.count
     by_power: dict[float, list[NDArray[np.complex128]]] = {}
     axes = rows[0].forces.shape[1]

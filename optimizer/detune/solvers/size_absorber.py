@@ -25,8 +25,6 @@ from detune.solvers.size_batch import judge, judge_alike
 
 Floats = NDArray[np.float64]
 SHIFTS = (-0.10, -0.05, -0.02, 0.0, 0.02, 0.05, 0.10)
-# Closed forms.
-FORMS = 6
 # Random points of the stated scatter besides its corners, and most corners that are all judged.
 INSIDE, MOST_CORNERS = 32, 128
 # Points of the curve of detuning, and how far it goes where the stated scatter is less.
@@ -48,7 +46,8 @@ class ClosedForm:
 
     `height` is the greatest magnitude (harmonic) or the variance (white noise) the form promises on a single
     mass, in the units of `physics.absorber`, NaN where its source states none. `worst_response` is over the
-    limit, by the study's own equations, everything else as sized.
+    limit, by the study's own equations, everything else as sized. `within` tells whether the form keeps within the
+    bounds that the study states for its unknowns.
     """
 
     absorber: str
@@ -59,6 +58,7 @@ class ClosedForm:
     damping: float
     height: float
     worst_response: float
+    within: bool = True
 
 
 @dataclass(frozen=True)
@@ -89,14 +89,16 @@ def absorber_starts(brief: Brief, middle: Floats) -> tuple[Floats, ...]:
     tuned = [k for k, u in enumerate(unknowns) if u.kind == "absorber-tuning"]
     if not tuned:
         return ()
-    found = [middle.copy() for _ in range(FORMS)]
     low, high = bounds(brief)
-    for k in tuned:
-        forms = _forms(brief, unknowns[k], middle)
+    every = [_forms(brief, unknowns[k], middle) for k in tuned]
+    found = [middle.copy() for _ in range(max(len(forms) for forms in every))]
+    for k, forms in zip(tuned, every, strict=True):
         damped = [
             j for j, u in enumerate(unknowns) if u.kind == "absorber-damping" and u.body == unknowns[k].body
         ]
-        for values, (frequency, ratio) in zip(found, forms, strict=True):
+        for place, values in enumerate(found):
+            # A form that is not for this absorber leaves it to the last one.
+            frequency, ratio = forms[min(place, len(forms) - 1)]
             values[k] = frequency
             for j in damped:
                 values[j] = ratio
@@ -110,20 +112,29 @@ def _forms(brief: Brief, unknown: SizingUnknown, values: Floats) -> list[tuple[f
 
 
 def tunings(ratio: float, primary_damping: float = 0.0) -> list[tuple[str, str, absorber.AbsorberTuning]]:
-    """Name, what it is best for, and tuning of every closed form at a mass ratio (below two)."""
-    return [
+    """Name, what it is best for, and tuning of every closed form that a mass ratio (below two) and damping allow."""
+    found = [
         ("Den Hartog, Brock", "displacement, transmitted force or base motion; harmonic",
          absorber.den_hartog(ratio)),
+        ("Nishihara, Asami", "the same, exact for a machine without damping; harmonic",
+         absorber.nishihara_asami(ratio)),
         ("Warburton", "acceleration under a force, displacement under an unbalance; harmonic",
          absorber.warburton_force_acceleration(ratio)),
         ("Warburton", "mount deflection under base acceleration; harmonic",
          absorber.warburton_base_deflection(ratio)),
-        ("Warburton, Luft", "rms displacement under a force; white noise", absorber.white_noise_force(ratio)),
+        ("Warburton, Luft", "rms displacement under a force, acceleration under base acceleration; white noise",
+         absorber.white_noise_force(ratio)),
+        ("Crandall, Mark", "rms velocity under a force; white noise", absorber.white_noise_velocity(ratio)),
         ("Warburton", "rms mount deflection under base acceleration; white noise",
          absorber.white_noise_base_deflection(ratio)),
         ("Sadek", "equal damping of both modes, so the fastest decay",
          absorber.equal_modal_damping(ratio, primary_damping)),
     ]  # fmt: skip
+    low, high, most = absorber.FITTED
+    if low <= ratio <= high and 0.0 < primary_damping <= most:
+        fitted = absorber.ioi_ikeda(ratio, primary_damping)
+        found.append(("Ioi, Ikeda", "displacement of a machine with damping of its own; harmonic", fitted))
+    return found
 
 
 def _carrier(brief: Brief, unknown: SizingUnknown, values: Floats) -> tuple[float, float, float]:
@@ -156,6 +167,7 @@ def closed_forms(brief: Brief, values: Floats) -> tuple[ClosedForm, ...]:
     A form outside the bounds of its unknowns is judged where it is.
     """
     unknowns = sizing_of(brief).unknown
+    low, high = bounds(brief)
     rows: list[Floats] = []
     found: list[ClosedForm] = []
     for k, unknown in enumerate(unknowns):
@@ -170,10 +182,19 @@ def closed_forms(brief: Brief, values: Floats) -> tuple[ClosedForm, ...]:
             changed[k] = tuning.frequency_ratio * own
             changed[damped] = tuning.damping_ratio
             rows.append(changed)
+            within = bool((np.clip(changed, low, high) == changed).all())
             hertz = tuning.frequency_ratio * own
             found.append(
                 ClosedForm(
-                    str(unknown.body), name, best_for, ratio, hertz, tuning.damping_ratio, tuning.reached, 0.0
+                    str(unknown.body),
+                    name,
+                    best_for,
+                    ratio,
+                    hertz,
+                    tuning.damping_ratio,
+                    tuning.reached,
+                    0.0,
+                    within,
                 )
             )
     if not found:
@@ -209,7 +230,7 @@ def scattered(brief: Brief, values: Floats) -> tuple[ScatteredAbsorber, ...]:
         return ()
     made = made_design(brief, values)
     found = scatter_map(made.brief, made.design)
-    points, whole = _points(found)
+    points, whole = scatter_points(found)
     louder = 1.0 + found.forcing[1]
     worst = []
     for point in points:
@@ -256,7 +277,7 @@ def _tuning(brief: Brief, found: ScatterMap, unknown: SizingUnknown) -> tuple[fl
     return float(np.sqrt(ends[0] / (1.0 + heavy))) - 1.0, float(np.sqrt(ends[1] / (1.0 + light))) - 1.0
 
 
-def _points(found: ScatterMap) -> tuple[list[tuple[float, ...]], bool]:
+def scatter_points(found: ScatterMap) -> tuple[list[tuple[float, ...]], bool]:
     """Corners of the scatter, some points inside, and whether the corners are all there."""
     count = len(found.variables)
     if count == 0:

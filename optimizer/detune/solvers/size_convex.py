@@ -159,8 +159,8 @@ class _Place:
         """A restriction that no design meets, told as such: NaN for its values."""
         nan = float("nan")
         worth = (
-            f"safe restriction: no design with every mode {self.side} all excitation holds {len(limits.held)} response "
-            "limits whatever the damping, which is no proof that none meets them"
+            f"safe restriction: no design with every mode {self.side} all excitation holds {_counted(limits)} whatever "
+            "the damping, which is no proof that none meets them"
         )
         values = np.full(len(self.middle), nan)
         return ConvexSizing(self.side, what, values, nan, nan, worth, "restriction", limits.held, limits.left)
@@ -171,6 +171,11 @@ class _Place:
             bound = damping_free_bound(self.model, limit, answer.stiffness, answer.ballast)
             shares[limit.name] = shares.get(limit.name, 0.0) + bound / limit.limit
         return max(shares.values(), default=float("nan"))
+
+
+def _counted(limits: HeldLimits) -> str:
+    many = len(limits.held)
+    return f"{many} response limits" if many > 1 else "the response limit"
 
 
 def asked_separation(brief: Brief) -> float:
@@ -201,7 +206,7 @@ def _objective(place: _Place, frequency: float) -> list[ConvexSizing]:
             continue
         if held:
             text = (
-                f"safe restriction: holds {len(limits.held)} response limits whatever the damping, with every mode "
+                f"safe restriction: holds {_counted(limits)} whatever the damping, with every mode "
                 f"{side} all excitation; a better design may exist"
             )
             found.append(place.told(sizing.goal, answer, "restriction", text, limits, constant, sizing.sense))

@@ -155,9 +155,22 @@ def _told(brief: Brief, axis: OneAxis, rows: _Rows, answer: SoftSideAnswer) -> C
     return ConvexSizing(
         "below", goal, values, sense * answer.cost + shift, sense * answer.cost + shift, worth,
         "global" if exact else "restriction", tuple(dict.fromkeys(rows.held)),
-        (*dict.fromkeys(rows.left), *axis.relaxed), response, nan,
+        (*dict.fromkeys(rows.left), *axis.relaxed), response, _bounded(rows, answer),
         judged.requirements[worst].label if judged.margins[worst, 0] < -1e-6 else None,
     )  # fmt: skip
+
+
+def _bounded(rows: _Rows, answer: SoftSideAnswer) -> float:
+    """What the affine rows take the largest response over its limit for, without damping; NaN without such rows.
+
+    |X| <= F / (m w^2 - k) whatever the damping, over the limit: the need of the row over what is there.
+    """
+    shares = [
+        need / (answer.mass * (TWO_PI * frequency) ** 2 - answer.stiffness) / (1.0 + ROOM)
+        for frequency, need, _ in rows.affine
+        if need > 0.0
+    ]
+    return max(shares, default=math.nan)
 
 
 def _of(label: str, held: list[str]) -> bool:

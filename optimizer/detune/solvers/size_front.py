@@ -6,7 +6,6 @@ of these is solved globally, so every point is nondominated and exact to the tol
 
 from __future__ import annotations
 
-import itertools
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 
@@ -17,10 +16,13 @@ from detune.brief.brief import Brief
 from detune.sizing.made_parts import made_table, sizing_of
 from detune.sizing.one_axis import OneAxisOutcome, solve_one_axis
 from detune.sizing.statement import Ballast, OneAxisProblem
-from detune.solvers.one_axis_statement import OneAxis, objective_of
+from detune.solvers.one_axis_objective import objective_of
+from detune.solvers.one_axis_statement import OneAxis
 from detune.solvers.size_one_axis import at_level, constant_cost, least_level, values_of, with_room
 
 Floats = NDArray[np.float64]
+# Levels between which designs differ by less than this share of their spans get none between them.
+NEAR, FINEST = 0.04, 1e-4
 # Of these one is minimised, the others are held; the first that is traded is the one minimised.
 ORDER = ("cost", "damping", "stiffness", "separation", "added-mass", "worst-response")
 
@@ -82,30 +84,151 @@ def one_axis_objectives(brief: Brief, axis: OneAxis, points: Floats) -> dict[str
     }
 
 
+class _Solved:
+    """Exact answers of one problem with objectives held, each found once."""
+
+    def __init__(self, brief: Brief, axis: OneAxis, problem: OneAxisProblem) -> None:
+        self.brief, self.axis, self.problem = brief, axis, problem
+        self._known: dict[tuple[str, tuple[tuple[str, float], ...]], tuple[OneAxisOutcome, float] | None] = {}
+
+    def outcome(self, name: str, limits: dict[str, float]) -> tuple[OneAxisOutcome, float] | None:
+        """The best in one objective with others held at levels, and the level of all responses that was sought, else
+        NaN; None where no design is there.
+        """
+        key = (name, tuple(sorted(limits.items())))
+        if key not in self._known:
+            self._known[key] = self._solve(name, limits)
+        return self._known[key]
+
+    def _solve(self, name: str, limits: dict[str, float]) -> tuple[OneAxisOutcome, float] | None:
+        changed = self.problem
+        for held, most in limits.items():
+            tighter = HOLD[held](changed, float(most))
+            if tighter is None:
+                return None
+            changed = tighter
+        if name == "worst-response":
+            level, outcome = least_level(changed)
+            return (outcome, level) if outcome.branches and level <= 1.0 else None
+        outcome = solve_one_axis(replace(changed, objective=objective_of(self.brief, changed, name)))
+        return (outcome, float("nan")) if outcome.branches else None
+
+    def best(self, name: str, limits: dict[str, float]) -> float | None:
+        """The best value of one objective with others held; None where no design is there."""
+        if name == "worst-response":
+            found = self.outcome(name, limits)
+            return None if found is None else found[1]
+        point = self.point(name, limits)
+        return None if point is None else point.objectives[name]
+
+    def point(self, name: str, limits: dict[str, float]) -> FrontPoint | None:
+        """The design that is best in one objective with others held; None where no design is there."""
+        found = self.outcome(name, limits)
+        if found is None:
+            return None
+        best = found[0].branches[0]
+        values = values_of(self.brief, self.axis.pieces, best.best)
+        objectives = one_axis_objectives(self.brief, self.axis, values[None])
+        return FrontPoint(values, {key: float(value[0]) for key, value in objectives.items()}, best.name)
+
+
+def _range(solved: _Solved, name: str) -> tuple[float, float] | None:
+    """Levels of an objective from its best to the worst it needs where another is best; None where none is feasible."""
+    best = solved.best(name, {})
+    if best is None:
+        return None
+    if name == "worst-response":
+        return best * (1.0 + 1e-6), 1.0
+    ends = [best]
+    for other in sizing_of(solved.brief).trade:
+        if other == name:
+            continue
+        if other == "cost":
+            cheapest = solved.point("cost", {})
+            ends += [] if cheapest is None else [cheapest.objectives[name]]
+            continue
+        most = solved.best(other, {})
+        if most is None:
+            continue
+        level = most * (1.0 - 1e-6 if other == "separation" else 1.0 + 1e-6)
+        value = solved.best(name, {other: level})
+        ends += [] if value is None else [value]
+    low, high = min(ends), max(ends)
+    if name == "separation":
+        return low, high * (1.0 - 1e-6)
+    return low * (1.0 + 1e-6), high * (1.0 + 2e-6)
+
+
 def one_axis_front(brief: Brief, axis: OneAxis, count: int) -> SizingFront:
-    """The exact front of a one-axis problem over the traded objectives, `count` levels of each objective held."""
+    """The exact front of a one-axis problem over the traded objectives, `count` levels of each objective held.
+
+    A level of a bound that the design of a looser level keeps anyway gives the same design and is passed over. What
+    that saves goes into levels between those whose designs differ most.
+    """
     trade = sizing_of(brief).trade
     minimised = next(name for name in ORDER if name in trade)
     held = tuple(name for name in trade if name != minimised)
-    problem = with_room(axis.problem)
-    ranges = [_range(brief, axis, problem, name) for name in held]
+    solved = _Solved(brief, axis, with_room(axis.problem))
+    ranges = [_range(solved, name) for name in held]
     found: list[FrontPoint] = []
     if all(span is not None for span in ranges):
-        levels = [np.linspace(*span, count) for span in ranges if span is not None]
-        for each in itertools.product(*levels):
-            outcome = _held(brief, problem, minimised, dict(zip(held, each, strict=True)))
-            if outcome is not None and outcome.branches:
-                best = outcome.branches[0]
-                values = values_of(brief, axis.pieces, best.best)
-                objectives = one_axis_objectives(brief, axis, values[None])
-                told = {name: float(objectives[name][0]) for name in objectives}
-                found.append(FrontPoint(values, told, best.name))
+        spans = [span for span in ranges if span is not None]
+        first = np.linspace(*spans[0], count).tolist()
+        rest = [np.linspace(*span, count).tolist() for span in spans[1:]]
+        cut = {level: _cut(solved, minimised, held, level, rest) for level in first}
+        for _ in range(count):
+            between = _between(cut, trade)
+            if between is None:
+                break
+            cut[between] = _cut(solved, minimised, held, between, rest)
+        found = [point for level in sorted(cut) for point in cut[level]]
     points = nondominated(found, trade)
     worth = (
         f"least {minimised} for each level of {', '.join(held)}: exact and global on one axis "
-        f"(epsilon constraint, {count} levels each; between two levels nothing is said)"
+        f"(epsilon constraint, {count} levels each and more where the designs differ most; between two levels nothing "
+        "is said)"
     )
     return SizingFront(trade, minimised, points, worth)
+
+
+def _cut(
+    solved: _Solved, minimised: str, held: tuple[str, ...], level: float, rest: list[list[float]]
+) -> list[FrontPoint]:
+    """The best designs with the first objective held at a level, for all levels of a second one, loosest first."""
+    limits = {held[0]: level}
+    if not rest:
+        point = solved.point(minimised, limits)
+        return [] if point is None else [point]
+    name = held[1]
+    loosest_first = sorted(rest[0], reverse=name != "separation")
+    if name == "added-mass":
+        # Ballast is held at its level and not below it: no level stands for another.
+        points = [solved.point(minimised, {**limits, name: each}) for each in loosest_first]
+        return [point for point in points if point is not None]
+    found: list[FrontPoint] = []
+    for each in loosest_first:
+        reached = found[-1].objectives[name] if found else None
+        if reached is not None and (each <= reached if name == "separation" else each >= reached):
+            continue
+        point = solved.point(minimised, {**limits, name: each})
+        if point is None:
+            break
+        found.append(point)
+    return found
+
+
+def _between(cut: dict[float, list[FrontPoint]], trade: tuple[str, ...]) -> float | None:
+    """The middle of the two neighbouring levels whose first designs differ most, by the spans of all objectives."""
+    levels = sorted(level for level, points in cut.items() if points)
+    if len(levels) < 2:
+        return None
+    table = np.array([[cut[level][0].objectives[name] for name in trade] for level in levels])
+    span = np.maximum(np.ptp(table, axis=0), 1e-12 * np.maximum(np.abs(table).max(axis=0), 1e-300))
+    away = np.abs(np.diff(table, axis=0) / span).max(axis=1)
+    # Levels that are as good as one are not cut again.
+    away[np.diff(levels) <= FINEST * (levels[-1] - levels[0])] = 0.0
+    widest = int(np.argmax(away))
+    return 0.5 * (levels[widest] + levels[widest + 1]) if away[widest] > NEAR else None
 
 
 def nondominated(points: list[FrontPoint], trade: tuple[str, ...]) -> tuple[FrontPoint, ...]:
@@ -124,61 +247,6 @@ def nondominated(points: list[FrontPoint], trade: tuple[str, ...]) -> tuple[Fron
         if not beats.any() and not same[:index].any():
             kept.append(points[index])
     return tuple(sorted(kept, key=lambda point: point.objectives[trade[0]]))
-
-
-def _range(brief: Brief, axis: OneAxis, problem: OneAxisProblem, name: str) -> tuple[float, float] | None:
-    """Levels of an objective from its best to the worst it needs where another is best; None where none is feasible."""
-    if name == "worst-response":
-        low, outcome = least_level(problem)
-        return (low * (1.0 + 1e-6), 1.0) if outcome.branches and low <= 1.0 else None
-    best = _best(brief, axis, problem, name)
-    if best is None:
-        return None
-    ends = [best]
-    for other in sizing_of(brief).trade:
-        if other == name:
-            continue
-        held = _at_best(brief, axis, problem, other)
-        value = None if held is None else _best(brief, axis, held, name)
-        if other == "cost":
-            free = solve_one_axis(replace(problem, objective=objective_of(brief, problem, "cost")))
-            at = values_of(brief, axis.pieces, free.branches[0].best)
-            value = float(one_axis_objectives(brief, axis, at[None])[name][0])
-        ends += [] if value is None else [value]
-    low, high = min(ends), max(ends)
-    if name == "separation":
-        return low, high * (1.0 - 1e-6)
-    return low * (1.0 + 1e-6), high * (1.0 + 2e-6)
-
-
-def _best(brief: Brief, axis: OneAxis, problem: OneAxisProblem, name: str) -> float | None:
-    outcome = solve_one_axis(replace(problem, objective=objective_of(brief, problem, name)))
-    return outcome.branches[0].best.objective if outcome.branches else None
-
-
-def _at_best(brief: Brief, axis: OneAxis, problem: OneAxisProblem, name: str) -> OneAxisProblem | None:
-    """The problem with an objective held at its own best."""
-    if name == "cost":
-        return None
-    if name == "worst-response":
-        return at_level(problem, least_level(problem)[0] * (1.0 + 1e-6))
-    best = _best(brief, axis, problem, name)
-    if best is None:
-        return None
-    return HOLD[name](problem, best * (1.0 - 1e-6) if name == "separation" else best * (1.0 + 1e-6))
-
-
-def _held(
-    brief: Brief, problem: OneAxisProblem, minimised: str, levels: dict[str, float]
-) -> OneAxisOutcome | None:
-    changed: OneAxisProblem | None = problem
-    for name, level in levels.items():
-        if changed is None:
-            return None
-        changed = HOLD[name](changed, float(level))
-    if changed is None:
-        return None
-    return solve_one_axis(replace(changed, objective=objective_of(brief, changed, minimised)))
 
 
 def _mass_at(problem: OneAxisProblem, level: float) -> OneAxisProblem | None:

@@ -14,6 +14,7 @@ from detune.solvers.size_batch import judge
 from detune.solvers.size_front import ORDER, FrontPoint, SizingFront, nondominated
 from detune.solvers.size_front_bounds import with_bounds
 from detune.solvers.size_gradients import prepared
+from detune.solvers.size_whole import on_steps
 
 Floats = NDArray[np.float64]
 STARTS = 2
@@ -33,6 +34,7 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
         found = size_many_starts.solve(
             brief, name, sense, starts=STARTS, seed=sizing.seed, first=(best,), gradients=once
         )
+        found = on_steps(brief, found, name, sense, few=1)
         if found.best is not None:
             ends.append(found.best.values)
     points = [_point(brief, values, "end") for values in ends]
@@ -42,10 +44,18 @@ def searched_front(brief: Brief, best: Floats) -> SizingFront:
     for each in itertools.product(*levels):
         limits: dict[str, float] = {name: float(level) for name, level in zip(held, each, strict=True)}
         near = min(points, key=lambda point: _misses(point, limits))
+        sense = -1.0 if minimised == "separation" else 1.0
         found = size_many_starts.solve(
-            brief, minimised, -1.0 if minimised == "separation" else 1.0, starts=1, seed=sizing.seed,
-            first=(near.values,), held=limits, gradients=once,
-        )  # fmt: skip
+            brief,
+            minimised,
+            sense,
+            starts=1,
+            seed=sizing.seed,
+            first=(near.values,),
+            held=limits,
+            gradients=once,
+        )
+        found = on_steps(brief, found, minimised, sense, limits, few=1)
         if found.best is not None:
             points.append(_point(brief, found.best.values, "local"))
     worth = (

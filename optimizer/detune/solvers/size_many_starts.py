@@ -20,6 +20,7 @@ from detune.solvers.size_slopes import ROOM, Handed, handed
 Floats = NDArray[np.float64]
 WORTH = "best of many local searches from seeded starts; not proven global"
 STEP = 1e-4
+SNAP = 1e-9
 # Margins beyond this never bind and are flattened.
 FAR = 3.0
 MET = -1e-6
@@ -299,10 +300,21 @@ def _told(requirements: tuple[Requirement, ...]) -> tuple[str, ...]:
     return tuple(dict.fromkeys(f"{r.allowable.quantity()} ({r.condition})" for r in requirements))
 
 
+def ordered(done: list[LocalSearch], sense: float) -> tuple[list[LocalSearch], list[LocalSearch]]:
+    """Searches that met every requirement, the best first, and those that did not, the least missing first.
+
+    Of searches with one and the same objective, but for rounding, the one with the most margin comes first.
+    """
+    good = [s for s in done if s.least_margin >= MET]
+    bad = sorted((s for s in done if s.least_margin < MET), key=lambda s: -s.least_margin)
+    unit = max((abs(s.objective) for s in good), default=0.0) or 1.0
+    good.sort(key=lambda s: (round(sense * s.objective / unit, 9), -round(s.least_margin, 6)))
+    return good, bad
+
+
 def gather(functions: _Differenced, done: list[LocalSearch], sense: float) -> ManyStarts:
     """Order the searches and tell their spread."""
-    good = sorted((s for s in done if s.least_margin >= MET), key=lambda s: sense * s.objective)
-    bad = sorted((s for s in done if s.least_margin < MET), key=lambda s: -s.least_margin)
+    good, bad = ordered(done, sense)
     nan = float("nan")
     spread, near = (nan, nan, nan), 0.0
     if good:
@@ -347,6 +359,8 @@ def _descended(functions: _Differenced, y: Floats, iterations: int) -> LocalSear
 
 
 def _judged(functions: _Differenced, x: Floats, word: str) -> LocalSearch:
+    # A bound that the optimiser reaches but for rounding is reached.
+    x = np.where(x < SNAP, 0.0, np.where(x > 1.0 - SNAP, 1.0, x))
     judged = functions.at(x[None])
     least = float(judged.margins[:, 0].min())
     for name, level in functions.held.items():

@@ -3,57 +3,59 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from detune.brief.brief import Brief
-from detune.brief.sizing import SizingUnknown
 from detune.parts.kinds.mount import Mount
 from detune.physics.separation import separation as distance
 from detune.sizing.batch_trace import Margins, Traced, trace_batch
-from detune.sizing.made_parts import bounds, logarithmic, sizing_of
-from detune.sizing.one_axis_map import RegionPiece, feasible_region
-from detune.sizing.statement import STANDARD_GRAVITY, Ballast, OneAxisProblem, power_form
+from detune.sizing.made_parts import made_design, sizing_of
+from detune.sizing.statement import STANDARD_GRAVITY, power_form
 from detune.sizing.worst_frequency import worst
+from detune.solvers.map_axes import MapAxis, MapPlane, plane_of
+from detune.solvers.map_dots import PartDot, part_dots
+from detune.solvers.map_islands import Islands, islands_of
+from detune.solvers.map_region import Region, region_of
 from detune.solvers.one_axis_statement import OneAxis
-from detune.solvers.size_batch import judge
+from detune.solvers.size_batch import judge, static_loads
+
+__all__ = ["PartDot", "SizingMap", "axis_values", "one_axis_margins", "sizing_map"]
 
 Floats = NDArray[np.float64]
 LINES = 41
 LINES_JUDGED = (17, 13)
 TWO_PI = 2.0 * math.pi
-
-
-@dataclass(frozen=True)
-class PartDot:
-    """One part (or ballast step) at its place on the map; `complete` is false where the list has no such figure."""
-
-    name: str
-    x: float
-    y: float
+BOUNDS = "the study's own bounds"
 
 
 @dataclass(frozen=True)
 class SizingMap:
-    """The map in the unknowns `first` and `second`, the others held at `values` (u,).
+    """The map on the axes `first` and `second`, the other unknowns held at `values` (u,).
 
-    `traced` holds margins and boundaries, `objective` (Y, X) its values; `pieces` the exact branches where the map
-    is stiffness against damping of one axis. `exact`: margins in closed form; `left_out`: what they do not hold.
+    `traced` holds margins and boundaries, `objective` (Y, X) its values, `region` the least margin on finer lines;
+    `pieces` the exact outlines of the branches where the map is stiffness (or natural frequency) against damping of
+    one axis. `without`: parts that have no such figure and are no dot. `exact`: margins in closed form; `left_out`:
+    what they do not hold. `answer`: whether `values` are a design that meets the brief, at `place`.
     """
 
-    first: SizingUnknown
-    second: SizingUnknown
+    first: MapAxis
+    second: MapAxis
     values: Floats
+    place: tuple[float, float]
     traced: Traced
+    region: Region
     objective: Floats
     objective_name: str
     dots: tuple[PartDot, ...]
-    pieces: tuple[RegionPiece, ...]
-    pieces_per: int
+    without: int
+    pieces: tuple[Floats, ...]
     exact: bool
     left_out: tuple[str, ...]
+    answer: bool
 
 
 def one_axis_margins(
@@ -84,41 +86,48 @@ def sizing_map(
     names: tuple[str, ...],
     values: Floats,
     axis: OneAxis | None,
-    mounts: tuple[Mount, ...],
+    parts: dict[str, tuple[Mount, ...]],
     goal: str,
+    answer: bool = True,
 ) -> SizingMap:
-    """The map in the two unknowns of these names round the point `values` (u,)."""
-    unknowns = sizing_of(brief).unknown
-    titles = [unknown.title for unknown in unknowns]
-    i, j = titles.index(names[0]), titles.index(names[1])
-    low, high = bounds(brief)
-    logs = (logarithmic(unknowns[i]), logarithmic(unknowns[j]))
+    """The map on the two axes of these names round the point `values` (u,); `parts` of the lists by group."""
+    plane = plane_of(brief, axis, names, values)
     size = (LINES, LINES) if axis is not None else LINES_JUDGED
-    x = _lines(float(low[i]), float(high[i]), size[0], logs[0])
-    y = _lines(float(low[j]), float(high[j]), size[1], logs[1])
-    pieces: tuple[RegionPiece, ...] = ()
-    per = 1
-    if axis is not None:
-        per = axis.pieces
-        x, y, pieces = _with_islands(axis, unknowns, values, i, j, x, y)
-    margins, labels = _margins(brief, axis, values, i, j)
-    traced = trace_batch(margins, labels, x, y, logs, rounds=12 if axis is not None else 5)
-    xx, yy = np.meshgrid(x, y)
-    points = np.repeat(values[None], xx.size, axis=0)
-    points[:, i], points[:, j] = xx.ravel(), yy.ravel()
-    objective = _objective(brief, axis, points, goal).reshape(xx.shape)
+    logs = (plane.first.logarithmic, plane.second.logarithmic)
+    x, y = (
+        _lines(own.low, own.high, n, own.logarithmic)
+        for own, n in zip((plane.first, plane.second), size, strict=True)
+    )
+    margins, labels = _margins(plane)
+
+    def least(a: Floats, b: Floats) -> Floats:
+        return np.asarray(margins(a, b).min(axis=0))
+
+    found = Islands(x[:0], y[:0], ()) if axis is None else islands_of(plane, least)
+    finer_x, finer_y = _with_lines(x, found.x), _with_lines(y, found.y)
+    traced = trace_batch(margins, labels, finer_x, finer_y, logs, rounds=12 if axis is not None else 5)
+    xx, yy = np.meshgrid(finer_x, finer_y)
+    points = plane.points(xx.ravel(), yy.ravel())
+    loads: dict[str, list[float]] = {}
+    for group, load in static_loads(made_design(brief, values)):
+        loads.setdefault(group, []).append(load)
+    dots = part_dots(plane, brief, parts, {group: float(np.mean(each)) for group, each in loads.items()})
+    place = plane.place(values[None])[0]
     return SizingMap(
-        first=unknowns[i],
-        second=unknowns[j],
+        first=plane.first,
+        second=plane.second,
         values=values,
+        place=(float(place[0]), float(place[1])),
         traced=traced,
-        objective=objective,
+        region=region_of(margins, traced, found, logs, exact=axis is not None),
+        objective=_objective(brief, axis, points, goal).reshape(xx.shape),
         objective_name=goal,
-        dots=part_dots(brief, unknowns[i], unknowns[j], values, mounts, axis),
-        pieces=pieces,
-        pieces_per=per,
+        dots=dots.dots,
+        without=dots.without,
+        pieces=found.pieces,
         exact=axis is not None,
         left_out=() if axis is None else axis.relaxed,
+        answer=answer,
     )
 
 
@@ -128,6 +137,17 @@ def _lines(low: float, high: float, count: int, log: bool) -> Floats:
     lines = np.geomspace(low, high, count) if log else np.linspace(low, high, count)
     lines[0], lines[-1] = low, high
     return np.asarray(lines)
+
+
+def _with_lines(plain: Floats, more: Floats) -> Floats:
+    """The plain lines with others between them, none doubled by rounding."""
+    kept = [float(plain[0])]
+    for value in np.unique([*plain, *more]):
+        if value > kept[-1] + 1e-12 * max(abs(value), abs(kept[-1])) + 1e-300 and value < plain[-1]:
+            kept.append(float(value))
+    if kept[-1] >= plain[-1] * (1.0 - 1e-12):
+        kept.pop()
+    return np.array([*kept, float(plain[-1])])
 
 
 def axis_values(brief: Brief, axis: OneAxis, points: Floats) -> tuple[Floats, Floats, Floats]:
@@ -148,32 +168,35 @@ def axis_values(brief: Brief, axis: OneAxis, points: Floats) -> tuple[Floats, Fl
     return stiffness, damping, mass
 
 
-def _margins(
-    brief: Brief, axis: OneAxis | None, values: Floats, i: int, j: int
-) -> tuple[Margins, tuple[str, ...]]:
-    def at(x: Floats, y: Floats) -> Floats:
-        points = np.repeat(values[None], len(x), axis=0)
-        points[:, i], points[:, j] = x, y
-        return points
-
+def _margins(plane: MapPlane) -> tuple[Margins, tuple[str, ...]]:
+    """Margins of every requirement at places of a map, and their names; of derived axes the bounds as well."""
+    brief, axis = plane.brief, plane.axis
+    own: Callable[[Floats], Floats]
     if axis is not None:
-        labels, _ = one_axis_margins(axis, *axis_values(brief, axis, values[None]))
+        kept, _ = one_axis_margins(axis, *axis_values(brief, axis, plane.values[None]))
 
-        def exact(x: Floats, y: Floats) -> Floats:
-            return one_axis_margins(axis, *axis_values(brief, axis, at(x, y)))[1]
+        def own(points: Floats) -> Floats:
+            return one_axis_margins(axis, *axis_values(brief, axis, points))[1]
 
-        return exact, labels
-    first = judge(brief, values[None])
-    # One line for each requirement at its worst place.
-    names = [f"{r.allowable.quantity()} ({r.condition})" for r in first.requirements]
-    kept = tuple(dict.fromkeys(names))
-    rows = {name: [k for k, other in enumerate(names) if other == name] for name in kept}
+    else:
+        first = judge(brief, plane.values[None])
+        # One line for each requirement at its worst place.
+        names = [f"{r.allowable.quantity()} ({r.condition})" for r in first.requirements]
+        kept = tuple(dict.fromkeys(names))
+        rows = {name: [k for k, other in enumerate(names) if other == name] for name in kept}
 
-    def judged(x: Floats, y: Floats) -> Floats:
-        found = judge(brief, at(x, y)).margins
-        return np.stack([found[rows[name]].min(axis=0) for name in kept])
+        def own(points: Floats) -> Floats:
+            found = judge(brief, points).margins
+            return np.stack([found[rows[name]].min(axis=0) for name in kept])
 
-    return judged, kept
+    if not plane.derived:
+        return lambda x, y: own(plane.points(x, y)), kept
+
+    def within(x: Floats, y: Floats) -> Floats:
+        points = plane.points(x, y)
+        return np.concatenate([own(points), plane.within(points)[None]])
+
+    return within, (*kept, BOUNDS)
 
 
 def _objective(brief: Brief, axis: OneAxis | None, points: Floats, goal: str) -> Floats:
@@ -182,93 +205,3 @@ def _objective(brief: Brief, axis: OneAxis | None, points: Floats, goal: str) ->
     from detune.solvers.size_front import one_axis_objectives
 
     return one_axis_objectives(brief, axis, points)[goal]
-
-
-def _with_islands(
-    axis: OneAxis, unknowns: tuple[SizingUnknown, ...], values: Floats, i: int, j: int, x: Floats, y: Floats
-) -> tuple[Floats, Floats, tuple[RegionPiece, ...]]:
-    """Lines completed so that every exact branch is cut, and the branches, on a map of stiffness against damping."""
-    if unknowns[i].kind != "stiffness" or unknowns[j].kind not in ("viscous", "loss-factor"):
-        return x, y, ()
-    fixed = _at_ballast(axis.problem, unknowns, values)
-    per = axis.pieces if unknowns[j].kind == "viscous" else 1
-    scaled = tuple(
-        replace(piece, stiffness=piece.stiffness / axis.pieces, least_damping=piece.least_damping / per,
-                greatest_damping=piece.greatest_damping / per)
-        for piece in feasible_region(fixed)
-    )  # fmt: skip
-    more_x, more_y = list(x), list(y)
-    for piece in scaled:
-        # A node inside every branch, however small; the branch itself is drawn from its exact curves.
-        for k in np.linspace(0, len(piece.stiffness) - 1, 5).astype(int)[1:-1]:
-            more_x.append(float(piece.stiffness[k]))
-            more_y.append(float(0.5 * (piece.least_damping[k] + piece.greatest_damping[k])))
-    return _apart(np.unique(more_x), x), _apart(np.unique(more_y), y), scaled
-
-
-def _apart(lines: Floats, plain: Floats) -> Floats:
-    """The lines with the ends of the plain ones, and none doubled by rounding."""
-    kept = [float(plain[0])]
-    for value in lines:
-        if value > kept[-1] * (1.0 + 1e-12) + 1e-300 and value < plain[-1]:
-            kept.append(float(value))
-    if kept[-1] >= plain[-1] * (1.0 - 1e-12):
-        kept.pop()
-    return np.array([*kept, float(plain[-1])])
-
-
-def _at_ballast(
-    problem: OneAxisProblem, unknowns: tuple[SizingUnknown, ...], values: Floats
-) -> OneAxisProblem:
-    if problem.ballast is None:
-        return problem
-    column = next(k for k, unknown in enumerate(unknowns) if unknown.kind == "ballast")
-    added = float(values[column])
-    return replace(problem, ballast=Ballast(added, added))
-
-
-def part_dots(
-    brief: Brief,
-    first: SizingUnknown,
-    second: SizingUnknown,
-    values: Floats,
-    mounts: tuple[Mount, ...],
-    axis: OneAxis | None,
-) -> tuple[PartDot, ...]:
-    """Every part of the lists where it stands in these two unknowns; ballast steps where one of them is ballast."""
-    dots: dict[tuple[float, float], list[str]] = {}
-    steps = () if brief.ballast is None else brief.ballast.steps
-    for mount in mounts:
-        pairs = []
-        for unknown in (first, second):
-            if unknown.kind == "ballast":
-                pairs.append(list(steps))
-            else:
-                figure = figure_of(mount, unknown)
-                pairs.append([] if figure is None else [figure])
-        for x in pairs[0]:
-            for y in pairs[1]:
-                dots.setdefault((x, y), []).append(mount.part)
-    return tuple(PartDot(", ".join(dict.fromkeys(names)), x, y) for (x, y), names in dots.items())
-
-
-def figure_of(mount: Mount, unknown: SizingUnknown) -> float | None:
-    """The figure of a real part that an unknown stands for, None where it has none.
-
-    A loss factor and a viscous coefficient are read into each other at the mount's own rated frequency only where
-    the list states the load it is rated for.
-    """
-    stiffness = mount.stiffness_dynamic[2]
-    omega = None
-    if mount.load_rated:
-        omega = math.sqrt(stiffness * STANDARD_GRAVITY / mount.load_rated)
-    if unknown.kind == "stiffness":
-        along = {"axial": 2, "x": 0, "y": 1, "lateral": 0}[str(unknown.axis)]
-        return mount.stiffness_dynamic[along]
-    if unknown.kind == "viscous":
-        loss = mount.loss_factor[2]
-        return mount.viscous[2] + (loss * stiffness / omega if loss and omega else 0.0)
-    if unknown.kind == "loss-factor":
-        viscous = mount.viscous[2]
-        return mount.loss_factor[2] + (viscous * omega / stiffness if viscous and omega else 0.0)
-    return None

@@ -2,13 +2,14 @@
 
 Round the ideal point the margins m_i are linear in the logarithms of stiffness and damping of each group's part:
 m_i + g_i . d for a part that lies d away. What counts as distance is the shortfall this predicts,
-sqrt(sum_i max(0, -(m_i + g_i . d))^2), and only among parts of equal shortfall the plain change of the margins. The
-first ones are evaluated exactly with all requirements, and the best of those by the assessor.
+sqrt(sum_i max(0, -(m_i + g_i . d))^2), and only among parts of equal shortfall the plain change of the margins. One
+half of the short list is the nearest designs, the other those predicted to meet every limit with the best objective.
+The short list is evaluated exactly with all requirements, and the best of it by the assessor.
 """
 
 from __future__ import annotations
 
-import itertools
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -25,27 +26,28 @@ from detune.response.assessment import Assessment
 from detune.response.design import Design
 from detune.response.designs import Designs
 from detune.sizing.made_parts import Made, made_design
-from detune.solvers.size_batch import batch, exact_stages, response_margin, static_loads
+from detune.solvers.nearest_list import EACH, Listed, Options, best_of, listed_designs
+from detune.solvers.size_batch import absorber_mass, batch, exact_stages, response_margin, static_loads
 
 Floats = NDArray[np.float64]
-# Rank, predicted shortfall, part of each group, ballast step.
-_Listed = tuple[float, float, tuple[int, ...], int]
 STEP = 1e-3
 LEAST_LOSS = 1e-3
 SHORT_LIST = 300
-EACH = 40
 LARGEST_MARGIN = 10.0
-# Parts that stay on the feasible side are ranked by how far they move the margins, with this weight.
-MOVED = 1e-3
+# How often the short list is drawn up again round the best real design.
+RECENTRED = 4
+# So many of the best real designs are assessed for each one that is shown.
+LOOKED_AT = 3
 
 
 @dataclass(frozen=True)
 class NearDesign:
-    """One real design near the ideal: its rank, the predicted shortfall of its margins, and its assessment."""
+    """One real design near the ideal: its assessment, rank, the predicted shortfall of its margins, its objective."""
 
     assessment: Assessment
     distance: float
     predicted: float
+    objective: float
 
 
 @dataclass(frozen=True)
@@ -62,84 +64,130 @@ class Nearest:
 
 
 def nearest_parts(
-    brief: Brief, ideals: list[Floats], problem: Problem, goal: str, sense: float, shown: int = 4
+    brief: Brief,
+    ideals: list[Floats],
+    problem: Problem,
+    goal: str,
+    sense: float,
+    shown: int = 4,
+    wanted: Callable[[Design], bool] = lambda design: True,
 ) -> Nearest:
     """Nearest real designs of the study's own `problem` to the points `ideals`, each (u,), best ideal first.
 
-    Every ideal (the best of each branch, points of the front) has an equal share of the short list.
+    Every ideal (the best of each branch, points of the front) has an equal share of the short list. Then the margins
+    are taken as linear round the best real design so far, and so on while that finds a better one. Designs that are
+    `wanted`, such as those that hold over the scatter, stand before the others that meet the brief.
     """
-    merged: dict[tuple[tuple[int, ...], int], _Listed] = {}
-    lists = [_short_list(brief, values, problem) for values in ideals]
-    for place in range(max(len(each) for each in lists)):
-        for each in lists:
-            if place < len(each) and len(merged) < SHORT_LIST:
-                merged.setdefault((each[place][2], each[place][3]), each[place])
-    listed = list(merged.values())
-    designs = Designs(
-        np.array([item[2] for item in listed], dtype=np.intp).reshape(len(listed), -1),
-        np.array([item[3] for item in listed], dtype=np.intp),
-    )
-    return _judged(brief, problem, designs, listed, goal, sense, shown)
+    known: list[_Evaluated] = []
+    seen: set[tuple[tuple[int, ...], int]] = set()
+    centres = [made_design(brief, values) for values in ideals]
+    best: _Evaluated | None = None
+    for _ in range(1 + RECENTRED):
+        lists = [_short_list(centre, problem, goal, sense) for centre in centres]
+        merged: dict[tuple[tuple[int, ...], int], Listed] = {}
+        for place in range(max(len(each) for each in lists)):
+            for each in lists:
+                if place < len(each) and len(merged) < SHORT_LIST:
+                    merged.setdefault((each[place].parts, each[place].step), each[place])
+        fresh = [item for key, item in merged.items() if key not in seen]
+        seen.update(merged)
+        known += _evaluated(brief, problem, fresh, goal) if fresh else []
+        last, best = best, min(known, key=lambda each: each.order(sense))
+        if best is last:
+            break
+        centres = [Made(brief, best.design)]
+    known.sort(key=lambda each: each.order(sense))
+    return _shown(brief, problem, known, shown, wanted)
 
 
-def _short_list(brief: Brief, values: Floats, problem: Problem) -> list[_Listed]:
-    """Real designs by their predicted shortfall from one ideal, the least first."""
-    ideal = made_design(brief, values)
+def _short_list(ideal: Made, problem: Problem, goal: str, sense: float) -> list[Listed]:
+    """Real designs round one design: the nearest, and by turns the best of those predicted to meet every limit."""
+    brief = ideal.brief
     margins, slope, offsets = sensitivities(ideal)
     loads = static_loads(ideal)
-    ranked = []
+    options = []
     for group, mounts in enumerate(problem.candidates):
         name = brief.groups[group]
         carried = [load for group_name, load in loads if group_name == name]
-        away = [offsets.away(group, mount) for mount in mounts]
-        moved = slope[group] @ np.array(away).T
-        short = _shortfall(margins[:, None] + moved) + _overload(mounts, carried)
-        order = np.argsort(short + MOVED * np.linalg.norm(moved, axis=0), kind="stable")[:EACH]
-        ranked.append([(int(k), moved[:, k], _overload((mounts[k],), carried)[0]) for k in order])
-    steps = problem.model.ballast_mass
-    listed = []
-    for chosen in itertools.islice(itertools.product(*ranked), 200_000):
-        shift = margins + sum(each[1] for each in chosen)
-        over = sum(each[2] for each in chosen)
-        for step, kilograms in enumerate(steps):
-            there = shift + offsets.ballast * (kilograms - ideal.design.ballast)
-            short = float(_shortfall(there[:, None])[0]) + over
-            tie = MOVED * float(np.linalg.norm(there - margins))
-            listed.append((short + tie, short, tuple(each[0] for each in chosen), step))
-    listed.sort(key=lambda item: (item[0], item[2], item[3]))
-    return listed[:SHORT_LIST]
+        away = np.array([offsets.away(group, mount) for mount in mounts])
+        pieces = sum(s.parallel for s in brief.every_station if s.group == name)
+        value = sense * pieces * np.array([_share(mount, goal) for mount in mounts])
+        every = Options(np.arange(len(mounts)), away @ slope[group].T, _overload(mounts, carried), value)
+        options.append(best_of(margins, every, EACH))
+    steps = np.asarray(problem.model.ballast_mass, dtype=float)
+    price = {"cost": np.asarray(problem.model.ballast_cost, dtype=float), "added-mass": steps}.get(goal)
+    options.append(
+        Options(
+            np.arange(len(steps)),
+            np.outer(steps - ideal.design.ballast, offsets.ballast),
+            np.zeros(len(steps)),
+            np.zeros(len(steps)) if price is None else sense * price,
+        )
+    )
+    return listed_designs(margins, options, SHORT_LIST)
 
 
-def _judged(
-    brief: Brief,
-    problem: Problem,
-    designs: Designs,
-    listed: list[_Listed],
-    goal: str,
-    sense: float,
-    shown: int,
-) -> Nearest:
+def _share(mount: Mount, goal: str) -> float:
+    """What one part adds to an objective that is a sum over parts; zero for others."""
+    if goal == "cost":
+        return mount.cost
+    if goal == "stiffness":
+        return mount.stiffness_dynamic[2]
+    return (mount.viscous[2] or mount.loss_factor[2]) if goal == "damping" else 0.0
+
+
+@dataclass(frozen=True)
+class _Evaluated:
+    """A real design of the short list, evaluated exactly: its least margin and objective."""
+
+    listed: Listed
+    design: Design
+    least: float
+    objective: float
+
+    @property
+    def met(self) -> bool:
+        # Rounding of two ways to the same number must not drop a design that stands on its limit.
+        return self.least >= -1e-6
+
+    def order(self, sense: float) -> tuple[bool, float]:
+        """By this the best comes first: what meets the brief by its objective, the rest by what it misses."""
+        return (not self.met, sense * self.objective if self.met else -self.least)
+
+
+def _evaluated(brief: Brief, problem: Problem, listed: list[Listed], goal: str) -> list[_Evaluated]:
+    designs = Designs(
+        np.array([item.parts for item in listed], dtype=np.intp).reshape(len(listed), -1),
+        np.array([item.step for item in listed], dtype=np.intp),
+    )
     requirements, margins = exact_margins(problem, designs)
     least = margins.min(axis=0)
     values = objective_values(problem, designs, least)
     values["worst-response"] = 1.0 / np.maximum(1.0 + response_margin(requirements, margins), 1e-12)
+    named = [problem.design(designs, k) for k in range(designs.count)]
     if goal not in values:
-        values[goal] = np.array(
-            [_total(problem.design(designs, k), brief, goal) for k in range(designs.count)]
-        )
-    # Rounding of two ways to the same number must not drop a design that stands on its limit.
-    met = least >= -1e-6
-    order = sorted(
-        range(designs.count), key=lambda k: (not met[k], sense * values[goal][k] if met[k] else -least[k])
-    )
+        values[goal] = np.array([_total(design, brief, goal) for design in named])
+    rows = zip(listed, named, least.tolist(), values[goal].tolist(), strict=True)
+    return [_Evaluated(*row) for row in rows]
+
+
+def _shown(
+    brief: Brief, problem: Problem, known: list[_Evaluated], shown: int, wanted: Callable[[Design], bool]
+) -> Nearest:
+    """The best of what was evaluated, best first, as the assessor sees them."""
+    met = sum(each.met for each in known)
     found: list[NearDesign] = []
-    for k in order[: 2 * shown]:
-        judged = assess(brief, problem.design(designs, k))
-        if judged.meets or not met.any():
-            found.append(NearDesign(judged, listed[k][0], listed[k][1]))
-        if len(found) == shown:
+    others: list[NearDesign] = []
+    for each in known[: LOOKED_AT * shown]:
+        judged = assess(brief, each.design)
+        near = NearDesign(judged, each.listed.rank, each.listed.short, each.objective)
+        if judged.meets and wanted(each.design):
+            found.append(near)
+        elif judged.meets or not met:
+            others.append(near)
+        if len(found) == shown or (not met and len(others) == shown):
             break
-    return Nearest(tuple(found), designs.count, problem.count, int(met.sum()))
+    return Nearest(tuple([*found, *others][:shown]), len(known), problem.count, met)
 
 
 def exact_margins(problem: Problem, designs: Designs) -> tuple[tuple[Requirement, ...], Floats]:
@@ -155,15 +203,15 @@ def exact_margins(problem: Problem, designs: Designs) -> tuple[tuple[Requirement
 
 
 def _total(design: Design, brief: Brief, goal: str) -> float:
+    """Sum of stiffness or damping over the parts, as `size_batch` has it for made ones, or the absorbers' mass."""
+    if goal == "absorber-mass":
+        return absorber_mass(brief)
     total = 0.0
-    for station in brief.stations:
-        mount = design.mounts[design.groups.index(station.group)]
-        total += station.parallel * (mount.stiffness_dynamic[2] if goal == "stiffness" else mount.viscous[2])
+    for group, mount in zip(design.groups, design.mounts, strict=True):
+        count = sum(s.parallel for s in brief.stations if s.group == group)
+        # A loss factor is not summed over equal parts.
+        total += (count if goal == "stiffness" or mount.viscous[2] else 1) * _share(mount, goal)
     return total
-
-
-def _shortfall(margins: Floats) -> Floats:
-    return np.asarray(np.sqrt(np.sum(np.minimum(margins, 0.0) ** 2, axis=0)))
 
 
 def _overload(mounts: tuple[Mount, ...], carried: list[float]) -> Floats:

@@ -12,7 +12,7 @@ from detune.problem.build import Problem
 from detune.sizing.made_parts import parallel_range, sizing_of, with_parallel
 from detune.sizing.one_axis import OneAxisOutcome, SizedDesign, solve_one_axis
 from detune.sizing.statement import OneAxisProblem, ResponseLimit
-from detune.solvers.one_axis_statement import OneAxis, one_axis, why_not_one_axis
+from detune.solvers.one_axis_statement import OneAxis, is_viscous, one_axis, why_not_one_axis
 
 Floats = NDArray[np.float64]
 # The design returned stands this far (relative) inside its limits, so that rounding does not decide.
@@ -40,13 +40,15 @@ class SizedBranch:
 class OneAxisSizing:
     """All branches, global best first, and what the one-axis problem leaves to the assessor (`relaxed`).
 
-    `bound` is proven: no design within the bounds does better. `gap` is its distance to the best branch.
+    `bound` is proven: no design within the bounds does better. `gap` is its distance to the best branch. Without
+    branches `proven` says whether it is proven that there are none.
     """
 
     statement: OneAxis
     branches: tuple[SizedBranch, ...]
     bound: float
     gap: float
+    proven: bool = True
 
 
 def solve(brief: Brief, problem: Problem) -> OneAxisSizing | str:
@@ -79,7 +81,7 @@ def _best_count(brief: Brief, found: list[OneAxisSizing]) -> OneAxisSizing:
     ]
     bound = sense * min(sense * each.bound for each in found)
     if not told:
-        return replace(found[0], bound=bound)
+        return replace(found[0], bound=bound, proven=all(each.proven for each in found))
     branches = tuple(sorted(told, key=lambda branch: sense * branch.objective))
     best = min((each for each in found if each.branches), key=lambda each: sense * each.branches[0].objective)
     return OneAxisSizing(best.statement, branches, bound, max(0.0, sense * (branches[0].objective - bound)))
@@ -181,7 +183,7 @@ def _told(
     branches = _named_apart(branches, brief)
     bound = outcome.bound + constant if level is None else level
     gap = outcome.gap if level is None else LEVEL * level
-    return OneAxisSizing(statement, tuple(branches), bound, gap)
+    return OneAxisSizing(statement, tuple(branches), bound, gap, bool(branches) or outcome.decided)
 
 
 def _inside(inside: OneAxisOutcome, best: SizedDesign) -> SizedDesign:
@@ -217,10 +219,9 @@ def constant_cost(brief: Brief) -> float:
 
     made = made_table(brief, brief.groups[0])
     pieces = sum(station.parallel for station in brief.stations)
-    known = {unknown.kind for unknown in sizing_of(brief).unknown}
     fixed = made.cost
     # A fixed damping of the other kind is no unknown of the one-axis problem.
-    if "viscous" in known or made.viscous is not None:
+    if is_viscous(brief):
         fixed += made.cost_per_loss_factor * (made.loss_factor or 0.0)
     elif made.viscous:
         fixed += made.cost_per_damping * made.viscous

@@ -50,10 +50,13 @@ def handed(
     if goal == "separation":
         parts.append((point.apart - level, point.apart_slopes, -1.0))
     parts += [_held(point, responds, name, value) for name, value in held.items()]
-    rows = np.concatenate([value for value, _, _ in parts]) - ROOM
+    rows = np.concatenate([value for value, _, _ in parts])
     slopes = np.concatenate([by for _, by, _ in parts]) * scale
+    # What no unknown changes and is just met, such as a number of part numbers, must not look missed by the room.
+    last = np.concatenate([np.full(len(value), by) for value, _, by in parts])
+    settled = (slopes == 0.0).all(axis=1) & (last == 0.0) & (rows >= 0.0)
+    rows = np.where(settled, np.maximum(rows, ROOM), rows) - ROOM
     if goal in ("worst-response", "separation"):
-        last = np.concatenate([np.full(len(value), by) for value, _, by in parts])
         return Handed(rows, np.column_stack([slopes, last]), level, None)
     total, by_total = point.objectives[goal]
     return Handed(rows, slopes, total, by_total * scale)

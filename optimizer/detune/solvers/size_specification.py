@@ -1,8 +1,8 @@
-"""Purchase specification: the largest box of stiffness and damping in which any part is proven to meet the brief.
+"""Purchase specification: the largest box of the figures of parts in which any part is proven to meet the brief.
 
-The box is proven over all parts in it (those of one group alike) and over whole frequency ranges by the matrix-ball
-bound with bisection (`proof.bisect`); separation by its two corners, which is exact; sag and static loads at every
-corner. What has no such form is told, and only sampled.
+The figures are those of `specification_figures`, the proof that of `specification_proof`: over all parts in the box
+(those of one group alike) and over whole ranges of speed. What it does not hold is told, and only sampled. Static
+stiffness has a box of its own, since nothing that moves depends on it but through what is carried at rest.
 """
 
 from __future__ import annotations
@@ -16,176 +16,72 @@ from numpy.typing import NDArray
 from detune.brief.allowable.band_limit import BandLimit
 from detune.brief.allowable.base import Allowable, HarmonicAllowable, StaticAllowable
 from detune.brief.allowable.separation import Separation
-from detune.brief.brief import Brief, demanded
-from detune.brief.sizing import SizingUnknown
+from detune.brief.brief import Brief
 from detune.problem.build import Problem
-from detune.proof.bisect import decide
-from detune.proof.robust_data import RobustSystem
-from detune.response.assemble import dynamic_matrices
 from detune.response.assess import assess
-from detune.sizing.made_parts import bounds, made_design, sizing_of
-from detune.sizing.specification import Specification, largest_proven_box
+from detune.sizing.made_parts import Made, made_design, sizing_of
+from detune.sizing.specification import Possible, Specification, largest_proven_box
 from detune.sizing.statement import SizingError
-from detune.solvers.size_batch import batch, judge, static_loads
-from detune.solvers.specification_outputs import Outputs, outputs_of
+from detune.solvers.one_axis_statement import one_axis, why_not_one_axis
+from detune.solvers.size_batch import Judged, batch, judge_alike
+from detune.solvers.specification_figures import Figure, figures_of, made_of
+from detune.solvers.specification_proof import PartsProof
 
 Floats = NDArray[np.float64]
 KINDS = ("stiffness", "loss-factor", "viscous")
-TOLERANCE = 8e-3
-MAX_BOXES = 400
-# Boxes of the bisection over all questions together; with these used up nothing further is proven.
-ALL_BOXES = 30_000
-INSIDE = 60
-BEYOND = 16
+# Faces stand within this ratio of where the proof ends.
+TOLERANCE = 4e-3
+# Boxes of different shapes that are grown where no quick test guides them.
+SHAPES = 3
+INSIDE, ASSESSED = 60, 6
+BEYOND, CORNERS = 16, 64
+# How far beyond a face parts are looked for that fail: just outside, and where none is found there.
+JUST, FARTHER = 1.0 + 3.0 * TOLERANCE, (1.03, 1.1, 1.3, 2.0)
+COLUMNS = 17
+# How often a box is drawn in where parts inside miss what no proof holds.
+DRAWN_IN = 6
 
 
 @dataclass(frozen=True)
 class SpecifiedGroup:
-    """Load range (N) one part of a group must carry, and its dynamic-to-static ratio as stated."""
+    """Load range (N) that one part of a group must carry, proven over the box."""
 
     group: str
     load: tuple[float, float]
-    dynamic_to_static: float
+
+
+@dataclass(frozen=True)
+class Beyond:
+    """What parts beyond a face miss: by which ratio beyond, and which requirement; None where none was found."""
+
+    ratio: float
+    missed: str | None
+
+    @property
+    def tight(self) -> bool:
+        """Whether some part just outside the face fails."""
+        return self.missed is not None and self.ratio == JUST
 
 
 @dataclass(frozen=True)
 class PurchaseSpecification:
-    """The box, round a design `values` (u,) with some room, and how it was proven and tested.
+    """The box over `figures`, round a design `values` (u,) with some room, and how it was proven and tested.
 
-    `box` is over `unknowns`, in order. `beyond` tells for each face of the box what fails just outside, None where
-    nothing was found to fail and the face is not known to be tight. `inside` random parts inside were judged exactly;
-    `failed` of them missed a requirement (a fault of the proof if not zero). `cut_short`: the work allowed was used up,
-    so faces may stand further in than need be.
+    `beyond` tells for each face of the box what fails outside. `inside` random parts inside were judged exactly, and
+    `assessed` of them by the assessor: none missed a requirement. `left_out`: what the proof does not hold.
+    `cut_short`: some boxes were left open for want of work, so faces may stand further in than need be.
     """
 
-    unknowns: tuple[SizingUnknown, ...]
+    figures: tuple[Figure, ...]
     values: Floats
+    cost: float
     box: Specification
     groups: tuple[SpecifiedGroup, ...]
-    beyond: tuple[str | None, ...]
+    beyond: tuple[Beyond, ...]
     inside: int
-    failed: int
-    proven: tuple[str, ...]
+    assessed: int
     left_out: tuple[str, ...]
     cut_short: bool
-
-
-class _Oracle:
-    """Whether every point of a box of the specified unknowns meets the brief, by proof."""
-
-    def __init__(self, brief: Brief, values: Floats, columns: list[int]) -> None:
-        made = made_design(brief, values)
-        self.brief, self.values, self.columns = made.brief, values, columns
-        self.origin = brief
-        self.problem, self.designs = batch(made.brief, [made])
-        self.mounts = made.design.mounts
-        loads = {row.station: row.axial_load for row in assess(made.brief, made.design).stations}
-        self.outputs: Outputs = outputs_of(made.brief, self.problem.model, loads)
-        self.separation = max(
-            (a.limit for a in demanded(made.brief)[0] if isinstance(a, Separation)), default=None
-        )
-        self.hardest = 0
-        self.boxes = 0
-
-    def __call__(self, lower: Floats, upper: Floats) -> bool:
-        if not self._corners(lower, upper):
-            return False
-        if self.separation is not None and not self._apart(lower, upper):
-            return False
-        system = self._system(lower, upper)
-        outputs = self.outputs.proven
-        # The limit that failed last is asked first.
-        order = [self.hardest, *(k for k in range(len(outputs)) if k != self.hardest)] if outputs else []
-        for k in order:
-            if self.boxes >= ALL_BOXES:
-                return False
-            decision = decide(system, outputs[k][1], max_boxes=MAX_BOXES)
-            self.boxes += decision.boxes
-            if decision.status != "proven":
-                self.hardest = k
-                return False
-        return True
-
-    def _corners(self, lower: Floats, upper: Floats) -> bool:
-        """Every requirement at all corners: quick to refuse, and what statics stand on."""
-        corners = np.array(list(itertools.product(*zip(lower, upper, strict=True))))
-        points = np.repeat(self.values[None], len(corners), axis=0)
-        points[:, self.columns] = corners
-        return bool(judge(self.origin, points).met.all())
-
-    def _apart(self, lower: Floats, upper: Floats) -> bool:
-        """Eigenvalues rise with every stiffness, so each mode ranges between its values at the two corners."""
-        frequencies = []
-        for end in (lower, upper):
-            values = self.values.copy()
-            values[self.columns] = end
-            problem, designs = batch(self.brief, [made_design(self.origin, values)])
-            dynamic = dynamic_matrices(problem.model, designs)
-            from detune.response.modes import mode_batch
-
-            frequencies.append(np.sort(mode_batch(dynamic).frequency[0]))
-        asked = self.separation or 0.0
-        for low, high in self.problem.intervals:
-            below = frequencies[1] <= low * (1.0 - asked)
-            above = frequencies[0] >= high * (1.0 + asked)
-            if not bool((below | above).all()):
-                return False
-        return True
-
-    def _system(self, lower: Floats, upper: Floats) -> RobustSystem:
-        model = self.problem.model
-        unknowns = [sizing_of(self.origin).unknown[k] for k in self.columns]
-        rows, stiffness, loss, viscous, s, t = [], [], [], [], [], []
-        for station in model.stations:
-            mount = self.mounts[station.group]
-            group = self.origin.groups[station.group]
-            count = station.parallel * station.factor
-            for axis in range(3):
-                k, eta, c = (mount.stiffness_dynamic[axis] or 0.0), (mount.loss_factor[axis] or 0.0), (
-                    mount.viscous[axis] or 0.0)  # fmt: skip
-                rows.append(station.rows[axis])
-                stiffness.append(count * k)
-                loss.append(count * k * eta)
-                viscous.append(count * c)
-                s.append(_index(unknowns, group, "stiffness", axis))
-                t.append(_index(unknowns, group, "damping", axis))
-        base = self.values[self.columns]
-        n = model.frame.count
-        step = int(self.designs.step[0])
-        own = model.geometric[step] if model.with_gravity_stiffness else np.zeros((n, n))
-        return RobustSystem(
-            mass=model.mass[step],
-            fixed_dynamic=model.fixed_dynamic + own,
-            fixed_hysteretic=model.fixed_hysteretic,
-            fixed_viscous=model.fixed_viscous,
-            axes=np.array(rows),
-            stiffness=np.array(stiffness),
-            loss=np.array(loss),
-            viscous=np.array(viscous),
-            stiffness_variable=np.array(s, dtype=np.int64),
-            damping_variable=np.array(t, dtype=np.int64),
-            mass_terms=np.zeros((0, n, n)),
-            mass_variable=np.zeros(0, dtype=np.int64),
-            low=lower / base,
-            high=upper / base,
-        )
-
-
-def _index(unknowns: list[SizingUnknown], group: str, what: str, axis: int) -> int:
-    """Variable of one axis of a group's parts: its own, else (the ratio kept) that of the axial stiffness; -1 fixed."""
-    fallback = -1
-    for number, unknown in enumerate(unknowns):
-        if unknown.group != group:
-            continue
-        if what == "damping" and unknown.kind in ("loss-factor", "viscous"):
-            return number
-        if what == "stiffness" and unknown.kind == "stiffness":
-            covered = {"axial": (2,), "lateral": (0, 1), "x": (0,), "y": (1,)}[str(unknown.axis)]
-            if axis in covered:
-                return number
-            if unknown.axis == "axial":
-                fallback = number
-    return fallback
 
 
 def why_no_specification(brief: Brief) -> str | None:
@@ -197,9 +93,8 @@ def why_no_specification(brief: Brief) -> str | None:
         return "the absorber's own tuning is no property of one part alone"
     for made in sizing_of(brief).made:
         own = {u.kind for u in sizing_of(brief).unknown if u.group == made.group}
-        if ("viscous" in own and made.loss_factor) or ("loss-factor" in own and made.viscous):
-            return f"parts of {made.group} lose by a loss factor and a dashpot together"
-        if {"viscous", "loss-factor"} <= own:
+        viscous = "viscous" in own or bool(made.viscous)
+        if viscous and ("loss-factor" in own or bool(made.loss_factor)):
             return f"parts of {made.group} lose by a loss factor and a dashpot together"
     return None
 
@@ -209,86 +104,206 @@ def specify(brief: Brief, values: Floats) -> PurchaseSpecification | str:
     why = why_no_specification(brief)
     if why is not None:
         return why
-    unknowns = sizing_of(brief).unknown
-    columns = [k for k, u in enumerate(unknowns) if u.kind in KINDS and u.bounds[0] < u.bounds[1]]
-    low, high = bounds(brief)
-    oracle = _Oracle(brief, values, columns)
-    named = tuple(unknowns[k].title for k in columns)
+    made = made_design(brief, values)
+    problem, _ = batch(made.brief, [made])
+    figures = figures_of(brief, made, problem.model)
+    proof = PartsProof(made, figures)
+    if proof.holds_nothing:
+        return f"no limit of this study has a proof over ranges of parts ({'; '.join(proof.left_out)})"
     try:
-        box = largest_proven_box(
-            named, values[columns], low[columns], high[columns], oracle, tuple(bool(low[k] > 0.0) for k in columns),
-            tolerance=TOLERANCE, joint_steps=6,
-        )  # fmt: skip
+        box = _boxed(proof, figures, _guide(brief, made, problem, figures), made)
     except SizingError as error:
         return str(error)
-    inside, failed = _inside(brief, values, columns, box)
+    box, failed = _drawn_in(made, figures, box, sizing_of(brief).seed)
+    if failed:
+        return (
+            f"{failed} of {INSIDE} random parts inside the ranges miss a requirement that the proof does not hold, "
+            "however far they are drawn in"
+        )
+    loads = proof.loads(box.lower, box.upper)
     return PurchaseSpecification(
-        tuple(unknowns[k] for k in columns),
-        values,
-        box,
-        _loads(brief, values, columns, box),
-        tuple(_beyond(brief, values, columns, box)),
-        inside,
-        failed,
-        tuple(name for name, _ in oracle.outputs.proven),
-        (*oracle.outputs.left_out, *_static_words(brief, oracle.problem)),
-        oracle.boxes >= ALL_BOXES,
+        figures=figures,
+        values=values,
+        cost=float(judge_alike(made.brief, [made]).objectives["cost"][0]),
+        box=box,
+        groups=tuple(SpecifiedGroup(group, loads[group]) for group in brief.groups if group in loads),
+        beyond=tuple(_beyond(made, figures, box, sizing_of(brief).seed)),
+        inside=INSIDE,
+        assessed=ASSESSED,
+        left_out=proof.left_out,
+        cut_short=proof.cut_short,
     )
 
 
-def _static_words(brief: Brief, problem: Problem) -> tuple[str, ...]:
-    """Statics of several groups stand on the corners alone."""
-    if len(brief.groups) == 1:
-        return ()
-    asked = {a.quantity() for a in demanded(brief)[0] if isinstance(a, StaticAllowable)}
-    return (f"at the corners of the box alone: {', '.join(sorted(asked))}",) if asked else ()
+def _boxed(
+    proof: PartsProof, figures: tuple[Figure, ...], possible: Possible | None, made: Made
+) -> Specification:
+    """The box of what is at rest, and then that of what moves; both as one. Raises SizingError."""
+    rest = np.array([figure.what == "static" for figure in figures])
+    low, high = proof.value.copy(), proof.value.copy()
+
+    def full(which: NDArray[np.bool_], a: Floats, b: Floats) -> tuple[Floats, Floats]:
+        below, above = low.copy(), high.copy()
+        below[which], above[which] = a, b
+        return below, above
+
+    still = _largest(figures, rest, lambda a, b: proof.at_rest(*full(rest, a, b)), None)
+    center = proof.value
+    for share in (1.0, 0.5, 0.2, 0.0):
+        low[rest] = center[rest] + share * (still.lower - center[rest])
+        high[rest] = center[rest] + share * (still.upper - center[rest])
+        if proof(low, high):
+            break
+    figures = _not_softer(figures, dict(zip(still.names, low[rest].tolist(), strict=True)))
+
+    def kept(a: Floats, b: Floats) -> bool:
+        whole = full(~rest, a, b)
+        return proof(*whole) and (not proof.left_out or _kept_at_some(made, figures, *whole))
+
+    moving = _largest(figures, ~rest, kept, possible)
+    lower, upper = full(~rest, moving.lower, moving.upper)
+    faces = {(face.quantity, face.upper_end): face for face in (*still.faces, *moving.faces)}
+    if share < 1.0:
+        for (name, up), face in faces.items():
+            if any(f.title == name for f, at in zip(figures, rest, strict=True) if at):
+                value = float((upper if up else lower)[[f.title for f in figures].index(name)])
+                faces[name, up] = replace(face, value=value, stopped_by="no proof beyond")
+    names = tuple(figure.title for figure in figures)
+    ordered = tuple(faces[name, up] for name in names for up in (False, True))
+    questions = still.questions + moving.questions
+    return Specification(names, lower, upper, ordered, questions, moving.shapes)
 
 
-def _points(values: Floats, columns: list[int], rows: Floats) -> Floats:
-    points = np.repeat(values[None], len(rows), axis=0)
-    points[:, columns] = rows
-    return points
+def _kept_at_some(made: Made, figures: tuple[Figure, ...], low: Floats, high: Floats) -> bool:
+    """Whether what no proof holds is met at the middle of every face and at the two corners of least and most."""
+    middle = 0.5 * (low + high)
+    rows = np.repeat(middle[None], 2 * len(low), axis=0)
+    for axis in range(len(low)):
+        rows[2 * axis, axis], rows[2 * axis + 1, axis] = low[axis], high[axis]
+    return bool(_judged(made, figures, np.concatenate([rows, low[None], high[None]])).met.all())
 
 
-def _inside(brief: Brief, values: Floats, columns: list[int], box: Specification) -> tuple[int, int]:
-    rng = np.random.default_rng(sizing_of(brief).seed)
-    drawn = box.lower + (box.upper - box.lower) * rng.random((INSIDE, len(columns)))
-    met = judge(brief, _points(values, columns, drawn)).met
-    return INSIDE, int((~met).sum())
+def _drawn_in(
+    made: Made, figures: tuple[Figure, ...], box: Specification, seed: int
+) -> tuple[Specification, int]:
+    """The box, drawn in round the design as long as random parts inside miss what no proof holds; how many still do."""
+    center = np.array([figure.value for figure in figures])
+    failed = _failed_inside(made, figures, box, seed)
+    for _ in range(DRAWN_IN):
+        if not failed:
+            break
+        lower, upper = (center + 0.7 * (edge - center) for edge in (box.lower, box.upper))
+        faces = tuple(
+            replace(face, value=float((upper if face.upper_end else lower)[box.names.index(face.quantity)]),
+                    stopped_by="no proof beyond")
+            for face in box.faces
+        )  # fmt: skip
+        box = replace(box, lower=lower, upper=upper, faces=faces)
+        failed = _failed_inside(made, figures, box, seed)
+    return box, failed
 
 
-def _beyond(brief: Brief, values: Floats, columns: list[int], box: Specification) -> list[str | None]:
-    """What parts just outside each face miss: corners of the face and random points of it, moved out a little."""
-    rng = np.random.default_rng(sizing_of(brief).seed)
-    found: list[str | None] = []
+def _not_softer(figures: tuple[Figure, ...], static: dict[str, float]) -> tuple[Figure, ...]:
+    """Axial stiffness in vibration tried from the least static one up: below it there are no parts.
+
+    Rubber, air and steel are at least as stiff in vibration as under a steady load.
+    """
+    least = {f.group: static[f.title] for f in figures if f.what == "static"}
+    return tuple(
+        replace(f, low=min(max(f.low, least[f.group]), f.value)) if f.what == "axial" else f for f in figures
+    )
+
+
+def _largest(
+    figures: tuple[Figure, ...], which: NDArray[np.bool_], proven: object, possible: Possible | None
+) -> Specification:
+    chosen = [figure for figure, own in zip(figures, which.tolist(), strict=True) if own]
+    return largest_proven_box(
+        tuple(figure.title for figure in chosen),
+        np.array([figure.value for figure in chosen]),
+        np.array([figure.low for figure in chosen]),
+        np.array([figure.high for figure in chosen]),
+        proven,  # type: ignore[arg-type]
+        (True,) * len(chosen),
+        tolerance=TOLERANCE,
+        shapes=SHAPES if len(chosen) > 1 else 1,
+        possible=possible,
+    )
+
+
+def _guide(brief: Brief, made: Made, problem: Problem, figures: tuple[Figure, ...]) -> Possible | None:
+    """On one axis a quick test of many boxes of what moves: both ends of the damping over the stiffness.
+
+    The damping that meets every limit at one stiffness is an interval (`sizing.envelope`), so its two ends decide.
+    """
+    moving = [figure for figure in figures if figure.what != "static"]
+    if why_not_one_axis(brief) is not None or len(moving) != 2 or moving[0].what != "axial":
+        return None
+    from detune.solvers.size_map import one_axis_margins
+
+    axis = one_axis(made.brief, problem)
+    axis = replace(axis, problem=replace(axis.problem, sag=None))
+    if not axis.problem.limits and axis.problem.separation is None:
+        return None
+    per = axis.pieces if moving[1].what == "viscous" else 1
+    mass = axis.problem.mass + made.design.ballast
+    share = np.linspace(0.0, 1.0, COLUMNS)
+
+    def possible(low: Floats, high: Floats) -> NDArray[np.bool_]:
+        stiffness = low[:, :1] * (high[:, :1] / low[:, :1]) ** share
+        both = np.stack([low[:, 1], high[:, 1]], axis=1)
+        k = np.repeat(stiffness[:, None, :], 2, axis=1).ravel() * axis.pieces
+        c = np.repeat(both[:, :, None], COLUMNS, axis=2).ravel() * per
+        _, margins = one_axis_margins(axis, k, c, np.full(len(k), mass))
+        return np.asarray((margins >= 0.0).all(axis=0).reshape(len(low), -1).all(axis=1))
+
+    return possible
+
+
+def _judged(made: Made, figures: tuple[Figure, ...], rows: Floats) -> Judged:
+    return judge_alike(made.brief, [made_of(made, figures, row) for row in rows])
+
+
+def _failed_inside(made: Made, figures: tuple[Figure, ...], box: Specification, seed: int) -> int:
+    """How many of random parts inside miss a requirement, as the batch has it or, of the nearest, the assessor."""
+    rng = np.random.default_rng(seed)
+    drawn = box.lower + (box.upper - box.lower) * rng.random((INSIDE, len(figures)))
+    judged = _judged(made, figures, drawn)
+    nearest = np.argsort(judged.least, kind="stable")[:ASSESSED]
+    failed = set(np.flatnonzero(~judged.met).tolist())
+    for number in nearest.tolist():
+        part = made_of(made, figures, drawn[number])
+        failed |= set() if assess(part.brief, part.design).meets else {number}
+    return len(failed)
+
+
+def _beyond(made: Made, figures: tuple[Figure, ...], box: Specification, seed: int) -> list[Beyond]:
+    """What parts outside each face miss: corners of the face and random points of it, moved out."""
+    rng = np.random.default_rng(seed)
+    rest = [figure.what == "static" for figure in figures]
+    found = []
     for face in box.faces:
         axis = box.names.index(face.quantity)
-        rows = box.lower + (box.upper - box.lower) * rng.random((BEYOND, len(columns)))
-        corners = np.array(list(itertools.product(*zip(box.lower, box.upper, strict=True))))
+        rows = box.lower + (box.upper - box.lower) * rng.random((BEYOND, len(figures)))
+        own = [k for k, at in enumerate(rest) if at == rest[axis]]
+        corners = np.repeat(0.5 * (box.lower + box.upper)[None], 2 ** len(own), axis=0)
+        corners[:, own] = list(itertools.product(*zip(box.lower[own], box.upper[own], strict=True)))
+        if len(corners) > CORNERS:
+            corners = corners[rng.permutation(len(corners))[:CORNERS]]
         rows = np.concatenate([rows, corners])
-        # As far out again as the proof's own tolerance.
-        out = 1.0 + 3.0 * TOLERANCE
-        rows[:, axis] = face.value * out if face.upper_end else face.value / out
-        judged = judge(brief, _points(values, columns, rows))
-        worst = np.unravel_index(int(np.argmin(judged.margins)), judged.margins.shape)
-        if judged.margins[worst] < 0.0:
-            found.append(judged.requirements[int(worst[0])].label)
+        for ratio in (JUST, *FARTHER):
+            rows[:, axis] = face.value * ratio if face.upper_end else face.value / ratio
+            judged = _judged(made, figures, rows)
+            worst = np.unravel_index(int(np.argmin(judged.margins)), judged.margins.shape)
+            if judged.margins[worst] < 0.0:
+                found.append(Beyond(ratio, judged.requirements[int(worst[0])].label))
+                break
+            if face.stopped_by == "limit of the search":
+                found.append(Beyond(ratio, None))
+                break
         else:
-            found.append(None)
+            found.append(Beyond(ratio, None))
     return found
-
-
-def _loads(
-    brief: Brief, values: Floats, columns: list[int], box: Specification
-) -> tuple[SpecifiedGroup, ...]:
-    corners = [values[columns], *np.array(list(itertools.product(*zip(box.lower, box.upper, strict=True))))]
-    carried: dict[str, list[float]] = {group: [] for group in brief.groups}
-    for corner in corners:
-        made = made_design(brief, _points(values, columns, np.array([corner]))[0])
-        for row in static_loads(made):
-            carried[row[0]].append(row[1])
-    ratio = {made.group: made.dynamic_to_static for made in sizing_of(brief).made}
-    return tuple(SpecifiedGroup(g, (min(loads), max(loads)), ratio[g]) for g, loads in carried.items())
 
 
 def brief_with_room(brief: Brief, room: float) -> Brief:
@@ -311,9 +326,3 @@ def _tighter_curve(allowable: BandLimit, room: float) -> BandLimit:
     copied = allowable.model_copy()
     copied._limit = allowable.bands()[1] / (1.0 + room)
     return copied
-
-
-def tightened(box: Specification, share: float) -> Specification:
-    """The box drawn in by a share of each side, for tests of its inside."""
-    shrink = share * (box.upper - box.lower)
-    return replace(box, lower=box.lower + shrink, upper=box.upper - shrink)

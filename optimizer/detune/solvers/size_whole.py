@@ -32,30 +32,36 @@ def step_of(unknown: SizingUnknown) -> float | None:
     return 1.0 if unknown.kind == "parallel" else unknown.steps
 
 
-def on_steps(brief: Brief, found: ManyStarts) -> ManyStarts:
-    """The searches again with every stepped unknown on a step; `found` itself where nothing comes in steps."""
+def on_steps(
+    brief: Brief,
+    found: ManyStarts,
+    goal: str | None = None,
+    sense: float | None = None,
+    levels: dict[str, float] | None = None,
+    few: int = FEW,
+) -> ManyStarts:
+    """The searches again with every stepped unknown on a step; `found` itself where nothing comes in steps.
+
+    `goal`, `sense` and `levels` are those `found` was searched with (the study's own goal when left out). Up to
+    `few` combinations are all tried.
+    """
     sizing = sizing_of(brief)
+    goal, sense = goal or sizing.goal, sizing.sense if sense is None else sense
     stepped = {k: step for k, u in enumerate(sizing.unknown) if (step := step_of(u)) is not None}
     if not stepped or not found.searches:
         return found
     searches, evaluations, slopes = [], found.evaluations, found.slopes
-    for combination, start in _combinations(sizing.unknown, stepped, found):
+    for combination, start in _combinations(sizing.unknown, stepped, found, few):
         values = start.copy()
         for k, value in combination.items():
             values[k] = value
         held = _held(brief, combination)
         again = size_many_starts.solve(
-            held, sizing.goal, sizing.sense, starts=1, seed=sizing.seed, first=(values,), pool=4
+            held, goal, sense, starts=1, seed=sizing.seed, first=(values,), held=levels, pool=4
         )
         searches += list(again.searches)
         evaluations, slopes = evaluations + again.evaluations, slopes + again.slopes
-    good = sorted(
-        (s for s in searches if s.least_margin >= size_many_starts.MET),
-        key=lambda s: sizing.sense * s.objective,
-    )
-    bad = sorted(
-        (s for s in searches if s.least_margin < size_many_starts.MET), key=lambda s: -s.least_margin
-    )
+    good, bad = size_many_starts.ordered(searches, sizing.sense)
     spread, near = (math.nan,) * 3, 0.0
     if good:
         reached = np.array([s.objective for s in good])
@@ -74,14 +80,14 @@ def on_steps(brief: Brief, found: ManyStarts) -> ManyStarts:
 
 
 def _combinations(
-    unknowns: tuple[SizingUnknown, ...], stepped: dict[int, float], found: ManyStarts
+    unknowns: tuple[SizingUnknown, ...], stepped: dict[int, float], found: ManyStarts, few: int
 ) -> list[tuple[dict[int, float], Floats]]:
     """Values of the stepped unknowns to hold, each with the point (u,) to start from."""
     steps = {}
     for k, step in stepped.items():
         low, high = unknowns[k].bounds
         steps[k] = [low + i * step for i in range(math.floor((high - low) / step * (1 + 1e-12) + 1e-9) + 1)]
-    if math.prod(len(each) for each in steps.values()) <= FEW:
+    if math.prod(len(each) for each in steps.values()) <= few:
         start = found.searches[0].values
         return [(dict(zip(steps, each, strict=True)), start) for each in itertools.product(*steps.values())]
     chosen: dict[tuple[float, ...], Floats] = {}

@@ -3,7 +3,7 @@
 from dataclasses import dataclass, field
 from typing import Literal
 
-from detune.proof.combined_bisect import RowsDecision
+from detune.proof.bisection import RowsDecision
 from detune.proof.noise_data import NoiseRows
 from detune.proof.scatter_data import LimitedRows, ScatterSystem
 from detune.proof.static_rows import StaticLimits, StaticRowsDecision

@@ -1,5 +1,6 @@
 """The front: every nondominated design, each judged by the assessor."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -8,8 +9,8 @@ from numpy.typing import NDArray
 from detune.brief.choice import LARGER_IS_BETTER
 from detune.ground.errors import SolveError
 from detune.problem.build import Problem
-from detune.response.assess import assess
 from detune.response.assessment import Assessment
+from detune.response.assessor import Assessor
 from detune.response.designs import Designs
 from detune.solvers.nondominated import as_minimised, nondominated
 from detune.solvers.outcome import Outcome
@@ -25,7 +26,8 @@ class Front:
 
     `objectives` (each (D,)) are those of every design that met it, `designs` the same designs;
     `index` says which of them the points are. `withdrawn` were claimed by the solver within rounding
-    of a limit and not confirmed.
+    of a limit and not confirmed. `unassessed`: how many more the solver claims to lie on the front, which were not
+    assessed for want of time; the first point never is one of them.
     """
 
     trade: tuple[str, ...]
@@ -34,6 +36,7 @@ class Front:
     designs: Designs
     objectives: dict[str, Floats]
     withdrawn: tuple[Assessment, ...]
+    unassessed: int = 0
 
 
 def objective_of(assessment: Assessment, name: str) -> float:
@@ -47,12 +50,18 @@ def objective_of(assessment: Assessment, name: str) -> float:
     }[name]
 
 
-def assessed_front(problem: Problem, outcome: Outcome) -> Front:
+def assessed_front(
+    problem: Problem,
+    outcome: Outcome,
+    assessor: Assessor | None = None,
+    may_begin: Callable[[], bool] = lambda: True,
+) -> Front:
     """Return the front over the traded objectives, every point assessed.
 
-    Raises SolveError where solver and assessor disagree by more than rounding: that is an error
-    report, not an answer.
+    `may_begin` is asked before each assessment but those it takes to find the first point. Raises SolveError where
+    solver and assessor disagree by more than rounding: that is an error report, not an answer.
     """
+    judge = assessor or Assessor(problem.brief)
     trade = problem.brief.objectives.trade
     alive = np.arange(outcome.designs.count)
     known: dict[int, Assessment] = {}
@@ -60,10 +69,12 @@ def assessed_front(problem: Problem, outcome: Outcome) -> Front:
     while True:
         values = {name: value[alive] for name, value in outcome.objectives.items()}
         front = alive[nondominated(as_minimised(values, trade))] if len(alive) else alive
-        for index in front:
-            if int(index) not in known:
-                known[int(index)] = assess(problem.brief, problem.design(outcome.designs, int(index)))
-        refused = [int(index) for index in front if not known[int(index)].meets]
+        found = False
+        for index in map(int, front):
+            if index not in known and (not found or may_begin()):
+                known[index] = judge(problem.design(outcome.designs, index))
+            found = found or (index in known and known[index].meets)
+        refused = [index for index in map(int, front) if index in known and not known[index].meets]
         if not refused:
             break
         for index in refused:
@@ -71,13 +82,15 @@ def assessed_front(problem: Problem, outcome: Outcome) -> Front:
             withdrawn.append(known[index])
         alive = np.setdiff1d(alive, refused)
     position = {int(index): place for place, index in enumerate(alive)}
+    points = [index for index in map(int, front) if index in known]
     return Front(
         trade=trade,
-        points=tuple(known[int(index)] for index in front),
-        index=tuple(position[int(index)] for index in front),
+        points=tuple(known[index] for index in points),
+        index=tuple(position[index] for index in points),
         designs=outcome.designs.take(alive),
         objectives={name: value[alive] for name, value in outcome.objectives.items()},
         withdrawn=tuple(withdrawn),
+        unassessed=len(front) - len(points),
     )
 
 

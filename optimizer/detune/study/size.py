@@ -9,9 +9,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from detune.brief.brief import Brief
 from detune.brief.finding import Finding
 from detune.ground.errors import BriefError
-from detune.parts.kinds.mount import Mount
 from detune.problem.build import Problem, build
 from detune.response.assess import assess
 from detune.response.assessment import Assessment
@@ -27,12 +27,13 @@ from detune.solvers.size_absorber import (
     scattered,
 )
 from detune.solvers.size_batch import batch, judge
+from detune.solvers.size_conflict import Conflict, conflict
 from detune.solvers.size_convex import ConvexSizing, convex_answers, why_not_convex
 from detune.solvers.size_convex_axis import soft_side
 from detune.solvers.size_convex_parts import PartsBound, parts_bounds
 from detune.solvers.size_front import SizingFront, one_axis_front
 from detune.solvers.size_many_starts import ManyStarts
-from detune.solvers.size_map import SizingMap, sizing_map
+from detune.solvers.size_map import SizingMap
 from detune.solvers.size_nearest import Nearest, nearest_parts
 from detune.solvers.size_one_axis import OneAxisSizing
 from detune.solvers.size_second_opinion import SizingOpinion, at_best_count, second_opinion
@@ -44,6 +45,10 @@ from detune.solvers.size_specification import (
 )
 from detune.solvers.size_whole import on_steps, step_of
 from detune.study.load import Study
+from detune.study.over_scatter import OverScatter
+from detune.study.size_cautions import at_ends, not_fixed
+from detune.study.size_drawn import map_of
+from detune.study.size_scatter import RealOverScatter, SizedOverScatter, held_over_scatter
 from detune.study.size_sense import check_sense, faults_of, one_axis_only
 
 Floats = NDArray[np.float64]
@@ -75,6 +80,8 @@ class SizingResult:
 
     `branches` are all assessed, best first. `exact` holds the one-axis answer, `searches` that of many starts.
     `worth` says in words what the best is worth; `bound` is a proven bound on the objective, None where there is none.
+    `over` judges the best over the scatter that the study states, None where it states none; `near_over` each of the
+    nearest real designs. `no_convex`: why no convex form holds the unknowns of a search.
     """
 
     study: Study
@@ -97,6 +104,10 @@ class SizingResult:
     parts_bounds: tuple[PartsBound, ...] = ()
     closed_forms: tuple[ClosedForm, ...] = ()
     scattered: tuple[ScatteredAbsorber, ...] = ()
+    over: SizedOverScatter | None = None
+    conflict: Conflict | None = None
+    near_over: tuple[OverScatter | None, ...] = ()
+    no_convex: str | None = None
 
     @property
     def answer(self) -> SizedBest | None:
@@ -105,8 +116,12 @@ class SizingResult:
 
     @property
     def exit_code(self) -> int:
-        """0 a design meets the brief, 1 none does."""
-        return 0 if self.answer is not None else 1
+        """0 a design meets the brief, over its scatter where that is an interval; 3 that is open; 1 none does."""
+        if self.answer is None:
+            return 1 if self.exact is None or self.exact.proven else 3
+        if self.over is None or self.over.judged.verdict is None or self.over.judged.proven:
+            return 0
+        return 1 if self.over.judged.proven is False else 3
 
 
 def size_study(study: Study, drawings: bool = True, opinion_limit: float | None = None) -> SizingResult:
@@ -128,6 +143,7 @@ def size_study(study: Study, drawings: bool = True, opinion_limit: float | None 
     searches: ManyStarts | None = None
     exact: OneAxisSizing | None = None
     opinion: SizingOpinion | None = None
+    fighting: Conflict | None = None
     if isinstance(solved, str):
         one_axis_only(study, solved, opinion_limit is not None)
         why = f"{solved}, so the exact one-axis method does not apply"
@@ -142,6 +158,7 @@ def size_study(study: Study, drawings: bool = True, opinion_limit: float | None 
         why = "one mass on one stiffness and one damping: every feasible branch is found"
         branches = _of_branches(study, exact)
         worth = _worth(exact, branches)
+        fighting = None if branches else conflict(brief, problem)
         if opinion_limit is not None:
             opinion = second_opinion(brief, problem, exact, opinion_limit)
             worth = opinion.worth(worth)
@@ -152,15 +169,33 @@ def size_study(study: Study, drawings: bool = True, opinion_limit: float | None 
             worth = f"{searches.worth}; the relaxed problem bounds it"
     found = SizingResult(
         study, "one axis, exact" if searches is None else "many starts", why, worth, branches, bound, exact, searches,
-        None, None, None, convex, None, (), cautions, 0.0, opinion,
+        None, None, None, convex, None, (), cautions, 0.0, opinion, conflict=fighting,
     )  # fmt: skip
-    return _with_rest(found, problem, drawings, started)
+    if isinstance(solved, str):
+        found = replace(found, no_convex=why_not_convex(brief, problem))
+    return _with_rest(_over_the_scatter(found), problem, drawings, started)
+
+
+def _over_the_scatter(found: SizingResult) -> SizingResult:
+    """The result with its best design judged over the scatter, and before it one with room where that is needed."""
+    best, brief = found.answer, found.study.brief
+    if best is None:
+        return found
+    exact = found.searches is None
+    over = held_over_scatter(brief, best.values, lambda tight, near: _sized_again(tight, near, exact))
+    if over is None or not over.changed:
+        return replace(found, over=over)
+    tight = tuple(row.label for row in over.assessment.margins if abs(row.margin) < 1e-3)
+    first = SizedBest("with room for the scatter", over.values, over.objective, over.assessment, tight)
+    worth = "sized again with room for the scatter; not proven the best of all that hold over it"
+    return replace(found, branches=(first, *found.branches), over=over, bound=None, worth=worth)
 
 
 def _worth(exact: OneAxisSizing, branches: tuple[SizedBest, ...]) -> str:
     """What the first branch that meets the brief is worth, in words."""
     if not branches:
-        return "global: proven that no design within the bounds meets the limits"
+        none = "no design within the bounds meets the limits"
+        return f"global: proven that {none}" if exact.proven else f"none found, and not proven that {none}"
     if not branches[0].assessment.meets:
         return f"best of the branches the assessor accepts; nothing is better than {branches[0].objective:.6g} (proven)"
     if exact.gap > GAP * max(abs(branches[0].objective), 1e-12):
@@ -188,36 +223,30 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
     sizing = sizing_of(brief)
     cautions = list(found.cautions)
     near = plan = front = None
+    near_over: tuple[OverScatter | None, ...] = ()
     sides: tuple[PartsBound, ...] = ()
     convex = found.convex
-    mounts: tuple[Mount, ...] = ()
+    real: Problem | None = None
     if best is not None:
-        cautions += _at_ends(best, found.study)
+        cautions += at_ends(found.study.brief, best.values)
+        cautions += (
+            () if found.searches is None else not_fixed(found.study.brief, best.values, best.objective)
+        )
         if drawings and sizing.trade:
             front = _front(replace(found, study=study), best)
             if found.searches is not None and any(step_of(unknown) is not None for unknown in sizing.unknown):
                 cautions.append("the front takes ballast as continuous: its points need not stand on a step")
         if brief.choices:
-            there = made_design(brief, best.values).brief
-            real = build(there, study.catalogs)
-            mounts = tuple(dict.fromkeys(mount for group in real.candidates for mount in group))
-            ideals = [
-                best.values,
-                *(b.values for b in found.branches if b.assessment.meets and b is not best),
-            ][:3]
-            ideals = [values for values in ideals if at_best_count(found.study.brief, values) == brief]
-            if front is not None and front.points:
-                chosen = np.linspace(0, len(front.points) - 1, ANCHORS).round().astype(int)
-                ideals += [front.points[k].values for k in dict.fromkeys(chosen.tolist())]
-            near = nearest_parts(there, ideals, real, sizing.goal, sizing.sense)
+            real = build(made_design(brief, best.values).brief, study.catalogs)
+            near, near_over = _nearest(found, best, brief, real, front)
             sides = parts_bounds(real) if drawings else ()
     around = best or (found.branches[0] if found.branches else None)
     axis = None if found.exact is None else found.exact.statement
     if drawings and axis is not None and best is not None:
         soft = soft_side(brief, axis)
         convex = convex if soft is None else (soft,)
-    if drawings and sizing.map and around is not None:
-        plan = sizing_map(brief, sizing.map, around.values, axis, mounts, sizing.goal)
+    if drawings and sizing.map:
+        plan = map_of(study, None if around is None else around.values, axis, best is not None, real)
     plan_of_purchase = None
     if best is not None and sizing.specification:
         plan_of_purchase = _specified(replace(found, study=study), best)
@@ -228,6 +257,7 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
         closed_forms=() if best is None else closed_forms(brief, best.values),
         scattered=() if best is None else scattered(brief, best.values),
         nearest=near,
+        near_over=near_over,
         map=plan,
         front=front,
         convex=convex,
@@ -236,6 +266,25 @@ def _with_rest(found: SizingResult, problem: Problem, drawings: bool, started: f
         cautions=tuple(cautions),
         seconds=time.perf_counter() - started,
     )
+
+
+def _nearest(
+    found: SizingResult, best: SizedBest, brief: Brief, real: Problem, front: SizingFront | None
+) -> tuple[Nearest, tuple[OverScatter | None, ...]]:
+    """The nearest of the `real` designs to answer, other branches and points of the front, each over the scatter."""
+    sizing = sizing_of(brief)
+    ideals = [
+        best.values,
+        *(b.values for b in found.branches if b.assessment.meets and b is not best),
+    ][:3]
+    ideals = [values for values in ideals if at_best_count(found.study.brief, values) == brief]
+    if front is not None and front.points:
+        chosen = np.linspace(0, len(front.points) - 1, ANCHORS).round().astype(int)
+        ideals += [front.points[k].values for k in dict.fromkeys(chosen.tolist())]
+    holds = RealOverScatter(real)
+    there = made_design(brief, best.values).brief
+    near = nearest_parts(there, ideals, real, sizing.goal, sizing.sense, wanted=holds)
+    return near, tuple(holds.of(design.assessment.design) for design in near.designs)
 
 
 def with_convex(found: SizingResult, convex: tuple[ConvexSizing, ...]) -> str:
@@ -283,33 +332,36 @@ def _convex(study: Study, problem: Problem) -> tuple[ConvexSizing, ...]:
     return convex_answers(brief, problem, middle)
 
 
-def with_room(study: Study, best: SizedBest, exact: bool) -> tuple[float, Floats] | None:
-    """A design of the same objective with the most room of ROOMS inside its limits, for the specification."""
-    sizing = sizing_of(study.brief)
-    for room in ROOMS:
-        tight = brief_with_room(study.brief, room)
-        if exact:
-            problem, _ = batch(tight, [made_design(tight, best.values)])
-            found = size_one_axis.solve(tight, problem)
-            if not isinstance(found, str) and found.branches:
-                return room, found.branches[0].values
-            continue
-        searched = size_many_starts.solve(
-            tight, sizing.goal, sizing.sense, starts=2, seed=sizing.seed, first=(best.values,)
-        )
-        if searched.best is not None:
-            return room, searched.best.values
-    return None
+def _sized_again(tight: Brief, near: Floats, exact: bool) -> Floats | None:
+    """The values (u,) that a brief with tighter limits comes to, searched for from `near`; None where none is found."""
+    sizing = sizing_of(tight)
+    if exact:
+        problem, _ = batch(tight, [made_design(tight, near)])
+        solved = size_one_axis.solve(tight, problem)
+        return None if isinstance(solved, str) or not solved.branches else solved.branches[0].values
+    searched = size_many_starts.solve(
+        tight, sizing.goal, sizing.sense, starts=2, seed=sizing.seed, first=(near,)
+    )
+    best = on_steps(tight, searched).best
+    return None if best is None else best.values
 
 
 def _specified(found: SizingResult, best: SizedBest) -> PurchaseSpecification | str:
     why = why_no_specification(found.study.brief)
     if why is not None:
         return why
-    roomy = with_room(found.study, best, found.searches is None)
-    if roomy is None:
-        return "no design has room inside its limits: any scatter of a part would miss one"
-    return specify(found.study.brief, roomy[1])
+    told = "no design has room inside its limits: any scatter of a part would miss one"
+    for room in ROOMS:
+        # The design of the same objective with the most room; one that no proof holds for gives way to the next.
+        brief = found.study.brief
+        values = _sized_again(brief_with_room(brief, room), best.values, found.searches is None)
+        if values is None:
+            continue
+        bought = specify(brief, values)
+        if not isinstance(bought, str):
+            return bought
+        told = bought
+    return told
 
 
 def _of_branches(study: Study, exact: OneAxisSizing) -> tuple[SizedBest, ...]:
@@ -339,19 +391,3 @@ def _of_searches(study: Study, searches: ManyStarts) -> tuple[SizedBest, ...]:
             SizedBest(f"local search {len(found) + 1}", search.values, search.objective, assessment, tight)
         )
     return tuple(found)
-
-
-def _at_ends(best: SizedBest, study: Study) -> list[str]:
-    """Say where an unknown came to rest on the bound the user gave."""
-    notes = []
-    for unknown, value in zip(sizing_of(study.brief).unknown, best.values.tolist(), strict=True):
-        low, high = unknown.bounds
-        if low == high:
-            continue
-        for end, name in ((low, "lower"), (high, "upper")):
-            if abs(value - end) <= 1e-6 * max(abs(end), 1e-9) and not (end == 0.0 and name == "lower"):
-                notes.append(
-                    f"{unknown.title} rests on its {name} bound, which the study states: no requirement stops it "
-                    "there, and a wider bound would change the answer"
-                )
-    return notes

@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from numpy.typing import NDArray
 
 from detune.brief.finding import Finding
 from detune.brief.read import to_fault
-from detune.brief.sizing import Sizing
+from detune.brief.sizing import STANDS_FOR, Sizing
 from detune.ground.errors import BriefError, Fault
 from detune.ground.toml_positions import positions_of
 from detune.sizing.made_parts import sizing_of
@@ -42,6 +43,13 @@ def one_axis_only(study: Study, why: str, opinion: bool) -> None:
                 f" and here {why}"
             )
             faults += faults_of(study, (Finding(("sizing", "unknown", index), unknown.title, expected),))
+    titles = [unknown.title for unknown in sizing_of(study.brief).unknown]
+    for index, name in enumerate(sizing_of(study.brief).map):
+        if name in STANDS_FOR and name not in titles:
+            expected = (
+                f"an unknown: {', '.join(titles)}; {name} spans a map on one axis alone, and here {why}"
+            )
+            faults += faults_of(study, (Finding(("sizing", "map", index), name, expected),))
     if opinion:
         expected = (
             f"no second opinion on this study: it is given for one mass on one axis alone, and here {why}"
@@ -57,28 +65,11 @@ def check_sense(study: Study) -> tuple[str, ...]:
     Every unknown is moved between its bounds, the others at a few points: what changes neither a requirement
     nor the objective has no answer. Raises BriefError with every such unknown.
     """
-    brief = study.brief
-    sizing = sizing_of(brief)
-    unknowns = sizing.unknown
-    to = size_many_starts.Coordinates(brief)
-    base = start_points(len(unknowns), TRIED, sizing.seed)
+    sizing = sizing_of(study.brief)
+    felt, counts, boundless = _effects(study)
     findings: list[Finding] = []
     cautions: list[str] = []
-    moved = []
-    for column in range(len(unknowns)):
-        for end in (0.0, 1.0):
-            there = base.copy()
-            there[:, column] = end
-            moved.append(there)
-    found = judge(brief, to.outward(np.concatenate(moved)))
-    margins = found.margins.reshape(len(found.requirements), len(unknowns), 2, TRIED)
-    objective = found.objectives[sizing.goal].reshape(len(unknowns), 2, TRIED)
-    felt = np.abs(margins[:, :, 0] - margins[:, :, 1]).max(axis=(0, 2)) > 1e-9
-    # An objective without bound, such as a separation from nothing, is the same at both ends.
-    known = np.where(np.isfinite(objective), objective, 0.0)
-    shift = np.abs(known[:, 0] - known[:, 1]).max(axis=1)
-    counts = shift > 1e-9 * max(float(np.abs(known).max()), 1e-300)
-    for index, unknown in enumerate(unknowns):
+    for index, unknown in enumerate(sizing.unknown):
         low, high = unknown.bounds
         if low == high or felt[index]:
             continue
@@ -93,10 +84,38 @@ def check_sense(study: Study) -> tuple[str, ...]:
                 f"no requirement depends on {unknown.title}; the objective alone moves it, to an end of its range"
             )
     if not findings:
-        findings = _objective_sense(sizing, bool(counts.any()), bool(np.isfinite(objective).all()))
+        findings = _objective_sense(sizing, bool(counts.any()), sizing.goal not in boundless)
+    for number, name in enumerate(sizing.trade):
+        if not findings and name in boundless:
+            expected = "objectives that have a finite value: nothing excites the machine steadily"
+            findings.append(Finding(("sizing", "trade", number), name, expected))
     if findings:
         raise BriefError(faults_of(study, findings))
     return tuple(cautions)
+
+
+def _effects(study: Study) -> tuple[NDArray[np.bool_], NDArray[np.bool_], set[str]]:
+    """Which unknowns (U,) any requirement feels, which (U,) the objective, and which objectives are not finite."""
+    sizing = sizing_of(study.brief)
+    unknowns = len(sizing.unknown)
+    base = start_points(unknowns, TRIED, sizing.seed)
+    moved = []
+    for column in range(unknowns):
+        for end in (0.0, 1.0):
+            there = base.copy()
+            there[:, column] = end
+            moved.append(there)
+    to = size_many_starts.Coordinates(study.brief)
+    found = judge(study.brief, to.outward(np.concatenate(moved)))
+    margins = found.margins.reshape(len(found.requirements), unknowns, 2, TRIED)
+    felt = np.abs(margins[:, :, 0] - margins[:, :, 1]).max(axis=(0, 2)) > 1e-9
+    objective = found.objectives[sizing.goal].reshape(unknowns, 2, TRIED)
+    # An objective without bound, such as a separation from nothing, is the same at both ends.
+    known = np.where(np.isfinite(objective), objective, 0.0)
+    shift = np.abs(known[:, 0] - known[:, 1]).max(axis=1)
+    counts = shift > 1e-9 * max(float(np.abs(known).max()), 1e-300)
+    boundless = {name for name, values in found.objectives.items() if not np.isfinite(values).all()}
+    return felt, counts, boundless
 
 
 def _objective_sense(sizing: Sizing, counts: bool, finite: bool) -> list[Finding]:

@@ -8,8 +8,8 @@ import numpy as np
 from detune.problem.build import Problem
 from detune.problem.listed import Listed
 from detune.problem.other_candidates import BALLAST
-from detune.problem.stages import stages
 from detune.solvers.outcome import Outcome
+from detune.study.closest import ClosestDesigns, judge_closest
 
 
 @dataclass(frozen=True)
@@ -18,7 +18,8 @@ class PartReason:
 
     `meets` is how many designs with it met the brief, of `designs`; `cheapest` the least cost among
     them. A part that fell out has the first rule that excluded designs with it (and how many), and
-    the hardest: the rule its closest design misses by most, with that margin.
+    the hardest: the rule its closest design misses by most, with that margin. `whole` says whether that design was
+    judged by every requirement, or for want of time without records and passages.
     """
 
     group: str
@@ -32,6 +33,7 @@ class PartReason:
     hardest_rule: str | None
     hardest_margin: float | None
     closest: str | None
+    whole: bool = True
 
 
 @dataclass(frozen=True)
@@ -42,11 +44,17 @@ class _Judged:
     hardest: str | None
     margin: float | None
     design: str | None
+    whole: bool = True
 
 
-def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
-    """Return what became of every part of every group, the filtered ones included."""
-    hardest = _hardest(problem, outcome)
+def part_reasons(
+    problem: Problem, outcome: Outcome, closest: ClosestDesigns | None = None
+) -> tuple[PartReason, ...]:
+    """Return what became of every part of every group, the filtered ones included.
+
+    closest: the closest designs, where they were judged already.
+    """
+    hardest = _hardest(problem, outcome, closest or judge_closest(problem, outcome))
     reasons = []
     chosen = np.column_stack([outcome.designs.part, outcome.designs.step])
     for group, (name, mounts) in enumerate(_choices(problem)):
@@ -71,6 +79,7 @@ def part_reasons(problem: Problem, outcome: Outcome) -> tuple[PartReason, ...]:
                     hardest_rule=judged.hardest,
                     hardest_margin=judged.margin,
                     closest=judged.design,
+                    whole=judged.whole,
                 )
             )
     for dropped in problem.dropped:
@@ -88,22 +97,22 @@ def _choices(problem: Problem) -> list[tuple[str, Sequence[Listed]]]:
     return found
 
 
-def _hardest(problem: Problem, outcome: Outcome) -> dict[tuple[int, int], _Judged]:
-    """Judge the closest design of every part that fell out by all requirements."""
-    if outcome.closest.count == 0:
-        return {}
-    labels: list[str] = []
-    margins = []
-    for stage in stages(problem):
-        if not stage.bound:
-            labels += [requirement.label for requirement in stage.requirements]
-            margins.append(stage.margins(outcome.closest))
-    table = np.nan_to_num(np.concatenate(margins), nan=-np.inf)
+def _hardest(problem: Problem, outcome: Outcome, closest: ClosestDesigns) -> dict[tuple[int, int], _Judged]:
+    """Return which requirements the closest design of every part that fell out misses first and by most."""
+    judged: dict[tuple[int, int], _Judged] = {}
+    if not outcome.closest.count:
+        return judged
+    table, labels = closest.margins, closest.labels
     worst, first = table.argmin(axis=0), (table < 0.0).argmax(axis=0)
-    judged = {}
     for index, key in enumerate(outcome.closest_of):
         margin = float(table[worst[index], index])
         met = margin >= 0.0
         design = str(problem.design(outcome.closest, index))
-        judged[key] = _Judged(None if met else labels[first[index]], labels[worst[index]], margin, design)
+        judged[key] = _Judged(
+            None if met else labels[first[index]],
+            labels[worst[index]],
+            margin,
+            design,
+            bool(closest.whole[index]),
+        )
     return judged

@@ -1,4 +1,4 @@
-"""The form shared by limits on the motion of a named point."""
+"""The forms shared by limits on the motion of a named point."""
 
 from typing import Literal
 
@@ -14,7 +14,31 @@ from detune.brief.allowable.base import (
 )
 from detune.brief.allowable.views import Floats, Places, StaticView
 from detune.brief.levels import Level, level_note, refuse_unless_rms
-from detune.brief.statement import AxisName, Direction, Name
+from detune.brief.statement import AxisName, Direction, Name, unit_direction
+
+
+class RmsAtPoint(HarmonicAllowable):
+    """A limit on an rms value at a named point `at` along a `direction`, by a scale that a standard lays down."""
+
+    at: Name
+    direction: AxisName | Direction
+
+    @model_validator(mode="after")
+    def _readable(self) -> "RmsAtPoint":
+        unit_direction(self.direction, at="direction")
+        return self
+
+    def places(self, places: Places) -> tuple[str, ...]:
+        return (self.at,)
+
+    def points_named(self) -> tuple[str, ...]:
+        return (self.at,)
+
+    def statistic(self) -> Statistic:
+        return "rms"
+
+    def along(self) -> Direction | None:
+        return unit_direction(self.direction)
 
 
 class PointAllowable(HarmonicAllowable):

@@ -35,7 +35,8 @@ class DwellBands(Allowable):
         if self.width is not None:
             above_zero(self.width, "a width", at="width")
         if self.share is not None and not 0.0 < self.share < 1.0:
-            raise refuse(f"{self.share:g}", "a share above 0 and below 100 %", at="share")
+            expected = 'a share above 0 and below 100 %, such as 0.05 or "5 %"'
+            raise refuse(f"{self.share:g}", expected, at="share")
         if self.bands is not None and self.bands < 1:
             raise refuse(self.bands, "a whole number of bands, 1 or more", at="bands")
         return self

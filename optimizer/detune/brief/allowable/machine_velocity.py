@@ -3,11 +3,10 @@
 from typing import ClassVar, Literal
 
 import numpy as np
-from pydantic import model_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic, direction_words
-from detune.brief.allowable.views import Floats, Places, Responses, ResponseView, StaticView
-from detune.brief.statement import AxisName, Direction, Name, unit_direction
+from detune.brief.allowable.at_point import RmsAtPoint
+from detune.brief.allowable.base import direction_words
+from detune.brief.allowable.views import Floats, Responses, ResponseView, StaticView
 from detune.physics.criteria import MACHINE_ZONES
 
 MachineClass = Literal[
@@ -23,7 +22,7 @@ MachineClass = Literal[
 Boundary = Literal["A/B", "B/C", "C/D"]
 
 
-class MachineVelocity(HarmonicAllowable):
+class MachineVelocity(RmsAtPoint):
     """Rms velocity at a point of the machine along `direction`, at most a zone boundary.
 
     `machine`: group 1 (above 300 kW) or 2 (15 to 300 kW) with its support, as in ISO 20816-3, or the classes
@@ -34,15 +33,8 @@ class MachineVelocity(HarmonicAllowable):
     title: ClassVar[str] = "machine velocity"
     unit: ClassVar[str] = "velocity"
     kind: Literal["machine-velocity"] = "machine-velocity"
-    at: Name
-    direction: AxisName | Direction
     machine: MachineClass
     boundary: Boundary
-
-    @model_validator(mode="after")
-    def _values(self) -> "MachineVelocity":
-        unit_direction(self.direction, at="direction")
-        return self
 
     def zone_limit(self) -> float:
         """Return the boundary in m/s rms."""
@@ -54,18 +46,6 @@ class MachineVelocity(HarmonicAllowable):
             f"machine velocity: boundary {self.boundary} of {self.machine} is "
             f"{1e3 * self.zone_limit():g} mm/s rms ({MACHINE_ZONES[self.machine].source})",
         )
-
-    def places(self, places: Places) -> tuple[str, ...]:
-        return (self.at,)
-
-    def points_named(self) -> tuple[str, ...]:
-        return (self.at,)
-
-    def statistic(self) -> Statistic:
-        return "rms"
-
-    def along(self) -> Direction | None:
-        return unit_direction(self.direction)
 
     def observed(self, view: ResponseView, place: str) -> Responses:
         return view.motion(place, rate=1)

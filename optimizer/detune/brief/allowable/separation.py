@@ -7,6 +7,7 @@ from pydantic import field_validator, model_validator
 
 from detune.brief.allowable.base import ModeAllowable, above_zero, no_conditions
 from detune.brief.allowable.views import Floats, ModeView
+from detune.brief.shares import Share
 from detune.brief.statement import Ratio
 from detune.physics import separation
 
@@ -21,7 +22,7 @@ class Separation(ModeAllowable):
     title: ClassVar[str] = "separation from resonance"
     unit: ClassVar[str] = "ratio"
     kind: Literal["separation"] = "separation"
-    limit: Ratio
+    limit: Share
     exempt_amplification: Ratio | None = None
 
     @field_validator("conditions")

@@ -33,7 +33,8 @@ class SettlingTime(ModeAllowable):
     def _values(self) -> "SettlingTime":
         above_zero(self.limit, "a limit", at="limit")
         if not 0.0 < self.to < 1.0:
-            raise refuse(f"{self.to:g}", "a share of the amplitude above 0 and below 1", at="to")
+            expected = 'a share of the amplitude above 0 and below 1, such as 0.02 or "2 %"'
+            raise refuse(f"{self.to:g}", expected, at="to")
         return self
 
     def value(self, view: ModeView) -> Floats:

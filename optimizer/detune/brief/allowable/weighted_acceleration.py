@@ -5,13 +5,14 @@ from typing import ClassVar, Literal
 import numpy as np
 from pydantic import model_validator
 
-from detune.brief.allowable.base import HarmonicAllowable, Statistic, above_zero, direction_words
-from detune.brief.allowable.views import Complexes, Floats, Places, Responses, ResponseView, StaticView
-from detune.brief.statement import Acceleration, AxisName, Direction, Name, unit_direction
+from detune.brief.allowable.at_point import RmsAtPoint
+from detune.brief.allowable.base import above_zero, direction_words
+from detune.brief.allowable.views import Complexes, Floats, Responses, ResponseView, StaticView
+from detune.brief.statement import Acceleration
 from detune.physics.weighting import frequency_weighting
 
 
-class WeightedAcceleration(HarmonicAllowable):
+class WeightedAcceleration(RmsAtPoint):
     """Weighted rms acceleration along `direction`, ISO 2631-1: Wk for vertical, Wd for horizontal directions.
 
     For tones and noise alone: a shock needs a measure of its own.
@@ -20,28 +21,13 @@ class WeightedAcceleration(HarmonicAllowable):
     title: ClassVar[str] = "weighted acceleration"
     unit: ClassVar[str] = "acceleration"
     kind: Literal["weighted-acceleration"] = "weighted-acceleration"
-    at: Name
-    direction: AxisName | Direction
     weighting: Literal["Wk", "Wd"]
     limit: Acceleration
 
     @model_validator(mode="after")
     def _values(self) -> "WeightedAcceleration":
         above_zero(self.limit, "a limit", at="limit")
-        unit_direction(self.direction, at="direction")
         return self
-
-    def places(self, places: Places) -> tuple[str, ...]:
-        return (self.at,)
-
-    def points_named(self) -> tuple[str, ...]:
-        return (self.at,)
-
-    def statistic(self) -> Statistic:
-        return "rms"
-
-    def along(self) -> Direction | None:
-        return unit_direction(self.direction)
 
     def observed(self, view: ResponseView, place: str) -> Responses:
         return view.motion(place, rate=2)

@@ -2,23 +2,20 @@
 
 from typing import ClassVar, Literal
 
-from pydantic import PrivateAttr, model_validator
+from pydantic import model_validator
 
-from detune.brief.forcing.base import Forcing, Transient
-from detune.brief.forcing.pulse_shape import Shape, assumed_sides, make_pulse
+from detune.brief.forcing.base import Transient
+from detune.brief.forcing.pulse_shape import PulseForcing
 from detune.brief.statement import (
     Acceleration,
     AxisName,
     Direction,
-    Ratio,
-    Time,
     positive,
     unit_direction,
 )
-from detune.physics.pulses import Pulse
 
 
-class BasePulse(Forcing):
+class BasePulse(PulseForcing):
     """One pulse of floor acceleration along `direction`: peak `amplitude`, whole `duration`.
 
     Shapes as in IEC 60068-2-27. The floor is at rest before the pulse and keeps the velocity the pulse gives it, the
@@ -30,27 +27,17 @@ class BasePulse(Forcing):
     title: ClassVar[str] = "base pulse"
     kind: Literal["base-pulse"] = "base-pulse"
     direction: AxisName | Direction
-    shape: Shape
     amplitude: Acceleration
-    duration: Time
-    rise: Ratio | None = None
-    fall: Ratio | None = None
-
-    _pulse: Pulse = PrivateAttr()
 
     @model_validator(mode="after")
     def _values(self) -> "BasePulse":
         unit_direction(self.direction, at="direction")
         positive(self.amplitude, "an amplitude", at="amplitude")
-        positive(self.duration, "a duration", at="duration")
-        self._pulse = make_pulse(self.shape, self.amplitude, self.duration, self.rise, self.fall)
+        self._draw(self.amplitude)
         return self
 
     def floor_direction(self) -> Direction | None:
         return unit_direction(self.direction)
-
-    def assumed(self) -> tuple[str, ...]:
-        return assumed_sides(self.name, self.shape, self.rise, self.fall)
 
     def transients(self) -> tuple[Transient, ...]:
         return (Transient(self.name, pulse=self._pulse, base=unit_direction(self.direction)),)

@@ -21,9 +21,11 @@ def drawn_density(points: BreakPoints, at: str) -> PowerSpectralDensity:
 
 
 def sloped_density(
-    corners: Sequence[float], slopes: Sequence[float], level: tuple[float, float]
+    corners: Sequence[float] | None, slopes: Sequence[float] | None, level: tuple[float, float] | None
 ) -> PowerSpectralDensity:
     """Return the density from corners (Hz), slopes between them (dB/octave) and the level at one corner."""
+    if corners is None or slopes is None or level is None:
+        raise refuse("an incomplete spectrum", '"corners", "slopes" and "level" together')
     for before, after in pairwise(corners):
         if not 0.0 < before < after:
             raise refuse(list(corners), "corner frequencies above zero that rise", at="corners")

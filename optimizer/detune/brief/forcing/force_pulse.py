@@ -3,15 +3,14 @@
 import math
 from typing import ClassVar, Literal
 
-from pydantic import PrivateAttr, model_validator
+from pydantic import model_validator
 
-from detune.brief.forcing.base import Forcing, Transient
-from detune.brief.forcing.pulse_shape import Shape, assumed_sides, make_pulse
-from detune.brief.statement import ForceVector, MomentVector, Name, Position, Ratio, Time, positive, refuse
-from detune.physics.pulses import Pulse
+from detune.brief.forcing.base import Transient
+from detune.brief.forcing.pulse_shape import PulseForcing
+from detune.brief.statement import ForceVector, MomentVector, Name, Position, refuse
 
 
-class ForcePulse(Forcing):
+class ForcePulse(PulseForcing):
     """One pulse of a force and a moment together, peak values, of one `shape` and whole `duration`.
 
     Shapes as in IEC 60068-2-27. `rise` and `fall` are shares of the duration, for a trapezoid alone.
@@ -23,23 +22,13 @@ class ForcePulse(Forcing):
     position: Position
     force: ForceVector = (0.0, 0.0, 0.0)
     moment: MomentVector = (0.0, 0.0, 0.0)
-    shape: Shape
-    duration: Time
-    rise: Ratio | None = None
-    fall: Ratio | None = None
-
-    _pulse: Pulse = PrivateAttr()
 
     @model_validator(mode="after")
     def _values(self) -> "ForcePulse":
         if math.hypot(*self.force) == 0.0 and math.hypot(*self.moment) == 0.0:
             raise refuse("no force and no moment", 'a "force" or a "moment" that is not zero')
-        positive(self.duration, "a duration", at="duration")
-        self._pulse = make_pulse(self.shape, 1.0, self.duration, self.rise, self.fall)
+        self._draw(1.0)
         return self
-
-    def assumed(self) -> tuple[str, ...]:
-        return assumed_sides(self.name, self.shape, self.rise, self.fall)
 
     def transients(self) -> tuple[Transient, ...]:
         return (

@@ -1,8 +1,11 @@
-"""The shapes of shock pulses a study may name."""
+"""The shapes of shock pulses a study may name, and what every forcing that is one such pulse states."""
 
 from typing import Literal
 
-from detune.brief.statement import refuse
+from pydantic import PrivateAttr
+
+from detune.brief.forcing.base import Forcing
+from detune.brief.statement import Ratio, Time, positive, refuse
 from detune.physics import pulses
 from detune.physics.pulses import Pulse
 
@@ -15,6 +18,29 @@ SHAPES = {
     "triangle": pulses.symmetric_triangle,
 }
 COMMON_SIDE = 0.1
+
+
+class PulseForcing(Forcing):
+    """A forcing that is one pulse of one `shape` and whole `duration`, as in IEC 60068-2-27.
+
+    `rise` and `fall` are shares of the duration, for a trapezoid alone.
+    """
+
+    shape: Shape
+    duration: Time
+    rise: Ratio | None = None
+    fall: Ratio | None = None
+
+    _pulse: Pulse = PrivateAttr()
+
+    def _draw(self, amplitude: float) -> None:
+        positive(self.duration, "a duration", at="duration")
+        self._pulse = make_pulse(self.shape, amplitude, self.duration, self.rise, self.fall)
+
+    def assumed(self) -> tuple[str, ...]:
+        if self.shape != "trapezoid" or (self.rise is not None and self.fall is not None):
+            return ()
+        return (f"{self.name}: trapezoid rises and falls in a tenth of its duration (IEC 60068-2-27)",)
 
 
 def make_pulse(
@@ -39,10 +65,3 @@ def make_pulse(
     except ValueError:
         expected = '"rise" and "fall" as shares of the duration above zero, together at most 1'
         raise refuse(f"rise {rise}, fall {fall}", expected, at="rise") from None
-
-
-def assumed_sides(name: str, shape: Shape, rise: float | None, fall: float | None) -> tuple[str, ...]:
-    """Return the note on a trapezoid whose sides the study does not state."""
-    if shape != "trapezoid" or (rise is not None and fall is not None):
-        return ()
-    return (f"{name}: trapezoid rises and falls in a tenth of its duration (IEC 60068-2-27)",)

@@ -17,7 +17,6 @@ from detune.brief.statement import (
     Time,
     VelocityDensity,
     positive,
-    refuse,
     unit_direction,
 )
 from detune.physics.spectra import PowerSpectralDensity, differentiated
@@ -71,8 +70,6 @@ class RandomBaseMotion(Forcing):
             kinds = {"acceleration_psd": 0, "velocity_psd": 1, "displacement_psd": 2}
             return tabulated_density(info, self.file, kinds)
         if way == "slopes":
-            if self.corners is None or self.slopes is None or self.level is None:
-                raise refuse("an incomplete spectrum", '"corners", "slopes" and "level" together')
             return sloped_density(self.corners, self.slopes, self.level)
         points, times = {
             "break_points": (self.break_points, 0),

@@ -72,8 +72,6 @@ class RandomForce(Forcing):
             assert self.file is not None
             return tabulated_density(info, self.file, {"force_psd": 0})
         if way == "slopes":
-            if self.corners is None or self.slopes is None or self.level is None:
-                raise refuse("an incomplete spectrum", '"corners", "slopes" and "level" together')
             return sloped_density(self.corners, self.slopes, self.level)
         assert self.break_points is not None
         return drawn_density(self.break_points, "break_points")

@@ -2,25 +2,21 @@
 
 from typing import ClassVar, Literal
 
-from pydantic import PrivateAttr, model_validator
+from pydantic import model_validator
 
-from detune.brief.forcing.base import Forcing, Transient
-from detune.brief.forcing.pulse_shape import Shape, assumed_sides, make_pulse
+from detune.brief.forcing.base import Transient
+from detune.brief.forcing.pulse_shape import PulseForcing
 from detune.brief.statement import (
     AxisName,
     Direction,
     Moment,
     Name,
-    Ratio,
-    Time,
-    positive,
     refuse,
     unit_direction,
 )
-from detune.physics.pulses import Pulse
 
 
-class TorquePulse(Forcing):
+class TorquePulse(PulseForcing):
     """One pulse of torque on the frame about `axis`, peak `torque` with its sign, of one `shape` and whole `duration`.
 
     For starting, braking and coasting: a rotor that gains speed turns its frame the other way. The torque on the
@@ -35,24 +31,14 @@ class TorquePulse(Forcing):
     on: Name | None = None
     axis: AxisName | Direction
     torque: Moment
-    shape: Shape
-    duration: Time
-    rise: Ratio | None = None
-    fall: Ratio | None = None
-
-    _pulse: Pulse = PrivateAttr()
 
     @model_validator(mode="after")
     def _values(self) -> "TorquePulse":
         unit_direction(self.axis, at="axis")
         if self.torque == 0.0:
             raise refuse("no torque", "a torque that is not zero", at="torque")
-        positive(self.duration, "a duration", at="duration")
-        self._pulse = make_pulse(self.shape, 1.0, self.duration, self.rise, self.fall)
+        self._draw(1.0)
         return self
-
-    def assumed(self) -> tuple[str, ...]:
-        return assumed_sides(self.name, self.shape, self.rise, self.fall)
 
     def transients(self) -> tuple[Transient, ...]:
         x, y, z = (self.torque * part for part in unit_direction(self.axis))

@@ -13,7 +13,7 @@ from detune.ground.errors import Fault
 from detune.ground.units import show
 from detune.parts.assumed import Assumed
 from detune.parts.columns import Column, Limits
-from detune.parts.kinds.rows import column_array, optional, stated
+from detune.parts.kinds.rows import column_array, optional, stated, whole
 from detune.parts.prices import COST_COLUMNS, Breaks, CostBreaks, breaks_of, check_prices, cost_breaks
 from detune.parts.table import Table, rows_of
 
@@ -119,7 +119,7 @@ def build(table: Table, catalog: str) -> tuple[tuple[Absorber, ...], tuple[Assum
         table.numbers("stroke").tolist(),
         table.numbers("tolerance").tolist(),
         table.numbers("cost").tolist(),
-        [None if count is None else int(count) for count in optional(table, "stock")],
+        whole(table, "stock"),
         breaks_of(table),
         strict=True,
     )

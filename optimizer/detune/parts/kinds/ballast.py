@@ -12,7 +12,7 @@ from detune.ground.errors import Fault
 from detune.ground.units import show
 from detune.parts.assumed import Assumed
 from detune.parts.columns import Column, Limits
-from detune.parts.kinds.rows import column_array, optional, stated
+from detune.parts.kinds.rows import column_array, stated, whole
 from detune.parts.prices import COST_COLUMNS, Breaks, CostBreaks, breaks_of, check_prices, cost_breaks
 from detune.parts.table import Table, rows_of
 
@@ -99,7 +99,7 @@ def build(table: Table, catalog: str) -> tuple[tuple[Ballast, ...], tuple[Assume
         *(table.numbers(name).tolist() for name in ("mass", "length", "width", "height")),
         np.where(told, table.numbers("tolerance"), TOLERANCE).tolist(),
         table.numbers("cost").tolist(),
-        [None if count is None else int(count) for count in optional(table, "stock")],
+        whole(table, "stock"),
         breaks_of(table),
         strict=True,
     )

@@ -13,7 +13,7 @@ from detune.ground.errors import Fault
 from detune.ground.units import show
 from detune.parts.assumed import Assumed
 from detune.parts.columns import Column, Limits
-from detune.parts.kinds.rows import column_array, optional, stated
+from detune.parts.kinds.rows import column_array, optional, stated, whole
 from detune.parts.prices import COST_COLUMNS, Breaks, CostBreaks, breaks_of, check_prices, cost_breaks
 from detune.parts.table import Table, rows_of
 
@@ -121,7 +121,7 @@ def build(table: Table, catalog: str) -> tuple[tuple[Damper, ...], tuple[Assumed
         table.numbers("cost").tolist(),
         optional(table, "temperature_min"),
         optional(table, "temperature_max"),
-        [None if count is None else int(count) for count in optional(table, "stock")],
+        whole(table, "stock"),
         breaks_of(table),
         strict=True,
     )

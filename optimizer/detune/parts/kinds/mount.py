@@ -19,7 +19,7 @@ from detune.parts.kinds.mount_columns import COLUMNS
 from detune.parts.kinds.mount_damping import DAMPING, UNKNOWN, Damping, damping
 from detune.parts.kinds.mount_rules import FAMILY_TOLERANCE, check
 from detune.parts.kinds.mount_stiffness import assumed_by_ratio, resolve
-from detune.parts.kinds.rows import optional, stated
+from detune.parts.kinds.rows import optional, stated, whole
 from detune.parts.law_files import Laws, read_laws, related_tables
 from detune.parts.laws import (
     AmplitudeTable,
@@ -131,7 +131,7 @@ def build(table: Table, catalog: str) -> tuple[tuple[Mount, ...], tuple[Assumed,
     families = table.texts("family")
     by_family = [FAMILY_TOLERANCE.get(family, math.nan) for family in families]
     tolerance = np.where(table.given("tolerance"), table.numbers("tolerance"), by_family)
-    stock = [None if count is None else int(count) for count in optional(table, "stock")]
+    stock = whole(table, "stock")
     rows = zip(
         table.lines,
         table.texts("part"),

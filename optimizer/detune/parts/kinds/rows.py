@@ -19,6 +19,11 @@ def optional(table: Table, name: str) -> list[float | None]:
     return [None if number != number else number for number in table.numbers(name).tolist()]
 
 
+def whole(table: Table, name: str) -> list[int | None]:
+    """Return the whole numbers of a column, None where the cell is empty."""
+    return [None if number is None else int(number) for number in optional(table, name)]
+
+
 def stated(part: Any, column: str, columns: Sequence[Column]) -> float | str | bool | None:
     """Return a part's figure in a column whose name is the part's own field; prices by their quantity.
 

@@ -5,11 +5,12 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from detune.brief.sizing import SizingUnknown
 from detune.report.plots.style import BLACK, GREY, LIGHT, LINES, VERMILION, Floats, Titles, shorten
 from detune.report.tables_sizing import GOALS
-from detune.sizing.made_parts import logarithmic, sizing_of
+from detune.sizing.made_parts import sizing_of
 from detune.sizing.trace import Boundary
+from detune.solvers.map_axes import MapAxis
+from detune.solvers.map_region import Region
 from detune.study.size import SizingResult
 
 if TYPE_CHECKING:
@@ -40,24 +41,26 @@ class Dot:
 
 @dataclass(frozen=True)
 class MapData:
-    """Everything on the map in shown units: lines x (X,), y (Y,), least margin and objective (Y, X), boundaries.
+    """Everything on the map in shown units: lines x (X,), y (Y,), objective (Y, X), region and boundaries.
 
-    `boundaries` are (name, points (n, 2), binding (n,)); `held` tells the other unknowns; `exact` whether margins are
-    closed forms; `left_out` what they do not hold; `always_failed` names what is missed all over the map.
+    `boundaries` are (name, points (n, 2), binding (n,)); `pieces` the exact outlines of the branches; `best` the
+    answer, None where there is none; `held` tells the other unknowns; `left_out` what the closed forms do not
+    hold; `always_failed` names what is missed all over the map; `outside` and `without` count parts that are no dot.
     """
 
     labels: tuple[str, str]
     logs: tuple[bool, bool]
     x: Floats
     y: Floats
-    least: Floats
+    region: Region
     objective: Floats
     objective_name: str
     boundaries: tuple[Boundary, ...]
-    pieces: tuple[tuple[Floats, Floats, Floats], ...]
+    pieces: tuple[Floats, ...]
     dots: tuple[Dot, ...]
     outside: int
-    best: tuple[float, float]
+    without: int
+    best: tuple[float, float] | None
     held: tuple[str, ...]
     exact: bool
     left_out: tuple[str, ...]
@@ -82,21 +85,24 @@ def data(result: SizingResult) -> MapData | None:
     inside = tuple(dot for dot in dots if x[0] <= dot.x <= x[-1] and y[0] <= dot.y <= y[-1])
     return MapData(
         labels=(_label(found.first, unit_x), _label(found.second, unit_y)),
-        logs=(logarithmic(found.first), logarithmic(found.second)),
+        logs=(found.first.logarithmic, found.second.logarithmic),
         x=x,
         y=y,
-        least=found.traced.least,
+        region=replace(
+            found.region, x=found.region.x * a, y=found.region.y * b, specks=found.region.specks * scale
+        ),
         objective=found.objective,
         objective_name=GOALS[found.objective_name],
         boundaries=tuple(replace(line, points=line.points * scale) for line in found.traced.boundaries),
-        pieces=tuple((p.stiffness * a, p.least_damping * b, p.greatest_damping * b) for p in found.pieces),
+        pieces=tuple(piece * scale for piece in found.pieces),
         dots=inside,
         outside=len(dots) - len(inside),
-        best=(here[found.first.title] * a, here[found.second.title] * b),
+        without=found.without,
+        best=(found.place[0] * a, found.place[1] * b) if found.answer else None,
         held=tuple(
             f"{u.title} {show(here[u.title], u.unit)}"
-            for u in unknowns
-            if u not in (found.first, found.second)
+            for number, u in enumerate(unknowns)
+            if number not in (found.first.column, found.second.column)
         ),
         exact=found.exact,
         left_out=found.left_out,
@@ -108,8 +114,9 @@ def data(result: SizingResult) -> MapData | None:
     )
 
 
-def _label(unknown: SizingUnknown, unit: str) -> str:
-    return f"{unknown.title}, one part [{unit}]" if unknown.group else f"{unknown.title} [{unit}]"
+def _label(axis: MapAxis, unit: str) -> str:
+    own = "" if axis.derived or axis.group is None or axis.kind.startswith("absorber") else ", one part"
+    return f"{axis.title}{own} [{unit}]"
 
 
 def caption(data: MapData) -> str:
@@ -117,21 +124,33 @@ def caption(data: MapData) -> str:
     text = "White: every requirement met; shaded: at least one missed. "
     text += "Lines: where a requirement, at its worst place, equals its limit; thick where it bounds what is feasible. "
     text += "The lines are traced to their limit, not drawn between the nodes of a grid. "
+    if len(data.region.specks):
+        text += "A ring marks what is feasible and too small to be seen. "
     if data.pieces:
         text += "The white region is drawn from the exact curves of each branch, however narrow. "
     if data.held:
         text += f"Held: {', '.join(data.held)}. "
-    text += f"Thin grey lines: {data.objective_name} of parts made to order. The diamond is the answer. "
+    text += f"Thin grey lines: {data.objective_name} of parts made to order. "
     text += (
-        f"Dots: every part of the lists where it has such a figure, dampers beside mounts included; {data.outside} lie "
-        "outside the frame. A dot ignores a part's load range and what its list states besides; only an assessment "
-        "judges."
+        "The diamond is the answer. " if data.best else "No design meets the brief, so no answer is marked. "
     )
+    text += _parts_text(data)
     if data.left_out:
         text += f" Not in full on this map: {'; '.join(data.left_out)}."
     if data.always_failed:
         text += f" Missed everywhere: {'; '.join(data.always_failed)}."
     return text
+
+
+def _parts_text(data: MapData) -> str:
+    if not data.dots and not data.outside and not data.without:
+        return "No list has parts that could stand on this map."
+    text = "Dots: every part that the choices of the study admit, dampers beside mounts included"
+    if data.outside:
+        text += f"; {data.outside} of them lie outside the frame"
+    if data.without:
+        text += f"; {data.without} have no such figure in their list and are left out"
+    return f"{text}. A dot ignores a part's load range and what its list states besides; only an assessment judges."
 
 
 def size(data: MapData) -> tuple[float, float]:
@@ -149,13 +168,26 @@ def draw(data: MapData, figure: "Figure") -> Titles:
     _contours(ax, data)
     handles = _lines(ax, data)
     titles: Titles = {}
+    if len(data.region.specks):
+        for x, y in data.region.specks:
+            ax.plot(
+                [x], [y], marker="o", markersize=13, markerfacecolor="none", markeredgecolor=BLACK, zorder=5
+            )
     if data.dots:
         drawn = ax.scatter(
             [d.x for d in data.dots], [d.y for d in data.dots], s=13, color=BLACK, linewidths=0, zorder=4
         )
         drawn.set_gid("parts")
         titles["parts"] = tuple(dot.name for dot in data.dots)
-    ax.plot(*([value] for value in data.best), marker="D", color=VERMILION, markersize=6, zorder=6)
+    if data.best is not None:
+        ax.plot(
+            *([value] for value in data.best),
+            marker="D",
+            color=VERMILION,
+            markersize=6,
+            zorder=6,
+            clip_on=False,
+        )
     for axis, log in zip(("x", "y"), data.logs, strict=True):
         if log:
             getattr(ax, f"set_{axis}scale")("log")
@@ -173,12 +205,11 @@ def draw(data: MapData, figure: "Figure") -> Titles:
 
 def _feasible(ax: "Axes", data: MapData) -> None:
     if data.pieces:
-        for x, low, high in data.pieces:
-            ax.fill_between(x, low, high, color="white", linewidth=0, zorder=0.5)
-    elif bool((data.least >= 0.0).any()):
-        ax.contourf(
-            data.x, data.y, np.clip(data.least, -1.0, 1.0), levels=[0.0, 2.0], colors=["white"], zorder=0.5
-        )
+        for outline in data.pieces:
+            ax.fill(outline[:, 0], outline[:, 1], color="white", linewidth=0.3, zorder=0.5)
+    elif bool((data.region.least >= 0.0).any()):
+        least = np.clip(data.region.least, -1.0, 1.0)
+        ax.contourf(data.region.x, data.region.y, least, levels=[0.0, 2.0], colors=["white"], zorder=0.5)
 
 
 def _contours(ax: "Axes", data: MapData) -> None:
@@ -190,10 +221,22 @@ def _contours(ax: "Axes", data: MapData) -> None:
         if low > 0.0 and high > 10.0 * low
         else np.linspace(low, high, 9)[1:-1]
     )
-    lines = ax.contour(
-        data.x, data.y, data.objective, levels=levels, colors=[GREY], linewidths=0.5, zorder=1.5
-    )
+    x, y, objective = data.x, data.y, data.objective
+    if not data.exact:
+        x, y, objective = _smooth(data)
+    lines = ax.contour(x, y, objective, levels=levels, colors=[GREY], linewidths=0.5, zorder=1.5)
     ax.clabel(lines, fmt="%.4g", fontsize=6.5)
+
+
+def _smooth(data: MapData) -> tuple[Floats, Floats, Floats]:
+    """The objective on finer lines, by a cubic spline through the designs that were judged."""
+    from scipy.interpolate import RectBivariateSpline
+
+    along = [np.log(line) if log else line for line, log in zip((data.x, data.y), data.logs, strict=True)]
+    finer = [np.interp(np.linspace(0, len(a) - 1, 6 * len(a)), np.arange(len(a)), a) for a in along]
+    spline = RectBivariateSpline(along[1], along[0], data.objective)
+    x, y = (np.exp(line) if log else line for line, log in zip(finer, data.logs, strict=True))
+    return x, y, np.asarray(spline(finer[1], finer[0]))
 
 
 def _lines(ax: "Axes", data: MapData) -> "list[Artist]":
@@ -217,12 +260,24 @@ def _lines(ax: "Axes", data: MapData) -> "list[Artist]":
             handles.append(
                 Line2D([], [], color=colour, linestyle=style, linewidth=1.6, label=shorten(name, 110))
             )
-    handles.append(
-        Line2D([], [], color=VERMILION, marker="D", markersize=6, linestyle="none", label="the answer")
-    )
-    handles.append(
-        Line2D([], [], color=BLACK, marker="o", markersize=4, linestyle="none", label="a part of the lists")
-    )
+    if data.best is not None:
+        handles.append(
+            Line2D([], [], color=VERMILION, marker="D", markersize=6, linestyle="none", label="the answer")
+        )
+    if len(data.region.specks):
+        label = "feasible, too small to be seen"
+        handles.append(
+            Line2D(
+                [], [], marker="o", markersize=8, linestyle="none", markerfacecolor="none", markeredgecolor=BLACK,
+                label=label,
+            )
+        )  # fmt: skip
+    if data.dots:
+        handles.append(
+            Line2D(
+                [], [], color=BLACK, marker="o", markersize=4, linestyle="none", label="a part of the lists"
+            )
+        )
     handles.append(Line2D([], [], color=GREY, linewidth=0.5, label=data.objective_name))
     return handles
 
