@@ -155,3 +155,37 @@ def test_ballast_position_names_come_from_the_position():
     assert len(names) == len(set(names))
     assert all(not name.startswith("across") for name in names)
     assert problem.ballast == Ballast(0.0, problem.ballast.most)
+
+
+def test_a_separation_of_more_than_the_whole_leaves_the_stiff_side():
+    """f/10 Hz - 1 >= 1.5 gives f >= 25 Hz and k >= m (2 pi 25)^2; below the line 1 - f/10 never reaches 1.5."""
+    problem = OneAxisProblem(
+        100.0,
+        "viscous",
+        (1e3, 1e8),
+        (0.0, 10.0),
+        Objective("softest"),
+        excitation_intervals=((10.0, 10.0),),
+        separation=1.5,
+    )
+    outcome = solve_one_axis(problem)
+    assert [b.name for b in outcome.branches] == ["above the first excitation"]
+    assert outcome.best.stiffness == pytest.approx(100.0 * (2 * math.pi * 25.0) ** 2, rel=1e-12)
+
+
+def test_continuous_ballast_with_a_resonance_in_the_range_is_not_beaten_by_any_mass():
+    """Smooth optimum between the bounds of ballast: every fixed mass of a fine row costs as much or more."""
+    limits = (
+        ResponseLimit("T", "transmissibility", 0.35, 24.0, 30.0),
+        ResponseLimit("X", "displacement", 4e-4, 2.0, 30.0, "force", 100.0),
+    )
+    goal = Objective("weighted sum", stiffness_weight=1e-4, damping_weight=0.02, mass_weight=1.0)
+    problem = OneAxisProblem(
+        100.0, "viscous", (5e4, 2e7), (20.0, 6000.0), goal, limits, ballast=Ballast(0.0, 120.0)
+    )
+    outcome = solve_one_axis(problem)
+    assert outcome.decided and outcome.gap <= 1e-6 * outcome.best.objective * 1.01
+    for added in np.linspace(0.0, 120.0, 49):
+        fixed = solve_one_axis(replace(problem, ballast=Ballast(float(added), float(added))))
+        if fixed.branches:
+            assert fixed.best.objective >= outcome.best.objective * (1 - 1e-9)

@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from detune.sizing.lmi import convex_library
+from detune.sizing.lmi import convex_library, solve_cones
 from detune.sizing.statement import SizingError
 
 Floats = NDArray[np.float64]
@@ -68,7 +68,7 @@ def selection_bound(
     goal = cp.Minimize(sum((c / size) @ w for c, w in zip(costs, weights, strict=True)))
     problem = cp.Problem(goal, rows)
     try:
-        problem.solve(solver=cp.CLARABEL)
+        solve_cones(problem)
     except cp.SolverError:
         return SelectionBound("failed", math.nan, ())
     if problem.status == cp.INFEASIBLE:
@@ -149,7 +149,7 @@ def soft_side_one_axis(
     worth = "safe restriction" if displacements else "global"
     nothing = (math.nan,) * 4
     try:
-        problem.solve(solver=cp.CLARABEL)
+        solve_cones(problem)
     except cp.SolverError:
         return SoftSideAnswer("failed", worth, *nothing)
     if problem.status != cp.OPTIMAL:

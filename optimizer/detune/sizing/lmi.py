@@ -57,6 +57,16 @@ def convex_library() -> Any:
     return cvxpy
 
 
+def solve_cones(problem: Any) -> None:
+    """Solve a convex program by the interior-point solver; its status tells what came out.
+
+    Raises cvxpy's SolverError. That an answer is inaccurate is told by the status and not by a warning.
+    """
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore", UserWarning)
+        problem.solve(solver=convex_library().CLARABEL)
+
+
 @dataclass(frozen=True)
 class ConvexAnswer:
     """Stiffness (p,) N/m and ballast (q,) kg with the value reached, what it is worth and how it ended.
@@ -117,10 +127,7 @@ class _Form:
 
         problem = cp.Problem(goal, self.constraints + extra)
         try:
-            with warnings.catch_warnings():
-                # That an answer is inaccurate is told by its status.
-                warnings.simplefilter("ignore", UserWarning)
-                problem.solve(solver=cp.CLARABEL)
+            solve_cones(problem)
         except cp.SolverError as error:
             return "failed", str(error), math.nan
         status: Status = "failed"
