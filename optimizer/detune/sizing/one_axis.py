@@ -208,37 +208,79 @@ def _steps(problem: OneAxisProblem) -> tuple[float, ...] | None:
     return (ballast.least,) if ballast.least == ballast.most else None
 
 
-def least_value(problem: OneAxisProblem, form: Form = "auto") -> float:
-    """The best goal alone, in the goal's own sense; NaN where no design meets all limits."""
-    slices = Slices(problem, form)
+@dataclass(frozen=True)
+class _Solved:
+    """Segments of every ballast that has any, as (ballast in kg, segment, position or None), and what is known."""
+
+    found: tuple[tuple[float, Segment, tuple[float, float] | None], ...]
+    violation: float
+    gap: float
+    decided: bool
+
+    @property
+    def least(self) -> float:
+        """The least goal; infinite where there is no segment."""
+        return min((segment.value for _, segment, _ in self.found), default=math.inf)
+
+
+def _solved(slices: Slices, only_best: bool) -> _Solved:
+    problem = slices.problem
     steps = _steps(problem)
     if steps is None:
-        results, _, _ = search_masses(slices, slices.excitations, only_best=True)
-        values = [found.segment.value for found in results]
-    else:
-        values = [s.value for step in steps for s in slices.at(problem.mass + step).segments]
-    return _sign(problem) * min(values) if values else math.nan
+        results, gap, decided = search_masses(slices, slices.excitations, only_best)
+        assert problem.ballast is not None
+        low, high = problem.ballast.least, problem.ballast.most
+        several = [
+            (min(max(each.mass - problem.mass, low), high), each.segment, each.place) for each in results
+        ]
+        violation = max((each.excess for each in results), default=0.0)
+        return _Solved(tuple(several), violation, gap, decided)
+    found: list[tuple[float, Segment, tuple[float, float] | None]] = []
+    violation, gap, decided = 0.0, 0.0, True
+    for kilograms in steps:
+        answer = slices.at(problem.mass + kilograms)
+        violation, gap = max(violation, answer.excess), max(gap, answer.gap)
+        decided = decided and answer.decided
+        found += [(kilograms, segment, None) for segment in answer.segments]
+    least = min((abs(segment.value) for _, segment, _ in found), default=0.0)
+    decided = decided and violation <= 1e-9 and gap <= 1e-7 * max(least, 1e-12)
+    return _Solved(tuple(found), violation, gap, decided)
+
+
+def _told(slices: Slices, solved: _Solved, only_best: bool) -> OneAxisOutcome:
+    sign = _sign(slices.problem)
+    found = solved.found
+    if only_best and found:
+        found = (min(found, key=lambda each: (each[1].value, each[0])),)
+    branches = _number_islands([_branch(slices, *each) for each in found])
+    branches.sort(key=lambda x: (sign * x.best.objective, x.best.mass))
+    if not branches:
+        return OneAxisOutcome((), sign * math.inf, 0.0, solved.violation, solved.decided)
+    bound = branches[0].best.objective - sign * solved.gap
+    return OneAxisOutcome(tuple(branches), bound, solved.gap, solved.violation, solved.decided)
 
 
 def best_count(
     problem: OneAxisProblem, least: int, most: int, cost: float, form: Form = "auto"
 ) -> tuple[int, OneAxisOutcome] | None:
-    """The best whole number of equal parts side by side, each of them adding `cost`, and the outcome with so many.
+    """The best whole number of equal parts side by side, each of them adding `cost`, and its best design.
 
     The bounds of stiffness and viscous damping are those of one part. Every number is solved; None where no number of
     them has a design.
     """
-    sign = _sign(problem)
-    tried = []
+    slices = Slices(_side_by_side(problem, most), form)
+    best: tuple[float, OneAxisProblem, int, _Solved] | None = None
     for count in range(least, most + 1):
-        many = _side_by_side(problem, count)
-        value = least_value(many, form)
-        if not math.isnan(value):
-            tried.append((sign * value + cost * count, count, many))
-    if not tried:
+        # Limits, and with them the question and its lines, do not know the number of parts.
+        slices.problem = _side_by_side(problem, count)
+        solved = _solved(slices, only_best=True)
+        total = solved.least + cost * count
+        if solved.found and (best is None or total < best[0]):
+            best = total, slices.problem, count, solved
+    if best is None:
         return None
-    _, count, many = min(tried, key=lambda each: each[:2])
-    return count, solve_one_axis(many, form)
+    slices.problem = best[1]
+    return best[2], _told(slices, best[3], only_best=True)
 
 
 def _side_by_side(problem: OneAxisProblem, count: int) -> OneAxisProblem:
@@ -252,35 +294,12 @@ def _side_by_side(problem: OneAxisProblem, count: int) -> OneAxisProblem:
     )
 
 
-def solve_one_axis(problem: OneAxisProblem, form: Form = "auto") -> OneAxisOutcome:
+def solve_one_axis(problem: OneAxisProblem, form: Form = "auto", only_best: bool = False) -> OneAxisOutcome:
     """Global optimum of a one-axis sizing problem with every disjoint branch, best branch first.
 
-    `form`: interpreted ("plain"), "compiled", or what serves the number of problems solved so far. Raises SizingError
-    when the problem is stated wrongly. An outcome without branches is a proof that nothing within the bounds meets
-    all limits (points of zero width excepted).
+    `form`: interpreted ("plain"), "compiled", or what serves the number of problems solved so far. `only_best` leaves
+    out the other branches. Raises SizingError when the problem is stated wrongly. A decided outcome without branches is
+    a proof that nothing within the bounds meets all limits (points of zero width excepted).
     """
     slices = Slices(problem, form)
-    branches: list[Branch] = []
-    violation, gap, decided = 0.0, 0.0, True
-    steps = _steps(problem)
-    if steps is not None:
-        for kilograms in steps:
-            answer = slices.at(problem.mass + kilograms)
-            violation, gap = max(violation, answer.excess), max(gap, answer.gap)
-            decided = decided and answer.decided
-            branches += [_branch(slices, kilograms, s) for s in answer.segments]
-        least = min((abs(b.best.objective) for b in branches), default=0.0)
-        decided = decided and violation <= 1e-9 and gap <= 1e-7 * max(least, 1e-12)
-    else:
-        results, gap, decided = search_masses(slices, slices.excitations)
-        for found in results:
-            violation = max(violation, found.excess)
-            assert problem.ballast is not None
-            added = min(max(found.mass - problem.mass, problem.ballast.least), problem.ballast.most)
-            branches.append(_branch(slices, added, found.segment, found.place))
-    sign = _sign(problem)
-    branches = _number_islands(branches)
-    branches.sort(key=lambda x: (sign * x.best.objective, x.best.mass))
-    if not branches:
-        return OneAxisOutcome((), sign * math.inf, 0.0, violation, decided)
-    return OneAxisOutcome(tuple(branches), branches[0].best.objective - sign * gap, gap, violation, decided)
+    return _told(slices, _solved(slices, only_best), only_best)
