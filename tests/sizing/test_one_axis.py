@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import importlib.util
 import itertools
 import math
-import pathlib
 from dataclasses import replace
 
 import numpy as np
@@ -22,13 +20,7 @@ from detune.sizing.statement import (
     SagLimit,
     SizingError,
 )
-
-_spec = importlib.util.spec_from_file_location(
-    "sizing_instances", pathlib.Path(__file__).with_name("instances.py")
-)
-assert _spec is not None and _spec.loader is not None
-instances = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(instances)
+from sizing import instances
 
 BROAD = (0.01, 1000.0)
 

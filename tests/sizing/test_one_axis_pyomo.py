@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-import pathlib
 from dataclasses import replace
 
 import numpy as np
@@ -16,13 +14,7 @@ from detune.sizing.one_axis_pyomo_limits import Scaled, worst_place
 from detune.sizing.statement import Ballast, Objective, OneAxisProblem, ResponseLimit
 from detune.solvers import size_scip
 from detune.solvers.size_scip import solve_with_scip
-
-_spec = importlib.util.spec_from_file_location(
-    "sizing_instances", pathlib.Path(__file__).with_name("instances.py")
-)
-assert _spec is not None and _spec.loader is not None
-instances = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(instances)
+from sizing import instances
 
 
 def random_problems(count: int, first: int, ballast: str = "none"):

@@ -5,10 +5,8 @@ The dense side is written from |X| <= limit with complex numbers of numpy alone 
 
 from __future__ import annotations
 
-import importlib.util
 import itertools
 import math
-import pathlib
 
 import numpy as np
 import pytest
@@ -17,13 +15,7 @@ from detune.sizing import slice_exchange, slice_response
 from detune.sizing.slice_data import bench, pool
 from detune.sizing.slice_question import Scales, question_of
 from detune.sizing.statement import Objective, OneAxisProblem, ResponseLimit
-
-_spec = importlib.util.spec_from_file_location(
-    "sizing_instances", pathlib.Path(__file__).with_name("instances.py")
-)
-assert _spec is not None and _spec.loader is not None
-instances = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(instances)
+from sizing import instances
 
 MASS, LOW, HIGH = 100.0, 8.0, 16.0
 KINDS = [("transmissibility", "unit"), ("transmitted force", "force"), ("transmitted force", "unbalance")]
@@ -95,6 +87,17 @@ def test_damping_a_range_asks_for_and_allows(quantity, source, kind):
     assert seen > 0 or quantity == "transmissibility"
 
 
+def asked(row, viscous: bool, k: float, u):
+    """By hand from level u^q [|K|^2] <= |D|^2 at unit mass: gamma s (1 - t) >= t [k^2] - (k - u)^2, where 1 - t > 0."""
+    transmission, power, level = row[:3]
+    t = level * u**power
+    free = 1.0 - t if transmission else np.ones_like(u)
+    top = t * k**2 if transmission else t
+    with np.errstate(divide="ignore"):
+        need = (top - (k - u) ** 2) / ((u if viscous else 1.0) * free)
+    return np.where(free > 0, need, -np.inf)
+
+
 @pytest.mark.parametrize("kind", ["viscous", "loss factor"])
 @pytest.mark.parametrize(("quantity", "source"), KINDS)
 def test_the_tangent_along_a_ridge_is_never_above_what_the_range_asks_for(quantity, source, kind):
@@ -110,13 +113,13 @@ def test_the_tangent_along_a_ridge_is_never_above_what_the_range_asks_for(quanti
         touched += 1
         ratio = u / own
         value, slope, e1, e2 = slice_response.ridge(question, work, 0, own, ratio)
+        everywhere = asked(question.limits[0], kind == "viscous", own, np.linspace(low, high, 100001)[1:-1])
+        assert least == pytest.approx(float(everywhere.max()), rel=1e-6)
         assert value + e1 * own + e2 * own**2 == pytest.approx(least, rel=1e-7, abs=1e-12)
         for other in np.linspace(low / ratio, high / ratio, 60)[1:-1].tolist():
             tangent = value + slope * (other - own) + e1 * other + e2 * other**2
-            dense = max(
-                slice_response.needed_damping(question, work, 0, other, each)[0]
-                for each in [*np.linspace(low, high, 400)[1:-1].tolist(), other * ratio]
-            )
+            places = np.array([*np.linspace(low, high, 400)[1:-1].tolist(), other * ratio])
+            dense = float(asked(question.limits[0], kind == "viscous", other, places).max())
             assert tangent <= dense + 1e-9 * (abs(dense) + own**2)
     assert touched or (quantity, source) in {("transmissibility", "unit")}
 

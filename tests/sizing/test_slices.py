@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-import pathlib
 from dataclasses import replace
 
 import numpy as np
@@ -18,13 +16,7 @@ from detune.sizing.one_axis import best_count, solve_one_axis
 from detune.sizing.slice_data import bench, pool
 from detune.sizing.slice_kernels import Slices
 from detune.sizing.statement import Ballast, Objective, OneAxisProblem, ResponseLimit
-
-_spec = importlib.util.spec_from_file_location(
-    "sizing_instances", pathlib.Path(__file__).with_name("instances.py")
-)
-assert _spec is not None and _spec.loader is not None
-instances = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(instances)
+from sizing import instances
 
 
 @settings(deadline=None, max_examples=100)
@@ -150,9 +142,8 @@ def test_two_problems_of_one_thread_share_scratch_without_disturbing_each_other(
 def test_ballast_position_names_come_from_the_position():
     problem = instances.random_problem(2000, ballast="continuous")
     names = [b.name for b in solve_one_axis(problem).branches]
-    assert len(names) == len(set(names))
+    assert len(names) >= 3 and len(names) == len(set(names))
     assert all(not name.startswith("across") for name in names)
-    assert problem.ballast == Ballast(0.0, problem.ballast.most)
 
 
 def test_a_separation_of_more_than_the_whole_leaves_the_stiff_side():

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import importlib.util
 import math
-import pathlib
 
 import numpy as np
 import pytest
@@ -13,13 +11,7 @@ from detune.sizing.one_axis import solve_one_axis
 from detune.sizing.one_axis_map import feasible_region
 from detune.sizing.statement import Objective, OneAxisProblem, ResponseLimit, SizingError
 from detune.sizing.trace import one_axis_lines, trace_boundary, trace_region
-
-_spec = importlib.util.spec_from_file_location(
-    "sizing_instances", pathlib.Path(__file__).with_name("instances.py")
-)
-assert _spec is not None and _spec.loader is not None
-instances = importlib.util.module_from_spec(_spec)
-_spec.loader.exec_module(instances)
+from sizing import instances
 
 
 def circle(x, y):

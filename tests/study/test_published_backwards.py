@@ -6,23 +6,14 @@ examples that are solved backwards in `test_published_sizing.py` are not repeate
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from pathlib import Path
 from typing import Any
 
 import pytest
 
+from study import sizing_briefs as one
 
-def _load(name: str) -> Any:
-    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-one = _load("sizing_briefs")
 UNDAMPED = "viscous = '0 N s/m'"
 VISCOUS = "[[sizing.unknown]]\nkind = 'viscous'\ngroup = 'feet'\nlower = '1 N s/m'\nupper = '1e6 N s/m'"
 POUND_FORCE, INCH = 4.4482216152605, 0.0254

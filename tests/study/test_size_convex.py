@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import importlib.util
 import itertools
 import math
 from pathlib import Path
@@ -25,17 +24,9 @@ from detune.solvers.size_convex_limits import damping_free_limits
 from detune.solvers.size_convex_parts import parts_bounds
 from detune.study.load import load_study
 from detune.study.size import size_study
+from study import sizing_briefs as one
+from study import test_running as running
 
-
-def _load(name: str) -> Any:
-    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-one, running = _load("sizing_briefs"), _load("test_running")
 SKID = (Path(__file__).parent / "skid_to_size.toml").read_text(encoding="utf-8")
 # Positions are no unknown of the convex forms.
 SKID = SKID[: SKID.index('[[sizing.unknown]]\nkind = "position"')] + SKID[SKID.index("[[sizing.made]]") :]

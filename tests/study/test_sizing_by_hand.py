@@ -6,23 +6,15 @@ the program in it. Numbers differ from those of the published examples on purpos
 
 from __future__ import annotations
 
-import importlib.util
 import math
 from pathlib import Path
 from typing import Any
 
 import pytest
 
+from study import absorber_briefs as two
+from study import sizing_briefs as one
 
-def _load(name: str) -> Any:
-    spec = importlib.util.spec_from_file_location(name, Path(__file__).with_name(f"{name}.py"))
-    assert spec is not None and spec.loader is not None
-    module = importlib.util.module_from_spec(spec)
-    spec.loader.exec_module(module)
-    return module
-
-
-one, two = _load("sizing_briefs"), _load("absorber_briefs")
 UNDAMPED = "viscous = '0 N s/m'"
 G = 9.80665
 TWO_PI = 2.0 * math.pi

@@ -158,12 +158,10 @@ def stationary(question: Question, room: Room, bench: Bench, row: int, low: floa
     b0, b1 = a0 + u * u, a1 - 2.0 * u
     first, second = quadratic_roots(a2 * (b1 - a1), 2.0 * a2 * (b0 - a0), a1 * b0 - a0 * b1)
     count = 0
-    if low < first < high:
-        bench.work[1][count] = first
-        count += 1
-    if low < second < high:
-        bench.work[1][count] = second
-        count += 1
+    for root in (first, second):
+        if low < root < high:
+            bench.work[1][count] = root
+            count += 1
     return count
 
 
@@ -208,12 +206,10 @@ def crossings(bench: Bench, lower: int, upper: int, count: int) -> int:
         if a >= 0 and b >= 0 and high > low:
             one, two = bench.rows[a], bench.rows[b]
             first, second = quadratic_roots(one[P2] - two[P2], one[P1] - two[P1], one[P0] - two[P0])
-            if low < first < high:
-                points[count] = first
-                count += 1
-            if low < second < high:
-                points[count] = second
-                count += 1
+            for root in (first, second):
+                if low < root < high:
+                    points[count] = root
+                    count += 1
         if bench.lower[i + 1][0] <= bench.upper[j + 1][0]:
             i += 1
         else:

@@ -124,7 +124,9 @@ def doubtful(
         if i < 0:
             a0, a1, a2 = bench.rows[lower][P0], bench.rows[lower][P1], bench.rows[lower][P2]
         else:
-            low, _, _ = part_of_range(question, bench, i, True)
+            low, high, _ = part_of_range(question, bench, i, True)
+            if low > high:
+                continue
             bend = 1.0 / low if question.viscous == 1 else 1.0
             a0, a1, a2 = chord(k1, bench.ranges[i][LEAST], k2, bench.ranges[i][LEAST + 1], bend)
         for j in range(-1, n):
@@ -133,8 +135,10 @@ def doubtful(
             if j < 0:
                 b0, b1, b2 = bench.rows[upper][P0], bench.rows[upper][P1], bench.rows[upper][P2]
             else:
-                _, high, _ = part_of_range(question, bench, j, False)
-                bend = 1.0 / max(high, 1e-300) if question.viscous == 1 else 1.0
+                low, high, _ = part_of_range(question, bench, j, False)
+                if low > high:
+                    continue
+                bend = 1.0 / high if question.viscous == 1 else 1.0
                 b0, b1, b2 = chord(k1, bench.ranges[j][MOST], k2, bench.ranges[j][MOST + 1], bend)
             d1, d2 = a1 - b1, a2 - b2
             if d2 < 0.0:

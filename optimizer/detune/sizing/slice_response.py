@@ -176,14 +176,11 @@ def worst_place(question: Question, bench: Bench, i: int, k: float, gamma: float
                 ratio = squared_ratio(question, bench, i, k, gamma, roots[j])
                 if ratio > best:
                     best, place = ratio, roots[j]
-    if low < first < high:
-        ratio = squared_ratio(question, bench, i, k, gamma, first)
-        if ratio > best:
-            best, place = ratio, first
-    if low < second < high:
-        ratio = squared_ratio(question, bench, i, k, gamma, second)
-        if ratio > best:
-            best, place = ratio, second
+    for root in (first, second):
+        if low < root < high:
+            ratio = squared_ratio(question, bench, i, k, gamma, root)
+            if ratio > best:
+                best, place = ratio, root
     return best, place
 
 
@@ -199,11 +196,6 @@ def needed_damping(question: Question, bench: Bench, i: int, k: float, u: float)
     if free == 0.0:
         return math.inf, 0.0
     return (top - (k - u) * (k - u)) / (loss * free), free
-
-
-def add_term(polynomial: Any, power: int, value: float) -> None:
-    """Add value x^power to a polynomial."""
-    polynomial[power] += value
 
 
 def stationary_bound(question: Question, bench: Bench, i: int, k: float, low: float, high: float) -> int:
@@ -224,31 +216,31 @@ def stationary_bound(question: Question, bench: Bench, i: int, k: float, low: fl
         c[j] = 0.0
     if question.limits[i][TRANSMISSION] == 0.0:
         if question.viscous == 1:
-            add_term(c, r, (r - 1.0) * level)
-            add_term(c, 0, k * k)
-            add_term(c, 2, -1.0)
+            c[r] += (r - 1.0) * level
+            c[0] += k * k
+            c[2] += -1.0
             degree = max(r, 2)
         else:
             if r > 0:
-                add_term(c, r - 1, r * level)
-            add_term(c, 0, 2.0 * k)
-            add_term(c, 1, -2.0)
+                c[r - 1] += r * level
+            c[0] += 2.0 * k
+            c[1] += -2.0
             degree = max(r - 1, 1)
     elif question.viscous == 1:
         shift = 0 if r >= 0 else -2 * r
-        add_term(c, shift, k * k)
-        add_term(c, shift + r, -2.0 * k * k * level)
-        add_term(c, shift + 2 * r, k * k * level * level)
-        add_term(c, shift + 2, -1.0)
-        add_term(c, shift + 2 + r, (1.0 - r) * level)
-        add_term(c, shift + 1 + r, 2.0 * k * r * level)
+        c[shift] += k * k
+        c[shift + r] += -2.0 * k * k * level
+        c[shift + 2 * r] += k * k * level * level
+        c[shift + 2] += -1.0
+        c[shift + 2 + r] += (1.0 - r) * level
+        c[shift + 1 + r] += 2.0 * k * r * level
         degree = max(2 * r, 2 + max(r, 0)) if r >= 0 else shift + 2
     else:
         shift = 0 if r >= 0 else -r
-        add_term(c, shift, 2.0 * k)
-        add_term(c, shift + 1, -2.0)
-        add_term(c, shift + r, 2.0 * (r - 1.0) * level * k)
-        add_term(c, shift + r + 1, (2.0 - r) * level)
+        c[shift] += 2.0 * k
+        c[shift + 1] += -2.0
+        c[shift + r] += 2.0 * (r - 1.0) * level * k
+        c[shift + r + 1] += (2.0 - r) * level
         degree = shift + 1 + max(r, 0)
     return roots_between(degree, low, high, bench)
 
