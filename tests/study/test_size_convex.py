@@ -264,3 +264,18 @@ def test_no_real_design_of_a_side_is_cheaper_than_its_bound(tmp_path):
         assert cost <= least[side] * (1 + 1e-9)
         if math.isinf(cost):
             assert math.isinf(least[side])
+
+
+def test_on_one_axis_the_bound_whatever_the_damping_is_not_below_the_response(tmp_path):
+    """|X| = F/|m w^2 - k + j w c| <= F/(m w^2 - k), by hand; the transmissibility beside it holds with its damping."""
+    text = one.one_axis(
+        more=one.TRANSMISSIBILITY.format(limit=0.1) + one.DISPLACEMENT.format(limit=4e-5),
+        goal='minimise = "stiffness"', mass=100, frequency='["20 Hz", "25 Hz"]', softest=2e4, stiffest=5e6, force=40,
+        unknowns="[[sizing.unknown]]\nkind = 'viscous'\ngroup = 'feet'\nlower = '10 N s/m'\nupper = '900 N s/m'",
+    )  # fmt: skip
+    (safe,) = one.sized(tmp_path, text, drawings=True).convex
+    k, w = float(safe.values[0]), 2 * math.pi * 20.0
+    assert safe.bounded == pytest.approx(40.0 / (100.0 * w**2 - k) / 4e-5, rel=1e-5)
+    assert safe.response <= safe.bounded
+    (cone,) = safe.cones
+    assert "transmissibility" in cone and cone in safe.held

@@ -40,7 +40,8 @@ def convex_table(result: SizingResult) -> Table:
     )  # fmt: skip
     note = (
         "Side: of all excitation, for every mode. Response: the largest exact response over its limit, of the limits "
-        "the form holds; its bound: what the form takes it for, whatever the damping. Damping stands at its least "
+        "the form holds whatever the damping (of all it holds where there are none); its bound: what the form "
+        "takes it for. Damping stands at its least "
         "where it costs, else at the middle of its range."
     )
     return Table("Convex answers", columns, tuple(rows), frozenset({2, 3, 4, 5}), note)
@@ -81,7 +82,11 @@ def convex_points(result: SizingResult) -> tuple[str, ...]:
     for answer in result.convex:
         if answer.form != "restriction":
             continue
-        points.append(f"{answer.side}, held whatever the damping: {'; '.join(answer.held)}")
+        free = [label for label in answer.held if label not in answer.cones]
+        if free:
+            points.append(f"{answer.side}, held whatever the damping: {'; '.join(free)}")
+        if answer.cones:
+            points.append(f"{answer.side}, held with the damping of the design: {'; '.join(answer.cones)}")
         if answer.left:
             points.append(f"{answer.side}, left to the assessor: {'; '.join(answer.left)}")
     for bound in result.parts_bounds:

@@ -45,7 +45,8 @@ class ConvexSizing:
     `bounded` are the largest exact response over its limit and the largest bound over it, of the limits held
     (NaN without). `misses` is the requirement the design misses most, None where it meets the brief.
     `excitation`: its lowest and highest frequency in Hz. `partial`: an unknown is held where it is, and
-    nothing is said of its other values.
+    nothing is said of its other values. `cones`: those of `held` that hold with the damping of the design only;
+    `response` and `bounded` leave them out where there are others.
     """
 
     side: Side
@@ -62,6 +63,7 @@ class ConvexSizing:
     misses: str | None = None
     excitation: tuple[float, float] = (0.0, float("inf"))
     partial: bool = False
+    cones: tuple[str, ...] = ()
 
 
 def why_not_convex(brief: Brief, problem: Problem) -> str | None:

@@ -30,13 +30,17 @@ ROOM = 1e-6
 
 @dataclass
 class _Rows:
-    """Cones (Hz, T), affine rows (Hz, force, stroke) and k/m <= `per_mass`; what each of them is worth."""
+    """Cones (Hz, T), affine rows (Hz, force, stroke) and k/m <= `per_mass`; what each of them is worth.
+
+    `motion` are the limits behind affine rows: held whatever the damping, where a cone holds with that of the design.
+    """
 
     cones: list[tuple[float, float]] = field(default_factory=list)
     affine: list[tuple[float, float, float]] = field(default_factory=list)
     per_mass: float = math.inf
     safe: list[str] = field(default_factory=list)
     held: list[str] = field(default_factory=list)
+    motion: list[str] = field(default_factory=list)
     left: list[str] = field(default_factory=list)
 
 
@@ -117,6 +121,7 @@ def _add(rows: _Rows, limit: ResponseLimit, label: str) -> None:
         else:
             rows.affine.append((limit.lower_frequency, need, 1.0))
         rows.safe.append(label)
+        rows.motion.append(label)
     rows.held.append(label)
 
 
@@ -145,10 +150,10 @@ def _told(brief: Brief, axis: OneAxis, rows: _Rows, answer: SoftSideAnswer) -> C
         else "safe restriction, with ballast between its steps"
     )
     judged = judge(brief, values[None])
+    # The exact response of the limits that `bounded` bounds; of those on transmissibility where there are no others.
+    compared = rows.motion or rows.held
     held = [
-        i
-        for i, each in enumerate(judged.requirements)
-        if each.label in rows.held or _of(each.label, rows.held)
+        i for i, each in enumerate(judged.requirements) if each.label in compared or _of(each.label, compared)
     ]
     worst = int(np.argmin(judged.margins[:, 0]))
     response = float((1.0 / (1.0 + judged.margins[held, 0])).max()) if held else nan
@@ -157,6 +162,7 @@ def _told(brief: Brief, axis: OneAxis, rows: _Rows, answer: SoftSideAnswer) -> C
         "global" if exact else "restriction", tuple(dict.fromkeys(rows.held)),
         (*dict.fromkeys(rows.left), *axis.relaxed), response, _bounded(rows, answer),
         judged.requirements[worst].label if judged.margins[worst, 0] < -1e-6 else None,
+        cones=tuple(label for label in dict.fromkeys(rows.held) if label not in rows.motion),
     )  # fmt: skip
 
 
